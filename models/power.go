@@ -1,0 +1,88 @@
+package models
+
+import "math"
+
+// PowerPrefactor is ln k = a + n ln T - b/T. Canonical parameters: a = ln k(T_ref),
+// E_ref = E_loc(T_ref) = E + nRT_ref in J/mol, and n. In them
+//
+//	ln k = a - E_ref x + n (z - ln(1+z)),  z = T_ref/T - 1,  x = z/(R T_ref),
+//
+// whose last column is close to a parabola in z, and so nearly orthogonal to the
+// other two; a + n ln T - b/T in its own terms loses ten digits on a range of 10 K.
+type PowerPrefactor struct{}
+
+var _ Basis = PowerPrefactor{}
+
+// Info implements Curve.
+func (PowerPrefactor) Info() Info {
+	return Info{
+		Name: "power-prefactor", Family: "power",
+		Formula: "ln k = a + n ln T - b/T",
+		Summary: "one barrier with a T^n prefactor; the same curve as Eyring with a constant heat capacity of activation",
+		Source:  "D. M. Kooij, Z. Phys. Chem. 12 (1893) 155",
+		Trend:   TrendEither,
+		Params: []Param{
+			{"ln_k_ref", "ln k at the reference temperature", "k"},
+			{"E_ref", "local activation energy at the reference temperature", "J/mol"},
+			{"n", "exponent of T", "1"},
+		},
+	}
+}
+
+// bend returns z - ln(1+z) for z = tRef/t - 1.
+func bend(tRef, t float64) float64 {
+	z := (tRef - t) / t
+	if math.Abs(z) < 0.02 {
+		// z²/2 - z³/3 + ...: the difference would cancel.
+		s, zk := 0.0, z
+		for k := 2; k <= 14; k++ {
+			zk *= -z
+			s -= zk / float64(k)
+		}
+		return s
+	}
+	return z - math.Log1p(z)
+}
+
+// Columns implements Basis.
+func (PowerPrefactor) Columns(tRef float64, t, offset, x []float64) {
+	mustLen("offset", len(offset), len(t))
+	mustLen("design", len(x), 3*len(t))
+	for i, ti := range t {
+		offset[i] = 0
+		x[3*i] = 1
+		x[3*i+1] = (ti - tRef) / (GasConstant * ti * tRef)
+		x[3*i+2] = bend(tRef, ti)
+	}
+}
+
+// LnK implements Curve.
+func (PowerPrefactor) LnK(tRef float64, t, p, f, jac []float64) {
+	check(3, t, p, f, jac)
+	for i, ti := range t {
+		u, b := (ti-tRef)/(GasConstant*ti*tRef), bend(tRef, ti)
+		if f != nil {
+			f[i] = p[0] + p[1]*u + p[2]*b
+		}
+		if jac != nil {
+			jac[3*i], jac[3*i+1], jac[3*i+2] = 1, u, b
+		}
+	}
+}
+
+// ELoc implements Curve: E_loc = E_ref + nR(T - T_ref).
+func (PowerPrefactor) ELoc(tRef float64, t, p, f, jac []float64) {
+	check(3, t, p, f, jac)
+	for i, ti := range t {
+		d := GasConstant * (ti - tRef)
+		if f != nil {
+			f[i] = p[1] + p[2]*d
+		}
+		if jac != nil {
+			jac[3*i], jac[3*i+1], jac[3*i+2] = 0, 1, d
+		}
+	}
+}
+
+// Forms implements Curve.
+func (PowerPrefactor) Forms() []Form { return []Form{modifiedArrhenius, eyringHeatCapacity} }
