@@ -31,6 +31,7 @@ func (s Status) String() string {
 // Result is one curve fitted to one sample. Covariances are row-major.
 type Result struct {
 	Curve  models.Curve
+	Model  ErrorModel
 	Status Status
 	Reason string // why, where Status is not Converged; starts lower case
 
