@@ -3,7 +3,7 @@ package diagnostics
 import "onebarrier/models/fit"
 
 // Signatures of what is being written in this package; each moves to its own
-// file (curvature.go, verdict.go, secondbarrier.go, adequacy.go, teff.go,
+// file (curvature.go, verdict.go, adequacy.go, teff.go,
 // catalogue.go) as it is finished.
 
 // ---- curvature.go
@@ -88,32 +88,6 @@ func Decide(in VerdictInput) (Verdict, []Finding) { panic("not written yet") }
 
 // Recommend names the curve to publish and why the ranking's first is another.
 func Recommend(state State, ranking []Ranked) (curve, why string) { panic("not written yet") }
-
-// ---- secondbarrier.go
-
-// SecondBarrierTest is the test of one design: temperatures, weights, nuisance
-// columns. Its null is drawn once, when first needed.
-type SecondBarrierTest struct{}
-
-// NewSecondBarrierTest prepares the test; nuisance holds further columns of
-// length len(t) to project out, such as source offsets. It is nil where the test
-// cannot be run (N - 3 < 1).
-func NewSecondBarrierTest(t, v []float64, nuisance [][]float64) *SecondBarrierTest {
-	panic("not written yet")
-}
-
-// Found reports whether p < 0.05 for y (ln k), without allocating: scratch has
-// length ScratchLen().
-func (b *SecondBarrierTest) Found(y, scratch []float64) bool { panic("not written yet") }
-
-// ScratchLen is the length of the scratch slice of Found.
-func (b *SecondBarrierTest) ScratchLen() int { panic("not written yet") }
-
-// TestSecondBarrier runs the test with its reruns without T_max and T_min, nil
-// where it cannot be run. straight is used by in-k models only.
-func TestSecondBarrier(s *fit.Sample, straight *fit.Result, nuisance [][]float64) *SecondBarrier {
-	panic("not written yet")
-}
 
 // ---- adequacy.go
 
