@@ -1,0 +1,283 @@
+package fit
+
+import (
+	"math"
+	"slices"
+
+	"onebarrier/models"
+)
+
+// maxBarrier bounds |E| and the difference of two barriers, in J/mol: a strong
+// bond. A fit that wants more is not identified.
+const maxBarrier = 1e6
+
+// plan holds what fits of ln k = a + e·U + s(c + d·u) share on one design (T, V):
+// the scaled abscissa, the projector onto the complement of {1, u} and the nodes of
+// the cold search. It is read-only once made, so that workers can share it.
+//
+// u = U/width with U = (T - T_c)/(R T T_c), T_c the weighted harmonic mean of T and
+// width the range of U, so that u has range 1 and weighted mean 0.
+type plan struct {
+	tab       *softplusTable
+	t         []float64
+	rows      []basisRow
+	tc        float64 // K
+	width     float64 // mol/J
+	n1, n2    float64 // lengths of the whitened columns 1 and u
+	low, high float64 // ends of u
+	maxD      float64 // bound of |d|
+	distinct  int     // temperatures
+	nodes     []node
+	shapes    []float64 // projected whitened shape of each node, len(nodes) x N
+}
+
+// node is a starting point of the cold search.
+type node struct {
+	c, d  float64
+	norm2 float64 // squared length of its projected shape
+	level int32
+}
+
+// newPlan makes the plan of a design.
+func newPlan(t, v []float64) *plan {
+	p := &plan{tab: softplusNodes(), t: t, rows: make([]basisRow, len(t))}
+	p.abscissa(t, v)
+	p.project()
+	return p
+}
+
+// abscissa fills u and w.
+func (p *plan) abscissa(t, v []float64) {
+	var sw, swx float64
+	for i, ti := range t {
+		sw += 1 / v[i]
+		swx += 1 / (v[i] * ti)
+	}
+	p.tc = sw / swx
+	lowT, highT := slices.Min(t), slices.Max(t)
+	p.width = (highT - lowT) / (models.GasConstant * highT * lowT)
+	for i, ti := range t {
+		r := &p.rows[i]
+		r.w = 1 / math.Sqrt(v[i])
+		if p.width > 0 {
+			r.u = (ti - p.tc) / (models.GasConstant * ti * p.tc) / p.width
+		}
+	}
+	sorted := slices.Sorted(slices.Values(t))
+	p.distinct = len(slices.Compact(sorted))
+	p.low, p.high = math.Inf(1), math.Inf(-1)
+	for _, r := range p.rows {
+		p.low, p.high = math.Min(p.low, r.u), math.Max(p.high, r.u)
+	}
+	p.maxD = maxBarrier * p.width
+}
+
+// project fills the orthonormal basis of {1, u}. T_c makes the two columns
+// orthogonal but for rounding, which the projection of u onto 1 removes.
+func (p *plan) project() {
+	var s0, s1, s2 float64
+	for _, r := range p.rows {
+		s0 += r.w * r.w
+	}
+	p.n1 = math.Sqrt(s0)
+	for i := range p.rows {
+		r := &p.rows[i]
+		r.p1 = r.w / p.n1
+		s1 += r.p1 * r.w * r.u
+	}
+	for i := range p.rows {
+		r := &p.rows[i]
+		r.p2 = r.w*r.u - s1*r.p1
+		s2 += r.p2 * r.p2
+	}
+	p.n2 = math.Sqrt(s2)
+	if p.n2 > 0 {
+		for i := range p.rows {
+			p.rows[i].p2 /= p.n2
+		}
+	}
+}
+
+// kernel returns a workspace for this plan with d free up to its bound. (c, d) and
+// (-c, -d) are the same curve, so both signs are open.
+func (p *plan) kernel() *kernel {
+	n := len(p.rows)
+	scratch := make([]float64, 3*n)
+	return &kernel{
+		tab: p.tab, rows: p.rows, z: scratch[:n:n], ws: scratch[n : 2*n : 2*n], slope: scratch[2*n:],
+		low: -p.maxD, up: p.maxD,
+	}
+}
+
+// setData whitens and projects y·sign into k.z and sets the floor. It returns the
+// residual sum of squares of the straight line.
+func (k *kernel) setData(y []float64, sign float64) (straight float64) {
+	var big float64
+	for i, yi := range y {
+		k.z[i] = sign * yi * k.rows[i].w
+		big = math.Max(big, math.Abs(k.z[i]))
+	}
+	projectOut(k.rows, k.z)
+	for _, zi := range k.z {
+		straight += zi * zi
+	}
+	const eps = 0x1p-53
+	k.floor = math.Max(1e-28*straight, float64(len(y))*(eps*big)*(eps*big))
+	return straight
+}
+
+// projectOut removes from the whitened vector z what the basis spans, twice, so
+// that what is left is orthogonal to it to rounding.
+func projectOut(rows []basisRow, z []float64) {
+	for range 2 {
+		var a1, a2 float64
+		for i, r := range rows {
+			a1 += r.p1 * z[i]
+			a2 += r.p2 * z[i]
+		}
+		for i, r := range rows {
+			z[i] -= a1*r.p1 + a2*r.p2
+		}
+	}
+}
+
+// makeNodes lays out the cold search: levels d = 1/2, 1, 2 ... 256 (range of u = 1)
+// up to the bound, on each level crossovers every 1.5/d but at most three per gap
+// of the design, out to 4/d beyond the ends. Between such neighbours the shapes
+// change little enough for Newton steps to find the minimum.
+func (p *plan) makeNodes() {
+	if p.nodes != nil {
+		return
+	}
+	us := make([]float64, len(p.rows))
+	for i, r := range p.rows {
+		us[i] = r.u
+	}
+	slices.Sort(us)
+	us = slices.Compact(us)
+	level := int32(0)
+	for d := 0.5; ; d *= 2 {
+		last := d >= p.maxD || d >= 256
+		d := math.Min(d, p.maxD)
+		gap := 0
+		for x := p.low - 4/d; x <= p.high+4/d; {
+			p.nodes = append(p.nodes, node{c: -d * x, d: d, level: level})
+			for gap < len(us) && us[gap] <= x {
+				gap++
+			}
+			step := 1.5 / d
+			if gap > 0 && gap < len(us) {
+				step = math.Max(step, (us[gap]-us[gap-1])/3)
+			}
+			x += step
+		}
+		level++
+		if last {
+			break
+		}
+	}
+	n := len(p.rows)
+	p.shapes = make([]float64, len(p.nodes)*n)
+	for j := range p.nodes {
+		nd := &p.nodes[j]
+		s := p.shapes[j*n : (j+1)*n]
+		for i, r := range p.rows {
+			v, _ := p.tab.at(nd.c + nd.d*r.u)
+			s[i] = r.w * v
+		}
+		projectOut(p.rows, s)
+		for _, v := range s {
+			nd.norm2 += v * v
+		}
+	}
+}
+
+const (
+	coldStarts = 12 // level-wise minima that get Newton steps
+	coldSteps  = 5
+	coldFinal  = 2 // distinct ones that go on to convergence
+)
+
+// search is the scratch of a cold fit.
+type search struct {
+	rss   []float64 // at the nodes
+	start [coldStarts]normal
+	trial normal
+}
+
+func (p *plan) newSearch() *search { return &search{rss: make([]float64, len(p.nodes))} }
+
+// cold is the global fit of the data in k.z: the best minimum found, converged to a
+// decrement of tol·RSS. ok is false where nothing improves on the straight line.
+func (p *plan) cold(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
+	n := len(p.rows)
+	for j := range p.nodes {
+		shape := p.shapes[j*n : (j+1)*n]
+		var dot float64
+		for i, zi := range k.z[:n] {
+			dot += zi * shape[i]
+		}
+		s.rss[j] = straight - 2*dot + p.nodes[j].norm2
+	}
+	var pick [coldStarts]int
+	picked := 0
+	for j := range p.nodes {
+		v, level := s.rss[j], p.nodes[j].level
+		if j > 0 && p.nodes[j-1].level == level && s.rss[j-1] <= v ||
+			j+1 < len(p.nodes) && p.nodes[j+1].level == level && s.rss[j+1] < v {
+			continue
+		}
+		at := picked
+		for at > 0 && s.rss[pick[at-1]] > v {
+			at--
+		}
+		if at == coldStarts {
+			continue
+		}
+		picked = min(picked+1, coldStarts)
+		copy(pick[at+1:picked], pick[at:picked-1])
+		pick[at] = j
+	}
+	for i, j := range pick[:picked] {
+		e := &s.start[i]
+		k.at(p.nodes[j].c, p.nodes[j].d, e)
+		k.converge(e, &s.trial, tol, coldSteps)
+	}
+	for f := range coldFinal {
+		// The best that is left, unless it is one of the earlier finals.
+		at := -1
+		for i := f; i < picked; i++ {
+			if f > 0 && sameMinimum(&s.start[0], &s.start[i]) {
+				continue
+			}
+			if at < 0 || s.start[i].rss < s.start[at].rss {
+				at = i
+			}
+		}
+		if at < 0 {
+			break
+		}
+		s.start[f], s.start[at] = s.start[at], s.start[f]
+		k.converge(&s.start[f], &s.trial, tol, 100)
+		if s.start[f].rss < s.start[0].rss {
+			s.start[0], s.start[f] = s.start[f], s.start[0]
+		}
+	}
+	best = &s.start[0]
+	return best, picked > 0 && best.rss < straight*(1-improvement)
+}
+
+// improvement is the share of the straight line's RSS that a shape must save: below
+// it the two are the same curve.
+const improvement = 1e-10
+
+// sameMinimum reports whether two points of the search are the same minimum, in
+// either of its two notations.
+func sameMinimum(a, b *normal) bool {
+	c, d := b.c, b.d
+	if a.d*d < 0 {
+		c, d = -c, -d
+	}
+	tol := 1e-3 * (1 + math.Abs(a.d))
+	return math.Abs(a.d-d) < tol && math.Abs(a.c-c) < tol
+}
