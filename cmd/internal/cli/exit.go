@@ -1,0 +1,134 @@
+package cli
+
+import (
+	"errors"
+	"fmt"
+	"os"
+	"strings"
+	"syscall"
+
+	"onebarrier/cmd/internal/report"
+	"onebarrier/diagnostics"
+	"onebarrier/models/dataset"
+)
+
+// The exit codes.
+const (
+	exitDone        = 0
+	exitFailed      = 1
+	exitUsage       = 2
+	exitData        = 3
+	exitPartial     = 4
+	exitExpect      = 5
+	exitInterrupted = 130
+	exitTerminated  = 143
+)
+
+// usageError is wrong usage: it can be told without reading any data.
+type usageError struct {
+	message string
+	cure    string
+}
+
+func (e *usageError) Error() string { return join(e.message, e.cure) }
+
+func usagef(cure, format string, args ...any) error {
+	return &usageError{fmt.Sprintf(format, args...), cure}
+}
+
+// partialError says that some of several inputs failed. Their problems have been
+// reported.
+type partialError struct{ failed, all int }
+
+func (e *partialError) Error() string {
+	return fmt.Sprintf("%d of %d files could not be used", e.failed, e.all)
+}
+
+// expectError says that the verdict is not one of those asked for.
+type expectError struct {
+	got  diagnostics.State
+	want []string
+}
+
+func (e *expectError) Error() string {
+	return fmt.Sprintf("the verdict is %s, expected %s", e.got, strings.Join(e.want, " or "))
+}
+
+// signalError says which signal ended the work.
+type signalError struct{ signal os.Signal }
+
+func (e *signalError) Error() string {
+	if e.signal == syscall.SIGTERM {
+		return "terminated"
+	}
+	return "interrupted"
+}
+
+// panicError is a panic that was caught: a fault of the program.
+type panicError struct{ value any }
+
+func (e *panicError) Error() string {
+	return fmt.Sprintf("internal error: %v; please report it with the command and the data", e.value)
+}
+
+// exitCodes is the one table from error to exit code; the first match counts,
+// and an error that matches none is a failure.
+var exitCodes = []struct {
+	code  int
+	match func(error) bool
+}{
+	{exitTerminated, func(err error) bool {
+		var e *signalError
+		return errors.As(err, &e) && e.signal == syscall.SIGTERM
+	}},
+	{exitInterrupted, is[*signalError]},
+	{exitFailed, is[*panicError]},
+	{exitUsage, is[*usageError]},
+	{exitData, is[dataset.Problems]},
+	{exitPartial, is[*partialError]},
+	{exitExpect, is[*expectError]},
+}
+
+func is[E error](err error) bool {
+	var e E
+	return errors.As(err, &e)
+}
+
+func exitCode(err error) int {
+	if err == nil {
+		return exitDone
+	}
+	for _, row := range exitCodes {
+		if row.match(err) {
+			return row.code
+		}
+	}
+	return exitFailed
+}
+
+// problemsOf turns an error into the entries of a problems document.
+func problemsOf(err error) []report.Problem {
+	var data dataset.Problems
+	var usage *usageError
+	switch {
+	case errors.As(err, &data):
+		ps := make([]report.Problem, len(data))
+		for i, p := range data {
+			ps[i] = report.Problem{Code: p.Code, File: p.File, Sheet: p.Sheet, Column: p.Column, Message: p.Message, Cure: p.Cure}
+			if p.Row > 0 {
+				ps[i].Row = &data[i].Row
+			}
+		}
+		return ps
+	case errors.As(err, &usage):
+		return []report.Problem{{Code: "usage", Message: usage.message, Cure: usage.cure}}
+	}
+	return []report.Problem{{Code: "failed", Message: err.Error()}}
+}
+
+func join(message, cure string) string {
+	if cure == "" {
+		return message
+	}
+	return message + "; " + cure
+}

@@ -1,0 +1,128 @@
+package cli
+
+import (
+	"bytes"
+	"context"
+	"errors"
+	"io"
+	"io/fs"
+	"os"
+	"slices"
+	"strconv"
+	"strings"
+
+	"github.com/spf13/cobra"
+	"github.com/spf13/pflag"
+
+	"onebarrier/models/dataset"
+)
+
+// addSelection gives a command the flags that say how to read a file and which
+// rows to keep.
+func addSelection(cmd *cobra.Command, o *dataset.Options) {
+	f := cmd.Flags()
+	f.StringVar(&o.Dataset, "dataset", "", "keep the rows of the data set with this `name`")
+	f.Var(column{&o.Columns}, "column", "take a column for a role, such as 'k=k_obs/s^-1' (repeat for more)")
+	f.Var(pairs{&o.Assume}, "assume", "settle what is ambiguous, such as T=degC or error=2")
+	f.Var(&choice{&o.Decimal, []string{"comma", "point"}}, "decimal", "decimal mark of the file")
+	f.StringArrayVar(&o.Where, "where", nil, "keep rows that meet a `condition`, such as 'source!=Lab3' (repeat for more)")
+	f.IntSliceVar(&o.LeaveOut, "leave-out", nil, "leave out these `lines` of the file")
+	f.Var(temperature{&o.TMin}, "t-min", "leave out rows below this temperature, such as 195K or 25degC")
+	f.Var(temperature{&o.TMax}, "t-max", "leave out rows above this temperature")
+	completeWith(cmd, "decimal", "comma", "point")
+	completeWith(cmd, "column", "temperature=", "k=", "source=", "dataset=", "order=")
+	completeWith(cmd, "assume", "T=K", "T=degC", "T=degF", "log=lg", "log=ln", "k=rate", "error=1", "error=2", "error=sd,n=3")
+}
+
+// selectionFlags are those that leave rows out.
+var selectionFlags = []string{"dataset", "where", "leave-out", "t-min", "t-max"}
+
+// selection lists the flags that left rows out, as the user may repeat them.
+func selection(cmd *cobra.Command) []string {
+	var used []string
+	cmd.Flags().Visit(func(f *pflag.Flag) {
+		if !slices.Contains(selectionFlags, f.Name) {
+			return
+		}
+		values := []string{f.Value.String()}
+		if s, ok := f.Value.(pflag.SliceValue); ok {
+			values = s.GetSlice()
+		}
+		if f.Name == "leave-out" {
+			values = []string{strings.Join(values, ",")}
+		}
+		for _, v := range values {
+			used = append(used, "--"+f.Name+"="+v)
+		}
+	})
+	return used
+}
+
+// readSets reads every data set of one file, "-" for standard input, and the
+// bytes it holds. A file that cannot be opened is a problem like any other.
+func (a *app) readSets(ctx context.Context, name string, o dataset.Options) ([]*dataset.Set, []byte, error) {
+	content, err := a.readAll(ctx, name)
+	if err != nil {
+		return nil, nil, err
+	}
+	sets, err := dataset.Read(name, bytes.NewReader(content), o)
+	if err == nil && len(sets) == 0 {
+		err = dataset.Problems{{Code: "no-data", File: name, Message: "no rows of data were found", Cure: "give a table with one column of temperatures and one of rate constants"}}
+	}
+	return sets, content, err
+}
+
+// readAll reads a file as a whole. Reading from a pipe or a terminal can wait for
+// ever, so it does not hold up an interrupt.
+func (a *app) readAll(ctx context.Context, name string) ([]byte, error) {
+	type result struct {
+		content []byte
+		err     error
+	}
+	done := make(chan result, 1)
+	go func() {
+		var r result
+		if name == "-" {
+			r.content, r.err = io.ReadAll(a.in)
+		} else {
+			r.content, r.err = os.ReadFile(name)
+		}
+		done <- r
+	}()
+	select {
+	case <-ctx.Done():
+		return nil, context.Cause(ctx)
+	case r := <-done:
+		if r.err == nil {
+			return r.content, nil
+		}
+		p := dataset.Problem{Code: "unreadable-file", File: name, Message: r.err.Error()}
+		var pe *fs.PathError
+		if errors.As(r.err, &pe) {
+			p.Message = pe.Err.Error()
+		}
+		if errors.Is(r.err, fs.ErrNotExist) {
+			p.Message, p.Cure = "there is no such file", "check the name and the folder"
+		}
+		return nil, dataset.Problems{p}
+	}
+}
+
+// oneSet picks the data set to assess.
+func oneSet(name string, sets []*dataset.Set) (*dataset.Set, error) {
+	if len(sets) == 1 {
+		return sets[0], nil
+	}
+	const most = 20
+	names := make([]string, 0, len(sets))
+	for i, s := range sets {
+		if i == most {
+			names = append(names, "and "+strconv.Itoa(len(sets)-most)+" more")
+			break
+		}
+		names = append(names, strconv.Quote(s.Name))
+	}
+	return nil, dataset.Problems{{Code: "several-datasets", File: name,
+		Message: strconv.Itoa(len(sets)) + " data sets: " + strings.Join(names, ", "),
+		Cure:    "choose one with --dataset NAME"}}
+}

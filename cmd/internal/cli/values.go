@@ -1,0 +1,191 @@
+package cli
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
+
+	"github.com/spf13/cobra"
+)
+
+// choice is the value of a flag that takes one of a few words.
+type choice struct {
+	value *string
+	words []string
+}
+
+func (c *choice) String() string { return *c.value }
+func (c *choice) Type() string   { return strings.Join(c.words, "|") }
+func (c *choice) Set(s string) error {
+	if !slices.Contains(c.words, s) {
+		cure := "use one of " + strings.Join(c.words, ", ")
+		if near := closest(s, c.words); near != "" {
+			cure = fmt.Sprintf("did you mean %q?", near)
+		}
+		return fmt.Errorf("%q is not known; %s", s, cure)
+	}
+	*c.value = s
+	return nil
+}
+
+// temperature is the value of a flag that takes a temperature with its unit.
+type temperature struct{ kelvin *float64 }
+
+func (t temperature) String() string {
+	if *t.kelvin == 0 {
+		return ""
+	}
+	return strconv.FormatFloat(*t.kelvin, 'g', -1, 64) + "K"
+}
+func (t temperature) Type() string { return "temperature" }
+func (t temperature) Set(s string) error {
+	k, err := parseTemperature(s)
+	if err == nil {
+		*t.kelvin = k
+	}
+	return err
+}
+
+// parseTemperature reads 195K, 25degC, 25°C or 77degF into kelvin. A number
+// without a unit is refused: it could mean any of them.
+func parseTemperature(s string) (float64, error) {
+	const cure = "write it with its unit, such as 298.15K, 25degC or 77degF"
+	s = strings.TrimSpace(strings.ReplaceAll(s, "−", "-"))
+	for _, u := range []struct {
+		name   string
+		kelvin func(float64) float64
+	}{
+		{"degC", func(x float64) float64 { return x + 273.15 }},
+		{"°C", func(x float64) float64 { return x + 273.15 }},
+		{"℃", func(x float64) float64 { return x + 273.15 }},
+		{"degF", func(x float64) float64 { return (x + 459.67) * 5 / 9 }},
+		{"°F", func(x float64) float64 { return (x + 459.67) * 5 / 9 }},
+		{"K", func(x float64) float64 { return x }},
+	} {
+		number, ok := strings.CutSuffix(s, u.name)
+		if !ok {
+			continue
+		}
+		x, err := strconv.ParseFloat(strings.TrimSpace(number), 64)
+		if err != nil || math.IsNaN(x) || math.IsInf(x, 0) {
+			return 0, fmt.Errorf("%q is not a temperature; %s", s, cure)
+		}
+		if k := u.kelvin(x); k > 0 {
+			return k, nil
+		}
+		return 0, fmt.Errorf("%q is not above absolute zero", s)
+	}
+	return 0, fmt.Errorf("%q has no unit of temperature; %s", s, cure)
+}
+
+// band is the value of --prefactor-band: two exponents, 0..1.
+type band struct{ ends *[2]float64 }
+
+func (b band) String() string { return fmt.Sprintf("%g..%g", b.ends[0], b.ends[1]) }
+func (b band) Type() string   { return "low..high" }
+func (b band) Set(s string) error {
+	low, high, ok := strings.Cut(s, "..")
+	x, err1 := strconv.ParseFloat(low, 64)
+	y, err2 := strconv.ParseFloat(high, 64)
+	if !ok || err1 != nil || err2 != nil || !(x <= 0 && y >= 0) || math.IsInf(x-y, 0) {
+		return fmt.Errorf("%q is not a band of exponents that holds 0; write it as 0..1", s)
+	}
+	*b.ends = [2]float64{x, y}
+	return nil
+}
+
+// pairs is the value of a flag that takes key=value, repeated or separated by
+// commas.
+type pairs struct{ m *map[string]string }
+
+func (p pairs) String() string { return "" }
+func (p pairs) Type() string   { return "key=value" }
+func (p pairs) Set(s string) error {
+	if *p.m == nil {
+		*p.m = map[string]string{}
+	}
+	for _, part := range strings.Split(s, ",") {
+		key, value, ok := strings.Cut(part, "=")
+		key, value = strings.TrimSpace(key), strings.TrimSpace(value)
+		if !ok || key == "" || value == "" {
+			return fmt.Errorf("%q is not of the form key=value", part)
+		}
+		(*p.m)[key] = value
+	}
+	return nil
+}
+
+// column is the value of --column: role=HEADING, where a heading may hold commas.
+type column struct{ m *map[string]string }
+
+func (c column) String() string { return "" }
+func (c column) Type() string   { return "role=heading" }
+func (c column) Set(s string) error {
+	role, heading, ok := strings.Cut(s, "=")
+	if !ok || strings.TrimSpace(role) == "" || strings.TrimSpace(heading) == "" {
+		return fmt.Errorf("%q is not of the form role=HEADING", s)
+	}
+	if *c.m == nil {
+		*c.m = map[string]string{}
+	}
+	(*c.m)[strings.TrimSpace(role)] = strings.TrimSpace(heading)
+	return nil
+}
+
+// completeWith offers words for the value of a flag.
+func completeWith(cmd *cobra.Command, flag string, words ...string) {
+	err := cmd.RegisterFlagCompletionFunc(flag, func(*cobra.Command, []string, string) ([]string, cobra.ShellCompDirective) {
+		return words, cobra.ShellCompDirectiveNoFileComp
+	})
+	if err != nil {
+		panic(err) // the flag does not exist: a bug of the caller
+	}
+}
+
+// closest returns the word that is nearest to a mistyped one, "" if none is near.
+func closest(typed string, words []string) string {
+	best, most := "", 1+len(typed)/4
+	for _, w := range words {
+		if d := editDistance(typed, w); d <= most {
+			best, most = w, d-1
+		}
+	}
+	if best == "" && len(typed) >= 3 {
+		for _, w := range words {
+			if strings.HasPrefix(w, typed) {
+				return w
+			}
+		}
+	}
+	return best
+}
+
+// editDistance counts the letters to insert, delete, replace or swap with their
+// neighbour (V. I. Levenshtein, Sov. Phys. Dokl. 10 (1966) 707; F. J. Damerau,
+// Commun. ACM 7 (1964) 171).
+func editDistance(a, b string) int {
+	x, y := []rune(a), []rune(b)
+	rows := make([][]int, len(x)+1)
+	for i := range rows {
+		rows[i] = make([]int, len(y)+1)
+		rows[i][0] = i
+	}
+	for j := range rows[0] {
+		rows[0][j] = j
+	}
+	for i := 1; i <= len(x); i++ {
+		for j := 1; j <= len(y); j++ {
+			cost := 1
+			if x[i-1] == y[j-1] {
+				cost = 0
+			}
+			rows[i][j] = min(rows[i-1][j]+1, rows[i][j-1]+1, rows[i-1][j-1]+cost)
+			if i > 1 && j > 1 && x[i-1] == y[j-2] && x[i-2] == y[j-1] {
+				rows[i][j] = min(rows[i][j], rows[i-2][j-2]+1)
+			}
+		}
+	}
+	return rows[len(x)][len(y)]
+}

@@ -1,0 +1,245 @@
+package report
+
+import (
+	"cmp"
+	"fmt"
+	"io"
+	"slices"
+	"strings"
+
+	"onebarrier/diagnostics"
+)
+
+// WriteAssessment prints an assessment so that it is read in half a minute: the
+// verdict first, then what to publish, what the verdict rests on, the ranking,
+// the findings with their cures, the data, and what to do next. figures names
+// the pictures that were written.
+func WriteAssessment(w io.Writer, a *diagnostics.Assessment, figures []string, t Text) error {
+	p := t.newPage()
+	p.verdict(a)
+	p.publish(a)
+	p.test(a)
+	p.ranking(a)
+	p.findings(a)
+	p.data(a)
+	p.section("figures", figures...)
+	p.next(a, figures)
+	return p.writeTo(w)
+}
+
+func (p *page) verdict(a *diagnostics.Assessment) {
+	var lines []string
+	for _, l := range wrap(a.Verdict.Sentence, p.body()) {
+		lines = append(lines, p.bold(l))
+	}
+	facts := []string{"verdict " + string(a.Verdict.State)}
+	switch a.Verdict.ETrend {
+	case "rises", "falls":
+		facts = append(facts, "E "+a.Verdict.ETrend+" with T")
+	}
+	if a.Verdict.State != diagnostics.Untestable {
+		m := "whether it matters is open"
+		if a.Verdict.Material != nil {
+			m = map[bool]string{true: "large enough to matter", false: "too small to matter"}[*a.Verdict.Material]
+		}
+		facts = append(facts, m)
+	}
+	facts = append(facts, "recommended curve: "+or(a.Verdict.RecommendedCurve, "none of the candidates fits"))
+	p.section("verdict", append(lines, wrap(strings.Join(facts, " · "), p.body())...)...)
+}
+
+func (p *page) publish(a *diagnostics.Assessment) {
+	var rows [][]string
+	for _, l := range a.Publish.Lines {
+		rows = append(rows, []string{l.Symbol, or(l.Text, unknown), l.Note})
+	}
+	lines := p.fit(rows)
+	p.section("publish", append(lines, wrapAll(a.Publish.Notes, p.body())...)...)
+}
+
+// fit sets rows as a table and wraps the last column where the page is too narrow.
+func (p *page) fit(rows [][]string) []string {
+	var lines []string
+	heads := make([][]string, len(rows))
+	for i, r := range rows {
+		heads[i] = r[:len(r)-1]
+	}
+	set := table(heads)
+	indent := 0
+	for _, s := range set {
+		indent = max(indent, len([]rune(s))+2)
+	}
+	for i, r := range rows {
+		last := r[len(r)-1]
+		if last == "" {
+			lines = append(lines, set[i])
+			continue
+		}
+		lines = append(lines, hang(set[i], indent, last, p.body())...)
+	}
+	return lines
+}
+
+func (p *page) test(a *diagnostics.Assessment) {
+	c := a.Curvature
+	d := decimalsOf(c.EChange)
+	nd := decimalsOf(c.Exponent)
+	sure := fmt.Sprintf("(%s", percent(diagnostics.Real(a.Settings.Confidence)))
+	band := a.Settings.PrefactorBand
+	var rows [][]string
+	if c.EChange.Value.Known() {
+		rows = append(rows,
+			[]string{fmt.Sprintf("change of E, %s to %s K", kelvin(a.Dataset.TMin), kelvin(a.Dataset.TMax)),
+				fmt.Sprintf("%s\u00a0kJ/mol %s: %s)", signed(c.EChange.Value, d), sure, interval(c.EChange, d))},
+			[]string{"too small to matter below", fmt.Sprintf("%s\u00a0kJ/mol", significant(c.ToleranceKJ, 2))},
+			[]string{"exponent n of T", fmt.Sprintf("%s %s: %s)", signed(c.Exponent.Value, nd), sure, interval(c.Exponent, nd))},
+			[]string{"p for n = 0", probability(c.PValue)},
+			[]string{fmt.Sprintf("p for n in %g..%g", band[0], band[1]), probability(c.PBand)})
+		if c.PScaleFree.Known() {
+			rows = append(rows, []string{"p without u(k) as stated", probability(c.PScaleFree)})
+		}
+	}
+	if c.Detectable.Value.Known() {
+		dd := decimalsOf(c.Detectable)
+		text := fmt.Sprintf("%s\u00a0kJ/mol with 80\u00a0%% power", plain(c.Detectable.Value, dd))
+		if c.Detectable.Lower.Known() || c.Detectable.Upper.Known() {
+			text += fmt.Sprintf(" (%s to %s)", plain(c.Detectable.Lower, dd), plain(c.Detectable.Upper, dd))
+		}
+		rows = append(rows, []string{"would have been seen", text})
+	}
+	if pw := c.Pointwise; pw != nil {
+		rows = append(rows, []string{"the same on single points", fmt.Sprintf("n = %s, p = %s", signed(pw.Exponent.Value, nd), probability(pw.PValue))})
+	}
+	if s := c.SecondBarrier; s != nil {
+		text := fmt.Sprintf("p = %s", probability(s.PValue))
+		if s.PValue < 0.05 && s.Crossover[0].Known() {
+			text += fmt.Sprintf(", crossover between %s and %s\u00a0K", kelvin(s.Crossover[0]), kelvin(s.Crossover[1]))
+		}
+		rows = append(rows, []string{"second barrier, E rising", text})
+	}
+	if b := a.Bootstrap; b != nil && len(b.RepeatShare) > 0 {
+		var shares []string
+		states := slices.Clone(diagnostics.States)
+		slices.SortStableFunc(states, func(x, y diagnostics.State) int { return cmp.Compare(b.RepeatShare[y], b.RepeatShare[x]) })
+		for _, s := range states {
+			if share, ok := b.RepeatShare[s]; ok && share > 0 {
+				shares = append(shares, string(s)+"\u00a0"+strings.ReplaceAll(percent(share), " ", "\u00a0"))
+			}
+		}
+		text := strings.Join(shares, ", ")
+		if b.Failed > 0 {
+			text += fmt.Sprintf(" (%d of %d resamples failed)", b.Failed, b.Resamples)
+		}
+		rows = append(rows, []string{"a repeat would say", text})
+	}
+	p.section("test", p.fit(rows)...)
+}
+
+func (p *page) ranking(a *diagnostics.Assessment) {
+	criterion := map[string]string{"aicc": "AICc", "aic": "AIC", "bic": "BIC"}[a.Settings.Criterion]
+	rows := [][]string{{"curve", "p", criterion, "Δ", "family", "curve", "repeats", "fits"}}
+	for _, r := range a.Ranking {
+		if r.Status == "excluded" {
+			continue
+		}
+		x := map[string]diagnostics.Real{"aicc": r.AICc, "aic": r.AIC, "bic": r.BIC}[a.Settings.Criterion]
+		fits := "not checked"
+		if r.Adequate != nil {
+			fits = map[bool]string{true: "yes", false: "no"}[*r.Adequate]
+		}
+		rows = append(rows, []string{r.Curve, fmt.Sprint(r.Params), plain(x, 2), plain(r.Delta, 2),
+			percent(r.FamWeight), percent(r.Weight), percent(r.RepeatShare), fits})
+	}
+	set := table(rows, 1, 2, 3, 4, 5, 6)
+	lines := []string{p.dim(set[0])}
+	i := 0
+	for _, r := range a.Ranking {
+		if r.Status == "excluded" {
+			lines = append(lines, wrap(r.Curve+" is excluded: "+or(r.Reason, "no reason given"), p.body())...)
+			continue
+		}
+		i++
+		lines = append(lines, set[i])
+		if r.Reason != "" {
+			lines = append(lines, hang("", 2, r.Reason, p.body())...)
+		}
+		for _, f := range r.Forms {
+			lines = append(lines, hang("", 2, "· "+form(f, a), p.body())...)
+		}
+	}
+	lines = append(lines, wrap("weights: of the family, then of the curve within it all; repeats: how often a repeat of the experiment would put the curve first", p.body())...)
+	p.section("ranking", lines...)
+}
+
+// form writes one reading of a curve in a line.
+func form(f diagnostics.FormEstimate, a *diagnostics.Assessment) string {
+	if f.Withheld != "" {
+		return f.Model + " – " + f.Withheld
+	}
+	var parts []string
+	for _, q := range f.Parameters {
+		s := symbol(q.Symbol) + "\u00a0" + brackets(q.Estimate)
+		if u := unit(q.Unit); u != "" {
+			s += "\u00a0" + strings.ReplaceAll(u, " ", "\u00a0")
+		}
+		parts = append(parts, s)
+	}
+	s := f.Model + " " + strings.Join(parts, ", ")
+	if f.TRef.Known() && slices.ContainsFunc(f.Parameters, func(q diagnostics.ParameterEstimate) bool { return q.Symbol == "n" || q.Symbol == "dCp" }) {
+		s += fmt.Sprintf(" at\u00a0%s\u00a0K", kelvin(f.TRef))
+	}
+	return s
+}
+
+func (p *page) findings(a *diagnostics.Assessment) {
+	weight := map[diagnostics.Severity]int{diagnostics.Alarm: 0, diagnostics.Warning: 1, diagnostics.Info: 2}
+	fs := slices.Clone(a.Findings)
+	slices.SortStableFunc(fs, func(x, y diagnostics.Finding) int { return cmp.Compare(weight[x.Severity], weight[y.Severity]) })
+	var lines []string
+	for _, f := range fs {
+		label := string(f.Severity) + "\u00a0" + f.Code
+		styled := p.bold(label)
+		if f.Severity != diagnostics.Info {
+			styled = p.amber(label)
+		}
+		lines = append(lines, p.note(styled, label, f.Message, f.Cure, f.Rows)...)
+	}
+	p.section("findings", lines...)
+}
+
+func (p *page) data(a *diagnostics.Assessment) {
+	d := a.Dataset
+	facts := fmt.Sprintf("%s: %s, %d used, at %s from %s to %s\u00a0K; %s", strings.Join(d.Files, ", "),
+		count(d.Points, "point"), d.Used, count(d.Temperatures, "temperature"), kelvin(d.TMin), kelvin(d.TMax), d.Quantity.Symbol)
+	if d.Quantity.Unit != "" {
+		facts += " in " + d.Quantity.Unit
+	}
+	lines := wrap(facts, p.body())
+	lines = append(lines, wrap(fmt.Sprintf("error model %s: %s", a.Settings.ErrorModel, a.Settings.ErrorModelWhy), p.body())...)
+	for _, s := range a.Settings.Assumed {
+		lines = append(lines, wrap("assumed: "+s, p.body())...)
+	}
+	for _, s := range a.Settings.Selection {
+		lines = append(lines, wrap("selection: "+s, p.body())...)
+	}
+	for _, r := range a.Data {
+		if !r.Used {
+			lines = append(lines, hang(fmt.Sprintf("line %d left out:", r.Row), 18, or(r.WhyNot, "no reason given"), p.body())...)
+		}
+	}
+	p.section("data", lines...)
+}
+
+func (p *page) next(a *diagnostics.Assessment, figures []string) {
+	rows := [][]string{{"onebarrier explain " + string(a.Verdict.State), "this verdict in full"}}
+	for _, f := range a.Findings {
+		if f.Severity == diagnostics.Alarm {
+			rows = append(rows, []string{"onebarrier explain " + f.Code, "this alarm in full"})
+			break
+		}
+	}
+	if len(figures) == 0 && len(a.Dataset.Files) > 0 && a.Dataset.Files[0] != "-" {
+		rows = append(rows, []string{"onebarrier assess " + shellWord(a.Dataset.Files[0]) + " --figures figures", "the pictures"})
+	}
+	p.section("next", p.fit(rows)...)
+}

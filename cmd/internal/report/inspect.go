@@ -1,0 +1,266 @@
+package report
+
+import (
+	"crypto/sha256"
+	"fmt"
+	"io"
+	"math"
+	"strings"
+
+	"onebarrier/diagnostics"
+	"onebarrier/models/dataset"
+)
+
+// InspectSchema names the layout of what was read.
+const InspectSchema = "onebarrier.inspect/1"
+
+// Inspection says what was read from files: the document of inspect.
+type Inspection struct {
+	Schema   string           `json:"schema"`
+	Tool     diagnostics.Tool `json:"tool"`
+	Files    []InspectedFile  `json:"files"`
+	Problems []Problem        `json:"problems"` // of files that could not be read
+}
+
+// InspectedFile is one file that could be read.
+type InspectedFile struct {
+	File   string         `json:"file"`
+	SHA256 string         `json:"sha256"`
+	Sets   []InspectedSet `json:"sets"`
+}
+
+// InspectedSet is one data set of a file.
+type InspectedSet struct {
+	Name         string               `json:"name"`
+	Points       int                  `json:"points"`
+	Used         int                  `json:"used"`
+	Temperatures int                  `json:"temperatures"`
+	TMin         diagnostics.Real     `json:"t_min_k"`
+	TMax         diagnostics.Real     `json:"t_max_k"`
+	Quantity     diagnostics.Quantity `json:"quantity"`
+	Columns      []InspectedColumn    `json:"columns"`
+	Data         []InspectedRow       `json:"data"`
+	Assumed      []string             `json:"assumed"`
+	Notices      []InspectedNotice    `json:"notices"`
+}
+
+// InspectedColumn says what one column was taken for.
+type InspectedColumn struct {
+	Index      int              `json:"index"`
+	Heading    string           `json:"heading"`
+	Role       string           `json:"role"`
+	Unit       string           `json:"unit"`
+	Factor     diagnostics.Real `json:"factor"`
+	Level      string           `json:"level"`
+	Confidence string           `json:"confidence"`
+	Examples   []string         `json:"examples"`
+}
+
+// InspectedRow is one row as understood.
+type InspectedRow struct {
+	Row    int              `json:"row"`
+	T      diagnostics.Real `json:"t_k"`
+	UT     diagnostics.Real `json:"u_t_k"`
+	K      diagnostics.Real `json:"k"`
+	UK     diagnostics.Real `json:"u_k"`
+	Limit  string           `json:"limit"`
+	Source string           `json:"source"`
+	Used   bool             `json:"used"`
+	WhyNot string           `json:"why_not"`
+}
+
+// InspectedNotice is something to know about the data.
+type InspectedNotice struct {
+	Code    string `json:"code"`
+	Message string `json:"message"`
+	Cure    string `json:"cure"`
+	Rows    []int  `json:"rows"`
+}
+
+// NewInspectedFile describes the sets of one file and the bytes they came from.
+func NewInspectedFile(name string, content []byte, sets []*dataset.Set) InspectedFile {
+	f := InspectedFile{name, fmt.Sprintf("%x", sha256.Sum256(content)), []InspectedSet{}}
+	for _, s := range sets {
+		f.Sets = append(f.Sets, newInspectedSet(s))
+	}
+	return f
+}
+
+func newInspectedSet(s *dataset.Set) InspectedSet {
+	nan := diagnostics.Real(math.NaN())
+	out := InspectedSet{
+		Name: s.Name, Points: len(s.Points), TMin: nan, TMax: nan,
+		Quantity: diagnostics.Quantity{Symbol: s.Quantity.Symbol, Unit: s.Quantity.Unit, DimensionKnown: s.Quantity.Known},
+		Columns:  []InspectedColumn{}, Data: []InspectedRow{},
+		Assumed: append([]string{}, s.Assumed...), Notices: []InspectedNotice{},
+	}
+	stated := func(x float64) diagnostics.Real {
+		if x == 0 {
+			return nan // not stated
+		}
+		return diagnostics.Real(x)
+	}
+	distinct := map[float64]bool{}
+	for _, p := range s.Points {
+		out.Data = append(out.Data, InspectedRow{p.Row, diagnostics.Real(p.T), stated(p.UT), diagnostics.Real(p.K), stated(p.UK),
+			p.Limit, p.Source, p.Used, p.WhyNot})
+		if !p.Used {
+			continue
+		}
+		t := diagnostics.Real(p.T)
+		if out.Used == 0 {
+			out.TMin, out.TMax = t, t
+		}
+		out.Used++
+		out.TMin, out.TMax = min(out.TMin, t), max(out.TMax, t)
+		distinct[p.T] = true
+	}
+	out.Temperatures = len(distinct)
+	for _, c := range s.Columns {
+		out.Columns = append(out.Columns, InspectedColumn{c.Index, c.Heading, c.Role, c.Unit, diagnostics.Real(c.Factor),
+			c.Level, c.Confidence, append([]string{}, c.Examples...)})
+	}
+	for _, n := range s.Notices {
+		out.Notices = append(out.Notices, InspectedNotice{n.Code, n.Message, n.Cure, append([]int{}, n.Rows...)})
+	}
+	return out
+}
+
+// WriteInspection prints what was read. Files that could not be read are not part
+// of it: their problems go where errors go.
+func WriteInspection(w io.Writer, doc Inspection, t Text) error {
+	p := t.newPage()
+	for _, f := range doc.Files {
+		for _, s := range f.Sets {
+			p.inspectedSet(f, s)
+		}
+	}
+	if len(doc.Files) > 0 {
+		f := doc.Files[0]
+		next := "onebarrier assess " + shellWord(f.File)
+		if len(f.Sets) > 1 {
+			next += " --dataset " + shellWord(f.Sets[0].Name)
+		}
+		p.section("next", next)
+	}
+	return p.writeTo(w)
+}
+
+func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
+	about := p.bold(f.File)
+	if len(f.Sets) > 1 {
+		about = p.bold(s.Name) + " in " + f.File
+	}
+	facts := count(s.Points, "row") + fmt.Sprintf(", %d used", s.Used)
+	if s.Used > 0 {
+		facts += fmt.Sprintf(", at %s from %s to %s\u00a0K", count(s.Temperatures, "temperature"), kelvin(s.TMin), kelvin(s.TMax))
+	}
+	lines := append([]string{about}, wrap(facts, p.body())...)
+	rate := s.Quantity.Symbol + " in " + s.Quantity.Unit
+	if !s.Quantity.DimensionKnown {
+		rate = s.Quantity.Symbol + " in a unit that was not understood: entropies and free energies will be withheld"
+		if s.Quantity.Unit != "" {
+			rate = fmt.Sprintf("%s in %q, a unit that was not understood: entropies and free energies will be withheld", s.Quantity.Symbol, s.Quantity.Unit)
+		}
+	}
+	p.section("read", append(lines, wrap(rate, p.body())...)...)
+
+	rows := [][]string{{"heading", "taken for", "unit", "how sure"}}
+	for _, c := range s.Columns {
+		role, u := c.Role, c.Unit
+		if c.Level != "" {
+			role += " (" + c.Level + ")"
+		}
+		if c.Factor.Known() && c.Factor != 1 && c.Factor != 0 {
+			u = strings.TrimSpace("×" + significant(c.Factor, 4) + " " + u)
+		}
+		rows = append(rows, []string{or(c.Heading, unknown), role, or(u, unknown), or(c.Confidence, unknown)})
+	}
+	columns := table(rows)
+	columns[0] = p.dim(columns[0])
+	p.section("columns", columns...)
+	p.section("assumed", wrapAll(s.Assumed, p.body())...)
+
+	var left []string
+	for _, d := range s.Data {
+		if !d.Used {
+			left = append(left, hang(fmt.Sprintf("line %d", d.Row), 11, or(d.WhyNot, "no reason given"), p.body())...)
+		}
+	}
+	p.section("left out", left...)
+
+	var notices []string
+	for _, n := range s.Notices {
+		notices = append(notices, p.note(p.bold(n.Code), n.Code, n.Message, n.Cure, n.Rows)...)
+	}
+	p.section("notices", notices...)
+}
+
+// note prints a finding: its code, what was found and on which lines, its cure.
+func (p *page) note(label, plainLabel, message, cure string, rows []int) []string {
+	text := plainLabel + ":\u00a0" + message
+	if len(rows) > 0 {
+		text += " (" + lineList(rows) + ")"
+	}
+	lines := wrap(text, p.body())
+	// The label was wrapped without its colour, which has no width.
+	lines[0] = label + strings.TrimPrefix(lines[0], plainLabel)
+	if cure != "" {
+		lines = append(lines, hang("→", 2, cure, p.body())...)
+	}
+	return lines
+}
+
+// lineList names the first few lines of a file.
+func lineList(rows []int) string {
+	const most = 8
+	s := "line "
+	if len(rows) > 1 {
+		s = "lines "
+	}
+	for i, r := range rows {
+		if i == most {
+			return s + fmt.Sprintf(" and %d more", len(rows)-most)
+		}
+		if i > 0 {
+			s += ", "
+		}
+		s += fmt.Sprint(r)
+	}
+	return s
+}
+
+func wrapAll(texts []string, width int) []string {
+	var lines []string
+	for _, t := range texts {
+		lines = append(lines, wrap(t, width)...)
+	}
+	return lines
+}
+
+// kelvin writes a temperature to the digits that matter.
+func kelvin(t diagnostics.Real) string {
+	if !t.Known() {
+		return unknown
+	}
+	s := fmt.Sprintf("%.2f", float64(t))
+	return strings.TrimRight(strings.TrimRight(s, "0"), ".")
+}
+
+func or(s, instead string) string {
+	if s == "" {
+		return instead
+	}
+	return s
+}
+
+// shellWord quotes a word for a shell where it needs quoting.
+func shellWord(s string) string {
+	safe := func(r rune) bool {
+		return r >= 'a' && r <= 'z' || r >= 'A' && r <= 'Z' || r >= '0' && r <= '9' || strings.ContainsRune("_-./,:=+@%", r) || r > 127
+	}
+	if s != "" && strings.IndexFunc(s, func(r rune) bool { return !safe(r) }) < 0 {
+		return s
+	}
+	return "'" + strings.ReplaceAll(s, "'", `'\''`) + "'"
+}
