@@ -98,8 +98,13 @@ func CentredX(tRef float64, t, x []float64) {
 	}
 }
 
-// logRatio returns ln(t/tRef), accurate when t is close to tRef.
-func logRatio(t, tRef float64) float64 { return math.Log1p((t - tRef) / tRef) }
+// logRatio returns ln(t/tRef), accurate near t = tRef and far from it.
+func logRatio(t, tRef float64) float64 {
+	if z := (t - tRef) / tRef; math.Abs(z) < 0.5 {
+		return math.Log1p(z)
+	}
+	return math.Log(t / tRef)
+}
 
 func mustLen(what string, got, want int) {
 	if got != want {

@@ -25,7 +25,8 @@ type Form struct {
 	// standard state of k: they are withheld where the unit is not understood.
 	NeedsTimeUnit bool
 	// FromCurve turns canonical parameters p into the form's q and, where jac is
-	// not nil, fills the len(q) x len(p) matrix dq/dp in row-major order.
+	// not nil, fills the len(q) x len(p) matrix dq/dp in row-major order. Wrong
+	// lengths are a caller's bug and panic, here as in ToCurve.
 	FromCurve func(fr Frame, p, q, jac []float64)
 	// ToCurve turns the form's parameters back.
 	ToCurve func(fr Frame, q, p []float64)
@@ -33,21 +34,38 @@ type Form struct {
 
 const kilo = 1000
 
-// unitEntropy is R ln(k_B T/h) as it enters ΔS‡, without the R.
+// checkForm panics unless a form with nq parameters of a curve with np was called
+// with slices of those lengths.
+func checkForm(np, nq int, p, q []float64) {
+	mustLen("parameters", len(p), np)
+	mustLen("form parameters", len(q), nq)
+}
+
+// fill copies the rows of a form's Jacobian, where one is wanted.
+func fill(jac []float64, rows ...float64) {
+	if jac == nil {
+		return
+	}
+	mustLen("Jacobian", len(jac), len(rows))
+	copy(jac, rows)
+}
+
+// lnUniversal is ln of k_B T/h in s^-1, the universal frequency of
+// transition-state theory.
 func lnUniversal(t float64) float64 { return math.Log(Boltzmann / Planck * t) }
 
 // expFactor fills the values and Jacobian of (ln A, E) for
 // ln k = ln A + m ln(T/T_form) - E/RT, from a = ln k(T_ref) and E in J/mol.
 func expFactor(fr Frame, m float64, p, q, jac []float64) {
+	checkForm(2, 2, p, q)
 	u := 1 / (GasConstant * fr.TRef)
 	q[0] = p[0] + p[1]*u - m*logRatio(fr.TRef, fr.TForm)
 	q[1] = p[1] / kilo
-	if jac != nil {
-		copy(jac, []float64{1, u, 0, 1. / kilo})
-	}
+	fill(jac, 1, u, 0, 1./kilo)
 }
 
 func expFactorBack(fr Frame, m float64, q, p []float64) {
+	checkForm(2, 2, p, q)
 	p[1] = q[1] * kilo
 	p[0] = q[0] - p[1]/(GasConstant*fr.TRef) + m*logRatio(fr.TRef, fr.TForm)
 }
@@ -83,13 +101,13 @@ var eyring = Form{
 		{"dS", "entropy of activation", "J mol^-1 K^-1"},
 	},
 	FromCurve: func(fr Frame, p, q, jac []float64) {
+		checkForm(2, 2, p, q)
 		q[0] = p[1] / kilo
 		q[1] = GasConstant*(p[0]+fr.LnPerSecond-lnUniversal(fr.TRef)) + p[1]/fr.TRef
-		if jac != nil {
-			copy(jac, []float64{0, 1. / kilo, GasConstant, 1 / fr.TRef})
-		}
+		fill(jac, 0, 1./kilo, GasConstant, 1/fr.TRef)
 	},
 	ToCurve: func(fr Frame, q, p []float64) {
+		checkForm(2, 2, p, q)
 		p[1] = q[0] * kilo
 		p[0] = (q[1]-p[1]/fr.TRef)/GasConstant + lnUniversal(fr.TRef) - fr.LnPerSecond
 	},
@@ -105,20 +123,19 @@ var modifiedArrhenius = Form{
 	},
 	// E = E_ref - nRT_ref; ln A = a + E/RT_ref - n ln(T_ref/T_form)
 	FromCurve: func(fr Frame, p, q, jac []float64) {
+		checkForm(3, 3, p, q)
 		u := 1 / (GasConstant * fr.TRef)
 		l := logRatio(fr.TRef, fr.TForm)
 		q[0] = p[0] + p[1]*u - p[2]*(1+l)
 		q[1] = p[2]
 		q[2] = (p[1] - p[2]*GasConstant*fr.TRef) / kilo
-		if jac != nil {
-			copy(jac, []float64{
-				1, u, -(1 + l),
-				0, 0, 1,
-				0, 1. / kilo, -GasConstant * fr.TRef / kilo,
-			})
-		}
+		fill(jac,
+			1, u, -(1 + l),
+			0, 0, 1,
+			0, 1./kilo, -GasConstant*fr.TRef/kilo)
 	},
 	ToCurve: func(fr Frame, q, p []float64) {
+		checkForm(3, 3, p, q)
 		p[2] = q[1]
 		p[1] = q[2]*kilo + q[1]*GasConstant*fr.TRef
 		p[0] = q[0] - p[1]/(GasConstant*fr.TRef) + p[2]*(1+logRatio(fr.TRef, fr.TForm))
@@ -139,6 +156,7 @@ var eyringHeatCapacity = Form{
 		{"dCp", "heat capacity of activation", "J mol^-1 K^-1"},
 	},
 	FromCurve: func(fr Frame, p, q, jac []float64) {
+		checkForm(3, 3, p, q)
 		// ln k and E_loc moved from T_ref to T_form along the curve.
 		u := (fr.TForm - fr.TRef) / (GasConstant * fr.TForm * fr.TRef)
 		b := bend(fr.TRef, fr.TForm)
@@ -148,15 +166,13 @@ var eyringHeatCapacity = Form{
 		q[0] = dh / kilo
 		q[1] = GasConstant*(lnk+fr.LnPerSecond-lnUniversal(fr.TForm)) + dh/fr.TForm
 		q[2] = GasConstant * (p[2] - 1)
-		if jac != nil {
-			copy(jac, []float64{
-				0, 1. / kilo, d / kilo,
-				GasConstant, GasConstant*u + 1/fr.TForm, GasConstant*b + d/fr.TForm,
-				0, 0, GasConstant,
-			})
-		}
+		fill(jac,
+			0, 1./kilo, d/kilo,
+			GasConstant, GasConstant*u+1/fr.TForm, GasConstant*b+d/fr.TForm,
+			0, 0, GasConstant)
 	},
 	ToCurve: func(fr Frame, q, p []float64) {
+		checkForm(3, 3, p, q)
 		p[2] = 1 + q[2]/GasConstant
 		dh := q[0] * kilo
 		p[1] = dh + GasConstant*fr.TForm - p[2]*GasConstant*(fr.TForm-fr.TRef)
@@ -176,33 +192,34 @@ var parallelBarriers = Form{
 		{"E2", "activation energy of the path with the higher barrier", "kJ mol^-1"},
 		{"T_x", "crossover temperature, where both paths are equally fast", "K"},
 	},
-	// k1 = k2 where 1/T_x = 1/T_ref + R (a2 - a1)/(E2 - E1). With E2 = E1 there
-	// is none, and T_x is NaN.
+	// k1 = k2 where 1/T_x = 1/T_ref + R (a2 - a1)/(E2 - E1). Where E2 = E1, or
+	// where that is not the reciprocal of a temperature, there is no crossover:
+	// T_x and its derivatives are NaN.
 	FromCurve: func(fr Frame, p, q, jac []float64) {
+		checkForm(4, 5, p, q)
 		u := 1 / (GasConstant * fr.TRef)
 		q[0], q[1] = p[0]+p[1]*u, p[1]/kilo
 		q[2], q[3] = p[2]+p[3]*u, p[3]/kilo
 		da, de := p[2]-p[0], p[3]-p[1]
-		inv := 1/fr.TRef + GasConstant*da/de
-		tx := 1 / inv
+		tx := 1 / (1/fr.TRef + GasConstant*da/de)
+		if !(tx > 0) || math.IsInf(tx, 1) {
+			tx = math.NaN()
+		}
 		q[4] = tx
-		if de == 0 || inv <= 0 {
-			q[4] = math.NaN()
-		}
-		if jac != nil {
-			g := -tx * tx * GasConstant / de // dT_x/dda
-			copy(jac, []float64{
-				1, u, 0, 0,
-				0, 1. / kilo, 0, 0,
-				0, 0, 1, u,
-				0, 0, 0, 1. / kilo,
-				-g, g * da / de, g, -g * da / de,
-			})
-		}
+		g := -tx * tx * GasConstant / de // dT_x/dda
+		fill(jac,
+			1, u, 0, 0,
+			0, 1./kilo, 0, 0,
+			0, 0, 1, u,
+			0, 0, 0, 1./kilo,
+			-g, g*da/de, g, -g*da/de)
 	},
+	// T_x follows from the rest and is not read.
 	ToCurve: func(fr Frame, q, p []float64) {
+		checkForm(4, 5, p, q)
 		u := 1 / (GasConstant * fr.TRef)
 		p[1], p[3] = q[1]*kilo, q[3]*kilo
 		p[0], p[2] = q[0]-p[1]*u, q[2]-p[3]*u
+		lowerFirst(p)
 	},
 }

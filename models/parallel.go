@@ -26,15 +26,15 @@ func (Parallel) Info() Info {
 	}
 }
 
-// softplus returns ln(1 + e^s) and its derivative, the logistic of s, without
-// overflow or loss of digits at either end.
-func softplus(s float64) (value, slope float64) {
+// softplus returns ln(1 + e^s), its derivative (the logistic of s) and what that
+// derivative lacks to 1, without overflow or loss of digits at either end.
+func softplus(s float64) (value, slope, rest float64) {
 	if s > 0 {
 		e := math.Exp(-s)
-		return s + math.Log1p(e), 1 / (1 + e)
+		return s + math.Log1p(e), 1 / (1 + e), e / (1 + e)
 	}
 	e := math.Exp(s)
-	return math.Log1p(e), e / (1 + e)
+	return math.Log1p(e), e / (1 + e), 1 / (1 + e)
 }
 
 // LnK implements Curve.
@@ -43,12 +43,11 @@ func (Parallel) LnK(tRef float64, t, p, f, jac []float64) {
 	for i, ti := range t {
 		u := (ti - tRef) / (GasConstant * ti * tRef)
 		l1, l2 := p[0]+p[1]*u, p[2]+p[3]*u
-		v, w2 := softplus(l2 - l1)
+		v, w2, w1 := softplus(l2 - l1)
 		if f != nil {
 			f[i] = l1 + v
 		}
 		if jac != nil {
-			_, w1 := softplus(l1 - l2)
 			jac[4*i], jac[4*i+1], jac[4*i+2], jac[4*i+3] = w1, w1*u, w2, w2*u
 		}
 	}
@@ -60,8 +59,7 @@ func (Parallel) ELoc(tRef float64, t, p, f, jac []float64) {
 	for i, ti := range t {
 		u := (ti - tRef) / (GasConstant * ti * tRef)
 		d := p[2] - p[0] + (p[3]-p[1])*u
-		_, w2 := softplus(d)
-		_, w1 := softplus(-d)
+		_, w2, w1 := softplus(d)
 		if f != nil {
 			f[i] = w1*p[1] + w2*p[3]
 		}
@@ -79,8 +77,17 @@ func (Parallel) ShapeDim() int { return 2 }
 // Shape implements Shaped: g = ln(1 + e^(c - d x)), q = (c, d).
 func (Parallel) Shape(x, q, g, dg, d2g []float64) {
 	mustLen("shape parameters", len(q), 2)
+	if g != nil {
+		mustLen("values", len(g), len(x))
+	}
+	if dg != nil {
+		mustLen("first derivatives", len(dg), 2*len(x))
+	}
+	if d2g != nil {
+		mustLen("second derivatives", len(d2g), 3*len(x))
+	}
 	for i, xi := range x {
-		v, s := softplus(q[0] - q[1]*xi)
+		v, s, rest := softplus(q[0] - q[1]*xi)
 		if g != nil {
 			g[i] = v
 		}
@@ -88,7 +95,7 @@ func (Parallel) Shape(x, q, g, dg, d2g []float64) {
 			dg[2*i], dg[2*i+1] = s, -s*xi
 		}
 		if d2g != nil {
-			h := s * (1 - s)
+			h := s * rest
 			d2g[3*i], d2g[3*i+1], d2g[3*i+2] = h, -h*xi, h*xi*xi
 		}
 	}
@@ -96,7 +103,15 @@ func (Parallel) Shape(x, q, g, dg, d2g []float64) {
 
 // FromShape implements Shaped, with the lower barrier first.
 func (Parallel) FromShape(a, e float64, q, p []float64) {
+	mustLen("shape parameters", len(q), 2)
+	mustLen("parameters", len(p), 4)
 	p[0], p[1], p[2], p[3] = a, e, a+q[0], e+q[1]
+	lowerFirst(p)
+}
+
+// lowerFirst puts the path with the lower barrier first: k1 + k2 does not tell
+// them apart, the names of the parameters do.
+func lowerFirst(p []float64) {
 	if p[3] < p[1] {
 		p[0], p[1], p[2], p[3] = p[2], p[3], p[0], p[1]
 	}
@@ -104,6 +119,7 @@ func (Parallel) FromShape(a, e float64, q, p []float64) {
 
 // ToShape implements Shaped.
 func (Parallel) ToShape(p []float64) (a, e float64, q []float64) {
+	mustLen("parameters", len(p), 4)
 	return p[0], p[1], []float64{p[2] - p[0], p[3] - p[1]}
 }
 

@@ -29,19 +29,21 @@ func (PowerPrefactor) Info() Info {
 	}
 }
 
-// bend returns z - ln(1+z) for z = tRef/t - 1.
+// bend returns z - ln(1+z) for z = tRef/t - 1, to full relative precision.
 func bend(tRef, t float64) float64 {
 	z := (tRef - t) / t
-	if math.Abs(z) < 0.02 {
-		// z²/2 - z³/3 + ...: the difference would cancel.
-		s, zk := 0.0, z
-		for k := 2; k <= 14; k++ {
-			zk *= -z
-			s -= zk / float64(k)
+	if math.Abs(z) < 0.2 {
+		// The difference would cancel. With s = z/(2+z),
+		// ln(1+z) = 2 atanh s = 2(s + s³/3 + ...) and z - 2s = zs.
+		s := z / (2 + z)
+		s2 := s * s
+		r := 0.0
+		for k := 19; k >= 3; k -= 2 {
+			r = s2 * (r + 1/float64(k))
 		}
-		return s
+		return s * (z - 2*r)
 	}
-	return z - math.Log1p(z)
+	return z - math.Log(tRef/t)
 }
 
 // Columns implements Basis.
