@@ -1,0 +1,111 @@
+package diagnostics
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+)
+
+// Options say how to assess a data set. Start from DefaultOptions.
+type Options struct {
+	// ErrorModel is "" to let the data's stated uncertainties decide.
+	ErrorModel fit.ErrorModel
+	// Replicates is ReplicatesMeans (default) or ReplicatesIndependent.
+	Replicates string
+	// PrefactorBand holds the exponents that a usual prefactor gives; default
+	// [0, 1]. It must hold 0.
+	PrefactorBand [2]float64
+	// Tolerance is the |ΔE| too small to matter: "5%" of the straight fit's |E|,
+	// or "0.5kJ/mol"; default "" is 5 %, at least 0.5 kJ/mol.
+	Tolerance string
+	// Confidence of every interval; default 0.95.
+	Confidence float64
+	// Criterion that ranks: aicc (default), aic or bic.
+	Criterion string
+	// Models are the candidates; nil takes models.Default().
+	Models []models.Curve
+	// Resamples of the bootstrap, 0 for none; default 9999.
+	Resamples int
+	// Scheme of the bootstrap; "" chooses by error model.
+	Scheme string
+	// Intervals are the bootstrap methods: bootstrap-t (default), percentile, bca.
+	Intervals []string
+	// Seed of every random stream; default 1.
+	Seed uint64
+	// Workers is the number of goroutines, 0 for one a processor. It does not
+	// change the result.
+	Workers int
+	// ReferenceTemperature in K; 0 takes 298.15 K where that lies in the measured
+	// range, else T_eff to the nearest kelvin, so that nothing is extrapolated
+	// unasked.
+	ReferenceTemperature float64
+	EnergyUnit           string   // kJ/mol (default), kcal/mol, eV, K or cm^-1
+	PublishStyle         string   // molar, kelvin, evaluated, electronvolt; "" decides by unit
+	Selection            []string // how rows were left out, for the record
+	Version              string   // of the program, for the record
+	// Progress, if not nil, is told how many resamples are done.
+	Progress func(done, total int)
+}
+
+// DefaultOptions are the defaults of every setting.
+func DefaultOptions() Options {
+	return Options{
+		Replicates:    ReplicatesMeans,
+		PrefactorBand: [2]float64{0, 1},
+		Confidence:    0.95,
+		Criterion:     "aicc",
+		Resamples:     9999,
+		Intervals:     []string{"bootstrap-t"},
+		Seed:          1,
+		EnergyUnit:    "kJ/mol",
+	}
+}
+
+// The values that settings of words can have, in the order of their help.
+var (
+	Criteria       = []string{"aicc", "aic", "bic"}
+	EnergyUnits    = []string{"kJ/mol", "kcal/mol", "eV", "K", "cm^-1"}
+	PublishStyles  = []string{"molar", "kelvin", "evaluated", "electronvolt"}
+	ReplicatesWays = []string{ReplicatesMeans, ReplicatesIndependent}
+)
+
+// check refuses settings that mean nothing.
+func (o *Options) check() error {
+	oneOf := func(what, got string, values []string) error {
+		if got == "" || slices.Contains(values, got) {
+			return nil
+		}
+		return fmt.Errorf("%s %q is not known; use one of %s", what, got, strings.Join(values, ", "))
+	}
+	var names []string
+	for _, m := range fit.ErrorModels {
+		names = append(names, string(m))
+	}
+	for _, err := range []error{
+		oneOf("error model", string(o.ErrorModel), names),
+		oneOf("replicates", o.Replicates, ReplicatesWays),
+		oneOf("criterion", o.Criterion, Criteria),
+		oneOf("energy unit", o.EnergyUnit, EnergyUnits),
+		oneOf("publish style", o.PublishStyle, PublishStyles),
+	} {
+		if err != nil {
+			return err
+		}
+	}
+	switch b := o.PrefactorBand; {
+	case !(b[0] <= 0 && b[1] >= 0):
+		return fmt.Errorf("prefactor band %g..%g must hold 0, the exponent of one Arrhenius barrier", b[0], b[1])
+	case !(o.Confidence > 0.5 && o.Confidence < 1):
+		return fmt.Errorf("confidence %g must lie between 0.5 and 1, such as 0.95", o.Confidence)
+	case o.Resamples != 0 && o.Resamples < 99:
+		return fmt.Errorf("%d resamples are too few; use 0 for none, or at least 99", o.Resamples)
+	case o.Resamples > 10_000_000:
+		return fmt.Errorf("%d resamples are too many; use at most 10000000", o.Resamples)
+	case o.ReferenceTemperature < 0:
+		return fmt.Errorf("reference temperature %g K must be positive", o.ReferenceTemperature)
+	}
+	return nil
+}
