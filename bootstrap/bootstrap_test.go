@@ -1,0 +1,685 @@
+package bootstrap
+
+import (
+	"context"
+	"errors"
+	"math"
+	"math/rand/v2"
+	"reflect"
+	"slices"
+	"testing"
+
+	"gonum.org/v1/gonum/stat"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+)
+
+// testSample makes a straight set with E = 60 kJ/mol at n temperatures, 280-340 K.
+// sd is the relative scatter.
+func testSample(t testing.TB, model fit.ErrorModel, n int, sd float64, seed uint64) *fit.Sample {
+	t.Helper()
+	rng := rand.New(rand.NewPCG(seed, 1))
+	temps, k, v := make([]float64, n), make([]float64, n), make([]float64, n)
+	for i := range n {
+		temps[i] = 280 + 60*float64(i)/float64(n-1)
+		k[i] = math.Exp(20-60000/(models.GasConstant*temps[i])) * math.Exp(sd*rng.NormFloat64())
+		v[i] = 1
+		switch {
+		case model == fit.StatedAbsolute:
+			v[i] = sd * sd * k[i] * k[i]
+		case model.KnownSigma():
+			v[i] = sd * sd
+		}
+	}
+	s, err := fit.NewSample(model, temps, k, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return s
+}
+
+func TestSameBytesForAnyNumberOfWorkers(t *testing.T) {
+	s := testSample(t, fit.Relative, 9, 0.03, 1)
+	for _, scheme := range Schemes {
+		var first *Output
+		for _, workers := range []int{1, 2, 7} {
+			o, err := Run(context.Background(), linearInput(s),
+				Options{Scheme: scheme, Resamples: 999, Seed: 42, Workers: workers, Methods: Methods})
+			if err != nil {
+				t.Fatal(err)
+			}
+			if first == nil {
+				first = o
+			} else if !reflect.DeepEqual(o, first) {
+				t.Errorf("%s: %d workers give another result than 1", scheme, workers)
+			}
+		}
+		o, err := Run(context.Background(), linearInput(s), Options{Scheme: scheme, Resamples: 999, Seed: 43, Methods: Methods})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if reflect.DeepEqual(o, first) {
+			t.Errorf("%s: another seed gives the same result", scheme)
+		}
+	}
+}
+
+// Asking for intervals does not change the repeat share.
+func TestSharesDoNotDependOnTargets(t *testing.T) {
+	s := testSample(t, fit.Relative, 9, 0.03, 1)
+	in := linearInput(s)
+	with, err := Run(context.Background(), in, Options{Resamples: 999})
+	if err != nil {
+		t.Fatal(err)
+	}
+	in.Targets = nil
+	without, err := Run(context.Background(), in, Options{Resamples: 999})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !reflect.DeepEqual(with.States, without.States) || !reflect.DeepEqual(with.FirstCurve, without.FirstCurve) {
+		t.Errorf("states %v and %v, first places %v and %v", with.States, without.States, with.FirstCurve, without.FirstCurve)
+	}
+}
+
+func TestCancel(t *testing.T) {
+	ctx, cancel := context.WithCancel(context.Background())
+	in := linearInput(testSample(t, fit.Relative, 9, 0.03, 1))
+	last := 0
+	opt := Options{Workers: 2, Progress: func(done, total int) {
+		if done <= last || total != 9999 {
+			t.Errorf("progress %d of %d after %d", done, total, last)
+		}
+		last = done
+		if done >= 100 {
+			cancel()
+		}
+	}}
+	o, err := Run(ctx, in, opt)
+	if !errors.Is(err, context.Canceled) || o != nil {
+		t.Fatalf("got %v, %v", o, err)
+	}
+	if last > 300 {
+		t.Errorf("went on to %d resamples after being cancelled at 100", last)
+	}
+}
+
+func TestProgressReachesTotal(t *testing.T) {
+	last := 0
+	in := intervalsOnly(linearInput(testSample(t, fit.Relative, 9, 0.03, 1)))
+	_, err := Run(context.Background(), in, Options{Progress: func(done, _ int) { last = done }})
+	if err != nil || last != 9999 {
+		t.Errorf("%d, %v", last, err)
+	}
+}
+
+func TestRefusals(t *testing.T) {
+	perfect := testSample(t, fit.Relative, 9, 0, 1)
+	seven := testSample(t, fit.Relative, 7, 0.03, 1)
+	two := testSample(t, fit.Relative, 2, 0.03, 1)
+	for _, c := range []struct {
+		s      *fit.Sample
+		scheme Scheme
+		code   string
+	}{
+		{seven, Pairs, "pairs-too-few"},
+		{seven, Wild, "wild-too-few"},
+		{seven, "jackknife", "scheme-unknown"},
+		{perfect, Residual, "no-scatter"},
+		{perfect, Parametric, "no-scatter"},
+		{two, Residual, "no-degrees-of-freedom"},
+		{seven, Residual, ""},
+		{seven, Parametric, ""},
+	} {
+		in := Input{Sample: c.s, NewJudge: func() Judge { return func([]float64, []int, *fit.Refit) int { return 0 } }, States: 1,
+			Fits: []*fit.Result{fit.Fit(c.s, models.Straight())}, Weights: []float64{1}, Penalty: []float64{4}, Refitter: constantRefitter{}}
+		_, err := Run(context.Background(), in, Options{Scheme: c.scheme, Resamples: 9})
+		var r *Refusal
+		switch {
+		case c.code == "" && err != nil:
+			t.Errorf("%s: %v", c.scheme, err)
+		case c.code != "" && (!errors.As(err, &r) || r.Code != c.code || r.Cure == ""):
+			t.Errorf("%s: got %v, want %s with a cure", c.scheme, err, c.code)
+		}
+	}
+	if DefaultScheme(fit.Stated) != Parametric || DefaultScheme(fit.StatedAbsolute) != Parametric || DefaultScheme(fit.Scaled) != Residual {
+		t.Error("default scheme")
+	}
+}
+
+// Perfect data with stated uncertainties can be resampled: the errors are known.
+func TestPerfectDataStated(t *testing.T) {
+	s := testSample(t, fit.Relative, 9, 0, 1)
+	v := slices.Repeat([]float64{0.03 * 0.03}, 9)
+	stated, err := fit.NewSample(fit.Stated, s.T, s.K, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := Run(context.Background(), linearInput(stated), Options{Resamples: 99}); err != nil {
+		t.Error(err)
+	}
+}
+
+// constantRefitter always gives the same residual sums of squares: for counting
+// and for timing the bootstrap alone.
+type constantRefitter struct{ fail func(y []float64) bool }
+
+func (c constantRefitter) Clone() fit.Refitter { return c }
+func (c constantRefitter) Refit(y []float64, out *fit.Refit) {
+	out.How = fit.HowWarm
+	for i := range out.RSS {
+		out.RSS[i] = float64(i + 1)
+	}
+	if c.fail != nil && c.fail(y) {
+		out.RSS[0] = math.NaN()
+	}
+}
+func (c constantRefitter) RefitCounts(y []float64, _ []int, out *fit.Refit) { c.Refit(y, out) }
+
+func TestFailedRefitsAreCounted(t *testing.T) {
+	s := testSample(t, fit.Relative, 9, 0.03, 1)
+	in := linearInput(s)
+	// Under one generator, half of the resamples lie above the curve at one end.
+	in.Weights = []float64{1, 0}
+	in.Refitter = constantRefitter{func(y []float64) bool { return y[0] > in.Fits[0].Fitted[0] }}
+	in.NewJudge = func() Judge { return func([]float64, []int, *fit.Refit) int { return 1 } }
+	o, err := Run(context.Background(), in, Options{Scheme: Parametric})
+	if err != nil {
+		t.Fatal(err)
+	}
+	within(t, "failed", float64(o.Failed), 9999./2, 4*math.Sqrt(9999./4))
+	if o.Failed+o.States[1] != 9999 || sum(o.FirstCurve)+o.Failed != 9999 {
+		t.Errorf("failed %d, states %v, first %v of 9999", o.Failed, o.States, o.FirstCurve)
+	}
+}
+
+// The generating curve follows the weights. The first point tells which one made
+// a resample: there the two fits differ by more than power-prefactor's scatter.
+func TestGeneratingWeights(t *testing.T) {
+	s := synthetic(t, "s2_tn_curved")
+	in := linearInput(s)
+	in.Weights = []float64{0.3, 0.7}
+	in.Targets = nil
+	gap := in.Fits[0].Fitted[0] - in.Fits[1].Fitted[0]
+	in.NewJudge = func() Judge {
+		return func(y []float64, _ []int, _ *fit.Refit) int {
+			if math.Abs(y[0]-in.Fits[1].Fitted[0]) > math.Abs(gap)/2 {
+				return 0
+			}
+			return 1
+		}
+	}
+	in.Refitter = constantRefitter{}
+	o, err := Run(context.Background(), in, Options{Scheme: Wild})
+	if err != nil {
+		t.Fatal(err)
+	}
+	// Wild moves the straight fit's value by ± its residual, which may bring it
+	// onto the other curve: so count those that cannot be straight by how often
+	// straight alone gives state 1.
+	in.Weights = []float64{1, 0}
+	alone, err := Run(context.Background(), in, Options{Scheme: Wild})
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := 0.7 + 0.3*float64(alone.States[1])/9999
+	within(t, "share of power-prefactor", float64(o.States[1])/9999, want, 4*math.Sqrt(0.25/9999))
+}
+
+// A criterion that cannot be computed leaves no first place; +Inf RSS is no winner.
+func TestFirstPlace(t *testing.T) {
+	inf, nan := math.Inf(1), math.NaN()
+	for _, c := range []struct {
+		model        fit.ErrorModel
+		penalty, rss []float64
+		want         int16
+	}{
+		{fit.Relative, []float64{4, 6, 8}, []float64{1, 1, 1}, 0},
+		// 10 ln(RSS) falls by 6.93, by more than the 2 it costs.
+		{fit.Relative, []float64{4, 6, 8}, []float64{1, 0.5, inf}, 1},
+		{fit.Stated, []float64{4, 6, 8}, []float64{9, 6, 5}, 1},
+		{fit.Stated, []float64{4, 6, 8}, []float64{9, 7.5, 5.5}, 0},
+		{fit.Relative, []float64{4, inf, nan}, []float64{1, 1e-300, 1e-300}, 0},
+		{fit.Relative, []float64{inf, inf, nan}, []float64{1, 1, 1}, -1},
+	} {
+		p := &plan{in: Input{Sample: testSample(t, c.model, 10, 0.03, 1), Penalty: c.penalty}}
+		p.rank()
+		if got := p.firstPlace(c.rss); got != c.want {
+			t.Errorf("%v %v: got %d, want %d", c.penalty, c.rss, got, c.want)
+		}
+	}
+}
+
+// Influence values are the derivative of the estimate by each y, checked against
+// refitting with y_i moved (exact, the estimate being linear in y).
+func TestInfluence(t *testing.T) {
+	s := synthetic(t, "s5_hetero")
+	in := linearInput(s)
+	p, err := newPlan(intervalsOnly(in), Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, k := range p.kernels {
+		for j := range k.w {
+			for i := range s.T {
+				kk := slices.Clone(s.K)
+				kk[i] *= math.E
+				moved, err := fit.NewSample(s.Model, s.T, kk, s.V)
+				if err != nil {
+					t.Fatal(err)
+				}
+				want := dot(k.w[j], fit.Fit(moved, k.curve).P) - dot(k.w[j], k.fit.P)
+				within(t, k.curve.Info().Name, k.c[j][i], want, 1e-8*k.sd[j])
+			}
+		}
+	}
+}
+
+// Pairs against a fit of the drawn rows written out, by gonum's QR.
+func TestPairsKernel(t *testing.T) {
+	s := synthetic(t, "s5_hetero")
+	in := linearInput(s)
+	p, err := newPlan(in, Options{Scheme: Pairs, Resamples: 1})
+	if err != nil {
+		t.Fatal(err)
+	}
+	w := p.newWorker()
+	for b := range 200 {
+		w.s.reset(1, uint64(b))
+		w.drawPairs()
+		w.fresh = false
+		w.refitOnce()
+		for i, k := range p.kernels {
+			e := make([]float64, k.n)
+			for i := range e {
+				e[i] = s.Y[i] - k.fit.Fitted[i]
+			}
+			if !k.pairs(w.scratch[i], e, w.counts, w.diff, w.t) {
+				t.Fatal("rank")
+			}
+			for j := range k.w {
+				want := dot(k.w[j], w.out.P[k.index]) - dot(k.w[j], k.fit.P)
+				within(t, k.curve.Info().Name, w.diff[j], want, 1e-8*k.sd[j])
+			}
+		}
+	}
+}
+
+// Points behind means: a resampled mean is one of the possible ones, its variance
+// over resamples is that of m draws with replacement, s²(m-1)/m /m for equal weights,
+// and the resampled points never leave their temperature.
+func TestPairsWithinTemperatures(t *testing.T) {
+	full := synthetic(t, "s6_replicates")
+	var temps, k, v []float64
+	pts := &Points{Y: full.Y}
+	var groups [][]float64
+	for i, temp := range full.T {
+		if len(temps) == 0 || temps[len(temps)-1] != temp {
+			temps = append(temps, temp)
+			groups = append(groups, nil)
+		}
+		g := len(temps) - 1
+		groups[g] = append(groups[g], full.Y[i])
+		pts.Group = append(pts.Group, g)
+	}
+	for _, g := range groups {
+		k = append(k, math.Exp(stat.Mean(g, nil)))
+		v = append(v, 1/float64(len(g)))
+	}
+	s, err := fit.NewSample(fit.Relative, temps, k, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	in := linearInput(s)
+	in.Points = pts
+	p, err := newPlan(in, Options{Scheme: Pairs, Resamples: 1}) // 7 temperatures: only allowed because replicated
+	if err != nil {
+		t.Fatal(err)
+	}
+	w := p.newWorker()
+	const b = 20000
+	draws := make([][]float64, len(groups))
+	for i := range b {
+		w.s.reset(9, uint64(i))
+		if d := w.drawPairs(); d < 7 || w.counts != nil {
+			t.Fatal("the design must stay")
+		}
+		for g := range groups {
+			draws[g] = append(draws[g], w.y[g])
+		}
+	}
+	for g, x := range groups {
+		sd := stat.PopStdDev(x, nil) / math.Sqrt(float64(len(x)))
+		within(t, "mean", stat.Mean(draws[g], nil), stat.Mean(x, nil), 4*sd/math.Sqrt(b))
+		within(t, "sd", stat.StdDev(draws[g], nil), sd, 4*sd*math.Sqrt(1./b))
+	}
+	o, err := Run(context.Background(), in, Options{Scheme: Pairs, Methods: Methods})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if o.Failed != 0 || sum(o.States) != 9999 {
+		t.Errorf("failed %d, states %v", o.Failed, o.States)
+	}
+
+	// The same points as independent entries: strata by temperature, at any N.
+	ind := linearInput(full)
+	q, err := newPlan(ind, Options{Scheme: Pairs, Resamples: 1})
+	if err != nil {
+		t.Fatal(err)
+	}
+	u := q.newWorker()
+	for i := range 100 {
+		u.s.reset(9, uint64(i))
+		if u.drawPairs() != 7 || sum(u.counts) != full.Len() {
+			t.Fatal("strata by temperature")
+		}
+	}
+}
+
+// Few distinct temperatures: resamples without enough of them are counted.
+func TestDegeneratePairs(t *testing.T) {
+	// Eight entries on three temperatures, one of them single, so that all are
+	// exchanged; the single one is missing from (7/8)⁸ of the resamples.
+	temps := []float64{280, 280, 280, 280, 310, 340, 340, 340}
+	rng := rand.New(rand.NewPCG(1, 1))
+	k, v := make([]float64, 8), make([]float64, 8)
+	for i := range k {
+		k[i] = math.Exp(20 - 60000/(models.GasConstant*temps[i]) + 0.03*rng.NormFloat64())
+		v[i] = 1
+	}
+	s, err := fit.NewSample(fit.Relative, temps, k, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	o, err := Run(context.Background(), linearInput(s), Options{Scheme: Pairs})
+	if err != nil {
+		t.Fatal(err)
+	}
+	// Inclusion and exclusion over missing groups of 4, 1 and 3 of 8 entries.
+	pow := func(m int) float64 { return math.Pow(float64(m)/8, 8) }
+	three := 1 - pow(4) - pow(7) - pow(5) + pow(3) + pow(1) + pow(4)
+	one := pow(4) + pow(1) + pow(3)
+	mc := func(p float64) float64 { return 4*math.Sqrt(p*(1-p)*9999) + 1 }
+	within(t, "failed", float64(o.Failed), (1-three)*9999, mc(three))
+	within(t, "n failed", float64(o.target(t, "n").Failed), (1-three)*9999, mc(three))
+	within(t, "E failed", float64(o.target(t, "E").Failed), one*9999, mc(one))
+	if r := o.target(t, "E"); math.IsNaN(r.Intervals[0].Lower) {
+		t.Error("the interval must come from the others")
+	}
+}
+
+// Coverage over simulated sets of six temperatures: 95 % for bootstrap-t, and far
+// less for percentiles. Bounds: the claimed 0.94..0.96 and 0.91, and four binomial
+// standard errors.
+func TestCoverage(t *testing.T) {
+	const sets = 3000
+	var tHits, pHits, bHits int
+	trueE := 60.0
+	for set := range sets {
+		s := testSample(t, fit.Relative, 6, 0.03, uint64(set)+100)
+		in := Input{Sample: s, Fits: []*fit.Result{fit.Fit(s, models.Straight())}}
+		in.Targets = DefaultTargets(s, in.Fits)[1:]
+		o, err := Run(context.Background(), in, Options{Resamples: 999, Seed: uint64(set), Methods: Methods})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, iv := range o.target(t, "E").Intervals {
+			hit := 0
+			if iv.Lower <= trueE && trueE <= iv.Upper {
+				hit = 1
+			}
+			switch iv.Method {
+			case BootstrapT:
+				tHits += hit
+			case Percentile:
+				pHits += hit
+				if iv.Note != "too short below N = 20" {
+					t.Fatal("note")
+				}
+			case BCa:
+				bHits += hit
+			}
+		}
+	}
+	c, p, b := float64(tHits)/sets, float64(pHits)/sets, float64(bHits)/sets
+	t.Logf("bootstrap-t %.4f, percentile %.4f, BCa %.4f", c, p, b)
+	mc := 4 * math.Sqrt(0.05*0.95/sets)
+	if !(c >= 0.94-mc && c <= 0.96+mc) {
+		t.Errorf("bootstrap-t covers %.3f", c)
+	}
+	if !(p <= 0.91+mc && p > 0.7) || !(b <= 0.91+mc && b > 0.7) {
+		t.Errorf("percentile covers %.3f, BCa %.3f: expected to be short", p, b)
+	}
+}
+
+// In k, with small errors, the intervals are those in ln k with weights k², to
+// first order in the errors.
+func TestInK(t *testing.T) {
+	inK := testSample(t, fit.StatedAbsolute, 9, 0.003, 5)
+	inLn := testSample(t, fit.Stated, 9, 0.003, 5)
+	opt := Options{Resamples: 499, Methods: Methods}
+	a := linearInput(inLn)
+	b := linearInput(inK)
+	// The contract is what a fit in k would give: to first order the fit in ln k.
+	for i, f := range b.Fits {
+		*f = *a.Fits[i]
+		f.Residuals = slices.Clone(f.Residuals)
+		for j := range f.Residuals {
+			f.Residuals[j] = inK.K[j] - math.Exp(f.Fitted[j])
+		}
+		b.Refitter.(*referenceRefitter).start[i] = f.P
+	}
+	b.Targets = DefaultTargets(inK, b.Fits)
+	for i := range b.Targets { // reference temperatures differ with the weights
+		b.Targets[i].W = a.Targets[i].W
+	}
+	inK.TRef = inLn.TRef
+	for _, judged := range []bool{false, true} {
+		if !judged {
+			a.NewJudge, b.NewJudge = nil, nil
+		} else {
+			a.NewJudge, b.NewJudge = linearInput(inLn).NewJudge, linearInput(inLn).NewJudge
+		}
+		for _, scheme := range Schemes {
+			opt.Scheme = scheme
+			oa, err := Run(context.Background(), a, opt)
+			if err != nil {
+				t.Fatal(err)
+			}
+			ob, err := Run(context.Background(), b, opt)
+			if err != nil {
+				t.Fatal(err)
+			}
+			for i, ra := range oa.Targets {
+				rb := ob.Targets[i]
+				if rb.Failed != ra.Failed || rb.Flat != ra.Flat {
+					t.Errorf("%s %s: failed %d and %d", scheme, ra.Name, ra.Failed, rb.Failed)
+				}
+				for m, ia := range ra.Intervals {
+					ib := rb.Intervals[m]
+					tol := 0.1 * ra.StdError
+					within(t, string(scheme)+" "+ra.Name+" "+string(ia.Method)+" lower", ib.Lower, ia.Lower, tol)
+					within(t, string(scheme)+" "+ra.Name+" "+string(ia.Method)+" upper", ib.Upper, ia.Upper, tol)
+				}
+			}
+		}
+	}
+}
+
+func TestInputUnchanged(t *testing.T) {
+	s := testSample(t, fit.Relative, 9, 0.03, 1)
+	in := linearInput(s)
+	in.Points = &Points{Y: slices.Concat(s.Y, s.Y), Weight: slices.Repeat([]float64{1, 2}, 9), Group: make([]int, 18)}
+	for i := range in.Points.Group {
+		in.Points.Group[i] = i % 9
+	}
+	data := [][]float64{s.T, s.Y, s.K, s.V, in.Weights, in.Penalty, in.Points.Y, in.Points.Weight}
+	for _, f := range in.Fits {
+		data = append(data, f.P, f.Cov, f.Fitted, f.Residuals, f.Leverage)
+	}
+	for _, tg := range in.Targets {
+		data = append(data, tg.W)
+	}
+	var before [][]float64
+	for _, d := range data {
+		before = append(before, slices.Clone(d))
+	}
+	for _, scheme := range Schemes {
+		if _, err := Run(context.Background(), in, Options{Scheme: scheme, Resamples: 99, Methods: Methods}); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if !reflect.DeepEqual(data, before) {
+		t.Error("the input was modified")
+	}
+}
+
+func TestTargetsThatHaveNoInterval(t *testing.T) {
+	s := testSample(t, fit.Relative, 3, 0.03, 1)
+	in := linearInput(s) // power-prefactor has ν = 0
+	in.Targets = append(DefaultTargets(s, in.Fits[:1]), Target{Curve: 1, Name: "n", W: []float64{0, 0, 1}})
+	o, err := Run(context.Background(), intervalsOnly(in), Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if r := o.target(t, "n"); r.Note == "" || r.Intervals != nil || !math.IsNaN(r.Estimate) {
+		t.Errorf("%+v", r)
+	}
+	if r := o.target(t, "E"); r.Note != "" || math.IsNaN(r.Intervals[0].Lower) {
+		t.Errorf("%+v", r)
+	}
+}
+
+// Resamples with all residuals equal lie on a straight line exactly: they are
+// counted, not divided by.
+func TestFlatResamples(t *testing.T) {
+	s := testSample(t, fit.Relative, 4, 0.03, 1)
+	in := intervalsOnly(linearInput(s))
+	in.Targets = in.Targets[1:2]
+	o, err := Run(context.Background(), in, Options{Scheme: Residual})
+	if err != nil {
+		t.Fatal(err)
+	}
+	r := o.target(t, "E")
+	p := 4 / math.Pow(4, 4)
+	within(t, "flat", float64(r.Flat), 9999*p, 4*math.Sqrt(9999*p))
+	if math.IsNaN(r.Intervals[0].Lower) || math.IsInf(r.Intervals[0].Lower, 0) {
+		t.Errorf("%+v", r.Intervals[0])
+	}
+}
+
+func TestSelectNth(t *testing.T) {
+	rng := rand.New(rand.NewPCG(3, 3))
+	for range 300 {
+		n := 1 + rng.IntN(60)
+		x := make([]float64, n)
+		for i := range x {
+			x[i] = float64(rng.IntN(1 + rng.IntN(30))) // ties
+		}
+		want := slices.Sorted(slices.Values(x))
+		v := values{x: x}
+		for k := range n {
+			if got := v.at(k + 1); got != want[k] {
+				t.Fatalf("order statistic %d of %v: got %g", k+1, want, got)
+			}
+		}
+	}
+	v := values{x: []float64{4, 2, 1, 3}}
+	// Type 6 of R: quantile(1:4, .3, type = 6) is 1.5; .1 and .9 are the ends.
+	within(t, "0.3", v.quantile(0.3), 1.5, 1e-12)
+	within(t, "0.1", v.quantile(0.1), 1, 0)
+	within(t, "0.9", v.quantile(0.9), 4, 0)
+}
+
+func TestStream(t *testing.T) {
+	// Words of neighbouring streams, bit by bit: each bit is set in half of them.
+	s := newStream()
+	const n = 4096
+	var ones [64]int
+	for i := range n {
+		s.reset(0, uint64(i))
+		u := s.pcg.Uint64()
+		for b := range 64 {
+			ones[b] += int(u >> b & 1)
+		}
+	}
+	for b, c := range ones {
+		within(t, "bit "+string(rune('0'+b)), float64(c), n/2, 5*math.Sqrt(n)/2)
+	}
+	// Indices are even over n.
+	const m = 7
+	var count [m]int
+	ix := make([]int32, 9)
+	for i := range n {
+		s.reset(1, uint64(i))
+		s.indices(ix, m)
+		for _, k := range ix {
+			count[k]++
+		}
+	}
+	for _, c := range count {
+		within(t, "index", float64(c), n*9./m, 4*math.Sqrt(n*9./m))
+	}
+}
+
+func resampler(t testing.TB, model fit.ErrorModel, scheme Scheme, n int) *worker {
+	s := testSample(t, model, n, 0.03, 1)
+	curves := []models.Basis{models.Straight(), models.PowerPrefactor{}}
+	in := Input{Sample: s, Weights: []float64{0.5, 0.5}, Penalty: []float64{6, 8}, States: 1, Refitter: constantRefitter{}}
+	ln := testSample(t, fit.Relative, n, 0.03, 1)
+	for _, c := range curves {
+		in.Fits = append(in.Fits, fit.Fit(ln, c))
+	}
+	in.NewJudge = func() Judge { return func([]float64, []int, *fit.Refit) int { return 0 } }
+	in.Targets = DefaultTargets(s, in.Fits)
+	p, err := newPlan(in, Options{Scheme: scheme, Resamples: 4096})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return p.newWorker()
+}
+
+func TestResampleDoesNotAllocate(t *testing.T) {
+	for _, model := range []fit.ErrorModel{fit.Relative, fit.Stated, fit.Absolute} {
+		for _, scheme := range Schemes {
+			w := resampler(t, model, scheme, 12)
+			b := 0
+			if a := testing.AllocsPerRun(200, func() { w.resample(b); b++ }); a != 0 {
+				t.Errorf("%s %s: %g allocations a resample", model, scheme, a)
+			}
+		}
+	}
+}
+
+// One resample with four targets and shares, without the time of the refit.
+func BenchmarkResample(b *testing.B) {
+	for _, scheme := range Schemes {
+		b.Run(string(scheme), func(b *testing.B) {
+			w := resampler(b, fit.Relative, scheme, 20)
+			b.ReportAllocs()
+			i := 0
+			for b.Loop() {
+				w.resample(i & 4095)
+				i++
+			}
+		})
+	}
+}
+
+// Four quantiles of 9999 values by selection.
+func BenchmarkQuantiles(b *testing.B) {
+	rng := rand.New(rand.NewPCG(3, 3))
+	x := make([]float64, 9999)
+	y := make([]float64, len(x))
+	for i := range x {
+		x[i] = rng.NormFloat64()
+	}
+	for b.Loop() {
+		copy(y, x)
+		v := values{x: y}
+		for _, p := range []float64{0.025, 0.975, 0.031, 0.981} {
+			v.quantile(p)
+		}
+	}
+}

@@ -1,0 +1,213 @@
+package bootstrap
+
+import (
+	"encoding/csv"
+	"math"
+	"os"
+	"path/filepath"
+	"strconv"
+	"testing"
+
+	"gonum.org/v1/gonum/mat"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+)
+
+// within fails unless |got - want| <= tol; NaN fails.
+func within(t *testing.T, what string, got, want, tol float64) {
+	t.Helper()
+	if !(math.Abs(got-want) <= tol) {
+		t.Errorf("%s: got %.12g, want %.12g ± %.3g", what, got, want, tol)
+	}
+}
+
+func readCSV(t testing.TB, name string) [][]string {
+	t.Helper()
+	f, err := os.Open(filepath.Join("..", "testdata", "published", name))
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer f.Close()
+	rows, err := csv.NewReader(f).ReadAll()
+	if err != nil {
+		t.Fatal(err)
+	}
+	return rows[1:]
+}
+
+// golden reads testdata/published/golden_boot.csv: R 4.2.2, package boot.
+func golden(t testing.TB, set, fit string) func(quantity string) float64 {
+	t.Helper()
+	values := map[string]float64{}
+	for _, r := range readCSV(t, "golden_boot.csv") {
+		if r[0] == set && r[1] == fit {
+			v, err := strconv.ParseFloat(r[3], 64)
+			if err != nil {
+				t.Fatal(err)
+			}
+			values[r[2]] = v
+		}
+	}
+	return func(q string) float64 {
+		t.Helper()
+		v, ok := values[q]
+		if !ok {
+			t.Fatalf("golden_boot.csv has no %s %s %s", set, fit, q)
+		}
+		return v
+	}
+}
+
+// synthetic reads one of the fixed sets. Columns T_K, k, sigma_k; with sigma_k the
+// model is Scaled, for which weights are 1/s², as in the R scripts.
+func synthetic(t testing.TB, name string) *fit.Sample {
+	t.Helper()
+	var temps, k, v []float64
+	model := fit.Relative
+	for _, r := range readCSV(t, filepath.Join("synthetic", name+".csv")) {
+		x := make([]float64, len(r))
+		for i := range r {
+			var err error
+			if x[i], err = strconv.ParseFloat(r[i], 64); err != nil {
+				t.Fatal(err)
+			}
+		}
+		u := 1.0
+		if len(x) > 2 {
+			model = fit.Scaled
+			u = x[2] / x[1]
+		}
+		temps, k, v = append(temps, x[0]), append(k, x[1]), append(v, u*u)
+	}
+	s, err := fit.NewSample(model, temps, k, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return s
+}
+
+// referenceRefitter fits curves that are linear in their parameters by gonum's QR
+// of the rows written out one by one; in k by Gauss-Newton steps from start.
+// Plain and slow on purpose.
+type referenceRefitter struct {
+	s      *fit.Sample
+	curves []models.Basis
+	start  [][]float64
+}
+
+func (r *referenceRefitter) Clone() fit.Refitter { return r }
+
+func (r *referenceRefitter) Refit(y []float64, out *fit.Refit) {
+	counts := make([]int, len(y))
+	for i := range counts {
+		counts[i] = 1
+	}
+	r.RefitCounts(y, counts, out)
+}
+
+func (r *referenceRefitter) RefitCounts(y []float64, counts []int, out *fit.Refit) {
+	out.How = fit.HowLinear
+	for ci, c := range r.curves {
+		n, p := len(y), len(c.Info().Params)
+		offset, x := make([]float64, n), make([]float64, n*p)
+		c.Columns(r.s.TRef, r.s.T, offset, x)
+		par := make([]float64, p)
+		steps := 1
+		if r.s.Model.InK() {
+			copy(par, r.start[ci])
+			steps = 8
+		}
+		for range steps {
+			var a, b []float64
+			for i := range n {
+				model, slope := offset[i], 1.0
+				for j := range p {
+					model += par[j] * x[i*p+j]
+				}
+				if r.s.Model.InK() {
+					model = math.Exp(model)
+					slope = model
+				}
+				for range counts[i] {
+					u := math.Sqrt(1 / r.s.V[i])
+					for j := range p {
+						a = append(a, u*slope*x[i*p+j])
+					}
+					b = append(b, u*(y[i]-model))
+				}
+			}
+			var qr mat.QR
+			qr.Factorize(mat.NewDense(len(b), p, a))
+			var step mat.VecDense
+			if err := qr.SolveVecTo(&step, false, mat.NewVecDense(len(b), b)); err != nil {
+				out.RSS[ci] = math.NaN()
+				out.How = fit.HowFailed
+				break
+			}
+			for j := range p {
+				par[j] += step.AtVec(j)
+			}
+		}
+		if math.IsNaN(out.RSS[ci]) && out.How == fit.HowFailed {
+			continue
+		}
+		rss := 0.0
+		for i := range n {
+			model := offset[i]
+			for j := range p {
+				model += par[j] * x[i*p+j]
+			}
+			if r.s.Model.InK() {
+				model = math.Exp(model)
+			}
+			rss += float64(counts[i]) * (y[i] - model) * (y[i] - model) / r.s.V[i]
+		}
+		out.RSS[ci] = rss
+		copy(out.P[ci], par)
+	}
+}
+
+// linearInput is an input with the candidates straight and power-prefactor, equal
+// weights, AICc penalties, and the judge "power has the smaller AICc" (state 1).
+func linearInput(s *fit.Sample) Input {
+	n := float64(s.Len())
+	curves := []models.Basis{models.Straight(), models.PowerPrefactor{}}
+	in := Input{Sample: s, Weights: []float64{0.5, 0.5}, States: 2}
+	r := &referenceRefitter{s: s, curves: curves}
+	for _, c := range curves {
+		f := fit.Fit(s, c)
+		in.Fits = append(in.Fits, f)
+		r.start = append(r.start, f.P)
+		k := float64(f.Params() + 1)
+		in.Penalty = append(in.Penalty, 2*k+2*k*(k+1)/(n-k-1))
+	}
+	in.Refitter = r
+	in.Targets = DefaultTargets(s, in.Fits)
+	in.NewJudge = func() Judge {
+		return func(y []float64, counts []int, r *fit.Refit) int {
+			if n*math.Log(r.RSS[1])+in.Penalty[1] < n*math.Log(r.RSS[0])+in.Penalty[0] {
+				return 1
+			}
+			return 0
+		}
+	}
+	return in
+}
+
+// intervalsOnly leaves the repeat share out.
+func intervalsOnly(in Input) Input {
+	in.NewJudge, in.Refitter = nil, nil
+	return in
+}
+
+func (o *Output) target(t testing.TB, name string) TargetResult {
+	t.Helper()
+	for _, r := range o.Targets {
+		if r.Name == name {
+			return r
+		}
+	}
+	t.Fatalf("no target %s", name)
+	return TargetResult{}
+}
