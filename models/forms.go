@@ -24,6 +24,8 @@ type Form struct {
 	// NeedsTimeUnit marks forms whose entropy needs the time unit and the
 	// standard state of k: they are withheld where the unit is not understood.
 	NeedsTimeUnit bool
+	// AtTForm marks forms whose parameters are stated at Frame.TForm.
+	AtTForm bool
 	// FromCurve turns canonical parameters p into the form's q and, where jac is
 	// not nil, fills the len(q) x len(p) matrix dq/dp in row-major order. Wrong
 	// lengths are a caller's bug and panic, here as in ToCurve.
@@ -83,7 +85,8 @@ var arrhenius = Form{
 
 var collision = Form{
 	Name: "collision", Formula: "k = A (T/T_ref)^(1/2) exp(-E/RT)",
-	Source: "M. Trautz, Z. Anorg. Allg. Chem. 96 (1916) 1; W. C. McC. Lewis, J. Chem. Soc. 113 (1918) 471",
+	Source:  "M. Trautz, Z. Anorg. Allg. Chem. 96 (1916) 1; W. C. McC. Lewis, J. Chem. Soc. 113 (1918) 471",
+	AtTForm: true,
 	Params: []Param{
 		{"ln_A", "ln of the pre-exponential factor at T_ref", "k"},
 		{"E", "threshold energy", "kJ mol^-1"},
@@ -115,7 +118,8 @@ var eyring = Form{
 
 var modifiedArrhenius = Form{
 	Name: "modified-arrhenius", Formula: "k = A (T/T_ref)^n exp(-E/RT)",
-	Source: "D. M. Kooij, Z. Phys. Chem. 12 (1893) 155; IUPAC Gold Book, modified Arrhenius equation",
+	Source:  "D. M. Kooij, Z. Phys. Chem. 12 (1893) 155; IUPAC Gold Book, modified Arrhenius equation",
+	AtTForm: true,
 	Params: []Param{
 		{"ln_A", "ln of the pre-exponential factor at T_ref", "k"},
 		{"n", "exponent of T", "1"},
@@ -150,6 +154,7 @@ var eyringHeatCapacity = Form{
 	Formula:       "k = (k_B T/h) exp(dS(T)/R - dH(T)/RT), dH and dS with constant dCp from T_ref",
 	Source:        "H. Eyring, J. Chem. Phys. 3 (1935) 107; Kirchhoff's law for dH and dS",
 	NeedsTimeUnit: true,
+	AtTForm:       true,
 	Params: []Param{
 		{"dH", "enthalpy of activation at T_ref", "kJ mol^-1"},
 		{"dS", "entropy of activation at T_ref", "J mol^-1 K^-1"},

@@ -648,6 +648,7 @@ func (s *suite) eachForm(f func(form models.Form, fr models.Frame, p []float64))
 }
 
 func (s *suite) formCalls() {
+	atTForm := map[string]bool{}
 	s.eachForm(func(form models.Form, fr models.Frame, p0 []float64) {
 		p := slices.Clone(p0)
 		q, jac := fromCurve(form, fr, p)
@@ -667,12 +668,26 @@ func (s *suite) formCalls() {
 		if moved := !same(q, shifted); moved != form.NeedsTimeUnit {
 			s.errorf("%s: NeedsTimeUnit is %v, but a change of the time unit moves the parameters: %v", form.Name, form.NeedsTimeUnit, moved)
 		}
+		other = fr
+		other.TForm += 10
+		shifted, _ = fromCurve(form, other, p)
+		// A form whose exponent is 0 at these parameters may stay where it is.
+		moved := !same(q, shifted)
+		atTForm[form.Name] = atTForm[form.Name] || moved
+		if moved && !form.AtTForm {
+			s.errorf("%s: AtTForm is false, but a change of T_form moves the parameters", form.Name)
+		}
 		for i, v := range slices.Concat(q, jac) {
 			if math.IsNaN(v) || math.IsInf(v, 0) {
 				s.errorf("%s: entry %d of values and Jacobian is %g for %v", form.Name, i, v, p)
 			}
 		}
 	})
+	for _, form := range s.c.Forms() {
+		if form.AtTForm && !atTForm[form.Name] {
+			s.errorf("%s: AtTForm is true, but nothing depends on T_form", form.Name)
+		}
+	}
 }
 
 func (s *suite) formRoundTrip() {

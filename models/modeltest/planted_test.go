@@ -198,6 +198,8 @@ func TestPlantedFaultsFail(t *testing.T) {
 			f.ToCurve = func(fr models.Frame, q, p []float64) { fr.LnPerSecond = 0; to(fr, q, p) }
 		})}, "form formula"},
 		{"time unit needed but not said", bent{Basis: power, forms: patchForm(1, func(f *models.Form) { f.NeedsTimeUnit = false })}, "form calls"},
+		{"reference temperature not said", bent{Basis: models.RootPrefactor(), forms: patchForm(0, func(f *models.Form) { f.AtTForm = false })}, "form calls"},
+		{"reference temperature said for nothing", bent{Basis: models.Straight(), forms: patchForm(0, func(f *models.Form) { f.AtTForm = true })}, "form calls"},
 		{"n = ΔC_p‡/R", bent{Basis: power, forms: patchForm(1, fromCurve(func(_ models.Frame, p, q, _ []float64) {
 			q[2] = models.GasConstant * p[2]
 		}))}, "form relations"},
