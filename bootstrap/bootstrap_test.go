@@ -10,6 +10,7 @@ import (
 	"testing"
 
 	"gonum.org/v1/gonum/stat"
+	"gonum.org/v1/gonum/stat/distuv"
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
@@ -249,6 +250,152 @@ func TestFirstPlace(t *testing.T) {
 			t.Errorf("%v %v: got %d, want %d", c.penalty, c.rss, got, c.want)
 		}
 	}
+}
+
+// The residual pool, point by point, where variances are unequal and one point
+// determines its own fit: leverages of (1, x) with weights 1/V in closed form,
+// h_i = w_i/Σw + w_i(x_i - x̄)²/Σw(x - x̄)².
+func TestResidualPool(t *testing.T) {
+	temps := []float64{300, 301, 302, 303, 304, 900}
+	v := []float64{1, 4, 1, 9, 1, 1e-4}
+	e := []float64{0.03, -0.05, 0.01, 0.08, -0.02, 0.01}
+	k := make([]float64, len(temps))
+	for i := range k {
+		k[i] = math.Exp(20 - 60000/(models.GasConstant*temps[i]) + e[i])
+	}
+	s, err := fit.NewSample(fit.Scaled, temps, k, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var sw, sx, sxx float64
+	for i := range temps {
+		sw += 1 / v[i]
+		sx += 1 / (v[i] * temps[i])
+	}
+	for i := range temps {
+		d := 1/temps[i] - sx/sw
+		sxx += d * d / v[i]
+	}
+	f := fit.Fit(s, models.Straight())
+	var want []float64
+	for i := range temps {
+		d := 1/temps[i] - sx/sw
+		h := (1/sw + d*d/sxx) / v[i]
+		if h > 0.99 {
+			continue
+		}
+		want = append(want, f.Residuals[i]/math.Sqrt(v[i]*(1-h)))
+	}
+	if len(want) != 5 {
+		t.Fatalf("%d points below leverage 0.99, want all but the last", len(want))
+	}
+	mean := stat.Mean(want, nil)
+	g := newGenerator(s, Residual, f.Fitted, f.Residuals, f.Leverage, 2, f.Sigma)
+	if len(g.pool) != len(want) {
+		t.Fatalf("pool of %d", len(g.pool))
+	}
+	for i := range want {
+		within(t, "pool", g.pool[i], want[i]-mean, 1e-9)
+	}
+	st, draw, ix := newStream(), make([]float64, 6), make([]int32, 6)
+	st.reset(1, 1)
+	g.draw(st, Residual, draw, ix)
+	for i := range draw {
+		within(t, "drawn", draw[i], math.Sqrt(v[i])*(want[ix[i]]-mean), 1e-9)
+	}
+
+	// Wild: the same size at its own point, both signs equally often.
+	g = newGenerator(s, Wild, f.Fitted, f.Residuals, f.Leverage, 2, f.Sigma)
+	plus := make([]float64, 6)
+	for b := range 4000 {
+		st.reset(2, uint64(b))
+		g.draw(st, Wild, draw, ix)
+		for i := range draw[:5] {
+			within(t, "wild", math.Abs(draw[i]), math.Sqrt(v[i])*math.Abs(want[i]), 1e-9)
+			if draw[i] > 0 {
+				plus[i]++
+			}
+		}
+	}
+	for _, c := range plus[:5] {
+		within(t, "plus signs", c, 2000, 4*math.Sqrt(1000))
+	}
+}
+
+// The ends of the intervals from known values. Bootstrap-t: the upper quantile of
+// t makes the lower end (B. Efron and R. J. Tibshirani, An Introduction to the
+// Bootstrap (1993), eq. 12.22).
+func TestEnds(t *testing.T) {
+	in := intervalsOnly(linearInput(testSample(t, fit.Relative, 9, 0.03, 1)))
+	p, err := newPlan(in, Options{Methods: Methods, Resamples: 39})
+	if err != nil {
+		t.Fatal(err)
+	}
+	k := p.kernels[0]
+	const j = 1 // E
+	diff, tt := make([]float64, 41), make([]float64, 41)
+	for i := range diff {
+		diff[i], tt[i] = float64((i*7)%41), float64((i*11)%41) // 0..40, shuffled
+	}
+	// 39 values 1..39 are left of each: a failed resample and one without scatter.
+	for i := range diff {
+		if diff[i] == 0 || diff[i] == 40 {
+			diff[i] = math.NaN()
+		}
+		if tt[i] == 0 || tt[i] == 40 {
+			tt[i] = math.NaN()
+		}
+	}
+	var r TargetResult
+	p.summarise(k, j, &r, diff, tt)
+	if r.Failed != 2 {
+		t.Errorf("%d failed, want 2", r.Failed)
+	}
+	e, se := k.fit.P[1]/1000, math.Sqrt(k.fit.Cov[3])/1000
+	within(t, "estimate", r.Estimate, e, 1e-9*e)
+	// (39+1) 0.025 = 1 and (39+1) 0.975 = 39.
+	within(t, "bootstrap-t lower", r.Intervals[0].Lower, e-39*se, 1e-8*e)
+	within(t, "bootstrap-t upper", r.Intervals[0].Upper, e-1*se, 1e-8*e)
+	within(t, "percentile lower", r.Intervals[1].Lower, e+1, 1e-9*e)
+	within(t, "percentile upper", r.Intervals[1].Upper, e+39, 1e-9*e)
+	// All values lie above the estimate: z0 is infinite, and BCa has no answer.
+	if !math.IsNaN(r.Intervals[2].Lower) || r.Intervals[2].Note == "" {
+		t.Errorf("BCa %+v", r.Intervals[2])
+	}
+
+	// BCa with an acceleration: levels worked out in full from c_i r_i.
+	x := make([]float64, 9999)
+	for i := range x {
+		x[i] = (float64(i+1) - 4500) * se / 3000
+	}
+	var s2, s3 float64
+	for i, temp := range in.Sample.T {
+		// ∂E/∂y_i of a straight line, kJ/mol.
+		var mean, sxx float64
+		for _, u := range in.Sample.T {
+			mean += 1 / u / 9
+		}
+		for _, u := range in.Sample.T {
+			sxx += (1/u - mean) * (1/u - mean)
+		}
+		l := -models.GasConstant / 1000 * (1/temp - mean) / sxx * k.fit.Residuals[i]
+		s2 += l * l
+		s3 += l * l * l
+	}
+	a := s3 / 6 / math.Pow(s2, 1.5)
+	z0 := distuv.UnitNormal.Quantile(4499.5 / 9999)
+	end := func(z float64) float64 {
+		level := distuv.UnitNormal.CDF(z0 + (z0+z)/(1-a*(z0+z)))
+		return e + (level*10000-4500)*se/3000
+	}
+	if math.Abs(a) < 0.01 {
+		t.Fatal("choose data with more acceleration")
+	}
+	want := [2]float64{end(distuv.UnitNormal.Quantile(0.025)), end(distuv.UnitNormal.Quantile(0.975))}
+	r = TargetResult{}
+	p.summarise(k, j, &r, x, slices.Clone(x))
+	within(t, "BCa lower", r.Intervals[2].Lower, want[0], 1e-8*e)
+	within(t, "BCa upper", r.Intervals[2].Upper, want[1], 1e-8*e)
 }
 
 // Influence values are the derivative of the estimate by each y, checked against
