@@ -31,7 +31,7 @@ func Fit(s *Sample, c models.Curve) *Result {
 		f.Model, f.N, f.Nu = r.Model, r.N, r.Nu
 		f.Sigma, f.LogLik = r.Sigma, r.LogLik
 		if f.Status != Failed {
-			f.settle(s, f.Cov)
+			f.settle(s, f.Cov, 1)
 		}
 		return f
 	}
@@ -53,15 +53,10 @@ func newResult(s *Sample, c models.Curve) *Result {
 
 // settle fills what follows from RSS: Sigma, LogLik and, from the unscaled
 // covariance (XᵀV⁻¹X)⁻¹ (nil where it is refused), Cov. With no degrees of freedom
-// left and σ unknown neither σ nor the likelihood is defined.
-func (r *Result) settle(s *Sample, unscaled []float64) {
-	r.settleScaled(s, unscaled, 1)
-}
-
-// settleScaled is settle where unscaled and r.RSS came from data divided by unit:
-// r.RSS is put back into the unit of k last, since it may overflow where σ and the
-// likelihood do not.
-func (r *Result) settleScaled(s *Sample, unscaled []float64, unit float64) {
+// left and σ unknown neither σ nor the likelihood is defined. r.RSS and unscaled may
+// come from data divided by unit; r.RSS is put back last, since it may overflow
+// where σ and the likelihood do not.
+func (r *Result) settle(s *Sample, unscaled []float64, unit float64) {
 	known := s.Model.KnownSigma()
 	if known {
 		r.Sigma = 1
@@ -118,7 +113,7 @@ func fitBasis(s *Sample, c models.Basis) *Result {
 		r.Status = NotIdentified
 		r.Reason = fmt.Sprintf("the temperatures lie too close together for %d parameters (condition number %.1e)", p, f.Condition)
 	}
-	r.settle(s, cov)
+	r.settle(s, cov, 1)
 	return r
 }
 
