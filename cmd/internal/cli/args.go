@@ -16,11 +16,11 @@ func counted(least, most int, what string) cobra.PositionalArgs {
 		see := fmt.Sprintf("use it as: %s", cmd.UseLine())
 		switch n := len(args); {
 		case n < least:
-			return usagef(see, "%s needs %s", cmd.CommandPath(), what)
+			return usagef(see, "%s needs %s", cmd.Name(), what)
 		case most == 0 && n > 0:
-			return usagef(see, "%s takes no argument, has %q", cmd.CommandPath(), args[0])
+			return usagef(see, "%s takes no argument, has %q", cmd.Name(), args[0])
 		case most >= 0 && n > most:
-			return usagef(see, "%s takes one %s, has %d", cmd.CommandPath(), what, n)
+			return usagef(see, "%s takes one %s, has %d", cmd.Name(), what, n)
 		}
 		return nil
 	}

@@ -144,11 +144,7 @@ publish and with what uncertainty.`,
 			if len(args) == 0 {
 				return cmd.Help()
 			}
-			cure := "onebarrier --help lists the commands"
-			if s := closest(args[0], commandNames(cmd)); s != "" {
-				cure = fmt.Sprintf("did you mean %q?", s)
-			}
-			return usagef(cure, "no command is named %q", args[0])
+			return unknownName("command", args[0], commandNames(cmd), "onebarrier --help lists the commands")
 		},
 		CompletionOptions: cobra.CompletionOptions{DisableDefaultCmd: true},
 	}
@@ -158,12 +154,7 @@ publish and with what uncertainty.`,
 	root.PersistentFlags().Var(&choice{&a.colour, []string{"auto", "always", "never"}}, "color", "colour in text")
 	completeWith(root, "color", "auto", "always", "never")
 	root.AddCommand(newInspect(a), newModels(a), newSchema(a), newCompletion(a), newVersion(a))
-	root.InitDefaultHelpCmd()
-	for _, c := range root.Commands() {
-		if c.Name() == "help" {
-			c.Args = cobra.MaximumNArgs(1)
-		}
-	}
+	root.SetHelpCommand(newHelp())
 	return root
 }
 
@@ -196,7 +187,7 @@ func flagError(cmd *cobra.Command, err error) error {
 		if s := closest(unknown.GetSpecifiedName(), names); s != "" {
 			see = fmt.Sprintf("did you mean --%s?", s)
 		}
-		return usagef(see, "%s has no flag --%s", cmd.CommandPath(), unknown.GetSpecifiedName())
+		return usagef(see, "%s has no flag --%s", cmd.Name(), unknown.GetSpecifiedName())
 	case errors.As(err, &invalid):
 		f := invalid.GetFlag()
 		cause := errors.Unwrap(invalid)

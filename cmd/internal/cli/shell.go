@@ -35,6 +35,29 @@ it, or from the shell's start-up file to keep it.`,
 	}
 }
 
+func newHelp() *cobra.Command {
+	return &cobra.Command{
+		Use:     "help [COMMAND]",
+		Short:   "Print the help of a command",
+		Example: "  onebarrier help assess",
+		Args:    atMost(1, "COMMAND"),
+		RunE: func(cmd *cobra.Command, args []string) error {
+			if len(args) == 0 {
+				return cmd.Root().Help()
+			}
+			for _, c := range cmd.Root().Commands() {
+				if c.Name() == args[0] {
+					return c.Help()
+				}
+			}
+			return unknownName("command", args[0], commandNames(cmd), "onebarrier --help lists the commands")
+		},
+		ValidArgsFunction: func(cmd *cobra.Command, args []string, toComplete string) ([]string, cobra.ShellCompDirective) {
+			return completeWords(func() []string { return commandNames(cmd) })(cmd, args, toComplete)
+		},
+	}
+}
+
 func newVersion(a *app) *cobra.Command {
 	return &cobra.Command{
 		Use:     "version",

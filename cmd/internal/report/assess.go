@@ -28,9 +28,19 @@ func WriteAssessment(w io.Writer, a *diagnostics.Assessment, figures []string, t
 }
 
 func (p *page) verdict(a *diagnostics.Assessment) {
-	var lines []string
-	for _, l := range wrap(a.Verdict.Sentence, p.body()) {
-		lines = append(lines, p.bold(l))
+	// The first sentence is the answer, the others say what it rests on.
+	lines := wrap(a.Verdict.Sentence, p.body())
+	for i, l := range lines {
+		head, rest, ends := strings.Cut(l, ". ")
+		if ends || strings.HasSuffix(l, ".") {
+			if ends {
+				lines[i] = p.bold(head+".") + " " + rest
+			} else {
+				lines[i] = p.bold(l)
+			}
+			break
+		}
+		lines[i] = p.bold(l)
 	}
 	facts := []string{"verdict " + string(a.Verdict.State)}
 	switch a.Verdict.ETrend {
@@ -164,7 +174,7 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 			lines = append(lines, hang("", 2, r.Reason, p.body())...)
 		}
 		for _, f := range r.Forms {
-			lines = append(lines, hang("", 2, "· "+form(f, a), p.body())...)
+			lines = append(lines, hang("  ·", 4, form(f), p.body())...)
 		}
 	}
 	lines = append(lines, wrap("weights: of the family, then of the curve within it all; repeats: how often a repeat of the experiment would put the curve first", p.body())...)
@@ -172,7 +182,7 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 }
 
 // form writes one reading of a curve in a line.
-func form(f diagnostics.FormEstimate, a *diagnostics.Assessment) string {
+func form(f diagnostics.FormEstimate) string {
 	if f.Withheld != "" {
 		return f.Model + " – " + f.Withheld
 	}

@@ -17,7 +17,7 @@ type Text struct {
 
 const (
 	defaultWidth = 80
-	minWidth     = 60  // tables are not squeezed further
+	minWidth     = 80  // tables are not squeezed further
 	maxWidth     = 100 // longer lines are hard to read
 	margin       = 10  // the side heads stand here
 	nbsp         = '\u00a0'

@@ -127,6 +127,10 @@ func brackets(e diagnostics.Estimate) string {
 	}
 	u := float64(e.StdError)
 	if !(u > 0) || math.IsInf(u, 0) {
+		if e.Open != nil || e.Lower.Known() && e.Upper.Known() {
+			d := decimalsOf(e)
+			return plain(e.Value, d) + " (" + interval(e, d) + ")"
+		}
 		return significant(e.Value, 5) + "(" + unknown + ")"
 	}
 	d := decimalsFor(u, 2)
