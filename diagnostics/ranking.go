@@ -137,6 +137,22 @@ func criterionValue(s *fit.Sample, f *fit.Result, by Criterion) float64 {
 	return f.AICc()
 }
 
+// penalty is what a criterion adds to N ln RSS, or to RSS where sigma is known, up to
+// a constant of the sample: enough to rank resamples. It is +Inf where the
+// criterion is undefined.
+func penalty(f *fit.Result, by Criterion) float64 {
+	k, n := float64(f.K()), float64(f.N)
+	switch {
+	case by == ByBIC:
+		return k * math.Log(n)
+	case by == ByAIC || f.Model.KnownSigma():
+		return 2 * k
+	case n > k+1:
+		return 2*k + 2*k*(k+1)/(n-k-1)
+	}
+	return math.Inf(1)
+}
+
 // Rank turns fits into the ranking, best first: ranked curves in order of the
 // criterion, then curves for which it is undefined in order of AIC, then excluded
 // ones. RepeatShare, Adequacy and Forms are left to the caller.
@@ -171,9 +187,12 @@ func Rank(s *fit.Sample, fits []*fit.Result, by Criterion) []Ranked {
 			if s.Model.KnownSigma() {
 				r.Chi2, r.Sigma = r.RSS, nan
 			}
+			if f.Status == fit.NotIdentified {
+				r.Reason = notIdentified + f.Reason
+			}
 			if math.IsNaN(ic[i]) {
 				r.Status = StatusFitted
-				r.Reason = joinReasons(fmt.Sprintf("AICc undefined: needs N ≥ %d", f.K()+2), f.Reason)
+				r.Reason = joinReasons(undefined(f, by), r.Reason)
 			} else {
 				r.Status = StatusRanked
 				r.Delta, r.FamWeight, r.Weight = Real(ic[i]-best), Real(wf[i]), Real(wm[i])
@@ -200,6 +219,21 @@ func Rank(s *fit.Sample, fits []*fit.Result, by Criterion) []Ranked {
 	})
 	mark95(out)
 	return out
+}
+
+// notIdentified opens the reason of a curve whose parameters the data do not
+// determine.
+const notIdentified = "not identified: "
+
+// identified reports whether the parameters of a fitted curve are determined.
+func (r Ranked) identified() bool { return !strings.Contains(r.Reason, notIdentified) }
+
+// undefined says why a fit has no value of the criterion.
+func undefined(f *fit.Result, by Criterion) string {
+	if by == ByAICc {
+		return fmt.Sprintf("AICc undefined: needs N ≥ %d", f.K()+2)
+	}
+	return fmt.Sprintf("%s undefined: needs N ≥ %d", by.Name(), f.Params()+1)
 }
 
 func joinReasons(rs ...string) string {

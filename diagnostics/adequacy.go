@@ -1,0 +1,169 @@
+package diagnostics
+
+import (
+	"math"
+	"math/rand/v2"
+
+	"onebarrier/models/fit"
+)
+
+const (
+	// adequacyLevel is the level of the one test that decides.
+	adequacyLevel = 0.01
+	// runsDraws of the null of the runs test.
+	runsDraws = 4999
+	// runsExact is the largest N whose runs are drawn. Beyond it what the fit does
+	// to the signs is negligible, and the normal null of Wald & Wolfowitz serves.
+	runsExact = 400
+)
+
+// The names of the tests in Adequacy.Test.
+const (
+	TestPureError  = "pure-error F"
+	TestChiSquared = "chi-squared"
+	TestRuns       = "runs"
+)
+
+// PureError is the scatter of repeats about the mean of their temperature.
+type PureError struct {
+	SS           float64 // Σ (y - mean)²/V
+	DF           int     // points - temperatures; 0 without repeats
+	Temperatures int
+}
+
+// NewPureError computes it from single points, in order of T, not from means.
+func NewPureError(points *fit.Sample) PureError {
+	y := points.Y
+	if points.Model.InK() {
+		y = points.K
+	}
+	var pe PureError
+	for i := 0; i < len(y); {
+		j := i
+		var sw, swy float64
+		for ; j < len(y) && sameTemperature(points.T[j], points.T[i]); j++ {
+			sw += 1 / points.V[j]
+			swy += y[j] / points.V[j]
+		}
+		mean := swy / sw
+		for k := i; k < j; k++ {
+			pe.SS += (y[k] - mean) * (y[k] - mean) / points.V[k]
+		}
+		pe.Temperatures++
+		pe.DF += j - i - 1
+		i = j
+	}
+	return pe
+}
+
+// CheckAdequacy tests whether a fit of s describes the data: the pure-error F test
+// where there are repeats, else chi-squared where uncertainties are stated. That
+// one test decides, at 1 %; adequate is nil where neither can be made. The runs
+// test follows for show: it cannot reach 5 % for N <= 6. onMeans says that the
+// entries of s are temperature means, so that the RSS holds no pure error.
+func CheckAdequacy(s *fit.Sample, f *fit.Result, pe PureError, onMeans bool) (tests []Adequacy, adequate *bool) {
+	tests = []Adequacy{}
+	if !f.Usable() {
+		return tests, nil
+	}
+	decide := func(name string, statistic, p float64) {
+		tests = append(tests, Adequacy{name, Real(statistic), Real(p)})
+		if !math.IsNaN(p) {
+			ok := p >= adequacyLevel
+			adequate = &ok
+		}
+	}
+	switch p := f.Params(); {
+	case pe.DF > 0 && pe.Temperatures > p:
+		lack := f.RSS
+		if !onMeans {
+			lack -= pe.SS
+		}
+		df := float64(pe.Temperatures - p)
+		// Lack of fit over pure error: Draper & Smith, Applied Regression
+		// Analysis, ch. 2.
+		ratio := math.Max(0, lack) / df / (pe.SS / float64(pe.DF))
+		decide(TestPureError, ratio, pF(ratio, df, float64(pe.DF)))
+	case s.Model.KnownSigma() && f.Nu > 0:
+		decide(TestChiSquared, f.RSS, chi2Tail(f.RSS, f.Nu))
+	}
+	if f.Nu > 0 && !noScatter(s, f.RSS) {
+		r, p := runsTest(s, f)
+		tests = append(tests, Adequacy{TestRuns, Real(r), Real(p)})
+	}
+	return tests, adequate
+}
+
+// runsTest counts the runs of equal sign among the residuals in order of T. p is
+// the chance of so few under a null of Gaussian errors from which what the fit
+// takes is projected out (Wald & Wolfowitz, Ann. Math. Stat. 11 (1940) 147, take
+// independent signs, which residuals do not have).
+func runsTest(s *fit.Sample, f *fit.Result) (runs, p float64) {
+	n := s.Len()
+	got := countRuns(f.Residuals)
+	if n > runsExact {
+		var above float64
+		for _, r := range f.Residuals {
+			if r > 0 {
+				above++
+			}
+		}
+		total, both := float64(n), 2*above*(float64(n)-above)
+		mean := 1 + both/total
+		sd := math.Sqrt(both * (both - total) / (total * total * (total - 1)))
+		return float64(got), math.Erfc((mean-float64(got)-0.5)/sd/math.Sqrt2) / 2
+	}
+	basis := tangent(s, f)
+	rng := rand.New(rand.NewPCG(0x72756e73, uint64(n)))
+	z := make([]float64, n)
+	few := 1
+	for range runsDraws {
+		for i := range z {
+			z[i] = rng.NormFloat64()
+		}
+		for _, q := range basis {
+			var d float64
+			for i, x := range q {
+				d += x * z[i]
+			}
+			for i, x := range q {
+				z[i] -= d * x
+			}
+		}
+		if countRuns(z) <= got {
+			few++
+		}
+	}
+	return float64(got), float64(few) / (runsDraws + 1)
+}
+
+// countRuns counts the runs of values above zero and not above zero.
+func countRuns(r []float64) int {
+	runs := 1
+	for i := 1; i < len(r); i++ {
+		if (r[i] > 0) != (r[i-1] > 0) {
+			runs++
+		}
+	}
+	return runs
+}
+
+// tangent is an orthonormal basis of what a fit can follow near its estimate: the
+// columns of its Jacobian, weighted.
+func tangent(s *fit.Sample, f *fit.Result) [][]float64 {
+	n, p := s.Len(), f.Params()
+	jac := make([]float64, n*p)
+	f.Curve.LnK(f.TRef, s.T, f.P, nil, jac)
+	var basis [][]float64
+	for j := range p {
+		c := make([]float64, n)
+		for i := range c {
+			c[i] = jac[i*p+j] / math.Sqrt(s.V[i])
+			if s.Model.InK() {
+				c[i] *= math.Exp(f.Fitted[i])
+			}
+		}
+		basis, _ = extend(basis, c, 1e-10)
+	}
+	return basis
+}

@@ -1,0 +1,252 @@
+package diagnostics
+
+import (
+	"fmt"
+	"slices"
+)
+
+// Entry explains one code: a verdict, a finding, or a notice or refusal of the
+// reader.
+type Entry struct {
+	Code        string   `json:"code"`
+	Title       string   `json:"title"`
+	Severity    Severity `json:"severity"`
+	Explanation string   `json:"explanation"`
+	Cure        string   `json:"cure"`      // "" where nothing needs one
+	Reference   string   `json:"reference"` // "" where the text stands on its own
+}
+
+// Explain tells the whole story of a code.
+func Explain(code string) (Entry, error) {
+	for _, e := range Catalogue() {
+		if e.Code == code {
+			return e, nil
+		}
+	}
+	return Entry{}, fmt.Errorf("diagnostics: no verdict or finding has the code %q; explain without a code lists them", code)
+}
+
+// Codes lists every code, sorted.
+func Codes() []string {
+	var codes []string
+	for _, e := range Catalogue() {
+		codes = append(codes, e.Code)
+	}
+	slices.Sort(codes)
+	return codes
+}
+
+// Catalogue lists every entry: verdicts in order of precedence, then findings.
+func Catalogue() []Entry { return slices.Clone(catalogue) }
+
+// newFinding makes a finding with the severity and cure of its entry.
+func newFinding(code, message string, rows []int, values map[string]Real) Finding {
+	e, err := Explain(code)
+	if err != nil {
+		panic(err) // a code that was never written down
+	}
+	if values == nil {
+		values = map[string]Real{}
+	}
+	return Finding{Code: code, Severity: e.Severity, Message: message, Cure: e.Cure, Rows: append([]int{}, rows...), Values: values}
+}
+
+var catalogue = []Entry{
+	// Verdicts, in order of precedence.
+	{
+		Code: string(Untestable), Title: "too few temperatures to test", Severity: Warning,
+		Explanation: "The exponent test fits ln k = a + n ln T - b/T and needs at least four distinct temperatures to leave one degree of freedom. With errors additive in k only temperatures at which the fitted k exceeds three times its standard deviation count. A straight line is fitted and shown, but whether E changes with T cannot be told.",
+		Cure:        "measure at further temperatures, spread evenly in 1/T; six or more give a test with some power",
+	},
+	{
+		Code: string(BeyondPrefactor), Title: "curved: more than one constant barrier with a usual prefactor gives", Severity: Alarm,
+		Explanation: "The 95 % interval of the exponent n of T misses the prefactor band (0 Arrhenius, 1/2 collision theory, 1 transition-state theory), so that no single constant barrier with a usual prefactor gives this curvature. One pair of E and A misleads: E depends on T. It does not by itself prove a second barrier. E that rises with T can come from a parallel path, tunnelling, a positive heat capacity of activation or an error of temperature, and cannot come from steps in series, inactivation or a diffusion limit. E that falls with T can come from steps in series, inactivation, a diffusion limit, a negative heat capacity of activation or an error of temperature, and cannot come from a parallel path or tunnelling. If n lies in the band this verdict is given in at most 5 % of experiments.",
+		Cure:        "publish the recommended curve with its range of temperature, not one E; settle the cause by experiment",
+		Reference:   "IUPAC Gold Book, activation energy",
+	},
+	{
+		Code: string(WithinPrefactor), Title: "curved: a T-dependent prefactor explains it", Severity: Info,
+		Explanation: "The 95 % interval of the exponent n excludes 0 and lies inside the prefactor band: a constant barrier with a prefactor that depends on T as theories of rates say is enough.",
+		Cure:        "publish the three-parameter form, or the two-parameter form with the prefactor of your theory",
+	},
+	{
+		Code: string(CurvedOpen), Title: "curved: cause open", Severity: Warning,
+		Explanation: "The 95 % interval of the exponent n excludes 0 and crosses an edge of the prefactor band: the data are curved, and it cannot be told whether a T-dependent prefactor is enough.",
+		Cure:        "measure more temperatures, above all at both ends of the range, to narrow the interval of n",
+	},
+	{
+		Code: string(StraightWithin), Title: "straight within ± X kJ/mol", Severity: Info,
+		Explanation: "The whole interval of the change of E over the measured range lies inside the tolerance, and the second-barrier test finds nothing (p ≥ 0.05). This is evidence of absence, not absence of evidence: smooth curvature that would matter is excluded inside the measured range. It says nothing about temperatures outside.",
+	},
+	{
+		Code: string(Unresolved), Title: "no curvature detected", Severity: Info,
+		Explanation: "The exponent test does not exclude n = 0, and the interval of the change of E is wider than the tolerance: the data neither show curvature nor exclude one that matters. Read the interval of the change of E first; the smallest change that would have been detected with 80 % power tells what the experiment could do.",
+		Cure:        "measure over a wider range, or more temperatures at its ends",
+		Reference:   "J. M. Hoenig, D. M. Heisey, Am. Stat. 55 (2001) 19",
+	},
+
+	// Ranking.
+	{
+		Code: "aicc-undefined", Title: "AICc undefined", Severity: Info,
+		Explanation: "AICc = AIC + 2K(K+1)/(N-K-1) needs N > K + 1, K counting the estimated sigma. The curve is fitted and shown with its AIC, and takes no part in the ranking.",
+		Cure:        "measure more temperatures, or rank by --criterion bic and mind that it prefers curves too readily for few points",
+		Reference:   "C. M. Hurvich, C.-L. Tsai, Biometrika 76 (1989) 297",
+	},
+	{
+		Code: "ranking-and-test", Title: "AICc and the 5 % test differ in eagerness", Severity: Info,
+		Explanation: "AICc and the exponent test weigh a third parameter differently: below N = 11 AICc is more reluctant to prefer a curve than the 5 % test, from N = 11 it is more eager. The verdict follows the test, whose error rate is known.",
+	},
+	{
+		Code: "family-not-told-apart", Title: "members of a family not told apart", Severity: Info,
+		Explanation: "Curves that differ only in a fixed exponent of T lie within Δ < 2 of each other: these data cannot choose among them. Their E differ by about RT/2 a step, by definition and not by evidence.",
+		Cure:        "choose the form by theory or by the custom of the field, and name it beside E",
+	},
+	{
+		Code: "ranking-differs", Title: "the recommended curve is not the first of the ranking", Severity: Info,
+		Explanation: "The ranking orders curves by how well they would predict; the lowest value of a criterion is not a test, and on straight data it often belongs to a curve. The recommendation follows the verdict.",
+	},
+	{
+		Code: "conditional-on-choice", Title: "intervals are conditional on the choice of curve", Severity: Info,
+		Explanation: "The intervals of the recommended curve's parameters take that curve as given. Had another been chosen they would be others; the choice itself adds uncertainty that they do not hold.",
+		Reference:   "K. P. Burnham, D. R. Anderson, Model Selection and Multimodel Inference, 2nd ed. (2002), ch. 4",
+	},
+	{
+		Code: "forms-same-curve", Title: "two forms of one curve", Severity: Info,
+		Explanation: "Modified Arrhenius and Eyring with a constant heat capacity of activation are the same function of T: n = 1 + ΔC_p‡/R. They fit identically; no criterion and no data can choose between them, and they are ranked as one curve.",
+		Cure:        "publish the form that your theory speaks",
+	},
+	{
+		Code: "curve-excluded", Title: "the data bend the other way", Severity: Info,
+		Explanation: "Two parallel paths make E rise with T, always. Where the data do not bend that way the best such curve is the straight line itself, and it is excluded instead of being fitted to nonsense.",
+	},
+	{
+		Code: "curve-not-identified", Title: "parameters not identified", Severity: Info,
+		Explanation: "The curve fits, but the data do not determine each of its parameters: one of them runs off to a value without meaning (a barrier above 1000 kJ/mol, say), or many pairs fit equally well. Its fitted values are good, its parameters are not stated.",
+		Cure:        "measure more temperatures around the bend and on both sides of it",
+	},
+
+	// Curvature.
+	{
+		Code: "second-barrier", Title: "the second-barrier test finds a bend", Severity: Warning,
+		Explanation: "Beside the exponent test, which looks for smooth curvature, the data are tested for the shape that a second, parallel path would give: nine crossovers and six differences of barrier are tried, and the largest studentised coefficient is compared with its exact distribution under one barrier. Only E rising with T counts. It never decides the verdict. One of the two, verdict or this finding, raises a false alarm in 7 to 8 % of straight data sets.",
+		Cure:        "measure more temperatures around the crossover",
+		Reference:   "R. B. Davies, Biometrika 74 (1987) 33",
+	},
+	{
+		Code: "second-barrier-rests-on-end", Title: "the second barrier rests on one temperature", Severity: Warning,
+		Explanation: "Without its hottest or its coldest temperature the second-barrier test has p > 0.20: a single end point carries the finding.",
+		Cure:        "measure there again, and beyond",
+	},
+	{
+		Code: "borderline", Title: "borderline", Severity: Info,
+		Explanation: "The p-value of the exponent test lies between 0.01 and 0.1: leaving out almost any point can change the verdict, and a repeat of the experiment gives the other verdict about as often.",
+		Cure:        "repeat the measurement, or add temperatures at both ends of the range",
+	},
+	{
+		Code: "exponent-not-a-prefactor", Title: "n is no prefactor", Severity: Warning,
+		Explanation: "For |n| above about 5 the exponent of T is no property of a prefactor but a measure of curvature.",
+		Cure:        "read ΔE or ΔC_p‡ = (n - 1)R",
+	},
+	{
+		Code: "band-narrow-for-gas-phase", Title: "prefactor band narrow for the gas phase", Severity: Warning,
+		Explanation: "The unit is that of a gas-phase reaction. Elementary reactions in the gas phase often need an exponent of T between 0 and 3, beyond the default band of 0 to 1.",
+		Cure:        "--prefactor-band 0..3 where theory or precedent allows it",
+	},
+	{
+		Code: "rests-on-stated", Title: "rests on the stated uncertainties", Severity: Warning,
+		Explanation: "The exponent is significant if the stated uncertainties are taken at their size, and not if only their ratios are trusted and the scatter of the points themselves is used.",
+		Cure:        "check what the stated uncertainties hold; --error-model scaled trusts their ratios only",
+	},
+	{
+		Code: "stated-contradicted", Title: "stated uncertainties contradicted", Severity: Warning,
+		Explanation: "No flexible curve fits the data within the stated uncertainties (chi-squared p < 0.05 for each). They are taken as right up to one common factor, which is estimated: the error model is scaled.",
+		Cure:        "look for scatter that the stated uncertainties leave out, such as that from run to run",
+	},
+	{
+		Code: "chi2-low", Title: "stated uncertainties may be too small", Severity: Warning,
+		Explanation: "The best chi-squared p of a flexible curve is below 0.2: u(k) may leave out scatter from run to run. If it does, the verdict raises more false alarms than it claims.",
+		Cure:        "compare with --error-model scaled",
+	},
+	{
+		Code: "repeats-not-known", Title: "a spread of few repeats is no known uncertainty", Severity: Info,
+		Explanation: "A standard deviation from 30 repeats or fewer is itself uncertain: taken as known, triplicates raise false alarms in 28 % of straight sets of eight. The rate constants are taken as means and the scatter about the curve as their uncertainty.",
+		Cure:        "--error-model stated if the uncertainties are known otherwise",
+	},
+	{
+		Code: "scatter-below-thermometer", Title: "scatter smaller than u(T) allows", Severity: Warning,
+		Explanation: "The scatter of ln k about the curve is smaller than the stated random uncertainty of T alone would cause.",
+		Cure:        "check whether u(T) holds a systematic part, which does not scatter",
+	},
+	{
+		Code: "temperature-means", Title: "repeats share the thermostat's error", Severity: Info,
+		Explanation: "Repeats at one temperature share the error of its setting. Taken as independent they raise false alarms in 13 to 23 % of straight sets where scatter between temperatures equals that within. The verdict uses temperature means; the pointwise result stands beside it.",
+		Cure:        "--replicates independent where every point had a temperature setting of its own",
+	},
+	{
+		Code: "perfect-data", Title: "no scatter", Severity: Warning,
+		Explanation: "The residuals are rounding error: the numbers were computed, not measured. Uncertainties derived from them have no meaning for an experiment.",
+		Cure:        "give measured rate constants, or their uncertainties",
+	},
+
+	// Adequacy.
+	{
+		Code: "none-adequate", Title: "none of the candidates fits", Severity: Alarm,
+		Explanation: "Every fitted curve fails its adequacy test at 1 %: the scatter about the curves is larger than repeats or stated uncertainties allow. Either the function is another, or repeats and uncertainties leave out scatter from one temperature to the next.",
+		Cure:        "look at the residuals: a trend asks for another curve, none for larger uncertainties",
+	},
+	{
+		Code: "adequacy-unchecked", Title: "adequacy cannot be checked", Severity: Info,
+		Explanation: "Without repeats and without stated uncertainties nothing tells how large the scatter about the true curve should be. The runs test is shown; it does not decide, since it cannot reach 5 % for N ≤ 6.",
+		Cure:        "repeat some temperatures, or state u(k)",
+	},
+
+	// Data and results.
+	{
+		Code: "stated-incomplete", Title: "some points have no standard uncertainty", Severity: Info,
+		Explanation: "Stated uncertainties are used where every point has a standard uncertainty at a known level. Some have none, so that one common relative error is estimated from the scatter about the curve.",
+		Cure:        "state u(k) for every point, or leave the others out with --leave-out",
+	},
+	{
+		Code: "large-relative-uncertainty", Title: "large relative uncertainty", Severity: Warning,
+		Explanation: "Where u(k)/k exceeds 0.3 an error that is symmetric in k is not symmetric in ln k, and a model of the errors of ln k weighs the low values wrongly.",
+		Cure:        "--error-model absolute, or stated-absolute where u(k) is known",
+	},
+	{
+		Code: "not-resampled", Title: "no bootstrap", Severity: Info,
+		Explanation: "The resampling scheme needs more temperatures or points than there are, so that no bootstrap was run. The reported intervals do not depend on it.",
+		Cure:        "--scheme parametric, or more temperatures",
+	},
+	{
+		Code: "no-usable-points", Title: "no usable points", Severity: Alarm,
+		Explanation: "Every row was left out, by the reader or by the selection: there is nothing to fit.",
+		Cure:        "see inspect for why each row was left out",
+	},
+	{
+		Code: "one-temperature", Title: "one temperature", Severity: Alarm,
+		Explanation: "All used points lie at one temperature. A barrier needs at least two, its test at least four.",
+		Cure:        "measure at other temperatures",
+	},
+	{
+		Code: "not-fittable", Title: "cannot be fitted", Severity: Alarm,
+		Explanation: "A value that the chosen error model cannot use, such as k ≤ 0 where errors are relative, or data so extreme that even a straight line has no finite fit.",
+		Cure:        "correct the row, leave it out with --leave-out, or choose --error-model absolute",
+	},
+	{
+		Code: "uncertainty-missing", Title: "uncertainty missing", Severity: Alarm,
+		Explanation: "The chosen error model needs a standard uncertainty for every used point.",
+		Cure:        "give a column u(k), or use --error-model relative",
+	},
+	{
+		Code: "limits-left-out", Title: "limits left out", Severity: Warning,
+		Explanation: "Values given as limits (< or >) take no part in the fits.",
+	},
+	{
+		Code: "eyring-withheld", Title: "entropy of activation withheld", Severity: Info,
+		Explanation: "ΔS‡ and ΔG‡ need the time unit and the standard state of k: reading min⁻¹ as s⁻¹ shifts ΔS‡ by 34 J mol⁻¹ K⁻¹. The unit of k was not understood, or k is no rate constant.",
+		Cure:        "write the unit in the heading, such as k/s^-1",
+	},
+	{
+		Code: "resamples-failed", Title: "some resamples could not be fitted", Severity: Warning,
+		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares.",
+	},
+}

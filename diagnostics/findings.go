@@ -1,0 +1,145 @@
+package diagnostics
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"onebarrier/models/fit"
+)
+
+// The messages of findings, one function a code. What a message does not say is
+// in the catalogue.
+
+// RankingFindings are the findings that a ranking of fits to s gives, its Adequate
+// filled in.
+func RankingFindings(ranking []Ranked, s *fit.Sample, by Criterion) []Finding {
+	var fs []Finding
+	add := func(code, message string) { fs = append(fs, newFinding(code, message, nil, nil)) }
+
+	var unranked, fitted []string
+	ranked, unchecked, inadequate, exact := 0, 0, 0, false
+	members, best := map[string][]string{}, map[string]Real{}
+	for _, r := range ranking {
+		if r.Status == StatusExcluded {
+			add("curve-excluded", r.Curve+": "+r.Reason)
+			continue
+		}
+		fitted = append(fitted, r.Curve)
+		exact = exact || (!s.Model.KnownSigma() && noScatter(s, float64(r.RSS)))
+		if !r.identified() {
+			add("curve-not-identified", r.Curve+": "+r.Reason)
+		}
+		if r.Adequate == nil {
+			unchecked++
+		} else if !*r.Adequate {
+			inadequate++
+		}
+		if r.Status == StatusFitted {
+			unranked = append(unranked, r.Curve)
+			continue
+		}
+		ranked++
+		if _, ok := best[r.Family]; !ok {
+			best[r.Family] = r.Delta
+		}
+		if r.Delta-best[r.Family] < 2 {
+			members[r.Family] = append(members[r.Family], r.Curve)
+		}
+	}
+	if len(unranked) > 0 {
+		add("aicc-undefined", fmt.Sprintf("%s is undefined for %s: fitted and shown, not ranked", by.Name(), list(unranked)))
+	}
+	for _, r := range ranking { // families in order of rank
+		if m := members[r.Family]; len(m) > 1 && m[0] == r.Curve {
+			add("family-not-told-apart", list(m)+" lie within Δ < 2 of each other: not told apart by these data")
+		}
+	}
+	if slices.Contains(fitted, "power-prefactor") {
+		add("forms-same-curve", "modified-arrhenius and eyring-heat-capacity are one curve: no data can choose between them")
+	}
+	if n := s.Len(); by == ByAICc && ranked > 1 {
+		way := "more reluctant to prefer a curve than the 5 % test (N is below 11)"
+		if n >= 11 {
+			way = "more eager to prefer a curve than the 5 % test (N is 11 or more)"
+		}
+		add("ranking-and-test", fmt.Sprintf("with N = %d AICc is %s", n, way))
+	}
+	switch {
+	case exact:
+		add("perfect-data", "the residuals are rounding error: these numbers were computed, not measured")
+	case len(fitted) > 0 && unchecked == len(fitted):
+		add("adequacy-unchecked", "without repeats or stated uncertainties the fit of a curve cannot be checked")
+	case len(fitted) > 0 && inadequate == len(fitted):
+		add("none-adequate", "none of the candidates fits: every one fails its adequacy test at 1 %")
+	}
+	return fs
+}
+
+// list joins names: a, b and c.
+func list(names []string) string {
+	if len(names) < 2 {
+		return strings.Join(names, "")
+	}
+	last := len(names) - 1
+	return strings.Join(names[:last], ", ") + " and " + names[last]
+}
+
+func rankingDiffers(curve, why string) Finding {
+	if curve == "" {
+		curve = "none of the candidates"
+	}
+	return newFinding("ranking-differs", fmt.Sprintf("recommended is %s: %s", curve, why), nil, nil)
+}
+
+// secondBarrierFound reports a second-barrier test with p < 0.05.
+func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
+	low, high := s.Range()
+	where := ""
+	if b.Crossover[0].Known() && b.Crossover[1].Known() {
+		where = fmt.Sprintf(" between %.4g and %.4g K", float64(b.Crossover[0]), float64(b.Crossover[1]))
+	}
+	approximate := ""
+	if s.Model.InK() {
+		approximate = " (approximate: linearised about the straight line)"
+	}
+	fs := []Finding{newFinding("second-barrier",
+		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier, p = %s%s; verdict or this finding raises a false alarm in 7 to 8 %% of straight sets",
+			where, pText(float64(b.PValue)), approximate),
+		nil, map[string]Real{"p_value": b.PValue, "crossover_low_k": b.Crossover[0], "crossover_high_k": b.Crossover[1]})}
+	end := func(p Real, t float64) {
+		if p > 0.20 {
+			fs = append(fs, newFinding("second-barrier-rests-on-end",
+				fmt.Sprintf("without the point at %.6g K the second-barrier test has p = %s: the finding rests on the point at %.6g K; measure there again", t, pText(float64(p)), t),
+				nil, map[string]Real{"t_k": Real(t), "p_value": p}))
+		}
+	}
+	end(b.WithoutEnds.PWithoutTMax, high)
+	end(b.WithoutEnds.PWithoutTMin, low)
+	return fs
+}
+
+// pText prints a p-value with two figures.
+func pText(p float64) string {
+	if p < 1e-4 {
+		return fmt.Sprintf("%.0e", p)
+	}
+	return fmt.Sprintf("%.2g", p)
+}
+
+func borderline(p float64) Finding {
+	return newFinding("borderline",
+		fmt.Sprintf("p = %s is near 0.05: leaving out almost any point can change the verdict", pText(p)), nil, map[string]Real{"p_value": Real(p)})
+}
+
+func notAPrefactor(n, changeKJ float64) Finding {
+	return newFinding("exponent-not-a-prefactor",
+		fmt.Sprintf("n = %s is no prefactor: read ΔE = %s kJ/mol or ΔC_p‡", number(n, 1), signed(changeKJ, decimals(changeKJ))),
+		nil, map[string]Real{"n": Real(n)})
+}
+
+func restsOnStated(p, scaleFree float64) Finding {
+	return newFinding("rests-on-stated",
+		fmt.Sprintf("p = %s with the stated uncertainties, %s by the scatter of the points alone", pText(p), pText(scaleFree)),
+		nil, map[string]Real{"p_value": Real(p), "p_scale_free": Real(scaleFree)})
+}
