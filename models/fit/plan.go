@@ -24,6 +24,7 @@ type plan struct {
 	tc        float64 // K
 	width     float64 // mol/J
 	n1, n2    float64 // lengths of the whitened columns 1 and u
+	mean      float64 // weighted mean of u: 0 but for rounding
 	low, high float64 // ends of u
 	maxD      float64 // bound of |d|
 	distinct  int     // temperatures
@@ -42,7 +43,7 @@ type node struct {
 func newPlan(t, v []float64) *plan {
 	p := &plan{tab: softplusNodes(), t: t, rows: make([]basisRow, len(t))}
 	p.abscissa(t, v)
-	p.project()
+	p.n1, p.n2, p.mean = orthonormal(p.rows)
 	return p
 }
 
@@ -72,30 +73,36 @@ func (p *plan) abscissa(t, v []float64) {
 	p.maxD = maxBarrier * p.width
 }
 
-// project fills the orthonormal basis of {1, u}. T_c makes the two columns
-// orthogonal but for rounding, which the projection of u onto 1 removes.
-func (p *plan) project() {
+// orthonormal fills p1 and p2 of rows from w and u, and returns the lengths of the
+// whitened columns 1 and u - mean, and the weighted mean of u.
+func orthonormal(rows []basisRow) (n1, n2, mean float64) {
 	var s0, s1, s2 float64
-	for _, r := range p.rows {
-		s0 += r.w * r.w
+	for i := range rows {
+		w2 := rows[i].w * rows[i].w
+		s0 += w2
+		s1 += w2 * rows[i].u
 	}
-	p.n1 = math.Sqrt(s0)
-	for i := range p.rows {
-		r := &p.rows[i]
-		r.p1 = r.w / p.n1
-		s1 += r.p1 * r.w * r.u
-	}
-	for i := range p.rows {
-		r := &p.rows[i]
-		r.p2 = r.w*r.u - s1*r.p1
+	mean = s1 / s0
+	n1 = math.Sqrt(s0)
+	for i := range rows {
+		r := &rows[i]
+		r.p1 = r.w / n1
+		r.p2 = r.w * (r.u - mean)
 		s2 += r.p2 * r.p2
 	}
-	p.n2 = math.Sqrt(s2)
-	if p.n2 > 0 {
-		for i := range p.rows {
-			p.rows[i].p2 /= p.n2
+	n2 = math.Sqrt(s2)
+	if n2 > 0 {
+		for i := range rows {
+			rows[i].p2 /= n2
 		}
 	}
+	return n1, n2, mean
+}
+
+// lineAt turns coordinates on (p1, p2) into the line a + b u.
+func (p *plan) lineAt(a1, a2 float64) (a, b float64) {
+	b = a2 / p.n2
+	return a1/p.n1 - b*p.mean, b
 }
 
 // kernel returns a workspace for this plan with d free up to its bound. (c, d) and
@@ -149,27 +156,14 @@ func (p *plan) makeNodes() {
 	if p.nodes != nil {
 		return
 	}
-	us := make([]float64, len(p.rows))
-	for i, r := range p.rows {
-		us[i] = r.u
-	}
-	slices.Sort(us)
-	us = slices.Compact(us)
+	gap := p.gaps()
 	level := int32(0)
 	for d := 0.5; ; d *= 2 {
 		last := d >= p.maxD || d >= 256
 		d := math.Min(d, p.maxD)
-		gap := 0
 		for x := p.low - 4/d; x <= p.high+4/d; {
 			p.nodes = append(p.nodes, node{c: -d * x, d: d, level: level})
-			for gap < len(us) && us[gap] <= x {
-				gap++
-			}
-			step := 1.5 / d
-			if gap > 0 && gap < len(us) {
-				step = math.Max(step, (us[gap]-us[gap-1])/3)
-			}
-			x += step
+			x += math.Max(1.5/d, gap(x)/3)
 		}
 		level++
 		if last {
@@ -189,6 +183,27 @@ func (p *plan) makeNodes() {
 		for _, v := range s {
 			nd.norm2 += v * v
 		}
+	}
+}
+
+// gaps returns a function that gives the width of the gap of the design in which x
+// lies, 0 outside.
+func (p *plan) gaps() func(x float64) float64 {
+	us := make([]float64, len(p.rows))
+	for i, r := range p.rows {
+		us[i] = r.u
+	}
+	slices.Sort(us)
+	us = slices.Compact(us)
+	return func(x float64) float64 {
+		i := 0
+		for i < len(us) && us[i] <= x {
+			i++
+		}
+		if i == 0 || i == len(us) {
+			return 0
+		}
+		return us[i] - us[i-1]
 	}
 }
 
@@ -219,6 +234,11 @@ func (p *plan) cold(k *kernel, s *search, straight, tol float64) (best *normal, 
 		}
 		s.rss[j] = straight - 2*dot + p.nodes[j].norm2
 	}
+	return p.descend(k, s, straight, tol)
+}
+
+// descend is cold once the residual sums of squares at the nodes are known.
+func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
 	var pick [coldStarts]int
 	picked := 0
 	for j := range p.nodes {

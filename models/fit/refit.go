@@ -1,6 +1,11 @@
 package fit
 
-// How says by which road a refit reached its answer.
+import (
+	"onebarrier/models"
+)
+
+// How says by which road a refit reached its answer. Where several shaped curves
+// are candidates it is the last road in this list that one of them took.
 type How uint8
 
 // The roads of a refit.
@@ -13,15 +18,18 @@ const (
 )
 
 // Refit is the outcome of fitting every candidate to one resample. A caller owns
-// it and hands it back in, so that refitting allocates nothing.
+// it and hands it back in, so that refitting allocates nothing after the first call.
 type Refit struct {
 	// RSS is Σ r²/V of each candidate in the order given to NewRefitter; +Inf
 	// where a curve is excluded or screened out, NaN where its fit failed.
 	RSS []float64
 	// P holds the canonical parameters of each Basis candidate; those of a
-	// shaped one only if the refitter was asked for them.
+	// shaped one only if the refitter was asked for them, and NaN where it has no
+	// RSS.
 	P   [][]float64
 	How How
+	// First is the candidate with the best criterion, -1 where none was fitted.
+	First int
 }
 
 // Refitter fits every candidate to resamples of one design. It is for one
@@ -31,7 +39,32 @@ type Refitter interface {
 	// the temperatures and variances of the sample.
 	Refit(y []float64, out *Refit)
 	// RefitCounts does the same where entry i is taken counts[i] times, as in
-	// resampling pairs. Entries taken zero times do not take part.
+	// resampling pairs. Entries taken zero times do not take part. A curve fails
+	// where not more temperatures than parameters are left.
 	RefitCounts(y []float64, counts []int, out *Refit)
 	Clone() Refitter
+}
+
+// RefitOptions are the settings of a Refitter.
+type RefitOptions struct {
+	// Penalty decides first places: the least of N ln RSS + Penalty, or of
+	// RSS + Penalty where σ is known, such as 2K for AIC. A shaped curve that
+	// cannot come first is then screened out instead of fitted where its warm
+	// start cannot be trusted. nil: no screening, and First goes by RSS alone.
+	Penalty []float64
+	// ShapedParams asks for the parameters of shaped curves.
+	ShapedParams bool
+}
+
+// NewRefitter returns a Refitter for the sample and its candidates, fits[j] being
+// the fit of curves[j] to the sample.
+func NewRefitter(s *Sample, curves []models.Curve, fits []*Result, o RefitOptions) Refitter {
+	if len(fits) != len(curves) || (o.Penalty != nil && len(o.Penalty) != len(curves)) {
+		panic("fit: one fit and one penalty are needed for each curve")
+	}
+	crit := newCriterion(s, len(curves), o.Penalty)
+	if d := newResampleDesign(s, curves, fits, crit, o.ShapedParams); d != nil {
+		return d.refitter()
+	}
+	return &slowRefitter{s: s, curves: curves, criterion: crit, shapedParams: o.ShapedParams}
 }

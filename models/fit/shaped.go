@@ -86,17 +86,15 @@ func (p *plan) fit(s *Sample, c models.Shaped) *Result {
 // canonical turns the kernel's (c, d) into the canonical parameters of the curve.
 func (p *plan) canonical(s *Sample, curve models.Shaped, sign, c, d float64, out []float64) {
 	// The linear part is what y - shape leaves in the span of the basis.
-	var a1, a2, mean float64
+	var a1, a2 float64
 	for i := range p.rows {
 		r := &p.rows[i]
 		v, _ := p.tab.at(c + d*r.u)
 		rest := (sign*s.Y[i] - v) * r.w
 		a1 += r.p1 * rest
 		a2 += r.p2 * rest
-		mean += r.p1 * r.w * r.u
 	}
-	slope := a2 / p.n2
-	centre := a1/p.n1 - slope*mean/p.n1
+	centre, slope := p.lineAt(a1, a2)
 	shift := p.shift(s.TRef)
 	q := [2]float64{c + d*shift, d / p.width}
 	curve.FromShape(sign*(centre+slope*shift), sign*slope/p.width, q[:], out)
