@@ -1,0 +1,248 @@
+package fit
+
+import (
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"testing"
+
+	"onebarrier/models"
+)
+
+// resampling is a sample, its fits and a stream of parametric resamples.
+type resampling struct {
+	s       *Sample
+	curves  []models.Curve
+	fits    []*Result
+	penalty []float64
+	rng     *rand.Rand
+	truth   []float64 // fitted values the resamples are drawn about
+	sigma   float64
+}
+
+// newResampling makes a two-path sample whose local E changes by about half, or a
+// straight one, with 3 % scatter, and draws resamples about the generator's curve.
+func newResampling(t testing.TB, seed uint64, n int, straight bool) *resampling {
+	t.Helper()
+	rng := rand.New(rand.NewPCG(seed, 7))
+	noise := func(int) float64 { return 0.03 * rng.NormFloat64() }
+	r := &resampling{rng: rng, sigma: 0.03}
+	if straight {
+		r.s = made(t, n, 280, 340, []float64{-5, 60e3}, models.Straight(), noise)
+	} else {
+		// Crossover within the middle half of the range, share of the faster
+		// path changing by e^5 to e^8 over the range.
+		width := (1/250. - 1/500.) / models.GasConstant
+		d := 5 + 3*rng.Float64()
+		c := d * (rng.Float64() - 0.5) / 2
+		r.s = made(t, n, 250, 500, []float64{-5, 30e3, -5 + c, 30e3 + d/width}, models.Parallel{}, noise)
+	}
+	r.choose(models.Straight(), models.PowerPrefactor{}, models.Parallel{})
+	r.truth = r.fits[len(r.fits)-1].Fitted
+	if straight {
+		r.truth = r.fits[0].Fitted
+	}
+	return r
+}
+
+// choose fits the candidates and sets the penalties of AICc, 2K + 2K(K+1)/(N-K-1)
+// with K = p + 1 (Hurvich & Tsai 1989).
+func (r *resampling) choose(curves ...models.Curve) {
+	r.curves, r.fits, r.penalty = curves, nil, nil
+	n := float64(r.s.Len())
+	for _, c := range curves {
+		r.fits = append(r.fits, Fit(r.s, c))
+		k := float64(len(c.Info().Params) + 1)
+		r.penalty = append(r.penalty, 2*k+2*k*(k+1)/(n-k-1))
+	}
+}
+
+func (r *resampling) draw(y []float64) {
+	for i, f := range r.truth {
+		y[i] = f + r.sigma*r.rng.NormFloat64()
+	}
+}
+
+// coldRSS is the RSS of a global fit made from nothing but the resample.
+func coldRSS(s *Sample, y []float64, counts []int, c models.Curve) float64 {
+	sub := &Sample{Model: s.Model, TRef: s.TRef}
+	for i := range y {
+		m := 1
+		if counts != nil {
+			m = counts[i]
+		}
+		for range m {
+			sub.T, sub.V, sub.Y = append(sub.T, s.T[i]), append(sub.V, s.V[i]), append(sub.Y, y[i])
+			sub.K = append(sub.K, math.Exp(y[i]))
+		}
+	}
+	res := Fit(sub, c)
+	if res.Status == Excluded {
+		return math.Inf(1)
+	}
+	if !res.Usable() {
+		return math.NaN()
+	}
+	return res.RSS
+}
+
+func relErr(got, want float64) float64 {
+	if got == want {
+		return 0
+	}
+	return math.Abs(got-want) / math.Abs(want)
+}
+
+// TestRefitAgreesWithColdFit: on identified two-path sets a resample's RSS agrees
+// with that of a cold global fit to 1e-8 in at least 99.9 % of resamples.
+func TestRefitAgreesWithColdFit(t *testing.T) {
+	for _, pairs := range []bool{false, true} {
+		how := map[How]int{}
+		total, missed := 0, 0
+		for set := range 20 {
+			n := []int{8, 10, 12, 20}[set%4]
+			if pairs {
+				n = 20
+			}
+			r := newResampling(t, uint64(set), n, false)
+			ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{})
+			var out Refit
+			y, counts := make([]float64, n), make([]int, n)
+			for range 100 {
+				var cs []int
+				r.draw(y)
+				if pairs {
+					copy(y, r.s.Y)
+					clear(counts)
+					for range n {
+						counts[r.rng.IntN(n)]++
+					}
+					cs = counts
+					ref.RefitCounts(y, counts, &out)
+				} else {
+					ref.Refit(y, &out)
+				}
+				how[out.How]++
+				total++
+				for j, c := range r.curves {
+					want := coldRSS(r.s, y, cs, c)
+					tol := 1e-10
+					if j == 2 {
+						tol = 1e-8
+					}
+					if relErr(out.RSS[j], want) <= tol {
+						continue // NaN is not within any tolerance
+					}
+					if j == 2 {
+						missed++
+						t.Logf("set %d (pairs %v, N = %d): %v RSS %.12g, cold %.12g", set, pairs, n, out.How, out.RSS[j], want)
+					} else {
+						t.Errorf("set %d (pairs %v): %s RSS %.12g, want %.12g", set, pairs, c.Info().Name, out.RSS[j], want)
+					}
+				}
+			}
+		}
+		t.Logf("pairs %v: roads %v", pairs, how)
+		if !(float64(missed) <= 1e-3*float64(total)) {
+			t.Errorf("pairs %v: %d of %d differ from a cold fit", pairs, missed, total)
+		}
+	}
+}
+
+// TestRefitFirstPlaces: on straight sets, where most refits are screened, no more
+// than 0.1 % of first places are wrong.
+func TestRefitFirstPlaces(t *testing.T) {
+	for _, pairs := range []bool{false, true} {
+		how := map[How]int{}
+		total, wrong := 0, 0
+		for set := range 12 {
+			n := []int{8, 12, 20}[set%3]
+			r := newResampling(t, uint64(100+set), n, true)
+			ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{Penalty: r.penalty})
+			full := NewRefitter(r.s, r.curves, r.fits, RefitOptions{})
+			var out, want Refit
+			y, counts := make([]float64, n), make([]int, n)
+			for range 300 {
+				r.draw(y)
+				if pairs {
+					clear(counts)
+					for range n {
+						counts[r.rng.IntN(n)]++
+					}
+					copy(y, r.s.Y)
+					ref.RefitCounts(y, counts, &out)
+					full.RefitCounts(y, counts, &want)
+				} else {
+					ref.Refit(y, &out)
+					full.Refit(y, &want)
+				}
+				best, first := math.Inf(1), -1
+				for j, rss := range want.RSS {
+					if v := float64(n)*math.Log(rss) + r.penalty[j]; v < best {
+						best, first = v, j
+					}
+				}
+				how[out.How]++
+				total++
+				if out.First != first {
+					wrong++
+					t.Logf("set %d (pairs %v, N = %d): %s first, want %d; %v, %v", set, pairs, n, fmt.Sprint(out.First), first, out.RSS, want.RSS)
+				}
+			}
+		}
+		t.Logf("pairs %v: roads %v, wrong %d of %d", pairs, how, wrong, total)
+		if !(float64(wrong) <= 1e-3*float64(total)) {
+			t.Errorf("pairs %v: %d of %d first places are wrong", pairs, wrong, total)
+		}
+	}
+}
+
+func BenchmarkRefit(b *testing.B) {
+	for _, kind := range []string{"two-path", "straight"} {
+		for _, n := range []int{10, 20} {
+			r := newResampling(b, 3, n, kind == "straight")
+			ys := make([][]float64, 256)
+			counts := make([][]int, len(ys))
+			for i := range ys {
+				ys[i] = make([]float64, n)
+				r.draw(ys[i])
+				counts[i] = make([]int, n)
+				for range n {
+					counts[i][r.rng.IntN(n)]++
+				}
+			}
+			ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{Penalty: r.penalty})
+			var out Refit
+			b.Run(fmt.Sprintf("%s/N=%d", kind, n), func(b *testing.B) {
+				b.ReportAllocs()
+				how := [5]int{}
+				for i := range b.N {
+					ref.Refit(ys[i%256], &out)
+					how[out.How]++
+				}
+				b.ReportMetric(100*float64(how[HowCold])/float64(b.N), "%cold")
+			})
+			b.Run(fmt.Sprintf("%s-pairs/N=%d", kind, n), func(b *testing.B) {
+				b.ReportAllocs()
+				how := [5]int{}
+				for i := range b.N {
+					ref.RefitCounts(r.s.Y, counts[i%256], &out)
+					how[out.How]++
+				}
+				b.ReportMetric(100*float64(how[HowCold])/float64(b.N), "%cold")
+			})
+			x := make([]float64, n)
+			for i := range x {
+				x[i] = 6 * (r.rng.Float64() - 0.5)
+			}
+			var sink float64
+			b.Run(fmt.Sprintf("floor/N=%d", n), func(b *testing.B) {
+				for range b.N {
+					for _, v := range x {
+						sink += math.Log1p(math.Exp(v))
+					}
+				}
+			})
+		}
+	}
+}
