@@ -75,8 +75,22 @@ func (o *objective) problem() Problem {
 func fitInK(s *Sample, c models.Curve) *Result {
 	r := newResult(s, c)
 	p := r.Params()
-	starts, reason := startsInK(s, c)
+	starts, status, reason := startsInK(s, c)
+	shaped, isShaped := c.(models.Shaped)
+	var line *Result
+	if isShaped {
+		line = fitInK(s, models.Straight())
+	}
+	exclude := func() *Result {
+		r.Status, r.RSS = Excluded, line.RSS
+		r.Reason = "the data bend the other way, or not at all"
+		r.settle(s, nil, 1)
+		return r
+	}
 	if len(starts) == 0 {
+		if status == Excluded && line.Usable() {
+			return exclude()
+		}
 		r.Reason = reason
 		return r
 	}
@@ -97,13 +111,9 @@ func fitInK(s *Sample, c models.Curve) *Result {
 		return r
 	}
 	r.Reason = ""
-	if shaped, ok := c.(models.Shaped); ok {
-		line := fitInK(s, models.Straight())
+	if isShaped {
 		if line.Usable() && !(best.RSS*o.unit*o.unit < line.RSS*(1-1e-12)) {
-			r.Status, r.RSS = Excluded, line.RSS
-			r.Reason = "the data bend the other way, or not at all"
-			r.settle(s, nil, 1)
-			return r
+			return exclude()
 		}
 		// Canonical order of the parameters, with a covariance to match.
 		a, e, q := shaped.ToShape(best.P)
@@ -120,7 +130,7 @@ func fitInK(s *Sample, c models.Curve) *Result {
 		r.Status, cov = NotIdentified, nil
 		r.Reason = fmt.Sprintf("needs at least %d distinct temperatures, has %d", p, d)
 	}
-	if _, ok := c.(models.Shaped); ok {
+	if isShaped {
 		for j, param := range c.Info().Params {
 			if param.Unit == "J/mol" && !(math.Abs(r.P[j]) <= maxBarrier) {
 				r.Status, cov = NotIdentified, nil
@@ -140,7 +150,8 @@ func fitInK(s *Sample, c models.Curve) *Result {
 
 // startsInK fits the points with k > 0 in ln k with variances V/k^m, m = 2, 1, 0:
 // to first order m = 2 is the error model itself, and m = 0 hears the small k.
-func startsInK(s *Sample, c models.Curve) (starts [][]float64, reason string) {
+// Without a start the status and reason of the last such fit say why.
+func startsInK(s *Sample, c models.Curve) (starts [][]float64, status Status, reason string) {
 	for m := 2.0; m >= 0; m-- {
 		sub := &Sample{Model: Relative, TRef: s.TRef}
 		least := math.Inf(1)
@@ -154,7 +165,7 @@ func startsInK(s *Sample, c models.Curve) (starts [][]float64, reason string) {
 			least = math.Min(least, lnV)
 		}
 		if sub.Len() == 0 {
-			return nil, "no rate constant is positive"
+			return nil, Failed, "no rate constant is positive"
 		}
 		const range16 = 37 // ln 1e16: points that weigh less still steer nothing astray
 		for i, lnV := range sub.V {
@@ -164,8 +175,8 @@ func startsInK(s *Sample, c models.Curve) (starts [][]float64, reason string) {
 		if f.P != nil {
 			starts = append(starts, f.P)
 		} else {
-			reason = "among the points with k > 0: " + f.Reason
+			status, reason = f.Status, "among the points with k > 0: "+f.Reason
 		}
 	}
-	return starts, reason
+	return starts, status, reason
 }

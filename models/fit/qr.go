@@ -87,7 +87,7 @@ func (q *qr) factor() {
 		q.r[j*n+j] = -length
 		for k := j + 1; k < n; k++ {
 			c := q.a[k*m+j : (k+1)*m]
-			reflect(v, c)
+			mirror(v, c)
 			q.r[j*n+k] = c[0]
 			if q.norm[k] == 0 {
 				continue
@@ -117,8 +117,8 @@ func (q *qr) swap(j, k int) {
 	q.perm[j], q.perm[k] = q.perm[k], q.perm[j]
 }
 
-// reflect applies I - v vᵀ/v[0] to c.
-func reflect(v, c []float64) {
+// mirror applies I - v vᵀ/v[0] to c.
+func mirror(v, c []float64) {
 	if v[0] == 0 {
 		return
 	}
@@ -136,13 +136,13 @@ func reflect(v, c []float64) {
 // mulQT replaces b (length m) by Qᵀ b, mulQ by Q b.
 func (q *qr) mulQT(b []float64) {
 	for j := range q.n {
-		reflect(q.a[j*q.m+j:(j+1)*q.m], b[j:])
+		mirror(q.a[j*q.m+j:(j+1)*q.m], b[j:])
 	}
 }
 
 func (q *qr) mulQ(b []float64) {
 	for j := q.n - 1; j >= 0; j-- {
-		reflect(q.a[j*q.m+j:(j+1)*q.m], b[j:])
+		mirror(q.a[j*q.m+j:(j+1)*q.m], b[j:])
 	}
 }
 

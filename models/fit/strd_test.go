@@ -141,8 +141,8 @@ func worst(got, want []float64, most float64) float64 {
 
 func (s *strdSet) problem(model strdModel) Problem {
 	n := len(s.certified)
+	var g [9]float64
 	return Problem{M: len(s.rows), N: n, Eval: func(p, r, jac []float64) {
-		var g [9]float64
 		for i, row := range s.rows {
 			y := row[0]
 			if s.name == "Nelson" {
