@@ -6,6 +6,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"onebarrier/cmd/internal/report"
+	"onebarrier/diagnostics"
 	"onebarrier/models"
 )
 
@@ -40,6 +41,39 @@ func (a *app) runModels(args []string) error {
 		return report.JSON(a.out, doc)
 	}
 	return report.WriteModels(a.out, doc, len(args) > 0, a.text())
+}
+
+func newExplain(a *app) *cobra.Command {
+	cmd := &cobra.Command{
+		Use:   "explain [CODE]",
+		Short: "Explain a verdict, a finding or a refusal in full, or list them all",
+		Example: `  onebarrier explain
+  onebarrier explain beyond-prefactor
+  onebarrier explain unresolved --json`,
+		Args: atMost(1, "CODE"),
+		RunE: func(cmd *cobra.Command, args []string) error {
+			return a.runExplain(args)
+		},
+		ValidArgsFunction: completeWords(diagnostics.Codes),
+	}
+	a.addJSON(cmd)
+	return cmd
+}
+
+func (a *app) runExplain(args []string) error {
+	entries := diagnostics.Catalogue()
+	if len(args) > 0 {
+		e, err := diagnostics.Explain(args[0])
+		if err != nil {
+			return unknownName("verdict or finding", args[0], diagnostics.Codes(), "onebarrier explain lists them")
+		}
+		entries = []diagnostics.Entry{e}
+	}
+	doc := report.NewFindings(entries)
+	if a.json {
+		return report.JSON(a.out, doc)
+	}
+	return report.WriteFindings(a.out, doc, len(args) > 0, a.text())
 }
 
 func newSchema(a *app) *cobra.Command {
