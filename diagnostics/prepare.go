@@ -5,6 +5,7 @@ import (
 	"math"
 	"slices"
 
+	"onebarrier/bootstrap"
 	"onebarrier/models"
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
@@ -149,4 +150,17 @@ func (p *prepared) formMeans() error {
 	var err error
 	p.means, err = fit.NewSample(s.Model, t, m, v)
 	return err
+}
+
+// behindMeans are the points behind the temperature means, for resampling pairs.
+func (p *prepared) behindMeans() *bootstrap.Points {
+	s := p.single
+	b := &bootstrap.Points{Y: s.Y, Weight: make([]float64, s.Len()), Group: p.group}
+	if s.Model.InK() {
+		b.Y = s.K
+	}
+	for i, v := range s.V {
+		b.Weight[i] = 1 / v
+	}
+	return b
 }

@@ -1,0 +1,398 @@
+package diagnostics
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"slices"
+
+	"onebarrier/bootstrap"
+	"onebarrier/models"
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+)
+
+// Assess does the main job on one data set: it fits the candidate curves, ranks
+// them, tests for curvature, decides, and resamples to see how firm all that is.
+// It returns a dataset.Problems where the data cannot be assessed at all, and
+// ctx.Err() where it was cancelled. set is not modified.
+//
+// The same set and options give the same assessment to the last byte, whatever the
+// number of workers.
+func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, error) {
+	if err := opt.check(); err != nil {
+		return nil, fmt.Errorf("diagnostics: %w", err)
+	}
+	tolerance, err := ParseTolerance(opt.Tolerance)
+	if err != nil {
+		return nil, err
+	}
+	if opt.Models == nil {
+		opt.Models = models.Default()
+	}
+	a := &assessor{set: set, opt: opt, tolerance: tolerance}
+	a.notices()
+	if err := a.fit(); err != nil {
+		return nil, err
+	}
+	a.rank()
+	a.test()
+	a.decide()
+	if err := a.resample(ctx); err != nil {
+		return nil, err
+	}
+	return a.assessment(), nil
+}
+
+// assessor carries one assessment from step to step.
+type assessor struct {
+	set       *dataset.Set
+	opt       Options
+	tolerance Tolerance
+
+	model    fit.ErrorModel
+	modelWhy string
+	data     *prepared
+	// fits holds the candidates and, after them, straight and power-prefactor
+	// where those are not candidates: the test needs both.
+	fits     []*fit.Result
+	ranked   int // the first so many of fits are candidates
+	straight *fit.Result
+	power    *fit.Result
+
+	ranking    []Ranked
+	untestable string // why there is no exponent test, or ""
+	more       int    // how many more temperatures it needs
+	exponent   ExponentTest
+	pointwise  *Pointwise
+	second     *SecondBarrierTest
+	secondRun  *SecondBarrier
+	rule       Rule
+	verdict    Verdict
+	tEff       float64
+
+	resampling *Resampling
+	changes    []float64
+	findings   []Finding
+}
+
+// find records a finding; severity and cure come from the catalogue.
+func (a *assessor) find(code, message string, rows []int, values map[string]Real) {
+	a.findings = append(a.findings, newFinding(code, message, rows, values))
+}
+
+// notices takes over what reading the file found.
+func (a *assessor) notices() {
+	for _, n := range a.set.Notices {
+		f := newFinding(n.Code, n.Message, n.Rows, nil)
+		if n.Cure != "" {
+			f.Cure = n.Cure
+		}
+		a.findings = append(a.findings, f)
+	}
+}
+
+// problem refuses the data set as a whole.
+func (a *assessor) problem(code, message, cure string) error {
+	file := a.set.Name
+	if len(a.set.Files) > 0 {
+		file = a.set.Files[0]
+	}
+	return dataset.Problems{{Code: code, File: file, Message: message, Cure: cure}}
+}
+
+// fit chooses the error model and fits every curve under it.
+func (a *assessor) fit() error {
+	points := a.set.UsedPoints()
+	if len(points) == 0 {
+		return a.problem("no-usable-points", "no row can be used", "see inspect for why each row was left out")
+	}
+	if err := a.chooseErrorModel(points); err != nil {
+		return err
+	}
+	if err := a.fitUnder(a.model); err != nil {
+		return err
+	}
+	if a.model == fit.Stated {
+		if p, contradicted := a.contradicted(); contradicted {
+			values := map[string]Real{"p_value": Real(p)}
+			if a.opt.ErrorModel == fit.Stated {
+				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %.2g for the curve that fits best); they were kept because you asked for it", p), nil, values)
+			} else {
+				a.model = fit.Scaled
+				a.modelWhy = "the data scatter more than their stated uncertainties allow"
+				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %.2g for the curve that fits best); one common factor is estimated instead", p), nil, values)
+				if err := a.fitUnder(fit.Scaled); err != nil {
+					return err
+				}
+			}
+		} else if p < 0.2 {
+			a.find("chi2-low", fmt.Sprintf("χ² p = %.2g: the stated uncertainties may leave out run-to-run scatter", p), nil, map[string]Real{"p_value": Real(p)})
+		}
+	}
+	if low, high := a.data.sample.Range(); sameTemperature(low, high) {
+		return a.problem("one-temperature", fmt.Sprintf("all used points lie at %g K", low), "a barrier needs at least two temperatures, its test at least four")
+	}
+	return nil
+}
+
+// chooseErrorModel applies METHODS §3: the stated uncertainties decide where every
+// point has one at a known level that is not a small-sample standard deviation.
+func (a *assessor) chooseErrorModel(points []dataset.Point) error {
+	stated, repeats, some := true, false, false
+	var missing []int
+	for _, p := range points {
+		has := p.UK > 0 && p.Level == dataset.LevelStandard
+		stated = stated && has
+		some = some || p.UK > 0
+		repeats = repeats || p.Level == dataset.LevelRepeats
+		if !has {
+			missing = append(missing, p.Row)
+		}
+	}
+	switch m := a.opt.ErrorModel; {
+	case m == "":
+		a.model, a.modelWhy = fit.Relative, "no standard uncertainty is stated for every point"
+		if stated {
+			a.model, a.modelWhy = fit.Stated, "every point has a standard uncertainty"
+		} else if repeats {
+			a.modelWhy = "the stated standard deviations come from few repeats"
+			a.find("repeats-not-known", "standard deviations of a few repeats are not known uncertainties: one common relative error is estimated from the scatter about the curve", nil, nil)
+		} else if some {
+			a.find("stated-incomplete", fmt.Sprintf("%d of %d points have no standard uncertainty: one common relative error is estimated from the scatter about the curve", len(missing), len(points)), missing, nil)
+		}
+	default:
+		a.model, a.modelWhy = m, "asked for"
+		needs := m == fit.Stated || m == fit.Scaled || m == fit.StatedAbsolute
+		for _, p := range points {
+			if needs && !(p.UK > 0) {
+				return a.problem("uncertainty-missing", fmt.Sprintf("error model %q needs an uncertainty for every used point; line %d has none", m, p.Row), "give a column u(k), or use --error-model relative")
+			}
+		}
+	}
+	for _, p := range points {
+		if !a.model.InK() && p.UK > 0.3*p.K {
+			a.find("large-relative-uncertainty", fmt.Sprintf("u(k)/k is %.2g in line %d: errors that large are not symmetric in ln k", p.UK/p.K, p.Row), []int{p.Row}, map[string]Real{"relative": Real(p.UK / p.K)})
+			break
+		}
+	}
+	return nil
+}
+
+// fitUnder prepares the data under one error model and fits every curve.
+func (a *assessor) fitUnder(model fit.ErrorModel) error {
+	data, err := prepare(a.set, model, a.opt.Replicates)
+	if err != nil {
+		return a.problem("not-fittable", err.Error(), "correct the row, or leave it out with --leave-out")
+	}
+	a.data = data
+	curves := slices.Clone(a.opt.Models)
+	a.ranked = len(curves)
+	for _, c := range []models.Curve{models.Straight(), models.PowerPrefactor{}} {
+		if !slices.ContainsFunc(curves, func(o models.Curve) bool { return o.Info().Name == c.Info().Name }) {
+			curves = append(curves, c)
+		}
+	}
+	a.fits = make([]*fit.Result, len(curves))
+	for i, c := range curves {
+		a.fits[i] = fit.Fit(data.sample, c)
+	}
+	a.straight, a.power = a.fitOf(models.Straight().Info().Name), a.fitOf(models.PowerPrefactor{}.Info().Name)
+	if !a.straight.Usable() {
+		return a.problem("not-fittable", "even the straight line cannot be fitted: "+a.straight.Reason, "see inspect for what was read")
+	}
+	return nil
+}
+
+// fitOf returns the fit of a curve, nil if it was not fitted.
+func (a *assessor) fitOf(curve string) *fit.Result {
+	for _, f := range a.fits {
+		if f.Curve.Info().Name == curve {
+			return f
+		}
+	}
+	return nil
+}
+
+// contradicted reports whether every flexible curve that could be fitted has a
+// χ² p below 0.05. The largest p counts, so that real curvature is not taken for
+// noise.
+func (a *assessor) contradicted() (p float64, yes bool) {
+	p = -1
+	for _, f := range a.fits {
+		if f.Curve.Info().Trend == models.TrendNone || !f.Usable() || f.Nu < 1 {
+			continue
+		}
+		p = math.Max(p, chi2Tail(f.RSS, f.Nu))
+	}
+	if p < 0 { // none is flexible: the line itself must do
+		if a.straight.Nu < 1 {
+			return 1, false
+		}
+		p = chi2Tail(a.straight.RSS, a.straight.Nu)
+	}
+	return p, p < 0.05
+}
+
+// rank orders the candidates and checks whether each describes the data.
+func (a *assessor) rank() {
+	s := a.data.sample
+	a.ranking = Rank(s, a.fits[:a.ranked], Criterion(a.opt.Criterion))
+	pe := NewPureError(a.data.single)
+	for i := range a.ranking {
+		r := &a.ranking[i]
+		if f := a.fitOf(r.Curve); f.Usable() {
+			r.Adequacy, r.Adequate = CheckAdequacy(s, f, pe, a.data.basis == BasisMeans)
+		}
+	}
+	a.findings = append(a.findings, RankingFindings(a.ranking, s, Criterion(a.opt.Criterion))...)
+}
+
+// test runs the exponent test and the second-barrier test.
+func (a *assessor) test() {
+	s := a.data.sample
+	low, high := s.Range()
+	a.tEff = effectiveTemperatureOf(s, a.straight)
+	a.rule = Rule{
+		Band:          a.opt.PrefactorBand,
+		ToleranceKJ:   a.tolerance.Apply(a.straight.P[1] / 1000),
+		ChangePerUnit: changePerUnit(low, high),
+	}
+	if ok, more, why := Testable(s, a.power); !ok {
+		a.more, a.untestable = more, why
+	}
+	a.exponent = a.testExponent(s, a.power)
+	if a.data.replicated() && a.data.basis == BasisMeans {
+		if f := fit.Fit(a.data.single, models.PowerPrefactor{}); f.Usable() && f.Nu >= 1 {
+			t := a.testExponent(a.data.single, f)
+			a.pointwise = &Pointwise{NewEstimate(t.Exponent), NewEstimate(t.Change), Real(t.PValue), Real(t.PBand)}
+		}
+	}
+	if a.second = NewSecondBarrierTest(s, a.straight, nil); a.second != nil {
+		a.secondRun = a.second.Run()
+	}
+	if a.data.temperatureShare > 0 && !a.model.KnownSigma() && a.straight.Sigma < a.data.temperatureShare {
+		a.find("scatter-below-thermometer", fmt.Sprintf("u(T) alone makes ln k uncertain by %.2g, more than the points scatter (%.2g)", a.data.temperatureShare, a.straight.Sigma), nil,
+			map[string]Real{"from_temperature": Real(a.data.temperatureShare), "scatter": Real(a.straight.Sigma)})
+	}
+}
+
+// testExponent runs the exponent test on one sample.
+func (a *assessor) testExponent(s *fit.Sample, power *fit.Result) ExponentTest {
+	set := ExponentSettings{Confidence: a.opt.Confidence, Band: a.opt.PrefactorBand}
+	var profile *ExponentProfile
+	if s.Model.InK() && power.Status == fit.Converged && power.Nu > 0 {
+		profile = newExponentProfile(s, power, a.opt.Confidence)
+	}
+	return TestExponent(s, power, profile, set)
+}
+
+// decide makes the verdict.
+func (a *assessor) decide() {
+	var found []Finding
+	a.verdict, found = Decide(VerdictInput{
+		Sample: a.data.sample, Test: a.exponent, SecondBarrier: a.secondRun,
+		Rule: a.rule, Ranking: a.ranking,
+		Untestable: a.untestable != "", More: a.more, Why: a.untestable,
+	})
+	a.findings = append(a.findings, found...)
+}
+
+// resample runs the bootstrap.
+func (a *assessor) resample(ctx context.Context) error {
+	if a.opt.Resamples == 0 || a.untestable != "" {
+		return nil
+	}
+	s := a.data.sample
+	curves := make([]models.Curve, len(a.fits))
+	for i, f := range a.fits {
+		curves[i] = f.Curve
+	}
+	weights, penalties := a.weights(), a.penalties()
+	in := bootstrap.Input{
+		Sample: s, Fits: a.fits, Weights: weights, Penalty: penalties,
+		Refitter: fit.NewRefitter(s, curves, a.fits, fit.RefitOptions{Penalty: penalties}),
+		States:   len(States),
+		NewJudge: func() bootstrap.Judge { return newJudge(a).state },
+		Targets:  bootstrap.DefaultTargets(s, a.fits),
+	}
+	if a.data.basis == BasisMeans && a.data.replicated() {
+		in.Points = a.data.behindMeans()
+	}
+	methods := make([]bootstrap.Method, len(a.opt.Intervals))
+	for i, m := range a.opt.Intervals {
+		methods[i] = bootstrap.Method(m)
+	}
+	out, err := bootstrap.Run(ctx, in, bootstrap.Options{
+		Scheme: bootstrap.Scheme(a.opt.Scheme), Resamples: a.opt.Resamples,
+		Seed: a.opt.Seed, Workers: a.opt.Workers, Confidence: a.opt.Confidence,
+		Methods: methods, Progress: a.opt.Progress,
+	})
+	var refusal *bootstrap.Refusal
+	switch {
+	case errors.As(err, &refusal) && a.opt.Scheme != "":
+		return a.problem(refusal.Code, refusal.Message, refusal.Cure)
+	case errors.As(err, &refusal):
+		a.find("not-resampled", "no bootstrap: "+refusal.Message, nil, nil)
+		return nil
+	case err != nil:
+		return err
+	}
+	a.take(out)
+	return nil
+}
+
+// take turns the bootstrap's output into its place in the assessment.
+func (a *assessor) take(out *bootstrap.Output) {
+	r := &Resampling{Scheme: string(out.Scheme), Resamples: out.Resamples, Failed: out.Failed,
+		RepeatShare: map[State]Real{}, Intervals: []ResampledInterval{}}
+	if good := out.Resamples - out.Failed; good > 0 {
+		for i, n := range out.States {
+			r.RepeatShare[States[i]] = Real(float64(n) / float64(good))
+		}
+		for i := range a.ranking {
+			if row := &a.ranking[i]; row.Status == StatusRanked {
+				row.RepeatShare = Real(float64(out.FirstFamily[row.Family]) / float64(good))
+			}
+		}
+	}
+	for _, t := range out.Targets {
+		curve := a.fits[t.Curve].Curve.Info().Name
+		if t.Keep {
+			a.changes = t.Values
+		}
+		for _, iv := range t.Intervals {
+			r.Intervals = append(r.Intervals, ResampledInterval{
+				Curve: curve, Parameter: t.Name, Unit: t.Unit, Method: string(iv.Method),
+				Lower: Real(iv.Lower), Upper: Real(iv.Upper), Note: iv.Note,
+			})
+		}
+	}
+	if 100*out.Failed > out.Resamples {
+		a.find("resamples-failed", fmt.Sprintf("%d of %d resamples could not be fitted and are not in the shares", out.Failed, out.Resamples), nil,
+			map[string]Real{"failed": Real(out.Failed), "resamples": Real(out.Resamples)})
+	}
+	a.resampling = r
+}
+
+// weights draw the generating curves of resamples: plain AIC by family. Curves
+// that are not candidates generate nothing.
+func (a *assessor) weights() []float64 {
+	w := AICWeights(a.data.sample, a.fits[:a.ranked])
+	return append(w, make([]float64, len(a.fits)-a.ranked)...)
+}
+
+// penalties make the criterion out of N ln RSS, or of RSS where σ is known. A curve
+// that is not ranked can never be first.
+func (a *assessor) penalties() []float64 {
+	by := Criterion(a.opt.Criterion)
+	pen := make([]float64, len(a.fits))
+	for i, f := range a.fits {
+		pen[i] = math.Inf(1)
+		if v := criterionValue(a.data.sample, f, by); i < a.ranked && !math.IsNaN(v) {
+			pen[i] = penalty(f, by)
+		}
+	}
+	return pen
+}

@@ -1,0 +1,181 @@
+package diagnostics
+
+import (
+	"math"
+	"slices"
+
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+)
+
+// ToolName is the name of the program in its documents.
+const ToolName = "onebarrier"
+
+// assessment puts the document together.
+func (a *assessor) assessment() *Assessment {
+	s := a.data.sample
+	low, high := s.Range()
+	doc := &Assessment{
+		Schema:   Schema,
+		Tool:     Tool{ToolName, a.opt.Version},
+		Settings: a.settings(),
+		Dataset: DatasetInfo{
+			Name: a.set.Name, Files: a.set.Files, SHA256: a.set.SHA256,
+			Points: len(a.set.Points), Used: len(a.data.points), Temperatures: s.DistinctT(),
+			TMin: Real(low), TMax: Real(high), TEff: Real(a.tEff),
+			Quantity: Quantity{a.set.Quantity.Symbol, a.set.Quantity.Unit, a.set.Quantity.Known},
+			Sources:  sources(a.set.Points),
+			Limits:   countLimits(a.set.Points),
+		},
+		Columns:   []Column{},
+		Data:      a.rows(),
+		Verdict:   a.verdict,
+		Curvature: a.curvature(),
+		Ranking:   a.ranking,
+		Bootstrap: a.resampling,
+		Sample:    s,
+		Fits:      map[string]*fit.Result{},
+		ChangeOfE: a.changes,
+	}
+	for _, c := range a.set.Columns {
+		doc.Columns = append(doc.Columns, Column{c.Heading, c.Role, c.Unit, Real(c.Factor), c.Level})
+	}
+	for _, f := range a.fits {
+		doc.Fits[f.Curve.Info().Name] = f
+	}
+	a.publishInto(doc)
+	doc.Findings = a.findings
+	if doc.Findings == nil {
+		doc.Findings = []Finding{}
+	}
+	for i := range doc.Findings {
+		if doc.Findings[i].Rows == nil {
+			doc.Findings[i].Rows = []int{}
+		}
+		if doc.Findings[i].Values == nil {
+			doc.Findings[i].Values = map[string]Real{}
+		}
+	}
+	return doc
+}
+
+// settings records everything that decided the result.
+func (a *assessor) settings() Settings {
+	names := make([]string, 0, a.ranked)
+	for _, f := range a.fits[:a.ranked] {
+		names = append(names, f.Curve.Info().Name)
+	}
+	scheme := a.opt.Scheme
+	if a.resampling != nil {
+		scheme = a.resampling.Scheme
+	}
+	return Settings{
+		Seed: a.opt.Seed, Resamples: a.opt.Resamples, Scheme: scheme,
+		Confidence: a.opt.Confidence, ErrorModel: a.model, ErrorModelWhy: a.modelWhy,
+		Replicates: a.opt.Replicates, Criterion: a.opt.Criterion, PrefactorBand: a.opt.PrefactorBand,
+		ToleranceKJ: Real(a.rule.ToleranceKJ), Tolerance: a.opt.Tolerance, Models: names,
+		ReferenceTemperature: a.referenceTemperature(),
+		EnergyUnit:           a.opt.EnergyUnit, PublishStyle: a.publishStyle(),
+		Assumed: orEmpty(a.set.Assumed), Selection: orEmpty(a.opt.Selection),
+	}
+}
+
+func orEmpty(s []string) []string { return append([]string{}, s...) }
+
+// referenceTemperature is where forms are stated: what was asked for, or 298.15 K
+// where that was measured, else T_eff to the nearest kelvin.
+func (a *assessor) referenceTemperature() float64 {
+	const standard = 298.15
+	if a.opt.ReferenceTemperature > 0 {
+		return a.opt.ReferenceTemperature
+	}
+	if low, high := a.data.sample.Range(); low <= standard && standard <= high {
+		return standard
+	}
+	return math.Round(a.tEff)
+}
+
+// rows lists every row of the input. Residuals are from the straight line: in
+// ln k, or in k where the error model is InK.
+func (a *assessor) rows() []Datum {
+	type place struct {
+		file string
+		row  int
+	}
+	nan := math.NaN()
+	residual := map[place]float64{}
+	single := a.data.single
+	line := make([]float64, single.Len())
+	a.straight.Curve.LnK(a.straight.TRef, single.T, a.straight.P, line, nil)
+	for i, p := range a.data.points {
+		r := single.Y[i] - line[i]
+		if single.Model.InK() {
+			r = single.K[i] - math.Exp(line[i])
+		}
+		residual[place{p.File, p.Row}] = r
+	}
+	out := make([]Datum, 0, len(a.set.Points))
+	for _, p := range a.set.Points {
+		d := Datum{Row: p.Row, T: Real(p.T), K: Real(p.K), UK: Real(nan), Limit: p.Limit,
+			Source: p.Source, Used: p.Used, WhyNot: p.WhyNot, Residual: Real(nan)}
+		if p.UK > 0 {
+			d.UK = Real(p.UK)
+		}
+		if r, ok := residual[place{p.File, p.Row}]; ok && p.Used {
+			d.Residual = Real(r)
+		}
+		out = append(out, d)
+	}
+	return out
+}
+
+// curvature is the test's place in the document.
+func (a *assessor) curvature() Curvature {
+	t := a.exponent
+	atMin, atMax := a.localEnergies()
+	return Curvature{
+		Basis:    a.data.basis,
+		Exponent: NewEstimate(t.Exponent), EChange: NewEstimate(t.Change),
+		PValue: Real(t.PValue), PBand: Real(t.PBand), PScaleFree: Real(t.PScaleFree),
+		Detectable: NewEstimate(t.Detectable), ToleranceKJ: Real(a.rule.ToleranceKJ),
+		Nu: t.Nu, Pointwise: a.pointwise, SecondBarrier: a.secondRun,
+		ELocTMin: atMin, ELocTMax: atMax,
+	}
+}
+
+// localEnergies are E_loc at both ends of the range by power-prefactor, in kJ/mol.
+func (a *assessor) localEnergies() (atMin, atMax Estimate) {
+	if a.power.Status != fit.Converged || a.power.Cov == nil {
+		return NewEstimate(fit.Unknown()), NewEstimate(fit.Unknown())
+	}
+	low, high := a.data.sample.Range()
+	at := func(t float64) Estimate {
+		e, jac := make([]float64, 1), make([]float64, len(a.power.P))
+		a.power.Curve.ELoc(a.power.TRef, []float64{t}, a.power.P, e, jac)
+		for i := range jac {
+			jac[i] /= 1000
+		}
+		return NewEstimate(a.power.Interval(jac, e[0]/1000, a.opt.Confidence))
+	}
+	return at(low), at(high)
+}
+
+// sources lists the sources of the used points in order of appearance.
+func sources(points []dataset.Point) []string {
+	out := []string{}
+	for _, p := range points {
+		if p.Used && p.Source != "" && !slices.Contains(out, p.Source) {
+			out = append(out, p.Source)
+		}
+	}
+	return out
+}
+
+func countLimits(points []dataset.Point) (n int) {
+	for _, p := range points {
+		if p.Limit != "" {
+			n++
+		}
+	}
+	return n
+}
