@@ -191,8 +191,6 @@ type plan struct {
 	cum     []float64    // their cumulative weights
 	strata  [][]int      // Pairs: entries, or points, that are exchanged
 	byPoint bool         // Pairs: strata hold points behind means
-	temp    []int        // number of the distinct temperature of each entry
-	need    int          // distinct temperatures that all candidates need
 	factor  []float64    // e^(penalty/N) with σ unknown
 	kernels []*kernel
 	refit   bool // the refitter is needed
@@ -225,7 +223,6 @@ func newPlan(in Input, opt Options) (*plan, error) {
 		panic("bootstrap: a judge needs states")
 	}
 
-	p.numberTemperatures()
 	if err := p.opt.Scheme.Check(n, p.stratify()); err != nil {
 		return nil, err
 	}
@@ -294,24 +291,6 @@ func (p *plan) scatters(f *fit.Result) bool {
 	return math.Sqrt(f.RSS/float64(len(p.y))) >= 1e-12*most
 }
 
-func (p *plan) numberTemperatures() {
-	number := map[float64]int{}
-	p.temp = make([]int, len(p.in.Sample.T))
-	for i, t := range p.in.Sample.T {
-		k, ok := number[t]
-		if !ok {
-			k = len(number)
-			number[t] = k
-		}
-		p.temp[i] = k
-	}
-	for _, f := range p.in.Fits {
-		if f.Usable() {
-			p.need = max(p.need, f.Params())
-		}
-	}
-}
-
 // stratify groups what Pairs exchanges: the points of each mean, or the entries of
 // each temperature, where every one has at least two; else all entries together.
 func (p *plan) stratify() (replicated bool) {
@@ -324,7 +303,7 @@ func (p *plan) stratify() (replicated bool) {
 		}
 		p.byPoint = true
 	} else {
-		groups, group = slices.Max(p.temp)+1, p.temp
+		groups, group = numberTemperatures(p.in.Sample.T)
 	}
 	p.strata = make([][]int, groups)
 	for i, g := range group {
@@ -346,13 +325,25 @@ func (p *plan) stratify() (replicated bool) {
 	return true
 }
 
+// numberTemperatures gives the number of distinct temperatures, and which one each
+// entry has.
+func numberTemperatures(t []float64) (distinct int, number []int) {
+	known := map[float64]int{}
+	for _, ti := range t {
+		k, ok := known[ti]
+		if !ok {
+			k = len(known)
+			known[ti] = k
+		}
+		number = append(number, k)
+	}
+	return len(known), number
+}
+
 // newGenerator makes the errors around one fit; nil if it leaves none.
 func (p *plan) newGenerator(f *fit.Result) *generator {
 	n := p.in.Sample.Len()
 	if !f.Usable() || len(f.Fitted) != n || len(f.Residuals) != n {
-		return nil
-	}
-	if f.Nu < 1 && !p.exactlyKnown() {
 		return nil
 	}
 	lev := f.Leverage
@@ -480,7 +471,6 @@ type worker struct {
 	y, e    []float64
 	ix      []int32
 	counts  []int // Pairs of entries: how often each was drawn; else nil
-	seen    []bool
 	scratch []*scratch
 	diff, t []float64
 }
@@ -491,7 +481,6 @@ func (p *plan) newWorker() *worker {
 		p: p, s: newStream(),
 		y: make([]float64, n), e: make([]float64, n),
 		diff: make([]float64, len(p.in.Targets)), t: make([]float64, len(p.in.Targets)),
-		seen: make([]bool, n),
 	}
 	most := n
 	for _, s := range p.strata {
@@ -524,9 +513,8 @@ func (w *worker) resample(b int) {
 	p := w.p
 	w.s.reset(p.opt.Seed, uint64(b))
 	w.fresh = false
-	distinct := math.MaxInt
 	if p.opt.Scheme == Pairs {
-		distinct = w.drawPairs()
+		w.drawPairs()
 	}
 	if w.judge != nil {
 		if p.opt.Scheme != Pairs {
@@ -537,13 +525,13 @@ func (w *worker) resample(b int) {
 			}
 		}
 		p.state[b], p.first[b] = -1, -1
-		if distinct >= p.need && w.refitAll() {
+		if w.refitAll() {
 			p.first[b] = p.firstPlace(w.out.RSS)
 			p.state[b] = w.state()
 		}
 	}
 	for i, k := range p.kernels {
-		ok := distinct >= k.p && w.evaluate(k, w.scratch[i])
+		ok := w.evaluate(k, w.scratch[i])
 		for j, which := range k.targets {
 			p.diff[which][b], p.t[which][b] = w.diff[j], w.t[j]
 			if !ok {
@@ -563,8 +551,8 @@ func pick(cum []float64, u float64) int {
 	return len(cum) - 1
 }
 
-// drawPairs fills y and counts, and returns the number of distinct temperatures.
-func (w *worker) drawPairs() (distinct int) {
+// drawPairs fills y and counts.
+func (w *worker) drawPairs() {
 	p := w.p
 	copy(w.y, p.y)
 	if p.byPoint {
@@ -584,10 +572,9 @@ func (w *worker) drawPairs() (distinct int) {
 			}
 			w.y[g] = sum / weight
 		}
-		return math.MaxInt
+		return
 	}
 	clear(w.counts)
-	clear(w.seen)
 	for _, members := range p.strata {
 		ix := w.ix[:len(members)]
 		w.s.indices(ix, len(members))
@@ -595,13 +582,6 @@ func (w *worker) drawPairs() (distinct int) {
 			w.counts[members[k]]++
 		}
 	}
-	for i, c := range w.counts {
-		if t := p.temp[i]; c > 0 && !w.seen[t] {
-			w.seen[t] = true
-			distinct++
-		}
-	}
-	return distinct
 }
 
 // refitAll refits every candidate to y and reports whether all could be fitted.

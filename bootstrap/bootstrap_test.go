@@ -307,6 +307,7 @@ func TestResidualPool(t *testing.T) {
 	// Wild: the same size at its own point, both signs equally often.
 	g = newGenerator(s, Wild, f.Fitted, f.Residuals, f.Leverage, 2, f.Sigma)
 	plus := make([]float64, 6)
+	var changes float64
 	for b := range 4000 {
 		st.reset(2, uint64(b))
 		g.draw(st, Wild, draw, ix)
@@ -315,8 +316,12 @@ func TestResidualPool(t *testing.T) {
 			if draw[i] > 0 {
 				plus[i]++
 			}
+			if i > 0 && want[i]*want[i-1]*draw[i]*draw[i-1] < 0 {
+				changes++
+			}
 		}
 	}
+	within(t, "changes of sign", changes, 8000, 4*math.Sqrt(4000))
 	for _, c := range plus[:5] {
 		within(t, "plus signs", c, 2000, 4*math.Sqrt(1000))
 	}
@@ -453,6 +458,33 @@ func TestPairsKernel(t *testing.T) {
 	}
 }
 
+// Two entries fix a straight line: it has an estimate and no scatter.
+func TestPairsWithoutScatter(t *testing.T) {
+	s := synthetic(t, "s1_straight")
+	p, err := newPlan(intervalsOnly(linearInput(s)), Options{Scheme: Pairs, Resamples: 1})
+	if err != nil {
+		t.Fatal(err)
+	}
+	k := p.kernels[0]
+	diff, tt := make([]float64, 2), make([]float64, 2)
+	n := s.Len()
+	for i := range n {
+		for j := range i {
+			counts := make([]int, n)
+			counts[i], counts[j] = 5, n-5
+			if !k.pairs(k.newScratch(), k.fit.Residuals, counts, diff, tt) {
+				t.Fatal("two temperatures determine a line")
+			}
+			// The slope through both points, kJ/mol.
+			e := -models.GasConstant / 1000 * (s.Y[i] - s.Y[j]) / (1/s.T[i] - 1/s.T[j])
+			within(t, "E", diff[1], e-k.fit.P[1]/1000, 1e-9*e)
+			if !math.IsNaN(tt[1]) {
+				t.Errorf("t = %g", tt[1])
+			}
+		}
+	}
+}
+
 // Points behind means: a resampled mean is one of the possible ones, its variance
 // over resamples is that of m draws with replacement, s²(m-1)/m /m for equal weights,
 // and the resampled points never leave their temperature.
@@ -489,7 +521,8 @@ func TestPairsWithinTemperatures(t *testing.T) {
 	draws := make([][]float64, len(groups))
 	for i := range b {
 		w.s.reset(9, uint64(i))
-		if d := w.drawPairs(); d < 7 || w.counts != nil {
+		w.drawPairs()
+		if w.counts != nil {
 			t.Fatal("the design must stay")
 		}
 		for g := range groups {
@@ -509,6 +542,35 @@ func TestPairsWithinTemperatures(t *testing.T) {
 		t.Errorf("failed %d, states %v", o.Failed, o.States)
 	}
 
+	// Weights: of two points with weights 1 and 3 there are three possible means.
+	two := testSample(t, fit.Relative, 4, 0.03, 1)
+	in = linearInput(two)
+	in.Points = &Points{}
+	for g, y := range two.Y {
+		in.Points.Y = append(in.Points.Y, y+0.3, y-0.1)
+		in.Points.Weight = append(in.Points.Weight, 1, 3)
+		in.Points.Group = append(in.Points.Group, g, g)
+	}
+	if p, err = newPlan(in, Options{Scheme: Pairs, Resamples: 1}); err != nil {
+		t.Fatal(err)
+	}
+	w = p.newWorker()
+	seen := [3]int{}
+	for i := range 400 {
+		w.s.reset(2, uint64(i))
+		w.drawPairs()
+		for g, y := range two.Y {
+			for j, d := range []float64{0.3, 0, -0.1} {
+				if math.Abs(w.y[g]-y-d) < 1e-12 {
+					seen[j]++
+				}
+			}
+		}
+	}
+	within(t, "first twice", float64(seen[0]), 400, 4*math.Sqrt(300))
+	within(t, "one of each", float64(seen[1]), 800, 4*math.Sqrt(400))
+	within(t, "second twice", float64(seen[2]), 400, 4*math.Sqrt(300))
+
 	// The same points as independent entries: strata by temperature, at any N.
 	ind := linearInput(full)
 	q, err := newPlan(ind, Options{Scheme: Pairs, Resamples: 1})
@@ -518,8 +580,15 @@ func TestPairsWithinTemperatures(t *testing.T) {
 	u := q.newWorker()
 	for i := range 100 {
 		u.s.reset(9, uint64(i))
-		if u.drawPairs() != 7 || sum(u.counts) != full.Len() {
-			t.Fatal("strata by temperature")
+		u.drawPairs()
+		drawn := make([]int, len(temps))
+		for j, c := range u.counts {
+			drawn[pts.Group[j]] += c
+		}
+		for g, n := range drawn {
+			if n != len(groups[g]) {
+				t.Fatalf("%d points drawn at a temperature that has %d", n, len(groups[g]))
+			}
 		}
 	}
 }
@@ -643,6 +712,7 @@ func TestInK(t *testing.T) {
 				if rb.Failed != ra.Failed || rb.Flat != ra.Flat {
 					t.Errorf("%s %s: failed %d and %d", scheme, ra.Name, ra.Failed, rb.Failed)
 				}
+				within(t, ra.Name+" se", rb.StdError, ra.StdError, 0.02*ra.StdError)
 				for m, ia := range ra.Intervals {
 					ib := rb.Intervals[m]
 					tol := 0.1 * ra.StdError
@@ -716,6 +786,28 @@ func TestFlatResamples(t *testing.T) {
 	}
 }
 
+// No rounding error may pass for scatter.
+func TestFlatKernel(t *testing.T) {
+	for n := 4; n < 30; n++ {
+		s := testSample(t, fit.Relative, n, 0.03, 1)
+		in := intervalsOnly(linearInput(s))
+		p, err := newPlan(in, Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, k := range p.kernels {
+			for _, c := range []float64{0.037, -0.11, 3e-5} {
+				e := slices.Repeat([]float64{c}, n)
+				diff, tt := make([]float64, 2), make([]float64, 2)
+				k.fixed(e, diff, tt)
+				if !math.IsNaN(tt[0]) || !math.IsNaN(tt[1]) {
+					t.Fatalf("N = %d: %v", n, tt)
+				}
+			}
+		}
+	}
+}
+
 func TestSelectNth(t *testing.T) {
 	rng := rand.New(rand.NewPCG(3, 3))
 	for range 300 {
@@ -753,6 +845,13 @@ func TestStream(t *testing.T) {
 	}
 	for b, c := range ones {
 		within(t, "bit "+string(rune('0'+b)), float64(c), n/2, 5*math.Sqrt(n)/2)
+	}
+	// Seed and index do not stand in for each other.
+	s.reset(0, 1)
+	u := s.pcg.Uint64()
+	s.reset(1, 0)
+	if s.pcg.Uint64() == u {
+		t.Error("resample 1 of seed 0 is resample 0 of seed 1")
 	}
 	// Indices are even over n.
 	const m = 7
