@@ -96,31 +96,29 @@ func fitInK(s *Sample, c models.Curve) *Result {
 	}
 	o := newObjective(s, c)
 	pr, engine := o.problem(), newSolver(s.Len(), p)
-	var best *Solution
-	for _, p0 := range starts {
-		sol := engine.solve(pr, p0, Options{})
-		if sol.Status == Failed || !finite(sol.RSS) || !finite(sol.P...) {
-			r.Reason = sol.Reason
-			continue
+	least := math.Inf(1)
+	var p0 []float64
+	for _, start := range starts {
+		_, ok, reason := engine.trustRegion(pr, start, Options{})
+		if rss := floats.Dot(engine.r, engine.r); ok && rss < least {
+			least, p0 = rss, append(p0[:0], engine.p...)
 		}
-		if best == nil || sol.RSS < best.RSS {
-			best = sol
-		}
+		r.Reason = reason
 	}
-	if best == nil {
+	if p0 == nil {
 		return r
 	}
-	r.Reason = ""
-	if isShaped {
-		if line.Usable() && !(best.RSS*o.unit*o.unit < line.RSS*(1-1e-12)) {
-			return exclude()
-		}
-		// Canonical order of the parameters, with a covariance to match.
-		a, e, q := shaped.ToShape(best.P)
-		shaped.FromShape(a, e, q, best.P)
-		if again := engine.solve(pr, best.P, Options{}); again.Status != Failed && again.RSS <= best.RSS*(1+1e-9) {
-			best = again
-		}
+	if isShaped { // parameters in their canonical order
+		a, e, q := shaped.ToShape(p0)
+		shaped.FromShape(a, e, q, p0)
+	}
+	best := engine.solve(pr, p0, Options{})
+	if best.Status == Failed {
+		r.Reason = best.Reason
+		return r
+	}
+	if isShaped && line.Usable() && !(best.RSS*o.unit*o.unit < line.RSS*(1-1e-12)) {
+		return exclude()
 	}
 
 	r.Status, r.Reason = best.Status, best.Reason

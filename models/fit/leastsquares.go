@@ -74,6 +74,20 @@ func (s *solver) solve(pr Problem, p0 []float64, opt Options) *Solution {
 	if len(p0) != pr.N || s.q.m != pr.M || s.q.n != pr.N {
 		panic("fit: the length of p0 does not match the problem")
 	}
+	sol := &Solution{RSS: math.NaN(), Condition: math.Inf(1)}
+	var ok bool
+	sol.Iterations, ok, sol.Reason = s.trustRegion(pr, p0, opt)
+	if !ok {
+		return sol
+	}
+	sol.Iterations += s.polish(pr)
+	s.finish(pr, sol)
+	return sol
+}
+
+// trustRegion leaves the minimum in s.p and its residuals in s.r. ok is false where
+// there is no estimate.
+func (s *solver) trustRegion(pr Problem, p0 []float64, opt Options) (iterations int, ok bool, reason string) {
 	if opt.MaxIterations == 0 {
 		opt.MaxIterations = 1000
 	}
@@ -83,21 +97,8 @@ func (s *solver) solve(pr Problem, p0 []float64, opt Options) *Solution {
 	if opt.Factor == 0 {
 		opt.Factor = 1
 	}
-	copy(s.p, p0)
-	sol := &Solution{RSS: math.NaN(), Condition: math.Inf(1)}
-	var ok bool
-	sol.Iterations, ok, sol.Reason = s.trustRegion(pr, opt)
-	if !ok {
-		return sol
-	}
-	sol.Iterations += s.polish(pr)
-	s.finish(pr, sol)
-	return sol
-}
-
-// trustRegion leaves the minimum in s.p. ok is false where there is no estimate.
-func (s *solver) trustRegion(pr Problem, opt Options) (iterations int, ok bool, reason string) {
 	n := pr.N
+	copy(s.p, p0)
 	pr.Eval(s.p, s.r, s.jac)
 	fnorm := floats.Norm(s.r, 2)
 	if !finite(fnorm) || !finite(s.jac...) {
@@ -107,20 +108,13 @@ func (s *solver) trustRegion(pr Problem, opt Options) (iterations int, ok bool, 
 	for iter := 1; ; iter++ {
 		s.q.load(s.jac, nil)
 		s.q.factor()
-		for j := range n {
-			// Column lengths survive Q: those of R are those of J.
-			length := 0.0
-			for i := 0; i <= j; i++ {
-				length = math.Hypot(length, s.q.r[i*n+j])
-			}
-			s.w[j] = length
-			d := &s.diag[s.q.perm[j]]
+		for j, length := range s.q.size {
 			if iter == 1 {
-				*d = 0
+				s.diag[j] = 0
 			}
-			*d = math.Max(*d, length)
-			if *d == 0 {
-				*d = 1
+			s.diag[j] = math.Max(s.diag[j], length)
+			if s.diag[j] == 0 {
+				s.diag[j] = 1
 			}
 		}
 		if iter == 1 {
@@ -136,14 +130,15 @@ func (s *solver) trustRegion(pr Problem, opt Options) (iterations int, ok bool, 
 		var gnorm float64 // largest |cos(r, column of J)|
 		if fnorm > 0 {
 			for j := range n {
-				if s.w[j] == 0 {
+				length := s.q.size[s.q.perm[j]]
+				if length == 0 {
 					continue
 				}
 				g := 0.0
 				for i := 0; i <= j; i++ {
 					g += s.q.r[i*n+j] * (s.qtb[i] / fnorm)
 				}
-				gnorm = math.Max(gnorm, math.Abs(g/s.w[j]))
+				gnorm = math.Max(gnorm, math.Abs(g/length))
 			}
 		}
 		if gnorm <= opt.Tolerance {

@@ -225,12 +225,12 @@ func (f *profiler) at(g float64, p []float64) (float64, []float64) {
 			q = append(q, pj)
 		}
 	}
-	sol := f.engine.solve(f.problem(), q, Options{})
-	if sol.Status == Failed {
+	_, ok, _ := f.engine.trustRegion(f.problem(), q, Options{})
+	if !ok {
 		return math.NaN(), nil
 	}
-	f.expand(sol.P)
-	return sol.RSS, append([]float64(nil), f.full...)
+	f.expand(f.engine.p)
+	return floats.Dot(f.engine.r, f.engine.r), append([]float64(nil), f.full...)
 }
 
 // end walks from value in steps that double until the sum of squares has risen by

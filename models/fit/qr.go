@@ -19,7 +19,8 @@ type qr struct {
 	a    []float64 // columns; Householder vectors on and below the diagonal
 	r    []float64 // R, n x n, row-major, upper triangle
 	perm []int     // column perm[j] of A is column j of A P
-	norm []float64 // norms of what is left of each column, kept up to date
+	size []float64 // length of each column of A, in its order
+	norm []float64 // lengths of what is left of each column, kept up to date
 	full []float64 // the same when last computed in full
 	inv  []float64 // n x n scratch of covariance
 }
@@ -28,7 +29,7 @@ func newQR(m, n int) *qr {
 	return &qr{
 		m: m, n: n,
 		a: make([]float64, m*n), r: make([]float64, n*n), perm: make([]int, n),
-		norm: make([]float64, n), full: make([]float64, n), inv: make([]float64, n*n),
+		size: make([]float64, n), norm: make([]float64, n), full: make([]float64, n), inv: make([]float64, n*n),
 	}
 }
 
@@ -53,8 +54,8 @@ func (q *qr) factor() {
 	m, n := q.m, q.n
 	for j := range n {
 		q.perm[j] = j
-		q.norm[j] = floats.Norm(q.a[j*m:(j+1)*m], 2)
-		q.full[j] = q.norm[j]
+		q.size[j] = floats.Norm(q.a[j*m:(j+1)*m], 2)
+		q.norm[j], q.full[j] = q.size[j], q.size[j]
 	}
 	for j := range n {
 		best := j
