@@ -21,7 +21,7 @@ import (
 // The same set and options give the same assessment to the last byte, whatever the
 // number of workers.
 func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, error) {
-	if err := opt.check(); err != nil {
+	if err := opt.Check(); err != nil {
 		return nil, fmt.Errorf("diagnostics: %w", err)
 	}
 	tolerance, err := ParseTolerance(opt.Tolerance)
@@ -131,9 +131,6 @@ func (a *assessor) fit() error {
 			a.find("chi2-low", fmt.Sprintf("χ² p = %.2g: the stated uncertainties may leave out run-to-run scatter", p), nil, map[string]Real{"p_value": Real(p)})
 		}
 	}
-	if low, high := a.data.sample.Range(); sameTemperature(low, high) {
-		return a.problem("one-temperature", fmt.Sprintf("all used points lie at %g K", low), "a barrier needs at least two temperatures, its test at least four")
-	}
 	return nil
 }
 
@@ -187,6 +184,9 @@ func (a *assessor) fitUnder(model fit.ErrorModel) error {
 		return a.problem("not-fittable", err.Error(), "correct the row, or leave it out with --leave-out")
 	}
 	a.data = data
+	if low, high := a.data.sample.Range(); sameTemperature(low, high) {
+		return a.problem("one-temperature", fmt.Sprintf("all used points lie at %g K", low), "a barrier needs at least two temperatures, its test at least four")
+	}
 	curves := slices.Clone(a.opt.Models)
 	a.ranked = len(curves)
 	for _, c := range []models.Curve{models.Straight(), models.PowerPrefactor{}} {
