@@ -170,10 +170,16 @@ func (p *plan) makeNodes() {
 			break
 		}
 	}
+	p.shapes = make([]float64, len(p.nodes)*len(p.rows))
+	p.projectShapes()
+}
+
+// projectShapes fills shapes and norm2 of the nodes.
+func (p *plan) projectShapes() {
 	n := len(p.rows)
-	p.shapes = make([]float64, len(p.nodes)*n)
 	for j := range p.nodes {
 		nd := &p.nodes[j]
+		nd.norm2 = 0
 		s := p.shapes[j*n : (j+1)*n]
 		for i, r := range p.rows {
 			v, _ := p.tab.at(nd.c + nd.d*r.u)

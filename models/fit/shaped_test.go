@@ -10,37 +10,6 @@ import (
 	"onebarrier/models"
 )
 
-// publishedSample reads T_K and k of a table under testdata/published.
-func publishedSample(t testing.TB, path string) *Sample {
-	t.Helper()
-	var temp, k, v []float64
-	for _, row := range readCSV(t, filepath.Join(published, path)) {
-		temp = append(temp, number(t, row["T_K"]))
-		k = append(k, number(t, row["k"]))
-		v = append(v, 1)
-	}
-	s, err := NewSample(Relative, temp, k, v)
-	if err != nil {
-		t.Fatal(err)
-	}
-	return s
-}
-
-// golden reads quantity -> value of one fit of a golden file.
-func golden(t testing.TB, file, dataset, fit string) map[string]float64 {
-	t.Helper()
-	g := map[string]float64{}
-	for _, row := range readCSV(t, filepath.Join(published, file)) {
-		if row["dataset"] == dataset && row["fit"] == fit {
-			g[row["quantity"]] = number(t, row["value"])
-		}
-	}
-	if len(g) == 0 {
-		t.Fatalf("%s has no %s/%s", file, dataset, fit)
-	}
-	return g
-}
-
 // parallelNames are the golden files' names of the canonical parameters.
 var parallelNames = []string{"lnk1ref", "E1", "lnk2ref", "E2"}
 
@@ -48,8 +17,8 @@ var parallelNames = []string{"lnk1ref", "E1", "lnk2ref", "E2"}
 // squares in 50-digit arithmetic.
 func TestParallelGolden(t *testing.T) {
 	for _, set := range []string{"s2_tn_curved", "s3_parallel", "s6_replicates"} {
-		s := publishedSample(t, "synthetic/"+set+".csv")
-		g := golden(t, "golden_fits_mp.csv", set, "par2")
+		s := synthetic(t, set, Relative)
+		g := goldenFits(t, "golden_fits_mp.csv")[set+",par2"]
 		res := Fit(s, models.Parallel{})
 		if res.Status != Converged {
 			t.Errorf("%s: %v: %s", set, res.Status, res.Reason)
@@ -85,7 +54,6 @@ func TestParallelPublishedSums(t *testing.T) {
 	found := 0
 	for _, row := range readCSV(t, filepath.Join(published, "expressions/expressions.csv")) {
 		id := row["id"]
-		table := "expressions/table_" + id + ".csv"
 		if !strings.HasPrefix(row["form"], "A1*exp") || id == "gierczak_oh_acetone_all" {
 			continue
 		}
@@ -94,7 +62,8 @@ func TestParallelPublishedSums(t *testing.T) {
 		if strings.Contains(row["form"], "cal/mol") {
 			unit = calorie
 		}
-		s := publishedSample(t, table)
+		d := table(t, "expressions/table_"+id+".csv", "T_K", "k")
+		s := mustSample(t, Relative, d[0], d[1], ones(len(d[0])))
 		res := Fit(s, models.Parallel{})
 		if res.Status != Converged {
 			t.Errorf("%s: %v: %s", id, res.Status, res.Reason)
@@ -157,8 +126,8 @@ func (series) FromShape(a, e float64, q, p []float64) {
 // TestSeriesGolden checks the kernel's other sign against golden_fits_mp.csv.
 func TestSeriesGolden(t *testing.T) {
 	for _, set := range []string{"s4_series", "s7_vft"} {
-		g := golden(t, "golden_fits_mp.csv", set, "ser2")
-		res := Fit(publishedSample(t, "synthetic/"+set+".csv"), series{})
+		g := goldenFits(t, "golden_fits_mp.csv")[set+",ser2"]
+		res := Fit(synthetic(t, set, Relative), series{})
 		if res.Status != Converged {
 			t.Errorf("%s: %v: %s", set, res.Status, res.Reason)
 			continue
@@ -181,11 +150,11 @@ func TestSeriesGolden(t *testing.T) {
 // scatter, leave nothing for a second path to describe.
 func TestParallelExcluded(t *testing.T) {
 	for _, set := range []string{"s4_series", "s7_vft"} {
-		if res := Fit(publishedSample(t, "synthetic/"+set+".csv"), models.Parallel{}); res.Status != Excluded {
+		if res := Fit(synthetic(t, set, Relative), models.Parallel{}); res.Status != Excluded {
 			t.Errorf("%s: parallel is %v: %s", set, res.Status, res.Reason)
 		}
 	}
-	if res := Fit(publishedSample(t, "synthetic/s3_parallel.csv"), series{}); res.Status != Excluded {
+	if res := Fit(synthetic(t, "s3_parallel", Relative), series{}); res.Status != Excluded {
 		t.Errorf("s3_parallel: series is %v: %s", res.Status, res.Reason)
 	}
 	s := made(t, 12, 280, 340, []float64{-5, 60e3}, models.Straight(), nil)
@@ -197,12 +166,7 @@ func TestParallelExcluded(t *testing.T) {
 // TestParallelNotIdentified: one point too high at the hot end asks for a path that
 // is felt there alone, whatever its barrier.
 func TestParallelNotIdentified(t *testing.T) {
-	s := made(t, 8, 280, 340, []float64{-5, 60e3}, models.Straight(), func(i int) float64 {
-		if i == 7 {
-			return 0.3
-		}
-		return 1e-3 * float64(i%2)
-	})
+	s := highEnd(t)
 	res := Fit(s, models.Parallel{})
 	if res.Status != NotIdentified || res.Cov != nil || res.Reason == "" {
 		t.Errorf("parallel is %v (%s), P = %v", res.Status, res.Reason, res.P)
@@ -210,6 +174,15 @@ func TestParallelNotIdentified(t *testing.T) {
 	if res.RSS > 1e-5 {
 		t.Errorf("RSS = %g: the high point was not described", res.RSS)
 	}
+}
+
+func highEnd(t testing.TB) *Sample {
+	return made(t, 8, 280, 340, []float64{-5, 60e3}, models.Straight(), func(i int) float64 {
+		if i == 7 {
+			return 0.3
+		}
+		return 1e-3 * float64(i%2)
+	})
 }
 
 // made is a sample at n temperatures evenly spaced in 1/T, made from a curve with
@@ -229,9 +202,86 @@ func made(t testing.TB, n int, low, high float64, p []float64, c models.Curve, n
 		}
 		k[i] = math.Exp(f[i])
 	}
-	s, err := NewSample(Relative, temp, k, v)
-	if err != nil {
-		t.Fatal(err)
+	return mustSample(t, Relative, temp, k, v)
+}
+
+// TestParallelProfileAgainstR checks profile intervals against golden_fits.csv:
+// prof_t95_* from R, S(θ) = S_min (1 + F(1, ν)/ν).
+func TestParallelProfileAgainstR(t *testing.T) {
+	g := goldenFits(t, "golden_fits.csv")
+	compared := 0
+	for _, c := range []struct {
+		set, fit string
+		curve    models.Shaped
+	}{
+		{"s2_tn_curved", "par2", models.Parallel{}},
+		{"s3_parallel", "par2", models.Parallel{}},
+		{"s6_replicates", "par2", models.Parallel{}},
+		{"s4_series", "ser2", series{}},
+		{"s7_vft", "ser2", series{}},
+	} {
+		s := synthetic(t, c.set, Relative)
+		r := Fit(s, c.curve)
+		for j, name := range parallelNames {
+			param := []string{"ln_k1_ref", "E1", "ln_k2_ref", "E2"}[j]
+			lo, okLo := g[c.set+","+c.fit]["prof_t95_lo:"+name]
+			hi, okHi := g[c.set+","+c.fit]["prof_t95_hi:"+name]
+			if !okLo && !okHi {
+				continue
+			}
+			e := ProfileShaped(s, r, param, 0.95)
+			if okLo {
+				compared++
+				want(t, c.set+" lower "+param, e.Lower, lo, 1e-9)
+			}
+			if okHi {
+				compared++
+				want(t, c.set+" upper "+param, e.Upper, hi, 1e-9)
+			}
+		}
 	}
-	return s
+	if compared != 36 {
+		t.Errorf("%d ends compared, want 36", compared)
+	}
+}
+
+// TestParallelProfileOfLnA checks the intervals of ln A against R 4.2.2: nls.lm of
+// minpack.lm 1.2-3 on ln k with ln A held, uniroot on S(θ) = S_min (1 + F(1, ν)/ν).
+func TestParallelProfileOfLnA(t *testing.T) {
+	for _, c := range []struct {
+		set, param              string
+		value, se, lower, upper float64
+	}{
+		{"s3_parallel", "ln_A1", 8.33088644376, 0.0536283032, 8.2187720213, 8.441026154},
+		{"s3_parallel", "ln_A2", 28.9483427815, 0.451408826, 28.037416451, 29.898821228},
+		{"s2_tn_curved", "ln_A1", 25.0018075084, 0.114293954, 24.697209232, 25.257145634},
+		{"s2_tn_curved", "ln_A2", 28.5649233748, 0.147148287, 28.226945132, 28.94718957},
+	} {
+		s := synthetic(t, c.set, Relative)
+		e := ProfileShaped(s, Fit(s, models.Parallel{}), c.param, 0.95)
+		want(t, c.set+" "+c.param, e.Value, c.value, 1e-9)
+		want(t, c.set+" se "+c.param, e.StdError, c.se, 1e-7)
+		want(t, c.set+" lower "+c.param, e.Lower, c.lower, 1e-9)
+		want(t, c.set+" upper "+c.param, e.Upper, c.upper, 1e-9)
+		if e.Open != OpenNone {
+			t.Errorf("%s %s: open %q", c.set, c.param, e.Open)
+		}
+	}
+}
+
+// TestParallelProfileOpen: in the set of TestParallelNotIdentified any barrier of the
+// second path from somewhere on describes the one high point, and so does any
+// prefactor that goes with it.
+func TestParallelProfileOpen(t *testing.T) {
+	s := highEnd(t)
+	r := Fit(s, models.Parallel{})
+	for _, param := range []string{"E2", "ln_A2"} {
+		e := ProfileShaped(s, r, param, 0.95)
+		if e.Open != OpenUpper || !math.IsInf(e.Upper, 1) || !(e.Lower > 0) || !math.IsNaN(e.Value) {
+			t.Errorf("%s: %+v, want a finite lower end and an open upper one", param, e)
+		}
+	}
+	if e := ProfileShaped(s, r, "E1", 0.95); e.Open != OpenNone || !(e.Lower > 59e3 && e.Upper < 61e3) {
+		t.Errorf("E1: %+v, want an interval about 60 kJ/mol", e)
+	}
 }
