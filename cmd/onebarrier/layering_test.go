@@ -3,6 +3,7 @@ package main_test
 import (
 	"bytes"
 	"fmt"
+	"os"
 	"os/exec"
 	"path"
 	"slices"
@@ -173,6 +174,24 @@ func topLevel(names, ignored []string) []string {
 		}
 	}
 	return out
+}
+
+func TestTopLevel(t *testing.T) {
+	entries, err := os.ReadDir(root)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var names []string
+	for _, e := range entries {
+		names = append(names, e.Name())
+	}
+	ignore, err := os.ReadFile(root + "/.gitignore")
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, v := range topLevel(names, strings.Fields(string(ignore))) {
+		t.Error(v)
+	}
 }
 
 func TestPlantedTopLevelNamesAreFound(t *testing.T) {
