@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strings"
 
+	"onebarrier/bootstrap"
 	"onebarrier/models"
 	"onebarrier/models/fit"
 )
@@ -72,8 +73,8 @@ var (
 	ReplicatesWays = []string{ReplicatesMeans, ReplicatesIndependent}
 )
 
-// check refuses settings that mean nothing.
-func (o *Options) check() error {
+// Check refuses settings that mean nothing, before any data are read.
+func (o *Options) Check() error {
 	oneOf := func(what, got string, values []string) error {
 		if got == "" || slices.Contains(values, got) {
 			return nil
@@ -84,7 +85,23 @@ func (o *Options) check() error {
 	for _, m := range fit.ErrorModels {
 		names = append(names, string(m))
 	}
+	var schemes, methods []string
+	for _, v := range bootstrap.Schemes {
+		schemes = append(schemes, string(v))
+	}
+	for _, v := range bootstrap.Methods {
+		methods = append(methods, string(v))
+	}
+	for _, m := range o.Intervals {
+		if err := oneOf("interval", m, methods); err != nil {
+			return err
+		}
+	}
+	if _, err := ParseTolerance(o.Tolerance); err != nil {
+		return err
+	}
 	for _, err := range []error{
+		oneOf("scheme", o.Scheme, schemes),
 		oneOf("error model", string(o.ErrorModel), names),
 		oneOf("replicates", o.Replicates, ReplicatesWays),
 		oneOf("criterion", o.Criterion, Criteria),
