@@ -39,7 +39,7 @@ type Point struct {
 	Dataset string
 	Order   float64 // run order; NaN if not given
 	Note    string
-	Extra   map[string]string // cells of columns that were kept, not used
+	Extra   map[string]string // by heading: cells of columns that were kept, not used
 
 	Used   bool
 	WhyNot string // why the row is not used
@@ -119,6 +119,9 @@ type Problem struct {
 // String prints file:line: column "…": what is wrong; what would be right.
 func (p Problem) String() string {
 	s := p.File
+	if p.Sheet != "" {
+		s += "[" + p.Sheet + "]"
+	}
 	if p.Row > 0 {
 		s += fmt.Sprintf(":%d", p.Row)
 	}
@@ -161,4 +164,10 @@ type Options struct {
 	Where      []string          // conditions 'source!=Lab3', 'pH=7.0' (--where)
 	LeaveOut   []int             // lines of the file
 	TMin, TMax float64           // K; 0 if none
+	// DatasetBy is the heading of a column whose values name the data sets,
+	// where there is no column dataset (--dataset-by).
+	DatasetBy string
+	// AllowNonPositiveK accepts k <= 0, which error models additive in k take
+	// as data.
+	AllowNonPositiveK bool
 }

@@ -1,0 +1,795 @@
+package dataset
+
+import (
+	"fmt"
+	"maps"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
+)
+
+// column is one column of a table with what it was taken for.
+type column struct {
+	Heading
+	index int      // from 0
+	used  bool     // takes part, or checks a column that does
+	says  string   // why a column with a role is not used
+	shown []string // its first cells
+}
+
+// plan says which column gives what.
+type plan struct {
+	cols []column
+
+	temperature []*column // the one used first; the others must agree
+	rate        []*column
+	uncertainty *column // of k
+	ofT         *column // u(T)
+	repeats     *column
+	coverage    *column
+	limit       *column
+	source      *column
+	dataset     *column
+	order       *column
+	note        *column
+	kept        []*column // go to Extra
+
+	base     *column // rate column that the uncertainty is stated in
+	unit     *Unit   // of k; nil if not understood
+	quantity Quantity
+	repeatsN int             // --assume n=
+	level    Kind            // --assume error=, for ± in cells; "" if not said
+	levelK   float64         // its coverage factor
+	t95      map[int]float64 // quantiles by number of repeats
+
+	decimal byte
+	assumed []string
+	notices []Notice
+}
+
+func (p *plan) assume(what string) {
+	if !slices.Contains(p.assumed, what) {
+		p.assumed = append(p.assumed, what)
+	}
+}
+
+// maker turns a table into sets, collecting problems on the way.
+type maker struct {
+	t        *Table
+	opt      Options
+	problems Problems
+}
+
+func (m *maker) refuse(code string, row int, column, format string, args ...any) {
+	p := problem(code, m.t.Name, row, column, fmt.Sprintf(format, args...))
+	p.Sheet = m.t.Sheet
+	m.problems = append(m.problems, p)
+}
+
+func (m *maker) refuseCure(code string, row int, column, message, cure string) {
+	m.refuse(code, row, column, "%s", message)
+	m.problems[len(m.problems)-1].Cure = cure
+}
+
+// header finds the headings: texts, and the index of the first row of data.
+func (m *maker) header() (headings []string, line, first int, notices []Notice, ok bool) {
+	t := m.t
+	i := 0
+	var titles []int
+	for i < len(t.Rows) && filled(t.Rows[i].Cells) < 2 {
+		titles = append(titles, t.Rows[i].Line)
+		i++
+	}
+	if i == len(t.Rows) {
+		if len(t.Rows) > 0 {
+			m.refuseCure(codeNoData, t.Rows[0].Line, "", "no row has two cells: there is no table, or its delimiter is none of comma, semicolon, tab and space",
+				"write one row of headings such as T/K,k/s^-1 and one row for each measurement")
+		} else {
+			m.refuse(codeNoData, 0, "", "the file holds no rows")
+		}
+		return nil, 0, 0, nil, false
+	}
+	head := t.Rows[i]
+	if allNumbers(head.Cells) {
+		if cells := splitLine(t.LastComment, t.Delimiter, len(head.Cells)); len(titles) == 0 && len(cells) == len(head.Cells) && !allNumbers(cells) && hasRole(cells, m.opt.Assume) {
+			notices = append(notices, notice(noteCommentHeading, fmt.Sprintf("the headings were read from the comment in line %d", t.LastCommentLine), t.LastCommentLine))
+			return cells, t.LastCommentLine, i, notices, true
+		}
+		m.refuse(codeNoHeading, head.Line, "", "the first row holds numbers only")
+		return nil, 0, 0, nil, false
+	}
+	if len(titles) > 0 {
+		notices = append(notices, notice(noteTitle, fmt.Sprintf("%s above the headings skipped", lines(titles)), titles...))
+	}
+	headings = append(headings, head.Cells...)
+	first = i + 1
+	if t.Delimiter == ' ' && first < len(t.Rows) && len(headings) != len(t.Rows[first].Cells) && i < len(t.first) {
+		// Headings with spaces in them, two or more between them.
+		if wide := splitLine(t.first[i], ' ', len(t.Rows[first].Cells)); len(wide) == len(t.Rows[first].Cells) {
+			headings = wide
+		}
+	}
+	// A second heading row: units or words, and no number.
+	if first < len(t.Rows) {
+		second := t.Rows[first]
+		if units, words := headingRow(second.Cells); units || words && first+1 < len(t.Rows) {
+			for j, c := range second.Cells {
+				c = strings.TrimSpace(c)
+				if j >= len(headings) || c == "" {
+					continue
+				}
+				if _, err := ParseUnit(strings.Trim(c, "()[]")); err == nil && !strings.ContainsAny(headings[j], "([") && !strings.Contains(headings[j], "/") {
+					c = "(" + strings.Trim(c, "()[]") + ")"
+				}
+				headings[j] = strings.TrimSpace(headings[j] + " " + c)
+			}
+			notices = append(notices, notice(noteJoined, fmt.Sprintf("line %d was joined to the headings", second.Line), second.Line))
+			first++
+		}
+	}
+	// Empty columns at the right end come from spreadsheets.
+	for n := len(headings); n > 0 && strings.TrimSpace(headings[n-1]) == ""; n-- {
+		for _, r := range t.Rows[first:] {
+			if len(r.Cells) >= n && strings.TrimSpace(r.Cells[n-1]) != "" {
+				return headings, head.Line, first, notices, true
+			}
+		}
+		headings = headings[:n-1]
+	}
+	return headings, head.Line, first, notices, true
+}
+
+// headingRow reports whether a row below the headings holds units and words but no
+// number: units if every filled cell is a unit, words if it only has no number.
+func headingRow(cells []string) (units, words bool) {
+	n := 0
+	units, words = true, true
+	for _, c := range cells {
+		s := normalize(c)
+		if isMissing(s) {
+			if s != "" && s != "-" {
+				return false, false
+			}
+			continue
+		}
+		n++
+		if ParseCell(c, '.', 0).Kind != CellText || ParseCell(c, ',', 0).Kind != CellText {
+			return false, false
+		}
+		if _, err := ParseUnit(strings.Trim(s, "()[]/ ")); err != nil {
+			units = false
+		}
+	}
+	return units && n > 0, words && n > 1
+}
+
+func filled(cells []string) int {
+	n := 0
+	for _, c := range cells {
+		if strings.TrimSpace(c) != "" {
+			n++
+		}
+	}
+	return n
+}
+
+func allNumbers(cells []string) bool {
+	for _, c := range cells {
+		if ParseCell(c, '.', 0).Kind == CellText && ParseCell(c, ',', 0).Kind == CellText {
+			return false
+		}
+	}
+	return true
+}
+
+// splitLine splits a heading line into n cells: at the delimiter, or, for a table
+// split at spaces, at single or else at double spaces.
+func splitLine(line string, delimiter byte, n int) []string {
+	p := splitter{s: line, line: 1}
+	cells, _, _, _ := p.next(delimiter)
+	if delimiter != ' ' || len(cells) == n {
+		return append([]string(nil), cells...)
+	}
+	var wide []string
+	for _, c := range strings.Split(strings.ReplaceAll(line, "\t", "  "), "  ") {
+		if c = strings.TrimSpace(c); c != "" {
+			wide = append(wide, c)
+		}
+	}
+	return wide
+}
+
+func hasRole(cells []string, assume map[string]string) bool {
+	roles := map[Role]bool{}
+	for _, c := range cells {
+		roles[ParseHeading(c, assume).Role] = true
+	}
+	return roles[RoleTemperature] && roles[RoleRate]
+}
+
+// columns gives each heading its meaning and chooses the columns that are used.
+func (m *maker) columns(headings []string, line int) *plan {
+	p := &plan{cols: make([]column, len(headings))}
+	seen := map[string]int{}
+	for i, text := range headings {
+		text = strings.TrimSpace(text)
+		c := &p.cols[i]
+		*c = column{Heading: ParseHeading(text, m.opt.Assume), index: i}
+		if text == "" {
+			c.Text = fmt.Sprintf("column %d", i+1)
+			continue
+		}
+		key := normalize(text)
+		if j, ok := seen[key]; ok {
+			m.refuse(codeDuplicateHeading, line, text, "the heading stands over columns %d and %d", j+1, i+1)
+		}
+		seen[key] = i
+	}
+	forced := map[Role]*column{}
+	for _, role := range slices.Sorted(maps.Keys(m.opt.Columns)) {
+		text := m.opt.Columns[role]
+		c := p.find(text)
+		if c == nil {
+			m.refuse(codeColumnUnknown, line, "", "--column %s=%s: there is no such heading; the file has %s", role, text, quoteAll(headings))
+			continue
+		}
+		h, err := parseAs(role, c.Text, m.opt.Assume)
+		if err != nil {
+			m.refuse(codeRoleUnknown, 0, "", "--column %s=%s: %v", role, text, err)
+			continue
+		}
+		h.Text = c.Text
+		c.Heading = h
+		forced[h.Role] = c
+	}
+	m.checkAssumptions(p)
+
+	m.chooseTemperature(p, forced[RoleTemperature], line)
+	m.chooseRate(p, forced[RoleRate], line)
+	single := func(r Role) *column {
+		if c := forced[r]; c != nil {
+			c.used = true
+			return c
+		}
+		for i := range p.cols {
+			if c := &p.cols[i]; c.Role == r {
+				c.used = true
+				return c
+			}
+		}
+		return nil
+	}
+	p.limit, p.source, p.dataset = single(RoleLimit), single(RoleSource), single(RoleDataset)
+	p.order, p.note = single(RoleOrder), single(RoleNote)
+	p.repeats, p.coverage = single(RoleRepeats), single(RoleCoverage)
+	if by := m.opt.DatasetBy; by != "" {
+		if c := p.find(by); c != nil {
+			p.dataset = c
+			c.used = true
+		} else {
+			m.refuse(codeColumnUnknown, line, "", "--dataset-by %s: there is no such heading; the file has %s", by, quoteAll(headings))
+		}
+	}
+	if len(p.rate) > 0 {
+		m.chooseUncertainty(p, forced[RoleUncertainty], line)
+	}
+	if len(p.temperature) > 0 {
+		m.chooseUT(p, forced[RoleTemperatureUncertainty], line)
+	}
+
+	var unused []string
+	for i := range p.cols {
+		c := &p.cols[i]
+		if c.used {
+			p.noteUse(c)
+			continue
+		}
+		p.kept = append(p.kept, c)
+		if c.says == "" && strings.TrimSpace(headings[i]) != "" {
+			unused = append(unused, c.Text)
+		}
+	}
+	if len(unused) > 0 {
+		const most = 12
+		s := quoteAll(unused[:min(most, len(unused))])
+		if len(unused) > most {
+			s += fmt.Sprintf(" and %d more", len(unused)-most)
+		}
+		p.notices = append(p.notices, notice(noteKept, "kept, not used: "+s))
+	}
+	return p
+}
+
+// noteUse records what reading a used column took for granted.
+func (p *plan) noteUse(c *column) {
+	for _, a := range c.Assumed {
+		p.assume(a)
+	}
+	if c.Lost {
+		p.notices = append(p.notices, notice(noteLost, fmt.Sprintf("column %q: a number in the heading was read as a power of ten whose superscript was lost", c.Text)))
+	}
+	if c.Role == RoleRate && c == p.rate[0] {
+		switch c.Form {
+		case FormReciprocal:
+			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a mean lifetime: k = 1/τ", c.Text)))
+		case FormHalfLife:
+			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a half-life: k = ln 2/t½", c.Text)))
+		}
+	}
+}
+
+// find returns the column with a heading, as written or in the unified spelling.
+func (p *plan) find(text string) *column {
+	key := normalize(text)
+	for i := range p.cols {
+		if normalize(p.cols[i].Text) == key {
+			return &p.cols[i]
+		}
+	}
+	return nil
+}
+
+func quoteAll(ss []string) string {
+	const most = 20
+	var b strings.Builder
+	n := 0
+	for _, s := range ss {
+		if s = strings.TrimSpace(s); s == "" {
+			continue
+		}
+		if n++; n > most {
+			b.WriteString(", …")
+			break
+		}
+		if n > 1 {
+			b.WriteString(", ")
+		}
+		b.WriteString(strconv.Quote(short(s)))
+	}
+	return b.String()
+}
+
+// short cuts what a message quotes.
+func short(s string) string {
+	const most = 60
+	n := 0
+	for i := range s {
+		if n++; n > most {
+			return s[:i] + "…"
+		}
+	}
+	return s
+}
+
+// checkAssumptions reads the values of --assume that belong to no heading.
+func (m *maker) checkAssumptions(p *plan) {
+	for _, key := range slices.Sorted(maps.Keys(m.opt.Assume)) {
+		v := m.opt.Assume[key]
+		ok := true
+		switch key {
+		case "T":
+			var h Heading
+			headingParser{assume: m.opt.Assume}.settleTemperature(&h)
+			u, err := ParseUnit(v)
+			ok = h.Ambiguity == nil || err == nil && u.reciprocalEnergy()
+		case "log":
+			ok = v == "ln" || v == "lg"
+		case "k":
+			ok = v == "rate"
+		case "factor":
+			ok = v == "times" || v == "unit"
+		case "error":
+			level, list, found := strings.Cut(v, ",")
+			if found { // sd,n=3
+				n, err := strconv.Atoi(strings.TrimPrefix(list, "n="))
+				ok = err == nil && n >= 1 && strings.HasPrefix(list, "n=")
+				p.repeatsN = n
+			}
+			var k Kind
+			var c float64
+			if k, c, found = errorLevel(level); found {
+				p.level, p.levelK = k, c
+			}
+			ok = ok && found
+		case "n":
+			n, err := strconv.Atoi(v)
+			ok = err == nil && n >= 1
+			p.repeatsN = n
+		default:
+			ok = false
+		}
+		if !ok {
+			m.refuse(codeAssume, 0, "", "--assume %s=%s", key, v)
+		}
+	}
+}
+
+// meanings lists the readings of an ambiguous heading, each with its flag.
+func (a *Ambiguity) meanings() string {
+	var s []string
+	for _, m := range a.Meanings {
+		s = append(s, fmt.Sprintf("--assume %s=%s (%s)", a.Key, m.Value, m.Says))
+	}
+	return strings.Join(s, ", ")
+}
+
+func (m *maker) chooseTemperature(p *plan, forced *column, line int) {
+	var open []*column
+	for i := range p.cols {
+		c := &p.cols[i]
+		switch {
+		case c.Role != RoleTemperature:
+		case forced != nil && c != forced:
+			c.says = "another column was chosen"
+		case c.Ambiguity != nil:
+			if c.Form == FormUnknown && m.unitFromCells(c) {
+				p.temperature = append(p.temperature, c)
+				continue
+			}
+			open = append(open, c)
+		default:
+			p.temperature = append(p.temperature, c)
+		}
+	}
+	if len(p.temperature) == 0 {
+		for _, c := range open {
+			m.refuseCure(codeAmbiguousTemperature, line, c.Text, "the temperature may be meant in several ways",
+				"write the unit into the heading, as in T/K, or say which: "+c.Ambiguity.meanings())
+		}
+		if len(open) == 0 {
+			m.refuse(codeNoTemperature, line, "", "no heading was understood as a temperature among %s", quoteAll(p.texts()))
+		}
+	}
+	for _, c := range p.temperature {
+		c.used = true
+	}
+}
+
+func (p *plan) texts() []string {
+	var s []string
+	for i := range p.cols {
+		s = append(s, p.cols[i].Text)
+	}
+	return s
+}
+
+// unitFromCells gives a heading without unit the unit of its cells, if all that
+// name one name the same.
+func (m *maker) unitFromCells(c *column) bool {
+	text := ""
+	for _, r := range m.t.Rows[1:] {
+		if c.index >= len(r.Cells) {
+			continue
+		}
+		cell := r.Cells[c.index]
+		if cell == "" || isDigit(cell[len(cell)-1]) {
+			continue
+		}
+		got := ParseCell(cell, '.', 0)
+		if got.Kind == CellText {
+			got = ParseCell(cell, ',', 0)
+		}
+		if got.Unit == "" {
+			continue
+		}
+		u, err := ParseUnit(got.Unit)
+		if err != nil || text != "" && u.Text != text {
+			return false
+		}
+		text = u.Text
+	}
+	u, err := ParseUnit(text)
+	if text == "" || err != nil || c.Role == RoleTemperature && u.Dim != dimTemp || c.Role == RoleRate && !u.isRate() {
+		return false
+	}
+	c.Ambiguity, c.Form, c.Unit, c.UnitText = nil, FormDirect, &u, text
+	return true
+}
+
+// plainSymbol is a symbol without the signs that only set its subscript.
+func plainSymbol(s string) string {
+	return strings.NewReplacer("_", "", "{", "", "}", "", " ", "").Replace(s)
+}
+
+func (m *maker) chooseRate(p *plan, forced *column, line int) {
+	var certain, open, times []*column
+	for i := range p.cols {
+		c := &p.cols[i]
+		switch {
+		case c.Role != RoleRate:
+		case forced != nil && c != forced:
+			c.says = "another column was chosen"
+		case c.Ambiguity != nil:
+			open = append(open, c)
+		case c.Form == FormReciprocal || c.Form == FormHalfLife:
+			times = append(times, c)
+		default:
+			if c.Form == FormDirect && c.Unit == nil && c.UnitText == "" {
+				m.unitFromCells(c)
+			}
+			certain = append(certain, c)
+		}
+	}
+	if len(certain) == 0 {
+		certain = times
+	}
+	var groups []string
+	for _, c := range certain {
+		g := plainSymbol(c.Symbol) + string(c.halfLife())
+		if !slices.Contains(groups, g) {
+			groups = append(groups, g)
+		}
+	}
+	switch {
+	case len(groups) > 1:
+		var names, flags []string
+		for _, c := range certain {
+			names = append(names, c.Text)
+			flags = append(flags, fmt.Sprintf("--column 'k=%s'", c.Text))
+		}
+		m.refuseCure(codeSeveralRates, line, "", "there are columns of different rate constants: "+quoteAll(names), "choose one: "+strings.Join(flags, " or "))
+		return
+	case len(certain) == 0 && len(open) > 0:
+		for _, c := range open {
+			m.refuseCure(codeAmbiguousRate, line, c.Text, "the heading may be meant in several ways", "write it out, or say which: "+c.Ambiguity.meanings())
+		}
+		return
+	case len(certain) == 0:
+		m.refuse(codeNoRate, line, "", "no heading was understood as a rate constant among %s", quoteAll(p.texts()))
+		return
+	}
+	p.rate = certain
+	for _, c := range certain {
+		c.used = true
+	}
+}
+
+func (c *column) halfLife() Form {
+	if c.Form == FormReciprocal || c.Form == FormHalfLife {
+		return c.Form
+	}
+	return ""
+}
+
+// rateUnit is the unit of k that a rate column gives: the reciprocal of a time
+// for a lifetime.
+func (c *column) rateUnit() *Unit {
+	if c.Unit == nil || c.halfLife() == "" {
+		return c.Unit
+	}
+	u, err := ParseUnit("1/" + c.Unit.Text)
+	if err != nil {
+		return nil
+	}
+	return &u
+}
+
+// settleQuantity says what k is once the column that gives it is chosen.
+func (p *plan) settleQuantity() {
+	c := p.rate[0]
+	q := Quantity{Symbol: c.Symbol, TimeLike: c.halfLife() != "", Diffusion: strings.HasPrefix(c.Symbol, "D")}
+	if q.TimeLike {
+		q.Symbol = "k"
+	}
+	p.unit = c.rateUnit()
+	switch {
+	case p.unit == nil:
+		q.Unit = normalize(c.UnitText)
+		msg := fmt.Sprintf("column %q: no unit", c.Text)
+		if c.UnitText != "" {
+			msg = fmt.Sprintf("column %q: the unit %q is not understood", c.Text, c.UnitText)
+		}
+		p.notices = append(p.notices, notice(noteUnit, msg+"; numbers are kept as they stand"))
+	default:
+		q.Unit = p.unit.Text
+		r, ok := p.unit.rate()
+		q.Known, q.LnPerSecond, q.PerMolecule = r.known, r.lnPerSecond, r.perMolecule
+		q.Diffusion = q.Diffusion || r.diffusion
+		switch {
+		case !ok:
+			p.notices = append(p.notices, notice(noteUnit, fmt.Sprintf("column %q: %s is not the unit of a rate constant", c.Text, p.unit.Text)))
+		case !r.known:
+			p.notices = append(p.notices, notice(noteUnitWithheld, fmt.Sprintf("column %q: %s", c.Text, p.unit.Text)))
+		}
+	}
+	p.quantity = q
+}
+
+// nearest returns the temperature or rate column next to the left of a column.
+func (p *plan) nearest(c *column) *column {
+	for i := c.index - 1; i >= 0; i-- {
+		if d := &p.cols[i]; d.Role == RoleTemperature || d.Role == RoleRate {
+			return d
+		}
+	}
+	return nil
+}
+
+func (m *maker) chooseUncertainty(p *plan, forced *column, line int) {
+	symbol := plainSymbol(p.rate[0].Symbol)
+	for i := range p.cols {
+		c := &p.cols[i]
+		if c.Role != RoleUncertainty {
+			continue
+		}
+		if forced != nil && c != forced {
+			c.says = "another column was chosen"
+			continue
+		}
+		base := p.rate[0]
+		switch {
+		case c.Of == "":
+			near := p.nearest(c)
+			switch {
+			case near == nil:
+			case near.Role == RoleTemperature:
+				c.Role = RoleTemperatureUncertainty
+				continue
+			case !slices.Contains(p.rate, near):
+				continue // of another rate constant
+			default:
+				base = near
+			}
+			if base.Form == FormLn || base.Form == FormLg {
+				c.Form = base.Form
+			}
+		case c.Symbol != "" && plainSymbol(c.Symbol) != symbol && c.Symbol != "k":
+			continue
+		case c.Form == FormReciprocal || c.Form == FormHalfLife:
+			if base.halfLife() != c.Form {
+				continue
+			}
+		case c.Form == FormDirect:
+			for _, d := range p.rate {
+				if d.Form == FormDirect {
+					base = d
+				}
+			}
+		}
+		if c.Ambiguity != nil && c.Kind == KindExpanded && p.coverage != nil {
+			c.Ambiguity = nil
+		}
+		if c.Ambiguity != nil {
+			c.says = "its level is not stated"
+			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: the level of the uncertainty is not stated", c.Text)))
+			continue
+		}
+		if c.Kind == KindRepeats && p.repeats == nil && p.repeatsN == 0 {
+			c.says = "the number of repeats is not given"
+			p.notices = append(p.notices, notice(noteRepeats, fmt.Sprintf("column %q: a standard deviation of repeats, and their number is not given", c.Text)))
+			continue
+		}
+		if p.uncertainty != nil {
+			c.says = "another uncertainty is used"
+			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, p.uncertainty.Text)))
+			continue
+		}
+		// Units: an absolute uncertainty is in that of its quantity.
+		if !c.Relative && c.Kind != KindFactor && c.Form != FormLn && c.Form != FormLg {
+			if c.Unit == nil && c.UnitText == "" {
+				c.Unit = base.Unit
+				if c.Shift == 0 {
+					c.Shift = base.Shift
+				}
+				if base.Unit != nil || base.Shift != 0 {
+					p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as that of %q", c.Text, base.Text)))
+				}
+			}
+			switch {
+			case c.Unit == nil && base.Unit == nil && (c.UnitText == "" || normalize(c.UnitText) == normalize(base.UnitText)):
+			case c.Unit == nil || base.Unit == nil:
+				m.refuseCure(codeUnitConflict, line, c.Text, fmt.Sprintf("its unit %q cannot be compared with that of %q", c.UnitText, base.Text), "write both in one unit")
+			default:
+				if _, err := c.Unit.convertTo(*base.Unit); err != nil {
+					m.refuseCure(codeUnitConflict, line, c.Text, "its unit "+err.Error()+", the unit of "+strconv.Quote(base.Text), "write both in one unit")
+				}
+			}
+		}
+		p.uncertainty, p.base = c, base
+		c.used = true
+		if c.Kind == KindRepeats && p.repeats == nil {
+			p.assume(fmt.Sprintf("n=%d", p.repeatsN))
+		}
+	}
+}
+
+func (m *maker) chooseUT(p *plan, forced *column, line int) {
+	for i := range p.cols {
+		c := &p.cols[i]
+		if c.Role != RoleTemperatureUncertainty || c.Form != FormDirect || forced != nil && c != forced {
+			continue
+		}
+		if c.Ambiguity != nil || c.Kind == KindRepeats && p.repeats == nil && p.repeatsN == 0 {
+			c.says = "its level is not stated"
+			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: the level of the uncertainty is not stated", c.Text)))
+			continue
+		}
+		if c.Relative || c.Kind == KindFactor || c.Percent {
+			c.says = "an uncertainty of T is stated in K"
+			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: a relative uncertainty of a temperature", c.Text)))
+			continue
+		}
+		if p.ofT != nil {
+			c.says = "another uncertainty is used"
+			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, p.ofT.Text)))
+			continue
+		}
+		if c.Unit == nil {
+			k, _ := ParseUnit("K")
+			c.Unit = &k
+			for _, d := range p.temperature {
+				if d.Form == FormDirect && d.Unit != nil {
+					c.Unit = d.Unit
+					break
+				}
+			}
+			p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as %s", c.Text, c.Unit.Text)))
+		}
+		if c.Unit.Dim != dimTemp {
+			m.refuseCure(codeUnitConflict, line, c.Text, "its unit is not that of a temperature", "write u(T)/K")
+			continue
+		}
+		p.ofT = c
+		c.used = true
+	}
+}
+
+// value in K of a temperature cell, and half a unit of its last digit in K.
+func (c *column) kelvin(cell Cell) (t, half float64) {
+	v, h := cell.Value, cell.Half
+	switch c.Form {
+	case FormReciprocal:
+		v *= c.Unit.Scale
+		t = 1 / v
+		return t, math.Abs(t * h / cell.Value)
+	case FormThermalUnit:
+		k := boltzmann
+		if c.Unit.Dim.Amount != 0 {
+			k = gasMolar
+		}
+		t = 1 / (v * c.Unit.Scale * k)
+		return t, math.Abs(t * h / cell.Value)
+	}
+	if c.Unit.Scale == 1 {
+		return v + c.Unit.Zero, h
+	}
+	return v*c.Unit.Scale + c.Unit.Zero, h * c.Unit.Scale
+}
+
+// rateValue in the unit of its column (a reciprocal time for a lifetime), and
+// half a unit of the last digit as a part of it.
+func (c *column) rateValue(cell Cell) (k, half float64) {
+	v := cell.Value
+	switch c.Form {
+	case FormLn:
+		return scaled(math.Exp(v), c.Shift), cell.Half
+	case FormLg:
+		return scaled(math.Pow(10, v), c.Shift), cell.Half * math.Ln10
+	case FormReciprocal:
+		return 1 / v, math.Abs(cell.Half / v)
+	case FormHalfLife:
+		return math.Ln2 / v, math.Abs(cell.Half / v)
+	}
+	return v, math.Abs(cell.Half / v)
+}
+
+// scaled is x·10^shift.
+func scaled(x float64, shift int) float64 {
+	if shift == 0 {
+		return x
+	}
+	if shift < 0 && shift >= -22 {
+		return x / pow10[-shift]
+	}
+	return x * math.Pow10(shift)
+}
+
+// cellShift is the power of ten that belongs to the number in the cell: that of a
+// logarithm belongs to what the logarithm is of.
+func (c *column) cellShift() int {
+	if c.Role == RoleRate && (c.Form == FormLn || c.Form == FormLg) {
+		return 0
+	}
+	return c.Shift
+}

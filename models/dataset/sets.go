@@ -1,0 +1,251 @@
+package dataset
+
+import (
+	"fmt"
+	"maps"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
+)
+
+// sets splits points by their data set and adds what concerns each set.
+func (m *maker) sets(p *plan, points []Point) []*Set {
+	var sets []*Set
+	byName := map[string]*Set{}
+	var names []string
+	if p.dataset == nil {
+		s := m.newSet(p, m.t.baseName())
+		s.Points = points
+		sets = append(sets, s)
+		names = append(names, s.Name)
+	} else {
+		for _, pt := range points {
+			name := pt.Dataset
+			if name == "" {
+				name = m.t.baseName()
+			}
+			s := byName[name]
+			if s == nil {
+				s = m.newSet(p, name)
+				byName[name] = s
+				sets = append(sets, s)
+				names = append(names, name)
+			}
+			s.Points = append(s.Points, pt)
+		}
+	}
+	if want := m.opt.Dataset; want != "" {
+		var only []*Set
+		for _, s := range sets {
+			if s.Name == want {
+				only = append(only, s)
+			}
+		}
+		if len(only) == 0 {
+			m.refuseCure(codeDatasetUnknown, 0, "", fmt.Sprintf("there is no data set %q", want), "use one of "+quoteAll(names))
+			return nil
+		}
+		sets = only
+	}
+	for _, s := range sets {
+		// A notice names the rows of its own set only.
+		if len(byName) > 1 {
+			s.Notices = ownNotices(s)
+		}
+		s.review(p)
+	}
+	return sets
+}
+
+func ownNotices(s *Set) []Notice {
+	mine := map[int]bool{}
+	for _, pt := range s.Points {
+		mine[pt.Row] = true
+	}
+	var out []Notice
+	for _, n := range s.Notices {
+		if len(n.Rows) > 1 {
+			var rows []int
+			for _, r := range n.Rows {
+				if mine[r] {
+					rows = append(rows, r)
+				}
+			}
+			if len(rows) > 0 && len(rows) < len(n.Rows) {
+				n.Message = strings.Replace(n.Message, lines(n.Rows), lines(rows), 1)
+				n.Rows = rows
+			}
+		}
+		out = append(out, n)
+	}
+	return out
+}
+
+func (m *maker) newSet(p *plan, name string) *Set {
+	s := &Set{Name: name, Files: []string{m.t.Name}, SHA256: m.t.SHA256, Quantity: p.quantity}
+	s.Assumed = append(s.Assumed, p.assumed...)
+	s.Notices = append(s.Notices, p.notices...)
+	for _, key := range slices.Sorted(maps.Keys(m.opt.Assume)) {
+		v := m.opt.Assume[key]
+		if key == "n" && p.uncertainty != nil && p.uncertainty.Kind == KindRepeats {
+			continue
+		}
+		applied := false
+		for _, a := range p.assumed {
+			applied = applied || strings.HasPrefix(a, key+"=")
+		}
+		if !applied {
+			s.Notices = append(s.Notices, notice(noteUnneeded, fmt.Sprintf("--assume %s=%s was not needed", key, v)))
+		}
+	}
+	if len(p.assumed) > 0 {
+		s.Notices = append(s.Notices, notice(noteAssumption, "assumed on request: "+strings.Join(p.assumed, ", ")))
+	}
+	for i := range p.cols {
+		s.Columns = append(s.Columns, p.cols[i].describe(p))
+	}
+	return s
+}
+
+// describe says what a column was taken for.
+func (c *column) describe(p *plan) Column {
+	d := Column{Index: c.index + 1, Heading: c.Text, Role: string(c.Role), Factor: 1, Confidence: "certain", Examples: c.shown}
+	if !c.used {
+		d.Role = string(RoleKept)
+		if c.says != "" {
+			d.Level = "not used: " + c.says
+		}
+		return d
+	}
+	d.Unit = c.UnitText
+	if c.Unit != nil {
+		d.Unit = c.Unit.Text
+	}
+	switch c.Role {
+	case RoleRate, RoleTemperature, RoleUncertainty, RoleTemperatureUncertainty:
+		d.Factor = scaled(1, c.Shift)
+	}
+	if len(c.Assumed) > 0 {
+		d.Confidence = "by assumption"
+	}
+	switch c.Role {
+	case RoleUncertainty, RoleTemperatureUncertainty:
+		d.Level = string(c.Kind)
+		switch {
+		case c.Kind != KindExpanded && c.Kind != KindFactor:
+		case c.Coverage > 0:
+			d.Level += ", k = " + strconv.FormatFloat(c.Coverage, 'g', -1, 64)
+		case c.Percent95:
+			d.Level += ", 95 %"
+		case c.Kind == KindExpanded && p.coverage != nil:
+			d.Level += ", k from column " + strconv.Quote(p.coverage.Text)
+		}
+		if c.Relative {
+			d.Level += ", relative"
+		}
+	case RoleRate, RoleTemperature:
+		if c.Form != FormDirect {
+			d.Level = string(c.Form)
+		}
+	}
+	return d
+}
+
+func (s *Set) say(code, message string, rows ...int) {
+	s.Notices = append(s.Notices, notice(code, message, rows...))
+}
+
+// review adds the notices that concern the points of a set.
+func (s *Set) review(p *plan) {
+	var limits, selected, duplicates, large []int
+	type key struct{ t, k float64 }
+	first := make(map[key]bool, len(s.Points))
+	distinct := map[float64]bool{}
+	low, high := math.Inf(1), math.Inf(-1)
+	for i := range s.Points {
+		pt := &s.Points[i]
+		switch {
+		case pt.Used:
+		case pt.Limit != "" && strings.HasPrefix(pt.WhyNot, "only a limit"):
+			limits = append(limits, pt.Row)
+		case strings.Contains(pt.WhyNot, "--"):
+			selected = append(selected, pt.Row)
+		}
+		if !pt.Used {
+			continue
+		}
+		distinct[pt.T] = true
+		low, high = math.Min(low, pt.T), math.Max(high, pt.T)
+		at := key{pt.T, pt.K}
+		if first[at] {
+			duplicates = append(duplicates, pt.Row)
+		}
+		first[at] = true
+		if pt.UK > 0.3*math.Abs(pt.K) {
+			large = append(large, pt.Row)
+		}
+	}
+	if len(limits) > 0 {
+		s.say(noteLimits, lines(limits)+": only a limit is known, left out", limits...)
+	}
+	if len(selected) > 0 {
+		s.say(noteSelected, lines(selected)+": left out on request", selected...)
+	}
+	if len(duplicates) > 0 {
+		s.say(noteDuplicate, lines(duplicates)+": same temperature and rate constant as an earlier row", duplicates...)
+	}
+	if len(large) > 0 {
+		s.say(noteLargeU, lines(large)+": u(k)/k is above 0.3", large...)
+	}
+	if n := len(distinct); n < 5 {
+		s.say(noteFew, fmt.Sprintf("%d distinct temperatures", n))
+	}
+	if len(distinct) > 1 && high-low < 20 {
+		s.say(noteNarrow, fmt.Sprintf("the temperatures span %.3g K", high-low))
+	}
+	if c := p.temperature[0]; c.Form == FormDirect && len(distinct) > 0 {
+		switch t := c.Unit.Text; {
+		case t == "°C" && low-zeroC >= 270 && high-zeroC <= 380:
+			s.say(noteCLikeK, fmt.Sprintf("column %q: %.4g to %.4g °C", c.Text, low-zeroC, high-zeroC))
+		case t == "K" && high < 120:
+			s.say(noteKLikeC, fmt.Sprintf("column %q: %.4g to %.4g K", c.Text, low, high))
+		}
+	}
+	for _, c := range p.kept {
+		if c.Role == RoleKept {
+			s.reviewKept(c, p.decimal)
+		}
+	}
+}
+
+// reviewKept warns of a numeric column that takes several values at one T.
+func (s *Set) reviewKept(c *column, decimal byte) {
+	at := map[float64]float64{}
+	for i := range s.Points {
+		pt := &s.Points[i]
+		cell, ok := pt.Extra[c.Text]
+		if !pt.Used || !ok {
+			continue
+		}
+		x := ParseCell(cell, decimal, 0)
+		if x.Kind == CellMissing {
+			continue
+		}
+		if x.Kind != CellNumber {
+			return
+		}
+		v, seen := at[pt.T]
+		if seen && v != x.Value {
+			name := c.Text
+			s.Notices = append(s.Notices, Notice{
+				Code:    noteVaries,
+				Message: fmt.Sprintf("column %q takes %g and %g at %.6g K", name, v, x.Value, pt.T),
+				Cure:    fmt.Sprintf("choose with --where '%s=%s', or split with --dataset-by '%s'", name, cell, name),
+				Rows:    []int{pt.Row},
+			})
+			return
+		}
+		at[pt.T] = x.Value
+	}
+}

@@ -1,0 +1,363 @@
+package dataset
+
+import (
+	"crypto/sha256"
+	"encoding/hex"
+	"path/filepath"
+	"strings"
+	"unicode"
+	"unicode/utf16"
+	"unicode/utf8"
+
+	"golang.org/x/text/encoding/charmap"
+)
+
+// Row is one row of a table of cells. Line is its line in the file, from 1; a
+// workbook counts rows.
+type Row struct {
+	Line  int
+	Cells []string
+}
+
+// Table is a file as cells, before any of them has a meaning. Other kinds of files
+// are turned into one of these.
+type Table struct {
+	Name   string // file name as the user gave it
+	Sheet  string // "" for text
+	SHA256 string // of the bytes read, in hex
+	Rows   []Row  // without comments
+	// Blank holds, for each row of Rows, whether a blank line came before it.
+	// A row of empty cells counts as blank and is not in Rows.
+	Blank []bool
+	// LastComment is the last comment before the first row, without its #.
+	LastComment     string
+	LastCommentLine int
+	Delimiter       byte // ',', ';', '\t', ' ' or 0
+	Encoding        string
+	mayHoldComma    bool     // some cell may hold a comma
+	first           []string // first lines of a table split at spaces, as they stand
+}
+
+// MostColumns is the most columns that a table may have: what spreadsheets allow.
+const MostColumns = 16384
+
+// spreadsheetErrors begin with # and are no comments.
+var spreadsheetErrors = []string{"#N/A", "#DIV/0!", "#VALUE!", "#REF!", "#NUM!", "#NAME?", "#NULL!"}
+
+// ParseTable splits the bytes of a text table into cells.
+func ParseTable(name string, data []byte) (*Table, error) {
+	sum := sha256.Sum256(data)
+	t := &Table{Name: name, SHA256: hex.EncodeToString(sum[:])}
+	text, encoding, err := decode(data)
+	if err != "" {
+		return nil, Problems{problem(codeNotText, name, 0, "", err)}
+	}
+	t.Encoding = encoding
+	lines := splitter{s: text, line: 1}
+	if rest, ok := strings.CutPrefix(text, "sep="); ok && len(rest) > 1 && (rest[1] == '\n' || rest[1] == '\r') {
+		t.Delimiter = rest[0]
+		lines.next(0)
+	} else {
+		t.Delimiter = delimiter(text)
+	}
+	t.mayHoldComma = strings.IndexByte(text, ',') >= 0 && (t.Delimiter != ',' || strings.IndexByte(text, '"') >= 0)
+	if ps := t.split(&lines); len(ps) > 0 {
+		return nil, ps
+	}
+	return t, nil
+}
+
+// decode turns bytes into text: UTF-8, UTF-16 with a byte order mark, else
+// Windows-1252. problem is "" unless the bytes are no text.
+func decode(b []byte) (text, encoding, problem string) {
+	switch {
+	case len(b) >= 2 && (b[0] == 0xFF && b[1] == 0xFE || b[0] == 0xFE && b[1] == 0xFF):
+		big := b[0] == 0xFE
+		b = b[2:]
+		units := make([]uint16, len(b)/2)
+		for i := range units {
+			lo, hi := b[2*i], b[2*i+1]
+			if big {
+				lo, hi = hi, lo
+			}
+			units[i] = uint16(hi)<<8 | uint16(lo)
+		}
+		text, encoding = string(utf16.Decode(units)), "UTF-16"
+	case utf8.Valid(b):
+		text, encoding = strings.TrimPrefix(string(b), "\uFEFF"), "UTF-8"
+	default:
+		out, err := charmap.Windows1252.NewDecoder().Bytes(b)
+		if err != nil {
+			return "", "", "the bytes are neither UTF-8, UTF-16 nor Windows-1252"
+		}
+		text, encoding = string(out), "Windows-1252"
+	}
+	if strings.HasPrefix(text, "PK\x03\x04") {
+		return "", "", "this is a workbook or another compressed file, not a text table"
+	}
+	if strings.IndexByte(text, 0) >= 0 {
+		return "", "", "the file holds NUL bytes: it is not a text table, or it is UTF-16 without a byte order mark"
+	}
+	return text, encoding, ""
+}
+
+// splitter walks over the records of a text.
+type splitter struct {
+	s    string
+	line int
+	cell []string // reused
+}
+
+// next reads one record: the cells (valid until the next call), its first line,
+// whether a quote was never closed, and whether there was a record at all.
+// delimiter ' ' splits at runs of spaces and tabs, 0 does not split.
+func (p *splitter) next(delimiter byte) (cells []string, line int, unclosed, ok bool) {
+	if p.s == "" {
+		return nil, p.line, false, false
+	}
+	line = p.line
+	p.cell = p.cell[:0]
+	s := p.s
+	i := 0
+	for {
+		if delimiter == ' ' {
+			for i < len(s) && (s[i] == ' ' || s[i] == '\t') {
+				i++
+			}
+			if i < len(s) && (s[i] == '\n' || s[i] == '\r') || i == len(s) {
+				break
+			}
+		}
+		// Spaces before a quote are no part of the cell.
+		j := i
+		for j < len(s) && s[j] == ' ' {
+			j++
+		}
+		if j < len(s) && s[j] == '"' && delimiter != 0 {
+			text, n, lines, closed := quoted(s[j:])
+			p.line += lines
+			if !closed {
+				p.s = ""
+				return p.cell, line, true, true
+			}
+			i = j + n
+			tail := i
+			for i < len(s) && s[i] != '\n' && s[i] != '\r' && s[i] != delimiter && !(delimiter == ' ' && s[i] == '\t') {
+				i++
+			}
+			if after := trimSpaces(s[tail:i]); after != "" {
+				text += after // "a"b is no well-formed cell: keep all of it
+			}
+			p.cell = append(p.cell, text)
+		} else {
+			start := i
+			for i < len(s) {
+				c := s[i]
+				if c == '\n' || c == '\r' || c == delimiter && c != 0 || delimiter == ' ' && c == '\t' {
+					break
+				}
+				i++
+			}
+			p.cell = append(p.cell, trimSpaces(s[start:i]))
+		}
+		if i == len(s) || s[i] == '\n' || s[i] == '\r' {
+			break
+		}
+		i++ // the delimiter
+	}
+	if i < len(s) {
+		if s[i] == '\r' && i+1 < len(s) && s[i+1] == '\n' {
+			i++
+		}
+		i++
+		p.line++
+	}
+	p.s = s[i:]
+	return p.cell, line, false, true
+}
+
+func trimSpaces(s string) string {
+	for len(s) > 0 && (s[0] == ' ' || s[0] == '\t') {
+		s = s[1:]
+	}
+	for len(s) > 0 && (s[len(s)-1] == ' ' || s[len(s)-1] == '\t') {
+		s = s[:len(s)-1]
+	}
+	return s
+}
+
+// quoted reads a quoted cell at the start of s: its text, its length with quotes,
+// the lines it spans beyond the first.
+func quoted(s string) (text string, n, lines int, closed bool) {
+	doubled := false
+	for i := 1; i < len(s); i++ {
+		switch s[i] {
+		case '\n':
+			lines++
+		case '"':
+			if i+1 < len(s) && s[i+1] == '"' {
+				doubled = true
+				i++
+				continue
+			}
+			text = s[1:i]
+			if doubled {
+				text = strings.ReplaceAll(text, `""`, `"`)
+			}
+			return strings.TrimSpace(text), i + 1, lines, true
+		}
+	}
+	return "", len(s), lines, false
+}
+
+// delimiter decides how a text is split, by its first lines: the first of tab,
+// semicolon, comma that splits all of them into the same number (two or more) of
+// cells, then spaces, then the first that splits the heading at all.
+func delimiter(text string) byte {
+	const most = 6
+	var sample []string
+	for rest := text; rest != "" && len(sample) < most; {
+		var l string
+		l, rest = cutLine(rest)
+		if l = strings.TrimSpace(l); l != "" && !isComment(l) {
+			sample = append(sample, l)
+		}
+	}
+	if len(sample) == 0 {
+		return 0
+	}
+	count := func(line string, d byte) int {
+		p := splitter{s: line, line: 1}
+		cells, _, _, _ := p.next(d)
+		for len(cells) > 0 && cells[len(cells)-1] == "" {
+			cells = cells[:len(cells)-1]
+		}
+		return len(cells)
+	}
+	// regular: all lines, but for spare (a title above the heading, a note, a
+	// heading with spaces), have as many cells as a line with letters near the top.
+	regular := func(d byte, spare int) bool {
+		counts := map[int]int{}
+		best := 0
+		for i, l := range sample {
+			n := count(l, d)
+			if counts[n]++; i < 2 && n >= 2 && strings.ContainsFunc(l, unicode.IsLetter) {
+				best = n
+			}
+		}
+		if spare > 0 && d == ' ' { // "T / K   k / s-1" over two columns
+			for n := range counts {
+				if n >= 2 && counts[n] > counts[best] {
+					best = n
+				}
+			}
+		}
+		return best >= 2 && counts[best] >= len(sample)-spare
+	}
+	for spare := range 2 {
+		for _, d := range []byte{'\t', ';', ',', ' '} {
+			if regular(d, spare) {
+				return d
+			}
+		}
+	}
+	for _, d := range []byte{'\t', ';', ',', ' '} {
+		for _, l := range sample {
+			if count(l, d) >= 2 {
+				return d
+			}
+		}
+	}
+	return 0
+}
+
+// cutLine cuts the first line, ended by \n, \r\n or \r.
+func cutLine(s string) (line, rest string) {
+	i := strings.IndexAny(s, "\r\n")
+	if i < 0 {
+		return s, ""
+	}
+	line = s[:i]
+	if s[i] == '\r' && i+1 < len(s) && s[i+1] == '\n' {
+		i++
+	}
+	return line, s[i+1:]
+}
+
+func isComment(line string) bool {
+	if line == "" || line[0] != '#' {
+		return false
+	}
+	for _, e := range spreadsheetErrors {
+		if strings.HasPrefix(line, e) {
+			return false
+		}
+	}
+	return true
+}
+
+// split fills Rows.
+func (t *Table) split(p *splitter) Problems {
+	var all []string // one backing array for many rows
+	blank := false
+	for {
+		l := strings.TrimLeft(p.s[:min(len(p.s), 64)], " \t\"")
+		if isComment(l) {
+			line := p.line
+			var c string
+			c, p.s = cutLine(p.s)
+			p.line++
+			if len(t.Rows) == 0 {
+				t.LastComment, t.LastCommentLine = strings.Trim(c, " \t#\""), line
+			}
+			continue
+		}
+		before := p.s
+		cells, line, unclosed, ok := p.next(t.Delimiter)
+		if !ok {
+			return nil
+		}
+		if unclosed {
+			return Problems{problem(codeUnclosedQuote, t.Name, line, "", "a quotation mark is never closed")}
+		}
+		if len(cells) > MostColumns {
+			return Problems{problem(codeTooManyColumns, t.Name, line, "", "the row has more than 16384 cells")}
+		}
+		empty := true
+		for _, c := range cells {
+			if c != "" && strings.TrimSpace(c) != "" {
+				empty = false
+				break
+			}
+		}
+		if empty {
+			blank = true
+			continue
+		}
+		if len(all)+len(cells) > cap(all) {
+			all = make([]string, 0, max(4096, len(cells)))
+		}
+		from := len(all)
+		all = append(all, cells...)
+		t.Rows = append(t.Rows, Row{line, all[from:len(all):len(all)]})
+		t.Blank = append(t.Blank, blank)
+		if t.Delimiter == ' ' && len(t.first) < 3 {
+			l, _ := cutLine(before)
+			t.first = append(t.first, l)
+		}
+		blank = false
+	}
+}
+
+// baseName is the name of a data set that its file does not name.
+func (t *Table) baseName() string {
+	if t.Name == "-" {
+		return "stdin"
+	}
+	b := filepath.Base(t.Name)
+	b = strings.TrimSuffix(b, filepath.Ext(b))
+	if t.Sheet != "" {
+		b += "/" + t.Sheet
+	}
+	return b
+}
