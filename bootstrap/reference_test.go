@@ -1,17 +1,14 @@
 package bootstrap
 
 import (
-	"encoding/csv"
 	"math"
-	"os"
-	"path/filepath"
-	"strconv"
 	"testing"
 
 	"gonum.org/v1/gonum/mat"
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
+	"onebarrier/models/reference"
 )
 
 // within fails unless |got - want| <= tol; NaN fails.
@@ -22,36 +19,14 @@ func within(t *testing.T, what string, got, want, tol float64) {
 	}
 }
 
-func readCSV(t testing.TB, name string) [][]string {
-	t.Helper()
-	f, err := os.Open(filepath.Join("..", "testdata", "published", name))
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
-	return rows[1:]
-}
-
-// golden reads testdata/published/golden_boot.csv: R 4.2.2, package boot.
+// golden gives the values of one fit in testdata/published/golden_boot.csv: R 4.2.2,
+// package boot.
 func golden(t testing.TB, set, fit string) func(quantity string) float64 {
 	t.Helper()
-	values := map[string]float64{}
-	for _, r := range readCSV(t, "golden_boot.csv") {
-		if r[0] == set && r[1] == fit {
-			v, err := strconv.ParseFloat(r[3], 64)
-			if err != nil {
-				t.Fatal(err)
-			}
-			values[r[2]] = v
-		}
-	}
+	values := reference.Golden(t, "golden_boot.csv")
 	return func(q string) float64 {
 		t.Helper()
-		v, ok := values[q]
+		v, ok := values[reference.Key{Dataset: set, Fit: fit, Quantity: q}]
 		if !ok {
 			t.Fatalf("golden_boot.csv has no %s %s %s", set, fit, q)
 		}
@@ -59,28 +34,25 @@ func golden(t testing.TB, set, fit string) func(quantity string) float64 {
 	}
 }
 
-// synthetic reads one of the fixed sets. Columns T_K, k, sigma_k; with sigma_k the
-// model is Scaled, for which weights are 1/s², as in the R scripts.
+// synthetic reads one of the fixed sets. s5 has sigma_k, and is read as Scaled, for
+// which weights are 1/s², as in the R scripts.
 func synthetic(t testing.TB, name string) *fit.Sample {
 	t.Helper()
-	var temps, k, v []float64
+	headings := []string{"T_K", "k"}
 	model := fit.Relative
-	for _, r := range readCSV(t, filepath.Join("synthetic", name+".csv")) {
-		x := make([]float64, len(r))
-		for i := range r {
-			var err error
-			if x[i], err = strconv.ParseFloat(r[i], 64); err != nil {
-				t.Fatal(err)
-			}
-		}
-		u := 1.0
-		if len(x) > 2 {
-			model = fit.Scaled
-			u = x[2] / x[1]
-		}
-		temps, k, v = append(temps, x[0]), append(k, x[1]), append(v, u*u)
+	if name == "s5_hetero" {
+		headings = append(headings, "sigma_k")
+		model = fit.Scaled
 	}
-	s, err := fit.NewSample(model, temps, k, v)
+	c := reference.Table(t, "synthetic/"+name+".csv", headings...)
+	v := make([]float64, len(c[0]))
+	for i := range v {
+		v[i] = 1
+		if len(c) > 2 {
+			v[i] = (c[2][i] / c[1][i]) * (c[2][i] / c[1][i])
+		}
+	}
+	s, err := fit.NewSample(model, c[0], c[1], v)
 	if err != nil {
 		t.Fatal(err)
 	}
