@@ -78,7 +78,7 @@ func TestDefaultCandidates(t *testing.T) {
 				first = o
 			}
 			// Pairs of twelve points leave at most the four temperatures that
-			// parallel cannot be fitted to in 8.2e-4 of the resamples (surjections
+			// parallel cannot be fitted to in 8.3e-4 of the resamples (surjections
 			// counted), of 24 points in far fewer.
 			allowed := 0
 			if scheme == Pairs {
