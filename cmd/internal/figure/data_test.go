@@ -1,0 +1,381 @@
+package figure
+
+import (
+	"encoding/json"
+	"math"
+	"reflect"
+	"slices"
+	"testing"
+
+	"onebarrier/diagnostics"
+	"onebarrier/models"
+	"onebarrier/models/fit"
+)
+
+// near fails unless got agrees with want to a relative tolerance; NaN never does.
+func near(t *testing.T, what string, got, want, tol float64) {
+	t.Helper()
+	if !(math.Abs(got-want) <= tol*math.Abs(want)) {
+		t.Errorf("%s = %.15g, want %.15g", what, got, want)
+	}
+}
+
+func TestNearCatchesNaN(t *testing.T) {
+	var probe testing.T
+	near(&probe, "NaN", math.NaN(), 1, 1)
+	if !probe.Failed() {
+		t.Error("NaN passed")
+	}
+}
+
+// sixRates is an invented set; the numbers expected of it are from R 4:
+//
+//	x <- 1/t; f <- lm(log(k) ~ x)
+//	predict(f, data.frame(x = 1/c(350, 300)), interval = "confidence"); resid(f)
+//	confint(f)[2, ] * -R/1000
+//	z <- log(t); g <- lm(log(k) ~ x + z), a = c(0, -R, R*T),
+//	sum(a*coef(g)) -+ qt(.975, 3)*sqrt(t(a) %*% vcov(g) %*% a)
+func sixRates(t *testing.T, model fit.ErrorModel) *diagnostics.Assessment {
+	return invented{
+		name: "six rates", unit: "s^-1", t: []float64{300, 310, 320, 330, 340, 350},
+		lnK: func(t float64) float64 {
+			k := map[float64]float64{300: 0.0102, 310: 0.0254, 320: 0.0561, 330: 0.1302, 340: 0.2655, 350: 0.5601}
+			return math.Log(k[t])
+		},
+		state: diagnostics.Unresolved, curve: "straight", model: model,
+	}.assess(t)
+}
+
+func TestPointsOnEveryAxis(t *testing.T) {
+	a := sixRates(t, fit.Relative)
+	for _, c := range []struct {
+		opt  Options
+		x, y float64 // of T = 300 K, k = 0.0102
+	}{
+		// Closed form; ln 0.0102 and lg 0.0102 from Python.
+		{Options{}, 1000. / 300, -4.58536755869},
+		{Options{X: "10000/T", Y: "lg"}, 10000. / 300, -1.99139982824},
+		// k_B = 8.617333262e-5 eV/K (CODATA 2018).
+		{Options{X: "1/kT", Y: "ln"}, 1 / (8.617333262e-5 * 300), -4.58536755869},
+	} {
+		d, err := NewArrhenius(a, c.opt)
+		if err != nil {
+			t.Fatal(err)
+		}
+		near(t, "x", d.Points[0].X, c.x, 1e-9)
+		near(t, "y", d.Points[0].Y, c.y, 1e-9)
+		// Lines lie on the same axes: their cold end is at 300 K.
+		last := samples - 1
+		near(t, "cold end", d.Lines[0].X[last], c.x, 1e-9)
+		unit := 1.0
+		if c.opt.Y == "lg" {
+			unit = math.Ln10
+		}
+		near(t, "line", d.Lines[0].Y[last]*unit, -4.591119866805791, 1e-12)
+		near(t, "difference is in ln k on any axis", d.Points[0].Residual, 0.00575230811388983, 1e-10)
+	}
+}
+
+func TestStraightBandAgainstR(t *testing.T) {
+	d, err := NewArrhenius(sixRates(t, fit.Relative), Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	l := d.Lines[0]
+	if l.Curve != "straight" || !l.Recommended {
+		t.Fatalf("first line is %q, recommended %v", l.Curve, l.Recommended)
+	}
+	last := samples - 1
+	for _, c := range []struct {
+		what      string
+		got, want float64
+	}{
+		{"fit at 350 K", l.Y[0], -0.600576789269397},
+		{"lower at 350 K", l.Lower[0], -0.650735906531975},
+		{"upper at 350 K", l.Upper[0], -0.550417672006819},
+		{"fit at 300 K", l.Y[last], -4.591119866805791},
+		{"lower at 300 K", l.Lower[last], -4.644167946041321},
+		{"upper at 300 K", l.Upper[last], -4.538071787570260},
+	} {
+		near(t, c.what, c.got, c.want, 1e-11)
+	}
+	for i, want := range []float64{0.00575230811388983, 0.01702338950121643, -0.03536219606986588, 0.01299981371132783, -0.02135016475961707, 0.02093684950304886} {
+		near(t, "residual", d.Points[i].Residual, want, 1e-10)
+	}
+	// The straight line differs from itself by nothing, and by its band.
+	for i, v := range d.Differences[0].Y {
+		if v != 0 {
+			t.Fatalf("difference %d of the straight line is %g", i, v)
+		}
+		near(t, "band of the difference", d.Differences[0].Upper[i], l.Upper[i]-l.Y[i], 1e-9)
+	}
+}
+
+// With known σ = 0.03 the band is f ± z σ sqrt(1/N + (x - x̄)²/Sxx), z = 1.959963984540054.
+func TestKnownSigmaBandClosedForm(t *testing.T) {
+	a := invented{
+		t: evenly(280, 340, 8), lnK: arrheniusLaw(20, 55), noise: 0.03, seed: 3, u: true,
+		state: diagnostics.Unresolved, curve: "straight", model: fit.Stated,
+	}.assess(t)
+	d, err := NewArrhenius(a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var mean, sxx float64
+	for _, t := range a.Sample.T {
+		mean += 1 / t / 8
+	}
+	for _, t := range a.Sample.T {
+		sxx += (1/t - mean) * (1/t - mean)
+	}
+	l := d.Lines[0]
+	for _, i := range []int{0, 40, samples - 1} {
+		dx := 1/l.T[i] - mean
+		near(t, "half-width", (l.Upper[i]-l.Lower[i])/2, 1.959963984540054*0.03*math.Sqrt(1./8+dx*dx/sxx), 1e-10)
+	}
+	near(t, "u(ln k)", d.Points[2].High-d.Points[2].Y, 0.03, 1e-10)
+	near(t, "u(ln k)", d.Points[2].Y-d.Points[2].Low, 0.03, 1e-10)
+}
+
+func TestErrorBarsOfErrorsInK(t *testing.T) {
+	row := diagnostics.Datum{T: 300, K: 2, UK: 0.5, Used: true}
+	d := &Arrhenius{}
+	x, y, _ := Options{}.axes()
+	p := d.point(row, fit.Absolute, nil, x, y)
+	near(t, "high", p.High, math.Log(2.5), 1e-14)
+	near(t, "low", p.Low, math.Log(1.5), 1e-14)
+	row.UK = 3
+	if p = d.point(row, fit.Absolute, nil, x, y); !math.IsInf(p.Low, -1) {
+		t.Errorf("u(k) > k: low = %g, want -Inf", p.Low)
+	}
+	row.UK = diagnostics.Real(math.NaN())
+	if p = d.point(row, fit.Relative, nil, x, y); !math.IsNaN(p.Low) || !math.IsNaN(p.High) {
+		t.Errorf("without u(k) the bar is %g to %g, want none", p.Low, p.High)
+	}
+	if !math.IsNaN(p.Residual) {
+		t.Errorf("without a straight line the residual is %g, want NaN", p.Residual)
+	}
+}
+
+func TestEnergyAgainstR(t *testing.T) {
+	d := NewEnergy(sixRates(t, fit.Relative))
+	if len(d.Lines) != 2 || d.Lines[0].Curve != "straight" || d.Lines[1].Curve != "power-prefactor" {
+		t.Fatalf("lines %+v", d.Lines)
+	}
+	s, p := d.Lines[0], d.Lines[1]
+	last := samples - 1
+	near(t, "E", d.E, 69.6763646130437, 1e-11)
+	near(t, "E lower", s.Lower[17], 68.1885955002161, 1e-11)
+	near(t, "E upper", s.Upper[100], 71.1641337258713, 1e-11)
+	for _, c := range []struct {
+		i                   int
+		value, lower, upper float64
+	}{
+		{0, 71.5012626901, 64.9798647302, 78.02266065},
+		{last, 68.0405668014, 62.1444137767, 73.9367198261},
+	} {
+		near(t, "E_loc", p.Y[c.i], c.value, 1e-9)
+		near(t, "lower", p.Lower[c.i], c.lower, 1e-9)
+		near(t, "upper", p.Upper[c.i], c.upper, 1e-9)
+	}
+	near(t, "T", s.X[0], 350, 1e-14)
+	if d.Wedge != nil {
+		t.Error("tolerance drawn for an unresolved verdict")
+	}
+}
+
+func TestToleranceWedge(t *testing.T) {
+	a := sixRates(t, fit.Relative)
+	a.Verdict.State = diagnostics.StraightWithin
+	a.Curvature.ToleranceKJ, a.Dataset.TEff = 4, 320
+	d := NewEnergy(a)
+	// ΔE over 300..350 K of the steepest line in it is the tolerance, 4 kJ/mol.
+	if len(d.Wedge) != 3 {
+		t.Fatalf("wedge %+v", d.Wedge)
+	}
+	near(t, "height at 300 K", d.Wedge[0].Upper-d.E, 1.6, 1e-12)
+	near(t, "height at 350 K", d.E-d.Wedge[2].Lower, 2.4, 1e-12)
+	near(t, "T_eff", d.Wedge[1].T, 320, 0)
+	near(t, "no height at T_eff", d.Wedge[1].Upper, d.E, 0)
+}
+
+func TestChosenCurves(t *testing.T) {
+	a := sixRates(t, fit.Relative)
+	for _, c := range []struct {
+		recommended string
+		rank, want  []string
+	}{
+		{"straight", []string{"root-prefactor", "straight", "power-prefactor"}, []string{"straight", "power-prefactor"}},
+		{"root-prefactor", []string{"linear-prefactor", "power-prefactor"}, []string{"root-prefactor", "straight", "power-prefactor"}},
+		{"", []string{"power-prefactor", "straight"}, []string{"straight", "power-prefactor"}},
+		{"power-prefactor", []string{"power-prefactor", "straight"}, []string{"power-prefactor", "straight"}},
+	} {
+		a.Verdict.RecommendedCurve = c.recommended
+		a.Ranking = nil
+		for _, name := range c.rank {
+			curve, err := models.Lookup(name)
+			if err != nil {
+				t.Fatal(err)
+			}
+			a.Ranking = append(a.Ranking, diagnostics.Ranked{Curve: name, Family: curve.Info().Family})
+		}
+		if got := chosen(a, mostLines); !slices.Equal(got, c.want) {
+			t.Errorf("recommended %q: chosen %v, want %v", c.recommended, got, c.want)
+		}
+	}
+}
+
+func TestBinsFreedmanDiaconis(t *testing.T) {
+	// R: nclass.FD(0:999) is 10, nclass.FD(((0:499)/500)^2) is 8.
+	var even, square []float64
+	for i := range 1000 {
+		even = append(even, float64(i))
+	}
+	for i := range 500 {
+		square = append(square, math.Pow(float64(i)/500, 2))
+	}
+	for _, c := range []struct {
+		vs   []float64
+		want int
+	}{{even, 10}, {square, 8}, {[]float64{3, 3, 3}, 1}} {
+		e := binEdges(c.vs)
+		if len(e)-1 != c.want {
+			t.Errorf("%d bins, want %d", len(e)-1, c.want)
+		}
+		if !slices.IsSorted(e) || e[0] > c.vs[0] || e[len(e)-1] < c.vs[len(c.vs)-1] {
+			t.Errorf("edges %v do not hold the values", e)
+		}
+	}
+}
+
+func TestChangeCountsEveryResample(t *testing.T) {
+	a := sixRates(t, fit.Relative)
+	a.ChangeOfE = []float64{-1e9, 1e9, math.NaN(), math.Inf(1)}
+	for i := range 5000 {
+		a.ChangeOfE = append(a.ChangeOfE, math.Sin(float64(i)))
+	}
+	d := NewChange(a)
+	sum := d.Beyond
+	for _, c := range d.Counts {
+		sum += c
+	}
+	if sum != 5004 || d.Resamples != 5004 {
+		t.Errorf("%d counted of %d, want 5004", sum, d.Resamples)
+	}
+	// Both wild values and both that are no numbers, and no more than 0.1 % at
+	// either end, are beyond.
+	if d.Beyond < 4 || d.Beyond > 14 {
+		t.Errorf("%d beyond the axis", d.Beyond)
+	}
+	// A bar holds what lies between its edges.
+	in := 0
+	for _, v := range a.ChangeOfE {
+		if v >= d.Edges[3] && v < d.Edges[4] {
+			in++
+		}
+	}
+	if d.Counts[3] != in {
+		t.Errorf("bar 3 holds %d, want %d", d.Counts[3], in)
+	}
+	open := "upper"
+	a.Curvature.EChange.Open = &open
+	if d := NewChange(a); !math.IsInf(d.Upper, 1) || math.IsInf(d.Lower, 0) {
+		t.Errorf("open upper end: %g to %g", d.Lower, d.Upper)
+	}
+}
+
+func TestMissingParts(t *testing.T) {
+	if _, err := NewArrhenius(nil, Options{}); err == nil {
+		t.Error("no error without an assessment")
+	}
+	if NewEnergy(nil) != nil || NewChange(nil) != nil {
+		t.Error("figures of no assessment")
+	}
+	a := sixRates(t, fit.Relative)
+	nan := diagnostics.Real(math.NaN())
+	a.Data[0].K, a.Data[1].T, a.Data[2].K = nan, nan, 0
+	a.Data[3].K = diagnostics.Real(math.Inf(1))
+	a.Fits, a.Sample, a.ChangeOfE = nil, nil, nil
+	d, err := NewArrhenius(a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if d.NotShown != 4 || len(d.Points) != 2 || len(d.Lines) != 0 {
+		t.Errorf("%d not shown, %d points, %d lines; want 4, 2, 0", d.NotShown, len(d.Points), len(d.Lines))
+	}
+	if NewEnergy(a) != nil || NewChange(a) != nil {
+		t.Error("figures without data")
+	}
+	if ps, err := Write(t.TempDir(), a, Options{}); err != nil || len(ps) != 1 {
+		t.Errorf("Write: %v, %v; want the Arrhenius plot alone", ps, err)
+	}
+	for i := range a.Data {
+		a.Data[i].K = -1
+	}
+	if _, err := NewArrhenius(a, Options{}); err == nil {
+		t.Error("no error where no row can be drawn")
+	}
+}
+
+func TestUnusableFitIsNotDrawn(t *testing.T) {
+	a := sixRates(t, fit.Relative)
+	power := *a.Fits["power-prefactor"]
+	power.P = []float64{1, math.NaN(), 0}
+	a.Fits["power-prefactor"] = &power
+	if got := chosen(a, mostLines); slices.Contains(got, "power-prefactor") {
+		t.Errorf("chosen %v holds a curve without estimates", got)
+	}
+	straight := *a.Fits["straight"]
+	straight.Cov = []float64{math.NaN(), 0, 0, 1}
+	a.Fits["straight"] = &straight
+	d, err := NewArrhenius(a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if d.Lines[0].Lower != nil || d.Lines[0].Upper != nil {
+		t.Error("band drawn from a covariance that is no number")
+	}
+}
+
+func TestMeansAndSources(t *testing.T) {
+	a := cases()["replicated"].assess(t)
+	d, err := NewArrhenius(a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(d.Means) != 6 || len(d.Points) != 18 {
+		t.Fatalf("%d means of %d points, want 6 of 18", len(d.Means), len(d.Points))
+	}
+	near(t, "mean", d.Means[0].Y, (d.Points[0].Y+d.Points[1].Y+d.Points[2].Y)/3, 1e-12)
+	if d, err = NewArrhenius(cases()["leftout"].assess(t), Options{}); err != nil {
+		t.Fatal(err)
+	}
+	if !slices.Equal(d.Sources, []string{"lab A", "lab B", "lab C"}) || d.Points[4].Source != 1 {
+		t.Errorf("sources %v, point 4 of %d", d.Sources, d.Points[4].Source)
+	}
+	if d.Points[1].Used || d.Points[0].Limit != "<" || d.NotShown != 1 || len(d.Means) != 0 {
+		t.Errorf("left out: %+v", d.Points[:2])
+	}
+}
+
+func TestInputsStayAsTheyWere(t *testing.T) {
+	a := cases()["leftout"].assess(t)
+	slices.Reverse(a.ChangeOfE)
+	before, err := json.Marshal(a)
+	if err != nil {
+		t.Fatal(err)
+	}
+	change, sample, p := slices.Clone(a.ChangeOfE), *a.Sample, slices.Clone(a.Fits["parallel"].P)
+	sample.T, sample.Y = slices.Clone(sample.T), slices.Clone(sample.Y)
+	if _, err := Write(t.TempDir(), a, Options{Y: "lg"}); err != nil {
+		t.Fatal(err)
+	}
+	after, err := json.Marshal(a)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if string(before) != string(after) || !slices.Equal(change, a.ChangeOfE) ||
+		!reflect.DeepEqual(sample, *a.Sample) || !slices.Equal(p, a.Fits["parallel"].P) {
+		t.Error("the assessment was modified")
+	}
+}
