@@ -354,7 +354,7 @@ func (p *cellParser) power() int {
 			continue
 		}
 		after = strings.TrimLeft(after, " ")
-		if e, _, rest, ok := powerOfTen(after); ok && strings.HasPrefix(after, "10") {
+		if e, _, rest, ok := powerOfTen(after); ok && strings.HasPrefix(after, "10") && rest != after[2:] {
 			p.s = rest
 			return e
 		}

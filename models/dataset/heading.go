@@ -378,7 +378,7 @@ func (p headingParser) temperature(s string) (Heading, bool) {
 			return h, false
 		}
 	}
-	h.Unit, h.Shift = nil, shift
+	h.Unit, h.UnitText, h.Shift = nil, "", shift
 	p.settleTemperature(&h)
 	return h, true
 }
@@ -438,7 +438,7 @@ func reciprocal(s string, h *Heading) bool {
 	}
 	if m := reKOverT.FindStringSubmatch(rest); m != nil { // 10^3 K/T, kK/T: the number of K/T
 		if m[1] == "k" {
-			shift += 3
+			shift -= 3
 		}
 		h.setUnit("K^-1")
 		return done(FormReciprocal)

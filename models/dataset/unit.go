@@ -215,6 +215,9 @@ func power(x, e float64) float64 {
 	if float64(n) != math.Abs(e) {
 		return math.Pow(x, e)
 	}
+	if inv := math.Round(1 / x); x < 1 && 1/inv == x { // 0.01 has no exact double, 100 has
+		x, e = inv, -e
+	}
 	p := 1.0
 	for range n {
 		p *= x
@@ -505,12 +508,14 @@ type rateUnit struct {
 
 func (u Unit) rate() (r rateUnit, ok bool) {
 	d := u.Dim
-	if d.Time != -1 || d.Mass != 0 || d.Temperature != 0 {
-		// Pressure holds time^-2: Pa^-1 s^-1 is kg^-1 m s. Read it back.
-		if u.perPressure() || d.Time == -1 && d.Temperature == 0 {
-			return rateUnit{}, true
-		}
+	if u.perPressure() {
+		return rateUnit{}, true
+	}
+	if d.Time != -1 || d.Temperature != 0 || d.Mass > 0 && d.Length != -3*d.Mass { // not Pa s
 		return rateUnit{}, false
+	}
+	if d.Mass != 0 { // mol g^-1 s^-1
+		return rateUnit{}, true
 	}
 	switch {
 	case d.Length == 0 && d.Amount == 0 && d.Molecule == 0:

@@ -1,0 +1,300 @@
+package dataset
+
+import (
+	"strings"
+	"testing"
+)
+
+// what a heading was read as, in one line: role, form, unit, shift, and for
+// uncertainties kind, coverage; "?KEY" if ambiguous.
+func (h Heading) brief() string {
+	s := string(h.Role)
+	if h.Of != "" && h.Role == RoleUncertainty {
+		s += " of " + h.Symbol
+	}
+	if h.Role == RoleRate {
+		s += " " + h.Symbol
+	}
+	if h.Form != "" && h.Form != FormUnknown {
+		s += " " + string(h.Form)
+	}
+	if h.Unit != nil {
+		s += " [" + h.Unit.Text + "]"
+	} else if h.UnitText != "" {
+		s += " {" + h.UnitText + "}"
+	}
+	if h.Shift != 0 {
+		s += " e" + itoa(h.Shift)
+	}
+	if h.Kind != "" {
+		s += " " + string(h.Kind)
+	}
+	if h.Coverage != 0 {
+		s += " k" + strings.TrimSuffix(ftoa(h.Coverage), ".0")
+	}
+	if h.Percent95 {
+		s += " 95"
+	}
+	if h.Relative {
+		s += " rel"
+	}
+	if h.Ambiguity != nil {
+		s += " ?" + h.Ambiguity.Key
+	}
+	if h.Lost {
+		s += " lost"
+	}
+	return s
+}
+
+func TestHeadings(t *testing.T) {
+	// The expected readings are the table of roles of the interface and the
+	// IUPAC Green Book's quantity/unit, written out by hand.
+	for _, c := range []struct{ in, want string }{
+		// temperatures
+		{"T/K", "temperature [K]"},
+		{"T / K", "temperature [K]"},
+		{"T (K)", "temperature [K]"},
+		{"T(K)", "temperature [K]"},
+		{"T [K]", "temperature [K]"},
+		{"T_K", "temperature [K]"},
+		{"T_C", "temperature [°C]"},
+		{"t/°C", "temperature [°C]"},
+		{"t / ºC", "temperature [°C]"},
+		{"t/℃", "temperature [°C]"},
+		{"t/degF", "temperature [°F]"},
+		{"T/degC", "temperature [°C]"},
+		{"Temp / C", "temperature [°C]"},
+		{"Temp. (deg C)", "temperature [°C]"},
+		{"temperature, K", "temperature [K]"},
+		{"Temperature in °C", "temperature [°C]"},
+		{"TEMPERATURE (KELVIN)", "temperature [K]"},
+		{"reaction temperature (°C)", "temperature [°C]"},
+		{"temperature of the bath (K)", "temperature [K]"},
+		{"Temperature_K", "temperature [K]"},
+		{"θ/°C", "temperature [°C]"},
+		{"10^-2 T/K", "temperature [K] e2"},
+		{"absolute temperature", "temperature [K]"},
+		{"T", "temperature ?T"},
+		{"Temp", "temperature ?T"},
+		{"temperature", "temperature ?T"},
+		{"T (k)", "temperature ?T"},
+		{"t/s", "kept"},
+		{"t/min", "kept"},
+		{"t", "kept"},
+		{"time", "kept"},
+		{"Type", "kept"},
+		{"T_g", "kept"},
+		{"Tmin_K", "kept"},
+		// reciprocal temperatures
+		{"10^3 K/T", "temperature reciprocal [K^-1] e-3"},
+		{"10³ K/T", "temperature reciprocal [K^-1] e-3"},
+		{"103 K/T", "temperature reciprocal [K^-1] e-3 lost"},
+		{"kK/T", "temperature reciprocal [K^-1] e-3"},
+		{"10^3 (T/K)^-1", "temperature reciprocal [K^-1] e-3"},
+		{"10³ (T/K)⁻¹", "temperature reciprocal [K^-1] e-3"},
+		{"1000/T", "temperature reciprocal [K^-1] e-3"},
+		{"1000/T (K)", "temperature reciprocal [K^-1] e-3"},
+		{"1000/T (K^-1)", "temperature reciprocal [K^-1] e-3"},
+		{"1000 K / T", "temperature reciprocal [K^-1] e-3"},
+		{"10^4/T", "temperature reciprocal [K^-1] e-4"},
+		{"1/T (1/K)", "temperature reciprocal [K^-1]"},
+		{"1/T / K^-1", "temperature reciprocal [K^-1]"},
+		{"1/T (10^-3 K^-1)", "temperature reciprocal [K^-1] e-3"},
+		{"1/T (kK^-1)", "temperature reciprocal [kK^-1]"},
+		{"1/kT (eV^-1)", "temperature 1/(k_B T) [eV^-1]"},
+		{"1/k_BT (eV⁻¹)", "temperature 1/(k_B T) [eV^-1]"},
+		{"1/(kT) / eV^-1", "temperature 1/(k_B T) [eV^-1]"},
+		{"1/RT (mol/kJ)", "temperature 1/(k_B T) [mol kJ^-1]"},
+		{"1/kT", "temperature 1/(k_B T) ?T"},
+		{"1/RT", "temperature 1/(k_B T) ?T"},
+		// rate constants
+		{"k/s^-1", "rate k [s^-1]"},
+		{"k / s⁻¹", "rate k [s^-1]"},
+		{"k (s-1)", "rate k [s^-1]"},
+		{"k(1/s)", "rate k [s^-1]"},
+		{"k_obs/s^-1", "rate k_obs [s^-1]"},
+		{"k_obs (min⁻¹)", "rate k_obs [min^-1]"},
+		{"kobs", "rate kobs"},
+		{"k", "rate k"},
+		{"k1 (s-1)", "rate k1 [s^-1]"},
+		{"k/(L mol^-1 s^-1)", "rate k [L mol^-1 s^-1]"},
+		{"k/L mol^-1 s^-1", "rate k [L mol^-1 s^-1]"},
+		{"k (M-1 s-1)", "rate k [M^-1 s^-1]"},
+		{"k, dm3 mol-1 s-1", "rate k [dm^3 mol^-1 s^-1]"},
+		{"k_cat/K_M (M^-1 s^-1)", "rate k_cat/K_M [M^-1 s^-1]"},
+		{"kcat/Km (M^-1 s^-1)", "rate kcat/Km [M^-1 s^-1]"},
+		{"kcat/Km/(M^-1 s^-1)", "rate kcat/Km [M^-1 s^-1]"},
+		{"k_cat", "rate k_cat"},
+		{"kcat (s-1)", "rate kcat [s^-1]"},
+		{"k_1_s", "rate k [s^-1]"},
+		{"k_L_mol_s", "rate k [L mol^-1 s^-1]"},
+		{"k_dec_L_mol_s", "rate k_dec [L mol^-1 s^-1]"},
+		{"k_form_L_mol_s", "rate k_form [L mol^-1 s^-1]"},
+		{"k_1_s-1", "rate k_1 [s^-1]"},
+		{"k_per_min", "rate k [min^-1]"},
+		{"k_cm3_molecule_s", "rate k [cm^3 molecule^-1 s^-1]"},
+		{"rate constant", "rate k"},
+		{"Rate constant k (s-1)", "rate k [s^-1]"},
+		{"rate coefficient / cm3 molecule-1 s-1", "rate k [cm^3 molecule^-1 s^-1]"},
+		{"turnover number (s^-1)", "rate turnover number [s^-1]"},
+		{"D/cm^2 s^-1", "rate D [cm^2 s^-1]"},
+		{"D (cm2/s)", "rate D [cm^2 s^-1]"},
+		{"lg D", "rate D lg"},
+		{"diffusion coefficient (m²/s)", "rate D [m^2 s^-1]"},
+		{"ln(k/s^-1)", "rate k ln [s^-1]"},
+		{"ln k", "rate k ln"},
+		{"ln(k)", "rate k ln"},
+		{"lnk", "rate k ln"},
+		{"Ln k (s-1)", "rate k ln [s^-1]"},
+		{"lg(k/s^-1)", "rate k lg [s^-1]"},
+		{"log10 k", "rate k lg"},
+		{"log₁₀(k / s⁻¹)", "rate k lg [s^-1]"},
+		{"lg(k/(L mol^-1 s^-1))", "rate k lg [L mol^-1 s^-1]"},
+		{"log k", "rate k ?log"},
+		{"log(k/s^-1)", "rate k [s^-1] ?log"},
+		{"rate", "rate rate ?k"},
+		{"rate (s^-1)", "rate rate [s^-1] ?k"},
+		{"v", "rate v ?k"},
+		{"k/s", "rate k [s] ?k"},
+		{"k/widgets", "rate k {widgets}"},
+		// not rate constants
+		{"K", "kept"}, {"Kw", "kept"}, {"pKw", "kept"}, {"kPa", "kept"}, {"kJ/mol", "kept"}, {"k_B (J/K)", "kept"}, {"kH/kD", "kept"},
+		{"D (mm)", "kept"}, {"eta_Pa_s", "kept"}, {"p_mmHg", "kept"}, {"pH", "kept"}, {"dose", "kept"}, {"ln x", "kept"}, {"lot", "kept"},
+		// powers of ten
+		{"10^12 k/s^-1", "rate k [s^-1] e-12"},
+		{"10¹² k / cm³ molecule⁻¹ s⁻¹", "rate k [cm^3 molecule^-1 s^-1] e-12"},
+		{"105 k/s-1", "rate k [s^-1] e-5 lost"},
+		{"k/(10^-12 cm^3 molecule^-1 s^-1)", "rate k [cm^3 molecule^-1 s^-1] e-12"},
+		{"k (10^-12 cm3 s-1)", "rate k [cm^3 s^-1] e-12"},
+		{"k (10-12 cm3 s-1)", "rate k [cm^3 s^-1] e-12 lost"},
+		{"k × 10^12", "rate k e12 ?factor"},
+		{"k x 10^5 (s-1)", "rate k [s^-1] e5 ?factor"},
+		{"k (×10^-12 cm^3 s^-1)", "rate k [cm^3 s^-1] e-12 ?factor"},
+		{"ln(10^5 k/s^-1)", "rate k ln [s^-1] e-5"},
+		// times
+		{"tau/s", "rate tau reciprocal [s]"},
+		{"τ/ns", "rate τ reciprocal [ns]"},
+		{"lifetime (ms)", "rate lifetime reciprocal [ms]"},
+		{"life_h", "rate life reciprocal [h]"},
+		{"t_1/2/min", "rate t_1/2 half-life [min]"},
+		{"t½/min", "rate t1/2 half-life [min]"},
+		{"t1/2 (h)", "rate t1/2 half-life [h]"},
+		{"half-life (h)", "rate half-life half-life [h]"},
+		{"half_life_h", "rate half_life half-life [h]"},
+		{"t_half_s", "rate t_half half-life [s]"},
+		// uncertainties
+		{"u(k)/s^-1", "uncertainty of k [s^-1] standard"},
+		{"u(k)", "uncertainty of k standard"},
+		{"u_r(k)/%", "uncertainty of k {%} e-2 standard rel"},
+		{"u_r(k)", "uncertainty of k standard rel"},
+		{"u(ln k)", "uncertainty of k ln standard"},
+		{"u(ln(k/s^-1))", "uncertainty of k ln standard"},
+		{"u(lg k)", "uncertainty of k lg standard"},
+		{"u(T)/K", "temperature-uncertainty [K] standard"},
+		{"u_T/K", "temperature-uncertainty [K] standard"},
+		{"u(k_obs) (s-1)", "uncertainty of k_obs [s^-1] standard"},
+		{"SE", "uncertainty standard, of mean"},
+		{"SEM", "uncertainty standard, of mean"},
+		{"SE (s-1)", "uncertainty [s^-1] standard, of mean"},
+		{"k SE", "uncertainty of k standard, of mean"},
+		{"k_se", "uncertainty of k standard, of mean"},
+		{"1σ", "uncertainty standard k1"},
+		{"σ", "uncertainty standard"},
+		{"sigma_k", "uncertainty of k standard"},
+		{"σ(k)/s^-1", "uncertainty of k [s^-1] standard"},
+		{"2σ", "uncertainty expanded k2"},
+		{"2 sigma", "uncertainty expanded k2"},
+		{"2σ(k)/s^-1", "uncertainty of k [s^-1] expanded k2"},
+		{"k (2σ)", "uncertainty of k expanded k2"},
+		{"U(k)/s^-1 (k=2)", "uncertainty of k [s^-1] expanded k2"},
+		{"U(k)/s^-1 (k = 3)", "uncertainty of k [s^-1] expanded k3"},
+		{"U(k)", "uncertainty of k expanded ?error"},
+		{"U_95(k)", "uncertainty of k expanded 95"},
+		{"95 % CI", "uncertainty expanded 95"},
+		{"95% CI (s-1)", "uncertainty [s^-1] expanded 95"},
+		{"CI (95 %)", "uncertainty expanded 95"},
+		{"f(k)", "uncertainty of k uncertainty factor"},
+		{"f(k) (k=2)", "uncertainty of k uncertainty factor k2"},
+		{"s(k)", "uncertainty of k s.d. of repeats"},
+		{"sd(k)/s^-1", "uncertainty of k [s^-1] s.d. of repeats"},
+		{"SD", "uncertainty s.d. of repeats"},
+		{"stdev", "uncertainty s.d. of repeats"},
+		{"standard deviation (s-1)", "uncertainty [s^-1] s.d. of repeats"},
+		{"k_sd", "uncertainty of k s.d. of repeats"},
+		{"RSD/%", "uncertainty {%} e-2 s.d. of repeats rel"},
+		{"CV%", "uncertainty {%} e-2 s.d. of repeats rel"},
+		{"%RSD", "uncertainty {%} e-2 s.d. of repeats rel"},
+		{"error", "uncertainty ambiguous ?error"},
+		{"±", "uncertainty ambiguous ?error"},
+		{"error (%)", "uncertainty {%} e-2 ambiguous rel ?error"},
+		{"k error", "uncertainty of k ambiguous ?error"},
+		{"Δk/s^-1", "uncertainty of k [s^-1] ambiguous ?error"},
+		{"uncertainty (k=2)", "uncertainty expanded k2"},
+		{"error (2σ)", "uncertainty expanded k2"},
+		{"T error", "temperature-uncertainty ambiguous ?error"},
+		{"sigma_rounding_mmHg", "kept"}, {"95% CI lower", "kept"}, {"errors found", "kept"}, {"f(298)", "kept"},
+		// others; symbols are case-sensitive, words are not
+		{"n", "repeats"}, {"N", "repeats"}, {"Replicates", "repeats"}, {"coverage_factor", "coverage-factor"}, {"LIMIT", "limit"},
+		{"Lab", "source"}, {"method", "source"}, {"dataset", "dataset"}, {"order", "order"}, {"Note", "note"}, {"comments", "note"}, {"", "kept"},
+	} {
+		if got := ParseHeading(c.in, nil).brief(); got != c.want {
+			t.Errorf("%q: got %q, want %q", c.in, got, c.want)
+		}
+	}
+}
+
+func TestAssumptionsSettleHeadings(t *testing.T) {
+	for _, c := range []struct{ in, key, value, want string }{
+		{"T", "T", "K", "temperature [K]"},
+		{"Temp", "T", "degC", "temperature [°C]"},
+		{"T", "T", "1000/T", "temperature reciprocal [K^-1] e-3"},
+		{"1/kT", "T", "eV^-1", "temperature 1/(k_B T) [eV^-1]"},
+		{"1/RT", "T", "mol/kJ", "temperature 1/(k_B T) [mol kJ^-1]"},
+		{"log k", "log", "lg", "rate k lg"},
+		{"log k", "log", "ln", "rate k ln"},
+		{"rate (s^-1)", "k", "rate", "rate rate [s^-1]"},
+		{"k/s", "k", "rate", "rate k [s^-1]"},
+		{"k × 10^12", "factor", "times", "rate k e-12"},
+		{"k × 10^12", "factor", "unit", "rate k e12"},
+		{"error", "error", "1", "uncertainty standard"},
+		{"error", "error", "2", "uncertainty expanded k2"},
+		{"error", "error", "sd", "uncertainty s.d. of repeats"},
+		{"U(k)", "error", "2", "uncertainty of k expanded k2"},
+	} {
+		h := ParseHeading(c.in, map[string]string{c.key: c.value})
+		if got := h.brief(); got != c.want {
+			t.Errorf("%q with %s=%s: got %q, want %q", c.in, c.key, c.value, got, c.want)
+		}
+		if want := c.key + "=" + c.value; len(h.Assumed) != 1 || h.Assumed[0] != want {
+			t.Errorf("%q: assumed %v, want %s", c.in, h.Assumed, want)
+		}
+	}
+	for _, in := range []string{"T/K", "ln k", "k/s^-1", "u(k)"} {
+		h := ParseHeading(in, map[string]string{"T": "degC", "log": "ln", "k": "rate", "error": "2"})
+		if len(h.Assumed) != 0 {
+			t.Errorf("%q is certain, and %v was assumed", in, h.Assumed)
+		}
+	}
+}
+
+func FuzzHeading(f *testing.F) {
+	for _, s := range []string{"T/K", "10³ K/T", "1/kT (eV^-1)", "u(ln(k/s^-1))", "k × 10^12", "95 % CI", "t_1/2/min", "k_dec_L_mol_s", "((((", "10^", "k_{", "2σ(", "ln(", "\u202ek/s"} {
+		f.Add(s)
+	}
+	f.Fuzz(func(t *testing.T, s string) {
+		h := ParseHeading(s, nil)
+		if h.Role == "" {
+			t.Errorf("%q has no role", s)
+		}
+		if h.Role == RoleTemperature && h.Ambiguity == nil && h.Unit == nil {
+			t.Errorf("%q: a temperature without unit is certain", s)
+		}
+		ParseHeading(s, map[string]string{"T": "degC", "log": "lg", "k": "rate", "error": "2", "factor": "unit"})
+		for _, role := range []string{"T", "k", "u(k)"} {
+			if _, err := parseAs(role, s, nil); err != nil {
+				t.Errorf("%q as %s: %v", s, role, err)
+			}
+		}
+	})
+}
