@@ -52,7 +52,7 @@ func (d *resampleDesign) refitter() *fastRefitter {
 	for _, w := range []*workspace{&r.full, &r.taken} {
 		w.kernel = *d.kernel()
 		w.data = make([]float64, n)
-		w.product = make([]float64, 4*len(d.columns))
+		w.product = make([]float64, 4*len(d.columns)/n)
 		w.d1, w.d2 = make([]float64, m), make([]float64, m)
 	}
 	r.full.directions, r.full.gram = d.directions, d.gram
@@ -91,9 +91,8 @@ func (r *fastRefitter) Refit(y []float64, out *Refit) {
 		zz += v * v
 	}
 	w.a1, w.a2, w.zz = a1+r.base1, a2+r.base2, zz
-	for g, cols := range r.columns {
-		p := w.product[4*g : 4*g+4]
-		p[0], p[1], p[2], p[3] = dot4(z, cols)
+	for g := 0; g*n < len(r.columns); g++ {
+		*(*quad)(w.product[4*g:]) = dot4(z, r.columns[g*n:])
 	}
 	out.How = HowLinear
 	best := math.Inf(1)
@@ -401,45 +400,64 @@ func (r *fastRefitter) fitTaken(w *workspace, sc *shapedCandidate, best float64)
 			return rss, HowWarm
 		}
 	}
-	if r.screens && r.excludesTaken(w, sc.sign, r.limit(sc.index, best)) {
+	if r.screens && r.excludesTaken(r.fine, w, sc.sign, r.limit(sc.index, best)) {
 		return math.Inf(1), HowScreened
 	}
 	// The stored shapes differ from those of this projector by lines alone.
-	for j := range r.nodes {
-		zs, norm2 := r.takenProducts(w, r.shapes[j*len(r.resampleDesign.rows):])
-		r.search.rss[j] = w.zz - 2*sc.sign*zs + norm2
+	n := len(r.resampleDesign.rows)
+	for j := 0; j < len(r.nodes); j += 4 {
+		zs, norm2 := r.takenProducts(w, r.shapes[j/4*n:])
+		for i := range min(4, len(r.nodes)-j) {
+			r.search.rss[j+i] = w.zz - 2*sc.sign*zs[i] + norm2[i]
+		}
 	}
 	e, ok := r.descend(&w.kernel, r.search, w.zz, coldTol)
 	return r.settle(e, ok)
 }
 
-// takenProducts returns the products of a whitened vector of the full design, after
-// projection, with the data and with itself.
-func (r *fastRefitter) takenProducts(w *workspace, full []float64) (withData, norm2 float64) {
-	var c1, c2 float64
-	for i := range w.rows {
-		b := &w.rows[i]
-		x := full[r.index[i]] * r.root[i]
-		c1 += b.p1 * x
-		c2 += b.p2 * x
-		norm2 += x * x
-		withData += w.data[i] * x
+// takenProducts returns the products of four whitened vectors of the full design,
+// after projection, with the data and with themselves.
+func (r *fastRefitter) takenProducts(w *workspace, full []quad) (withData, norm2 quad) {
+	rows := w.rows
+	data, index, root := w.data[:len(rows)], r.index[:len(rows)], r.root[:len(rows)]
+	for j := 0; j < 4; j += 2 { // more sums than two at a time leave the registers
+		var c1, c2, s, t, d1, d2, u, v float64
+		for i := range rows {
+			b := &rows[i]
+			f := &full[index[i]]
+			x, y := f[j]*root[i], f[j+1]*root[i]
+			c1 += b.p1 * x
+			c2 += b.p2 * x
+			s += x * x
+			t += data[i] * x
+			d1 += b.p1 * y
+			d2 += b.p2 * y
+			u += y * y
+			v += data[i] * y
+		}
+		withData[j], norm2[j] = t, s-c1*c1-c2*c2
+		withData[j+1], norm2[j+1] = v, u-d1*d1-d2*d2
 	}
-	return withData, norm2 - c1*c1 - c2*c2
+	return withData, norm2
 }
 
-// excludesTaken is cover.excludes on the projector of a resample with counts. The
-// shapes of the fine cover stand less evenly there, so that the slack of the coarse
-// one is kept.
-func (r *fastRefitter) excludesTaken(w *workspace, sign, limit float64) bool {
-	most, decided := r.coarse.most(w.zz, limit)
+// excludesTaken is cover.excludes on the projector of a resample with counts.
+func (r *fastRefitter) excludesTaken(c *cover, w *workspace, sign, limit float64) bool {
+	b, decided, excluded := c.against(w.zz, limit)
 	if decided {
-		return math.IsInf(most, 1)
+		return excluded
 	}
-	for _, s := range r.fine.shapes {
-		zs, norm2 := r.takenProducts(w, s)
-		if zs *= sign; zs > 0 && zs*zs > most*most*norm2 {
-			return false
+	n := len(r.resampleDesign.rows)
+	for k := 0; k < len(c.shapes); k += 4 {
+		zs, norm2 := r.takenProducts(w, c.quads[k/4*n:])
+		for j := range min(4, len(c.shapes)-k) {
+			if norm2[j] <= 1e-12 {
+				continue // what is left of this shape is rounding
+			}
+			norm := math.Sqrt(norm2[j])
+			if b.beaten(sign*zs[j]/norm, c.low[k+j]*norm, c.high[k+j]*norm) {
+				return false
+			}
 		}
 	}
 	return true

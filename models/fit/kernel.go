@@ -28,17 +28,16 @@ type kernel struct {
 // half the negative gradient, the Gauss-Newton matrix and the second-order term, in
 // the order cc, cd, dd.
 type normal struct {
-	c, d           float64
-	rss            float64
-	a1, a2         float64 // p1·Ws, p2·Ws
-	gc, gd         float64
-	m00, m01, m11  float64
-	k00, k01, k11  float64
-	newton         bool // the last step used the second-order term
-	step0, step1   float64
-	decrement      float64 // what the quadratic model says the step saves
-	bound          bool    // d is held at a bound
-	gaussNewtonBad bool
+	c, d          float64
+	rss           float64
+	a1, a2        float64 // p1·Ws, p2·Ws
+	gc, gd        float64
+	m00, m01, m11 float64
+	k00, k01, k11 float64
+	newton        bool // the last step used the second-order term
+	step0, step1  float64
+	decrement     float64 // what the quadratic model says the step saves
+	bound         bool    // d is held at a bound
 }
 
 // at evaluates everything at (c, d).
@@ -46,29 +45,26 @@ func (k *kernel) at(c, d float64, e *normal) {
 	rows := k.rows
 	n := len(rows)
 	ws, slope, z := k.ws[:n], k.slope[:n], k.z[:n]
+	k.tab.shape(c, d, rows, ws, slope)
 	var a1, a2 float64
 	for i := range rows {
 		r := &rows[i]
-		v, s := k.tab.at(c + d*r.u)
-		v *= r.w
-		ws[i], slope[i] = v, s
-		a1 += r.p1 * v
-		a2 += r.p2 * v
+		a1 += r.p1 * ws[i]
+		a2 += r.p2 * ws[i]
 	}
 	var rss, gc, gd, k00, k01, k11 float64
 	for i := range rows {
 		r := &rows[i]
 		res := z[i] - ws[i] + a1*r.p1 + a2*r.p2
 		rss += res * res
-		ru := res * r.w
-		g := ru * slope[i]
+		g := res * r.w * slope[i]
 		gc += g
-		gu := g * r.u
-		gd += gu
-		h := 1 - slope[i]
-		k00 += g * h
-		k01 += gu * h
-		k11 += gu * r.u * h
+		gd += g * r.u
+		h := g * (1 - slope[i])
+		k00 += h
+		hu := h * r.u
+		k01 += hu
+		k11 += hu * r.u
 	}
 	var m00, m01, m11, b10, b11, b20, b21 float64
 	for i := range rows {
@@ -89,28 +85,6 @@ func (k *kernel) at(c, d float64, e *normal) {
 	e.m01 = m01 - b10*b11 - b20*b21
 	e.m11 = m11 - b11*b11 - b21*b21
 	e.k00, e.k01, e.k11 = k00, k01, k11
-}
-
-// rssAt evaluates the residual sum of squares alone.
-func (k *kernel) rssAt(c, d float64) float64 {
-	n := len(k.rows)
-	ws, z := k.ws[:n], k.z[:n]
-	var a1, a2 float64
-	for i := range k.rows {
-		r := &k.rows[i]
-		v, _ := k.tab.at(c + d*r.u)
-		v *= r.w
-		ws[i] = v
-		a1 += r.p1 * v
-		a2 += r.p2 * v
-	}
-	var rss float64
-	for i := range k.rows {
-		r := &k.rows[i]
-		res := z[i] - ws[i] + a1*r.p1 + a2*r.p2
-		rss += res * res
-	}
-	return rss
 }
 
 // singular is the relative determinant below which a 2 x 2 matrix is taken as

@@ -29,7 +29,7 @@ type plan struct {
 	maxD      float64 // bound of |d|
 	distinct  int     // temperatures
 	nodes     []node
-	shapes    []float64 // projected whitened shape of each node, len(nodes) x N
+	shapes    []quad // projected whitened shapes of the nodes, N rows for each four
 }
 
 // node is a starting point of the cold search.
@@ -124,7 +124,7 @@ func (k *kernel) setData(y []float64, sign float64) (straight float64) {
 		k.z[i] = sign * yi * k.rows[i].w
 		big = math.Max(big, math.Abs(k.z[i]))
 	}
-	projectOut(k.rows, k.z)
+	projectOutTwice(k.rows, k.z)
 	for _, zi := range k.z {
 		straight += zi * zi
 	}
@@ -133,29 +133,40 @@ func (k *kernel) setData(y []float64, sign float64) (straight float64) {
 	return straight
 }
 
-// projectOut removes from the whitened vector z what the basis spans, twice, so
-// that what is left is orthogonal to it to rounding.
+// projectOut removes from the whitened vector z what the basis spans. Done twice it
+// leaves z orthogonal to the basis to rounding.
 func projectOut(rows []basisRow, z []float64) {
-	for range 2 {
-		var a1, a2 float64
-		for i, r := range rows {
-			a1 += r.p1 * z[i]
-			a2 += r.p2 * z[i]
-		}
-		for i, r := range rows {
-			z[i] -= a1*r.p1 + a2*r.p2
-		}
+	z = z[:len(rows)]
+	var a1, a2 float64
+	for i := range rows {
+		r := &rows[i]
+		a1 += r.p1 * z[i]
+		a2 += r.p2 * z[i]
+	}
+	for i := range rows {
+		r := &rows[i]
+		z[i] -= a1*r.p1 + a2*r.p2
 	}
 }
 
-// makeNodes lays out the cold search: levels d = 1/2, 1, 2 ... 256 (range of u = 1)
+func projectOutTwice(rows []basisRow, z []float64) {
+	projectOut(rows, z)
+	projectOut(rows, z)
+}
+
+// makeNodes makes the nodes of the cold search and their shapes, once.
+func (p *plan) makeNodes() {
+	if p.nodes == nil {
+		p.layNodes()
+		p.projectShapes()
+	}
+}
+
+// layNodes lays out the cold search: levels d = 1/2, 1, 2 ... 256 (range of u = 1)
 // up to the bound, on each level crossovers every 1.5/d but at most three per gap
 // of the design, out to 4/d beyond the ends. Between such neighbours the shapes
 // change little enough for Newton steps to find the minimum.
-func (p *plan) makeNodes() {
-	if p.nodes != nil {
-		return
-	}
+func (p *plan) layNodes() {
 	gap := p.gaps()
 	level := int32(0)
 	for d := 0.5; ; d *= 2 {
@@ -170,26 +181,59 @@ func (p *plan) makeNodes() {
 			break
 		}
 	}
-	p.shapes = make([]float64, len(p.nodes)*len(p.rows))
-	p.projectShapes()
 }
 
 // projectShapes fills shapes and norm2 of the nodes.
 func (p *plan) projectShapes() {
 	n := len(p.rows)
+	p.shapes = make([]quad, (len(p.nodes)+3)/4*n)
+	v, slope := make([]float64, n), make([]float64, n)
 	for j := range p.nodes {
 		nd := &p.nodes[j]
-		nd.norm2 = 0
-		s := p.shapes[j*n : (j+1)*n]
-		for i, r := range p.rows {
-			v, _ := p.tab.at(nd.c + nd.d*r.u)
-			s[i] = r.w * v
-		}
-		projectOut(p.rows, s)
-		for _, v := range s {
-			nd.norm2 += v * v
+		p.tab.shape(nd.c, nd.d, p.rows, v, slope)
+		projectOut(p.rows, v)
+		nd.norm2 = dot(v, v)
+		for i, vi := range v {
+			p.shapes[j/4*n+i][j%4] = vi
 		}
 	}
+}
+
+// quad holds the same entry of four vectors, so that four products take one pass.
+type quad [4]float64
+
+// dot4 is the product of z with four vectors.
+func dot4(z []float64, v []quad) (p quad) {
+	v = v[:len(z)]
+	var p0, p1, p2, p3 float64
+	for i, zi := range z {
+		r := &v[i]
+		p0 += zi * r[0]
+		p1 += zi * r[1]
+		p2 += zi * r[2]
+		p3 += zi * r[3]
+	}
+	return quad{p0, p1, p2, p3}
+}
+
+// quads lays vectors of length n out in fours, the last filled up with zeros.
+func quads(vectors [][]float64, n int) []quad {
+	q := make([]quad, (len(vectors)+3)/4*n)
+	for j, v := range vectors {
+		for i, vi := range v {
+			q[j/4*n+i][j%4] = vi
+		}
+	}
+	return q
+}
+
+func dot(a, b []float64) float64 {
+	b = b[:len(a)]
+	var s float64
+	for i, ai := range a {
+		s += ai * b[i]
+	}
+	return s
 }
 
 // gaps returns a function that gives the width of the gap of the design in which x
@@ -232,13 +276,11 @@ func (p *plan) newSearch() *search { return &search{rss: make([]float64, len(p.n
 // decrement of tol·RSS. ok is false where nothing improves on the straight line.
 func (p *plan) cold(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
 	n := len(p.rows)
-	for j := range p.nodes {
-		shape := p.shapes[j*n : (j+1)*n]
-		var dot float64
-		for i, zi := range k.z[:n] {
-			dot += zi * shape[i]
+	for j := 0; j < len(p.nodes); j += 4 {
+		product := dot4(k.z[:n], p.shapes[j/4*n:])
+		for i, nd := range p.nodes[j:min(j+4, len(p.nodes))] {
+			s.rss[j+i] = straight - 2*product[i] + nd.norm2
 		}
-		s.rss[j] = straight - 2*dot + p.nodes[j].norm2
 	}
 	return p.descend(k, s, straight, tol)
 }

@@ -28,9 +28,9 @@ type resampleDesign struct {
 	gram       []float64 // directions·directions
 	linear     []linearCandidate
 	shaped     []shapedCandidate
-	columns    [][][4]float64 // directions and warm-start columns in groups of four
-	coarse     cover
-	fine       cover
+	columns    []quad // directions and warm-start columns
+	coarse     *cover
+	fine       *cover
 }
 
 // term is a whitened column of a linear curve: scale·direction + w·(a + b u).
@@ -94,8 +94,8 @@ func newResampleDesign(s *Sample, curves []models.Curve, fits []*Result, crit cr
 	if len(d.shaped) > 0 {
 		d.makeNodes()
 		if crit.screens {
-			d.coarse = d.newCover(coarseCos)
-			d.fine = d.newCover(fineCos)
+			d.coarse = d.newCover(coarseSlack)
+			d.fine = d.newCover(fineSlack)
 		}
 	}
 	return d
@@ -175,7 +175,7 @@ func (d *resampleDesign) term(col []float64) term {
 	}
 	t := term{direction: -1}
 	t.a, t.b = d.lineAt(a1, a2)
-	projectOut(d.rows, v)
+	projectOutTwice(d.rows, v)
 	var rest float64
 	for _, vi := range v {
 		rest += vi * vi
@@ -199,15 +199,6 @@ func (d *resampleDesign) term(col []float64) term {
 	return t
 }
 
-func dot(a, b []float64) float64 {
-	b = b[:len(a)]
-	var s float64
-	for i, ai := range a {
-		s += ai * b[i]
-	}
-	return s
-}
-
 // interleave fills gram and lays the columns whose products with a resample are
 // wanted out in groups of four.
 func (d *resampleDesign) interleave() {
@@ -225,37 +216,7 @@ func (d *resampleDesign) interleave() {
 			all = append(all, w.cols[:]...)
 		}
 	}
-	for len(all)%4 != 0 {
-		all = append(all, make([]float64, len(d.rows)))
-	}
-	d.columns = fours(all, len(d.rows))
-}
-
-// fours lays vectors of length n, a multiple of four of them, out in groups of four.
-func fours(vectors [][]float64, n int) [][][4]float64 {
-	var groups [][][4]float64
-	for g := 0; g+4 <= len(vectors); g += 4 {
-		rows := make([][4]float64, n)
-		for i := range rows {
-			for j := range 4 {
-				rows[i][j] = vectors[g+j][i]
-			}
-		}
-		groups = append(groups, rows)
-	}
-	return groups
-}
-
-func dot4(z []float64, cols [][4]float64) (a, b, c, d float64) {
-	cols = cols[:len(z)]
-	for i, zi := range z {
-		r := &cols[i]
-		a += zi * r[0]
-		b += zi * r[1]
-		c += zi * r[2]
-		d += zi * r[3]
-	}
-	return
+	d.columns = quads(all, len(d.rows))
 }
 
 // warmStart predicts the estimate of a resample from that of the sample to second
@@ -286,14 +247,14 @@ func (d *resampleDesign) newWarmStart(c models.Shaped, sign float64, f *Result) 
 	w := &warmStart{d: q[1] * d.width}
 	w.c = q[0] - w.d*d.atRef
 	n := len(d.rows)
-	shape := make([]float64, n)
+	shape, slope := make([]float64, n), make([]float64, n)
+	d.tab.shape(w.c, w.d, d.rows, shape, slope)
 	for j := range w.cols {
 		w.cols[j] = make([]float64, n)
 	}
 	for i, r := range d.rows {
-		v, s := d.tab.at(w.c + w.d*r.u)
+		s := slope[i]
 		h := r.w * s * (1 - s)
-		shape[i] = r.w * v
 		w.cols[0][i], w.cols[1][i] = r.w*s, r.w*s*r.u
 		w.cols[2][i], w.cols[3][i], w.cols[4][i] = h, h*r.u, h*r.u*r.u
 	}
@@ -349,64 +310,77 @@ func (w *warmStart) predict(t *[5]float64) (c, d float64) {
 }
 
 // cover is a set of unit shapes such that every shape of the kernel is within the
-// angle slack of one of them. With ρ the straight line's RSS, no shape can bring it
-// below ρ·sin²(max(0, angle to the nearest - slack)).
+// angle slack of one of them, with a length between its low and its high.
 type cover struct {
-	shapes   [][]float64
-	fours    [][][4]float64
-	cos, sin float64 // of the slack
+	shapes    [][]float64
+	low, high []float64
+	quads     []quad
+	slack     float64
+	cos, sin  float64 // of the slack
 }
 
-// Cosines of the angles within which shapes are represented by one of a cover, and
-// how much of each angle is kept for the gaps of the grid that is covered.
 const (
-	coarseCos = 0.98
-	fineCos   = 0.998
-	gridAngle = 0.02
+	coarseSlack = 0.20
+	fineSlack   = 0.08
+	// gridAngle is what a slack keeps for the gaps of the grid that is covered, and
+	// gridLength the factor kept for lengths.
+	gridAngle  = 0.02
+	gridLength = 1.5
 )
 
 // newCover covers a fine grid of shapes: d in steps of √2, crossovers every 0.35/d,
 // at least twelve to a gap of the design, from 8/d below to 8/d above it, where what
-// is left of the shape is an exponential.
-func (d *resampleDesign) newCover(cos float64) cover {
-	slack := math.Acos(cos)
-	c := cover{cos: cos, sin: math.Sin(slack)}
+// is left of the shape is an exponential of any length.
+func (d *resampleDesign) newCover(slack float64) *cover {
+	c := &cover{slack: slack, cos: math.Cos(slack), sin: math.Sin(slack)}
 	near := math.Cos(slack - gridAngle)
 	n := len(d.rows)
-	v := make([]float64, n)
+	v, slope := make([]float64, n), make([]float64, n)
+	last := 0
 	for _, nd := range d.grid() {
-		for i, r := range d.rows {
-			s, _ := d.tab.at(nd.c + nd.d*r.u)
-			v[i] = r.w * s
-		}
+		d.tab.shape(nd.c, nd.d, d.rows, v, slope)
 		whole := math.Sqrt(dot(v, v))
 		projectOut(d.rows, v)
 		length := math.Sqrt(dot(v, v))
 		if !(length > 1e-10*whole) {
 			continue
 		}
-		covered := false
-		for _, s := range c.shapes {
-			if dot(s, v) >= near*length {
-				covered = true
-				break
+		last = c.find(v, near*length, last)
+		if last == len(c.shapes) {
+			unit := make([]float64, n)
+			for i := range v {
+				unit[i] = v[i] / length
 			}
+			c.shapes = append(c.shapes, unit)
+			c.low, c.high = append(c.low, length), append(c.high, length)
 		}
-		if covered {
-			continue
+		if x := -nd.c / nd.d; x < d.low-4/nd.d || x > d.high+4/nd.d {
+			c.low[last] = 0
 		}
-		unit := make([]float64, n)
-		for i := range v {
-			unit[i] = v[i] / length
-		}
-		c.shapes = append(c.shapes, unit)
+		c.low[last], c.high[last] = math.Min(c.low[last], length), math.Max(c.high[last], length)
 	}
-	padded := append([][]float64(nil), c.shapes...)
-	for len(padded)%4 != 0 {
-		padded = append(padded, padded[0])
+	for j := range c.low {
+		c.low[j] /= gridLength
+		c.high[j] *= gridLength
 	}
-	c.fours = fours(padded, n)
+	c.quads = quads(c.shapes, n)
 	return c
+}
+
+// find returns a shape whose product with v is at least least, looked for from the
+// last one found, or len(c.shapes).
+func (c *cover) find(v []float64, least float64, last int) int {
+	n := len(c.shapes)
+	for step := range n {
+		j := last + step
+		if j >= n {
+			j -= n
+		}
+		if dot(c.shapes[j], v) >= least {
+			return j
+		}
+	}
+	return n
 }
 
 // grid is the fine grid of shapes of newCover.
@@ -425,36 +399,61 @@ func (d *resampleDesign) grid() []node {
 	}
 }
 
-// most is the largest product with a unit shape that still rules out that any shape
-// leaves less than limit of a resample with z·z = zz. decided is true where no
-// product matters: most is then +Inf if that is ruled out, -Inf if it is not.
-func (c *cover) most(zz, limit float64) (most float64, decided bool) {
-	need := (zz - limit) / zz
-	if !(need > 0) {
-		return math.Inf(-1), true
-	}
-	if need >= 1 {
-		return math.Inf(1), true
-	}
-	// cos(angle - slack) <= √need for every shape.
-	cn, sn := math.Sqrt(need), math.Sqrt(1-need)
-	if cn <= c.sin { // some shape may be nearer than the slack from anywhere
-		return math.Inf(-1), true
-	}
-	return (cn*c.cos - sn*c.sin) * math.Sqrt(zz), false
+// bound says what the shapes near one of a cover can leave of a resample.
+type bound struct {
+	length   float64 // of the resample
+	limit    float64
+	most     float64 // largest product with a unit shape that needs no closer look
+	cos, sin float64
 }
 
-// excludes reports whether no shape can leave less than limit of the resample z·sign
+// against prepares the question whether no shape leaves less than limit of a resample
+// with z·z = zz. decided is true where that needs no products, and excluded is then
+// the answer.
+func (c *cover) against(zz, limit float64) (b bound, decided, excluded bool) {
+	need := (zz - limit) / zz
+	if !(need > 0) {
+		return b, true, false
+	}
+	if need >= 1 {
+		return b, true, true
+	}
+	// A shape at the angle φ, of the best length, leaves zz sin²φ: cos(φ - slack)
+	// > √need is what is to be ruled out.
+	cn, sn := math.Sqrt(need), math.Sqrt(1-need)
+	b = bound{length: math.Sqrt(zz), limit: limit, cos: c.cos, sin: c.sin}
+	b.most = (cn*c.cos - sn*c.sin) * b.length
+	return b, false, false
+}
+
+// beaten reports whether a shape within the slack of a unit shape with the product p
+// and with a length between low and high may leave less than the limit.
+func (b *bound) beaten(p, low, high float64) bool {
+	if p <= b.most {
+		return false
+	}
+	cos := 1.0 // of the least angle
+	if q := p / b.length; q < b.cos {
+		cos = q*b.cos + math.Sqrt(1-q*q)*b.sin
+	}
+	best := b.length * cos
+	length := math.Max(low, math.Min(high, best))
+	return b.length*b.length-length*(2*best-length) < b.limit
+}
+
+// excludes reports whether no shape leaves less than limit of the resample z·sign
 // with z·z = zz.
 func (c *cover) excludes(z []float64, sign, zz, limit float64) bool {
-	most, decided := c.most(zz, limit)
+	b, decided, excluded := c.against(zz, limit)
 	if decided {
-		return math.IsInf(most, 1)
+		return excluded
 	}
-	for _, g := range c.fours {
-		a0, a1, a2, a3 := dot4(z, g)
-		if sign*a0 > most || sign*a1 > most || sign*a2 > most || sign*a3 > most {
-			return false
+	for k := 0; k < len(c.shapes); k += 4 {
+		p := dot4(z, c.quads[k/4*len(z):])
+		for j, pj := range p[:min(4, len(c.shapes)-k)] {
+			if b.beaten(sign*pj, c.low[k+j], c.high[k+j]) {
+				return false
+			}
 		}
 	}
 	return true

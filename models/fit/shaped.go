@@ -86,11 +86,13 @@ func (p *plan) fit(s *Sample, c models.Shaped) *Result {
 // canonical turns the kernel's (c, d) into the canonical parameters of the curve.
 func (p *plan) canonical(s *Sample, curve models.Shaped, sign, c, d float64, out []float64) {
 	// The linear part is what y - shape leaves in the span of the basis.
+	n := len(p.rows)
+	shape, slopes := make([]float64, n), make([]float64, n)
+	p.tab.shape(c, d, p.rows, shape, slopes)
 	var a1, a2 float64
 	for i := range p.rows {
 		r := &p.rows[i]
-		v, _ := p.tab.at(c + d*r.u)
-		rest := (sign*s.Y[i] - v) * r.w
+		rest := sign*s.Y[i]*r.w - shape[i]
 		a1 += r.p1 * rest
 		a2 += r.p2 * rest
 	}

@@ -141,11 +141,11 @@ func (f *shapedProfile) prepare(s *Sample, r *Result) {
 	f.d = f.sign * (other[1] - this[1]) * full.width
 	f.c = f.sign*(other[0]-this[0]) - f.d*full.shift(s.TRef)
 
-	full.makeNodes()
+	full.layNodes()
 	p := &plan{
 		tab: full.tab, t: full.t, tc: full.tc, width: full.width, low: full.low, high: full.high,
 		maxD: full.maxD, distinct: full.distinct, rows: make([]basisRow, n),
-		nodes: append([]node(nil), full.nodes...), shapes: make([]float64, len(full.shapes)),
+		nodes: full.nodes,
 	}
 	var length float64
 	for i, b := range full.rows {
@@ -194,8 +194,8 @@ func (f *shapedProfile) prepare(s *Sample, r *Result) {
 		f.k.floor = math.Max(f.k.floor, math.Abs(s.Y[i]*b.w))
 	}
 	f.k.floor = float64(n) * square(0x1p-53*f.k.floor)
-	projectOut(p.rows, f.data)
-	projectOut(p.rows, f.unit)
+	projectOutTwice(p.rows, f.data)
+	projectOutTwice(p.rows, f.unit)
 }
 
 // load holds the parameter at theta and returns the sum of squares with no other path.

@@ -16,7 +16,9 @@ const (
 	softplusEnd     = 37
 )
 
-type softplusNode [8]float64
+// softplusNode holds the coefficients of L in its first eight places and those of
+// -dL/da in the rest.
+type softplusNode [16]float64
 
 type softplusTable [softplusEnd*softplusPerUnit + 1]softplusNode
 
@@ -46,27 +48,33 @@ var softplusNodes = sync.OnceValue(func() *softplusTable {
 				v = (v + deriv[n][j]) * p
 			}
 			t[i][n] = v / factorial
+			t[i][7+n] = -float64(n) * t[i][n]
 		}
 	}
 	return t
 })
 
-// at returns ln(1 + e^t) and its slope 1/(1 + e^-t).
-func (tab *softplusTable) at(t float64) (value, slope float64) {
-	a := math.Abs(t)
-	if !(a < softplusEnd) {
-		if t > 0 {
-			return t, 1
+// shape fills value with w·s(c + d u), s = ln(1 + e^t), and slope with ds/dt for all
+// points.
+func (tab *softplusTable) shape(c, d float64, rows []basisRow, value, slope []float64) {
+	value, slope = value[:len(rows)], slope[:len(rows)]
+	for i := range rows {
+		r := &rows[i]
+		t := c + d*r.u
+		a := math.Abs(t)
+		var v, s float64
+		if a < softplusEnd {
+			j := int(a*softplusPerUnit + 0.5)
+			h := a - float64(j)*(1.0/softplusPerUnit)
+			q := &tab[j]
+			h2 := h * h
+			v = (q[0] + h*q[1]) + h2*((q[2]+h*q[3])+h2*((q[4]+h*q[5])+h2*q[6]))
+			s = (q[8] + h*q[9]) + h2*((q[10]+h*q[11])+h2*(q[12]+h*q[13]))
 		}
-		return 0, 0
+		if t > 0 {
+			v += t
+			s = 1 - s
+		}
+		value[i], slope[i] = v*r.w, s
 	}
-	i := int(a*softplusPerUnit + 0.5)
-	h := a - float64(i)/softplusPerUnit
-	c := &tab[i]
-	value = c[0] + h*(c[1]+h*(c[2]+h*(c[3]+h*(c[4]+h*(c[5]+h*c[6])))))
-	slope = -(c[1] + h*(2*c[2]+h*(3*c[3]+h*(4*c[4]+h*(5*c[5]+h*6*c[6])))))
-	if t > 0 {
-		return t + value, 1 - slope
-	}
-	return value, slope
 }
