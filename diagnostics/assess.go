@@ -21,17 +21,10 @@ import (
 // The same set and options give the same assessment to the last byte, whatever the
 // number of workers.
 func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, error) {
-	if err := opt.Check(); err != nil {
-		return nil, fmt.Errorf("diagnostics: %w", err)
-	}
-	tolerance, err := ParseTolerance(opt.Tolerance)
+	a, err := newAssessor(set, opt)
 	if err != nil {
 		return nil, err
 	}
-	if opt.Models == nil {
-		opt.Models = models.Default()
-	}
-	a := &assessor{set: set, opt: opt, tolerance: tolerance}
 	a.notices()
 	if err := a.fit(); err != nil {
 		return nil, err
@@ -65,16 +58,34 @@ type assessor struct {
 	untestable string // why there is no exponent test, or ""
 	more       int    // how many more temperatures it needs
 	exponent   ExponentTest
-	pointwise  *Pointwise
-	second     *SecondBarrierTest
-	secondRun  *SecondBarrier
-	rule       Rule
-	verdict    Verdict
-	tEff       float64
+	// pointwiseTest is the exponent test on single points where the verdict uses
+	// means; pointwise is its place in the document.
+	pointwiseTest *ExponentTest
+	pointwise     *Pointwise
+	second        *SecondBarrierTest
+	secondRun     *SecondBarrier
+	rule          Rule
+	verdict       Verdict
+	tEff          float64
 
 	resampling *Resampling
 	changes    []float64
 	findings   []Finding
+}
+
+// newAssessor checks the options and fills in what they leave open.
+func newAssessor(set *dataset.Set, opt Options) (*assessor, error) {
+	if err := opt.Check(); err != nil {
+		return nil, fmt.Errorf("diagnostics: %w", err)
+	}
+	tolerance, err := ParseTolerance(opt.Tolerance)
+	if err != nil {
+		return nil, err
+	}
+	if opt.Models == nil {
+		opt.Models = models.Default()
+	}
+	return &assessor{set: set, opt: opt, tolerance: tolerance}, nil
 }
 
 // find records a finding; severity and cure come from the catalogue.
@@ -251,6 +262,23 @@ func (a *assessor) rank() {
 
 // test runs the exponent test and the second-barrier test.
 func (a *assessor) test() {
+	a.testExponents()
+	if a.pointwiseTest != nil {
+		t := a.pointwiseTest
+		a.pointwise = &Pointwise{NewEstimate(t.Exponent), NewEstimate(t.Change), Real(t.PValue), Real(t.PBand)}
+	}
+	if a.second = a.opt.Designs.test(a.data.sample, a.straight, nil); a.second != nil {
+		a.secondRun = a.second.Run()
+	}
+	if a.data.temperatureShare > 0 && !a.model.KnownSigma() && a.straight.Sigma < a.data.temperatureShare {
+		a.find("scatter-below-thermometer", fmt.Sprintf("u(T) alone makes ln k uncertain by %.2g, more than the points scatter (%.2g)", a.data.temperatureShare, a.straight.Sigma), nil,
+			map[string]Real{"from_temperature": Real(a.data.temperatureShare), "scatter": Real(a.straight.Sigma)})
+	}
+}
+
+// testExponents runs the exponent test, on means and on single points where there
+// are both, and sets what the verdict needs beside it.
+func (a *assessor) testExponents() {
 	s := a.data.sample
 	low, high := s.Range()
 	a.tEff = effectiveTemperatureOf(s, a.straight)
@@ -266,15 +294,8 @@ func (a *assessor) test() {
 	if a.data.replicated() && a.data.basis == BasisMeans {
 		if f := fit.Fit(a.data.single, models.PowerPrefactor{}); f.Usable() && f.Nu >= 1 {
 			t := a.testExponent(a.data.single, f)
-			a.pointwise = &Pointwise{NewEstimate(t.Exponent), NewEstimate(t.Change), Real(t.PValue), Real(t.PBand)}
+			a.pointwiseTest = &t
 		}
-	}
-	if a.second = NewSecondBarrierTest(s, a.straight, nil); a.second != nil {
-		a.secondRun = a.second.Run()
-	}
-	if a.data.temperatureShare > 0 && !a.model.KnownSigma() && a.straight.Sigma < a.data.temperatureShare {
-		a.find("scatter-below-thermometer", fmt.Sprintf("u(T) alone makes ln k uncertain by %.2g, more than the points scatter (%.2g)", a.data.temperatureShare, a.straight.Sigma), nil,
-			map[string]Real{"from_temperature": Real(a.data.temperatureShare), "scatter": Real(a.straight.Sigma)})
 	}
 }
 

@@ -145,19 +145,23 @@ func (a *assessor) curvature() Curvature {
 
 // localEnergies are E_loc at both ends of the range by power-prefactor, in kJ/mol.
 func (a *assessor) localEnergies() (atMin, atMax Estimate) {
-	if a.power.Status != fit.Converged || a.power.Cov == nil {
-		return NewEstimate(fit.Unknown()), NewEstimate(fit.Unknown())
-	}
 	low, high := a.data.sample.Range()
-	at := func(t float64) Estimate {
-		e, jac := make([]float64, 1), make([]float64, len(a.power.P))
-		a.power.Curve.ELoc(a.power.TRef, []float64{t}, a.power.P, e, jac)
-		for i := range jac {
-			jac[i] /= 1000
-		}
-		return NewEstimate(a.power.Interval(jac, e[0]/1000, a.opt.Confidence))
+	return NewEstimate(LocalEnergy(a.power, low, a.opt.Confidence)), NewEstimate(LocalEnergy(a.power, high, a.opt.Confidence))
+}
+
+// LocalEnergy is the local activation energy E_loc(T) of a fit with its interval, in
+// kJ/mol, by the delta method; t in K. It is unknown where the fit has no
+// covariance.
+func LocalEnergy(r *fit.Result, t, confidence float64) fit.Estimate {
+	if r.Status != fit.Converged || r.Cov == nil {
+		return fit.Unknown()
 	}
-	return at(low), at(high)
+	e, jac := make([]float64, 1), make([]float64, len(r.P))
+	r.Curve.ELoc(r.TRef, []float64{t}, r.P, e, jac)
+	for i := range jac {
+		jac[i] /= 1000
+	}
+	return r.Interval(jac, e[0]/1000, confidence)
 }
 
 // sources lists the sources of the used points in order of appearance.

@@ -47,6 +47,9 @@ type Options struct {
 	PublishStyle         string   // molar, kelvin, evaluated, electronvolt; "" decides by unit
 	Selection            []string // how rows were left out, for the record
 	Version              string   // of the program, for the record
+	// Designs, if not nil, keeps the prepared second-barrier tests of designs, for
+	// assessments of many data sets of one design, as in simulations.
+	Designs *DesignCache
 	// Progress, if not nil, is told how many resamples are done.
 	Progress func(done, total int)
 }

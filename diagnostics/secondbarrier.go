@@ -47,7 +47,13 @@ type SecondBarrierTest struct {
 	s        *fit.Sample
 	nuisance [][]float64
 	fitted   []float64 // k of the straight line, where errors are additive in k; else nil
+	cache    *DesignCache
+	*secondBarrierDesign
+}
 
+// secondBarrierDesign is what depends on temperatures, weights and nuisance columns
+// alone.
+type secondBarrierDesign struct {
 	root  []float64   // 1/sqrt(V)
 	basis [][]float64 // orthonormal: what is projected out
 	span  [][]float64 // orthonormal: what the shapes span after that
@@ -70,7 +76,7 @@ type SecondBarrierTest struct {
 // the test cannot be run: no degree of freedom would be left (N - 3 < 1).
 func NewSecondBarrierTest(s *fit.Sample, straight *fit.Result, nuisance [][]float64) *SecondBarrierTest {
 	n := s.Len()
-	b := &SecondBarrierTest{s: s, nuisance: nuisance, root: make([]float64, n)}
+	b := &SecondBarrierTest{s: s, nuisance: nuisance, secondBarrierDesign: &secondBarrierDesign{root: make([]float64, n)}}
 	for i, v := range s.V {
 		b.root[i] = 1 / math.Sqrt(v)
 	}
@@ -316,13 +322,28 @@ func (b *SecondBarrierTest) Found(y, scratch []float64) bool {
 	return up > b.critical[0]
 }
 
+// found reports whether the sample itself has p < 0.05; false where there is no
+// scatter to test against.
+func (b *SecondBarrierTest) found() bool {
+	y, scratch := b.values(), make([]float64, b.ScratchLen())
+	if _, _, rss := b.cosines(y, scratch); noScatter(b.s, rss) {
+		return false
+	}
+	return b.Found(y, scratch)
+}
+
+// values are those of the sample: ln k, or k where errors are additive in k.
+func (b *SecondBarrierTest) values() []float64 {
+	if b.s.Model.InK() {
+		return b.s.K
+	}
+	return b.s.Y
+}
+
 // Run tests the sample, and again without its hottest and its coldest temperature.
 // It returns nil where there is no scatter to test against.
 func (b *SecondBarrierTest) Run() *SecondBarrier {
-	y := b.s.Y
-	if b.s.Model.InK() {
-		y = b.s.K
-	}
+	y := b.values()
 	up, down, rss := b.cosines(y, make([]float64, b.ScratchLen()))
 	if noScatter(b.s, rss) || math.IsNaN(up) {
 		return nil
@@ -375,7 +396,7 @@ func (b *SecondBarrierTest) without(t float64) float64 {
 		}
 		straight = &fit.Result{Status: fit.Converged, Fitted: lnK}
 	}
-	o := NewSecondBarrierTest(&s, straight, nuisance)
+	o := b.cache.test(&s, straight, nuisance)
 	if o == nil {
 		return math.NaN()
 	}
