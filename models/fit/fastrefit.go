@@ -228,7 +228,8 @@ func (r *fastRefitter) fitShaped(w *workspace, sc *shapedCandidate, best float64
 	}
 	if r.screens {
 		limit := r.limit(sc.index, best)
-		if r.coarse.excludes(w.data, sc.sign, w.zz, limit) || r.fine.excludes(w.data, sc.sign, w.zz, limit) {
+		coarse, fine := r.covers()
+		if coarse.excludes(w.data, sc.sign, w.zz, limit) || fine.excludes(w.data, sc.sign, w.zz, limit) {
 			return math.Inf(1), HowScreened
 		}
 	}
@@ -400,8 +401,11 @@ func (r *fastRefitter) fitTaken(w *workspace, sc *shapedCandidate, best float64)
 			return rss, HowWarm
 		}
 	}
-	if r.screens && r.excludesTaken(r.fine, w, sc.sign, r.limit(sc.index, best)) {
-		return math.Inf(1), HowScreened
+	if r.screens {
+		_, fine := r.covers()
+		if r.excludesTaken(fine, w, sc.sign, r.limit(sc.index, best)) {
+			return math.Inf(1), HowScreened
+		}
 	}
 	// The stored shapes differ from those of this projector by lines alone.
 	n := len(r.resampleDesign.rows)

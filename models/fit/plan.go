@@ -267,10 +267,13 @@ const (
 type search struct {
 	rss   []float64 // at the nodes
 	start [coldStarts]normal
+	most  int // starts to use
 	trial normal
 }
 
-func (p *plan) newSearch() *search { return &search{rss: make([]float64, len(p.nodes))} }
+func (p *plan) newSearch() *search {
+	return &search{rss: make([]float64, len(p.nodes)), most: coldStarts}
+}
 
 // cold is the global fit of the data in k.z: the best minimum found, converged to a
 // decrement of tol·RSS. ok is false where nothing improves on the straight line.
@@ -299,10 +302,10 @@ func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *norma
 		for at > 0 && s.rss[pick[at-1]] > v {
 			at--
 		}
-		if at == coldStarts {
+		if at == s.most {
 			continue
 		}
-		picked = min(picked+1, coldStarts)
+		picked = min(picked+1, s.most)
 		copy(pick[at+1:picked], pick[at:picked-1])
 		pick[at] = j
 	}

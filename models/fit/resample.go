@@ -2,6 +2,7 @@ package fit
 
 import (
 	"math"
+	"sync"
 
 	"onebarrier/models"
 )
@@ -29,8 +30,9 @@ type resampleDesign struct {
 	linear     []linearCandidate
 	shaped     []shapedCandidate
 	columns    []quad // directions and warm-start columns
-	coarse     *cover
-	fine       *cover
+
+	// covers are made when first needed: most identified sets never ask for them.
+	covers func() (coarse, fine *cover)
 }
 
 // term is a whitened column of a linear curve: scale·direction + w·(a + b u).
@@ -93,11 +95,8 @@ func newResampleDesign(s *Sample, curves []models.Curve, fits []*Result, crit cr
 	d.interleave()
 	if len(d.shaped) > 0 {
 		d.makeNodes()
-		if crit.screens {
-			d.coarse = d.newCover(coarseSlack)
-			d.fine = d.newCover(fineSlack)
-		}
 	}
+	d.covers = sync.OnceValues(d.newCovers)
 	return d
 }
 
@@ -315,8 +314,9 @@ type cover struct {
 	shapes    [][]float64
 	low, high []float64
 	quads     []quad
-	slack     float64
 	cos, sin  float64 // of the slack
+	near      float64 // least cosine at which a shape of the grid counts as covered
+	last      int     // shape last used
 }
 
 const (
@@ -328,15 +328,13 @@ const (
 	gridLength = 1.5
 )
 
-// newCover covers a fine grid of shapes: d in steps of √2, crossovers every 0.35/d,
-// at least twelve to a gap of the design, from 8/d below to 8/d above it, where what
-// is left of the shape is an exponential of any length.
-func (d *resampleDesign) newCover(slack float64) *cover {
-	c := &cover{slack: slack, cos: math.Cos(slack), sin: math.Sin(slack)}
-	near := math.Cos(slack - gridAngle)
+// newCovers covers a fine grid of shapes, coarsely and finely: d in steps of √2,
+// crossovers every 0.35/d, at least twelve to a gap of the design, from 8/d below to
+// 8/d above it, where what is left of the shape is an exponential of any length.
+func (d *resampleDesign) newCovers() (coarse, fine *cover) {
+	coarse, fine = newCover(coarseSlack), newCover(fineSlack)
 	n := len(d.rows)
 	v, slope := make([]float64, n), make([]float64, n)
-	last := 0
 	for _, nd := range d.grid() {
 		d.tab.shape(nd.c, nd.d, d.rows, v, slope)
 		whole := math.Sqrt(dot(v, v))
@@ -345,45 +343,60 @@ func (d *resampleDesign) newCover(slack float64) *cover {
 		if !(length > 1e-10*whole) {
 			continue
 		}
-		last = c.find(v, near*length, last)
-		if last == len(c.shapes) {
-			unit := make([]float64, n)
-			for i := range v {
-				unit[i] = v[i] / length
-			}
-			c.shapes = append(c.shapes, unit)
-			c.low, c.high = append(c.low, length), append(c.high, length)
-		}
-		if x := -nd.c / nd.d; x < d.low-4/nd.d || x > d.high+4/nd.d {
-			c.low[last] = 0
-		}
-		c.low[last], c.high[last] = math.Min(c.low[last], length), math.Max(c.high[last], length)
+		x := -nd.c / nd.d
+		tail := x < d.low-4/nd.d || x > d.high+4/nd.d
+		coarse.include(v, length, tail)
+		fine.include(v, length, tail)
 	}
-	for j := range c.low {
-		c.low[j] /= gridLength
-		c.high[j] *= gridLength
+	for _, c := range []*cover{coarse, fine} {
+		for j := range c.low {
+			c.low[j] /= gridLength
+			c.high[j] *= gridLength
+		}
+		c.quads = quads(c.shapes, n)
 	}
-	c.quads = quads(c.shapes, n)
-	return c
+	return coarse, fine
 }
 
-// find returns a shape whose product with v is at least least, looked for from the
-// last one found, or len(c.shapes).
-func (c *cover) find(v []float64, least float64, last int) int {
+func newCover(slack float64) *cover {
+	return &cover{cos: math.Cos(slack), sin: math.Sin(slack), near: math.Cos(slack - gridAngle)}
+}
+
+// include sees to it that v of the given length is covered. A tail can have any
+// length below that.
+func (c *cover) include(v []float64, length float64, tail bool) {
+	j := c.find(v, c.near*length)
+	if j == len(c.shapes) {
+		unit := make([]float64, len(v))
+		for i := range v {
+			unit[i] = v[i] / length
+		}
+		c.shapes = append(c.shapes, unit)
+		c.low, c.high = append(c.low, length), append(c.high, length)
+	}
+	c.last = j
+	if tail {
+		c.low[j] = 0
+	}
+	c.low[j], c.high[j] = math.Min(c.low[j], length), math.Max(c.high[j], length)
+}
+
+// find returns a shape whose product with v is at least least, looked for outward
+// from the last one used, or len(c.shapes): the grid's neighbours are alike.
+func (c *cover) find(v []float64, least float64) int {
 	n := len(c.shapes)
 	for step := range n {
-		j := last + step
-		if j >= n {
-			j -= n
+		if j := c.last - step; j >= 0 && dot(c.shapes[j], v) >= least {
+			return j
 		}
-		if dot(c.shapes[j], v) >= least {
+		if j := c.last + 1 + step; j < n && dot(c.shapes[j], v) >= least {
 			return j
 		}
 	}
 	return n
 }
 
-// grid is the fine grid of shapes of newCover.
+// grid is the fine grid of shapes of newCovers.
 func (d *resampleDesign) grid() []node {
 	var g []node
 	gap := d.gaps()

@@ -180,6 +180,7 @@ func (f *shapedProfile) prepare(s *Sample, r *Result) {
 		f.k.up = 0
 	}
 	f.search = p.newSearch()
+	f.search.most = profileStarts
 	f.data, f.unit = make([]float64, n), make([]float64, n)
 	// This path's line: θ U + const, or θ + const·(u - u₀).
 	for i, b := range p.rows {
@@ -209,8 +210,12 @@ func (f *shapedProfile) load(theta float64) (alone float64) {
 	return alone
 }
 
-// profileTol is the relative accuracy of the profiled sum of squares.
-const profileTol = 1e-13
+const (
+	// profileTol is the relative accuracy of the profiled sum of squares.
+	profileTol = 1e-13
+	// profileStarts is the number of starts of the search that confirms an end.
+	profileStarts = 5
+)
 
 // at returns S(θ) from a start, and leaves the point in f.cur.
 func (f *shapedProfile) at(theta, c, d float64) float64 {
