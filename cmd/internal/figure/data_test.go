@@ -277,6 +277,13 @@ func TestChangeCountsEveryResample(t *testing.T) {
 	if d.Counts[3] != in {
 		t.Errorf("bar 3 holds %d, want %d", d.Counts[3], in)
 	}
+	a.ChangeOfE = nil
+	for i := range 1000 {
+		a.ChangeOfE = append(a.ChangeOfE, float64(i))
+	}
+	if d := NewChange(a); d.Beyond != 0 {
+		t.Errorf("%d of 0..999 beyond an axis that holds all: the last bar has its upper edge", d.Beyond)
+	}
 	open := "upper"
 	a.Curvature.EChange.Open = &open
 	if d := NewChange(a); !math.IsInf(d.Upper, 1) || math.IsInf(d.Lower, 0) {
@@ -335,6 +342,14 @@ func TestUnusableFitIsNotDrawn(t *testing.T) {
 	if d.Lines[0].Lower != nil || d.Lines[0].Upper != nil {
 		t.Error("band drawn from a covariance that is no number")
 	}
+}
+
+func TestNoBandWithoutDegreesOfFreedom(t *testing.T) {
+	if q := quantile(&fit.Result{Model: fit.Relative}, 0.95); !math.IsNaN(q) {
+		t.Errorf("quantile %g with no degrees of freedom, want NaN", q)
+	}
+	// qt(.975, 4) of R.
+	near(t, "t quantile", quantile(&fit.Result{Model: fit.Scaled, Nu: 4}, 0.95), 2.776445, 1e-6)
 }
 
 func TestMeansAndSources(t *testing.T) {
