@@ -2,6 +2,7 @@ package diagnostics
 
 import (
 	"math"
+	"sync"
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
@@ -222,28 +223,38 @@ func detectable(se float64, nu int, known bool, confidence float64) fit.Estimate
 	return e
 }
 
+// shifts remembers detectableShift by degrees of freedom: it depends on nothing else.
+var shifts sync.Map
+
 // detectableShift is the shift, in standard errors, at which a two-sided test at
 // 5 % has 80 % power.
 func detectableShift(nu int, known bool) float64 {
-	crit := criticalValue(1-detectableLevel, nu, known)
-	power := func(d float64) float64 { return studentPower(crit, d, float64(nu)) }
 	if known {
-		power = func(d float64) float64 {
+		nu = 0
+	}
+	if d, ok := shifts.Load(nu); ok {
+		return d.(float64)
+	}
+	crit := criticalValue(1-detectableLevel, nu, known)
+	power := func(d float64) float64 {
+		if known {
 			return (math.Erfc((crit-d)/math.Sqrt2) + math.Erfc((crit+d)/math.Sqrt2)) / 2
 		}
+		return studentPower(crit, d, float64(nu))
 	}
-	// The power rises with d; bisect to the last bit that matters.
+	// The power rises with d: bracket it, then bisect.
 	low, high := 0.0, crit
 	for power(high) < detectablePower {
 		low, high = high, 2*high
 	}
-	for high-low > 1e-12*high {
+	for high-low > 1e-13*high {
 		if mid := (low + high) / 2; power(mid) < detectablePower {
 			low = mid
 		} else {
 			high = mid
 		}
 	}
+	shifts.Store(nu, (low+high)/2)
 	return (low + high) / 2
 }
 

@@ -1,0 +1,130 @@
+package diagnostics
+
+import (
+	"math"
+	"math/rand/v2"
+	"testing"
+
+	"onebarrier/models/fit"
+	"onebarrier/models/reference"
+)
+
+func testNamed(t testing.TB, tests []Adequacy, name string) Adequacy {
+	t.Helper()
+	for _, a := range tests {
+		if a.Test == name {
+			return a
+		}
+	}
+	t.Fatalf("no %s test among %v", name, tests)
+	return Adequacy{}
+}
+
+// Lack of fit over pure error against R (anova of lm against factor(T)), from
+// points and from temperature means alike: 1 % rejects the line, not the power
+// curve.
+func TestPureErrorAgainstR(t *testing.T) {
+	g := golden(t)
+	points := synthetic(t, "s6_replicates", fit.Relative)
+	pe := NewPureError(points)
+	reference.Close(t, "SS of pure error", pe.SS, g("s6_replicates", "pure_error", "sspe"), 1e-10)
+	if float64(pe.DF) != g("s6_replicates", "pure_error", "dfpe") || pe.Temperatures != 7 {
+		t.Errorf("degrees of freedom: %+v", pe)
+	}
+	for _, onMeans := range []bool{false, true} {
+		s := points
+		if onMeans {
+			s = means(t, points)
+		}
+		for name, r := range map[string]string{"straight": "LOF_arr", "power-prefactor": "LOF_mod"} {
+			tests, adequate := CheckAdequacy(s, fitNamed(t, s, name), pe, onMeans)
+			a := testNamed(t, tests, TestPureError)
+			reference.Close(t, name+" F", float64(a.Statistic), g("s6_replicates", r, "F"), 1e-8)
+			reference.Close(t, name+" p", float64(a.PValue), g("s6_replicates", r, "p"), 1e-8)
+			if adequate == nil || *adequate != (name == "power-prefactor") {
+				t.Errorf("%s: adequate is wrong", name)
+			}
+		}
+	}
+}
+
+// Chi-squared against R pchisq, where there are no repeats and uncertainties are
+// stated; nothing decides where there are neither.
+func TestChiSquaredAgainstR(t *testing.T) {
+	g := golden(t)
+	s := synthetic(t, "s5_hetero", fit.Stated)
+	tests, adequate := CheckAdequacy(s, fitNamed(t, s, "straight"), NewPureError(s), false)
+	a := testNamed(t, tests, TestChiSquared)
+	reference.Close(t, "χ²", float64(a.Statistic), g("s5_hetero", "arr", "chi2"), 1e-10)
+	reference.Close(t, "p", float64(a.PValue), g("s5_hetero", "arr", "p_chi2"), 1e-9)
+	if adequate == nil || !*adequate {
+		t.Error("χ² of 6 on 13 is adequate")
+	}
+	s = synthetic(t, "s1_straight", fit.Relative)
+	tests, adequate = CheckAdequacy(s, fitNamed(t, s, "straight"), NewPureError(s), false)
+	if adequate != nil || len(tests) != 1 || tests[0].Test != TestRuns {
+		t.Errorf("without repeats or u(k) nothing can decide: %v", tests)
+	}
+}
+
+// Counts of runs against R tseries::runs.test.
+func TestRunsAgainstR(t *testing.T) {
+	g := golden(t)
+	for _, set := range []string{"s1_straight", "s2_tn_curved", "s3_parallel", "s4_series", "s5_hetero", "s6_replicates", "s7_vft", "s8_tiny6"} {
+		model := fit.Relative
+		if set == "s5_hetero" {
+			model = fit.Scaled
+		}
+		s := synthetic(t, set, model)
+		for name, r := range map[string]string{"straight": "runs_arr", "power-prefactor": "runs_mod"} {
+			runs, p := runsTest(s, fitNamed(t, s, name))
+			if runs != g(set, r, "runs") {
+				t.Errorf("%s %s: %g runs, want %g", set, name, runs, g(set, r, "runs"))
+			}
+			if !(p > 0 && p <= 1) {
+				t.Errorf("%s %s: p = %g", set, name, p)
+			}
+		}
+	}
+}
+
+// The null of the runs test on straight data: P(p <= α) must not exceed α. And with
+// independent signs, which a fit of one parameter to many points nearly leaves, it
+// is the exact Wald-Wolfowitz distribution averaged over the number of signs.
+func TestRunsNull(t *testing.T) {
+	s := sampleOf(t, fit.Relative, span(280, 340, 8), make([]float64, 8), nil)
+	rng := rand.New(rand.NewPCG(5, 5))
+	const sets = 300
+	var at10 int
+	for range sets {
+		lineNoise(rng, s, 0.03, s.Y)
+		if _, p := runsTest(s, fitNamed(t, s, "straight")); p <= 0.10 {
+			at10++
+		}
+	}
+	if rate := float64(at10) / sets; !(rate <= 0.10+4*math.Sqrt(0.09/sets)) {
+		t.Errorf("p <= 0.10 in %.3f of straight sets", rate)
+	}
+}
+
+// Beyond runsExact the normal null of Wald and Wolfowitz: R's runs.test normal
+// approximation with its continuity correction, formula (R-mu+0.5)/sd.
+func TestRunsOfManyPoints(t *testing.T) {
+	n := 500
+	s := sampleOf(t, fit.Relative, span(280, 340, n), make([]float64, n), nil)
+	lineNoise(rand.New(rand.NewPCG(9, 1)), s, 0.03, s.Y)
+	f := fitNamed(t, s, "straight")
+	runs, p := runsTest(s, f)
+	var above, below float64
+	for _, r := range f.Residuals {
+		if r > 0 {
+			above++
+		} else {
+			below++
+		}
+	}
+	total := above + below
+	mu := 1 + 2*above*below/total
+	variance := 2 * above * below * (2*above*below - total) / (total * total * (total - 1))
+	reference.Close(t, "p", p, math.Erfc(-(runs-mu+0.5)/math.Sqrt(2*variance))/2, 1e-10)
+}
