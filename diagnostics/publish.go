@@ -1,0 +1,691 @@
+package diagnostics
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"gonum.org/v1/gonum/unit/constant"
+
+	"onebarrier/models"
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+)
+
+// The styles of what to publish, one for each trade.
+const (
+	StyleMolar        = "molar"        // A, E_a, ΔH‡, ΔS‡, ΔG‡
+	StyleKelvin       = "kelvin"       // A, E/R in K, k(T_ref)
+	StyleEvaluated    = "evaluated"    // and f, g, Δlg k, Δ(E/R)
+	StyleElectronvolt = "electronvolt" // D₀, lg D₀, E in eV
+)
+
+// styleOf is the style in which a quantity is usually published.
+func styleOf(q dataset.Quantity) string {
+	switch {
+	case q.Diffusion:
+		return StyleElectronvolt
+	case q.PerMolecule:
+		return StyleKelvin
+	}
+	return StyleMolar
+}
+
+// energyUnit is an energy unit as it is printed: how many of it one kJ/mol is, the
+// unit of an entropy beside it with its size in J/(mol K), and what an energy must
+// be divided by to have that unit.
+type energyUnit struct {
+	name, entropy      string
+	perKJ, entropyPerJ float64
+	per                string
+}
+
+// The sizes follow from the defining constants of the SI; the thermochemical
+// calorie is 4.184 J exactly.
+var energyUnits = map[string]energyUnit{
+	"kJ/mol":   {"kJ/mol", "J/(mol K)", 1, 1, ""},
+	"kcal/mol": {"kcal/mol", "cal/(mol K)", 1 / 4.184, 1 / 4.184, ""},
+	"eV":       {"eV", "meV/K", perElectronvolt, perElectronvolt, ""},
+	"K":        {"K", "", 1000 / models.GasConstant, 1 / models.GasConstant, "/R"},
+	"cm^-1":    {"cm^-1", "cm^-1/K", perWavenumber, perWavenumber / 1000, "/hc"},
+}
+
+const (
+	perElectronvolt = 1000 / (models.Avogadro * float64(constant.ElementaryCharge))
+	perWavenumber   = 1000 / (models.Avogadro * models.Planck * float64(constant.LightSpeedInVacuum) * 100)
+)
+
+// unitOfEnergy looks an energy unit up; "" is kJ/mol.
+func unitOfEnergy(name string) energyUnit {
+	if name == "" {
+		name = "kJ/mol"
+	}
+	u, ok := energyUnits[name]
+	if !ok {
+		panic("diagnostics: unknown energy unit " + name)
+	}
+	return u
+}
+
+// withheld says why a form is not stated for a quantity, or "".
+func withheld(f models.Form, q dataset.Quantity) string {
+	switch {
+	case !f.NeedsTimeUnit:
+		return ""
+	case q.Diffusion:
+		return "withheld: a diffusion coefficient has no transition-state form"
+	case !q.Known:
+		return "withheld: ΔS‡ needs the time unit of k, and the unit of k was not understood"
+	}
+	return ""
+}
+
+// formEstimates reads a fit in every form of its curve. Standard errors follow from
+// the covariance of the fit through the form's Jacobian; intervals are those of
+// Student's t, or of the normal where σ is known. profiles, by symbol and in the
+// form's units, replace them where a profile interval was computed.
+func formEstimates(r *fit.Result, fr models.Frame, confidence float64, q dataset.Quantity, profiles map[string]fit.Estimate) []FormEstimate {
+	fr.TRef, fr.LnPerSecond = r.TRef, q.LnPerSecond
+	var out []FormEstimate
+	for _, f := range r.Curve.Forms() {
+		fe := FormEstimate{Model: f.Name, TRef: Real(math.NaN()), Withheld: withheld(f, q)}
+		if f.AtTForm {
+			fe.TRef = Real(fr.TForm)
+		}
+		if fe.Withheld == "" && r.Status != fit.Converged {
+			fe.Withheld = r.Status.String()
+			if r.Reason != "" {
+				fe.Withheld += ": " + r.Reason
+			}
+		}
+		np := r.Params()
+		values, jac := make([]float64, len(f.Params)), make([]float64, len(f.Params)*np)
+		if r.P != nil {
+			f.FromCurve(fr, r.P, values, jac)
+		}
+		for i, par := range f.Params {
+			e := fit.Unknown()
+			if fe.Withheld == "" {
+				e = r.Interval(jac[i*np:(i+1)*np], values[i], confidence)
+			}
+			if p, ok := profiles[par.Symbol]; ok && withheld(f, q) == "" {
+				e = p
+			}
+			fe.Parameters = append(fe.Parameters, ParameterEstimate{par.Symbol, par.Name, par.Unit, NewEstimate(e)})
+		}
+		if fe.Withheld == "" && r.Cov != nil {
+			fe.Covariance = propagate(jac, r.Cov, len(f.Params), np)
+		}
+		out = append(out, fe)
+	}
+	return out
+}
+
+// propagate returns J C Jᵀ for J (m x n) and C (n x n).
+func propagate(jac, cov []float64, m, n int) [][]Real {
+	out := make([][]Real, m)
+	for i := range out {
+		out[i] = make([]Real, m)
+		for j := range out[i] {
+			var s float64
+			for k := range n {
+				for l := range n {
+					s += jac[i*n+k] * cov[k*n+l] * jac[j*n+l]
+				}
+			}
+			out[i][j] = Real(s)
+		}
+	}
+	return out
+}
+
+// lnKAt is ln k at one temperature with its interval.
+func lnKAt(r *fit.Result, t, confidence float64) fit.Estimate {
+	if r.Status != fit.Converged {
+		return fit.Unknown()
+	}
+	f, jac := make([]float64, 1), make([]float64, r.Params())
+	r.Curve.LnK(r.TRef, []float64{t}, r.P, f, jac)
+	return r.Interval(jac, f[0], confidence)
+}
+
+// eLocAt is the local activation energy in kJ/mol at one temperature with its
+// interval.
+func eLocAt(r *fit.Result, t, confidence float64) fit.Estimate {
+	if r.Status != fit.Converged {
+		return fit.Unknown()
+	}
+	f, jac := make([]float64, 1), make([]float64, r.Params())
+	r.Curve.ELoc(r.TRef, []float64{t}, r.P, f, jac)
+	return scaled(r.Interval(jac, f[0], confidence), 1./1000)
+}
+
+// atReference states k at the reference temperature. Its interval is that of ln k;
+// f = exp u(ln k). g is the smallest number >= 0 for which
+// f(T) = f(T_ref) exp|g (1/T - 1/T_ref)| is nowhere in the measured range below
+// exp u(ln k(T)).
+func atReference(r *fit.Result, tRef, confidence, tMin, tMax float64) AtReference {
+	ln := lnKAt(r, tRef, confidence)
+	k := math.Exp(ln.Value)
+	g := 0.0
+	const steps = 256
+	for i := range steps + 1 {
+		// Even steps of 1/T: ln k is closest to a line there.
+		t := 1 / (1/tMin + (1/tMax-1/tMin)*float64(i)/steps)
+		d := math.Abs(1/t - 1/tRef)
+		if rise := lnKAt(r, t, confidence).StdError - ln.StdError; d > 1e-9/tRef && !(rise/d <= g) {
+			g = rise / d
+		}
+	}
+	return AtReference{
+		T: Real(tRef),
+		K: NewEstimate(fit.Estimate{
+			Value: k, StdError: k * ln.StdError, Lower: math.Exp(ln.Lower), Upper: math.Exp(ln.Upper),
+		}),
+		F: Real(math.Exp(ln.StdError)), G: Real(g),
+		Extrapolated: tRef < tMin || tRef > tMax,
+		Curve:        r.Curve.Info().Name,
+	}
+}
+
+// toPublish is what publish needs to know.
+type toPublish struct {
+	// Fit is the recommended curve, or the straight line where there is none.
+	Fit *fit.Result
+	// Eyring is the fit of linear-prefactor, whose ΔH‡ and ΔS‡ stand beside the
+	// E_a of a straight line; nil if it was not fitted.
+	Eyring     *fit.Result
+	Quantity   dataset.Quantity
+	State      State
+	TMin, TMax float64 // measured range, K
+	TEff       float64 // where the straight E is unbiased, K
+	TRef       float64 // reference temperature, K
+	Confidence float64
+	Style      string // "" decides by the quantity
+	EnergyUnit string // of the molar style; "" is kJ/mol
+	// Curvature holds ΔE and E_a at the ends by power-prefactor, which are
+	// published where the verdict is unresolved.
+	Curvature Curvature
+	Profiles  map[string]fit.Estimate // as in formEstimates
+}
+
+// publish says what to publish, in the form of the trade. Numbers are rounded to
+// the two digits of their uncertainty that the GUM asks for. So rounded, E and ln A,
+// which are almost perfectly correlated, would not give k(T) back; the line k(T)
+// therefore states the curve itself with as many digits as ln k needs.
+func publish(in toPublish) Publish {
+	if in.Style == "" {
+		in.Style = styleOf(in.Quantity)
+	}
+	w := &publisher{in: in, energy: unitOfEnergy(in.EnergyUnit)}
+	w.symbol = in.Quantity.Symbol
+	if w.symbol == "" {
+		w.symbol = "k"
+	}
+	switch in.Style {
+	case StyleKelvin, StyleEvaluated:
+		w.energy = unitOfEnergy("K")
+	case StyleElectronvolt:
+		w.energy = unitOfEnergy("eV")
+	}
+	w.fitted()
+	out := Publish{Style: in.Style, Curve: in.Fit.Curve.Info().Name, Lines: w.lines, Notes: w.notes}
+	if out.Lines == nil {
+		out.Lines = []PublishLine{}
+	}
+	return out
+}
+
+// publisher writes the lines.
+type publisher struct {
+	in     toPublish
+	energy energyUnit
+	symbol string // of the rate constant
+	lines  []PublishLine
+	notes  []string
+}
+
+func (w *publisher) note(format string, args ...any) {
+	w.notes = append(w.notes, fmt.Sprintf(format, args...))
+}
+
+// fitted writes everything.
+func (w *publisher) fitted() {
+	r := w.in.Fit
+	if r.Status != fit.Converged {
+		w.note("%s: %s; no parameters are stated", r.Status, r.Reason)
+		return
+	}
+	w.note("brackets hold the standard uncertainty of the last digits; U = 2u")
+	if r.Cov == nil {
+		w.note("uncertainties are unknown: the fit leaves no degrees of freedom")
+	}
+	switch c := r.Curve.(type) {
+	case models.FixedExponent:
+		if c.M == 1 && w.in.Style == StyleMolar {
+			w.eAt(w.in.TEff)
+			w.transitionState(r)
+			break
+		}
+		w.powerLaw(c.M)
+		if c.M == 0 && w.in.Style == StyleMolar && w.in.Eyring != nil {
+			w.transitionState(w.in.Eyring)
+		}
+	case models.PowerPrefactor:
+		w.powerLaw(math.NaN())
+		if math.Abs(r.P[2]) > 5 {
+			w.note("n beyond ±5 is no prefactor: read the change of E, or ΔC_p‡")
+		}
+		w.eAt(w.in.TMin)
+		w.eAt(w.in.TMax)
+		if w.in.Style == StyleMolar {
+			w.transitionState(r)
+		}
+	default:
+		w.form(r.Curve.Forms()[0])
+		w.eAt(w.in.TMin)
+		w.eAt(w.in.TMax)
+	}
+	if w.in.Style == StyleKelvin || w.in.Style == StyleEvaluated {
+		w.rate()
+	}
+	w.unresolved()
+	w.recovery()
+	w.add(PublishLine{Symbol: "range", Unit: "K", Estimate: NewEstimate(fit.Unknown()),
+		Text: fmt.Sprintf("%s to %s K", kelvinText(w.in.TMin), kelvinText(w.in.TMax))})
+	if r.Curve.Info().Name != "straight" {
+		w.note("intervals hold for the curve %s as given; that it was chosen from these data is not in them", r.Curve.Info().Name)
+	}
+}
+
+// fit is the estimate as package fit has it.
+func (e Estimate) fit() fit.Estimate {
+	out := fit.Estimate{Value: float64(e.Value), StdError: float64(e.StdError), Lower: float64(e.Lower), Upper: float64(e.Upper)}
+	if e.Open != nil {
+		out.Open = fit.Open(*e.Open)
+	}
+	return out
+}
+
+func (w *publisher) add(l PublishLine) { w.lines = append(w.lines, l) }
+
+// value adds a line for an estimate in its unit.
+func (w *publisher) value(symbol, unit string, e fit.Estimate, notes ...string) {
+	if u := 2 * e.StdError; u > 0 {
+		notes = append(notes, "U = "+twoDigits(u)+withUnit(unit))
+	}
+	w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: NewEstimate(e), Text: estimateText(e) + withUnit(unit), Note: joinNotes(notes...)})
+}
+
+// estimateText prints an estimate in GUM brackets, or with its interval where it
+// has no standard error.
+func estimateText(e fit.Estimate) string {
+	closed := !math.IsNaN(e.Lower) || !math.IsNaN(e.Upper)
+	if !math.IsNaN(e.StdError) || !closed || math.IsNaN(e.Value) {
+		return GUM(e.Value, e.StdError)
+	}
+	// Two digits of the wider arm decide how many decimals all three need.
+	arm := math.Max(e.Upper-e.Value, e.Value-e.Lower)
+	if math.IsNaN(arm) {
+		arm = math.Abs(e.Value) / 10
+	}
+	_, exp := split(arm, 2)
+	show := func(x float64) string {
+		if math.IsNaN(x) || math.IsInf(x, 0) {
+			return "open"
+		}
+		return fixed(x, 0, max(0, 1-exp))
+	}
+	return fmt.Sprintf("%s (%s to %s)", show(e.Value), show(e.Lower), show(e.Upper))
+}
+
+func joinNotes(notes ...string) string {
+	var out []string
+	for _, n := range notes {
+		if n != "" {
+			out = append(out, n)
+		}
+	}
+	return strings.Join(out, "; ")
+}
+
+func withUnit(unit string) string {
+	if unit == "" || unit == "1" {
+		return ""
+	}
+	return " " + unit
+}
+
+// twoDigits writes a positive number with two significant digits, whole numbers
+// without a power of ten.
+func twoDigits(x float64) string {
+	if digits, exp := split(x, 2); exp >= 2 && exp < 6 {
+		return digits + strings.Repeat("0", exp-1)
+	}
+	return significant(x, 2, "")
+}
+
+// kelvinText writes a temperature: 298.15, 308.
+func kelvinText(t float64) string {
+	return strings.TrimSuffix(strings.TrimRight(fixed(t, 0, 2), "0"), ".")
+}
+
+// energyLine adds an energy given in kJ/mol.
+func (w *publisher) energyLine(symbol string, e fit.Estimate, notes ...string) {
+	w.value(symbol+w.energy.per, w.energy.name, scaled(e, w.energy.perKJ), notes...)
+}
+
+func (w *publisher) entropyLine(symbol string, e fit.Estimate, notes ...string) {
+	w.value(symbol+w.energy.per, w.energy.entropy, scaled(e, w.energy.entropyPerJ), notes...)
+}
+
+// eAt adds the local activation energy at a temperature.
+func (w *publisher) eAt(t float64) {
+	w.energyLine("E_a", eLocAt(w.in.Fit, t, w.in.Confidence), fmt.Sprintf("at %s K", fixed(t, 0, 0)))
+}
+
+// prefactor adds A, which is log-normal: its uncertainty is a factor, and brackets
+// are printed where that factor is close enough to 1 for them to be symmetric.
+func (w *publisher) prefactor(symbol string, ln fit.Estimate, note string) {
+	unit := w.in.Quantity.Unit
+	a := math.Exp(ln.Value)
+	e := fit.Estimate{Value: a, StdError: a * ln.StdError, Lower: math.Exp(ln.Lower), Upper: math.Exp(ln.Upper)}
+	l := PublishLine{Symbol: symbol, Unit: unit, Estimate: NewEstimate(e), Note: note}
+	const symmetric = 0.1
+	if u := ln.StdError; u <= symmetric && a > 0 && !math.IsInf(a, 0) {
+		l.Text = GUM(a, a*u) + withUnit(unit)
+	} else {
+		l.Text = powerOfTen(ln.Value, u) + withUnit(unit)
+		if !math.IsNaN(u) {
+			l.Text += " ×/÷ " + significant(math.Exp(u), 3, "")
+		}
+	}
+	w.add(l)
+	w.value("lg("+symbol+overUnit(unit)+")", "1", scaled(ln, 1/math.Ln10))
+}
+
+// overUnit writes /unit, with brackets around a product.
+func overUnit(unit string) string {
+	switch {
+	case unit == "":
+		return ""
+	case strings.ContainsAny(unit, " /·"):
+		return "/(" + unit + ")"
+	}
+	return "/" + unit
+}
+
+// powerOfTen writes e^ln with the digits that an uncertainty u of ln leaves, also
+// where e^ln overflows.
+func powerOfTen(ln, u float64) string {
+	digits := 3
+	if u > 1 {
+		digits = 2
+	}
+	lg := ln / math.Ln10
+	exp := math.Floor(lg)
+	if exp >= -3 && exp < 6 {
+		return significant(math.Exp(ln), digits, "")
+	}
+	mantissa := fixed(math.Pow(10, lg-exp), 0, digits-1)
+	if strings.HasPrefix(mantissa, "10") {
+		mantissa, exp = fixed(1, 0, digits-1), exp+1
+	}
+	return join(mantissa, int(exp))
+}
+
+// powerLaw adds A, n and E of k = A (T/T_ref)^n exp(-E/RT). The exponent m is
+// fixed, or NaN where it was fitted.
+func (w *publisher) powerLaw(m float64) {
+	r := w.in.Fit
+	u := 1 / (models.GasConstant * r.TRef)
+	l := math.Log(r.TRef / w.in.TRef)
+	n, jn := m, 0.0
+	jA, jE := []float64{1, u}, []float64{0, 1. / 1000}
+	lnA, energy := r.P[0]+r.P[1]*u, r.P[1]/1000
+	if math.IsNaN(m) {
+		// E_ref = E + nRT_ref, so that ln A = a + E_ref/RT_ref - n - n ln(T_ref/T_0).
+		n, jn = r.P[2], -models.GasConstant*r.TRef/1000
+		jA, jE = append(jA, -1-l), append(jE, jn)
+		lnA -= n * (1 + l)
+		energy += n * jn
+	} else {
+		lnA -= n * l
+	}
+	a, e := "A", "E"
+	note := ""
+	switch {
+	case n != 0:
+		note = fmt.Sprintf("of A (T/%s K)^n exp(−E/RT)", kelvinText(w.in.TRef))
+	case w.in.Style == StyleMolar:
+		e = "E_a"
+	}
+	if w.in.Style == StyleElectronvolt {
+		a = w.symbol + "₀"
+	}
+	ln := r.Interval(jA, lnA, w.in.Confidence)
+	en := r.Interval(jE, energy, w.in.Confidence)
+	w.prefactor(a, ln, note)
+	if n != 0 {
+		if math.IsNaN(m) {
+			w.value("n", "1", r.Interval([]float64{0, 0, 1}, n, w.in.Confidence))
+		} else {
+			w.add(PublishLine{Symbol: "n", Unit: "1", Text: fmt.Sprint(m), Note: "fixed",
+				Estimate: Estimate{Real(m), Real(math.NaN()), Real(math.NaN()), Real(math.NaN()), nil}})
+		}
+		w.energyLine(e, en)
+		if !math.IsNaN(m) {
+			w.eAt(w.in.TEff)
+		}
+	} else {
+		w.energyLine(e, en, fmt.Sprintf("at %s K", fixed(w.in.TEff, 0, 0)))
+	}
+	w.correlation("r(ln "+a+", "+e+")", ln, en, covariance(r, jA, jE))
+}
+
+// covariance of two linear functions of the parameters; NaN where unknown.
+func covariance(r *fit.Result, a, b []float64) float64 {
+	if r.Cov == nil {
+		return math.NaN()
+	}
+	return float64(propagate(append(append([]float64{}, a...), b...), r.Cov, 2, len(a))[0][1])
+}
+
+// correlation adds a correlation coefficient with two digits of what it lacks to ±1.
+func (w *publisher) correlation(symbol string, a, b fit.Estimate, cov float64) {
+	r := cov / (a.StdError * b.StdError)
+	if math.IsNaN(r) {
+		return
+	}
+	decimals := 2
+	if lack := 1 - math.Abs(r); lack > 0 {
+		_, exp := split(lack, 2)
+		decimals = min(max(2, 1-exp), mostDigits)
+	}
+	w.add(PublishLine{Symbol: symbol, Unit: "1", Text: fixed(r, 0, decimals),
+		Estimate: Estimate{Real(r), Real(math.NaN()), Real(math.NaN()), Real(math.NaN()), nil}})
+}
+
+// transitionState adds ΔH‡, ΔS‡, ΔC_p‡ and ΔG‡(T_ref) by the curve's form that
+// has them, or says why they are withheld.
+func (w *publisher) transitionState(r *fit.Result) {
+	if r.Status != fit.Converged {
+		return
+	}
+	names := map[string]string{"dH": "ΔH‡", "dS": "ΔS‡", "dCp": "ΔC_p‡"}
+	for _, f := range formEstimates(r, models.Frame{TForm: w.in.TRef}, w.in.Confidence, w.in.Quantity, nil) {
+		if f.Parameters[0].Symbol != "dH" {
+			continue
+		}
+		if f.Withheld != "" {
+			w.note("ΔH‡, ΔS‡ and ΔG‡ are %s", f.Withheld)
+			return
+		}
+		note := ""
+		if f.TRef.Known() {
+			note = fmt.Sprintf("at %s K", kelvinText(w.in.TRef))
+		}
+		for _, p := range f.Parameters {
+			e := p.fit()
+			if p.Symbol == "dH" {
+				w.energyLine(names[p.Symbol], e, note)
+			} else {
+				w.entropyLine(names[p.Symbol], e, note)
+			}
+		}
+	}
+	// ΔG‡ = -RT ln(k h/(k_B T)): from ln k, not from ΔH‡ - TΔS‡, whose
+	// uncertainties cancel.
+	t := w.in.TRef
+	ln := lnKAt(r, t, w.in.Confidence)
+	rt := models.GasConstant * t / 1000
+	g := rt * (math.Log(models.Boltzmann/models.Planck*t) - ln.Value - w.in.Quantity.LnPerSecond)
+	where := fmt.Sprintf("at %s K", kelvinText(t))
+	if t < w.in.TMin || t > w.in.TMax {
+		where += ", extrapolated"
+	}
+	w.energyLine("ΔG‡", fit.Estimate{Value: g, StdError: rt * ln.StdError, Lower: g - rt*(ln.Upper-ln.Value), Upper: g + rt*(ln.Value-ln.Lower)}, where)
+	if r != w.in.Fit {
+		w.note("ΔH‡ and ΔS‡ are those of k = (k_B T/h) exp(ΔS‡/R − ΔH‡/RT)")
+	}
+	w.note("ΔS‡ and ΔG‡: time in s, standard concentration 1 mol/L, transmission coefficient 1")
+}
+
+// form adds the parameters of a form as they are, energies in the unit of the style.
+func (w *publisher) form(f models.Form) {
+	fr := models.Frame{TForm: w.in.TRef}
+	for _, fe := range formEstimates(w.in.Fit, fr, w.in.Confidence, w.in.Quantity, w.in.Profiles) {
+		if fe.Model != f.Name {
+			continue
+		}
+		for _, p := range fe.Parameters {
+			e := p.fit()
+			switch a, isLog := strings.CutPrefix(p.Symbol, "ln_"); {
+			case isLog:
+				w.prefactor(a, e, "")
+			case p.Unit == "kJ mol^-1":
+				w.energyLine(p.Symbol, e)
+			default:
+				w.value(p.Symbol, p.Unit, e)
+			}
+		}
+	}
+}
+
+// rate adds k at the reference temperature and, for evaluated tables, what they
+// give of its uncertainty.
+func (w *publisher) rate() {
+	r, t, c := w.in.Fit, w.in.TRef, w.in.Confidence
+	at := fmt.Sprintf("(%s K)", kelvinText(t))
+	ref := atReference(r, t, c, w.in.TMin, w.in.TMax)
+	note := ""
+	if ref.Extrapolated {
+		note = "extrapolated"
+	}
+	w.value(w.symbol+at, w.in.Quantity.Unit, ref.K.fit(), note)
+	if w.in.Style != StyleEvaluated {
+		return
+	}
+	ln, e := lnKAt(r, t, c), scaled(eLocAt(r, t, c), w.energy.perKJ)
+	single := func(symbol, unit string, v float64, text, note string) {
+		if math.IsNaN(v) {
+			text = unknownText
+		}
+		nan := Real(math.NaN())
+		w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: Estimate{Real(v), nan, nan, nan, nil}, Text: text + withUnit(unit), Note: note})
+	}
+	_, exp := split(float64(ref.F)-1, 2)
+	single("f"+at, "1", float64(ref.F), fixed(float64(ref.F), 0, min(max(1, 1-exp), mostDigits)), "f = exp u(ln k)")
+	single("g", "K", float64(ref.G), twoDigits(float64(ref.G)),
+		fmt.Sprintf("f(T) = f%s exp|g (1/T − 1/%s K)| covers u(ln k) in the measured range", at, kelvinText(t)))
+	lg := 2 * ln.StdError / math.Ln10
+	single("Δlg "+w.symbol+at, "1", lg, "±"+twoDigits(lg), "2u")
+	de := 2 * e.StdError
+	single("Δ(E/R)", "K", de, "±"+twoDigits(de), fmt.Sprintf("2u, at %s K", kelvinText(t)))
+}
+
+// unresolved adds by how much E may still change.
+func (w *publisher) unresolved() {
+	if w.in.State != Unresolved {
+		return
+	}
+	c := w.in.Curvature
+	if c.EChange.Lower.Known() && c.EChange.Upper.Known() {
+		lower, upper := float64(c.EChange.Lower)*w.energy.perKJ, float64(c.EChange.Upper)*w.energy.perKJ
+		_, exp := split((upper-lower)/2, 2)
+		sign := func(x float64) string {
+			s := fixed(x, 0, max(0, 1-exp))
+			if x > 0 {
+				s = "+" + s
+			}
+			return s
+		}
+		w.add(PublishLine{Symbol: "ΔE" + w.energy.per, Unit: w.energy.name, Estimate: NewEstimate(scaled(c.EChange.fit(), w.energy.perKJ)),
+			Text: sign(lower) + " to " + sign(upper) + withUnit(w.energy.name),
+			Note: fmt.Sprintf("%g %% interval of the change of E over the range", 100*w.in.Confidence)})
+	}
+	for _, end := range []struct {
+		t float64
+		e Estimate
+	}{{w.in.TMin, c.ELocTMin}, {w.in.TMax, c.ELocTMax}} {
+		if end.e.Value.Known() {
+			w.energyLine("E_a", end.e.fit(),
+				fmt.Sprintf("at %s K, if E changes with T (power-prefactor)", fixed(end.t, 0, 0)))
+		}
+	}
+}
+
+// recovery adds the curve itself, with as many digits as k(T) needs: rounding moves
+// ln k in the measured range by at most a hundredth of its smallest standard
+// uncertainty there, and by at most 0.0005.
+func (w *publisher) recovery() {
+	r := w.in.Fit
+	tol := 5e-4
+	for i := range 65 {
+		t := w.in.TMin + (w.in.TMax-w.in.TMin)*float64(i)/64
+		if u := lnKAt(r, t, w.in.Confidence).StdError; u/100 < tol {
+			tol = math.Max(u/100, 1e-12)
+		}
+	}
+	// Each exponential has at most three rounded terms.
+	term := func(x, basis float64) string {
+		return fixed(x, 0, max(0, int(math.Ceil(math.Log10(1.5*basis/tol)))))
+	}
+	plus := func(s string) string {
+		if t, negative := strings.CutPrefix(s, "−"); negative {
+			return " − " + t
+		}
+		return " + " + s
+	}
+	_, fixedN := r.Curve.(models.FixedExponent)
+	path := func(lnA, n, b float64) string {
+		s := term(lnA, 1)
+		if n != 0 {
+			far := math.Max(math.Abs(math.Log(w.in.TMin/w.in.TRef)), math.Abs(math.Log(w.in.TMax/w.in.TRef)))
+			exponent := term(n, far)
+			if fixedN {
+				exponent = fmt.Sprint(n)
+			}
+			s += plus(exponent) + " ln(T/" + kelvinText(w.in.TRef) + " K)"
+		}
+		return "exp(" + s + plus(term(-b, 1/w.in.TMin)) + " K/T)"
+	}
+	u := 1 / (models.GasConstant * r.TRef)
+	power := func(n, e float64) string { // e is E_loc(T_ref) - nRT_ref
+		return path(r.P[0]+e*u-n*math.Log(r.TRef/w.in.TRef), n, e/models.GasConstant)
+	}
+	var text string
+	switch c := r.Curve.(type) {
+	case models.FixedExponent:
+		text = power(c.M, r.P[1])
+	case models.PowerPrefactor:
+		text = power(r.P[2], r.P[1]-r.P[2]*models.GasConstant*r.TRef)
+	case models.Parallel:
+		text = "[" + path(r.P[0]+r.P[1]*u, 0, r.P[1]/models.GasConstant) + " + " + path(r.P[2]+r.P[3]*u, 0, r.P[3]/models.GasConstant) + "]"
+	default:
+		w.note("to compute k(T), take the parameters of %s from the JSON", r.Curve.Info().Name)
+		return
+	}
+	w.add(PublishLine{Symbol: w.symbol + "(T)", Unit: w.in.Quantity.Unit, Estimate: NewEstimate(fit.Unknown()), Text: text + withUnit(w.in.Quantity.Unit),
+		Note: "with the digits that computing k(T) needs"})
+}
