@@ -43,8 +43,8 @@ func (t *Table) Sets(opt Options) ([]*Set, error) {
 		p.notices = append(p.notices, notice(noteEncoding, "the file is not UTF-8 and was read as Windows-1252"))
 	}
 	conds := m.conditions(p)
-	m.decideDecimal(p, first)
-	if len(p.temperature) == 0 || len(p.rate) == 0 {
+	known := m.decideDecimal(p, first)
+	if !known || len(p.temperature) == 0 || len(p.rate) == 0 {
 		m.shapes(first, len(headings))
 		return nil, m.problems
 	}
@@ -84,15 +84,16 @@ func (m *maker) cells(r Row, n int) ([]string, bool) {
 	return nil, false
 }
 
-// decideDecimal finds the decimal mark of the columns with numbers.
-func (m *maker) decideDecimal(p *plan, first int) {
+// decideDecimal finds the decimal mark of the columns with numbers; false where it
+// has to be asked for.
+func (m *maker) decideDecimal(p *plan, first int) bool {
 	p.decimal = '.'
 	switch {
 	case m.opt.Decimal == "comma":
 		p.decimal = ','
-		return
+		return true
 	case m.opt.Decimal == "point" || !m.t.mayHoldComma:
-		return
+		return true
 	}
 	type evidence struct {
 		row        int
@@ -134,12 +135,15 @@ func (m *maker) decideDecimal(p *plan, first int) {
 		m.refuseCure(codeMixedMarks, comma.row, comma.head,
 			fmt.Sprintf("%q has a decimal comma, and %q in line %d, column %q, a decimal point", short(comma.text), short(point.text), point.row, point.head),
 			"say which one is the decimal mark: --decimal point or --decimal comma")
+		return false
 	case onlyThousands && m.t.Delimiter != ';':
 		m.refuseCure(codeAmbiguousMark, comma.row, comma.head,
 			fmt.Sprintf("the comma in %q may be the decimal mark or group thousands", short(comma.text)), "say which: --decimal comma or --decimal point")
+		return false
 	default:
 		p.decimal = ','
 	}
+	return true
 }
 
 // decimalMark is the decimal mark that the numbers in a cell show: '.', ',' or 0.
@@ -432,8 +436,8 @@ func (p *plan) examples(e [][]string) {
 // isText reports whether a column holds text that may be anything.
 func (rr *rowReader) isText(index int) bool {
 	switch rr.p.cols[index].Role {
-	case RoleSource, RoleDataset, RoleNote, RoleKept:
-		return rr.p.cols[index].Role != RoleKept
+	case RoleSource, RoleDataset, RoleNote:
+		return true
 	}
 	return false
 }

@@ -154,11 +154,14 @@ func headingRow(cells []string) (units, words bool) {
 			continue
 		}
 		n++
-		if ParseCell(c, '.', 0).Kind != CellText || ParseCell(c, ',', 0).Kind != CellText {
-			return false, false
+		u, err := ParseUnit(strings.Trim(s, "()[] "))
+		isUnit := err == nil && u.Text != "1"
+		units = units && isUnit
+		if !isUnit && !allNumbers([]string{c}) {
+			continue
 		}
-		if _, err := ParseUnit(strings.Trim(s, "()[]/ ")); err != nil {
-			units = false
+		if !isUnit {
+			return false, false
 		}
 	}
 	return units && n > 0, words && n > 1
@@ -463,7 +466,7 @@ func (m *maker) unitFromCells(c *column) bool {
 			continue
 		}
 		cell := r.Cells[c.index]
-		if cell == "" || isDigit(cell[len(cell)-1]) {
+		if _, plain := plainNumber(cell, '.', 0); plain || cell == "" {
 			continue
 		}
 		got := ParseCell(cell, '.', 0)

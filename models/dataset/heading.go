@@ -791,7 +791,6 @@ func (p headingParser) ambiguous(h *Heading, key string, m []Meaning) {
 type levelWord struct {
 	kind     Kind
 	relative bool
-	coverage float64
 	p95      bool
 }
 

@@ -1,0 +1,638 @@
+package dataset
+
+import (
+	"bytes"
+	"errors"
+	"fmt"
+	"math"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+	"testing"
+
+	"golang.org/x/text/encoding/charmap"
+	"golang.org/x/text/encoding/unicode"
+)
+
+func read(t *testing.T, text string, opt Options) *Set {
+	t.Helper()
+	sets, err := Read("rates.csv", strings.NewReader(text), opt)
+	if err != nil {
+		t.Fatalf("%q: %v", text, err)
+	}
+	if len(sets) != 1 {
+		t.Fatalf("%q: %d sets", text, len(sets))
+	}
+	return sets[0]
+}
+
+func codes(s *Set) (out []string) {
+	for _, n := range s.Notices {
+		out = append(out, n.Code)
+	}
+	return out
+}
+
+func has(t *testing.T, s *Set, code string) {
+	t.Helper()
+	if !slices.Contains(codes(s), code) {
+		t.Errorf("no notice %s among %v", code, codes(s))
+	}
+}
+
+func TestPublishedFiles(t *testing.T) {
+	// First and last rows as the files themselves print them; units from their
+	// headings. What must be asked is named in the files' README.
+	for _, c := range []struct {
+		file   string
+		opt    Options
+		n      int
+		first  [2]float64 // T/K and k as stored
+		last   [2]float64
+		unit   string
+		symbol string
+	}{
+		{"handbook/ch3i_ethoxide.csv", Options{}, 6, [2]float64{273.15, 5.60e-5}, [2]float64{303.15, 2.08e-3}, "L mol^-1 s^-1", "k"},
+		{"handbook/n2o5_daniels_johnston.csv", Options{}, 6, [2]float64{273, 7.87e-7}, [2]float64{338, 4.87e-3}, "s^-1", "k"},
+		{"handbook/hi_bodenstein.csv", Options{Columns: map[string]string{"k": "k_dec_L_mol_s"}}, 6, [2]float64{556, 3.52e-7}, [2]float64{781, 3.95e-2}, "L mol^-1 s^-1", "k_dec"},
+		{"handbook/hi_bodenstein.csv", Options{Columns: map[string]string{"k": "k_form_L_mol_s"}}, 6, [2]float64{556, 4.45e-5}, [2]float64{781, 1.34}, "L mol^-1 s^-1", "k_form"},
+		{"handbook/nelson_class_h.csv", Options{}, 40, [2]float64{463.15, 1.0 / 7228}, [2]float64{533.15, 1.0 / 1896}, "h^-1", "k"},
+		{"synthetic/s5_hetero.csv", Options{}, 15, [2]float64{300, 0.0220807}, [2]float64{440, 60.797}, "", "k"},
+		{"opendata/mercury_pressure_R.csv", Options{Columns: map[string]string{"k": "p_mmHg"}}, 19, [2]float64{273.15, 2e-4}, [2]float64{633.15, 806}, "mmHg", "p"},
+		{"opendata/steam_MASS.csv", Options{Columns: map[string]string{"k": "p"}}, 14, [2]float64{273.15, 4.14}, [2]float64{378.15, 920.01}, "", "p"},
+	} {
+		f, err := os.Open(filepath.Join("../../testdata/published", c.file))
+		if err != nil {
+			t.Fatal(err)
+		}
+		sets, err := Read(c.file, f, c.opt)
+		f.Close()
+		if err != nil {
+			t.Errorf("%s: %v", c.file, err)
+			continue
+		}
+		s := sets[0]
+		p, q := s.Points[0], s.Points[len(s.Points)-1]
+		if len(s.UsedPoints()) != c.n || p.T != c.first[0] || p.K != c.first[1] || s.Quantity.Unit != c.unit || s.Quantity.Symbol != c.symbol {
+			t.Errorf("%s: %d points, first %v %v, %+v; want %+v", c.file, len(s.UsedPoints()), p.T, p.K, s.Quantity, c)
+		}
+		if q.T != c.last[0] || q.K != c.last[1] {
+			t.Errorf("%s: last %v %v, want %v", c.file, q.T, q.K, c.last)
+		}
+	}
+	for file, code := range map[string]string{
+		"handbook/hi_bodenstein.csv":   codeSeveralRates,
+		"opendata/imotor_survival.csv": codeAmbiguousTemperature,
+		"opendata/steam_MASS.csv":      codeNoRate,
+	} {
+		f, err := os.Open(filepath.Join("../../testdata/published", file))
+		if err != nil {
+			t.Fatal(err)
+		}
+		_, err = Read(file, f, Options{})
+		f.Close()
+		var ps Problems
+		if !errors.As(err, &ps) || ps[0].Code != code {
+			t.Errorf("%s: got %v, want %s", file, err, code)
+		}
+	}
+}
+
+// The same four rows in many spellings give the same T and k. Values written by
+// hand from T = t + 273.15, 1/T, ln and lg of k.
+func TestSpellingsOfOneTable(t *testing.T) {
+	for name, text := range map[string]string{
+		"canonical":    "T/K,k/s^-1\n298.15,0.001\n308.15,0.004\n318.15,0.016\n",
+		"celsius":      "t/°C,k/s^-1\n25,0.001\n35,0.004\n45,0.016\n",
+		"fahrenheit":   "t/degF,k/s^-1\n77,0.001\n95,0.004\n113,0.016\n",
+		"tsv":          "Temp / °C\tk (s-1)\n25.00\t1.0e-3\n35.00\t4.0e-3\n45.00\t1.6e-2\n",
+		"semicolon":    "t/°C;k/s^-1\n25,0;0,001\n35,0;0,004\n45,0;0,016\n",
+		"sep line":     "sep=;\nt/°C;k/s^-1\n25,0;0,001\n35,0;0,004\n45,0;0,016\n",
+		"spaces":       "# old archive\n# more\nT/K      k/s^-1\n298.15   1e-3\n308.15   4e-3\n  318.15   16e-3\n",
+		"wide heading": "T / K   k / s-1\n298.15  0.001\n308.15  0.004\n318.15 0.016\n",
+		"comma spaces": "temperature, K   rate constant, s-1\n298.15  0.001\n308.15  0.004\n318.15 0.016\n",
+		"dat comma":    "t/°C k/s^-1\n25,00 0,001\n35,00 0,004\n45,00 0,016\n",
+		"unit row":     "T,k\nK,s-1\n298.15,0.001\n308.15,0.004\n318.15,0.016\n",
+		"bracket row":  "T,k\n(°C),(1/s)\n25,0.001\n35,0.004\n45,0.016\n",
+		"title":        "Rates of hydrolysis\nT/K,k/s^-1\n298.15,0.001\n308.15,0.004\n318.15,0.016\n",
+		"crlf, blank":  "T/K,k/s^-1\r\n\r\n298.15,0.001\r\n308.15,0.004\r\n318.15,0.016\r\n\r\n",
+		"cr":           "T/K,k/s^-1\r298.15,0.001\r308.15,0.004\r318.15,0.016",
+		"bom":          "\ufeffT/K,k/s^-1\n298.15,0.001\n308.15,0.004\n318.15,0.016\n",
+		"quotes":       "\"T/K\",\"k/s^-1\"\n\"298.15\",\"0.001\"\n\"308.15\", \"0.004\"\n318.15,\"0.016\"\n",
+		"quoted comma": "t/°C,k/s^-1\n\"25,0\",\"0,001\"\n\"35,0\",\"0,004\"\n\"45,0\",\"0,016\"\n",
+		"empty right":  "T/K,k/s^-1,,\n298.15,0.001,,\n308.15,0.004,,\n318.15,0.016,,\n",
+		"factor":       "T/K,10^3 k/s^-1\n298.15,1\n308.15,4\n318.15,16\n",
+		"factor unit":  "T/K,k/(10^-3 s^-1)\n298.15,1\n308.15,4\n318.15,16\n",
+		"cell units":   "T,k\n25 °C,0.001 s^-1\n35 °C,0.004 s^-1\n45 °C,0.016 s^-1\n",
+		"comment head": "# T/K k/s^-1\n298.15 0.001\n308.15 0.004\n318.15 0.016\n",
+		"repeated":     "T/K,k/s^-1\n298.15,0.001\n308.15,0.004\n318.15,0.016\nmean,,\n",
+		"below":        "T/K,k/s^-1\n298.15,0.001\n308.15,0.004\n318.15,0.016\n\nslope,-12.3\n1,2,3,4,5\n",
+	} {
+		s := read(t, text, Options{})
+		ps := s.UsedPoints()
+		if len(ps) != 3 {
+			t.Errorf("%s: %d points: %+v", name, len(ps), s.Points)
+			continue
+		}
+		for i, want := range [][2]float64{{298.15, 0.001}, {308.15, 0.004}, {318.15, 0.016}} {
+			if !near(ps[i].T, want[0], 1e-15) || ps[i].K != want[1] {
+				t.Errorf("%s: row %d: %v, %v", name, i, ps[i].T, ps[i].K)
+			}
+		}
+		if s.Quantity.Unit != "s^-1" || !s.Quantity.Known {
+			t.Errorf("%s: quantity %+v", name, s.Quantity)
+		}
+	}
+	for name, c := range map[string]struct {
+		text string
+		tol  float64
+	}{
+		"reciprocal": {"10^3 K/T,ln(k/s^-1)\n3.3540164346805303,-6.907755278982137\n3.2451728054518907,-5.521460917862246\n3.1431714600031433,-4.135166556742356\n", 1e-14},
+		"lg":         {"1000/T,lg(k/s^-1)\n3.3540164346805303,-3\n3.2451728054518907,-2.397940008672038\n3.1431714600031433,-1.7958800173440752\n", 1e-14},
+		"half-life":  {"T/K,t_1/2/s\n298.15,693.1471805599453\n308.15,173.28679513998632\n318.15,43.32169878499658\n", 1e-15},
+		"tau":        {"T/K,tau/s\n298.15,1000\n308.15,250\n318.15,62.5\n", 1e-15},
+		// k_B = 8.617333262145179e-5 eV/K (SI 2019, 1.380649e-23/1.602176634e-19)
+		"1/kT": {"1/kT (eV^-1),k/s^-1\n38.92174449622701,0.001\n37.65866662842798,0.004\n36.474990166745506,0.016\n", 1e-14},
+		"1/RT": {"1/RT (mol/kJ),k/s^-1\n0.40339545545103,0.001\n0.39030457583231,0.004\n0.37803663379766,0.016\n", 1e-12},
+	} {
+		ps := read(t, c.text, Options{}).UsedPoints()
+		for i, want := range [][2]float64{{298.15, 0.001}, {308.15, 0.004}, {318.15, 0.016}} {
+			if !near(ps[i].T, want[0], c.tol) || !near(ps[i].K, want[1], 10*c.tol) {
+				t.Errorf("%s: row %d: %v, %v", name, i, ps[i].T, ps[i].K)
+			}
+		}
+	}
+}
+
+func TestEncodings(t *testing.T) {
+	const text = "t/°C,k/s⁻¹,source\n25,0.001,Zürich\n35,0.004,Köln\n"
+	const latin = "t/°C,k/s^-1,source\n25,0.001,Zürich\n35,0.004,Köln\n"
+	w1252, err := charmap.Windows1252.NewEncoder().String(latin)
+	if err != nil {
+		t.Fatal(err)
+	}
+	little, _ := unicode.UTF16(unicode.LittleEndian, unicode.UseBOM).NewEncoder().String(text)
+	big, _ := unicode.UTF16(unicode.BigEndian, unicode.UseBOM).NewEncoder().String(text)
+	for name, in := range map[string]string{"utf-8": text, "bom": "\ufeff" + text, "windows-1252": w1252, "utf-16le": little, "utf-16be": big} {
+		s := read(t, in, Options{})
+		p := s.Points[0]
+		if p.T != 298.15 || p.K != 0.001 || p.Source != "Zürich" {
+			t.Errorf("%s: %+v", name, p)
+		}
+		if said := slices.Contains(codes(s), noteEncoding); said != (name == "windows-1252") {
+			t.Errorf("%s: said windows-1252: %v", name, said)
+		}
+	}
+}
+
+func TestUncertainties(t *testing.T) {
+	// Expected u(k) from the GUM: u = U/k, s/sqrt(n), k·u(ln k), k·ln f. The t
+	// quantile for 95 % and 2 degrees of freedom is 4.3026527297494619 (R: qt(0.975, 2)).
+	for _, c := range []struct {
+		heading, cell string
+		opt           Options
+		u             float64
+		level         Level
+	}{
+		{"u(k)/s^-1", "0.1", Options{}, 0.1, LevelStandard},
+		{"u(k)/min^-1", "6", Options{}, 0.1, LevelStandard},
+		{"u(k)", "0.1", Options{}, 0.1, LevelStandard},
+		{"u_r(k)/%", "5", Options{}, 0.1, LevelStandard},
+		{"u_r(k)/%", "5 %", Options{}, 0.1, LevelStandard},
+		{"u_r(k)", "0.05", Options{}, 0.1, LevelStandard},
+		{"u(k)", "5 %", Options{}, 0.1, LevelStandard},
+		{"u(ln k)", "0.05", Options{}, 0.1, LevelStandard},
+		{"u(lg k)", "0.05", Options{}, 0.1 * math.Ln10, LevelStandard},
+		{"SE", "0.1", Options{}, 0.1, LevelStandard},
+		{"1σ", "0.1", Options{}, 0.1, LevelStandard},
+		{"2σ", "0.1", Options{}, 0.05, LevelStandard},
+		{"U(k) (k=2)", "0.1", Options{}, 0.05, LevelStandard},
+		{"U_95(k)", "0.1", Options{}, 0.1 / 1.96, LevelStandard},
+		{"95 % CI", "0.1", Options{}, 0.1 / 1.96, LevelStandard},
+		{"95 % CI,n", "0.1,3", Options{}, 0.1 / 4.3026527297494619, LevelRepeats},
+		{"U(k),coverage_factor", "0.1,2", Options{}, 0.05, LevelStandard},
+		{"f(k)", "1.1", Options{}, 2 * math.Log(1.1), LevelStandard},
+		{"f(k) (k=2)", "1.1", Options{}, math.Log(1.1), LevelStandard},
+		{"s(k),n", "0.1,4", Options{}, 0.05, LevelRepeats},
+		{"s(k),n", "0.1,100", Options{}, 0.01, LevelStandard},
+		{"SEM,n", "0.1,3", Options{}, 0.1, LevelRepeats},
+		{"RSD/%,N", "10,4", Options{}, 0.1, LevelRepeats},
+		{"SD", "0.1", Options{Assume: map[string]string{"n": "4"}}, 0.05, LevelRepeats},
+		{"SD", "0.1", Options{}, 0, LevelNone},
+		{"error", "0.1", Options{}, 0, LevelNone},
+		{"error", "0.1", Options{Assume: map[string]string{"error": "1"}}, 0.1, LevelStandard},
+		{"±", "0.1", Options{Assume: map[string]string{"error": "2"}}, 0.05, LevelStandard},
+		{"error", "0.1", Options{Assume: map[string]string{"error": "sd", "n": "4"}}, 0.05, LevelRepeats},
+		{"error", "0.1", Options{Assume: map[string]string{"error": "sd,n=4"}}, 0.05, LevelRepeats},
+		{"U(k)", "0.1", Options{}, 0, LevelNone},
+		{"u(k)", "", Options{}, 0, LevelNone},
+		{"q", "0.1", Options{Columns: map[string]string{"u(k)": "q"}}, 0.1, LevelStandard},
+		{"u(k_cat)", "0.1", Options{}, 0, LevelNone}, // of another quantity
+	} {
+		s := read(t, "T/K,k/s^-1,"+c.heading+"\n300,2,"+c.cell+"\n310,2,"+c.cell+"\n", c.opt)
+		p := s.Points[0]
+		if !near(p.UK, c.u, 1e-14) || p.Level != c.level {
+			t.Errorf("%s = %s (%v): got %v %q, want %v %q", c.heading, c.cell, c.opt.Assume, p.UK, p.Level, c.u, c.level)
+		}
+		if len(c.opt.Assume) > 0 && len(s.Assumed) == 0 {
+			t.Errorf("%s: the assumption is not recorded", c.heading)
+		}
+	}
+	for cell, want := range map[string]float64{"2.0(1)": 0.1, "2.0 (1)": 0, "2.0 ± 0.1": 0} {
+		if p := read(t, "T/K,k/s^-1\n300,"+cell+"\n310,2\n", Options{}).Points[0]; p.K != 2 || !near(p.UK, want, 1e-15) {
+			t.Errorf("%s: %v %v", cell, p.K, p.UK)
+		}
+	}
+	s := read(t, "T/K,k/s^-1\n300,2.0 ± 0.1\n310,2\n", Options{Assume: map[string]string{"error": "2"}})
+	if s.Points[0].UK != 0.05 || !slices.Contains(s.Assumed, "error=2") {
+		t.Errorf("± with error=2: %v, %v", s.Points[0].UK, s.Assumed)
+	}
+	// Bare headings belong to the quantity on their left.
+	p := read(t, "T/K,SE,ln k,SD of k,n\n300,0.2,0,0.1,4\n310,0.2,1,0.1,4\n", Options{}).Points[0]
+	if p.UT != 0.2 || !near(p.UK, 0.05, 1e-15) {
+		t.Errorf("bare SE: u(T) %v, u(k) %v", p.UT, p.UK)
+	}
+	p = read(t, "T/K,ln k,SE\n300,1,0.1\n310,1,0.1\n", Options{}).Points[0]
+	if !near(p.UK, 0.1*math.E, 1e-15) {
+		t.Errorf("SE beside ln k: %v", p.UK)
+	}
+	// u(τ)/τ = u(k)/k; a factor stands over both columns.
+	p = read(t, "T/K,tau/s,u(tau)/s\n300,4,0.4\n310,5,0.5\n", Options{}).Points[0]
+	if p.K != 0.25 || !near(p.UK, 0.025, 1e-15) {
+		t.Errorf("u(tau): %v %v", p.K, p.UK)
+	}
+	p = read(t, "T/K,10^3 k/s^-1,SE\n300,4,0.4\n310,5,0.5\n", Options{}).Points[0]
+	if p.K != 0.004 || p.UK != 0.0004 {
+		t.Errorf("10^3 k with SE: %v %v", p.K, p.UK)
+	}
+}
+
+func TestRefusals(t *testing.T) {
+	const good = "310,0.004\n320,0.016\n"
+	for _, c := range []struct {
+		name, text string
+		opt        Options
+		want       []string // code:row, in order
+	}{
+		{"empty", "", Options{}, []string{"no-data:0"}},
+		{"comments only", "# nothing\n", Options{}, []string{"no-data:0"}},
+		{"heading only", "T/K,k/s^-1\n", Options{}, []string{"no-data:0"}},
+		{"one column", "T/K\n300\n", Options{}, []string{"no-data:1"}},
+		{"nul", "T/K,k/s^-1\n300,\x001\n", Options{}, []string{"not-text:0"}},
+		{"zip", "PK\x03\x04rest", Options{}, []string{"not-text:0"}},
+		{"no heading", "300,0.001\n310,0.004\n", Options{}, []string{"no-heading:1"}},
+		{"open quote", "T/K,k/s^-1\n300,\"1\n310,2\n", Options{}, []string{"unclosed-quote:2"}},
+		{"duplicate heading", "T/K,k/s^-1,k / s-1,k/s^-1\n300,1,1,1\n" + "310,1,1,1\n", Options{}, []string{"duplicate-heading:1"}},
+		{"ragged", "T/K,k/s^-1\n300,1,2\n310\n320,1\n", Options{}, []string{"ragged-row:2", "ragged-row:3"}},
+		{"ambiguous both", "T,log k\n300,1\n310,2\n", Options{}, []string{"ambiguous-temperature:1", "ambiguous-rate:1"}},
+		{"ambiguous and ragged", "T,k\n300,1,1\n310,2\n", Options{}, []string{"ambiguous-temperature:1", "ragged-row:2"}},
+		{"nothing known", "a,b\n300,1\n310,2\n", Options{}, []string{"no-temperature:1", "no-rate:1"}},
+		{"rate", "T/K,rate\n300,1\n310,2\n", Options{}, []string{"ambiguous-rate:1"}},
+		{"two rates", "T/K,k_1/s^-1,k_2/s^-1\n300,1,2\n310,2,3\n", Options{}, []string{"several-rates:1"}},
+		{"text", "T/K,k/s^-1\n300,abc\nwarm,1\n" + good, Options{}, []string{"not-a-number:2", "not-a-number:3"}},
+		{"not finite", "T/K,k/s^-1\n300,NaN\n300,Inf\n300,1e999\n" + good, Options{}, []string{"not-finite:2", "not-finite:3", "not-finite:4"}},
+		{"ln overflows", "T/K,ln k\n300,800\n310,1\n", Options{}, []string{"not-finite:2"}},
+		{"T <= 0", "T/K,k/s^-1\n0,1\n-5,1\n" + good, Options{}, []string{"temperature-not-positive:2", "temperature-not-positive:3"}},
+		{"t <= -273.15", "t/°C,k/s^-1\n-300,1\n25,1\n35,2\n", Options{}, []string{"temperature-not-positive:2"}},
+		{"1/T zero", "1000/T,k/s^-1\n0,1\n3,1\n", Options{}, []string{"temperature-not-positive:2"}},
+		{"k <= 0", "T/K,k/s^-1\n300,0\n305,-1\n" + good, Options{}, []string{"rate-not-positive:2", "rate-not-positive:3"}},
+		{"negative u", "T/K,k/s^-1,u(k)\n300,1,-0.1\n310,1,0.1\n", Options{}, []string{"negative-uncertainty:2"}},
+		{"factor", "T/K,k/s^-1,f(k)\n300,1,0.9\n310,1,1.1\n", Options{}, []string{"bad-uncertainty-factor:2"}},
+		{"coverage", "T/K,k/s^-1,U(k),coverage_factor\n300,1,0.1,0\n310,1,0.1,2\n", Options{}, []string{"bad-coverage-factor:2"}},
+		{"n", "T/K,k/s^-1,s(k),n\n300,1,0.1,0\n310,1,0.1,2.5\n", Options{}, []string{"bad-number-of-repeats:2", "bad-number-of-repeats:3"}},
+		{"limit", "T/K,k/s^-1,limit\n300,1,about\n310,1,<\n", Options{}, []string{"bad-limit:2"}},
+		{"unit of u", "T/K,k/s^-1,u(k)/K\n300,1,0.1\n310,1,0.1\n", Options{}, []string{"unit-conflict:1"}},
+		{"unit in cell", "T/K,k/s^-1\n25 °C,1\n310,1 min^-1\n", Options{}, []string{"unit-conflict:2", "unit-conflict:3"}},
+		{"mixed marks", "T/K;k/s^-1\n300,5;0.5\n310,5;0.6\n", Options{}, []string{"mixed-decimal-marks:2"}},
+		{"thousands", "T/K,k/s^-1\n\"1,200\",5\n\"1,300\",6\n", Options{}, []string{"ambiguous-decimal-mark:2"}},
+		{"disagree", "T/K,t/°C,k/s^-1\n300.00,26.85,1\n310.00,35.00,1\n", Options{}, []string{"columns-disagree:3"}},
+		{"k and ln k", "T/K,k/s^-1,ln k\n300,2.718,1.000\n310,2.718,2.000\n", Options{}, []string{"columns-disagree:3"}},
+		{"column", "T/K,k/s^-1\n300,1\n310,2\n", Options{Columns: map[string]string{"k": "kobs", "zeta": "T/K"}}, []string{"column-unknown:1", "role-unknown:0"}},
+		{"dataset", "T/K,k/s^-1,dataset\n300,1,a\n310,2,b\n", Options{Dataset: "c"}, []string{"dataset-unknown:0"}},
+		{"where", "T/K,k/s^-1\n300,1\n310,2\n", Options{Where: []string{"pH=7", "pH"}}, []string{"column-unknown:0", "where-not-understood:0"}},
+		{"leave-out", "T/K,k/s^-1\n300,1\n310,2\n", Options{LeaveOut: []int{9}}, []string{"leave-out-unknown:9"}},
+		{"decimal", "T/K,k/s^-1\n300,1\n310,2\n", Options{Decimal: "dot"}, []string{"decimal-unknown:0"}},
+		{"assume", "T/K,k/s^-1\n300,1\n310,2\n", Options{Assume: map[string]string{"T": "warm", "x": "y", "n": "0"}}, []string{"assumption-not-understood:0", "assumption-not-understood:0", "assumption-not-understood:0"}},
+		{"limit on T", "T/K,k/s^-1\n<300,1\n310,2\n", Options{}, []string{"not-a-number:2"}},
+	} {
+		sets, err := Read("rates.csv", strings.NewReader(c.text), c.opt)
+		var ps Problems
+		if !errors.As(err, &ps) {
+			t.Errorf("%s: not refused: %v, %v", c.name, sets, err)
+			continue
+		}
+		var got []string
+		for _, p := range ps {
+			got = append(got, fmt.Sprintf("%s:%d", p.Code, p.Row))
+			if p.File != "rates.csv" || p.Message == "" || p.Cure == "" || strings.HasSuffix(p.Message, ".") {
+				t.Errorf("%s: %+v", c.name, p)
+			}
+		}
+		if !slices.Equal(got, c.want) {
+			t.Errorf("%s: got %v, want %v\n%v", c.name, got, c.want, err)
+		}
+	}
+}
+
+func TestMessages(t *testing.T) {
+	_, err := Read("rates.csv", strings.NewReader("T/K,k/s^-1\n300,1\n310,abc\n"), Options{})
+	const want = `rates.csv:3: column "k/s^-1": "abc" is not a number; write a number, or leave the cell empty to leave the row out`
+	if err == nil || err.Error() != want {
+		t.Errorf("got  %v\nwant %s", err, want)
+	}
+	_, err = Read("rates.csv", strings.NewReader("T/K,k/s^-1\n"+strings.Repeat("x,1\n", 30)), Options{})
+	if got := strings.Split(err.Error(), "\n"); len(got) != 21 || got[20] != "and 10 more" {
+		t.Errorf("thirty problems print as %d lines, the last %q", len(got), got[len(got)-1])
+	}
+	_, err = Read("rates.csv", strings.NewReader("T,k/s^-1\n300,1\n"), Options{})
+	for _, flag := range []string{"--assume T=K", "--assume T=degC", "--assume T=degF"} {
+		if !strings.Contains(err.Error(), flag) {
+			t.Errorf("%v does not name %s", err, flag)
+		}
+	}
+}
+
+func TestRowsLeftOut(t *testing.T) {
+	s := read(t, "T/K,k/s^-1,source\n300,1,a\n301,n.d.,a\nNA,1,a\n302,<0.5,a\n303,<LOD,b\n304,,b\n305,2,b\nmean,1.5,\n\n400,9,x\nand,anything,else,here\n", Options{})
+	want := map[int]string{2: "", 3: "no rate constant", 4: "no temperature", 5: "only a limit", 6: "no rate constant", 7: "no rate constant", 8: ""}
+	if len(s.Points) != len(want) {
+		t.Fatalf("%d points", len(s.Points))
+	}
+	for _, p := range s.Points {
+		w := want[p.Row]
+		if p.Used != (w == "") || !strings.HasPrefix(p.WhyNot, w) {
+			t.Errorf("line %d: used %v, %q; want %q", p.Row, p.Used, p.WhyNot, w)
+		}
+	}
+	if p := s.Points[3]; p.Limit != "<" || p.K != 0.5 {
+		t.Errorf("limit: %+v", p)
+	}
+	for _, code := range []string{noteMissing, noteLimits, noteAfter, noteFew, noteNarrow} {
+		has(t, s, code)
+	}
+	for _, n := range s.Notices {
+		if n.Code == noteAfter && !slices.Equal(n.Rows, []int{9, 11, 12}) {
+			t.Errorf("rows below the table: %v", n.Rows)
+		}
+	}
+	p := read(t, "T/K,k/s^-1,limit\n300,1,>\n310,1,\n", Options{}).Points[0]
+	if p.Limit != ">" || p.Used {
+		t.Errorf("limit column: %+v", p)
+	}
+	p = read(t, "T/K,tau/s\n300,<2\n310,1\n", Options{}).Points[0]
+	if p.Limit != ">" || p.K != 0.5 {
+		t.Errorf("a lifetime below 2 s is a rate constant above 0.5 s^-1: %+v", p)
+	}
+}
+
+func TestSelection(t *testing.T) {
+	const text = "T/K,k/s^-1,source,pH,p/Torr\n300,1,Lab1,7.0,1\n310,2,Lab2,7,10\n320,3,Lab1,8.0,100\n330,abc,Lab3,7.0,1000\n340,5,Lab1,7.0,1\n"
+	for _, c := range []struct {
+		opt  Options
+		rows []int
+	}{
+		{Options{LeaveOut: []int{5}}, []int{2, 3, 4, 6}},
+		{Options{Where: []string{"source!=Lab3"}}, []int{2, 3, 4, 6}},
+		{Options{Where: []string{"pH=7.0", "source=Lab1"}}, []int{2, 6}},
+		{Options{Where: []string{"p<100", "source!=Lab3"}}, []int{2, 3, 6}},
+		{Options{Where: []string{"p/Torr>=10"}, LeaveOut: []int{5}}, []int{3, 4}},
+		{Options{Where: []string{"temperature>=320"}, LeaveOut: []int{5}}, []int{4, 6}},
+		{Options{TMin: 305, TMax: 325}, []int{3, 4}},
+	} {
+		s := read(t, text, c.opt)
+		var rows []int
+		for _, p := range s.Points {
+			if p.Used {
+				rows = append(rows, p.Row)
+			} else if p.WhyNot == "" {
+				t.Errorf("%+v: line %d has no reason", c.opt, p.Row)
+			}
+		}
+		if !slices.Equal(rows, c.rows) || len(s.Points) != 5 {
+			t.Errorf("%+v: rows %v of %d, want %v", c.opt, rows, len(s.Points), c.rows)
+		}
+		has(t, s, noteSelected)
+	}
+
+	const long = "dataset,T/K,k/s^-1\na,300,1\nb,300,2\na,310,3\nb,310,4\n"
+	sets, err := Read("long.csv", strings.NewReader(long), Options{})
+	if err != nil || len(sets) != 2 || sets[0].Name != "a" || sets[1].Name != "b" || len(sets[1].Points) != 2 {
+		t.Errorf("two sets: %v, %v", sets, err)
+	}
+	s := read(t, long, Options{Dataset: "b"})
+	if s.Name != "b" || s.Points[1].K != 4 {
+		t.Errorf("--dataset b: %+v", s)
+	}
+	sets, err = Read("long.csv", strings.NewReader("pH,T/K,k/s^-1\n7,300,1\n8,300,2\n"), Options{DatasetBy: "pH"})
+	if err != nil || len(sets) != 2 || sets[1].Name != "8" {
+		t.Errorf("--dataset-by: %v, %v", sets, err)
+	}
+	if s := read(t, "T/K;k/s^-1\n1.200;0,5\n1.300;0,6\n", Options{Decimal: "comma"}); s.Points[0].T != 1200 || s.Points[0].K != 0.5 {
+		t.Errorf("--decimal comma: %+v", s.Points[0])
+	}
+	if s := read(t, "T/K,k/s^-1\n300,0\n310,-1\n", Options{AllowNonPositiveK: true}); len(s.UsedPoints()) != 2 {
+		t.Errorf("k <= 0 is allowed on request: %+v", s.Points)
+	}
+	if s := read(t, "T/K,y\n300,0\n310,1\n", Options{Columns: map[string]string{"ln k": "y"}}); s.Points[1].K != math.E {
+		t.Errorf("--column 'ln k=y': %+v", s.Points[1])
+	}
+}
+
+func TestSeveralColumns(t *testing.T) {
+	// t/°C has one decimal more than T/K and 1000/T here: the smaller rounding error.
+	s := read(t, "T/K,t/°C,1000/T,k/s^-1,ln k\n298,25.0,3.35,1.2345e-3,-6.7\n308,35.0,3.25,4.0000e-3,-5.5\n", Options{})
+	if s.Points[0].T != 298.15 || s.Points[0].K != 1.2345e-3 {
+		t.Errorf("%+v", s.Points[0])
+	}
+	has(t, s, noteSeveral)
+	// An exact kelvin column that is t + 273.
+	s = read(t, "T/K,t/°C,k/s^-1\n298.00,25.0,1\n308.00,35.0,2\n", Options{})
+	if s.Points[0].T != 298.15 {
+		t.Errorf("%+v", s.Points[0])
+	}
+	has(t, s, noteGap)
+	// An ambiguous column beside a certain one is not asked about.
+	s = read(t, "T,T/K,k/s^-1,log k\n25,298.15,1,0\n35,308.15,2,0.3\n", Options{})
+	if s.Points[1].T != 308.15 || s.Points[1].K != 2 {
+		t.Errorf("%+v", s.Points[1])
+	}
+	// Units of two columns of one quantity differ.
+	s = read(t, "T/K,k/s^-1,ln(k/min^-1)\n300,1.00,4.094\n310,2.00,4.787\n", Options{})
+	if s.Points[0].K != 1 && !near(s.Points[0].K, 60, 1e-3) {
+		t.Errorf("%+v", s.Points[0])
+	}
+}
+
+func TestNotices(t *testing.T) {
+	for _, c := range []struct{ text, code string }{
+		{"T/K,k\n300,1\n310,2\n", noteUnit},
+		{"T/K,k/widgets\n300,1\n310,2\n", noteUnit},
+		{"T/K,k/(Torr^-1 s^-1)\n300,1\n310,2\n", noteUnitWithheld},
+		{"T/K,life_h\n300,1\n310,2\n", noteTimeLike},
+		{"103 K/T,k/s^-1\n3.3,1\n3.2,2\n", noteLost},
+		{"T/K,k/s^-1,yield\n300,1,5\n310,2,6\n", noteKept},
+		{"T/K,k/s^-1,pH\n300,1,7\n300,2,8\n", noteVaries},
+		{"T/K,k/s^-1\n300,1\n300,1\n", noteDuplicate},
+		{"t/°C,k/s^-1\n298,1\n308,2\n318,3\n", noteCLikeK},
+		{"T/K,k/s^-1\n25,1\n35,2\n45,3\n", noteKLikeC},
+		{"T/K,k/s^-1,u(k)\n300,1,0.4\n310,2,0.1\n", noteLargeU},
+		{"T/K,k/s^-1,error\n300,1,0.4\n310,2,0.1\n", noteLevel},
+		{"T/K,k/s^-1,SD\n300,1,0.4\n310,2,0.1\n", noteRepeats},
+		{"T/K,k/s^-1,u(k),SE\n300,1,0.1,0.1\n310,2,0.1,0.1\n", noteOtherU},
+		{"T/K,k/s^-1,u(k)\n300,1,0.1\n310,2,0.1\n", noteAssumedUnit},
+		{"T/K,k/s^-1\n300,1.0(1)\n310,2.0(1)\n", noteBrackets},
+		{"T/K,k/s^-1,s(k),n\n300,1,0.1,3\n310,2,0.1,3\n", noteFewRepeats},
+		{"# T/K,k/s^-1\n300,1\n310,2\n", noteCommentHeading},
+		{"Title\nT/K,k/s^-1\n300,1\n310,2\n", noteTitle},
+		{"T,k\nK,1/s\n300,1\n310,2\n", noteJoined},
+	} {
+		has(t, read(t, c.text, Options{}), c.code)
+	}
+	s := read(t, "T,log k\n25,1\n35,2\n", Options{Assume: map[string]string{"T": "degC", "log": "lg", "k": "rate"}})
+	if !slices.Equal(s.Assumed, []string{"T=degC", "log=lg"}) || s.Points[0].K != 10 || s.Points[0].T != 298.15 {
+		t.Errorf("%v %+v", s.Assumed, s.Points[0])
+	}
+	has(t, s, noteAssumption)
+	has(t, s, noteUnneeded)
+	if s.Columns[0].Confidence != "by assumption" || s.Columns[0].Unit != "°C" || s.Columns[1].Role != "rate" {
+		t.Errorf("%+v", s.Columns)
+	}
+	clean := read(t, "T/K,k/s^-1\n300,1\n310,2\n320,3\n330,5\n340,9\n", Options{})
+	if len(clean.Notices) != 0 || len(clean.SHA256) != 64 || clean.Name != "rates" || len(clean.Columns[0].Examples) != 3 {
+		t.Errorf("%+v", clean)
+	}
+}
+
+func TestCodesAreExplained(t *testing.T) {
+	all := Explanations()
+	if len(all) != len(ProblemCodes)+len(NoticeCodes) {
+		t.Error("a code stands twice")
+	}
+	for code, e := range all {
+		if code != e.Code || e.Title == "" || e.Text == "" || strings.Trim(code, "abcdefghijklmnopqrstuvwxyz0123456789-") != "" {
+			t.Errorf("%s: %+v", code, e)
+		}
+	}
+	for _, code := range ProblemCodes {
+		if all[code].Cure == "" {
+			t.Errorf("%s has no cure", code)
+		}
+	}
+}
+
+func TestTidyIsReadBack(t *testing.T) {
+	for _, text := range []string{
+		"t/°C,10^3 k/s^-1,u_r(k)/%,source,note\n25.1,1.234,3.3,Zürich,\"a, \"\"b\"\"\"\n35.7,4.321,4.4,x,\n45.3,<9,,,\n",
+		"1000/T,lg(k/(L mol^-1 s^-1)),u(T)/K\n3.3541,-3.217,0.1\n3.2452,-2.331,0.3\n",
+		"T/K,k_obs/min^-1,s(k_obs)/min^-1,n,order,pH\n300,1.1,0.13,3,2,7\n310,2.7,0.17,4,1,8\n",
+		"T/K,k/(cm^3 molecule^-1 s^-1),2σ\n300,1.1e-14,1e-15\n310,2.7e-14,1e-15\n",
+		"T/K,k/s^-1,SEM,n\n300,1.1,0.1,3\n310,2.7,0.1,\n",
+		"T/K,kcat/Km (M^-1 s^-1)\n300,1.1e5\n310,2.7e5\n",
+		"T/K,D (cm2/s)\n300,1.1e-5\n310,2.7e-5\n",
+		"T/K,half-life (d)\n300,3.1\n310,1.7\n",
+		"T/K,k\n300,3.1\n310,1.7\n",
+		"T/K,turnover number (s^-1)\n300,3.1\n310,1.7\n",
+	} {
+		s := read(t, text, Options{})
+		var b bytes.Buffer
+		if err := Tidy(&b, s); err != nil {
+			t.Fatal(err)
+		}
+		again := read(t, b.String(), Options{})
+		var want []Point
+		for _, p := range s.Points {
+			if p.Used || p.Limit != "" {
+				want = append(want, p)
+			}
+		}
+		if len(again.Points) != len(want) {
+			t.Fatalf("%q -> %q: %d points", text, b.String(), len(again.Points))
+		}
+		for i, p := range want {
+			q := again.Points[i]
+			sameOrder := p.Order == q.Order || math.IsNaN(p.Order) && math.IsNaN(q.Order)
+			if q.T != p.T || q.K != p.K || q.UK != p.UK || q.UT != p.UT || q.SD != p.SD || q.Level != p.Level || q.Repeats != p.Repeats || q.Limit != p.Limit ||
+				q.Source != p.Source || q.Note != p.Note || q.Used != p.Used || !sameOrder || fmt.Sprint(q.Extra) != fmt.Sprint(p.Extra) {
+				t.Errorf("%q\n-> %q\ngot  %+v\nwant %+v", text, b.String(), q, p)
+			}
+		}
+		a, c := s.Quantity, again.Quantity
+		a.TimeLike = false
+		if a != c {
+			t.Errorf("%q: quantity %+v became %+v", b.String(), s.Quantity, again.Quantity)
+		}
+	}
+}
+
+func TestInputIsNotModified(t *testing.T) {
+	data := []byte("\ufeffT/K,k/s^-1\n300,1\n310,2\n")
+	before := bytes.Clone(data)
+	tab, err := ParseTable("x", data)
+	if err != nil {
+		t.Fatal(err)
+	}
+	opt := Options{Columns: map[string]string{"k": "k/s^-1"}, Assume: map[string]string{"T": "K"}, LeaveOut: []int{2}}
+	if _, err := tab.Sets(opt); err != nil {
+		t.Fatal(err)
+	}
+	if !bytes.Equal(before, data) || len(opt.Columns) != 1 || len(opt.Assume) != 1 || opt.LeaveOut[0] != 2 {
+		t.Error("the input was modified")
+	}
+}
+
+func FuzzRead(f *testing.F) {
+	for _, s := range []string{
+		"T/K,k/s^-1\n300,1\n310,2\n", "\ufeffT/K\tk/s^-1\r\n300\t1\r\n", "\xff\xfeT\x00/\x00K\x00", "t/\xb0C;k/s^-1\n25,0;1,5\n", "T/K k/s^-1\n300 1e999\n",
+		"\"a\"\"b\",\"\n\n\"\n1,2\n", "T/K,k/s^-1\n300,1\n\n\nmean,2\n", "sep=;\n", "T,k,\n,,\n,,,,\n", "T/K,k,u(k),n,limit,source,dataset,order,note\n300,1,0.1,3,<,a,b,1,c\n",
+		"#\n#N/A,1\n2,3\n", strings.Repeat(",", 2000), "T/K,k,ln k,lg k,tau/s\n1,1,0,0,1\n", "\u202eT/K,k/s^-1\n300,1\n",
+	} {
+		f.Add([]byte(s), "K", "comma")
+		f.Add([]byte(s), "degC", "")
+	}
+	f.Fuzz(func(t *testing.T, data []byte, assume, decimal string) {
+		for _, opt := range []Options{
+			{},
+			{Assume: map[string]string{"T": assume, "log": "lg", "k": "rate", "error": "sd,n=3"}, Decimal: decimal, AllowNonPositiveK: true},
+			{Where: []string{"k>1"}, LeaveOut: []int{2}, TMin: 1, TMax: 1000, DatasetBy: "source"},
+		} {
+			sets, err := Read("-", bytes.NewReader(data), opt)
+			if err != nil {
+				var ps Problems
+				if !errors.As(err, &ps) || len(ps) == 0 {
+					t.Fatalf("%T %v", err, err)
+				}
+				_ = ps.Error()
+				continue
+			}
+			for _, s := range sets {
+				for _, p := range s.UsedPoints() {
+					if !(p.T > 0) || math.IsInf(p.T, 0) || math.IsNaN(p.K) || math.IsInf(p.K, 0) || !(p.UK >= 0) || !(p.UT >= 0) || !opt.AllowNonPositiveK && !(p.K > 0) {
+						t.Fatalf("%+v", p)
+					}
+				}
+				var b bytes.Buffer
+				if err := Tidy(&b, s); err != nil {
+					t.Fatal(err)
+				}
+			}
+		}
+	})
+}
+
+func BenchmarkRead(b *testing.B) {
+	var buf bytes.Buffer
+	buf.WriteString("T/K,k/s^-1,u(k)/s^-1\n")
+	const rows = 100000
+	for i := range rows {
+		fmt.Fprintf(&buf, "%.2f,%.6e,%.2e\n", 250+float64(i%2000)*0.1, float64(i+1)*1e-5, float64(i+1)*1e-7)
+	}
+	data := buf.Bytes()
+	b.ReportAllocs()
+	for b.Loop() {
+		if _, err := Read("x.csv", bytes.NewReader(data), Options{}); err != nil {
+			b.Fatal(err)
+		}
+	}
+	b.ReportMetric(float64(rows)*float64(b.N)/b.Elapsed().Seconds(), "rows/s")
+}
