@@ -253,12 +253,12 @@ func (in *VerdictInput) sentence(state State) string {
 		fmt.Fprintf(&s, "Curved: a T-dependent prefactor explains it. %s %s; the exponent n = %s lies inside the prefactor band %g to %g, so that one barrier is enough.",
 			in.changed(), between, interval(n, ""), in.Rule.Band[0], in.Rule.Band[1])
 	case CurvedOpen:
-		far, way := n.Upper, "up to"
+		far, edge, way := n.Upper, in.Rule.Band[1], "up to"
 		if n.Value < 0 {
-			far, way = n.Lower, "down to"
+			far, edge, way = n.Lower, in.Rule.Band[0], "down to"
 		}
 		fmt.Fprintf(&s, "Curved: cause open. %s %s. n %s %s is not excluded, so that it may be a prefactor (band %g to %g) or more.",
-			in.changed(), between, way, openNumber(far), in.Rule.Band[0], in.Rule.Band[1])
+			in.changed(), between, way, beyondEdge(far, edge), in.Rule.Band[0], in.Rule.Band[1])
 	case StraightWithin:
 		fmt.Fprintf(&s, "Straight within ± %s: E changes by %s %s. Smooth curvature that would matter is excluded inside this range.",
 			in.energy(in.Rule.ToleranceKJ), in.changeRange(change), between)
@@ -310,10 +310,10 @@ func (in *VerdictInput) wouldShow() string {
 		return fmt.Sprintf("these data would have shown a change of %s with 80 %% power", in.energy(in.Test.Detectable.Value))
 	case known(d.Lower) && known(d.Upper):
 		dec := decimals(d.Upper - d.Lower)
-		return fmt.Sprintf("the change that they would have shown with 80 %% power lies somewhere from %s to %s %s",
+		return fmt.Sprintf("the change that these data would have shown with 80 %% power lies between %s and %s %s",
 			number(d.Lower, dec), number(d.Upper, dec), in.unit())
 	}
-	return "what change they would have shown is not known"
+	return "what change these data would have shown is not known"
 }
 
 // changeRange prints the interval of a change with its signs: -9 to +14 kJ/mol.
@@ -398,12 +398,13 @@ func interval(e fit.Estimate, unit string) string {
 	return fmt.Sprintf("%s%s (%s to %s)", number(e.Value, d), unit, show(low), show(high))
 }
 
-// openNumber prints the end of an interval, which may be open.
-func openNumber(x float64) string {
+// beyondEdge prints the end of an interval with figures enough to tell it from the
+// edge of the band that it passes.
+func beyondEdge(x, edge float64) string {
 	if math.IsNaN(x) || math.IsInf(x, 0) {
 		return "any value"
 	}
-	return number(x, decimals(math.Abs(x)))
+	return number(x, max(decimals(math.Abs(x)), decimals(math.Abs(x-edge))-1))
 }
 
 // Recommend names the curve to publish for a verdict, "" where none of the
