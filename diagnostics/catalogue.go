@@ -36,8 +36,9 @@ func Codes() []string {
 	return codes
 }
 
-// Catalogue lists every entry: verdicts in order of precedence, then findings.
-func Catalogue() []Entry { return slices.Clone(catalogue) }
+// Catalogue lists every entry: verdicts in order of precedence, then findings,
+// then the refusals and notices of the reader.
+func Catalogue() []Entry { return append(slices.Clone(catalogue), readingEntries()...) }
 
 // newFinding makes a finding with the severity and cure of its entry.
 func newFinding(code, message string, rows []int, values map[string]Real) Finding {
@@ -244,6 +245,16 @@ var catalogue = []Entry{
 		Code: "eyring-withheld", Title: "entropy of activation withheld", Severity: Info,
 		Explanation: "ΔS‡ and ΔG‡ need the time unit and the standard state of k: reading min⁻¹ as s⁻¹ shifts ΔS‡ by 34 J mol⁻¹ K⁻¹. The unit of k was not understood, or k is no rate constant.",
 		Cure:        "write the unit in the heading, such as k/s^-1",
+	},
+	{
+		Code: "extrapolated", Title: "outside the measured range", Severity: Warning,
+		Explanation: "The reference temperature lies outside the range that was measured. A curve that fits inside says little outside: no data can exclude a second path that begins just past the hot end. " + Caution,
+		Cure:        "choose a --reference-temperature inside the range, or measure there",
+	},
+	{
+		Code: "several-datasets", Title: "several data sets in one file", Severity: Alarm,
+		Explanation: "A verdict is about one data set: one rate constant of one reaction under one set of conditions. The file holds several.",
+		Cure:        "choose one with --dataset NAME",
 	},
 	{
 		Code: "resamples-failed", Title: "some resamples could not be fitted", Severity: Warning,

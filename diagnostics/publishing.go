@@ -1,9 +1,98 @@
 package diagnostics
 
-// publishStyle is the style in which results are published.
-func (a *assessor) publishStyle() string { return a.opt.PublishStyle }
+import (
+	"onebarrier/models"
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+)
 
-// publishInto states every curve in its forms and what to publish.
+// publishStyle is the style in which results are published.
+func (a *assessor) publishStyle() string {
+	if a.opt.PublishStyle != "" {
+		return a.opt.PublishStyle
+	}
+	return styleOf(a.set.Quantity)
+}
+
+// publishInto states every curve in its forms, k at the reference temperature, and
+// what to publish: the recommended curve, or the straight line where none of the
+// candidates fits.
 func (a *assessor) publishInto(doc *Assessment) {
-	doc.Publish = Publish{Style: doc.Settings.PublishStyle, Curve: a.verdict.RecommendedCurve, Lines: []PublishLine{}, Notes: []string{}}
+	tRef := doc.Settings.ReferenceTemperature
+	fr := models.Frame{TForm: tRef}
+	profiles := map[string]map[string]fit.Estimate{}
+	for i := range doc.Ranking {
+		r := &doc.Ranking[i]
+		f := doc.Fits[r.Curve]
+		if !f.Usable() {
+			continue
+		}
+		profiles[r.Curve] = a.profiles(f)
+		r.Forms = formEstimates(f, fr, a.opt.Confidence, a.set.Quantity, profiles[r.Curve])
+	}
+	f := doc.Fits[a.verdict.RecommendedCurve]
+	if f == nil {
+		f = a.straight
+	}
+	low, high := a.data.sample.Range()
+	doc.AtReference = atReference(f, tRef, a.opt.Confidence, low, high)
+	doc.Publish = publish(toPublish{
+		Fit: f, Eyring: a.eyring(), Quantity: a.set.Quantity, State: a.verdict.State,
+		TMin: low, TMax: high, TEff: a.tEff, TRef: tRef, Confidence: a.opt.Confidence,
+		Style: doc.Settings.PublishStyle, EnergyUnit: a.opt.EnergyUnit,
+		Curvature: doc.Curvature, Profiles: profiles[f.Curve.Info().Name],
+	})
+	if !a.set.Quantity.Known && !a.set.Quantity.Diffusion {
+		a.find("eyring-withheld", "ΔS‡ and ΔG‡ are not stated: the unit of "+symbolOf(a.set.Quantity)+" was not understood", nil, nil)
+	}
+	if doc.AtReference.Extrapolated {
+		a.find("extrapolated", kelvinText(tRef)+" K lies outside the measured range. "+Caution, nil, map[string]Real{"t_k": Real(tRef)})
+	}
+}
+
+// Caution is printed with every rate outside the measured range.
+const Caution = "Extrapolated rates are no basis for reactor relief, thermal-hazard, shelf-life or dosing decisions; those follow the local codes and licensed practice."
+
+func symbolOf(q dataset.Quantity) string {
+	if q.Symbol == "" {
+		return "k"
+	}
+	return q.Symbol
+}
+
+// eyring is the fit of linear-prefactor, made where it was not a candidate.
+func (a *assessor) eyring() *fit.Result {
+	c := models.LinearPrefactor()
+	if f := a.fitOf(c.Info().Name); f != nil {
+		return f
+	}
+	return fit.Fit(a.data.sample, c)
+}
+
+// profiles are the profile intervals of the barriers and prefactors of parallel,
+// whose estimates are far from normal, by form symbol and in the form's units; nil
+// for other curves.
+func (a *assessor) profiles(f *fit.Result) map[string]fit.Estimate {
+	if _, ok := f.Curve.(models.Parallel); !ok || f.Nu < 1 {
+		return nil
+	}
+	u := 1 / (models.GasConstant * f.TRef)
+	out := map[string]fit.Estimate{}
+	for _, p := range []struct {
+		symbol string
+		c      []float64 // of the canonical parameters
+		unit   float64
+	}{
+		{"ln_A1", []float64{1, u, 0, 0}, 1}, {"E1", []float64{0, 1, 0, 0}, 1. / 1000},
+		{"ln_A2", []float64{0, 0, 1, u}, 1}, {"E2", []float64{0, 0, 0, 1}, 1. / 1000},
+	} {
+		var e fit.Estimate
+		if a.model.InK() {
+			e = fit.Profile(a.data.sample, f, p.c, a.opt.Confidence)
+		} else {
+			e = fit.ProfileShaped(a.data.sample, f, p.symbol, a.opt.Confidence)
+		}
+		out[p.symbol] = scaled(e, p.unit)
+	}
+	return out
 }
