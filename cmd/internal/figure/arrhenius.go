@@ -165,7 +165,7 @@ func drawArrhenius(a *diagnostics.Assessment, d *Arrhenius, opt Options) (pictur
 	lower := newPlot(xLow, xHigh, rLow*factor, rHigh*factor, xa.label, rLabel)
 	lower.Y.Tick.Marker = linear{5}
 
-	leg := newLegend()
+	var leg legend
 	if len(d.Points) > crowded {
 		addPoints(upper, lower, d, factor)
 	}
@@ -200,7 +200,7 @@ func drawArrhenius(a *diagnostics.Assessment, d *Arrhenius, opt Options) (pictur
 		low = draw.Crop(page, margin, -margin-3, margin, margin+lowerHeight-h)
 		return align(upper, up, lower, low)
 	}
-	place := leg.place(upper, func() draw.Canvas { up, _ := areas(); return upper.DataCanvas(up) }, obstacles)
+	place, found := leg.place(upper, func() draw.Canvas { up, _ := areas(); return upper.DataCanvas(up) }, obstacles)
 	up, low := areas()
 	panel := upper.DataCanvas(up)
 	tHigh := d.hottest()
@@ -211,7 +211,7 @@ func drawArrhenius(a *diagnostics.Assessment, d *Arrhenius, opt Options) (pictur
 	ticks := celsiusTicks(upper, panel.Max.X-panel.Min.X, toX, xa.scale/xHigh, tHigh)
 	addFixed(upper, frame{ticks, "*t*/°C"})
 	addFixed(lower, frame{})
-	return picture{
+	return leg.complete(picture{
 		name: "arrhenius", width: pageWidth, height: h, title: head.inWords("Arrhenius plot"),
 		draw: func(c draw.Canvas) {
 			fillPage(c)
@@ -219,9 +219,8 @@ func drawArrhenius(a *diagnostics.Assessment, d *Arrhenius, opt Options) (pictur
 			up.Canvas, low.Canvas = c.Canvas, c.Canvas
 			upper.Draw(up)
 			lower.Draw(low)
-			leg.drawAt(c, place)
 		},
-	}, nil
+	}, place, found), nil
 }
 
 // hottest of the points, in K.

@@ -13,6 +13,9 @@ import (
 	"onebarrier/diagnostics"
 )
 
+// narrowBar is the width in points below which bars are not parted by lines.
+const narrowBar = 3
+
 // histogram draws bars between edges.
 type histogram struct {
 	edges  []float64
@@ -27,15 +30,17 @@ var (
 // Plot implements plot.Plotter.
 func (h histogram) Plot(c draw.Canvas, p *plot.Plot) {
 	trX, trY := p.Transforms(&c)
+	outline := []vg.Point{{X: trX(h.edges[0]), Y: c.Min.Y}}
 	for i, n := range h.counts {
-		if n == 0 {
-			continue
-		}
 		l, r, top := trX(h.edges[i]), trX(h.edges[i+1]), trY(float64(n))
-		box := []vg.Point{{X: l, Y: c.Min.Y}, {X: l, Y: top}, {X: r, Y: top}, {X: r, Y: c.Min.Y}}
-		c.FillPolygon(barFill, box)
-		c.StrokeLines(barEdge, box)
+		c.FillPolygon(barFill, []vg.Point{{X: l, Y: c.Min.Y}, {X: l, Y: top}, {X: r, Y: top}, {X: r, Y: c.Min.Y}})
+		if r-l >= narrowBar {
+			c.StrokeLine2(barEdge, r, c.Min.Y, r, top)
+		}
+		outline = append(outline, vg.Point{X: l, Y: top}, vg.Point{X: r, Y: top})
 	}
+	outline = append(outline, vg.Point{X: trX(h.edges[len(h.counts)]), Y: c.Min.Y})
+	c.StrokeLines(barEdge, outline)
 }
 
 // bracket draws an interval as a horizontal line with its estimate; an end at
@@ -98,7 +103,7 @@ func drawChange(a *diagnostics.Assessment, d *Change) (picture, error) {
 	p := newPlot(xLow, xHigh, 0, barsTop*1.2, "Δ*E*/(kJ mol^{−1})", "resamples")
 	p.Y.Tick.Marker = whole{linear{5}}
 
-	leg := newLegend()
+	var leg legend
 	addFixed(p, histogram{d.Edges, d.Counts})
 	var obstacles []obstacle
 	for i, n := range d.Counts {
@@ -147,9 +152,9 @@ func drawChange(a *diagnostics.Assessment, d *Change) (picture, error) {
 	h := head.height() + headGap + panel + 2*margin
 	page := draw.Canvas{Rectangle: vg.Rectangle{Max: vg.Point{X: pageWidth, Y: h}}}
 	area := draw.Crop(page, margin, -margin-3, margin, -(margin + head.height() + headGap))
-	place := leg.place(p, func() draw.Canvas { return p.DataCanvas(area) }, obstacles)
+	place, found := leg.place(p, func() draw.Canvas { return p.DataCanvas(area) }, obstacles)
 	addFixed(p, frame{})
-	return picture{
+	return leg.complete(picture{
 		name: "change-of-e", width: pageWidth, height: h,
 		title: head.inWords(""),
 		draw: func(c draw.Canvas) {
@@ -157,9 +162,8 @@ func drawChange(a *diagnostics.Assessment, d *Change) (picture, error) {
 			head.draw(draw.Crop(c, margin, -margin, 0, -margin))
 			area.Canvas = c.Canvas
 			p.Draw(area)
-			leg.drawAt(c, place)
 		},
-	}, nil
+	}, place, found), nil
 }
 
 // whole keeps an axis of counts to whole numbers.

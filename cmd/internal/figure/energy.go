@@ -38,7 +38,7 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 	xLow = math.Max(0, xLow)
 	p := newPlot(xLow, xHigh, yLow, yHigh, "*T*/K", "*E*_{loc}/(kJ mol^{−1})")
 
-	leg := newLegend()
+	var leg legend
 	var obstacles []obstacle
 	if len(d.Wedge) > 0 {
 		var x, lower, upper []float64
@@ -59,7 +59,12 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 		obstacles = append(obstacles, l.obstacles()...)
 	}
 	if d.TEff >= xLow && d.TEff <= xHigh {
+		// A drop line from the point to the axis, or a line across without one.
 		mark := rule{x: d.TEff, y: math.NaN(), style: draw.LineStyle{Color: grey, Width: vg.Points(0.8), Dashes: []vg.Length{2, 2}}}
+		if !math.IsNaN(d.E) {
+			mark.top = d.E
+			obstacles = append(obstacles, obstacle{d.TEff, yLow, d.E})
+		}
 		addFixed(p, mark)
 		leg.entry(fmt.Sprintf("*T*_{eff} = %s K", number(d.TEff, 1)), mark)
 		if !math.IsNaN(d.E) {
@@ -76,11 +81,11 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 	h := head.height() + headGap + topHeight() + panel + 2*margin
 	whole := draw.Canvas{Rectangle: vg.Rectangle{Max: vg.Point{X: pageWidth, Y: h}}}
 	area := draw.Crop(whole, margin, -margin-3, margin, -(margin + head.height() + headGap + topHeight()))
-	place := leg.place(p, func() draw.Canvas { return p.DataCanvas(area) }, obstacles)
+	place, found := leg.place(p, func() draw.Canvas { return p.DataCanvas(area) }, obstacles)
 	inner := p.DataCanvas(area)
 	toX := func(t float64) float64 { return t }
 	addFixed(p, frame{celsiusTicks(p, inner.Max.X-inner.Min.X, toX, xLow, xHigh), "*t*/°C"})
-	return picture{
+	return leg.complete(picture{
 		name: "activation-energy", width: pageWidth, height: h,
 		title: head.inWords(""),
 		draw: func(c draw.Canvas) {
@@ -88,7 +93,6 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 			head.draw(draw.Crop(c, margin, -margin, 0, -margin))
 			area.Canvas = c.Canvas
 			p.Draw(area)
-			leg.drawAt(c, place)
 		},
-	}, nil
+	}, place, found), nil
 }

@@ -186,7 +186,7 @@ func TestDirectoryCannotBeMade(t *testing.T) {
 // Legends must not cover points, curves or bands.
 func TestLegendCoversNothing(t *testing.T) {
 	p := newPlot(0, 1, 0, 1, "x", "y")
-	l := newLegend()
+	var l legend
 	l.entry("some words")
 	l.entry("and some more")
 	page := draw.Canvas{Rectangle: vg.Rectangle{Max: vg.Point{X: 200, Y: 150}}}
@@ -207,8 +207,8 @@ func TestLegendCoversNothing(t *testing.T) {
 		{"band", []obstacle{{0, 0.1, 0.9}, {0.5, 0.1, 0.9}, {1, 0.1, 0.9}}, true},
 	} {
 		p.Y.Max = 1
-		r := l.place(p, area, c.os)
-		if r == (vg.Rectangle{}) {
+		r, ok := l.place(p, area, c.os)
+		if !ok {
 			t.Fatalf("%s: no place", c.name)
 		}
 		for _, o := range c.os {
@@ -222,6 +222,24 @@ func TestLegendCoversNothing(t *testing.T) {
 		if a := area(); !a.Contains(r.Min) || !a.Contains(r.Max) {
 			t.Errorf("%s: legend %v leaves the panel %v", c.name, r, a.Rectangle)
 		}
+	}
+}
+
+// A panel that is full gets its legend underneath, and keeps its axes.
+func TestLegendUnderAFullPanel(t *testing.T) {
+	p := newPlot(0, 1, 0, 1, "x", "y")
+	page := draw.Canvas{Rectangle: vg.Rectangle{Max: vg.Point{X: 200, Y: 150}}}
+	var l legend
+	for range 9 {
+		l.entry("some words")
+	}
+	r, ok := l.place(p, func() draw.Canvas { return p.DataCanvas(page) }, line2(0, 0.5, 1, 0.5))
+	if ok || p.Y.Max != 1 || p.Y.Min != 0 {
+		t.Errorf("place %v, %v; axis to %g", r, ok, p.Y.Max)
+	}
+	pic := l.complete(picture{width: 200, height: 150, draw: func(draw.Canvas) {}}, r, ok)
+	if want := 150 + l[:5].size().Y + margin; pic.height != want {
+		t.Errorf("page of height %g, want %g", pic.height, want)
 	}
 }
 

@@ -161,7 +161,7 @@ func cases() map[string]invented {
 		"negative": {name: "k falls with T", unit: "cm^3 molecule^-1 s^-1", t: evenly(200, 400, 9), lnK: arrheniusLaw(-25, -4), noise: 0.05, seed: 10, state: diagnostics.WithinPrefactor, curve: "linear-prefactor", model: fit.Relative, edit: func(a *diagnostics.Assessment) { a.Verdict.ETrend = "rises" }},
 		"narrow":   {name: "ten kelvin", unit: "s^-1", t: evenly(298.15, 308.15, 5), lnK: arrheniusLaw(20, 60), noise: 0.03, seed: 11, state: diagnostics.Unresolved, curve: "straight", model: fit.Relative},
 		"four":     {name: "four points", unit: "s^-1", t: evenly(298.15, 328.15, 4), lnK: arrheniusLaw(20, 60), noise: 0.03, seed: 12, state: diagnostics.Unresolved, curve: "straight", model: fit.Relative},
-		"sources": {name: "nine laboratories, absolute errors", unit: "s^-1", t: evenly(300, 420, 27), lnK: arrheniusLaw(12, 45), noise: 0.2, seed: 14, u: true, sources: []string{"A", "B", "C", "D", "E", "F", "G", "H", "a laboratory with a very long name indeed"}, state: diagnostics.CurvedOpen, curve: "linear-prefactor", model: fit.StatedAbsolute, edit: func(a *diagnostics.Assessment) {
+		"sources": {name: "nine laboratories, absolute errors", unit: "s^-1", t: evenly(300, 420, 27), lnK: arrheniusLaw(12, 45), noise: 0.02, seed: 14, u: true, sources: []string{"A", "B", "C", "D", "E", "F", "G", "H", "a laboratory with a very long name indeed"}, state: diagnostics.CurvedOpen, curve: "linear-prefactor", model: fit.StatedAbsolute, edit: func(a *diagnostics.Assessment) {
 			a.Dataset.Quantity.Symbol = "k_cat/K_M"
 			a.Dataset.Quantity.Unit = "L mol^-1 s^-1"
 			a.Data[0].UK = a.Data[0].K * 2

@@ -257,20 +257,39 @@ type spot struct{ draw.GlyphStyle }
 // Thumbnail implements plot.Thumbnailer.
 func (s spot) Thumbnail(c *draw.Canvas) { c.DrawGlyphNoClip(s.GlyphStyle, c.Center()) }
 
-// legend entries are kept beside their thumbnails until a place is found.
-type legend struct{ plot.Legend }
+// legend keeps its entries until a place is found for them.
+type legend []legendEntry
 
-func newLegend() legend {
-	l := plot.NewLegend()
-	l.TextStyle = style(legendSize)
-	l.Left, l.Top = true, true
-	l.ThumbnailWidth = 20
-	l.Padding = 2.5
-	return legend{l}
+type legendEntry struct {
+	words  string
+	thumbs []plot.Thumbnailer
 }
 
-// entry adds words behind their thumbnails, with a little room between them.
-func (l *legend) entry(words string, thumbs ...plot.Thumbnailer) { l.Add(" "+words, thumbs...) }
+// entry adds words behind their thumbnails.
+func (l *legend) entry(words string, thumbs ...plot.Thumbnailer) {
+	*l = append(*l, legendEntry{words, thumbs})
+}
+
+// column sets the entries one under the other.
+func (l legend) column() *plot.Legend {
+	c := plot.NewLegend()
+	c.TextStyle = style(legendSize)
+	c.Left, c.Top = true, true
+	c.ThumbnailWidth = 20
+	c.Padding = 2.5
+	for _, e := range l {
+		c.Add(" "+e.words, e.thumbs...)
+	}
+	return &c
+}
+
+// size of the legend in one column.
+func (l legend) size() vg.Point {
+	c := l.column()
+	size := c.Rectangle(draw.Canvas{}).Size()
+	size.Y += c.TextStyle.FontExtents().Descent
+	return size
+}
 
 // bandEntry explains the tint of the bands, if there are any.
 func (l *legend) bandEntry(lines []Line, confidence float64) {
@@ -289,18 +308,21 @@ type obstacle struct{ x, low, high float64 }
 // clearance is what a legend keeps from data and frame.
 const clearance = 5
 
+// mostGrowth is the number of times that place makes 6 % of room at the top.
+const mostGrowth = 6
+
 // place finds a corner of the panel where the legend covers nothing; where there
-// is none it makes room at the top. Guide lines may pass behind it. The rectangle is
-// empty if the panel is too small.
-func (l *legend) place(p *plot.Plot, area func() draw.Canvas, obstacles []obstacle) vg.Rectangle {
-	size := l.Rectangle(draw.Canvas{}).Size()
-	size.Y += l.TextStyle.FontExtents().Descent
-	for range 40 {
+// is none it makes some room at the top. ok is false if that does not help. Guide
+// lines may pass behind a legend.
+func (l legend) place(p *plot.Plot, area func() draw.Canvas, obstacles []obstacle) (r vg.Rectangle, ok bool) {
+	size := l.size()
+	low, high := p.Y.Min, p.Y.Max
+	for range mostGrowth {
 		c := area()
 		trX, trY := p.Transforms(&c)
 		for _, corner := range [][2]bool{{false, true}, {true, true}, {true, false}, {false, false}} {
 			left, top := corner[0], corner[1]
-			r := vg.Rectangle{Min: vg.Point{X: c.Max.X - clearance - size.X, Y: c.Min.Y + clearance}}
+			r = vg.Rectangle{Min: vg.Point{X: c.Max.X - clearance - size.X, Y: c.Min.Y + clearance}}
 			if left {
 				r.Min.X = c.Min.X + clearance
 			}
@@ -308,27 +330,51 @@ func (l *legend) place(p *plot.Plot, area func() draw.Canvas, obstacles []obstac
 				r.Min.Y = c.Max.Y - clearance - size.Y
 			}
 			r.Max = r.Min.Add(size)
-			free := func(o obstacle) bool {
+			covers := func(o obstacle) bool {
 				x, lo, hi := trX(o.x), trY(o.low), trY(o.high)
-				return x < r.Min.X-clearance || x > r.Max.X+clearance || hi < r.Min.Y-clearance || lo > r.Max.Y+clearance
+				return x >= r.Min.X-clearance && x <= r.Max.X+clearance && hi >= r.Min.Y-clearance && lo <= r.Max.Y+clearance
 			}
-			if r.Min.X >= c.Min.X && r.Min.Y >= c.Min.Y && !slices.ContainsFunc(obstacles, func(o obstacle) bool { return !free(o) }) {
-				return r
+			if r.Min.X >= c.Min.X && r.Min.Y >= c.Min.Y && !slices.ContainsFunc(obstacles, covers) {
+				return r, true
 			}
 		}
 		p.Y.Max += 0.06 * (p.Y.Max - p.Y.Min)
 	}
-	return vg.Rectangle{}
+	p.Y.Min, p.Y.Max = low, high
+	return vg.Rectangle{}, false
 }
 
-// drawAt draws the legend in its place; it is left out if place found none.
-func (l *legend) drawAt(c draw.Canvas, r vg.Rectangle) {
-	if r == (vg.Rectangle{}) {
-		return
+// complete adds the legend to a picture: at r if a place was found, else in two
+// columns under it, on a page made longer.
+func (l legend) complete(p picture, r vg.Rectangle, found bool) picture {
+	picture := p.draw
+	if found {
+		p.draw = func(c draw.Canvas) {
+			picture(c)
+			c.SetColor(color.White)
+			c.Fill(r.Path())
+			l.column().Draw(draw.Canvas{Canvas: c.Canvas, Rectangle: r})
+		}
+		return p
 	}
-	c.SetColor(color.White)
-	c.Fill(r.Path())
-	l.Draw(draw.Canvas{Canvas: c.Canvas, Rectangle: r})
+	half := (len(l) + 1) / 2
+	foot := legend(l[:half]).size().Y + margin
+	inner := vg.Rectangle{Max: vg.Point{X: p.width, Y: p.height}}
+	p.height += foot
+	p.draw = func(c draw.Canvas) {
+		fillPage(c)
+		c.Push()
+		c.Translate(vg.Point{Y: foot})
+		picture(draw.Canvas{Canvas: c.Canvas, Rectangle: inner})
+		c.Pop()
+		for i, part := range []legend{l[:half], l[half:]} {
+			x := margin + vg.Length(i)*(p.width-margin)/2
+			part.column().Draw(draw.Canvas{Canvas: c.Canvas, Rectangle: vg.Rectangle{
+				Min: vg.Point{X: x}, Max: vg.Point{X: p.width, Y: foot},
+			}})
+		}
+	}
+	return p
 }
 
 // span is a range that grows by what it is shown.
