@@ -202,8 +202,8 @@ func TestTidyReadsBack(t *testing.T) {
 		t.Fatal(err)
 	}
 	a, b := x.Files[0].Sets[0].Data, y.Files[0].Sets[0].Data
-	if len(a) != 12 || len(b) != len(a) {
-		t.Fatalf("%d rows, then %d; want 12", len(a), len(b))
+	if len(a) != 14 || len(b) != len(a) {
+		t.Fatalf("%d rows, then %d; want 14", len(a), len(b))
 	}
 	for i := range a {
 		if a[i] != b[i] {

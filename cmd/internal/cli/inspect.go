@@ -3,7 +3,6 @@ package cli
 import (
 	"context"
 	"errors"
-	"fmt"
 	"os"
 
 	"github.com/spf13/cobra"
@@ -74,7 +73,7 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 	}
 	if failed > 0 {
 		doc.Problems = problemsOf(all)
-		fmt.Fprintln(a.err, all.Error())
+		a.complain(all)
 	}
 	var err error
 	if a.json {
@@ -91,10 +90,13 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 // writeTidy writes the table to a file that is not there yet: rates that someone
 // measured are not overwritten.
 func writeTidy(name string, sets []*dataset.Set) (err error) {
-	for _, s := range sets[1:] {
-		if s.Quantity.Unit != sets[0].Quantity.Unit || s.Quantity.Symbol != sets[0].Quantity.Symbol {
+	all := *sets[0]
+	all.Points = nil
+	for _, s := range sets {
+		if s.Quantity.Unit != all.Quantity.Unit || s.Quantity.Symbol != all.Quantity.Symbol {
 			return usagef("choose one with --dataset NAME", "--tidy writes one rate quantity, but the data sets hold several")
 		}
+		all.Points = append(all.Points, s.Points...)
 	}
 	f, err := os.OpenFile(name, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o666)
 	if errors.Is(err, os.ErrExist) {
@@ -104,5 +106,5 @@ func writeTidy(name string, sets []*dataset.Set) (err error) {
 		return err
 	}
 	defer func() { err = errors.Join(err, f.Close()) }()
-	return report.WriteTidy(f, sets)
+	return dataset.Tidy(f, &all)
 }

@@ -31,6 +31,7 @@ type app struct {
 	quiet    bool
 	colour   string
 	progress io.Writer // stderr where it is a terminal, else nil
+	failed   error     // of printing help, which has no other way to report it
 }
 
 // Main runs one command line and returns its exit code. On an error stdout stays
@@ -48,6 +49,9 @@ func Main(ctx context.Context, args []string, in io.Reader, out, errOut io.Write
 	root.SetOut(out)
 	root.SetErr(errOut)
 	err := guard(errOut, func() error { return root.ExecuteContext(ctx) })
+	if err == nil {
+		err = a.failed
+	}
 	// Whatever a command made of it, a signal is why the work ended.
 	var sig *signalError
 	if err != nil && errors.As(context.Cause(ctx), &sig) {
@@ -82,9 +86,7 @@ func (a *app) finish(err error, asJSON bool) int {
 	if err == nil {
 		return code
 	}
-	for _, line := range strings.Split(err.Error(), "\n") {
-		fmt.Fprintf(a.err, "onebarrier: %s\n", line)
-	}
+	a.complain(err)
 	if asJSON && code >= exitFailed && code <= exitData {
 		doc := report.Problems{Schema: report.ProblemsSchema, Problems: problemsOf(err)}
 		if err := report.JSON(a.out, doc); err != nil {
@@ -92,6 +94,13 @@ func (a *app) finish(err error, asJSON bool) int {
 		}
 	}
 	return code
+}
+
+// complain prints an error on stderr, each of its lines under the program's name.
+func (a *app) complain(err error) {
+	for _, line := range strings.Split(err.Error(), "\n") {
+		fmt.Fprintf(a.err, "onebarrier: %s\n", line)
+	}
 }
 
 // asksJSON looks for --json in a command line that could not be read as a whole.
@@ -127,7 +136,7 @@ func withSignals(ctx context.Context) (context.Context, func()) {
 
 func newRoot(a *app) *cobra.Command {
 	root := &cobra.Command{
-		Use:   "onebarrier",
+		Use:   "onebarrier COMMAND",
 		Short: "Tell whether rate constants at several temperatures have one barrier",
 		Long: `onebarrier reads rate constants measured at several temperatures and tells
 whether one barrier describes them, whether the data could have told, what to
@@ -150,10 +159,11 @@ publish and with what uncertainty.`,
 	}
 	root.SetVersionTemplate("onebarrier {{.Version}}\n")
 	root.SetFlagErrorFunc(flagError)
+	root.SetHelpFunc(func(cmd *cobra.Command, _ []string) { a.failed = printHelp(a.out, cmd) })
 	root.PersistentFlags().BoolVar(&a.quiet, "quiet", false, "no progress and no warnings on stderr")
 	root.PersistentFlags().Var(&choice{&a.colour, []string{"auto", "always", "never"}}, "color", "colour in text")
 	completeWith(root, "color", "auto", "always", "never")
-	root.AddCommand(newInspect(a), newModels(a), newExplain(a), newSchema(a), newCompletion(a), newVersion(a))
+	root.AddCommand(newAssess(a), newInspect(a), newModels(a), newExplain(a), newSchema(a), newCompletion(a), newVersion(a))
 	root.SetHelpCommand(newHelp())
 	return root
 }
@@ -191,7 +201,7 @@ func flagError(cmd *cobra.Command, err error) error {
 	case errors.As(err, &invalid):
 		f := invalid.GetFlag()
 		cause := errors.Unwrap(invalid)
-		what := map[string]string{"int": "a whole number", "uint64": "a whole number, 0 or more", "float64": "a number", "bool": "true or false"}[f.Value.Type()]
+		what := map[string]string{"int": "a whole number", "uint64": "a whole number, 0 or more", "float64": "a number", "bool": "true or false", "intSlice": "a list of whole numbers such as 3,7"}[f.Value.Type()]
 		if what != "" {
 			return usagef("", "--%s: %q is not %s", f.Name, invalid.GetValue(), what)
 		}

@@ -29,6 +29,8 @@ func addSelection(cmd *cobra.Command, o *dataset.Options) {
 	f.IntSliceVar(&o.LeaveOut, "leave-out", nil, "leave out these `lines` of the file")
 	f.Var(temperature{&o.TMin}, "t-min", "leave out rows below this temperature, such as 195K or 25degC")
 	f.Var(temperature{&o.TMax}, "t-max", "leave out rows above this temperature")
+	group(f, "how the file is read", "column", "assume", "decimal")
+	group(f, "which rows are used", selectionFlags...)
 	completeWith(cmd, "decimal", "comma", "point")
 	completeWith(cmd, "column", "temperature=", "k=", "source=", "dataset=", "order=")
 	completeWith(cmd, "assume", "T=K", "T=degC", "T=degF", "log=lg", "log=ln", "k=rate", "error=1", "error=2", "error=sd,n=3")
@@ -66,9 +68,6 @@ func (a *app) readSets(ctx context.Context, name string, o dataset.Options) ([]*
 		return nil, nil, err
 	}
 	sets, err := dataset.Read(name, bytes.NewReader(content), o)
-	if err == nil && len(sets) == 0 {
-		err = dataset.Problems{{Code: "no-data", File: name, Message: "no rows of data were found", Cure: "give a table with one column of temperatures and one of rate constants"}}
-	}
 	return sets, content, err
 }
 
@@ -96,7 +95,7 @@ func (a *app) readAll(ctx context.Context, name string) ([]byte, error) {
 		if r.err == nil {
 			return r.content, nil
 		}
-		p := dataset.Problem{Code: "unreadable-file", File: name, Message: r.err.Error()}
+		p := dataset.Problem{Code: "read-failed", File: name, Message: r.err.Error()}
 		var pe *fs.PathError
 		if errors.As(r.err, &pe) {
 			p.Message = pe.Err.Error()

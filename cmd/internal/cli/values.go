@@ -1,6 +1,7 @@
 package cli
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -8,6 +9,8 @@ import (
 	"strings"
 
 	"github.com/spf13/cobra"
+
+	"onebarrier/diagnostics"
 )
 
 // choice is the value of a flag that takes one of a few words.
@@ -86,13 +89,11 @@ type band struct{ ends *[2]float64 }
 func (b band) String() string { return fmt.Sprintf("%g..%g", b.ends[0], b.ends[1]) }
 func (b band) Type() string   { return "low..high" }
 func (b band) Set(s string) error {
-	low, high, ok := strings.Cut(s, "..")
-	x, err1 := strconv.ParseFloat(low, 64)
-	y, err2 := strconv.ParseFloat(high, 64)
-	if !ok || err1 != nil || err2 != nil || !(x <= 0 && y >= 0) || math.IsInf(x-y, 0) {
-		return fmt.Errorf("%q is not a band of exponents that holds 0; write it as 0..1", s)
+	ends, err := diagnostics.ParseBand(s)
+	if err != nil {
+		return errors.New(strings.TrimPrefix(err.Error(), "diagnostics: "))
 	}
-	*b.ends = [2]float64{x, y}
+	*b.ends = ends
 	return nil
 }
 
@@ -146,7 +147,7 @@ func completeWith(cmd *cobra.Command, flag string, words ...string) {
 
 // closest returns the word that is nearest to a mistyped one, "" if none is near.
 func closest(typed string, words []string) string {
-	best, most := "", 1+len(typed)/4
+	best, most := "", 1+len(typed)/6
 	for _, w := range words {
 		if d := editDistance(typed, w); d <= most {
 			best, most = w, d-1

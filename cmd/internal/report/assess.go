@@ -6,6 +6,7 @@ import (
 	"io"
 	"slices"
 	"strings"
+	"unicode/utf8"
 
 	"onebarrier/diagnostics"
 )
@@ -29,7 +30,7 @@ func WriteAssessment(w io.Writer, a *diagnostics.Assessment, figures []string, t
 
 func (p *page) verdict(a *diagnostics.Assessment) {
 	// The first sentence is the answer, the others say what it rests on.
-	lines := wrap(a.Verdict.Sentence, p.body())
+	lines := Wrap(a.Verdict.Sentence, p.body())
 	for i, l := range lines {
 		head, rest, ends := strings.Cut(l, ". ")
 		if ends || strings.HasSuffix(l, ".") {
@@ -55,15 +56,32 @@ func (p *page) verdict(a *diagnostics.Assessment) {
 		facts = append(facts, m)
 	}
 	facts = append(facts, "recommended curve: "+or(a.Verdict.RecommendedCurve, "none of the candidates fits"))
-	p.section("verdict", append(lines, wrap(strings.Join(facts, " · "), p.body())...)...)
+	p.section("verdict", append(lines, Wrap(strings.Join(facts, " · "), p.body())...)...)
 }
 
 func (p *page) publish(a *diagnostics.Assessment) {
-	var rows [][]string
+	const longest = 26 // of a value in a column; what is longer has its note below
+	symbols, values := 0, 0
 	for _, l := range a.Publish.Lines {
-		rows = append(rows, []string{l.Symbol, or(l.Text, unknown), l.Note})
+		symbols = max(symbols, utf8.RuneCountInString(l.Symbol))
+		if n := utf8.RuneCountInString(l.Text); n <= longest {
+			values = max(values, n)
+		}
 	}
-	lines := p.fit(rows)
+	var lines []string
+	for _, l := range a.Publish.Lines {
+		value := or(l.Text, unknown)
+		head := pad(l.Symbol, symbols+2) + pad(value, values+2)
+		switch {
+		case l.Note == "":
+			lines = append(lines, hang(pad(l.Symbol, symbols+2), symbols+2, value, p.body())...)
+		case utf8.RuneCountInString(value) > longest:
+			lines = append(lines, hang(pad(l.Symbol, symbols+2), symbols+2, value, p.body())...)
+			lines = append(lines, hang("", symbols+4, l.Note, p.body())...)
+		default:
+			lines = append(lines, hang(head, symbols+values+4, l.Note, p.body())...)
+		}
+	}
 	p.section("publish", append(lines, wrapAll(a.Publish.Notes, p.body())...)...)
 }
 
@@ -111,11 +129,11 @@ func (p *page) test(a *diagnostics.Assessment) {
 	}
 	if c.Detectable.Value.Known() {
 		dd := decimalsOf(c.Detectable)
-		text := fmt.Sprintf("%s\u00a0kJ/mol with 80\u00a0%% power", plain(c.Detectable.Value, dd))
+		text := fmt.Sprintf("%s\u00a0kJ/mol", plain(c.Detectable.Value, dd))
 		if c.Detectable.Lower.Known() || c.Detectable.Upper.Known() {
 			text += fmt.Sprintf(" (%s to %s)", plain(c.Detectable.Lower, dd), plain(c.Detectable.Upper, dd))
 		}
-		rows = append(rows, []string{"would have been seen", text})
+		rows = append(rows, []string{"seen with 80 % power", text})
 	}
 	if pw := c.Pointwise; pw != nil {
 		rows = append(rows, []string{"the same on single points", fmt.Sprintf("n = %s, p = %s", signed(pw.Exponent.Value, nd), probability(pw.PValue))})
@@ -123,7 +141,7 @@ func (p *page) test(a *diagnostics.Assessment) {
 	if s := c.SecondBarrier; s != nil {
 		text := fmt.Sprintf("p = %s", probability(s.PValue))
 		if s.PValue < 0.05 && s.Crossover[0].Known() {
-			text += fmt.Sprintf(", crossover between %s and %s\u00a0K", kelvin(s.Crossover[0]), kelvin(s.Crossover[1]))
+			text += fmt.Sprintf(", crossover between %s and %s\u00a0K", plain(s.Crossover[0], 0), plain(s.Crossover[1], 0))
 		}
 		rows = append(rows, []string{"second barrier, E rising", text})
 	}
@@ -147,13 +165,13 @@ func (p *page) test(a *diagnostics.Assessment) {
 
 func (p *page) ranking(a *diagnostics.Assessment) {
 	criterion := map[string]string{"aicc": "AICc", "aic": "AIC", "bic": "BIC"}[a.Settings.Criterion]
-	rows := [][]string{{"curve", "p", criterion, "Δ", "family", "curve", "repeats", "fits"}}
+	rows := [][]string{{"curve", "p", criterion, "Δ", "family", "weight", "repeats", "fits"}}
 	for _, r := range a.Ranking {
 		if r.Status == "excluded" {
 			continue
 		}
 		x := map[string]diagnostics.Real{"aicc": r.AICc, "aic": r.AIC, "bic": r.BIC}[a.Settings.Criterion]
-		fits := "not checked"
+		fits := unknown
 		if r.Adequate != nil {
 			fits = map[bool]string{true: "yes", false: "no"}[*r.Adequate]
 		}
@@ -165,7 +183,7 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 	i := 0
 	for _, r := range a.Ranking {
 		if r.Status == "excluded" {
-			lines = append(lines, wrap(r.Curve+" is excluded: "+or(r.Reason, "no reason given"), p.body())...)
+			lines = append(lines, Wrap(r.Curve+" is excluded: "+or(r.Reason, "no reason given"), p.body())...)
 			continue
 		}
 		i++
@@ -174,10 +192,16 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 			lines = append(lines, hang("", 2, r.Reason, p.body())...)
 		}
 		for _, f := range r.Forms {
+			if f.Withheld != "" && strings.Contains(r.Reason, f.Withheld) {
+				continue // said already
+			}
 			lines = append(lines, hang("  ·", 4, form(f), p.body())...)
 		}
 	}
-	lines = append(lines, wrap("weights: of the family, then of the curve within it all; repeats: how often a repeat of the experiment would put the curve first", p.body())...)
+	legend := "family, weight: evidence for the curve's family and for the curve, in shares; repeats: how often a repeat of the experiment would put the family first; fits: adequacy at 1 %"
+	for _, l := range Wrap(legend, p.body()) {
+		lines = append(lines, p.dim(l))
+	}
 	p.section("ranking", lines...)
 }
 
@@ -207,9 +231,9 @@ func (p *page) findings(a *diagnostics.Assessment) {
 	slices.SortStableFunc(fs, func(x, y diagnostics.Finding) int { return cmp.Compare(weight[x.Severity], weight[y.Severity]) })
 	var lines []string
 	for _, f := range fs {
-		label := string(f.Severity) + "\u00a0" + f.Code
-		styled := p.bold(label)
+		label, styled := f.Code, f.Code
 		if f.Severity != diagnostics.Info {
+			label = strings.ToUpper(string(f.Severity)) + "\u00a0" + f.Code
 			styled = p.amber(label)
 		}
 		lines = append(lines, p.note(styled, label, f.Message, f.Cure, f.Rows)...)
@@ -224,13 +248,13 @@ func (p *page) data(a *diagnostics.Assessment) {
 	if d.Quantity.Unit != "" {
 		facts += " in " + d.Quantity.Unit
 	}
-	lines := wrap(facts, p.body())
-	lines = append(lines, wrap(fmt.Sprintf("error model %s: %s", a.Settings.ErrorModel, a.Settings.ErrorModelWhy), p.body())...)
+	lines := Wrap(facts, p.body())
+	lines = append(lines, Wrap(fmt.Sprintf("error model %s: %s", a.Settings.ErrorModel, a.Settings.ErrorModelWhy), p.body())...)
 	for _, s := range a.Settings.Assumed {
-		lines = append(lines, wrap("assumed: "+s, p.body())...)
+		lines = append(lines, Wrap("assumed: "+s, p.body())...)
 	}
 	for _, s := range a.Settings.Selection {
-		lines = append(lines, wrap("selection: "+s, p.body())...)
+		lines = append(lines, Wrap("selection: "+s, p.body())...)
 	}
 	for _, r := range a.Data {
 		if !r.Used {
@@ -241,15 +265,16 @@ func (p *page) data(a *diagnostics.Assessment) {
 }
 
 func (p *page) next(a *diagnostics.Assessment, figures []string) {
-	rows := [][]string{{"onebarrier explain " + string(a.Verdict.State), "this verdict in full"}}
+	rows := [][]string{{"the verdict in full:", "onebarrier explain " + string(a.Verdict.State)}}
 	for _, f := range a.Findings {
 		if f.Severity == diagnostics.Alarm {
-			rows = append(rows, []string{"onebarrier explain " + f.Code, "this alarm in full"})
+			rows = append(rows, []string{"an alarm in full:", "onebarrier explain " + f.Code})
 			break
 		}
 	}
-	if len(figures) == 0 && len(a.Dataset.Files) > 0 && a.Dataset.Files[0] != "-" {
-		rows = append(rows, []string{"onebarrier assess " + shellWord(a.Dataset.Files[0]) + " --figures figures", "the pictures"})
+	if len(figures) == 0 {
+		rows = append(rows, []string{"pictures:", "the same with --figures FOLDER"})
 	}
-	p.section("next", p.fit(rows)...)
+	rows = append(rows, []string{"every number:", "the same with --json"})
+	p.section("next", table(rows)...)
 }

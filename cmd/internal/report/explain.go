@@ -27,10 +27,10 @@ func WriteFindings(w io.Writer, doc Findings, details bool, t Text) error {
 	if details {
 		for _, e := range doc.Findings {
 			p.section("code", p.bold(e.Code)+" ("+string(e.Severity)+")")
-			p.section("shown as", wrap(e.Title, p.body())...)
-			p.section("meaning", wrap(e.Explanation, p.body())...)
-			p.section("cure", wrap(e.Cure, p.body())...)
-			p.section("reference", wrap(e.Reference, p.body())...)
+			p.section("shown as", Wrap(e.Title, p.body())...)
+			p.section("meaning", Wrap(e.Explanation, p.body())...)
+			p.section("cure", Wrap(e.Cure, p.body())...)
+			p.section("reference", Wrap(e.Reference, p.body())...)
 		}
 		return p.writeTo(w)
 	}

@@ -155,7 +155,7 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 	if s.Used > 0 {
 		facts += fmt.Sprintf(", at %s from %s to %s\u00a0K", count(s.Temperatures, "temperature"), kelvin(s.TMin), kelvin(s.TMax))
 	}
-	lines := append([]string{about}, wrap(facts, p.body())...)
+	lines := append([]string{about}, Wrap(facts, p.body())...)
 	rate := s.Quantity.Symbol + " in " + s.Quantity.Unit
 	if !s.Quantity.DimensionKnown {
 		rate = s.Quantity.Symbol + " in a unit that was not understood: entropies and free energies will be withheld"
@@ -163,7 +163,7 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 			rate = fmt.Sprintf("%s in %q, a unit that was not understood: entropies and free energies will be withheld", s.Quantity.Symbol, s.Quantity.Unit)
 		}
 	}
-	p.section("read", append(lines, wrap(rate, p.body())...)...)
+	p.section("read", append(lines, Wrap(rate, p.body())...)...)
 
 	rows := [][]string{{"heading", "taken for", "unit", "how sure"}}
 	for _, c := range s.Columns {
@@ -197,16 +197,21 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 }
 
 // note prints a finding: its code, what was found and on which lines, its cure.
-func (p *page) note(label, plainLabel, message, cure string, rows []int) []string {
-	text := plainLabel + ":\u00a0" + message
-	if len(rows) > 0 {
+func (p *page) note(styled, label, message, cure string, rows []int) []string {
+	text := label + ":\u00a0" + message
+	if len(rows) > 0 && !strings.Contains(message, "line") {
 		text += " (" + lineList(rows) + ")"
 	}
-	lines := wrap(text, p.body())
-	// The label was wrapped without its colour, which has no width.
-	lines[0] = label + strings.TrimPrefix(lines[0], plainLabel)
 	if cure != "" {
-		lines = append(lines, hang("→", 2, cure, p.body())...)
+		text += " →\u00a0" + cure
+	}
+	lines := Wrap(text, p.body()-2)
+	for i := range lines {
+		if i == 0 { // the label was wrapped without its colour, which has no width
+			lines[i] = styled + strings.TrimPrefix(lines[i], label)
+		} else {
+			lines[i] = "  " + lines[i]
+		}
 	}
 	return lines
 }
@@ -233,7 +238,7 @@ func lineList(rows []int) string {
 func wrapAll(texts []string, width int) []string {
 	var lines []string
 	for _, t := range texts {
-		lines = append(lines, wrap(t, width)...)
+		lines = append(lines, Wrap(t, width)...)
 	}
 	return lines
 }

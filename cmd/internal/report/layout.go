@@ -80,9 +80,9 @@ func (p *page) writeTo(w io.Writer) error {
 	return err
 }
 
-// wrap breaks text at spaces into lines of at most width columns; a word that is
+// Wrap breaks text at spaces into lines of at most width columns; a word that is
 // longer has a line of its own. No-break spaces hold a number to its unit.
-func wrap(text string, width int) []string {
+func Wrap(text string, width int) []string {
 	var lines []string
 	line, n := "", 0
 	for _, word := range strings.FieldsFunc(text, func(r rune) bool { return r == ' ' || r == '\n' || r == '\t' }) {
@@ -105,7 +105,7 @@ func wrap(text string, width int) []string {
 
 // hang wraps text behind a label of a fixed width; later lines are indented by it.
 func hang(label string, indent int, text string, width int) []string {
-	lines := wrap(text, width-indent)
+	lines := Wrap(text, width-indent)
 	if len(lines) == 0 {
 		lines = []string{""}
 	}

@@ -8,30 +8,6 @@ import (
 	"onebarrier/diagnostics"
 )
 
-// JCGM 100:2008, 7.2.2: 100.021 47 g with u = 0.35 mg is written 100.021 47(35) g.
-func TestBrackets(t *testing.T) {
-	for _, c := range []struct {
-		value, u float64
-		want     string
-	}{
-		{100.02147, 0.00035, "100.02147(35)"},
-		{52.34, 0.18, "52.34(18)"},
-		{52.34, 0.0996, "52.34(10)"},
-		{-71.2, 1.1, "−71.2(1.1)"},
-		{1234.4, 12, "1234(12)"},
-		{1234.4, 340, "1230(340)"},
-		{1234.4, 996, "1200(1000)"},
-		{7, math.NaN(), "7.0000(–)"},
-		{math.NaN(), 1, "–"},
-	} {
-		got := brackets(diagnostics.Estimate{Value: diagnostics.Real(c.value), StdError: diagnostics.Real(c.u),
-			Lower: diagnostics.Real(math.NaN()), Upper: diagnostics.Real(math.NaN())})
-		if got != c.want {
-			t.Errorf("brackets(%v, %v) = %q, want %q", c.value, c.u, got, c.want)
-		}
-	}
-}
-
 func TestBracketsWithoutStandardError(t *testing.T) {
 	upper := "upper"
 	none := diagnostics.Real(math.NaN())
@@ -72,12 +48,12 @@ func TestNumbers(t *testing.T) {
 func nan() float64 { return math.NaN() }
 
 func TestWrap(t *testing.T) {
-	got := wrap("one  two three\nfour\u00a0five averyverylongword x", 10)
+	got := Wrap("one  two three\nfour\u00a0five averyverylongword x", 10)
 	want := []string{"one two", "three", "four\u00a0five", "averyverylongword", "x"}
 	if strings.Join(got, "|") != strings.Join(want, "|") {
 		t.Errorf("wrap gives %q, want %q", got, want)
 	}
-	if got := wrap("", 10); len(got) != 0 {
+	if got := Wrap("", 10); len(got) != 0 {
 		t.Errorf("nothing wraps to %q", got)
 	}
 }

@@ -65,7 +65,7 @@ func WriteModels(w io.Writer, doc Models, details bool, t Text) error {
 	p := t.newPage()
 	for _, c := range doc.Curves {
 		lines := []string{p.bold(c.Curve) + strings.Repeat(" ", max(2, 24-len(c.Curve))) + c.Formula}
-		lines = append(lines, wrap(c.Summary, p.body())...)
+		lines = append(lines, Wrap(c.Summary, p.body())...)
 		if !details {
 			for _, f := range c.Forms {
 				lines = append(lines, hang("· "+f.Model, 24, f.Formula, p.body())...)
@@ -84,12 +84,12 @@ func WriteModels(w io.Writer, doc Models, details bool, t Text) error {
 		}
 		p.section("curve", lines...)
 		for _, f := range c.Forms {
-			lines := []string{p.bold(f.Model) + "   " + f.Formula}
+			lines := append([]string{p.bold(f.Model)}, Wrap(f.Formula, p.body())...)
 			for _, q := range f.Parameters {
 				lines = append(lines, hang("  "+symbol(q.Symbol), 10, q.Name+", "+paramUnit(q.Unit), p.body())...)
 			}
 			if f.NeedsTimeUnit {
-				lines = append(lines, wrap("withheld where the unit of k is not understood: the entropy needs its time unit and standard state", p.body())...)
+				lines = append(lines, Wrap("withheld where the unit of k is not understood: the entropy needs its time unit and standard state", p.body())...)
 			}
 			lines = append(lines, hang("source", 10, f.Source, p.body())...)
 			p.section("form", lines...)
@@ -117,7 +117,7 @@ func trend(t string) string {
 func symbol(s string) string {
 	switch s {
 	case "ln_A", "ln_A1", "ln_A2":
-		return strings.Replace(s, "_", " ", 1)
+		return strings.Replace(s, "_", string(nbsp), 1)
 	case "dH":
 		return "ΔH‡"
 	case "dS":

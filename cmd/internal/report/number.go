@@ -119,33 +119,12 @@ func decimalsOf(e diagnostics.Estimate) int {
 	return min(max(0, decimalsFor(float64(e.Value), 3)), 9)
 }
 
-// brackets writes an estimate as the GUM does: the standard uncertainty, to two
-// digits, stands in brackets and counts in the last digits of the number.
+// brackets writes an estimate with its standard uncertainty in brackets, or with
+// its interval where only that is known.
 func brackets(e diagnostics.Estimate) string {
-	if !e.Value.Known() {
-		return unknown
+	if e.Value.Known() && !e.StdError.Known() && (e.Open != nil || e.Lower.Known() && e.Upper.Known()) {
+		d := decimalsOf(e)
+		return plain(e.Value, d) + " (" + interval(e, d) + ")"
 	}
-	u := float64(e.StdError)
-	if !(u > 0) || math.IsInf(u, 0) {
-		if e.Open != nil || e.Lower.Known() && e.Upper.Known() {
-			d := decimalsOf(e)
-			return plain(e.Value, d) + " (" + interval(e, d) + ")"
-		}
-		return significant(e.Value, 5) + "(" + unknown + ")"
-	}
-	d := decimalsFor(u, 2)
-	scale := math.Pow(10, float64(d))
-	digits := math.Round(u * scale)
-	if digits >= 100 { // 0.0996 is 0.10
-		d--
-		scale /= 10
-		digits = math.Round(u * scale)
-	}
-	if d < 0 {
-		return plain(diagnostics.Real(math.Round(float64(e.Value)*scale)/scale), 0) + "(" + strconv.FormatFloat(digits/scale, 'f', 0, 64) + ")"
-	}
-	if u >= 1 && d > 0 { // 12.3(1.4), not 12.3(14): the point stays where it is
-		return plain(e.Value, d) + "(" + strconv.FormatFloat(u, 'f', d, 64) + ")"
-	}
-	return plain(e.Value, d) + "(" + strconv.FormatFloat(digits, 'f', 0, 64) + ")"
+	return diagnostics.GUM(float64(e.Value), float64(e.StdError))
 }

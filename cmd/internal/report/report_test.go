@@ -245,26 +245,3 @@ func TestJSONRefusesNaN(t *testing.T) {
 		t.Error("NaN is encoded")
 	}
 }
-
-func TestTidyKeepsLevels(t *testing.T) {
-	set := &dataset.Set{Quantity: dataset.Quantity{Symbol: "k_obs", Unit: "L mol^-1 s^-1"},
-		Columns: []dataset.Column{{Heading: "pH", Role: "kept"}},
-		Points: []dataset.Point{
-			{T: 298.15, K: 0.1, UK: 0.01, Level: dataset.LevelStandard, Used: true, Order: math.NaN(), Extra: map[string]string{"pH": "7,0"}},
-			{T: 308.15, K: 0.2, UK: 0.1, SD: 0.3, Repeats: 9, Level: dataset.LevelRepeats, Used: true, Order: math.NaN()},
-			{T: 318.15, K: 9, Used: false, Order: math.NaN()},
-			{T: 328.15, K: 1e-12, Limit: "<", Order: math.NaN()},
-		}}
-	var b strings.Builder
-	if err := report.WriteTidy(&b, []*dataset.Set{set}); err != nil {
-		t.Fatal(err)
-	}
-	want := `T/K,k_obs/(L mol^-1 s^-1),u(k_obs)/(L mol^-1 s^-1),s(k_obs)/(L mol^-1 s^-1),n,limit,pH
-298.15,0.1,0.01,,,,"7,0"
-308.15,0.2,,0.3,9,,
-328.15,1e-12,,,,<,
-`
-	if b.String() != want {
-		t.Errorf("got\n%s\nwant\n%s", b.String(), want)
-	}
-}
