@@ -247,6 +247,11 @@ var catalogue = []Entry{
 		Cure:        "write the unit in the heading, such as k/s^-1",
 	},
 	{
+		Code: "extrapolated", Title: "outside the measured range", Severity: Warning,
+		Explanation: "The reference temperature lies outside the range that was measured. A curve that fits inside says little outside: no data can exclude a second path that begins just past the hot end. " + Caution,
+		Cure:        "choose a --reference-temperature inside the range, or measure there",
+	},
+	{
 		Code: "several-datasets", Title: "several data sets in one file", Severity: Alarm,
 		Explanation: "A verdict is about one data set: one rate constant of one reaction under one set of conditions. The file holds several.",
 		Cure:        "choose one with --dataset NAME",
