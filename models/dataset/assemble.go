@@ -106,9 +106,9 @@ func (m *maker) decideDecimal(p *plan, first int) bool {
 		if i > first && m.t.Blank[i] {
 			break
 		}
-		for j := range p.cols {
+		for j := range min(len(p.cols), len(r.Cells)) {
 			c := &p.cols[j]
-			if !c.used || c.Role == RoleSource || c.Role == RoleDataset || c.Role == RoleNote || c.Role == RoleLimit || j >= len(r.Cells) {
+			if !c.used || c.Role == RoleSource || c.Role == RoleDataset || c.Role == RoleNote || c.Role == RoleLimit {
 				continue
 			}
 			cell := r.Cells[j]

@@ -113,7 +113,7 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 	// A second heading row: units or words, and no number.
 	if first < len(t.Rows) {
 		second := t.Rows[first]
-		if units, words := headingRow(second.Cells); units || words && first+1 < len(t.Rows) {
+		if units, words := headingRow(second.Cells); units || words && first+1 < len(t.Rows) && !hasRole(headings, m.opt.Assume) {
 			for j, c := range second.Cells {
 				c = strings.TrimSpace(c)
 				if j >= len(headings) || c == "" {
@@ -129,12 +129,15 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 		}
 	}
 	// Empty columns at the right end come from spreadsheets.
-	for n := len(headings); n > 0 && strings.TrimSpace(headings[n-1]) == ""; n-- {
-		for _, r := range t.Rows[first:] {
-			if len(r.Cells) >= n && strings.TrimSpace(r.Cells[n-1]) != "" {
-				return headings, head.Line, first, notices, true
+	width := 0
+	for _, r := range t.Rows[first:] {
+		for n := len(r.Cells); n > width; n-- {
+			if strings.TrimSpace(r.Cells[n-1]) != "" {
+				width = n
 			}
 		}
+	}
+	for n := len(headings); n > width && strings.TrimSpace(headings[n-1]) == ""; n-- {
 		headings = headings[:n-1]
 	}
 	return headings, head.Line, first, notices, true
@@ -203,10 +206,13 @@ func splitLine(line string, delimiter byte, n int) []string {
 	return wide
 }
 
+// hasRole reports whether headings hold a temperature and a rate constant for certain.
 func hasRole(cells []string, assume map[string]string) bool {
 	roles := map[Role]bool{}
 	for _, c := range cells {
-		roles[ParseHeading(c, assume).Role] = true
+		if h := ParseHeading(c, assume); h.Ambiguity == nil {
+			roles[h.Role] = true
+		}
 	}
 	return roles[RoleTemperature] && roles[RoleRate]
 }
@@ -463,7 +469,7 @@ func (m *maker) unitFromCells(c *column) bool {
 	text := ""
 	for _, r := range m.t.Rows[1:] {
 		if c.index >= len(r.Cells) {
-			continue
+			break // ragged, and refused later
 		}
 		cell := r.Cells[c.index]
 		if _, plain := plainNumber(cell, '.', 0); plain || cell == "" {
@@ -517,18 +523,18 @@ func (m *maker) chooseRate(p *plan, forced *column, line int) {
 	if len(certain) == 0 {
 		certain = times
 	}
-	var groups []string
+	groups := map[string]bool{}
 	for _, c := range certain {
-		g := plainSymbol(c.Symbol) + string(c.halfLife())
-		if !slices.Contains(groups, g) {
-			groups = append(groups, g)
-		}
+		groups[plainSymbol(c.Symbol)+string(c.halfLife())] = true
 	}
 	switch {
 	case len(groups) > 1:
 		var names, flags []string
 		for _, c := range certain {
 			names = append(names, c.Text)
+			if len(flags) == 6 {
+				continue
+			}
 			flags = append(flags, fmt.Sprintf("--column 'k=%s'", c.Text))
 		}
 		m.refuseCure(codeSeveralRates, line, "", "there are columns of different rate constants: "+quoteAll(names), "choose one: "+strings.Join(flags, " or "))

@@ -164,6 +164,9 @@ func (p *splitter) next(delimiter byte) (cells []string, line int, unclosed, ok 
 			break
 		}
 		i++ // the delimiter
+		if len(p.cell) > MostColumns {
+			return p.cell, line, false, true // refused; the rest does not matter
+		}
 	}
 	if i < len(s) {
 		if s[i] == '\r' && i+1 < len(s) && s[i+1] == '\n' {
@@ -220,7 +223,7 @@ func delimiter(text string) byte {
 		var l string
 		l, rest = cutLine(rest)
 		if l = strings.TrimSpace(l); l != "" && !isComment(l) {
-			sample = append(sample, l)
+			sample = append(sample, l[:min(len(l), 1<<16)])
 		}
 	}
 	if len(sample) == 0 {
