@@ -239,7 +239,8 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "limits-left-out", Title: "limits left out", Severity: Warning,
-		Explanation: "Values given as limits (< or >) take no part in the fits.",
+		Explanation: "Values given as limits (< or >) take no part in the fits: a limit is no measured value, and fitting it as one bends the line.",
+		Cure:        "look whether the fitted curve respects each limit; the rows are listed",
 	},
 	{
 		Code: "eyring-withheld", Title: "entropy of activation withheld", Severity: Info,
@@ -259,5 +260,6 @@ var catalogue = []Entry{
 	{
 		Code: "resamples-failed", Title: "some resamples could not be fitted", Severity: Warning,
 		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares.",
+		Cure:        "--scheme parametric, or fewer candidates with --models; a few failures in a thousand do no harm",
 	},
 }

@@ -138,6 +138,11 @@ func notAPrefactor(n, changeKJ float64) Finding {
 		nil, map[string]Real{"n": Real(n)})
 }
 
+func bandNarrow(band [2]float64) Finding {
+	return newFinding("band-narrow-for-gas-phase",
+		fmt.Sprintf("gas-phase elementary reactions often need an exponent of T from 0 to 3; the prefactor band is %g to %g", band[0], band[1]), nil, nil)
+}
+
 func restsOnStated(p, scaleFree float64) Finding {
 	return newFinding("rests-on-stated",
 		fmt.Sprintf("p = %s with the stated uncertainties, %s by the scatter of the points alone", pText(p), pText(scaleFree)),

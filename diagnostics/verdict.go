@@ -185,6 +185,7 @@ type VerdictInput struct {
 	Untestable    bool
 	More          int     // how many more temperatures it would take
 	Why           string  // why they are needed
+	PerMolecule   bool    // k is per molecule: a reaction in the gas phase
 	EnergyUnit    string  // to print energies in; "" is kJ/mol
 	PerKJ         float64 // that unit in one kJ/mol; 0 is 1
 }
@@ -217,6 +218,7 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	add(v.State.Curved() && in.restsOnStated(), func() Finding { return restsOnStated(t.PValue, t.PScaleFree) })
 	add(!in.Untestable && t.PValue >= 0.01 && t.PValue <= 0.1, func() Finding { return borderline(t.PValue) })
 	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding { return notAPrefactor(t.Exponent.Value, t.Change.Value) })
+	add(in.PerMolecule && !in.Untestable && in.Rule.Band[1] < 3, func() Finding { return bandNarrow(in.Rule.Band) })
 	if b := in.SecondBarrier; b.found() {
 		fs = append(fs, secondBarrierFound(b, in.Sample)...)
 	}
