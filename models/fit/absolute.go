@@ -20,6 +20,8 @@ type objective struct {
 	unit    float64 // largest |k|; 1 where unit does not enter RSS or errors are in ln k
 	lnScale float64 // ln of the unit in which k is compared
 	y, root []float64
+
+	barriers []int // parameters that are bounded
 }
 
 func newObjective(s *Sample, c models.Curve) *objective {
@@ -28,6 +30,13 @@ func newObjective(s *Sample, c models.Curve) *objective {
 	o.root = make([]float64, s.Len())
 	for i, v := range s.V {
 		o.root[i] = 1 / math.Sqrt(v)
+	}
+	if _, ok := c.(models.Shaped); ok {
+		for j, p := range c.Info().Params {
+			if p.Unit == "J/mol" {
+				o.barriers = append(o.barriers, j)
+			}
+		}
 	}
 	if !o.inK {
 		return o
@@ -49,11 +58,25 @@ func newObjective(s *Sample, c models.Curve) *objective {
 	return o
 }
 
+// beyond reports whether a barrier of a shaped curve exceeds maxBarrier: such steps
+// are refused, since two paths could follow any single point with them.
+func (o *objective) beyond(p []float64) bool {
+	for _, j := range o.barriers {
+		if !(math.Abs(p[j]) <= maxBarrier) {
+			return true
+		}
+	}
+	return false
+}
+
 func (o *objective) problem() Problem {
 	m := o.s.Len()
 	f := make([]float64, m)
 	return Problem{M: m, N: o.n, Eval: func(p, r, jac []float64) {
 		o.c.LnK(o.s.TRef, o.s.T, p, f, jac)
+		if o.beyond(p) {
+			f[0] = math.NaN()
+		}
 		for i := range f {
 			slope := o.root[i]
 			if o.inK {
@@ -96,14 +119,16 @@ func fitInK(s *Sample, c models.Curve) *Result {
 	}
 	o := newObjective(s, c)
 	pr, engine := o.problem(), newSolver(s.Len(), p)
+	starts = append(starts, o.bentStarts(pr)...)
 	least := math.Inf(1)
 	var p0 []float64
 	for _, start := range starts {
-		_, ok, reason := engine.trustRegion(pr, start, Options{})
-		if rss := floats.Dot(engine.r, engine.r); ok && rss < least {
+		// Short first steps stay in the valley in which a start lies; the best is
+		// taken to convergence below.
+		_, _, r.Reason = engine.trustRegion(pr, start, Options{Factor: 0.01, Tolerance: 1e-6, MaxIterations: 50})
+		if rss := floats.Dot(engine.r, engine.r); rss < least {
 			least, p0 = rss, append(p0[:0], engine.p...)
 		}
-		r.Reason = reason
 	}
 	if p0 == nil {
 		return r
@@ -128,13 +153,15 @@ func fitInK(s *Sample, c models.Curve) *Result {
 		r.Status, cov = NotIdentified, nil
 		r.Reason = fmt.Sprintf("needs at least %d distinct temperatures, has %d", p, d)
 	}
-	if isShaped {
-		for j, param := range c.Info().Params {
-			if param.Unit == "J/mol" && !(math.Abs(r.P[j]) <= maxBarrier) {
-				r.Status, cov = NotIdentified, nil
-				r.Reason = fmt.Sprintf("a barrier beyond %g kJ/mol would fit better still", maxBarrier/1000)
-			}
+	for _, j := range o.barriers {
+		if !(math.Abs(r.P[j]) < 0.99*maxBarrier) {
+			r.Status, cov = NotIdentified, nil
+			r.Reason = fmt.Sprintf("a barrier beyond %g kJ/mol would fit better still", maxBarrier/1000)
 		}
+	}
+	if isShaped && cov != nil && !(relativeError(c, best.RSS/float64(max(1, r.Nu)), s.Model, cov) <= maxLnError) {
+		r.Status, cov = NotIdentified, nil
+		r.Reason = "one path is too slow everywhere to leave a trace in these data"
 	}
 	r.Fitted = make([]float64, r.N)
 	c.LnK(s.TRef, s.T, r.P, r.Fitted, nil)
@@ -144,6 +171,25 @@ func fitInK(s *Sample, c models.Curve) *Result {
 	}
 	r.settle(s, cov, o.unit)
 	return r
+}
+
+// maxLnError is the standard error of ln k_ref past which a path counts as lost: its
+// own rate constant is then uncertain by a factor of e^100, and its barrier is noise.
+const maxLnError = 100
+
+// relativeError is the largest standard error of a parameter that is the ln of a rate
+// constant, from the unscaled covariance and s² = RSS/ν.
+func relativeError(c models.Curve, s2 float64, m ErrorModel, cov []float64) (most float64) {
+	if m.KnownSigma() {
+		s2 = 1
+	}
+	ps := c.Info().Params
+	for j, p := range ps {
+		if p.Unit == "k" {
+			most = math.Max(most, math.Sqrt(s2*cov[j*len(ps)+j]))
+		}
+	}
+	return most
 }
 
 // startsInK fits the points with k > 0 in ln k with variances V/k^m, m = 2, 1, 0:
@@ -177,4 +223,92 @@ func startsInK(s *Sample, c models.Curve) (starts [][]float64, status Status, re
 		}
 	}
 	return starts, status, reason
+}
+
+// bentStarts bends a line by given amounts and fits the line to what is left, in ln
+// k with variances V/k², for the curves that have more than a line: with errors in k
+// they have local minima, in which the curve runs through a single high point at the
+// cold end, for one. Of 1,500 sets with a scatter of 3 % of the largest k the fits in
+// ln k alone miss the best minimum of a power curve in 1 %, with these in 0.1 %.
+func (o *objective) bentStarts(pr Problem) (starts [][]float64) {
+	s, m := o.s, o.s.Len()
+	x := make([]float64, m) // (1/T - 1/T_ref)/R
+	models.CentredX(s.TRef, s.T, x)
+	g := make([]float64, m)
+	switch c := o.c.(type) {
+	case models.Basis:
+		if o.n != 3 {
+			return nil
+		}
+		off, design := make([]float64, m), make([]float64, m*o.n)
+		c.Columns(s.TRef, s.T, off, design)
+		var most float64
+		for i := range m {
+			most = math.Max(most, math.Abs(design[3*i+2]))
+		}
+		for _, bend := range []float64{-16, -4, -1, 1, 4} { // in ln k
+			n := bend / most
+			for i := range m {
+				g[i] = off[i] + n*design[3*i+2]
+			}
+			a, e := s.weightedLine(x, g)
+			starts = append(starts, []float64{a, e, n})
+		}
+	case models.Shaped:
+		if _, ok := softplusSign(c); !ok {
+			return nil
+		}
+		low, high := floats.Min(x), floats.Max(x)
+		r := make([]float64, m)
+		for _, width := range []float64{2, 6, 20, 60, 200} { // difference of barriers times range
+			var best []float64
+			least := math.Inf(1)
+			for _, at := range []float64{0.1, 0.3, 0.5, 0.7, 0.9} { // crossover
+				d := math.Min(width/(high-low), maxBarrier/2)
+				q := []float64{d * (low + at*(high-low)), d}
+				c.Shape(x, q, g, nil, nil)
+				a, e := s.weightedLine(x, g)
+				p := make([]float64, o.n)
+				c.FromShape(a, e, q, p)
+				pr.Eval(p, r, nil)
+				if rss := floats.Dot(r, r); rss < least {
+					least, best = rss, p
+				}
+			}
+			if best != nil {
+				starts = append(starts, best)
+			}
+		}
+	}
+	return starts
+}
+
+// weightedLine fits ln k - g = a - e x to the points with k > 0, weights k²/V.
+func (s *Sample) weightedLine(x, g []float64) (a, e float64) {
+	var lnW []float64
+	most := math.Inf(-1)
+	for i, k := range s.K {
+		l := math.Inf(-1)
+		if k > 0 {
+			l = 2*s.Y[i] - math.Log(s.V[i])
+		}
+		lnW = append(lnW, l)
+		most = math.Max(most, l)
+	}
+	var sw, sx, sy float64
+	for i, l := range lnW {
+		if w := math.Exp(l - most); w > 0 {
+			sw, sx, sy = sw+w, sx+w*x[i], sy+w*(s.Y[i]-g[i])
+		}
+	}
+	mx, my := sx/sw, sy/sw
+	var sxx, sxy float64
+	for i, l := range lnW {
+		if w := math.Exp(l - most); w > 0 {
+			d := x[i] - mx
+			sxx, sxy = sxx+w*d*d, sxy+w*d*(s.Y[i]-g[i]-my)
+		}
+	}
+	e = -sxy / sxx
+	return my + e*mx, e
 }

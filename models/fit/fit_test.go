@@ -123,6 +123,45 @@ func TestInKWithNonPositiveRates(t *testing.T) {
 	}
 }
 
+// TestInKFindsTheBetterValley: scatter at the cold end makes a second minimum, n =
+// 171.6 with RSS 0.0132, to which every fit in ln k leads. The better one is from
+// minpack.lm in R 4.2.2, started at n = -200.
+func TestInKFindsTheBetterValley(t *testing.T) {
+	temp := []float64{280, 290, 300, 310, 320, 330, 340, 350, 360, 370, 380}
+	k := []float64{0.065, 0.006, 0.015, 0.006, 0.005, -0.022, 0.043, 0.02, 0.207, 0.481, 1.031}
+	r := Fit(mustSample(t, Absolute, temp, k, ones(11)), models.PowerPrefactor{})
+	want(t, "RSS", r.RSS, 0.00780635251070222, 1e-9)
+	want(t, "n", r.P[2], -242.260969038288, 1e-6)
+}
+
+// TestLostPathIsNotIdentified: a second path that carries a share of 1e-12 at most.
+func TestLostPathIsNotIdentified(t *testing.T) {
+	c := models.Parallel{}
+	temp := []float64{300, 310, 320, 330, 340, 350, 360, 370}
+	f, k := make([]float64, 8), make([]float64, 8)
+	models.Straight().LnK(333, temp, []float64{0, 60e3}, f, nil)
+	for i := range k {
+		k[i] = math.Exp(f[i]) * (1 + 0.02*float64(i%3-1))
+	}
+	s := mustSample(t, Absolute, temp, k, ones(8))
+	r := Fit(s, c)
+	if r.Status == Converged {
+		sd := math.Sqrt(math.Max(r.Cov[0], r.Cov[10]))
+		if !(sd <= maxLnError) {
+			t.Errorf("converged with a standard error of ln k of %g", sd)
+		}
+	}
+	// One that is lost beyond doubt, from the definition.
+	cov := make([]float64, 16)
+	cov[0], cov[10] = 1, 1e6
+	if e := relativeError(c, 4, Absolute, cov); e != 2000 {
+		t.Errorf("standard error %g, want 2000", e)
+	}
+	if e := relativeError(c, 4, StatedAbsolute, cov); e != 1000 {
+		t.Errorf("standard error %g, want 1000", e)
+	}
+}
+
 // TestInKInvariance: the unit of k shifts ln k_ref and nothing else, over 300
 // decades; known from the scaling k -> ck of the model.
 func TestInKInvariance(t *testing.T) {
@@ -239,6 +278,9 @@ func TestFailuresAreStatuses(t *testing.T) {
 			}
 			if (r.Status == Converged) != (r.Reason == "") {
 				t.Errorf("%s, %s: reason %q", m, c.name, r.Reason)
+			}
+			if r.Status == NotIdentified && !strings.Contains(r.Reason, "distinct temperatures, has ") {
+				t.Errorf("%s, %s: the reason does not name the cure: %s", m, c.name, r.Reason)
 			}
 			if r.Status == NotIdentified && (r.Cov != nil || !finite(r.RSS, r.LogLik) || !finite(r.Fitted...)) {
 				t.Errorf("%s, %s: covariance %v, RSS %g, log-likelihood %g", m, c.name, r.Cov, r.RSS, r.LogLik)

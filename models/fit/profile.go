@@ -78,7 +78,8 @@ func ProfileExponent(s *Sample, r *Result, confidence float64) Estimate {
 //
 //	(S(g) - S_min)/(S_min/ν) <= F(1, ν), or S(g) - S_min <= χ²(1) with σ known
 //
-// (Bates & Watts 1988, section 6.1.2). An end that is not reached within 2^20
+// (Bates & Watts 1988, section 6.1.2), as far as they hang together with the estimate.
+// An end that is not reached within 2^20
 // half-widths is open and infinite. With errors in ln k and a models.Basis it is the
 // interval of Interval, which is then exact.
 func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
