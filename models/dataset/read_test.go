@@ -178,7 +178,7 @@ func TestEncodings(t *testing.T) {
 	for name, in := range map[string]string{"utf-8": text, "bom": "\ufeff" + text, "windows-1252": w1252, "utf-16le": little, "utf-16be": big} {
 		s := read(t, in, Options{})
 		p := s.Points[0]
-		if p.T != 298.15 || p.K != 0.001 || p.Source != "Zürich" {
+		if p.T != 298.15 || p.K != 0.001 || p.Source != "Zürich" || s.Columns[0].Heading != "t/°C" {
 			t.Errorf("%s: %+v", name, p)
 		}
 		if said := slices.Contains(codes(s), noteEncoding); said != (name == "windows-1252") {
