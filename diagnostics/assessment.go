@@ -115,10 +115,9 @@ type Assessment struct {
 	Findings    []Finding   `json:"findings"`
 
 	// What figures need beyond the document.
-	Sample        *fit.Sample            `json:"-"` // the points or means that the verdict used
-	Fits          map[string]*fit.Result `json:"-"` // by curve name
-	ChangeOfE     []float64              `json:"-"` // bootstrap values of ΔE, kJ/mol, sorted
-	ChangeOfEUsed string                 `json:"-"` // the curve that generated them
+	Sample    *fit.Sample            `json:"-"` // the points or means that the verdict used
+	Fits      map[string]*fit.Result `json:"-"` // by curve name
+	ChangeOfE []float64              `json:"-"` // bootstrap values of ΔE about power-prefactor, kJ/mol, sorted
 }
 
 // Tool names the program that made the document.

@@ -373,7 +373,7 @@ func NewChange(a *diagnostics.Assessment) *Change {
 	slices.Sort(vs)
 	e := a.Curvature.EChange
 	d := &Change{
-		Resamples: len(a.ChangeOfE), Generator: a.ChangeOfEUsed, Scheme: a.Settings.Scheme,
+		Resamples: len(a.ChangeOfE), Generator: models.PowerPrefactor{}.Info().Name, Scheme: a.Settings.Scheme,
 		Estimate: float64(e.Value), Lower: float64(e.Lower), Upper: float64(e.Upper),
 		Tolerance: float64(a.Curvature.ToleranceKJ), Confidence: confidence(a),
 	}

@@ -109,7 +109,6 @@ func refit(a *diagnostics.Assessment, s *fit.Sample) {
 			a.ChangeOfE = append(a.ChangeOfE, de+se*r.NormFloat64())
 		}
 		slices.Sort(a.ChangeOfE)
-		a.ChangeOfEUsed = "power-prefactor"
 	}
 }
 
