@@ -26,6 +26,7 @@ type fastRefitter struct {
 	index       []int     // entries taken
 	root        []float64 // sqrt of their counts
 	search      *search
+	pass        []bool // shapes of the fine cover that may come first
 	cur, trial  normal
 	q           [2]float64
 }
@@ -222,25 +223,47 @@ func (r *fastRefitter) fitShaped(w *workspace, sc *shapedCandidate, best float64
 			t[j] = sc.sign * w.product[sc.warm.first+j]
 		}
 		c, d := sc.warm.predict(&t)
-		if rss, ok := r.warm(w, c, d); ok {
+		if rss, ok := r.warm(w, c, d); ok && sc.warm.trusts(&r.cur) {
 			return rss, HowWarm
 		}
 	}
+	limit := math.Inf(1)
 	if r.screens {
-		limit := r.limit(sc.index, best)
+		limit = r.limit(sc.index, best)
 		coarse, fine := r.covers()
-		if coarse.excludes(w.data, sc.sign, w.zz, limit) || fine.excludes(w.data, sc.sign, w.zz, limit) {
+		if coarse.excludes(w.data, sc.sign, w.zz, limit) || r.narrow(fine, w, sc.sign, limit) {
 			return math.Inf(1), HowScreened
 		}
 	}
 	e, ok := r.cold(&w.kernel, r.search, w.zz, coldTol)
-	return r.settle(e, ok)
+	return r.settle(e, ok, limit)
 }
 
-// settle keeps the outcome of a global search.
-func (r *fastRefitter) settle(e *normal, ok bool) (float64, How) {
+// narrow marks the nodes of a global search that may lead below the limit, and
+// reports whether there are none.
+func (r *fastRefitter) narrow(fine *cover, w *workspace, sign, limit float64) (none bool) {
+	if r.pass == nil {
+		r.pass = make([]bool, len(fine.shapes))
+		r.search.skip = make([]bool, len(r.nodes))
+	}
+	if w == &r.full {
+		none = fine.narrow(w.data, sign, w.zz, limit, r.pass)
+	} else {
+		none = r.narrowTaken(fine, w, sign, limit)
+	}
+	if !none {
+		for j, k := range fine.nodes {
+			r.search.skip[j] = !r.pass[k]
+		}
+	}
+	return none
+}
+
+// settle keeps the outcome of a global search. A minimum above the limit need not be
+// the lowest one, and is no more than proof that the curve does not come first.
+func (r *fastRefitter) settle(e *normal, ok bool, limit float64) (float64, How) {
 	r.cur = *e
-	if !ok {
+	if !ok || e.rss > limit {
 		return math.Inf(1), HowCold
 	}
 	return e.rss, HowCold
@@ -397,13 +420,14 @@ func (r *fastRefitter) project(w *workspace) {
 func (r *fastRefitter) fitTaken(w *workspace, sc *shapedCandidate, best float64) (float64, How) {
 	w.load(sc.sign)
 	if sc.warm != nil {
-		if rss, ok := r.warm(w, sc.warm.c, sc.warm.d); ok {
+		if rss, ok := r.warm(w, sc.warm.c, sc.warm.d); ok && sc.warm.trusts(&r.cur) {
 			return rss, HowWarm
 		}
 	}
+	limit := math.Inf(1)
 	if r.screens {
-		_, fine := r.covers()
-		if r.excludesTaken(fine, w, sc.sign, r.limit(sc.index, best)) {
+		limit = r.limit(sc.index, best)
+		if _, fine := r.covers(); r.narrow(fine, w, sc.sign, limit) {
 			return math.Inf(1), HowScreened
 		}
 	}
@@ -416,7 +440,7 @@ func (r *fastRefitter) fitTaken(w *workspace, sc *shapedCandidate, best float64)
 		}
 	}
 	e, ok := r.descend(&w.kernel, r.search, w.zz, coldTol)
-	return r.settle(e, ok)
+	return r.settle(e, ok, limit)
 }
 
 // takenProducts returns the products of four whitened vectors of the full design,
@@ -445,24 +469,26 @@ func (r *fastRefitter) takenProducts(w *workspace, full []quad) (withData, norm2
 	return withData, norm2
 }
 
-// excludesTaken is cover.excludes on the projector of a resample with counts.
-func (r *fastRefitter) excludesTaken(c *cover, w *workspace, sign, limit float64) bool {
+// narrowTaken is cover.narrow on the projector of a resample with counts.
+func (r *fastRefitter) narrowTaken(c *cover, w *workspace, sign, limit float64) (none bool) {
 	b, decided, excluded := c.against(w.zz, limit)
-	if decided {
-		return excluded
-	}
+	none = true
 	n := len(r.resampleDesign.rows)
 	for k := 0; k < len(c.shapes); k += 4 {
-		zs, norm2 := r.takenProducts(w, c.quads[k/4*n:])
+		var zs, norm2 quad
+		if !decided {
+			zs, norm2 = r.takenProducts(w, c.quads[k/4*n:])
+		}
 		for j := range min(4, len(c.shapes)-k) {
-			if norm2[j] <= 1e-12 {
-				continue // what is left of this shape is rounding
+			pass := !excluded
+			if !decided {
+				norm := math.Sqrt(norm2[j])
+				// Where norm2 is rounding the shape is a line here.
+				pass = norm2[j] > 1e-12 && b.beaten(sign*zs[j]/norm, c.low[k+j]*norm, c.high[k+j]*norm)
 			}
-			norm := math.Sqrt(norm2[j])
-			if b.beaten(sign*zs[j]/norm, c.low[k+j]*norm, c.high[k+j]*norm) {
-				return false
-			}
+			r.pass[k+j] = pass
+			none = none && !pass
 		}
 	}
-	return true
+	return none
 }

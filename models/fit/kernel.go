@@ -153,14 +153,11 @@ func (k *kernel) step(cur, trial *normal) bool {
 // floor, or nothing more is gained.
 func (k *kernel) converge(cur, trial *normal, tol float64, most int) {
 	for range most {
-		if cur.rss <= k.floor {
-			return
-		}
-		if !k.step(cur, trial) {
+		if cur.rss <= k.floor || !k.step(cur, trial) {
 			return
 		}
 		k.solve(cur)
-		if cur.decrement <= tol*cur.rss && cur.newton {
+		if cur.newton && cur.decrement <= tol*cur.rss {
 			return
 		}
 	}

@@ -266,9 +266,10 @@ const (
 // search is the scratch of a cold fit.
 type search struct {
 	rss   []float64 // at the nodes
+	skip  []bool    // nodes that are known to lead nowhere; nil for none
 	start [coldStarts]normal
-	most  int // starts to use
 	trial normal
+	most  int // starts to use
 }
 
 func (p *plan) newSearch() *search {
@@ -288,14 +289,16 @@ func (p *plan) cold(k *kernel, s *search, straight, tol float64) (best *normal, 
 	return p.descend(k, s, straight, tol)
 }
 
-// descend is cold once the residual sums of squares at the nodes are known.
-func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
-	var pick [coldStarts]int
-	picked := 0
+// pick lists the lowest level-wise minima among the nodes, lowest first.
+func (p *plan) pick(s *search, pick *[coldStarts]int) (picked int) {
 	for j := range p.nodes {
 		v, level := s.rss[j], p.nodes[j].level
-		if j > 0 && p.nodes[j-1].level == level && s.rss[j-1] <= v ||
-			j+1 < len(p.nodes) && p.nodes[j+1].level == level && s.rss[j+1] < v {
+		before := j > 0 && p.nodes[j-1].level == level
+		after := j+1 < len(p.nodes) && p.nodes[j+1].level == level
+		if before && s.rss[j-1] <= v || after && s.rss[j+1] < v {
+			continue
+		}
+		if s.skip != nil && s.skip[j] && !(before && !s.skip[j-1]) && !(after && !s.skip[j+1]) {
 			continue
 		}
 		at := picked
@@ -309,6 +312,13 @@ func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *norma
 		copy(pick[at+1:picked], pick[at:picked-1])
 		pick[at] = j
 	}
+	return picked
+}
+
+// descend is cold once the residual sums of squares at the nodes are known.
+func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
+	var pick [coldStarts]int
+	picked := p.pick(s, &pick)
 	for i, j := range pick[:picked] {
 		e := &s.start[i]
 		k.at(p.nodes[j].c, p.nodes[j].d, e)
@@ -318,7 +328,7 @@ func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *norma
 		// The best that is left, unless it is one of the earlier finals.
 		at := -1
 		for i := f; i < picked; i++ {
-			if f > 0 && sameMinimum(&s.start[0], &s.start[i]) {
+			if f > 0 && near(&s.start[0], &s.start[i], 1e-3) {
 				continue
 			}
 			if at < 0 || s.start[i].rss < s.start[at].rss {
@@ -342,13 +352,13 @@ func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *norma
 // it the two are the same curve.
 const improvement = 1e-10
 
-// sameMinimum reports whether two points of the search are the same minimum, in
-// either of its two notations.
-func sameMinimum(a, b *normal) bool {
+// near reports whether two points of the search agree to tol, in either of their two
+// notations.
+func near(a, b *normal, tol float64) bool {
 	c, d := b.c, b.d
 	if a.d*d < 0 {
 		c, d = -c, -d
 	}
-	tol := 1e-3 * (1 + math.Abs(a.d))
+	tol *= 1 + math.Abs(a.d)
 	return math.Abs(a.d-d) < tol && math.Abs(a.c-c) < tol
 }

@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"reflect"
+	"sync"
 	"testing"
 
 	"onebarrier/models"
@@ -195,6 +197,191 @@ func TestRefitFirstPlaces(t *testing.T) {
 			t.Errorf("pairs %v: %d of %d first places are wrong", pairs, wrong, total)
 		}
 	}
+}
+
+// TestRefitAboutAnotherCurve: resamples of an identified two-path set drawn about its
+// straight line lie far from the estimate, where another minimum may be the lower one.
+func TestRefitAboutAnotherCurve(t *testing.T) {
+	wrong := 0
+	for set := range 10 {
+		r := newResampling(t, uint64(200+set), 12, false)
+		r.truth = r.fits[0].Fitted
+		ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{})
+		var out Refit
+		y := make([]float64, 12)
+		for range 50 {
+			r.draw(y)
+			ref.Refit(y, &out)
+			if !(relErr(out.RSS[2], coldRSS(r.s, y, nil, r.curves[2])) <= 1e-8) {
+				wrong++
+			}
+		}
+	}
+	if wrong > 0 {
+		t.Errorf("%d of 500 differ from a cold fit", wrong)
+	}
+}
+
+// TestRefitMatchesFit: all five default curves under weights, known σ and repeated
+// temperatures give the RSS and the parameters of Fit, with and without counts.
+func TestRefitMatchesFit(t *testing.T) {
+	for _, model := range []ErrorModel{Relative, Stated, Scaled} {
+		r := newResampling(t, 11, 12, false)
+		r.s.Model = model
+		for i := range r.s.T {
+			r.s.V[i] = 1e-4 * float64(1+i%3)
+			if i%4 == 1 {
+				r.s.T[i] = r.s.T[i-1]
+			}
+		}
+		r.choose(models.Default()...)
+		r.truth = r.fits[4].Fitted
+		ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{ShapedParams: true})
+		if _, fast := ref.(*fastRefitter); !fast {
+			t.Fatal("the default curves went the slow road")
+		}
+		var out Refit
+		y := make([]float64, 12)
+		counts := []int{1, 2, 0, 1, 1, 3, 0, 1, 1, 0, 1, 2}
+		for round := range 20 {
+			r.draw(y)
+			sub := *r.s
+			sub.Y = y
+			if round%2 == 0 {
+				ref.Refit(y, &out)
+			} else {
+				ref.RefitCounts(y, counts, &out)
+				sub.T, sub.V, sub.Y, sub.K = nil, nil, nil, nil
+				for i, m := range counts {
+					for range m {
+						sub.T, sub.V = append(sub.T, r.s.T[i]), append(sub.V, r.s.V[i])
+						sub.Y, sub.K = append(sub.Y, y[i]), append(sub.K, math.Exp(y[i]))
+					}
+				}
+			}
+			best, first := math.Inf(1), -1
+			for j, c := range r.curves {
+				f := Fit(&sub, c)
+				label := fmt.Sprintf("%s round %d %s", model, round, c.Info().Name)
+				if !f.Usable() {
+					if !math.IsInf(out.RSS[j], 1) {
+						t.Errorf("%s: RSS %g, but Fit says %v", label, out.RSS[j], f.Status)
+					}
+					continue
+				}
+				want(t, label+" RSS", out.RSS[j], f.RSS, 1e-9)
+				if f.Status == Converged {
+					for i, p := range f.P {
+						want(t, label+" "+c.Info().Params[i].Symbol, out.P[j][i], p, 1e-6)
+					}
+				}
+				if f.RSS < best {
+					best, first = f.RSS, j
+				}
+			}
+			if out.First != first {
+				t.Errorf("%s round %d: curve %d first, want %d", model, round, out.First, first)
+			}
+		}
+	}
+}
+
+// TestRefitAllocatesNothing: after the first call no road allocates.
+func TestRefitAllocatesNothing(t *testing.T) {
+	for _, straight := range []bool{false, true} {
+		r := newResampling(t, 3, 20, straight)
+		for _, o := range []RefitOptions{{}, {Penalty: r.penalty}, {Penalty: r.penalty, ShapedParams: true}} {
+			ref := NewRefitter(r.s, r.curves, r.fits, o)
+			var out Refit
+			y, counts := make([]float64, 20), make([]int, 20)
+			allocs := testing.AllocsPerRun(300, func() {
+				r.draw(y)
+				ref.Refit(y, &out)
+				clear(counts)
+				for range counts {
+					counts[r.rng.IntN(20)]++
+				}
+				ref.RefitCounts(r.s.Y, counts, &out)
+			})
+			if allocs != 0 {
+				t.Errorf("straight %v, %+v: %g allocations a resample", straight, o, allocs)
+			}
+		}
+	}
+}
+
+// TestRefitClones: workers with clones of one refitter give what one worker gives.
+func TestRefitClones(t *testing.T) {
+	r := newResampling(t, 5, 10, true)
+	ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{Penalty: r.penalty})
+	ys := make([][]float64, 64)
+	want := make([]Refit, len(ys))
+	for i := range ys {
+		ys[i] = make([]float64, 10)
+		r.draw(ys[i])
+	}
+	got := make([]Refit, len(ys))
+	var wg sync.WaitGroup
+	for w := range 4 {
+		clone := ref.Clone()
+		wg.Go(func() {
+			for i := w; i < len(ys); i += 4 {
+				clone.Refit(ys[i], &got[i])
+			}
+		})
+	}
+	wg.Wait()
+	for i, y := range ys {
+		ref.Refit(y, &want[i])
+		if !reflect.DeepEqual(got[i], want[i]) {
+			t.Errorf("resample %d: %+v, one worker %+v", i, got[i], want[i])
+		}
+	}
+}
+
+// TestRefitFails: a curve with as many parameters as temperatures fails, and the
+// others are fitted all the same.
+func TestRefitFails(t *testing.T) {
+	r := newResampling(t, 3, 10, false)
+	for _, ref := range []Refitter{
+		NewRefitter(r.s, r.curves, r.fits, RefitOptions{}),
+		&slowRefitter{s: r.s, curves: r.curves, criterion: newCriterion(r.s, 3, nil)},
+	} {
+		var out Refit
+		ref.RefitCounts(r.s.Y, []int{2, 0, 2, 0, 2, 0, 4, 0, 0, 0}, &out)
+		if out.How != HowFailed || !math.IsNaN(out.RSS[2]) || !(out.RSS[1] > 0) || out.First != 1 {
+			t.Errorf("%T: %+v", ref, out)
+		}
+	}
+}
+
+// TestSlowRefit: with errors in k a refit is Fit on the resample.
+func TestSlowRefit(t *testing.T) {
+	r := newResampling(t, 3, 10, false)
+	s := mustSample(t, Absolute, r.s.T, r.s.K, ones(10))
+	curves := []models.Curve{models.Straight(), models.PowerPrefactor{}}
+	fits := []*Result{Fit(s, curves[0]), Fit(s, curves[1])}
+	ref := NewRefitter(s, curves, fits, RefitOptions{})
+	k := make([]float64, 10)
+	for i, f := range fits[1].Fitted {
+		k[i] = math.Exp(f) * (1 + 0.02*float64(i%3-1))
+	}
+	var out Refit
+	ref.Refit(k, &out)
+	sub := mustSample(t, Absolute, s.T, k, s.V)
+	for j, c := range curves {
+		f := Fit(sub, c)
+		want(t, c.Info().Name+" RSS", out.RSS[j], f.RSS, 1e-9)
+		want(t, c.Info().Name+" E", out.P[j][1], f.P[1], 1e-7)
+	}
+	// Every entry twice: the same estimates, twice the sum of squares.
+	counts := make([]int, 10)
+	for i := range counts {
+		counts[i] = 2
+	}
+	once := out.RSS[1]
+	ref.Clone().RefitCounts(k, counts, &out)
+	want(t, "RSS of doubled entries", out.RSS[1], 2*once, 1e-9)
 }
 
 func BenchmarkRefit(b *testing.B) {

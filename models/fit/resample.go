@@ -226,16 +226,22 @@ func (d *resampleDesign) interleave() {
 type warmStart struct {
 	c, d          float64
 	cols          [5][]float64 // Jc, Jd, Fcc, Fcd, Fdd
-	first         int          // place of cols among the interleaved columns
+	first         int          // place of cols among d.columns
 	zero          [5]float64   // cols·f(q₀)
 	h00, h01, h11 float64      // (JᵀJ)⁻¹
 	quad          [2][3]float64
+	m00, m01, m11 float64 // JᵀJ
+	reach2        float64 // square of the farthest ‖J(q - q₀)‖ that is trusted
 }
 
-// maxCurvature bounds σ·max‖F h h‖/‖J h‖², the curvature of Bates & Watts (1980,
-// J. R. Stat. Soc. B 42, 1) in units of the scatter: below it a resample's minimum
-// is the one that continues the sample's.
-const maxCurvature = 1
+// maxCurvature bounds σ·κ, κ = max‖F h h‖/‖J h‖² the curvature of Bates & Watts
+// (1980, J. R. Stat. Soc. B 42, 1): below it a resample's minimum is the one that
+// continues the sample's. maxBend bounds κ‖J(q - q₀)‖ in the same way for a resample
+// that was drawn about another curve.
+const (
+	maxCurvature = 1
+	maxBend      = 3
+)
 
 // newWarmStart returns nil where the fit is not a trustworthy start.
 func (d *resampleDesign) newWarmStart(c models.Shaped, sign float64, f *Result) *warmStart {
@@ -268,6 +274,7 @@ func (d *resampleDesign) newWarmStart(c models.Shaped, sign float64, f *Result) 
 	if !(det > 1e-9*m00*m11) {
 		return nil
 	}
+	w.m00, w.m01, w.m11 = m00, m01, m11
 	w.h00, w.h01, w.h11 = m11/det, -m01/det, m00/det
 	fs := [2][2][]float64{{w.cols[2], w.cols[3]}, {w.cols[3], w.cols[4]}}
 	for j := range 2 {
@@ -282,6 +289,7 @@ func (d *resampleDesign) newWarmStart(c models.Shaped, sign float64, f *Result) 
 	l00 := math.Sqrt(m00)
 	l10 := m01 / l00
 	l11 := math.Sqrt(m11 - l10*l10)
+	var most float64
 	for a := range 48 {
 		sin, cos := math.Sincos(math.Pi * float64(a) / 48)
 		h1 := sin / l11
@@ -290,11 +298,19 @@ func (d *resampleDesign) newWarmStart(c models.Shaped, sign float64, f *Result) 
 		for i := range n {
 			k2 += square(w.cols[2][i]*h0*h0 + 2*w.cols[3][i]*h0*h1 + w.cols[4][i]*h1*h1)
 		}
-		if !(sigma*math.Sqrt(k2) < maxCurvature) {
-			return nil
-		}
+		most = math.Max(most, k2)
 	}
+	if !(sigma*math.Sqrt(most) < maxCurvature) {
+		return nil
+	}
+	w.reach2 = maxBend * maxBend / most
 	return w
+}
+
+// trusts reports whether an estimate is near enough to the sample's.
+func (w *warmStart) trusts(e *normal) bool {
+	c, d := e.c-w.c, e.d-w.d
+	return w.m00*c*c+2*w.m01*c*d+w.m11*d*d <= w.reach2
 }
 
 // predict returns the predicted estimate from the products of z with cols.
@@ -317,6 +333,7 @@ type cover struct {
 	cos, sin  float64 // of the slack
 	near      float64 // least cosine at which a shape of the grid counts as covered
 	last      int     // shape last used
+	nodes     []int   // shape nearest to each node of the cold search
 }
 
 const (
@@ -354,6 +371,18 @@ func (d *resampleDesign) newCovers() (coarse, fine *cover) {
 			c.high[j] *= gridLength
 		}
 		c.quads = quads(c.shapes, n)
+	}
+	fine.nodes = make([]int, len(d.nodes))
+	for j := range d.nodes {
+		for i := range v {
+			v[i] = d.plan.shapes[j/4*n+i][j%4]
+		}
+		most := math.Inf(-1)
+		for k, s := range fine.shapes {
+			if p := dot(s, v); p > most {
+				most, fine.nodes[j] = p, k
+			}
+		}
 	}
 	return coarse, fine
 }
@@ -470,4 +499,19 @@ func (c *cover) excludes(z []float64, sign, zz, limit float64) bool {
 		}
 	}
 	return true
+}
+
+// narrow is excludes that also fills pass with the shapes near which one may leave
+// less.
+func (c *cover) narrow(z []float64, sign, zz, limit float64, pass []bool) (none bool) {
+	b, decided, excluded := c.against(zz, limit)
+	none = true
+	for k := 0; k < len(c.shapes); k += 4 {
+		p := dot4(z, c.quads[k/4*len(z):])
+		for j, pj := range p[:min(4, len(c.shapes)-k)] {
+			pass[k+j] = decided && !excluded || !decided && b.beaten(sign*pj, c.low[k+j], c.high[k+j])
+			none = none && !pass[k+j]
+		}
+	}
+	return none
 }
