@@ -138,7 +138,7 @@ func (fullDisk) Write([]byte) (int, error) { return 0, syscall.ENOSPC }
 func TestFullDisk(t *testing.T) {
 	file := filepath.Join(demo, "ester-few.csv")
 	for _, args := range [][]string{
-		{"models"}, {"models", "--json"}, {"inspect", file}, {"schema"}, {"schema", "models"}, {"version"}, {"completion", "bash"},
+		{"assess", file}, {"assess", file, "--json"}, {"explain"}, {"models"}, {"models", "--json"}, {"inspect", file}, {"schema"}, {"schema", "models"}, {"version"}, {"completion", "bash"},
 	} {
 		var e strings.Builder
 		if code := Main(t.Context(), args, strings.NewReader(""), fullDisk{}, &e); code != exitFailed || !strings.Contains(e.String(), "no space") {

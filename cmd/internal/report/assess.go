@@ -70,7 +70,7 @@ func (p *page) publish(a *diagnostics.Assessment) {
 	}
 	var lines []string
 	for _, l := range a.Publish.Lines {
-		value := or(l.Text, unknown)
+		value := strings.ReplaceAll(or(l.Text, unknown), " K/T", "\u00a0K/T")
 		head := pad(l.Symbol, symbols+2) + pad(value, values+2)
 		switch {
 		case l.Note == "":
