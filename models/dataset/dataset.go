@@ -16,7 +16,7 @@ type Level string
 const (
 	LevelNone     Level = ""         // no uncertainty stated
 	LevelStandard Level = "standard" // a standard uncertainty, or converted to one from a known level
-	LevelRepeats  Level = "repeats"  // s/sqrt(n) from n <= 30 repeats: not a known uncertainty
+	LevelRepeats  Level = "repeats"  // s/sqrt(n), a standard error or a t interval from n <= 30 repeats: not a known uncertainty
 )
 
 // Point is one row of a data set.

@@ -418,6 +418,10 @@ func TestSelection(t *testing.T) {
 		has(t, s, noteSelected)
 	}
 
+	if s := read(t, "T/K,k/s^-1\n300,1\n310\n320,2\n", Options{LeaveOut: []int{3}}); len(s.Points) != 3 || len(s.UsedPoints()) != 2 {
+		t.Errorf("a ragged row is left out on request: %+v", s.Points)
+	}
+
 	const long = "dataset,T/K,k/s^-1\na,300,1\nb,300,2\na,310,3\nb,310,4\n"
 	sets, err := Read("long.csv", strings.NewReader(long), Options{})
 	if err != nil || len(sets) != 2 || sets[0].Name != "a" || sets[1].Name != "b" || len(sets[1].Points) != 2 {

@@ -25,6 +25,9 @@ type rowReader struct {
 	examples                    [][]string
 }
 
+const leftOut = "left out on request (--leave-out)"
+
+// points reads the rows of data below the headings, n cells each.
 func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	rr := &rowReader{m: m, p: p, uFactor: 1, examples: make([][]string, len(p.cols))}
 	for _, c := range p.rate {
@@ -61,6 +64,11 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 				after = append(after, m.t.Rows[i].Line)
 			}
 			break
+		}
+		if leaveOut[r.Line] && len(r.Cells) != n { // ragged, and out already
+			delete(leaveOut, r.Line)
+			points = append(points, Point{File: m.t.Name, Row: r.Line, T: math.NaN(), K: math.NaN(), Order: math.NaN(), WhyNot: leftOut})
+			continue
 		}
 		cells, ok := m.cells(r, n)
 		if !ok {
@@ -101,7 +109,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		}
 		if leaveOut[r.Line] {
 			delete(leaveOut, r.Line)
-			pt.WhyNot = "left out on request (--leave-out)"
+			pt.WhyNot = leftOut
 		}
 		for j := range conds {
 			if pt.WhyNot == "" && !conds[j].holds(cells[conds[j].col.index], p.decimal) {
