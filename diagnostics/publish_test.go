@@ -159,6 +159,10 @@ func TestPublishN2O5(t *testing.T) {
 	if corr.Text != "0.9975" {
 		t.Errorf("r = %q", corr.Text)
 	}
+	// R's coefficients 31.272897228895548 and -12375.767829116574, rounded.
+	if k := line(t, p, "k(T)", "").Text; k != "exp(31.27290 − 12375.77 K/T) s^-1" {
+		t.Errorf("k(T) = %q", k)
+	}
 	// ΔH‡ of the Eyring line is E_a - RT_eff exactly, by the definition of T_eff.
 	dh := line(t, p, "ΔH‡", "")
 	want(t, "ΔH‡", float64(dh.Value), float64(e.Value)-8.31446261815324e-3*in.TEff, 1e-10)
@@ -383,6 +387,33 @@ func TestTimeUnitEntersEntropy(t *testing.T) {
 	s := parameter(t, formEstimates(eyring, fr, 0.95, perSecond, nil), "eyring", "dS")
 	m := parameter(t, formEstimates(eyring, fr, 0.95, minutes, nil), "eyring", "dS")
 	want(t, "shift of ΔS‡", float64(s.Value-m.Value), 8.31446261815324*math.Log(60), 1e-12)
+	// ΔG‡ = ΔH‡ - TΔS‡ in any unit of time.
+	p := publish(toPublish{Fit: eyring, Quantity: minutes, TMin: 280, TMax: 340, TEff: 310, TRef: 320, Confidence: 0.95})
+	want(t, "ΔG‡", float64(line(t, p, "ΔG‡", "320 K").Value), 47.5-0.320*float64(m.Value), 1e-12)
+}
+
+// The lines A, n and E are the curve's own form, stated at the reference
+// temperature, whatever the temperature of the canonical parameters.
+func TestPublishedPowerLawIsTheForm(t *testing.T) {
+	s := synthetic(t, "s2_tn_curved", fit.Relative)
+	for curve, form := range map[string]string{"straight": "arrhenius", "root-prefactor": "collision", "power-prefactor": "modified-arrhenius"} {
+		in := publishing(s, fitNamed(t, s, curve))
+		f := formEstimates(in.Fit, models.Frame{TForm: in.TRef}, 0.95, perSecond, nil)
+		p := publish(in)
+		ln, lg := parameter(t, f, form, "ln_A"), line(t, p, "lg(A/s^-1)", "")
+		want(t, curve+": lg A", float64(lg.Value), float64(ln.Value)/math.Ln10, 1e-12)
+		want(t, curve+": u(lg A)", float64(lg.StdError), float64(ln.StdError)/math.Ln10, 1e-9)
+		symbol := "E"
+		if curve == "straight" {
+			symbol = "E_a"
+		}
+		e, el := parameter(t, f, form, "E"), line(t, p, symbol, "")
+		want(t, curve+": E", float64(el.Value), float64(e.Value), 1e-12)
+		want(t, curve+": u(E)", float64(el.StdError), float64(e.StdError), 1e-9)
+		if at := f[0].TRef; curve != "straight" && at != 298.15 || curve == "straight" && at.Known() {
+			t.Errorf("%s: the form is stated at %g K", curve, at)
+		}
+	}
 }
 
 func TestUnresolvedSaysHowMuchEMayChange(t *testing.T) {
