@@ -65,6 +65,9 @@ func TestSecondBarrierIsExact(t *testing.T) {
 		{"N=8", span(280, 340, 8), nil},
 		{"N=10 weighted", span(250, 1000, 10), weights},
 		{"N=20", span(250, 1000, 20), nil},
+		// More directions than the shapes span: the rest of z is drawn as its length.
+		{"N=35", span(250, 1000, 35), nil},
+		{"N=60", span(280, 340, 60), nil},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			s := sampleOf(t, fit.Relative, c.temps, make([]float64, len(c.temps)), c.v)
