@@ -167,6 +167,14 @@ func TestParallelExcluded(t *testing.T) {
 // is felt there alone, whatever its barrier.
 func TestParallelNotIdentified(t *testing.T) {
 	s := highEnd(t)
+	// The same on a line that falls with T: the second barrier stays below 1000
+	// kJ/mol, and their difference is what knows no bound.
+	falling := made(t, 8, 280, 340, []float64{-5, -200e3}, models.Straight(), func(i int) float64 {
+		return 0.3 * float64(i/7)
+	})
+	if res := Fit(falling, models.Parallel{}); res.Status != NotIdentified {
+		t.Errorf("falling: parallel is %v, P = %v", res.Status, res.P)
+	}
 	res := Fit(s, models.Parallel{})
 	if res.Status != NotIdentified || res.Cov != nil || res.Reason == "" {
 		t.Errorf("parallel is %v (%s), P = %v", res.Status, res.Reason, res.P)
