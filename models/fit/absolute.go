@@ -139,8 +139,10 @@ func fitInK(s *Sample, c models.Curve) *Result {
 	}
 	best := engine.solve(pr, p0, Options{})
 	if best.Status == Failed {
-		r.Reason = best.Reason
-		return r
+		// A valley without end: where the search stopped is as good as any point in it.
+		reason := best.Reason
+		engine.finish(pr, best)
+		best.Status, best.Reason, best.Cov = NotIdentified, reason, nil
 	}
 	if isShaped && line.Usable() && !(best.RSS*o.unit*o.unit < line.RSS*(1-1e-12)) {
 		return exclude()
@@ -192,11 +194,11 @@ func relativeError(c models.Curve, s2 float64, m ErrorModel, cov []float64) (mos
 	return most
 }
 
-// startsInK fits the points with k > 0 in ln k with variances V/k^m, m = 2, 1, 0:
+// startsInK fits the points with k > 0 in ln k with variances V/k^m, m = 2 and 0:
 // to first order m = 2 is the error model itself, and m = 0 hears the small k.
 // Without a start the status and reason of the last such fit say why.
 func startsInK(s *Sample, c models.Curve) (starts [][]float64, status Status, reason string) {
-	for m := 2.0; m >= 0; m-- {
+	for _, m := range []float64{2, 0} {
 		sub := &Sample{Model: Relative, TRef: s.TRef}
 		least := math.Inf(1)
 		for i, k := range s.K {

@@ -81,6 +81,24 @@ func TestProfileIsExactInLnK(t *testing.T) {
 // opaque is a curve of which nothing is known but its values.
 type opaque struct{ models.Curve }
 
+// TestProfileFromAnyStep: the standard error only says how far to step first; a
+// ten-thousandth or a million times it, where the curve overflows, find the same ends.
+func TestProfileFromAnyStep(t *testing.T) {
+	s := synthetic(t, "s1_straight", Absolute)
+	r := Fit(s, models.PowerPrefactor{})
+	e := ProfileExponent(s, r, 0.95)
+	for _, factor := range []float64{1e-4, 1e6} {
+		other := *r
+		other.Cov = append([]float64(nil), r.Cov...)
+		for i := range other.Cov {
+			other.Cov[i] *= factor * factor
+		}
+		o := ProfileExponent(s, &other, 0.95)
+		want(t, "lower", o.Lower, e.Lower, 1e-9)
+		want(t, "upper", o.Upper, e.Upper, 1e-9)
+	}
+}
+
 // TestProfileOpenEnd: one rate constant stands clear of the scatter, so that ever
 // steeper curves fit as well.
 func TestProfileOpenEnd(t *testing.T) {
@@ -162,6 +180,21 @@ func TestLostPathIsNotIdentified(t *testing.T) {
 	}
 }
 
+// TestEndlessValley: sets on which the search for two paths finds no end keep their
+// sum of squares, and no parameter.
+func TestEndlessValley(t *testing.T) {
+	temp := []float64{280, 290, 300, 310, 320, 330, 340, 350}
+	k := []float64{-0.005, 0.011, 0.022, 0.027, 0.086, 0.197, 0.467, 0.989}
+	s := mustSample(t, Absolute, temp, k, ones(8))
+	r := Fit(s, models.Parallel{})
+	if r.Status != NotIdentified || r.Cov != nil || !finite(r.RSS, r.LogLik) {
+		t.Errorf("%v (%s), RSS %g", r.Status, r.Reason, r.RSS)
+	}
+	if line := Fit(s, models.Straight()); !(r.RSS <= line.RSS) {
+		t.Errorf("RSS %g, that of the line %g", r.RSS, line.RSS)
+	}
+}
+
 // TestInKInvariance: the unit of k shifts ln k_ref and nothing else, over 300
 // decades; known from the scaling k -> ck of the model.
 func TestInKInvariance(t *testing.T) {
@@ -235,6 +268,13 @@ func TestParallelInK(t *testing.T) {
 	}
 	want(t, "ln A2", q[2], math.Log(3.82e-11), 1e-9)
 	want(t, "E2", q[3], 2000*models.GasConstant/1000, 1e-9)
+
+	// Data in which E falls only where k is large, exclude it though
+	// fits in ln k do not: ln k rises by 0.64, 0.69, 0.55, 0.52.
+	bent := mustSample(t, Absolute, []float64{280, 290, 300, 310, 320}, []float64{0.091, 0.172, 0.344, 0.597, 1}, ones(5))
+	if r := Fit(bent, models.Parallel{}); r.Status != Excluded {
+		t.Errorf("E falling at the hot end: %v: %s", r.Status, r.Reason)
+	}
 
 	// Data whose E falls exclude it.
 	f := make([]float64, s.Len())
@@ -431,6 +471,12 @@ func TestLinearRankDeficient(t *testing.T) {
 	for _, h := range f.Leverage {
 		want(t, "leverage", h, 1./3, 1e-14)
 	}
+	// A line with its constant twice: 1, 2, 6 lies 1/2, -1, 1/2 off.
+	f = Linear([]float64{1, 1, 1, 1, 1, 2, 1, 1, 3}, []float64{1, 2, 6}, nil)
+	if f.Rank != 2 || f.Cov != nil {
+		t.Errorf("rank %d, covariance %v", f.Rank, f.Cov)
+	}
+	want(t, "RSS about the line", f.RSS, 1.5, 1e-14)
 }
 
 // TestIterationsDoNotAllocate: a workspace in use allocates only its answer, however

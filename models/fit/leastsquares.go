@@ -18,7 +18,7 @@ type Problem struct {
 
 // Options steer LeastSquares. The zero value takes the defaults.
 type Options struct {
-	MaxIterations int     // trust-region iterations; default 1000
+	MaxIterations int     // trial steps of the trust region; default 2000
 	Tolerance     float64 // relative, on RSS, step and gradient; default 1e-15
 	Factor        float64 // first trust radius over ‖Dp‖; default 1 (the 100 of MINPACK loses BoxBOD)
 }
@@ -33,7 +33,7 @@ type Solution struct {
 	Cov        []float64 // (JᵀJ)⁻¹, n x n, without σ²; nil where refused
 	Leverage   []float64
 	Condition  float64 // of J with columns of unit length
-	Iterations int     // trust-region iterations and polishing steps
+	Iterations int     // trial and polishing steps
 }
 
 // LeastSquares minimises Σ r_i(p)² from p0 by Moré's trust-region form of the
@@ -89,7 +89,7 @@ func (s *solver) solve(pr Problem, p0 []float64, opt Options) *Solution {
 // there is no estimate.
 func (s *solver) trustRegion(pr Problem, p0 []float64, opt Options) (iterations int, ok bool, reason string) {
 	if opt.MaxIterations == 0 {
-		opt.MaxIterations = 1000
+		opt.MaxIterations = 2000
 	}
 	if opt.Tolerance == 0 {
 		opt.Tolerance = 1e-15
@@ -105,11 +105,12 @@ func (s *solver) trustRegion(pr Problem, p0 []float64, opt Options) (iterations 
 		return 0, false, "the residuals are not finite at the start"
 	}
 	var par, delta, xnorm float64
-	for iter := 1; ; iter++ {
+	iter := 1 // trial steps, refused ones included
+	for first := true; ; first = false {
 		s.q.load(s.jac, nil)
 		s.q.factor()
 		for j, length := range s.q.size {
-			if iter == 1 {
+			if first {
 				s.diag[j] = 0
 			}
 			s.diag[j] = math.Max(s.diag[j], length)
@@ -117,7 +118,7 @@ func (s *solver) trustRegion(pr Problem, p0 []float64, opt Options) (iterations 
 				s.diag[j] = 1
 			}
 		}
-		if iter == 1 {
+		if first {
 			xnorm = scaledNorm(s.diag, s.p)
 			delta = opt.Factor * xnorm
 			if delta == 0 {
@@ -145,7 +146,7 @@ func (s *solver) trustRegion(pr Problem, p0 []float64, opt Options) (iterations 
 			return iter, true, ""
 		}
 
-		for {
+		for ; ; iter++ {
 			par = s.damp(delta, par)
 			for j := range n {
 				s.step[j] = -s.step[j]
@@ -209,13 +210,14 @@ func (s *solver) trustRegion(pr Problem, p0 []float64, opt Options) (iterations 
 				return iter, true, ""
 			}
 			if iter >= opt.MaxIterations {
-				return iter, false, fmt.Sprintf("no convergence within %d iterations", iter)
+				return iter, false, fmt.Sprintf("no convergence within %d steps", iter)
 			}
 			// No step can be told from rounding any more.
 			if !accepted && (delta <= 0x1p-52*xnorm || predicted <= 0x1p-52 && math.Abs(actual) <= 0x1p-52) {
 				return iter, true, ""
 			}
 			if accepted {
+				iter++
 				break
 			}
 		}

@@ -334,6 +334,56 @@ func TestFadedParameterIsNotIdentified(t *testing.T) {
 	}
 }
 
+// TestLeastSquaresEnds: whatever a problem returns, the search ends with a status.
+func TestLeastSquaresEnds(t *testing.T) {
+	huge := 1e200
+	for name, eval := range map[string]func(p, r, jac []float64){
+		"NaN away from the start": func(p, r, jac []float64) {
+			for i := range r {
+				r[i] = p[0] - float64(i)
+				if p[0] != 1 {
+					r[i] = math.NaN()
+				}
+			}
+			for i := range jac {
+				jac[i] = float64(1 + i%2*i)
+			}
+		},
+		"NaN at the start": func(p, r, jac []float64) {
+			for i := range r {
+				r[i] = math.NaN()
+			}
+		},
+		"overflowing derivatives": func(p, r, jac []float64) {
+			for i := range r {
+				r[i] = huge * (p[0] - float64(i))
+			}
+			for i := range jac {
+				jac[i] = huge * huge
+			}
+		},
+		"wrong derivatives": func(p, r, jac []float64) {
+			for i := range r {
+				r[i] = p[0]*float64(i) - 1 + p[1]*p[1]
+			}
+			for i := range jac {
+				jac[i] = -1
+			}
+		},
+		"no derivatives": func(p, r, jac []float64) {
+			for i := range r {
+				r[i] = p[0] - float64(i)
+			}
+			clear(jac)
+		},
+	} {
+		sol := LeastSquares(Problem{M: 4, N: 2, Eval: eval}, []float64{1, 1}, Options{})
+		if (sol.Status != Converged) != (sol.Reason != "") || (sol.Status == Failed) != (sol.P == nil) {
+			t.Errorf("%s: %v: %q", name, sol.Status, sol.Reason)
+		}
+	}
+}
+
 // TestStRDGradients checks the analytic gradients of the test's own models against
 // central differences at the certified values.
 func TestStRDGradients(t *testing.T) {
