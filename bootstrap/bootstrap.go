@@ -40,16 +40,13 @@ type Input struct {
 	Sample *fit.Sample
 	// Fits holds every candidate, in the order in which Refitter knows them.
 	Fits []*fit.Result
-	// Refitter may be nil if NewJudge is nil and the error model is not InK.
+	// Refitter ranks the candidates by the penalties that it was made with. It
+	// may be nil if NewJudge is nil and the error model is not InK.
 	Refitter fit.Refitter
 	// Weights are the plain-AIC weights of the candidates: the weight of the
 	// family times the weight within it. Candidates that leave nothing to
 	// resample from are passed over and the rest scaled up.
 	Weights []float64
-	// Penalty makes the criterion: N ln RSS + Penalty with σ unknown, RSS +
-	// Penalty with σ known. A candidate whose penalty is not finite cannot be
-	// first.
-	Penalty []float64
 	// NewJudge makes one Judge for each worker. It must not allocate when called,
 	// or the bootstrap is slow. nil: no repeat shares.
 	NewJudge func() Judge
@@ -191,7 +188,6 @@ type plan struct {
 	cum     []float64    // their cumulative weights
 	strata  [][]int      // Pairs: entries, or points, that are exchanged
 	byPoint bool         // Pairs: strata hold points behind means
-	factor  []float64    // e^(penalty/N) with σ unknown
 	kernels []*kernel
 	refit   bool // the refitter is needed
 
@@ -217,8 +213,8 @@ func newPlan(in Input, opt Options) (*plan, error) {
 	switch {
 	case p.refit && in.Refitter == nil:
 		panic("bootstrap: a refitter is needed")
-	case share && (len(in.Weights) != len(in.Fits) || len(in.Penalty) != len(in.Fits)):
-		panic("bootstrap: weights and penalties must have the length of the fits")
+	case share && len(in.Weights) != len(in.Fits):
+		panic("bootstrap: weights must have the length of the fits")
 	case share && (in.States < 1 || in.States > math.MaxInt16):
 		panic("bootstrap: a judge needs states")
 	}
@@ -237,7 +233,6 @@ func newPlan(in Input, opt Options) (*plan, error) {
 		if err := p.addGenerators(); err != nil {
 			return nil, err
 		}
-		p.rank()
 	}
 	if err := p.addTargets(); err != nil {
 		return nil, err
@@ -385,42 +380,6 @@ func (p *plan) addGenerators() error {
 	return nil
 }
 
-// rank prepares the first place: argmin N ln RSS + penalty is argmin
-// RSS·e^(penalty/N), which needs no logarithm.
-func (p *plan) rank() {
-	least := math.Inf(1)
-	for _, v := range p.in.Penalty {
-		if !math.IsNaN(v) && !math.IsInf(v, -1) {
-			least = math.Min(least, v)
-		}
-	}
-	p.factor = make([]float64, len(p.in.Penalty))
-	for i, v := range p.in.Penalty {
-		p.factor[i] = math.Exp((v - least) / float64(p.in.Sample.Len()))
-	}
-}
-
-// firstPlace is the candidate with the least criterion, -1 if there is none.
-func (p *plan) firstPlace(rss []float64) int16 {
-	best, at := math.Inf(1), int16(-1)
-	known := p.in.Sample.Model.KnownSigma()
-	for i, r := range rss {
-		v := p.in.Penalty[i]
-		if math.IsNaN(v) || math.IsInf(v, 0) {
-			continue
-		}
-		if known {
-			v += r
-		} else {
-			v = r * p.factor[i]
-		}
-		if v < best {
-			best, at = v, int16(i)
-		}
-	}
-	return at
-}
-
 func (p *plan) addTargets() error {
 	ts := p.in.Targets
 	p.diff, p.t = make([][]float64, len(ts)), make([][]float64, len(ts))
@@ -526,7 +485,7 @@ func (w *worker) resample(b int) {
 		}
 		p.state[b], p.first[b] = -1, -1
 		if w.refitAll() {
-			p.first[b] = p.firstPlace(w.out.RSS)
+			p.first[b] = int16(w.out.First)
 			p.state[b] = w.state()
 		}
 	}

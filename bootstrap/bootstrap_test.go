@@ -134,7 +134,7 @@ func TestRefusals(t *testing.T) {
 		{seven, Parametric, ""},
 	} {
 		in := Input{Sample: c.s, NewJudge: func() Judge { return func([]float64, []int, *fit.Refit) int { return 0 } }, States: 1,
-			Fits: []*fit.Result{fit.Fit(c.s, models.Straight())}, Weights: []float64{1}, Penalty: []float64{4}, Refitter: constantRefitter{}}
+			Fits: []*fit.Result{fit.Fit(c.s, models.Straight())}, Weights: []float64{1}, Refitter: constantRefitter{}}
 		_, err := Run(context.Background(), in, Options{Scheme: c.scheme, Resamples: 9})
 		var r *Refusal
 		switch {
@@ -168,7 +168,7 @@ type constantRefitter struct{ fail func(y []float64) bool }
 
 func (c constantRefitter) Clone() fit.Refitter { return c }
 func (c constantRefitter) Refit(y []float64, out *fit.Refit) {
-	out.How = fit.HowWarm
+	out.How, out.First = fit.HowWarm, 0
 	for i := range out.RSS {
 		out.RSS[i] = float64(i + 1)
 	}
@@ -226,30 +226,6 @@ func TestGeneratingWeights(t *testing.T) {
 	}
 	want := 0.7 + 0.3*float64(alone.States[1])/9999
 	within(t, "share of power-prefactor", float64(o.States[1])/9999, want, 4*math.Sqrt(0.25/9999))
-}
-
-// A criterion that cannot be computed leaves no first place; +Inf RSS is no winner.
-func TestFirstPlace(t *testing.T) {
-	inf, nan := math.Inf(1), math.NaN()
-	for _, c := range []struct {
-		model        fit.ErrorModel
-		penalty, rss []float64
-		want         int16
-	}{
-		{fit.Relative, []float64{4, 6, 8}, []float64{1, 1, 1}, 0},
-		// 10 ln(RSS) falls by 6.93, by more than the 2 it costs.
-		{fit.Relative, []float64{4, 6, 8}, []float64{1, 0.5, inf}, 1},
-		{fit.Stated, []float64{4, 6, 8}, []float64{9, 6, 5}, 1},
-		{fit.Stated, []float64{4, 6, 8}, []float64{9, 7.5, 5.5}, 0},
-		{fit.Relative, []float64{4, inf, nan}, []float64{1, 1e-300, 1e-300}, 0},
-		{fit.Relative, []float64{inf, inf, nan}, []float64{1, 1, 1}, -1},
-	} {
-		p := &plan{in: Input{Sample: testSample(t, c.model, 10, 0.03, 1), Penalty: c.penalty}}
-		p.rank()
-		if got := p.firstPlace(c.rss); got != c.want {
-			t.Errorf("%v %v: got %d, want %d", c.penalty, c.rss, got, c.want)
-		}
-	}
 }
 
 // The residual pool, point by point, where variances are unequal and one point
@@ -731,7 +707,7 @@ func TestInputUnchanged(t *testing.T) {
 	for i := range in.Points.Group {
 		in.Points.Group[i] = i % 9
 	}
-	data := [][]float64{s.T, s.Y, s.K, s.V, in.Weights, in.Penalty, in.Points.Y, in.Points.Weight}
+	data := [][]float64{s.T, s.Y, s.K, s.V, in.Weights, in.Points.Y, in.Points.Weight}
 	for _, f := range in.Fits {
 		data = append(data, f.P, f.Cov, f.Fitted, f.Residuals, f.Leverage)
 	}
@@ -872,7 +848,7 @@ func TestStream(t *testing.T) {
 func resampler(t testing.TB, model fit.ErrorModel, scheme Scheme, n int) *worker {
 	s := testSample(t, model, n, 0.03, 1)
 	curves := []models.Basis{models.Straight(), models.PowerPrefactor{}}
-	in := Input{Sample: s, Weights: []float64{0.5, 0.5}, Penalty: []float64{6, 8}, States: 1, Refitter: constantRefitter{}}
+	in := Input{Sample: s, Weights: []float64{0.5, 0.5}, States: 1, Refitter: constantRefitter{}}
 	ln := testSample(t, fit.Relative, n, 0.03, 1)
 	for _, c := range curves {
 		in.Fits = append(in.Fits, fit.Fit(ln, c))

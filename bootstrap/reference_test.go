@@ -66,6 +66,8 @@ type referenceRefitter struct {
 	s      *fit.Sample
 	curves []models.Basis
 	start  [][]float64
+	// penalty decides first places, straight from the definition.
+	penalty []float64
 }
 
 func (r *referenceRefitter) Clone() fit.Refitter { return r }
@@ -138,6 +140,21 @@ func (r *referenceRefitter) RefitCounts(y []float64, counts []int, out *fit.Refi
 		out.RSS[ci] = rss
 		copy(out.P[ci], par)
 	}
+	out.First = r.first(out.RSS)
+}
+
+// first is the candidate with the least N ln RSS + penalty, or RSS + penalty.
+func (r *referenceRefitter) first(rss []float64) int {
+	best, at := math.Inf(1), -1
+	for i, v := range rss {
+		if !r.s.Model.KnownSigma() {
+			v = float64(r.s.Len()) * math.Log(v)
+		}
+		if v += r.penalty[i]; v < best {
+			best, at = v, i
+		}
+	}
+	return at
 }
 
 // linearInput is an input with the candidates straight and power-prefactor, equal
@@ -146,22 +163,19 @@ func linearInput(s *fit.Sample) Input {
 	n := float64(s.Len())
 	curves := []models.Basis{models.Straight(), models.PowerPrefactor{}}
 	in := Input{Sample: s, Weights: []float64{0.5, 0.5}, States: 2}
-	r := &referenceRefitter{s: s, curves: curves}
+	ref := &referenceRefitter{s: s, curves: curves}
 	for _, c := range curves {
 		f := fit.Fit(s, c)
 		in.Fits = append(in.Fits, f)
-		r.start = append(r.start, f.P)
+		ref.start = append(ref.start, f.P)
 		k := float64(f.Params() + 1)
-		in.Penalty = append(in.Penalty, 2*k+2*k*(k+1)/(n-k-1))
+		ref.penalty = append(ref.penalty, 2*k+2*k*(k+1)/(n-k-1))
 	}
-	in.Refitter = r
+	in.Refitter = ref
 	in.Targets = DefaultTargets(s, in.Fits)
 	in.NewJudge = func() Judge {
 		return func(y []float64, counts []int, r *fit.Refit) int {
-			if n*math.Log(r.RSS[1])+in.Penalty[1] < n*math.Log(r.RSS[0])+in.Penalty[0] {
-				return 1
-			}
-			return 0
+			return ref.first(r.RSS)
 		}
 	}
 	return in

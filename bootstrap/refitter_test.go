@@ -17,13 +17,13 @@ func defaultInput(s *fit.Sample) Input {
 	curves := models.Default()
 	in := Input{Sample: s, States: len(curves)}
 	best := map[string]float64{}
-	var within []float64
+	var within, penalty []float64
 	sums := map[string]float64{}
 	for _, c := range curves {
 		f := fit.Fit(s, c)
 		in.Fits = append(in.Fits, f)
 		k, n := float64(f.K()), float64(f.N)
-		in.Penalty = append(in.Penalty, f.AIC()+2*f.LogLik+2*k*(k+1)/(n-k-1))
+		penalty = append(penalty, f.AIC()+2*f.LogLik+2*k*(k+1)/(n-k-1))
 		family := c.Info().Family
 		w := 0.0
 		if f.Usable() {
@@ -41,7 +41,7 @@ func defaultInput(s *fit.Sample) Input {
 		}
 		in.Weights = append(in.Weights, w)
 	}
-	in.Refitter = fit.NewRefitter(s, curves, in.Fits, fit.RefitOptions{Penalty: in.Penalty})
+	in.Refitter = fit.NewRefitter(s, curves, in.Fits, fit.RefitOptions{Penalty: penalty})
 	in.NewJudge = func() Judge {
 		return func(_ []float64, _ []int, r *fit.Refit) int {
 			at := 0
@@ -105,7 +105,7 @@ func TestRefitterAgainstReference(t *testing.T) {
 	for _, s := range []*fit.Sample{ln, ink} {
 		a := linearInput(s)
 		b := linearInput(s)
-		b.Refitter = fit.NewRefitter(s, []models.Curve{models.Straight(), models.PowerPrefactor{}}, b.Fits, fit.RefitOptions{Penalty: b.Penalty})
+		b.Refitter = fit.NewRefitter(s, []models.Curve{models.Straight(), models.PowerPrefactor{}}, b.Fits, fit.RefitOptions{Penalty: a.Refitter.(*referenceRefitter).penalty})
 		for _, scheme := range Schemes {
 			opt := Options{Scheme: scheme, Resamples: 199, Methods: Methods}
 			oa, err := Run(context.Background(), a, opt)

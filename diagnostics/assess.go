@@ -332,7 +332,7 @@ func (a *assessor) resample(ctx context.Context) error {
 	}
 	weights, penalties := a.weights(), a.penalties()
 	in := bootstrap.Input{
-		Sample: s, Fits: a.fits, Weights: weights, Penalty: penalties,
+		Sample: s, Fits: a.fits, Weights: weights,
 		Refitter: fit.NewRefitter(s, curves, a.fits, fit.RefitOptions{Penalty: penalties}),
 		States:   len(States),
 		NewJudge: func() bootstrap.Judge { return newJudge(a).state },
