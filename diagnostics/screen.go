@@ -16,8 +16,10 @@ type Screening struct {
 	Power      *fit.Result
 	Exponent   ExponentTest
 	Pointwise  *ExponentTest // on single points, where the verdict uses means; else nil
-	State      State
-	TEff       float64 // K
+	// Judged is the verdict if there is no second-barrier finding. State differs
+	// from it only where that finding turns straight-within into unresolved.
+	Judged State
+	TEff   float64 // K
 
 	a *assessor
 	// found is nil until the second-barrier test was asked.
@@ -38,16 +40,23 @@ func Screen(set *dataset.Set, opt Options) (*Screening, error) {
 	s := &Screening{
 		ErrorModel: a.model, Sample: a.data.sample, Fits: a.fits[:a.ranked],
 		Straight: a.straight, Power: a.power,
-		Exponent: a.exponent, Pointwise: a.pointwiseTest, State: Untestable, TEff: a.tEff, a: a,
+		Exponent: a.exponent, Pointwise: a.pointwiseTest, Judged: Untestable, TEff: a.tEff, a: a,
 	}
 	if a.untestable == "" {
 		low, high := ends(a.exponent.Exponent)
-		s.State = a.rule.Judge(low, high, false)
-		if s.State == StraightWithin { // nothing else depends on a second barrier
-			s.State = a.rule.Judge(low, high, s.SecondBarrierFound())
-		}
+		s.Judged = a.rule.Judge(low, high, false)
 	}
 	return s, nil
+}
+
+// State is the verdict. It asks the second-barrier test where that can change the
+// answer.
+func (s *Screening) State() State {
+	if s.Judged != StraightWithin {
+		return s.Judged
+	}
+	low, high := ends(s.Exponent.Exponent)
+	return s.a.rule.Judge(low, high, s.SecondBarrierFound())
 }
 
 // SecondBarrierFound reports whether the second-barrier test has p < 0.05; false

@@ -35,9 +35,9 @@ func TestScreenDecidesAsAssess(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			if s.State != doc.Verdict.State || s.ErrorModel != doc.Settings.ErrorModel || Real(s.TEff) != doc.Dataset.TEff {
+			if s.State() != doc.Verdict.State || s.ErrorModel != doc.Settings.ErrorModel || Real(s.TEff) != doc.Dataset.TEff {
 				t.Errorf("%s under %s at %g K, want %s under %s at %g K",
-					s.State, s.ErrorModel, s.TEff, doc.Verdict.State, doc.Settings.ErrorModel, doc.Dataset.TEff)
+					s.State(), s.ErrorModel, s.TEff, doc.Verdict.State, doc.Settings.ErrorModel, doc.Dataset.TEff)
 			}
 			if b := doc.Curvature.SecondBarrier; s.SecondBarrierFound() != (b != nil && b.PValue < 0.05) {
 				t.Errorf("second barrier found: %v, but Assess has %+v", s.SecondBarrierFound(), b)

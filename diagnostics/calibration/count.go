@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"runtime"
+	"slices"
 	"sync"
 	"sync/atomic"
 
@@ -25,7 +26,6 @@ const (
 	IsUntestable  Event = iota // verdict untestable, or the data were refused
 	Curved                     // any curved verdict
 	Beyond                     // verdict beyond-prefactor
-	Straight                   // verdict straight-within
 	Rescaled                   // stated uncertainties were contradicted: scaled
 	SecondBarrier              // the second-barrier test has p < 0.05
 	Either                     // a curved verdict or the second-barrier finding
@@ -68,6 +68,8 @@ type Counts struct {
 	Sets   int
 	Hits   [events]int
 	Trials [events]int
+	// Events are those to count; none: all.
+	Events []Event
 	// Ratio holds N ln(RSS_straight/RSS_parallel) of each set, 0 where parallel
 	// gains nothing; NaN where it leaves no degree of freedom.
 	Ratio []float64
@@ -77,6 +79,16 @@ type Counts struct {
 
 // Shares are repeat shares of one data set.
 type Shares struct{ Curved, Power, Parallel float64 }
+
+// wants reports whether an event is to be counted.
+func (c *Counts) wants(e Event) bool { return len(c.Events) == 0 || slices.Contains(c.Events, e) }
+
+// measure counts an event if it is wanted: what nobody asks for costs nothing.
+func (c *Counts) measure(e Event, shows func() bool) {
+	if c.wants(e) {
+		c.record(e, shows())
+	}
+}
 
 func (c *Counts) record(e Event, hit bool) {
 	c.Trials[e]++
@@ -108,6 +120,8 @@ type Settings struct {
 	Sets    int
 	Seed    uint64
 	Workers int // 0: one a processor
+	// Events are those to count; none: all that the cell has.
+	Events []Event
 }
 
 // chunk is the number of data sets a worker takes at a time.
@@ -120,7 +134,7 @@ func (c Cell) Run(ctx context.Context, set Settings) (*Counts, error) {
 	if workers <= 0 {
 		workers = runtime.NumCPU()
 	}
-	total := &Counts{N: c.N, Sets: set.Sets, Ratio: make([]float64, set.Sets)}
+	total := &Counts{N: c.N, Sets: set.Sets, Events: set.Events, Ratio: make([]float64, set.Sets)}
 	if c.Shares {
 		total.Shares = make([]Shares, set.Sets)
 	}
@@ -133,7 +147,7 @@ func (c Cell) Run(ctx context.Context, set Settings) (*Counts, error) {
 	)
 	for range workers {
 		wg.Go(func() {
-			own := &Counts{Ratio: total.Ratio, Shares: total.Shares}
+			own := &Counts{Events: set.Events, Ratio: total.Ratio, Shares: total.Shares}
 			err := func() error {
 				for {
 					hi := int(next.Add(chunk))
@@ -184,23 +198,21 @@ func (c Cell) one(ctx context.Context, seed uint64, i int, designs *diagnostics.
 	case err != nil:
 		return err
 	}
-	untestable := s.State == diagnostics.Untestable
+	untestable := s.Judged == diagnostics.Untestable
 	n.record(IsUntestable, untestable)
 	if untestable {
 		return nil
 	}
-	curved := s.State.Curved()
+	curved := s.Judged.Curved()
 	n.record(Curved, curved)
-	n.record(Beyond, s.State == diagnostics.BeyondPrefactor)
-	n.record(Straight, s.State == diagnostics.StraightWithin)
+	n.record(Beyond, s.Judged == diagnostics.BeyondPrefactor)
 	n.record(Rescaled, s.ErrorModel == fit.Scaled)
 	if s.Pointwise != nil {
 		n.record(Pointwise, s.Pointwise.PValue < 0.05)
 	}
 	if !s.ErrorModel.InK() { // else every data set has a null of its own to draw
-		found := s.SecondBarrierFound()
-		n.record(SecondBarrier, found)
-		n.record(Either, curved || found)
+		n.measure(SecondBarrier, s.SecondBarrierFound)
+		n.measure(Either, func() bool { return curved || s.SecondBarrierFound() })
 	}
 	n.Ratio[i] = ratio(s)
 	c.first(s, n)
@@ -217,6 +229,9 @@ func (c Cell) first(s *diagnostics.Screening, n *Counts) {
 		e  Event
 		by diagnostics.Criterion
 	}{{BestAIC, diagnostics.ByAIC}, {BestAICc, diagnostics.ByAICc}, {BestBIC, diagnostics.ByBIC}} {
+		if !n.wants(v.e) {
+			continue
+		}
 		best := diagnostics.Rank(s.Sample, s.Fits, v.by)[0]
 		if best.Status == diagnostics.StatusRanked {
 			n.record(v.e, best.Family != models.Straight().Info().Family)
@@ -241,24 +256,30 @@ func (c Cell) cover(s *diagnostics.Screening, confidence float64, n *Counts) {
 		_, e := c.Truth.at(c.Range, t)
 		return e
 	}
-	change := local(high) - local(low)
-	n.record(CoverChange, holds(s.Exponent.Change, change))
-	n.record(CoverE, holds(diagnostics.LocalEnergy(s.Straight, s.TEff, confidence), local(s.TEff)))
-	n.record(CoverEMin, holds(diagnostics.LocalEnergy(s.Straight, low, confidence), local(low)))
-	n.record(CoverEMax, holds(diagnostics.LocalEnergy(s.Straight, high, confidence), local(high)))
-	n.record(CoverLocMin, holds(diagnostics.LocalEnergy(s.Power, low, confidence), local(low)))
-	n.record(CoverLocMax, holds(diagnostics.LocalEnergy(s.Power, high, confidence), local(high)))
+	covers := func(e Event, f *fit.Result, estimateAt, truthAt float64) {
+		n.measure(e, func() bool {
+			return holds(diagnostics.LocalEnergy(f, estimateAt, confidence), local(truthAt))
+		})
+	}
+	covers(CoverE, s.Straight, s.TEff, s.TEff)
+	covers(CoverEMin, s.Straight, s.TEff, low)
+	covers(CoverEMax, s.Straight, s.TEff, high)
+	covers(CoverLocMin, s.Power, low, low)
+	covers(CoverLocMax, s.Power, high, high)
+	n.measure(CoverChange, func() bool { return holds(s.Exponent.Change, local(high)-local(low)) })
 	if c.Truth.Step != 0 {
 		return // there is no true n
 	}
-	n.record(CoverN, holds(s.Exponent.Exponent, c.Truth.Exponent))
-	if s.ErrorModel.InK() {
-		wald := s.Power.Interval([]float64{0, 0, 1}, s.Power.P[2], confidence)
-		n.record(CoverWaldN, holds(wald, c.Truth.Exponent))
-		n.record(WaldCurved, !holds(wald, 0))
-		profile := fit.Profile(s.Sample, s.Straight, []float64{0, 1e-3}, confidence)
-		n.record(CoverProfileE, holds(profile, local(s.TEff)))
+	n.measure(CoverN, func() bool { return holds(s.Exponent.Exponent, c.Truth.Exponent) })
+	if !s.ErrorModel.InK() {
+		return // the profile is the interval of t
 	}
+	wald := s.Power.Interval([]float64{0, 0, 1}, s.Power.P[2], confidence)
+	n.measure(CoverWaldN, func() bool { return holds(wald, c.Truth.Exponent) })
+	n.measure(WaldCurved, func() bool { return !holds(wald, 0) })
+	n.measure(CoverProfileE, func() bool {
+		return holds(fit.Profile(s.Sample, s.Straight, []float64{0, 1e-3}, confidence), local(s.TEff))
+	})
 }
 
 // compare counts whether AICc prefers the error model that the data have. Both
@@ -274,7 +295,9 @@ func (c Cell) compare(set *dataset.Set, opt diagnostics.Options, n *Counts) erro
 		}
 		aicc[i] = s.Straight.AICc()
 	}
-	n.record(TrueErrorModel, (aicc[1] < aicc[0]) == c.Absolute)
+	if !math.IsNaN(aicc[0]) { // AICc needs N > K+1
+		n.record(TrueErrorModel, (aicc[1] < aicc[0]) == c.Absolute)
+	}
 	return nil
 }
 

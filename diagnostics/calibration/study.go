@@ -51,6 +51,7 @@ type Section struct {
 type job struct {
 	cell   Cell
 	share  int
+	events []Event
 	counts *Counts
 }
 
@@ -99,14 +100,17 @@ func (s *Study) job(c Cell, share int) *job {
 // row adds a row to the last section: one event of the same condition at each
 // number of temperatures.
 func (s *Study) row(label string, c Cell, share int, e Event, target *Target) {
-	s.custom(label, c, share, target, func(n *Counts) Figure { return n.Rate(e) })
+	s.custom(label, c, share, target, e, func(n *Counts) Figure { return n.Rate(e) })
 }
 
-func (s *Study) custom(label string, c Cell, share int, target *Target, value func(*Counts) Figure) {
+// custom adds a row of another value; e is an event that it needs.
+func (s *Study) custom(label string, c Cell, share int, target *Target, e Event, value func(*Counts) Figure) {
 	r := &Row{Label: label, Target: target, value: value}
 	for _, n := range Temperatures {
 		c.N = n
-		r.jobs = append(r.jobs, s.job(c, share))
+		j := s.job(c, share)
+		j.events = append(j.events, e)
+		r.jobs = append(r.jobs, j)
 	}
 	last := s.Sections[len(s.Sections)-1]
 	last.Rows = append(last.Rows, r)
@@ -279,16 +283,13 @@ func (s *Study) twoPaths() {
 // likelihoodRatio adds the power of the calibrated test: its critical value is the
 // 95 % point of the statistic on straight data of the same design.
 func (s *Study) likelihoodRatio(label string, c Cell) {
-	r := &Row{Label: label}
 	null := map[int]*job{}
 	for _, n := range Temperatures {
-		c.N = n
-		r.jobs = append(r.jobs, s.job(c, someForPower))
 		straight := relative(c.Range)
 		straight.N = n
 		null[n] = s.job(straight, all)
 	}
-	r.value = func(n *Counts) Figure {
+	s.custom(label, c, someForPower, nil, Curved, func(n *Counts) Figure {
 		sorted := slices.Clone(null[n.N].counts.Ratio)
 		if len(sorted) == 0 || slices.ContainsFunc(sorted, math.IsNaN) {
 			return rate(0, 0)
@@ -302,9 +303,7 @@ func (s *Study) likelihoodRatio(label string, c Cell) {
 			}
 		}
 		return rate(hits, len(n.Ratio))
-	}
-	last := s.Sections[len(s.Sections)-1]
-	last.Rows = append(last.Rows, r)
+	})
 }
 
 func (s *Study) falling() {
@@ -330,7 +329,7 @@ func (s *Study) falling() {
 
 func (s *Study) coverage() {
 	s.section("Coverage of intervals",
-		fmt.Sprintf("One barrier; share of 95 %% intervals that hold the truth, in per cent. %d resamples; default scheme. With errors in ln k the profile interval is that of t.", resampleCount))
+		fmt.Sprintf("One barrier; share of 95 %% intervals that hold the truth, in per cent. %d resamples; default scheme. With errors in ln k the profile interval is that of t. ΔE is n times a constant, and so are the ends of its intervals.", resampleCount))
 	for _, v := range []struct {
 		name string
 		cell Cell
@@ -347,8 +346,7 @@ func (s *Study) coverage() {
 			e    Event
 		}{
 			{"E, t", CoverE}, {"E, bootstrap-t", BootstrapTE}, {"E, percentile", PercentileE}, {"E, BCa", BCaE},
-			{"n, t", CoverN}, {"n, bootstrap-t", BootstrapTN}, {"n, percentile", PercentileN}, {"n, BCa", BCaN},
-			{"ΔE, t", CoverChange}, {"ΔE, bootstrap-t", BootstrapTChange}, {"ΔE, percentile", PercentileChange}, {"ΔE, BCa", BCaChange},
+			{"n and ΔE, t", CoverN}, {"n and ΔE, bootstrap-t", BootstrapTN}, {"n and ΔE, percentile", PercentileN}, {"n and ΔE, BCa", BCaN},
 		} {
 			s.row(v.name+": "+e.name, c, someResampled, e.e, nil)
 		}
@@ -358,7 +356,7 @@ func (s *Study) coverage() {
 		for _, e := range []struct {
 			name string
 			e    Event
-		}{{"E, t", CoverE}, {"E, profile", CoverProfileE}, {"n, t", CoverWaldN}, {"n, profile", CoverN}, {"ΔE, profile", CoverChange}} {
+		}{{"E, t", CoverE}, {"E, profile", CoverProfileE}, {"n and ΔE, t", CoverWaldN}, {"n and ΔE, profile", CoverN}} {
 			s.row("absolute, "+r.String()+": "+e.name, c, someInK, e.e, nil)
 		}
 	}
@@ -395,7 +393,7 @@ func (s *Study) shares() {
 		{"first place of power", func(sh Shares) float64 { return sh.Power }},
 		{"first place of parallel", func(sh Shares) float64 { return sh.Parallel }},
 	} {
-		s.custom(v.name+", "+Narrow.String(), c, fewShares, nil, func(n *Counts) Figure { return mean(n.Shares, v.of) })
+		s.custom(v.name+", "+Narrow.String(), c, fewShares, nil, Curved, func(n *Counts) Figure { return mean(n.Shares, v.of) })
 	}
 }
 
@@ -418,7 +416,7 @@ func mean(shares []Shares, of func(Shares) float64) Figure {
 func (s *Study) Run(ctx context.Context, set Settings, progress func(done, total int)) error {
 	for i, j := range s.jobs {
 		own := set
-		own.Sets = max(2, set.Sets/j.share)
+		own.Sets, own.Events = max(2, set.Sets/j.share), j.events
 		n, err := j.cell.Run(ctx, own)
 		if err != nil {
 			return fmt.Errorf("calibration: %s: %w", j.cell.name(), err)
