@@ -35,6 +35,9 @@ const demo = "../../../testdata/demo"
 //	exits CODE onebarrier ARGS   runs a command and wants that exit code
 //	valid SCHEMA FILE            wants FILE to be a document of that schema
 func TestScripts(t *testing.T) {
+	if testing.Short() {
+		t.Skip("starts many processes; TestHelpExamples and TestReadme run the same commands in this one")
+	}
 	testscript.Run(t, testscript.Params{
 		Dir:                 "testdata/script",
 		UpdateScripts:       *update,
