@@ -259,6 +259,7 @@ func (p *plan) gaps() func(x float64) float64 {
 
 const (
 	coldStarts = 12 // level-wise minima that get Newton steps
+	coldFaint  = 2  // faint shapes of either kind that do so too
 	coldSteps  = 5
 	coldFinal  = 2 // distinct ones that go on to convergence
 )
@@ -267,7 +268,7 @@ const (
 type search struct {
 	rss   []float64 // at the nodes
 	skip  []bool    // nodes that are known to lead nowhere; nil for none
-	start [coldStarts]normal
+	start [coldStarts + 2*coldFaint]normal
 	trial normal
 	most  int // starts to use
 }
@@ -315,14 +316,68 @@ func (p *plan) pick(s *search, pick *[coldStarts]int) (picked int) {
 	return picked
 }
 
+// faint adds starts for data more precise than the nodes are strong: the outermost
+// nodes of each level, where the shape is an exponential whose length goes as e^c or
+// e^-c, and those of the lowest level, where it goes as d², each cut down to the length
+// that fits best. It returns the number of starts.
+func (p *plan) faint(k *kernel, s *search, straight float64, picked int) int {
+	const weak = 0.3
+	var best [2][coldFaint]struct {
+		saved float64
+		start node
+	}
+	for j := range p.nodes {
+		nd := p.nodes[j]
+		outer := j == 0 || j+1 == len(p.nodes) || p.nodes[j-1].level != nd.level || p.nodes[j+1].level != nd.level
+		if !outer && nd.level > 0 || s.skip != nil && s.skip[j] {
+			continue
+		}
+		product := (straight + nd.norm2 - s.rss[j]) / 2
+		length := product / nd.norm2
+		if !(length > 0 && length < weak) {
+			continue
+		}
+		kind := 0
+		switch {
+		case !outer:
+			kind = 1
+			nd.d *= math.Sqrt(length)
+		case nd.c < 0: // all t are negative, and s is about e^t
+			nd.c += math.Log(length)
+		default: // all are positive, and s is about t + e^-t
+			nd.c -= math.Log(length)
+		}
+		saved := product * length
+		list := &best[kind]
+		for i := range list {
+			if saved > list[i].saved {
+				copy(list[i+1:], list[i:])
+				list[i].saved, list[i].start = saved, nd
+				break
+			}
+		}
+	}
+	for kind := range best {
+		for _, b := range best[kind] {
+			if b.saved > 0 {
+				k.at(b.start.c, b.start.d, &s.start[picked])
+				picked++
+			}
+		}
+	}
+	return picked
+}
+
 // descend is cold once the residual sums of squares at the nodes are known.
 func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
 	var pick [coldStarts]int
 	picked := p.pick(s, &pick)
 	for i, j := range pick[:picked] {
-		e := &s.start[i]
-		k.at(p.nodes[j].c, p.nodes[j].d, e)
-		k.converge(e, &s.trial, tol, coldSteps)
+		k.at(p.nodes[j].c, p.nodes[j].d, &s.start[i])
+	}
+	picked = p.faint(k, s, straight, picked)
+	for i := range picked {
+		k.converge(&s.start[i], &s.trial, tol, coldSteps)
 	}
 	for f := range coldFinal {
 		// The best that is left, unless it is one of the earlier finals.

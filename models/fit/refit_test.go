@@ -22,13 +22,19 @@ type resampling struct {
 	sigma   float64
 }
 
-// newResampling makes a two-path sample whose local E changes by about half, or a
-// straight one, with 3 % scatter, and draws resamples about the generator's curve.
+// newResampling is scattered with 3 % scatter.
 func newResampling(t testing.TB, seed uint64, n int, straight bool) *resampling {
 	t.Helper()
+	return scattered(t, seed, n, straight, 0.03)
+}
+
+// scattered makes a two-path sample whose local E changes by about half, or a straight
+// one, with scatter sigma, and draws resamples about the generator's curve.
+func scattered(t testing.TB, seed uint64, n int, straight bool, sigma float64) *resampling {
+	t.Helper()
 	rng := rand.New(rand.NewPCG(seed, 7))
-	noise := func(int) float64 { return 0.03 * rng.NormFloat64() }
-	r := &resampling{rng: rng, sigma: 0.03}
+	noise := func(int) float64 { return sigma * rng.NormFloat64() }
+	r := &resampling{rng: rng, sigma: sigma}
 	if straight {
 		r.s = made(t, n, 280, 340, []float64{-5, 60e3}, models.Straight(), noise)
 	} else {
@@ -159,7 +165,7 @@ func TestRefitFirstPlaces(t *testing.T) {
 		total, wrong := 0, 0
 		for set := range 12 {
 			n := []int{8, 12, 20}[set%3]
-			r := newResampling(t, uint64(100+set), n, true)
+			r := scattered(t, uint64(100+set), n, true, []float64{0.03, 1e-5}[set%2])
 			ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{Penalty: r.penalty})
 			full := NewRefitter(r.s, r.curves, r.fits, RefitOptions{})
 			var out, want Refit

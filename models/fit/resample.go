@@ -339,6 +339,7 @@ type cover struct {
 const (
 	coarseSlack = 0.20
 	fineSlack   = 0.08
+	gridStart   = 0.25 // lowest d of the grid; below it shapes only get shorter
 	// gridAngle is what a slack keeps for the gaps of the grid that is covered, and
 	// gridLength the factor kept for lengths.
 	gridAngle  = 0.02
@@ -361,9 +362,9 @@ func (d *resampleDesign) newCovers() (coarse, fine *cover) {
 			continue
 		}
 		x := -nd.c / nd.d
-		tail := x < d.low-4/nd.d || x > d.high+4/nd.d
-		coarse.include(v, length, tail)
-		fine.include(v, length, tail)
+		faint := nd.d == gridStart || x < d.low-4/nd.d || x > d.high+4/nd.d
+		coarse.include(v, length, faint)
+		fine.include(v, length, faint)
 	}
 	for _, c := range []*cover{coarse, fine} {
 		for j := range c.low {
@@ -391,9 +392,9 @@ func newCover(slack float64) *cover {
 	return &cover{cos: math.Cos(slack), sin: math.Sin(slack), near: math.Cos(slack - gridAngle)}
 }
 
-// include sees to it that v of the given length is covered. A tail can have any
-// length below that.
-func (c *cover) include(v []float64, length float64, tail bool) {
+// include sees to it that v of the given length is covered, and with faint that it is
+// with any smaller length too.
+func (c *cover) include(v []float64, length float64, faint bool) {
 	j := c.find(v, c.near*length)
 	if j == len(c.shapes) {
 		unit := make([]float64, len(v))
@@ -404,7 +405,7 @@ func (c *cover) include(v []float64, length float64, tail bool) {
 		c.low, c.high = append(c.low, length), append(c.high, length)
 	}
 	c.last = j
-	if tail {
+	if faint {
 		c.low[j] = 0
 	}
 	c.low[j], c.high[j] = math.Min(c.low[j], length), math.Max(c.high[j], length)
@@ -429,7 +430,7 @@ func (c *cover) find(v []float64, least float64) int {
 func (d *resampleDesign) grid() []node {
 	var g []node
 	gap := d.gaps()
-	for v := 0.25; ; v *= math.Sqrt2 {
+	for v := gridStart; ; v *= math.Sqrt2 {
 		dd := math.Min(v, d.maxD)
 		for x := d.low - 8/dd; x <= d.high+8/dd; {
 			g = append(g, node{c: -dd * x, d: dd})

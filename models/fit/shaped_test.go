@@ -3,6 +3,7 @@ package fit
 import (
 	"fmt"
 	"math"
+	"math/rand/v2"
 	"path/filepath"
 	"strings"
 	"testing"
@@ -89,6 +90,29 @@ func TestParallelPublishedSums(t *testing.T) {
 	}
 }
 
+// TestParallelAtAnyPrecision: what parallel gains over the line in pure scatter, and
+// how its fit ends, hardly depends on the size of the scatter, since small shapes are
+// all sums of a parabola, a cubic and exponentials at the ends.
+func TestParallelAtAnyPrecision(t *testing.T) {
+	var first float64
+	for _, size := range []float64{1e-2, 1e-4, 1e-6, 1e-8} {
+		gain := 0.0
+		for seed := range uint64(30) {
+			rng := rand.New(rand.NewPCG(seed, 1))
+			s := made(t, 12, 280, 340, []float64{-5, 60e3}, models.Straight(), func(int) float64 { return size * rng.NormFloat64() })
+			if r := Fit(s, models.Parallel{}); r.Usable() {
+				gain += 1 - r.RSS/Fit(s, models.Straight()).RSS
+			}
+		}
+		if first == 0 {
+			first = gain
+		}
+		if !(math.Abs(gain/first-1) < 0.02) {
+			t.Errorf("scatter %g: summed gain %.4g, with 0.01 %.4g", size, gain, first)
+		}
+	}
+}
+
 // series is barriers in series, 1/k = 1/k1 + 1/k2, for the kernel's other sign.
 type series struct{ models.Parallel }
 
@@ -157,9 +181,20 @@ func TestParallelExcluded(t *testing.T) {
 	if res := Fit(synthetic(t, "s3_parallel", Relative), series{}); res.Status != Excluded {
 		t.Errorf("s3_parallel: series is %v: %s", res.Status, res.Reason)
 	}
-	s := made(t, 12, 280, 340, []float64{-5, 60e3}, models.Straight(), nil)
-	if res := Fit(s, models.Parallel{}); res.Status != Excluded {
-		t.Errorf("exact straight line: parallel is %v: %s", res.Status, res.Reason)
+	// An exact line, and one whose ln k are rounded to 13 digits: the curvature of
+	// that rounding is none.
+	for _, decimals := range []float64{math.Inf(1), 1e12} {
+		for seed := range 5 {
+			s := made(t, 12, 280, 340, []float64{-5, 60e3 + float64(seed)}, models.Straight(), nil)
+			for i, y := range s.Y {
+				if !math.IsInf(decimals, 1) {
+					s.Y[i] = math.Round(y*decimals) / decimals
+				}
+			}
+			if res := Fit(s, models.Parallel{}); res.Status != Excluded {
+				t.Errorf("exact straight line: parallel is %v: %s", res.Status, res.Reason)
+			}
+		}
 	}
 }
 
