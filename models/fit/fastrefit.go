@@ -105,6 +105,10 @@ func (r *fastRefitter) Refit(y []float64, out *Refit) {
 	}
 	for j := range r.shaped {
 		sc := &r.shaped[j]
+		if r.distinct < r.needs[sc.index] {
+			r.fail(sc.index, out)
+			continue
+		}
 		rss, how := r.fitShaped(w, sc, best)
 		r.give(w, sc, rss, how, out)
 		best = math.Min(best, r.of(sc.index, rss))

@@ -19,7 +19,6 @@ const maxBarrier = 1e6
 // width the range of U, so that u has range 1 and weighted mean 0.
 type plan struct {
 	tab       *softplusTable
-	t         []float64
 	rows      []basisRow
 	tc        float64 // K
 	width     float64 // mol/J
@@ -41,7 +40,7 @@ type node struct {
 
 // newPlan makes the plan of a design.
 func newPlan(t, v []float64) *plan {
-	p := &plan{tab: softplusNodes(), t: t, rows: make([]basisRow, len(t))}
+	p := &plan{tab: softplusNodes(), rows: make([]basisRow, len(t))}
 	p.abscissa(t, v)
 	p.n1, p.n2, p.mean = orthonormal(p.rows)
 	return p

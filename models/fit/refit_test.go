@@ -7,6 +7,7 @@ import (
 	"reflect"
 	"sync"
 	"testing"
+	"time"
 
 	"onebarrier/models"
 )
@@ -22,7 +23,7 @@ type resampling struct {
 	sigma   float64
 }
 
-// newResampling is scattered with 3 % scatter.
+// newResampling is scattered with a scatter of 3 %.
 func newResampling(t testing.TB, seed uint64, n int, straight bool) *resampling {
 	t.Helper()
 	return scattered(t, seed, n, straight, 0.03)
@@ -361,6 +362,29 @@ func TestRefitFails(t *testing.T) {
 	}
 }
 
+// TestRefitOfTooFewPoints: curves with more parameters than temperatures fail, and the
+// rest are fitted.
+func TestRefitOfTooFewPoints(t *testing.T) {
+	for n := 1; n <= 4; n++ {
+		s := mustSample(t, Relative, []float64{300, 310, 320, 330}[:n], []float64{1, 2, 3.8, 9}[:n], ones(n))
+		curves := models.Default()
+		var fits []*Result
+		for _, c := range curves {
+			fits = append(fits, Fit(s, c))
+		}
+		var out Refit
+		NewRefitter(s, curves, fits, RefitOptions{}).Refit(s.Y, &out)
+		for j, c := range curves {
+			if p := len(c.Info().Params); math.IsNaN(out.RSS[j]) != (p > n) {
+				t.Errorf("N = %d: RSS of %s is %g", n, c.Info().Name, out.RSS[j])
+			}
+		}
+		if (out.How == HowFailed) != (n < 4) || (out.First < 0) != (n < 2) {
+			t.Errorf("N = %d: %+v", n, out)
+		}
+	}
+}
+
 // TestSlowRefit: with errors in k a refit is Fit on the resample.
 func TestSlowRefit(t *testing.T) {
 	r := newResampling(t, 3, 10, false)
@@ -390,10 +414,42 @@ func TestSlowRefit(t *testing.T) {
 	want(t, "RSS of doubled entries", out.RSS[1], 2*once, 1e-9)
 }
 
+// floorTime is the time of exp and log1p at n points, in ns: what a shape costs at
+// least where it is computed with the library's functions. The least of many short
+// runs, since a benchmark beside it may be interrupted.
+func floorTime(n int) float64 {
+	x := make([]float64, n)
+	for i := range x {
+		x[i] = 6 * (float64(i)/float64(n-1) - 0.5)
+	}
+	var sum float64
+	best := math.Inf(1)
+	for range 500 {
+		start := time.Now()
+		for range 50 {
+			for _, v := range x {
+				sum += math.Log1p(math.Exp(v))
+			}
+		}
+		best = math.Min(best, float64(time.Since(start).Nanoseconds())/50)
+	}
+	if sum < 0 {
+		return math.NaN()
+	}
+	return best
+}
+
+// report adds the time as a multiple of floorTime.
+func report(b *testing.B, n int) {
+	b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/floorTime(n), "floors")
+}
+
+// BenchmarkRefit is one resample of straight + power-prefactor + parallel with the
+// choice of the first place.
 func BenchmarkRefit(b *testing.B) {
-	for _, kind := range []string{"two-path", "straight"} {
-		for _, n := range []int{10, 20} {
-			r := newResampling(b, 3, n, kind == "straight")
+	for _, straight := range []bool{false, true} {
+		for _, n := range []int{8, 10, 12, 20} {
+			r := newResampling(b, 3, n, straight)
 			ys := make([][]float64, 256)
 			counts := make([][]int, len(ys))
 			for i := range ys {
@@ -404,38 +460,59 @@ func BenchmarkRefit(b *testing.B) {
 					counts[i][r.rng.IntN(n)]++
 				}
 			}
+			kind := "two-path"
+			if straight {
+				kind = "straight"
+			}
 			ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{Penalty: r.penalty})
 			var out Refit
-			b.Run(fmt.Sprintf("%s/N=%d", kind, n), func(b *testing.B) {
-				b.ReportAllocs()
-				how := [5]int{}
-				for i := range b.N {
-					ref.Refit(ys[i%256], &out)
-					how[out.How]++
-				}
-				b.ReportMetric(100*float64(how[HowCold])/float64(b.N), "%cold")
-			})
-			b.Run(fmt.Sprintf("%s-pairs/N=%d", kind, n), func(b *testing.B) {
-				b.ReportAllocs()
-				how := [5]int{}
-				for i := range b.N {
-					ref.RefitCounts(r.s.Y, counts[i%256], &out)
-					how[out.How]++
-				}
-				b.ReportMetric(100*float64(how[HowCold])/float64(b.N), "%cold")
-			})
-			x := make([]float64, n)
-			for i := range x {
-				x[i] = 6 * (r.rng.Float64() - 0.5)
-			}
-			var sink float64
-			b.Run(fmt.Sprintf("floor/N=%d", n), func(b *testing.B) {
-				for range b.N {
-					for _, v := range x {
-						sink += math.Log1p(math.Exp(v))
+			run := func(scheme string, refit func(i int)) {
+				b.Run(fmt.Sprintf("%s/%s/N=%d", kind, scheme, n), func(b *testing.B) {
+					b.ReportAllocs()
+					cold := 0
+					for i := range b.N {
+						refit(i % len(ys))
+						if out.How == HowCold {
+							cold++
+						}
 					}
-				}
-			})
+					report(b, n)
+					b.ReportMetric(100*float64(cold)/float64(b.N), "%cold")
+				})
+			}
+			run("parametric", func(i int) { ref.Refit(ys[i], &out) })
+			run("pairs", func(i int) { ref.RefitCounts(r.s.Y, counts[i], &out) })
 		}
+	}
+}
+
+// BenchmarkParallel is a global fit on a plan that is made, a fit with its plan, and
+// the four profile intervals of a fit.
+func BenchmarkParallel(b *testing.B) {
+	for _, n := range []int{8, 12, 20} {
+		r := newResampling(b, 3, n, false)
+		p := newPlan(r.s.T, r.s.V)
+		p.makeNodes()
+		k, s := p.kernel(), p.newSearch()
+		b.Run(fmt.Sprintf("cold/N=%d", n), func(b *testing.B) {
+			for range b.N {
+				p.cold(k, s, k.setData(r.s.Y, 1), coldTol)
+			}
+			report(b, n)
+		})
+		b.Run(fmt.Sprintf("fit/N=%d", n), func(b *testing.B) {
+			for range b.N {
+				fitShaped(r.s, models.Parallel{})
+			}
+			report(b, n)
+		})
+		b.Run(fmt.Sprintf("profiles/N=%d", n), func(b *testing.B) {
+			for range b.N {
+				for _, param := range []string{"ln_A1", "E1", "ln_A2", "E2"} {
+					ProfileShaped(r.s, r.fits[2], param, 0.95)
+				}
+			}
+			report(b, n)
+		})
 	}
 }

@@ -143,7 +143,7 @@ func (f *shapedProfile) prepare(s *Sample, r *Result) {
 
 	full.layNodes()
 	p := &plan{
-		tab: full.tab, t: full.t, tc: full.tc, width: full.width, low: full.low, high: full.high,
+		tab: full.tab, tc: full.tc, width: full.width, low: full.low, high: full.high,
 		maxD: full.maxD, distinct: full.distinct, rows: make([]basisRow, n),
 		nodes: full.nodes,
 	}
