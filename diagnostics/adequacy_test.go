@@ -88,9 +88,48 @@ func TestRunsAgainstR(t *testing.T) {
 	}
 }
 
-// The null of the runs test on straight data: P(p <= α) must not exceed α. And with
-// independent signs, which a fit of one parameter to many points nearly leaves, it
-// is the exact Wald-Wolfowitz distribution averaged over the number of signs.
+// The chance of so few runs against 200,000 sets of residuals of normal numbers made
+// and projected in R.
+func TestRunsPValueAgainstR(t *testing.T) {
+	for _, c := range []struct {
+		set, curve string
+		model      fit.ErrorModel
+		p          float64
+	}{
+		{"s1_straight", "straight", fit.Relative, 0.93944},
+		{"s2_tn_curved", "power-prefactor", fit.Relative, 0.303275},
+		{"s5_hetero", "straight", fit.Scaled, 0.1039},
+		{"s6_replicates", "straight", fit.Relative, 0.00747},
+		{"s8_tiny6", "straight", fit.Relative, 0.28955},
+		{"s8_tiny6", "power-prefactor", fit.Relative, 0.518785},
+	} {
+		s := synthetic(t, c.set, c.model)
+		_, p := runsTest(s, fitNamed(t, s, c.curve))
+		se := math.Sqrt(c.p * (1 - c.p) * (1./runsDraws + 1./200000))
+		if !(math.Abs(p-c.p) <= 4*se) {
+			t.Errorf("%s %s: p = %.4f, want %.4f ± %.4f", c.set, c.curve, p, c.p, 4*se)
+		}
+	}
+}
+
+// What a fit can follow is orthogonal to its own weighted residuals.
+func TestTangentIsOrthogonalToResiduals(t *testing.T) {
+	s := synthetic(t, "s5_hetero", fit.Scaled)
+	for _, name := range []string{"straight", "power-prefactor"} {
+		f := fitNamed(t, s, name)
+		for j, q := range tangent(s, f) {
+			var dot float64
+			for i, r := range f.Residuals {
+				dot += q[i] * r / math.Sqrt(s.V[i])
+			}
+			if !(math.Abs(dot) <= 1e-9*math.Sqrt(f.RSS)) {
+				t.Errorf("%s: column %d and the residuals have product %g", name, j, dot)
+			}
+		}
+	}
+}
+
+// The null of the runs test on straight data: P(p <= α) must not exceed α.
 func TestRunsNull(t *testing.T) {
 	s := sampleOf(t, fit.Relative, span(280, 340, 8), make([]float64, 8), nil)
 	rng := rand.New(rand.NewPCG(5, 5))

@@ -132,7 +132,7 @@ func (a *assessor) fit() error {
 				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %.2g for the curve that fits best); they were kept because you asked for it", p), nil, values)
 			} else {
 				a.model = fit.Scaled
-				a.modelWhy = "the data scatter more than their stated uncertainties allow"
+				a.modelWhy = "chosen because the data scatter more than their stated uncertainties allow"
 				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %.2g for the curve that fits best); one common factor is estimated instead", p), nil, values)
 				if err := a.fitUnder(fit.Scaled); err != nil {
 					return err
@@ -161,11 +161,11 @@ func (a *assessor) chooseErrorModel(points []dataset.Point) error {
 	}
 	switch m := a.opt.ErrorModel; {
 	case m == "":
-		a.model, a.modelWhy = fit.Relative, "no standard uncertainty is stated for every point"
+		a.model, a.modelWhy = fit.Relative, "chosen because not every point has a stated standard uncertainty"
 		if stated {
-			a.model, a.modelWhy = fit.Stated, "every point has a standard uncertainty"
+			a.model, a.modelWhy = fit.Stated, "chosen because every point has a stated standard uncertainty"
 		} else if repeats {
-			a.modelWhy = "the stated standard deviations come from few repeats"
+			a.modelWhy = "chosen because the stated standard deviations come from few repeats"
 			a.find("repeats-not-known", "standard deviations of a few repeats are not known uncertainties: one common relative error is estimated from the scatter about the curve", nil, nil)
 		} else if some {
 			a.find("stated-incomplete", fmt.Sprintf("%d of %d points have no standard uncertainty: one common relative error is estimated from the scatter about the curve", len(missing), len(points)), missing, nil)
@@ -316,6 +316,7 @@ func (a *assessor) decide() {
 		Sample: a.data.sample, Test: a.exponent, SecondBarrier: a.secondRun,
 		Rule: a.rule, Ranking: a.ranking,
 		Untestable: a.untestable != "", More: a.more, Why: a.untestable,
+		EnergyUnit: a.opt.EnergyUnit, PerKJ: UnitOfEnergy(a.opt.EnergyUnit).PerKJ,
 	})
 	a.findings = append(a.findings, found...)
 }

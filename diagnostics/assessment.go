@@ -55,6 +55,12 @@ func NewEstimate(e fit.Estimate) Estimate {
 	return out
 }
 
+// Times gives the estimate in a unit of which by make one.
+func (e Estimate) Times(by float64) Estimate {
+	r := Real(by)
+	return Estimate{r * e.Value, r * e.StdError, r * e.Lower, r * e.Upper, e.Open}
+}
+
 // State is a verdict code.
 type State string
 

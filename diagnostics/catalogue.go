@@ -129,7 +129,7 @@ var catalogue = []Entry{
 	// Curvature.
 	{
 		Code: "second-barrier", Title: "the second-barrier test finds a bend", Severity: Warning,
-		Explanation: "Beside the exponent test, which looks for smooth curvature, the data are tested for the shape that a second, parallel path would give: nine crossovers and six differences of barrier are tried, and the largest studentised coefficient is compared with its exact distribution under one barrier. Only E rising with T counts. It never decides the verdict. One of the two, verdict or this finding, raises a false alarm in 7 to 8 % of straight data sets.",
+		Explanation: "Beside the exponent test, which looks for smooth curvature, the data are tested for the shape that a second, parallel path would give: nine crossovers and six differences of barrier are tried, and the largest studentised coefficient is compared with its exact distribution under one barrier. Only E rising with T counts. It never decides the verdict. One of the two, verdict or this finding, raises a false alarm in 7 to 8 % of straight data sets (9 % of those with four temperatures).",
 		Cure:        "measure more temperatures around the crossover",
 		Reference:   "R. B. Davies, Biometrika 74 (1987) 33",
 	},

@@ -26,7 +26,7 @@ func RankingFindings(ranking []Ranked, s *fit.Sample, by Criterion) []Finding {
 			continue
 		}
 		fitted = append(fitted, r.Curve)
-		exact = exact || (!s.Model.KnownSigma() && noScatter(s, float64(r.RSS)))
+		exact = exact || (r.Points > r.Params && !s.Model.KnownSigma() && noScatter(s, float64(r.RSS)))
 		if !r.identified() {
 			add("curve-not-identified", r.Curve+": "+r.Reason)
 		}
@@ -103,9 +103,13 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
 	if s.Model.InK() {
 		approximate = " (approximate: linearised about the straight line)"
 	}
+	rate := "7 to 8 %"
+	if s.DistinctT() <= minTemperatures {
+		rate = "9 %"
+	}
 	fs := []Finding{newFinding("second-barrier",
-		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier, p = %s%s; verdict or this finding raises a false alarm in 7 to 8 %% of straight sets",
-			where, pText(float64(b.PValue)), approximate),
+		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier, p = %s%s; verdict or this finding raises a false alarm in %s of straight sets",
+			where, pText(float64(b.PValue)), approximate, rate),
 		nil, map[string]Real{"p_value": b.PValue, "crossover_low_k": b.Crossover[0], "crossover_high_k": b.Crossover[1]})}
 	end := func(p Real, t float64) {
 		if p > 0.20 {
@@ -122,7 +126,7 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
 // pText prints a p-value with two figures.
 func pText(p float64) string {
 	if p < 1e-4 {
-		return fmt.Sprintf("%.0e", p)
+		return significant(p, 1, "")
 	}
 	return fmt.Sprintf("%.2g", p)
 }

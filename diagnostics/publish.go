@@ -31,18 +31,18 @@ func styleOf(q dataset.Quantity) string {
 	return StyleMolar
 }
 
-// energyUnit is an energy unit as it is printed: how many of it one kJ/mol is, the
+// EnergyUnit is an energy unit as it is printed: how many of it one kJ/mol is, the
 // unit of an entropy beside it with its size in J/(mol K), and what an energy must
 // be divided by to have that unit.
-type energyUnit struct {
-	name, entropy      string
-	perKJ, entropyPerJ float64
-	per                string
+type EnergyUnit struct {
+	Name, Entropy      string
+	PerKJ, EntropyPerJ float64
+	Per                string
 }
 
 // The sizes follow from the defining constants of the SI; the thermochemical
 // calorie is 4.184 J exactly.
-var energyUnits = map[string]energyUnit{
+var energyUnits = map[string]EnergyUnit{
 	"kJ/mol":   {"kJ/mol", "J/(mol K)", 1, 1, ""},
 	"kcal/mol": {"kcal/mol", "cal/(mol K)", 1 / 4.184, 1 / 4.184, ""},
 	"eV":       {"eV", "meV/K", perElectronvolt, perElectronvolt, ""},
@@ -55,8 +55,8 @@ const (
 	perWavenumber   = 1000 / (models.Avogadro * models.Planck * float64(constant.LightSpeedInVacuum) * 100)
 )
 
-// unitOfEnergy looks an energy unit up; "" is kJ/mol.
-func unitOfEnergy(name string) energyUnit {
+// UnitOfEnergy looks an energy unit up; "" is kJ/mol.
+func UnitOfEnergy(name string) EnergyUnit {
 	if name == "" {
 		name = "kJ/mol"
 	}
@@ -217,16 +217,16 @@ func publish(in toPublish) Publish {
 	if in.Style == "" {
 		in.Style = styleOf(in.Quantity)
 	}
-	w := &publisher{in: in, energy: unitOfEnergy(in.EnergyUnit)}
+	w := &publisher{in: in, energy: UnitOfEnergy(in.EnergyUnit)}
 	w.symbol = in.Quantity.Symbol
 	if w.symbol == "" {
 		w.symbol = "k"
 	}
 	switch in.Style {
 	case StyleKelvin, StyleEvaluated:
-		w.energy = unitOfEnergy("K")
+		w.energy = UnitOfEnergy("K")
 	case StyleElectronvolt:
-		w.energy = unitOfEnergy("eV")
+		w.energy = UnitOfEnergy("eV")
 	}
 	w.fitted()
 	out := Publish{Style: in.Style, Curve: in.Fit.Curve.Info().Name, Lines: w.lines, Notes: w.notes}
@@ -239,7 +239,7 @@ func publish(in toPublish) Publish {
 // publisher writes the lines.
 type publisher struct {
 	in     toPublish
-	energy energyUnit
+	energy EnergyUnit
 	symbol string // of the rate constant
 	lines  []PublishLine
 	notes  []string
@@ -372,11 +372,11 @@ func kelvinText(t float64) string {
 
 // energyLine adds an energy given in kJ/mol.
 func (w *publisher) energyLine(symbol string, e fit.Estimate, notes ...string) {
-	w.value(symbol+w.energy.per, w.energy.name, scaled(e, w.energy.perKJ), notes...)
+	w.value(symbol+w.energy.Per, w.energy.Name, scaled(e, w.energy.PerKJ), notes...)
 }
 
 func (w *publisher) entropyLine(symbol string, e fit.Estimate, notes ...string) {
-	w.value(symbol+w.energy.per, w.energy.entropy, scaled(e, w.energy.entropyPerJ), notes...)
+	w.value(symbol+w.energy.Per, w.energy.Entropy, scaled(e, w.energy.EntropyPerJ), notes...)
 }
 
 // eAt adds the local activation energy at a temperature.
@@ -586,7 +586,7 @@ func (w *publisher) rate() {
 	if w.in.Style != StyleEvaluated {
 		return
 	}
-	ln, e := lnKAt(r, t, c), scaled(eLocAt(r, t, c), w.energy.perKJ)
+	ln, e := lnKAt(r, t, c), scaled(eLocAt(r, t, c), w.energy.PerKJ)
 	single := func(symbol, unit string, v float64, text, note string) {
 		if math.IsNaN(v) {
 			text = unknownText
@@ -611,7 +611,7 @@ func (w *publisher) unresolved() {
 	}
 	c := w.in.Curvature
 	if c.EChange.Lower.Known() && c.EChange.Upper.Known() {
-		lower, upper := float64(c.EChange.Lower)*w.energy.perKJ, float64(c.EChange.Upper)*w.energy.perKJ
+		lower, upper := float64(c.EChange.Lower)*w.energy.PerKJ, float64(c.EChange.Upper)*w.energy.PerKJ
 		_, exp := split((upper-lower)/2, 2)
 		sign := func(x float64) string {
 			s := fixed(x, 0, max(0, 1-exp))
@@ -620,8 +620,8 @@ func (w *publisher) unresolved() {
 			}
 			return s
 		}
-		w.add(PublishLine{Symbol: "ΔE" + w.energy.per, Unit: w.energy.name, Estimate: NewEstimate(scaled(c.EChange.fit(), w.energy.perKJ)),
-			Text: sign(lower) + " to " + sign(upper) + withUnit(w.energy.name),
+		w.add(PublishLine{Symbol: "ΔE" + w.energy.Per, Unit: w.energy.Name, Estimate: NewEstimate(scaled(c.EChange.fit(), w.energy.PerKJ)),
+			Text: sign(lower) + " to " + sign(upper) + withUnit(w.energy.Name),
 			Note: fmt.Sprintf("%g %% interval of the change of E over the range", 100*w.in.Confidence)})
 	}
 	for _, end := range []struct {

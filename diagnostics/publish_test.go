@@ -320,10 +320,10 @@ func TestEnergyUnits(t *testing.T) {
 		"kJ/mol": 1, "kcal/mol": 1 / 4.184, "eV": 1 / 96.48533212,
 		"K": 1.160451812e4 / 96.48533212, "cm^-1": 8065.543937 / 96.48533212,
 	} {
-		want(t, name, unitOfEnergy(name).perKJ, w, 1e-9)
+		want(t, name, UnitOfEnergy(name).PerKJ, w, 1e-9)
 	}
 	for _, name := range EnergyUnits {
-		unitOfEnergy(name) // every unit that can be asked for is known
+		UnitOfEnergy(name) // every unit that can be asked for is known
 	}
 	r := byHand(models.Straight(), 300, []float64{0.05, 1000}, -5, 50e3)
 	eyring := byHand(models.LinearPrefactor(), 300, []float64{0.05, 1000}, -5, 47.5e3)

@@ -241,7 +241,7 @@ func (in *VerdictInput) restsOnStated() bool {
 // sentence says what was found, in words that a chemist reads.
 func (in *VerdictInput) sentence(state State) string {
 	low, high := in.Sample.Range()
-	between := fmt.Sprintf("between %.4g and %.4g K", low, high)
+	between := fmt.Sprintf("between %s and %s K", kelvinText(low), kelvinText(high))
 	n, change := in.Test.Exponent, in.Test.Change
 	var s strings.Builder
 	switch state {

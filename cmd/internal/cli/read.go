@@ -22,6 +22,7 @@ import (
 func addSelection(cmd *cobra.Command, o *dataset.Options) {
 	f := cmd.Flags()
 	f.StringVar(&o.Dataset, "dataset", "", "keep the rows of the data set with this `name`")
+	f.StringVar(&o.DatasetBy, "dataset-by", "", "make a data set of every value in the column with this `heading`, such as pH")
 	f.Var(column{&o.Columns}, "column", "take a column for a role, such as 'k=k_obs/s^-1' (repeat for more)")
 	f.Var(pairs{&o.Assume}, "assume", "settle what is ambiguous, such as T=degC or error=2")
 	f.Var(&choice{&o.Decimal, []string{"comma", "point"}}, "decimal", "decimal mark of the file")
@@ -37,7 +38,7 @@ func addSelection(cmd *cobra.Command, o *dataset.Options) {
 }
 
 // selectionFlags are those that leave rows out.
-var selectionFlags = []string{"dataset", "where", "leave-out", "t-min", "t-max"}
+var selectionFlags = []string{"dataset", "dataset-by", "where", "leave-out", "t-min", "t-max"}
 
 // selection lists the flags that left rows out, as the user may repeat them.
 func selection(cmd *cobra.Command) []string {

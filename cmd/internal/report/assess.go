@@ -110,7 +110,10 @@ func (p *page) fit(rows [][]string) []string {
 
 func (p *page) test(a *diagnostics.Assessment) {
 	c := a.Curvature
-	d := decimalsOf(c.EChange)
+	e := diagnostics.UnitOfEnergy(a.Settings.EnergyUnit)
+	change, detectable := c.EChange.Times(e.PerKJ), c.Detectable.Times(e.PerKJ)
+	energy := "\u00a0" + e.Name
+	d := decimalsOf(change)
 	nd := decimalsOf(c.Exponent)
 	sure := fmt.Sprintf("(%s", percent(diagnostics.Real(a.Settings.Confidence)))
 	band := a.Settings.PrefactorBand
@@ -118,8 +121,8 @@ func (p *page) test(a *diagnostics.Assessment) {
 	if c.EChange.Value.Known() {
 		rows = append(rows,
 			[]string{fmt.Sprintf("change of E, %s to %s K", kelvin(a.Dataset.TMin), kelvin(a.Dataset.TMax)),
-				fmt.Sprintf("%s\u00a0kJ/mol %s: %s)", signed(c.EChange.Value, d), sure, interval(c.EChange, d))},
-			[]string{"too small to matter below", fmt.Sprintf("%s\u00a0kJ/mol", significant(c.ToleranceKJ, 2))},
+				fmt.Sprintf("%s%s %s: %s)", signed(change.Value, d), energy, sure, interval(change, d))},
+			[]string{"too small to matter below", significant(c.ToleranceKJ*diagnostics.Real(e.PerKJ), 2) + energy},
 			[]string{"exponent n of T", fmt.Sprintf("%s %s: %s)", signed(c.Exponent.Value, nd), sure, interval(c.Exponent, nd))},
 			[]string{"p for n = 0", probability(c.PValue)},
 			[]string{fmt.Sprintf("p for n in %g..%g", band[0], band[1]), probability(c.PBand)})
@@ -127,11 +130,11 @@ func (p *page) test(a *diagnostics.Assessment) {
 			rows = append(rows, []string{"p without u(k) as stated", probability(c.PScaleFree)})
 		}
 	}
-	if c.Detectable.Value.Known() {
-		dd := decimalsOf(c.Detectable)
-		text := fmt.Sprintf("%s\u00a0kJ/mol", plain(c.Detectable.Value, dd))
-		if c.Detectable.Lower.Known() || c.Detectable.Upper.Known() {
-			text += fmt.Sprintf(" (%s to %s)", plain(c.Detectable.Lower, dd), plain(c.Detectable.Upper, dd))
+	if detectable.Value.Known() {
+		dd := decimalsOf(detectable)
+		text := plain(detectable.Value, dd) + energy
+		if detectable.Lower.Known() || detectable.Upper.Known() {
+			text += fmt.Sprintf(" (%s to %s)", plain(detectable.Lower, dd), plain(detectable.Upper, dd))
 		}
 		rows = append(rows, []string{"seen with 80 % power", text})
 	}
@@ -144,6 +147,14 @@ func (p *page) test(a *diagnostics.Assessment) {
 			text += fmt.Sprintf(", crossover between %s and %s\u00a0K", plain(s.Crossover[0], 0), plain(s.Crossover[1], 0))
 		}
 		rows = append(rows, []string{"second barrier, E rising", text})
+	}
+	if b := a.Bootstrap; b != nil {
+		for _, iv := range b.Intervals {
+			if iv.Parameter == "change_of_E" {
+				r := diagnostics.Estimate{Lower: iv.Lower, Upper: iv.Upper}.Times(e.PerKJ)
+				rows = append(rows, []string{"change of E by " + iv.Method, interval(r, d) + energy})
+			}
+		}
 	}
 	if b := a.Bootstrap; b != nil && len(b.RepeatShare) > 0 {
 		var shares []string
@@ -195,7 +206,7 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 			if f.Withheld != "" && strings.Contains(r.Reason, f.Withheld) {
 				continue // said already
 			}
-			lines = append(lines, hang("  ·", 4, form(f), p.body())...)
+			lines = append(lines, hang("  ·", 4, form(f, diagnostics.UnitOfEnergy(a.Settings.EnergyUnit)), p.body())...)
 		}
 	}
 	legend := "family, weight: evidence for the curve's family and for the curve, in shares; repeats: how often a repeat of the experiment would put the family first; fits: adequacy at 1 %"
@@ -206,14 +217,21 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 }
 
 // form writes one reading of a curve in a line.
-func form(f diagnostics.FormEstimate) string {
+func form(f diagnostics.FormEstimate, energy diagnostics.EnergyUnit) string {
 	if f.Withheld != "" {
 		return f.Model + " – " + f.Withheld
 	}
 	var parts []string
 	for _, q := range f.Parameters {
-		s := symbol(q.Symbol) + "\u00a0" + brackets(q.Estimate)
-		if u := unit(q.Unit); u != "" {
+		name, value, u := symbol(q.Symbol), q.Estimate, unit(q.Unit)
+		switch q.Unit {
+		case "kJ mol^-1":
+			name, value, u = name+energy.Per, value.Times(energy.PerKJ), energy.Name
+		case "J mol^-1 K^-1":
+			name, value, u = name+energy.Per, value.Times(energy.EntropyPerJ), energy.Entropy
+		}
+		s := name + "\u00a0" + brackets(value)
+		if u != "" {
 			s += "\u00a0" + strings.ReplaceAll(u, " ", "\u00a0")
 		}
 		parts = append(parts, s)
