@@ -71,10 +71,10 @@ func TestRates(t *testing.T) {
 		for e, w := range c.want {
 			f := n.Rate(e)
 			if f.Trials == 0 {
-				t.Errorf("%s: event %d was never tried", c.name, e)
+				t.Errorf("%s: %s was never tried", c.name, e)
 			}
 			if s := off(f, w[0], w[1]); s != "" {
-				t.Errorf("%s: event %d: %s", c.name, e, s)
+				t.Errorf("%s: %s: %s", c.name, e, s)
 			}
 		}
 	}
@@ -117,14 +117,14 @@ func TestBootstrapCoverage(t *testing.T) {
 	n := run(t, c, 400)
 	for _, e := range []Event{BootstrapTE, BootstrapTN, BootstrapTChange} {
 		if s := off(n.Rate(e), .92, .98); s != "" {
-			t.Errorf("bootstrap-t, event %d: %s", e, s)
+			t.Errorf("%s: %s", e, s)
 		}
 	}
 	// ΔE is a multiple of n, whatever makes the interval: the study prints one row
 	// for both.
 	for ofN, change := range map[Event]Event{CoverN: CoverChange, BootstrapTN: BootstrapTChange, PercentileN: PercentileChange, BCaN: BCaChange} {
 		if n.Hits[ofN] != n.Hits[change] {
-			t.Errorf("events %d and %d: %d intervals of n hold the truth and %d of ΔE", ofN, change, n.Hits[ofN], n.Hits[change])
+			t.Errorf("%s and %s: %d intervals of n hold the truth and %d of ΔE", ofN, change, n.Hits[ofN], n.Hits[change])
 		}
 	}
 	if f := n.Rate(PercentileN); !(f.Value < n.Rate(BootstrapTN).Value) {

@@ -62,6 +62,42 @@ const (
 	events
 )
 
+var eventNames = [events]string{
+	IsUntestable:     "untestable",
+	Curved:           "curved",
+	Beyond:           "beyond-prefactor",
+	Rescaled:         "taken as scaled",
+	SecondBarrier:    "second-barrier finding",
+	Either:           "curved or second-barrier finding",
+	Pointwise:        "curved on single points",
+	WaldCurved:       "curved by the Wald interval",
+	BestAIC:          "curved by AIC",
+	BestAICc:         "curved by AICc",
+	BestBIC:          "curved by BIC",
+	CoverN:           "coverage of n",
+	CoverChange:      "coverage of ΔE",
+	CoverWaldN:       "coverage of n, Wald",
+	CoverE:           "coverage of E at T_eff",
+	CoverProfileE:    "coverage of E at T_eff, profile",
+	CoverEMin:        "coverage of E at T_min",
+	CoverEMax:        "coverage of E at T_max",
+	CoverLocMin:      "coverage of E_loc(T_min)",
+	CoverLocMax:      "coverage of E_loc(T_max)",
+	TrueErrorModel:   "right error model",
+	BootstrapTE:      "bootstrap-t of E",
+	PercentileE:      "percentile of E",
+	BCaE:             "BCa of E",
+	BootstrapTN:      "bootstrap-t of n",
+	PercentileN:      "percentile of n",
+	BCaN:             "BCa of n",
+	BootstrapTChange: "bootstrap-t of ΔE",
+	PercentileChange: "percentile of ΔE",
+	BCaChange:        "BCa of ΔE",
+}
+
+// String names the event.
+func (e Event) String() string { return eventNames[e] }
+
 // Counts is what the data sets of one cell showed.
 type Counts struct {
 	N      int // temperatures
