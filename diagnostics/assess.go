@@ -267,6 +267,10 @@ func (a *assessor) test() {
 		t := a.pointwiseTest
 		a.pointwise = &Pointwise{NewEstimate(t.Exponent), NewEstimate(t.Change), Real(t.PValue), Real(t.PBand)}
 	}
+	if a.data.basis == BasisMeans {
+		n, points := a.data.sample.Len(), a.data.single.Len()
+		a.find("temperature-means", fmt.Sprintf("the verdict uses the means at %d temperatures, not the %d single points, which share the errors of %d settings", n, points, n), nil, nil)
+	}
 	if a.second = a.opt.Designs.test(a.data.sample, a.straight, nil); a.second != nil {
 		a.secondRun = a.second.Run()
 	}
@@ -291,7 +295,7 @@ func (a *assessor) testExponents() {
 		a.more, a.untestable = more, why
 	}
 	a.exponent = a.testExponent(s, a.power)
-	if a.data.replicated() && a.data.basis == BasisMeans {
+	if a.data.basis == BasisMeans {
 		if f := fit.Fit(a.data.single, models.PowerPrefactor{}); f.Usable() && f.Nu >= 1 {
 			t := a.testExponent(a.data.single, f)
 			a.pointwiseTest = &t
@@ -317,6 +321,7 @@ func (a *assessor) decide() {
 		Rule: a.rule, Ranking: a.ranking,
 		Untestable: a.untestable != "", More: a.more, Why: a.untestable,
 		EnergyUnit: a.opt.EnergyUnit, PerKJ: UnitOfEnergy(a.opt.EnergyUnit).PerKJ,
+		PerMolecule: a.set.Quantity.PerMolecule,
 	})
 	a.findings = append(a.findings, found...)
 }
@@ -339,7 +344,7 @@ func (a *assessor) resample(ctx context.Context) error {
 		NewJudge: func() bootstrap.Judge { return newJudge(a).state },
 		Targets:  bootstrap.DefaultTargets(s, a.fits),
 	}
-	if a.data.basis == BasisMeans && a.data.replicated() {
+	if a.data.basis == BasisMeans {
 		in.Points = a.data.behindMeans()
 	}
 	methods := make([]bootstrap.Method, len(a.opt.Intervals))

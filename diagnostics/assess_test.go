@@ -392,3 +392,16 @@ func TestTemperatureMeans(t *testing.T) {
 	reference.Close(t, "variance", d.sample.V[0], 1/(100.+25), 1e-14)
 	reference.Close(t, "mean", d.sample.Y[0], 25./125, 1e-14)
 }
+
+func TestFindingsOfTheData(t *testing.T) {
+	s := setOf([]float64{300, 310, 300, 320, 310, 330, 340}, []float64{1, 2, 1.1, 4, 2.1, 8, 15}, nil)
+	if a := mustAssess(t, s, quick()); !a.finding("temperature-means") || a.finding("band-narrow-for-gas-phase") {
+		t.Errorf("repeats: %v", a.Findings)
+	}
+	o := quick()
+	o.Replicates = ReplicatesIndependent
+	s.Quantity.PerMolecule = true
+	if a := mustAssess(t, s, o); a.finding("temperature-means") || !a.finding("band-narrow-for-gas-phase") {
+		t.Errorf("independent points, per molecule: %v", a.Findings)
+	}
+}

@@ -36,9 +36,6 @@ type prepared struct {
 	temperatureShare float64
 }
 
-// replicated reports whether some temperature was measured more than once.
-func (p *prepared) replicated() bool { return p.means != nil }
-
 // sameTemperature reports whether two temperatures are one setting, read
 // perhaps in two units: closer than the rounding of a conversion.
 func sameTemperature(a, b float64) bool { return math.Abs(a-b) <= 1e-9*b }
