@@ -37,7 +37,7 @@ type Solution struct {
 }
 
 // LeastSquares minimises Σ r_i(p)² from p0 by Moré's trust-region form of the
-// Levenberg–Marquardt method (J. J. Moré, Lecture Notes in Mathematics 630 (1978)
+// Levenberg–Marquardt method (J. J. Moré, in Numerical Analysis, Springer LNM 630 (1978)
 // 105): pivoted Householder QR, parameters scaled by the running maximum of the
 // column lengths of J. Undamped Gauss–Newton steps then polish the answer, since
 // RSS itself cannot see relative changes of p below 1e-8. p0 is not modified.
