@@ -120,8 +120,8 @@ func (s *Study) custom(label string, c Cell, share int, target *Target, e Event,
 const (
 	all           = 1
 	someForPower  = 5
-	someInK       = 5
-	fewInK        = 10
+	someInK       = 2
+	fewInK        = 4
 	someResampled = 5
 	someCompared  = 20
 	fewShares     = 100
