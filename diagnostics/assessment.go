@@ -150,7 +150,8 @@ type Settings struct {
 	EnergyUnit           string         `json:"energy_unit"`
 	PublishStyle         string         `json:"publish_style"`
 	Assumed              []string       `json:"assumed"`
-	Selection            []string       `json:"selection"` // flags that left rows out
+	Selection            []string       `json:"selection"` // flags that chose rows and columns
+	Intervals            []string       `json:"intervals"` // methods of the bootstrap
 }
 
 // Quantity is what was measured.
@@ -280,6 +281,8 @@ type Ranked struct {
 	Adequacy    []Adequacy     `json:"adequacy"`
 	Adequate    *bool          `json:"adequate"` // nil: cannot be checked
 	Forms       []FormEstimate `json:"forms"`
+
+	failed bool // excluded because it could not be fitted
 }
 
 // FormEstimate is one reading of a fitted curve.

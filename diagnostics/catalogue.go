@@ -121,6 +121,11 @@ var catalogue = []Entry{
 		Explanation: "Two parallel paths make E rise with T, always. Where the data do not bend that way the best such curve is the straight line itself, and it is excluded instead of being fitted to nonsense.",
 	},
 	{
+		Code: "curve-not-fitted", Title: "a curve could not be fitted", Severity: Info,
+		Explanation: "The curve needs more temperatures than there are, or no finite fit was found. It takes no part in the ranking.",
+		Cure:        "measure more temperatures",
+	},
+	{
 		Code: "curve-not-identified", Title: "parameters not identified", Severity: Info,
 		Explanation: "The curve fits, but the data do not determine each of its parameters: one of them runs off to a value without meaning (a barrier above 1000 kJ/mol, say), or many pairs fit equally well. Its fitted values are good, its parameters are not stated.",
 		Cure:        "measure more temperatures around the bend and on both sides of it",
@@ -208,13 +213,8 @@ var catalogue = []Entry{
 		Cure:        "state u(k) for every point, or leave the others out with --leave-out",
 	},
 	{
-		Code: "large-relative-uncertainty", Title: "large relative uncertainty", Severity: Warning,
-		Explanation: "Where u(k)/k exceeds 0.3 an error that is symmetric in k is not symmetric in ln k, and a model of the errors of ln k weighs the low values wrongly.",
-		Cure:        "--error-model absolute, or stated-absolute where u(k) is known",
-	},
-	{
 		Code: "not-resampled", Title: "no bootstrap", Severity: Info,
-		Explanation: "The resampling scheme needs more temperatures or points than there are, so that no bootstrap was run. The reported intervals do not depend on it.",
+		Explanation: "The resampling scheme needs more temperatures or points than there are, or scatter where there is none, so that no bootstrap was run. The reported intervals do not depend on it.",
 		Cure:        "--scheme parametric, or more temperatures",
 	},
 	{

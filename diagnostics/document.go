@@ -1,6 +1,7 @@
 package diagnostics
 
 import (
+	"cmp"
 	"math"
 	"slices"
 
@@ -73,10 +74,11 @@ func (a *assessor) settings() Settings {
 		Seed: a.opt.Seed, Resamples: a.opt.Resamples, Scheme: scheme,
 		Confidence: a.opt.Confidence, ErrorModel: a.model, ErrorModelWhy: a.modelWhy,
 		Replicates: a.opt.Replicates, Criterion: a.opt.Criterion, PrefactorBand: a.opt.PrefactorBand,
-		ToleranceKJ: Real(a.rule.ToleranceKJ), Tolerance: a.opt.Tolerance, Models: names,
+		ToleranceKJ: Real(a.rule.ToleranceKJ), Tolerance: cmp.Or(a.opt.Tolerance, defaultTolerance), Models: names,
 		ReferenceTemperature: a.referenceTemperature(),
 		EnergyUnit:           a.opt.EnergyUnit, PublishStyle: a.publishStyle(),
 		Assumed: orEmpty(a.set.Assumed), Selection: orEmpty(a.opt.Selection),
+		Intervals: orEmpty(a.opt.Intervals),
 	}
 }
 

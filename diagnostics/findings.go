@@ -22,7 +22,11 @@ func RankingFindings(ranking []Ranked, s *fit.Sample, by Criterion) []Finding {
 	members, best := map[string][]string{}, map[string]Real{}
 	for _, r := range ranking {
 		if r.Status == StatusExcluded {
-			add("curve-excluded", r.Curve+": "+r.Reason)
+			code := "curve-excluded"
+			if r.failed {
+				code = "curve-not-fitted"
+			}
+			add(code, r.Curve+": "+r.Reason)
 			continue
 		}
 		fitted = append(fitted, r.Curve)

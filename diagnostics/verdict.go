@@ -55,6 +55,9 @@ type Tolerance struct {
 	KJ    float64 // kJ/mol
 }
 
+// defaultTolerance is how the default is written down.
+const defaultTolerance = "5%, at least 0.5kJ/mol"
+
 // ParseTolerance reads "5%" or "0.5kJ/mol". "" is the default: 5 % of |E|, at least
 // 0.5 kJ/mol.
 func ParseTolerance(s string) (Tolerance, error) {
@@ -223,7 +226,7 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 		fs = append(fs, secondBarrierFound(b, in.Sample)...)
 	}
 	add(why != "", func() Finding { return rankingDiffers(v.RecommendedCurve, why) })
-	add(v.State.Curved(), func() Finding {
+	add(v.State.Curved() && v.RecommendedCurve != "", func() Finding {
 		return newFinding("conditional-on-choice", "intervals of the recommended curve take the choice of curve as given", nil, nil)
 	})
 	return v, fs

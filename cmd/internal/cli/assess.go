@@ -102,6 +102,7 @@ func (a *app) runAssess(ctx context.Context, file string, o *assessOptions) erro
 			return err
 		}
 	}
+	o.read.AllowNonPositiveK = o.assess.ErrorModel.InK()
 	sets, _, err := a.readSets(ctx, file, o.read)
 	if err != nil {
 		return err

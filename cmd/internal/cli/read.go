@@ -40,11 +40,14 @@ func addSelection(cmd *cobra.Command, o *dataset.Options) {
 // selectionFlags are those that leave rows out.
 var selectionFlags = []string{"dataset", "dataset-by", "where", "leave-out", "t-min", "t-max"}
 
-// selection lists the flags that left rows out, as the user may repeat them.
+// recordedFlags decide what is read; assumptions are recorded by the reader.
+var recordedFlags = append([]string{"column", "decimal"}, selectionFlags...)
+
+// selection lists the flags that chose columns and rows, as the user may repeat them.
 func selection(cmd *cobra.Command) []string {
 	var used []string
 	cmd.Flags().Visit(func(f *pflag.Flag) {
-		if !slices.Contains(selectionFlags, f.Name) {
+		if !slices.Contains(recordedFlags, f.Name) {
 			return
 		}
 		values := []string{f.Value.String()}

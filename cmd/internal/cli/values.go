@@ -121,8 +121,15 @@ func (p pairs) Set(s string) error {
 // column is the value of --column: role=HEADING, where a heading may hold commas.
 type column struct{ m *map[string]string }
 
-func (c column) String() string { return "" }
-func (c column) Type() string   { return "role=heading" }
+func (c column) String() string {
+	var chosen []string
+	for role, heading := range *c.m {
+		chosen = append(chosen, role+"="+heading)
+	}
+	slices.Sort(chosen)
+	return strings.Join(chosen, ",")
+}
+func (c column) Type() string { return "role=heading" }
 func (c column) Set(s string) error {
 	role, heading, ok := strings.Cut(s, "=")
 	if !ok || strings.TrimSpace(role) == "" || strings.TrimSpace(heading) == "" {
