@@ -14,6 +14,7 @@ import (
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
+	"onebarrier/models/reference"
 )
 
 // testSample makes a straight set with E = 60 kJ/mol at n temperatures, 280-340 K.
@@ -189,7 +190,7 @@ func TestFailedRefitsAreCounted(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	within(t, "failed", float64(o.Failed), 9999./2, 4*math.Sqrt(9999./4))
+	reference.Within(t, "failed", float64(o.Failed), 9999./2, 4*math.Sqrt(9999./4))
 	if o.Failed+o.States[1] != 9999 || sum(o.FirstCurve)+o.Failed != 9999 {
 		t.Errorf("failed %d, states %v, first %v of 9999", o.Failed, o.States, o.FirstCurve)
 	}
@@ -225,7 +226,7 @@ func TestGeneratingWeights(t *testing.T) {
 		t.Fatal(err)
 	}
 	want := 0.7 + 0.3*float64(alone.States[1])/9999
-	within(t, "share of power-prefactor", float64(o.States[1])/9999, want, 4*math.Sqrt(0.25/9999))
+	reference.Within(t, "share of power-prefactor", float64(o.States[1])/9999, want, 4*math.Sqrt(0.25/9999))
 }
 
 // The residual pool, point by point, where variances are unequal and one point
@@ -271,13 +272,13 @@ func TestResidualPool(t *testing.T) {
 		t.Fatalf("pool of %d", len(g.pool))
 	}
 	for i := range want {
-		within(t, "pool", g.pool[i], want[i]-mean, 1e-9)
+		reference.Within(t, "pool", g.pool[i], want[i]-mean, 1e-9)
 	}
 	st, draw, ix := newStream(), make([]float64, 6), make([]int32, 6)
 	st.reset(1, 1)
 	g.draw(st, Residual, draw, ix)
 	for i := range draw {
-		within(t, "drawn", draw[i], math.Sqrt(v[i])*(want[ix[i]]-mean), 1e-9)
+		reference.Within(t, "drawn", draw[i], math.Sqrt(v[i])*(want[ix[i]]-mean), 1e-9)
 	}
 
 	// Wild: the same size at its own point, both signs equally often.
@@ -288,7 +289,7 @@ func TestResidualPool(t *testing.T) {
 		st.reset(2, uint64(b))
 		g.draw(st, Wild, draw, ix)
 		for i := range draw[:5] {
-			within(t, "wild", math.Abs(draw[i]), math.Sqrt(v[i])*math.Abs(want[i]), 1e-9)
+			reference.Within(t, "wild", math.Abs(draw[i]), math.Sqrt(v[i])*math.Abs(want[i]), 1e-9)
 			if draw[i] > 0 {
 				plus[i]++
 			}
@@ -297,9 +298,9 @@ func TestResidualPool(t *testing.T) {
 			}
 		}
 	}
-	within(t, "changes of sign", changes, 8000, 4*math.Sqrt(4000))
+	reference.Within(t, "changes of sign", changes, 8000, 4*math.Sqrt(4000))
 	for _, c := range plus[:5] {
-		within(t, "plus signs", c, 2000, 4*math.Sqrt(1000))
+		reference.Within(t, "plus signs", c, 2000, 4*math.Sqrt(1000))
 	}
 }
 
@@ -333,12 +334,12 @@ func TestEnds(t *testing.T) {
 		t.Errorf("%d failed, want 2", r.Failed)
 	}
 	e, se := k.fit.P[1]/1000, math.Sqrt(k.fit.Cov[3])/1000
-	within(t, "estimate", r.Estimate, e, 1e-9*e)
+	reference.Within(t, "estimate", r.Estimate, e, 1e-9*e)
 	// (39+1) 0.025 = 1 and (39+1) 0.975 = 39.
-	within(t, "bootstrap-t lower", r.Intervals[0].Lower, e-39*se, 1e-8*e)
-	within(t, "bootstrap-t upper", r.Intervals[0].Upper, e-1*se, 1e-8*e)
-	within(t, "percentile lower", r.Intervals[1].Lower, e+1, 1e-9*e)
-	within(t, "percentile upper", r.Intervals[1].Upper, e+39, 1e-9*e)
+	reference.Within(t, "bootstrap-t lower", r.Intervals[0].Lower, e-39*se, 1e-8*e)
+	reference.Within(t, "bootstrap-t upper", r.Intervals[0].Upper, e-1*se, 1e-8*e)
+	reference.Within(t, "percentile lower", r.Intervals[1].Lower, e+1, 1e-9*e)
+	reference.Within(t, "percentile upper", r.Intervals[1].Upper, e+39, 1e-9*e)
 	// All values lie above the estimate: z0 is infinite, and BCa has no answer.
 	if !math.IsNaN(r.Intervals[2].Lower) || r.Intervals[2].Note == "" {
 		t.Errorf("BCa %+v", r.Intervals[2])
@@ -375,8 +376,8 @@ func TestEnds(t *testing.T) {
 	want := [2]float64{end(distuv.UnitNormal.Quantile(0.025)), end(distuv.UnitNormal.Quantile(0.975))}
 	r = TargetResult{}
 	p.summarise(k, j, &r, x, slices.Clone(x))
-	within(t, "BCa lower", r.Intervals[2].Lower, want[0], 1e-8*e)
-	within(t, "BCa upper", r.Intervals[2].Upper, want[1], 1e-8*e)
+	reference.Within(t, "BCa lower", r.Intervals[2].Lower, want[0], 1e-8*e)
+	reference.Within(t, "BCa upper", r.Intervals[2].Upper, want[1], 1e-8*e)
 }
 
 // Influence values are the derivative of the estimate by each y, checked against
@@ -398,7 +399,7 @@ func TestInfluence(t *testing.T) {
 					t.Fatal(err)
 				}
 				want := dot(k.w[j], fit.Fit(moved, k.curve).P) - dot(k.w[j], k.fit.P)
-				within(t, k.curve.Info().Name, k.c[j][i], want, 1e-8*k.sd[j])
+				reference.Within(t, k.curve.Info().Name, k.c[j][i], want, 1e-8*k.sd[j])
 			}
 		}
 	}
@@ -428,7 +429,7 @@ func TestPairsKernel(t *testing.T) {
 			}
 			for j := range k.w {
 				want := dot(k.w[j], w.out.P[k.index]) - dot(k.w[j], k.fit.P)
-				within(t, k.curve.Info().Name, w.diff[j], want, 1e-8*k.sd[j])
+				reference.Within(t, k.curve.Info().Name, w.diff[j], want, 1e-8*k.sd[j])
 			}
 		}
 	}
@@ -453,7 +454,7 @@ func TestPairsWithoutScatter(t *testing.T) {
 			}
 			// The slope through both points, kJ/mol.
 			e := -models.GasConstant / 1000 * (s.Y[i] - s.Y[j]) / (1/s.T[i] - 1/s.T[j])
-			within(t, "E", diff[1], e-k.fit.P[1]/1000, 1e-9*e)
+			reference.Within(t, "E", diff[1], e-k.fit.P[1]/1000, 1e-9*e)
 			if !math.IsNaN(tt[1]) {
 				t.Errorf("t = %g", tt[1])
 			}
@@ -507,8 +508,8 @@ func TestPairsWithinTemperatures(t *testing.T) {
 	}
 	for g, x := range groups {
 		sd := stat.PopStdDev(x, nil) / math.Sqrt(float64(len(x)))
-		within(t, "mean", stat.Mean(draws[g], nil), stat.Mean(x, nil), 4*sd/math.Sqrt(b))
-		within(t, "sd", stat.StdDev(draws[g], nil), sd, 4*sd*math.Sqrt(1./b))
+		reference.Within(t, "mean", stat.Mean(draws[g], nil), stat.Mean(x, nil), 4*sd/math.Sqrt(b))
+		reference.Within(t, "sd", stat.StdDev(draws[g], nil), sd, 4*sd*math.Sqrt(1./b))
 	}
 	o, err := Run(context.Background(), in, Options{Scheme: Pairs, Methods: Methods})
 	if err != nil {
@@ -543,9 +544,9 @@ func TestPairsWithinTemperatures(t *testing.T) {
 			}
 		}
 	}
-	within(t, "first twice", float64(seen[0]), 400, 4*math.Sqrt(300))
-	within(t, "one of each", float64(seen[1]), 800, 4*math.Sqrt(400))
-	within(t, "second twice", float64(seen[2]), 400, 4*math.Sqrt(300))
+	reference.Within(t, "first twice", float64(seen[0]), 400, 4*math.Sqrt(300))
+	reference.Within(t, "one of each", float64(seen[1]), 800, 4*math.Sqrt(400))
+	reference.Within(t, "second twice", float64(seen[2]), 400, 4*math.Sqrt(300))
 
 	// The same points as independent entries: strata by temperature, at any N.
 	ind := linearInput(full)
@@ -593,9 +594,9 @@ func TestDegeneratePairs(t *testing.T) {
 	three := 1 - pow(4) - pow(7) - pow(5) + pow(3) + pow(1) + pow(4)
 	one := pow(4) + pow(1) + pow(3)
 	mc := func(p float64) float64 { return 4*math.Sqrt(p*(1-p)*9999) + 1 }
-	within(t, "failed", float64(o.Failed), (1-three)*9999, mc(three))
-	within(t, "n failed", float64(o.target(t, "n").Failed), (1-three)*9999, mc(three))
-	within(t, "E failed", float64(o.target(t, "E").Failed), one*9999, mc(one))
+	reference.Within(t, "failed", float64(o.Failed), (1-three)*9999, mc(three))
+	reference.Within(t, "n failed", float64(o.target(t, "n").Failed), (1-three)*9999, mc(three))
+	reference.Within(t, "E failed", float64(o.target(t, "E").Failed), one*9999, mc(one))
 	if r := o.target(t, "E"); math.IsNaN(r.Intervals[0].Lower) {
 		t.Error("the interval must come from the others")
 	}
@@ -688,12 +689,12 @@ func TestInK(t *testing.T) {
 				if rb.Failed != ra.Failed || rb.Flat != ra.Flat {
 					t.Errorf("%s %s: failed %d and %d", scheme, ra.Name, ra.Failed, rb.Failed)
 				}
-				within(t, ra.Name+" se", rb.StdError, ra.StdError, 0.02*ra.StdError)
+				reference.Within(t, ra.Name+" se", rb.StdError, ra.StdError, 0.02*ra.StdError)
 				for m, ia := range ra.Intervals {
 					ib := rb.Intervals[m]
 					tol := 0.1 * ra.StdError
-					within(t, string(scheme)+" "+ra.Name+" "+string(ia.Method)+" lower", ib.Lower, ia.Lower, tol)
-					within(t, string(scheme)+" "+ra.Name+" "+string(ia.Method)+" upper", ib.Upper, ia.Upper, tol)
+					reference.Within(t, string(scheme)+" "+ra.Name+" "+string(ia.Method)+" lower", ib.Lower, ia.Lower, tol)
+					reference.Within(t, string(scheme)+" "+ra.Name+" "+string(ia.Method)+" upper", ib.Upper, ia.Upper, tol)
 				}
 			}
 		}
@@ -756,7 +757,7 @@ func TestFlatResamples(t *testing.T) {
 	}
 	r := o.target(t, "E")
 	p := 4 / math.Pow(4, 4)
-	within(t, "flat", float64(r.Flat), 9999*p, 4*math.Sqrt(9999*p))
+	reference.Within(t, "flat", float64(r.Flat), 9999*p, 4*math.Sqrt(9999*p))
 	if math.IsNaN(r.Intervals[0].Lower) || math.IsInf(r.Intervals[0].Lower, 0) {
 		t.Errorf("%+v", r.Intervals[0])
 	}
@@ -802,9 +803,9 @@ func TestSelectNth(t *testing.T) {
 	}
 	v := values{x: []float64{4, 2, 1, 3}}
 	// Type 6 of R: quantile(1:4, .3, type = 6) is 1.5; .1 and .9 are the ends.
-	within(t, "0.3", v.quantile(0.3), 1.5, 1e-12)
-	within(t, "0.1", v.quantile(0.1), 1, 0)
-	within(t, "0.9", v.quantile(0.9), 4, 0)
+	reference.Within(t, "0.3", v.quantile(0.3), 1.5, 1e-12)
+	reference.Within(t, "0.1", v.quantile(0.1), 1, 0)
+	reference.Within(t, "0.9", v.quantile(0.9), 4, 0)
 }
 
 func TestStream(t *testing.T) {
@@ -820,7 +821,7 @@ func TestStream(t *testing.T) {
 		}
 	}
 	for b, c := range ones {
-		within(t, "bit "+string(rune('0'+b)), float64(c), n/2, 5*math.Sqrt(n)/2)
+		reference.Within(t, "bit "+string(rune('0'+b)), float64(c), n/2, 5*math.Sqrt(n)/2)
 	}
 	// Seed and index do not stand in for each other.
 	s.reset(0, 1)
@@ -841,7 +842,7 @@ func TestStream(t *testing.T) {
 		}
 	}
 	for _, c := range count {
-		within(t, "index", float64(c), n*9./m, 4*math.Sqrt(n*9./m))
+		reference.Within(t, "index", float64(c), n*9./m, 4*math.Sqrt(n*9./m))
 	}
 }
 

@@ -12,6 +12,7 @@ import (
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
+	"onebarrier/models/reference"
 )
 
 const resamples = 19999
@@ -74,7 +75,7 @@ func TestPairsAgainstR(t *testing.T) {
 			if r.Failed != 0 {
 				t.Errorf("%d resamples failed, in R none did", r.Failed)
 			}
-			within(t, "estimate", r.Estimate, want("estimate"), 1e-9*math.Abs(want("estimate")))
+			reference.Within(t, "estimate", r.Estimate, want("estimate"), 1e-9*math.Abs(want("estimate")))
 
 			x := r.Values
 			b := float64(len(x))
@@ -90,8 +91,8 @@ func TestPairsAgainstR(t *testing.T) {
 				betweenRanks(t, run+"lower percentile", x, 0.025, want(run+"perc_lo"), rB)
 				betweenRanks(t, run+"upper percentile", x, 0.975, want(run+"perc_hi"), rB)
 				// Standard errors of s: s sqrt((κ-1)/(4B)); of Φ(z0): binomial.
-				within(t, run+"se", sd, want(run+"se"), 4*sd*math.Sqrt((kurtosis-1)/4*(1/b+1/rB)))
-				within(t, run+"Φ(z0)", share, distuv.UnitNormal.CDF(want(run+"z0")),
+				reference.Within(t, run+"se", sd, want(run+"se"), 4*sd*math.Sqrt((kurtosis-1)/4*(1/b+1/rB)))
+				reference.Within(t, run+"Φ(z0)", share, distuv.UnitNormal.CDF(want(run+"z0")),
 					4*math.Sqrt(share*(1-share)*(1/b+1/rB)))
 				lo, hi := "bca_jack_lo", "bca_jack_hi"
 				if rB > 10000 {
@@ -119,7 +120,7 @@ func TestFirstPlacesAgainstR(t *testing.T) {
 		b := float64(o.Resamples - o.Failed)
 		// At least one count of error, for shares of 1.
 		tol := 4*math.Sqrt(want*(1-want)*(1/b+1./10000)) + 4/b
-		within(t, set, float64(o.FirstCurve[1])/b, want, tol)
+		reference.Within(t, set, float64(o.FirstCurve[1])/b, want, tol)
 		if o.FirstCurve[1] != o.States[1] || o.FirstFamily["power"] != o.FirstCurve[1] {
 			t.Errorf("%s: first places %v, families %v and states %v do not agree", set, o.FirstCurve, o.FirstFamily, o.States)
 		}
@@ -173,7 +174,7 @@ func TestEnumeration(t *testing.T) {
 	const rel = 1e-9
 	close := func(q string, got float64) {
 		t.Helper()
-		within(t, q, got, want(q), rel*math.Abs(want(q)))
+		reference.Within(t, q, got, want(q), rel*math.Abs(want(q)))
 	}
 	close("resamples", float64(len(x)))
 	close("estimate", estimate)
@@ -232,7 +233,7 @@ func TestResidualStandardError(t *testing.T) {
 				x = append(x, diff[0])
 			}
 			kurtosis := stat.ExKurtosis(x, nil) + 3
-			within(t, set+" "+name, stat.StdDev(x, nil), c.want, 4*c.want*math.Sqrt((kurtosis-1)/4/resamples))
+			reference.Within(t, set+" "+name, stat.StdDev(x, nil), c.want, 4*c.want*math.Sqrt((kurtosis-1)/4/resamples))
 		}
 	}
 }
@@ -264,7 +265,7 @@ func TestParametricIsExact(t *testing.T) {
 				}
 			}
 			se := math.Sqrt(v)
-			within(t, name+" se", r.StdError, se, 1e-8*se)
+			reference.Within(t, name+" se", r.StdError, se, 1e-8*se)
 			zq := distuv.UnitNormal.Quantile(0.975)
 			tq, density := zq, distuv.UnitNormal.Prob(zq)
 			if !s.Model.KnownSigma() {
@@ -283,8 +284,8 @@ func TestParametricIsExact(t *testing.T) {
 					tol *= 4 // z0 moves both ends; the influence of chance residuals is not zero
 					tol += 0.2
 				}
-				within(t, name+" "+string(iv.Method)+" lower", (iv.Lower-r.Estimate)/se, -q, tol)
-				within(t, name+" "+string(iv.Method)+" upper", (iv.Upper-r.Estimate)/se, q, tol)
+				reference.Within(t, name+" "+string(iv.Method)+" lower", (iv.Lower-r.Estimate)/se, -q, tol)
+				reference.Within(t, name+" "+string(iv.Method)+" upper", (iv.Upper-r.Estimate)/se, q, tol)
 			}
 		}
 		if v := o.target(t, "change_of_E").Values; len(v) != 99999 || !slices.IsSorted(v) {

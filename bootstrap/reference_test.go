@@ -11,14 +11,6 @@ import (
 	"onebarrier/models/reference"
 )
 
-// within fails unless |got - want| <= tol; NaN fails.
-func within(t *testing.T, what string, got, want, tol float64) {
-	t.Helper()
-	if !(math.Abs(got-want) <= tol) {
-		t.Errorf("%s: got %.12g, want %.12g ± %.3g", what, got, want, tol)
-	}
-}
-
 // golden gives the values of one fit in testdata/published/golden_boot.csv: R 4.2.2,
 // package boot.
 func golden(t testing.TB, set, fit string) func(quantity string) float64 {
@@ -26,11 +18,7 @@ func golden(t testing.TB, set, fit string) func(quantity string) float64 {
 	values := reference.Golden(t, "golden_boot.csv")
 	return func(q string) float64 {
 		t.Helper()
-		v, ok := values[reference.Key{Dataset: set, Fit: fit, Quantity: q}]
-		if !ok {
-			t.Fatalf("golden_boot.csv has no %s %s %s", set, fit, q)
-		}
-		return v
+		return values.Of(t, set, fit, q)
 	}
 }
 
@@ -38,21 +26,12 @@ func golden(t testing.TB, set, fit string) func(quantity string) float64 {
 // which weights are 1/s², as in the R scripts.
 func synthetic(t testing.TB, name string) *fit.Sample {
 	t.Helper()
-	headings := []string{"T_K", "k"}
+	d := reference.Synthetic(t, name)
 	model := fit.Relative
-	if name == "s5_hetero" {
-		headings = append(headings, "sigma_k")
+	if d.SigmaK != nil {
 		model = fit.Scaled
 	}
-	c := reference.Table(t, "synthetic/"+name+".csv", headings...)
-	v := make([]float64, len(c[0]))
-	for i := range v {
-		v[i] = 1
-		if len(c) > 2 {
-			v[i] = (c[2][i] / c[1][i]) * (c[2][i] / c[1][i])
-		}
-	}
-	s, err := fit.NewSample(model, c[0], c[1], v)
+	s, err := fit.NewSample(model, d.T, d.K, d.Stated(false))
 	if err != nil {
 		t.Fatal(err)
 	}

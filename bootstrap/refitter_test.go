@@ -8,6 +8,7 @@ import (
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
+	"onebarrier/models/reference"
 )
 
 // defaultInput has the default candidates, the refitter of package fit, AICc
@@ -124,8 +125,8 @@ func TestRefitterAgainstReference(t *testing.T) {
 				for m, ia := range ra.Intervals {
 					ib := ob.Targets[i].Intervals[m]
 					what := string(s.Model) + " " + string(scheme) + " " + ra.Name + " " + string(ia.Method)
-					within(t, what, ib.Lower, ia.Lower, 1e-6*ra.StdError)
-					within(t, what, ib.Upper, ia.Upper, 1e-6*ra.StdError)
+					reference.Within(t, what, ib.Lower, ia.Lower, 1e-6*ra.StdError)
+					reference.Within(t, what, ib.Upper, ia.Upper, 1e-6*ra.StdError)
 				}
 			}
 		}

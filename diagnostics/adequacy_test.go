@@ -70,7 +70,7 @@ func TestChiSquaredAgainstR(t *testing.T) {
 // Counts of runs against R tseries::runs.test.
 func TestRunsAgainstR(t *testing.T) {
 	g := golden(t)
-	for _, set := range []string{"s1_straight", "s2_tn_curved", "s3_parallel", "s4_series", "s5_hetero", "s6_replicates", "s7_vft", "s8_tiny6"} {
+	for _, set := range reference.SyntheticSets {
 		model := fit.Relative
 		if set == "s5_hetero" {
 			model = fit.Scaled

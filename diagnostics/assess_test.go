@@ -81,7 +81,7 @@ func (a *Assessment) row(t *testing.T, curve string) Ranked {
 func TestAssessAgainstR(t *testing.T) {
 	g := reference.Golden(t, "golden_fits.csv")
 	const tol = 1e-9
-	for _, name := range []string{"s1_straight", "s2_tn_curved", "s3_parallel", "s4_series", "s5_hetero", "s6_replicates", "s7_vft", "s8_tiny6"} {
+	for _, name := range reference.SyntheticSets {
 		t.Run(name, func(t *testing.T) {
 			c := reference.Table(t, "synthetic/"+name+".csv", "T_K", "k")
 			o := quick()
@@ -91,13 +91,7 @@ func TestAssessAgainstR(t *testing.T) {
 				suffix = "_unweighted"
 			}
 			a := mustAssess(t, setOf(c[0], c[1], nil), o)
-			want := func(fit, quantity string) float64 {
-				v, ok := g[reference.Key{Dataset: name, Fit: fit, Quantity: quantity}]
-				if !ok {
-					t.Fatalf("no golden value for %s %s", fit, quantity)
-				}
-				return v
-			}
+			want := func(fit, quantity string) float64 { return g.Of(t, name, fit, quantity) }
 			reference.Close(t, "p", float64(a.Curvature.PValue), want("F_arr_vs_mod"+suffix, "p"), 1e-7)
 			reference.Close(t, "n", float64(a.Curvature.Exponent.Value), want("mod"+suffix, "n_exp"), tol)
 			reference.Close(t, "u(n)", float64(a.Curvature.Exponent.StdError), want("mod"+suffix, "n_exp_se"), tol)
@@ -129,9 +123,7 @@ func TestAssessAgainstR(t *testing.T) {
 // likelihood ratio, E and its standard error (golden_fits.csv, s5).
 func TestAssessStatedAgainstR(t *testing.T) {
 	g := reference.Golden(t, "golden_fits.csv")
-	want := func(fit, quantity string) float64 {
-		return g[reference.Key{Dataset: "s5_hetero", Fit: fit, Quantity: quantity}]
-	}
+	want := func(fit, quantity string) float64 { return g.Of(t, "s5_hetero", fit, quantity) }
 	c := reference.Table(t, "synthetic/s5_hetero.csv", "T_K", "k", "sigma_k")
 	a := mustAssess(t, setOf(c[0], c[1], c[2]), quick())
 	if a.Settings.ErrorModel != fit.Stated {

@@ -1,10 +1,7 @@
 package diagnostics
 
 import (
-	"encoding/csv"
 	"math"
-	"os"
-	"strconv"
 	"testing"
 
 	"onebarrier/models"
@@ -12,58 +9,14 @@ import (
 	"onebarrier/models/reference"
 )
 
-// want is reference.Close.
-func want(t *testing.T, what string, got, want, tol float64) {
-	t.Helper()
-	reference.Close(t, what, got, want, tol)
-}
-
-// columns reads a published table by heading, as text.
-func columns(t testing.TB, file string) map[string][]string {
-	t.Helper()
-	f, err := os.Open(reference.Path(file))
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
-	out := map[string][]string{}
-	for j, h := range rows[0] {
-		for _, r := range rows[1:] {
-			out[h] = append(out[h], r[j])
-		}
-	}
-	return out
-}
-
-func numbers(t testing.TB, cells []string) []float64 {
-	t.Helper()
-	out := make([]float64, len(cells))
-	for i, c := range cells {
-		x, err := strconv.ParseFloat(c, 64)
-		if err != nil {
-			t.Fatal(err)
-		}
-		out[i] = x
-	}
-	return out
-}
-
 // golden returns the values of R 4.2.2 (lm, anova, tseries) for the synthetic sets:
 // golden(dataset, fit, quantity).
 func golden(t testing.TB) func(dataset, fit, quantity string) float64 {
 	t.Helper()
-	m := reference.Golden(t, "golden_fits.csv")
+	values := reference.Golden(t, "golden_fits.csv")
 	return func(dataset, fit, quantity string) float64 {
 		t.Helper()
-		x, ok := m[reference.Key{Dataset: dataset, Fit: fit, Quantity: quantity}]
-		if !ok {
-			t.Fatalf("golden_fits.csv has no %s, %s, %s", dataset, fit, quantity)
-		}
-		return x
+		return values.Of(t, dataset, fit, quantity)
 	}
 }
 
@@ -71,22 +24,12 @@ func golden(t testing.TB) func(dataset, fit, quantity string) float64 {
 // uncertainties take them from its sigma_k.
 func synthetic(t testing.TB, name string, model fit.ErrorModel) *fit.Sample {
 	t.Helper()
-	headings := []string{"T_K", "k"}
+	d := reference.Synthetic(t, name)
+	v := d.Ones()
 	if model == fit.Stated || model == fit.Scaled {
-		headings = append(headings, "sigma_k")
+		v = d.Stated(false)
 	}
-	c := reference.Table(t, "synthetic/"+name+".csv", headings...)
-	temps, k := c[0], c[1]
-	v := make([]float64, len(k))
-	for i := range v {
-		v[i] = 1
-	}
-	if len(c) > 2 {
-		for i, s := range c[2] {
-			v[i] = s * s / (k[i] * k[i])
-		}
-	}
-	s, err := fit.NewSample(model, temps, k, v)
+	s, err := fit.NewSample(model, d.T, d.K, v)
 	if err != nil {
 		t.Fatal(err)
 	}

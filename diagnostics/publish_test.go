@@ -12,6 +12,7 @@ import (
 	"onebarrier/models"
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
+	"onebarrier/models/reference"
 )
 
 var perSecond = dataset.Quantity{Symbol: "k", Unit: "s^-1", Known: true}
@@ -52,12 +53,8 @@ func symbols(p Publish) string {
 // tableSample reads a published table with columns of T and k.
 func tableSample(t testing.TB, file, temp, k string) *fit.Sample {
 	t.Helper()
-	c := columns(t, file)
-	v := make([]float64, len(c[temp]))
-	for i := range v {
-		v[i] = 1
-	}
-	s, err := fit.NewSample(fit.Relative, numbers(t, c[temp]), numbers(t, c[k]), v)
+	c := reference.Table(t, file, temp, k)
+	s, err := fit.NewSample(fit.Relative, c[0], c[1], reference.Data{T: c[0]}.Ones())
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -90,24 +87,24 @@ func TestFormEstimatesAgainstR(t *testing.T) {
 		unit float64
 	}{"dH": {"eyring_dH", 1000}, "dS": {"eyring_dS", 1}} {
 		p := parameter(t, e, "eyring", symbol)
-		want(t, symbol, float64(p.Value)*q.unit, g("s1_straight", "eyring", q.name), 1e-10)
-		want(t, "u("+symbol+")", float64(p.StdError)*q.unit, g("s1_straight", "eyring", q.name+"_se"), 1e-9)
+		reference.Close(t, symbol, float64(p.Value)*q.unit, g("s1_straight", "eyring", q.name), 1e-10)
+		reference.Close(t, "u("+symbol+")", float64(p.StdError)*q.unit, g("s1_straight", "eyring", q.name+"_se"), 1e-9)
 		// R: qt(0.975, 10) = 2.228138851964939
-		want(t, "upper "+symbol, float64(p.Upper-p.Value), 2.228138851964939*float64(p.StdError), 1e-9)
-		want(t, "lower "+symbol, float64(p.Value-p.Lower), 2.228138851964939*float64(p.StdError), 1e-9)
+		reference.Close(t, "upper "+symbol, float64(p.Upper-p.Value), 2.228138851964939*float64(p.StdError), 1e-9)
+		reference.Close(t, "lower "+symbol, float64(p.Value-p.Lower), 2.228138851964939*float64(p.StdError), 1e-9)
 	}
 
 	for _, set := range []string{"s1_straight", "s2_tn_curved"} {
 		f := formEstimates(fitNamed(t, synthetic(t, set, fit.Relative), "power-prefactor"), fr, 0.95, perSecond, nil)
-		want(t, "n", float64(parameter(t, f, "modified-arrhenius", "n").Value), g(set, "mod", "n_exp"), 1e-8)
-		want(t, "u(n)", float64(parameter(t, f, "modified-arrhenius", "n").StdError), g(set, "mod", "n_exp_se"), 1e-8)
-		want(t, "E", 1000*float64(parameter(t, f, "modified-arrhenius", "E").Value), g(set, "mod", "E_J_mol"), 1e-8)
-		want(t, "ΔC_p", float64(parameter(t, f, "eyring-heat-capacity", "dCp").Value), g(set, "mod", "eyring_dCp"), 1e-8)
-		want(t, "u(ΔC_p)", float64(parameter(t, f, "eyring-heat-capacity", "dCp").StdError), g(set, "mod", "eyring_dCp_se"), 1e-8)
-		want(t, "ΔH(298)", 1000*float64(parameter(t, f, "eyring-heat-capacity", "dH").Value), g(set, "mod", "eyring_dH(298.15)"), 1e-8)
-		want(t, "u(ΔH(298))", 1000*float64(parameter(t, f, "eyring-heat-capacity", "dH").StdError), g(set, "mod", "eyring_dH_se(298.15)"), 1e-8)
-		want(t, "ΔS(298)", float64(parameter(t, f, "eyring-heat-capacity", "dS").Value), g(set, "mod", "eyring_dS(298.15)"), 1e-8)
-		want(t, "u(ΔS(298))", float64(parameter(t, f, "eyring-heat-capacity", "dS").StdError), g(set, "mod", "eyring_dS_se(298.15)"), 1e-8)
+		reference.Close(t, "n", float64(parameter(t, f, "modified-arrhenius", "n").Value), g(set, "mod", "n_exp"), 1e-8)
+		reference.Close(t, "u(n)", float64(parameter(t, f, "modified-arrhenius", "n").StdError), g(set, "mod", "n_exp_se"), 1e-8)
+		reference.Close(t, "E", 1000*float64(parameter(t, f, "modified-arrhenius", "E").Value), g(set, "mod", "E_J_mol"), 1e-8)
+		reference.Close(t, "ΔC_p", float64(parameter(t, f, "eyring-heat-capacity", "dCp").Value), g(set, "mod", "eyring_dCp"), 1e-8)
+		reference.Close(t, "u(ΔC_p)", float64(parameter(t, f, "eyring-heat-capacity", "dCp").StdError), g(set, "mod", "eyring_dCp_se"), 1e-8)
+		reference.Close(t, "ΔH(298)", 1000*float64(parameter(t, f, "eyring-heat-capacity", "dH").Value), g(set, "mod", "eyring_dH(298.15)"), 1e-8)
+		reference.Close(t, "u(ΔH(298))", 1000*float64(parameter(t, f, "eyring-heat-capacity", "dH").StdError), g(set, "mod", "eyring_dH_se(298.15)"), 1e-8)
+		reference.Close(t, "ΔS(298)", float64(parameter(t, f, "eyring-heat-capacity", "dS").Value), g(set, "mod", "eyring_dS(298.15)"), 1e-8)
+		reference.Close(t, "u(ΔS(298))", float64(parameter(t, f, "eyring-heat-capacity", "dS").StdError), g(set, "mod", "eyring_dS_se(298.15)"), 1e-8)
 	}
 	if e[0].TRef.Known() {
 		t.Error("ΔH‡ and ΔS‡ of the two-parameter form belong to no temperature")
@@ -117,16 +114,7 @@ func TestFormEstimatesAgainstR(t *testing.T) {
 // N2O5 of Daniels and Johnston (1921): R 4.2.2 lm on ln k (golden_opendata.csv);
 // published 103 kJ/mol (common handbook value).
 func TestPublishN2O5(t *testing.T) {
-	c := columns(t, "golden_opendata.csv")
-	g := func(quantity string) float64 {
-		for i := range c["value"] {
-			if c["dataset"][i] == "n2o5_daniels_johnston" && c["fit"][i] == "arr" && c["quantity"][i] == quantity {
-				return numbers(t, c["value"][i:i+1])[0]
-			}
-		}
-		t.Fatalf("golden_opendata.csv has no %s", quantity)
-		return 0
-	}
+	g := reference.Golden(t, "golden_opendata.csv").Fit("n2o5_daniels_johnston", "arr")
 	s := tableSample(t, "handbook/n2o5_daniels_johnston.csv", "T_K", "k_1_s")
 	r := fitNamed(t, s, "straight")
 	in := publishing(s, r)
@@ -136,26 +124,26 @@ func TestPublishN2O5(t *testing.T) {
 		t.Errorf("style %q, want molar for s^-1", p.Style)
 	}
 	e := line(t, p, "E_a", "")
-	want(t, "E", 1000*float64(e.Value), g("E_J_mol"), 1e-9)
-	want(t, "u(E)", 1000*float64(e.StdError), g("E_se"), 1e-9)
+	reference.Close(t, "E", 1000*float64(e.Value), g["E_J_mol"], 1e-9)
+	reference.Close(t, "u(E)", 1000*float64(e.StdError), g["E_se"], 1e-9)
 	// 102897.86 with 471.33 J/mol, rounded by hand.
 	if e.Text != "102.90(47) kJ/mol" || !strings.HasPrefix(e.Note, "at 30") || !strings.HasSuffix(e.Note, "U = 0.94 kJ/mol") {
 		t.Errorf("E_a = %q, %q", e.Text, e.Note)
 	}
 	a := line(t, p, "A", "")
-	want(t, "A", float64(a.Value), g("A"), 1e-9)
+	reference.Close(t, "A", float64(a.Value), g["A"], 1e-9)
 	// 3.816e13; exp(0.18391797578837657) = 1.2019.
 	if a.Text != "3.82×10^13 s^-1 ×/÷ 1.20" {
 		t.Errorf("A = %q", a.Text)
 	}
 	lg := line(t, p, "lg(A/s^-1)", "")
-	want(t, "lg A", float64(lg.Value), g("lnA")/math.Ln10, 1e-10)
+	reference.Close(t, "lg A", float64(lg.Value), g["lnA"]/math.Ln10, 1e-10)
 	// 31.272897/2.302585 = 13.58165, 0.183918/2.302585 = 0.07987.
 	if lg.Text != "13.582(80)" {
 		t.Errorf("lg A = %q", lg.Text)
 	}
 	corr := line(t, p, "r(ln A, E_a)", "")
-	want(t, "r(ln A, E)", float64(corr.Value), g("corr_lnA_E"), 1e-9)
+	reference.Close(t, "r(ln A, E)", float64(corr.Value), g["corr_lnA_E"], 1e-9)
 	if corr.Text != "0.9975" {
 		t.Errorf("r = %q", corr.Text)
 	}
@@ -165,9 +153,9 @@ func TestPublishN2O5(t *testing.T) {
 	}
 	// ΔH‡ of the Eyring line is E_a - RT_eff exactly, by the definition of T_eff.
 	dh := line(t, p, "ΔH‡", "")
-	want(t, "ΔH‡", float64(dh.Value), float64(e.Value)-8.31446261815324e-3*in.TEff, 1e-10)
+	reference.Close(t, "ΔH‡", float64(dh.Value), float64(e.Value)-8.31446261815324e-3*in.TEff, 1e-10)
 	// ΔG‡ = ΔH‡ - TΔS‡ at 298.15 K.
-	want(t, "ΔG‡", float64(line(t, p, "ΔG‡", "298.15").Value), float64(dh.Value)-0.29815*float64(line(t, p, "ΔS‡", "").Value), 1e-10)
+	reference.Close(t, "ΔG‡", float64(line(t, p, "ΔG‡", "298.15").Value), float64(dh.Value)-0.29815*float64(line(t, p, "ΔS‡", "").Value), 1e-10)
 }
 
 // The line k(T) must give the fitted curve back.
@@ -236,11 +224,11 @@ func TestPublishKelvin(t *testing.T) {
 	if p.Style != StyleKelvin {
 		t.Errorf("style %q, want kelvin for cm^3 molecule^-1 s^-1", p.Style)
 	}
-	want(t, "n", float64(line(t, p, "n", "").Value), 0.667, 1e-12)
-	want(t, "B", float64(line(t, p, "E/R", "").Value), 1575, 1e-12)
-	want(t, "A", float64(line(t, p, "A", "(T/298 K)^n").Value), 2.80e-14*math.Pow(298, 0.667), 1e-12)
-	want(t, "k(298 K)", float64(line(t, p, "k(298 K)", "").Value), 6.3e-15, 0.01)
-	want(t, "local E/R at 298 K", float64(eLocAt(three, 298, 0.95).Value)*1000/r0, 1775, 1e-3)
+	reference.Close(t, "n", float64(line(t, p, "n", "").Value), 0.667, 1e-12)
+	reference.Close(t, "B", float64(line(t, p, "E/R", "").Value), 1575, 1e-12)
+	reference.Close(t, "A", float64(line(t, p, "A", "(T/298 K)^n").Value), 2.80e-14*math.Pow(298, 0.667), 1e-12)
+	reference.Close(t, "k(298 K)", float64(line(t, p, "k(298 K)", "").Value), 6.3e-15, 0.01)
+	reference.Close(t, "local E/R at 298 K", float64(eLocAt(three, 298, 0.95).Value)*1000/r0, 1775, 1e-3)
 	if rng := line(t, p, "range", "").Text; rng != "195 to 300 K" {
 		t.Errorf("range %q", rng)
 	}
@@ -248,7 +236,7 @@ func TestPublishKelvin(t *testing.T) {
 	in.Fit, in.Style = two, StyleEvaluated
 	p = publish(in)
 	e := line(t, p, "E/R", "")
-	want(t, "E/R", float64(e.Value), 1775, 1e-12)
+	reference.Close(t, "E/R", float64(e.Value), 1775, 1e-12)
 	if e.Text != "1775(50) K" {
 		t.Errorf("E/R = %q", e.Text)
 	}
@@ -264,7 +252,7 @@ func TestPublishKelvin(t *testing.T) {
 	// In closed form u²(ln k) = 0.05² + (50 K (1/T - 1/298 K))²; its rise is steepest
 	// at the far end, 195 K.
 	d := 1/195. - 1/298.
-	want(t, "g", float64(line(t, p, "g", "").Value), (math.Hypot(0.05, 50*d)-0.05)/d, 1e-6)
+	reference.Close(t, "g", float64(line(t, p, "g", "").Value), (math.Hypot(0.05, 50*d)-0.05)/d, 1e-6)
 }
 
 // f(T) made of f and g covers u(ln k(T)) everywhere in the range, and touches it.
@@ -301,12 +289,12 @@ func TestUncertaintyFactorCovers(t *testing.T) {
 func TestAtReference(t *testing.T) {
 	r := byHand(models.Straight(), 300, []float64{0.05, 200}, -5, 50e3)
 	a := atReference(r, 300, 0.95, 280, 340)
-	want(t, "k", float64(a.K.Value), math.Exp(-5), 1e-14)
-	want(t, "u(k)", float64(a.K.StdError), 0.05*math.Exp(-5), 1e-12)
-	want(t, "f", float64(a.F), math.Exp(0.05), 1e-12)
+	reference.Close(t, "k", float64(a.K.Value), math.Exp(-5), 1e-14)
+	reference.Close(t, "u(k)", float64(a.K.StdError), 0.05*math.Exp(-5), 1e-12)
+	reference.Close(t, "f", float64(a.F), math.Exp(0.05), 1e-12)
 	// sigma is known: the normal quantile, R: qnorm(0.975) = 1.959963984540054.
-	want(t, "upper", float64(a.K.Upper), math.Exp(-5+1.959963984540054*0.05), 1e-12)
-	want(t, "lower", float64(a.K.Lower), math.Exp(-5-1.959963984540054*0.05), 1e-12)
+	reference.Close(t, "upper", float64(a.K.Upper), math.Exp(-5+1.959963984540054*0.05), 1e-12)
+	reference.Close(t, "lower", float64(a.K.Lower), math.Exp(-5-1.959963984540054*0.05), 1e-12)
 	if a.Curve != "straight" || a.Extrapolated {
 		t.Errorf("%+v", a)
 	}
@@ -320,7 +308,7 @@ func TestEnergyUnits(t *testing.T) {
 		"kJ/mol": 1, "kcal/mol": 1 / 4.184, "eV": 1 / 96.48533212,
 		"K": 1.160451812e4 / 96.48533212, "cm^-1": 8065.543937 / 96.48533212,
 	} {
-		want(t, name, UnitOfEnergy(name).PerKJ, w, 1e-9)
+		reference.Close(t, name, UnitOfEnergy(name).PerKJ, w, 1e-9)
 	}
 	for _, name := range EnergyUnits {
 		UnitOfEnergy(name) // every unit that can be asked for is known
@@ -386,10 +374,10 @@ func TestTimeUnitEntersEntropy(t *testing.T) {
 	fr := models.Frame{TForm: 300}
 	s := parameter(t, formEstimates(eyring, fr, 0.95, perSecond, nil), "eyring", "dS")
 	m := parameter(t, formEstimates(eyring, fr, 0.95, minutes, nil), "eyring", "dS")
-	want(t, "shift of ΔS‡", float64(s.Value-m.Value), 8.31446261815324*math.Log(60), 1e-12)
+	reference.Close(t, "shift of ΔS‡", float64(s.Value-m.Value), 8.31446261815324*math.Log(60), 1e-12)
 	// ΔG‡ = ΔH‡ - TΔS‡ in any unit of time.
 	p := publish(toPublish{Fit: eyring, Quantity: minutes, TMin: 280, TMax: 340, TEff: 310, TRef: 320, Confidence: 0.95})
-	want(t, "ΔG‡", float64(line(t, p, "ΔG‡", "320 K").Value), 47.5-0.320*float64(m.Value), 1e-12)
+	reference.Close(t, "ΔG‡", float64(line(t, p, "ΔG‡", "320 K").Value), 47.5-0.320*float64(m.Value), 1e-12)
 }
 
 // The lines A, n and E are the curve's own form, stated at the reference
@@ -401,15 +389,15 @@ func TestPublishedPowerLawIsTheForm(t *testing.T) {
 		f := formEstimates(in.Fit, models.Frame{TForm: in.TRef}, 0.95, perSecond, nil)
 		p := publish(in)
 		ln, lg := parameter(t, f, form, "ln_A"), line(t, p, "lg(A/s^-1)", "")
-		want(t, curve+": lg A", float64(lg.Value), float64(ln.Value)/math.Ln10, 1e-12)
-		want(t, curve+": u(lg A)", float64(lg.StdError), float64(ln.StdError)/math.Ln10, 1e-9)
+		reference.Close(t, curve+": lg A", float64(lg.Value), float64(ln.Value)/math.Ln10, 1e-12)
+		reference.Close(t, curve+": u(lg A)", float64(lg.StdError), float64(ln.StdError)/math.Ln10, 1e-9)
 		symbol := "E"
 		if curve == "straight" {
 			symbol = "E_a"
 		}
 		e, el := parameter(t, f, form, "E"), line(t, p, symbol, "")
-		want(t, curve+": E", float64(el.Value), float64(e.Value), 1e-12)
-		want(t, curve+": u(E)", float64(el.StdError), float64(e.StdError), 1e-9)
+		reference.Close(t, curve+": E", float64(el.Value), float64(e.Value), 1e-12)
+		reference.Close(t, curve+": u(E)", float64(el.StdError), float64(e.StdError), 1e-9)
 		if at := f[0].TRef; curve != "straight" && at != 298.15 || curve == "straight" && at.Known() {
 			t.Errorf("%s: the form is stated at %g K", curve, at)
 		}
@@ -443,8 +431,8 @@ func TestPublishParallel(t *testing.T) {
 	in := publishing(s, fitNamed(t, s, "parallel"))
 	p := publish(in)
 	g := golden(t)
-	want(t, "E1", 1000*float64(line(t, p, "E1", "").Value), g("s3_parallel", "par2", "coef:E1"), 1e-6)
-	want(t, "u(E1)", 1000*float64(line(t, p, "E1", "").StdError), g("s3_parallel", "par2", "se:E1"), 1e-5)
+	reference.Close(t, "E1", 1000*float64(line(t, p, "E1", "").Value), g("s3_parallel", "par2", "coef:E1"), 1e-6)
+	reference.Close(t, "u(E1)", 1000*float64(line(t, p, "E1", "").StdError), g("s3_parallel", "par2", "se:E1"), 1e-5)
 	if got := symbols(p); !strings.HasPrefix(got, "A1 | lg(A1/s^-1) | E1 | A2 | lg(A2/s^-1) | E2 | T_x | E_a | E_a | k(T)") {
 		t.Error(got)
 	}

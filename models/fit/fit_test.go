@@ -7,6 +7,7 @@ import (
 	"testing"
 
 	"onebarrier/models"
+	"onebarrier/models/reference"
 )
 
 // TestProfileExponentInK compares with the same profile in 40-digit arithmetic
@@ -29,10 +30,10 @@ func TestProfileExponentInK(t *testing.T) {
 			t.Fatalf("%s: %v: %s", c.set, r.Status, r.Reason)
 		}
 		e := ProfileExponent(s, r, 0.95)
-		want(t, c.set+" n", e.Value, c.n, 1e-9)
-		want(t, c.set+" RSS", r.RSS, c.rss, 1e-10)
-		want(t, c.set+" lower", e.Lower, c.lower, 1e-9)
-		want(t, c.set+" upper", e.Upper, c.higher, 1e-9)
+		reference.Close(t, c.set+" n", e.Value, c.n, 1e-9)
+		reference.Close(t, c.set+" RSS", r.RSS, c.rss, 1e-10)
+		reference.Close(t, c.set+" lower", e.Lower, c.lower, 1e-9)
+		reference.Close(t, c.set+" upper", e.Upper, c.higher, 1e-9)
 		if e.Open != OpenNone {
 			t.Errorf("%s: open %q", c.set, e.Open)
 		}
@@ -49,17 +50,17 @@ func TestProfileOfLinearFunction(t *testing.T) {
 	low, high := s.Range()
 	span := models.GasConstant * (high - low)
 	e := Profile(s, r, []float64{0, 0, span}, 0.95)
-	want(t, "lower change of E", e.Lower, span*n.Lower, 1e-9)
-	want(t, "upper change of E", e.Upper, span*n.Upper, 1e-9)
+	reference.Close(t, "lower change of E", e.Lower, span*n.Lower, 1e-9)
+	reference.Close(t, "upper change of E", e.Upper, span*n.Upper, 1e-9)
 
 	e = Profile(s, r, []float64{0, 1, models.GasConstant * (high - s.TRef)}, 0.95)
 	moved := *s
 	moved.TRef = high
 	rm := Fit(&moved, models.PowerPrefactor{})
 	em := Profile(&moved, rm, []float64{0, 1, 0}, 0.95)
-	want(t, "E_loc", e.Value, em.Value, 1e-9)
-	want(t, "lower E_loc", e.Lower, em.Lower, 1e-8)
-	want(t, "upper E_loc", e.Upper, em.Upper, 1e-8)
+	reference.Close(t, "E_loc", e.Value, em.Value, 1e-9)
+	reference.Close(t, "lower E_loc", e.Lower, em.Lower, 1e-8)
+	reference.Close(t, "upper E_loc", e.Upper, em.Upper, 1e-8)
 }
 
 // TestProfileIsExactInLnK: for a curve linear in its parameters the profile is the t
@@ -73,8 +74,8 @@ func TestProfileIsExactInLnK(t *testing.T) {
 		exact := r.Interval(c, r.P[2], 0.9)
 		r.Curve = opaque{r.Curve} // hides that the curve is a Basis
 		e := Profile(s, r, c, 0.9)
-		want(t, string(m)+" lower", e.Lower, exact.Lower, 1e-8)
-		want(t, string(m)+" upper", e.Upper, exact.Upper, 1e-8)
+		reference.Close(t, string(m)+" lower", e.Lower, exact.Lower, 1e-8)
+		reference.Close(t, string(m)+" upper", e.Upper, exact.Upper, 1e-8)
 	}
 }
 
@@ -94,8 +95,8 @@ func TestProfileFromAnyStep(t *testing.T) {
 			other.Cov[i] *= factor * factor
 		}
 		o := ProfileExponent(s, &other, 0.95)
-		want(t, "lower", o.Lower, e.Lower, 1e-9)
-		want(t, "upper", o.Upper, e.Upper, 1e-9)
+		reference.Close(t, "lower", o.Lower, e.Lower, 1e-9)
+		reference.Close(t, "upper", o.Upper, e.Upper, 1e-9)
 	}
 }
 
@@ -148,8 +149,8 @@ func TestInKFindsTheBetterValley(t *testing.T) {
 	temp := []float64{280, 290, 300, 310, 320, 330, 340, 350, 360, 370, 380}
 	k := []float64{0.065, 0.006, 0.015, 0.006, 0.005, -0.022, 0.043, 0.02, 0.207, 0.481, 1.031}
 	r := Fit(mustSample(t, Absolute, temp, k, ones(11)), models.PowerPrefactor{})
-	want(t, "RSS", r.RSS, 0.00780635251070222, 1e-9)
-	want(t, "n", r.P[2], -242.260969038288, 1e-6)
+	reference.Close(t, "RSS", r.RSS, 0.00780635251070222, 1e-9)
+	reference.Close(t, "n", r.P[2], -242.260969038288, 1e-6)
 }
 
 // TestLostPathIsNotIdentified: a second path that carries a share of 1e-12 at most.
@@ -212,14 +213,14 @@ func TestInKInvariance(t *testing.T) {
 		if r.Status != Converged {
 			t.Fatalf("1e%g: %v: %s", exponent, r.Status, r.Reason)
 		}
-		want(t, "E", r.P[1], r0.P[1], 1e-10)
-		want(t, "n", r.P[2], r0.P[2], 1e-9)
-		want(t, "sigma", r.Sigma/c, r0.Sigma, 1e-9)
-		want(t, "var n", r.Cov[8], r0.Cov[8], 1e-8)
-		want(t, "logLik", r.LogLik, r0.LogLik-6*math.Log(c), 1e-9)
+		reference.Close(t, "E", r.P[1], r0.P[1], 1e-10)
+		reference.Close(t, "n", r.P[2], r0.P[2], 1e-9)
+		reference.Close(t, "sigma", r.Sigma/c, r0.Sigma, 1e-9)
+		reference.Close(t, "var n", r.Cov[8], r0.Cov[8], 1e-8)
+		reference.Close(t, "logLik", r.LogLik, r0.LogLik-6*math.Log(c), 1e-9)
 		e := ProfileExponent(s, r, 0.95)
-		want(t, "lower n", e.Lower, e0.Lower, 1e-8)
-		want(t, "upper n", e.Upper, e0.Upper, 1e-8)
+		reference.Close(t, "lower n", e.Lower, e0.Lower, 1e-8)
+		reference.Close(t, "upper n", e.Upper, e0.Upper, 1e-8)
 	}
 }
 
@@ -246,7 +247,7 @@ func TestInKOver300Decades(t *testing.T) {
 			continue
 		}
 		if c.m == StatedAbsolute {
-			want(t, "E", r.P[1], e, 1e-9)
+			reference.Close(t, "E", r.P[1], e, 1e-9)
 		}
 	}
 }
@@ -254,7 +255,7 @@ func TestInKOver300Decades(t *testing.T) {
 // TestParallelInK recovers OH + acetone, k = 1.33e-13 + 3.82e-11 exp(-2000/T) cm³
 // molecule⁻¹ s⁻¹ (JPL evaluation), from its table with errors in k.
 func TestParallelInK(t *testing.T) {
-	d := table(t, "expressions/table_jpl_oh_acetone.csv", "T_K", "k")
+	d := reference.Table(t, "expressions/table_jpl_oh_acetone.csv", "T_K", "k")
 	s := mustSample(t, Absolute, d[0], d[1], ones(len(d[0])))
 	r := Fit(s, models.Parallel{})
 	if r.Status != Converged {
@@ -262,12 +263,12 @@ func TestParallelInK(t *testing.T) {
 	}
 	q := make([]float64, 5)
 	r.Curve.Forms()[0].FromCurve(models.Frame{TRef: r.TRef, TForm: r.TRef}, r.P, q, nil)
-	want(t, "ln A1", q[0], math.Log(1.33e-13), 1e-9)
+	reference.Close(t, "ln A1", q[0], math.Log(1.33e-13), 1e-9)
 	if !(math.Abs(q[1]) <= 1e-8) {
 		t.Errorf("E1 = %g kJ/mol, want 0", q[1])
 	}
-	want(t, "ln A2", q[2], math.Log(3.82e-11), 1e-9)
-	want(t, "E2", q[3], 2000*models.GasConstant/1000, 1e-9)
+	reference.Close(t, "ln A2", q[2], math.Log(3.82e-11), 1e-9)
+	reference.Close(t, "E2", q[3], 2000*models.GasConstant/1000, 1e-9)
 
 	// Data in which E falls only where k is large, exclude it though
 	// fits in ln k do not: ln k rises by 0.64, 0.69, 0.55, 0.52.
@@ -359,7 +360,7 @@ func TestPerfectData(t *testing.T) {
 				t.Errorf("%s, %s: %v, log-likelihood %g, σ %g", m, r.Curve.Info().Name, r.Status, r.LogLik, r.Sigma)
 			}
 		}
-		want(t, string(m)+" E", line.P[1], 75e3, 1e-10)
+		reference.Close(t, string(m)+" E", line.P[1], 75e3, 1e-10)
 		if !(line.AICc() < power.AICc()) {
 			t.Errorf("%s: AICc %g of the line, %g of the power curve", m, line.AICc(), power.AICc())
 		}
@@ -392,32 +393,32 @@ func TestLogLikelihoodIsADensityOfK(t *testing.T) {
 			}
 			l += math.Log(density)
 		}
-		want(t, string(m), r.LogLik, l, 1e-12)
-		want(t, string(m), LogLikelihood(s, r.RSS), l, 1e-12)
+		reference.Close(t, string(m), r.LogLik, l, 1e-12)
+		reference.Close(t, string(m), LogLikelihood(s, r.RSS), l, 1e-12)
 	}
 }
 
 func TestCriteria(t *testing.T) {
 	// -2 ln L = 20, p = 2: K = 3 with σ unknown. Hurvich & Tsai's term is 24/(N-4).
 	r := &Result{Curve: models.Straight(), Model: Relative, N: 10, LogLik: -10}
-	want(t, "AIC", r.AIC(), 26, 1e-15)
-	want(t, "AICc", r.AICc(), 30, 1e-15)
-	want(t, "BIC", r.BIC(), 20+3*math.Log(10), 1e-15)
+	reference.Close(t, "AIC", r.AIC(), 26, 1e-15)
+	reference.Close(t, "AICc", r.AICc(), 30, 1e-15)
+	reference.Close(t, "BIC", r.BIC(), 20+3*math.Log(10), 1e-15)
 	r.N = 4
 	if !math.IsNaN(r.AICc()) {
 		t.Errorf("AICc with N = K+1 is %g", r.AICc())
 	}
 	r.Model = StatedAbsolute
-	want(t, "AICc with σ known", r.AICc(), 24, 1e-15)
+	reference.Close(t, "AICc with σ known", r.AICc(), 24, 1e-15)
 }
 
 func TestEffectiveVariance(t *testing.T) {
 	// E = RT² per kelvin: u(T) = 0.1 K is 0.1 in ln k.
 	e := models.GasConstant * 300 * 300
 	v := EffectiveVariance([]float64{0.04}, []float64{300}, []float64{0.1}, e, nil)
-	want(t, "variance of ln k", v[0], 0.05, 1e-14)
+	reference.Close(t, "variance of ln k", v[0], 0.05, 1e-14)
 	v = EffectiveVariance([]float64{0.04}, []float64{300}, []float64{0.1}, e, []float64{2})
-	want(t, "variance of k", v[0], 0.08, 1e-14)
+	reference.Close(t, "variance of k", v[0], 0.08, 1e-14)
 }
 
 func TestInputsAreNotModified(t *testing.T) {
@@ -466,17 +467,17 @@ func TestLinearRankDeficient(t *testing.T) {
 	if f.Rank != 1 || f.Cov != nil {
 		t.Errorf("rank %d, covariance %v", f.Rank, f.Cov)
 	}
-	want(t, "RSS about the mean", f.RSS, 14, 1e-14)
-	want(t, "sum of coefficients", f.P[0]+f.P[1], 3, 1e-14)
+	reference.Close(t, "RSS about the mean", f.RSS, 14, 1e-14)
+	reference.Close(t, "sum of coefficients", f.P[0]+f.P[1], 3, 1e-14)
 	for _, h := range f.Leverage {
-		want(t, "leverage", h, 1./3, 1e-14)
+		reference.Close(t, "leverage", h, 1./3, 1e-14)
 	}
 	// A line with its constant twice: 1, 2, 6 lies 1/2, -1, 1/2 off.
 	f = Linear([]float64{1, 1, 1, 1, 1, 2, 1, 1, 3}, []float64{1, 2, 6}, nil)
 	if f.Rank != 2 || f.Cov != nil {
 		t.Errorf("rank %d, covariance %v", f.Rank, f.Cov)
 	}
-	want(t, "RSS about the line", f.RSS, 1.5, 1e-14)
+	reference.Close(t, "RSS about the line", f.RSS, 1.5, 1e-14)
 }
 
 // TestIterationsDoNotAllocate: a workspace in use allocates only its answer, however

@@ -3,63 +3,16 @@ package fit
 import (
 	"fmt"
 	"math"
-	"path/filepath"
 	"strings"
 	"testing"
 
 	"onebarrier/models"
+	"onebarrier/models/reference"
 )
 
 // Reference fits of other programs; see testdata/published/README.md. Those of R
 // 4.2.2 are golden_fits.csv, golden_extra.csv, golden_opendata.csv and
 // golden_expressions.csv, those in 50-digit arithmetic golden_fits_mp.csv.
-
-// goldenFits maps "dataset,fit" and a quantity to its value.
-func goldenFits(t testing.TB, file string) map[string]map[string]float64 {
-	t.Helper()
-	m := map[string]map[string]float64{}
-	for _, row := range readCSV(t, filepath.Join(published, file)) {
-		key := row["dataset"] + "," + row["fit"]
-		if row["value"] == "NA" || row["value"] == "" {
-			continue
-		}
-		if m[key] == nil {
-			m[key] = map[string]float64{}
-		}
-		m[key][row["quantity"]] = number(t, row["value"])
-	}
-	return m
-}
-
-// want fails unless got has the relative error tol or less; NaN fails.
-func want(t *testing.T, what string, got, want, tol float64) {
-	t.Helper()
-	if !(math.Abs(got-want) <= tol*math.Abs(want)) {
-		t.Errorf("%s: got %.15g, want %.15g, relative error %.1e > %.0e", what, got, want, math.Abs(got/want-1), tol)
-	}
-}
-
-func TestWantFailsOnNaN(t *testing.T) {
-	for _, c := range [][2]float64{{math.NaN(), 1}, {1, math.NaN()}, {1.1, 1}, {1, 0}} {
-		var inner testing.T
-		want(&inner, "", c[0], c[1], 1e-10)
-		if !inner.Failed() {
-			t.Errorf("want(%g, %g) passed", c[0], c[1])
-		}
-	}
-}
-
-// table reads columns of a published file by heading.
-func table(t testing.TB, file string, headings ...string) [][]float64 {
-	t.Helper()
-	out := make([][]float64, len(headings))
-	for _, row := range readCSV(t, filepath.Join(published, file)) {
-		for j, h := range headings {
-			out[j] = append(out[j], number(t, row[h]))
-		}
-	}
-	return out
-}
 
 func ones(n int) []float64 {
 	v := make([]float64, n)
@@ -94,11 +47,11 @@ func (c coefficient) of(p []float64) float64 {
 	return v
 }
 
-// reference gives the curve and the coefficients of a reference fit: ln k on
+// referenceForm gives the curve and the coefficients of a reference fit: ln k on
 // {1, 1/T}, {1, 1/T, ln T}, the same centred at T_ref, and ln k - ln T on {1, 1/T}.
 // With x = (1/T - 1/T_r)/R and z = T_r/T - 1 our power-prefactor reads
 // a - E x + n (z - ln(1+z)) = a + (nT_r - E/R)(1/T - 1/T_r) + n ln(T/T_r).
-func reference(form string, tr float64) (models.Curve, []coefficient) {
+func referenceForm(form string, tr float64) (models.Curve, []coefficient) {
 	const r = models.GasConstant
 	switch form {
 	case "arr":
@@ -137,7 +90,7 @@ func quadratic(a, m, b []float64) float64 {
 // reference are those of a density of ln k: ours carry -Σ ln k besides.
 func checkReference(t *testing.T, label string, s *Sample, form string, g map[string]float64, known bool, tol float64) (compared int) {
 	t.Helper()
-	curve, coefs := reference(form, s.TRef)
+	curve, coefs := referenceForm(form, s.TRef)
 	r := Fit(s, curve)
 	if r.Status != Converged {
 		t.Errorf("%s: %v: %s", label, r.Status, r.Reason)
@@ -156,7 +109,7 @@ func checkReference(t *testing.T, label string, s *Sample, form string, g map[st
 			}
 			return
 		}
-		want(t, label+" "+quantity, got, w, tol)
+		reference.Close(t, label+" "+quantity, got, w, tol)
 	}
 	suffix := ""
 	if known {
@@ -192,7 +145,7 @@ func checkReference(t *testing.T, label string, s *Sample, form string, g map[st
 		check("AIC_known", r.AIC()-2*sumLnK)
 		if chi2, ok := g["BIC_chi2"]; ok { // χ² + p ln N, without the constants
 			compared++
-			want(t, label+" BIC", r.BIC()-2*sumLnK, chi2+g["AIC_known"]-g["chi2_plus_2p"], tol)
+			reference.Close(t, label+" BIC", r.BIC()-2*sumLnK, chi2+g["AIC_known"]-g["chi2_plus_2p"], tol)
 		}
 		if r.AICc() != r.AIC() {
 			t.Errorf("%s: AICc differs from AIC with σ known", label)
@@ -208,41 +161,32 @@ func checkReference(t *testing.T, label string, s *Sample, form string, g map[st
 	return compared
 }
 
-var syntheticSets = []string{"s1_straight", "s2_tn_curved", "s3_parallel", "s4_series", "s5_hetero", "s6_replicates", "s7_vft", "s8_tiny6"}
-
+// synthetic is one of the synthetic sets, with its stated uncertainties where it has
+// any and the error model uses them.
 func synthetic(t testing.TB, set string, m ErrorModel) *Sample {
 	t.Helper()
-	if set != "s5_hetero" || m == Relative {
-		d := table(t, "synthetic/"+set+".csv", "T_K", "k")
-		return mustSample(t, m, d[0], d[1], ones(len(d[0])))
+	d := reference.Synthetic(t, set)
+	if m == Relative || m == Absolute {
+		return mustSample(t, m, d.T, d.K, d.Ones())
 	}
-	d := table(t, "synthetic/"+set+".csv", "T_K", "k", "sigma_k")
-	v := make([]float64, len(d[0]))
-	for i := range v {
-		u := d[2][i]
-		if !m.InK() {
-			u /= d[1][i]
-		}
-		v[i] = u * u
-	}
-	return mustSample(t, m, d[0], d[1], v)
+	return mustSample(t, m, d.T, d.K, d.Stated(m.InK()))
 }
 
 // TestAgainstHighPrecision compares with fits in 50-digit arithmetic, to 10 digits.
 func TestAgainstHighPrecision(t *testing.T) {
-	g := goldenFits(t, "golden_fits_mp.csv")
+	g := reference.Golden(t, "golden_fits_mp.csv")
 	compared := 0
-	for _, set := range syntheticSets {
+	for _, set := range reference.SyntheticSets {
 		for _, form := range []string{"arr", "mod", "arrc", "modc", "eyring"} {
 			s := synthetic(t, set, Relative)
 			if set == "s5_hetero" {
 				// The reference centres both at the weighted T_ref.
 				scaled := synthetic(t, set, Scaled)
 				s.TRef = scaled.TRef
-				compared += checkReference(t, set+" "+form+" unweighted", s, form, g[set+","+form+"_unweighted"], false, 1e-10)
+				compared += checkReference(t, set+" "+form+" unweighted", s, form, g.Fit(set, form+"_unweighted"), false, 1e-10)
 				s = scaled
 			}
-			compared += checkReference(t, set+" "+form, s, form, g[set+","+form], false, 1e-10)
+			compared += checkReference(t, set+" "+form, s, form, g.Fit(set, form), false, 1e-10)
 		}
 	}
 	if compared < 600 {
@@ -254,16 +198,16 @@ func TestAgainstHighPrecision(t *testing.T) {
 // TestAgainstR compares with R 4.2.2, whose lm loses some digits of raw columns, to
 // 8 digits: intervals, AICc, BIC, Birge ratio and the forms with known σ.
 func TestAgainstR(t *testing.T) {
-	g := goldenFits(t, "golden_fits.csv")
+	g := reference.Golden(t, "golden_fits.csv")
 	compared := 0
-	for _, set := range syntheticSets {
+	for _, set := range reference.SyntheticSets {
 		for _, form := range []string{"arr", "mod", "arrc", "modc", "eyring"} {
 			s := synthetic(t, set, Relative)
 			if set == "s5_hetero" {
 				s = synthetic(t, set, Scaled)
-				compared += checkReference(t, set+" "+form+" known", synthetic(t, set, Stated), form, g[set+","+form], true, 1e-8)
+				compared += checkReference(t, set+" "+form+" known", synthetic(t, set, Stated), form, g.Fit(set, form), true, 1e-8)
 			}
-			compared += checkReference(t, set+" "+form, s, form, g[set+","+form], false, 1e-8)
+			compared += checkReference(t, set+" "+form, s, form, g.Fit(set, form), false, 1e-8)
 		}
 	}
 	if compared < 800 {
@@ -292,15 +236,15 @@ func TestPublishedSets(t *testing.T) {
 		{"gierczak_oh_acetone", "expressions/table_gierczak_oh_acetone.csv", "T_K", "k", "golden_expressions.csv", "table:", 0},
 		{"baulch_o_h2_2", "expressions/table_baulch_o_h2_2.csv", "T_K", "k", "golden_expressions.csv", "table:", 0},
 	} {
-		d := table(t, c.file, c.temp, c.k)
+		d := reference.Table(t, c.file, c.temp, c.k)
 		temp := d[0]
 		for i := range temp {
 			temp[i] += c.shift
 		}
 		s := mustSample(t, Relative, temp, d[1], ones(len(temp)))
-		g := goldenFits(t, c.golden)
+		g := reference.Golden(t, c.golden)
 		for _, form := range []string{"arr", "mod", "eyring"} {
-			ref := g[c.set+","+c.prefix+form]
+			ref := g.Fit(c.set, c.prefix+form)
 			if len(ref) == 0 {
 				continue // ch3nc has too few points, tables have no Eyring form
 			}
@@ -315,7 +259,7 @@ func TestPublishedSets(t *testing.T) {
 // fit of the handbook pressures, weighted by the rounding of the table, and its
 // enthalpy at 298.15 K against 61.38(4) kJ/mol (CODATA key values).
 func TestMercuryHandbookValues(t *testing.T) {
-	d := table(t, "opendata/mercury_pressure_rounding_sigma.csv", "T_C", "p_mmHg", "sigma_rounding_mmHg")
+	d := reference.Table(t, "opendata/mercury_pressure_rounding_sigma.csv", "T_C", "p_mmHg", "sigma_rounding_mmHg")
 	v := make([]float64, len(d[0]))
 	for i := range v {
 		d[0][i] += 273.15
@@ -330,20 +274,20 @@ func TestMercuryHandbookValues(t *testing.T) {
 	if !(math.Abs(e[0]-61380) <= 200) {
 		t.Errorf("enthalpy of vaporisation %.2f kJ/mol, want 61.38", e[0]/1000)
 	}
-	g := goldenFits(t, "golden_opendata.csv")
-	checkReference(t, "mercury rounding", s, "mod", g["mercury_all,mod_roundwt"], false, 1e-8)
+	g := reference.Golden(t, "golden_opendata.csv")
+	checkReference(t, "mercury rounding", s, "mod", g.Fit("mercury_all", "mod_roundwt"), false, 1e-8)
 }
 
 // TestNoiseFreeTable: OH + CH4 as 2.80e-14 T^0.667 exp(-1575/T) (JPL evaluation)
 // comes back from its own table, whose residuals are rounding alone.
 func TestNoiseFreeTable(t *testing.T) {
-	d := table(t, "expressions/table_jpl_oh_ch4_3.csv", "T_K", "k")
+	d := reference.Table(t, "expressions/table_jpl_oh_ch4_3.csv", "T_K", "k")
 	s := mustSample(t, Relative, d[0], d[1], ones(len(d[0])))
 	r := Fit(s, models.PowerPrefactor{})
-	_, coefs := reference("mod", s.TRef)
-	want(t, "ln A", coefs[0].of(r.P), math.Log(2.80e-14), 1e-11)
-	want(t, "-B", coefs[1].of(r.P), -1575, 1e-11)
-	want(t, "n", coefs[2].of(r.P), 0.667, 1e-11)
+	_, coefs := referenceForm("mod", s.TRef)
+	reference.Close(t, "ln A", coefs[0].of(r.P), math.Log(2.80e-14), 1e-11)
+	reference.Close(t, "-B", coefs[1].of(r.P), -1575, 1e-11)
+	reference.Close(t, "n", coefs[2].of(r.P), 0.667, 1e-11)
 	if !finite(r.LogLik, r.AICc()) || r.Status != Converged {
 		t.Errorf("status %v, log-likelihood %g", r.Status, r.LogLik)
 	}
@@ -351,7 +295,7 @@ func TestNoiseFreeTable(t *testing.T) {
 
 // TestInKAgainstR compares fits with errors in k with R's nls on the k scale.
 func TestInKAgainstR(t *testing.T) {
-	g := goldenFits(t, "golden_extra.csv")
+	g := reference.Golden(t, "golden_extra.csv")
 	for _, c := range []struct {
 		set, fit string
 		model    ErrorModel
@@ -360,7 +304,7 @@ func TestInKAgainstR(t *testing.T) {
 		{"s8_tiny6", "kspace_arr_unweighted", Absolute},
 		{"s5_hetero", "kspace_arr_weighted", StatedAbsolute},
 	} {
-		ref := g[c.set+","+c.fit]
+		ref := g.Fit(c.set, c.fit)
 		s := synthetic(t, c.set, c.model)
 		s.TRef = ref["Tref"]
 		r := Fit(s, models.Straight())
@@ -368,42 +312,42 @@ func TestInKAgainstR(t *testing.T) {
 			t.Fatalf("%s: %v: %s", c.set, r.Status, r.Reason)
 		}
 		const tol = 1e-8
-		want(t, c.set+" ln k_ref", r.P[0], ref["lnkref"], tol)
-		want(t, c.set+" E", r.P[1], ref["E"], tol)
-		want(t, c.set+" RSS", r.RSS, ref["rss"], tol)
+		reference.Close(t, c.set+" ln k_ref", r.P[0], ref["lnkref"], tol)
+		reference.Close(t, c.set+" E", r.P[1], ref["E"], tol)
+		reference.Close(t, c.set+" RSS", r.RSS, ref["rss"], tol)
 		sdA, sdE := math.Sqrt(r.Cov[0]), math.Sqrt(r.Cov[3])
 		if c.model.KnownSigma() {
-			want(t, c.set+" se ln k_ref", sdA, ref["se_known_lnkref"], tol)
-			want(t, c.set+" se E", sdE, ref["se_known_E"], tol)
-			want(t, c.set+" logLik", r.LogLik, ref["logLik_known"], tol)
-			want(t, c.set+" AIC", r.AIC(), ref["AIC_known"], tol)
+			reference.Close(t, c.set+" se ln k_ref", sdA, ref["se_known_lnkref"], tol)
+			reference.Close(t, c.set+" se E", sdE, ref["se_known_E"], tol)
+			reference.Close(t, c.set+" logLik", r.LogLik, ref["logLik_known"], tol)
+			reference.Close(t, c.set+" AIC", r.AIC(), ref["AIC_known"], tol)
 			continue
 		}
-		want(t, c.set+" se ln k_ref", sdA, ref["se_lnkref"], tol)
-		want(t, c.set+" se E", sdE, ref["se_E"], tol)
-		want(t, c.set+" logLik", r.LogLik, ref["logLik"], tol)
-		want(t, c.set+" AIC", r.AIC(), ref["AIC"], tol)
-		want(t, c.set+" AICc", r.AICc(), ref["AICc"], tol)
-		want(t, c.set+" BIC", r.BIC(), ref["BIC"], tol)
+		reference.Close(t, c.set+" se ln k_ref", sdA, ref["se_lnkref"], tol)
+		reference.Close(t, c.set+" se E", sdE, ref["se_E"], tol)
+		reference.Close(t, c.set+" logLik", r.LogLik, ref["logLik"], tol)
+		reference.Close(t, c.set+" AIC", r.AIC(), ref["AIC"], tol)
+		reference.Close(t, c.set+" AICc", r.AICc(), ref["AICc"], tol)
+		reference.Close(t, c.set+" BIC", r.BIC(), ref["BIC"], tol)
 	}
 	for _, set := range []string{"s1_straight", "s8_tiny6"} {
 		r := Fit(synthetic(t, set, Relative), models.Straight())
-		want(t, set+" AIC on the k scale", r.AIC(), g[set+",lnspace_arr_on_k_scale"]["AIC_k_scale"], 1e-10)
+		reference.Close(t, set+" AIC on the k scale", r.AIC(), g.Of(t, set, "lnspace_arr_on_k_scale", "AIC_k_scale"), 1e-10)
 	}
 }
 
 // TestIntervalAgainstR compares confidence limits of ln k(T) with R's predict.
 func TestIntervalAgainstR(t *testing.T) {
-	g := goldenFits(t, "golden_extra.csv")
+	g := reference.Golden(t, "golden_extra.csv")
 	compared := 0
-	for _, set := range syntheticSets {
+	for _, set := range reference.SyntheticSets {
 		if set == "s5_hetero" {
 			continue
 		}
 		for _, form := range []string{"arr", "mod"} {
-			ref := g[set+",predict_"+form]
+			ref := g.Fit(set, "predict_"+form)
 			s := synthetic(t, set, Relative)
-			curve, _ := reference(form, s.TRef)
+			curve, _ := referenceForm(form, s.TRef)
 			r := Fit(s, curve)
 			for q, w := range ref {
 				temp, ok := strings.CutPrefix(q, "conf_lo(")
@@ -412,11 +356,11 @@ func TestIntervalAgainstR(t *testing.T) {
 				}
 				temp = strings.TrimSuffix(temp, ")")
 				f, jac := make([]float64, 1), make([]float64, r.Params())
-				curve.LnK(r.TRef, []float64{number(t, temp)}, r.P, f, jac)
+				curve.LnK(r.TRef, []float64{reference.Number(t, temp)}, r.P, f, jac)
 				e := r.Interval(jac, f[0], 0.95)
-				want(t, set+" "+q, e.Lower, w, 1e-8)
-				want(t, set+" conf_hi("+temp, e.Upper, ref["conf_hi("+temp+")"], 1e-8)
-				want(t, set+" se("+temp, e.StdError, ref["se("+temp+")"], 1e-7)
+				reference.Close(t, set+" "+q, e.Lower, w, 1e-8)
+				reference.Close(t, set+" conf_hi("+temp, e.Upper, ref["conf_hi("+temp+")"], 1e-8)
+				reference.Close(t, set+" se("+temp, e.StdError, ref["se("+temp+")"], 1e-7)
 				compared++
 			}
 		}

@@ -6,6 +6,7 @@ import (
 	"testing"
 
 	"onebarrier/models"
+	"onebarrier/models/reference"
 )
 
 // TestSoftplus checks the table against exp and log1p.
@@ -62,7 +63,7 @@ func TestColdFitIsGlobal(t *testing.T) {
 			t.Errorf("set %d (N = %d): RSS %.12g, the general engine finds %.12g", set, n, res.RSS, best)
 		}
 		if res.Status == Converged {
-			want(t, "RSS of the general engine", best, res.RSS, 1e-8)
+			reference.Close(t, "RSS of the general engine", best, res.RSS, 1e-8)
 		}
 	}
 }
@@ -116,9 +117,9 @@ func TestRefitOffsetAndTwoColumns(t *testing.T) {
 		ref.Refit(y, &out)
 		for j, c := range r.curves {
 			f := Fit(&sub, c)
-			want(t, c.Info().Name+" RSS", out.RSS[j], f.RSS, 1e-10)
+			reference.Close(t, c.Info().Name+" RSS", out.RSS[j], f.RSS, 1e-10)
 			for i, p := range f.P {
-				want(t, c.Info().Name+" "+c.Info().Params[i].Symbol, out.P[j][i], p, 1e-8)
+				reference.Close(t, c.Info().Name+" "+c.Info().Params[i].Symbol, out.P[j][i], p, 1e-8)
 			}
 		}
 	}

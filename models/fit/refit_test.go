@@ -10,6 +10,7 @@ import (
 	"time"
 
 	"onebarrier/models"
+	"onebarrier/models/reference"
 )
 
 // resampling is a sample, its fits and a stream of parametric resamples.
@@ -276,10 +277,10 @@ func TestRefitMatchesFit(t *testing.T) {
 					}
 					continue
 				}
-				want(t, label+" RSS", out.RSS[j], f.RSS, 1e-9)
+				reference.Close(t, label+" RSS", out.RSS[j], f.RSS, 1e-9)
 				if f.Status == Converged {
 					for i, p := range f.P {
-						want(t, label+" "+c.Info().Params[i].Symbol, out.P[j][i], p, 1e-6)
+						reference.Close(t, label+" "+c.Info().Params[i].Symbol, out.P[j][i], p, 1e-6)
 					}
 				}
 				if f.RSS < best {
@@ -401,8 +402,8 @@ func TestSlowRefit(t *testing.T) {
 	sub := mustSample(t, Absolute, s.T, k, s.V)
 	for j, c := range curves {
 		f := Fit(sub, c)
-		want(t, c.Info().Name+" RSS", out.RSS[j], f.RSS, 1e-9)
-		want(t, c.Info().Name+" E", out.P[j][1], f.P[1], 1e-7)
+		reference.Close(t, c.Info().Name+" RSS", out.RSS[j], f.RSS, 1e-9)
+		reference.Close(t, c.Info().Name+" E", out.P[j][1], f.P[1], 1e-7)
 	}
 	// Every entry twice: the same estimates, twice the sum of squares.
 	counts := make([]int, 10)
@@ -411,7 +412,7 @@ func TestSlowRefit(t *testing.T) {
 	}
 	once := out.RSS[1]
 	ref.Clone().RefitCounts(k, counts, &out)
-	want(t, "RSS of doubled entries", out.RSS[1], 2*once, 1e-9)
+	reference.Close(t, "RSS of doubled entries", out.RSS[1], 2*once, 1e-9)
 }
 
 // floorTime is the time of exp and log1p at n points, in ns: what a shape costs at

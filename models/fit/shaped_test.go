@@ -4,11 +4,11 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
-	"path/filepath"
 	"strings"
 	"testing"
 
 	"onebarrier/models"
+	"onebarrier/models/reference"
 )
 
 // parallelNames are the golden files' names of the canonical parameters.
@@ -19,7 +19,7 @@ var parallelNames = []string{"lnk1ref", "E1", "lnk2ref", "E2"}
 func TestParallelGolden(t *testing.T) {
 	for _, set := range []string{"s2_tn_curved", "s3_parallel", "s6_replicates"} {
 		s := synthetic(t, set, Relative)
-		g := goldenFits(t, "golden_fits_mp.csv")[set+",par2"]
+		g := reference.Golden(t, "golden_fits_mp.csv").Fit(set, "par2")
 		res := Fit(s, models.Parallel{})
 		if res.Status != Converged {
 			t.Errorf("%s: %v: %s", set, res.Status, res.Reason)
@@ -53,7 +53,7 @@ func TestParallelGolden(t *testing.T) {
 func TestParallelPublishedSums(t *testing.T) {
 	calorie := 4.184 // thermochemical, J: baulch_o_h2_2 states E in cal/mol
 	found := 0
-	for _, row := range readCSV(t, filepath.Join(published, "expressions/expressions.csv")) {
+	for _, row := range reference.Records(t, "expressions/expressions.csv") {
 		id := row["id"]
 		if !strings.HasPrefix(row["form"], "A1*exp") || id == "gierczak_oh_acetone_all" {
 			continue
@@ -63,7 +63,7 @@ func TestParallelPublishedSums(t *testing.T) {
 		if strings.Contains(row["form"], "cal/mol") {
 			unit = calorie
 		}
-		d := table(t, "expressions/table_"+id+".csv", "T_K", "k")
+		d := reference.Table(t, "expressions/table_"+id+".csv", "T_K", "k")
 		s := mustSample(t, Relative, d[0], d[1], ones(len(d[0])))
 		res := Fit(s, models.Parallel{})
 		if res.Status != Converged {
@@ -72,8 +72,8 @@ func TestParallelPublishedSums(t *testing.T) {
 		}
 		x := 1 / (models.GasConstant * s.TRef)
 		for path := range 2 {
-			a := number(t, row[fmt.Sprintf("p%d", 2*path+1)])
-			e := number(t, row[fmt.Sprintf("p%d", 2*path+2)]) * unit
+			a := reference.Number(t, row[fmt.Sprintf("p%d", 2*path+1)])
+			e := reference.Number(t, row[fmt.Sprintf("p%d", 2*path+2)]) * unit
 			gotE := res.P[2*path+1]
 			// A zero barrier is compared on the scale of the other one.
 			scale := math.Max(math.Abs(e), math.Abs(res.P[3]))
@@ -150,7 +150,7 @@ func (series) FromShape(a, e float64, q, p []float64) {
 // TestSeriesGolden checks the kernel's other sign against golden_fits_mp.csv.
 func TestSeriesGolden(t *testing.T) {
 	for _, set := range []string{"s4_series", "s7_vft"} {
-		g := goldenFits(t, "golden_fits_mp.csv")[set+",ser2"]
+		g := reference.Golden(t, "golden_fits_mp.csv").Fit(set, "ser2")
 		res := Fit(synthetic(t, set, Relative), series{})
 		if res.Status != Converged {
 			t.Errorf("%s: %v: %s", set, res.Status, res.Reason)
@@ -251,7 +251,7 @@ func made(t testing.TB, n int, low, high float64, p []float64, c models.Curve, n
 // TestParallelProfileAgainstR checks profile intervals against golden_fits.csv:
 // prof_t95_* from R, S(θ) = S_min (1 + F(1, ν)/ν).
 func TestParallelProfileAgainstR(t *testing.T) {
-	g := goldenFits(t, "golden_fits.csv")
+	g := reference.Golden(t, "golden_fits.csv")
 	compared := 0
 	for _, c := range []struct {
 		set, fit string
@@ -267,19 +267,19 @@ func TestParallelProfileAgainstR(t *testing.T) {
 		r := Fit(s, c.curve)
 		for j, name := range parallelNames {
 			param := []string{"ln_k1_ref", "E1", "ln_k2_ref", "E2"}[j]
-			lo, okLo := g[c.set+","+c.fit]["prof_t95_lo:"+name]
-			hi, okHi := g[c.set+","+c.fit]["prof_t95_hi:"+name]
+			lo, okLo := g[reference.Key{Dataset: c.set, Fit: c.fit, Quantity: "prof_t95_lo:" + name}]
+			hi, okHi := g[reference.Key{Dataset: c.set, Fit: c.fit, Quantity: "prof_t95_hi:" + name}]
 			if !okLo && !okHi {
 				continue
 			}
 			e := ProfileShaped(s, r, param, 0.95)
 			if okLo {
 				compared++
-				want(t, c.set+" lower "+param, e.Lower, lo, 1e-9)
+				reference.Close(t, c.set+" lower "+param, e.Lower, lo, 1e-9)
 			}
 			if okHi {
 				compared++
-				want(t, c.set+" upper "+param, e.Upper, hi, 1e-9)
+				reference.Close(t, c.set+" upper "+param, e.Upper, hi, 1e-9)
 			}
 		}
 	}
@@ -302,10 +302,10 @@ func TestParallelProfileOfLnA(t *testing.T) {
 	} {
 		s := synthetic(t, c.set, Relative)
 		e := ProfileShaped(s, Fit(s, models.Parallel{}), c.param, 0.95)
-		want(t, c.set+" "+c.param, e.Value, c.value, 1e-9)
-		want(t, c.set+" se "+c.param, e.StdError, c.se, 1e-7)
-		want(t, c.set+" lower "+c.param, e.Lower, c.lower, 1e-9)
-		want(t, c.set+" upper "+c.param, e.Upper, c.upper, 1e-9)
+		reference.Close(t, c.set+" "+c.param, e.Value, c.value, 1e-9)
+		reference.Close(t, c.set+" se "+c.param, e.StdError, c.se, 1e-7)
+		reference.Close(t, c.set+" lower "+c.param, e.Lower, c.lower, 1e-9)
+		reference.Close(t, c.set+" upper "+c.param, e.Upper, c.upper, 1e-9)
 		if e.Open != OpenNone {
 			t.Errorf("%s %s: open %q", c.set, c.param, e.Open)
 		}
