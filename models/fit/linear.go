@@ -21,14 +21,71 @@ type LinearFit struct {
 //
 // Coefficients and residuals are refined together (Björck 1967, "Iterative
 // refinement of linear least squares solutions I", BIT 7, 257) with the residuals
-// of the augmented system in double-double arithmetic: without it Filip's
-// polynomial of the NIST StRD has 7 digits.
+// of the augmented system in double-double arithmetic, so that the solution is
+// that of the float64 design to its last digits. What the rounding of the design
+// itself costs is another matter: see Polynomial.
 func Linear(x, y, w []float64) *LinearFit {
 	m := len(y)
 	if m == 0 || len(x)%m != 0 || len(x) == 0 || (w != nil && len(w) != m) {
 		panic("fit: lengths of x, y and w do not match")
 	}
-	n := len(x) / m
+	f, _ := linear(design{m: m, n: len(x) / m, hi: x}, y, w)
+	return f
+}
+
+// Polynomial minimises Σ w_i (y_i - Σ_j p_j x_i^j)², j from 0 to degree; x, y and w
+// (nil for ones) have the same length, which must exceed degree. The powers are
+// formed in double-double arithmetic and refined against as such, coefficients and
+// covariance alike: rounding them to float64 would cost the digits that the
+// condition of raw powers allows it to. For Filip's polynomial of the NIST StRD,
+// condition 5e9, that is all but 7 of them, whatever solves the rounded problem.
+func Polynomial(x, y, w []float64, degree int) *LinearFit {
+	m, n := len(y), degree+1
+	if m == 0 || len(x) != m || degree < 0 || (w != nil && len(w) != m) {
+		panic("fit: lengths of x, y and w do not match")
+	}
+	d := design{m: m, n: n, hi: make([]float64, m*n), lo: make([]float64, m*n)}
+	for i, xi := range x {
+		pow := dd{1, 0}
+		for j := range n {
+			d.hi[i*n+j], d.lo[i*n+j] = pow.hi, pow.lo
+			pow = pow.product(xi)
+		}
+	}
+	f, e := linear(d, y, w)
+	if f.Cov == nil || f.Rank < n {
+		return f
+	}
+	// Column j of (AᵀA)⁻¹ solves the augmented system with right-hand sides 0 and
+	// -e_j.
+	zero, unit := make([]float64, m), make([]float64, n)
+	for j := range n {
+		clear(unit)
+		unit[j] = -1
+		column := make([]float64, n)
+		e.refine(zero, unit, column, f.Rank)
+		for i := range n {
+			f.Cov[i*n+j] = column[i]
+		}
+	}
+	for i := range n {
+		for j := range i {
+			c := (f.Cov[i*n+j] + f.Cov[j*n+i]) / 2
+			f.Cov[i*n+j], f.Cov[j*n+i] = c, c
+		}
+	}
+	return f
+}
+
+// design is an m x n matrix, row-major, unweighted: hi, plus lo where its entries
+// are known beyond float64.
+type design struct {
+	m, n   int
+	hi, lo []float64
+}
+
+func linear(d design, y, w []float64) (*LinearFit, *equations) {
+	m, n := d.m, d.n
 	if m < n {
 		panic("fit: fewer rows than columns")
 	}
@@ -40,78 +97,97 @@ func Linear(x, y, w []float64) *LinearFit {
 			root[i] = math.Sqrt(w[i])
 		}
 		for j := range n {
-			a[i*n+j] = root[i] * x[i*n+j]
+			a[i*n+j] = root[i] * d.hi[i*n+j]
 		}
 	}
-	scale := make([]float64, n)
-	columnScale(a, m, n, scale)
-	q := newQR(m, n)
-	q.load(a, scale)
-	q.factor()
+	e := &equations{design: d, q: newQR(m, n), root: root, scale: make([]float64, n)}
+	columnScale(a, m, n, e.scale)
+	e.q.load(a, e.scale)
+	e.q.factor()
 
-	f := &LinearFit{
-		P: make([]float64, n), Residuals: make([]float64, m), Leverage: make([]float64, m),
-		Rank: q.rank(),
-	}
-	f.refine(q, x, y, root, scale)
+	f := &LinearFit{P: make([]float64, n), Leverage: make([]float64, m), Rank: e.q.rank()}
+	e.refine(y, nil, f.P, f.Rank)
+	f.Residuals = e.residuals(y, f.P)
 	for i, r := range f.Residuals {
 		f.RSS += root[i] * r * root[i] * r
 	}
-	q.leverage(f.Leverage, f.Rank)
+	e.q.leverage(f.Leverage, f.Rank)
 	f.Cov = make([]float64, n*n)
-	f.Condition = q.covariance(scale, f.Cov)
+	f.Condition = e.q.covariance(e.scale, f.Cov)
 	if !(f.Condition <= maxCondition) {
 		f.Cov = nil
 	}
-	return f
+	return f, e
 }
 
-// refine solves  [I A; Aᵀ 0][ρ; p] = [b; 0], ρ = root·residual, with A the
-// weighted design and b the weighted y, and improves (ρ, p) until the corrections
-// no longer shrink. The right-hand sides are formed in double-double arithmetic.
-// A column of A in row i is root_i·x_ij; taking it from x and multiplying in
-// double-double keeps A exact, so that the rounding of the weighted rows does not
-// enter either.
-func (f *LinearFit) refine(q *qr, x, y, root, scale []float64) {
-	m, n := q.m, q.n
+// equations are a weighted design, root_i times row i, and its factors.
+type equations struct {
+	design
+	q           *qr
+	root, scale []float64
+}
+
+// subtractRow subtracts Σ_j x_ij p_j from s.
+func (e *equations) subtractRow(s *dd, i int, p []float64) {
+	for j, pj := range p {
+		s.addProduct(-e.hi[i*e.n+j], pj)
+		if e.lo != nil {
+			s.addProduct(-e.lo[i*e.n+j], pj)
+		}
+	}
+}
+
+// refine solves  [I A; Aᵀ 0][ρ; p] = [b; c], ρ = root·residual, with A the weighted
+// design, b the weighted y and c given or, where it is nil, 0. It improves (ρ, p)
+// from p = 0 until the corrections no longer shrink. The right-hand sides are
+// formed in double-double arithmetic. A column of A in row i is root_i·x_ij; taking
+// it from x and multiplying in double-double keeps A exact, so that the rounding of
+// the weighted rows does not enter either.
+func (e *equations) refine(y, c, p []float64, rank int) {
+	q, m, n := e.q, e.m, e.n
 	rho := make([]float64, m)
-	c := make([]float64, m)
+	top := make([]float64, m)
 	g, d, t := make([]float64, n), make([]float64, n), make([]float64, n)
 	last := math.Inf(1)
 	for range 10 {
-		// c = b - ρ - A p and g = -Aᵀρ, divided by the column scale.
+		// top = b - ρ - A p and g = c - Aᵀρ, divided by the column scale.
 		for i := range m {
 			var s dd
 			s.addProduct(1, y[i])
-			for j := range n {
-				s.addProduct(-x[i*n+j], f.P[j])
-			}
-			c[i] = s.times(root[i]).minus(rho[i])
+			e.subtractRow(&s, i, p)
+			top[i] = s.product(e.root[i]).minus(rho[i])
 		}
 		for j := range n {
 			var s dd
-			for i := range m {
-				s.addTriple(-x[i*n+j], root[i], rho[i])
+			if c != nil {
+				s.hi = c[j]
 			}
-			g[j] = s.hi / scale[j]
+			for i := range m {
+				s.addTriple(-e.hi[i*n+j], e.root[i], rho[i])
+				if e.lo != nil {
+					s.addTriple(-e.lo[i*n+j], e.root[i], rho[i])
+				}
+			}
+			g[j] = s.hi / e.scale[j]
 		}
-		// With A P = Q R: solve Rᵀh = Pᵀg, then ρ += Q [h; c₂] and p += R⁻¹(c₁ - h).
-		q.mulQT(c)
-		if f.Rank == n {
+		// With A P = Q R: solve Rᵀh = Pᵀg, then ρ += Q [h; top₂] and
+		// p += R⁻¹(top₁ - h).
+		q.mulQT(top)
+		if rank == n {
 			q.solveT(g, d)
 		} else {
 			clear(d)
 		}
 		for j := range n {
-			t[j] = c[j] - d[j]
-			c[j] = d[j]
-			if j >= f.Rank {
+			t[j] = top[j] - d[j]
+			top[j] = d[j]
+			if j >= rank {
 				// These rows of R are rounding: what they hold stays a residual.
-				c[j] = t[j]
+				top[j] = t[j]
 			}
 		}
-		q.solve(t, g, f.Rank)
-		q.mulQ(c)
+		q.solve(t, g, rank)
+		q.mulQ(top)
 		var size float64
 		for j := range n {
 			size += g[j] * g[j]
@@ -122,23 +198,27 @@ func (f *LinearFit) refine(q *qr, x, y, root, scale []float64) {
 		}
 		last = size
 		for j := range n {
-			f.P[j] += g[j] / scale[j]
+			p[j] += g[j] / e.scale[j]
 		}
 		for i := range m {
-			rho[i] += c[i]
+			rho[i] += top[i]
 		}
 		if size == 0 {
 			break
 		}
 	}
-	for i := range m {
+}
+
+// residuals are y - Xp, unweighted.
+func (e *equations) residuals(y, p []float64) []float64 {
+	r := make([]float64, e.m)
+	for i := range r {
 		var s dd
 		s.addProduct(1, y[i])
-		for j := range n {
-			s.addProduct(-x[i*n+j], f.P[j])
-		}
-		f.Residuals[i] = s.hi
+		e.subtractRow(&s, i, p)
+		r[i] = s.hi
 	}
+	return r
 }
 
 // dd is an unevaluated sum hi + lo of two float64 (Dekker 1971, Numer. Math. 18,
@@ -172,8 +252,6 @@ func (s dd) product(c float64) dd {
 	h := p + e
 	return dd{h, e - (h - p)}
 }
-
-func (s dd) times(c float64) dd { return s.product(c) }
 
 // minus returns s - b rounded to float64.
 func (s dd) minus(b float64) float64 {
