@@ -103,8 +103,9 @@ func TestErrorModelIsToldWhateverTheUnit(t *testing.T) {
 	for _, inK := range []bool{false, true} {
 		for _, level := range []float64{-15, 15} {
 			c := Cell{Range: Narrow, N: 8, Truth: Truth{Level: level}, Absolute: inK, Lean: true, Compare: true}
-			if f := run(t, c, 100).Rate(TrueErrorModel); !(f.Value >= 0.9) {
-				t.Errorf("errors in k %v, ln k near %g: the right error model in %.2f of sets, want 0.9 at least", inK, middleLnK+level, f.Value)
+			// About 0.91 of relative and 0.98 of absolute errors in the full study.
+			if s := off(run(t, c, 100).Rate(TrueErrorModel), 0.9, 1); s != "" {
+				t.Errorf("errors in k %v, ln k near %g: right error model in %s", inK, middleLnK+level, s)
 			}
 		}
 	}
