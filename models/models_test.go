@@ -5,16 +5,9 @@ import (
 	"slices"
 	"strings"
 	"testing"
+
+	"onebarrier/models/reference"
 )
-
-// near reports whether |got - want| <= tol |want|, which NaN never is.
-func near(got, want, tol float64) bool { return math.Abs(got-want) <= tol*math.Abs(want) }
-
-func TestNearRefusesNaN(t *testing.T) {
-	if near(math.NaN(), 1, 1) || near(1, math.NaN(), 1) || near(1, 2, 0.1) || !near(1, 1+1e-10, 1e-9) {
-		t.Error("near is wrong")
-	}
-}
 
 // The defining constants of the SI and R = k_B N_A: SI Brochure, 9th ed. (2019),
 // table 1; CODATA 2018 gives R = 8.314 462 618 153 24 J mol^-1 K^-1 (exact).
@@ -50,10 +43,10 @@ func TestBendAndLogRatio(t *testing.T) {
 		{300, 3000, 1.4025850929940457, 2.3025850929940457},
 		{300, 1e12, 20.927238641572347, 21.927238641272347},
 	} {
-		if got := bend(c.tRef, c.t); !near(got, c.bend, 1e-14) {
+		if got := bend(c.tRef, c.t); !reference.Agrees(got, c.bend, 1e-14) {
 			t.Errorf("bend(%g, %g) = %.17g, want %.17g", c.tRef, c.t, got, c.bend)
 		}
-		if got := logRatio(c.t, c.tRef); !near(got, c.log, 1e-14) {
+		if got := logRatio(c.t, c.tRef); !reference.Agrees(got, c.log, 1e-14) {
 			t.Errorf("logRatio(%g, %g) = %.17g, want %.17g", c.t, c.tRef, got, c.log)
 		}
 	}
@@ -68,10 +61,10 @@ func TestSoftplus(t *testing.T) {
 	for _, s := range []float64{-800, -40, -1, 0, 1, 40, 800} {
 		v, up, down := softplus(s)
 		wantUp, wantDown := 1/(1+math.Exp(-s)), 1/(1+math.Exp(s))
-		if !near(up, wantUp, 1e-15) || !near(down, wantDown, 1e-15) {
+		if !reference.Agrees(up, wantUp, 1e-15) || !reference.Agrees(down, wantDown, 1e-15) {
 			t.Errorf("softplus(%g): slope %g and rest %g, want %g and %g", s, up, down, wantUp, wantDown)
 		}
-		if want := math.Max(s, 0) + math.Log1p(math.Exp(-math.Abs(s))); !near(v, want, 1e-15) {
+		if want := math.Max(s, 0) + math.Log1p(math.Exp(-math.Abs(s))); !reference.Agrees(v, want, 1e-15) {
 			t.Errorf("softplus(%g) = %g, want %g", s, v, want)
 		}
 	}
@@ -185,7 +178,7 @@ func TestFixedExponentsAreSpecialPowers(t *testing.T) {
 		got := values(t, name, fr, []float64{25, 50}, temps)
 		want := values(t, "modified-arrhenius", fr, []float64{25, n, 50}, temps)
 		for i := range got {
-			if !near(got[i], want[i], 1e-13) {
+			if !reference.Agrees(got[i], want[i], 1e-13) {
 				t.Errorf("%s at %g K: ln k = %.15g, with n = %g %.15g", name, temps[i], got[i], n, want[i])
 			}
 		}
@@ -194,7 +187,7 @@ func TestFixedExponentsAreSpecialPowers(t *testing.T) {
 	got := values(t, "eyring", fr, []float64{80, -20}, temps)
 	want := values(t, "eyring-heat-capacity", fr, []float64{80, -20, 0}, temps)
 	for i := range got {
-		if !near(got[i], want[i], 1e-13) {
+		if !reference.Agrees(got[i], want[i], 1e-13) {
 			t.Errorf("eyring at %g K: ln k = %.15g, with ΔC_p‡ = 0 %.15g", temps[i], got[i], want[i])
 		}
 	}
@@ -207,19 +200,19 @@ func TestZeroBarrier(t *testing.T) {
 	for name, m := range map[string]float64{"arrhenius": 0, "collision": 0.5} {
 		got := values(t, name, fr, []float64{25, 0}, temps)
 		for i, ti := range temps {
-			if want := 25 + m*math.Log(ti/fr.TForm); !near(got[i], want, 1e-14) {
+			if want := 25 + m*math.Log(ti/fr.TForm); !reference.Agrees(got[i], want, 1e-14) {
 				t.Errorf("%s with E = 0 at %g K: ln k = %.15g, want %.15g", name, ti, got[i], want)
 			}
 		}
 	}
 	for i, v := range values(t, "parallel-barriers", fr, []float64{3, 0, 3, 0, math.NaN()}, temps) {
-		if want := 3 + math.Ln2; !near(v, want, 1e-14) {
+		if want := 3 + math.Ln2; !reference.Agrees(v, want, 1e-14) {
 			t.Errorf("two equal paths without a barrier at %g K: ln k = %.15g, want %.15g", temps[i], v, want)
 		}
 	}
 	// k = k_B T/h at ΔH‡ = ΔS‡ = 0: 6.212 × 10^12 s^-1 at 298.15 K (common practice).
 	k := math.Exp(values(t, "eyring", fr, []float64{0, 0}, []float64{298.15})[0])
-	if !near(k, 6.212e12, 1e-4) {
+	if !reference.Agrees(k, 6.212e12, 1e-4) {
 		t.Errorf("k_B T/h at 298.15 K = %g s^-1, want 6.212e12", k)
 	}
 }
@@ -251,12 +244,12 @@ func TestPerMoleAndPerMolecule(t *testing.T) {
 		c.ELoc(300, temps, p, e, nil)
 		c.ELoc(300, temps, q, h, nil)
 		for i := range temps {
-			if d := g[i] - f[i]; !near(d, lnNA, 1e-13) || !near(h[i], e[i], 1e-12) {
+			if d := g[i] - f[i]; !reference.Agrees(d, lnNA, 1e-13) || !reference.Agrees(h[i], e[i], 1e-12) {
 				t.Errorf("%s at %g K: ln k moves by %.15g, want ln N_A = %.15g; E_loc %g and %g", c.Info().Name, temps[i], d, lnNA, e[i], h[i])
 			}
 		}
 	}
-	if !near(GasConstant/Avogadro, 1.380649e-23, 1e-15) {
+	if !reference.Agrees(GasConstant/Avogadro, 1.380649e-23, 1e-15) {
 		t.Error("R/N_A is not k_B")
 	}
 }
@@ -274,7 +267,7 @@ func TestTimeUnitMovesEntropy(t *testing.T) {
 			q, m := make([]float64, len(f.Params)), make([]float64, len(f.Params))
 			f.FromCurve(Frame{TRef: 300, TForm: 298.15}, p, q, nil)
 			f.FromCurve(Frame{TRef: 300, TForm: 298.15, LnPerSecond: -math.Log(60)}, p, m, nil)
-			if d := q[1] - m[1]; !near(d, 8.31446261815324*math.Log(60), 1e-12) || m[0] != q[0] {
+			if d := q[1] - m[1]; !reference.Agrees(d, 8.31446261815324*math.Log(60), 1e-12) || m[0] != q[0] {
 				t.Errorf("%s: ΔS‡ moves by %g J/(mol K)", name, d)
 			}
 		}

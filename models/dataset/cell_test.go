@@ -3,6 +3,8 @@ package dataset
 import (
 	"math"
 	"testing"
+
+	"onebarrier/models/reference"
 )
 
 func TestCells(t *testing.T) {
@@ -64,7 +66,7 @@ func TestCells(t *testing.T) {
 	} {
 		got := ParseCell(c.in, c.dec, 0)
 		same := got.Kind == c.want.Kind && got.Limit == c.want.Limit && got.Attached == c.want.Attached && got.URel == c.want.URel && got.Percent == c.want.Percent &&
-			got.Unit == c.want.Unit && got.Value == c.want.Value && near(got.Half, c.want.Half, 1e-15) && near(got.U, c.want.U, 1e-15)
+			got.Unit == c.want.Unit && got.Value == c.want.Value && reference.Agrees(got.Half, c.want.Half, 1e-15) && reference.Agrees(got.U, c.want.U, 1e-15)
 		if !same {
 			t.Errorf("%q: got %+v, want %+v", c.in, got, c.want)
 		}

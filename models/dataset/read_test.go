@@ -6,13 +6,14 @@ import (
 	"fmt"
 	"math"
 	"os"
-	"path/filepath"
 	"slices"
 	"strings"
 	"testing"
 
 	"golang.org/x/text/encoding/charmap"
 	"golang.org/x/text/encoding/unicode"
+
+	"onebarrier/models/reference"
 )
 
 func read(t *testing.T, text string, opt Options) *Set {
@@ -62,7 +63,7 @@ func TestPublishedFiles(t *testing.T) {
 		{"opendata/mercury_pressure_R.csv", Options{Columns: map[string]string{"k": "p_mmHg"}}, 19, [2]float64{273.15, 2e-4}, [2]float64{633.15, 806}, "mmHg", "p"},
 		{"opendata/steam_MASS.csv", Options{Columns: map[string]string{"k": "p"}}, 14, [2]float64{273.15, 4.14}, [2]float64{378.15, 920.01}, "", "p"},
 	} {
-		f, err := os.Open(filepath.Join("../../testdata/published", c.file))
+		f, err := os.Open(reference.Path(c.file))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -86,7 +87,7 @@ func TestPublishedFiles(t *testing.T) {
 		"opendata/imotor_survival.csv": codeAmbiguousTemperature,
 		"opendata/steam_MASS.csv":      codeNoRate,
 	} {
-		f, err := os.Open(filepath.Join("../../testdata/published", file))
+		f, err := os.Open(reference.Path(file))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -137,7 +138,7 @@ func TestSpellingsOfOneTable(t *testing.T) {
 			continue
 		}
 		for i, want := range [][2]float64{{298.15, 0.001}, {308.15, 0.004}, {318.15, 0.016}} {
-			if !near(ps[i].T, want[0], 1e-15) || ps[i].K != want[1] {
+			if !reference.Agrees(ps[i].T, want[0], 1e-15) || ps[i].K != want[1] {
 				t.Errorf("%s: row %d: %v, %v", name, i, ps[i].T, ps[i].K)
 			}
 		}
@@ -159,7 +160,7 @@ func TestSpellingsOfOneTable(t *testing.T) {
 	} {
 		ps := read(t, c.text, Options{}).UsedPoints()
 		for i, want := range [][2]float64{{298.15, 0.001}, {308.15, 0.004}, {318.15, 0.016}} {
-			if !near(ps[i].T, want[0], c.tol) || !near(ps[i].K, want[1], 10*c.tol) {
+			if !reference.Agrees(ps[i].T, want[0], c.tol) || !reference.Agrees(ps[i].K, want[1], 10*c.tol) {
 				t.Errorf("%s: row %d: %v, %v", name, i, ps[i].T, ps[i].K)
 			}
 		}
@@ -233,7 +234,7 @@ func TestUncertainties(t *testing.T) {
 	} {
 		s := read(t, "T/K,k/s^-1,"+c.heading+"\n300,2,"+c.cell+"\n310,2,"+c.cell+"\n", c.opt)
 		p := s.Points[0]
-		if !near(p.UK, c.u, 1e-14) || p.Level != c.level {
+		if !reference.Agrees(p.UK, c.u, 1e-14) || p.Level != c.level {
 			t.Errorf("%s = %s (%v): got %v %q, want %v %q", c.heading, c.cell, c.opt.Assume, p.UK, p.Level, c.u, c.level)
 		}
 		if len(c.opt.Assume) > 0 && len(s.Assumed) == 0 {
@@ -241,7 +242,7 @@ func TestUncertainties(t *testing.T) {
 		}
 	}
 	for cell, want := range map[string]float64{"2.0(1)": 0.1, "2.0 (1)": 0, "2.0 ± 0.1": 0} {
-		if p := read(t, "T/K,k/s^-1\n300,"+cell+"\n310,2\n", Options{}).Points[0]; p.K != 2 || !near(p.UK, want, 1e-15) {
+		if p := read(t, "T/K,k/s^-1\n300,"+cell+"\n310,2\n", Options{}).Points[0]; p.K != 2 || !reference.Agrees(p.UK, want, 1e-15) {
 			t.Errorf("%s: %v %v", cell, p.K, p.UK)
 		}
 	}
@@ -251,16 +252,16 @@ func TestUncertainties(t *testing.T) {
 	}
 	// Bare headings belong to the quantity on their left.
 	p := read(t, "T/K,SE,ln k,SD of k,n\n300,0.2,0,0.1,4\n310,0.2,1,0.1,4\n", Options{}).Points[0]
-	if p.UT != 0.2 || !near(p.UK, 0.05, 1e-15) {
+	if p.UT != 0.2 || !reference.Agrees(p.UK, 0.05, 1e-15) {
 		t.Errorf("bare SE: u(T) %v, u(k) %v", p.UT, p.UK)
 	}
 	p = read(t, "T/K,ln k,SE\n300,1,0.1\n310,1,0.1\n", Options{}).Points[0]
-	if !near(p.UK, 0.1*math.E, 1e-15) {
+	if !reference.Agrees(p.UK, 0.1*math.E, 1e-15) {
 		t.Errorf("SE beside ln k: %v", p.UK)
 	}
 	// u(τ)/τ = u(k)/k; a factor stands over both columns.
 	p = read(t, "T/K,tau/s,u(tau)/s\n300,4,0.4\n310,5,0.5\n", Options{}).Points[0]
-	if p.K != 0.25 || !near(p.UK, 0.025, 1e-15) {
+	if p.K != 0.25 || !reference.Agrees(p.UK, 0.025, 1e-15) {
 		t.Errorf("u(tau): %v %v", p.K, p.UK)
 	}
 	p = read(t, "T/K,10^3 k/s^-1,SE\n300,4,0.4\n310,5,0.5\n", Options{}).Points[0]
@@ -466,7 +467,7 @@ func TestSeveralColumns(t *testing.T) {
 	}
 	// Units of two columns of one quantity differ.
 	s = read(t, "T/K,k/s^-1,ln(k/min^-1)\n300,1.00,4.094\n310,2.00,4.787\n", Options{})
-	if s.Points[0].K != 1 && !near(s.Points[0].K, 60, 1e-3) {
+	if s.Points[0].K != 1 && !reference.Agrees(s.Points[0].K, 60, 1e-3) {
 		t.Errorf("%+v", s.Points[0])
 	}
 }

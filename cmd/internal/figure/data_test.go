@@ -10,23 +10,8 @@ import (
 	"onebarrier/diagnostics"
 	"onebarrier/models"
 	"onebarrier/models/fit"
+	"onebarrier/models/reference"
 )
-
-// near fails unless got agrees with want to a relative tolerance; NaN never does.
-func near(t *testing.T, what string, got, want, tol float64) {
-	t.Helper()
-	if !(math.Abs(got-want) <= tol*math.Abs(want)) {
-		t.Errorf("%s = %.15g, want %.15g", what, got, want)
-	}
-}
-
-func TestNearCatchesNaN(t *testing.T) {
-	var probe testing.T
-	near(&probe, "NaN", math.NaN(), 1, 1)
-	if !probe.Failed() {
-		t.Error("NaN passed")
-	}
-}
 
 // sixRates is an invented set; the numbers expected of it are from R 4:
 //
@@ -62,17 +47,17 @@ func TestPointsOnEveryAxis(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		near(t, "x", d.Points[0].X, c.x, 1e-9)
-		near(t, "y", d.Points[0].Y, c.y, 1e-9)
+		reference.Close(t, "x", d.Points[0].X, c.x, 1e-9)
+		reference.Close(t, "y", d.Points[0].Y, c.y, 1e-9)
 		// Lines lie on the same axes: their cold end is at 300 K.
 		last := samples - 1
-		near(t, "cold end", d.Lines[0].X[last], c.x, 1e-9)
+		reference.Close(t, "cold end", d.Lines[0].X[last], c.x, 1e-9)
 		unit := 1.0
 		if c.opt.Y == "lg" {
 			unit = math.Ln10
 		}
-		near(t, "line", d.Lines[0].Y[last]*unit, -4.591119866805791, 1e-12)
-		near(t, "difference is in ln k on any axis", d.Points[0].Residual, 0.00575230811388983, 1e-10)
+		reference.Close(t, "line", d.Lines[0].Y[last]*unit, -4.591119866805791, 1e-12)
+		reference.Close(t, "difference is in ln k on any axis", d.Points[0].Residual, 0.00575230811388983, 1e-10)
 	}
 }
 
@@ -97,17 +82,17 @@ func TestStraightBandAgainstR(t *testing.T) {
 		{"lower at 300 K", l.Lower[last], -4.644167946041321},
 		{"upper at 300 K", l.Upper[last], -4.538071787570260},
 	} {
-		near(t, c.what, c.got, c.want, 1e-11)
+		reference.Close(t, c.what, c.got, c.want, 1e-11)
 	}
 	for i, want := range []float64{0.00575230811388983, 0.01702338950121643, -0.03536219606986588, 0.01299981371132783, -0.02135016475961707, 0.02093684950304886} {
-		near(t, "residual", d.Points[i].Residual, want, 1e-10)
+		reference.Close(t, "residual", d.Points[i].Residual, want, 1e-10)
 	}
 	// The straight line differs from itself by nothing, and by its band.
 	for i, v := range d.Differences[0].Y {
 		if v != 0 {
 			t.Fatalf("difference %d of the straight line is %g", i, v)
 		}
-		near(t, "band of the difference", d.Differences[0].Upper[i], l.Upper[i]-l.Y[i], 1e-9)
+		reference.Close(t, "band of the difference", d.Differences[0].Upper[i], l.Upper[i]-l.Y[i], 1e-9)
 	}
 }
 
@@ -131,10 +116,10 @@ func TestKnownSigmaBandClosedForm(t *testing.T) {
 	l := d.Lines[0]
 	for _, i := range []int{0, 40, samples - 1} {
 		dx := 1/l.T[i] - mean
-		near(t, "half-width", (l.Upper[i]-l.Lower[i])/2, 1.959963984540054*0.03*math.Sqrt(1./8+dx*dx/sxx), 1e-10)
+		reference.Close(t, "half-width", (l.Upper[i]-l.Lower[i])/2, 1.959963984540054*0.03*math.Sqrt(1./8+dx*dx/sxx), 1e-10)
 	}
-	near(t, "u(ln k)", d.Points[2].High-d.Points[2].Y, 0.03, 1e-10)
-	near(t, "u(ln k)", d.Points[2].Y-d.Points[2].Low, 0.03, 1e-10)
+	reference.Close(t, "u(ln k)", d.Points[2].High-d.Points[2].Y, 0.03, 1e-10)
+	reference.Close(t, "u(ln k)", d.Points[2].Y-d.Points[2].Low, 0.03, 1e-10)
 }
 
 func TestErrorBarsOfErrorsInK(t *testing.T) {
@@ -142,8 +127,8 @@ func TestErrorBarsOfErrorsInK(t *testing.T) {
 	d := &Arrhenius{}
 	x, y, _ := Options{}.axes()
 	p := d.point(row, fit.Absolute, nil, x, y)
-	near(t, "high", p.High, math.Log(2.5), 1e-14)
-	near(t, "low", p.Low, math.Log(1.5), 1e-14)
+	reference.Close(t, "high", p.High, math.Log(2.5), 1e-14)
+	reference.Close(t, "low", p.Low, math.Log(1.5), 1e-14)
 	row.UK = 3
 	if p = d.point(row, fit.Absolute, nil, x, y); !math.IsInf(p.Low, -1) {
 		t.Errorf("u(k) > k: low = %g, want -Inf", p.Low)
@@ -164,9 +149,9 @@ func TestEnergyAgainstR(t *testing.T) {
 	}
 	s, p := d.Lines[0], d.Lines[1]
 	last := samples - 1
-	near(t, "E", d.E, 69.6763646130437, 1e-11)
-	near(t, "E lower", s.Lower[17], 68.1885955002161, 1e-11)
-	near(t, "E upper", s.Upper[100], 71.1641337258713, 1e-11)
+	reference.Close(t, "E", d.E, 69.6763646130437, 1e-11)
+	reference.Close(t, "E lower", s.Lower[17], 68.1885955002161, 1e-11)
+	reference.Close(t, "E upper", s.Upper[100], 71.1641337258713, 1e-11)
 	for _, c := range []struct {
 		i                   int
 		value, lower, upper float64
@@ -174,11 +159,11 @@ func TestEnergyAgainstR(t *testing.T) {
 		{0, 71.5012626901, 64.9798647302, 78.02266065},
 		{last, 68.0405668014, 62.1444137767, 73.9367198261},
 	} {
-		near(t, "E_loc", p.Y[c.i], c.value, 1e-9)
-		near(t, "lower", p.Lower[c.i], c.lower, 1e-9)
-		near(t, "upper", p.Upper[c.i], c.upper, 1e-9)
+		reference.Close(t, "E_loc", p.Y[c.i], c.value, 1e-9)
+		reference.Close(t, "lower", p.Lower[c.i], c.lower, 1e-9)
+		reference.Close(t, "upper", p.Upper[c.i], c.upper, 1e-9)
 	}
-	near(t, "T", s.X[0], 350, 1e-14)
+	reference.Close(t, "T", s.X[0], 350, 1e-14)
 	if d.Wedge != nil {
 		t.Error("tolerance drawn for an unresolved verdict")
 	}
@@ -193,10 +178,10 @@ func TestToleranceWedge(t *testing.T) {
 	if len(d.Wedge) != 3 {
 		t.Fatalf("wedge %+v", d.Wedge)
 	}
-	near(t, "height at 300 K", d.Wedge[0].Upper-d.E, 1.6, 1e-12)
-	near(t, "height at 350 K", d.E-d.Wedge[2].Lower, 2.4, 1e-12)
-	near(t, "T_eff", d.Wedge[1].T, 320, 0)
-	near(t, "no height at T_eff", d.Wedge[1].Upper, d.E, 0)
+	reference.Close(t, "height at 300 K", d.Wedge[0].Upper-d.E, 1.6, 1e-12)
+	reference.Close(t, "height at 350 K", d.E-d.Wedge[2].Lower, 2.4, 1e-12)
+	reference.Close(t, "T_eff", d.Wedge[1].T, 320, 0)
+	reference.Close(t, "no height at T_eff", d.Wedge[1].Upper, d.E, 0)
 }
 
 func TestChosenCurves(t *testing.T) {
@@ -349,7 +334,7 @@ func TestNoBandWithoutDegreesOfFreedom(t *testing.T) {
 		t.Errorf("quantile %g with no degrees of freedom, want NaN", q)
 	}
 	// qt(.975, 4) of R.
-	near(t, "t quantile", quantile(&fit.Result{Model: fit.Scaled, Nu: 4}, 0.95), 2.776445, 1e-6)
+	reference.Close(t, "t quantile", quantile(&fit.Result{Model: fit.Scaled, Nu: 4}, 0.95), 2.776445, 1e-6)
 }
 
 func TestMeansAndSources(t *testing.T) {
@@ -361,7 +346,7 @@ func TestMeansAndSources(t *testing.T) {
 	if len(d.Means) != 6 || len(d.Points) != 18 {
 		t.Fatalf("%d means of %d points, want 6 of 18", len(d.Means), len(d.Points))
 	}
-	near(t, "mean", d.Means[0].Y, (d.Points[0].Y+d.Points[1].Y+d.Points[2].Y)/3, 1e-12)
+	reference.Close(t, "mean", d.Means[0].Y, (d.Points[0].Y+d.Points[1].Y+d.Points[2].Y)/3, 1e-12)
 	if d, err = NewArrhenius(cases()["leftout"].assess(t), Options{}); err != nil {
 		t.Fatal(err)
 	}
