@@ -57,10 +57,7 @@ func TestSameBytesForAnyNumberOfWorkers(t *testing.T) {
 				t.Errorf("%s: %d workers give another result than 1", scheme, workers)
 			}
 		}
-		o, err := Run(context.Background(), linearInput(s), Options{Scheme: scheme, Resamples: 999, Seed: 43, Methods: Methods})
-		if err != nil {
-			t.Fatal(err)
-		}
+		o := mustRun(t, linearInput(s), Options{Scheme: scheme, Resamples: 999, Seed: 43, Methods: Methods})
 		if reflect.DeepEqual(o, first) {
 			t.Errorf("%s: another seed gives the same result", scheme)
 		}
@@ -71,15 +68,9 @@ func TestSameBytesForAnyNumberOfWorkers(t *testing.T) {
 func TestSharesDoNotDependOnTargets(t *testing.T) {
 	s := testSample(t, fit.Relative, 9, 0.03, 1)
 	in := linearInput(s)
-	with, err := Run(context.Background(), in, Options{Resamples: 999})
-	if err != nil {
-		t.Fatal(err)
-	}
+	with := mustRun(t, in, Options{Resamples: 999})
 	in.Targets = nil
-	without, err := Run(context.Background(), in, Options{Resamples: 999})
-	if err != nil {
-		t.Fatal(err)
-	}
+	without := mustRun(t, in, Options{Resamples: 999})
 	if !reflect.DeepEqual(with.States, without.States) || !reflect.DeepEqual(with.FirstCurve, without.FirstCurve) {
 		t.Errorf("states %v and %v, first places %v and %v", with.States, without.States, with.FirstCurve, without.FirstCurve)
 	}
@@ -186,10 +177,7 @@ func TestFailedRefitsAreCounted(t *testing.T) {
 	in.Weights = []float64{1, 0}
 	in.Refitter = constantRefitter{func(y []float64) bool { return y[0] > in.Fits[0].Fitted[0] }}
 	in.NewJudge = func() Judge { return func([]float64, []int, *fit.Refit) int { return 1 } }
-	o, err := Run(context.Background(), in, Options{Scheme: Parametric})
-	if err != nil {
-		t.Fatal(err)
-	}
+	o := mustRun(t, in, Options{Scheme: Parametric})
 	reference.Within(t, "failed", float64(o.Failed), 9999./2, 4*math.Sqrt(9999./4))
 	if o.Failed+o.States[1] != 9999 || sum(o.FirstCurve)+o.Failed != 9999 {
 		t.Errorf("failed %d, states %v, first %v of 9999", o.Failed, o.States, o.FirstCurve)
@@ -213,18 +201,12 @@ func TestGeneratingWeights(t *testing.T) {
 		}
 	}
 	in.Refitter = constantRefitter{}
-	o, err := Run(context.Background(), in, Options{Scheme: Wild})
-	if err != nil {
-		t.Fatal(err)
-	}
+	o := mustRun(t, in, Options{Scheme: Wild})
 	// Wild moves the straight fit's value by ± its residual, which may bring it
 	// onto the other curve: so count those that cannot be straight by how often
 	// straight alone gives state 1.
 	in.Weights = []float64{1, 0}
-	alone, err := Run(context.Background(), in, Options{Scheme: Wild})
-	if err != nil {
-		t.Fatal(err)
-	}
+	alone := mustRun(t, in, Options{Scheme: Wild})
 	want := 0.7 + 0.3*float64(alone.States[1])/9999
 	reference.Within(t, "share of power-prefactor", float64(o.States[1])/9999, want, 4*math.Sqrt(0.25/9999))
 }
@@ -511,10 +493,7 @@ func TestPairsWithinTemperatures(t *testing.T) {
 		reference.Within(t, "mean", stat.Mean(draws[g], nil), stat.Mean(x, nil), 4*sd/math.Sqrt(b))
 		reference.Within(t, "sd", stat.StdDev(draws[g], nil), sd, 4*sd*math.Sqrt(1./b))
 	}
-	o, err := Run(context.Background(), in, Options{Scheme: Pairs, Methods: Methods})
-	if err != nil {
-		t.Fatal(err)
-	}
+	o := mustRun(t, in, Options{Scheme: Pairs, Methods: Methods})
 	if o.Failed != 0 || sum(o.States) != 9999 {
 		t.Errorf("failed %d, states %v", o.Failed, o.States)
 	}
@@ -585,10 +564,7 @@ func TestDegeneratePairs(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	o, err := Run(context.Background(), linearInput(s), Options{Scheme: Pairs})
-	if err != nil {
-		t.Fatal(err)
-	}
+	o := mustRun(t, linearInput(s), Options{Scheme: Pairs})
 	// Inclusion and exclusion over missing groups of 4, 1 and 3 of 8 entries.
 	pow := func(m int) float64 { return math.Pow(float64(m)/8, 8) }
 	three := 1 - pow(4) - pow(7) - pow(5) + pow(3) + pow(1) + pow(4)
@@ -613,10 +589,7 @@ func TestCoverage(t *testing.T) {
 		s := testSample(t, fit.Relative, 6, 0.03, uint64(set)+100)
 		in := Input{Sample: s, Fits: []*fit.Result{fit.Fit(s, models.Straight())}}
 		in.Targets = DefaultTargets(s, in.Fits)[1:]
-		o, err := Run(context.Background(), in, Options{Resamples: 999, Seed: uint64(set), Methods: Methods})
-		if err != nil {
-			t.Fatal(err)
-		}
+		o := mustRun(t, in, Options{Resamples: 999, Seed: uint64(set), Methods: Methods})
 		for _, iv := range o.target(t, "E").Intervals {
 			hit := 0
 			if iv.Lower <= trueE && trueE <= iv.Upper {
@@ -676,14 +649,8 @@ func TestInK(t *testing.T) {
 		}
 		for _, scheme := range Schemes {
 			opt.Scheme = scheme
-			oa, err := Run(context.Background(), a, opt)
-			if err != nil {
-				t.Fatal(err)
-			}
-			ob, err := Run(context.Background(), b, opt)
-			if err != nil {
-				t.Fatal(err)
-			}
+			oa := mustRun(t, a, opt)
+			ob := mustRun(t, b, opt)
 			for i, ra := range oa.Targets {
 				rb := ob.Targets[i]
 				if rb.Failed != ra.Failed || rb.Flat != ra.Flat {
@@ -733,10 +700,7 @@ func TestTargetsThatHaveNoInterval(t *testing.T) {
 	s := testSample(t, fit.Relative, 3, 0.03, 1)
 	in := linearInput(s) // power-prefactor has ν = 0
 	in.Targets = append(DefaultTargets(s, in.Fits[:1]), Target{Curve: 1, Name: "n", W: []float64{0, 0, 1}})
-	o, err := Run(context.Background(), intervalsOnly(in), Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
+	o := mustRun(t, intervalsOnly(in), Options{})
 	if r := o.target(t, "n"); r.Note == "" || r.Intervals != nil || !math.IsNaN(r.Estimate) {
 		t.Errorf("%+v", r)
 	}
@@ -751,10 +715,7 @@ func TestFlatResamples(t *testing.T) {
 	s := testSample(t, fit.Relative, 4, 0.03, 1)
 	in := intervalsOnly(linearInput(s))
 	in.Targets = in.Targets[1:2]
-	o, err := Run(context.Background(), in, Options{Scheme: Residual})
-	if err != nil {
-		t.Fatal(err)
-	}
+	o := mustRun(t, in, Options{Scheme: Residual})
 	r := o.target(t, "E")
 	p := 4 / math.Pow(4, 4)
 	reference.Within(t, "flat", float64(r.Flat), 9999*p, 4*math.Sqrt(9999*p))

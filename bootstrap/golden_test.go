@@ -1,7 +1,6 @@
 package bootstrap
 
 import (
-	"context"
 	"fmt"
 	"math"
 	"slices"
@@ -250,10 +249,7 @@ func TestParametricIsExact(t *testing.T) {
 	}
 	for _, s := range []*fit.Sample{relative, stated} {
 		in := intervalsOnly(linearInput(s))
-		o, err := Run(context.Background(), in, Options{Scheme: Parametric, Resamples: 99999, Methods: Methods})
-		if err != nil {
-			t.Fatal(err)
-		}
+		o := mustRun(t, in, Options{Scheme: Parametric, Resamples: 99999, Methods: Methods})
 		for _, name := range []string{"ln_A", "E", "n", "change_of_E"} {
 			r := o.target(t, name)
 			f := in.Fits[r.Curve]

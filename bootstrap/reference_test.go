@@ -1,6 +1,7 @@
 package bootstrap
 
 import (
+	"context"
 	"math"
 	"testing"
 
@@ -164,6 +165,15 @@ func linearInput(s *fit.Sample) Input {
 func intervalsOnly(in Input) Input {
 	in.NewJudge, in.Refitter = nil, nil
 	return in
+}
+
+func mustRun(t testing.TB, in Input, opt Options) *Output {
+	t.Helper()
+	o, err := Run(context.Background(), in, opt)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return o
 }
 
 func (o *Output) target(t testing.TB, name string) TargetResult {

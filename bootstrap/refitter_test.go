@@ -1,7 +1,6 @@
 package bootstrap
 
 import (
-	"context"
 	"math"
 	"reflect"
 	"testing"
@@ -69,10 +68,7 @@ func TestDefaultCandidates(t *testing.T) {
 		for _, scheme := range Schemes {
 			var first *Output
 			for _, workers := range []int{1, 2} {
-				o, err := Run(context.Background(), in, Options{Scheme: scheme, Resamples: 999, Workers: workers})
-				if err != nil {
-					t.Fatal(err)
-				}
+				o := mustRun(t, in, Options{Scheme: scheme, Resamples: 999, Workers: workers})
 				if first != nil && !reflect.DeepEqual(o, first) {
 					t.Errorf("%s %s: workers matter", c.set, scheme)
 				}
@@ -109,14 +105,8 @@ func TestRefitterAgainstReference(t *testing.T) {
 		b.Refitter = fit.NewRefitter(s, []models.Curve{models.Straight(), models.PowerPrefactor{}}, b.Fits, fit.RefitOptions{Penalty: a.Refitter.(*referenceRefitter).penalty})
 		for _, scheme := range Schemes {
 			opt := Options{Scheme: scheme, Resamples: 199, Methods: Methods}
-			oa, err := Run(context.Background(), a, opt)
-			if err != nil {
-				t.Fatal(err)
-			}
-			ob, err := Run(context.Background(), b, opt)
-			if err != nil {
-				t.Fatal(err)
-			}
+			oa := mustRun(t, a, opt)
+			ob := mustRun(t, b, opt)
 			if !reflect.DeepEqual(oa.States, ob.States) || !reflect.DeepEqual(oa.FirstCurve, ob.FirstCurve) || oa.Failed != ob.Failed {
 				t.Errorf("%s %s: states %v and %v, first %v and %v, failed %d and %d", s.Model, scheme,
 					oa.States, ob.States, oa.FirstCurve, ob.FirstCurve, oa.Failed, ob.Failed)

@@ -2,15 +2,14 @@ package fit
 
 import (
 	"bufio"
-	"encoding/csv"
 	"fmt"
 	"math"
 	"math/big"
 	"os"
-	"path/filepath"
-	"strconv"
 	"strings"
 	"testing"
+
+	"onebarrier/models/reference"
 )
 
 // The NIST Statistical Reference Datasets, https://www.itl.nist.gov/div898/strd/:
@@ -19,7 +18,6 @@ import (
 //	go test ./models/fit -run TestStRD -v
 //
 // for the table of digits reached.
-const published = "../../testdata/published"
 
 // digits is the number of correct digits, -log10 of the relative error, at most
 // most; NaN scores 0.
@@ -54,48 +52,17 @@ type strdSet struct {
 	rows          [][]float64 // y first
 }
 
-func readCSV(t testing.TB, path string) []map[string]string {
-	t.Helper()
-	f, err := os.Open(path)
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	records, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
-	var rows []map[string]string
-	for _, rec := range records[1:] {
-		m := map[string]string{}
-		for i, h := range records[0] {
-			m[h] = rec[i]
-		}
-		rows = append(rows, m)
-	}
-	return rows
-}
-
-func number(t testing.TB, s string) float64 {
-	t.Helper()
-	v, err := strconv.ParseFloat(strings.TrimSpace(s), 64)
-	if err != nil {
-		t.Fatal(err)
-	}
-	return v
-}
-
 func readStRD(t testing.TB, kind string) []*strdSet {
 	t.Helper()
 	var sets []*strdSet
 	by := map[string]*strdSet{}
-	for _, row := range readCSV(t, filepath.Join(published, "nist", "certified_summary.csv")) {
+	for _, row := range reference.Records(t, "nist/certified_summary.csv") {
 		if row["kind"] != kind {
 			continue
 		}
-		s := &strdSet{name: row["dataset"], rss: number(t, row["rss"])}
+		s := &strdSet{name: row["dataset"], rss: reference.Number(t, row["rss"])}
 		sets, by[s.name] = append(sets, s), s
-		f, err := os.Open(filepath.Join(published, "nist", kind, s.name+".dat"))
+		f, err := os.Open(reference.Path("nist/" + kind + "/" + s.name + ".dat"))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -107,26 +74,26 @@ func readStRD(t testing.TB, kind string) []*strdSet {
 			}
 			var r []float64
 			for _, w := range fields {
-				r = append(r, number(t, w))
+				r = append(r, reference.Number(t, w))
 			}
 			s.rows = append(s.rows, r)
 		}
 		f.Close()
-		if want := number(t, row["n"]); float64(len(s.rows)) != want {
+		if want := reference.Number(t, row["n"]); float64(len(s.rows)) != want {
 			t.Fatalf("%s: read %d rows, want %g", s.name, len(s.rows), want)
 		}
 	}
-	for _, row := range readCSV(t, filepath.Join(published, "nist", "certified_params.csv")) {
+	for _, row := range reference.Records(t, "nist/certified_params.csv") {
 		if row["kind"] != kind {
 			continue
 		}
 		s := by[row["dataset"]]
 		if kind == "nonlinear" {
-			s.start[0] = append(s.start[0], number(t, row["start1"]))
-			s.start[1] = append(s.start[1], number(t, row["start2"]))
+			s.start[0] = append(s.start[0], reference.Number(t, row["start1"]))
+			s.start[1] = append(s.start[1], reference.Number(t, row["start2"]))
 		}
-		s.certified = append(s.certified, number(t, row["certified"]))
-		s.sd = append(s.sd, number(t, row["certified_sd"]))
+		s.certified = append(s.certified, reference.Number(t, row["certified"]))
+		s.sd = append(s.sd, reference.Number(t, row["certified_sd"]))
 	}
 	return sets
 }

@@ -88,6 +88,19 @@ func run(t *testing.T, stdin string, args ...string) (code int, out, errOut stri
 	return code, o.String(), e.String()
 }
 
+// contents is what a file holds; "" for no file.
+func contents(t *testing.T, name string) string {
+	t.Helper()
+	if name == "" {
+		return ""
+	}
+	b, err := os.ReadFile(name)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return string(b)
+}
+
 // splitCommand splits a command line as far as examples need it: words, single
 // quotes, < FILE and > FILE.
 func splitCommand(line string) (args []string, stdin, stdout string) {
@@ -155,14 +168,7 @@ func TestHelpExamples(t *testing.T) {
 				if len(args) == 0 || args[0] != "onebarrier" {
 					t.Fatalf("%q is no command line of onebarrier", line)
 				}
-				in := ""
-				if stdin != "" {
-					b, err := os.ReadFile(stdin)
-					if err != nil {
-						t.Fatal(err)
-					}
-					in = string(b)
-				}
+				in := contents(t, stdin)
 				code, out, errOut := run(t, in, args[1:]...)
 				if code != exitDone || (out == "" && !strings.Contains(line, "--quiet")) {
 					t.Errorf("exit code %d, %d bytes on stdout, stderr:\n%s", code, len(out), errOut)
@@ -232,14 +238,7 @@ func runReadme(t *testing.T, command string) (lines []string, known bool) {
 	if len(args) == 0 || args[0] != "onebarrier" {
 		return nil, false
 	}
-	in := ""
-	if stdin != "" {
-		b, err := os.ReadFile(stdin)
-		if err != nil {
-			t.Fatal(err)
-		}
-		in = string(b)
-	}
+	in := contents(t, stdin)
 	for i, a := range args { // pictures are not left in the repository
 		if i > 0 && args[i-1] == "--figures" {
 			dir := t.TempDir()
