@@ -328,3 +328,26 @@ func TestParallelProfileOpen(t *testing.T) {
 		t.Errorf("E1: %+v, want an interval about 60 kJ/mol", e)
 	}
 }
+
+// Computed data of two paths have no scatter: their profile is a point, and looking
+// for its ends must end.
+func TestParallelProfileWithoutScatter(t *testing.T) {
+	var temp, k, v []float64
+	for i := range 11 {
+		ti := 280 + 10*float64(i)
+		temp, v = append(temp, ti), append(v, 1)
+		k = append(k, 1e12*math.Exp(-66.4e3/(models.GasConstant*ti))+1e19*math.Exp(-131e3/(models.GasConstant*ti)))
+	}
+	s, err := NewSample(Relative, temp, k, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	r := Fit(s, models.Parallel{})
+	for param, want := range map[string]float64{"E1": 66.4e3, "E2": 131e3} {
+		e := ProfileShaped(s, r, param, 0.95)
+		reference.Close(t, param, e.Value, want, 1e-9)
+		if e.Lower != e.Value || e.Upper != e.Value {
+			t.Errorf("%s: from %g to %g", param, e.Lower, e.Upper)
+		}
+	}
+}

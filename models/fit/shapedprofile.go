@@ -40,7 +40,8 @@ func ProfileShaped(s *Sample, r *Result, param string, confidence float64) Estim
 	if !s.Model.KnownSigma() {
 		rise *= smin / float64(r.Nu)
 	}
-	if smin <= f.k.floor {
+	// What looks like scatter here is rounding, in which no end can be found.
+	if smin <= float64(s.Len())*square(1e-12*maxAbsWhitened(s)) {
 		e.Lower, e.Upper = f.estimate, f.estimate
 		return e
 	}
@@ -244,7 +245,10 @@ func (f *shapedProfile) end(step, smin, rise float64) (limit float64, ok bool) {
 	limit = math.Max(f.lo, math.Min(f.hi, f.estimate+math.Copysign(f.reach, step)))
 	c, d := f.c, f.d
 	inside, dInside := f.estimate, -math.Sqrt(rise)
-	for (limit-inside)*step > 0 {
+	for range 200 { // steps double: what is not found by then lies at the limit
+		if (limit-inside)*step <= 0 {
+			break
+		}
 		theta := inside + step
 		if (theta-limit)*step > 0 {
 			theta = limit
