@@ -136,25 +136,6 @@ func TestAssessStatedAgainstR(t *testing.T) {
 	reference.Close(t, "u(E)", math.Sqrt(a.Fits["straight"].Cov[3]), want("arr", "E_se_known"), 1e-9)
 }
 
-// Bodenstein's hydrogen iodide: the decomposition is curved at 5 %, the formation is
-// not far from it (R lm, golden_opendata.csv). Daniels and Johnston's N2O5: E as
-// published, 103 kJ/mol, and no curvature found.
-func TestAssessClassicMeasurements(t *testing.T) {
-	c := reference.Table(t, "handbook/hi_bodenstein.csv", "T_K", "k_dec_L_mol_s")
-	a := mustAssess(t, setOf(c[0], c[1], nil), quick())
-	if !a.Verdict.State.Curved() || a.Verdict.ETrend != "rises" {
-		t.Errorf("decomposition of HI: %s, E %s", a.Verdict.State, a.Verdict.ETrend)
-	}
-	c = reference.Table(t, "handbook/n2o5_daniels_johnston.csv", "T_K", "k_1_s")
-	a = mustAssess(t, setOf(c[0], c[1], nil), quick())
-	if a.Verdict.State.Curved() || a.Verdict.RecommendedCurve != "straight" {
-		t.Errorf("N2O5: %s, recommended %s", a.Verdict.State, a.Verdict.RecommendedCurve)
-	}
-	if e := a.Fits["straight"].P[1]; math.Round(e/1000) != 103 {
-		t.Errorf("N2O5: E = %.1f kJ/mol, published 103", e/1000)
-	}
-}
-
 func TestAssessIsTheSameForAnyNumberOfWorkers(t *testing.T) {
 	s := lineSet(9, 290, 350, 60e3, 0.03, 7)
 	var first []byte
