@@ -83,7 +83,8 @@ func withheld(f models.Form, q dataset.Quantity) string {
 // formEstimates reads a fit in every form of its curve. Standard errors follow from
 // the covariance of the fit through the form's Jacobian; intervals are those of
 // Student's t, or of the normal where σ is known. profiles, by symbol and in the
-// form's units, replace them where a profile interval was computed.
+// form's units, replace them where a profile interval was computed. A logarithm of A
+// has the unit of A, which is that of k in the file.
 func formEstimates(r *fit.Result, fr models.Frame, confidence float64, q dataset.Quantity, profiles map[string]fit.Estimate) []FormEstimate {
 	fr.TRef, fr.LnPerSecond = r.TRef, q.LnPerSecond
 	var out []FormEstimate
@@ -111,14 +112,75 @@ func formEstimates(r *fit.Result, fr models.Frame, confidence float64, q dataset
 			if p, ok := profiles[par.Symbol]; ok && withheld(f, q) == "" {
 				e = p
 			}
-			fe.Parameters = append(fe.Parameters, ParameterEstimate{par.Symbol, par.Name, par.Unit, NewEstimate(e)})
+			if par.Symbol == crossover {
+				if e = reciprocal(e); openBarrier(profiles) {
+					e = fit.Unknown()
+				}
+			}
+			unit := par.Unit
+			if unit == "k" {
+				unit = q.Unit
+			}
+			fe.Parameters = append(fe.Parameters, ParameterEstimate{par.Symbol, par.Name, unit, NewEstimate(e)})
 		}
 		if fe.Withheld == "" && r.Cov != nil {
 			fe.Covariance = propagate(jac, r.Cov, len(f.Params), np)
+			for i, p := range fe.Parameters {
+				for j := range fe.Parameters {
+					if !p.Value.Known() {
+						fe.Covariance[i][j], fe.Covariance[j][i] = Real(math.NaN()), Real(math.NaN())
+					}
+				}
+			}
 		}
 		out = append(out, fe)
 	}
 	return out
+}
+
+// crossover is the symbol of the temperature at which two paths are equally fast.
+const crossover = "T_x"
+
+// openBarrier reports whether the data leave a barrier without a bound. Where the
+// paths cross is then not bounded either, whatever the covariance says.
+func openBarrier(profiles map[string]fit.Estimate) bool {
+	return profiles["E1"].Open != fit.OpenNone || profiles["E2"].Open != fit.OpenNone
+}
+
+// OpenBarriers names the barriers that have an open end, which leave the crossover
+// without a bound: "E2", "E1 and E2", or "".
+func (f FormEstimate) OpenBarriers() string {
+	var names []string
+	for _, p := range f.Parameters {
+		if p.Open != nil && (p.Symbol == "E1" || p.Symbol == "E2") {
+			names = append(names, p.Symbol)
+		}
+	}
+	return strings.Join(names, " and ")
+}
+
+// reciprocal turns the delta-method interval of a temperature into that of its
+// reciprocal, read backwards. 1/T_x is a ratio of functions linear in the
+// parameters and much closer to normal than T_x; the interval never reaches 0 K,
+// and is open where 1/T reaches 0.
+func reciprocal(e fit.Estimate) fit.Estimate {
+	x := 1 / e.Value
+	half := (e.Upper - e.Value) * x * x
+	e.Lower, e.Upper = 1/(x+half), 1/(x-half)
+	if half >= x {
+		e.Upper, e.Open = math.Inf(1), fit.OpenUpper
+	}
+	return e
+}
+
+// exponential is the estimate of e^x from that of x.
+func exponential(ln fit.Estimate) fit.Estimate {
+	v := math.Exp(ln.Value)
+	e := fit.Estimate{Value: v, StdError: v * ln.StdError, Lower: math.Exp(ln.Lower), Upper: math.Exp(ln.Upper), Open: ln.Open}
+	if ln.Open == fit.OpenLower || ln.Open == fit.OpenBoth {
+		e.Lower = math.NaN() // unknown, and not the 0 that e^-∞ would give
+	}
+	return e
 }
 
 // propagate returns J C Jᵀ for J (m x n) and C (n x n).
@@ -163,10 +225,14 @@ func eLocAt(r *fit.Result, t, confidence float64) fit.Estimate {
 // atReference states k at the reference temperature. Its interval is that of ln k;
 // f = exp u(ln k). g is the smallest number >= 0 for which
 // f(T) = f(T_ref) exp|g (1/T - 1/T_ref)| is nowhere in the measured range below
-// exp u(ln k(T)).
+// exp u(ln k(T)). Without a fit all but the temperature is unknown.
 func atReference(r *fit.Result, tRef, confidence, tMin, tMax float64) AtReference {
+	extrapolated := tRef < tMin || tRef > tMax
+	if r == nil {
+		nan := Real(math.NaN())
+		return AtReference{T: Real(tRef), K: NewEstimate(fit.Unknown()), F: nan, G: nan, Extrapolated: extrapolated}
+	}
 	ln := lnKAt(r, tRef, confidence)
-	k := math.Exp(ln.Value)
 	g := 0.0
 	const steps = 256
 	for i := range steps + 1 {
@@ -178,20 +244,23 @@ func atReference(r *fit.Result, tRef, confidence, tMin, tMax float64) AtReferenc
 		}
 	}
 	return AtReference{
-		T: Real(tRef),
-		K: NewEstimate(fit.Estimate{
-			Value: k, StdError: k * ln.StdError, Lower: math.Exp(ln.Lower), Upper: math.Exp(ln.Upper),
-		}),
+		T: Real(tRef), K: NewEstimate(exponential(ln)),
 		F: Real(math.Exp(ln.StdError)), G: Real(g),
-		Extrapolated: tRef < tMin || tRef > tMax,
+		Extrapolated: extrapolated,
 		Curve:        r.Curve.Info().Name,
 	}
 }
 
 // toPublish is what publish needs to know.
 type toPublish struct {
-	// Fit is the recommended curve, or the straight line where there is none.
+	// Fit is the recommended curve; nil where none of the candidates is.
 	Fit *fit.Result
+	// Power is the fit of power-prefactor, which tells how E changes where no
+	// curve is recommended, and whether it passes its adequacy test.
+	Power         *fit.Result
+	PowerAdequate *bool
+	// Exact says that the fit leaves no scatter.
+	Exact bool
 	// Eyring is the fit of linear-prefactor, whose ΔH‡ and ΔS‡ stand beside the
 	// E_a of a straight line; nil if it was not fitted.
 	Eyring     *fit.Result
@@ -228,8 +297,16 @@ func publish(in toPublish) Publish {
 	case StyleElectronvolt:
 		w.energy = UnitOfEnergy("eV")
 	}
-	w.fitted()
-	out := Publish{Style: in.Style, Curve: in.Fit.Curve.Info().Name, Lines: w.lines, Notes: w.notes}
+	out := Publish{Style: in.Style}
+	if in.Fit == nil {
+		w.none()
+	} else {
+		out.Curve = in.Fit.Curve.Info().Name
+		w.rounding = roundingOf(in.Fit, nil, in.Confidence)
+		w.rounding.Exact = in.Exact
+		w.fitted()
+	}
+	out.Lines, out.Notes = w.lines, w.notes
 	if out.Lines == nil {
 		out.Lines = []PublishLine{}
 	}
@@ -238,27 +315,60 @@ func publish(in toPublish) Publish {
 
 // publisher writes the lines.
 type publisher struct {
-	in     toPublish
-	energy EnergyUnit
-	symbol string // of the rate constant
-	lines  []PublishLine
-	notes  []string
+	in       toPublish
+	energy   EnergyUnit
+	symbol   string // of the rate constant
+	rounding Rounding
+	lines    []PublishLine
+	notes    []string
 }
 
 func (w *publisher) note(format string, args ...any) {
 	w.notes = append(w.notes, fmt.Sprintf(format, args...))
 }
 
-// fitted writes everything.
+const bracketsNote = "brackets hold the standard uncertainty of the last digits; U = 2u"
+
+// none says what can be published where no curve is recommended: how E changes by
+// power-prefactor, which is fitted always, and no parameters of a rejected curve.
+func (w *publisher) none() {
+	w.note("none of the candidates is recommended: a pair of A and E would mislead")
+	r := w.in.Power
+	if r != nil && r.Status == fit.Converged {
+		w.rounding = roundingOf(r, nil, w.in.Confidence)
+		for _, t := range []float64{w.in.TMin, w.in.TMax} {
+			w.energyLine("E_a", eLocAt(r, t, w.in.Confidence), fmt.Sprintf("at %s K by power-prefactor", fixed(t, 0, 0)))
+		}
+		w.note(bracketsNote)
+		if w.in.PowerAdequate != nil && !*w.in.PowerAdequate {
+			w.note("power-prefactor fails its adequacy test as well: its E_a tell the trend, and their uncertainties are too small; k at the reference temperature is not stated")
+		} else {
+			w.note("k at the reference temperature is by power-prefactor, which is not recommended")
+		}
+	}
+	w.measuredRange()
+}
+
+// measuredRange adds the range in which all the rest holds.
+func (w *publisher) measuredRange() {
+	w.add(PublishLine{Symbol: "range", Unit: "K", Estimate: NewEstimate(fit.Unknown()),
+		Text: fmt.Sprintf("%s to %s K", kelvinText(w.in.TMin), kelvinText(w.in.TMax))})
+}
+
+// fitted writes everything about the recommended curve.
 func (w *publisher) fitted() {
 	r := w.in.Fit
 	if r.Status != fit.Converged {
 		w.note("%s: %s; no parameters are stated", r.Status, r.Reason)
 		return
 	}
-	w.note("brackets hold the standard uncertainty of the last digits; U = 2u")
-	if r.Cov == nil {
+	switch {
+	case w.in.Exact:
+		w.note("no scatter: no uncertainty")
+	case r.Cov == nil:
 		w.note("uncertainties are unknown: the fit leaves no degrees of freedom")
+	default:
+		w.note(bracketsNote)
 	}
 	switch c := r.Curve.(type) {
 	case models.FixedExponent:
@@ -291,10 +401,9 @@ func (w *publisher) fitted() {
 	}
 	w.unresolved()
 	w.recovery()
-	w.add(PublishLine{Symbol: "range", Unit: "K", Estimate: NewEstimate(fit.Unknown()),
-		Text: fmt.Sprintf("%s to %s K", kelvinText(w.in.TMin), kelvinText(w.in.TMax))})
+	w.measuredRange()
 	if r.Curve.Info().Name != "straight" {
-		w.note("intervals hold for the curve %s as given; that it was chosen from these data is not in them", r.Curve.Info().Name)
+		w.note("intervals take the curve %s as given, although these data chose it", r.Curve.Info().Name)
 	}
 }
 
@@ -309,34 +418,13 @@ func (e Estimate) fit() fit.Estimate {
 
 func (w *publisher) add(l PublishLine) { w.lines = append(w.lines, l) }
 
-// value adds a line for an estimate in its unit.
+// value adds a line for an estimate in its unit. U stands beside brackets only.
 func (w *publisher) value(symbol, unit string, e fit.Estimate, notes ...string) {
-	if u := 2 * e.StdError; u > 0 {
+	est := NewEstimate(e)
+	if u := 2 * e.StdError; u > 0 && !w.in.Exact && !w.rounding.lopsided(est) {
 		notes = append(notes, "U = "+twoDigits(u)+withUnit(unit))
 	}
-	w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: NewEstimate(e), Text: estimateText(e) + withUnit(unit), Note: joinNotes(notes...)})
-}
-
-// estimateText prints an estimate in GUM brackets, or with its interval where it
-// has no standard error.
-func estimateText(e fit.Estimate) string {
-	closed := !math.IsNaN(e.Lower) || !math.IsNaN(e.Upper)
-	if !math.IsNaN(e.StdError) || !closed || math.IsNaN(e.Value) {
-		return GUM(e.Value, e.StdError)
-	}
-	// Two digits of the wider arm decide how many decimals all three need.
-	arm := math.Max(e.Upper-e.Value, e.Value-e.Lower)
-	if math.IsNaN(arm) {
-		arm = math.Abs(e.Value) / 10
-	}
-	_, exp := split(arm, 2)
-	show := func(x float64) string {
-		if math.IsNaN(x) || math.IsInf(x, 0) {
-			return "open"
-		}
-		return fixed(x, 0, max(0, 1-exp))
-	}
-	return fmt.Sprintf("%s (%s to %s)", show(e.Value), show(e.Lower), show(e.Upper))
+	w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: est, Text: w.rounding.Text(est, unit), Note: joinNotes(notes...)})
 }
 
 func joinNotes(notes ...string) string {
@@ -388,31 +476,32 @@ func (w *publisher) eAt(t float64) {
 // are printed where that factor is close enough to 1 for them to be symmetric.
 func (w *publisher) prefactor(symbol string, ln fit.Estimate, note string) {
 	unit := w.in.Quantity.Unit
-	a := math.Exp(ln.Value)
-	e := fit.Estimate{Value: a, StdError: a * ln.StdError, Lower: math.Exp(ln.Lower), Upper: math.Exp(ln.Upper)}
+	e := exponential(ln)
 	l := PublishLine{Symbol: symbol, Unit: unit, Estimate: NewEstimate(e), Note: note}
 	const symmetric = 0.1
-	if u := ln.StdError; u <= symmetric && a > 0 && !math.IsInf(a, 0) {
-		l.Text = GUM(a, a*u) + withUnit(unit)
-	} else {
+	lnEstimate := NewEstimate(ln)
+	switch u, finite := ln.StdError, e.Value > 0 && !math.IsInf(e.Value, 0); {
+	case w.in.Exact && finite:
+		l.Text = w.rounding.Text(l.Estimate, unit)
+	case w.rounding.lopsided(lnEstimate):
+		low, high := ends(ln)
+		end := func(x float64) string {
+			if math.IsInf(x, 0) {
+				return "open"
+			}
+			return powerOfTen(x, math.Abs(x-ln.Value)/2)
+		}
+		l.Text = fmt.Sprintf("%s%s (%s to %s)", powerOfTen(ln.Value, u), withUnit(unit), end(low), end(high))
+	case u <= symmetric && finite:
+		l.Text = GUM(e.Value, e.StdError) + withUnit(unit)
+	default:
 		l.Text = powerOfTen(ln.Value, u) + withUnit(unit)
 		if !math.IsNaN(u) {
 			l.Text += " ×/÷ " + significant(math.Exp(u), 3, "")
 		}
 	}
 	w.add(l)
-	w.value("lg("+symbol+overUnit(unit)+")", "1", scaled(ln, 1/math.Ln10))
-}
-
-// overUnit writes /unit, with brackets around a product.
-func overUnit(unit string) string {
-	switch {
-	case unit == "":
-		return ""
-	case strings.ContainsAny(unit, " /·"):
-		return "/(" + unit + ")"
-	}
-	return "/" + unit
+	w.value("lg("+symbol+OverUnit(unit)+")", "1", scaled(ln, 1/math.Ln10))
 }
 
 // powerOfTen writes e^ln with the digits that an uncertainty u of ln leaves, also
@@ -565,6 +654,8 @@ func (w *publisher) form(f models.Form) {
 				w.prefactor(a, e, "")
 			case p.Unit == "kJ mol^-1":
 				w.energyLine(p.Symbol, e)
+			case p.Symbol == crossover && openBarrier(w.in.Profiles):
+				w.value(p.Symbol, p.Unit, e, "not bounded: an end of "+fe.OpenBarriers()+" is open")
 			default:
 				w.value(p.Symbol, p.Unit, e)
 			}
@@ -583,7 +674,7 @@ func (w *publisher) rate() {
 		note = "extrapolated"
 	}
 	w.value(w.symbol+at, w.in.Quantity.Unit, ref.K.fit(), note)
-	if w.in.Style != StyleEvaluated {
+	if w.in.Style != StyleEvaluated || w.in.Exact {
 		return
 	}
 	ln, e := lnKAt(r, t, c), scaled(eLocAt(r, t, c), w.energy.PerKJ)
@@ -622,7 +713,10 @@ func (w *publisher) unresolved() {
 		}
 		w.add(PublishLine{Symbol: "ΔE" + w.energy.Per, Unit: w.energy.Name, Estimate: NewEstimate(scaled(c.EChange.fit(), w.energy.PerKJ)),
 			Text: sign(lower) + " to " + sign(upper) + withUnit(w.energy.Name),
-			Note: fmt.Sprintf("%g %% interval of the change of E over the range", 100*w.in.Confidence)})
+			Note: fmt.Sprintf("%g %% interval of its change", 100*w.in.Confidence)})
+	}
+	if w.rounding = (Rounding{}); w.in.Power != nil {
+		w.rounding = roundingOf(w.in.Power, nil, w.in.Confidence)
 	}
 	for _, end := range []struct {
 		t float64
@@ -630,7 +724,7 @@ func (w *publisher) unresolved() {
 	}{{w.in.TMin, c.ELocTMin}, {w.in.TMax, c.ELocTMax}} {
 		if end.e.Value.Known() {
 			w.energyLine("E_a", end.e.fit(),
-				fmt.Sprintf("at %s K, if E changes with T (power-prefactor)", fixed(end.t, 0, 0)))
+				fmt.Sprintf("at %s K by power-prefactor", fixed(end.t, 0, 0)))
 		}
 	}
 }
@@ -641,10 +735,14 @@ func (w *publisher) unresolved() {
 func (w *publisher) recovery() {
 	r := w.in.Fit
 	tol := 5e-4
-	for i := range 65 {
-		t := w.in.TMin + (w.in.TMax-w.in.TMin)*float64(i)/64
-		if u := lnKAt(r, t, w.in.Confidence).StdError; u/100 < tol {
-			tol = math.Max(u/100, 1e-12)
+	if w.in.Exact {
+		tol = 5e-6 // u is rounding error
+	} else {
+		for i := range 65 {
+			t := w.in.TMin + (w.in.TMax-w.in.TMin)*float64(i)/64
+			if u := lnKAt(r, t, w.in.Confidence).StdError; u/100 < tol {
+				tol = math.Max(u/100, 1e-12)
+			}
 		}
 	}
 	// Each exponential has at most three rounded terms.
@@ -662,11 +760,14 @@ func (w *publisher) recovery() {
 		s := term(lnA, 1)
 		if n != 0 {
 			far := math.Max(math.Abs(math.Log(w.in.TMin/w.in.TRef)), math.Abs(math.Log(w.in.TMax/w.in.TRef)))
-			exponent := term(n, far)
+			exponent := term(n, far) + " "
 			if fixedN {
-				exponent = fmt.Sprint(n)
+				exponent = strings.ReplaceAll(fmt.Sprint(n), "-", "−") + " "
+				if math.Abs(n) == 1 {
+					exponent = strings.TrimSuffix(exponent, "1 ") // 1 ln x is ln x
+				}
 			}
-			s += plus(exponent) + " ln(T/" + kelvinText(w.in.TRef) + " K)"
+			s += plus(exponent + "ln(T/" + kelvinText(w.in.TRef) + " K)")
 		}
 		return "exp(" + s + plus(term(-b, 1/w.in.TMin)) + " K/T)"
 	}
@@ -686,6 +787,6 @@ func (w *publisher) recovery() {
 		w.note("to compute k(T), take the parameters of %s from the JSON", r.Curve.Info().Name)
 		return
 	}
-	w.add(PublishLine{Symbol: w.symbol + "(T)", Unit: w.in.Quantity.Unit, Estimate: NewEstimate(fit.Unknown()), Text: text + withUnit(w.in.Quantity.Unit),
-		Note: "with the digits that computing k(T) needs"})
+	w.add(PublishLine{Symbol: w.symbol + "(T)", Unit: w.in.Quantity.Unit, Estimate: NewEstimate(fit.Unknown()), Text: text + withUnit(w.in.Quantity.Unit)})
+	w.note("%s(T) has the digits that computing needs", w.symbol)
 }

@@ -160,7 +160,7 @@ func TestPublishN2O5(t *testing.T) {
 
 // The line k(T) must give the fitted curve back.
 func TestPublishedCurveRecoversRates(t *testing.T) {
-	path := regexp.MustCompile(`exp\(([−\d.]+)(?: ([+−]) ([\d.]+) ln\(T/([\d.]+) K\))? ([+−]) ([\d.]+) K/T\)`)
+	path := regexp.MustCompile(`exp\(([−\d.]+)(?: ([+−]) ([\d.]+ )?ln\(T/([\d.]+) K\))? ([+−]) ([\d.]+) K/T\)`)
 	num := func(s string) float64 {
 		x, err := strconv.ParseFloat(strings.ReplaceAll(s, "−", "-"), 64)
 		if err != nil {
@@ -185,8 +185,12 @@ func TestPublishedCurveRecoversRates(t *testing.T) {
 			var k float64
 			for _, m := range paths {
 				ln := num(m[1]) + num(m[5]+m[6])/ti
-				if m[3] != "" {
-					ln += num(m[2]+m[3]) * math.Log(ti/num(m[4]))
+				if m[4] != "" {
+					n := strings.TrimSpace(m[3])
+					if n == "" { // + ln(T/T_0)
+						n = "1"
+					}
+					ln += num(m[2]+n) * math.Log(ti/num(m[4]))
 				}
 				k += math.Exp(ln)
 			}
@@ -419,7 +423,7 @@ func TestUnresolvedSaysHowMuchEMayChange(t *testing.T) {
 	if got := line(t, p, "ΔE", "").Text; got != "−9 to +14 kJ/mol" {
 		t.Errorf("ΔE = %q", got)
 	}
-	if a, b := line(t, p, "E_a", fmt.Sprintf("%.0f K, if", in.TMin)).Text, line(t, p, "E_a", fmt.Sprintf("%.0f K, if", in.TMax)).Text; a != "51.2(2.1) kJ/mol" || b != "53.7(3.3) kJ/mol" {
+	if a, b := line(t, p, "E_a", fmt.Sprintf("%.0f K by power", in.TMin)).Text, line(t, p, "E_a", fmt.Sprintf("%.0f K by power", in.TMax)).Text; a != "51.2(2.1) kJ/mol" || b != "53.7(3.3) kJ/mol" {
 		t.Errorf("E_a at the ends: %q, %q", a, b)
 	}
 }
@@ -442,7 +446,7 @@ func TestPublishParallel(t *testing.T) {
 		"E2": {Value: 93.3, StdError: nan, Lower: 88.1, Upper: nan, Open: fit.OpenUpper},
 	}
 	p = publish(in)
-	if a, b := line(t, p, "E1", "").Text, line(t, p, "E2", "").Text; a != "22.10 (21.60 to 22.40) kJ/mol" || b != "93.3 (88.1 to open) kJ/mol" {
+	if a, b := line(t, p, "E1", "").Text, line(t, p, "E2", "").Text; a != "22.10 kJ/mol (21.60 to 22.40)" || b != "93.3 kJ/mol (88.1 to open)" {
 		t.Errorf("E1 = %q, E2 = %q", a, b)
 	}
 	if open := line(t, p, "E2", "").Open; open == nil || *open != "upper" {

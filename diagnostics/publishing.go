@@ -15,8 +15,8 @@ func (a *assessor) publishStyle() string {
 }
 
 // publishInto states every curve in its forms, k at the reference temperature, and
-// what to publish: the recommended curve, or the straight line where none of the
-// candidates fits.
+// what to publish: the recommended curve, or where there is none how E changes by
+// power-prefactor.
 func (a *assessor) publishInto(doc *Assessment) {
 	tRef := doc.Settings.ReferenceTemperature
 	fr := models.Frame{TForm: tRef}
@@ -30,18 +30,23 @@ func (a *assessor) publishInto(doc *Assessment) {
 		profiles[r.Curve] = a.profiles(f)
 		r.Forms = formEstimates(f, fr, a.opt.Confidence, a.set.Quantity, profiles[r.Curve])
 	}
-	f := doc.Fits[a.verdict.RecommendedCurve]
-	if f == nil {
-		f = a.straight
-	}
 	low, high := a.data.sample.Range()
-	doc.AtReference = atReference(f, tRef, a.opt.Confidence, low, high)
-	doc.Publish = publish(toPublish{
-		Fit: f, Eyring: a.eyring(), Quantity: a.set.Quantity, State: a.verdict.State,
+	in := toPublish{
+		Power: a.power, Eyring: a.eyring(), Quantity: a.set.Quantity, State: a.verdict.State,
 		TMin: low, TMax: high, TEff: a.tEff, TRef: tRef, Confidence: a.opt.Confidence,
 		Style: doc.Settings.PublishStyle, EnergyUnit: a.opt.EnergyUnit,
-		Curvature: doc.Curvature, Profiles: profiles[f.Curve.Info().Name],
-	})
+		Curvature: doc.Curvature,
+	}
+	atRef := a.power
+	if curve := a.verdict.RecommendedCurve; curve != "" {
+		in.Fit, in.Profiles = doc.Fits[curve], profiles[curve]
+		in.Exact = roundingOf(in.Fit, a.data.sample, a.opt.Confidence).Exact
+		atRef = in.Fit
+	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, NewPureError(a.data.single), a.data.basis == BasisMeans); in.PowerAdequate != nil && !*in.PowerAdequate {
+		atRef = nil
+	}
+	doc.AtReference = atReference(atRef, tRef, a.opt.Confidence, low, high)
+	doc.Publish = publish(in)
 	if !a.set.Quantity.Known && !a.set.Quantity.Diffusion {
 		a.find("eyring-withheld", "ΔS‡ and ΔG‡ are not stated: the unit of "+symbolOf(a.set.Quantity)+" was not understood", nil, nil)
 	}

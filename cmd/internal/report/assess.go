@@ -13,7 +13,9 @@ import (
 
 // WriteAssessment prints an assessment so that it is read in half a minute: the
 // verdict first, then what to publish, what the verdict rests on, the ranking,
-// the findings with their cures, the data, and what to do next. figures names
+// the findings, the data, and what to do next. Readings of curves that are neither
+// published nor rivals, and findings from which nothing follows, are left to the
+// document. figures names
 // the pictures that were written.
 func WriteAssessment(w io.Writer, a *diagnostics.Assessment, figures []string, t Text) error {
 	p := t.newPage()
@@ -55,34 +57,48 @@ func (p *page) verdict(a *diagnostics.Assessment) {
 		}
 		facts = append(facts, m)
 	}
-	facts = append(facts, "recommended curve: "+or(a.Verdict.RecommendedCurve, "none of the candidates fits"))
+	facts = append(facts, "recommended: "+or(a.Verdict.RecommendedCurve, "none of the candidates"))
 	p.section("verdict", append(lines, Wrap(strings.Join(facts, " · "), p.body())...)...)
 }
 
 func (p *page) publish(a *diagnostics.Assessment) {
 	const longest = 26 // of a value in a column; what is longer has its note below
+	var rows []diagnostics.PublishLine
 	symbols, values := 0, 0
 	for _, l := range a.Publish.Lines {
-		symbols = max(symbols, utf8.RuneCountInString(l.Symbol))
+		l.Text = strings.ReplaceAll(or(l.Text, unknown), " K/T", "\u00a0K/T")
+		l.Note = strings.ReplaceAll(l.Note, "U = ", "U\u00a0=\u00a0")
+		if l.Unit != "" {
+			l.Note = strings.ReplaceAll(l.Note, " "+l.Unit, "\u00a0"+strings.ReplaceAll(l.Unit, " ", "\u00a0"))
+		}
+		if strings.HasPrefix(l.Symbol, "lg(") && len(rows) > 0 && rows[len(rows)-1].Note == "" {
+			rows[len(rows)-1].Note = l.Symbol + "\u00a0= " + l.Text // lg A beside A
+			continue
+		}
+		rows = append(rows, l)
+	}
+	for _, l := range rows {
+		symbols = max(symbols, utf8.RuneCountInString(l.Symbol)+2)
 		if n := utf8.RuneCountInString(l.Text); n <= longest {
-			values = max(values, n)
+			values = max(values, n+2)
 		}
 	}
 	var lines []string
-	for _, l := range a.Publish.Lines {
-		value := strings.ReplaceAll(or(l.Text, unknown), " K/T", "\u00a0K/T")
-		head := pad(l.Symbol, symbols+2) + pad(value, values+2)
-		switch {
+	for _, l := range rows {
+		symbol, value := pad(l.Symbol, symbols), l.Text
+		switch n := utf8.RuneCountInString(value); {
 		case l.Note == "":
-			lines = append(lines, hang(pad(l.Symbol, symbols+2), symbols+2, value, p.body())...)
-		case utf8.RuneCountInString(value) > longest:
-			lines = append(lines, hang(pad(l.Symbol, symbols+2), symbols+2, value, p.body())...)
-			lines = append(lines, hang("", symbols+4, l.Note, p.body())...)
+			lines = append(lines, hang(symbol, symbols, value, p.body())...)
+		case n <= longest:
+			lines = append(lines, hang(symbol+pad(value, values), symbols+values, l.Note, p.body())...)
+		case symbols+n+2+utf8.RuneCountInString(l.Note) <= p.body():
+			lines = append(lines, symbol+value+"  "+l.Note)
 		default:
-			lines = append(lines, hang(head, symbols+values+4, l.Note, p.body())...)
+			lines = append(lines, hang(symbol, symbols, value, p.body())...)
+			lines = append(lines, hang("", symbols+2, l.Note, p.body())...)
 		}
 	}
-	p.section("publish", append(lines, wrapAll(a.Publish.Notes, p.body())...)...)
+	p.section("publish", append(lines, Wrap(strings.Join(a.Publish.Notes, " · "), p.body())...)...)
 }
 
 // fit sets rows as a table and wraps the last column where the page is too narrow.
@@ -120,33 +136,33 @@ func (p *page) test(a *diagnostics.Assessment) {
 	var rows [][]string
 	if c.EChange.Value.Known() {
 		rows = append(rows,
-			[]string{fmt.Sprintf("change of E, %s to %s K", kelvin(a.Dataset.TMin), kelvin(a.Dataset.TMax)),
+			[]string{"change of E over the range",
 				fmt.Sprintf("%s%s %s: %s)", signed(change.Value, d), energy, sure, interval(change, d))},
 			[]string{"too small to matter below", significant(c.ToleranceKJ*diagnostics.Real(e.PerKJ), 2) + energy},
 			[]string{"exponent n of T", fmt.Sprintf("%s %s: %s)", signed(c.Exponent.Value, nd), sure, interval(c.Exponent, nd))},
-			[]string{"p for n = 0", probability(c.PValue)},
-			[]string{fmt.Sprintf("p for n in %g..%g", band[0], band[1]), probability(c.PBand)})
+			[]string{fmt.Sprintf("p for n = 0; for n in %g..%g", band[0], band[1]), probability(c.PValue) + "; " + probability(c.PBand)})
 		if c.PScaleFree.Known() {
 			rows = append(rows, []string{"p without u(k) as stated", probability(c.PScaleFree)})
 		}
 	}
-	if detectable.Value.Known() {
-		dd := decimalsOf(detectable)
-		text := plain(detectable.Value, dd) + energy
-		if detectable.Lower.Known() || detectable.Upper.Known() {
-			text += fmt.Sprintf(" (%s to %s)", plain(detectable.Lower, dd), plain(detectable.Upper, dd))
-		}
-		rows = append(rows, []string{"seen with 80 % power", text})
+	if text := detected(detectable); text != "" {
+		rows = append(rows, []string{"seen with 80 % power", text + energy})
 	}
 	if pw := c.Pointwise; pw != nil {
-		rows = append(rows, []string{"the same on single points", fmt.Sprintf("n = %s, p = %s", signed(pw.Exponent.Value, nd), probability(pw.PValue))})
+		change := pw.EChange.Times(e.PerKJ)
+		rows = append(rows, []string{"the same on single points", fmt.Sprintf("n = %s, p = %s; change of E %s%s %s: %s)",
+			signed(pw.Exponent.Value, nd), probability(pw.PValue), signed(change.Value, d), energy, sure, interval(change, d))})
+	}
+	if c.EChange.Value.Known() {
+		rows = append(rows, runs(a)...)
 	}
 	if s := c.SecondBarrier; s != nil {
 		text := fmt.Sprintf("p = %s", probability(s.PValue))
 		if s.PValue < 0.05 && s.Crossover[0].Known() {
-			text += fmt.Sprintf(", crossover between %s and %s\u00a0K", plain(s.Crossover[0], 0), plain(s.Crossover[1], 0))
+			text += fmt.Sprintf(", crossover %s to %s\u00a0K", plain(s.Crossover[0], 0), plain(s.Crossover[1], 0))
 		}
-		rows = append(rows, []string{"second barrier, E rising", text})
+		rows = append(rows, []string{"second barrier, E rising", text},
+			[]string{"false alarm, straight data", falseAlarms(a.Dataset.Temperatures)})
 	}
 	if b := a.Bootstrap; b != nil {
 		for _, iv := range b.Intervals {
@@ -174,19 +190,72 @@ func (p *page) test(a *diagnostics.Assessment) {
 	p.section("test", p.fit(rows)...)
 }
 
+// falseAlarms is how often one of the two tests finds something in straight data
+// (METHODS; simulated).
+func falseAlarms(temperatures int) string {
+	if temperatures <= 4 {
+		return "9 % (verdict or second barrier)"
+	}
+	return "7–8 % (verdict or second barrier)"
+}
+
+// detected writes the smallest change that would be seen, or its interval alone
+// where σ is too badly known for more.
+func detected(e diagnostics.Estimate) string {
+	d := decimalsOf(e)
+	switch bounds := e.Lower.Known() && e.Upper.Known(); {
+	case !e.Value.Known() && bounds:
+		return plain(e.Lower, d) + " to " + plain(e.Upper, d)
+	case !e.Value.Known():
+		return ""
+	case bounds && e.Lower < e.Upper:
+		return fmt.Sprintf("%s (%s to %s)", plain(e.Value, d), plain(e.Lower, d), plain(e.Upper, d))
+	}
+	return plain(e.Value, d)
+}
+
+// runs is the row of the runs test of the recommended curve.
+func runs(a *diagnostics.Assessment) [][]string {
+	for _, r := range a.Ranking {
+		for _, t := range r.Adequacy {
+			if r.Curve == a.Verdict.RecommendedCurve && t.Test == diagnostics.TestRuns {
+				return [][]string{{"runs of residuals", fmt.Sprintf("%s of %d, p = %s (%s)", plain(t.Statistic, 0), r.Points, probability(t.PValue), r.Curve)}}
+			}
+		}
+	}
+	return nil
+}
+
+// ranking prints a line for each curve, and the reading of those that a reader may
+// want beside the published one: its rivals in the 95 % set, and the straight line,
+// unless they fail their adequacy test.
 func (p *page) ranking(a *diagnostics.Assessment) {
+	const marked, other = "•\u00a0", "\u00a0\u00a0"
 	criterion := map[string]string{"aicc": "AICc", "aic": "AIC", "bic": "BIC"}[a.Settings.Criterion]
-	rows := [][]string{{"curve", "p", criterion, "Δ", "family", "weight", "repeats", "fits"}}
+	rows := [][]string{{other + "curve", "p", criterion, "Δ", "family", "weight", "repeats", "fits"}}
+	standIn := criterion == "AICc" && slices.ContainsFunc(a.Ranking, func(r diagnostics.Ranked) bool { return !r.AICc.Known() && r.AIC.Known() })
+	inSet, repeats := false, false
 	for _, r := range a.Ranking {
 		if r.Status == "excluded" {
 			continue
 		}
-		x := map[string]diagnostics.Real{"aicc": r.AICc, "aic": r.AIC, "bic": r.BIC}[a.Settings.Criterion]
+		value := plain(map[string]diagnostics.Real{"aicc": r.AICc, "aic": r.AIC, "bic": r.BIC}[a.Settings.Criterion], 2)
+		switch {
+		case standIn && !r.AICc.Known() && r.AIC.Known():
+			value = plain(r.AIC, 2) + "†"
+		case standIn:
+			value += "\u00a0" // digits stay beneath digits
+		}
 		fits := unknown
 		if r.Adequate != nil {
 			fits = map[bool]string{true: "yes", false: "no"}[*r.Adequate]
 		}
-		rows = append(rows, []string{r.Curve, fmt.Sprint(r.Params), plain(x, 2), plain(r.Delta, 2),
+		mark := other
+		if r.InSet {
+			mark, inSet = marked, true
+		}
+		repeats = repeats || r.RepeatShare.Known()
+		rows = append(rows, []string{mark + r.Curve, fmt.Sprint(r.Params), value, plain(r.Delta, 2),
 			percent(r.FamWeight), percent(r.Weight), percent(r.RepeatShare), fits})
 	}
 	set := table(rows, 1, 2, 3, 4, 5, 6)
@@ -194,30 +263,49 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 	i := 0
 	for _, r := range a.Ranking {
 		if r.Status == "excluded" {
-			lines = append(lines, Wrap(r.Curve+" is excluded: "+or(r.Reason, "no reason given"), p.body())...)
+			lines = append(lines, hang("", 2, r.Curve+" is excluded: "+or(r.Reason, "no reason given"), p.body())...)
 			continue
 		}
 		i++
 		lines = append(lines, set[i])
-		if r.Reason != "" {
-			lines = append(lines, hang("", 2, r.Reason, p.body())...)
+		reason := r.Reason
+		if standIn && strings.HasPrefix(reason, "AICc undefined") {
+			_, reason, _ = strings.Cut(reason, "; ") // the legend says so
 		}
-		for _, f := range r.Forms {
-			if f.Withheld != "" && strings.Contains(r.Reason, f.Withheld) {
-				continue // said already
-			}
-			lines = append(lines, hang("  ·", 4, form(f, diagnostics.UnitOfEnergy(a.Settings.EnergyUnit)), p.body())...)
+		if reason != "" {
+			lines = append(lines, hang("", 4, reason, p.body())...)
+		}
+		rejected := r.Adequate != nil && !*r.Adequate
+		rival := r.InSet && r.Weight >= 0.01 || r.Curve == "straight"
+		if r.Curve == a.Publish.Curve || rejected || !rival || len(r.Forms) == 0 {
+			continue
+		}
+		if f := r.Forms[0]; f.Withheld == "" || !strings.Contains(r.Reason, f.Withheld) {
+			lines = append(lines, hang("  ·", 4, form(f, a.RoundingOf(r.Curve), diagnostics.UnitOfEnergy(a.Settings.EnergyUnit)), p.body())...)
 		}
 	}
-	legend := "family, weight: evidence for the curve's family and for the curve, in shares; repeats: how often a repeat of the experiment would put the family first; fits: adequacy at 1 %"
-	for _, l := range Wrap(legend, p.body()) {
+	var legend []string
+	if inSet {
+		legend = append(legend, "•: the 95 % set")
+	}
+	if standIn {
+		legend = append(legend, "†: AIC, AICc undefined: needs N ≥ p + 3")
+	}
+	if inSet {
+		legend = append(legend, "family, weight: share of the evidence")
+	}
+	if repeats {
+		legend = append(legend, "repeats: share of repeats that put the family first")
+	}
+	legend = append(legend, "fits: adequate at 1 %")
+	for _, l := range Wrap(strings.Join(legend, "; "), p.body()) {
 		lines = append(lines, p.dim(l))
 	}
 	p.section("ranking", lines...)
 }
 
 // form writes one reading of a curve in a line.
-func form(f diagnostics.FormEstimate, energy diagnostics.EnergyUnit) string {
+func form(f diagnostics.FormEstimate, rounding diagnostics.Rounding, energy diagnostics.EnergyUnit) string {
 	if f.Withheld != "" {
 		return f.Model + " – " + f.Withheld
 	}
@@ -230,9 +318,15 @@ func form(f diagnostics.FormEstimate, energy diagnostics.EnergyUnit) string {
 		case "J mol^-1 K^-1":
 			name, value, u = name+energy.Per, value.Times(energy.EntropyPerJ), energy.Entropy
 		}
-		s := name + "\u00a0" + brackets(value)
-		if u != "" {
-			s += "\u00a0" + strings.ReplaceAll(u, " ", "\u00a0")
+		if a, isLog := strings.CutPrefix(q.Symbol, "ln_"); isLog {
+			if over := diagnostics.OverUnit(q.Unit); over != "" {
+				name = "ln(" + a + over + ")"
+			}
+			u = ""
+		}
+		s := strings.ReplaceAll(name+" "+rounding.Text(value, u), " ", string(nbsp))
+		if open := f.OpenBarriers(); q.Symbol == "T_x" && open != "" {
+			s += strings.ReplaceAll(" ("+open+" open)", " ", string(nbsp))
 		}
 		parts = append(parts, s)
 	}
@@ -243,26 +337,42 @@ func form(f diagnostics.FormEstimate, energy diagnostics.EnergyUnit) string {
 	return s
 }
 
+// said lists the findings that another section says already, or that nothing
+// follows from for the reader of a text. They stand in the JSON.
+var said = map[string]bool{
+	"aicc-undefined": true, "curve-excluded": true, "curve-not-fitted": true, "curve-not-identified": true, // ranking
+	"forms-same-curve": true, "ranking-and-test": true, // nothing follows
+	"conditional-on-choice": true, // notes of publish
+}
+
+// findings prints alarms and warnings in full, with their cures, and one message
+// for each of the rest: explain has the whole story.
 func (p *page) findings(a *diagnostics.Assessment) {
 	weight := map[diagnostics.Severity]int{diagnostics.Alarm: 0, diagnostics.Warning: 1, diagnostics.Info: 2}
 	fs := slices.Clone(a.Findings)
 	slices.SortStableFunc(fs, func(x, y diagnostics.Finding) int { return cmp.Compare(weight[x.Severity], weight[y.Severity]) })
 	var lines []string
 	for _, f := range fs {
-		label, styled := f.Code, f.Code
-		if f.Severity != diagnostics.Info {
-			label = strings.ToUpper(string(f.Severity)) + "\u00a0" + f.Code
-			styled = p.amber(label)
+		if f.Severity == diagnostics.Info {
+			if !said[f.Code] {
+				lines = append(lines, p.note(p.dim(f.Code), f.Code, f.Message, "", f.Rows)...)
+			}
+			continue
 		}
-		lines = append(lines, p.note(styled, label, f.Message, f.Cure, f.Rows)...)
+		label := strings.ToUpper(string(f.Severity)) + "\u00a0" + f.Code
+		lines = append(lines, p.note(p.amber(label), label, f.Message, f.Cure, f.Rows)...)
 	}
 	p.section("findings", lines...)
 }
 
 func (p *page) data(a *diagnostics.Assessment) {
 	d := a.Dataset
-	facts := fmt.Sprintf("%s: %s, %d used, at %s from %s to %s\u00a0K; %s", strings.Join(d.Files, ", "),
-		count(d.Points, "point"), d.Used, count(d.Temperatures, "temperature"), kelvin(d.TMin), kelvin(d.TMax), d.Quantity.Symbol)
+	used := "all used"
+	if d.Used != d.Points {
+		used = fmt.Sprintf("%d used", d.Used)
+	}
+	facts := fmt.Sprintf("%s: %s, %s, at %s from %s to %s\u00a0K; %s", strings.Join(d.Files, ", "),
+		count(d.Points, "point"), used, count(d.Temperatures, "temperature"), kelvin(d.TMin), kelvin(d.TMax), d.Quantity.Symbol)
 	if d.Quantity.Unit != "" {
 		facts += " in " + d.Quantity.Unit
 	}
@@ -293,6 +403,6 @@ func (p *page) next(a *diagnostics.Assessment, figures []string) {
 	if len(figures) == 0 {
 		rows = append(rows, []string{"pictures:", "the same with --figures FOLDER"})
 	}
-	rows = append(rows, []string{"every number:", "the same with --json"})
+	rows = append(rows, []string{"all forms and numbers:", "the same with --json"})
 	p.section("next", table(rows)...)
 }

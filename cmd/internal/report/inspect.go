@@ -205,7 +205,7 @@ func (p *page) note(styled, label, message, cure string, rows []int) []string {
 	if cure != "" {
 		text += " →\u00a0" + cure
 	}
-	lines := Wrap(text, p.body()-2)
+	lines := Wrap(strings.ReplaceAll(text, " = ", "\u00a0=\u00a0"), p.body()-2)
 	for i := range lines {
 		if i == 0 { // the label was wrapped without its colour, which has no width
 			lines[i] = styled + strings.TrimPrefix(lines[i], label)

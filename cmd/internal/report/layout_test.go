@@ -8,19 +8,6 @@ import (
 	"onebarrier/diagnostics"
 )
 
-func TestBracketsWithoutStandardError(t *testing.T) {
-	upper := "upper"
-	none := diagnostics.Real(math.NaN())
-	for want, e := range map[string]diagnostics.Estimate{
-		"31.0 (+20.0 to open)":  {Value: 31, StdError: none, Lower: 20, Upper: none, Open: &upper},
-		"31.0 (+28.5 to +34.2)": {Value: 31, StdError: none, Lower: 28.5, Upper: 34.2},
-	} {
-		if got := brackets(e); got != want {
-			t.Errorf("got %q, want %q", got, want)
-		}
-	}
-}
-
 func TestNumbers(t *testing.T) {
 	for got, want := range map[string]string{
 		plain(-0.001, 2):                     "0.00",

@@ -21,7 +21,7 @@ func plain(x diagnostics.Real, decimals int) string {
 // signed is plain with a sign in front of positive numbers too.
 func signed(x diagnostics.Real, decimals int) string {
 	s := plain(x, decimals)
-	if x.Known() && x > 0 {
+	if x.Known() && x > 0 && strings.Trim(s, "0.") != "" {
 		s = "+" + s
 	}
 	return s
@@ -108,23 +108,14 @@ func interval(e diagnostics.Estimate, decimals int) string {
 }
 
 // decimalsOf is the number of decimals that shows an estimate to two digits of
-// its standard uncertainty, or to three digits where that is unknown.
+// its standard uncertainty, or to three digits where that is unknown; at most six,
+// beyond which lies the rounding of computed data.
 func decimalsOf(e diagnostics.Estimate) int {
 	if e.StdError.Known() && e.StdError > 0 {
-		return min(max(0, decimalsFor(float64(e.StdError), 2)), 9)
+		return min(max(0, decimalsFor(float64(e.StdError), 2)), 6)
 	}
 	if w := float64(e.Upper - e.Lower); w > 0 && !math.IsInf(w, 0) {
-		return min(max(0, decimalsFor(w, 2)), 9)
+		return min(max(0, decimalsFor(w, 2)), 6)
 	}
-	return min(max(0, decimalsFor(float64(e.Value), 3)), 9)
-}
-
-// brackets writes an estimate with its standard uncertainty in brackets, or with
-// its interval where only that is known.
-func brackets(e diagnostics.Estimate) string {
-	if e.Value.Known() && !e.StdError.Known() && (e.Open != nil || e.Lower.Known() && e.Upper.Known()) {
-		d := decimalsOf(e)
-		return plain(e.Value, d) + " (" + interval(e, d) + ")"
-	}
-	return diagnostics.GUM(float64(e.Value), float64(e.StdError))
+	return min(max(0, decimalsFor(float64(e.Value), 3)), 6)
 }

@@ -1,9 +1,11 @@
 package report_test
 
 import (
+	"context"
 	"encoding/json"
 	"io"
 	"math"
+	"os"
 	"regexp"
 	"strings"
 	"testing"
@@ -61,11 +63,11 @@ func fixture() *diagnostics.Assessment {
 			{Family: "parallel", Curve: "parallel", Status: "ranked", Params: 4, Points: 7, LogLik: 80.1, RSS: 0.001, Chi2: nan, Sigma: 0.02, AIC: -150.2, AICc: -110.2, BIC: -151,
 				Delta: 0, FamWeight: 0.93, Weight: 0.93, InSet: true, RepeatShare: 0.81, Adequacy: []diagnostics.Adequacy{{Test: "runs", Statistic: 4, PValue: 0.7}}, Adequate: ptr(true),
 				Forms: []diagnostics.FormEstimate{{Model: "parallel-barriers", TRef: nan, Parameters: []diagnostics.ParameterEstimate{
-					param("ln_A1", "k", unknown), param("E1", "kJ mol^-1", open), param("ln_A2", "k", est(24.31, 0.62, 22, 26)), param("E2", "kJ mol^-1", est(71.22, 1.1, 68, 74)), param("T_x", "K", est(311.2, 4.4, 300, 322))},
+					param("ln_A1", "s^-1", unknown), param("E1", "kJ mol^-1", open), param("ln_A2", "s^-1", est(24.31, 0.62, 22, 26)), param("E2", "kJ mol^-1", est(71.22, 1.1, 68, 74)), param("T_x", "K", est(311.2, 4.4, 300, 322))},
 					Covariance: [][]diagnostics.Real{{nan}}}}},
 			{Family: "power", Curve: "power-prefactor", Status: "fitted", Reason: "AICc undefined: needs N ≥ 8", Params: 3, Points: 7, LogLik: 70, RSS: 0.01, Chi2: nan, Sigma: 0.05, AIC: -132, AICc: nan, BIC: -131,
 				Delta: nan, FamWeight: nan, Weight: nan, RepeatShare: nan, Adequacy: []diagnostics.Adequacy{}, Forms: []diagnostics.FormEstimate{
-					{Model: "modified-arrhenius", TRef: 298.15, Parameters: []diagnostics.ParameterEstimate{param("ln_A", "k", est(5, 2, 1, 9)), param("n", "1", est(39.8, 5.4, 26, 53)), param("E", "kJ mol^-1", est(-55, 13, -90, -20))}, Covariance: [][]diagnostics.Real{{1}}},
+					{Model: "modified-arrhenius", TRef: 298.15, Parameters: []diagnostics.ParameterEstimate{param("ln_A", "s^-1", est(5, 2, 1, 9)), param("n", "1", est(39.8, 5.4, 26, 53)), param("E", "kJ mol^-1", est(-55, 13, -90, -20))}, Covariance: [][]diagnostics.Real{{1}}},
 					{Model: "eyring-heat-capacity", TRef: 298.15, Withheld: "the unit of k is not understood", Parameters: []diagnostics.ParameterEstimate{}, Covariance: [][]diagnostics.Real{}}}},
 			{Family: "fixed-exponent", Curve: "straight", Status: "excluded", Reason: "made up to show an excluded curve", Params: 2, Points: 7, LogLik: nan, RSS: nan, Chi2: nan, Sigma: nan, AIC: nan, AICc: nan, BIC: nan,
 				Delta: nan, FamWeight: nan, Weight: nan, RepeatShare: nan, Adequacy: []diagnostics.Adequacy{}, Forms: []diagnostics.FormEstimate{}},
@@ -80,6 +82,7 @@ func fixture() *diagnostics.Assessment {
 			Intervals:   []diagnostics.ResampledInterval{{Curve: "power-prefactor", Parameter: "n", Unit: "1", Method: "bootstrap-t", Lower: 25, Upper: 54}}},
 		Findings: []diagnostics.Finding{
 			{Code: "conditional-on-choice", Severity: diagnostics.Info, Message: "intervals are conditional on the curve that was chosen", Rows: []int{}, Values: map[string]diagnostics.Real{}},
+			{Code: "adequacy-unchecked", Severity: diagnostics.Info, Message: "the fit cannot be checked", Cure: "repeat some temperatures", Rows: []int{}, Values: map[string]diagnostics.Real{}},
 			{Code: "deciding-point", Severity: diagnostics.Alarm, Message: "the verdict rests on one point", Cure: "measure there again", Rows: []int{9}, Values: map[string]diagnostics.Real{"p": 0.2, "n": nan}},
 		},
 	}
@@ -122,7 +125,7 @@ func TestAssessmentOrder(t *testing.T) {
 		}
 		at = i
 	}
-	if a, i := strings.Index(out, "deciding-point"), strings.Index(out, "conditional-on-choice"); a < 0 || i < a {
+	if a, i := strings.Index(out, "deciding-point"), strings.Index(out, "adequacy-unchecked"); a < 0 || i < a {
 		t.Errorf("an alarm comes after what is only informative:\n%s", out)
 	}
 }
@@ -135,12 +138,12 @@ func TestUnknownIsADash(t *testing.T) {
 			t.Errorf("the text holds %q:\n%s", bad, out)
 		}
 	}
-	for _, want := range []string{"AICc undefined: needs N ≥ 8", "– the unit of k is not understood", "straight is excluded: made up", "E1  –", "line 3 left out: a bound"} {
+	for _, want := range []string{"AICc undefined: needs N ≥ p + 3", "straight is excluded: made up", "E1  –", "line 3 left out: a bound"} {
 		if !strings.Contains(strings.Join(strings.Fields(out), " "), strings.Join(strings.Fields(want), " ")) {
 			t.Errorf("the text does not hold %q:\n%s", want, out)
 		}
 	}
-	if regexp.MustCompile(`power-prefactor +3 +– +– +– +– +–`).FindString(out) == "" {
+	if regexp.MustCompile(`power-prefactor +3 +−132.00† +– +– +– +– +–`).FindString(out) == "" {
 		t.Errorf("the row of a curve without AICc has no dashes:\n%s", out)
 	}
 }
@@ -154,6 +157,97 @@ func TestNothingKnown(t *testing.T) {
 	out := text(t, a, report.Text{})
 	if strings.Contains(out, "NaN") || strings.Contains(out, "\ntest ") {
 		t.Errorf("a test that was not run is printed:\n%s", out)
+	}
+}
+
+// holds reports what of a text is missing, blanks apart.
+func holds(t *testing.T, out string, wants ...string) {
+	t.Helper()
+	flat := strings.Join(strings.Fields(out), " ")
+	for _, want := range wants {
+		if !strings.Contains(flat, want) {
+			t.Errorf("the text does not hold %q:\n%s", want, out)
+		}
+	}
+}
+
+// Readings stand beside rivals of the published curve, with the unit in the
+// logarithm, intervals where an end is open, and why a crossover is unknown.
+func TestFormsOfRivals(t *testing.T) {
+	a := fixture()
+	if out := text(t, a, report.Text{}); strings.Contains(out, "parallel-barriers") {
+		t.Errorf("the published curve is read twice:\n%s", out)
+	}
+	a.Publish.Curve = "straight"
+	a.Ranking[0].Forms[0].Parameters[4].Estimate = diagnostics.NewEstimate(fit.Unknown())
+	holds(t, text(t, a, report.Text{}), "· parallel-barriers ln(A1/s^-1) –, E1 31 kJ/mol (open to 44), ln(A2/s^-1) 24.31(62), E2 71.2(1.1) kJ/mol, T_x – (E1 open)")
+	a.Ranking[0].Forms[0].Withheld = "made up"
+	holds(t, text(t, a, report.Text{}), "parallel-barriers – made up")
+	a.Ranking[0].Adequate = ptr(false)
+	if out := text(t, a, report.Text{}); strings.Contains(out, "parallel-barriers") {
+		t.Errorf("the parameters of a rejected curve are printed:\n%s", out)
+	}
+}
+
+// Numbers of the fixture.
+func TestTestBlock(t *testing.T) {
+	a := fixture()
+	out := text(t, a, report.Text{})
+	holds(t, out, "• parallel 4", "•: the 95 % set", "†: AIC, AICc undefined",
+		"runs of residuals 4 of 7, p = 0.70 (parallel)",
+		"n = +38.0, p = 0.00010; change of E +17.0 kJ/mol (95 %: +13.0 to +21.0)",
+		"seen with 80 % power 9.1 (6.2 to 15.4) kJ/mol",
+		"false alarm, straight data 7–8 %")
+	if strings.Contains(out, "• power-prefactor") {
+		t.Errorf("a curve outside the 95 %% set is marked:\n%s", out)
+	}
+	a.Dataset.Temperatures = 4
+	a.Curvature.Detectable = est(math.NaN(), math.NaN(), 6.2, 15.4) // ν <= 2: σ is too badly known
+	holds(t, text(t, a, report.Text{}), "seen with 80 % power 6.2 to 15.4 kJ/mol", "false alarm, straight data 9 %")
+	a.Curvature.Detectable = est(5.07, math.NaN(), 5.07, 5.07) // σ known
+	holds(t, text(t, a, report.Text{}), "seen with 80 % power 5.07 kJ/mol")
+	a.Verdict.RecommendedCurve, a.Curvature.SecondBarrier = "", nil
+	if out := text(t, a, report.Text{}); strings.Contains(out, "runs of") || strings.Contains(out, "false alarm") {
+		t.Errorf("tests that were not made are printed:\n%s", out)
+	}
+}
+
+// Alarms are printed with their cure, what is informative without, and what stands
+// elsewhere not again.
+func TestFindingsAreShort(t *testing.T) {
+	a := fixture()
+	out := text(t, a, report.Text{})
+	holds(t, out, "ALARM deciding-point: the verdict rests on one point (line 9) → measure there again", "adequacy-unchecked: the fit cannot be checked")
+	if strings.Contains(out, "repeat some temperatures") || strings.Contains(out, "conditional-on-choice") {
+		t.Errorf("not short:\n%s", out)
+	}
+	for i := range a.Findings {
+		a.Findings[i].Severity = diagnostics.Warning
+	}
+	holds(t, text(t, a, report.Text{}), "WARNING conditional-on-choice: ", "→ repeat some temperatures")
+}
+
+// Read in half a minute: sixty lines for the straight demonstration set.
+func TestAssessmentIsShort(t *testing.T) {
+	const file = "../../../testdata/demo/ester-straight.csv"
+	f, err := os.Open(file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer f.Close()
+	sets, err := dataset.Read(file, f, dataset.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	o := diagnostics.DefaultOptions()
+	o.Resamples = 199
+	a, err := diagnostics.Assess(context.Background(), sets[0], o)
+	if err != nil {
+		t.Fatal(err)
+	}
+	out := text(t, a, report.Text{})
+	if n := strings.Count(out, "\n"); n > 60 {
+		t.Errorf("%d lines:\n%s", n, out)
 	}
 }
 
