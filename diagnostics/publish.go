@@ -315,12 +315,13 @@ func publish(in toPublish) Publish {
 
 // publisher writes the lines.
 type publisher struct {
-	in       toPublish
-	energy   EnergyUnit
-	symbol   string // of the rate constant
-	rounding Rounding
-	lines    []PublishLine
-	notes    []string
+	in        toPublish
+	energy    EnergyUnit
+	symbol    string // of the rate constant
+	rounding  Rounding
+	intervals bool // some estimate was printed with its interval
+	lines     []PublishLine
+	notes     []string
 }
 
 func (w *publisher) note(format string, args ...any) {
@@ -402,6 +403,9 @@ func (w *publisher) fitted() {
 	w.unresolved()
 	w.recovery()
 	w.measuredRange()
+	if w.intervals {
+		w.note("(a to b): %g %% interval, where it is far from symmetric", 100*w.in.Confidence)
+	}
 	if r.Curve.Info().Name != "straight" {
 		w.note("intervals take the curve %s as given, although these data chose it", r.Curve.Info().Name)
 	}
@@ -421,7 +425,9 @@ func (w *publisher) add(l PublishLine) { w.lines = append(w.lines, l) }
 // value adds a line for an estimate in its unit. U stands beside brackets only.
 func (w *publisher) value(symbol, unit string, e fit.Estimate, notes ...string) {
 	est := NewEstimate(e)
-	if u := 2 * e.StdError; u > 0 && !w.in.Exact && !w.rounding.lopsided(est) {
+	if w.rounding.lopsided(est) && !w.in.Exact {
+		w.intervals = true
+	} else if u := 2 * e.StdError; u > 0 && !w.in.Exact {
 		notes = append(notes, "U = "+twoDigits(u)+withUnit(unit))
 	}
 	w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: est, Text: w.rounding.Text(est, unit), Note: joinNotes(notes...)})

@@ -118,6 +118,9 @@ func TestCrossoverOfAnOpenBarrier(t *testing.T) {
 	if l := line(t, p, "T_x", ""); l.Text != "–" || l.Note != "not bounded: an end of E2 is open" {
 		t.Errorf("T_x = %q, %q", l.Text, l.Note)
 	}
+	if !slices.Contains(p.Notes, "(a to b): 95 % interval, where it is far from symmetric") {
+		t.Errorf("%q", p.Notes)
+	}
 	if l := line(t, p, "E2", ""); l.Text != "66 kJ/mol (12 to open)" || l.Note != "" {
 		t.Errorf("E2 = %q, %q", l.Text, l.Note)
 	}

@@ -71,8 +71,12 @@ func (p *page) publish(a *diagnostics.Assessment) {
 		if l.Unit != "" {
 			l.Note = strings.ReplaceAll(l.Note, " "+l.Unit, "\u00a0"+strings.ReplaceAll(l.Unit, " ", "\u00a0"))
 		}
-		if strings.HasPrefix(l.Symbol, "lg(") && len(rows) > 0 && rows[len(rows)-1].Note == "" {
-			rows[len(rows)-1].Note = l.Symbol + "\u00a0= " + l.Text // lg A beside A
+		if strings.HasPrefix(l.Symbol, "lg(") && len(rows) > 0 { // lg A beside A
+			of := &rows[len(rows)-1]
+			if of.Note != "" {
+				of.Note += "; "
+			}
+			of.Note += strings.ReplaceAll(l.Symbol+" = "+l.Text, " ", "\u00a0")
 			continue
 		}
 		rows = append(rows, l)
@@ -234,7 +238,7 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 	criterion := map[string]string{"aicc": "AICc", "aic": "AIC", "bic": "BIC"}[a.Settings.Criterion]
 	rows := [][]string{{other + "curve", "p", criterion, "Δ", "family", "weight", "repeats", "fits"}}
 	standIn := criterion == "AICc" && slices.ContainsFunc(a.Ranking, func(r diagnostics.Ranked) bool { return !r.AICc.Known() && r.AIC.Known() })
-	inSet, repeats := false, false
+	inSet, repeats, intervals := false, false, false
 	for _, r := range a.Ranking {
 		if r.Status == "excluded" {
 			continue
@@ -281,7 +285,9 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 			continue
 		}
 		if f := r.Forms[0]; f.Withheld == "" || !strings.Contains(r.Reason, f.Withheld) {
-			lines = append(lines, hang("  ·", 4, form(f, a.RoundingOf(r.Curve), diagnostics.UnitOfEnergy(a.Settings.EnergyUnit)), p.body())...)
+			reading := form(f, a.RoundingOf(r.Curve), diagnostics.UnitOfEnergy(a.Settings.EnergyUnit))
+			intervals = intervals || strings.Contains(reading, "\u00a0to\u00a0")
+			lines = append(lines, hang("  ·", 4, reading, p.body())...)
 		}
 	}
 	var legend []string
@@ -298,6 +304,9 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 		legend = append(legend, "repeats: share of repeats that put the family first")
 	}
 	legend = append(legend, "fits: adequate at 1 %")
+	if intervals {
+		legend = append(legend, "(a to b): "+percent(diagnostics.Real(a.Settings.Confidence))+" interval")
+	}
 	for _, l := range Wrap(strings.Join(legend, "; "), p.body()) {
 		lines = append(lines, p.dim(l))
 	}

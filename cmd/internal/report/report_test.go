@@ -180,7 +180,7 @@ func TestFormsOfRivals(t *testing.T) {
 	}
 	a.Publish.Curve = "straight"
 	a.Ranking[0].Forms[0].Parameters[4].Estimate = diagnostics.NewEstimate(fit.Unknown())
-	holds(t, text(t, a, report.Text{}), "· parallel-barriers ln(A1/s^-1) –, E1 31 kJ/mol (open to 44), ln(A2/s^-1) 24.31(62), E2 71.2(1.1) kJ/mol, T_x – (E1 open)")
+	holds(t, text(t, a, report.Text{}), "· parallel-barriers ln(A1/s^-1) –, E1 31 kJ/mol (open to 44), ln(A2/s^-1) 24.31(62), E2 71.2(1.1) kJ/mol, T_x – (E1 open)", "(a to b): 95 % interval")
 	a.Ranking[0].Forms[0].Withheld = "made up"
 	holds(t, text(t, a, report.Text{}), "parallel-barriers – made up")
 	a.Ranking[0].Adequate = ptr(false)
