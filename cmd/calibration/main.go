@@ -30,7 +30,7 @@ func main() {
 		fmt.Fprintln(os.Stderr, "usage: calibration [-sets N] [-seed S] [-workers W], with at least 100 sets")
 		os.Exit(2)
 	}
-	debug.SetGCPercent(400) // small, short-lived data: memory stays below 100 MB
+	debug.SetGCPercent(400) // small, short-lived data; memory stays below 300 MB
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
 	defer stop()
 	study := calibration.New()
