@@ -298,7 +298,7 @@ func (p *plan) stratify() (replicated bool) {
 		}
 		p.byPoint = true
 	} else {
-		groups, group = numberTemperatures(p.in.Sample.T)
+		groups, group = models.NumberTemperatures(p.in.Sample.T)
 	}
 	p.strata = make([][]int, groups)
 	for i, g := range group {
@@ -318,21 +318,6 @@ func (p *plan) stratify() (replicated bool) {
 		}
 	}
 	return true
-}
-
-// numberTemperatures gives the number of distinct temperatures, and which one each
-// entry has.
-func numberTemperatures(t []float64) (distinct int, number []int) {
-	known := map[float64]int{}
-	for _, ti := range t {
-		k, ok := known[ti]
-		if !ok {
-			k = len(known)
-			known[ti] = k
-		}
-		number = append(number, k)
-	}
-	return len(known), number
 }
 
 // newGenerator makes the errors around one fit; nil if it leaves none.

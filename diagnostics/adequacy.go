@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 
+	"onebarrier/models"
 	"onebarrier/models/fit"
 )
 
@@ -41,7 +42,7 @@ func NewPureError(points *fit.Sample) PureError {
 	for i := 0; i < len(y); {
 		j := i
 		var sw, swy float64
-		for ; j < len(y) && sameTemperature(points.T[j], points.T[i]); j++ {
+		for ; j < len(y) && models.SameTemperature(points.T[j], points.T[i]); j++ {
 			sw += 1 / points.V[j]
 			swy += y[j] / points.V[j]
 		}

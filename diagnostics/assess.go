@@ -192,7 +192,7 @@ func (a *assessor) fitUnder(model fit.ErrorModel) error {
 		return a.problem("not-fittable", err.Error(), "correct the row, or leave it out with --leave-out")
 	}
 	a.data = data
-	if low, high := a.data.sample.Range(); sameTemperature(low, high) {
+	if low, high := a.data.sample.Range(); models.SameTemperature(low, high) {
 		return a.problem("one-temperature", fmt.Sprintf("all used points lie at %g K", low), "a barrier needs at least two temperatures, its test at least four")
 	}
 	curves := slices.Clone(a.opt.Models)

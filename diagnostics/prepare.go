@@ -36,10 +36,6 @@ type prepared struct {
 	temperatureShare float64
 }
 
-// sameTemperature reports whether two temperatures are one setting, read
-// perhaps in two units: closer than the rounding of a conversion.
-func sameTemperature(a, b float64) bool { return math.Abs(a-b) <= 1e-9*b }
-
 // prepare turns the used points of a set into samples under one error model.
 // Uncertainties of T enter by effective variance where those of k are known:
 // s_i² += (E u(T_i)/(R T_i²))², with E from the straight fit, computed once
@@ -124,7 +120,7 @@ func (p *prepared) formMeans() error {
 	var t, m, v []float64
 	for i := 0; i < s.Len(); {
 		j, sw, swy := i, 0.0, 0.0
-		for ; j < s.Len() && sameTemperature(s.T[i], s.T[j]); j++ {
+		for ; j < s.Len() && models.SameTemperature(s.T[i], s.T[j]); j++ {
 			y := s.Y[j]
 			if s.Model.InK() {
 				y = s.K[j]

@@ -368,7 +368,7 @@ func (b *SecondBarrierTest) Run() *SecondBarrier {
 func (b *SecondBarrierTest) without(t float64) float64 {
 	var keep []int
 	for i, ti := range b.s.T {
-		if !sameTemperature(ti, t) {
+		if !models.SameTemperature(ti, t) {
 			keep = append(keep, i)
 		}
 	}

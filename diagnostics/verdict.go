@@ -156,13 +156,13 @@ func Testable(s *fit.Sample, power *fit.Result) (ok bool, more int, why string) 
 		return false, 1, "no degree of freedom is left"
 	}
 	if s.Model.InK() {
-		seen := map[float64]bool{}
+		var above []float64
 		for i, t := range s.T {
 			if math.Exp(power.Fitted[i]) > 3*power.Sigma*math.Sqrt(s.V[i]) {
-				seen[t] = true
+				above = append(above, t)
 			}
 		}
-		if d := len(seen); d < minTemperatures {
+		if d := models.CountTemperatures(above); d < minTemperatures {
 			return false, minTemperatures - d, fmt.Sprintf(
 				"at only %s does the fitted k exceed three times its standard deviation", count(d, "temperature"))
 		}

@@ -116,6 +116,43 @@ func TestTestable(t *testing.T) {
 	}
 }
 
+// One rule says what one temperature is: settings read in two units, which differ in
+// their last digits, count as one wherever temperatures are counted.
+func TestOneRuleForOneTemperature(t *testing.T) {
+	var temps, lnK []float64
+	for i, c := range []float64{25, 35, 45} {
+		celsius, fahrenheit := c+273.15, (c*1.8+32+459.67)/1.8
+		temps = append(temps, celsius, fahrenheit*(1+1e-13))
+		lnK = append(lnK, float64(i), float64(i)+0.1)
+	}
+	s := sampleOf(t, fit.Relative, temps, lnK, nil)
+	if ok, more, _ := Testable(s, nil); ok || more != 1 || s.DistinctT() != 3 {
+		t.Errorf("%d temperatures, testable %t with %d more", s.DistinctT(), ok, more)
+	}
+	if r := fit.Fit(s, models.Parallel{}); r.Usable() && r.Status != fit.NotIdentified {
+		t.Errorf("four parameters from three temperatures: %v", r.Status)
+	}
+	if pe := NewPureError(s); pe.Temperatures != 3 || pe.DF != 3 {
+		t.Errorf("pure error %+v", pe)
+	}
+	k := make([]float64, len(lnK))
+	for i := range k {
+		k[i] = math.Exp(lnK[i])
+	}
+	d, err := prepare(setOf(temps, k, nil), fit.Relative, ReplicatesMeans)
+	if err != nil || d.means == nil || d.means.Len() != 3 {
+		t.Fatalf("means %+v, %v", d, err)
+	}
+	// With errors additive in k the temperatures that stand out of the noise count.
+	eight := sampleOf(t, fit.StatedAbsolute, append(temps, 328.15, 338.15), append(lnK, -9, -9), nil)
+	above := *fit.Fit(eight, models.Straight())
+	above.Sigma, above.Cov, above.Nu = 1, []float64{1}, 3
+	above.Fitted = append(append([]float64(nil), 5, 5, 5, 5, 5, 5), -9, -9)
+	if ok, more, why := Testable(eight, &above); ok || more != 1 || !strings.Contains(why, "3 temperatures") {
+		t.Errorf("%t, %d, %q", ok, more, why)
+	}
+}
+
 // decideOn runs the tests on a sample and decides.
 func decideOn(t testing.TB, s *fit.Sample, tolerance string) (Verdict, []Finding, VerdictInput) {
 	t.Helper()

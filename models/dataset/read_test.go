@@ -644,3 +644,20 @@ func BenchmarkRead(b *testing.B) {
 	}
 	b.ReportMetric(float64(rows)*float64(b.N)/b.Elapsed().Seconds(), "rows/s")
 }
+
+// Settings read in two units are one temperature.
+func TestOneTemperatureInTwoUnits(t *testing.T) {
+	var b strings.Builder
+	b.WriteString("T/K,k/s^-1\n")
+	for i, c := range []float64{25, 35, 45, 55} {
+		fmt.Fprintf(&b, "%.17g,%d\n%.17g,%d\n", c+273.15, i+1, (c+273.15)*(1+1e-13), i+1)
+	}
+	s := read(t, b.String(), Options{})
+	found := map[string]string{}
+	for _, n := range s.Notices {
+		found[n.Code] = n.Message
+	}
+	if found[noteFew] != "4 distinct temperatures" || !strings.Contains(found[noteDuplicate], "same temperature") {
+		t.Errorf("notices %v", found)
+	}
+}

@@ -7,6 +7,8 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+
+	"onebarrier/models"
 )
 
 // sets splits points by their data set and adds what concerns each set.
@@ -159,9 +161,13 @@ func (s *Set) say(code, message string, rows ...int) {
 // review adds the notices that concern the points of a set.
 func (s *Set) review(p *plan) {
 	var limits, selected, duplicates, large []int
-	type key struct{ t, k float64 }
+	type key struct {
+		t int
+		k float64
+	}
 	first := make(map[key]bool, len(s.Points))
-	distinct := map[float64]bool{}
+	distinct := map[int]bool{}
+	setting := s.settings()
 	low, high := math.Inf(1), math.Inf(-1)
 	for i := range s.Points {
 		pt := &s.Points[i]
@@ -175,9 +181,9 @@ func (s *Set) review(p *plan) {
 		if !pt.Used {
 			continue
 		}
-		distinct[pt.T] = true
+		distinct[setting[i]] = true
 		low, high = math.Min(low, pt.T), math.Max(high, pt.T)
-		at := key{pt.T, pt.K}
+		at := key{setting[i], pt.K}
 		if first[at] {
 			duplicates = append(duplicates, pt.Row)
 		}
@@ -214,14 +220,25 @@ func (s *Set) review(p *plan) {
 	}
 	for _, c := range p.kept {
 		if c.Role == RoleKept {
-			s.reviewKept(c, p.decimal)
+			s.reviewKept(c, p.decimal, setting)
 		}
 	}
 }
 
-// reviewKept warns of a numeric column that takes several values at one T.
-func (s *Set) reviewKept(c *column, decimal byte) {
-	at := map[float64]float64{}
+// settings numbers the temperatures of the points.
+func (s *Set) settings() []int {
+	t := make([]float64, len(s.Points))
+	for i, p := range s.Points {
+		t[i] = p.T
+	}
+	_, number := models.NumberTemperatures(t)
+	return number
+}
+
+// reviewKept warns of a numeric column that takes several values at one T; setting
+// numbers those of the points.
+func (s *Set) reviewKept(c *column, decimal byte, setting []int) {
+	at := map[int]float64{}
 	for i := range s.Points {
 		pt := &s.Points[i]
 		cell, ok := pt.Extra[c.Text]
@@ -235,7 +252,7 @@ func (s *Set) reviewKept(c *column, decimal byte) {
 		if x.Kind != CellNumber {
 			return
 		}
-		v, seen := at[pt.T]
+		v, seen := at[setting[i]]
 		if seen && v != x.Value {
 			name := c.Text
 			s.Notices = append(s.Notices, Notice{
@@ -246,6 +263,6 @@ func (s *Set) reviewKept(c *column, decimal byte) {
 			})
 			return
 		}
-		at[pt.T] = x.Value
+		at[setting[i]] = x.Value
 	}
 }

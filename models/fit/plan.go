@@ -63,8 +63,7 @@ func (p *plan) abscissa(t, v []float64) {
 			r.u = (ti - p.tc) / (models.GasConstant * ti * p.tc) / p.width
 		}
 	}
-	sorted := slices.Sorted(slices.Values(t))
-	p.distinct = len(slices.Compact(sorted))
+	p.distinct = models.CountTemperatures(t)
 	p.low, p.high = math.Inf(1), math.Inf(-1)
 	for _, r := range p.rows {
 		p.low, p.high = math.Min(p.low, r.u), math.Max(p.high, r.u)

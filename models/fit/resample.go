@@ -108,15 +108,9 @@ func (d *resampleDesign) baseLine() {
 		d.base2 += r.p2 * v
 	}
 	a, b := d.lineAt(d.base1, d.base2)
-	d.group = make([]int, len(d.rows))
-	seen := map[float64]int{}
+	_, d.group = models.NumberTemperatures(d.s.T)
 	for i, r := range d.rows {
 		d.base[i] = a + b*r.u
-		t := d.s.T[i]
-		if _, ok := seen[t]; !ok {
-			seen[t] = len(seen)
-		}
-		d.group[i] = seen[t]
 	}
 	// base is a line in u to rounding; its coordinates must be those of what is
 	// taken off, not of what was meant.

@@ -3,6 +3,8 @@ package fit
 import (
 	"fmt"
 	"math"
+
+	"onebarrier/models"
 )
 
 // ErrorModel says what is assumed about the errors of the rate constants.
@@ -82,14 +84,9 @@ func NewSample(model ErrorModel, t, k, v []float64) (*Sample, error) {
 // Len is the number of points or means.
 func (s *Sample) Len() int { return len(s.T) }
 
-// DistinctT is the number of distinct temperatures.
-func (s *Sample) DistinctT() int {
-	seen := map[float64]bool{}
-	for _, t := range s.T {
-		seen[t] = true
-	}
-	return len(seen)
-}
+// DistinctT is the number of distinct temperatures, as models.SameTemperature tells
+// them apart.
+func (s *Sample) DistinctT() int { return models.CountTemperatures(s.T) }
 
 // Range returns the lowest and the highest temperature in K.
 func (s *Sample) Range() (low, high float64) {

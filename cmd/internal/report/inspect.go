@@ -8,6 +8,7 @@ import (
 	"strings"
 
 	"onebarrier/diagnostics"
+	"onebarrier/models"
 	"onebarrier/models/dataset"
 )
 
@@ -100,7 +101,7 @@ func newInspectedSet(s *dataset.Set) InspectedSet {
 		}
 		return diagnostics.Real(x)
 	}
-	distinct := map[float64]bool{}
+	var used []float64
 	for _, p := range s.Points {
 		out.Data = append(out.Data, InspectedRow{p.Row, diagnostics.Real(p.T), stated(p.UT), diagnostics.Real(p.K), stated(p.UK),
 			p.Limit, p.Source, p.Used, p.WhyNot})
@@ -113,9 +114,9 @@ func newInspectedSet(s *dataset.Set) InspectedSet {
 		}
 		out.Used++
 		out.TMin, out.TMax = min(out.TMin, t), max(out.TMax, t)
-		distinct[p.T] = true
+		used = append(used, p.T)
 	}
-	out.Temperatures = len(distinct)
+	out.Temperatures = models.CountTemperatures(used)
 	for _, c := range s.Columns {
 		out.Columns = append(out.Columns, InspectedColumn{c.Index, c.Heading, c.Role, c.Unit, diagnostics.Real(c.Factor),
 			c.Level, c.Confidence, append([]string{}, c.Examples...)})
