@@ -3,7 +3,6 @@ package diagnostics
 import (
 	"cmp"
 	"math"
-	"slices"
 
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
@@ -151,26 +150,12 @@ func (a *assessor) localEnergies() (atMin, atMax Estimate) {
 	return NewEstimate(LocalEnergy(a.power, low, a.opt.Confidence)), NewEstimate(LocalEnergy(a.power, high, a.opt.Confidence))
 }
 
-// LocalEnergy is the local activation energy E_loc(T) of a fit with its interval, in
-// kJ/mol, by the delta method; t in K. It is unknown where the fit has no
-// covariance.
-func LocalEnergy(r *fit.Result, t, confidence float64) fit.Estimate {
-	if r.Status != fit.Converged || r.Cov == nil {
-		return fit.Unknown()
-	}
-	e, jac := make([]float64, 1), make([]float64, len(r.P))
-	r.Curve.ELoc(r.TRef, []float64{t}, r.P, e, jac)
-	for i := range jac {
-		jac[i] /= 1000
-	}
-	return r.Interval(jac, e[0]/1000, confidence)
-}
-
 // sources lists the sources of the used points in order of appearance.
 func sources(points []dataset.Point) []string {
-	out := []string{}
+	out, seen := []string{}, map[string]bool{}
 	for _, p := range points {
-		if p.Used && p.Source != "" && !slices.Contains(out, p.Source) {
+		if p.Used && p.Source != "" && !seen[p.Source] {
+			seen[p.Source] = true
 			out = append(out, p.Source)
 		}
 	}

@@ -211,9 +211,9 @@ func lnKAt(r *fit.Result, t, confidence float64) fit.Estimate {
 	return r.Interval(jac, f[0], confidence)
 }
 
-// eLocAt is the local activation energy in kJ/mol at one temperature with its
-// interval.
-func eLocAt(r *fit.Result, t, confidence float64) fit.Estimate {
+// LocalEnergy is the local activation energy E_loc(T) of a fit in kJ/mol with its
+// interval by the delta method; t in K. Without a covariance only the value is known.
+func LocalEnergy(r *fit.Result, t, confidence float64) fit.Estimate {
 	if r.Status != fit.Converged {
 		return fit.Unknown()
 	}
@@ -338,7 +338,7 @@ func (w *publisher) none() {
 	if r != nil && r.Status == fit.Converged {
 		w.rounding = roundingOf(r, nil, w.in.Confidence)
 		for _, t := range []float64{w.in.TMin, w.in.TMax} {
-			w.energyLine("E_a", eLocAt(r, t, w.in.Confidence), fmt.Sprintf("at %s K by power-prefactor", fixed(t, 0, 0)))
+			w.energyLine("E_a", LocalEnergy(r, t, w.in.Confidence), fmt.Sprintf("at %s K by power-prefactor", fixed(t, 0, 0)))
 		}
 		w.note(bracketsNote)
 		if w.in.PowerAdequate != nil && !*w.in.PowerAdequate {
@@ -475,7 +475,7 @@ func (w *publisher) entropyLine(symbol string, e fit.Estimate, notes ...string) 
 
 // eAt adds the local activation energy at a temperature.
 func (w *publisher) eAt(t float64) {
-	w.energyLine("E_a", eLocAt(w.in.Fit, t, w.in.Confidence), fmt.Sprintf("at %s K", fixed(t, 0, 0)))
+	w.energyLine("E_a", LocalEnergy(w.in.Fit, t, w.in.Confidence), fmt.Sprintf("at %s K", fixed(t, 0, 0)))
 }
 
 // prefactor adds A, which is log-normal: its uncertainty is a factor, and brackets
@@ -683,7 +683,7 @@ func (w *publisher) rate() {
 	if w.in.Style != StyleEvaluated || w.in.Exact {
 		return
 	}
-	ln, e := lnKAt(r, t, c), scaled(eLocAt(r, t, c), w.energy.PerKJ)
+	ln, e := lnKAt(r, t, c), scaled(LocalEnergy(r, t, c), w.energy.PerKJ)
 	single := func(symbol, unit string, v float64, text, note string) {
 		if math.IsNaN(v) {
 			text = unknownText

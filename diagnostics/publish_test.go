@@ -232,7 +232,7 @@ func TestPublishKelvin(t *testing.T) {
 	reference.Close(t, "B", float64(line(t, p, "E/R", "").Value), 1575, 1e-12)
 	reference.Close(t, "A", float64(line(t, p, "A", "(T/298 K)^n").Value), 2.80e-14*math.Pow(298, 0.667), 1e-12)
 	reference.Close(t, "k(298 K)", float64(line(t, p, "k(298 K)", "").Value), 6.3e-15, 0.01)
-	reference.Close(t, "local E/R at 298 K", float64(eLocAt(three, 298, 0.95).Value)*1000/r0, 1775, 1e-3)
+	reference.Close(t, "local E/R at 298 K", float64(LocalEnergy(three, 298, 0.95).Value)*1000/r0, 1775, 1e-3)
 	if rng := line(t, p, "range", "").Text; rng != "195 to 300 K" {
 		t.Errorf("range %q", rng)
 	}
