@@ -167,6 +167,26 @@ func TestSpellingsOfOneTable(t *testing.T) {
 	}
 }
 
+// The last cells of a row may be empty, and decimal commas then look like separators.
+func TestSeparatorWithEmptyLastCells(t *testing.T) {
+	for _, text := range []string{
+		"T/K;k/s^-1;note\n300;1,5;a\n310;2,5;\n320;4,5;b\n330;8,5;\n",
+		"T/K,k/s^-1,note\n300,1.5,\n310,2.5,\n320,4.5,\n330,8.5,b\n",
+		"T/K\tk/s^-1\tnote\n300\t1.5\t\n310\t2.5\t\n320\t4.5\tb\n330\t8.5\t\n",
+	} {
+		sets, err := Read("rates.csv", strings.NewReader(text), Options{})
+		if err != nil {
+			t.Errorf("%q: %v", text, err)
+			continue
+		}
+		for i, want := range [][2]float64{{300, 1.5}, {310, 2.5}, {320, 4.5}, {330, 8.5}} {
+			if p := sets[0].Points[i]; p.T != want[0] || p.K != want[1] {
+				t.Errorf("%q: row %d is %g K, %g", text, i, p.T, p.K)
+			}
+		}
+	}
+}
+
 func TestEncodings(t *testing.T) {
 	const text = "t/°C,k/s⁻¹,source\n25,0.001,Zürich\n35,0.004,Köln\n"
 	const latin = "t/°C,k/s^-1,source\n25,0.001,Zürich\n35,0.004,Köln\n"

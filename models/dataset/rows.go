@@ -291,7 +291,7 @@ func (rr *rowReader) temperature(pt *Point) {
 		}
 		t, h := c.kelvin(x)
 		if !(t > 0) || math.IsInf(t, 0) {
-			rr.refuse(codeTNotPositive, c, "%q is %s K", short(rr.cells[c.index]), strconv.FormatFloat(t, 'g', 6, 64))
+			rr.refuse(codeTNotPositive, c, "%q is %s K, not above absolute zero", short(rr.cells[c.index]), strconv.FormatFloat(t, 'g', 6, 64))
 			continue
 		}
 		if j == 0 {
@@ -354,7 +354,11 @@ func (rr *rowReader) rate(pt *Point) {
 			continue
 		}
 		if !(k > 0) && !rr.m.opt.AllowNonPositiveK && x.Limit == "" {
-			rr.refuse(codeKNotPositive, c, "%q is not a positive rate constant", short(rr.cells[c.index]))
+			what := "is not a positive rate constant"
+			if k == 0 && strings.ContainsAny(rr.cells[c.index], "123456789") {
+				what = "is smaller than a computer's numbers reach (1e-308)"
+			}
+			rr.refuse(codeKNotPositive, c, "%q %s", short(rr.cells[c.index]), what)
 			return
 		}
 		pt.K, half, pt.Limit = k, h, x.Limit

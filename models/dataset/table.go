@@ -229,21 +229,26 @@ func delimiter(text string) byte {
 	if len(sample) == 0 {
 		return 0
 	}
-	count := func(line string, d byte) int {
+	// count gives the cells of a line without and with the empty ones at its end.
+	count := func(line string, d byte) (filled, all int) {
 		p := splitter{s: line, line: 1}
 		cells, _, _, _ := p.next(d)
+		all = len(cells)
 		for len(cells) > 0 && cells[len(cells)-1] == "" {
 			cells = cells[:len(cells)-1]
 		}
-		return len(cells)
+		return len(cells), all
 	}
 	// regular: all lines, but for spare (a title above the heading, a note, a
-	// heading with spaces), have as many cells as a line with letters near the top.
+	// heading with spaces), have as many cells as a line with letters near the top,
+	// whose last cells may be empty.
 	regular := func(d byte, spare int) bool {
 		counts := map[int]int{}
 		best := 0
+		filled, all := make([]int, len(sample)), make([]int, len(sample))
 		for i, l := range sample {
-			n := count(l, d)
+			filled[i], all[i] = count(l, d)
+			n := filled[i]
 			if counts[n]++; i < 2 && n >= 2 && strings.ContainsFunc(l, unicode.IsLetter) {
 				best = n
 			}
@@ -255,7 +260,13 @@ func delimiter(text string) byte {
 				}
 			}
 		}
-		return best >= 2 && counts[best] >= len(sample)-spare
+		fitting := 0
+		for i := range sample {
+			if filled[i] <= best && best <= all[i] {
+				fitting++
+			}
+		}
+		return best >= 2 && fitting >= len(sample)-spare
 	}
 	for spare := range 2 {
 		for _, d := range []byte{'\t', ';', ',', ' '} {
@@ -266,7 +277,7 @@ func delimiter(text string) byte {
 	}
 	for _, d := range []byte{'\t', ';', ',', ' '} {
 		for _, l := range sample {
-			if count(l, d) >= 2 {
+			if n, _ := count(l, d); n >= 2 {
 				return d
 			}
 		}
