@@ -409,6 +409,7 @@ type worker struct {
 	p       *plan
 	s       *stream
 	refit   fit.Refitter
+	one     fit.OneRefitter // refit, where it can fit one candidate alone
 	out     fit.Refit
 	fresh   bool // out belongs to y
 	judge   Judge
@@ -436,6 +437,7 @@ func (p *plan) newWorker() *worker {
 	}
 	if p.refit {
 		w.refit = p.in.Refitter.Clone()
+		w.one, _ = w.refit.(fit.OneRefitter)
 		w.out.RSS = make([]float64, len(p.in.Fits))
 		w.out.P = make([][]float64, len(p.in.Fits))
 		for i, f := range p.in.Fits {
@@ -577,7 +579,11 @@ func (w *worker) evaluate(k *kernel, sc *scratch) bool {
 		}
 	}
 	if inK {
-		w.refitOnce()
+		if w.one != nil && !w.fresh {
+			w.one.RefitOne(k.index, w.y, w.counts, &w.out)
+		} else {
+			w.refitOnce()
+		}
 		return k.inK(sc, w.counts, w.out.P[k.index], w.out.RSS[k.index], w.diff, w.t)
 	}
 	if k.gen == nil {

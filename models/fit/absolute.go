@@ -18,14 +18,15 @@ type objective struct {
 	n       int
 	inK     bool
 	unit    float64 // largest |k|; 1 where unit does not enter RSS or errors are in ln k
-	lnScale float64 // ln of the unit in which k is compared
+	scale   float64 // unit in which k is compared
+	lnScale float64 // its ln
 	y, root []float64
 
 	barriers []int // parameters that are bounded
 }
 
 func newObjective(s *Sample, c models.Curve) *objective {
-	o := &objective{s: s, c: c, n: len(c.Info().Params), inK: s.Model.InK(), unit: 1}
+	o := &objective{s: s, c: c, n: len(c.Info().Params), inK: s.Model.InK(), unit: 1, scale: 1}
 	o.y = append([]float64(nil), s.Y...)
 	o.root = make([]float64, s.Len())
 	for i, v := range s.V {
@@ -45,7 +46,7 @@ func newObjective(s *Sample, c models.Curve) *objective {
 	if scale == 0 {
 		scale = 1
 	}
-	o.lnScale = math.Log(scale)
+	o.scale, o.lnScale = scale, math.Log(scale)
 	for i, k := range s.K {
 		o.y[i] = k / scale
 		if s.Model.KnownSigma() {
@@ -110,39 +111,48 @@ func fitInK(s *Sample, c models.Curve) *Result {
 		r.settle(s, nil, 1)
 		return r
 	}
-	if len(starts) == 0 {
-		if status == Excluded && line.Usable() {
-			return exclude()
-		}
-		r.Reason = reason
-		return r
-	}
 	o := newObjective(s, c)
 	pr, engine := o.problem(), newSolver(s.Len(), p)
-	starts = append(starts, o.bentStarts(pr)...)
-	least := math.Inf(1)
-	var p0 []float64
-	for _, start := range starts {
-		// Short first steps stay in the valley in which a start lies; the best is
-		// taken to convergence below.
-		_, _, r.Reason = engine.trustRegion(pr, start, Options{Factor: 0.01, Tolerance: 1e-6, MaxIterations: 50})
-		if rss := floats.Dot(engine.r, engine.r); rss < least {
-			least, p0 = rss, append(p0[:0], engine.p...)
+	var best *Solution
+	if two, found, ok := twoPaths(s, c, starts); ok {
+		if !found {
+			return exclude()
+		}
+		starts = [][]float64{two}
+		if o.atBound(two) { // where a search of all parameters would want to go on
+			copy(engine.p, two)
+			best = &Solution{}
+			engine.finish(pr, best)
+		}
+	} else {
+		if len(starts) == 0 {
+			if status == Excluded && line.Usable() {
+				return exclude()
+			}
+			r.Reason = reason
+			return r
+		}
+		starts = append(starts, o.bentStarts()...)
+		if p := oneExponential(s, c); p != nil {
+			starts = append(starts, p)
 		}
 	}
-	if p0 == nil {
-		return r
-	}
-	if isShaped { // parameters in their canonical order
-		a, e, q := shaped.ToShape(p0)
-		shaped.FromShape(a, e, q, p0)
-	}
-	best := engine.solve(pr, p0, Options{})
-	if best.Status == Failed {
-		// A valley without end: where the search stopped is as good as any point in it.
-		reason := best.Reason
-		engine.finish(pr, best)
-		best.Status, best.Reason, best.Cov = NotIdentified, reason, nil
+	if best == nil {
+		var p0 []float64
+		if p0, r.Reason = o.bestStart(pr, engine, starts); p0 == nil {
+			return r
+		}
+		if isShaped { // parameters in their canonical order
+			a, e, q := shaped.ToShape(p0)
+			shaped.FromShape(a, e, q, p0)
+		}
+		best = engine.solve(pr, p0, Options{})
+		if best.Status == Failed {
+			// A valley without end: where the search stopped is as good as any point in it.
+			reason := best.Reason
+			engine.finish(pr, best)
+			best.Status, best.Reason, best.Cov = NotIdentified, reason, nil
+		}
 	}
 	if isShaped && line.Usable() && !(best.RSS*o.unit*o.unit < line.RSS*(1-1e-12)) {
 		return exclude()
@@ -155,15 +165,14 @@ func fitInK(s *Sample, c models.Curve) *Result {
 		r.Status, cov = NotIdentified, nil
 		r.Reason = fmt.Sprintf("needs at least %d distinct temperatures, has %d", p, d)
 	}
-	for _, j := range o.barriers {
-		if !(math.Abs(r.P[j]) < 0.99*maxBarrier) {
-			r.Status, cov = NotIdentified, nil
-			r.Reason = fmt.Sprintf("a barrier beyond %g kJ/mol would fit better still", maxBarrier/1000)
-		}
-	}
-	if isShaped && cov != nil && !(relativeError(c, best.RSS/float64(max(1, r.Nu)), s.Model, cov) <= maxLnError) {
+	if o.atBound(r.P) {
 		r.Status, cov = NotIdentified, nil
-		r.Reason = "one path is too slow everywhere to leave a trace in these data"
+		r.Reason = fmt.Sprintf("a barrier beyond %g kJ/mol would fit better still", maxBarrier/1000)
+	}
+	if isShaped && r.Status == Converged {
+		if reason := o.unidentified(best, r.Nu); reason != "" {
+			r.Status, cov, r.Reason = NotIdentified, nil, reason
+		}
 	}
 	r.Fitted = make([]float64, r.N)
 	c.LnK(s.TRef, s.T, r.P, r.Fitted, nil)
@@ -175,23 +184,96 @@ func fitInK(s *Sample, c models.Curve) *Result {
 	return r
 }
 
-// maxLnError is the standard error of ln k_ref past which a path counts as lost: its
-// own rate constant is then uncertain by a factor of e^100, and its barrier is noise.
-const maxLnError = 100
-
-// relativeError is the largest standard error of a parameter that is the ln of a rate
-// constant, from the unscaled covariance and s² = RSS/ν.
-func relativeError(c models.Curve, s2 float64, m ErrorModel, cov []float64) (most float64) {
-	if m.KnownSigma() {
-		s2 = 1
+// twoPaths fits two paths side by side by their exponents alone, from starts and a
+// global search. found is false where no second path helps; ok is false for other
+// curves and where the search failed.
+func twoPaths(s *Sample, c models.Curve, starts [][]float64) (p []float64, found, ok bool) {
+	if sign, is := softplusSign(c); !is || sign < 0 {
+		return nil, false, false
 	}
-	ps := c.Info().Params
-	for j, p := range ps {
-		if p.Unit == "k" {
-			most = math.Max(most, math.Sqrt(s2*cov[j*len(ps)+j]))
+	one, two := newExponentials(s, models.Straight()), newExponentials(s, c)
+	if one == nil || two == nil {
+		return nil, false, false
+	}
+	line, w := newVarpro(one), newVarpro(two)
+	line.setData(s.K)
+	w.setData(s.K)
+	if !line.fitSingle() {
+		return nil, false, false
+	}
+	var warm [][2]float64
+	for _, start := range starts {
+		warm = append(warm, two.thetaOf(start))
+	}
+	warm = append(warm, w.pairs()...)
+	found, ok = w.addPath(&line.best, warm...)
+	p = make([]float64, 4)
+	if found {
+		two.params(&w.best, p)
+	}
+	return p, found, ok
+}
+
+// oneExponential fits a curve of one exponential from the grid; nil where that is
+// not the curve's kind, or nothing was found.
+func oneExponential(s *Sample, c models.Curve) []float64 {
+	e := newExponentials(s, c)
+	if e == nil || e.paths != 1 {
+		return nil
+	}
+	w := newVarpro(e)
+	w.setData(s.K)
+	if !w.fitSingle() {
+		return nil
+	}
+	p := make([]float64, 1+e.d)
+	e.params(&w.best, p)
+	return p
+}
+
+// bestStart gives where the best of short searches from several starts ends; nil
+// and a reason where none can begin.
+func (o *objective) bestStart(pr Problem, engine *solver, starts [][]float64) (p []float64, reason string) {
+	least := math.Inf(1)
+	for _, start := range starts {
+		// Short first steps stay in the valley in which a start lies; the best is
+		// taken to convergence by the caller.
+		_, _, reason = engine.trustRegion(pr, start, Options{Factor: 0.01, Tolerance: 1e-6, MaxIterations: 50})
+		if rss := floats.Dot(engine.r, engine.r); rss < least {
+			least, p = rss, append(p[:0], engine.p...)
 		}
 	}
-	return most
+	return p, reason
+}
+
+// atBound reports whether a barrier of a shaped curve lies at maxBarrier.
+func (o *objective) atBound(p []float64) bool {
+	for _, j := range o.barriers {
+		if !(math.Abs(p[j]) < 0.99*maxBarrier) {
+			return true
+		}
+	}
+	return false
+}
+
+// unidentified says why the parameters of a shaped curve are not determined one by
+// one, "" where they are. A barrier counts as not determined where its standard
+// error reaches maxBarrier, beyond which none is looked for: an energy in its
+// sense of a barrier is then anything at all.
+func (o *objective) unidentified(best *Solution, nu int) string {
+	if !(best.Condition <= shapedCondition) {
+		return "the data do not determine the barriers one by one"
+	}
+	s2 := 1.0
+	if !o.s.Model.KnownSigma() {
+		s2 = best.RSS / float64(max(1, nu))
+	}
+	for _, j := range o.barriers {
+		if !(math.Sqrt(s2*best.Cov[j*o.n+j]) < maxBarrier) {
+			return fmt.Sprintf("one path leaves too little trace in these data: the standard error of its barrier exceeds %g kJ/mol", maxBarrier/1000)
+		}
+	}
+	return ""
 }
 
 // startsInK fits the points with k > 0 in ln k with variances V/k^m, m = 2 and 0:
@@ -228,59 +310,31 @@ func startsInK(s *Sample, c models.Curve) (starts [][]float64, status Status, re
 }
 
 // bentStarts bends a line by given amounts and fits the line to what is left, in ln
-// k with variances V/k², for the curves that have more than a line: with errors in k
-// they have local minima, in which the curve runs through a single high point at the
-// cold end, for one. Of 1,500 sets with a scatter of 3 % of the largest k the fits in
-// ln k alone miss the best minimum of a power curve in 1 %, with these in 0.1 %.
-func (o *objective) bentStarts(pr Problem) (starts [][]float64) {
+// k with variances V/k², for curves of three parameters: with errors in k they have
+// local minima, in which the curve runs through a single high point at the cold end,
+// for one. Of 1,500 sets with a scatter of 3 % of the largest k the fits in ln k
+// alone miss the best minimum of a power curve in 1 %, with these in 0.1 %.
+func (o *objective) bentStarts() (starts [][]float64) {
+	c, ok := o.c.(models.Basis)
+	if !ok || o.n != 3 {
+		return nil
+	}
 	s, m := o.s, o.s.Len()
 	x := make([]float64, m) // (1/T - 1/T_ref)/R
 	models.CentredX(s.TRef, s.T, x)
-	g := make([]float64, m)
-	switch c := o.c.(type) {
-	case models.Basis:
-		if o.n != 3 {
-			return nil
-		}
-		off, design := make([]float64, m), make([]float64, m*o.n)
-		c.Columns(s.TRef, s.T, off, design)
-		var most float64
+	g, off, design := make([]float64, m), make([]float64, m), make([]float64, m*o.n)
+	c.Columns(s.TRef, s.T, off, design)
+	var most float64
+	for i := range m {
+		most = math.Max(most, math.Abs(design[3*i+2]))
+	}
+	for _, bend := range []float64{-16, -4, -1, 1, 4} { // in ln k
+		n := bend / most
 		for i := range m {
-			most = math.Max(most, math.Abs(design[3*i+2]))
+			g[i] = off[i] + n*design[3*i+2]
 		}
-		for _, bend := range []float64{-16, -4, -1, 1, 4} { // in ln k
-			n := bend / most
-			for i := range m {
-				g[i] = off[i] + n*design[3*i+2]
-			}
-			a, e := s.weightedLine(x, g)
-			starts = append(starts, []float64{a, e, n})
-		}
-	case models.Shaped:
-		if _, ok := softplusSign(c); !ok {
-			return nil
-		}
-		low, high := floats.Min(x), floats.Max(x)
-		r := make([]float64, m)
-		for _, width := range []float64{2, 6, 20, 60, 200} { // difference of barriers times range
-			var best []float64
-			least := math.Inf(1)
-			for _, at := range []float64{0.1, 0.3, 0.5, 0.7, 0.9} { // crossover
-				d := math.Min(width/(high-low), maxBarrier/2)
-				q := []float64{d * (low + at*(high-low)), d}
-				c.Shape(x, q, g, nil, nil)
-				a, e := s.weightedLine(x, g)
-				p := make([]float64, o.n)
-				c.FromShape(a, e, q, p)
-				pr.Eval(p, r, nil)
-				if rss := floats.Dot(r, r); rss < least {
-					least, best = rss, p
-				}
-			}
-			if best != nil {
-				starts = append(starts, best)
-			}
-		}
+		a, e := s.weightedLine(x, g)
+		starts = append(starts, []float64{a, e, n})
 	}
 	return starts
 }

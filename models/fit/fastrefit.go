@@ -106,7 +106,7 @@ func (r *fastRefitter) Refit(y []float64, out *Refit) {
 	for j := range r.shaped {
 		sc := &r.shaped[j]
 		if r.distinct < r.needs[sc.index] {
-			r.fail(sc.index, out)
+			out.fail(sc.index)
 			continue
 		}
 		rss, how := r.fitShaped(w, sc, best)
@@ -345,7 +345,7 @@ func (r *fastRefitter) RefitCounts(y []float64, counts []int, out *Refit) {
 	for j := range r.linear {
 		lc := &r.linear[j]
 		if distinct <= r.needs[lc.index] {
-			r.fail(lc.index, out)
+			out.fail(lc.index)
 			continue
 		}
 		rss := r.fitLinear(w, lc, out.P[lc.index])
@@ -355,7 +355,7 @@ func (r *fastRefitter) RefitCounts(y []float64, counts []int, out *Refit) {
 	for j := range r.shaped {
 		sc := &r.shaped[j]
 		if distinct <= r.needs[sc.index] {
-			r.fail(sc.index, out)
+			out.fail(sc.index)
 			continue
 		}
 		rss, how := r.fitTaken(w, sc, best)
@@ -363,14 +363,6 @@ func (r *fastRefitter) RefitCounts(y []float64, counts []int, out *Refit) {
 		best = math.Min(best, r.of(sc.index, rss))
 	}
 	r.first(out)
-}
-
-func (r *fastRefitter) fail(j int, out *Refit) {
-	out.How = HowFailed
-	out.RSS[j] = math.NaN()
-	for i := range out.P[j] {
-		out.P[j][i] = math.NaN()
-	}
 }
 
 // project projects the data and the directions of a resample with counts.

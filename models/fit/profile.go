@@ -79,9 +79,10 @@ func ProfileExponent(s *Sample, r *Result, confidence float64) Estimate {
 //	(S(g) - S_min)/(S_min/ν) <= F(1, ν), or S(g) - S_min <= χ²(1) with σ known
 //
 // (Bates & Watts 1988, section 6.1.2), as far as they hang together with the estimate.
-// An end that is not reached within 2^20
-// half-widths is open and infinite. With errors in ln k and a models.Basis it is the
-// interval of Interval, which is then exact.
+// An end that is not reached within 2^20 half-widths is open and infinite. With errors
+// in ln k and a models.Basis it is the interval of Interval, which is then exact. With
+// errors in k and a function of one path of parallel it is held to E1 <= E2, and an end
+// is open where ProfileShaped has it so.
 func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	if len(c) != r.Params() {
 		panic("fit: the length of c does not match the parameters")
@@ -102,8 +103,16 @@ func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	if math.IsNaN(t) {
 		return e
 	}
-	f := newProfiler(s, r, c)
-	smin := f.start(r.P)
+	var end func(step, smin, criterion float64) (float64, bool)
+	var smin float64
+	if h := onePath(s, r, c); h != nil {
+		smin = math.Min(h.at(value), r.RSS/square(h.w.e.o.unit))
+		end = func(step, smin, criterion float64) (float64, bool) { return h.end(value, step, smin, criterion) }
+	} else {
+		f := newProfiler(s, r, c)
+		smin = f.start(r.P)
+		end = func(step, smin, criterion float64) (float64, bool) { return f.end(value, step, smin, criterion) }
+	}
 	criterion := t * t
 	if !s.Model.KnownSigma() {
 		criterion *= smin / float64(r.Nu)
@@ -119,8 +128,8 @@ func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	if step == 0 {
 		step = 1
 	}
-	lower, okLower := f.end(value, -step, smin, criterion)
-	upper, okUpper := f.end(value, step, smin, criterion)
+	lower, okLower := end(-step, smin, criterion)
+	upper, okUpper := end(step, smin, criterion)
 	e.Lower, e.Upper = lower, upper
 	switch {
 	case !okLower && !okUpper:

@@ -45,6 +45,13 @@ type Refitter interface {
 	Clone() Refitter
 }
 
+// OneRefitter is a Refitter that can fit a single candidate. Of out it fills RSS[j],
+// P[j] and How; First is -1. counts may be nil.
+type OneRefitter interface {
+	Refitter
+	RefitOne(j int, y []float64, counts []int, out *Refit)
+}
+
 // RefitOptions are the settings of a Refitter.
 type RefitOptions struct {
 	// Penalty decides first places: the least of N ln RSS + Penalty, or of
@@ -66,5 +73,9 @@ func NewRefitter(s *Sample, curves []models.Curve, fits []*Result, o RefitOption
 	if d := newResampleDesign(s, curves, fits, crit, o.ShapedParams); d != nil {
 		return d.refitter()
 	}
-	return &slowRefitter{s: s, curves: curves, criterion: crit, shapedParams: o.ShapedParams}
+	slow := newSlowRefitter(s, curves, crit, o.ShapedParams)
+	if s.Model.InK() {
+		return &kRefitter{slowRefitter: slow, fits: fits, work: newKWork(s, curves, fits)}
+	}
+	return &slow
 }

@@ -351,9 +351,10 @@ func TestRefitClones(t *testing.T) {
 // others are fitted all the same.
 func TestRefitFails(t *testing.T) {
 	r := newResampling(t, 3, 10, false)
+	slow := newSlowRefitter(r.s, r.curves, newCriterion(r.s, 3, nil), false)
 	for _, ref := range []Refitter{
 		NewRefitter(r.s, r.curves, r.fits, RefitOptions{}),
-		&slowRefitter{s: r.s, curves: r.curves, criterion: newCriterion(r.s, 3, nil)},
+		&slow,
 	} {
 		var out Refit
 		ref.RefitCounts(r.s.Y, []int{2, 0, 2, 0, 2, 0, 4, 0, 0, 0}, &out)

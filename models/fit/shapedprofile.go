@@ -24,8 +24,11 @@ import (
 // NaN where the fit is not identified, everything where it is not usable.
 func ProfileShaped(s *Sample, r *Result, param string, confidence float64) Estimate {
 	f := newShapedProfile(s, r, param)
-	if !r.Usable() || s.Model.InK() {
+	if !r.Usable() {
 		return Unknown()
+	}
+	if s.Model.InK() {
+		return Profile(s, r, f.gradient[:], confidence)
 	}
 	e := Estimate{Value: math.NaN(), StdError: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
 	wald := r.Interval(f.gradient[:], f.estimate, confidence)

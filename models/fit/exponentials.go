@@ -1,0 +1,693 @@
+package fit
+
+import (
+	"cmp"
+	"math"
+	"slices"
+
+	"onebarrier/models"
+
+	"gonum.org/v1/gonum/floats"
+)
+
+// With errors in k a curve is an amplitude times an exponential, or, for two paths
+// side by side, a sum of two: the amplitudes are linear and are eliminated (variable
+// projection: G. H. Golub and V. Pereyra, SIAM J. Numer. Anal. 10 (1973) 413), which
+// leaves one or two exponents. Amplitudes must be positive.
+
+// exponentials is the weighted problem of one curve with errors in k on one design:
+//
+//	z_i = Σ α v_i(θ) + error,  v_i = exp(w_i + Σ_j θ_j C_ij)
+//
+// with α > 0 and w = ln 1/√V. The columns C are those of the curve beyond the
+// first, moved and scaled to range from -1/2 to 1/2. It is read-only once made.
+type exponentials struct {
+	n, d   int // points; columns, 1 or 2
+	paths  int // 1, or 2 for two paths with a column each
+	o      *objective
+	lnW    []float64 // with the curve's offset
+	col    [2][]float64
+	centre [2]float64
+	scale  [2]float64 // canonical parameter = θ·scale
+	bound  float64    // of |θ|; +Inf where there is none
+	nodes  []exponentialNode
+}
+
+// exponentialNode is a curve of a grid, as a vector of unit length.
+type exponentialNode struct {
+	theta [2]float64
+	v     []float64
+}
+
+// newExponentials returns nil for curves that are not of this kind, and where a
+// column does not vary.
+func newExponentials(s *Sample, c models.Curve) *exponentials {
+	n := s.Len()
+	e := &exponentials{n: n, paths: 1, o: newObjective(s, c), bound: math.Inf(1)}
+	off := make([]float64, n)
+	if sign, ok := softplusSign(c); ok && sign > 0 {
+		e.d, e.paths = 1, 2
+		e.col[0] = make([]float64, n)
+		models.CentredX(s.TRef, s.T, e.col[0])
+		floats.Scale(-1, e.col[0])
+	} else if b, ok := c.(models.Basis); ok && (e.o.n == 2 || e.o.n == 3) {
+		e.d = e.o.n - 1
+		x := make([]float64, n*e.o.n)
+		b.Columns(s.TRef, s.T, off, x)
+		for j := range e.d {
+			e.col[j] = make([]float64, n)
+		}
+		for i := range n {
+			if x[i*e.o.n] != 1 {
+				return nil
+			}
+			for j := range e.d {
+				e.col[j][i] = x[i*e.o.n+1+j]
+			}
+		}
+	} else {
+		return nil
+	}
+	for j := range e.d {
+		low, high := floats.Min(e.col[j]), floats.Max(e.col[j])
+		if !(high > low) {
+			return nil
+		}
+		e.centre[j], e.scale[j] = (low+high)/2, 1/(high-low)
+		for i := range e.col[j] {
+			e.col[j][i] = (e.col[j][i] - e.centre[j]) / (high - low)
+		}
+	}
+	if e.paths == 2 {
+		e.bound = maxBarrier / e.scale[0]
+		e.col[1], e.centre[1], e.scale[1] = e.col[0], e.centre[0], e.scale[0]
+	}
+	e.lnW = make([]float64, n)
+	for i, w := range e.o.root {
+		e.lnW[i] = math.Log(w) + off[i]
+	}
+	e.layNodes()
+	return e
+}
+
+const (
+	// nodeAngle is the angle between neighbours of the grid in one exponent,
+	// wideAngle that of the grid in two.
+	nodeAngle, wideAngle = 0.12, 0.3
+)
+
+// layNodes makes the grid: neighbours stand at a constant angle, or θ grows by half
+// where the curve hangs on the hottest or the coldest point alone.
+func (e *exponentials) layNodes() {
+	bends, angle := []float64{0}, nodeAngle
+	if e.d == 2 {
+		bends, angle = []float64{-32, -16, -8, -4, -2, 0, 2, 4, 8, 16, 32}, wideAngle
+	}
+	far := math.Min(maxBarrier/e.scale[0], 1000)
+	for _, bend := range bends {
+		for _, side := range []float64{1, -1} {
+			for t := 0.0; ; {
+				nd := exponentialNode{theta: [2]float64{side * t, bend}, v: make([]float64, e.n)}
+				e.vector(nd.theta, nd.v)
+				norm := floats.Norm(nd.v, 2)
+				floats.Scale(1/norm, nd.v)
+				if t > 0 || side > 0 {
+					e.nodes = append(e.nodes, nd)
+				}
+				if t >= far {
+					break
+				}
+				// The vector turns by the standard deviation of the column.
+				var mean, variance float64
+				for i, v := range nd.v {
+					mean += v * v * e.col[0][i]
+				}
+				for i, v := range nd.v {
+					variance += square(v * (e.col[0][i] - mean))
+				}
+				t = math.Min(far, t+math.Min(angle/math.Sqrt(variance), math.Max(2, t/2)))
+			}
+		}
+	}
+	slices.SortStableFunc(e.nodes, func(a, b exponentialNode) int {
+		return cmp.Or(cmp.Compare(a.theta[1], b.theta[1]), cmp.Compare(a.theta[0], b.theta[0]))
+	})
+}
+
+// vector fills v with the exponential, divided by its largest element, and returns
+// ln of that.
+func (e *exponentials) vector(theta [2]float64, v []float64) (ln float64) {
+	lnW, c0 := e.lnW[:len(v)], e.col[0][:len(v)]
+	ln = math.Inf(-1)
+	if e.d == 2 {
+		c1 := e.col[1][:len(v)]
+		for i := range v {
+			v[i] = lnW[i] + theta[0]*c0[i] + theta[1]*c1[i]
+			ln = max(ln, v[i])
+		}
+	} else {
+		for i := range v {
+			v[i] = lnW[i] + theta[0]*c0[i]
+			ln = max(ln, v[i])
+		}
+	}
+	for i := range v {
+		v[i] = math.Exp(v[i] - ln)
+	}
+	return ln
+}
+
+// whiten fills z with values of k in the problem's unit.
+func (e *exponentials) whiten(k, z []float64) {
+	for i, ki := range k {
+		z[i] = ki / e.o.scale * e.o.root[i]
+	}
+}
+
+// thetaOf gives the exponents at canonical parameters.
+func (e *exponentials) thetaOf(p []float64) (theta [2]float64) {
+	if e.paths == 2 {
+		return [2]float64{p[1] / e.scale[0], p[3] / e.scale[0]}
+	}
+	for j := range e.d {
+		theta[j] = p[1+j] / e.scale[j]
+	}
+	return theta
+}
+
+// projection is the sum of squares of a curve at given exponents, with its
+// derivatives: f = RSS/2, amplitudes eliminated.
+type projection struct {
+	theta     [2]float64
+	amplitude [2]float64 // of vectors with largest element 1
+	ln        [2]float64 // ln of that element
+	rss       float64    // +Inf where an amplitude is not positive
+	g         [2]float64
+	h, gn     [3]float64 // 11, 12, 22: Hessian, and its part without the residuals
+	decrement float64    // of RSS, by a full Newton step, where descend ends
+}
+
+// varpro is the memory of one search.
+type varpro struct {
+	e          *exponentials
+	z, r       []float64
+	v          [2][]float64
+	perp       []float64
+	zz         float64
+	held       bool    // path 1 has a fixed amplitude at pivot, and θ1, θ2 are in order
+	order      float64 // +1: θ1 <= θ2; -1: θ1 >= θ2
+	noOther    bool    // held, with path 2 absent
+	lnHeld     float64 // its ln there, in the problem's unit
+	pivot      float64 // as an element of the column
+	dim        int
+	low, high  [2]float64 // bounds of θ
+	cur, trial projection
+	best       projection
+	gain, move []float64
+	starts     [][2]float64
+}
+
+func newVarpro(e *exponentials) *varpro {
+	v := func() []float64 { return make([]float64, e.n) }
+	w := &varpro{e: e, z: v(), r: v(), v: [2][]float64{v(), v()}, perp: v(), dim: e.d, gain: make([]float64, len(e.nodes)), move: make([]float64, len(e.nodes))}
+	for j := range 2 {
+		w.low[j], w.high[j] = -e.bound, e.bound
+	}
+	return w
+}
+
+// setData loads values of k.
+func (w *varpro) setData(k []float64) {
+	w.e.whiten(k, w.z)
+	w.zz = dot(w.z, w.z)
+}
+
+// single evaluates one exponential at θ.
+func (w *varpro) single(theta [2]float64, p *projection) {
+	e, v, z := w.e, w.v[0], w.z
+	p.theta = theta
+	p.ln[0] = e.vector(theta, v)
+	c := [2][]float64{e.col[0], e.col[1]}
+	var s, q, s0, s1 float64
+	for i, x := range v {
+		x2 := x * x
+		s += x * z[i]
+		q += x2
+		s0 += x2 * c[0][i]
+		if e.d == 2 {
+			s1 += x2 * c[1][i]
+		}
+	}
+	a := s / q
+	p.amplitude[0] = a
+	if !(a > 0) {
+		p.rss = math.Inf(1)
+		return
+	}
+	m0, m1 := s0/q, s1/q
+	var rss, g0, g1, b00, b01, b11, t00, t01, t11 float64
+	for i, x := range v {
+		r := z[i] - a*x
+		w.r[i] = r
+		rss += r * r
+		d0 := c[0][i] - m0
+		xr, xx := x*r, x*x
+		g0 += d0 * xr
+		b00 += d0 * d0 * xr
+		t00 += d0 * d0 * xx
+		if e.d == 2 {
+			d1 := c[1][i] - m1
+			g1 += d1 * xr
+			b01 += d0 * d1 * xr
+			b11 += d1 * d1 * xr
+			t01 += d0 * d1 * xx
+			t11 += d1 * d1 * xx
+		}
+	}
+	p.rss = rss
+	p.g = [2]float64{-a * g0, -a * g1}
+	p.gn = [3]float64{a * a * t00, a * a * t01, a * a * t11}
+	p.h = [3]float64{
+		p.gn[0] - a*b00 - g0*g0/q, p.gn[1] - a*b01 - g0*g1/q, p.gn[2] - a*b11 - g1*g1/q,
+	}
+}
+
+// pair evaluates two exponentials. Where the first is held its amplitude is not free.
+func (w *varpro) pair(theta [2]float64, p *projection) {
+	e, v1, v2, z := w.e, w.v[0], w.v[1], w.z
+	p.theta = theta
+	if w.held && (theta[1]-theta[0])*w.order < 0 {
+		p.rss = math.Inf(1)
+		return
+	}
+	p.ln[0] = e.vector([2]float64{theta[0]}, v1)
+	p.ln[1] = e.vector([2]float64{theta[1]}, v2)
+	p.rss = math.Inf(1)
+	c := e.col[0]
+	var q1, q12, q2, s1, m1, m2 float64
+	for i, x := range v1 {
+		y := v2[i]
+		q1 += x * x
+		q12 += x * y
+		q2 += y * y
+		s1 += x * z[i]
+		m1 += x * x * c[i]
+		m2 += y * y * c[i]
+	}
+	m1, m2 = m1/q1, m2/q2
+	share := q12 / q1
+	var a1, a2, n2 float64 // n2: squared length of what the fit of v1 leaves of v2
+	if w.held {
+		m1, share = w.pivot, 0
+		a1 = math.Exp(w.lnHeld - theta[0]*w.pivot + p.ln[0])
+	}
+	var s2 float64
+	for i, x := range v1 {
+		y := v2[i] - share*x
+		w.perp[i] = y
+		n2 += y * y
+		rest := z[i]
+		if w.held {
+			rest -= a1 * x
+		}
+		s2 += y * rest
+	}
+	if !(n2 > 1e-20*q2) {
+		return
+	}
+	a2 = s2 / n2
+	if !w.held {
+		a1 = (s1 - q12*a2) / q1
+	}
+	p.amplitude = [2]float64{a1, a2}
+	if !(a1 > 0 && a2 > 0) {
+		return
+	}
+	var rss, g1, g2, u1, u2, t11, t12, t22, b11, b12, b21, b22 float64
+	for i, x := range v1 {
+		y, perp := v2[i], w.perp[i]
+		r := z[i] - a1*x - a2*y
+		w.r[i] = r
+		rss += r * r
+		d1, d2 := c[i]-m1, c[i]-m2
+		dx, dy := d1*x, d2*y
+		g1 += dx * r
+		g2 += dy * r
+		u1 += d1 * dx * r
+		u2 += d2 * dy * r
+		t11 += dx * dx
+		t12 += dx * dy
+		t22 += dy * dy
+		b11 += dx * x
+		b12 += dy * x
+		b21 += dx * perp
+		b22 += dy * perp
+	}
+	if math.IsNaN(rss) || math.IsInf(rss, 0) {
+		return
+	}
+	p.rss = rss
+	p.g = [2]float64{-a1 * g1, -a2 * g2}
+	// The amplitudes take part in two orthonormal directions, v1 and what it leaves
+	// of v2: rows c1 and c2 of the mixed derivatives, with and without residuals.
+	root1, root2 := math.Sqrt(q1), math.Sqrt(n2)
+	c1 := [2]float64{a1 * b11 / root1, a2 * b12 / root1}
+	c2 := [2]float64{a1 * b21 / root2, a2 * b22 / root2}
+	f1 := [2]float64{c1[0] - g1/root1, c1[1]}
+	f2 := [2]float64{c2[0] + share*g1/root2, c2[1] - g2/root2}
+	if w.held {
+		c1, f1 = [2]float64{}, [2]float64{}
+	}
+	tt := [3]float64{a1 * a1 * t11, a1 * a2 * t12, a2 * a2 * t22}
+	p.gn = [3]float64{
+		tt[0] - c1[0]*c1[0] - c2[0]*c2[0], tt[1] - c1[0]*c1[1] - c2[0]*c2[1], tt[2] - c1[1]*c1[1] - c2[1]*c2[1],
+	}
+	p.h = [3]float64{
+		tt[0] - a1*u1 - f1[0]*f1[0] - f2[0]*f2[0], tt[1] - f1[0]*f1[1] - f2[0]*f2[1],
+		tt[2] - a2*u2 - f1[1]*f1[1] - f2[1]*f2[1],
+	}
+}
+
+// heldAlone evaluates the first path alone with its amplitude fixed at the pivot.
+func (w *varpro) heldAlone(theta [2]float64, p *projection) {
+	v := w.v[0]
+	p.theta = theta
+	p.ln[0] = w.e.vector(theta, v)
+	a := math.Exp(w.lnHeld - theta[0]*w.pivot + p.ln[0])
+	p.amplitude[0] = a
+	var rss, g, h, gn float64
+	for i, x := range v {
+		f := a * x
+		r := w.z[i] - f
+		d := w.e.col[0][i] - w.pivot
+		rss += r * r
+		g -= d * f * r
+		h -= d * d * f * r
+		gn += d * d * f * f
+	}
+	if p.rss = rss; !finite(rss, gn) {
+		p.rss = math.Inf(1)
+	}
+	p.g, p.h, p.gn = [2]float64{g}, [3]float64{h + gn}, [3]float64{gn}
+}
+
+func (w *varpro) at(theta [2]float64, p *projection) {
+	switch {
+	case w.noOther:
+		w.heldAlone(theta, p)
+	case w.e.paths == 2 && w.dim == 2:
+		w.pair(theta, p)
+	default:
+		w.single(theta, p)
+	}
+}
+
+const (
+	// descendTol is the Newton decrement, relative to RSS, at which a search ends:
+	// RSS less the decrement is then good to far more than 1e-8.
+	descendTol   = 1e-13
+	nearTol      = 1e-9 // enough where rounding allows no more
+	descendSteps = 60
+	// exactFit is the share of the data's sum of squares that is rounding.
+	exactFit = 1e-28
+)
+
+// descend takes damped Newton steps from θ, within the bounds, to a minimum left in
+// w.cur. ok is false where it does not come to one.
+func (w *varpro) descend(theta [2]float64) (ok bool) {
+	cur := &w.cur
+	w.at(theta, cur)
+	if !(cur.rss < math.Inf(1)) {
+		return false
+	}
+	cur.decrement = 0
+	var damping float64
+	near := false
+	for range descendSteps {
+		if cur.rss <= exactFit*w.zz {
+			return true
+		}
+		var free [2]bool
+		for j := range w.dim {
+			out := cur.theta[j] <= w.low[j] && cur.g[j] >= 0 || cur.theta[j] >= w.high[j] && cur.g[j] <= 0
+			free[j] = !out && w.low[j] < w.high[j]
+		}
+		step, decrement, definite := newtonStep(&cur.h, &cur.g, free, 0)
+		if definite && decrement <= descendTol*cur.rss {
+			cur.decrement = decrement
+			return true
+		}
+		near = definite && decrement <= nearTol*cur.rss
+		if !definite || damping > 0 {
+			damping = max(damping, 1e-3)
+			if step, _, definite = newtonStep(&cur.gn, &cur.g, free, damping); !definite {
+				return near
+			}
+		}
+		next := cur.theta
+		for j := range w.dim {
+			next[j] = max(w.low[j], min(w.high[j], next[j]+step[j]))
+		}
+		w.at(next, &w.trial)
+		if w.trial.rss < cur.rss {
+			*cur = w.trial
+			if damping /= 10; damping < 1e-4 {
+				damping = 0
+			}
+			continue
+		}
+		if damping = max(1e-2, damping*10); damping > 1e10 {
+			return near
+		}
+	}
+	return near
+}
+
+// newtonStep solves (H + damping·diag H) step = -g in the free variables, and gives
+// g·H⁻¹g. definite is false where H is not positive definite.
+func newtonStep(h *[3]float64, g *[2]float64, free [2]bool, damping float64) (step [2]float64, decrement float64, definite bool) {
+	a, b, c := h[0]*(1+damping), h[1], h[2]*(1+damping)
+	switch {
+	case free[0] && free[1]:
+		det := a*c - b*b
+		if !(a > 0 && det > 1e-14*a*c) {
+			return step, 0, false
+		}
+		step = [2]float64{(b*g[1] - c*g[0]) / det, (b*g[0] - a*g[1]) / det}
+	case free[0]:
+		if !(a > 0) {
+			return step, 0, false
+		}
+		step[0] = -g[0] / a
+	case free[1]:
+		if !(c > 0) {
+			return step, 0, false
+		}
+		step[1] = -g[1] / c
+	}
+	return step, -(step[0]*g[0] + step[1]*g[1]), true
+}
+
+// value is the RSS at a minimum found by descend.
+func (p *projection) value() float64 { return p.rss - p.decrement }
+
+// fitSingle fits one exponential from the starts given and from the grid; the minimum
+// is left in w.best. ok is false where none was found.
+func (w *varpro) fitSingle(warm ...[2]float64) (ok bool) {
+	w.best.rss, w.best.decrement = math.Inf(1), 0
+	for _, start := range warm {
+		if w.descend(start) && w.cur.value() < w.best.value() {
+			w.best = w.cur
+		}
+	}
+	// Above and below no bend, or in one exponent all together: the best of each
+	// is tried if it is not far worse than what is known.
+	var cos [2]float64
+	var node [2]int
+	for j := range w.e.nodes {
+		nd := &w.e.nodes[j]
+		side := 0
+		if nd.theta[1] > 0 {
+			side = 1
+		}
+		if c := dot(nd.v, w.z); c > cos[side] {
+			cos[side], node[side] = c, j
+		}
+	}
+	worse := 4.0
+	if w.e.d == 1 {
+		worse = 1
+	}
+	for side, c := range cos {
+		if c > 0 && w.zz-c*c < worse*w.best.rss && w.descend(w.e.nodes[node[side]].theta) && w.cur.value() < w.best.value() {
+			w.best = w.cur
+		}
+	}
+	return w.best.rss < math.Inf(1)
+}
+
+// addPath fits two exponentials, from the starts given and from the places where a
+// second path helps the best single one, which is line. The minimum is left in
+// w.best; found is false where no second path helps, and ok where no minimum was
+// found though one must exist.
+//
+// Sums of any number of paths form a convex cone: where no vector of the grid has a
+// positive product with the residuals, no other sum is better (B. G. Lindsay, Ann.
+// Statist. 11 (1983) 86, has the theorem for mixtures), and the search ends.
+func (w *varpro) addPath(line *projection, warm ...[2]float64) (found, ok bool) {
+	w.best = *line
+	better := func(start [2]float64) (best bool) {
+		if w.descend(start) && w.cur.value() < w.best.value()*(1-1e-12) {
+			w.best, found = w.cur, true
+			w.at(w.cur.theta, &w.cur)
+			return w.certified(w.cur.rss)
+		}
+		return false
+	}
+	w.dim = 2
+	for _, start := range warm {
+		if better(start) {
+			return true, true
+		}
+	}
+	peaks := w.peaks(line)
+	for _, start := range peaks {
+		if better(start) {
+			return true, true
+		}
+	}
+	// One of the two paths against a third that would help them.
+	for last := math.Inf(1); found && w.best.value() < last; {
+		last = w.best.value()
+		w.at(w.best.theta, &w.trial)
+		_, third := w.steepest()
+		for _, kept := range w.best.theta {
+			if better([2]float64{kept, third}) {
+				return true, true
+			}
+		}
+	}
+	return found, found || len(peaks) == 0
+}
+
+// steepest gives the node whose vector has the largest product with the residuals in
+// w.r.
+func (w *varpro) steepest() (product, theta float64) {
+	product = math.Inf(-1)
+	for j := range w.e.nodes {
+		if p := dot(w.e.nodes[j].v, w.r); p > product {
+			product, theta = p, w.e.nodes[j].theta[0]
+		}
+	}
+	return product, theta
+}
+
+// certified reports whether no vector of the grid would lower the sum of squares of
+// the residuals in w.r.
+func (w *varpro) certified(rss float64) bool {
+	product, _ := w.steepest()
+	return product <= 1e-7*math.Sqrt(rss)
+}
+
+// peaks gives the nodes that help a single exponential most, to first order: the
+// residual's part along what line and its slope leave of the node's vector.
+func (w *varpro) peaks(line *projection) [][2]float64 {
+	v, slope, c0 := w.v[0], w.v[1], w.e.col[0]
+	w.e.vector(line.theta, v)
+	var q, mean, t float64
+	for i, x := range v {
+		q += x * x
+		mean += x * x * c0[i]
+	}
+	mean /= q
+	for i, x := range v {
+		w.r[i] = w.z[i] - line.amplitude[0]*x
+		slope[i] = (c0[i] - mean) * x
+		t += slope[i] * slope[i]
+	}
+	nodes := w.e.nodes
+	for j := range nodes {
+		var a, b, c float64
+		for i, x := range nodes[j].v {
+			a += x * v[i]
+			b += x * slope[i]
+			c += x * w.r[i]
+		}
+		w.gain[j], w.move[j] = 0, 0
+		// Nearer than that the node is the line itself.
+		if left := 1 - a*a/q - b*b/t; c > 0 && left > 1e-8 {
+			w.gain[j] = c * c / left
+			w.move[j] = -c / left * b / (t * line.amplitude[0])
+		}
+	}
+	w.starts = w.starts[:0]
+	for j, g := range w.gain {
+		if !(g > 1e-11*line.rss) || j > 0 && w.gain[j-1] > g || j+1 < len(nodes) && w.gain[j+1] >= g {
+			continue
+		}
+		start := [2]float64{line.theta[0] + w.move[j], nodes[j].theta[0]}
+		if (start[1]-start[0])*(start[1]-line.theta[0]) <= 0 || math.Abs(start[0]) > w.e.bound {
+			start[0] = line.theta[0]
+		}
+		if w.pair(start, &w.trial); !(w.trial.rss < math.Inf(1)) {
+			start[0] = line.theta[0]
+		}
+		w.starts = append(w.starts, start)
+	}
+	return w.starts
+}
+
+// pairs gives the pairs of nodes that are better than all their neighbours on the
+// grid, as starts for a search that may take its time.
+func (w *varpro) pairs() (starts [][2]float64) {
+	nodes := w.e.nodes
+	m := len(nodes)
+	with := make([]float64, m)
+	for j := range nodes {
+		with[j] = dot(nodes[j].v, w.z)
+	}
+	// gains is what a pair with positive amplitudes takes off the sum of squares.
+	gains := make([]float64, m*m)
+	for j := range m {
+		for l := range j {
+			c := dot(nodes[j].v, nodes[l].v)
+			if with[j] > c*with[l] && with[l] > c*with[j] && c < 1 {
+				gains[j*m+l] = (with[j]*with[j] - 2*c*with[j]*with[l] + with[l]*with[l]) / (1 - c*c)
+			}
+		}
+	}
+	for j := range m {
+		for l := range j {
+			g := gains[j*m+l]
+			top := g > 0
+			for a := max(0, j-1); a <= min(m-1, j+1); a++ {
+				for b := max(0, l-1); b <= l+1; b++ {
+					top = top && gains[a*m+b] <= g
+				}
+			}
+			if top {
+				starts = append(starts, [2]float64{nodes[l].theta[0], nodes[j].theta[0]})
+			}
+		}
+	}
+	return starts
+}
+
+// params fills the canonical parameters at a minimum.
+func (e *exponentials) params(p *projection, out []float64) {
+	ln := func(j int) float64 { return math.Log(p.amplitude[j]) - p.ln[j] + e.o.lnScale }
+	if e.paths == 2 {
+		a, b := 0, 1
+		if p.theta[1] < p.theta[0] {
+			a, b = 1, 0
+		}
+		out[1], out[3] = p.theta[a]*e.scale[0], p.theta[b]*e.scale[0]
+		out[0], out[2] = ln(a)-out[1]*e.centre[0], ln(b)-out[3]*e.centre[0]
+		return
+	}
+	out[0] = ln(0)
+	for j := range e.d {
+		out[1+j] = p.theta[j] * e.scale[j]
+		out[0] -= out[1+j] * e.centre[j]
+	}
+}

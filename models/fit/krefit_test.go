@@ -1,0 +1,218 @@
+package fit
+
+import (
+	"math"
+	"math/rand/v2"
+	"testing"
+
+	"onebarrier/models"
+	"onebarrier/models/reference"
+)
+
+// kSets are samples with errors in k; resamples of all but the stated one have k <= 0.
+func kSets(t testing.TB) map[string]*Sample {
+	sets := map[string]*Sample{
+		"s5 absolute":        synthetic(t, "s5_hetero", Absolute),
+		"s5 stated-absolute": synthetic(t, "s5_hetero", StatedAbsolute),
+	}
+	for name, sigma := range map[string]float64{"two paths": 0.003, "two paths in much scatter": 0.03} {
+		rng := rand.New(rand.NewPCG(5, 5))
+		temp, f := from300(15), make([]float64, 15)
+		models.Parallel{}.LnK(370, temp, []float64{-2, 15e3, -2.5, 90e3}, f, nil)
+		var k []float64
+		for i := range f {
+			k = append(k, math.Exp(f[i])+sigma*math.Exp(f[14])*rng.NormFloat64())
+		}
+		sets[name] = mustSample(t, Absolute, temp, k, ones(15))
+	}
+	return sets
+}
+
+// kResampling is a refitter of the default curves and a stream of resamples about
+// the line, the power curve and, where it has one, two paths in turn.
+type kResampling struct {
+	s      *Sample
+	curves []models.Curve
+	fits   []*Result
+	ref    *kRefitter
+	rng    *rand.Rand
+	drawn  int
+}
+
+func newKResampling(s *Sample) *kResampling {
+	r := &kResampling{s: s, curves: models.Default(), rng: rand.New(rand.NewPCG(1, 2))}
+	for _, c := range r.curves {
+		r.fits = append(r.fits, Fit(s, c))
+	}
+	r.ref = NewRefitter(s, r.curves, r.fits, RefitOptions{ShapedParams: true}).(*kRefitter)
+	return r
+}
+
+func (r *kResampling) draw() []float64 {
+	f := r.fits[[]int{0, 3, 4}[r.drawn%3]]
+	r.drawn++
+	k := make([]float64, r.s.Len())
+	for i, l := range f.Fitted {
+		k[i] = math.Exp(l) + f.Sigma*math.Sqrt(r.s.V[i])*r.rng.NormFloat64()
+	}
+	return k
+}
+
+// TestKRefitAgreesWithColdFit: RSS of refits is that of Fit from nothing to 1e-8, in
+// 99.9 % of resamples for one exponential and in 99 % for two.
+func TestKRefitAgreesWithColdFit(t *testing.T) {
+	for name, s := range kSets(t) {
+		const count = 150
+		r := newKResampling(s)
+		negative := 0
+		missed := make([]int, len(r.curves))
+		how := map[How]int{}
+		var out Refit
+		for range count {
+			k := r.draw()
+			negative += countIf(k, func(v float64) bool { return v <= 0 })
+			r.ref.Refit(k, &out)
+			how[out.How]++
+			sub := mustSample(t, s.Model, s.T, k, s.V)
+			for j, c := range r.curves {
+				cold := Fit(sub, c)
+				rss := cold.RSS
+				if cold.Status == Excluded {
+					rss = math.Inf(1)
+				}
+				if !(relErr(out.RSS[j], rss) <= 1e-8) {
+					missed[j]++
+				}
+				if line := out.RSS[0]; j > 2 && !(out.RSS[j] <= line*(1+1e-12) || math.IsInf(out.RSS[j], 1)) {
+					t.Errorf("%s: RSS %g of %s, %g of the line within it", name, out.RSS[j], c.Info().Name, line)
+				}
+			}
+		}
+		t.Logf("%s: %d k <= 0, missed %v, roads %v", name, negative, missed, how)
+		for j, n := range missed {
+			allowed := 0.001
+			if j == 4 {
+				allowed = 0.01
+			}
+			if float64(n) > allowed*count {
+				t.Errorf("%s: %s misses %d of %d", name, r.curves[j].Info().Name, n, count)
+			}
+		}
+		if float64(how[HowCold]+how[HowFailed]) > 0.05*count {
+			t.Errorf("%s: roads %v", name, how)
+		}
+	}
+}
+
+func countIf(k []float64, f func(float64) bool) (n int) {
+	for _, v := range k {
+		if f(v) {
+			n++
+		}
+	}
+	return n
+}
+
+// TestKRefitForgets: a refit does not depend on the resamples before it, nor on
+// whether all candidates are fitted or one.
+func TestKRefitForgets(t *testing.T) {
+	r := newKResampling(kSets(t)["two paths in much scatter"])
+	var ks [][]float64
+	for range 30 {
+		ks = append(ks, r.draw())
+	}
+	other := r.ref.Clone().(*kRefitter)
+	got := make([]Refit, len(ks))
+	for i := len(ks) - 1; i >= 0; i-- {
+		other.Refit(ks[i], &got[i])
+	}
+	for i, k := range ks {
+		var out, one Refit
+		r.ref.Refit(k, &out)
+		for j := range r.curves {
+			if a, b := out.P[j], got[i].P[j]; math.Float64bits(out.RSS[j]) != math.Float64bits(got[i].RSS[j]) || !sameBits(a, b) {
+				t.Errorf("resample %d, curve %d: %g %v and %g %v", i, j, out.RSS[j], a, got[i].RSS[j], b)
+			}
+			other.RefitOne(j, k, nil, &one)
+			if math.Float64bits(one.RSS[j]) != math.Float64bits(out.RSS[j]) || !sameBits(one.P[j], out.P[j]) || one.First != -1 {
+				t.Errorf("resample %d, curve %d alone: %g %v, want %g %v", i, j, one.RSS[j], one.P[j], out.RSS[j], out.P[j])
+			}
+		}
+	}
+}
+
+func sameBits(a, b []float64) bool {
+	for i := range a {
+		if math.Float64bits(a[i]) != math.Float64bits(b[i]) {
+			return false
+		}
+	}
+	return len(a) == len(b)
+}
+
+// TestKRefitCounts: an entry taken m times is one with a variance m times smaller,
+// and entries not taken do not matter, not even as NaN.
+func TestKRefitCounts(t *testing.T) {
+	r := newKResampling(kSets(t)["two paths"])
+	counts := []int{1, 2, 1, 0, 1, 3, 1, 1, 0, 1, 2, 1, 1, 0, 1}
+	sub := Sample{Model: Absolute, TRef: r.s.TRef}
+	k := append([]float64(nil), r.s.K...)
+	for i, m := range counts {
+		if m == 0 {
+			k[i] = math.NaN()
+		}
+		for range m {
+			sub.T, sub.V = append(sub.T, r.s.T[i]), append(sub.V, 1)
+			sub.K, sub.Y = append(sub.K, r.s.K[i]), append(sub.Y, r.s.Y[i])
+		}
+	}
+	var out Refit
+	r.ref.RefitCounts(k, counts, &out)
+	for j, c := range r.curves {
+		f := Fit(&sub, c)
+		reference.Close(t, c.Info().Name+" RSS", out.RSS[j], f.RSS, 1e-9)
+		for i := range f.P {
+			reference.Close(t, c.Info().Name+" parameter", out.P[j][i], f.P[i], 1e-6)
+		}
+	}
+}
+
+func TestKRefitAllocatesNothing(t *testing.T) {
+	r := newKResampling(synthetic(t, "s3_parallel", Absolute))
+	ks := [][]float64{r.draw(), r.draw(), r.draw()}
+	var out Refit
+	for _, k := range ks {
+		r.ref.Refit(k, &out)
+	}
+	if n := testing.AllocsPerRun(20, func() {
+		for _, k := range ks {
+			r.ref.Refit(k, &out)
+		}
+	}); n != 0 {
+		t.Errorf("%g allocations", n)
+	}
+}
+
+// BenchmarkKRefit is one resample of the default curves, and of single ones.
+func BenchmarkKRefit(b *testing.B) {
+	for name, s := range kSets(b) {
+		r := newKResampling(s)
+		ks := make([][]float64, 256)
+		for j := range ks {
+			ks[j] = r.draw()
+		}
+		var out Refit
+		run := func(which string, f func(k []float64)) {
+			b.Run(name+"/"+which, func(b *testing.B) {
+				b.ReportAllocs()
+				for i := range b.N {
+					f(ks[i%len(ks)])
+				}
+			})
+		}
+		run("all", func(k []float64) { r.ref.Refit(k, &out) })
+		for j, c := range r.curves {
+			run(c.Info().Name, func(k []float64) { r.ref.RefitOne(j, k, nil, &out) })
+		}
+	}
+}
