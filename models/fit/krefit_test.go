@@ -216,3 +216,50 @@ func BenchmarkKRefit(b *testing.B) {
 		}
 	}
 }
+
+// TestProjectionDerivatives compares gradient and Hessian of RSS/2 with differences
+// of RSS.
+func TestProjectionDerivatives(t *testing.T) {
+	s := synthetic(t, "s3_parallel", Absolute)
+	for name, c := range map[string]struct {
+		curve models.Curve
+		theta [2]float64
+		set   func(w *varpro)
+	}{
+		"line":           {models.Straight(), [2]float64{9, 0}, func(*varpro) {}},
+		"power":          {models.PowerPrefactor{}, [2]float64{9, 1.5}, func(*varpro) {}},
+		"two paths":      {models.Parallel{}, [2]float64{4, 20}, func(w *varpro) { w.dim = 2 }},
+		"one is held":    {models.Parallel{}, [2]float64{4, 20}, func(w *varpro) { w.dim, w.held, w.order, w.pivot, w.lnHeld = 2, true, 1, 2, 3 }},
+		"held, no other": {models.Parallel{}, [2]float64{4, 0}, func(w *varpro) { w.dim, w.held, w.noOther, w.pivot, w.lnHeld = 1, true, true, 2, 3 }},
+	} {
+		w := newVarpro(newExponentials(s, c.curve))
+		w.setData(s.K)
+		c.set(w)
+		at := func(a, b float64) projection {
+			var p projection
+			w.at([2]float64{c.theta[0] + a, c.theta[1] + b}, &p)
+			return p
+		}
+		p := at(0, 0)
+		const h = 1e-4
+		var g [2]float64
+		var hess [2][2]float64
+		for j := range w.dim {
+			d := [2]float64{}
+			d[j] = h
+			up, down := at(d[0], d[1]), at(-d[0], -d[1])
+			g[j] = (up.rss - down.rss) / (4 * h)
+			for i := range w.dim {
+				hess[j][i] = (up.g[i] - down.g[i]) / (2 * h)
+			}
+		}
+		for j := range w.dim {
+			reference.Close(t, name+" gradient", p.g[j], g[j], 1e-5)
+		}
+		reference.Close(t, name+" Hessian 11", p.h[0], hess[0][0], 1e-5)
+		if w.dim == 2 {
+			reference.Close(t, name+" Hessian 12", p.h[1], hess[0][1], 1e-5)
+			reference.Close(t, name+" Hessian 22", p.h[2], hess[1][1], 1e-5)
+		}
+	}
+}
