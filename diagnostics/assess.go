@@ -192,6 +192,9 @@ func (a *assessor) fitUnder(model fit.ErrorModel) error {
 		return a.problem("not-fittable", err.Error(), "correct the row, or leave it out with --leave-out")
 	}
 	a.data = data
+	if err := a.tooMany(); err != nil {
+		return err
+	}
 	if low, high := a.data.sample.Range(); models.SameTemperature(low, high) {
 		return a.problem("one-temperature", fmt.Sprintf("all used points lie at %g K", low), "a barrier needs at least two temperatures, its test at least four")
 	}
@@ -332,6 +335,9 @@ func (a *assessor) resample(ctx context.Context) error {
 		f := newFinding("not-resampled", "no bootstrap: "+a.untestable, nil, nil)
 		f.Cure = "measure at more temperatures"
 		a.findings = append(a.findings, f)
+		return nil
+	}
+	if a.limitResamples(); a.opt.Resamples == 0 {
 		return nil
 	}
 	s := a.data.sample

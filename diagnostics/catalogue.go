@@ -218,6 +218,16 @@ var catalogue = []Entry{
 		Cure:        "--scheme parametric, or more temperatures",
 	},
 	{
+		Code: "fewer-resamples", Title: "fewer resamples than usual", Severity: Info,
+		Explanation: "A resample costs time in proportion to the number of temperatures. Above 1000 temperatures only 999 resamples are drawn unless --resamples says otherwise, above 10,000 none. The verdict and the reported intervals do not depend on them; the repeat shares are coarser or missing.",
+		Cure:        "--resamples 9999 for all of them, however long it takes, or average neighbouring temperatures",
+	},
+	{
+		Code: "too-many-temperatures", Title: "too many temperatures", Severity: Alarm,
+		Explanation: "A data set may have 50,000 temperatures, or as many points where points at one temperature count as independent; the number of repeats is not limited. More would take gigabytes of memory, and tell no more than their means over narrow intervals of temperature: over 1 K the bend of ln k against 1/T is far below any scatter.",
+		Cure:        "average neighbouring temperatures, or select rows with --t-min, --t-max or --where",
+	},
+	{
 		Code: "no-usable-points", Title: "no usable points", Severity: Alarm,
 		Explanation: "Every row was left out, by the reader or by the selection: there is nothing to fit.",
 		Cure:        "see inspect for why each row was left out",

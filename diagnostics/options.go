@@ -28,8 +28,10 @@ type Options struct {
 	Criterion string
 	// Models are the candidates; nil takes models.Default().
 	Models []models.Curve
-	// Resamples of the bootstrap, 0 for none; default 9999.
-	Resamples int
+	// Resamples of the bootstrap, 0 for none; default 9999. Where there are more
+	// temperatures than FullyResampled it is lowered unless KeepResamples is set.
+	Resamples     int
+	KeepResamples bool
 	// Scheme of the bootstrap; "" chooses by error model.
 	Scheme string
 	// Intervals are the bootstrap methods: bootstrap-t (default), percentile, bca.

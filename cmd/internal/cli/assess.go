@@ -49,6 +49,7 @@ of temperatures and one of rate constants; - reads standard input.`,
 		Args: exactly(1, "FILE"),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.assess.Selection = selection(cmd)
+			o.assess.KeepResamples = cmd.Flags().Changed("resamples")
 			return a.runAssess(cmd.Context(), args[0], o)
 		},
 		ValidArgsFunction: completeFiles(1),
