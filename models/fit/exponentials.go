@@ -90,6 +90,45 @@ func newExponentials(s *Sample, c models.Curve) *exponentials {
 	return e
 }
 
+// taken is the problem where entry i is taken counts[i] times, its variance that many
+// times smaller. Exponents, bounds and grid keep their meaning.
+func (e *exponentials) taken(counts []int) *exponentials {
+	out := *e
+	o := *e.o
+	o.root, out.lnW, out.col = nil, nil, [2][]float64{}
+	var index []int
+	var root []float64
+	for i, m := range counts {
+		if m == 0 {
+			continue
+		}
+		r := math.Sqrt(float64(m))
+		index, root = append(index, i), append(root, r)
+		o.root = append(o.root, e.o.root[i]*r)
+		out.lnW = append(out.lnW, e.lnW[i]+math.Log(r))
+		out.col[0] = append(out.col[0], e.col[0][i])
+		if e.col[1] != nil {
+			out.col[1] = append(out.col[1], e.col[1][i])
+		}
+	}
+	out.n, out.o = len(index), &o
+	all := make([]float64, len(e.nodes)*out.n)
+	out.nodes = make([]exponentialNode, len(e.nodes))
+	for j, nd := range e.nodes {
+		v := all[j*out.n : (j+1)*out.n]
+		var norm2 float64
+		for l, i := range index {
+			v[l] = nd.v[i] * root[l]
+			norm2 += v[l] * v[l]
+		}
+		if norm2 > 0 { // else all it sees was not taken
+			floats.Scale(1/math.Sqrt(norm2), v)
+		}
+		out.nodes[j] = exponentialNode{nd.theta, v}
+	}
+	return &out
+}
+
 const (
 	// nodeAngle is the angle between neighbours of the grid in one exponent,
 	// wideAngle that of the grid in two.

@@ -62,6 +62,22 @@ func (w *kWork) add(e *exponentials, p []float64) {
 	w.curves, w.warm = append(w.curves, v), append(w.warm, warm)
 }
 
+// taken is the memory of one refit to entries taken counts times, of curve only or,
+// where that is negative, of all.
+func (w *kWork) taken(counts []int, only int) *kWork {
+	n := len(w.curves)
+	out := &kWork{
+		curves: make([]*varpro, n), warm: w.warm, line: w.line,
+		fitted: make([]bool, n), ok: make([]bool, n), found: make([]bool, n),
+	}
+	for j, v := range w.curves {
+		if v != nil && (only < 0 || j == only || j == w.line) {
+			out.curves[j] = newVarpro(v.e.taken(counts))
+		}
+	}
+	return out
+}
+
 // fit fits curve j to k, once; reset forgets. ok is false where it is left to Fit.
 func (w *kWork) fit(j int, k []float64) (ok bool) {
 	v := w.curves[j]
@@ -111,7 +127,7 @@ func (r *kRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 	if counts != nil {
 		sub = r.resample(y, counts)
 		distinct, k = sub.DistinctT(), sub.K
-		work = newKWork(sub, r.curves, r.fits)
+		work = work.taken(counts, only)
 	}
 	work.reset()
 	out.How, out.First = HowLinear, -1
