@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"onebarrier/bootstrap"
 	"onebarrier/models"
@@ -102,6 +103,9 @@ func (a *assessor) notices() {
 		}
 		a.findings = append(a.findings, f)
 	}
+	if names := sources(a.set.Points); len(names) > 1 {
+		a.find("sources-pooled", fmt.Sprintf("%d sources are taken as one: %s", len(names), list(names)), nil, nil)
+	}
 }
 
 // problem refuses the data set as a whole.
@@ -117,7 +121,19 @@ func (a *assessor) problem(code, message, cure string) error {
 func (a *assessor) fit() error {
 	points := a.set.UsedPoints()
 	if len(points) == 0 {
-		return a.problem("no-usable-points", "no row can be used", "see inspect for why each row was left out")
+		why := map[string]bool{}
+		var reasons []string
+		for _, p := range a.set.Points {
+			if p.WhyNot != "" && !why[p.WhyNot] {
+				why[p.WhyNot] = true
+				reasons = append(reasons, p.WhyNot)
+			}
+		}
+		message := "no row can be used"
+		if len(reasons) > 0 && len(reasons) <= 3 {
+			message += ": " + strings.Join(reasons, "; ")
+		}
+		return a.problem("no-usable-points", message, "see inspect for why each row was left out")
 	}
 	if err := a.chooseErrorModel(points); err != nil {
 		return err
@@ -138,6 +154,8 @@ func (a *assessor) fit() error {
 					return err
 				}
 			}
+		} else if low := 1 - chi2Tail(a.straight.RSS, a.straight.Nu); a.straight.Nu > 0 && low < 0.01 {
+			a.find("scatter-too-small", fmt.Sprintf("the points scatter less about the straight line than their stated uncertainties allow (lower tail of χ² %.2g)", low), nil, map[string]Real{"p_value": Real(low)})
 		} else if p < 0.2 {
 			a.find("chi2-low", fmt.Sprintf("χ² p = %.2g: the stated uncertainties may leave out run-to-run scatter", p), nil, map[string]Real{"p_value": Real(p)})
 		}

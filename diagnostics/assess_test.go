@@ -378,3 +378,57 @@ func TestFindingsOfTheData(t *testing.T) {
 		t.Errorf("independent points, per molecule: %v", a.Findings)
 	}
 }
+
+// Five half-lives with a bend: AICc is undefined for every curve that may be
+// recommended, and four parameters are not to be read off five points.
+func TestFewestParametersWithoutCriterion(t *testing.T) {
+	s := setOf([]float64{298.15, 308.15, 318.15, 328.15, 338.15}, []float64{1. / 120, 1. / 55, 1. / 26, 1. / 12.8, 1. / 6.4}, nil)
+	a := mustAssess(t, s, quick())
+	if a.Verdict.State != BeyondPrefactor || a.Verdict.RecommendedCurve != "power-prefactor" {
+		t.Errorf("%s, recommended %s", a.Verdict.State, a.Verdict.RecommendedCurve)
+	}
+	for _, f := range a.Findings {
+		if f.Code == "ranking-differs" && !strings.Contains(f.Message, "the exponent test excludes its exponent") {
+			t.Errorf("which reason? %s", f.Message)
+		}
+	}
+	for _, l := range a.Publish.Lines {
+		if l.Symbol == "A" || l.Symbol == "n" || l.Symbol == "E" {
+			t.Errorf("n = 15 is no prefactor, and %s is published", l.Symbol)
+		}
+	}
+}
+
+// Two paths of which only the colder was seen: the crossover lies beyond the data.
+func TestCrossoverOutside(t *testing.T) {
+	var temp, k []float64
+	for i := range 9 {
+		x := 280 + 10*float64(i)
+		temp = append(temp, x)
+		noise := 1 + 2e-4*float64(i*i%5-2)
+		k = append(k, noise*(math.Exp(20-50e3/(models.GasConstant*x))+math.Exp(46-132e3/(models.GasConstant*x))))
+	}
+	a := mustAssess(t, setOf(temp, k, nil), quick())
+	if a.Verdict.RecommendedCurve != "parallel" || !a.finding("crossover-outside") {
+		t.Errorf("recommended %s, findings %v", a.Verdict.RecommendedCurve, a.Findings)
+	}
+}
+
+func TestScatterTooSmallAndSources(t *testing.T) {
+	s := lineSet(10, 290, 350, 60e3, 0.001, 1)
+	for i := range s.Points {
+		s.Points[i].UK, s.Points[i].Level = 0.03*s.Points[i].K, dataset.LevelStandard
+		s.Points[i].Source = []string{"east", "west"}[i%2]
+	}
+	if a := mustAssess(t, s, quick()); !a.finding("scatter-too-small") || !a.finding("sources-pooled") {
+		t.Errorf("findings %v", a.Findings)
+	}
+	s = lineSet(10, 290, 350, 60e3, 0.03, 1)
+	for i := range s.Points {
+		s.Points[i].UK, s.Points[i].Level = 0.03*s.Points[i].K, dataset.LevelStandard
+		s.Points[i].Source = "east"
+	}
+	if a := mustAssess(t, s, quick()); a.finding("scatter-too-small") || a.finding("sources-pooled") {
+		t.Errorf("findings %v", a.Findings)
+	}
+}

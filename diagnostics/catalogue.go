@@ -139,6 +139,11 @@ var catalogue = []Entry{
 		Reference:   "R. B. Davies, Biometrika 74 (1987) 33",
 	},
 	{
+		Code: "crossover-outside", Title: "the crossover lies outside the measured range", Severity: Warning,
+		Explanation: "The two paths of the recommended curve would be equally fast at a temperature that was not measured: one of the paths was hardly seen, and its parameters rest on the bend alone.",
+		Cure:        "measure up to the crossover and beyond; publish the change of E over the range instead of two barriers",
+	},
+	{
 		Code: "second-barrier-rests-on-end", Title: "the second barrier rests on one temperature", Severity: Warning,
 		Explanation: "Without its hottest or its coldest temperature the second-barrier test has p > 0.20: a single end point carries the finding.",
 		Cure:        "measure there again, and beyond",
@@ -174,6 +179,11 @@ var catalogue = []Entry{
 		Cure:        "compare with --error-model scaled",
 	},
 	{
+		Code: "scatter-too-small", Title: "stated uncertainties larger than the scatter", Severity: Warning,
+		Explanation: "Chi-squared of the straight line lies in the lowest hundredth of its distribution: the points scatter less than their stated uncertainties say. Expanded uncertainties read as standard ones, or a systematic part common to all points, do that; the test then has less power than the data could give.",
+		Cure:        "check whether u(k) is a standard uncertainty without systematic parts; compare with --error-model scaled",
+	},
+	{
 		Code: "repeats-not-known", Title: "a spread of few repeats is no known uncertainty", Severity: Info,
 		Explanation: "A standard deviation from 30 repeats or fewer is itself uncertain: taken as known, triplicates raise false alarms in 28 % of straight sets of eight. The rate constants are taken as means and the scatter about the curve as their uncertainty.",
 		Cure:        "--error-model stated if the uncertainties are known otherwise",
@@ -192,6 +202,12 @@ var catalogue = []Entry{
 		Code: "perfect-data", Title: "no scatter", Severity: Warning,
 		Explanation: "The residuals are rounding error: the numbers were computed, not measured. Uncertainties derived from them have no meaning for an experiment.",
 		Cure:        "give measured rate constants, or their uncertainties",
+	},
+
+	{
+		Code: "sources-pooled", Title: "several sources taken as one", Severity: Warning,
+		Explanation: "The points come from several laboratories or methods. An offset between them is not fitted; where sources cover different temperatures it can bend the plot or hide a bend.",
+		Cure:        "assess each source by itself with --where source=NAME, and compare",
 	},
 
 	// Adequacy.

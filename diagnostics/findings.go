@@ -75,7 +75,11 @@ func RankingFindings(ranking []Ranked, s *fit.Sample, by Criterion) []Finding {
 	case len(fitted) > 0 && unchecked == len(fitted):
 		add("adequacy-unchecked", "without repeats or stated uncertainties the fit of a curve cannot be checked")
 	case len(fitted) > 0 && inadequate == len(fitted):
-		add("none-adequate", "none of the candidates fits: every one fails its adequacy test at 1 %")
+		message := "none of the candidates fits: every one fails its adequacy test at 1 %"
+		if slices.ContainsFunc(ranking[0].Adequacy, func(t Adequacy) bool { return t.Test == TestPureError }) {
+			message += "; repeats agree better with each other than with any curve, as they do too where they share an error of the thermostat"
+		}
+		add("none-adequate", message)
 	}
 	return fs
 }

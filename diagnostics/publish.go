@@ -383,9 +383,10 @@ func (w *publisher) fitted() {
 			w.transitionState(w.in.Eyring)
 		}
 	case models.PowerPrefactor:
-		w.powerLaw(math.NaN())
-		if math.Abs(r.P[2]) > 5 {
-			w.note("n beyond ±5 is no prefactor: read the change of E, or ΔC_p‡")
+		if n := r.P[2]; math.Abs(n) > 5 {
+			w.note("A, n and E are not published: n = %s is no prefactor; read the change of E, or ΔC_p‡", fixed(n, 0, 0))
+		} else {
+			w.powerLaw(math.NaN())
 		}
 		w.eAt(w.in.TMin)
 		w.eAt(w.in.TMax)

@@ -1,6 +1,8 @@
 package diagnostics
 
 import (
+	"fmt"
+
 	"onebarrier/models"
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
@@ -50,8 +52,23 @@ func (a *assessor) publishInto(doc *Assessment) {
 	if !a.set.Quantity.Known && !a.set.Quantity.Diffusion {
 		a.find("eyring-withheld", "ΔS‡ and ΔG‡ are not stated: the unit of "+symbolOf(a.set.Quantity)+" was not understood", nil, nil)
 	}
+	a.checkCrossover(doc.Ranking, low, high)
 	if doc.AtReference.Extrapolated {
 		a.find("extrapolated", kelvinText(tRef)+" K lies outside the measured range. "+Caution, nil, map[string]Real{"t_k": Real(tRef)})
+	}
+}
+
+// checkCrossover warns of a recommended curve whose crossover was not measured.
+func (a *assessor) checkCrossover(ranking []Ranked, low, high float64) {
+	for _, r := range ranking {
+		if r.Curve != a.verdict.RecommendedCurve || len(r.Forms) == 0 {
+			continue
+		}
+		for _, p := range r.Forms[0].Parameters {
+			if p.Symbol == "T_x" && (float64(p.Value) < low || float64(p.Value) > high) {
+				a.find("crossover-outside", fmt.Sprintf("the crossover at %s K lies outside the measured range, %s to %s K", fixed(float64(p.Value), 0, 0), kelvinText(low), kelvinText(high)), nil, map[string]Real{"t_x_k": p.Value})
+			}
+		}
 	}
 }
 

@@ -362,7 +362,7 @@ func decimals(width float64) int {
 	if !(width > 0) || math.IsInf(width, 0) {
 		return 2
 	}
-	return min(max(1-int(math.Floor(math.Log10(width))), 0), 9)
+	return min(max(1-int(math.Floor(math.Log10(width))), 0), 4)
 }
 
 // number prints x with a true minus sign, and no minus before zero.
@@ -424,9 +424,18 @@ func Recommend(state State, ranking []Ranked) (curve, why string) {
 			return usable(r) && (r.Curve == "root-prefactor" || r.Curve == "linear-prefactor" || r.Curve == "power-prefactor")
 		})
 	case BeyondPrefactor:
-		curve = firstCurve(ranking, func(r Ranked) bool {
-			return usable(r) && r.Params > 2 && r.identified() && (r.Adequate == nil || *r.Adequate)
-		})
+		good := func(r Ranked) bool {
+			return r.Params > 2 && r.identified() && (r.Adequate == nil || *r.Adequate)
+		}
+		curve = firstCurve(ranking, func(r Ranked) bool { return r.Status == StatusRanked && good(r) })
+		if curve == "" { // the criterion is undefined for all: the fewest parameters
+			least := math.MaxInt
+			for _, r := range ranking {
+				if r.Status == StatusFitted && good(r) && r.Params < least {
+					curve, least = r.Curve, r.Params
+				}
+			}
+		}
 	}
 	first := firstCurve(ranking, func(r Ranked) bool { return r.Status == StatusRanked })
 	if first == "" || first == curve {
@@ -442,7 +451,15 @@ func Recommend(state State, ranking []Ranked) (curve, why string) {
 	case WithinPrefactor, CurvedOpen:
 		why = fmt.Sprintf("%s ranks first; the exponent test asks for a T-dependent prefactor, and does not ask for more than that", first)
 	case BeyondPrefactor:
-		why = fmt.Sprintf("%s ranks first, but the exponent test excludes it, the data do not identify it, or it fails the adequacy test", first)
+		r := ranking[0]
+		switch {
+		case r.Params <= 2:
+			why = fmt.Sprintf("%s ranks first, but the exponent test excludes its exponent of T", first)
+		case !r.identified():
+			why = fmt.Sprintf("%s ranks first, but the data do not determine its parameters", first)
+		default:
+			why = fmt.Sprintf("%s ranks first, but it fails its adequacy test", first)
+		}
 	}
 	return curve, why
 }

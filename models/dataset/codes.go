@@ -112,7 +112,7 @@ var problemTexts = []Explanation{
 	{codeWhere, "A condition is not understood", "--where takes a heading, one of = != < <= > >=, and a value.", "write --where 'pH=7.0' or --where 'source!=Lab3'"},
 	{codeLeaveOut, "A line to be left out is not in the table", "--leave-out takes line numbers of the file, counted from 1, headings and comments included.", "look up the line with inspect"},
 	{codeDecimalOption, "The decimal mark is not understood", "--decimal takes comma or point.", "write --decimal comma or --decimal point"},
-	{codeAssume, "An assumption is not understood", "--assume takes key=value.", "use T=K|degC|degF, log=lg|ln, k=rate, factor=times|unit, error=1|2|sd, n=NUMBER"},
+	{codeAssume, "An assumption is not understood", "--assume takes key=value.", "use T=K|degC|degF, log=lg|ln, k=rate, factor=times|unit, error=1 (standard), error=2 (expanded, k = 2), error=sd, n=NUMBER"},
 }
 
 var noticeTexts = []Explanation{

@@ -219,10 +219,14 @@ func (p headingParser) settleError(h Heading) Heading {
 	return h
 }
 
-// errorLevel reads the value of --assume error=.
+// errorLevel reads the value of --assume error=: 1 or standard, another coverage
+// factor, or sd.
 func errorLevel(v string) (Kind, float64, bool) {
-	if strings.HasPrefix(v, "sd") {
+	switch {
+	case strings.HasPrefix(v, "sd"):
 		return KindRepeats, 0, true
+	case v == "standard":
+		return KindStandard, 0, true
 	}
 	c, err := strconv.ParseFloat(v, 64)
 	switch {

@@ -50,6 +50,12 @@ of temperatures and one of rate constants; - reads standard input.`,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.assess.Selection = selection(cmd)
 			o.assess.KeepResamples = cmd.Flags().Changed("resamples")
+			for _, name := range []string{"figure-format", "y", "x"} {
+				if cmd.Flags().Changed(name) && o.figures == "" {
+					return usagef("give --figures FOLDER too", "--%s is for pictures, and none are asked for", name)
+				}
+			}
+			o.assess.KeepResamples = cmd.Flags().Changed("resamples")
 			return a.runAssess(cmd.Context(), args[0], o)
 		},
 		ValidArgsFunction: completeFiles(1),

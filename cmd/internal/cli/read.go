@@ -102,7 +102,7 @@ func (a *app) readAll(ctx context.Context, name string) ([]byte, error) {
 		p := dataset.Problem{Code: "read-failed", File: name, Message: r.err.Error()}
 		var pe *fs.PathError
 		if errors.As(r.err, &pe) {
-			p.Message = pe.Err.Error()
+			p.Message, p.Cure = pe.Err.Error(), "give the name of a table that can be read"
 		}
 		if errors.Is(r.err, fs.ErrNotExist) {
 			p.Message, p.Cure = "there is no such file", "check the name and the folder"

@@ -159,7 +159,7 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 	lines := append([]string{about}, Wrap(facts, p.body())...)
 	rate := s.Quantity.Symbol + " in " + s.Quantity.Unit
 	if !s.Quantity.DimensionKnown {
-		rate = s.Quantity.Symbol + " in a unit that was not understood: entropies and free energies will be withheld"
+		rate = s.Quantity.Symbol + " without a unit: entropies and free energies will be withheld"
 		if s.Quantity.Unit != "" {
 			rate = fmt.Sprintf("%s in %q, a unit that was not understood: entropies and free energies will be withheld", s.Quantity.Symbol, s.Quantity.Unit)
 		}
@@ -173,7 +173,7 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 			role += " (" + c.Level + ")"
 		}
 		if c.Factor.Known() && c.Factor != 1 && c.Factor != 0 {
-			u = strings.TrimSpace("×" + significant(c.Factor, 4) + " " + u)
+			u = strings.TrimSpace(factor(float64(c.Factor)) + " " + u)
 		}
 		rows = append(rows, []string{or(c.Heading, unknown), role, or(u, unknown), or(c.Confidence, unknown)})
 	}
@@ -269,4 +269,12 @@ func shellWord(s string) string {
 		return s
 	}
 	return "'" + strings.ReplaceAll(s, "'", `'\''`) + "'"
+}
+
+// factor writes what a cell is multiplied by; a power of ten as one.
+func factor(x float64) string {
+	if e := math.Log10(x); e == math.Trunc(e) {
+		return "10" + superscript(int(e))
+	}
+	return significant(diagnostics.Real(x), 4) + " ×"
 }
