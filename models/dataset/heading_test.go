@@ -279,7 +279,7 @@ func TestAssumptionsSettleHeadings(t *testing.T) {
 }
 
 func FuzzHeading(f *testing.F) {
-	for _, s := range []string{"T/K", "10³ K/T", "1/kT (eV^-1)", "u(ln(k/s^-1))", "k × 10^12", "95 % CI", "t_1/2/min", "k_dec_L_mol_s", "((((", "10^", "k_{", "2σ(", "ln(", "\u202ek/s"} {
+	for _, s := range []string{"T/K", "10³ K/T", "1/kT (eV^-1)", "u(ln(k/s^-1))", "k × 10^12", "95 % CI", "t_1/2/min", "k_dec_L_mol_s", "((((", "10^", "k_{", "2σ(", "ln(", "\u202ek/s", "\ufeffT/K", "T\x00/K", "\"T/K\"", "\u0643/s^-1", "k/s\u207b\u00b9", "10^99999 k/s", "10^-999999999999 k/s", "1e999 K/T", "k/(10,5 s)", "\xb0C", "T /\u00b0\u00b0C", "U_95(lg(k))/%(k=2)", "u(u(u(k)))", "k/s/s/s/s", "\ufdfa/s", "((((((((((k))))))))))", "k\u0338/s", "\u212a", "10 10 10 k"} {
 		f.Add(s)
 	}
 	f.Fuzz(func(t *testing.T, s string) {

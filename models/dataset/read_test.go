@@ -614,6 +614,9 @@ func FuzzRead(f *testing.F) {
 		"T/K,k/s^-1\n300,1\n310,2\n", "\ufeffT/K\tk/s^-1\r\n300\t1\r\n", "\xff\xfeT\x00/\x00K\x00", "t/\xb0C;k/s^-1\n25,0;1,5\n", "T/K k/s^-1\n300 1e999\n",
 		"\"a\"\"b\",\"\n\n\"\n1,2\n", "T/K,k/s^-1\n300,1\n\n\nmean,2\n", "sep=;\n", "T,k,\n,,\n,,,,\n", "T/K,k,u(k),n,limit,source,dataset,order,note\n300,1,0.1,3,<,a,b,1,c\n",
 		"#\n#N/A,1\n2,3\n", strings.Repeat(",", 2000), "T/K,k,ln k,lg k,tau/s\n1,1,0,0,1\n", "\u202eT/K,k/s^-1\n300,1\n",
+		"\xfe\xff\x00T\x00/\x00K\x00", "\xff\xfe\x00\xd8T\x00", "T/K,k/s^-1\x00\n300,1\n", "\ufeff\ufeffT/K,k/s^-1\r300,1\r\r\n", "T/K;k/s^-1\n300,5;1.5\n", "T/K,k/s^-1\n300,\"1,234.5\"\n310,\"1.234,5\"\n",
+		"T/K,k/s^-1,note\n300,4.9e-324,\"a\"\"\"\"b\"c\"\n310,1e-330,\"\"\"\"\n", "T/K,k/s^-1\n300,\"never closed\n310,2\n", "t/\xb0C,k/s^-1,note\n25,1,\x81\x96\n", "T/K,k/s^-1,dataset\n300,1.5(2),\u0639\n310,1 \u00b1 0.1,b\n",
+		"10^3 K/T,u(T)/K,1/\u03c4\n3.3,0.1,2\n", "t/degF,t_1/2/min,f(k)\n77,5,1.2\n", "T/K,lg(k/s^-1),U(k)/s^-1 (k=2),s(k),n\n300,400,1,2,3\n", "T/K,k/s^-1\n" + strings.Repeat("300,1\n", 300), "T/K" + strings.Repeat(" ", 300) + ",k\n", "a\tb c;d,e\n1\t2 3;4,5\n",
 	} {
 		f.Add([]byte(s), "K", "comma")
 		f.Add([]byte(s), "degC", "")

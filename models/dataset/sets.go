@@ -50,38 +50,49 @@ func (m *maker) sets(p *plan, points []Point) []*Set {
 		}
 		sets = only
 	}
+	if len(byName) > 1 {
+		p.shareNotices(byName)
+	}
 	for _, s := range sets {
-		// A notice names the rows of its own set only.
-		if len(byName) > 1 {
-			s.Notices = ownNotices(s)
-		}
 		s.review(p)
 	}
 	return sets
 }
 
-func ownNotices(s *Set) []Notice {
-	mine := map[int]bool{}
-	for _, pt := range s.Points {
-		mine[pt.Row] = true
+// shareNotices leaves each set the notices that name its own rows, and those that
+// name no row of any set. One pass over all rows: there may be as many sets as rows.
+func (p *plan) shareNotices(byName map[string]*Set) {
+	setOf := map[int]*Set{}
+	for _, s := range byName {
+		s.Notices = slices.DeleteFunc(s.Notices, func(n Notice) bool { return len(n.Rows) > 0 })
+		for _, pt := range s.Points {
+			setOf[pt.Row] = s
+		}
 	}
-	var out []Notice
-	for _, n := range s.Notices {
-		if len(n.Rows) > 1 {
-			var rows []int
-			for _, r := range n.Rows {
-				if mine[r] {
-					rows = append(rows, r)
-				}
-			}
-			if len(rows) > 0 && len(rows) < len(n.Rows) {
-				n.Message = strings.Replace(n.Message, lines(n.Rows), lines(rows), 1)
-				n.Rows = rows
+	for _, n := range p.notices {
+		if len(n.Rows) == 0 {
+			continue
+		}
+		own := map[*Set][]int{}
+		for _, r := range n.Rows {
+			if s := setOf[r]; s != nil {
+				own[s] = append(own[s], r)
 			}
 		}
-		out = append(out, n)
+		for s, rows := range own {
+			mine := n
+			if len(rows) < len(n.Rows) {
+				mine.Message = strings.Replace(n.Message, lines(n.Rows), lines(rows), 1)
+				mine.Rows = rows
+			}
+			s.Notices = append(s.Notices, mine)
+		}
+		if len(own) == 0 {
+			for _, s := range byName {
+				s.Notices = append(s.Notices, n)
+			}
+		}
 	}
-	return out
 }
 
 func (m *maker) newSet(p *plan, name string) *Set {
