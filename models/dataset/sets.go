@@ -218,7 +218,8 @@ func (s *Set) review(p *plan) {
 	if n := len(distinct); n < 5 {
 		s.say(noteFew, fmt.Sprintf("%d distinct temperatures", n))
 	}
-	if len(distinct) > 1 && high-low < 20 {
+	// Exactly 20 K, read in another unit, is 20 K still.
+	if len(distinct) > 1 && high-low < 20-1e-9*high {
 		s.say(noteNarrow, fmt.Sprintf("the temperatures span %.3g K", high-low))
 	}
 	if c := p.temperature[0]; c.Form == FormDirect && len(distinct) > 0 {

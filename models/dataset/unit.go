@@ -242,7 +242,7 @@ func (t unitTerm) String() string {
 	if name == "cm^3" { // cc
 		name, e = "cm", 3*e
 	}
-	return name + "^" + strconv.FormatFloat(e, 'g', -1, 64)
+	return name + "^" + strconv.FormatFloat(e, 'f', -1, 64)
 }
 
 type unitParser struct {
