@@ -130,7 +130,7 @@ func DefaultTargets(s *fit.Sample, fits []*fit.Result) []Target {
 
 // chunk is the number of resamples a worker takes at a time, and between two
 // looks at the context.
-const chunk = 32
+const chunk = 128
 
 // Run resamples. It returns a *Refusal where the data cannot bear the scheme, and
 // ctx.Err() when it was cancelled. Inconsistent lengths in the input panic.
@@ -612,7 +612,11 @@ func (p *plan) output() *Output {
 			o.States[s]++
 			if c := p.first[b]; c >= 0 {
 				o.FirstCurve[c]++
-				o.FirstFamily[p.in.Fits[c].Curve.Info().Family]++
+			}
+		}
+		for c, n := range o.FirstCurve {
+			if n > 0 {
+				o.FirstFamily[p.in.Fits[c].Curve.Info().Family] += n
 			}
 		}
 	}
