@@ -47,7 +47,7 @@ func RankingFindings(ranking []Ranked, s *fit.Sample, by Criterion) []Finding {
 		if _, ok := best[r.Family]; !ok {
 			best[r.Family] = r.Delta
 		}
-		if r.Delta-best[r.Family] < 2 {
+		if r.InSet && r.Delta-best[r.Family] < 2 { // of hopeless families nobody asks
 			members[r.Family] = append(members[r.Family], r.Curve)
 		}
 	}
