@@ -609,6 +609,28 @@ func TestInputIsNotModified(t *testing.T) {
 	}
 }
 
+// A range of exactly 20 K is not narrow, whatever unit rounds its ends.
+func TestRangeOf20KInEveryUnit(t *testing.T) {
+	for half := -80; half < 120; half++ {
+		c := float64(half) / 2
+		for _, file := range []string{
+			fmt.Sprintf("T/K,k/s^-1\n%.2f,1\n%.2f,2\n", c+273.15, c+293.15),
+			fmt.Sprintf("t/degC,k/s^-1\n%.1f,1\n%.1f,2\n", c, c+20),
+			fmt.Sprintf("t/degF,k/s^-1\n%.1f,1\n%.1f,2\n", 1.8*c+32, 1.8*(c+20)+32),
+		} {
+			sets, err := Read("x.csv", strings.NewReader(file), Options{})
+			if err != nil {
+				t.Fatal(err)
+			}
+			for _, n := range sets[0].Notices {
+				if n.Code == noteNarrow {
+					t.Errorf("%q: %s", file, n.Message)
+				}
+			}
+		}
+	}
+}
+
 func FuzzRead(f *testing.F) {
 	for _, s := range []string{
 		"T/K,k/s^-1\n300,1\n310,2\n", "\ufeffT/K\tk/s^-1\r\n300\t1\r\n", "\xff\xfeT\x00/\x00K\x00", "t/\xb0C;k/s^-1\n25,0;1,5\n", "T/K k/s^-1\n300 1e999\n",
