@@ -203,6 +203,9 @@ func ParseUnit(text string) (Unit, error) {
 		return Unit{}, errUnit
 	}
 	u.Text = strings.Join(names, " ")
+	if len(u.Text) > longestUnit { // could not be read back
+		return Unit{}, errUnit
+	}
 	if len(terms) == 1 && terms[0].exp == 1 {
 		u.Zero = terms[0].base.zero
 	}
@@ -238,11 +241,7 @@ func (t unitTerm) String() string {
 	if t.exp == 1 {
 		return name
 	}
-	e := t.exp
-	if name == "cm^3" { // cc
-		name, e = "cm", 3*e
-	}
-	return name + "^" + strconv.FormatFloat(e, 'f', -1, 64)
+	return name + "^" + strconv.FormatFloat(t.exp, 'f', -1, 64)
 }
 
 type unitParser struct {
@@ -345,6 +344,9 @@ func (p *unitParser) item(depth int) ([]unitTerm, float64, error) {
 			return nil, 0, errUnit
 		}
 		terms = []unitTerm{{base, 1}}
+		if base.name == "cm^3" { // cc
+			terms[0] = unitTerm{baseUnits["cm"], 3}
+		}
 	}
 	exp, err := p.exponent()
 	return terms, exp, err
