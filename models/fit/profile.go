@@ -130,6 +130,11 @@ func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	}
 	lower, okLower := end(-step, smin, criterion)
 	upper, okUpper := end(step, smin, criterion)
+	return e.between(lower, upper, okLower, okUpper)
+}
+
+// between returns the estimate with these ends; an end that was not found is open.
+func (e Estimate) between(lower, upper float64, okLower, okUpper bool) Estimate {
 	e.Lower, e.Upper = lower, upper
 	switch {
 	case !okLower && !okUpper:

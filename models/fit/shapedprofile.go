@@ -54,16 +54,7 @@ func ProfileShaped(s *Sample, r *Result, param string, confidence float64) Estim
 	}
 	lower, okLower := f.end(-step, smin, rise)
 	upper, okUpper := f.end(step, smin, rise)
-	e.Lower, e.Upper = lower, upper
-	switch {
-	case !okLower && !okUpper:
-		e.Open = OpenBoth
-	case !okLower:
-		e.Open = OpenLower
-	case !okUpper:
-		e.Open = OpenUpper
-	}
-	return e
+	return e.between(lower, upper, okLower, okUpper)
 }
 
 // shapedProfile fits ln k = line(θ) + shape with one path's line held to θ: the

@@ -154,16 +154,7 @@ func drawChange(a *diagnostics.Assessment, d *Change) (picture, error) {
 	area := draw.Crop(page, margin, -margin-3, margin, -(margin + head.height() + headGap))
 	place, found := leg.place(p, func() draw.Canvas { return p.DataCanvas(area) }, obstacles)
 	addFixed(p, frame{})
-	return leg.complete(picture{
-		name: "change-of-e", width: pageWidth, height: h,
-		title: head.inWords(""),
-		draw: func(c draw.Canvas) {
-			fillPage(c)
-			head.draw(draw.Crop(c, margin, -margin, 0, -margin))
-			area.Canvas = c.Canvas
-			p.Draw(area)
-		},
-	}, place, found), nil
+	return leg.complete(onePanel("change-of-e", head, p, area, h), place, found), nil
 }
 
 // whole keeps an axis of counts to whole numbers.

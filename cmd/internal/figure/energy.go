@@ -85,14 +85,5 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 	inner := p.DataCanvas(area)
 	toX := func(t float64) float64 { return t }
 	addFixed(p, frame{celsiusTicks(p, inner.Max.X-inner.Min.X, toX, xLow, xHigh), "*t*/°C"})
-	return leg.complete(picture{
-		name: "activation-energy", width: pageWidth, height: h,
-		title: head.inWords(""),
-		draw: func(c draw.Canvas) {
-			fillPage(c)
-			head.draw(draw.Crop(c, margin, -margin, 0, -margin))
-			area.Canvas = c.Canvas
-			p.Draw(area)
-		},
-	}, place, found), nil
+	return leg.complete(onePanel("activation-energy", head, p, area, h), place, found), nil
 }

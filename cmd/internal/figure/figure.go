@@ -14,6 +14,7 @@ import (
 	"strings"
 
 	"gonum.org/v1/gonum/unit/constant"
+	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
 	"gonum.org/v1/plot/vg/vgimg"
@@ -243,4 +244,18 @@ type unmultiplied color.NRGBA
 // RGBA implements color.Color.
 func (u unmultiplied) RGBA() (r, g, b, a uint32) {
 	return uint32(u.R) * 0x101, uint32(u.G) * 0x101, uint32(u.B) * 0x101, uint32(u.A) * 0x101
+}
+
+// onePanel is a picture of a header and one plot below it.
+func onePanel(name string, head header, p *plot.Plot, area draw.Canvas, height vg.Length) picture {
+	return picture{
+		name: name, width: pageWidth, height: height,
+		title: head.inWords(""),
+		draw: func(c draw.Canvas) {
+			fillPage(c)
+			head.draw(draw.Crop(c, margin, -margin, 0, -margin))
+			area.Canvas = c.Canvas
+			p.Draw(area)
+		},
+	}
 }
