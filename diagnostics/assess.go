@@ -104,7 +104,12 @@ func (a *assessor) notices() {
 		a.findings = append(a.findings, f)
 	}
 	if names := sources(a.set.Points); len(names) > 1 {
-		a.find("sources-pooled", fmt.Sprintf("%d sources are taken as one: %s", len(names), list(names)), nil, nil)
+		const most = 5 // more are counted, not named
+		who := names
+		if len(names) > most {
+			who = append(slices.Clone(names[:most]), fmt.Sprintf("%d more", len(names)-most))
+		}
+		a.find("sources-pooled", fmt.Sprintf("%d sources are taken as one: %s", len(names), list(who)), nil, nil)
 	}
 }
 
