@@ -277,11 +277,15 @@ func (p *plan) exactlyKnown() bool {
 	return p.opt.Scheme == Parametric && p.in.Sample.Model.KnownSigma()
 }
 
-// scatters reports √(RSS/N) >= 10⁻¹² max |y|/√V.
+// scatters reports √(RSS/N) >= 10⁻¹² max |y|/√V, with |ln k| no less than 1.
 func (p *plan) scatters(f *fit.Result) bool {
+	least := 1.0 // ln k near 0 is rounded as k is, to parts of 1
+	if p.in.Sample.Model.InK() {
+		least = 0
+	}
 	var most float64
 	for i, y := range p.y {
-		most = math.Max(most, math.Abs(y)/math.Sqrt(p.in.Sample.V[i]))
+		most = math.Max(most, math.Max(math.Abs(y), least)/math.Sqrt(p.in.Sample.V[i]))
 	}
 	return math.Sqrt(f.RSS/float64(len(p.y))) >= 1e-12*most
 }

@@ -432,3 +432,26 @@ func TestScatterTooSmallAndSources(t *testing.T) {
 		t.Errorf("findings %v", a.Findings)
 	}
 }
+
+// Constant k, ln k = 0 even, is as perfect as any other computed data.
+func TestConstantRate(t *testing.T) {
+	for _, k := range []float64{1, 3e-5} {
+		o := DefaultOptions()
+		o.Resamples = 99
+		a := mustAssess(t, setOf([]float64{300, 310, 320, 330, 340}, []float64{k, k, k, k, k}, nil), o)
+		if !a.finding("perfect-data") || !a.finding("not-resampled") || a.Verdict.State.Curved() {
+			t.Errorf("k = %g: %s, findings %v", k, a.Verdict.State, a.Findings)
+		}
+	}
+}
+
+// Without a signal the reason is the noise, not the arithmetic.
+func TestNoSignal(t *testing.T) {
+	o := quick()
+	o.ErrorModel = fit.Absolute
+	s := setOf([]float64{300, 310, 320, 330, 340, 350}, []float64{0.001, -0.002, 0.001, 0.003, -0.001, 0.002}, nil)
+	a := mustAssess(t, s, o)
+	if a.Verdict.State != Untestable || !strings.Contains(a.Verdict.Sentence, "standard deviation") {
+		t.Errorf("%s: %s", a.Verdict.State, a.Verdict.Sentence)
+	}
+}

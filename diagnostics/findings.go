@@ -105,7 +105,7 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
 	low, high := s.Range()
 	where := ""
 	if b.Crossover[0].Known() && b.Crossover[1].Known() {
-		where = fmt.Sprintf(" between %.4g and %.4g K", float64(b.Crossover[0]), float64(b.Crossover[1]))
+		where = fmt.Sprintf(" between %.5g and %.5g K", float64(b.Crossover[0]), float64(b.Crossover[1]))
 	}
 	approximate := ""
 	if s.Model.InK() {
@@ -122,7 +122,7 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
 	end := func(p Real, t float64) {
 		if p > 0.20 {
 			fs = append(fs, newFinding("second-barrier-rests-on-end",
-				fmt.Sprintf("without the point at %.6g K the second-barrier test has p = %s: the finding rests on the point at %.6g K; measure there again", t, pText(float64(p)), t),
+				fmt.Sprintf("without the point at %.6g K the second-barrier test has p = %s: the finding rests on the point at %.6g K", t, pText(float64(p)), t),
 				nil, map[string]Real{"t_k": Real(t), "p_value": p}))
 		}
 	}
@@ -144,9 +144,9 @@ func borderline(p float64) Finding {
 		fmt.Sprintf("p = %s is near 0.05: leaving out almost any point can change the verdict", pText(p)), nil, map[string]Real{"p_value": Real(p)})
 }
 
-func notAPrefactor(n, changeKJ float64) Finding {
+func notAPrefactor(n float64, change string) Finding {
 	return newFinding("exponent-not-a-prefactor",
-		fmt.Sprintf("n = %s is no prefactor: read ΔE = %s kJ/mol or ΔC_p‡", number(n, 1), signed(changeKJ, decimals(changeKJ))),
+		fmt.Sprintf("n = %s is no prefactor: read ΔE = %s or ΔC_p‡", number(n, 1), change),
 		nil, map[string]Real{"n": Real(n)})
 }
 

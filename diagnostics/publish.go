@@ -344,7 +344,7 @@ func (w *publisher) none() {
 		if w.in.PowerAdequate != nil && !*w.in.PowerAdequate {
 			w.note("power-prefactor fails its adequacy test as well: its E_a tell the trend, and their uncertainties are too small; k at the reference temperature is not stated")
 		} else {
-			w.note("k at the reference temperature is by power-prefactor, which is not recommended")
+			w.note("k at the reference temperature, in the JSON, is by power-prefactor, which is not recommended")
 		}
 	}
 	w.measuredRange()

@@ -105,13 +105,13 @@ func noScatter(s *fit.Sample, rss float64) bool { return rss < rssFloor(s) }
 
 // rssFloor is N (1e-12 max|y|)², with y in units of sqrt(V) as RSS is.
 func rssFloor(s *fit.Sample) float64 {
-	y := s.Y
+	y, least := s.Y, 1.0 // ln k near 0 is rounded as k is, to parts of 1
 	if s.Model.InK() {
-		y = s.K
+		y, least = s.K, 0
 	}
 	var most float64
 	for i, v := range y {
-		most = math.Max(most, v*v/s.V[i])
+		most = math.Max(most, math.Max(v*v, least)/s.V[i])
 	}
 	return float64(len(y)) * 1e-24 * most
 }

@@ -149,13 +149,7 @@ func Testable(s *fit.Sample, power *fit.Result) (ok bool, more int, why string) 
 	if power == nil {
 		return true, 0, ""
 	}
-	if power.Status != fit.Converged || power.Cov == nil {
-		return false, 1, "the exponent of T is not identified: " + power.Reason
-	}
-	if power.Nu < 1 {
-		return false, 1, "no degree of freedom is left"
-	}
-	if s.Model.InK() {
+	if s.Model.InK() && power.Usable() && power.Nu > 0 {
 		var above []float64
 		for i, t := range s.T {
 			if math.Exp(power.Fitted[i]) > 3*power.Sigma*math.Sqrt(s.V[i]) {
@@ -166,6 +160,12 @@ func Testable(s *fit.Sample, power *fit.Result) (ok bool, more int, why string) 
 			return false, minTemperatures - d, fmt.Sprintf(
 				"at only %s does the fitted k exceed three times its standard deviation", count(d, "temperature"))
 		}
+	}
+	if power.Status != fit.Converged || power.Cov == nil {
+		return false, 1, "the exponent of T is not identified: " + power.Reason
+	}
+	if power.Nu < 1 {
+		return false, 1, "no degree of freedom is left"
 	}
 	return true, 0, ""
 }
@@ -220,7 +220,7 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	t := in.Test
 	add(v.State.Curved() && in.restsOnStated(), func() Finding { return restsOnStated(t.PValue, t.PScaleFree) })
 	add(!in.Untestable && t.PValue >= 0.01 && t.PValue <= 0.1, func() Finding { return borderline(t.PValue) })
-	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding { return notAPrefactor(t.Exponent.Value, t.Change.Value) })
+	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding { return notAPrefactor(t.Exponent.Value, in.signedEnergy(t.Change.Value)) })
 	add(in.PerMolecule && !in.Untestable && in.Rule.Band[1] < 3, func() Finding { return bandNarrow(in.Rule.Band) })
 	if b := in.SecondBarrier; b.found() {
 		fs = append(fs, secondBarrierFound(b, in.Sample)...)
@@ -355,6 +355,12 @@ func (in *VerdictInput) inUnit(e fit.Estimate) fit.Estimate {
 func (in *VerdictInput) energy(kj float64) string {
 	x := in.inUnit(fit.Estimate{Value: kj}).Value
 	return number(x, decimals(x)) + " " + in.unit()
+}
+
+// signedEnergy is energy with a sign before what is positive too.
+func (in *VerdictInput) signedEnergy(kj float64) string {
+	x := in.inUnit(fit.Estimate{Value: kj}).Value
+	return signed(x, decimals(math.Abs(x))) + " " + in.unit()
 }
 
 // decimals is how many decimals show two figures of a width.

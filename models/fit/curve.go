@@ -111,7 +111,7 @@ func fitBasis(s *Sample, c models.Basis) *Result {
 		r.Reason = fmt.Sprintf("needs at least %d distinct temperatures, has %d", p, d)
 	} else if cov == nil {
 		r.Status = NotIdentified
-		r.Reason = fmt.Sprintf("the temperatures lie too close together for %d parameters (condition number %.1e)", p, f.Condition)
+		r.Reason = fmt.Sprintf("the temperatures lie too close together for %d parameters", p)
 	}
 	r.settle(s, cov, 1)
 	return r

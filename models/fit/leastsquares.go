@@ -405,7 +405,7 @@ func (s *solver) finish(pr Problem, sol *Solution) {
 	if !(sol.Condition <= maxCondition) {
 		sol.Cov = nil
 		sol.Status = NotIdentified
-		sol.Reason = fmt.Sprintf("the data do not determine all %d parameters (condition number %.1e)", n, sol.Condition)
+		sol.Reason = fmt.Sprintf("the data do not determine all %d parameters", n)
 	}
 	for j := range n {
 		if !(s.scale[j] >= faded*s.diag[j]) {

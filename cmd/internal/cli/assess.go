@@ -120,7 +120,9 @@ func (a *app) runAssess(ctx context.Context, file string, o *assessOptions) erro
 	}
 	o.assess.Version = version()
 	done := a.trackProgress(&o.assess)
-	result, err := diagnostics.Assess(ctx, set, o.assess)
+	result, err := interruptible(ctx, func() (*diagnostics.Assessment, error) {
+		return diagnostics.Assess(ctx, set, o.assess)
+	})
 	done()
 	if err != nil {
 		return err
@@ -233,5 +235,35 @@ func (p *progress) show(done, total int) {
 func (p *progress) clear() {
 	if p.used {
 		fmt.Fprint(p.w, "\r\x1b[K")
+	}
+}
+
+// interruptible runs work that looks at ctx only now and then, and leaves it behind
+// when ctx ends: a fit of many points is not waited for. A panic of the work is one
+// of the caller.
+func interruptible[T any](ctx context.Context, work func() (T, error)) (T, error) {
+	type outcome struct {
+		result   T
+		err      error
+		panicked any
+	}
+	done := make(chan outcome, 1)
+	go func() {
+		var o outcome
+		defer func() {
+			o.panicked = recover()
+			done <- o
+		}()
+		o.result, o.err = work()
+	}()
+	select {
+	case o := <-done:
+		if o.panicked != nil {
+			panic(o.panicked)
+		}
+		return o.result, o.err
+	case <-ctx.Done():
+		var none T
+		return none, ctx.Err()
 	}
 }

@@ -214,3 +214,23 @@ func TestTidyReadsBack(t *testing.T) {
 		t.Errorf("an existing file is overwritten: exit code %d", code)
 	}
 }
+
+// Work that does not look at its context is left behind when the context ends; its
+// panic is the caller's.
+func TestInterruptible(t *testing.T) {
+	ctx, cancel := context.WithCancel(context.Background())
+	never := make(chan struct{})
+	cancel()
+	if _, err := interruptible(ctx, func() (int, error) { <-never; return 1, nil }); !errors.Is(err, context.Canceled) {
+		t.Errorf("%v", err)
+	}
+	if v, err := interruptible(context.Background(), func() (int, error) { return 7, nil }); v != 7 || err != nil {
+		t.Errorf("%d, %v", v, err)
+	}
+	defer func() {
+		if recover() != "lost" {
+			t.Error("the panic was swallowed")
+		}
+	}()
+	interruptible(context.Background(), func() (int, error) { panic("lost") })
+}

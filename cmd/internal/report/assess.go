@@ -163,7 +163,11 @@ func (p *page) test(a *diagnostics.Assessment) {
 	if s := c.SecondBarrier; s != nil {
 		text := fmt.Sprintf("p = %s", probability(s.PValue))
 		if s.PValue < 0.05 && s.Crossover[0].Known() {
-			text += fmt.Sprintf(", crossover %s to %s\u00a0K", plain(s.Crossover[0], 0), plain(s.Crossover[1], 0))
+			digits := 0
+			if s.Crossover[1]-s.Crossover[0] < 10 {
+				digits = 2
+			}
+			text += fmt.Sprintf(", crossover %s to %s\u00a0K", plain(s.Crossover[0], digits), plain(s.Crossover[1], digits))
 		}
 		rows = append(rows, []string{"second barrier, E rising", text},
 			[]string{"false alarm, straight data", falseAlarms(a.Dataset.Temperatures)})
@@ -176,7 +180,8 @@ func (p *page) test(a *diagnostics.Assessment) {
 			}
 		}
 	}
-	if b := a.Bootstrap; b != nil && len(b.RepeatShare) > 0 {
+	// Where every candidate is rejected, resamples come from curves known to be wrong.
+	if b := a.Bootstrap; b != nil && len(b.RepeatShare) > 0 && a.Verdict.RecommendedCurve != "" {
 		var shares []string
 		states := slices.Clone(diagnostics.States)
 		slices.SortStableFunc(states, func(x, y diagnostics.State) int { return cmp.Compare(b.RepeatShare[y], b.RepeatShare[x]) })
@@ -238,7 +243,7 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 	criterion := map[string]string{"aicc": "AICc", "aic": "AIC", "bic": "BIC"}[a.Settings.Criterion]
 	rows := [][]string{{other + "curve", "p", criterion, "Δ", "family", "weight", "repeats", "fits"}}
 	standIn := criterion == "AICc" && slices.ContainsFunc(a.Ranking, func(r diagnostics.Ranked) bool { return !r.AICc.Known() && r.AIC.Known() })
-	inSet, repeats, intervals := false, false, false
+	inSet, repeats, intervals, saturated := false, false, false, false
 	for _, r := range a.Ranking {
 		if r.Status == "excluded" {
 			continue
@@ -259,6 +264,7 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 			mark, inSet = marked, true
 		}
 		repeats = repeats || r.RepeatShare.Known()
+		saturated = saturated || !r.AIC.Known()
 		rows = append(rows, []string{mark + r.Curve, fmt.Sprint(r.Params), value, plain(r.Delta, 2),
 			percent(r.FamWeight), percent(r.Weight), percent(r.RepeatShare), fits})
 	}
@@ -296,6 +302,9 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 	}
 	if standIn {
 		legend = append(legend, "†: AIC, AICc undefined: needs N ≥ p + 3")
+	}
+	if saturated {
+		legend = append(legend, "–: passes through every point, no likelihood")
 	}
 	if inSet {
 		legend = append(legend, "family, weight: share of the evidence")
