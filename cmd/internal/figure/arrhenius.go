@@ -54,8 +54,9 @@ func verdictWords(a *diagnostics.Assessment) string {
 	case diagnostics.CurvedOpen:
 		return "Curved: cause open" + trend
 	case diagnostics.StraightWithin:
-		if tol := float64(a.Curvature.ToleranceKJ); tol > 0 {
-			return "Straight within ±" + number(tol, decimalsFor(tol)) + " kJ/mol"
+		sc := scaleOf(a)
+		if tol := sc.perKJ * float64(a.Curvature.ToleranceKJ); tol > 0 {
+			return "Straight within ±" + number(tol, decimalsFor(tol)) + " " + sc.unit
 		}
 		return "Straight"
 	case diagnostics.Unresolved:

@@ -100,7 +100,7 @@ func drawChange(a *diagnostics.Assessment, d *Change) (picture, error) {
 	xLow, xHigh := xs.padded(0.03, 1e-9)
 	barsTop := float64(most)
 	guideTop := barsTop * 1.16
-	p := newPlot(xLow, xHigh, 0, barsTop*1.2, "Δ*E*/(kJ mol^{−1})", "resamples")
+	p := newPlot(xLow, xHigh, 0, barsTop*1.2, d.scale.label("Δ*E*"), "resamples")
 	p.Y.Tick.Marker = whole{linear{5}}
 
 	var leg legend
@@ -116,7 +116,7 @@ func drawChange(a *diagnostics.Assessment, d *Change) (picture, error) {
 		low, high := rule{-d.Tolerance, math.NaN(), sty, guideTop}, rule{d.Tolerance, math.NaN(), sty, guideTop}
 		addFixed(p, low, high)
 		obstacles = append(obstacles, obstacle{-d.Tolerance, 0, guideTop}, obstacle{d.Tolerance, 0, guideTop})
-		leg.entry(fmt.Sprintf("tolerance ±%s kJ/mol", number(d.Tolerance, decimalsFor(d.Tolerance))), low)
+		leg.entry(fmt.Sprintf("tolerance ±%s %s", number(d.Tolerance, decimalsFor(d.Tolerance)), d.scale.unit), low)
 	}
 	zero := rule{0, math.NaN(), draw.LineStyle{Color: ink, Width: vg.Points(0.9), Dashes: []vg.Length{4, 2}}, guideTop}
 	addFixed(p, zero)

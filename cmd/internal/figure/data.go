@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"gonum.org/v1/gonum/mat"
 	"gonum.org/v1/gonum/stat"
@@ -277,15 +278,41 @@ func (l Line) mapped(f func(i int, v float64) float64) Line {
 	return l
 }
 
-// Energy is what the figure of the local activation energy shows: X in K, Y in
-// kJ/mol.
+// scale is the unit in which energies are drawn: what a kJ/mol is in it, what the
+// symbol E is divided by to have it, and how it is written.
+type scale struct {
+	perKJ           float64
+	per, unit, axis string
+}
+
+// scaleOf is the energy unit of an assessment.
+func scaleOf(a *diagnostics.Assessment) scale {
+	u := diagnostics.UnitOfEnergy(a.Settings.EnergyUnit)
+	axis := map[string]string{"kJ/mol": "(kJ mol^{−1})", "kcal/mol": "(kcal mol^{−1})", "cm^-1": "cm^{−1}"}[u.Name]
+	if axis == "" {
+		axis = u.Name
+	}
+	return scale{u.PerKJ, u.Per, u.Name, axis}
+}
+
+// label is an axis title such as E/(kJ mol⁻¹), or (E/R)/K.
+func (s scale) label(symbol string) string {
+	if s.per != "" {
+		symbol = "(" + symbol + "/*" + strings.TrimPrefix(s.per, "/") + "*)"
+	}
+	return symbol + "/" + s.axis
+}
+
+// Energy is what the figure of the local activation energy shows: X in K, Y in the
+// energy unit of the assessment.
 type Energy struct {
+	scale scale
 	Lines []Line
 	// TEff is the temperature whose E_loc the straight line estimates without
 	// bias, and E the straight line's E; NaN where unknown.
 	TEff, E float64
 	// Wedge is the region of an E_loc that is linear in T, passes through
-	// (TEff, E) and changes by no more than Tolerance (kJ/mol) over the measured
+	// (TEff, E) and changes by no more than Tolerance over the measured
 	// range: its half-height at T is Tolerance |T - TEff|/(T_max - T_min). It is
 	// nil unless the verdict is straight-within.
 	Wedge      []Wedge
@@ -307,14 +334,15 @@ func NewEnergy(a *diagnostics.Assessment) *Energy {
 	if second == "" || second == "straight" {
 		second = "power-prefactor"
 	}
-	d := &Energy{TEff: float64(a.Dataset.TEff), E: math.NaN(), Tolerance: float64(a.Curvature.ToleranceKJ), Confidence: confidence(a)}
+	sc := scaleOf(a)
+	d := &Energy{scale: sc, TEff: float64(a.Dataset.TEff), E: math.NaN(), Tolerance: sc.perKJ * float64(a.Curvature.ToleranceKJ), Confidence: confidence(a)}
 	t := grid(a.Sample)
 	for _, name := range []string{"straight", second} {
 		r := usable(a, name)
 		if r == nil {
 			continue
 		}
-		l := newLine(r, t, d.Confidence, models.Curve.ELoc).mapped(func(_ int, v float64) float64 { return v / kilo })
+		l := newLine(r, t, d.Confidence, models.Curve.ELoc).mapped(func(_ int, v float64) float64 { return v / kilo * sc.perKJ })
 		l.Recommended = name == a.Verdict.RecommendedCurve
 		copy(l.X, t)
 		d.Lines = append(d.Lines, l)
@@ -335,8 +363,10 @@ func NewEnergy(a *diagnostics.Assessment) *Energy {
 	return d
 }
 
-// Change is what the figure of the change of E shows, in kJ/mol.
+// Change is what the figure of the change of E shows, in the energy unit of the
+// assessment.
 type Change struct {
+	scale scale
 	// Edges holds one more edge than there are Counts.
 	Edges  []float64
 	Counts []int
@@ -361,21 +391,23 @@ func NewChange(a *diagnostics.Assessment) *Change {
 	if a == nil {
 		return nil
 	}
+	sc := scaleOf(a)
 	var vs []float64
 	for _, v := range a.ChangeOfE {
 		if !math.IsNaN(v) && !math.IsInf(v, 0) {
-			vs = append(vs, v)
+			vs = append(vs, sc.perKJ*v)
 		}
 	}
 	if len(vs) == 0 {
 		return nil
 	}
 	slices.Sort(vs)
-	e := a.Curvature.EChange
+	e := a.Curvature.EChange.Times(sc.perKJ)
 	d := &Change{
+		scale:     sc,
 		Resamples: len(a.ChangeOfE), Generator: models.PowerPrefactor{}.Info().Name, Scheme: a.Settings.Scheme,
 		Estimate: float64(e.Value), Lower: float64(e.Lower), Upper: float64(e.Upper),
-		Tolerance: float64(a.Curvature.ToleranceKJ), Confidence: confidence(a),
+		Tolerance: sc.perKJ * float64(a.Curvature.ToleranceKJ), Confidence: confidence(a),
 	}
 	if a.Bootstrap != nil && a.Bootstrap.Scheme != "" {
 		d.Scheme = a.Bootstrap.Scheme

@@ -169,6 +169,33 @@ func TestEnergyAgainstR(t *testing.T) {
 	}
 }
 
+// Energies in the unit of the assessment: a kcal is 4.184 kJ, and E/R is in K.
+func TestEnergiesInTheirUnit(t *testing.T) {
+	a := sixRates(t, fit.Relative)
+	a.ChangeOfE = []float64{-2, 0, 1, 3}
+	kj, change := NewEnergy(a), NewChange(a)
+	for unit, c := range map[string]struct {
+		per  float64
+		axis string
+	}{
+		"kcal/mol": {1 / 4.184, "*E*/(kcal mol^{−1})"},
+		"K":        {1000 / 8.31446261815324, "(*E*/*R*)/K"},
+		"eV":       {1 / 96.48533212331, "*E*/eV"}, // CODATA 2018: F = 96485.33212331 C/mol
+		"cm^-1":    {83.5934722514, "(*E*/*hc*)/cm^{−1}"},
+	} {
+		a.Settings.EnergyUnit = unit
+		d, ch := NewEnergy(a), NewChange(a)
+		reference.Close(t, unit, d.E, kj.E*c.per, 1e-9)
+		reference.Close(t, unit+" upper end", d.Lines[0].Upper[3], kj.Lines[0].Upper[3]*c.per, 1e-9)
+		reference.Close(t, unit+" tolerance", d.Tolerance, kj.Tolerance*c.per, 1e-9)
+		reference.Close(t, unit+" change", ch.Estimate, change.Estimate*c.per, 1e-9)
+		reference.Close(t, unit+" last edge", ch.Edges[len(ch.Edges)-1], change.Edges[len(change.Edges)-1]*c.per, 1e-9)
+		if got := d.scale.label("*E*"); got != c.axis {
+			t.Errorf("%s: axis %q, want %q", unit, got, c.axis)
+		}
+	}
+}
+
 func TestToleranceWedge(t *testing.T) {
 	a := sixRates(t, fit.Relative)
 	a.Verdict.State = diagnostics.StraightWithin

@@ -36,7 +36,7 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 	xLow, xHigh := xs.padded(0.04, 1e-6*math.Abs(xs.low))
 	yLow, yHigh := ys.padded(0.06, 1e-6)
 	xLow = math.Max(0, xLow)
-	p := newPlot(xLow, xHigh, yLow, yHigh, "*T*/K", "*E*_{loc}/(kJ mol^{−1})")
+	p := newPlot(xLow, xHigh, yLow, yHigh, "*T*/K", d.scale.label("*E*_{loc}"))
 
 	var leg legend
 	var obstacles []obstacle
@@ -72,7 +72,7 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 		}
 	}
 	if len(d.Wedge) > 0 {
-		leg.entry(fmt.Sprintf("Δ*E* within ±%s kJ/mol", number(d.Tolerance, decimalsFor(d.Tolerance))), swatch{wedgeColor})
+		leg.entry(fmt.Sprintf("Δ*E* within ±%s %s", number(d.Tolerance, decimalsFor(d.Tolerance)), d.scale.unit), swatch{wedgeColor})
 	}
 	leg.bandEntry(d.Lines, d.Confidence)
 
