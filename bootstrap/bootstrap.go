@@ -627,11 +627,23 @@ func (p *plan) output() *Output {
 	for i, t := range p.in.Targets {
 		o.Targets = append(o.Targets, TargetResult{Target: t, Estimate: math.NaN(), StdError: math.NaN(), Note: p.notes[i]})
 	}
+	// Each target has values of its own, so that they can be ordered side by side.
+	work := make(chan func())
+	var wg sync.WaitGroup
+	for range p.opt.Workers {
+		wg.Go(func() {
+			for f := range work {
+				f()
+			}
+		})
+	}
 	for _, k := range p.kernels {
 		for j, which := range k.targets {
-			p.summarise(k, j, &o.Targets[which], p.diff[which], p.t[which])
+			work <- func() { p.summarise(k, j, &o.Targets[which], p.diff[which], p.t[which]) }
 		}
 	}
+	close(work)
+	wg.Wait()
 	return o
 }
 
