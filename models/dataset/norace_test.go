@@ -1,0 +1,5 @@
+//go:build !race
+
+package dataset
+
+const raceDetector = false

@@ -1,0 +1,6 @@
+//go:build race
+
+package dataset
+
+// raceDetector: what a test allocates is then mostly the detector's.
+const raceDetector = true
