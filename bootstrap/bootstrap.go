@@ -140,18 +140,17 @@ func Run(ctx context.Context, in Input, opt Options) (*Output, error) {
 		return nil, err
 	}
 	var (
-		next    atomic.Int64
-		mu      sync.Mutex
-		done    int
-		wg      sync.WaitGroup
-		total   = p.opt.Resamples
-		workers = make([]*worker, min(p.opt.Workers, (total+chunk-1)/chunk))
+		next  atomic.Int64
+		mu    sync.Mutex
+		done  int
+		wg    sync.WaitGroup
+		total = p.opt.Resamples
 	)
-	for i := range workers {
-		workers[i] = p.newWorker()
-	}
-	for _, w := range workers {
+	for range min(p.opt.Workers, (total+chunk-1)/chunk) {
 		wg.Go(func() {
+			// Made here, a worker's memory comes from its own processor's pool: workers
+			// whose slices share cache lines slow each other down.
+			w := p.newWorker()
 			for ctx.Err() == nil {
 				hi := int(next.Add(chunk))
 				lo := hi - chunk
