@@ -264,11 +264,6 @@ var catalogue = []Entry{
 		Cure:        "give a column u(k), or use --error-model relative",
 	},
 	{
-		Code: "limits-left-out", Title: "limits left out", Severity: Warning,
-		Explanation: "Values given as limits (< or >) take no part in the fits: a limit is no measured value, and fitting it as one bends the line.",
-		Cure:        "look whether the fitted curve respects each limit; the rows are listed",
-	},
-	{
 		Code: "eyring-withheld", Title: "entropy of activation withheld", Severity: Info,
 		Explanation: "ΔS‡ and ΔG‡ need the time unit and the standard state of k: reading min⁻¹ as s⁻¹ shifts ΔS‡ by 34 J mol⁻¹ K⁻¹. The unit of k was not understood, or k is no rate constant.",
 		Cure:        "write the unit in the heading, such as k/s^-1",

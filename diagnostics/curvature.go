@@ -153,21 +153,46 @@ func scaled(e fit.Estimate, by float64) fit.Estimate {
 	}
 }
 
-// exponentUnitError is the standard error of n at sigma = 1: one over the length
-// of what is left of ln T when 1 and 1/T are projected out.
+// exponentUnitError is the standard error of n at sigma = 1.
 func exponentUnitError(s *fit.Sample) float64 {
-	n := s.Len()
-	one, x, l := make([]float64, n), make([]float64, n), make([]float64, n)
-	models.CentredX(s.TRef, s.T, x)
-	for i, t := range s.T {
-		one[i] = 1 / math.Sqrt(s.V[i])
-		x[i] *= one[i]
-		l[i] = math.Log1p((t-s.TRef)/s.TRef) * one[i]
+	w := make([]float64, s.Len())
+	for i, v := range s.V {
+		w[i] = 1 / v
 	}
-	basis, _ := extend(nil, one, 0)
-	basis, _ = extend(basis, x, 0)
-	project(basis, l, nil)
-	return 1 / floats.Norm(l, 2)
+	var scratch [3][]float64
+	for k := range scratch {
+		scratch[k] = make([]float64, s.Len())
+	}
+	return math.Sqrt(exponentVariance(s, w, nil, scratch))
+}
+
+// exponentVariance is the variance of n̂ in units of σ²: one over the squared length
+// of what is left of the column ln T when 1 and 1/T are projected out, entries with
+// weights w and each counted counts[i] times (nil: once). It is NaN where nothing is
+// left. scratch holds three slices of the length of the sample.
+func exponentVariance(s *fit.Sample, w []float64, counts []int, scratch [3][]float64) float64 {
+	one, x, l := scratch[0], scratch[1], scratch[2]
+	for i, t := range s.T {
+		v := w[i]
+		if counts != nil {
+			v *= float64(counts[i])
+		}
+		root := math.Sqrt(v)
+		z := (s.TRef - t) / t
+		// z - ln(1+z) differs from ln T by a line in 1/T alone, and cancels less.
+		one[i], x[i], l[i] = root, root*z, root*(z-math.Log1p(z))
+	}
+	before := floats.Dot(l, l)
+	floats.Scale(1/floats.Norm(one, 2), one)
+	floats.AddScaled(x, -floats.Dot(one, x), one)
+	floats.Scale(1/floats.Norm(x, 2), x)
+	floats.AddScaled(l, -floats.Dot(one, l), one)
+	floats.AddScaled(l, -floats.Dot(x, l), x)
+	left := floats.Dot(l, l)
+	if !(left > 1e-20*before) {
+		return math.NaN()
+	}
+	return 1 / left
 }
 
 // criticalValue is the two-sided quantile of Student's t with nu degrees of

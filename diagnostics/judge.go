@@ -7,8 +7,6 @@ import (
 	"onebarrier/bootstrap"
 	"onebarrier/models"
 	"onebarrier/models/fit"
-
-	"gonum.org/v1/gonum/floats"
 )
 
 // judge reads the verdict off resamples: the same rule as for the data, from the
@@ -64,7 +62,7 @@ func newJudge(a *assessor) *judge {
 	for i, v := range s.V {
 		j.weights[i] = 1 / v
 	}
-	j.unscaled = j.exponentVariance(nil)
+	j.unscaled = exponentVariance(s, j.weights, nil, j.rows)
 	return j
 }
 
@@ -97,7 +95,7 @@ func (j *judge) interval(counts []int, r *fit.Refit) (low, high float64, ok bool
 	unscaled := j.unscaled
 	nu := j.nu
 	if counts != nil {
-		if unscaled = j.exponentVariance(counts); math.IsNaN(unscaled) {
+		if unscaled = exponentVariance(j.s, j.weights, counts, j.rows); math.IsNaN(unscaled) {
 			return 0, 0, false
 		}
 	}
@@ -123,13 +121,14 @@ func (j *judge) profileInterval(n float64, r *fit.Refit) (low, high float64, ok 
 		return math.Sqrt(max(0, r.RSS[f.index]-r.RSS[j.power])/scale) / math.Abs(f.n-n)
 	}
 	low, high = math.NaN(), math.NaN()
-	var below, above, nearest float64
+	var below, above float64
+	anySlope := 0.0 // stands in on a side where no exponent is fixed
 	for _, f := range j.fixed {
 		sl := slope(f)
 		if math.IsNaN(sl) || math.IsInf(sl, 0) || sl == 0 {
 			continue
 		}
-		nearest = sl
+		anySlope = sl
 		// The point nearest to where the root meets the quantile tells most.
 		reach := j.quantile / sl
 		if f.n < n && (math.IsNaN(low) || math.Abs(n-f.n-reach) < below) {
@@ -139,41 +138,14 @@ func (j *judge) profileInterval(n float64, r *fit.Refit) (low, high float64, ok 
 			high, above = n+reach, math.Abs(f.n-n-reach)
 		}
 	}
-	if nearest == 0 {
+	if anySlope == 0 {
 		return 0, 0, false
 	}
 	if math.IsNaN(low) {
-		low = n - j.quantile/nearest
+		low = n - j.quantile/anySlope
 	}
 	if math.IsNaN(high) {
-		high = n + j.quantile/nearest
+		high = n + j.quantile/anySlope
 	}
 	return low, high, true
-}
-
-// exponentVariance is the variance of n̂ in units of σ²: one over the squared
-// length of what is left of the column ln T when 1 and 1/T are projected out, with
-// every entry counted counts[i] times (nil: once).
-func (j *judge) exponentVariance(counts []int) float64 {
-	one, x, l := j.rows[0], j.rows[1], j.rows[2]
-	for i, t := range j.s.T {
-		w := j.weights[i]
-		if counts != nil {
-			w *= float64(counts[i])
-		}
-		root := math.Sqrt(w)
-		z := (j.s.TRef - t) / t
-		one[i], x[i], l[i] = root, root*z, root*(z-math.Log1p(z))
-	}
-	before := floats.Dot(l, l)
-	floats.Scale(1/floats.Norm(one, 2), one)
-	floats.AddScaled(x, -floats.Dot(one, x), one)
-	floats.Scale(1/floats.Norm(x, 2), x)
-	floats.AddScaled(l, -floats.Dot(one, l), one)
-	floats.AddScaled(l, -floats.Dot(x, l), x)
-	left := floats.Dot(l, l)
-	if !(left > 1e-20*before) {
-		return math.NaN()
-	}
-	return 1 / left
 }
