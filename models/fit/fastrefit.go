@@ -11,6 +11,13 @@ const (
 	// warmMost is the largest number of Newton steps tried before the warm start
 	// is given up.
 	warmMost = 5
+	// decideTol and decideMost are the same where only the first place is asked for,
+	// decideHope is how many times what the quadratic model promises is hoped for, and
+	// decideStarts the number of shapes gone from.
+	decideTol    = 1e-2
+	decideMost   = 12
+	decideHope   = 8
+	decideStarts = 2
 	// coldTol is the same for the steps of a global search.
 	coldTol = 1e-9
 	// lostDigits is the share of the straight line's RSS below which differences
@@ -25,8 +32,9 @@ type fastRefitter struct {
 	full, taken workspace
 	index       []int     // entries taken
 	root        []float64 // sqrt of their counts
+	scaled      []float64 // their data times root
 	search      *search
-	pass        []bool // shapes of the fine cover that may come first
+	leads       []lead // scratch
 	cur, trial  normal
 	q           [2]float64
 }
@@ -49,7 +57,7 @@ var _ Refitter = (*fastRefitter)(nil)
 
 func (d *resampleDesign) refitter() *fastRefitter {
 	n, m := len(d.rows), len(d.directions)
-	r := &fastRefitter{resampleDesign: d, search: d.newSearch(), index: make([]int, n), root: make([]float64, n)}
+	r := &fastRefitter{resampleDesign: d, search: d.newSearch(), index: make([]int, n), root: make([]float64, n), scaled: make([]float64, n)}
 	for _, w := range []*workspace{&r.full, &r.taken} {
 		w.kernel = *d.kernel()
 		w.data = make([]float64, n)
@@ -235,32 +243,72 @@ func (r *fastRefitter) fitShaped(w *workspace, sc *shapedCandidate, best float64
 	if r.screens {
 		limit = r.limit(sc.index, best)
 		coarse, fine := r.covers()
-		if coarse.excludes(w.data, sc.sign, w.zz, limit) || r.narrow(fine, w, sc.sign, limit) {
+		if coarse.excludes(w.data, sc.sign, w.zz, limit) {
 			return math.Inf(1), HowScreened
+		}
+		if rss, how, ok := r.screen(fine, w, sc, limit); ok {
+			return rss, how
 		}
 	}
 	e, ok := r.cold(&w.kernel, r.search, w.zz, coldTol)
 	return r.settle(e, ok, limit)
 }
 
-// narrow marks the nodes of a global search that may lead below the limit, and
-// reports whether there are none.
-func (r *fastRefitter) narrow(fine *cover, w *workspace, sign, limit float64) (none bool) {
-	if r.pass == nil {
-		r.pass = make([]bool, len(fine.shapes))
-		r.search.skip = make([]bool, len(r.nodes))
+// screen tells without a global search whether a shaped curve gets below the limit. ok
+// is false where its parameters are wanted and it may: the nodes of the search that
+// lead nowhere are then marked.
+func (r *fastRefitter) screen(fine *cover, w *workspace, sc *shapedCandidate, limit float64) (rss float64, how How, ok bool) {
+	if r.leads == nil {
+		r.leads = make([]lead, 0, len(fine.shapes))
 	}
 	if w == &r.full {
-		none = fine.narrow(w.data, sign, w.zz, limit, r.pass)
+		r.leads = fine.leads(w.data, sc.sign, w.zz, limit, r.leads[:0])
 	} else {
-		none = r.narrowTaken(fine, w, sign, limit)
+		r.leads = r.leadsTaken(fine, w, sc.sign, limit, r.leads[:0])
 	}
-	if !none {
-		for j, k := range fine.nodes {
-			r.search.skip[j] = !r.pass[k]
+	if len(r.leads) == 0 {
+		return math.Inf(1), HowScreened, true
+	}
+	if r.params[sc.index] > 0 {
+		r.search.keep(fine, r.leads)
+		return 0, HowCold, false
+	}
+	leads := r.leads
+	for range decideStarts {
+		var l lead
+		if l, leads = fine.next(leads); r.decide(&w.kernel, fine, l, limit) {
+			return r.cur.rss - r.cur.decrement, HowDecided, true
+		}
+		if len(leads) == 0 {
+			break
 		}
 	}
-	return none
+	return math.Inf(1), HowDecided, true
+}
+
+// decide takes Newton steps from near a shape of the cover towards the minimum next to it, and reports
+// whether that lies below the limit: any minimum below it, the lowest or not, puts the
+// curve first.
+func (r *fastRefitter) decide(k *kernel, fine *cover, l lead, limit float64) bool {
+	cur := &r.cur
+	c, d := fine.start(l)
+	k.at(c, d, cur)
+	for range decideMost {
+
+		k.solve(cur)
+		if cur.newton && !cur.bound {
+			if cur.rss < limit && cur.decrement <= decideTol*cur.rss {
+				return true
+			}
+			if decideHope*cur.decrement < cur.rss-limit {
+				return false
+			}
+		}
+		if !k.step(cur, &r.trial) {
+			break
+		}
+	}
+	return cur.rss < limit
 }
 
 // settle keeps the outcome of a global search. A minimum above the limit need not be
@@ -415,6 +463,9 @@ func (r *fastRefitter) project(w *workspace) {
 // fitTaken is fitShaped for a resample with counts.
 func (r *fastRefitter) fitTaken(w *workspace, sc *shapedCandidate, best float64) (float64, How) {
 	w.load(sc.sign)
+	for i, v := range w.data {
+		r.scaled[i] = v * r.root[i]
+	}
 	if sc.warm != nil {
 		if rss, ok := r.warm(w, sc.warm.c, sc.warm.d); ok && sc.warm.trusts(&r.cur) {
 			return rss, HowWarm
@@ -423,14 +474,19 @@ func (r *fastRefitter) fitTaken(w *workspace, sc *shapedCandidate, best float64)
 	limit := math.Inf(1)
 	if r.screens {
 		limit = r.limit(sc.index, best)
-		if _, fine := r.covers(); r.narrow(fine, w, sc.sign, limit) {
-			return math.Inf(1), HowScreened
+		_, fine := r.covers()
+		if rss, how, ok := r.screen(fine, w, sc, limit); ok {
+			return rss, how
 		}
 	}
 	// The stored shapes differ from those of this projector by lines alone.
 	n := len(r.resampleDesign.rows)
 	for j := 0; j < len(r.nodes); j += 4 {
-		zs, norm2 := r.takenProducts(w, r.shapes[j/4*n:])
+		full := r.shapes[j/4*n:]
+		zs := r.takenProducts(w, full)
+		var norm2 quad
+		r.takenNorms(w, full, 0, &norm2)
+		r.takenNorms(w, full, 2, &norm2)
 		for i := range min(4, len(r.nodes)-j) {
 			r.search.rss[j+i] = w.zz - 2*sc.sign*zs[i] + norm2[i]
 		}
@@ -439,52 +495,67 @@ func (r *fastRefitter) fitTaken(w *workspace, sc *shapedCandidate, best float64)
 	return r.settle(e, ok, limit)
 }
 
-// takenProducts returns the products of four whitened vectors of the full design,
-// after projection, with the data and with themselves.
-func (r *fastRefitter) takenProducts(w *workspace, full []quad) (withData, norm2 quad) {
-	rows := w.rows
-	data, index, root := w.data[:len(rows)], r.index[:len(rows)], r.root[:len(rows)]
-	for j := 0; j < 4; j += 2 { // more sums than two at a time leave the registers
-		var c1, c2, s, t, d1, d2, u, v float64
-		for i := range rows {
-			b := &rows[i]
-			f := &full[index[i]]
-			x, y := f[j]*root[i], f[j+1]*root[i]
-			c1 += b.p1 * x
-			c2 += b.p2 * x
-			s += x * x
-			t += data[i] * x
-			d1 += b.p1 * y
-			d2 += b.p2 * y
-			u += y * y
-			v += data[i] * y
-		}
-		withData[j], norm2[j] = t, s-c1*c1-c2*c2
-		withData[j+1], norm2[j+1] = v, u-d1*d1-d2*d2
+// takenProducts returns the products of four whitened vectors of the full design with
+// the data, which are orthogonal to the basis already.
+func (r *fastRefitter) takenProducts(w *workspace, full []quad) (p quad) {
+	data, index := r.scaled[:len(w.rows)], r.index[:len(w.rows)]
+	var p0, p1, p2, p3 float64
+	for i, z := range data {
+		f := &full[index[i]]
+		p0 += z * f[0]
+		p1 += z * f[1]
+		p2 += z * f[2]
+		p3 += z * f[3]
 	}
-	return withData, norm2
+	return quad{p0, p1, p2, p3}
 }
 
-// narrowTaken is cover.narrow on the projector of a resample with counts.
-func (r *fastRefitter) narrowTaken(c *cover, w *workspace, sign, limit float64) (none bool) {
+// takenNorms fills the squared lengths, after projection, of vectors j and j+1 of four
+// of the full design; more than two at a time leave the registers.
+func (r *fastRefitter) takenNorms(w *workspace, full []quad, j int, norm2 *quad) {
+	rows := w.rows
+	index, root := r.index[:len(rows)], r.root[:len(rows)]
+	var c1, c2, s, d1, d2, t float64
+	for i := range rows {
+		b := &rows[i]
+		f := &full[index[i]]
+		x, y := f[j]*root[i], f[j+1]*root[i]
+		c1 += b.p1 * x
+		c2 += b.p2 * x
+		s += x * x
+		d1 += b.p1 * y
+		d2 += b.p2 * y
+		t += y * y
+	}
+	norm2[j], norm2[j+1] = s-c1*c1-c2*c2, t-d1*d1-d2*d2
+}
+
+// leadsTaken is cover.leads on the projector of a resample with counts.
+func (r *fastRefitter) leadsTaken(c *cover, w *workspace, sign, limit float64, to []lead) []lead {
 	b, decided, excluded := c.against(w.zz, limit)
-	none = true
+	if excluded {
+		return to
+	}
 	n := len(r.resampleDesign.rows)
 	for k := 0; k < len(c.shapes); k += 4 {
-		var zs, norm2 quad
-		if !decided {
-			zs, norm2 = r.takenProducts(w, c.quads[k/4*n:])
+		full := c.quads[k/4*n:]
+		p := r.takenProducts(w, full)
+		var norm2 quad
+		for j := 0; j < 4; j += 2 {
+			// Only shapes that point the way of the data can be of use.
+			if decided || sign*p[j] > 0 || sign*p[j+1] > 0 {
+				r.takenNorms(w, full, j, &norm2)
+			}
 		}
 		for j := range min(4, len(c.shapes)-k) {
-			pass := !excluded
-			if !decided {
-				norm := math.Sqrt(norm2[j])
-				// Where norm2 is rounding the shape is a line here.
-				pass = norm2[j] > 1e-12 && b.beaten(sign*zs[j]/norm, c.low[k+j]*norm, c.high[k+j]*norm)
+			if !(norm2[j] > 1e-12) {
+				continue // the shape is a line here
 			}
-			r.pass[k+j] = pass
-			none = none && !pass
+			norm, pj := math.Sqrt(norm2[j]), sign*p[j]
+			if decided || pj > b.most*norm && b.beaten(pj/norm, c.low[k+j]*norm, c.high[k+j]*norm) {
+				to = append(to, c.lead(k+j, pj, norm))
+			}
 		}
 	}
-	return none
+	return to
 }

@@ -266,6 +266,7 @@ const (
 type search struct {
 	rss   []float64 // at the nodes
 	skip  []bool    // nodes that are known to lead nowhere; nil for none
+	pass  []bool    // scratch of keep
 	start [coldStarts + 2*coldFaint]normal
 	trial normal
 	most  int // starts to use
@@ -273,6 +274,20 @@ type search struct {
 
 func (p *plan) newSearch() *search {
 	return &search{rss: make([]float64, len(p.nodes)), most: coldStarts}
+}
+
+// keep leaves only the nodes near a lead to the search.
+func (s *search) keep(c *cover, leads []lead) {
+	if s.skip == nil {
+		s.skip, s.pass = make([]bool, len(c.nodes)), make([]bool, len(c.shapes))
+	}
+	clear(s.pass)
+	for _, l := range leads {
+		s.pass[l.shape] = true
+	}
+	for j, k := range c.nodes {
+		s.skip[j] = !s.pass[k]
+	}
 }
 
 // cold is the global fit of the data in k.z: the best minimum found, converged to a
@@ -336,15 +351,10 @@ func (p *plan) faint(k *kernel, s *search, straight float64, picked int) int {
 			continue
 		}
 		kind := 0
-		switch {
-		case !outer:
+		if !outer {
 			kind = 1
-			nd.d *= math.Sqrt(length)
-		case nd.c < 0: // all t are negative, and s is about e^t
-			nd.c += math.Log(length)
-		default: // all are positive, and s is about t + e^-t
-			nd.c -= math.Log(length)
 		}
+		nd.c, nd.d = shorten(nd.c, nd.d, length, !outer)
 		saved := product * length
 		list := &best[kind]
 		for i := range list {
@@ -364,6 +374,19 @@ func (p *plan) faint(k *kernel, s *search, straight float64, picked int) int {
 		}
 	}
 	return picked
+}
+
+// shorten multiplies the length of a shape by factor < 1: by way of d where it goes as
+// d², which is where d is small and the bend lies inside the range, else by way of c.
+func shorten(c, d, factor float64, small bool) (float64, float64) {
+	switch {
+	case small:
+		return c, d * math.Sqrt(factor)
+	case c < 0: // all t are negative, and s is about e^t
+		return c + math.Log(factor), d
+	default: // all are positive, and s is about t + e^-t
+		return c - math.Log(factor), d
+	}
 }
 
 // descend is cold once the residual sums of squares at the nodes are known.

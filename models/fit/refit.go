@@ -13,6 +13,7 @@ const (
 	HowLinear   How = iota // no shaped candidate to fit
 	HowWarm                // from the estimate of the original data, verified
 	HowScreened            // a shaped curve was shown not to be able to rank first
+	HowDecided             // a shaped curve was shown to rank before those ahead of it in the list
 	HowCold                // global search
 	HowFailed              // some candidate could not be fitted
 )
@@ -21,7 +22,9 @@ const (
 // it and hands it back in, so that refitting allocates nothing after the first call.
 type Refit struct {
 	// RSS is Σ r²/V of each candidate in the order given to NewRefitter; +Inf
-	// where a curve is excluded or screened out, NaN where its fit failed.
+	// where a curve is excluded or screened out, NaN where its fit failed. By the
+	// road HowDecided that of a shaped curve is good to about 1e-4, and may be that
+	// of a minimum which is not the lowest.
 	RSS []float64
 	// P holds the canonical parameters of each Basis candidate; those of a
 	// shaped one only if the refitter was asked for them, and NaN where it has no

@@ -1,7 +1,10 @@
 package fit
 
 import (
+	"cmp"
 	"math"
+	"slices"
+	"sort"
 	"sync"
 
 	"onebarrier/models"
@@ -324,15 +327,17 @@ type cover struct {
 	shapes    [][]float64
 	low, high []float64
 	quads     []quad
-	cos, sin  float64 // of the slack
-	near      float64 // least cosine at which a shape of the grid counts as covered
-	last      int     // shape last used
-	nodes     []int   // shape nearest to each node of the cold search
+	cos, sin  float64    // of the slack
+	near      float64    // least cosine at which a shape of the grid counts as covered
+	last      int        // shape last used
+	nodes     []int      // shape nearest to each node of the cold search
+	members   [][]member // shapes of the grid near each one, the shortest first
 }
 
 const (
 	coarseSlack = 0.20
 	fineSlack   = 0.08
+	apart       = 0.99 // largest cosine between two starts of a decision
 	gridStart   = 0.25 // lowest d of the grid; below it shapes only get shorter
 	// gridAngle is what a slack keeps for the gaps of the grid that is covered, and
 	// gridLength the factor kept for lengths.
@@ -357,13 +362,14 @@ func (d *resampleDesign) newCovers() (coarse, fine *cover) {
 		}
 		x := -nd.c / nd.d
 		faint := nd.d == gridStart || x < d.low-4/nd.d || x > d.high+4/nd.d
-		coarse.include(v, length, faint)
-		fine.include(v, length, faint)
+		coarse.include(v, member{nd.c, nd.d, length}, faint)
+		fine.include(v, member{nd.c, nd.d, length}, faint)
 	}
 	for _, c := range []*cover{coarse, fine} {
 		for j := range c.low {
 			c.low[j] /= gridLength
 			c.high[j] *= gridLength
+			slices.SortStableFunc(c.members[j], func(a, b member) int { return cmp.Compare(a.length, b.length) })
 		}
 		c.quads = quads(c.shapes, n)
 	}
@@ -386,19 +392,24 @@ func newCover(slack float64) *cover {
 	return &cover{cos: math.Cos(slack), sin: math.Sin(slack), near: math.Cos(slack - gridAngle)}
 }
 
-// include sees to it that v of the given length is covered, and with faint that it is
-// with any smaller length too.
-func (c *cover) include(v []float64, length float64, faint bool) {
+// member is a shape of the grid: its parameters and length.
+type member struct{ c, d, length float64 }
+
+// include sees to it that the shape v is covered, and with faint that it is with any
+// smaller length too.
+func (c *cover) include(v []float64, m member, faint bool) {
+	length := m.length
 	j := c.find(v, c.near*length)
 	if j == len(c.shapes) {
 		unit := make([]float64, len(v))
 		for i := range v {
 			unit[i] = v[i] / length
 		}
-		c.shapes = append(c.shapes, unit)
+		c.shapes, c.members = append(c.shapes, unit), append(c.members, nil)
 		c.low, c.high = append(c.low, length), append(c.high, length)
 	}
 	c.last = j
+	c.members[j] = append(c.members[j], m)
 	if faint {
 		c.low[j] = 0
 	}
@@ -496,17 +507,65 @@ func (c *cover) excludes(z []float64, sign, zz, limit float64) bool {
 	return true
 }
 
-// narrow is excludes that also fills pass with the shapes near which one may leave
-// less.
-func (c *cover) narrow(z []float64, sign, zz, limit float64, pass []bool) (none bool) {
+// lead is a shape of a cover near which some shape may leave less than the limit, with
+// what it takes off z·z at the length that suits z best.
+type lead struct {
+	shape         int
+	saved, length float64
+}
+
+// lead of shape k, whose unit vector has the product p with z and the length norm.
+func (c *cover) lead(k int, p, norm float64) lead {
+	p /= norm
+	length := math.Max(c.low[k]*norm, math.Min(c.high[k]*norm, p))
+	return lead{k, length * (2*p - length), length / norm}
+}
+
+// leads appends the shapes near which one may leave less than the limit.
+func (c *cover) leads(z []float64, sign, zz, limit float64, to []lead) []lead {
 	b, decided, excluded := c.against(zz, limit)
-	none = true
+	if excluded {
+		return to
+	}
 	for k := 0; k < len(c.shapes); k += 4 {
 		p := dot4(z, c.quads[k/4*len(z):])
 		for j, pj := range p[:min(4, len(c.shapes)-k)] {
-			pass[k+j] = decided && !excluded || !decided && b.beaten(sign*pj, c.low[k+j], c.high[k+j])
-			none = none && !pass[k+j]
+			pj *= sign
+			if decided || pj > b.most && b.beaten(pj, c.low[k+j], c.high[k+j]) {
+				to = append(to, c.lead(k+j, pj, 1))
+			}
 		}
 	}
-	return none
+	return to
+}
+
+// next returns the lead that takes off most, and the others that are not near it.
+func (c *cover) next(leads []lead) (best lead, rest []lead) {
+	best = leads[0]
+	for _, l := range leads[1:] {
+		if l.saved > best.saved {
+			best = l
+		}
+	}
+	rest = leads[:0]
+	for _, l := range leads {
+		if dot(c.shapes[l.shape], c.shapes[best.shape]) < apart {
+			rest = append(rest, l)
+		}
+	}
+	return best, rest
+}
+
+// start returns the (c, d) of the shape near a lead whose length is nearest to its.
+func (c *cover) start(l lead) (float64, float64) {
+	m, length := c.members[l.shape], l.length
+	i := sort.Search(len(m), func(i int) bool { return m[i].length >= length })
+	if i == len(m) || i > 0 && length-m[i-1].length < m[i].length-length {
+		i--
+	}
+	at := m[i]
+	if i == 0 && length < at.length && c.low[l.shape] == 0 {
+		return shorten(at.c, at.d, length/at.length, at.d == gridStart)
+	}
+	return at.c, at.d
 }
