@@ -4,8 +4,10 @@ import (
 	"context"
 	"errors"
 	"math"
+	"runtime"
 	"strings"
 	"testing"
+	"unsafe"
 
 	"onebarrier/models"
 	"onebarrier/models/dataset"
@@ -52,26 +54,94 @@ func TestReducedResamplesAreRecorded(t *testing.T) {
 	}
 }
 
+// As many temperatures as the limit says are taken, and one more is refused; repeats
+// count only where the verdict uses them as points.
+func TestMostTemperatures(t *testing.T) {
+	for _, c := range []struct {
+		temperatures, repeats int
+		replicates            string
+		refused               bool
+	}{
+		{MostTemperatures, 1, ReplicatesMeans, false},
+		{MostTemperatures + 1, 1, ReplicatesMeans, true},
+		{MostTemperatures / 2, 3, ReplicatesMeans, false},
+		{MostTemperatures / 2, 2, ReplicatesIndependent, false},
+		{MostTemperatures / 2, 3, ReplicatesIndependent, true},
+	} {
+		s := lineSet(c.temperatures, 280, 340, 60000, 0.03, 1)
+		once := s.Points
+		for range c.repeats - 1 {
+			s.Points = append(s.Points, once...)
+		}
+		a, err := newAssessor(s, DefaultOptions())
+		if err != nil {
+			t.Fatal(err)
+		}
+		if a.data, err = prepare(s, "relative", c.replicates); err != nil {
+			t.Fatal(err)
+		}
+		err = a.tooMany()
+		if _, refused := asProblems(err)["too-many-temperatures"]; refused != c.refused || (err != nil) != c.refused {
+			t.Errorf("%+v: %v", c, err)
+		}
+	}
+}
+
+// asProblems gives the problems of an error by their codes.
+func asProblems(err error) map[string]dataset.Problem {
+	byCode := map[string]dataset.Problem{}
+	var ps dataset.Problems
+	if errors.As(err, &ps) {
+		for _, p := range ps {
+			byCode[p.Code] = p
+		}
+	}
+	return byCode
+}
+
 // A million rows are answered where they are repeats at few temperatures, and
-// refused with a cure where every row has a temperature of its own.
+// refused with a cure where every row has a temperature of its own. Of the rows
+// only those of the document stay in memory.
 func TestMillionRows(t *testing.T) {
 	if testing.Short() {
 		t.Skip("a million rows")
 	}
 	const n = 1_000_000
-	s := lineSet(n, 280, 340, 60000, 0.03, 1)
-	_, err := Assess(context.Background(), s, DefaultOptions())
-	var ps dataset.Problems
-	if !errors.As(err, &ps) || ps[0].Code != "too-many-temperatures" || !strings.Contains(ps[0].Cure, "average") {
-		t.Errorf("%v", err)
+	// allocated is what a row may cost while it is worked on: the points are picked
+	// out twice, each time into a slice that grows (5 points a row each), and samples,
+	// residuals and the document take 5 more. A further copy of the rows exceeds it.
+	point, datum := int64(unsafe.Sizeof(dataset.Point{})), int64(unsafe.Sizeof(Datum{}))
+	allocated := 15 * point
+	cost := func(what string, kept int64, work func()) {
+		var before, after runtime.MemStats
+		runtime.GC()
+		runtime.ReadMemStats(&before)
+		work()
+		runtime.GC()
+		runtime.ReadMemStats(&after)
+		total, live := int64(after.TotalAlloc-before.TotalAlloc)/n, (int64(after.HeapAlloc)-int64(before.HeapAlloc))/n
+		if total > allocated {
+			t.Errorf("%s: %d bytes a row allocated, at most %d wanted", what, total, allocated)
+		}
+		if live > kept {
+			t.Errorf("%s: %d bytes a row stay in memory, at most %d wanted", what, live, kept)
+		}
 	}
+	s := lineSet(n, 280, 340, 60000, 0.03, 1)
+	cost("refused", 0, func() {
+		_, err := Assess(context.Background(), s, DefaultOptions())
+		if p := asProblems(err)["too-many-temperatures"]; !strings.Contains(p.Cure, "average") {
+			t.Errorf("%v", err)
+		}
+	})
 	for i := range s.Points {
 		p := &s.Points[i]
 		ti := 280 + 5*float64(i%12)
 		p.K *= math.Exp(60000 / models.GasConstant * (1/p.T - 1/ti))
 		p.T = ti
 	}
-	a := mustAssess(t, s, quick())
+	var a *Assessment
+	cost("answered", datum, func() { a = mustAssess(t, s, quick()) })
 	if a.Dataset.Used != n || a.Dataset.Temperatures != 12 || a.Verdict.State == Untestable {
 		t.Errorf("%d rows, %d temperatures: %s", a.Dataset.Used, a.Dataset.Temperatures, a.Verdict.State)
 	}
@@ -79,4 +149,5 @@ func TestMillionRows(t *testing.T) {
 	if e := a.Fits["straight"].P[1]; !(math.Abs(e-60000) <= 4*1.3) {
 		t.Errorf("E = %g J/mol", e)
 	}
+	runtime.KeepAlive(s)
 }

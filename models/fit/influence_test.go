@@ -2,6 +2,7 @@ package fit
 
 import (
 	"math"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -97,21 +98,96 @@ func TestInfluenceUndetermined(t *testing.T) {
 	if !math.IsNaN(inf[3].Cook) || !math.IsNaN(inf[3].Standardised) || !finite(inf[0].Cook, inf[0].Studentised) {
 		t.Errorf("leverage 1: %+v", inf)
 	}
-	failed := mustSample(t, Absolute, []float64{300, 310, 320}, []float64{-1, -2, -1}, ones(3))
-	if inf := Influence(Fit(failed, models.Straight()), failed); inf != nil {
-		t.Errorf("a failed fit has influences %+v", inf)
+	// Σ r²/V underflows: a σ̂ of 0 is no scale for residuals that are not.
+	tiny := mustSample(t, Scaled, []float64{300, 300, 310}, []float64{1, 1 + 1e-13, 2}, []float64{1e300, 1e300, 1e300})
+	if r := Fit(tiny, models.Straight()); r.Residuals[0] == 0 || r.Sigma != 0 {
+		t.Errorf("residuals %g with σ = %g", r.Residuals, r.Sigma)
+	} else if inf := Influence(r, tiny); !math.IsNaN(inf[0].Standardised) || !math.IsNaN(inf[0].Cook) {
+		t.Errorf("σ of 0: %+v", inf)
 	}
 }
 
-// TestInfluenceInK: errors in k, standardised on the scale of k; the sum of leverages
-// of the linearised fit is the number of parameters.
-func TestInfluenceInK(t *testing.T) {
-	s := synthetic(t, "s1_straight", Absolute)
-	r := Fit(s, models.Straight())
-	var sum float64
-	for i, inf := range Influence(r, s) {
-		sum += inf.Leverage
-		reference.Close(t, "standardised", inf.Standardised, (s.K[i]-math.Exp(r.Fitted[i]))/(r.Sigma*math.Sqrt(1-r.Leverage[i])), 1e-8)
+// TestInfluenceWithoutEstimates: a fit that failed or was excluded has no influences,
+// and neither has one that claims estimates and brings no leverages.
+func TestInfluenceWithoutEstimates(t *testing.T) {
+	temps := []float64{300, 310, 320, 330, 340}
+	curved := []float64{1, 2, 3.5, 5.2, 7.1} // E falls: no two paths side by side
+	for _, c := range []struct {
+		s      *Sample
+		curve  models.Curve
+		status Status
+	}{
+		{mustSample(t, Absolute, temps[:3], []float64{-1, -2, -1}, ones(3)), models.Straight(), Failed},
+		{mustSample(t, Relative, temps[:2], curved[:2], ones(2)), models.PowerPrefactor{}, Failed},
+		{mustSample(t, Relative, temps, curved, ones(5)), models.Parallel{}, Excluded},
+		{mustSample(t, Absolute, temps, curved, ones(5)), models.Parallel{}, Excluded},
+	} {
+		r := Fit(c.s, c.curve)
+		if r.Status != c.status {
+			t.Fatalf("%s, %s: %v, want %v", c.s.Model, c.curve.Info().Name, r.Status, c.status)
+		}
+		if inf := Influence(r, c.s); inf != nil {
+			t.Errorf("%s, %s, %v: influences %+v", c.s.Model, c.curve.Info().Name, r.Status, inf)
+		}
 	}
-	reference.Close(t, "sum of leverages", sum, 2, 1e-10)
+	s := mustSample(t, Relative, temps, curved, ones(5))
+	for name, spoil := range map[string]func(*Result){
+		"called failed":     func(r *Result) { r.Status = Failed },
+		"called excluded":   func(r *Result) { r.Status = Excluded },
+		"without leverages": func(r *Result) { r.Leverage = nil },
+	} {
+		r := Fit(s, models.Straight())
+		spoil(r)
+		if inf := Influence(r, s); inf != nil {
+			t.Errorf("%s: influences %+v", name, inf)
+		}
+	}
+}
+
+// TestInfluenceInK: errors in k of unequal variance, one k negative. The numbers are
+// those of R 4.2.2 for the fit linearised about the estimates: hatvalues, rstandard,
+// rstudent and cooks.distance of lm(r ~ 0 + J, weights = 1/V), where r = k - f,
+// J = f*X, X = cbind(1, -(1/T - 1/305)/R) and log(T/305) as a third column for the
+// power curve, after 200 Gauss-Newton steps.
+func TestInfluenceInK(t *testing.T) {
+	temps := []float64{280, 290, 300, 310, 320, 335}
+	k := []float64{-0.2, 1.1, 2.9, 4.2, 9.6, 19.5}
+	v := []float64{0.04, 0.09, 0.04, 0.25, 0.16, 1}
+	for _, c := range []struct {
+		curve models.Curve
+		want  [][4]float64 // leverage, standardised, studentised, Cook
+	}{
+		{models.Straight(), [][4]float64{
+			{0.103190663847, -1.70341489305, -2.81517380934, 0.166936448517},
+			{0.113134824622, -0.272066712607, -0.237827467522, 0.0047212775128},
+			{0.503832769308, 0.899079183068, 0.871666768162, 0.410415941649},
+			{0.131008163891, -0.599217039222, -0.543923827077, 0.0270658067504},
+			{0.411653905666, 0.796511399427, 0.752009514804, 0.221949086112},
+			{0.737179672666, -0.967063612414, -0.95678741163, 1.31157910326},
+		}},
+		{models.PowerPrefactor{}, [][4]float64{
+			{0.222030597584, -1.37740892746, -1.85498504327, 0.180490705927},
+			{0.217904595662, 0.0952319766925, 0.0778743812654, 0.000842269353427},
+			{0.625694851337, 1.33754799285, 1.71893126348, 0.996860238092},
+			{0.191603646011, -1.01619441356, -1.02459234302, 0.0815852736055},
+			{0.782437325307, -0.0734337745394, -0.0600123864204, 0.00646451011446},
+			{0.960328984099, 0.533494093505, 0.457856076009, 2.29659645973},
+		}},
+	} {
+		estimated := mustSample(t, Absolute, temps, k, v)
+		r := Fit(estimated, c.curve)
+		known := mustSample(t, StatedAbsolute, temps, k, v)
+		stated := Influence(Fit(known, c.curve), known)
+		for i, got := range Influence(r, estimated) {
+			w := c.want[i]
+			label := c.curve.Info().Name + " at " + strconv.Itoa(int(temps[i])) + " K: "
+			reference.Close(t, label+"leverage", got.Leverage, w[0], 1e-7)
+			reference.Close(t, label+"standardised", got.Standardised, w[1], 1e-7)
+			reference.Close(t, label+"studentised", got.Studentised, w[2], 1e-7)
+			reference.Close(t, label+"Cook", got.Cook, w[3], 1e-7)
+			// The same fit, its residuals counted in the σ that is stated.
+			reference.Close(t, label+"σ stated", stated[i].Standardised, w[1]*r.Sigma, 1e-7)
+			reference.Close(t, label+"σ stated, studentised", stated[i].Studentised, w[1]*r.Sigma, 1e-7)
+		}
+	}
 }
