@@ -148,8 +148,8 @@ func Run(ctx context.Context, in Input, opt Options) (*Output, error) {
 	)
 	for range min(p.opt.Workers, (total+chunk-1)/chunk) {
 		wg.Go(func() {
-			// Made here, a worker's memory comes from its own processor's pool: workers
-			// whose slices share cache lines slow each other down.
+			// Made here, what a refitter and a judge write to comes from the pool of the
+			// worker's own processor.
 			w := p.newWorker()
 			for ctx.Err() == nil {
 				hi := int(next.Add(chunk))
@@ -409,6 +409,7 @@ func (p *plan) addTargets() error {
 
 // worker is one goroutine's own memory. resample allocates nothing.
 type worker struct {
+	_       [64]byte // apart from the plan, which another worker reads
 	p       *plan
 	s       *stream
 	refit   fit.Refitter
@@ -421,30 +422,38 @@ type worker struct {
 	counts  []int // Pairs of entries: how often each was drawn; else nil
 	scratch []*scratch
 	diff, t []float64
+	_       [64]byte
+}
+
+// apart makes a slice that shares no cache line with another: what one worker writes
+// beside what another reads, the plan included, slows both down. Lines are 64 bytes.
+func apart[T int | int32 | float64](n int) []T {
+	const slack = 16
+	return make([]T, n+2*slack)[slack : slack+n : slack+n]
 }
 
 func (p *plan) newWorker() *worker {
 	n := p.in.Sample.Len()
 	w := &worker{
 		p: p, s: newStream(),
-		y: make([]float64, n), e: make([]float64, n),
-		diff: make([]float64, len(p.in.Targets)), t: make([]float64, len(p.in.Targets)),
+		y: apart[float64](n), e: apart[float64](n),
+		diff: apart[float64](len(p.in.Targets)), t: apart[float64](len(p.in.Targets)),
 	}
 	most := n
 	for _, s := range p.strata {
 		most = max(most, len(s))
 	}
-	w.ix = make([]int32, most)
+	w.ix = apart[int32](most)
 	if p.opt.Scheme == Pairs && !p.byPoint {
-		w.counts = make([]int, n)
+		w.counts = apart[int](n)
 	}
 	if p.refit {
 		w.refit = p.in.Refitter.Clone()
 		w.one, _ = w.refit.(fit.OneRefitter)
-		w.out.RSS = make([]float64, len(p.in.Fits))
+		w.out.RSS = apart[float64](len(p.in.Fits))
 		w.out.P = make([][]float64, len(p.in.Fits))
 		for i, f := range p.in.Fits {
-			w.out.P[i] = make([]float64, f.Params())
+			w.out.P[i] = apart[float64](f.Params())
 		}
 	}
 	if p.in.NewJudge != nil {
@@ -643,6 +652,11 @@ func (p *plan) output() *Output {
 	}
 	close(work)
 	wg.Wait()
+	// Sorting takes as long as all other summaries together, so that each sort is
+	// shared out in its turn.
+	for i := range o.Targets {
+		sortShared(o.Targets[i].Values, p.opt.Workers)
+	}
 	return o
 }
 
@@ -663,9 +677,7 @@ func (p *plan) summarise(k *kernel, j int, r *TargetResult, diff, t []float64) {
 		x.x[i] += r.Estimate
 	}
 	if r.Keep {
-		slices.Sort(x.x)
-		x.sorted = true
-		r.Values = x.x
+		r.Values = x.x // still to be sorted
 	}
 	lo, hi := (1-p.opt.Confidence)/2, (1+p.opt.Confidence)/2
 	for _, m := range p.opt.Methods {

@@ -3,11 +3,13 @@ package bootstrap
 import (
 	"context"
 	"errors"
+	"fmt"
 	"math"
 	"math/rand/v2"
 	"reflect"
 	"slices"
 	"testing"
+	"time"
 
 	"gonum.org/v1/gonum/stat"
 	"gonum.org/v1/gonum/stat/distuv"
@@ -47,7 +49,7 @@ func TestSameBytesForAnyNumberOfWorkers(t *testing.T) {
 		var first *Output
 		for _, workers := range []int{1, 2, 7} {
 			o, err := Run(context.Background(), linearInput(s),
-				Options{Scheme: scheme, Resamples: 999, Seed: 42, Workers: workers, Methods: Methods})
+				Options{Scheme: scheme, Resamples: 2999, Seed: 42, Workers: workers, Methods: Methods})
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -57,7 +59,7 @@ func TestSameBytesForAnyNumberOfWorkers(t *testing.T) {
 				t.Errorf("%s: %d workers give another result than 1", scheme, workers)
 			}
 		}
-		o := mustRun(t, linearInput(s), Options{Scheme: scheme, Resamples: 999, Seed: 43, Methods: Methods})
+		o := mustRun(t, linearInput(s), Options{Scheme: scheme, Resamples: 2999, Seed: 43, Methods: Methods})
 		if reflect.DeepEqual(o, first) {
 			t.Errorf("%s: another seed gives the same result", scheme)
 		}
@@ -848,6 +850,52 @@ func BenchmarkResample(b *testing.B) {
 				i++
 			}
 		})
+	}
+}
+
+// Sorting by several goroutines is sorting, whatever their number and with ties.
+func TestSortShared(t *testing.T) {
+	rng := rand.New(rand.NewPCG(5, 5))
+	for _, n := range []int{0, 1, 999, 1000, 1001, 20001} {
+		for _, workers := range []int{0, 1, 2, 3, 7, 64} {
+			x := make([]float64, n)
+			for i := range x {
+				x[i] = math.Round(float64(n) / 2 * rng.NormFloat64())
+			}
+			want := slices.Sorted(slices.Values(x))
+			sortShared(x, workers)
+			if !slices.Equal(x, want) {
+				t.Errorf("%d values, %d workers: not sorted", n, workers)
+			}
+		}
+	}
+}
+
+// How much faster whole runs are with two workers than with one, taken in turn: the
+// median of the ratios. Another process on the second core spoils it.
+func BenchmarkTwoWorkers(b *testing.B) {
+	for _, n := range []int{10, 20} {
+		in := defaultInput(testSample(b, fit.Relative, n, 0.03, 1))
+		for _, targets := range [][]Target{in.Targets, nil} {
+			for _, resamples := range []int{9999, 99999, 1999999} {
+				b.Run(fmt.Sprintf("N=%d/targets=%d/B=%d", n, len(targets), resamples), func(b *testing.B) {
+					in := in
+					in.Targets = targets
+					var ratios []float64
+					for b.Loop() {
+						var took [2]time.Duration
+						for i := range took {
+							start := time.Now()
+							mustRun(b, in, Options{Resamples: resamples, Workers: i + 1})
+							took[i] = time.Since(start)
+						}
+						ratios = append(ratios, float64(took[0])/float64(took[1]))
+					}
+					slices.Sort(ratios)
+					b.ReportMetric(ratios[len(ratios)/2], "times-as-fast")
+				})
+			}
+		}
 	}
 }
 

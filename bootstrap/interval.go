@@ -3,6 +3,7 @@ package bootstrap
 import (
 	"math"
 	"slices"
+	"sync"
 
 	"gonum.org/v1/gonum/stat/distuv"
 )
@@ -32,8 +33,7 @@ const smallSample = 20
 
 // values holds resampled values and finds their order statistics.
 type values struct {
-	x      []float64
-	sorted bool
+	x []float64
 }
 
 // valid drops NaN in place and keeps the order of the rest.
@@ -64,9 +64,7 @@ func (v *values) quantile(p float64) float64 {
 // at is the k-th smallest value, k from 1, held within 1..B.
 func (v *values) at(k int) float64 {
 	k = min(max(k, 1), len(v.x)) - 1
-	if !v.sorted {
-		selectNth(v.x, k)
-	}
+	selectNth(v.x, k)
 	return v.x[k]
 }
 
@@ -110,6 +108,21 @@ func selectNth(x []float64, k int) {
 			return
 		}
 	}
+}
+
+// sortShared sorts values without NaN by at most so many goroutines.
+func sortShared(x []float64, workers int) {
+	if workers < 2 || len(x) < 1000 { // a shorter slice is sorted before a goroutine starts
+		slices.Sort(x)
+		return
+	}
+	most := workers / 2
+	mid := len(x) * most / workers
+	selectNth(x, mid)
+	var wg sync.WaitGroup
+	wg.Go(func() { sortShared(x[:mid], most) })
+	sortShared(x[mid:], workers-most)
+	wg.Wait()
 }
 
 // biasCorrection is z0 = Φ⁻¹(share of values below the estimate), values that

@@ -90,7 +90,7 @@ type scratch struct {
 
 func (k *kernel) newScratch() *scratch {
 	m := k.p + 1
-	return &scratch{make([]float64, m*k.n), make([]float64, m*m), make([]float64, k.p)}
+	return &scratch{apart[float64](m * k.n), apart[float64](m * m), apart[float64](k.p)}
 }
 
 func newKernel(s *fit.Sample, index int, res *fit.Result, curve models.Basis) *kernel {

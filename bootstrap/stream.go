@@ -4,8 +4,10 @@ import "math/rand/v2"
 
 // stream is the random stream of one resample at a time. It allocates once.
 type stream struct {
+	_   [64]byte // its state is written at every draw: see apart
 	pcg rand.PCG
 	rng *rand.Rand // the same source, for normal deviates
+	_   [64]byte
 }
 
 func newStream() *stream {
