@@ -154,7 +154,7 @@ func TestNoticesOfSeveralSets(t *testing.T) {
 		}
 	}
 	title := noteTitle + "[1] "
-	want := map[string]string{"a": title + noteMissing + "[6] " + noteBrackets + "[5] ", "b": title + noteBrackets + "[4] "}
+	want := map[string]string{"a": title + noteBrackets + "[5] " + noteMissing + "[6] ", "b": title + noteBrackets + "[4] "}
 	if !maps.Equal(got, want) {
 		t.Errorf("got %q, want %q", got, want)
 	}

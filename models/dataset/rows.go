@@ -21,11 +21,16 @@ type rowReader struct {
 	uFactor float64   // from the unit of u(k) to that of k, or of its base column
 
 	brackets, spaced, plusMinus []int
-	fewRepeats                  []int
 	examples                    [][]string
 }
 
-const leftOut = "left out on request (--leave-out)"
+// Why a row is left out; review counts rows by these words.
+const (
+	leftOut        = "left out on request (--leave-out)"
+	noTemperature  = "no temperature"
+	noRateConstant = "no rate constant" // and ": " with what the cell holds
+	onlyALimit     = "only a limit is known"
+)
 
 // points reads the rows of data below the headings, n cells each.
 func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
@@ -56,7 +61,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	}
 	points := make([]Point, 0, len(m.t.Rows)-first)
 	intern := map[string]string{}
-	var after, noT, noK []int
+	var after []int
 	for i := first; i < len(m.t.Rows); i++ {
 		r := m.t.Rows[i]
 		if i > first && m.t.Blank[i] {
@@ -104,7 +109,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 				if pt.Extra == nil {
 					pt.Extra = make(map[string]string, len(p.kept))
 				}
-				pt.Extra[c.Text] = s
+				pt.Extra[c.Text] = withPoint(s, p.decimal)
 			}
 		}
 		if leaveOut[r.Line] {
@@ -118,12 +123,6 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		}
 		rr.quiet = pt.WhyNot != ""
 		rr.read(pt)
-		switch {
-		case pt.WhyNot == "no temperature":
-			noT = append(noT, r.Line)
-		case strings.HasPrefix(pt.WhyNot, "no rate constant"):
-			noK = append(noK, r.Line)
-		}
 		pt.Used = pt.WhyNot == ""
 	}
 	for _, l := range m.opt.LeaveOut {
@@ -140,13 +139,10 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 			p.notices = append(p.notices, notice(code, fmt.Sprintf("%s: %s", lines(rows), what), rows...))
 		}
 	}
-	say(noteMissing, noT, "no temperature, left out")
-	say(noteMissing, noK, "no rate constant, left out")
 	say(noteAfter, after, "below the table, not read")
 	say(noteBrackets, rr.brackets, "a bracket after the number was read as its standard uncertainty")
 	say(noteLevel, rr.spaced, "a bracket after a space is ambiguous and was not used")
 	say(noteLevel, rr.plusMinus, "the level of ± is not stated, and it was not used")
-	say(noteFewRepeats, rr.fewRepeats, "the uncertainty comes from 30 repeats or fewer")
 	for i := range p.cols {
 		if c := &p.cols[i]; !c.used {
 			for _, pt := range points[:min(3, len(points))] {
@@ -282,7 +278,7 @@ func (rr *rowReader) temperature(pt *Point) {
 		if !ok || x.Limit != "" {
 			switch {
 			case j == 0 && missing && pt.WhyNot == "":
-				pt.WhyNot = "no temperature"
+				pt.WhyNot = noTemperature
 				rr.quiet = true
 			case ok:
 				rr.refuse(codeNotNumber, c, "%q is a limit, and a temperature is needed", short(rr.cells[c.index]))
@@ -316,7 +312,7 @@ func (rr *rowReader) rate(pt *Point) {
 		x, ok, missing := rr.number(c)
 		if !ok {
 			if j == 0 && missing && pt.WhyNot == "" {
-				pt.WhyNot = "no rate constant"
+				pt.WhyNot = noRateConstant
 				if s := strings.TrimSpace(rr.cells[c.index]); s != "" {
 					pt.WhyNot += ": " + short(s)
 				}
@@ -370,7 +366,7 @@ func (rr *rowReader) rate(pt *Point) {
 		rr.limit(pt)
 	}
 	if pt.Limit != "" && pt.WhyNot == "" {
-		pt.WhyNot = fmt.Sprintf("only a limit is known: k %s %.4g", pt.Limit, pt.K)
+		pt.WhyNot = fmt.Sprintf("%s: k %s %.4g", onlyALimit, pt.Limit, pt.K)
 	}
 	if p.uncertainty != nil {
 		rr.uncertainty(pt, base)
@@ -513,9 +509,6 @@ func (rr *rowReader) state(pt *Point, h *Heading, u, cell, factor float64) {
 		if small && h.Percent95 {
 			pt.Level = LevelRepeats
 		}
-	}
-	if pt.Level == LevelRepeats {
-		rr.fewRepeats = append(rr.fewRepeats, pt.Row)
 	}
 }
 

@@ -3,12 +3,9 @@ package dataset
 import (
 	"fmt"
 	"maps"
-	"math"
 	"slices"
 	"strconv"
 	"strings"
-
-	"onebarrier/models"
 )
 
 // sets splits points by their data set and adds what concerns each set.
@@ -54,7 +51,8 @@ func (m *maker) sets(p *plan, points []Point) []*Set {
 		p.shareNotices(byName)
 	}
 	for _, s := range sets {
-		s.review(p)
+		s.reviewTemperature(p)
+		s.review()
 	}
 	return sets
 }
@@ -163,118 +161,4 @@ func (c *column) describe(p *plan) Column {
 		}
 	}
 	return d
-}
-
-func (s *Set) say(code, message string, rows ...int) {
-	s.Notices = append(s.Notices, notice(code, message, rows...))
-}
-
-// review adds the notices that concern the points of a set.
-func (s *Set) review(p *plan) {
-	var limits, selected, duplicates, large []int
-	type key struct {
-		t int
-		k float64
-	}
-	first := make(map[key]bool, len(s.Points))
-	distinct := map[int]bool{}
-	setting := s.settings()
-	low, high := math.Inf(1), math.Inf(-1)
-	for i := range s.Points {
-		pt := &s.Points[i]
-		switch {
-		case pt.Used:
-		case pt.Limit != "" && strings.HasPrefix(pt.WhyNot, "only a limit"):
-			limits = append(limits, pt.Row)
-		case strings.Contains(pt.WhyNot, "--"):
-			selected = append(selected, pt.Row)
-		}
-		if !pt.Used {
-			continue
-		}
-		distinct[setting[i]] = true
-		low, high = math.Min(low, pt.T), math.Max(high, pt.T)
-		at := key{setting[i], pt.K}
-		if first[at] {
-			duplicates = append(duplicates, pt.Row)
-		}
-		first[at] = true
-		if pt.UK > 0.3*math.Abs(pt.K) {
-			large = append(large, pt.Row)
-		}
-	}
-	if len(limits) > 0 {
-		s.say(noteLimits, lines(limits)+": only a limit is known, left out", limits...)
-	}
-	if len(selected) > 0 {
-		s.say(noteSelected, lines(selected)+": left out on request", selected...)
-	}
-	if len(duplicates) > 0 {
-		s.say(noteDuplicate, lines(duplicates)+": same temperature and rate constant as an earlier row", duplicates...)
-	}
-	if len(large) > 0 {
-		s.say(noteLargeU, lines(large)+": u(k)/k is above 0.3", large...)
-	}
-	if n := len(distinct); n < 5 {
-		s.say(noteFew, fmt.Sprintf("%d distinct temperatures", n))
-	}
-	// Exactly 20 K, read in another unit, is 20 K still.
-	if len(distinct) > 1 && high-low < 20-1e-9*high {
-		s.say(noteNarrow, fmt.Sprintf("the temperatures span %.3g K", high-low))
-	}
-	if c := p.temperature[0]; c.Form == FormDirect && len(distinct) > 0 {
-		switch t := c.Unit.Text; {
-		case t == "°C" && low-zeroC >= 270 && high-zeroC <= 380:
-			s.say(noteCLikeK, fmt.Sprintf("column %q: %.4g to %.4g °C", c.Text, low-zeroC, high-zeroC))
-		case t == "K" && high < 120:
-			s.say(noteKLikeC, fmt.Sprintf("column %q: %.4g to %.4g K", c.Text, low, high))
-		}
-	}
-	for _, c := range p.kept {
-		if c.Role == RoleKept {
-			s.reviewKept(c, p.decimal, setting)
-		}
-	}
-}
-
-// settings numbers the temperatures of the points.
-func (s *Set) settings() []int {
-	t := make([]float64, len(s.Points))
-	for i, p := range s.Points {
-		t[i] = p.T
-	}
-	_, number := models.NumberTemperatures(t)
-	return number
-}
-
-// reviewKept warns of a numeric column that takes several values at one T; setting
-// numbers those of the points.
-func (s *Set) reviewKept(c *column, decimal byte, setting []int) {
-	at := map[int]float64{}
-	for i := range s.Points {
-		pt := &s.Points[i]
-		cell, ok := pt.Extra[c.Text]
-		if !pt.Used || !ok {
-			continue
-		}
-		x := ParseCell(cell, decimal, 0)
-		if x.Kind == CellMissing {
-			continue
-		}
-		if x.Kind != CellNumber {
-			return
-		}
-		v, seen := at[setting[i]]
-		if seen && v != x.Value {
-			name := c.Text
-			s.Notices = append(s.Notices, Notice{
-				Code:    noteVaries,
-				Message: fmt.Sprintf("column %q takes %g and %g at %.6g K", name, v, x.Value, pt.T),
-				Cure:    fmt.Sprintf("choose with --where '%s=%s', or split with --dataset-by '%s'", name, cell, name),
-				Rows:    []int{pt.Row},
-			})
-			return
-		}
-		at[setting[i]] = x.Value
-	}
 }
