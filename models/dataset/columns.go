@@ -59,6 +59,7 @@ type maker struct {
 	t        *Table
 	opt      Options
 	problems Problems
+	tidied   *tidied // nil unless Tidy wrote the table
 }
 
 func (m *maker) refuse(code string, row int, column, format string, args ...any) {
@@ -237,20 +238,21 @@ func (m *maker) columns(headings []string, line int) *plan {
 	}
 	forced := map[Role]*column{}
 	for _, role := range slices.Sorted(maps.Keys(m.opt.Columns)) {
-		text := m.opt.Columns[role]
-		c := p.find(text)
-		if c == nil {
-			m.refuse(codeColumnUnknown, line, "", "--column %s=%s: there is no such heading; the file has %s", role, text, quoteAll(headings))
-			continue
+		for _, text := range m.opt.Columns[role] {
+			c := p.find(text)
+			if c == nil {
+				m.refuse(codeColumnUnknown, line, "", "--column %s=%s: there is no such heading; the file has %s", role, text, quoteAll(headings))
+				continue
+			}
+			h, err := parseAs(role, c.Text, m.opt.Assume)
+			if err != nil {
+				m.refuse(codeRoleUnknown, 0, "", "--column %s=%s: %v", role, text, err)
+				continue
+			}
+			h.Text = c.Text
+			c.Heading = h
+			forced[h.Role] = c
 		}
-		h, err := parseAs(role, c.Text, m.opt.Assume)
-		if err != nil {
-			m.refuse(codeRoleUnknown, 0, "", "--column %s=%s: %v", role, text, err)
-			continue
-		}
-		h.Text = c.Text
-		c.Heading = h
-		forced[h.Role] = c
 	}
 	m.checkAssumptions(p)
 

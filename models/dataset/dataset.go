@@ -157,13 +157,13 @@ func (ps Problems) Error() string {
 // Options are what a user says about a file. The zero value reads everything
 // that is certain.
 type Options struct {
-	Dataset    string            // keep the rows of this data set
-	Columns    map[string]string // role → heading (--column)
-	Assume     map[string]string // T=degC, log=lg, k=rate, error=1, n=3 (--assume)
-	Decimal    string            // comma or point; "" decides by the file
-	Where      []string          // conditions 'source!=Lab3', 'pH=7.0' (--where)
-	LeaveOut   []int             // lines of the file
-	TMin, TMax float64           // K; 0 if none
+	Dataset    string              // keep the rows of this data set
+	Columns    map[string][]string // role → headings (--column); several rates are repeats
+	Assume     map[string]string   // T=degC, log=lg, k=rate, error=1, n=3 (--assume)
+	Decimal    string              // comma or point; "" decides by the file
+	Where      []string            // conditions 'source!=Lab3', 'pH=7.0' (--where)
+	LeaveOut   []int               // lines of the file
+	TMin, TMax float64             // K; 0 if none
 	// DatasetBy is the heading of a column whose values name the data sets,
 	// where there is no column dataset (--dataset-by).
 	DatasetBy string

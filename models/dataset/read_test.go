@@ -56,12 +56,12 @@ func TestPublishedFiles(t *testing.T) {
 	}{
 		{"handbook/ch3i_ethoxide.csv", Options{}, 6, [2]float64{273.15, 5.60e-5}, [2]float64{303.15, 2.08e-3}, "L mol^-1 s^-1", "k"},
 		{"handbook/n2o5_daniels_johnston.csv", Options{}, 6, [2]float64{273, 7.87e-7}, [2]float64{338, 4.87e-3}, "s^-1", "k"},
-		{"handbook/hi_bodenstein.csv", Options{Columns: map[string]string{"k": "k_dec_L_mol_s"}}, 6, [2]float64{556, 3.52e-7}, [2]float64{781, 3.95e-2}, "L mol^-1 s^-1", "k_dec"},
-		{"handbook/hi_bodenstein.csv", Options{Columns: map[string]string{"k": "k_form_L_mol_s"}}, 6, [2]float64{556, 4.45e-5}, [2]float64{781, 1.34}, "L mol^-1 s^-1", "k_form"},
+		{"handbook/hi_bodenstein.csv", Options{Columns: map[string][]string{"k": {"k_dec_L_mol_s"}}}, 6, [2]float64{556, 3.52e-7}, [2]float64{781, 3.95e-2}, "L mol^-1 s^-1", "k_dec"},
+		{"handbook/hi_bodenstein.csv", Options{Columns: map[string][]string{"k": {"k_form_L_mol_s"}}}, 6, [2]float64{556, 4.45e-5}, [2]float64{781, 1.34}, "L mol^-1 s^-1", "k_form"},
 		{"handbook/nelson_class_h.csv", Options{}, 40, [2]float64{463.15, 1.0 / 7228}, [2]float64{533.15, 1.0 / 1896}, "h^-1", "k"},
 		{"synthetic/s5_hetero.csv", Options{}, 15, [2]float64{300, 0.0220807}, [2]float64{440, 60.797}, "", "k"},
-		{"opendata/mercury_pressure_R.csv", Options{Columns: map[string]string{"k": "p_mmHg"}}, 19, [2]float64{273.15, 2e-4}, [2]float64{633.15, 806}, "mmHg", "p"},
-		{"opendata/steam_MASS.csv", Options{Columns: map[string]string{"k": "p"}}, 14, [2]float64{273.15, 4.14}, [2]float64{378.15, 920.01}, "", "p"},
+		{"opendata/mercury_pressure_R.csv", Options{Columns: map[string][]string{"k": {"p_mmHg"}}}, 19, [2]float64{273.15, 2e-4}, [2]float64{633.15, 806}, "mmHg", "p"},
+		{"opendata/steam_MASS.csv", Options{Columns: map[string][]string{"k": {"p"}}}, 14, [2]float64{273.15, 4.14}, [2]float64{378.15, 920.01}, "", "p"},
 	} {
 		f, err := os.Open(reference.Path(c.file))
 		if err != nil {
@@ -249,7 +249,7 @@ func TestUncertainties(t *testing.T) {
 		{"error", "0.1", Options{Assume: map[string]string{"error": "sd,n=4"}}, 0.05, LevelRepeats},
 		{"U(k)", "0.1", Options{}, 0, LevelNone},
 		{"u(k)", "", Options{}, 0, LevelNone},
-		{"q", "0.1", Options{Columns: map[string]string{"u(k)": "q"}}, 0.1, LevelStandard},
+		{"q", "0.1", Options{Columns: map[string][]string{"u(k)": {"q"}}}, 0.1, LevelStandard},
 		{"u(k_cat)", "0.1", Options{}, 0, LevelNone}, // of another quantity
 	} {
 		s := read(t, "T/K,k/s^-1,"+c.heading+"\n300,2,"+c.cell+"\n310,2,"+c.cell+"\n", c.opt)
@@ -332,7 +332,7 @@ func TestRefusals(t *testing.T) {
 		{"thousands", "T/K,k/s^-1\n\"1,200\",5\n\"1,300\",6\n", Options{}, []string{"ambiguous-decimal-mark:2"}},
 		{"disagree", "T/K,t/°C,k/s^-1\n300.00,26.85,1\n310.00,35.00,1\n", Options{}, []string{"columns-disagree:3"}},
 		{"k and ln k", "T/K,k/s^-1,ln k\n300,2.718,1.000\n310,2.718,2.000\n", Options{}, []string{"columns-disagree:3"}},
-		{"column", "T/K,k/s^-1\n300,1\n310,2\n", Options{Columns: map[string]string{"k": "kobs", "zeta": "T/K"}}, []string{"column-unknown:1", "role-unknown:0"}},
+		{"column", "T/K,k/s^-1\n300,1\n310,2\n", Options{Columns: map[string][]string{"k": {"kobs"}, "zeta": {"T/K"}}}, []string{"column-unknown:1", "role-unknown:0"}},
 		{"dataset", "T/K,k/s^-1,dataset\n300,1,a\n310,2,b\n", Options{Dataset: "c"}, []string{"dataset-unknown:0"}},
 		{"where", "T/K,k/s^-1\n300,1\n310,2\n", Options{Where: []string{"pH=7", "pH"}}, []string{"column-unknown:0", "where-not-understood:0"}},
 		{"leave-out", "T/K,k/s^-1\n300,1\n310,2\n", Options{LeaveOut: []int{9}}, []string{"leave-out-unknown:9"}},
@@ -462,7 +462,7 @@ func TestSelection(t *testing.T) {
 	if s := read(t, "T/K,k/s^-1\n300,0\n310,-1\n", Options{AllowNonPositiveK: true}); len(s.UsedPoints()) != 2 {
 		t.Errorf("k <= 0 is allowed on request: %+v", s.Points)
 	}
-	if s := read(t, "T/K,y\n300,0\n310,1\n", Options{Columns: map[string]string{"ln k": "y"}}); s.Points[1].K != math.E {
+	if s := read(t, "T/K,y\n300,0\n310,1\n", Options{Columns: map[string][]string{"ln k": {"y"}}}); s.Points[1].K != math.E {
 		t.Errorf("--column 'ln k=y': %+v", s.Points[1])
 	}
 }
@@ -600,7 +600,7 @@ func TestInputIsNotModified(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	opt := Options{Columns: map[string]string{"k": "k/s^-1"}, Assume: map[string]string{"T": "K"}, LeaveOut: []int{2}}
+	opt := Options{Columns: map[string][]string{"k": {"k/s^-1"}}, Assume: map[string]string{"T": "K"}, LeaveOut: []int{2}}
 	if _, err := tab.Sets(opt); err != nil {
 		t.Fatal(err)
 	}

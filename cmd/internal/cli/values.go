@@ -3,6 +3,7 @@ package cli
 import (
 	"errors"
 	"fmt"
+	"maps"
 	"math"
 	"slices"
 	"strconv"
@@ -118,17 +119,35 @@ func (p pairs) Set(s string) error {
 	return nil
 }
 
-// column is the value of --column: role=HEADING, where a heading may hold commas.
-type column struct{ m *map[string]string }
+// column is the value of --column: role=HEADING, where a heading may hold commas. A
+// role given several times has several headings.
+type column struct{ m *map[string][]string }
 
-func (c column) String() string {
+func (c column) String() string { return strings.Join(c.GetSlice(), ",") }
+
+// GetSlice lists the columns as a user may repeat them.
+func (c column) GetSlice() []string {
 	var chosen []string
-	for role, heading := range *c.m {
-		chosen = append(chosen, role+"="+heading)
+	for _, role := range slices.Sorted(maps.Keys(*c.m)) {
+		for _, heading := range (*c.m)[role] {
+			chosen = append(chosen, role+"="+heading)
+		}
 	}
-	slices.Sort(chosen)
-	return strings.Join(chosen, ",")
+	return chosen
 }
+
+// Append and Replace make it a pflag.SliceValue.
+func (c column) Append(s string) error { return c.Set(s) }
+func (c column) Replace(all []string) error {
+	*c.m = nil
+	for _, s := range all {
+		if err := c.Set(s); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
 func (c column) Type() string { return "role=heading" }
 func (c column) Set(s string) error {
 	role, heading, ok := strings.Cut(s, "=")
@@ -136,9 +155,10 @@ func (c column) Set(s string) error {
 		return fmt.Errorf("%q is not of the form role=HEADING", s)
 	}
 	if *c.m == nil {
-		*c.m = map[string]string{}
+		*c.m = map[string][]string{}
 	}
-	(*c.m)[strings.TrimSpace(role)] = strings.TrimSpace(heading)
+	role = strings.TrimSpace(role)
+	(*c.m)[role] = append((*c.m)[role], strings.TrimSpace(heading))
 	return nil
 }
 
