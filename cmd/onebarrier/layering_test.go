@@ -37,7 +37,7 @@ var forTests = []string{"models/modeltest", "models/reference"}
 // notInLibrary are the modules on which no library package may depend, however
 // far down: a chemist's own program imports the library without them.
 var notInLibrary = []string{
-	"github.com/spf13/cobra", "gonum.org/v1/plot", "database/sql", "modernc.org/sqlite", "testing",
+	"github.com/spf13/cobra", "gonum.org/v1/plot", "github.com/xuri/excelize", "database/sql", "modernc.org/sqlite", "testing",
 }
 
 // pkg is a package with its own imports and everything it depends on.
@@ -144,6 +144,8 @@ func TestPlantedImportsAreFound(t *testing.T) {
 		{pkg{"onebarrier/diagnostics", []string{"onebarrier/cmd/internal/report"}, nil}, "diagnostics imports cmd/internal/report, which is not below it"},
 		{pkg{"onebarrier/models/fit", nil, []string{"gonum.org/v1/plot/vg"}}, "models/fit depends on gonum.org/v1/plot/vg"},
 		{pkg{"onebarrier/models/dataset", nil, []string{"github.com/spf13/cobra"}}, "models/dataset depends on github.com/spf13/cobra"},
+		{pkg{"onebarrier/models/dataset", nil, []string{"github.com/xuri/excelize/v2"}}, "models/dataset depends on github.com/xuri/excelize/v2"},
+		{pkg{"onebarrier/diagnostics", []string{"onebarrier/cmd/internal/workbook"}, nil}, "diagnostics imports cmd/internal/workbook, which is not below it"},
 		{pkg{"onebarrier/models/fit", []string{"onebarrier/models/modeltest"}, nil}, "models/fit imports models/modeltest, which is for tests"},
 		{pkg{"onebarrier/bootstrap", []string{"onebarrier/models/reference"}, nil}, "bootstrap imports models/reference, which is for tests"},
 		{pkg{"onebarrier/models/fit", nil, []string{"testing"}}, "models/fit depends on testing"},

@@ -35,6 +35,16 @@ const (
 	codeLeaveOut             = "leave-out-unknown"
 	codeDecimalOption        = "decimal-unknown"
 	codeAssume               = "assumption-not-understood"
+	// Of workbooks; cmd/internal/workbook raises them.
+	codeWorkbookDamaged   = "workbook-damaged"
+	codeWorkbookTooLarge  = "workbook-too-large"
+	codeWorkbookEncrypted = "workbook-encrypted"
+	codeWorkbookFormat    = "workbook-format"
+	codeSeveralSheets     = "several-sheets"
+	codeSheetUnknown      = "sheet-unknown"
+	codeScattered         = "cells-scattered"
+	codeDateCell          = "date-cell"
+	codeFormula           = "formula-without-value"
 )
 
 // Codes of notices: what a user should know of a file that can.
@@ -69,6 +79,11 @@ const (
 	noteVaries         = "column-varies"
 	noteUnneeded       = "assumption-not-needed"
 	noteAssumption     = "assumption-made"
+	// Of workbooks.
+	noteSheetChosen = "sheet-chosen"
+	noteHidden      = "hidden-cells"
+	notePercent     = "percent-cells"
+	noteMerged      = "merged-cells"
 )
 
 // Explanation tells the whole story of a code.
@@ -113,6 +128,15 @@ var problemTexts = []Explanation{
 	{codeLeaveOut, "A line to be left out is not in the table", "--leave-out takes line numbers of the file, counted from 1, headings and comments included.", "look up the line with inspect"},
 	{codeDecimalOption, "The decimal mark is not understood", "--decimal takes comma or point.", "write --decimal comma or --decimal point"},
 	{codeAssume, "An assumption is not understood", "--assume takes key=value.", "use T=K|degC|degF, log=lg|ln, k=rate, factor=times|unit, error=1 (standard), error=2 (expanded, k = 2), error=sd, n=NUMBER"},
+	{codeWorkbookDamaged, "The workbook is damaged", "A part of the file is missing, ends early or fails its checksum. What is left is not read, lest rows be lost unseen.", "open it in a spreadsheet program and save it again as .xlsx, or save the sheet as CSV"},
+	{codeWorkbookTooLarge, "The workbook unfolds to too much", "A workbook may unfold to 200 times its size, 64 MB at least and 2 GB at most; beyond that it is taken for one made to fill memory.", "save the sheet as CSV"},
+	{codeWorkbookEncrypted, "The workbook is protected by a password", "Its cells are encrypted.", "save it without a password, or save the sheet as CSV"},
+	{codeWorkbookFormat, "The workbook is of a kind that is not read", "Of workbooks, .xlsx is read; .xls, .xlsb and .ods are not.", "save it as .xlsx, or save the sheet as CSV"},
+	{codeSeveralSheets, "Several sheets hold a table", "One analysis takes one table.", "choose one: --sheet NAME"},
+	{codeSheetUnknown, "There is no such sheet", "--sheet takes the name of a sheet, or its number counted from 1. A text table has no sheets.", "use one of the names listed"},
+	{codeScattered, "The cells lie far apart", "A few cells lie in distant columns of many rows; filling in what lies between would take more memory than the data.", "save only the columns that belong to the data, next to each other"},
+	{codeDateCell, "A cell that should hold a number holds a date", "Spreadsheet programs turn entries such as 1-2 or 3/4 into dates; what was typed is lost. A date format may also have been given to a column of numbers.", "type the number anew in a cell of the format Number, or give the column that format"},
+	{codeFormula, "A formula has no stored result", "Programs that write workbooks often leave formulas to be computed when the file is opened. Formulas are not computed here.", "open the workbook in a spreadsheet program and save it"},
 }
 
 var noticeTexts = []Explanation{
@@ -146,6 +170,10 @@ var noticeTexts = []Explanation{
 	{noteVaries, "Another condition varies", "A numeric column takes several values at one temperature: the rows may not belong to one data set.", "choose with --where 'HEADING=VALUE', or split with --dataset-by HEADING"},
 	{noteUnneeded, "An assumption was not needed", "No heading or cell is ambiguous in the way that --assume settles.", ""},
 	{noteAssumption, "An assumption was made on request", "--assume settled what the file leaves open.", ""},
+	{noteSheetChosen, "One sheet of several was read", "The other sheets hold no table with a temperature and a rate constant.", ""},
+	{noteHidden, "Hidden cells were read", "Rows, columns or sheets that are hidden, or filtered out, belong to the file like all others.", "--leave-out rows that are not meant, or delete them"},
+	{notePercent, "Cells shown in per cent were read as such", "A cell that holds 0.05 and shows 5 % is 5 %.", ""},
+	{noteMerged, "Merged cells were read as repeated", "The value of a merged heading belongs to each of its columns, that of a merged cell in the data to each of its rows.", ""},
 }
 
 // ProblemCodes lists the codes of problems, NoticeCodes those of notices.

@@ -363,6 +363,16 @@ func (t *Table) split(p *splitter) Problems {
 	}
 }
 
+// Append adds a row of another kind of table than text. blank says whether a blank
+// row came before it.
+func (t *Table) Append(line int, cells []string, blank bool) {
+	t.Rows = append(t.Rows, Row{line, cells})
+	t.Blank = append(t.Blank, blank)
+	for _, c := range cells {
+		t.mayHoldComma = t.mayHoldComma || strings.IndexByte(c, ',') >= 0
+	}
+}
+
 // baseName is the name of a data set that its file does not name.
 func (t *Table) baseName() string {
 	if t.Name == "-" {

@@ -1,0 +1,6 @@
+//go:build race
+
+package workbook
+
+// raceDetector: its own memory counts.
+const raceDetector = true

@@ -1,0 +1,188 @@
+package workbook
+
+import (
+	"crypto/sha256"
+	"encoding/hex"
+	"errors"
+	"slices"
+	"strconv"
+	"strings"
+
+	"onebarrier/models/dataset"
+)
+
+// Result is what one sheet gave: data sets, or problems.
+type Result struct {
+	Sheet    string
+	Sets     []*dataset.Set
+	Problems dataset.Problems
+}
+
+// noTable are the problems of sheets that hold no table of rate constants at all:
+// notes, calibrations, charts.
+var noTable = []string{"no-data", "no-heading", "no-temperature", "no-rate"}
+
+// holdsTable reports whether a sheet holds a table of rate constants, be it with
+// faults.
+func (r *Result) holdsTable() bool {
+	return !slices.ContainsFunc(r.Problems, func(p dataset.Problem) bool { return slices.Contains(noTable, p.Code) })
+}
+
+// Read reads the data sets of one sheet, chosen by its name or its number from 1.
+// Without a choice there must be one sheet that holds a table. name is the name of
+// the file as the user gave it. Where the workbook cannot be used the error is a
+// dataset.Problems.
+func Read(name string, data []byte, choice string, opt dataset.Options) ([]*dataset.Set, error) {
+	results, err := ReadAll(name, data, choice, opt)
+	if err != nil {
+		return nil, err
+	}
+	if len(results) > 1 {
+		var names []string
+		for _, r := range results {
+			names = append(names, strconv.Quote(r.Sheet))
+		}
+		b := &book{name: name}
+		p := b.problem(codeSeveral, "", 0, "%d sheets hold a table: %s", len(results), list(names))
+		p.Cure = "choose one: --sheet " + word(results[0].Sheet)
+		return nil, dataset.Problems{p}
+	}
+	if r := results[0]; len(r.Problems) > 0 {
+		return nil, r.Problems
+	}
+	return results[0].Sets, nil
+}
+
+// ReadAll reads every sheet that holds a table, or the one that was chosen. Where
+// there is none the error, a dataset.Problems, says what each sheet lacks.
+func ReadAll(name string, data []byte, choice string, opt dataset.Options) ([]Result, error) {
+	sum := sha256.Sum256(data)
+	b, err := open(name, hex.EncodeToString(sum[:]), data)
+	if err != nil {
+		return nil, err
+	}
+	infos := b.sheets
+	if choice != "" {
+		i, err := b.choose(choice)
+		if err != nil {
+			return nil, err
+		}
+		infos = infos[i : i+1]
+	}
+	var results []Result
+	var others []string
+	var lacking dataset.Problems
+	for _, info := range infos {
+		r := Result{Sheet: info.name}
+		r.Sets, err = b.sets(info, opt)
+		if err != nil && !errors.As(err, &r.Problems) {
+			return nil, err
+		}
+		if choice == "" && !r.holdsTable() {
+			others = append(others, strconv.Quote(info.name))
+			lacking = append(lacking, r.Problems...)
+			continue
+		}
+		results = append(results, r)
+	}
+	if len(results) == 0 {
+		return nil, lacking
+	}
+	if len(results) == 1 && len(others) > 0 {
+		for _, s := range results[0].Sets {
+			s.Notices = append(s.Notices, say(noteChosen, nil, "sheet %q was read; no table with a temperature and a rate constant is in %s", results[0].Sheet, list(others)))
+		}
+	}
+	return results, nil
+}
+
+// choose finds a sheet by its name, in any case, or by its number.
+func (b *book) choose(choice string) (int, error) {
+	for i, s := range b.sheets {
+		if s.name == choice {
+			return i, nil
+		}
+	}
+	for i, s := range b.sheets {
+		if strings.EqualFold(strings.TrimSpace(s.name), strings.TrimSpace(choice)) {
+			return i, nil
+		}
+	}
+	if n, err := strconv.Atoi(choice); err == nil && n >= 1 && n <= len(b.sheets) {
+		return n - 1, nil
+	}
+	var names []string
+	for _, s := range b.sheets {
+		names = append(names, strconv.Quote(s.name))
+	}
+	return 0, dataset.Problems{b.problem(codeUnknown, "", 0, "there is no sheet %q; the workbook has %s", choice, list(names))}
+}
+
+// sets reads one sheet.
+func (b *book) sets(info sheetInfo, opt dataset.Options) ([]*dataset.Set, error) {
+	s, err := b.readSheet(info)
+	if err != nil {
+		return nil, err
+	}
+	t, notices, err := b.table(s, opt.Decimal == "comma")
+	if err != nil {
+		return nil, err
+	}
+	dates := s.dates()
+	s.rows = nil // the table holds them
+	sets, err := t.Sets(opt)
+	var ps dataset.Problems
+	if errors.As(err, &ps) {
+		return nil, b.tellDates(ps, dates)
+	}
+	for _, set := range sets {
+		for _, n := range notices {
+			n.Rows = slices.Clone(n.Rows)
+			set.Notices = append(set.Notices, n)
+		}
+	}
+	return sets, err
+}
+
+// dates lists the dates of a sheet by their rows.
+func (s *sheet) dates() map[int][]string {
+	m := map[int][]string{}
+	for _, r := range s.rows {
+		for _, c := range r.cells {
+			if c.kind == isDate {
+				m[r.line] = append(m[r.line], c.text)
+			}
+		}
+	}
+	return m
+}
+
+// tellDates says of cells that are not numbers which ones are dates.
+func (b *book) tellDates(ps dataset.Problems, dates map[int][]string) dataset.Problems {
+	for i, p := range ps {
+		for _, d := range dates[p.Row] {
+			if strings.Contains(p.Message, strconv.Quote(d)) {
+				ps[i] = b.problem(codeDate, p.Sheet, p.Row, "the cell holds the date %s, not a number", d)
+				ps[i].Column = p.Column
+			}
+		}
+	}
+	return ps
+}
+
+// list joins the first names.
+func list(names []string) string {
+	const most = 20
+	if len(names) > most {
+		return strings.Join(names[:most], ", ") + " and " + strconv.Itoa(len(names)-most) + " more"
+	}
+	return strings.Join(names, ", ")
+}
+
+// word quotes a name for a shell where it has spaces.
+func word(s string) string {
+	if strings.ContainsAny(s, " '\"$&()*;<>?`\\|!#") {
+		return "'" + strings.ReplaceAll(s, "'", `'\''`) + "'"
+	}
+	return s
+}
