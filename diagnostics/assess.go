@@ -201,7 +201,9 @@ func (a *assessor) chooseErrorModel(points []dataset.Point) error {
 		needs := m == fit.Stated || m == fit.Scaled || m == fit.StatedAbsolute
 		for _, p := range points {
 			if needs && !(p.UK > 0) {
-				return a.problem("uncertainty-missing", fmt.Sprintf("error model %q needs an uncertainty for every used point; line %d has none", m, p.Row), "give a column u(k), or use --error-model relative")
+				return dataset.Problems{{Code: "uncertainty-missing", File: p.File, Row: p.Row,
+					Message: fmt.Sprintf("error model %q needs an uncertainty for every used point, and this row has none", m),
+					Cure:    "give a column u(k), or use --error-model relative"}}
 			}
 		}
 	}

@@ -179,6 +179,7 @@ type DatasetInfo struct {
 
 // Column says what one column of a file was taken for.
 type Column struct {
+	File    string `json:"file"`
 	Heading string `json:"heading"`
 	Role    string `json:"role"`
 	Unit    string `json:"unit"`
@@ -189,6 +190,7 @@ type Column struct {
 // Datum is one row of the input. Residual is in ln k from the straight line, or
 // unknown where the row was not used.
 type Datum struct {
+	File     string `json:"file"`
 	Row      int    `json:"row"`
 	T        Real   `json:"t_k"`
 	K        Real   `json:"k"`

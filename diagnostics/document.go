@@ -38,7 +38,7 @@ func (a *assessor) assessment() *Assessment {
 		ChangeOfE: a.changes,
 	}
 	for _, c := range a.set.Columns {
-		doc.Columns = append(doc.Columns, Column{c.Heading, c.Role, c.Unit, Real(c.Factor), c.Level})
+		doc.Columns = append(doc.Columns, Column{c.File, c.Heading, c.Role, c.Unit, Real(c.Factor), c.Level})
 	}
 	for _, f := range a.fits {
 		doc.Fits[f.Curve.Info().Name] = f
@@ -117,7 +117,7 @@ func (a *assessor) rows() []Datum {
 	}
 	out := make([]Datum, 0, len(a.set.Points))
 	for _, p := range a.set.Points {
-		d := Datum{Row: p.Row, T: Real(p.T), K: Real(p.K), UK: Real(nan), Limit: p.Limit,
+		d := Datum{File: p.File, Row: p.Row, T: Real(p.T), K: Real(p.K), UK: Real(nan), Limit: p.Limit,
 			Source: p.Source, Used: p.Used, WhyNot: p.WhyNot, Residual: Real(nan)}
 		if p.UK > 0 {
 			d.UK = Real(p.UK)

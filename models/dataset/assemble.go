@@ -105,7 +105,7 @@ func (m *maker) decideDecimal(p *plan, first int) bool {
 		}
 		for j := range min(len(p.cols), len(r.Cells)) {
 			c := &p.cols[j]
-			if !c.used || c.Role == RoleSource || c.Role == RoleDataset || c.Role == RoleNote || c.Role == RoleLimit {
+			if !c.used || c.Role.isText() || c.Role == RoleLimit {
 				continue
 			}
 			cell := r.Cells[j]

@@ -35,6 +35,11 @@ const (
 	codeLeaveOut             = "leave-out-unknown"
 	codeDecimalOption        = "decimal-unknown"
 	codeAssume               = "assumption-not-understood"
+	codePoolTwice            = "pooled-twice"
+	codePoolQuantity         = "pooled-quantities"
+	codePoolUnit             = "pooled-units"
+	codeTidyCell             = "tidy-cell"
+
 	// Of workbooks; cmd/internal/workbook raises them.
 	codeWorkbookDamaged   = "workbook-damaged"
 	codeWorkbookTooLarge  = "workbook-too-large"
@@ -79,6 +84,8 @@ const (
 	noteVaries         = "column-varies"
 	noteUnneeded       = "assumption-not-needed"
 	noteAssumption     = "assumption-made"
+	noteConverted      = "unit-converted"
+
 	// Of workbooks.
 	noteSheetChosen = "sheet-chosen"
 	noteHidden      = "hidden-cells"
@@ -128,6 +135,10 @@ var problemTexts = []Explanation{
 	{codeLeaveOut, "A line to be left out is not in the table", "--leave-out takes line numbers of the file, counted from 1, headings and comments included.", "look up the line with inspect"},
 	{codeDecimalOption, "The decimal mark is not understood", "--decimal takes comma or point.", "write --decimal comma or --decimal point"},
 	{codeAssume, "An assumption is not understood", "--assume takes key=value.", "use T=K|degC|degF, log=lg|ln, k=rate, factor=times|unit, error=1 (standard), error=2 (expanded, k = 2), error=sd, n=NUMBER"},
+	{codePoolTwice, "A file is pooled with itself", "Its rows would count twice.", "name each file once"},
+	{codePoolQuantity, "Files of different rate constants cannot be pooled", "Pooled rows are taken as measurements of one quantity, and its symbol says which.", "assess them apart; or write the same symbol into the headings if the quantity is the same"},
+	{codePoolUnit, "The units of pooled files cannot be converted into each other", "Pooled rows are brought to the unit of the first file. Units of different dimensions have no ratio, nor has a unit that was not understood.", "write the rate constants in one unit"},
+	{codeTidyCell, "A cell of a tidy table is not understood", "A table with the headings row and left_out was written by inspect --tidy: row holds the line of the original file, level says standard or repeats.", "write it as --tidy does, or rename the two headings"},
 	{codeWorkbookDamaged, "The workbook is damaged", "A part of the file is missing, ends early or fails its checksum. What is left is not read, lest rows be lost unseen.", "open it in a spreadsheet program and save it again as .xlsx, or save the sheet as CSV"},
 	{codeWorkbookTooLarge, "The workbook unfolds to too much", "A workbook may unfold to 200 times its size, 64 MB at least and 2 GB at most; beyond that it is taken for one made to fill memory.", "save the sheet as CSV"},
 	{codeWorkbookEncrypted, "The workbook is protected by a password", "Its cells are encrypted.", "save it without a password, or save the sheet as CSV"},
@@ -170,6 +181,7 @@ var noticeTexts = []Explanation{
 	{noteVaries, "Another condition varies", "A numeric column takes several values at one temperature: the rows may not belong to one data set.", "choose with --where 'HEADING=VALUE', or split with --dataset-by HEADING"},
 	{noteUnneeded, "An assumption was not needed", "No heading or cell is ambiguous in the way that --assume settles.", ""},
 	{noteAssumption, "An assumption was made on request", "--assume settled what the file leaves open.", ""},
+	{noteConverted, "Rate constants were converted to the unit of another file", "Files that are pooled are brought to the unit of the first, by the exact ratio of the units.", ""},
 	{noteSheetChosen, "One sheet of several was read", "The other sheets hold no table with a temperature and a rate constant.", ""},
 	{noteHidden, "Hidden cells were read", "Rows, columns or sheets that are hidden, or filtered out, belong to the file like all others.", "--leave-out rows that are not meant, or delete them"},
 	{notePercent, "Cells shown in per cent were read as such", "A cell that holds 0.05 and shows 5 % is 5 %.", ""},

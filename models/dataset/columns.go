@@ -230,12 +230,16 @@ func (m *maker) columns(headings []string, line int) *plan {
 			c.Text = fmt.Sprintf("column %d", i+1)
 			continue
 		}
+		if right := tidyKept(headings); right > 0 && i >= right {
+			continue // may be spelled as one that is used
+		}
 		key := normalize(text)
 		if j, ok := seen[key]; ok {
 			m.refuse(codeDuplicateHeading, line, text, "the heading stands over columns %d and %d", j+1, i+1)
 		}
 		seen[key] = i
 	}
+	m.readTidied(p)
 	forced := map[Role]*column{}
 	for _, role := range slices.Sorted(maps.Keys(m.opt.Columns)) {
 		for _, text := range m.opt.Columns[role] {

@@ -61,12 +61,14 @@ type Quantity struct {
 
 // Column says what one column was taken for.
 type Column struct {
+	File       string
 	Index      int // from 1
 	Heading    string
 	Role       string // temperature, rate, uncertainty, ... or "kept"
 	Unit       string
 	Factor     float64 // the cell times this is the value in the unit; 1 if none
 	Level      string
+	Conversion string // what its numbers were divided by, or turned into; "" if nothing
 	Confidence string // certain, or by assumption
 	Examples   []string
 }

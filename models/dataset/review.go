@@ -66,9 +66,11 @@ func (s *Set) review() {
 	if len(distinct) > 1 && high-low < 20-1e-9*high {
 		s.say(noteNarrow, fmt.Sprintf("the temperatures span %s K", below20(high-low)))
 	}
+	seen := map[string]bool{} // files that are pooled share headings
 	for _, c := range s.Columns {
 		// A column that has a role, and is spare, is no condition of the measurement.
-		if c.Role == string(RoleKept) && ParseHeading(c.Heading, nil).Role == RoleKept {
+		if c.Role == string(RoleKept) && !seen[c.Heading] && ParseHeading(c.Heading, nil).Role == RoleKept {
+			seen[c.Heading] = true
 			s.reviewKept(c.Heading, setting)
 		}
 	}

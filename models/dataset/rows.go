@@ -2,6 +2,7 @@ package dataset
 
 import (
 	"fmt"
+	"maps"
 	"math"
 	"strconv"
 	"strings"
@@ -59,6 +60,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	for _, l := range m.opt.LeaveOut {
 		leaveOut[l] = true
 	}
+	named := maps.Clone(leaveOut) // leaveOut shrinks to those that are not found
 	points := make([]Point, 0, len(m.t.Rows)-first)
 	intern := map[string]string{}
 	var after []int
@@ -70,7 +72,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 			}
 			break
 		}
-		if leaveOut[r.Line] && len(r.Cells) != n { // ragged, and out already
+		if m.tidied == nil && leaveOut[r.Line] && len(r.Cells) != n { // ragged, and out already
 			delete(leaveOut, r.Line)
 			points = append(points, Point{File: m.t.Name, Row: r.Line, T: math.NaN(), K: math.NaN(), Order: math.NaN(), WhyNot: leftOut})
 			continue
@@ -89,6 +91,9 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		rr.row, rr.cells, rr.quiet = r, cells, false
 		points = append(points, Point{File: m.t.Name, Row: r.Line, T: math.NaN(), K: math.NaN(), Order: math.NaN()})
 		pt := &points[len(points)-1]
+		if m.tidied != nil {
+			m.tidied.begin(rr, pt)
+		}
 		text := func(c *column) string {
 			if c == nil || cells[c.index] == "" {
 				return ""
@@ -112,8 +117,11 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 				pt.Extra[c.Text] = withPoint(s, p.decimal)
 			}
 		}
-		if leaveOut[r.Line] {
-			delete(leaveOut, r.Line)
+		if named[pt.Row] {
+			if m.tidied != nil && m.tidied.leftOutTwice(pt) {
+				m.refuseCure(codeLeaveOut, 0, "", fmt.Sprintf("--leave-out %d: several files have such a line", pt.Row), "use --where 'row!=LINE' and --where 'file!=NAME'")
+			}
+			delete(leaveOut, pt.Row)
 			pt.WhyNot = leftOut
 		}
 		for j := range conds {
@@ -123,6 +131,9 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		}
 		rr.quiet = pt.WhyNot != ""
 		rr.read(pt)
+		if m.tidied != nil {
+			m.tidied.end(rr, pt)
+		}
 		pt.Used = pt.WhyNot == ""
 	}
 	for _, l := range m.opt.LeaveOut {
@@ -164,8 +175,13 @@ func (p *plan) examples(e [][]string) {
 
 // isText reports whether a column holds text that may be anything.
 func (rr *rowReader) isText(index int) bool {
-	switch rr.p.cols[index].Role {
-	case RoleSource, RoleDataset, RoleNote:
+	return rr.p.cols[index].Role.isText()
+}
+
+// isText reports whether cells of a role may hold any text.
+func (r Role) isText() bool {
+	switch r {
+	case RoleSource, RoleDataset, RoleNote, RoleFile, RoleLeftOut, RoleAssumed, RoleLevel:
 		return true
 	}
 	return false
@@ -366,7 +382,7 @@ func (rr *rowReader) rate(pt *Point) {
 		rr.limit(pt)
 	}
 	if pt.Limit != "" && pt.WhyNot == "" {
-		pt.WhyNot = fmt.Sprintf("%s: k %s %.4g", onlyALimit, pt.Limit, pt.K)
+		pt.WhyNot = limitOnly(pt.Limit, pt.K)
 	}
 	if p.uncertainty != nil {
 		rr.uncertainty(pt, base)

@@ -111,12 +111,18 @@ func (m *maker) newSet(p *plan, name string) *Set {
 		}
 	}
 	if len(p.assumed) > 0 {
-		s.Notices = append(s.Notices, notice(noteAssumption, "assumed on request: "+strings.Join(p.assumed, ", ")))
+		s.Notices = append(s.Notices, notice(noteAssumption, assumedOnRequest(p.assumed)))
 	}
 	for i := range p.cols {
-		s.Columns = append(s.Columns, p.cols[i].describe(p))
+		c := p.cols[i].describe(p)
+		c.File = m.t.Name
+		s.Columns = append(s.Columns, c)
 	}
 	return s
+}
+
+func assumedOnRequest(assumed []string) string {
+	return "assumed on request: " + strings.Join(assumed, ", ")
 }
 
 // describe says what a column was taken for.

@@ -217,6 +217,9 @@ func quoted(s string) (text string, n, lines int, closed bool) {
 // semicolon, comma that splits all of them into the same number (two or more) of
 // cells, then spaces, then the first that splits the heading at all.
 func delimiter(text string) byte {
+	if isTidy(text) {
+		return ','
+	}
 	const most = 6
 	var sample []string
 	for rest := text; rest != "" && len(sample) < most; {

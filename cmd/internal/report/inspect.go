@@ -47,18 +47,21 @@ type InspectedSet struct {
 
 // InspectedColumn says what one column was taken for.
 type InspectedColumn struct {
+	File       string           `json:"file"`
 	Index      int              `json:"index"`
 	Heading    string           `json:"heading"`
 	Role       string           `json:"role"`
 	Unit       string           `json:"unit"`
 	Factor     diagnostics.Real `json:"factor"`
 	Level      string           `json:"level"`
+	Conversion string           `json:"conversion"`
 	Confidence string           `json:"confidence"`
 	Examples   []string         `json:"examples"`
 }
 
 // InspectedRow is one row as understood.
 type InspectedRow struct {
+	File   string           `json:"file"`
 	Row    int              `json:"row"`
 	T      diagnostics.Real `json:"t_k"`
 	UT     diagnostics.Real `json:"u_t_k"`
@@ -103,7 +106,7 @@ func newInspectedSet(s *dataset.Set) InspectedSet {
 	}
 	var used []float64
 	for _, p := range s.Points {
-		out.Data = append(out.Data, InspectedRow{p.Row, diagnostics.Real(p.T), stated(p.UT), diagnostics.Real(p.K), stated(p.UK),
+		out.Data = append(out.Data, InspectedRow{p.File, p.Row, diagnostics.Real(p.T), stated(p.UT), diagnostics.Real(p.K), stated(p.UK),
 			p.Limit, p.Source, p.Used, p.WhyNot})
 		if !p.Used {
 			continue
@@ -118,8 +121,8 @@ func newInspectedSet(s *dataset.Set) InspectedSet {
 	}
 	out.Temperatures = models.CountTemperatures(used)
 	for _, c := range s.Columns {
-		out.Columns = append(out.Columns, InspectedColumn{c.Index, c.Heading, c.Role, c.Unit, diagnostics.Real(c.Factor),
-			c.Level, c.Confidence, append([]string{}, c.Examples...)})
+		out.Columns = append(out.Columns, InspectedColumn{c.File, c.Index, c.Heading, c.Role, c.Unit, diagnostics.Real(c.Factor),
+			c.Level, c.Conversion, c.Confidence, append([]string{}, c.Examples...)})
 	}
 	for _, n := range s.Notices {
 		out.Notices = append(out.Notices, InspectedNotice{n.Code, n.Message, n.Cure, append([]int{}, n.Rows...)})
