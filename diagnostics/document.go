@@ -104,7 +104,7 @@ func (a *assessor) rows() []Datum {
 		row  int
 	}
 	nan := math.NaN()
-	residual := map[place]float64{}
+	residual := map[place][]float64{} // repeats side by side have one row, in their order
 	single := a.data.single
 	line := make([]float64, single.Len())
 	a.straight.Curve.LnK(a.straight.TRef, single.T, a.straight.P, line, nil)
@@ -113,7 +113,8 @@ func (a *assessor) rows() []Datum {
 		if single.Model.InK() {
 			r = single.K[i] - math.Exp(line[i])
 		}
-		residual[place{p.File, p.Row}] = r
+		at := place{p.File, p.Row}
+		residual[at] = append(residual[at], r)
 	}
 	out := make([]Datum, 0, len(a.set.Points))
 	for _, p := range a.set.Points {
@@ -122,8 +123,9 @@ func (a *assessor) rows() []Datum {
 		if p.UK > 0 {
 			d.UK = Real(p.UK)
 		}
-		if r, ok := residual[place{p.File, p.Row}]; ok && p.Used {
-			d.Residual = Real(r)
+		at := place{p.File, p.Row}
+		if r := residual[at]; p.Used && len(r) > 0 {
+			d.Residual, residual[at] = Real(r[0]), r[1:]
 		}
 		out = append(out, d)
 	}

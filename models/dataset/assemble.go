@@ -3,21 +3,32 @@ package dataset
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 )
 
-// labels mark rows below the data that hold no measurement; lower case.
+// labels mark rows below the data that hold no measurement: lower case, without
+// full stops, colons and what stands in brackets.
 var labels = map[string]bool{
-	"mean": true, "average": true, "avg": true, "avg.": true, "median": true, "sd": true, "s.d.": true, "stdev": true, "std": true, "std dev": true,
-	"standard deviation": true, "standard error": true, "se": true, "sem": true, "rsd": true, "cv": true, "min": true, "max": true, "sum": true, "total": true, "slope": true,
-	"intercept": true, "r2": true, "r^2": true, "r": true, "r squared": true, "r-squared": true, "ea": true, "e_a": true, "mean:": true, "average:": true, "slope:": true, "intercept:": true,
+	"mean": true, "means": true, "average": true, "averages": true, "avg": true, "median": true, "sd": true, "stdev": true, "std": true, "std dev": true, "stddev": true, "st dev": true,
+	"stand dev": true, "std deviation": true, "standard deviation": true, "standard error": true, "std error": true, "std err": true, "stderr": true, "se": true, "sem": true,
+	"rsd": true, "rsd %": true, "% rsd": true, "cv": true, "cv %": true, "% cv": true, "variance": true, "var": true, "min": true, "minimum": true, "max": true, "maximum": true,
+	"range": true, "sum": true, "total": true, "count": true, "slope": true, "intercept": true, "r2": true, "r^2": true, "r": true, "r squared": true, "r-squared": true, "adj r2": true,
+	"adj r^2": true, "rmse": true, "ea": true, "e_a": true, "activation energy": true,
 }
 
+var labelSigns = strings.NewReplacer(". ", " ", ".", " ", ":", "", "=", "")
+
 func isLabel(cell string) bool {
-	if cell == "" || len(cell) > 24 || isDigit(cell[0]) {
+	if cell == "" || len(cell) > 32 || isDigit(cell[0]) {
 		return false
 	}
-	return labels[strings.ToLower(normalize(cell))]
+	s := strings.ToLower(normalize(cell))
+	if i := strings.IndexAny(s, "(["); i > 0 { // slope (K)
+		s = s[:i]
+	}
+	s = labelSigns.Replace(s)
+	return labels[strings.TrimSpace(s)] || labels[strings.ReplaceAll(s, " ", "")] // s.d.
 }
 
 // Sets gives the cells of a table their meaning and returns its data sets, in the
@@ -41,7 +52,7 @@ func (t *Table) Sets(opt Options) ([]*Set, error) {
 	}
 	conds := m.conditions(p)
 	known := m.decideDecimal(p, first)
-	if !known || len(p.temperature) == 0 || len(p.rate) == 0 {
+	if !known || len(p.temperature) == 0 || len(p.runs) == 0 {
 		m.shapes(first, len(headings))
 		return nil, m.problems
 	}
@@ -131,7 +142,7 @@ func (m *maker) decideDecimal(p *plan, first int) bool {
 	case point != nil:
 		m.refuseCure(codeMixedMarks, comma.row, comma.head,
 			fmt.Sprintf("%q has a decimal comma, and %q in line %d, column %q, a decimal point", short(comma.text), short(point.text), point.row, point.head),
-			"say which one is the decimal mark: --decimal point or --decimal comma")
+			"write one mark throughout, or say which is the decimal one: --decimal point or --decimal comma; the other then groups thousands")
 		return false
 	case onlyThousands && m.t.Delimiter != ';':
 		m.refuseCure(codeAmbiguousMark, comma.row, comma.head,
@@ -194,16 +205,27 @@ func (m *maker) chooseFirst(p *plan, first int) {
 			p.severalNotice(p.temperature)
 		}
 	}
-	if len(p.rate) > 1 {
-		p.rate, _ = m.leastRounded(p.rate, p, first, func(c *column, x Cell) (float64, float64) { return c.rateValue(x) })
-		p.severalNotice(p.rate)
-		if c := p.rate[0]; c.Unit == nil && c.UnitText == "" {
-			for _, d := range p.rate[1:] { // ln k beside k/s^-1
-				if d.Unit != nil {
-					c.Unit, c.UnitText = d.Unit, d.UnitText
-					break
-				}
+	var unit *column // a column that names the unit of k
+	for i := range p.runs {
+		r := &p.runs[i]
+		if len(r.cols) > 1 {
+			r.cols, _ = m.leastRounded(r.cols, p, first, func(c *column, x Cell) (float64, float64) { return c.rateValue(x) })
+			p.severalNotice(r.cols)
+		}
+		for _, c := range r.cols {
+			if unit == nil && c.Unit != nil {
+				unit = c
 			}
+		}
+	}
+	for i := range p.runs {
+		c := p.runs[i].cols[0]
+		if unit == nil || c.halfLife() != "" || c.Unit != nil || c.UnitText != "" {
+			continue
+		}
+		c.Unit, c.UnitText = unit.rateUnit(), unit.UnitText // ln k beside k/s^-1
+		if !slices.Contains(p.runs[i].cols, unit) {
+			p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as that of %q", c.Text, unit.Text)))
 		}
 	}
 }

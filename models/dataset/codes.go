@@ -17,6 +17,7 @@ const (
 	codeSeveralRates         = "several-rates"
 	codeColumnUnknown        = "column-unknown"
 	codeRoleUnknown          = "role-unknown"
+	codeRoleTwice            = "role-named-twice"
 	codeMixedMarks           = "mixed-decimal-marks"
 	codeAmbiguousMark        = "ambiguous-decimal-mark"
 	codeNotNumber            = "not-a-number"
@@ -65,6 +66,9 @@ const (
 	noteTimeLike       = "time-like"
 	noteSeveral        = "several-columns"
 	noteGap            = "kelvin-gap"
+	noteSideBySide     = "repeats-side-by-side"
+	noteSpareMean      = "mean-beside-repeats"
+	noteWhichRepeat    = "uncertainty-of-which-repeat"
 	noteAssumedUnit    = "uncertainty-unit-assumed"
 	noteLevel          = "uncertainty-not-used"
 	noteRepeats        = "repeats-missing"
@@ -114,9 +118,10 @@ var problemTexts = []Explanation{
 	{codeAmbiguousTemperature, "The temperature heading has several meanings", "A heading such as T does not say its unit, and values never decide a meaning.", "write the unit into the heading, T/K, or say which: --assume T=K, T=degC, T=degF"},
 	{codeNoRate, "There is no column of rate constants", "No heading was understood as a rate constant, its logarithm, a lifetime or a half-life.", "write the heading as k/s^-1, or name the column: --column k=HEADING"},
 	{codeAmbiguousRate, "The heading of the rate constants has several meanings", "log may be the natural or the decimal logarithm, a rate need not be a rate constant, k × 10^12 may be read both ways.", "write the heading out, lg(k/s^-1), or say which with --assume"},
-	{codeSeveralRates, "There are columns of different rate constants", "One analysis takes one quantity.", "choose one: --column k=HEADING"},
+	{codeSeveralRates, "There are columns of different rate constants", "One analysis takes one quantity.", "choose one: --column k=HEADING; or, if they are repeats of one measurement, name each, or --assume k=repeats"},
 	{codeColumnUnknown, "A column named by a flag is not in the file", "The heading that a flag names is not among the headings.", "copy the heading from the file as it stands"},
 	{codeRoleUnknown, "A role named by --column does not exist", "--column takes role=HEADING with a role written as a heading without unit.", "use T, k, ln k, lg k, u(k), U(k), u_r(k), u(ln k), f(k), s(k), u(T), n, limit, source, dataset, order or note"},
+	{codeRoleTwice, "--column names one thing twice", "Several columns of rate constants, named each with --column, are repeats of one measurement; other roles have one column.", "name each column and each role once"},
 	{codeMixedMarks, "The file mixes decimal points and decimal commas", "One file has one decimal mark; 0.5 beside 0,5 could be two numbers or one.", "say which one is the decimal mark: --decimal point or --decimal comma"},
 	{codeAmbiguousMark, "A comma may be a decimal mark or may group thousands", "Every comma stands before exactly three digits, as in 1,234.", "say which: --decimal point or --decimal comma"},
 	{codeNotNumber, "A cell is not a number", "A cell of a column that is used holds other text.", "write a number, or leave the cell empty to leave the row out"},
@@ -134,7 +139,7 @@ var problemTexts = []Explanation{
 	{codeWhere, "A condition is not understood", "--where takes a heading, one of = != < <= > >=, and a value.", "write --where 'pH=7.0' or --where 'source!=Lab3'"},
 	{codeLeaveOut, "A line to be left out is not in the table", "--leave-out takes line numbers of the file, counted from 1, headings and comments included.", "look up the line with inspect"},
 	{codeDecimalOption, "The decimal mark is not understood", "--decimal takes comma or point.", "write --decimal comma or --decimal point"},
-	{codeAssume, "An assumption is not understood", "--assume takes key=value.", "use T=K|degC|degF, log=lg|ln, k=rate, factor=times|unit, error=1 (standard), error=2 (expanded, k = 2), error=sd, n=NUMBER"},
+	{codeAssume, "An assumption is not understood", "--assume takes key=value.", "use T=K|degC|degF, log=lg|ln, k=rate|repeats, factor=times|unit, error=1 (standard), error=2 (expanded, k = 2), error=sd, n=NUMBER"},
 	{codePoolTwice, "A file is pooled with itself", "Its rows would count twice.", "name each file once"},
 	{codePoolQuantity, "Files of different rate constants cannot be pooled", "Pooled rows are taken as measurements of one quantity, and its symbol says which.", "assess them apart; or write the same symbol into the headings if the quantity is the same"},
 	{codePoolUnit, "The units of pooled files cannot be converted into each other", "Pooled rows are brought to the unit of the first file. Units of different dimensions have no ratio, nor has a unit that was not understood.", "write the rate constants in one unit"},
@@ -162,7 +167,10 @@ var noticeTexts = []Explanation{
 	{noteTimeLike, "A time was read as a rate constant", "A lifetime τ is read as k = 1/τ, a half-life as k = ln 2/t½. Both hold for first-order decay.", "give k itself if the decay is not of first order"},
 	{noteSeveral, "Several columns give one quantity", "The one with the smallest rounding error is used; the others agree with it within rounding.", ""},
 	{noteGap, "Kelvin and Celsius columns differ by 273", "T/K is t/°C + 273 in every row, not + 273.15: the Celsius column is used.", "correct the kelvin column"},
-	{noteAssumedUnit, "An uncertainty without unit was given the unit of its quantity", "The heading of the uncertainty names no unit.", "write the unit into its heading"},
+	{noteSideBySide, "Repeats stand side by side", "Several columns hold repeats of one measurement. Each cell is a point of its own, at the temperature of its row.", ""},
+	{noteSpareMean, "What sums up the repeats was not used", "A mean, its standard error, the standard deviation or the number of repeats stands beside the repeats themselves, which say the same and more.", ""},
+	{noteWhichRepeat, "An uncertainty was not used: it is not said of which repeat", "Several columns hold repeats, and the heading of the uncertainty names none of them.", "write the mark of its repeat into the heading, as in u(k)/s^-1 (run 1)"},
+	{noteAssumedUnit, "A column without unit was given the unit of its quantity", "The heading of an uncertainty, or of one of several columns of k, names no unit.", "write the unit into its heading"},
 	{noteLevel, "An uncertainty was not used", "Its level is not stated: error or ± may be a standard uncertainty, twice that, or a standard deviation of repeats; a bracket after a space may be anything.", "say what it is: --assume error=1 (standard), error=2 (expanded, k = 2) or error=sd,n=3"},
 	{noteRepeats, "A standard deviation without the number of repeats was not used", "The uncertainty of a mean is s/sqrt(n).", "add a column n, or --assume n=3"},
 	{noteOtherU, "More than one uncertainty of one quantity", "The first one at a known level is used.", ""},

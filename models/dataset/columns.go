@@ -13,9 +13,13 @@ import (
 type column struct {
 	Heading
 	index int      // from 0
+	nth   int      // which of the columns that the user named for its role
 	used  bool     // takes part, or checks a column that does
 	says  string   // why a column with a role is not used
 	shown []string // its first cells
+
+	// How uncertainties were written beside the numbers in its cells.
+	brackets, spaced, plusMinus bool
 }
 
 // plan says which column gives what.
@@ -23,9 +27,8 @@ type plan struct {
 	cols []column
 
 	temperature []*column // the one used first; the others must agree
-	rate        []*column
-	uncertainty *column // of k
-	ofT         *column // u(T)
+	runs        []rateRun // more than one: repeats side by side
+	ofT         *column   // u(T)
 	repeats     *column
 	coverage    *column
 	limit       *column
@@ -35,13 +38,13 @@ type plan struct {
 	note        *column
 	kept        []*column // go to Extra
 
-	base     *column // rate column that the uncertainty is stated in
-	unit     *Unit   // of k; nil if not understood
+	unit     *Unit // of k; nil if not understood
 	quantity Quantity
-	repeatsN int             // --assume n=
-	level    Kind            // --assume error=, for ± in cells; "" if not said
-	levelK   float64         // its coverage factor
-	t95      map[int]float64 // quantiles by number of repeats
+	repeatsN int     // --assume n=
+	assumedN string  // as it is recorded
+	level    Kind    // --assume error=, for ± in cells; "" if not said
+	levelK   float64 // its coverage factor
+	student  map[studentOf]float64
 
 	decimal byte
 	assumed []string
@@ -221,7 +224,7 @@ func hasRole(cells []string, assume map[string]string) bool {
 // columns gives each heading its meaning and chooses the columns that are used.
 func (m *maker) columns(headings []string, line int) *plan {
 	p := &plan{cols: make([]column, len(headings))}
-	seen := map[string]int{}
+	seen := map[string][]int{}
 	for i, text := range headings {
 		text = strings.TrimSpace(text)
 		c := &p.cols[i]
@@ -234,46 +237,34 @@ func (m *maker) columns(headings []string, line int) *plan {
 			continue // may be spelled as one that is used
 		}
 		key := normalize(text)
-		if j, ok := seen[key]; ok {
-			m.refuse(codeDuplicateHeading, line, text, "the heading stands over columns %d and %d", j+1, i+1)
-		}
-		seen[key] = i
+		seen[key] = append(seen[key], i)
 	}
+	m.refuseTwice(p, seen, line)
 	m.readTidied(p)
-	forced := map[Role]*column{}
-	for _, role := range slices.Sorted(maps.Keys(m.opt.Columns)) {
-		for _, text := range m.opt.Columns[role] {
-			c := p.find(text)
-			if c == nil {
-				m.refuse(codeColumnUnknown, line, "", "--column %s=%s: there is no such heading; the file has %s", role, text, quoteAll(headings))
-				continue
-			}
-			h, err := parseAs(role, c.Text, m.opt.Assume)
-			if err != nil {
-				m.refuse(codeRoleUnknown, 0, "", "--column %s=%s: %v", role, text, err)
-				continue
-			}
-			h.Text = c.Text
-			c.Heading = h
-			forced[h.Role] = c
-		}
-	}
+	forced := m.forced(p, headings, line)
 	m.checkAssumptions(p)
 
 	m.chooseTemperature(p, forced[RoleTemperature], line)
 	m.chooseRate(p, forced[RoleRate], line)
 	single := func(r Role) *column {
-		if c := forced[r]; c != nil {
-			c.used = true
-			return c
+		var chosen *column
+		if len(forced[r]) > 0 {
+			chosen = forced[r][0]
 		}
 		for i := range p.cols {
-			if c := &p.cols[i]; c.Role == r {
-				c.used = true
-				return c
+			switch c := &p.cols[i]; {
+			case c.Role != r:
+			case chosen == nil:
+				chosen = c
+			case c != chosen:
+				c.says = fmt.Sprintf("%q is the %s", chosen.Text, r)
+				p.notices = append(p.notices, Notice{Code: noteKept, Message: fmt.Sprintf("column %q is kept, not used: %s", c.Text, c.says), Cure: fmt.Sprintf("choose another with --column '%s=%s'", roleFlags[r], c.Text)})
 			}
 		}
-		return nil
+		if chosen != nil {
+			chosen.used, chosen.says = true, ""
+		}
+		return chosen
 	}
 	p.limit, p.source, p.dataset = single(RoleLimit), single(RoleSource), single(RoleDataset)
 	p.order, p.note = single(RoleOrder), single(RoleNote)
@@ -286,7 +277,7 @@ func (m *maker) columns(headings []string, line int) *plan {
 			m.refuse(codeColumnUnknown, line, "", "--dataset-by %s: there is no such heading; the file has %s", by, quoteAll(headings))
 		}
 	}
-	if len(p.rate) > 0 {
+	if len(p.runs) > 0 {
 		m.chooseUncertainty(p, forced[RoleUncertainty], line)
 	}
 	if len(p.temperature) > 0 {
@@ -316,6 +307,49 @@ func (m *maker) columns(headings []string, line int) *plan {
 	return p
 }
 
+// roleFlags are the names of roles that --column takes, where they differ from a
+// heading.
+var roleFlags = map[Role]string{
+	RoleLimit: "limit", RoleSource: "source", RoleDataset: "dataset", RoleOrder: "order", RoleNote: "note",
+	RoleRepeats: "n", RoleCoverage: "coverage_factor",
+}
+
+// forced gives the columns that the user named their roles (--column), and returns
+// them by role, as named.
+func (m *maker) forced(p *plan, headings []string, line int) map[Role][]*column {
+	forced := map[Role][]*column{}
+	for _, role := range slices.Sorted(maps.Keys(m.opt.Columns)) {
+		for i, text := range m.opt.Columns[role] {
+			c := p.find(text)
+			if c == nil {
+				m.refuse(codeColumnUnknown, line, "", "--column %s=%s: there is no such heading; the file has %s", role, text, quoteAll(headings))
+				continue
+			}
+			if c.nth > 0 {
+				m.refuse(codeRoleTwice, line, c.Text, "--column names this column twice")
+				continue
+			}
+			h, err := parseAs(role, c.Text, m.opt.Assume)
+			if err != nil {
+				m.refuse(codeRoleUnknown, 0, "", "--column %s=%s: %v", role, text, err)
+				continue
+			}
+			h.Text = c.Text
+			c.Heading = h
+			c.nth = i + 1
+			switch h.Role {
+			case RoleTemperature, RoleRate, RoleUncertainty, RoleTemperatureUncertainty:
+			default:
+				if len(forced[h.Role]) > 0 {
+					m.refuse(codeRoleTwice, line, c.Text, "--column names two columns for the role %s", role)
+				}
+			}
+			forced[h.Role] = append(forced[h.Role], c)
+		}
+	}
+	return forced
+}
+
 // noteUse records what reading a used column took for granted.
 func (p *plan) noteUse(c *column) {
 	for _, a := range c.Assumed {
@@ -324,7 +358,7 @@ func (p *plan) noteUse(c *column) {
 	if c.Lost {
 		p.notices = append(p.notices, notice(noteLost, fmt.Sprintf("column %q: a number in the heading was read as a power of ten whose superscript was lost", c.Text)))
 	}
-	if c.Role == RoleRate && c == p.rate[0] {
+	if r := p.runOfColumn(c); r != nil && c == r.cols[0] {
 		switch c.Form {
 		case FormReciprocal:
 			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a mean lifetime: k = 1/τ", c.Text)))
@@ -391,7 +425,7 @@ func (m *maker) checkAssumptions(p *plan) {
 		case "log":
 			ok = v == "ln" || v == "lg"
 		case "k":
-			ok = v == "rate"
+			ok = v == "rate" || v == assumeRepeats
 		case "factor":
 			ok = v == "times" || v == "unit"
 		case "error":
@@ -399,7 +433,7 @@ func (m *maker) checkAssumptions(p *plan) {
 			if found { // sd,n=3
 				n, err := strconv.Atoi(strings.TrimPrefix(list, "n="))
 				ok = err == nil && n >= 1 && strings.HasPrefix(list, "n=")
-				p.repeatsN = n
+				p.repeatsN, p.assumedN = n, "error="+v
 			}
 			var k Kind
 			var c float64
@@ -410,7 +444,7 @@ func (m *maker) checkAssumptions(p *plan) {
 		case "n":
 			n, err := strconv.Atoi(v)
 			ok = err == nil && n >= 1
-			p.repeatsN = n
+			p.repeatsN, p.assumedN = n, "n="+v
 		default:
 			ok = false
 		}
@@ -429,13 +463,13 @@ func (a *Ambiguity) meanings() string {
 	return strings.Join(s, ", ")
 }
 
-func (m *maker) chooseTemperature(p *plan, forced *column, line int) {
+func (m *maker) chooseTemperature(p *plan, forced []*column, line int) {
 	var open []*column
 	for i := range p.cols {
 		c := &p.cols[i]
 		switch {
 		case c.Role != RoleTemperature:
-		case forced != nil && c != forced:
+		case len(forced) > 0 && !slices.Contains(forced, c):
 			c.says = "another column was chosen"
 		case c.Ambiguity != nil:
 			if c.Form == FormUnknown && m.unitFromCells(c) {
@@ -507,57 +541,62 @@ func plainSymbol(s string) string {
 	return strings.NewReplacer("_", "", "{", "", "}", "", " ", "").Replace(s)
 }
 
-func (m *maker) chooseRate(p *plan, forced *column, line int) {
-	var certain, open, times []*column
+func (m *maker) chooseRate(p *plan, forced []*column, line int) {
+	var certain, means, open, times []*column
+	marks := map[string]bool{}
 	for i := range p.cols {
 		c := &p.cols[i]
 		switch {
 		case c.Role != RoleRate:
-		case forced != nil && c != forced:
+		case len(forced) > 0 && !slices.Contains(forced, c):
 			c.says = "another column was chosen"
 		case c.Ambiguity != nil:
 			open = append(open, c)
-		case c.Form == FormReciprocal || c.Form == FormHalfLife:
+		case c.halfLife() != "" && len(forced) == 0:
 			times = append(times, c)
 		default:
 			if c.Form == FormDirect && c.Unit == nil && c.UnitText == "" {
 				m.unitFromCells(c)
 			}
+			if c.Average && len(forced) == 0 {
+				means = append(means, c)
+				continue
+			}
+			certain = append(certain, c)
+			marks[c.Run] = true
+		}
+	}
+	none := len(certain) == 0
+	for _, c := range times {
+		if none && len(means) == 0 || c.Run != "" && !marks[c.Run] {
 			certain = append(certain, c)
 		}
 	}
-	if len(certain) == 0 {
-		certain = times
-	}
-	groups := map[string]bool{}
-	for _, c := range certain {
-		groups[plainSymbol(c.Symbol)+string(c.halfLife())] = true
-	}
+	ambiguous := len(open) > 0 && (len(forced) > 0 || len(certain)+len(means) == 0)
 	switch {
-	case len(groups) > 1:
-		var names, flags []string
-		for _, c := range certain {
-			names = append(names, c.Text)
-			if len(flags) == 6 {
-				continue
-			}
-			flags = append(flags, fmt.Sprintf("--column 'k=%s'", c.Text))
-		}
-		m.refuseCure(codeSeveralRates, line, "", "there are columns of different rate constants: "+quoteAll(names), "choose one: "+strings.Join(flags, " or "))
-		return
-	case len(certain) == 0 && len(open) > 0:
+	case ambiguous:
 		for _, c := range open {
 			m.refuseCure(codeAmbiguousRate, line, c.Text, "the heading may be meant in several ways", "write it out, or say which: "+c.Ambiguity.meanings())
 		}
-		return
-	case len(certain) == 0:
-		m.refuse(codeNoRate, line, "", "no heading was understood as a rate constant among %s", quoteAll(p.texts()))
-		return
+	case len(certain)+len(means) == 0:
+		m.refuseNoRate(p, line)
+	default:
+		m.settleRuns(p, certain, means, len(forced) > 0, line)
 	}
-	p.rate = certain
-	for _, c := range certain {
-		c.used = true
+}
+
+// refuseNoRate refuses a table without a rate constant.
+func (m *maker) refuseNoRate(p *plan, line int) {
+	for i := range p.cols {
+		c := &p.cols[i]
+		s, negative := strings.CutPrefix(normalize(c.Text), "-")
+		if h := ParseHeading(s, m.opt.Assume); negative && h.Role == RoleRate {
+			h.Text = strings.TrimSpace(s)
+			m.refuseCure(codeNoRate, line, c.Text, "the sign of the rate constant, or of its logarithm, is turned round", fmt.Sprintf("turn the sign of the cells and write the heading as %s", h.Text))
+			return
+		}
 	}
+	m.refuse(codeNoRate, line, "", "no heading was understood as a rate constant among %s", quoteAll(p.texts()))
 }
 
 func (c *column) halfLife() Form {
@@ -582,8 +621,8 @@ func (c *column) rateUnit() *Unit {
 
 // settleQuantity says what k is once the column that gives it is chosen.
 func (p *plan) settleQuantity() {
-	c := p.rate[0]
-	q := Quantity{Symbol: c.Symbol, TimeLike: c.halfLife() != "", Diffusion: strings.HasPrefix(c.Symbol, "D")}
+	c := p.runs[0].cols[0]
+	q := Quantity{Symbol: p.commonSymbol(), TimeLike: c.halfLife() != "", Diffusion: strings.HasPrefix(c.Symbol, "D")}
 	if q.TimeLike {
 		q.Symbol = "k"
 	}
@@ -621,29 +660,50 @@ func (p *plan) nearest(c *column) *column {
 	return nil
 }
 
-func (m *maker) chooseUncertainty(p *plan, forced *column, line int) {
-	symbol := plainSymbol(p.rate[0].Symbol)
+func (m *maker) chooseUncertainty(p *plan, forced []*column, line int) {
+	r := &p.runs[0]
+	symbol := plainSymbol(r.cols[0].Symbol)
+	defer p.checkRepeats()
 	for i := range p.cols {
 		c := &p.cols[i]
 		if c.Role != RoleUncertainty {
 			continue
 		}
-		if forced != nil && c != forced {
+		if len(forced) > 0 && !slices.Contains(forced, c) {
 			c.says = "another column was chosen"
 			continue
 		}
-		base := p.rate[0]
-		switch {
-		case c.Of == "":
-			near := p.nearest(c)
-			switch {
-			case near == nil:
-			case near.Role == RoleTemperature:
+		near := p.nearest(c)
+		if c.Of == "" && c.Run == "" && near != nil {
+			if near.Role == RoleTemperature {
 				c.Role = RoleTemperatureUncertainty
 				continue
-			case !slices.Contains(p.rate, near):
-				continue // of another rate constant
+			}
+			if p.runOfColumn(near) == nil {
+				continue // of another rate constant, or of a mean
+			}
+		}
+		if len(p.runs) > 1 {
+			var of bool
+			if r, of = p.runOf(c, forced); !of {
+				continue
+			}
+			switch {
+			case r != nil:
+				symbol = plainSymbol(r.cols[0].Symbol)
+			case c.Kind == KindRepeats || c.Kind == KindMean:
+				p.spare(c, "the repeats themselves are used")
+				continue
 			default:
+				c.says = "it does not say which repeat it belongs to"
+				p.notices = append(p.notices, notice(noteWhichRepeat, fmt.Sprintf("column %q is not used: %s", c.Text, c.says)))
+				continue
+			}
+		}
+		base := r.cols[0]
+		switch {
+		case c.Of == "":
+			if near != nil && slices.Contains(r.cols, near) {
 				base = near
 			}
 			if base.Form == FormLn || base.Form == FormLg {
@@ -656,7 +716,7 @@ func (m *maker) chooseUncertainty(p *plan, forced *column, line int) {
 				continue
 			}
 		case c.Form == FormDirect:
-			for _, d := range p.rate {
+			for _, d := range r.cols {
 				if d.Form == FormDirect {
 					base = d
 				}
@@ -675,9 +735,9 @@ func (m *maker) chooseUncertainty(p *plan, forced *column, line int) {
 			p.notices = append(p.notices, notice(noteRepeats, fmt.Sprintf("column %q: a standard deviation of repeats, and their number is not given", c.Text)))
 			continue
 		}
-		if p.uncertainty != nil {
+		if r.uncertainty != nil {
 			c.says = "another uncertainty is used"
-			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, p.uncertainty.Text)))
+			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, r.uncertainty.Text)))
 			continue
 		}
 		// Units: an absolute uncertainty is in that of its quantity.
@@ -701,18 +761,30 @@ func (m *maker) chooseUncertainty(p *plan, forced *column, line int) {
 				}
 			}
 		}
-		p.uncertainty, p.base = c, base
+		r.uncertainty, r.base = c, base
 		c.used = true
-		if c.Kind == KindRepeats && p.repeats == nil {
-			p.assume(fmt.Sprintf("n=%d", p.repeatsN))
-		}
 	}
 }
 
-func (m *maker) chooseUT(p *plan, forced *column, line int) {
+// checkRepeats leaves the number of repeats unused where the repeats stand side by
+// side and no uncertainty counts them.
+func (p *plan) checkRepeats() {
+	if p.repeats == nil || len(p.runs) == 1 {
+		return
+	}
+	for _, r := range p.runs {
+		if r.uncertainty != nil {
+			return
+		}
+	}
+	p.spare(p.repeats, "the repeats themselves are used")
+	p.repeats = nil
+}
+
+func (m *maker) chooseUT(p *plan, forced []*column, line int) {
 	for i := range p.cols {
 		c := &p.cols[i]
-		if c.Role != RoleTemperatureUncertainty || c.Form != FormDirect || forced != nil && c != forced {
+		if c.Role != RoleTemperatureUncertainty || c.Form != FormDirect || len(forced) > 0 && !slices.Contains(forced, c) {
 			continue
 		}
 		if c.Ambiguity != nil || c.Kind == KindRepeats && p.repeats == nil && p.repeatsN == 0 {

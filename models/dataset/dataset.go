@@ -23,6 +23,9 @@ const (
 type Point struct {
 	File string
 	Row  int // line of the file, from 1
+	// Column is the heading that K stands under, where repeats stand side by side
+	// and several points have one row; "" otherwise.
+	Column string
 
 	T  float64 // K
 	UT float64 // u(T), K; 0 if not stated

@@ -78,12 +78,17 @@ type Heading struct {
 
 	// Of an uncertainty: the role of what it belongs to ("" if not said: the
 	// nearest quantity to the left is meant), and how it was stated.
-	Of        Role
-	Kind      Kind
-	Relative  bool
-	Percent   bool
-	Coverage  float64 // 0 if not stated
-	Percent95 bool    // a 95 % interval
+	Of         Role
+	Kind       Kind
+	Relative   bool
+	Percent    bool
+	Coverage   float64 // 0 if not stated
+	Confidence float64 // of an interval, 0.95; 0 if not stated
+
+	// Of a rate constant or its uncertainty: which repeat it is, as in "run 1", or
+	// that it is the mean of them; "" and false if the heading does not say so.
+	Run     string
+	Average bool
 
 	Ambiguity *Ambiguity
 	Assumed   []string // assumptions that were applied, as key=value
@@ -127,7 +132,7 @@ func ParseHeading(text string, assume map[string]string) Heading {
 		h.Role = r
 		return h
 	}
-	for _, try := range []func(string) (Heading, bool){p.uncertainty, p.temperature, p.rate} {
+	for _, try := range []func(string) (Heading, bool){p.marked, p.uncertainty, p.temperature, p.rate} {
 		if got, ok := try(s); ok {
 			got.Text = h.Text
 			return got
@@ -139,9 +144,12 @@ func ParseHeading(text string, assume map[string]string) Heading {
 // parseAs reads a heading that the user gave a role (--column role=HEADING): role
 // is written as a heading without its unit.
 func parseAs(role, text string, assume map[string]string) (Heading, error) {
-	as := ParseHeading(role, map[string]string{"T": "K", "log": "lg", "error": "1"})
+	as := ParseHeading(role, assume)
 	if as.Role == RoleKept {
 		return as, fmt.Errorf("%q is not a role", role)
+	}
+	if as.Ambiguity != nil && as.Ambiguity.Key == "k" {
+		as.Ambiguity = nil // a rate, and the user calls it the rate constant
 	}
 	h := ParseHeading(text, assume)
 	if h.Role == as.Role && h.Of == as.Of && (h.Kind == as.Kind || as.Role != RoleUncertainty && as.Role != RoleTemperatureUncertainty) {
@@ -149,18 +157,18 @@ func parseAs(role, text string, assume map[string]string) (Heading, error) {
 			h.Ambiguity = nil
 		}
 		if as.Role == RoleRate && as.Form != FormDirect && h.Form != as.Form {
-			h.Form, h.Ambiguity = as.Form, nil
+			h.Form, h.Ambiguity, h.Assumed = as.Form, as.Ambiguity, as.Assumed
 		}
 		return h, nil
 	}
-	as.Ambiguity, as.Assumed = nil, nil
 	as.Text = h.Text
 	symbol := h.Text
 	// The unit is what stands where units stand.
+	var from Heading
 	s := normalize(text)
 	if i := strings.IndexAny(s, "/([,"); i > 0 {
 		_, unit := tail(s[i:])
-		as.setUnit(unit)
+		from.setUnit(unit)
 		symbol = strings.TrimSpace(s[:i])
 	} else {
 		for i := nextUnderscore(s, -1); i > 0; i = nextUnderscore(s, i) {
@@ -171,24 +179,52 @@ func parseAs(role, text string, assume map[string]string) (Heading, error) {
 				}
 			}
 			if ok {
-				as.Unit, as.UnitText = u, u.Text
+				from.Unit, from.UnitText = u, u.Text
 				symbol = s[:i]
 				break
 			}
 		}
 	}
-	if as.Role == RoleRate {
+	switch as.Role {
+	case RoleRate:
 		as.Symbol = symbol
-	}
-	if as.Role == RoleTemperature {
-		if as.Unit == nil || as.Unit.Dim != dimTemp {
-			if as.Form == FormDirect {
-				as.Unit = nil
-				headingParser{assume: assume}.settleTemperature(&as)
-			}
+	case RoleTemperature:
+		// A unit in the heading settles what T alone leaves open; values never do.
+		u := from.Unit
+		switch {
+		case u == nil:
+			return as, nil
+		case as.Form == FormThermalUnit && u.reciprocalEnergy():
+			as.Ambiguity, as.Assumed = nil, nil
+		case as.Form == FormReciprocal && len(as.Assumed) == 0 && u.Dim == Dimension{Temperature: -1}:
+		case u.Dim == dimTemp && as.Form != FormThermalUnit && (as.Form != FormReciprocal || len(as.Assumed) > 0):
+			as.Ambiguity, as.Assumed, as.Form, as.Shift = nil, nil, FormDirect, 0
+		default:
+			return as, nil
 		}
 	}
+	as.take(from)
 	return as, nil
+}
+
+// take takes over the unit of another heading, where it has one.
+func (h *Heading) take(from Heading) {
+	switch {
+	case from.UnitText == "%" && (h.Role == RoleUncertainty || h.Role == RoleTemperatureUncertainty):
+		h.setPercent()
+	case from.UnitText != "" && (from.Unit != nil || h.Unit == nil):
+		h.Unit, h.UnitText, h.Shift, h.Lost = from.Unit, from.UnitText, h.Shift+from.Shift, h.Lost || from.Lost
+	}
+}
+
+// setPercent makes an uncertainty one in percent of its quantity.
+func (h *Heading) setPercent() {
+	if h.Percent {
+		return
+	}
+	h.Relative, h.Percent = true, true
+	h.Unit, h.UnitText = nil, "%"
+	h.Shift -= 2
 }
 
 func nextUnderscore(s string, i int) int {

@@ -38,6 +38,10 @@ func matchSymbol(s string) (symbolMatch, bool) {
 		}
 		return m, s[len(m):], true
 	}
+	// k(T) is k.
+	if i := strings.Index(s, "(T)"); i > 0 && i < 24 && s[i-1] != '/' {
+		s = s[:i] + s[i+3:]
+	}
 	if m, rest, ok := try(reKcatKm); ok {
 		return symbolMatch{symbol: m, rest: rest}, true
 	}
@@ -80,6 +84,11 @@ func matchSymbol(s string) (symbolMatch, bool) {
 		return symbolMatch{symbol: m, rest: rest}, true
 	}
 	if m, rest, ok := try(reRate); ok {
+		// "Rate k/s^-1": the symbol says what it is.
+		after := strings.TrimLeft(rest, " ,")
+		if sm := reK.FindString(after); sm != "" && len(m) > 1 && len(after) < len(rest) && boundary(after[len(sm):]) {
+			return symbolMatch{symbol: sm, rest: after[len(sm):]}, true
+		}
 		return symbolMatch{symbol: m, rest: rest, rate: true}, true
 	}
 	return symbolMatch{}, false
@@ -108,7 +117,19 @@ func subscript(m *symbolMatch) (unit *Unit, ok bool) {
 	}
 	m.symbol += word
 	m.rest = after
-	return nil, word != "_" && !strings.EqualFold(word, "_B") // k_B is Boltzmann's
+	return nil, word != "_"
+}
+
+// isBoltzmann tells Boltzmann's constant from a rate constant with the subscript B
+// or b: by its unit, or, without one, by its capital.
+func (h *Heading) isBoltzmann() bool {
+	if !strings.EqualFold(h.Symbol, "k_B") && !strings.EqualFold(h.Symbol, "k_{B}") {
+		return false
+	}
+	if h.Unit == nil {
+		return h.UnitText == "" && strings.Contains(h.Symbol, "B")
+	}
+	return !h.Unit.isRate()
 }
 
 func (u Unit) isRateOrTime(f Form) bool {
@@ -195,6 +216,9 @@ func (p headingParser) rate(s string) (Heading, bool) {
 	}
 	if h.Unit == nil && unit != "" && (how == ' ' || !plausibleUnit(unit)) {
 		return h, false // more words: not the quantity alone
+	}
+	if h.isBoltzmann() {
+		return h, false
 	}
 	timeLike := h.Form == FormReciprocal || h.Form == FormHalfLife
 	switch {

@@ -12,7 +12,9 @@ var (
 	reInverseT        = regexp.MustCompile(`^T ?\^ ?[({]?-1[)}]?`)
 	reInverseTUnit    = regexp.MustCompile(`^\( ?T ?/ ?K ?\) ?\^ ?[({]?-1[)}]?$`)
 	reKOverT          = regexp.MustCompile(`^(k?)K ?/ ?T$`)
-	reBareOverT       = regexp.MustCompile(`^/ ?T`)
+	reBareOverT       = regexp.MustCompile(`^/ ?(?:T|\( ?T ?/ ?K ?\)$)`)
+	reOneOverTUnit    = regexp.MustCompile(`^1 ?/ ?\( ?T ?/ ?K ?\)$`)
+	reOverTTimes      = regexp.MustCompile(`^\(? ?1 ?/ ?T ?\)? ?[×*·x] ?(10.*)$`)
 )
 
 func (p headingParser) temperature(s string) (Heading, bool) {
@@ -148,6 +150,12 @@ func reciprocal(s string, h *Heading) bool {
 		after = strings.TrimLeft(after, " ·×*")
 		shift, lost, rest, factor = -e, l, after, true
 	}
+	if m := reOverTTimes.FindStringSubmatch(rest); m != nil && !factor {
+		// 1/T × 1000: the cell is that product. A negative power would rather be a unit.
+		if e, l, after, ok := powerOfTen(m[1]); ok && e > 0 {
+			shift, lost, rest, factor = -e, l, "1/T"+after, true
+		}
+	}
 	done := func(form Form) bool {
 		h.Form, h.Shift, h.Lost = form, h.Shift+shift, h.Lost || lost
 		h.Symbol = "T"
@@ -160,7 +168,7 @@ func reciprocal(s string, h *Heading) bool {
 		h.setUnit("K^-1")
 		return done(FormReciprocal)
 	}
-	if reInverseTUnit.MatchString(rest) {
+	if reInverseTUnit.MatchString(rest) || reOneOverTUnit.MatchString(rest) {
 		h.setUnit("K^-1")
 		return done(FormReciprocal)
 	}

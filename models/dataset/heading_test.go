@@ -32,8 +32,14 @@ func (h Heading) brief() string {
 	if h.Coverage != 0 {
 		s += " k" + strings.TrimSuffix(ftoa(h.Coverage), ".0")
 	}
-	if h.Percent95 {
-		s += " 95"
+	if h.Confidence != 0 {
+		s += " " + strings.TrimSuffix(ftoa(100*h.Confidence), ".0")
+	}
+	if h.Run != "" {
+		s += " (" + h.Run + ")"
+	}
+	if h.Average {
+		s += " average"
 	}
 	if h.Relative {
 		s += " rel"

@@ -7,9 +7,10 @@ import (
 )
 
 type levelWord struct {
-	kind     Kind
-	relative bool
-	p95      bool
+	kind       Kind
+	relative   bool
+	confidence float64
+	bare       bool // means nothing unless a level stands beside it
 }
 
 // levelWords are matched without regard to case; single letters only as
@@ -26,20 +27,23 @@ var levelWords = map[string]levelWord{
 	"unc.": {kind: KindAmbiguous}, "±": {kind: KindAmbiguous}, "+/-": {kind: KindAmbiguous}, "+-": {kind: KindAmbiguous}, "error bar": {kind: KindAmbiguous},
 	"rel. error": {kind: KindAmbiguous, relative: true}, "relative error": {kind: KindAmbiguous, relative: true}, "relative uncertainty": {kind: KindAmbiguous, relative: true},
 	"% error": {kind: KindAmbiguous, relative: true}, "expanded uncertainty": {kind: KindExpanded},
-	"ci": {kind: KindExpanded, p95: true}, "confidence interval": {kind: KindExpanded, p95: true}, "ci95": {kind: KindExpanded, p95: true},
+	"ci": {kind: KindExpanded}, "confidence interval": {kind: KindExpanded}, "confidence limit": {kind: KindExpanded}, "confidence limits": {kind: KindExpanded},
+	"interval": {kind: KindExpanded, bare: true}, "confidence": {kind: KindExpanded, bare: true}, "coverage interval": {kind: KindExpanded},
+	"ci90": {kind: KindExpanded, confidence: 0.9}, "ci95": {kind: KindExpanded, confidence: 0.95}, "ci99": {kind: KindExpanded, confidence: 0.99},
 }
 
 // functions are the symbols of uncertainties, case-sensitive, as in u(k).
 var functions = map[string]levelWord{
 	"u": {kind: KindStandard}, "u_r": {kind: KindStandard, relative: true}, "ur": {kind: KindStandard, relative: true}, "u_rel": {kind: KindStandard, relative: true},
-	"U": {kind: KindExpanded}, "U_r": {kind: KindExpanded, relative: true}, "U_95": {kind: KindExpanded, p95: true}, "U95": {kind: KindExpanded, p95: true},
+	"U": {kind: KindExpanded}, "U_r": {kind: KindExpanded, relative: true}, "U_95": {kind: KindExpanded, confidence: 0.95}, "U95": {kind: KindExpanded, confidence: 0.95},
+	"U_90": {kind: KindExpanded, confidence: 0.9}, "U90": {kind: KindExpanded, confidence: 0.9}, "U_99": {kind: KindExpanded, confidence: 0.99}, "U99": {kind: KindExpanded, confidence: 0.99},
 	"f": {kind: KindFactor}, "s": {kind: KindRepeats}, "s_r": {kind: KindRepeats, relative: true}, "δ": {kind: KindAmbiguous}, "Δ": {kind: KindAmbiguous}, "delta": {kind: KindAmbiguous},
 }
 
 var (
 	reCoverage = regexp.MustCompile(`[\[(]?\b[kK] ?= ?([0-9]+(?:\.[0-9]+)?)[\])]?`)
 	reSigmas   = regexp.MustCompile(`(?i)[\[(]?\b([0-9](?:\.[0-9]+)?) ?[-·]?(?:σ|sigma|s\.?d\.?\b)[\])]?`)
-	re95       = regexp.MustCompile(`(?i)[\[(]?\b95 ?%[\])]?`)
+	reLevel    = regexp.MustCompile(`(?i)[\[(]?\b(68|68\.3|90|95|95\.4|95\.5|98|99|99\.7|99\.9) ?%[\])]?`)
 	reFunction = regexp.MustCompile(`^([A-Za-zσδΔ_.]{1,24}[0-9]{0,2}) ?\(`)
 	reUnder    = regexp.MustCompile(`^(u|U|s|f|u_r|U_95|U95|δ|Δ|delta)_(.+)$`)
 	rePrefixed = regexp.MustCompile(`^(δ|Δ|±) ?([kTD].*)$`)
@@ -48,9 +52,13 @@ var (
 func (p headingParser) uncertainty(s string) (Heading, bool) {
 	h := Heading{Role: RoleUncertainty}
 	rest := s
-	coverage := 0.0
-	p95 := false
+	coverage, confidence := 0.0, 0.0
 	sigmas := false
+	if e, l, after, ok := powerOfTen(s); ok { // 10^3 u(k)/s^-1
+		if after = strings.TrimLeft(after, " ·×*"); !strings.HasPrefix(after, "%") {
+			h.Shift, h.Lost, rest = -e, l, after
+		}
+	}
 	if strings.ContainsRune(rest, '=') {
 		if m := reCoverage.FindStringSubmatchIndex(rest); m != nil {
 			coverage, _ = strconv.ParseFloat(rest[m[2]:m[3]], 64)
@@ -66,8 +74,9 @@ func (p headingParser) uncertainty(s string) (Heading, bool) {
 		}
 		rest = cut(rest, m[0], m[1])
 	} else if strings.ContainsRune(rest, '%') {
-		if m := re95.FindStringIndex(rest); m != nil {
-			p95 = true
+		if m := reLevel.FindStringSubmatchIndex(rest); m != nil {
+			confidence, _ = strconv.ParseFloat(rest[m[2]:m[3]], 64)
+			confidence /= 100
 			rest = cut(rest, m[0], m[1])
 		}
 	}
@@ -153,10 +162,13 @@ func (p headingParser) uncertainty(s string) (Heading, bool) {
 		return h, false
 	}
 	h.Kind, h.Relative = lw.kind, lw.relative
-	h.Percent95 = p95 || lw.p95
+	h.Confidence = confidence
+	if h.Confidence == 0 {
+		h.Confidence = lw.confidence
+	}
 	h.Coverage = coverage
 	switch {
-	case h.Percent95 && (h.Kind == KindAmbiguous || h.Kind == KindStandard):
+	case h.Confidence > 0 && (h.Kind == KindAmbiguous || h.Kind == KindStandard):
 		h.Kind = KindExpanded
 	case coverage > 0 && (h.Kind == KindAmbiguous || h.Kind == KindStandard):
 		h.Kind = KindExpanded
@@ -164,7 +176,7 @@ func (p headingParser) uncertainty(s string) (Heading, bool) {
 	if h.Kind == KindExpanded && h.Coverage == 1 {
 		h.Kind = KindStandard
 	}
-	if p95 && h.Kind != KindExpanded {
+	if confidence > 0 && h.Kind != KindExpanded || lw.bare && confidence == 0 && coverage == 0 {
 		return h, false
 	}
 	if hasTarget {
@@ -181,9 +193,7 @@ func (p headingParser) uncertainty(s string) (Heading, bool) {
 		return h, false
 	}
 	if unit == "%" {
-		h.Relative, h.Percent = true, true
-		h.Shift = -2
-		h.UnitText = "%"
+		h.setPercent()
 		return p.settleError(h), true
 	}
 	if how == '_' {
@@ -204,7 +214,7 @@ func (p headingParser) uncertainty(s string) (Heading, bool) {
 // settleError settles an ambiguous level by what the user said: error=1, error=2,
 // error=sd.
 func (p headingParser) settleError(h Heading) Heading {
-	if h.Kind == KindExpanded && h.Coverage == 0 && !h.Percent95 || h.Kind == KindAmbiguous {
+	if h.Kind == KindExpanded && h.Coverage == 0 && h.Confidence == 0 || h.Kind == KindAmbiguous {
 		kind := h.Kind
 		h.Ambiguity = &Ambiguity{"error", errorMeanings}
 		if v, ok := p.assume["error"]; ok {
@@ -245,13 +255,19 @@ func (h *Heading) setTarget(t string) bool {
 		h.Role, h.Of, h.Symbol = RoleTemperatureUncertainty, RoleTemperature, "T"
 		return true
 	}
-	r, ok := headingParser{}.rate(t)
+	r, ok := headingParser{}.marked(t)
+	if !ok || r.Role != RoleRate {
+		r, ok = headingParser{}.rate(t)
+	}
 	if !ok || r.Form == FormUnknown {
 		return false
 	}
 	h.Of, h.Symbol, h.Form = RoleRate, r.Symbol, r.Form
 	if r.Unit != nil && (r.Form == FormDirect) && h.Unit == nil {
-		h.Unit, h.UnitText, h.Shift = r.Unit, r.UnitText, r.Shift
+		h.Unit, h.UnitText, h.Shift = r.Unit, r.UnitText, h.Shift+r.Shift
+	}
+	if h.Run == "" {
+		h.Run = r.Run
 	}
 	return true
 }

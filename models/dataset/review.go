@@ -3,6 +3,7 @@ package dataset
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -57,7 +58,7 @@ func (s *Set) review() {
 	s.sayOf(noteFewRepeats, few, "the uncertainty comes from 30 repeats or fewer")
 	s.sayOf(noteLimits, limits, "only a limit is known, left out")
 	s.sayOf(noteSelected, selected, "left out on request")
-	s.sayOf(noteDuplicate, duplicates, "same temperature and rate constant as an earlier row")
+	s.sayOf(noteDuplicate, duplicates, "same temperature and rate constant as an earlier one")
 	s.sayOf(noteLargeU, large, "u(k)/k is above 0.3")
 	if n := len(distinct); n < 5 {
 		s.say(noteFew, fmt.Sprintf("%d distinct temperatures", n))
@@ -121,6 +122,9 @@ func (s *Set) sayOf(code string, at []int, what string) {
 	if len(at) == 0 {
 		return
 	}
+	at = slices.CompactFunc(at, func(i, j int) bool { // repeats of one row
+		return s.Points[i].Row == s.Points[j].Row && s.Points[i].File == s.Points[j].File
+	})
 	rows := make([]int, len(at))
 	for i, j := range at {
 		rows[i] = s.Points[j].Row

@@ -18,11 +18,10 @@ type rowReader struct {
 	cells []string
 	quiet bool // the row is left out already: its faults do not matter
 
-	kFactor []float64 // from the unit of each rate column to that of k
-	uFactor float64   // from the unit of u(k) to that of k, or of its base column
-
-	brackets, spaced, plusMinus []int
-	examples                    [][]string
+	// Rows with an uncertainty written beside a number: of k, and of T.
+	brackets, spaced, plusMinus    []int
+	bracketsT, spacedT, plusMinusT []int
+	examples                       [][]string
 }
 
 // Why a row is left out; review counts rows by these words.
@@ -35,33 +34,16 @@ const (
 
 // points reads the rows of data below the headings, n cells each.
 func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
-	rr := &rowReader{m: m, p: p, uFactor: 1, examples: make([][]string, len(p.cols))}
-	for _, c := range p.rate {
-		f := 1.0
-		if u := c.rateUnit(); u != nil && p.unit != nil {
-			var err error
-			if f, err = u.convertTo(*p.unit); err != nil {
-				m.refuseCure(codeUnitConflict, 0, c.Text, "its unit "+err.Error()+", the unit of "+strconv.Quote(p.rate[0].Text), "choose one: --column k=HEADING")
-				return nil
-			}
-		}
-		rr.kFactor = append(rr.kFactor, f)
-	}
-	if u := p.uncertainty; u != nil && u.Unit != nil && p.base.Unit != nil && !u.Relative {
-		to := p.base.Unit
-		if p.base.halfLife() == "" && p.unit != nil {
-			to = p.unit
-		}
-		if f, err := u.Unit.convertTo(*to); err == nil {
-			rr.uFactor = f
-		}
+	rr := &rowReader{m: m, p: p, examples: make([][]string, len(p.cols))}
+	if !m.convert(p) {
+		return nil
 	}
 	leaveOut := map[int]bool{}
 	for _, l := range m.opt.LeaveOut {
 		leaveOut[l] = true
 	}
 	named := maps.Clone(leaveOut) // leaveOut shrinks to those that are not found
-	points := make([]Point, 0, len(m.t.Rows)-first)
+	points := make([]Point, 0, (len(m.t.Rows)-first)*len(p.runs))
 	intern := map[string]string{}
 	var after []int
 	for i := first; i < len(m.t.Rows); i++ {
@@ -131,10 +113,21 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		}
 		rr.quiet = pt.WhyNot != ""
 		rr.read(pt)
-		if m.tidied != nil {
-			m.tidied.end(rr, pt)
+		at := len(points) - 1
+		for range p.runs[1:] { // a point for each repeat of the row
+			points = append(points, points[at])
 		}
-		pt.Used = pt.WhyNot == ""
+		for j := range p.runs {
+			pt := &points[at+j]
+			if len(p.runs) > 1 {
+				pt.Column = p.runs[j].cols[0].Text
+			}
+			rr.rate(pt, &p.runs[j])
+			if m.tidied != nil {
+				m.tidied.end(rr, pt)
+			}
+			pt.Used = pt.WhyNot == ""
+		}
 	}
 	for _, l := range m.opt.LeaveOut {
 		if leaveOut[l] {
@@ -151,9 +144,13 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		}
 	}
 	say(noteAfter, after, "below the table, not read")
+	const ofT = "in the temperature: "
 	say(noteBrackets, rr.brackets, "a bracket after the number was read as its standard uncertainty")
+	say(noteBrackets, rr.bracketsT, ofT+"a bracket after the number was read as its standard uncertainty")
 	say(noteLevel, rr.spaced, "a bracket after a space is ambiguous and was not used")
+	say(noteLevel, rr.spacedT, ofT+"a bracket after a space is ambiguous and was not used")
 	say(noteLevel, rr.plusMinus, "the level of ± is not stated, and it was not used")
+	say(noteLevel, rr.plusMinusT, ofT+"the level of ± is not stated, or it is relative, and it was not used")
 	for i := range p.cols {
 		if c := &p.cols[i]; !c.used {
 			for _, pt := range points[:min(3, len(points))] {
@@ -171,6 +168,51 @@ func (p *plan) examples(e [][]string) {
 	for i := range p.cols {
 		p.cols[i].shown = e[i]
 	}
+}
+
+// convert finds the factors from the units of the columns to that of k; false where
+// there is none.
+func (m *maker) convert(p *plan) bool {
+	for i := range p.runs {
+		r := &p.runs[i]
+		for _, c := range r.cols {
+			f := 1.0
+			u := c.rateUnit()
+			switch {
+			case u != nil && p.unit != nil:
+				var err error
+				if f, err = u.convertTo(*p.unit); err != nil {
+					m.refuseUnits(p, c, "its unit "+err.Error())
+					return false
+				}
+			case len(p.runs) > 1 && normalize(c.UnitText) != normalize(p.runs[0].cols[0].UnitText):
+				m.refuseUnits(p, c, fmt.Sprintf("its unit %q cannot be compared with %q", c.UnitText, p.runs[0].cols[0].UnitText))
+				return false
+			}
+			r.factors = append(r.factors, f)
+		}
+		if u := r.uncertainty; u != nil && u.Unit != nil && r.base.Unit != nil && !u.Relative {
+			to := r.base.Unit
+			if r.base.halfLife() == "" && p.unit != nil {
+				to = p.unit
+			}
+			if f, err := u.Unit.convertTo(*to); err == nil {
+				r.uFactor = f
+			}
+		}
+	}
+	return true
+}
+
+// refuseUnits refuses columns of one rate constant, or of its repeats, that have
+// units of different kinds.
+func (m *maker) refuseUnits(p *plan, c *column, what string) {
+	first := p.runs[0].cols[0]
+	cure := fmt.Sprintf("choose one: --column 'k=%s' or --column 'k=%s'", first.Text, c.Text)
+	if len(p.runs) > 1 {
+		cure = fmt.Sprintf("name the repeats of one unit, and no others: --column 'k=%s' and so on", first.Text)
+	}
+	m.refuseCure(codeUnitConflict, 0, c.Text, what+", the unit of "+strconv.Quote(first.Text), cure)
 }
 
 // isText reports whether a column holds text that may be anything.
@@ -210,6 +252,24 @@ func (rr *rowReader) refuse(code string, c *column, format string, args ...any) 
 	}
 }
 
+// refuseText refuses a cell that holds no number. Where it would be one with the
+// other decimal mark, that is what is wrong.
+func (rr *rowReader) refuseText(c *column, s string) {
+	mark, other, name := ",", byte('.'), "comma"
+	if rr.p.decimal == '.' {
+		mark, other, name = ".", ',', "point"
+	}
+	if ParseCell(s, other, 0).Kind != CellNumber {
+		rr.refuse(codeNotNumber, c, "%q is not a number", short(s))
+		return
+	}
+	if rr.quiet {
+		return
+	}
+	rr.refuse(codeNotNumber, c, "%q is not a number where the decimal mark is the %s, and %q groups thousands", short(s), name, other)
+	rr.m.problems[len(rr.m.problems)-1].Cure = fmt.Sprintf("write it as %s", short(strings.ReplaceAll(s, string(other), mark)))
+}
+
 // number reads the cell of a column. ok is false where it holds no number; a
 // fault has then been noted, unless missing.
 func (rr *rowReader) number(c *column) (x Cell, ok, missing bool) {
@@ -226,7 +286,7 @@ func (rr *rowReader) number(c *column) (x Cell, ok, missing bool) {
 		rr.refuse(codeNotFinite, c, "%q is not a finite number", short(s))
 		return x, false, false
 	default:
-		rr.refuse(codeNotNumber, c, "%q is not a number", short(s))
+		rr.refuseText(c, s)
 		return x, false, false
 	}
 	if x.Percent && c.Role != RoleUncertainty {
@@ -266,7 +326,7 @@ func (rr *rowReader) read(pt *Point) {
 			if x.Value < 0 {
 				rr.refuse(codeNegativeU, p.ofT, "%q is negative", short(rr.cells[p.ofT.index]))
 			}
-			pt.UT = x.Value * p.ofT.Unit.Scale / p.ofT.divisor(rr.repeatsFor(pt), 0)
+			pt.UT = x.Value * p.ofT.Unit.Scale / rr.divisor(&p.ofT.Heading, pt)
 		}
 	}
 	if p.order != nil {
@@ -283,7 +343,6 @@ func (rr *rowReader) read(pt *Point) {
 			}
 		}
 	}
-	rr.rate(pt)
 }
 
 func (rr *rowReader) temperature(pt *Point) {
@@ -308,8 +367,8 @@ func (rr *rowReader) temperature(pt *Point) {
 		}
 		if j == 0 {
 			pt.T, half = t, h
-			if x.Attached == AttachedBracket && p.ofT == nil && c.Form == FormDirect {
-				pt.UT = x.U * c.Unit.Scale
+			if x.Attached != AttachedNone && p.ofT == nil {
+				rr.attachedT(pt, c, x)
 			}
 			continue
 		}
@@ -319,12 +378,61 @@ func (rr *rowReader) temperature(pt *Point) {
 	}
 }
 
-// rate reads k and u(k).
-func (rr *rowReader) rate(pt *Point) {
+// attachedT takes over an uncertainty written in the cell of T.
+func (rr *rowReader) attachedT(pt *Point, c *column, x Cell) {
+	h, ok := rr.levelOf(pt, c, x, &rr.bracketsT, &rr.spacedT, &rr.plusMinusT)
+	switch {
+	case !ok:
+		return
+	case x.URel:
+		note(&rr.plusMinusT, pt.Row) // 1 % of 25 °C is no span of temperature
+		return
+	case c.Form == FormDirect:
+		pt.UT = x.U * c.Unit.Scale
+	default: // u(T)/T = u(1/T)/(1/T)
+		pt.UT = pt.T * math.Abs(x.U/x.Value)
+	}
+	pt.UT /= rr.divisor(&h, pt)
+}
+
+// levelOf says how an uncertainty is to be understood that was written beside the
+// number in a cell, and notes its row; ok is false where that is not known.
+func (rr *rowReader) levelOf(pt *Point, c *column, x Cell, brackets, spaced, plusMinus *[]int) (h Heading, ok bool) {
+	h = Heading{Kind: KindStandard, Relative: x.URel, Form: c.Form}
+	if x.Attached == AttachedBracket {
+		c.brackets = true
+		note(brackets, pt.Row)
+		return h, true
+	}
+	list := plusMinus
+	if x.Attached == AttachedSpaced {
+		c.spaced = true
+		list = spaced
+	} else {
+		c.plusMinus = true
+	}
+	h.Kind, h.Coverage = rr.p.level, rr.p.levelK
+	if h.Kind == KindNone || h.Kind == KindRepeats && rr.repeatsFor(pt) == 0 {
+		note(list, pt.Row)
+		return h, false
+	}
+	rr.p.assume("error=" + rr.m.opt.Assume["error"])
+	return h, true
+}
+
+// note adds a row to a list, once for all its repeats.
+func note(rows *[]int, row int) {
+	if n := len(*rows); n == 0 || (*rows)[n-1] != row {
+		*rows = append(*rows, row)
+	}
+}
+
+// rate reads k and u(k) of one run.
+func (rr *rowReader) rate(pt *Point, run *rateRun) {
 	p := rr.p
 	var base Cell // cell of the column that u(k) is stated in
 	var half float64
-	for j, c := range p.rate {
+	for j, c := range run.cols {
 		x, ok, missing := rr.number(c)
 		if !ok {
 			if j == 0 && missing && pt.WhyNot == "" {
@@ -338,7 +446,7 @@ func (rr *rowReader) rate(pt *Point) {
 			}
 			continue
 		}
-		if c == p.base {
+		if c == run.base {
 			base = x
 		}
 		if c.halfLife() != "" {
@@ -354,14 +462,14 @@ func (rr *rowReader) rate(pt *Point) {
 			}
 		}
 		k, h := c.rateValue(x)
-		k *= rr.kFactor[j]
+		k *= run.factors[j]
 		if math.IsInf(k, 0) || math.IsNaN(k) || k == 0 && (c.Form != FormDirect || x.Value != 0) {
 			rr.refuse(codeNotFinite, c, "%q gives a rate constant beyond the range of double precision", short(rr.cells[c.index]))
 			return
 		}
 		if j > 0 {
 			if d := math.Abs(math.Log(k / pt.K)); !(d <= half+h+1e-9) {
-				rr.refuse(codeDisagree, c, "%q gives k = %.6g, and column %q gives %.6g", short(rr.cells[c.index]), k, p.rate[0].Text, pt.K)
+				rr.refuse(codeDisagree, c, "%q gives k = %.6g, and column %q gives %.6g", short(rr.cells[c.index]), k, run.cols[0].Text, pt.K)
 			}
 			continue
 		}
@@ -374,28 +482,28 @@ func (rr *rowReader) rate(pt *Point) {
 			return
 		}
 		pt.K, half, pt.Limit = k, h, x.Limit
-		if x.Attached != AttachedNone && p.uncertainty == nil {
+		if x.Attached != AttachedNone && run.uncertainty == nil {
 			rr.attached(pt, c, x)
 		}
 	}
 	if p.limit != nil {
-		rr.limit(pt)
+		rr.limit(pt, run.cols[0].halfLife() != "")
 	}
 	if pt.Limit != "" && pt.WhyNot == "" {
 		pt.WhyNot = limitOnly(pt.Limit, pt.K)
 	}
-	if p.uncertainty != nil {
-		rr.uncertainty(pt, base)
+	if run.uncertainty != nil {
+		rr.uncertainty(pt, run, base)
 	}
 }
 
-func (rr *rowReader) limit(pt *Point) {
+// limit reads the limit column; flip says that it bounds a time.
+func (rr *rowReader) limit(pt *Point, flip bool) {
 	c := rr.p.limit
 	s := rr.cells[c.index]
 	if s == "" {
 		return
 	}
-	flip := rr.p.rate[0].halfLife() != ""
 	switch strings.ToLower(normalize(s)) {
 	case "<", "≤", "<=", "upper":
 		pt.Limit = "<"
@@ -414,23 +522,9 @@ func (rr *rowReader) limit(pt *Point) {
 
 // attached takes over an uncertainty written in the cell of k.
 func (rr *rowReader) attached(pt *Point, c *column, x Cell) {
-	kind, coverage := KindStandard, 0.0
-	switch x.Attached {
-	case AttachedBracket:
-		rr.brackets = append(rr.brackets, pt.Row)
-	case AttachedSpaced:
-		rr.spaced = append(rr.spaced, pt.Row)
-		return
-	case AttachedPlusMinus:
-		kind, coverage = rr.p.level, rr.p.levelK
-		if kind == KindNone || kind == KindRepeats && rr.repeatsFor(pt) == 0 {
-			rr.plusMinus = append(rr.plusMinus, pt.Row)
-			return
-		}
-		rr.p.assume("error=" + rr.m.opt.Assume["error"])
+	if h, ok := rr.levelOf(pt, c, x, &rr.brackets, &rr.spaced, &rr.plusMinus); ok {
+		rr.state(pt, &h, c, x.U, x.Value, 1)
 	}
-	h := Heading{Kind: kind, Coverage: coverage, Relative: x.URel, Form: c.Form}
-	rr.state(pt, &h, x.U, x.Value, 1)
 }
 
 // repeatsFor is the number of repeats behind a point; 0 if not known.
@@ -442,8 +536,8 @@ func (rr *rowReader) repeatsFor(pt *Point) int {
 }
 
 // uncertainty reads the cell of u(k). base is the cell that it belongs to.
-func (rr *rowReader) uncertainty(pt *Point, base Cell) {
-	c := rr.p.uncertainty
+func (rr *rowReader) uncertainty(pt *Point, run *rateRun, base Cell) {
+	c := run.uncertainty
 	x, ok, _ := rr.number(c)
 	if !ok {
 		return
@@ -468,26 +562,27 @@ func (rr *rowReader) uncertainty(pt *Point, base Cell) {
 			rr.refuse(codeBadCoverage, rr.p.coverage, "%q is not a coverage factor", short(rr.cells[rr.p.coverage.index]))
 			return
 		}
-		if !ok && !h.Percent95 {
+		if !ok && h.Confidence == 0 {
 			return
 		}
 		h.Coverage = y.Value
 	}
-	if b := rr.p.base.Form; b == FormReciprocal || b == FormHalfLife {
+	if b := run.base.Form; b == FormReciprocal || b == FormHalfLife {
 		h.Form = b
 	}
-	rr.state(pt, &h, v, base.Value, rr.uFactor)
+	rr.state(pt, &h, c, v, base.Value, run.uFactor)
 }
 
 // state turns a stated uncertainty u into u(k) of a point. cell is the number of
-// the quantity that it was stated for, factor the unit of u in that of k.
-func (rr *rowReader) state(pt *Point, h *Heading, u, cell, factor float64) {
+// the quantity that it was stated for, factor the unit of u in that of k, c the
+// column that states it.
+func (rr *rowReader) state(pt *Point, h *Heading, c *column, u, cell, factor float64) {
 	n := rr.repeatsFor(pt)
 	if h.Kind == KindRepeats && n == 0 {
 		return
 	}
 	k := math.Abs(pt.K)
-	d := h.divisor(n, rr.p.quantile(n))
+	d := rr.divisor(h, pt)
 	switch {
 	case h.Kind == KindFactor:
 		u = k * math.Log(u)
@@ -503,7 +598,7 @@ func (rr *rowReader) state(pt *Point, h *Heading, u, cell, factor float64) {
 	pt.UK = u / d
 	if math.IsInf(pt.UK, 0) || math.IsNaN(pt.UK) {
 		pt.UK = 0
-		rr.refuse(codeNotFinite, rr.p.rate[0], "its uncertainty is beyond the range of double precision")
+		rr.refuse(codeNotFinite, c, "its uncertainty is beyond the range of double precision")
 		return
 	}
 	if pt.UK == 0 {
@@ -522,15 +617,26 @@ func (rr *rowReader) state(pt *Point, h *Heading, u, cell, factor float64) {
 			pt.Level = LevelRepeats
 		}
 	case KindExpanded:
-		if small && h.Percent95 {
+		if small && h.Coverage == 0 {
 			pt.Level = LevelRepeats
 		}
 	}
 }
 
-// divisor turns a stated uncertainty into a standard one: coverage factor, t or
-// normal quantile for 95 % (t95 if > 0), sqrt(n) for the s.d. of n repeats.
-func (h *Heading) divisor(n int, t95 float64) float64 {
+// divisor turns an uncertainty stated of a point into a standard one. A number of
+// repeats that the user gave is recorded where it counts.
+func (rr *rowReader) divisor(h *Heading, pt *Point) float64 {
+	counts := h.Kind == KindRepeats || h.Kind == KindExpanded && h.Coverage == 0
+	if counts && pt.Repeats == 0 && rr.p.repeatsN > 0 {
+		rr.p.assume(rr.p.assumedN)
+	}
+	return h.divisor(rr.repeatsFor(pt), rr.p)
+}
+
+// divisor turns a stated uncertainty into a standard one: coverage factor, quantile
+// for the confidence of an interval (Student's t for n repeats, normal where n is
+// not known), sqrt(n) for the s.d. of n repeats.
+func (h *Heading) divisor(n int, p *plan) float64 {
 	switch h.Kind {
 	case KindRepeats:
 		return math.Sqrt(float64(max(n, 1)))
@@ -538,32 +644,37 @@ func (h *Heading) divisor(n int, t95 float64) float64 {
 		switch {
 		case h.Coverage > 0:
 			return h.Coverage
-		case h.Percent95 && t95 > 0:
-			return t95
-		case h.Percent95:
-			return normal95
+		case h.Confidence > 0 && n >= 2:
+			return p.quantile(n, h.Confidence)
+		case h.Confidence > 0:
+			return normalQuantile(h.Confidence)
 		}
 	}
 	return 1
 }
 
-// normal95 is the 97.5 % quantile of the normal distribution, rounded as is common
-// practice.
-const normal95 = 1.96
+// normalQuantile is the factor of a two-sided normal interval, rounded to three
+// decimals as is common practice: 1.96 for 95 %.
+func normalQuantile(confidence float64) float64 {
+	return math.Round(1e3*distuv.UnitNormal.Quantile((1+confidence)/2)) / 1e3
+}
 
-// quantile is the 97.5 % quantile of Student's t for n repeats; 0 if n is not
-// known or leaves no degree of freedom.
-func (p *plan) quantile(n int) float64 {
-	if n < 2 || p.uncertainty == nil || !p.uncertainty.Percent95 {
-		return 0
-	}
-	if p.t95 == nil {
-		p.t95 = map[int]float64{}
-	}
-	q, ok := p.t95[n]
+// studentOf names a quantile of Student's t.
+type studentOf struct {
+	n          int
+	confidence float64
+}
+
+// quantile is the factor of a two-sided interval from n >= 2 repeats.
+func (p *plan) quantile(n int, confidence float64) float64 {
+	at := studentOf{n, confidence}
+	q, ok := p.student[at]
 	if !ok {
-		q = distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(n - 1)}.Quantile(0.975)
-		p.t95[n] = q
+		if p.student == nil {
+			p.student = map[studentOf]float64{}
+		}
+		q = distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(n - 1)}.Quantile((1 + confidence) / 2)
+		p.student[at] = q
 	}
 	return q
 }

@@ -99,9 +99,6 @@ func (m *maker) newSet(p *plan, name string) *Set {
 	s.Notices = append(s.Notices, p.notices...)
 	for _, key := range slices.Sorted(maps.Keys(m.opt.Assume)) {
 		v := m.opt.Assume[key]
-		if key == "n" && p.uncertainty != nil && p.uncertainty.Kind == KindRepeats {
-			continue
-		}
 		applied := false
 		for _, a := range p.assumed {
 			applied = applied || strings.HasPrefix(a, key+"=")
@@ -153,8 +150,8 @@ func (c *column) describe(p *plan) Column {
 		case c.Kind != KindExpanded && c.Kind != KindFactor:
 		case c.Coverage > 0:
 			d.Level += ", k = " + strconv.FormatFloat(c.Coverage, 'g', -1, 64)
-		case c.Percent95:
-			d.Level += ", 95 %"
+		case c.Confidence > 0:
+			d.Level += fmt.Sprintf(", %.4g %%", 100*c.Confidence)
 		case c.Kind == KindExpanded && p.coverage != nil:
 			d.Level += ", k from column " + strconv.Quote(p.coverage.Text)
 		}
