@@ -16,13 +16,12 @@ import (
 	"onebarrier/cmd/internal/report"
 	"onebarrier/diagnostics"
 	"onebarrier/models"
-	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 )
 
 // assessOptions are the flags of assess.
 type assessOptions struct {
-	read       dataset.Options
+	read       reading
 	assess     diagnostics.Options
 	errorModel string
 	models     string
@@ -39,7 +38,8 @@ func newAssess(a *app) *cobra.Command {
 		Long: `assess reads one data set, fits the candidate curves, tests for curvature and
 prints the verdict, what to publish and with what uncertainty, the ranking of
 the candidates and every finding with its cure. FILE is a table with one column
-of temperatures and one of rate constants; - reads standard input.`,
+of temperatures and one of rate constants, as text or in a sheet of a workbook
+(.xlsx); - reads standard input.`,
 		Example: `  onebarrier assess rates.csv
   onebarrier assess rates.csv --figures figures --figure-format pdf
   onebarrier assess rates.csv --t-max 330K --resamples 999 --seed 7
@@ -110,11 +110,11 @@ func (a *app) runAssess(ctx context.Context, file string, o *assessOptions) erro
 		}
 	}
 	o.read.AllowNonPositiveK = o.assess.ErrorModel.InK()
-	sets, _, err := a.readSets(ctx, file, o.read)
+	tables, _, err := a.readTables(ctx, file, o.read)
 	if err != nil {
 		return err
 	}
-	set, err := oneSet(file, sets)
+	set, err := oneSet(file, tables)
 	if err != nil {
 		return err
 	}

@@ -30,7 +30,7 @@ func TestExitCode(t *testing.T) {
 		{&panicError{"index out of range"}, 1},
 		{&usageError{message: "no flag"}, 2},
 		{data, 3},
-		{&partialError{1, 2}, 4},
+		{&partialError{1, 2, "files"}, 4},
 		{&expectError{diagnostics.Unresolved, []string{"straight-within"}}, 5},
 		{&signalError{os.Interrupt}, 130},
 		{&signalError{syscall.SIGTERM}, 143},

@@ -38,10 +38,13 @@ func usagef(cure, format string, args ...any) error {
 
 // partialError says that some of several inputs failed. Their problems have been
 // reported.
-type partialError struct{ failed, all int }
+type partialError struct {
+	failed, all int
+	what        string // files or sheets
+}
 
 func (e *partialError) Error() string {
-	return fmt.Sprintf("%d of %d files could not be used", e.failed, e.all)
+	return fmt.Sprintf("%d of %d %s could not be used", e.failed, e.all, e.what)
 }
 
 // expectError says that the verdict is not one of those asked for.

@@ -8,12 +8,13 @@ import (
 	"github.com/spf13/cobra"
 
 	"onebarrier/cmd/internal/report"
+	"onebarrier/cmd/internal/workbook"
 	"onebarrier/models/dataset"
 )
 
 // inspectOptions are the flags of inspect.
 type inspectOptions struct {
-	read dataset.Options
+	read reading
 	tidy string
 }
 
@@ -23,7 +24,8 @@ func newInspect(a *app) *cobra.Command {
 		Use:   "inspect FILE...",
 		Short: "Show what each column and row was taken for",
 		Long: `inspect prints what each column was taken for, its unit and level, the range in
-kelvin, and which rows are left out and why. Nothing is fitted.`,
+kelvin, and which rows are left out and why, for every sheet of a workbook that
+holds a table. Nothing is fitted.`,
 		Example: `  onebarrier inspect rates.csv
   onebarrier inspect rates.csv --tidy tidy.csv
   onebarrier inspect - --json < rates.csv`,
@@ -46,25 +48,34 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 		return usagef("give one file", "--tidy writes one table, but %d files are named", len(files))
 	}
 	doc := report.Inspection{Schema: report.InspectSchema, Tool: tool(), Files: []report.InspectedFile{}, Problems: []report.Problem{}}
-	var all dataset.Problems
+	var problems dataset.Problems
 	var sets []*dataset.Set
-	failed := 0
+	failed, all := 0, 0 // tables
 	for _, name := range files {
-		read, content, err := a.readSets(ctx, name, o.read)
+		tables, content, err := a.readTables(ctx, name, o.read)
 		var ps dataset.Problems
 		switch {
 		case errors.As(err, &ps):
-			failed++
-			all = append(all, ps...)
-			continue
+			tables = []workbook.Result{{Problems: ps}}
 		case err != nil:
 			return err
 		}
-		sets = read
-		doc.Files = append(doc.Files, report.NewInspectedFile(name, content, read))
+		if o.tidy != "" && len(tables) > 1 {
+			return usagef("choose one with --sheet", "--tidy writes one table, but %d sheets of %s hold one", len(tables), name)
+		}
+		for _, t := range tables {
+			all++
+			if len(t.Problems) > 0 {
+				failed++
+				problems = append(problems, t.Problems...)
+				continue
+			}
+			sets = t.Sets
+			doc.Files = append(doc.Files, report.NewInspectedFile(name, t.Sheet, content, t.Sets))
+		}
 	}
-	if failed == len(files) {
-		return all
+	if failed == all {
+		return problems
 	}
 	if o.tidy != "" {
 		if err := writeTidy(o.tidy, sets); err != nil {
@@ -72,8 +83,8 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 		}
 	}
 	if failed > 0 {
-		doc.Problems = problemsOf(all)
-		a.complain(all)
+		doc.Problems = problemsOf(problems)
+		a.complain(problems)
 	}
 	var err error
 	if a.json {
@@ -82,7 +93,14 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 		err = report.WriteInspection(a.out, doc, a.text())
 	}
 	if err == nil && failed > 0 {
-		err = &partialError{failed, len(files)}
+		what := "files"
+		if all > len(files) {
+			what = "sheets and files"
+			if len(files) == 1 {
+				what = "sheets"
+			}
+		}
+		err = &partialError{failed, all, what}
 	}
 	return err
 }

@@ -14,15 +14,23 @@ import (
 	"github.com/spf13/cobra"
 	"github.com/spf13/pflag"
 
+	"onebarrier/cmd/internal/workbook"
 	"onebarrier/models/dataset"
 )
 
+// reading is what a user says about a file.
+type reading struct {
+	dataset.Options
+	sheet string // of a workbook: name, or number from 1
+}
+
 // addSelection gives a command the flags that say how to read a file and which
 // rows to keep.
-func addSelection(cmd *cobra.Command, o *dataset.Options) {
+func addSelection(cmd *cobra.Command, o *reading) {
 	f := cmd.Flags()
 	f.StringVar(&o.Dataset, "dataset", "", "keep the rows of the data set with this `name`")
 	f.StringVar(&o.DatasetBy, "dataset-by", "", "make a data set of every value in the column with this `heading`, such as pH")
+	f.StringVar(&o.sheet, "sheet", "", "read the sheet of a workbook with this `name`, or number from 1")
 	f.Var(column{&o.Columns}, "column", "take a column for a role, such as 'k=k_obs/s^-1' (repeat for more)")
 	f.Var(pairs{&o.Assume}, "assume", "settle what is ambiguous, such as T=degC or error=2")
 	f.Var(&choice{&o.Decimal, []string{"comma", "point"}}, "decimal", "decimal mark of the file")
@@ -30,7 +38,7 @@ func addSelection(cmd *cobra.Command, o *dataset.Options) {
 	f.IntSliceVar(&o.LeaveOut, "leave-out", nil, "leave out these `lines` of the file")
 	f.Var(temperature{&o.TMin}, "t-min", "leave out rows below this temperature, such as 195K or 25degC")
 	f.Var(temperature{&o.TMax}, "t-max", "leave out rows above this temperature")
-	group(f, "how the file is read", "column", "assume", "decimal")
+	group(f, "how the file is read", "sheet", "column", "assume", "decimal")
 	group(f, "which rows are used", selectionFlags...)
 	completeWith(cmd, "decimal", "comma", "point")
 	completeWith(cmd, "column", "temperature=", "k=", "source=", "dataset=", "order=")
@@ -41,7 +49,7 @@ func addSelection(cmd *cobra.Command, o *dataset.Options) {
 var selectionFlags = []string{"dataset", "dataset-by", "where", "leave-out", "t-min", "t-max"}
 
 // recordedFlags decide what is read; assumptions are recorded by the reader.
-var recordedFlags = append([]string{"column", "decimal"}, selectionFlags...)
+var recordedFlags = append([]string{"sheet", "column", "decimal"}, selectionFlags...)
 
 // selection lists the flags that chose columns and rows, as the user may repeat them.
 func selection(cmd *cobra.Command) []string {
@@ -64,15 +72,24 @@ func selection(cmd *cobra.Command) []string {
 	return used
 }
 
-// readSets reads every data set of one file, "-" for standard input, and the
-// bytes it holds. A file that cannot be opened is a problem like any other.
-func (a *app) readSets(ctx context.Context, name string, o dataset.Options) ([]*dataset.Set, []byte, error) {
+// readTables reads every table of one file, "-" for standard input, and the bytes it
+// holds: a text is one table, a workbook has one in each of its sheets. A file that
+// cannot be opened is a problem like any other.
+func (a *app) readTables(ctx context.Context, name string, o reading) ([]workbook.Result, []byte, error) {
 	content, err := a.readAll(ctx, name)
 	if err != nil {
 		return nil, nil, err
 	}
-	sets, err := dataset.Read(name, bytes.NewReader(content), o)
-	return sets, content, err
+	if workbook.Is(content) {
+		tables, err := workbook.ReadAll(name, content, o.sheet, o.Options)
+		return tables, content, err
+	}
+	if o.sheet != "" {
+		return nil, content, dataset.Problems{{Code: "sheet-unknown", File: name,
+			Message: "--sheet " + o.sheet + ": a text table has no sheets", Cure: "leave out --sheet"}}
+	}
+	sets, err := dataset.Read(name, bytes.NewReader(content), o.Options)
+	return []workbook.Result{{Sets: sets}}, content, err
 }
 
 // readAll reads a file as a whole. Reading from a pipe or a terminal can wait for
@@ -112,7 +129,11 @@ func (a *app) readAll(ctx context.Context, name string) ([]byte, error) {
 }
 
 // oneSet picks the data set to assess.
-func oneSet(name string, sets []*dataset.Set) (*dataset.Set, error) {
+func oneSet(name string, tables []workbook.Result) (*dataset.Set, error) {
+	sets, err := workbook.One(name, tables)
+	if err != nil {
+		return nil, err
+	}
 	if len(sets) == 1 {
 		return sets[0], nil
 	}

@@ -45,7 +45,7 @@ func TestScripts(t *testing.T) {
 		Setup: func(env *testscript.Env) error {
 			// A terminal's wishes must not reach the golden cases.
 			env.Setenv("NO_COLOR", "")
-			return copyDemo(filepath.Join(env.WorkDir, "demo"))
+			return errors.Join(copyDemo(filepath.Join(env.WorkDir, "demo")), writeWorkbooks(env.WorkDir))
 		},
 		Cmds: map[string]func(*testscript.TestScript, bool, []string){
 			"exits": func(ts *testscript.TestScript, neg bool, args []string) {

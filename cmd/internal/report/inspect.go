@@ -23,9 +23,10 @@ type Inspection struct {
 	Problems []Problem        `json:"problems"` // of files that could not be read
 }
 
-// InspectedFile is one file that could be read.
+// InspectedFile is one table that could be read: a file, or a sheet of a workbook.
 type InspectedFile struct {
 	File   string         `json:"file"`
+	Sheet  string         `json:"sheet"` // "" for text
 	SHA256 string         `json:"sha256"`
 	Sets   []InspectedSet `json:"sets"`
 }
@@ -81,9 +82,9 @@ type InspectedNotice struct {
 	Rows    []int  `json:"rows"`
 }
 
-// NewInspectedFile describes the sets of one file and the bytes they came from.
-func NewInspectedFile(name string, content []byte, sets []*dataset.Set) InspectedFile {
-	f := InspectedFile{name, fmt.Sprintf("%x", sha256.Sum256(content)), []InspectedSet{}}
+// NewInspectedFile describes the sets of one table and the bytes they came from.
+func NewInspectedFile(name, sheet string, content []byte, sets []*dataset.Set) InspectedFile {
+	f := InspectedFile{name, sheet, fmt.Sprintf("%x", sha256.Sum256(content)), []InspectedSet{}}
 	for _, s := range sets {
 		f.Sets = append(f.Sets, newInspectedSet(s))
 	}
@@ -142,6 +143,9 @@ func WriteInspection(w io.Writer, doc Inspection, t Text) error {
 	if len(doc.Files) > 0 {
 		f := doc.Files[0]
 		next := "onebarrier assess " + shellWord(f.File)
+		if f.Sheet != "" {
+			next += " --sheet " + shellWord(f.Sheet)
+		}
 		if len(f.Sets) > 1 {
 			next += " --dataset " + shellWord(f.Sets[0].Name)
 		}
@@ -150,10 +154,18 @@ func WriteInspection(w io.Writer, doc Inspection, t Text) error {
 	return p.writeTo(w)
 }
 
+// table names the table: a file, or a file and its sheet.
+func (f InspectedFile) table() string {
+	if f.Sheet == "" {
+		return f.File
+	}
+	return f.File + "[" + f.Sheet + "]"
+}
+
 func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
-	about := p.bold(f.File)
+	about := p.bold(f.table())
 	if len(f.Sets) > 1 {
-		about = p.bold(s.Name) + " in " + f.File
+		about = p.bold(s.Name) + " in " + f.table()
 	}
 	facts := count(s.Points, "row") + fmt.Sprintf(", %d used", s.Used)
 	if s.Used > 0 {

@@ -274,7 +274,7 @@ func TestSchemasHold(t *testing.T) {
 		"models":     {report.NewModels(models.All())},
 		"findings":   {report.NewFindings(diagnostics.Catalogue())},
 		"inspect": {report.Inspection{Schema: report.InspectSchema, Tool: diagnostics.Tool{Name: "onebarrier", Version: "v"},
-			Files: []report.InspectedFile{report.NewInspectedFile("f", nil, []*dataset.Set{set})}, Problems: []report.Problem{{Code: "c", Message: "m"}}}},
+			Files: []report.InspectedFile{report.NewInspectedFile("f", "", nil, []*dataset.Set{set})}, Problems: []report.Problem{{Code: "c", Message: "m"}}}},
 		"problems": {report.Problems{Schema: report.ProblemsSchema, Problems: []report.Problem{{Code: "c", Message: "m", Row: ptr(3)}, {Message: "m"}}}},
 	} {
 		for _, doc := range docs {

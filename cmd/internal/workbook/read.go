@@ -37,6 +37,11 @@ func Read(name string, data []byte, choice string, opt dataset.Options) ([]*data
 	if err != nil {
 		return nil, err
 	}
+	return One(name, results)
+}
+
+// One returns the data sets where one sheet holds a table.
+func One(name string, results []Result) ([]*dataset.Set, error) {
 	if len(results) > 1 {
 		var names []string
 		for _, r := range results {
@@ -47,8 +52,8 @@ func Read(name string, data []byte, choice string, opt dataset.Options) ([]*data
 		p.Cure = "choose one: --sheet " + word(results[0].Sheet)
 		return nil, dataset.Problems{p}
 	}
-	if r := results[0]; len(r.Problems) > 0 {
-		return nil, r.Problems
+	if ps := results[0].Problems; len(ps) > 0 {
+		return nil, ps
 	}
 	return results[0].Sets, nil
 }
@@ -88,9 +93,11 @@ func ReadAll(name string, data []byte, choice string, opt dataset.Options) ([]Re
 	if len(results) == 0 {
 		return nil, lacking
 	}
-	if len(results) == 1 && len(others) > 0 {
-		for _, s := range results[0].Sets {
-			s.Notices = append(s.Notices, say(noteChosen, nil, "sheet %q was read; no table with a temperature and a rate constant is in %s", results[0].Sheet, list(others)))
+	for _, r := range results {
+		for _, s := range r.Sets {
+			if len(others) > 0 {
+				s.Notices = append(s.Notices, say(noteChosen, nil, "sheet %q was read; no table with a temperature and a rate constant is in %s", r.Sheet, list(others)))
+			}
 		}
 	}
 	return results, nil
