@@ -98,6 +98,7 @@ func ParseCell(text string, decimal byte, shift int) Cell {
 		if c.Attached, unc, c.URel, ok = q.attached(); !ok || q.rest() != "" {
 			return Cell{}
 		}
+		unc.inLastDigits(c.Attached, value)
 		p.s = after
 		e := p.power()
 		value.exp += e
@@ -109,11 +110,7 @@ func ParseCell(text string, decimal byte, shift int) Cell {
 		if c.Attached, unc, c.URel, ok = p.attached(); !ok {
 			return Cell{}
 		}
-		if c.Attached == AttachedBracket {
-			// 12.3(4) counts in units of the last digit of 12.3.
-			if unc.frac == 0 {
-				unc.exp -= value.frac
-			}
+		if unc.inLastDigits(c.Attached, value) {
 			e := p.power()
 			value.exp += e
 			unc.exp += e
@@ -256,6 +253,19 @@ func (n number) half(shift int) float64 { return halfUnit(n.exp + shift - n.frac
 type cellParser struct {
 	s       string
 	decimal byte
+}
+
+// inLastDigits lets a bracket without decimal mark count in units of the last digit
+// of the value, as in 12.3(4) (GUM 7.2.2); false where there is no bracket. Whether
+// what stands behind a space is an uncertainty at all is not asked here.
+func (n *number) inLastDigits(how Attached, value number) bool {
+	if how != AttachedBracket && how != AttachedSpaced {
+		return false
+	}
+	if n.frac == 0 {
+		n.exp -= value.frac
+	}
+	return true
 }
 
 // rest is what has not been read.

@@ -4,6 +4,7 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"path/filepath"
+	"regexp"
 	"strings"
 	"unicode"
 	"unicode/utf16"
@@ -95,10 +96,31 @@ func decode(b []byte) (text, encoding, problem string) {
 	if strings.HasPrefix(text, "PK\x03\x04") {
 		return "", "", "this is a workbook or another compressed file, not a text table"
 	}
+	if what := markup(text); what != "" {
+		return "", "", "this is " + what + ", not a table"
+	}
 	if strings.IndexByte(text, 0) >= 0 {
 		return "", "", "the file holds NUL bytes: it is not a text table, or it is UTF-16 without a byte order mark"
 	}
 	return text, encoding, ""
+}
+
+// reJSON is how a JSON document of records begins; no heading does.
+var reJSON = regexp.MustCompile(`^(?:\[\s*)*\{\s*["}]`)
+
+// markup names a document that is text but no table: a web page saved under the name
+// of the table it shows, a JSON or XML export.
+func markup(text string) string {
+	start := strings.ToLower(strings.TrimSpace(text[:min(len(text), 1024)]))
+	switch {
+	case strings.HasPrefix(start, "<!doctype html"), strings.HasPrefix(start, "<html"):
+		return "an HTML page"
+	case strings.HasPrefix(start, "<?xml"):
+		return "an XML document"
+	case reJSON.MatchString(start):
+		return "a JSON document"
+	}
+	return ""
 }
 
 // splitter walks over the records of a text.
