@@ -3,6 +3,8 @@ package diagnostics
 import (
 	"math"
 	"math/rand/v2"
+	"slices"
+	"sync"
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
@@ -12,7 +14,7 @@ const (
 	// adequacyLevel is the level of the one test that decides.
 	adequacyLevel = 0.01
 	// runsDraws of the null of the runs test.
-	runsDraws = 4999
+	runsDraws = 1999
 	// runsExact is the largest N whose runs are drawn. Beyond it what the fit does
 	// to the signs is negligible, and the normal null of Wald & Wolfowitz serves.
 	runsExact = 400
@@ -61,8 +63,9 @@ func NewPureError(points *fit.Sample) PureError {
 // where there are repeats, else chi-squared where uncertainties are stated. That
 // one test decides, at 1 %; adequate is nil where neither can be made. The runs
 // test follows for show: it cannot reach 5 % for N <= 6. onMeans says that the
-// entries of s are temperature means, so that the RSS holds no pure error.
-func CheckAdequacy(s *fit.Sample, f *fit.Result, pe PureError, onMeans bool) (tests []Adequacy, adequate *bool) {
+// entries of s are temperature means, so that the RSS holds no pure error. nulls
+// serves further fits of the same sample.
+func CheckAdequacy(s *fit.Sample, f *fit.Result, pe PureError, onMeans bool, nulls *RunsNulls) (tests []Adequacy, adequate *bool) {
 	tests = []Adequacy{}
 	if !f.Usable() {
 		return tests, nil
@@ -89,17 +92,24 @@ func CheckAdequacy(s *fit.Sample, f *fit.Result, pe PureError, onMeans bool) (te
 		decide(TestChiSquared, f.RSS, chi2Tail(f.RSS, f.Nu))
 	}
 	if f.Nu > 0 && !noScatter(s, f.RSS) {
-		r, p := runsTest(s, f)
+		r, p := nulls.test(s, f)
 		tests = append(tests, Adequacy{TestRuns, Real(r), Real(p)})
 	}
 	return tests, adequate
 }
 
-// runsTest counts the runs of equal sign among the residuals in order of T. p is
-// the chance of so few under a null of Gaussian errors from which what the fit
-// takes is projected out (Wald & Wolfowitz, Ann. Math. Stat. 11 (1940) 147, take
-// independent signs, which residuals do not have).
-func runsTest(s *fit.Sample, f *fit.Result) (runs, p float64) {
+// RunsNulls keeps the nulls of the runs test of one sample: curves that can follow the
+// same directions, as those of fixed exponent do, share one. The zero value is empty.
+type RunsNulls struct {
+	bases  [][][]float64
+	atMost [][]float64 // share of draws with so many runs or fewer, by number of runs
+}
+
+// test counts the runs of equal sign among the residuals in order of T. p is the
+// chance of so few under a null of Gaussian errors from which what the fit takes is
+// projected out (Wald & Wolfowitz, Ann. Math. Stat. 11 (1940) 147, take independent
+// signs, which residuals do not have).
+func (nulls *RunsNulls) test(s *fit.Sample, f *fit.Result) (runs, p float64) {
 	n := s.Len()
 	got := countRuns(f.Residuals)
 	if n > runsExact {
@@ -114,14 +124,21 @@ func runsTest(s *fit.Sample, f *fit.Result) (runs, p float64) {
 		sd := math.Sqrt(both * (both - total) / (total * total * (total - 1)))
 		return float64(got), math.Erfc((mean-float64(got)-0.5)/sd/math.Sqrt2) / 2
 	}
-	basis := tangent(s, f)
-	rng := rand.New(rand.NewPCG(0x72756e73, uint64(n)))
-	z := make([]float64, n)
-	few := 1
-	for range runsDraws {
-		for i := range z {
-			z[i] = rng.NormFloat64()
+	return float64(got), nulls.of(tangent(s, f), n)[got]
+}
+
+// of returns the null for residuals of length n without the components along an
+// orthonormal basis.
+func (nulls *RunsNulls) of(basis [][]float64, n int) []float64 {
+	for i, b := range nulls.bases {
+		if sameBasis(b, basis) {
+			return nulls.atMost[i]
 		}
+	}
+	draws := runsNormals(n)
+	atMost, z := make([]float64, n+1), make([]float64, n)
+	for k := range runsDraws {
+		copy(z, draws[k*n:])
 		for _, q := range basis {
 			var d float64
 			for i, x := range q {
@@ -131,11 +148,43 @@ func runsTest(s *fit.Sample, f *fit.Result) (runs, p float64) {
 				z[i] -= d * x
 			}
 		}
-		if countRuns(z) <= got {
-			few++
-		}
+		atMost[countRuns(z)]++
 	}
-	return float64(got), float64(few) / (runsDraws + 1)
+	few := 1.0
+	for i, c := range atMost {
+		few += c
+		atMost[i] = few / (runsDraws + 1)
+	}
+	nulls.bases, nulls.atMost = append(nulls.bases, basis), append(nulls.atMost, atMost)
+	return atMost
+}
+
+// sameBasis reports whether two bases, built from columns in the same order, are one.
+func sameBasis(a, b [][]float64) bool {
+	return slices.EqualFunc(a, b, func(p, q []float64) bool {
+		return slices.EqualFunc(p, q, func(x, y float64) bool { return math.Abs(x-y) <= 1e-9 })
+	})
+}
+
+// normals holds the standard normal numbers behind the nulls of the runs test by N:
+// with the fewer points they are asked for again and again, data set after data set.
+var normals sync.Map
+
+// runsNormals are runsDraws rows of n standard normal numbers.
+func runsNormals(n int) []float64 {
+	if z, ok := normals.Load(n); ok {
+		return z.([]float64)
+	}
+	rng := rand.New(rand.NewPCG(0x72756e73, uint64(n)))
+	z := make([]float64, runsDraws*n)
+	for i := range z {
+		z[i] = rng.NormFloat64()
+	}
+	const few = 40
+	if n <= few {
+		normals.Store(n, z)
+	}
+	return z
 }
 
 // countRuns counts the runs of values above zero and not above zero.

@@ -37,7 +37,7 @@ func TestPureErrorAgainstR(t *testing.T) {
 			s = means(t, points)
 		}
 		for name, r := range map[string]string{"straight": "LOF_arr", "power-prefactor": "LOF_mod"} {
-			tests, adequate := CheckAdequacy(s, fitNamed(t, s, name), pe, onMeans)
+			tests, adequate := CheckAdequacy(s, fitNamed(t, s, name), pe, onMeans, new(RunsNulls))
 			a := testNamed(t, tests, TestPureError)
 			reference.Close(t, name+" F", float64(a.Statistic), g("s6_replicates", r, "F"), 1e-8)
 			reference.Close(t, name+" p", float64(a.PValue), g("s6_replicates", r, "p"), 1e-8)
@@ -53,7 +53,7 @@ func TestPureErrorAgainstR(t *testing.T) {
 func TestChiSquaredAgainstR(t *testing.T) {
 	g := golden(t)
 	s := synthetic(t, "s5_hetero", fit.Stated)
-	tests, adequate := CheckAdequacy(s, fitNamed(t, s, "straight"), NewPureError(s), false)
+	tests, adequate := CheckAdequacy(s, fitNamed(t, s, "straight"), NewPureError(s), false, new(RunsNulls))
 	a := testNamed(t, tests, TestChiSquared)
 	reference.Close(t, "χ²", float64(a.Statistic), g("s5_hetero", "arr", "chi2"), 1e-10)
 	reference.Close(t, "p", float64(a.PValue), g("s5_hetero", "arr", "p_chi2"), 1e-9)
@@ -61,7 +61,7 @@ func TestChiSquaredAgainstR(t *testing.T) {
 		t.Error("χ² of 6 on 13 is adequate")
 	}
 	s = synthetic(t, "s1_straight", fit.Relative)
-	tests, adequate = CheckAdequacy(s, fitNamed(t, s, "straight"), NewPureError(s), false)
+	tests, adequate = CheckAdequacy(s, fitNamed(t, s, "straight"), NewPureError(s), false, new(RunsNulls))
 	if adequate != nil || len(tests) != 1 || tests[0].Test != TestRuns {
 		t.Errorf("without repeats or u(k) nothing can decide: %v", tests)
 	}
@@ -77,7 +77,7 @@ func TestRunsAgainstR(t *testing.T) {
 		}
 		s := synthetic(t, set, model)
 		for name, r := range map[string]string{"straight": "runs_arr", "power-prefactor": "runs_mod"} {
-			runs, p := runsTest(s, fitNamed(t, s, name))
+			runs, p := new(RunsNulls).test(s, fitNamed(t, s, name))
 			if runs != g(set, r, "runs") {
 				t.Errorf("%s %s: %g runs, want %g", set, name, runs, g(set, r, "runs"))
 			}
@@ -104,7 +104,7 @@ func TestRunsPValueAgainstR(t *testing.T) {
 		{"s8_tiny6", "power-prefactor", fit.Relative, 0.518785},
 	} {
 		s := synthetic(t, c.set, c.model)
-		_, p := runsTest(s, fitNamed(t, s, c.curve))
+		_, p := new(RunsNulls).test(s, fitNamed(t, s, c.curve))
 		se := math.Sqrt(c.p * (1 - c.p) * (1./runsDraws + 1./200000))
 		if !(math.Abs(p-c.p) <= 4*se) {
 			t.Errorf("%s %s: p = %.4f, want %.4f ± %.4f", c.set, c.curve, p, c.p, 4*se)
@@ -137,7 +137,7 @@ func TestRunsNull(t *testing.T) {
 	var at10 int
 	for range sets {
 		lineNoise(rng, s, 0.03, s.Y)
-		if _, p := runsTest(s, fitNamed(t, s, "straight")); p <= 0.10 {
+		if _, p := new(RunsNulls).test(s, fitNamed(t, s, "straight")); p <= 0.10 {
 			at10++
 		}
 	}
@@ -153,7 +153,7 @@ func TestRunsOfManyPoints(t *testing.T) {
 	s := sampleOf(t, fit.Relative, span(280, 340, n), make([]float64, n), nil)
 	lineNoise(rand.New(rand.NewPCG(9, 1)), s, 0.03, s.Y)
 	f := fitNamed(t, s, "straight")
-	runs, p := runsTest(s, f)
+	runs, p := new(RunsNulls).test(s, f)
 	var above, below float64
 	for _, r := range f.Residuals {
 		if r > 0 {

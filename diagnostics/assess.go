@@ -276,10 +276,11 @@ func (a *assessor) rank() {
 	s := a.data.sample
 	a.ranking = Rank(s, a.fits[:a.ranked], Criterion(a.opt.Criterion))
 	pe := NewPureError(a.data.single)
+	var nulls RunsNulls
 	for i := range a.ranking {
 		r := &a.ranking[i]
 		if f := a.fitOf(r.Curve); f.Usable() {
-			r.Adequacy, r.Adequate = CheckAdequacy(s, f, pe, a.data.basis == BasisMeans)
+			r.Adequacy, r.Adequate = CheckAdequacy(s, f, pe, a.data.basis == BasisMeans, &nulls)
 		}
 	}
 	a.findings = append(a.findings, RankingFindings(a.ranking, s, Criterion(a.opt.Criterion))...)

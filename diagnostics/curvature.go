@@ -202,7 +202,7 @@ func criticalValue(confidence float64, nu int, known bool) float64 {
 	if known {
 		return distuv.UnitNormal.Quantile(p)
 	}
-	return distuv.StudentsT{Sigma: 1, Nu: float64(nu)}.Quantile(p)
+	return fit.StudentQuantile(p, nu)
 }
 
 // pStudent is the two-sided p-value of t, I_{ν/(ν+t²)}(ν/2, 1/2).

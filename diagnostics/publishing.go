@@ -44,7 +44,7 @@ func (a *assessor) publishInto(doc *Assessment) {
 		in.Fit, in.Profiles = doc.Fits[curve], profiles[curve]
 		in.Exact = roundingOf(in.Fit, a.data.sample, a.opt.Confidence).Exact
 		atRef = in.Fit
-	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, NewPureError(a.data.single), a.data.basis == BasisMeans); in.PowerAdequate != nil && !*in.PowerAdequate {
+	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, NewPureError(a.data.single), a.data.basis == BasisMeans, new(RunsNulls)); in.PowerAdequate != nil && !*in.PowerAdequate {
 		atRef = nil
 	}
 	doc.AtReference = atReference(atRef, tRef, a.opt.Confidence, low, high)

@@ -23,7 +23,7 @@ func (r *Result) quantile(confidence float64) float64 {
 	if r.Nu < 1 {
 		return math.NaN()
 	}
-	return distuv.StudentsT{Sigma: 1, Nu: float64(r.Nu)}.Quantile(p)
+	return StudentQuantile(p, r.Nu)
 }
 
 // Interval returns value with its standard error by the delta method, from jac

@@ -257,7 +257,7 @@ func quantile(r *fit.Result, level float64) float64 {
 	case r.Model.KnownSigma():
 		return distuv.UnitNormal.Quantile(p)
 	case r.Nu > 0:
-		return distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(r.Nu)}.Quantile(p)
+		return fit.StudentQuantile(p, r.Nu)
 	}
 	return math.NaN()
 }
