@@ -673,9 +673,7 @@ func (p *plan) quantile(n int, confidence float64) float64 {
 		if p.student == nil {
 			p.student = map[studentOf]float64{}
 		}
-		t, level := distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(n - 1)}, (1+confidence)/2
-		q = t.Quantile(level)
-		q -= (t.CDF(q) - level) / t.Prob(q) // the quantile has ten digits, what it inverts all
+		q = distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(n - 1)}.Quantile((1 + confidence) / 2)
 		p.student[at] = q
 	}
 	return q
