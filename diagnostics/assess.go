@@ -110,6 +110,9 @@ func (a *assessor) notices() {
 			who = append(slices.Clone(names[:most]), fmt.Sprintf("%d more", len(names)-most))
 		}
 		a.find("sources-pooled", fmt.Sprintf("%d sources are taken as one: %s", len(names), list(who)), nil, nil)
+		if a.set.SeveralFiles() {
+			a.findings[len(a.findings)-1].Cure = "assess each file, or each source, by itself and compare"
+		}
 	}
 }
 
@@ -172,14 +175,17 @@ func (a *assessor) fit() error {
 // point has one at a known level that is not a small-sample standard deviation.
 func (a *assessor) chooseErrorModel(points []dataset.Point) error {
 	stated, repeats, some := true, false, false
-	var missing []int
-	for _, p := range points {
+	var missing, at []int
+	for i, p := range a.set.Points {
+		if !p.Used {
+			continue
+		}
 		has := p.UK > 0 && p.Level == dataset.LevelStandard
 		stated = stated && has
 		some = some || p.UK > 0
 		repeats = repeats || p.Level == dataset.LevelRepeats
 		if !has {
-			missing = append(missing, p.Row)
+			missing, at = append(missing, p.Row), append(at, i)
 		}
 	}
 	switch m := a.opt.ErrorModel; {
@@ -191,7 +197,11 @@ func (a *assessor) chooseErrorModel(points []dataset.Point) error {
 			a.modelWhy = "chosen because the stated standard deviations come from few repeats"
 			a.find("repeats-not-known", "standard deviations of a few repeats are not known uncertainties: one common relative error is estimated from the scatter about the curve", nil, nil)
 		} else if some {
-			a.find("stated-incomplete", fmt.Sprintf("%d of %d points have no standard uncertainty: one common relative error is estimated from the scatter about the curve", len(missing), len(points)), missing, nil)
+			message := fmt.Sprintf("%d of %d points have no standard uncertainty: one common relative error is estimated from the scatter about the curve", len(missing), len(points))
+			if a.set.SeveralFiles() { // the numbers of lines alone would not tell which
+				message += " (" + a.set.Places(at) + ")"
+			}
+			a.find("stated-incomplete", message, missing, nil)
 		}
 	default:
 		a.model, a.modelWhy = m, "asked for"

@@ -91,7 +91,7 @@ func TestPool(t *testing.T) {
 		// 25 °C, 298.15 K and 77 °F are one temperature.
 		"few-temperatures: 2 distinct temperatures",
 		"duplicate-rows: one/b.csv:2, two/c.csv:2: same temperature",
-		`column-varies: column "pH" takes 7 and 8 at 298.15 K`,
+		`column-varies: column "pH" takes 7 and 8 at 298.15 K, the latter in two/c.csv:3 [3]`,
 	} {
 		if strings.Count(got, m) != 1 {
 			t.Errorf("%q is said %d times in\n%s", m, strings.Count(got, m), got)

@@ -61,7 +61,7 @@ func (s *Set) review() {
 	s.sayOf(noteDuplicate, duplicates, "same temperature and rate constant as an earlier one")
 	s.sayOf(noteLargeU, large, "u(k)/k is above 0.3")
 	if n := len(distinct); n < 5 {
-		s.say(noteFew, fmt.Sprintf("%d distinct temperatures", n))
+		s.say(noteFew, countOf(n, "distinct temperature"))
 	}
 	// Exactly 20 K, read in another unit, is 20 K still.
 	if len(distinct) > 1 && high-low < 20-1e-9*high {
@@ -129,17 +129,17 @@ func (s *Set) sayOf(code string, at []int, what string) {
 	for i, j := range at {
 		rows[i] = s.Points[j].Row
 	}
-	s.say(code, s.places(at)+": "+what, rows...)
+	s.say(code, s.Places(at)+": "+what, rows...)
 }
 
-// places names the rows of points: line 7; or b.csv:7 where the points come from
-// several files.
-func (s *Set) places(at []int) string {
+// Places names the rows of the points with these indices: line 7; or b.csv:7 where
+// the points of the set come from several files.
+func (s *Set) Places(at []int) string {
 	rows := make([]int, len(at))
 	for i, j := range at {
 		rows[i] = s.Points[j].Row
 	}
-	if !s.severalFiles() {
+	if !s.SeveralFiles() {
 		return lines(rows)
 	}
 	files := make([]string, len(at))
@@ -163,8 +163,8 @@ func placesIn(files []string, rows []int) string {
 	return s
 }
 
-// severalFiles reports whether the points come from more than one file.
-func (s *Set) severalFiles() bool {
+// SeveralFiles reports whether the points come from more than one file.
+func (s *Set) SeveralFiles() bool {
 	for i := range s.Points {
 		if s.Points[i].File != s.Points[0].File {
 			return true
@@ -202,9 +202,13 @@ func (s *Set) reviewKept(name string, setting []int) {
 		}
 		v, seen := at[setting[i]]
 		if seen && v != x.Value {
+			message := fmt.Sprintf("column %q takes %g and %g at %.6g K", name, v, x.Value, pt.T)
+			if s.SeveralFiles() {
+				message += ", the latter in " + s.Places([]int{i})
+			}
 			s.Notices = append(s.Notices, Notice{
 				Code:    noteVaries,
-				Message: fmt.Sprintf("column %q takes %g and %g at %.6g K", name, v, x.Value, pt.T),
+				Message: message,
 				Cure:    fmt.Sprintf("choose with --where '%s=%s', or split with --dataset-by '%s'", name, cell, name),
 				Rows:    []int{pt.Row},
 			})
@@ -221,4 +225,12 @@ func withPoint(cell string, decimal byte) string {
 		return cell
 	}
 	return strings.NewReplacer(".", "", ",", ".").Replace(cell)
+}
+
+// countOf writes "1 cell", "2 cells".
+func countOf(n int, thing string) string {
+	if n == 1 {
+		return "1 " + thing
+	}
+	return strconv.Itoa(n) + " " + thing + "s"
 }

@@ -33,20 +33,23 @@ type assessOptions struct {
 func newAssess(a *app) *cobra.Command {
 	o := &assessOptions{assess: diagnostics.DefaultOptions()}
 	cmd := &cobra.Command{
-		Use:   "assess FILE",
+		Use:   "assess FILE...",
 		Short: "Tell whether one barrier describes the data, and what to publish",
 		Long: `assess reads one data set, fits the candidate curves, tests for curvature and
 prints the verdict, what to publish and with what uncertainty, the ranking of
 the candidates and every finding with its cure. FILE is a table with one column
 of temperatures and one of rate constants, as text or in a sheet of a workbook
-(.xlsx); - reads standard input.`,
+(.xlsx); - reads standard input. Several files are assessed as one with --pool:
+they must hold the same rate quantity, in units of one dimension; data set, rows
+and temperatures are chosen in each file before they are joined.`,
 		Example: `  onebarrier assess rates.csv
   onebarrier assess rates.csv --figures figures --figure-format pdf
   onebarrier assess rates.csv --t-max 330K --resamples 999 --seed 7
   onebarrier assess rates.csv --error-model relative --energy-unit kcal/mol
   onebarrier assess - --json < rates.csv
+  onebarrier assess rates.csv second.csv --pool --leave-out second.csv:7
   onebarrier assess rates.csv --quiet --expect straight-within,unresolved`,
-		Args: exactly(1, "FILE"),
+		Args: atLeast(1, "FILE"),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.assess.Selection = selection(cmd)
 			o.assess.KeepResamples = cmd.Flags().Changed("resamples")
@@ -56,9 +59,13 @@ of temperatures and one of rate constants, as text or in a sheet of a workbook
 				}
 			}
 			o.assess.KeepResamples = cmd.Flags().Changed("resamples")
-			return a.runAssess(cmd.Context(), args[0], o)
+			if len(args) > 1 && !o.read.pool {
+				return usagef("--pool joins them into one; inspect shows each; or give one at a time",
+					"assess takes one data set, and %d files are named", len(args))
+			}
+			return a.runAssess(cmd.Context(), args, o)
 		},
-		ValidArgsFunction: completeFiles(1),
+		ValidArgsFunction: completeFiles(-1),
 	}
 	f := cmd.Flags()
 	addSelection(cmd, &o.read)
@@ -100,7 +107,7 @@ of temperatures and one of rate constants, as text or in a sheet of a workbook
 	return cmd
 }
 
-func (a *app) runAssess(ctx context.Context, file string, o *assessOptions) error {
+func (a *app) runAssess(ctx context.Context, files []string, o *assessOptions) error {
 	if err := o.complete(); err != nil {
 		return err
 	}
@@ -110,11 +117,7 @@ func (a *app) runAssess(ctx context.Context, file string, o *assessOptions) erro
 		}
 	}
 	o.read.AllowNonPositiveK = o.assess.ErrorModel.InK()
-	tables, _, err := a.readTables(ctx, file, o.read)
-	if err != nil {
-		return err
-	}
-	set, err := oneSet(file, tables)
+	set, err := a.readOne(ctx, files, o.read)
 	if err != nil {
 		return err
 	}
@@ -127,9 +130,9 @@ func (a *app) runAssess(ctx context.Context, file string, o *assessOptions) erro
 	if err != nil {
 		return err
 	}
-	var figures []string
+	var pictures []string
 	if o.figures != "" {
-		if figures, err = figure.Write(o.figures, result, o.figure); err != nil {
+		if pictures, err = figure.Write(o.figures, result, o.figure); err != nil {
 			return err
 		}
 	}
@@ -141,7 +144,7 @@ func (a *app) runAssess(ctx context.Context, file string, o *assessOptions) erro
 		}
 		err = report.JSON(a.out, result)
 	} else {
-		err = report.WriteAssessment(a.out, result, figures, a.text())
+		err = report.WriteAssessment(a.out, result, pictures, a.text())
 	}
 	if err != nil {
 		return err

@@ -1,7 +1,6 @@
 package cli
 
 import (
-	"context"
 	"errors"
 	"os"
 
@@ -25,13 +24,20 @@ func newInspect(a *app) *cobra.Command {
 		Short: "Show what each column and row was taken for",
 		Long: `inspect prints what each column was taken for, its unit and level, the range in
 kelvin, and which rows are left out and why, for every sheet of a workbook that
-holds a table. Nothing is fitted.`,
+holds a table. Nothing is fitted.
+
+--tidy writes every row as understood under canonical headings, with the file and
+line it came from and why it is left out. assess gives the same result from that
+table as from the original with the same flags; what cannot be the same is the
+name of the file, its sum, what is said about its columns and how they were read,
+and the flags on record.`,
 		Example: `  onebarrier inspect rates.csv
   onebarrier inspect rates.csv --tidy tidy.csv
+  onebarrier inspect rates.csv second.csv --pool
   onebarrier inspect - --json < rates.csv`,
 		Args: atLeast(1, "FILE"),
 		RunE: func(cmd *cobra.Command, args []string) error {
-			return a.runInspect(cmd.Context(), args, o)
+			return a.runInspect(cmd, args, o)
 		},
 		ValidArgsFunction: completeFiles(-1),
 	}
@@ -43,16 +49,23 @@ holds a table. Nothing is fitted.`,
 
 // runInspect reads every file: one that cannot be read is a record beside the
 // others, and the exit code says so.
-func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions) error {
+func (a *app) runInspect(cmd *cobra.Command, files []string, o *inspectOptions) error {
+	ctx := cmd.Context()
+	if o.read.pool {
+		return a.inspectPooled(cmd, files, o)
+	}
 	if o.tidy != "" && len(files) > 1 {
-		return usagef("give one file", "--tidy writes one table, but %d files are named", len(files))
+		return usagef("give one file, or join them with --pool", "--tidy writes one table, but %d files are named", len(files))
+	}
+	if err := checkPlaces(o.read.leaveOut, files); err != nil {
+		return err
 	}
 	doc := report.Inspection{Schema: report.InspectSchema, Tool: tool(), Files: []report.InspectedFile{}, Problems: []report.Problem{}}
 	var problems dataset.Problems
 	var sets []*dataset.Set
 	failed, all := 0, 0 // tables
 	for _, name := range files {
-		tables, content, err := a.readTables(ctx, name, o.read)
+		tables, content, err := a.readTables(ctx, name, o.read.of(name, files))
 		var ps dataset.Problems
 		switch {
 		case errors.As(err, &ps):
@@ -72,6 +85,13 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 			}
 			sets = t.Sets
 			doc.Files = append(doc.Files, report.NewInspectedFile(name, t.Sheet, content, t.Sets))
+			if doc.Next == "" {
+				set := ""
+				if len(sets) > 1 {
+					set = sets[0].Name
+				}
+				doc.Next = nextCommand(cmd, []string{name}, &o.read, t.Sheet, set)
+			}
 		}
 	}
 	if failed == all {
@@ -86,12 +106,7 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 		doc.Problems = problemsOf(problems)
 		a.complain(problems)
 	}
-	var err error
-	if a.json {
-		err = report.JSON(a.out, doc)
-	} else {
-		err = report.WriteInspection(a.out, doc, a.text())
-	}
+	err := a.writeInspection(doc)
 	if err == nil && failed > 0 {
 		what := "files"
 		if all > len(files) {
@@ -103,6 +118,31 @@ func (a *app) runInspect(ctx context.Context, files []string, o *inspectOptions)
 		err = &partialError{failed, all, what}
 	}
 	return err
+}
+
+// inspectPooled shows several files as the one data set that they make.
+func (a *app) inspectPooled(cmd *cobra.Command, files []string, o *inspectOptions) error {
+	set, err := a.readOne(cmd.Context(), files, o.read)
+	if err != nil {
+		return err
+	}
+	if o.tidy != "" {
+		if err := writeTidy(o.tidy, []*dataset.Set{set}); err != nil {
+			return err
+		}
+	}
+	return a.writeInspection(report.Inspection{
+		Schema: report.InspectSchema, Tool: tool(), Problems: []report.Problem{},
+		Files: []report.InspectedFile{report.NewPooledFile(set)},
+		Next:  nextCommand(cmd, files, &o.read, "", ""),
+	})
+}
+
+func (a *app) writeInspection(doc report.Inspection) error {
+	if a.json {
+		return report.JSON(a.out, doc)
+	}
+	return report.WriteInspection(a.out, doc, a.text())
 }
 
 // writeTidy writes the table to a file that is not there yet: rates that someone

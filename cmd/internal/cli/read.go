@@ -21,7 +21,15 @@ import (
 // reading is what a user says about a file.
 type reading struct {
 	dataset.Options
-	sheet string // of a workbook: name, or number from 1
+	sheet    string  // of a workbook: name, or number from 1
+	leaveOut []place // what Options.LeaveOut is for each file
+	pool     bool
+}
+
+// of is what was said about one of several files.
+func (o reading) of(file string, files []string) reading {
+	o.LeaveOut = linesOf(o.leaveOut, file, files)
+	return o
 }
 
 // addSelection gives a command the flags that say how to read a file and which
@@ -35,9 +43,10 @@ func addSelection(cmd *cobra.Command, o *reading) {
 	f.Var(pairs{&o.Assume}, "assume", "settle what is ambiguous, such as T=degC or error=2")
 	f.Var(&choice{&o.Decimal, []string{"comma", "point"}}, "decimal", "decimal mark of the file")
 	f.StringArrayVar(&o.Where, "where", nil, "keep rows that meet a `condition`, such as 'source!=Lab3' (repeat for more)")
-	f.IntSliceVar(&o.LeaveOut, "leave-out", nil, "leave out these `lines` of the file")
+	f.Var(places{&o.leaveOut}, "leave-out", "leave out these `lines`; FILE:LINE where several files are named")
 	f.Var(temperature{&o.TMin}, "t-min", "leave out rows below this temperature, such as 195K or 25degC")
 	f.Var(temperature{&o.TMax}, "t-max", "leave out rows above this temperature")
+	f.BoolVar(&o.pool, "pool", false, "join the files into one data set; a row without a source has the name of its file")
 	group(f, "how the file is read", "sheet", "column", "assume", "decimal")
 	group(f, "which rows are used", selectionFlags...)
 	completeWith(cmd, "decimal", "comma", "point")
@@ -46,7 +55,7 @@ func addSelection(cmd *cobra.Command, o *reading) {
 }
 
 // selectionFlags are those that leave rows out.
-var selectionFlags = []string{"dataset", "dataset-by", "where", "leave-out", "t-min", "t-max"}
+var selectionFlags = []string{"dataset", "dataset-by", "where", "leave-out", "t-min", "t-max", "pool"}
 
 // recordedFlags decide what is read; assumptions are recorded by the reader.
 var recordedFlags = append([]string{"sheet", "column", "decimal"}, selectionFlags...)
@@ -58,10 +67,11 @@ func selection(cmd *cobra.Command) []string {
 		if !slices.Contains(recordedFlags, f.Name) {
 			return
 		}
-		values := []string{f.Value.String()}
-		if s, ok := f.Value.(pflag.SliceValue); ok {
-			values = s.GetSlice()
+		if f.Name == "pool" {
+			used = append(used, "--pool")
+			return
 		}
+		values := valuesOf(f)
 		if f.Name == "leave-out" {
 			values = []string{strings.Join(values, ",")}
 		}
@@ -90,6 +100,34 @@ func (a *app) readTables(ctx context.Context, name string, o reading) ([]workboo
 	}
 	sets, err := dataset.Read(name, bytes.NewReader(content), o.Options)
 	return []workbook.Result{{Sets: sets}}, content, err
+}
+
+// readOne reads the one data set of each file, and pools several.
+func (a *app) readOne(ctx context.Context, files []string, o reading) (*dataset.Set, error) {
+	if err := checkPlaces(o.leaveOut, files); err != nil {
+		return nil, err
+	}
+	var sets []*dataset.Set
+	var problems dataset.Problems
+	for _, name := range files {
+		tables, _, err := a.readTables(ctx, name, o.of(name, files))
+		var set *dataset.Set
+		if err == nil {
+			set, err = oneSet(name, tables)
+		}
+		var ps dataset.Problems
+		switch {
+		case errors.As(err, &ps):
+			problems = append(problems, ps...)
+		case err != nil:
+			return nil, err
+		}
+		sets = append(sets, set)
+	}
+	if len(problems) > 0 {
+		return nil, problems
+	}
+	return dataset.Pool(sets)
 }
 
 // readAll reads a file as a whole. Reading from a pipe or a terminal can wait for

@@ -145,6 +145,10 @@ func TestHelpExamples(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	second, err := os.ReadFile(filepath.Join(demo, "ester-few.csv"))
+	if err != nil {
+		t.Fatal(err)
+	}
 	root := newRoot(&app{colour: "auto"})
 	commands := append(root.Commands(), root)
 	for _, c := range commands {
@@ -161,7 +165,7 @@ func TestHelpExamples(t *testing.T) {
 			line := strings.TrimSpace(line)
 			t.Run(line, func(t *testing.T) {
 				t.Chdir(t.TempDir())
-				if err := os.WriteFile("rates.csv", rates, 0o666); err != nil {
+				if err := errors.Join(os.WriteFile("rates.csv", rates, 0o666), os.WriteFile("second.csv", second, 0o666)); err != nil {
 					t.Fatal(err)
 				}
 				args, stdin, _ := splitCommand(line)

@@ -102,8 +102,28 @@ func (b band) Set(s string) error {
 // commas.
 type pairs struct{ m *map[string]string }
 
-func (p pairs) String() string { return "" }
+func (p pairs) String() string { return strings.Join(p.GetSlice(), ",") }
 func (p pairs) Type() string   { return "key=value" }
+
+// GetSlice, Append and Replace make it a pflag.SliceValue.
+func (p pairs) GetSlice() []string {
+	var out []string
+	for _, key := range slices.Sorted(maps.Keys(*p.m)) {
+		out = append(out, key+"="+(*p.m)[key])
+	}
+	return out
+}
+func (p pairs) Append(s string) error { return p.Set(s) }
+func (p pairs) Replace(all []string) error {
+	*p.m = nil
+	for _, s := range all {
+		if err := p.Set(s); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
 func (p pairs) Set(s string) error {
 	if *p.m == nil {
 		*p.m = map[string]string{}

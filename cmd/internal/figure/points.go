@@ -139,7 +139,7 @@ func pointEntries(leg *legend, d *Arrhenius) {
 			if s == "" {
 				s = "no source given"
 			}
-			leg.entry(plain(shortened(s, 24)), spot{glyph(i, true, r)})
+			leg.entry(plain(shortened(s, 24)), spot{glyph(i, d.sourceUsed(i), r)})
 		}
 	}
 	leftOut, limits := false, false
@@ -163,6 +163,17 @@ func pointEntries(leg *legend, d *Arrhenius) {
 	if d.NotShown > 0 {
 		leg.entry(fmt.Sprintf("not shown, without ln *k*: %d", d.NotShown))
 	}
+}
+
+// sourceUsed reports whether a source has a point that took part: else its marker
+// stands nowhere but hollow.
+func (d *Arrhenius) sourceUsed(source int) bool {
+	for _, p := range d.Points {
+		if p.Source == source && p.Used {
+			return true
+		}
+	}
+	return false
 }
 
 // shortened cuts a text to so many characters.

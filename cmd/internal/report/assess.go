@@ -402,11 +402,13 @@ func (p *page) data(a *diagnostics.Assessment) {
 	for _, s := range a.Settings.Selection {
 		lines = append(lines, Wrap("selection: "+s, p.body())...)
 	}
+	var left [][2]string
 	for _, r := range a.Data {
 		if !r.Used {
-			lines = append(lines, hang(fmt.Sprintf("line %d left out:", r.Row), 18, or(r.WhyNot, "no reason given"), p.body())...)
+			left = append(left, [2]string{rowPlace(r.File, r.Row, d.Files) + " left out:", or(r.WhyNot, "no reason given")})
 		}
 	}
+	lines = append(lines, labelled(left, p.body())...)
 	p.section("data", lines...)
 }
 

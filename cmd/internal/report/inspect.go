@@ -5,7 +5,9 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"regexp"
 	"strings"
+	"unicode/utf8"
 
 	"onebarrier/diagnostics"
 	"onebarrier/models"
@@ -21,12 +23,14 @@ type Inspection struct {
 	Tool     diagnostics.Tool `json:"tool"`
 	Files    []InspectedFile  `json:"files"`
 	Problems []Problem        `json:"problems"` // of files that could not be read
+	Next     string           `json:"next"`     // the command that assesses the first set, quoted for a shell
 }
 
 // InspectedFile is one table that could be read: a file, or a sheet of a workbook.
 type InspectedFile struct {
 	File   string         `json:"file"`
 	Sheet  string         `json:"sheet"` // "" for text
+	Files  []string       `json:"files"` // several where they were pooled; File joins their names
 	SHA256 string         `json:"sha256"`
 	Sets   []InspectedSet `json:"sets"`
 }
@@ -84,11 +88,16 @@ type InspectedNotice struct {
 
 // NewInspectedFile describes the sets of one table and the bytes they came from.
 func NewInspectedFile(name, sheet string, content []byte, sets []*dataset.Set) InspectedFile {
-	f := InspectedFile{name, sheet, fmt.Sprintf("%x", sha256.Sum256(content)), []InspectedSet{}}
+	f := InspectedFile{name, sheet, []string{name}, fmt.Sprintf("%x", sha256.Sum256(content)), []InspectedSet{}}
 	for _, s := range sets {
 		f.Sets = append(f.Sets, newInspectedSet(s))
 	}
 	return f
+}
+
+// NewPooledFile describes a set that was pooled from several files.
+func NewPooledFile(s *dataset.Set) InspectedFile {
+	return InspectedFile{strings.Join(s.Files, " + "), "", append([]string{}, s.Files...), s.SHA256, []InspectedSet{newInspectedSet(s)}}
 }
 
 func newInspectedSet(s *dataset.Set) InspectedSet {
@@ -140,16 +149,8 @@ func WriteInspection(w io.Writer, doc Inspection, t Text) error {
 			p.inspectedSet(f, s)
 		}
 	}
-	if len(doc.Files) > 0 {
-		f := doc.Files[0]
-		next := "onebarrier assess " + shellWord(f.File)
-		if f.Sheet != "" {
-			next += " --sheet " + shellWord(f.Sheet)
-		}
-		if len(f.Sets) > 1 {
-			next += " --dataset " + shellWord(f.Sets[0].Name)
-		}
-		p.section("next", next)
+	if doc.Next != "" {
+		p.section("next", doc.Next) // one line, however long: it is there to be copied
 	}
 	return p.writeTo(w)
 }
@@ -163,15 +164,19 @@ func (f InspectedFile) table() string {
 }
 
 func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
-	about := p.bold(f.table())
+	var lines []string
 	if len(f.Sets) > 1 {
-		about = p.bold(s.Name) + " in " + f.table()
+		lines = append(lines, p.bold(s.Name)+" in "+f.table())
+	} else {
+		for _, l := range Wrap(f.table(), p.body()) {
+			lines = append(lines, p.bold(l))
+		}
 	}
 	facts := count(s.Points, "row") + fmt.Sprintf(", %d used", s.Used)
 	if s.Used > 0 {
 		facts += fmt.Sprintf(", at %s from %s to %s\u00a0K", count(s.Temperatures, "temperature"), kelvin(s.TMin), kelvin(s.TMax))
 	}
-	lines := append([]string{about}, Wrap(facts, p.body())...)
+	lines = append(lines, Wrap(facts, p.body())...)
 	rate := s.Quantity.Symbol + " in " + s.Quantity.Unit
 	if !s.Quantity.DimensionKnown {
 		rate = s.Quantity.Symbol + " without a unit: entropies and free energies will be withheld"
@@ -181,29 +186,16 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 	}
 	p.section("read", append(lines, Wrap(rate, p.body())...)...)
 
-	rows := [][]string{{"heading", "taken for", "unit", "how sure"}}
-	for _, c := range s.Columns {
-		role, u := c.Role, c.Unit
-		if c.Level != "" {
-			role += " (" + c.Level + ")"
-		}
-		if c.Factor.Known() && c.Factor != 1 && c.Factor != 0 {
-			u = strings.TrimSpace(factor(float64(c.Factor)) + " " + u)
-		}
-		rows = append(rows, []string{or(c.Heading, unknown), role, or(u, unknown), or(c.Confidence, unknown)})
-	}
-	columns := table(rows)
-	columns[0] = p.dim(columns[0])
-	p.section("columns", columns...)
+	p.section("columns", p.columns(f, s)...)
 	p.section("assumed", wrapAll(s.Assumed, p.body())...)
 
-	var left []string
+	var left [][2]string
 	for _, d := range s.Data {
 		if !d.Used {
-			left = append(left, hang(fmt.Sprintf("line %d", d.Row), 11, or(d.WhyNot, "no reason given"), p.body())...)
+			left = append(left, [2]string{rowPlace(d.File, d.Row, f.Files), or(d.WhyNot, "no reason given")})
 		}
 	}
-	p.section("left out", left...)
+	p.section("left out", labelled(left, p.body())...)
 
 	var notices []string
 	for _, n := range s.Notices {
@@ -212,10 +204,149 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 	p.section("notices", notices...)
 }
 
+// rowPlace names a row: line 7, or b.csv:7 where the file does not go without saying.
+func rowPlace(file string, row int, files []string) string {
+	if len(files) == 1 && (file == files[0] || file == "") {
+		return fmt.Sprintf("line %d", row)
+	}
+	return fmt.Sprintf("%s:%d", file, row)
+}
+
+// labelled sets texts beside their labels, as wide as the longest that leaves room.
+func labelled(rows [][2]string, width int) []string {
+	const most = 30
+	indent := 9
+	for _, r := range rows {
+		if n := utf8.RuneCountInString(r[0]); n <= most {
+			indent = max(indent, n)
+		}
+	}
+	var lines []string
+	for _, r := range rows {
+		label := r[0]
+		if utf8.RuneCountInString(label) > most {
+			lines, label = append(lines, label), ""
+		}
+		lines = append(lines, hang(label, indent+2, r[1], width)...)
+	}
+	return lines
+}
+
+// columns lists what each column was taken for; those that are only kept share a
+// line, since a logger's file may have a hundred of them.
+func (p *page) columns(f InspectedFile, s InspectedSet) []string {
+	const mostKept = 8
+	var lines []string
+	for _, file := range f.Files {
+		rows := [][]string{{"heading", "taken for", "unit", "how sure", "first cells"}}
+		var kept []string
+		for _, c := range s.Columns {
+			if c.File != file {
+				continue
+			}
+			if c.Role == string(dataset.RoleKept) && c.Level == "" {
+				kept = append(kept, c.Heading)
+				continue
+			}
+			role, u := c.Role, c.Unit
+			if c.Level != "" {
+				role += " (" + c.Level + ")"
+			}
+			if c.Conversion != "" {
+				role += ", " + c.Conversion
+			}
+			if c.Factor.Known() && c.Factor != 1 && c.Factor != 0 {
+				u = strings.TrimSpace(factor(float64(c.Factor)) + " " + u)
+			}
+			rows = append(rows, []string{or(c.Heading, unknown), role, or(u, unknown), or(c.Confidence, unknown), cells(c.Examples)})
+		}
+		if len(f.Files) > 1 {
+			lines = append(lines, p.bold(file))
+		}
+		t := wrappedTable(rows, p.body())
+		t[0] = p.dim(t[0])
+		lines = append(lines, t...)
+		if len(kept) > 0 {
+			text := strings.Join(kept[:min(mostKept, len(kept))], ", ")
+			if len(kept) > mostKept {
+				text += fmt.Sprintf(" and %d more", len(kept)-mostKept)
+			}
+			lines = append(lines, hang("kept, not used:", 16, text, p.body())...)
+		}
+	}
+	return lines
+}
+
+// cells shows the first cells of a column, each cut to a few characters.
+func cells(examples []string) string {
+	const most = 14
+	var out []string
+	for _, e := range examples {
+		if r := []rune(e); len(r) > most {
+			e = string(r[:most-1]) + "…"
+		}
+		out = append(out, strings.ReplaceAll(or(e, unknown), " ", string(nbsp)))
+	}
+	return strings.Join(out, " | ")
+}
+
+// wrappedTable is a table whose cells are wrapped so that it fits a width: the
+// widest columns give way first.
+func wrappedTable(rows [][]string, width int) []string {
+	const least = 8
+	widths := make([]int, len(rows[0]))
+	sum := 2 * (len(widths) - 1)
+	for j := range widths {
+		for _, r := range rows {
+			widths[j] = max(widths[j], utf8.RuneCountInString(r[j]))
+		}
+		sum += widths[j]
+	}
+	for ; sum > width; sum-- {
+		widest := 0
+		for j, w := range widths {
+			if w > widths[widest] {
+				widest = j
+			}
+		}
+		if widths[widest] <= least {
+			break
+		}
+		widths[widest]--
+	}
+	var out [][]string
+	for _, r := range rows {
+		var lines [][]string
+		for j, cell := range r {
+			for i, l := range breakWords(cell, widths[j]) {
+				if i == len(lines) {
+					lines = append(lines, make([]string, len(r)))
+				}
+				lines[i][j] = l
+			}
+		}
+		out = append(out, lines...)
+	}
+	return table(out)
+}
+
+// breakWords wraps text, and breaks a word that is longer than a line.
+func breakWords(text string, width int) []string {
+	var out []string
+	for _, l := range Wrap(text, width) {
+		r := []rune(l)
+		for ; len(r) > width; r = r[width:] {
+			out = append(out, string(r[:width]))
+		}
+		out = append(out, string(r))
+	}
+	return out
+}
+
 // note prints a finding: its code, what was found and on which lines, its cure.
 func (p *page) note(styled, label, message, cure string, rows []int) []string {
 	text := label + ":\u00a0" + message
-	if len(rows) > 0 && !strings.Contains(message, "line") {
+	if len(rows) > 0 && !strings.Contains(message, "line") && !namesPlace.MatchString(message) {
 		text += " (" + lineList(rows) + ")"
 	}
 	if cure != "" {
@@ -231,6 +362,9 @@ func (p *page) note(styled, label, message, cure string, rows []int) []string {
 	}
 	return lines
 }
+
+// namesPlace finds file:line in a message.
+var namesPlace = regexp.MustCompile(`\S:\d+\b`)
 
 // lineList names the first few lines of a file.
 func lineList(rows []int) string {
@@ -275,8 +409,8 @@ func or(s, instead string) string {
 	return s
 }
 
-// shellWord quotes a word for a shell where it needs quoting.
-func shellWord(s string) string {
+// ShellWord quotes a word for a shell where it needs quoting.
+func ShellWord(s string) string {
 	safe := func(r rune) bool {
 		return r >= 'a' && r <= 'z' || r >= 'A' && r <= 'Z' || r >= '0' && r <= '9' || strings.ContainsRune("_-./,:=+@%", r) || r > 127
 	}

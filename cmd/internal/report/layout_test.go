@@ -22,9 +22,9 @@ func TestNumbers(t *testing.T) {
 		percent(diagnostics.Real(nan())):     "–",
 		probability(0.999):                   "1",
 		probability(0.031):                   "0.031",
-		shellWord("a b.csv"):                 "'a b.csv'",
-		shellWord("it's"):                    `'it'\''s'`,
-		shellWord("testdata/demo/a-b_c.csv"): "testdata/demo/a-b_c.csv",
+		ShellWord("a b.csv"):                 "'a b.csv'",
+		ShellWord("it's"):                    `'it'\''s'`,
+		ShellWord("testdata/demo/a-b_c.csv"): "testdata/demo/a-b_c.csv",
 	} {
 		if got != want {
 			t.Errorf("got %q, want %q", got, want)
