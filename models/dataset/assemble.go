@@ -87,7 +87,7 @@ func (m *maker) cells(r Row, n int) ([]string, bool) {
 		return cells, true
 	}
 	if !isLabel(cells[0]) {
-		m.refuse(codeRagged, r.Line, "", "the row has %d cells, the headings %d", len(cells), n)
+		m.refuse(codeRagged, r.Line, "", "the row has %s, the headings %d", countOf(len(cells), "cell"), n)
 	}
 	return nil, false
 }

@@ -270,6 +270,15 @@ func (rr *rowReader) refuseText(c *column, s string) {
 	rr.m.problems[len(rr.m.problems)-1].Cure = fmt.Sprintf("write it as %s", short(strings.ReplaceAll(s, string(other), mark)))
 }
 
+// disagree refuses a row in which a column gives something else than the first one of
+// the same quantity.
+func (rr *rowReader) disagree(role string, c, first *column, format string, args ...any) {
+	if !rr.quiet {
+		rr.m.refuseCure(codeDisagree, rr.row.Line, c.Text, fmt.Sprintf(format, args...),
+			fmt.Sprintf("correct the row, or choose a column: --column '%s=%s' or --column '%[1]s=%[3]s'", role, first.Text, c.Text))
+	}
+}
+
 // number reads the cell of a column. ok is false where it holds no number; a
 // fault has then been noted, unless missing.
 func (rr *rowReader) number(c *column) (x Cell, ok, missing bool) {
@@ -373,7 +382,7 @@ func (rr *rowReader) temperature(pt *Point) {
 			continue
 		}
 		if !math.IsNaN(pt.T) && !(math.Abs(t-pt.T) <= half+h+1e-9*pt.T) {
-			rr.refuse(codeDisagree, c, "%q is %s K, and column %q gives %s K", short(rr.cells[c.index]), strconv.FormatFloat(t, 'f', 3, 64), p.temperature[0].Text, strconv.FormatFloat(pt.T, 'f', 3, 64))
+			rr.disagree("T", c, p.temperature[0], "%q is %s K, and column %q gives %s K", short(rr.cells[c.index]), strconv.FormatFloat(t, 'f', 3, 64), p.temperature[0].Text, strconv.FormatFloat(pt.T, 'f', 3, 64))
 		}
 	}
 }
@@ -469,7 +478,7 @@ func (rr *rowReader) rate(pt *Point, run *rateRun) {
 		}
 		if j > 0 {
 			if d := math.Abs(math.Log(k / pt.K)); !(d <= half+h+1e-9) {
-				rr.refuse(codeDisagree, c, "%q gives k = %.6g, and column %q gives %.6g", short(rr.cells[c.index]), k, run.cols[0].Text, pt.K)
+				rr.disagree("k", c, run.cols[0], "%q gives k = %.6g, and column %q gives %.6g", short(rr.cells[c.index]), k, run.cols[0].Text, pt.K)
 			}
 			continue
 		}
