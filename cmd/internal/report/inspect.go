@@ -174,7 +174,12 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 	}
 	facts := count(s.Points, "row") + fmt.Sprintf(", %d used", s.Used)
 	if s.Used > 0 {
-		facts += fmt.Sprintf(", at %s from %s to %s\u00a0K", count(s.Temperatures, "temperature"), kelvin(s.TMin), kelvin(s.TMax))
+		facts += ", at " + count(s.Temperatures, "temperature")
+		if s.Temperatures > 1 {
+			facts += fmt.Sprintf(" from %s to %s\u00a0K", kelvin(s.TMin), kelvin(s.TMax))
+		} else {
+			facts += fmt.Sprintf(", %s\u00a0K", kelvin(s.TMin))
+		}
 	}
 	lines = append(lines, Wrap(facts, p.body())...)
 	rate := s.Quantity.Symbol + " in " + s.Quantity.Unit
@@ -235,10 +240,14 @@ func labelled(rows [][2]string, width int) []string {
 // columns lists what each column was taken for; those that are only kept share a
 // line, since a logger's file may have a hundred of them.
 func (p *page) columns(f InspectedFile, s InspectedSet) []string {
-	const mostKept = 8
+	const (
+		mostKept   = 8
+		shortLevel = 12 // goes beside the role
+	)
 	var lines []string
 	for _, file := range f.Files {
 		rows := [][]string{{"heading", "taken for", "unit", "how sure", "first cells"}}
+		details := []string{""}
 		var kept []string
 		for _, c := range s.Columns {
 			if c.File != file {
@@ -248,13 +257,16 @@ func (p *page) columns(f InspectedFile, s InspectedSet) []string {
 				kept = append(kept, c.Heading)
 				continue
 			}
-			role, u := c.Role, c.Unit
-			if c.Level != "" {
-				role += " (" + c.Level + ")"
+			role, u, detail := c.Role, c.Unit, c.Level
+			switch {
+			case c.Conversion != "" && c.Level != "":
+				detail += ": " + c.Conversion
+			case c.Conversion != "":
+				detail = c.Conversion
+			case len(c.Level) <= shortLevel && c.Level != "":
+				role, detail = role+" ("+c.Level+")", ""
 			}
-			if c.Conversion != "" {
-				role += ", " + c.Conversion
-			}
+			details = append(details, detail)
 			if c.Factor.Known() && c.Factor != 1 && c.Factor != 0 {
 				u = strings.TrimSpace(factor(float64(c.Factor)) + " " + u)
 			}
@@ -263,9 +275,15 @@ func (p *page) columns(f InspectedFile, s InspectedSet) []string {
 		if len(f.Files) > 1 {
 			lines = append(lines, p.bold(file))
 		}
-		t := wrappedTable(rows, p.body())
-		t[0] = p.dim(t[0])
-		lines = append(lines, t...)
+		for i, l := range wrappedTable(rows, p.body()) {
+			if i == 0 {
+				l[0] = p.dim(l[0])
+			}
+			lines = append(lines, l...)
+			if details[i] != "" {
+				lines = append(lines, hang("", 2, details[i], p.body())...)
+			}
+		}
 		if len(kept) > 0 {
 			text := strings.Join(kept[:min(mostKept, len(kept))], ", ")
 			if len(kept) > mostKept {
@@ -287,47 +305,71 @@ func cells(examples []string) string {
 		}
 		out = append(out, strings.ReplaceAll(or(e, unknown), " ", string(nbsp)))
 	}
-	return strings.Join(out, " | ")
+	return or(strings.Join(out, string(nbsp)+"| "), unknown)
 }
 
-// wrappedTable is a table whose cells are wrapped so that it fits a width: the
-// widest columns give way first.
-func wrappedTable(rows [][]string, width int) []string {
-	const least = 8
-	widths := make([]int, len(rows[0]))
-	sum := 2 * (len(widths) - 1)
+// wrappedTable is a table whose cells are wrapped so that it fits a width, as the
+// lines of each row. The last column gives way first, then the widest, and words are
+// broken last.
+func wrappedTable(rows [][]string, width int) [][]string {
+	const least, leastLast, longWord = 8, 16, 24
+	n := len(rows[0])
+	widths, floors := make([]int, n), make([]int, n)
+	sum := 2 * (n - 1)
 	for j := range widths {
 		for _, r := range rows {
 			widths[j] = max(widths[j], utf8.RuneCountInString(r[j]))
+			for _, w := range strings.Fields(r[j]) {
+				floors[j] = max(floors[j], min(utf8.RuneCountInString(w), longWord))
+			}
 		}
 		sum += widths[j]
 	}
+	last := n - 1
 	for ; sum > width; sum-- {
-		widest := 0
-		for j, w := range widths {
-			if w > widths[widest] {
-				widest = j
-			}
+		at := last
+		if widths[last] <= leastLast {
+			at = widest(widths, floors)
 		}
-		if widths[widest] <= least {
+		if at < 0 {
+			at = widest(widths, make([]int, n))
+		}
+		if widths[at] <= least {
 			break
 		}
-		widths[widest]--
+		widths[at]--
 	}
-	var out [][]string
-	for _, r := range rows {
+	var all [][]string
+	counts := make([]int, len(rows))
+	for i, r := range rows {
 		var lines [][]string
 		for j, cell := range r {
-			for i, l := range breakWords(cell, widths[j]) {
-				if i == len(lines) {
-					lines = append(lines, make([]string, len(r)))
+			for k, l := range breakWords(cell, widths[j]) {
+				if k == len(lines) {
+					lines = append(lines, make([]string, n))
 				}
-				lines[i][j] = l
+				lines[k][j] = l
 			}
 		}
-		out = append(out, lines...)
+		all, counts[i] = append(all, lines...), len(lines)
 	}
-	return table(out)
+	text := table(all)
+	out := make([][]string, len(rows))
+	for i, k := range counts {
+		out[i], text = text[:k], text[k:]
+	}
+	return out
+}
+
+// widest is the index of the greatest width above its floor, -1 if none is.
+func widest(widths, floors []int) int {
+	at := -1
+	for j, w := range widths {
+		if w > floors[j] && (at < 0 || w > widths[at]) {
+			at = j
+		}
+	}
+	return at
 }
 
 // breakWords wraps text, and breaks a word that is longer than a line.
