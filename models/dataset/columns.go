@@ -117,7 +117,12 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 	// A second heading row: units or words, and no number.
 	if first < len(t.Rows) {
 		second := t.Rows[first]
-		if units, words := headingRow(second.Cells); units || words && first+1 < len(t.Rows) && !hasRole(headings, m.opt.Assume) {
+		joined := notice(noteJoined, fmt.Sprintf("line %d was joined to the headings", second.Line), second.Line)
+		if onlyRepeats(second.Cells) {
+			joinRepeats(headings, second.Cells)
+			notices = append(notices, joined)
+			first++
+		} else if units, words := headingRow(second.Cells); units || words && first+1 < len(t.Rows) && !hasRole(headings, m.opt.Assume) {
 			for j, c := range second.Cells {
 				c = strings.TrimSpace(c)
 				if j >= len(headings) || c == "" {
@@ -128,7 +133,7 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 				}
 				headings[j] = strings.TrimSpace(headings[j] + " " + c)
 			}
-			notices = append(notices, notice(noteJoined, fmt.Sprintf("line %d was joined to the headings", second.Line), second.Line))
+			notices = append(notices, joined)
 			first++
 		}
 	}
@@ -145,6 +150,30 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 		headings = headings[:n-1]
 	}
 	return headings, head.Line, first, notices, true
+}
+
+// joinRepeats joins a row of marks (run 1, run 2) to the headings. A heading that
+// stands over the first of its repeats only belongs to those to the right, too.
+func joinRepeats(headings, marks []string) {
+	over := ""
+	for j := range min(len(headings), len(marks)) {
+		if h := strings.TrimSpace(headings[j]); h != "" {
+			over = h
+		}
+		if c := strings.TrimSpace(marks[j]); c != "" {
+			headings[j] = strings.TrimSpace(over + " " + c)
+		}
+	}
+}
+
+// onlyRepeats reports whether a row holds marks of repeats and nothing else.
+func onlyRepeats(cells []string) bool {
+	for _, c := range cells {
+		if c = normalize(strings.TrimSpace(c)); c != "" && !reOnlyRepeat.MatchString(c) {
+			return false
+		}
+	}
+	return filled(cells) > 1
 }
 
 // headingRow reports whether a row below the headings holds units and words but no

@@ -7,7 +7,7 @@ import (
 
 var (
 	reKcatKm = regexp.MustCompile(`^k_?\{?cat\}? ?/ ?K_?\{?[Mm]\}?`)
-	reK      = regexp.MustCompile(`^k(?:_\{[^{}]{1,20}\}|obs|cat|app|inf|∞|uni|bi|tot|exp|deg|dec|iso|ET|et|II|III|IV|I|H|D|f|r|b|d|q|on|off|0)?[0-9]{0,2}'{0,2}`)
+	reK      = regexp.MustCompile(`^k(?:_\{[^{}]{1,20}\}|obs|cat|app|inf|∞|uni|bi|tot|exp|deg|dec|iso|ET|et|II|III|IV|I|H|D|f|r|b|d|q|on|off|0)?[0-9]{0,2}'{0,2}(?:\([0-9]{1,2}\))?`)
 	reD      = regexp.MustCompile(`^D(?:_\{[^{}]{1,20}\}|[0-9]?)\*?`)
 	reWordK  = regexp.MustCompile(`(?i)^(?:(?:first|second|third|zero|1st|2nd|pseudo)[- ](?:first[- ])?order )?(?:rate constant|rate coefficient|rate const\.?|turnover number|rate_constant|rate_coefficient|rateconstant)`)
 	reWordD  = regexp.MustCompile(`(?i)^(?:self-)?(?:diffusion coefficient|diffusion constant|diffusivity|diffusion_coefficient)`)

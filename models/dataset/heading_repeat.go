@@ -18,6 +18,7 @@ var (
 	reRepeatTight   = regexp.MustCompile(`(?i)()#([0-9]{1,4}|[a-j])(?:$|[ ,;:_)\]/(\[-])`) // k#1
 	reRepeatBracket = regexp.MustCompile(`(?i)[(\[] ?` + repeatMark + ` ?[)\]]`)
 	reOnlyRepeat    = regexp.MustCompile(`(?i)^[(\[]? ?` + repeatMark + ` ?[)\]]?$`)
+	reIndexed       = regexp.MustCompile(`^(.*[^ ]) ?[\[(]([1-9])[\])]$`) // k/s^-1 [1]
 	reAverage       = regexp.MustCompile(`(?i)(?:^|[ ,;:_])` + averageMark + `(?:$|[ ,;:_/(\[])`)
 	reAverageBrack  = regexp.MustCompile(`(?i)[(\[] ?` + averageMark + ` ?[)\]]`)
 )
@@ -74,6 +75,13 @@ func (p headingParser) marked(s string) (h Heading, ok bool) {
 	average := false
 	if run == "" && (strings.Contains(low, "mean") || strings.Contains(low, "average") || strings.Contains(low, "avg")) {
 		rest, _, average = cutMark(s, reAverageBrack, reAverage)
+	}
+	if m := reIndexed.FindStringSubmatch(s); run == "" && m != nil && strings.ContainsAny(m[1], "/)]") {
+		// An index: which of several rate constants, or which repeat, or a reference.
+		if h, ok = p.rate(m[1]); ok {
+			h.Symbol += "(" + m[2] + ")"
+			return h, true
+		}
 	}
 	if run == "" && !average {
 		return h, false

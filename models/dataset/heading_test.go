@@ -85,6 +85,13 @@ func TestHeadings(t *testing.T) {
 		{"Temp", "temperature ?T"},
 		{"temperature", "temperature ?T"},
 		{"T (k)", "temperature ?T"},
+		{"1000 / (T/K)", "temperature reciprocal [K^-1] e-3"},
+		{"10^3/(T/K)", "temperature reciprocal [K^-1] e-3"},
+		{"1/(T/K)", "temperature reciprocal [K^-1]"},
+		{"1/T*1000", "temperature reciprocal [K^-1] e-3"},
+		{"1/T × 10³ (K⁻¹)", "temperature reciprocal [K^-1] e-3"},
+		{"1/T × 10^-3", "kept"}, // a product, or a unit
+		{"1/T*1000 (10^-3 K^-1)", "kept"},
 		{"t/s", "kept"},
 		{"t/min", "kept"},
 		{"t", "kept"},
@@ -148,6 +155,46 @@ func TestHeadings(t *testing.T) {
 		{"D (cm2/s)", "rate D [cm^2 s^-1]"},
 		{"lg D", "rate D lg"},
 		{"diffusion coefficient (m²/s)", "rate D [m^2 s^-1]"},
+		{"k(T)/s^-1", "rate k [s^-1]"},
+		{"ln k(T)", "rate k ln"},
+		{"Rate k/s^-1", "rate k [s^-1]"},
+		{"Rate constant, k_obs (s^-1)", "rate k_obs [s^-1]"},
+		{"v k/s^-1", "kept"},
+		{"-ln k", "kept"},
+		// Boltzmann's constant has its unit or its capital
+		{"k_b/s^-1", "rate k_b [s^-1]"}, {"k_b", "rate k_b"}, {"k_B/s^-1", "rate k_B [s^-1]"}, {"k_B", "kept"}, {"k_b (J/K)", "kept"}, {"k_{B}/(J K^-1)", "kept"},
+		// repeats say so; a bare index does not
+		{"k/s^-1 (run 1)", "rate k [s^-1] (run 1)"},
+		{"k (run 2)/s^-1", "rate k [s^-1] (run 2)"},
+		{"k (Run 2, s^-1)", "rate k [s^-1] (run 2)"},
+		{"k, run 2 (s-1)", "rate k [s^-1] (run 2)"},
+		{"run 3 k/s^-1", "rate k [s^-1] (run 3)"},
+		{"run 3: k/s^-1", "rate k [s^-1] (run 3)"},
+		{"Run A k (s-1)", "rate k [s^-1] (run a)"},
+		{"k rep 1", "rate k (rep 1)"},
+		{"k (replicate 2)", "rate k (rep 2)"},
+		{"k (Repeat no. 2) / s⁻¹", "rate k [s^-1] (rep 2)"},
+		{"ln(k/s^-1) trial 2", "rate k ln [s^-1] (trial 2)"},
+		{"k #1", "rate k (rep 1)"},
+		{"k#1/s^-1", "rate k [s^-1] (rep 1)"},
+		{"k_run1", "rate k (run 1)"},
+		{"k_rep2_s-1", "rate k [s^-1] (rep 2)"},
+		{"kcat/Km (run 1)/(M^-1 s^-1)", "rate kcat/Km [M^-1 s^-1] (run 1)"},
+		{"t_1/2/min (run 2)", "rate t_1/2 half-life [min] (run 2)"},
+		{"run 1, rep 2 k/s^-1", "rate k [s^-1] (run 1 rep 2)"},
+		{"10^3 k (run 1)/s^-1", "rate k [s^-1] e-3 (run 1)"},
+		{"u(k)/s^-1 (run 1)", "uncertainty of k [s^-1] standard (run 1)"},
+		{"u(k (run 1))/s^-1", "uncertainty of k [s^-1] standard (run 1)"},
+		{"SE (run 2)", "uncertainty standard, of mean (run 2)"},
+		{"k_1/s^-1", "rate k_1 [s^-1]"}, {"k(1)/s^-1", "rate k(1) [s^-1]"}, {"k/s^-1 [1]", "rate k(1) [s^-1]"}, {"k (s^-1) (2)", "rate k(2) [s^-1]"},
+		{"run", "kept"}, {"run 1", "kept"}, {"run k/s^-1", "kept"}, {"run order", "order"}, {"trial", "kept"}, {"k series 1", "kept"}, {"k_rep/s^-1", "rate k_rep [s^-1]"}, {"T (run 1)", "temperature ?T"},
+		// means of repeats
+		{"mean k/s^-1", "rate k [s^-1] average"},
+		{"k mean", "rate k average"},
+		{"average k (s-1)", "rate k [s^-1] average"},
+		{"k (avg)/s^-1", "rate k [s^-1] average"},
+		{"k_mean/s^-1", "rate k [s^-1] average"},
+		{"mean temperature (K)", "temperature [K]"}, {"mean", "kept"}, {"mean pH", "kept"},
 		{"ln(k/s^-1)", "rate k ln [s^-1]"},
 		{"ln k", "rate k ln"},
 		{"ln(k)", "rate k ln"},
@@ -220,6 +267,16 @@ func TestHeadings(t *testing.T) {
 		{"95 % CI", "uncertainty expanded 95"},
 		{"95% CI (s-1)", "uncertainty [s^-1] expanded 95"},
 		{"CI (95 %)", "uncertainty expanded 95"},
+		{"99 % CI", "uncertainty expanded 99"},
+		{"90 % interval (s-1)", "uncertainty [s^-1] expanded 90"},
+		{"CI (68.3 %)", "uncertainty expanded 68.3"},
+		{"U_99(k)", "uncertainty of k expanded 99"},
+		{"CI", "uncertainty expanded ?error"}, // of which level
+		{"interval/s", "kept"}, {"confidence", "kept"}, {"97 % CI", "kept"}, {"99 % CI upper", "kept"},
+		{"10^3 u(k)/s^-1", "uncertainty of k [s^-1] e-3 standard"},
+		{"10³ SE", "uncertainty e-3 standard, of mean"},
+		{"100 u_r(k)", "uncertainty of k e-2 standard rel"},
+		{"10 % error", "kept"},
 		{"f(k)", "uncertainty of k uncertainty factor"},
 		{"f(k) (k=2)", "uncertainty of k uncertainty factor k2"},
 		{"s(k)", "uncertainty of k s.d. of repeats"},
@@ -285,7 +342,7 @@ func TestAssumptionsSettleHeadings(t *testing.T) {
 }
 
 func FuzzHeading(f *testing.F) {
-	for _, s := range []string{"T/K", "10³ K/T", "1/kT (eV^-1)", "u(ln(k/s^-1))", "k × 10^12", "95 % CI", "t_1/2/min", "k_dec_L_mol_s", "((((", "10^", "k_{", "2σ(", "ln(", "\u202ek/s", "\ufeffT/K", "T\x00/K", "\"T/K\"", "\u0643/s^-1", "k/s\u207b\u00b9", "10^99999 k/s", "10^-999999999999 k/s", "1e999 K/T", "k/(10,5 s)", "\xb0C", "T /\u00b0\u00b0C", "U_95(lg(k))/%(k=2)", "u(u(u(k)))", "k/s/s/s/s", "\ufdfa/s", "((((((((((k))))))))))", "k\u0338/s", "\u212a", "10 10 10 k"} {
+	for _, s := range []string{"T/K", "10³ K/T", "1/kT (eV^-1)", "u(ln(k/s^-1))", "k × 10^12", "95 % CI", "t_1/2/min", "k_dec_L_mol_s", "((((", "10^", "k_{", "2σ(", "ln(", "\u202ek/s", "\ufeffT/K", "T\x00/K", "\"T/K\"", "\u0643/s^-1", "k/s\u207b\u00b9", "10^99999 k/s", "10^-999999999999 k/s", "1e999 K/T", "k/(10,5 s)", "\xb0C", "T /\u00b0\u00b0C", "U_95(lg(k))/%(k=2)", "u(u(u(k)))", "k/s/s/s/s", "\ufdfa/s", "((((((((((k))))))))))", "k\u0338/s", "\u212a", "10 10 10 k", "k (run 1)/s^-1", "run 1, rep 2 k/s", "k#1", "(run 1", "k/s^-1 [1]", "k_run1_s-1", "mean k/s", "k (mean)", "99.7 % CI", "1/T*1000", "1000 / (T/K)", "10^3 U_99(k(T))/%", "k_b", "-ln k"} {
 		f.Add(s)
 	}
 	f.Fuzz(func(t *testing.T, s string) {
@@ -297,10 +354,50 @@ func FuzzHeading(f *testing.F) {
 			t.Errorf("%q: a temperature without unit is certain", s)
 		}
 		ParseHeading(s, map[string]string{"T": "degC", "log": "lg", "k": "rate", "error": "2", "factor": "unit"})
-		for _, role := range []string{"T", "k", "u(k)"} {
+		for _, role := range []string{"T", "k", "u(k)", "u_r(k)", "1000/T", "log k"} {
 			if _, err := parseAs(role, s, nil); err != nil {
 				t.Errorf("%q as %s: %v", s, role, err)
 			}
 		}
 	})
+}
+
+// A role given by --column brings no unit and no meaning that is not written.
+func TestHeadingsGivenARole(t *testing.T) {
+	degC := map[string]string{"T": "degC"}
+	for _, c := range []struct {
+		role, text string
+		assume     map[string]string
+		want       string
+	}{
+		{"T", "foo", nil, "temperature ?T"},
+		{"T", "foo", degC, "temperature [°C]"},
+		{"T", "foo/degC", nil, "temperature [°C]"},
+		{"T", "foo (K)", degC, "temperature [K]"},
+		{"T/K", "foo", nil, "temperature [K]"},
+		{"T", "foo", map[string]string{"T": "1000/T"}, "temperature reciprocal [K^-1] e-3"},
+		{"1000/T", "foo", nil, "temperature reciprocal [K^-1] e-3"},
+		{"1/T", "foo/(10^-3 K^-1)", nil, "temperature reciprocal [K^-1] e-3"},
+		{"1/kT", "foo", nil, "temperature 1/(k_B T) ?T"},
+		{"1/kT", "foo/eV^-1", nil, "temperature 1/(k_B T) [eV^-1]"},
+		{"k", "foo/s^-1", nil, "rate foo [s^-1]"},
+		{"k", "foo (10^-3 s^-1)", nil, "rate foo [s^-1] e-3"},
+		{"rate", "foo/s^-1", nil, "rate foo [s^-1]"},
+		{"log k", "foo", nil, "rate foo ?log"},
+		{"log k", "foo", map[string]string{"log": "lg"}, "rate foo lg"},
+		{"u_r(k)", "error (%)", nil, "uncertainty of k {%} e-2 standard rel"},
+		{"u_r(k)/%", "error (%)", nil, "uncertainty of k {%} e-2 standard rel"},
+		{"u(k)", "q/s^-1", nil, "uncertainty of k [s^-1] standard"},
+		{"U(k) (k=2)", "error (%)", nil, "uncertainty of k {%} e-2 expanded k2 rel"},
+		{"U(k)", "q", nil, "uncertainty of k expanded ?error"},
+		{"error", "q", nil, "uncertainty ambiguous ?error"},
+	} {
+		h, err := parseAs(c.role, c.text, c.assume)
+		if err != nil || h.brief() != c.want {
+			t.Errorf("--column %s=%s (%v): got %q, %v; want %q", c.role, c.text, c.assume, h.brief(), err, c.want)
+		}
+		if (len(h.Assumed) > 0) != (c.assume != nil && c.text == "foo") {
+			t.Errorf("--column %s=%s (%v): assumed %v", c.role, c.text, c.assume, h.Assumed)
+		}
+	}
 }

@@ -210,7 +210,9 @@ func TestEncodings(t *testing.T) {
 
 func TestUncertainties(t *testing.T) {
 	// Expected u(k) from the GUM: u = U/k, s/sqrt(n), k·u(ln k), k·ln f. The t
-	// quantile for 95 % and 2 degrees of freedom is 4.3026527297494619 (R: qt(0.975, 2)).
+	// quantile at p for 2 degrees of freedom is (2p - 1)/sqrt(2p(1 - p)), for 1
+	// tan(π(p - 1/2)) (closed forms); normal ones to three decimals are common practice.
+	t2 := func(p float64) float64 { return (2*p - 1) / math.Sqrt(2*p*(1-p)) }
 	for _, c := range []struct {
 		heading, cell string
 		opt           Options
@@ -232,7 +234,15 @@ func TestUncertainties(t *testing.T) {
 		{"U(k) (k=2)", "0.1", Options{}, 0.05, LevelStandard},
 		{"U_95(k)", "0.1", Options{}, 0.1 / 1.96, LevelStandard},
 		{"95 % CI", "0.1", Options{}, 0.1 / 1.96, LevelStandard},
-		{"95 % CI,n", "0.1,3", Options{}, 0.1 / 4.3026527297494619, LevelRepeats},
+		{"95 % CI,n", "0.1,3", Options{}, 0.1 / t2(0.975), LevelRepeats},
+		{"95 % CI,n", "0.1,2", Options{}, 0.1 / math.Tan(math.Pi*0.475), LevelRepeats},
+		{"99 % CI", "0.1", Options{}, 0.1 / 2.576, LevelStandard},
+		{"90 % interval", "0.1", Options{}, 0.1 / 1.645, LevelStandard},
+		{"99 % CI,n", "0.1,3", Options{}, 0.1 / t2(0.995), LevelRepeats},
+		{"99 % CI", "0.1", Options{Assume: map[string]string{"n": "3"}}, 0.1 / t2(0.995), LevelRepeats},
+		{"CI", "0.1", Options{}, 0, LevelNone},
+		{"10^3 u(k)/s^-1", "100", Options{}, 0.1, LevelStandard},
+		{"10^3 u(k)", "100", Options{}, 0.1, LevelStandard},
 		{"U(k),coverage_factor", "0.1,2", Options{}, 0.05, LevelStandard},
 		{"f(k)", "1.1", Options{}, 2 * math.Log(1.1), LevelStandard},
 		{"f(k) (k=2)", "1.1", Options{}, math.Log(1.1), LevelStandard},
@@ -250,6 +260,9 @@ func TestUncertainties(t *testing.T) {
 		{"U(k)", "0.1", Options{}, 0, LevelNone},
 		{"u(k)", "", Options{}, 0, LevelNone},
 		{"q", "0.1", Options{Columns: map[string][]string{"u(k)": {"q"}}}, 0.1, LevelStandard},
+		{"error (%)", "5", Options{Columns: map[string][]string{"u_r(k)": {"error (%)"}}}, 0.1, LevelStandard},
+		{"error (%)", "5", Options{Columns: map[string][]string{"U(k) (k=2)": {"error (%)"}}}, 0.05, LevelStandard},
+		{"q", "0.1", Options{Columns: map[string][]string{"U(k)": {"q"}}}, 0, LevelNone},
 		{"u(k_cat)", "0.1", Options{}, 0, LevelNone}, // of another quantity
 	} {
 		s := read(t, "T/K,k/s^-1,"+c.heading+"\n300,2,"+c.cell+"\n310,2,"+c.cell+"\n", c.opt)
@@ -270,6 +283,54 @@ func TestUncertainties(t *testing.T) {
 	if s.Points[0].UK != 0.05 || !slices.Contains(s.Assumed, "error=2") {
 		t.Errorf("± with error=2: %v, %v", s.Points[0].UK, s.Assumed)
 	}
+	// The cures of what is ambiguous in a cell work, and what they assume is recorded.
+	for _, c := range []struct {
+		cell    string
+		assume  map[string]string
+		u       float64
+		assumed []string
+	}{
+		{"2.0 (1)", map[string]string{"error": "1"}, 0.1, []string{"error=1"}},
+		{"2.0 (1)", map[string]string{"error": "2"}, 0.05, []string{"error=2"}},
+		{"2.0 (1)×10^-3", map[string]string{"error": "1"}, 0.0001, []string{"error=1"}},
+		{"2.0 ± 0.1", map[string]string{"error": "sd", "n": "4"}, 0.05, []string{"error=sd", "n=4"}},
+		{"2.0 ± 0.1", map[string]string{"error": "sd,n=4"}, 0.05, []string{"error=sd,n=4"}},
+	} {
+		s := read(t, "T/K,k/s^-1\n300,"+c.cell+"\n310,2\n", Options{Assume: c.assume})
+		if !reference.Agrees(s.Points[0].UK, c.u, 1e-14) || !slices.Equal(s.Assumed, c.assumed) {
+			t.Errorf("%s, %v: u %v, assumed %v", c.cell, c.assume, s.Points[0].UK, s.Assumed)
+		}
+		if slices.Contains(codes(s), noteUnneeded) {
+			t.Errorf("%s, %v: not needed: %v", c.cell, c.assume, s.Notices)
+		}
+	}
+	// Beside a temperature; u(T) = T u(x)/x of a reciprocal.
+	for _, c := range []struct {
+		heading, cell string
+		assume        map[string]string
+		u             float64
+		said          string
+	}{
+		{"T/K", "300.0(1)", nil, 0.1, noteBrackets},
+		{"t/°C", "25.0(1)", nil, 0.1, noteBrackets},
+		{"1000/T", "4.00(2)", nil, 1.25, noteBrackets},
+		{"T/K", "300.0 ± 0.1", nil, 0, noteLevel},
+		{"T/K", "300.0 (1)", nil, 0, noteLevel},
+		{"T/K", "300.0 ± 1 %", map[string]string{"error": "1"}, 0, noteLevel},
+		{"T/K", "300.0 ± 0.1", map[string]string{"error": "2"}, 0.05, noteAssumption},
+	} {
+		s := read(t, c.heading+",k/s^-1\n"+c.cell+",1\n3,2\n", Options{Assume: c.assume})
+		if !reference.Agrees(s.Points[0].UT, c.u, 1e-13) {
+			t.Errorf("%s %s: u(T) %v, want %v", c.heading, c.cell, s.Points[0].UT, c.u)
+		}
+		has(t, s, c.said)
+	}
+	// A column of uncertainties goes before what the cell says, and that is said.
+	s = read(t, "T/K,k/s^-1,u(k)/s^-1\n300,2.0(1),0.3\n310,2.0,0.3\n", Options{})
+	if s.Points[0].UK != 0.3 {
+		t.Errorf("u(k) beside a bracket: %v", s.Points[0].UK)
+	}
+	has(t, s, noteOtherU)
 	// Bare headings belong to the quantity on their left.
 	p := read(t, "T/K,SE,ln k,SD of k,n\n300,0.2,0,0.1,4\n310,0.2,1,0.1,4\n", Options{}).Points[0]
 	if p.UT != 0.2 || !reference.Agrees(p.UK, 0.05, 1e-15) {
@@ -310,6 +371,15 @@ func TestRefusals(t *testing.T) {
 		{"no heading", "300,0.001\n310,0.004\n", Options{}, []string{"no-heading:1"}},
 		{"open quote", "T/K,k/s^-1\n300,\"1\n310,2\n", Options{}, []string{"unclosed-quote:2"}},
 		{"duplicate heading", "T/K,k/s^-1,k / s-1,k/s^-1\n300,1,1,1\n" + "310,1,1,1\n", Options{}, []string{"duplicate-heading:1"}},
+		{"three equal headings", "T/K,k/s^-1,k/s^-1,k/s^-1\n300,1,2,3\n310,1,2,3\n", Options{}, []string{"duplicate-heading:1"}},
+		{"sign", "T/K,-ln k\n300,1\n310,2\n", Options{}, []string{"no-rate:1"}},
+		{"forward and backward", "T/K,k_f/s^-1,k_b/s^-1\n300,1,2\n310,2,3\n", Options{}, []string{"several-rates:1"}},
+		{"a and b", "T/K,k_a/s^-1,k_b/s^-1\n300,1,2\n310,2,3\n", Options{}, []string{"several-rates:1"}},
+		{"T without unit by name", "foo,k/s^-1\n300,1\n310,2\n", Options{Columns: map[string][]string{"T": {"foo"}}}, []string{"ambiguous-temperature:1"}},
+		{"log k by name", "T/K,y\n300,1\n310,2\n", Options{Columns: map[string][]string{"log k": {"y"}}}, []string{"ambiguous-rate:1"}},
+		{"one column twice", "T/K,y\n300,1\n310,2\n", Options{Columns: map[string][]string{"k": {"y", "y"}}}, []string{"role-named-twice:1"}},
+		{"one role twice", "T/K,k,a,b\n300,1,x,y\n310,2,x,y\n", Options{Columns: map[string][]string{"source": {"a", "b"}}}, []string{"role-named-twice:1"}},
+		{"point beside --decimal comma", "T/K;k/s^-1\n300;0.5\n310;0,6\n", Options{Decimal: "comma"}, []string{"not-a-number:2"}},
 		{"ragged", "T/K,k/s^-1\n300,1,2\n310\n320,1\n", Options{}, []string{"ragged-row:2", "ragged-row:3"}},
 		{"ambiguous both", "T,log k\n300,1\n310,2\n", Options{}, []string{"ambiguous-temperature:1", "ambiguous-rate:1"}},
 		{"ambiguous and ragged", "T,k\n300,1,1\n310,2\n", Options{}, []string{"ambiguous-temperature:1", "ragged-row:2"}},
@@ -371,6 +441,23 @@ func TestMessages(t *testing.T) {
 	_, err = Read("rates.csv", strings.NewReader("T/K,k/s^-1\n"+strings.Repeat("x,1\n", 30)), Options{})
 	if got := strings.Split(err.Error(), "\n"); len(got) != 21 || got[20] != "and 10 more" {
 		t.Errorf("thirty problems print as %d lines, the last %q", len(got), got[len(got)-1])
+	}
+	_, err = Read("rates.csv", strings.NewReader("T,k/s^-1\n300,1\n"), Options{})
+	for _, c := range []struct {
+		text string
+		opt  Options
+		want string
+	}{
+		{"T/K;k/s^-1\n300;0.5\n310;0,6\n", Options{Decimal: "comma"}, `rates.csv:2: column "k/s^-1": "0.5" is not a number where the decimal mark is the comma, and '.' groups thousands; write it as 0,5`},
+		{"T/K,t/°C,k/s^-1\n300.00,26.85,1\n310.00,35.00,1\n", Options{}, `rates.csv:3: column "t/°C": "35.00" is 308.150 K, and column "T/K" gives 310.000 K; correct the row, or choose a column: --column 'T=T/K' or --column 'T=t/°C'`},
+		{"T/K,-ln k\n300,1\n310,2\n", Options{}, `rates.csv:1: column "-ln k": the sign of the rate constant, or of its logarithm, is turned round; turn the sign of the cells and write the heading as ln k`},
+		{"T/K,k/s^-1,k/s^-1,k/s^-1\n300,1,2,3\n310,1,2,3\n", Options{}, `rates.csv:1: column "k/s^-1": the heading stands over columns 2, 3 and 4; give each column its own heading, or, if they are repeats of one measurement, say so: --assume k=repeats`},
+		{"T/K,k1/s^-1,k2/s^-1\n300,1,2\n310,1,2\n", Options{}, `rates.csv:1: there are columns of different rate constants: "k1/s^-1", "k2/s^-1"; choose one: --column 'k=k1/s^-1' or --column 'k=k2/s^-1'; or, if they are repeats of one measurement, name each: --column 'k=k1/s^-1' --column 'k=k2/s^-1', or say so: --assume k=repeats`},
+		{"T/K,k/s^-1\n300,1,2\n310\n320,2\n", Options{}, "rates.csv:2: the row has 3 cells, the headings 2; give every row as many cells as there are headings, empty ones included\nrates.csv:3: the row has 1 cell, the headings 2; give every row as many cells as there are headings, empty ones included"},
+	} {
+		if _, err := Read("rates.csv", strings.NewReader(c.text), c.opt); err == nil || err.Error() != c.want {
+			t.Errorf("got  %v\nwant %s", err, c.want)
+		}
 	}
 	_, err = Read("rates.csv", strings.NewReader("T,k/s^-1\n300,1\n"), Options{})
 	for _, flag := range []string{"--assume T=K", "--assume T=degC", "--assume T=degF"} {
@@ -642,6 +729,8 @@ func FuzzRead(f *testing.F) {
 		"\xfe\xff\x00T\x00/\x00K\x00", "\xff\xfe\x00\xd8T\x00", "T/K,k/s^-1\x00\n300,1\n", "\ufeff\ufeffT/K,k/s^-1\r300,1\r\r\n", "T/K;k/s^-1\n300,5;1.5\n", "T/K,k/s^-1\n300,\"1,234.5\"\n310,\"1.234,5\"\n",
 		"T/K,k/s^-1,note\n300,4.9e-324,\"a\"\"\"\"b\"c\"\n310,1e-330,\"\"\"\"\n", "T/K,k/s^-1\n300,\"never closed\n310,2\n", "t/\xb0C,k/s^-1,note\n25,1,\x81\x96\n", "T/K,k/s^-1,dataset\n300,1.5(2),\u0639\n310,1 \u00b1 0.1,b\n",
 		"10^3 K/T,u(T)/K,1/\u03c4\n3.3,0.1,2\n", "t/degF,t_1/2/min,f(k)\n77,5,1.2\n", "T/K,lg(k/s^-1),U(k)/s^-1 (k=2),s(k),n\n300,400,1,2,3\n", "T/K,k/s^-1\n" + strings.Repeat("300,1\n", 300), "T/K" + strings.Repeat(" ", 300) + ",k\n", "a\tb c;d,e\n1\t2 3;4,5\n",
+		"T/K,k (run 1)/s^-1,ln k (run 2),u(k) (run 1)\n300,1,0.5,0.1\n310,,0.6(1),0.1\n", "T/K,k/s^-1,k/s^-1,n\n300,1,2,3\n310,<1,2,3\n", "T/K,k1/s^-1,k2/min^-1,mean k/s^-1,SD\n300,1,2,3,4\n",
+		"T/K,k/s^-1,,\n,run 1,run 2,#3\n300,1,2,3\n310,n.d.,2 (1),3 \u00b1 1\n", "1000 / (T/K),k(1)/s^-1,99 % CI,n\n3.3(1),1,0.1,1\n3.2 \u00b1 0.1,2,0.1,2\n", "T/K,tau (run 1)/s,tau (run 2)/s\n300,1,<2\n",
 	} {
 		f.Add([]byte(s), "K", "comma")
 		f.Add([]byte(s), "degC", "")
@@ -650,6 +739,7 @@ func FuzzRead(f *testing.F) {
 		for _, opt := range []Options{
 			{},
 			{Assume: map[string]string{"T": assume, "log": "lg", "k": "rate", "error": "sd,n=3"}, Decimal: decimal, AllowNonPositiveK: true},
+			{Assume: map[string]string{"T": assume, "k": "repeats", "error": "2"}, Decimal: decimal},
 			{Where: []string{"k>1"}, LeaveOut: []int{2}, TMin: 1, TMax: 1000, DatasetBy: "source"},
 		} {
 			sets, err := Read("-", bytes.NewReader(data), opt)

@@ -244,7 +244,7 @@ func (p *plan) runOfColumn(c *column) *rateRun {
 func (p *plan) commonSymbol() string {
 	first := p.runs[0].cols[0].Symbol
 	stem := func(s string) string {
-		return strings.TrimRight(strings.TrimRight(s, "0123456789"), "_")
+		return strings.TrimRight(s, "0123456789_(){}")
 	}
 	for _, r := range p.runs[1:] {
 		if s := r.cols[0].Symbol; s != first {

@@ -21,6 +21,7 @@ type rowReader struct {
 	// Rows with an uncertainty written beside a number: of k, and of T.
 	brackets, spaced, plusMinus    []int
 	bracketsT, spacedT, plusMinusT []int
+	spare                          []int // not used: a column states it too
 	examples                       [][]string
 }
 
@@ -151,6 +152,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	say(noteLevel, rr.spacedT, ofT+"a bracket after a space is ambiguous and was not used")
 	say(noteLevel, rr.plusMinus, "the level of ± is not stated, and it was not used")
 	say(noteLevel, rr.plusMinusT, ofT+"the level of ± is not stated, or it is relative, and it was not used")
+	say(noteOtherU, rr.spare, "an uncertainty in the cell is not used: a column states it")
 	for i := range p.cols {
 		if c := &p.cols[i]; !c.used {
 			for _, pt := range points[:min(3, len(points))] {
@@ -185,7 +187,7 @@ func (m *maker) convert(p *plan) bool {
 					m.refuseUnits(p, c, "its unit "+err.Error())
 					return false
 				}
-			case len(p.runs) > 1 && normalize(c.UnitText) != normalize(p.runs[0].cols[0].UnitText):
+			case len(p.runs) > 1 && c == r.cols[0] && normalize(c.UnitText) != normalize(p.runs[0].cols[0].UnitText):
 				m.refuseUnits(p, c, fmt.Sprintf("its unit %q cannot be compared with %q", c.UnitText, p.runs[0].cols[0].UnitText))
 				return false
 			}
@@ -263,11 +265,10 @@ func (rr *rowReader) refuseText(c *column, s string) {
 		rr.refuse(codeNotNumber, c, "%q is not a number", short(s))
 		return
 	}
-	if rr.quiet {
-		return
+	if !rr.quiet {
+		rr.m.refuseCure(codeNotNumber, rr.row.Line, c.Text, fmt.Sprintf("%q is not a number where the decimal mark is the %s, and %q groups thousands", short(s), name, other),
+			"write it as "+short(strings.ReplaceAll(s, string(other), mark)))
 	}
-	rr.refuse(codeNotNumber, c, "%q is not a number where the decimal mark is the %s, and %q groups thousands", short(s), name, other)
-	rr.m.problems[len(rr.m.problems)-1].Cure = fmt.Sprintf("write it as %s", short(strings.ReplaceAll(s, string(other), mark)))
 }
 
 // disagree refuses a row in which a column gives something else than the first one of
@@ -376,8 +377,12 @@ func (rr *rowReader) temperature(pt *Point) {
 		}
 		if j == 0 {
 			pt.T, half = t, h
-			if x.Attached != AttachedNone && p.ofT == nil {
+			switch {
+			case x.Attached == AttachedNone:
+			case p.ofT == nil:
 				rr.attachedT(pt, c, x)
+			default:
+				note(&rr.spare, pt.Row)
 			}
 			continue
 		}
@@ -491,8 +496,12 @@ func (rr *rowReader) rate(pt *Point, run *rateRun) {
 			return
 		}
 		pt.K, half, pt.Limit = k, h, x.Limit
-		if x.Attached != AttachedNone && run.uncertainty == nil {
+		switch {
+		case x.Attached == AttachedNone:
+		case run.uncertainty == nil:
 			rr.attached(pt, c, x)
+		default:
+			note(&rr.spare, pt.Row)
 		}
 	}
 	if p.limit != nil {

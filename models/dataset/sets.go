@@ -140,7 +140,8 @@ func (c *column) describe(p *plan) Column {
 	case RoleRate, RoleTemperature, RoleUncertainty, RoleTemperatureUncertainty:
 		d.Factor = scaled(1, c.Shift)
 	}
-	if len(c.Assumed) > 0 {
+	d.Conversion = c.conversion(p)
+	if len(c.Assumed) > 0 || c.Role == RoleRate && len(p.runs) > 1 && c.Run == "" && c.nth == 0 {
 		d.Confidence = "by assumption"
 	}
 	switch c.Role {
@@ -159,9 +160,11 @@ func (c *column) describe(p *plan) Column {
 			d.Level += ", relative"
 		}
 	case RoleRate, RoleTemperature:
+		levels := c.cellLevels(p)
 		if c.Form != FormDirect {
-			d.Level = string(c.Form)
+			levels = append([]string{string(c.Form)}, levels...)
 		}
+		d.Level = strings.Join(levels, "; ")
 	}
 	return d
 }
