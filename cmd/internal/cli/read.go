@@ -91,7 +91,9 @@ func (a *app) readTables(ctx context.Context, name string, o reading) ([]workboo
 		return nil, nil, err
 	}
 	if workbook.Is(content) {
-		tables, err := workbook.ReadAll(name, content, o.sheet, o.Options)
+		tables, err := interruptible(ctx, func() ([]workbook.Result, error) {
+			return workbook.ReadAll(name, content, o.sheet, o.Options)
+		})
 		return tables, content, err
 	}
 	if o.sheet != "" {

@@ -95,7 +95,7 @@ func kindOf(data []byte) kind {
 	}
 	z, err := zip.NewReader(bytes.NewReader(data), int64(len(data)))
 	if err != nil {
-		if bytes.Contains(data, []byte("[Content_Types].xml")) || bytes.Contains(data, []byte("xl/")) {
+		if bytes.Contains(data, []byte("[Content_Types].xml")) || bytes.Contains(data, []byte("xl/worksheets/")) {
 			return isDamaged
 		}
 		return notOurs
@@ -140,7 +140,7 @@ func open(name, sum string, data []byte) (*book, error) {
 		if bytes.Contains(data, []byte("E\x00n\x00c\x00r\x00y\x00p\x00t\x00e\x00d\x00P\x00a\x00c\x00k\x00a\x00g\x00e\x00")) {
 			return refuse(codeEncrypted, "the workbook is protected by a password")
 		}
-		return refuse(codeFormat, "this is a file of the old kind .xls")
+		return refuse(codeFormat, "this is a file of the old office format, such as .xls")
 	case isODS:
 		return refuse(codeFormat, "this is an OpenDocument spreadsheet (.ods)")
 	case isXLSB:

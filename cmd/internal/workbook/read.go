@@ -22,10 +22,10 @@ type Result struct {
 // notes, calibrations, charts.
 var noTable = []string{"no-data", "no-heading", "no-temperature", "no-rate"}
 
-// holdsTable reports whether a sheet holds a table of rate constants, be it with
-// faults.
-func (r *Result) holdsTable() bool {
-	return !slices.ContainsFunc(r.Problems, func(p dataset.Problem) bool { return slices.Contains(noTable, p.Code) })
+// holdsTable reports whether a sheet with these problems holds a table of rate
+// constants, be it with faults.
+func holdsTable(ps dataset.Problems) bool {
+	return !slices.ContainsFunc(ps, func(p dataset.Problem) bool { return slices.Contains(noTable, p.Code) })
 }
 
 // Read reads the data sets of one sheet, chosen by its name or its number from 1.
@@ -48,9 +48,7 @@ func One(name string, results []Result) ([]*dataset.Set, error) {
 			names = append(names, strconv.Quote(r.Sheet))
 		}
 		b := &book{name: name}
-		p := b.problem(codeSeveral, "", 0, "%d sheets hold a table: %s", len(results), list(names))
-		p.Cure = "choose one: --sheet " + word(results[0].Sheet)
-		return nil, dataset.Problems{p}
+		return nil, dataset.Problems{b.problem(codeSeveral, "", 0, "%d sheets hold a table: %s", len(results), list(names))}
 	}
 	if ps := results[0].Problems; len(ps) > 0 {
 		return nil, ps
@@ -83,7 +81,7 @@ func ReadAll(name string, data []byte, choice string, opt dataset.Options) ([]Re
 		if err != nil && !errors.As(err, &r.Problems) {
 			return nil, err
 		}
-		if choice == "" && !r.holdsTable() {
+		if choice == "" && !holdsTable(r.Problems) {
 			others = append(others, strconv.Quote(info.name))
 			lacking = append(lacking, r.Problems...)
 			continue
@@ -139,7 +137,11 @@ func (b *book) sets(info sheetInfo, opt dataset.Options) ([]*dataset.Set, error)
 	s.rows = nil // the table holds them
 	sets, err := t.Sets(opt)
 	var ps dataset.Problems
-	if errors.As(err, &ps) {
+	errors.As(err, &ps)
+	if lacking := s.formulas.problem(b, s.name); lacking != nil && holdsTable(ps) {
+		return nil, lacking
+	}
+	if len(ps) > 0 {
 		return nil, b.tellDates(ps, dates)
 	}
 	for _, set := range sets {
@@ -184,12 +186,4 @@ func list(names []string) string {
 		return strings.Join(names[:most], ", ") + " and " + strconv.Itoa(len(names)-most) + " more"
 	}
 	return strings.Join(names, ", ")
-}
-
-// word quotes a name for a shell where it has spaces.
-func word(s string) string {
-	if strings.ContainsAny(s, " '\"$&()*;<>?`\\|!#") {
-		return "'" + strings.ReplaceAll(s, "'", `'\''`) + "'"
-	}
-	return s
 }

@@ -48,9 +48,26 @@ type sheet struct {
 	rows          []row
 	merged        []area
 	hiddenColumns []area
-	formulas      []string // cells whose results are not stored, the first few
-	formulaRow    int      // of the first
-	formulaCount  int
+	formulas      formulas
+}
+
+// formulas are those whose results are not stored.
+type formulas struct {
+	cells []string // the first few
+	row   int      // of the first
+	count int
+}
+
+// problem tells of them; nil where there are none.
+func (f *formulas) problem(b *book, sheet string) error {
+	if f.count == 0 {
+		return nil
+	}
+	where := strings.Join(f.cells, ", ")
+	if n := f.count - len(f.cells); n > 0 {
+		where += " and " + strconv.Itoa(n) + " more"
+	}
+	return dataset.Problems{b.problem(codeFormula, sheet, f.row, "the results of formulas are not stored, in %s", where)}
 }
 
 // readSheet reads the cells of a worksheet.
@@ -209,11 +226,12 @@ func (r *sheetReader) endCell() error {
 	c := cell{col: uint16(r.col)}
 	if r.hasF && len(r.value) == 0 && !(r.typ == "str" && r.hasV) && r.typ != "inlineStr" {
 		c.kind, c.text = isFormula, "="+cleanText(string(r.formula))
-		if r.s.formulaCount++; r.s.formulaCount == 1 {
-			r.s.formulaRow = r.line
+		f := &r.s.formulas
+		if f.count++; f.count == 1 {
+			f.row = r.line
 		}
-		if len(r.s.formulas) < 3 {
-			r.s.formulas = append(r.s.formulas, columnName(r.col)+strconv.Itoa(r.line))
+		if len(f.cells) < 3 {
+			f.cells = append(f.cells, columnName(r.col)+strconv.Itoa(r.line))
 		}
 		r.keep(c)
 		return nil

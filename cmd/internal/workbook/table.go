@@ -17,13 +17,6 @@ const (
 // table makes a table of a sheet, and says what a user should know. --decimal comma
 // is meant for cells of text: a stored number has none.
 func (b *book) table(s *sheet, comma bool) (*dataset.Table, []dataset.Notice, error) {
-	if s.formulaCount > 0 {
-		more := ""
-		if n := s.formulaCount - len(s.formulas); n > 0 {
-			more = " and " + strconv.Itoa(n) + " more"
-		}
-		return nil, nil, dataset.Problems{b.problem(codeFormula, s.name, s.formulaRow, "the results of formulas are not stored, in %s%s", strings.Join(s.formulas, ", "), more)}
-	}
 	first, last := dataset.MostColumns, -1
 	unmarked := comma
 	n := 0 // cells
@@ -50,11 +43,11 @@ func (b *book) table(s *sheet, comma bool) (*dataset.Table, []dataset.Notice, er
 	var percents []int // columns
 	var all []string   // one backing array for many rows
 	data := -1         // first row of t with a number
-	before := 0
+	before, blank := 0, false
 	for i := range s.rows {
 		r := &s.rows[i]
 		cells := r.cells
-		blank := before > 0 && r.line > before+1
+		blank = blank || before > 0 && r.line > before+1
 		before = r.line
 		if c := &cells[0]; c.kind == isText && c.text[0] == '#' {
 			if len(t.Rows) == 0 {
@@ -83,6 +76,7 @@ func (b *book) table(s *sheet, comma bool) (*dataset.Table, []dataset.Notice, er
 			hiddenRows = append(hiddenRows, r.line)
 		}
 		t.Append(r.line, out, blank)
+		blank = false
 	}
 	if data < 0 {
 		data = len(t.Rows)
@@ -98,7 +92,8 @@ func (b *book) table(s *sheet, comma bool) (*dataset.Table, []dataset.Notice, er
 	return t, append(notices, s.hiddenCells(hiddenRows, first, last)...), nil
 }
 
-// comment is the text of a row that begins with #, its cells apart.
+// comment is the text of a row that begins with #, its cells apart: a heading # stands
+// over numbers of rows.
 func comment(cells []cell) string {
 	var texts []string
 	col := int(cells[0].col)
@@ -109,7 +104,8 @@ func comment(cells []cell) string {
 		col++
 		texts = append(texts, c.text)
 	}
-	return strings.Trim(strings.Join(texts, "\t"), " \t#")
+	texts[0] = strings.Trim(texts[0], " #")
+	return strings.Join(texts, "\t")
 }
 
 // numeric reports whether a cell holds a number or a date, be it as text.
@@ -138,7 +134,9 @@ func (c *cell) write(unmarked bool) string {
 		}
 	case isError:
 		// Newer errors such as #SPILL! mean no value, like the old ones.
-		return "#N/A"
+		if dataset.ParseCell(c.text, '.', 0).Kind != dataset.CellMissing {
+			return "#N/A"
+		}
 	}
 	return c.text
 }

@@ -215,10 +215,10 @@ var ugly = []struct {
 	{name: "formula with an empty text", fill: func(t testing.TB, f *excelize.File) { at(t, f, "A1", append(usual, "note")); at(t, f, "A2", five...) },
 		patch:  []string{"xl/worksheets/sheet1.xml", `<c r="C2"><v>0.0000002</v></c>`, `<c r="C2"><v>0.0000002</v></c><c r="D2" t="str"><f>IF(A2&gt;1,"","x")</f><v></v></c>`},
 		points: fivePoints},
-	{name: "error cells", fill: func(t testing.TB, f *excelize.File) { at(t, f, "A1", usual); at(t, f, "A2", five...) },
+	{name: "error cells, also such as text tables do not know", fill: func(t testing.TB, f *excelize.File) { at(t, f, "A1", usual); at(t, f, "A2", five...) },
 		patch: []string{"xl/worksheets/sheet1.xml", `<c r="B3"><v>0.000035</v></c>`, `<c r="B3" t="e"><f>1/0</f><v>#DIV/0!</v></c>`,
 			`<c r="A4"><v>313.15</v></c>`, `<c r="A4" t="e"><v>#SPILL!</v></c>`},
-		points: "293.15 1.25e-05 2e-07; 323.15 0.000224 3e-06; 333.15 0.00053 6e-06", notice: "rows-without-value: line 3"},
+		points: "293.15 1.25e-05 2e-07; 323.15 0.000224 3e-06; 333.15 0.00053 6e-06", notice: "rows-without-value: line 3: no rate constant"},
 	{name: "booleans", fill: func(t testing.TB, f *excelize.File) {
 		at(t, f, "A1", head("T/K", "k/s^-1", "dry"), head(300, 1e-5, true), head(310, 3e-5, false))
 	}, opt: dataset.Options{Where: []string{"dry=TRUE"}}, points: "300 1e-05 0"},
@@ -245,12 +245,23 @@ var ugly = []struct {
 	{name: "comment rows, a blank row, a remark below", fill: func(t testing.TB, f *excelize.File) {
 		at(t, f, "A1", head("# measured by nobody", "in 2026"), usual)
 		at(t, f, "A3", five...)
-		at(t, f, "A9", head("# below"), head("Ea", 52.1))
+		at(t, f, "A9", head("# below"), head("checked", "twice"))
 	}, points: fivePoints, notice: "rows-after-table: line 10"},
 	{name: "headings in a comment row", fill: func(t testing.TB, f *excelize.File) {
 		at(t, f, "A1", head("# T/K", "k/s^-1", "u(k)/s^-1"))
 		at(t, f, "A2", five...)
 	}, points: fivePoints, notice: "heading-in-comment: line 1"},
+	{name: "numbers of rows under #", fill: func(t testing.TB, f *excelize.File) {
+		at(t, f, "A1", head("#", "T/K", "k/s^-1"), head(1, 300, 1e-5), head(2, 310, 3e-5))
+	}, points: "300 1e-05 0; 310 3e-05 0", notice: "heading-in-comment: line 1"},
+	{name: "formulas without results in a sheet without a table", fill: func(t testing.TB, f *excelize.File) {
+		at(t, f, "A1", usual)
+		at(t, f, "A2", five...)
+		_, err := f.NewSheet("Summary")
+		must(t, err)
+		on(t, f, "Summary", "A1", head("slope", "intercept"), head(1, 2))
+		must(t, f.SetCellFormula("Summary", "C2", "A2*8.314"))
+	}, points: fivePoints, notice: "sheet-chosen"},
 	{name: "notes, a chart and another sheet", fill: func(t testing.TB, f *excelize.File) {
 		at(t, f, "A1", usual)
 		at(t, f, "A2", five...)
@@ -261,7 +272,7 @@ var ugly = []struct {
 		must(t, err)
 		on(t, f, "Remarks", "A1", head("nothing", "here"), head("but", "words"))
 	}, points: fivePoints, notice: `sheet-chosen: sheet "Sheet1" was read; no table with a temperature and a rate constant is in "Remarks"`},
-	{name: "two sheets with tables", fill: twoSheets, code: "several-sheets", says: `"Sheet1", "Run 2"`, cure: "--sheet Sheet1"},
+	{name: "two sheets with tables", fill: twoSheets, code: "several-sheets", says: `"Sheet1", "Run 2"`, cure: "choose one: --sheet NAME"},
 	{name: "sheet by name", fill: twoSheets, choice: "Run 2", points: "300 1e-05 0; 310 3e-05 0"},
 	{name: "sheet by name in other case", fill: twoSheets, choice: "run 2", points: "300 1e-05 0; 310 3e-05 0"},
 	{name: "sheet by number", fill: twoSheets, choice: "2", points: "300 1e-05 0; 310 3e-05 0"},
@@ -409,6 +420,36 @@ func TestFormatOf(t *testing.T) {
 		if got := formatOf(code); got != want {
 			t.Errorf("%s: %d, want %d", code, got, want)
 		}
+	}
+}
+
+// ECMA-376-1, 18.8.30: the formats that need no code.
+func TestBuiltIn(t *testing.T) {
+	for want, ids := range map[format][]int{
+		plain:   {-1, 0, 1, 2, 3, 4, 11, 12, 13, 23, 37, 38, 39, 40, 48, 49, 164},
+		percent: {9, 10},
+		date:    {14, 15, 16, 17, 18, 19, 20, 21, 22, 27, 36, 45, 46, 47, 50, 58},
+	} {
+		for _, id := range ids {
+			if got := builtIn(id); got != want {
+				t.Errorf("%d: %d, want %d", id, got, want)
+			}
+		}
+	}
+}
+
+// Runs are joined, raised exponents marked, phonetic runs left out.
+func TestRichText(t *testing.T) {
+	data := patched(t, generated(t, func(f *excelize.File) { at(t, f, "A1", head("heading")) }), "xl/sharedStrings.xml", "<t>heading</t>",
+		`<r><t xml:space="preserve">k/(cm</t></r><r><rPr><vertAlign val="superscript"/></rPr><t>3</t></r><r><t xml:space="preserve"> s</t></r>`+
+			`<r><rPr><vertAlign val="superscript"/></rPr><t>−1</t></r><r><t>) of </t></r><r><rPr><vertAlign val="superscript"/></rPr><t>note</t></r>`+
+			`<rPh sb="0" eb="1"><t>phonetic</t></rPh>`)
+	b, err := open("book.xlsx", "", data)
+	must(t, err)
+	s, err := b.readSheet(b.sheets[0])
+	must(t, err)
+	if got, want := s.rows[0].cells[0].text, "k/(cm^3 s^−1) of note"; got != want {
+		t.Errorf("%q, want %q", got, want)
 	}
 }
 
