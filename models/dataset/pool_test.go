@@ -35,7 +35,7 @@ func TestPool(t *testing.T) {
 	// 25 °C is 298.15 K and 77 °F (definitions of the scales); 60 min^-1 is 1 s^-1.
 	a := named(t, "one/a.csv", "t/°C,k/s^-1,u(k)/s^-1,source\n25,1,0.1,Lab1\n35,2,0.2,\n", Options{})
 	b := named(t, "one/b.csv", "T/K,k/min^-1,s(k)/min^-1,n,pH\n298.15,60,6,4,7\n308.15,n.d.,,,7\n318.15,<240,,,7\n", Options{})
-	c := named(t, "two/c.csv", "t/degF,k/h^-1,pH\n77,3600,7\n77,3601,8\n", Options{})
+	c := named(t, "two/c.csv", "t/degF,k/h^-1,u(k)/h^-1,pH\n77,3600,36,7\n77,3601,,8\n", Options{})
 	before := fmt.Sprintf("%+v %+v %+v", a, b, c)
 	p, err := Pool([]*Set{a, b, c})
 	if err != nil {
@@ -58,7 +58,7 @@ func TestPool(t *testing.T) {
 		{"one/b.csv", 2, 1, 0.05, LevelRepeats, "b.csv", true}, // s/sqrt(4)
 		{"one/b.csv", 3, math.NaN(), 0, LevelNone, "b.csv", false},
 		{"one/b.csv", 4, 4, 0, LevelNone, "b.csv", false},
-		{"two/c.csv", 2, 1, 0, LevelNone, "c.csv", true},
+		{"two/c.csv", 2, 1, 0.01, LevelStandard, "c.csv", true},
 		{"two/c.csv", 3, 3601.0 / 3600, 0, LevelNone, "c.csv", true},
 	}
 	if len(p.Points) != len(want) {
@@ -73,11 +73,11 @@ func TestPool(t *testing.T) {
 	if why := p.Points[4].WhyNot; why != "only a limit is known: k < 4" {
 		t.Errorf("a limit in the other unit: %q", why)
 	}
-	if p.Name != "a + b + c" || fmt.Sprint(p.Files) != "[one/a.csv one/b.csv two/c.csv]" || p.Quantity.Unit != "s^-1" || len(p.Columns) != 4+5+3 {
+	if p.Name != "a + b + c" || fmt.Sprint(p.Files) != "[one/a.csv one/b.csv two/c.csv]" || p.Quantity.Unit != "s^-1" || len(p.Columns) != 4+5+4 {
 		t.Errorf("%s %v %s, %d columns", p.Name, p.Files, p.Quantity.Unit, len(p.Columns))
 	}
 	// sha256sum a b c | cut -c1-64 | sha256sum, with the three texts in files.
-	if want := "ba9e1f7d5f0034a884f61019dc1c38406ae54710b606edef98de35abfde94006"; p.SHA256 != want {
+	if want := "091029299007863b3d02c2126e8deca5069e127e612ef376430c5499d398b59d"; p.SHA256 != want {
 		t.Errorf("sum %s, want %s", p.SHA256, want)
 	}
 	got := messages(p)
@@ -153,6 +153,29 @@ func TestPoolRefuses(t *testing.T) {
 	if p, err := Pool([]*Set{a}); err != nil || p != a {
 		t.Errorf("one set pooled is another: %v", err)
 	}
+}
+
+// What is assumed of two files is said once.
+func TestPoolAssumptions(t *testing.T) {
+	opt := Options{Assume: map[string]string{"T": "degC", "log": "lg"}}
+	a := named(t, "a.csv", "T,k/s^-1\n20,1\n", opt)
+	b := named(t, "b.csv", "T,log k\n30,1\n", opt)
+	c := named(t, "c.csv", "T,k/s^-1\n40,3\n", opt)
+	p, err := Pool([]*Set{a, c})
+	if err != nil || fmt.Sprint(p.Assumed) != "[T=degC]" || strings.Count(messages(p), "--assume log=lg was not needed") != 1 || strings.Count(messages(p), noteAssumption) != 1 {
+		t.Errorf("%v %v\n%s", err, p.Assumed, messages(p))
+	}
+	b.Quantity = a.Quantity // log k has no unit of its own
+	if p, err = Pool([]*Set{a, b, c}); err != nil || fmt.Sprint(p.Assumed) != "[T=degC log=lg]" || strings.Contains(messages(p), "was not needed") {
+		t.Errorf("%v %v\n%s", err, p.Assumed, messages(p))
+	}
+}
+
+// Uncertainties that s(k) and n do not give back are written as they are.
+func TestTidyOfOtherUncertainties(t *testing.T) {
+	s := named(t, "a.csv", "T/K,k/s^-1,s(k)/s^-1,n\n300,1,0.1,3\n310,2,0.2,3\n", Options{})
+	s.Points[1].UK = 0.123
+	checkTidy(t, s, false)
 }
 
 // asText is what a tidy table must give back: points, quantity, assumptions and

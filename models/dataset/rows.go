@@ -154,11 +154,12 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	say(noteLevel, rr.plusMinusT, ofT+"the level of ± is not stated, or it is relative, and it was not used")
 	say(noteOtherU, rr.spare, "an uncertainty in the cell is not used: a column states it")
 	for i := range p.cols {
-		if c := &p.cols[i]; !c.used {
-			for _, pt := range points[:min(3, len(points))] {
-				if s := pt.Extra[c.Text]; s != "" {
-					rr.examples[i] = append(rr.examples[i], s)
-				}
+		if c := &p.cols[i]; c.used && !c.Role.isText() && c.Role != RoleLimit && c.Role != RoleRow {
+			continue // shown as its numbers are read
+		}
+		for j := first; j < min(first+3, len(m.t.Rows)) && (j == first || !m.t.Blank[j]); j++ {
+			if r := m.t.Rows[j]; i < len(r.Cells) {
+				rr.examples[i] = append(rr.examples[i], short(strings.TrimSpace(r.Cells[i])))
 			}
 		}
 	}

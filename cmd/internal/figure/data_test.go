@@ -2,6 +2,7 @@ package figure
 
 import (
 	"encoding/json"
+	"image/color"
 	"math"
 	"reflect"
 	"slices"
@@ -382,6 +383,29 @@ func TestMeansAndSources(t *testing.T) {
 	}
 	if d.Points[1].Used || d.Points[0].Limit != "<" || d.NotShown != 1 || len(d.Means) != 0 {
 		t.Errorf("left out: %+v", d.Points[:2])
+	}
+}
+
+// The legend shows a source by the marker that stands in the panel: a hollow one
+// where all its points are left out.
+func TestLegendOfASourceLeftOut(t *testing.T) {
+	a := cases()["leftout"].assess(t)
+	for i := range a.Data {
+		if a.Data[i].Source == "lab C" {
+			a.Data[i].Used = false
+		}
+	}
+	d, err := NewArrhenius(a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var leg legend
+	pointEntries(&leg, d)
+	for i, hollow := range map[int]bool{0: false, 1: false, 2: true} {
+		m := leg[i].thumbs[0].(spot).Shape.(marker)
+		if leg[i].words != d.Sources[i] || (m.fill == color.White) != hollow {
+			t.Errorf("%q: fill %v", leg[i].words, m.fill)
+		}
 	}
 }
 
