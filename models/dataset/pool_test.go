@@ -155,6 +155,22 @@ func TestPoolRefuses(t *testing.T) {
 	}
 }
 
+// s(k) and n give u(k) back to the last bit in the other unit too: a tidy table
+// writes them.
+func TestPoolRepeats(t *testing.T) {
+	a := named(t, "a", "T/K,k/s^-1\n300,1\n", Options{})
+	b := named(t, "b", "T/K,k/min^-1,s(k)/min^-1,n\n300,1,0.1,3\n310,2,0.13,5\n320,3,0.17,7\n330,4,0.19,3\n340,5,0.23,6\n", Options{})
+	p, err := Pool([]*Set{a, b})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, q := range p.Points[1:] {
+		if want := q.SD / math.Sqrt(float64(q.Repeats)); q.UK != want || q.UK == 0 {
+			t.Errorf("u = %.17g, s/sqrt(n) = %.17g", q.UK, want)
+		}
+	}
+}
+
 // What is assumed of two files is said once.
 func TestPoolAssumptions(t *testing.T) {
 	opt := Options{Assume: map[string]string{"T": "degC", "log": "lg"}}
@@ -217,7 +233,7 @@ func TestTidyKeepsEverything(t *testing.T) {
 		text string
 		opt  Options
 	}{
-		{"a title\n\nt/°C;k_obs/s^-1;u(k_obs)/s^-1;pH;note\n10;1,5e-4;0,1e-4;7,0;x\n20;3,1e-4;0,2e-4;7,5;\n30;n.d.;;7,0;\"flask; broke\"\n10;1,2e-3;0,9e-3;8,5;\n;2;;7;\n", Options{TMax: 350}},
+		{"a title\n\nt/°C;k_obs/s^-1;u(k_obs)/s^-1;pH;note\n10;1,5e-4;0,1e-4;7,0;x\n20;3,1e-4;0,2e-4;7,5;\n30;n.d.;;7,0;\"flask; broke\"\n10;1,2e-3;0,9e-3;8,5;\n;2;;7;\n", Options{TMax: 350, Where: []string{"pH!=7,5"}}},
 		{"T,k/s^-1,error\n25,1,0.1\n35,2,0.2\n45,<3,\n", Options{Assume: map[string]string{"T": "degC", "error": "2"}}},
 		{"T/K,k/s^-1\n300,1.0(1)\n310,2.0 ± 0.1\n320,3\n", Options{Assume: map[string]string{"error": "sd", "n": "3"}}},
 		{"T/K,k/s^-1,u(k)/s^-1,n\n300,1,0.1,3\n310,2,0.2,3\n", Options{}},

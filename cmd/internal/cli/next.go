@@ -27,7 +27,7 @@ func flagsGiven(cmd *cobra.Command, names []string) []string {
 			continue
 		}
 		for _, v := range valuesOf(f) {
-			words = append(words, flagWords(name, v)...)
+			words = append(words, "--"+name, v)
 		}
 	}
 	return words
@@ -39,14 +39,6 @@ func valuesOf(f *pflag.Flag) []string {
 		return s.GetSlice()
 	}
 	return []string{f.Value.String()}
-}
-
-// flagWords writes a flag and its value so that the value is not taken for a flag.
-func flagWords(name, value string) []string {
-	if value == "" || strings.HasPrefix(value, "-") {
-		return []string{"--" + name + "=" + value}
-	}
-	return []string{"--" + name, value}
 }
 
 // nextCommand is the command line that assesses what inspect showed first, quoted
@@ -62,10 +54,10 @@ func nextCommand(cmd *cobra.Command, files []string, o *reading, sheet, set stri
 	}
 	words = append(words, flagsGiven(cmd, readingFlags)...)
 	if sheet != "" && !cmd.Flags().Changed("sheet") {
-		words = append(words, flagWords("sheet", sheet)...)
+		words = append(words, "--sheet", sheet)
 	}
 	if set != "" && !cmd.Flags().Changed("dataset") {
-		words = append(words, flagWords("dataset", set)...)
+		words = append(words, "--dataset", set)
 	}
 	var out []string
 	for _, p := range o.leaveOut {
@@ -77,7 +69,7 @@ func nextCommand(cmd *cobra.Command, files []string, o *reading, sheet, set stri
 		}
 	}
 	if len(out) > 0 {
-		words = append(words, flagWords("leave-out", strings.Join(out, ","))...)
+		words = append(words, "--leave-out", strings.Join(out, ","))
 	}
 	for i, w := range words {
 		words[i] = report.ShellWord(w)

@@ -11,7 +11,7 @@ import (
 // The command that inspect ends with works as it stands, and keeps the selection.
 func TestNextCommand(t *testing.T) {
 	const celsius = "T,k/s^-1,pH\n10,1e-5,7.0\n20,3e-5,7.0\n30,8e-5,7.0\n40,2e-4,7.0\n50,5e-4,7.0\n10,2e-5,8.0\n20,6e-5,8.0\n30,2e-4,8.0\n40,4e-4,8.0\n50,9e-4,8.0\n"
-	const sets = "dataset,T/K,k/s^-1,k_b (s^-1)\nthe cold one,280,1e-5,1\nthe cold one,290,3e-5,2\nthe cold one,300,9e-5,3\nthe cold one,310,2e-4,4\nwarm,320,5e-4,5\nwarm,330,1e-3,6\n"
+	const sets = "dataset,T/K,k/s^-1,k_b (s^-1)\nthe cold one,280,1e-5,1\nthe cold one,290,3e-5,2\nthe cold one,300,9e-5,3\nthe cold one,310,2e-4,4\n-warm,320,5e-4,5\nwarm,330,1e-3,6\n"
 	const lab = "T/K;k/s^-1;source\n280;1,1e-5;Lab 3\n290;3,2e-5;it's\n300;9,1e-5;Lab1\n310;2,2e-4;Lab1\n320;5,1e-4;Lab1\n330;1,2e-3;Lab1\n"
 	for _, c := range []struct {
 		files map[string]string
@@ -24,6 +24,7 @@ func TestNextCommand(t *testing.T) {
 		{map[string]string{"a.csv": celsius}, []string{"a.csv", "--column", "T=T", "--assume", "T=degC", "--where", "pH!=7.0", "--t-min", "15degC"}, 4},
 		{map[string]string{"my sets.csv": sets}, []string{"my sets.csv", "--column", "k=k/s^-1"}, 4},
 		{map[string]string{"my sets.csv": sets}, []string{"my sets.csv", "--column=k=k_b (s^-1)", "--leave-out", "2"}, 3},
+		{map[string]string{"my sets.csv": "dataset,T/K,k/s^-1\n-d,280,1e-5\n-d,290,2e-5\n-d,300,4e-5\ne,300,4e-5\n"}, []string{"my sets.csv"}, 3},
 		{map[string]string{"it,s.csv": lab}, []string{"it,s.csv", "--decimal", "comma", "--where", "source!=it's", "--where=T/K<325"}, 4},
 		{map[string]string{"-x.csv": lab}, []string{"--t-max", "315K", "--", "-x.csv"}, 4},
 		{map[string]string{"x.csv": lab, "y.csv": celsius}, []string{"x.csv", "y.csv", "--leave-out", "x.csv:2,y.csv:5", "--assume", "T=degC"}, 5},
