@@ -12,7 +12,12 @@ import (
 //
 // With errors in ln k a models.Basis is solved in closed form and a models.Shaped
 // by a global search; with errors in k every curve goes through LeastSquares.
+//
+// Limits enter as probabilities: see Limit.
 func Fit(s *Sample, c models.Curve) *Result {
+	if len(s.Limits) > 0 {
+		return fitLimits(s, c)
+	}
 	r := newResult(s, c)
 	if r.Nu < 0 {
 		r.Reason = fmt.Sprintf("needs at least %d temperatures or points, has %d", r.Params(), r.N)

@@ -28,11 +28,11 @@ func Influence(r *Result, s *Sample) []PointInfluence {
 	if !r.Usable() || r.Leverage == nil {
 		return nil
 	}
-	if s.Len() != r.N {
+	if s.Len() != len(r.Leverage) {
 		panic("fit: influence needs the sample that was fitted")
 	}
 	p, nu := float64(r.Params()), float64(r.Nu)
-	out := make([]PointInfluence, r.N)
+	out := make([]PointInfluence, len(r.Leverage))
 	for i, h := range r.Leverage {
 		nan := math.NaN()
 		out[i] = PointInfluence{Leverage: h, Standardised: nan, Studentised: nan, Cook: nan}

@@ -90,6 +90,9 @@ func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	if !r.Usable() || r.P == nil {
 		return Unknown()
 	}
+	if len(s.Limits) > 0 {
+		return profileLimits(s, r, c, confidence)
+	}
 	value := floats.Dot(c, r.P)
 	wald := r.Interval(c, value, confidence)
 	if _, linear := r.Curve.(models.Basis); linear && !s.Model.InK() {

@@ -38,10 +38,14 @@ type Result struct {
 	TRef float64
 	P    []float64 // canonical parameters
 	Cov  []float64 // their covariance: σ̂²(XᵀV⁻¹X)⁻¹, or with σ known; nil where not identified
-	RSS  float64   // Σ r²/V, in ln k, or in k where the model is InK
-	// Sigma is σ̂ = sqrt(RSS/Nu); 1 where σ is known, NaN where Nu = 0.
+	// RSS is Σ r²/V, in ln k, or in k where the model is InK. With limits it is what
+	// gives a sample without them the same likelihood: N ln RSS, or RSS where σ is
+	// known, is -2 ln L up to a constant of the sample.
+	RSS float64
+	// Sigma is σ̂ = sqrt(RSS/Nu); 1 where σ is known, NaN where Nu = 0. With limits it
+	// is the σ of largest likelihood times sqrt(n/Nu), n counting measured entries.
 	Sigma  float64
-	N      int // points or means
+	N      int // points or means, limits included; Nu does not count them
 	Nu     int // N - number of parameters
 	LogLik float64
 
@@ -49,6 +53,11 @@ type Result struct {
 	Residuals []float64 // y - fitted, in ln k, or in k where InK
 	Leverage  []float64
 	Warnings  []string
+
+	// Exact is the fit to the measured entries alone, and LimitMass the probability of
+	// each limit at the estimates with Sigma; nil where there are no limits.
+	Exact     *Result
+	LimitMass []float64
 }
 
 // Usable reports whether RSS, likelihood and fitted values may be used.

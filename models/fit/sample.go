@@ -47,6 +47,9 @@ type Sample struct {
 	V     []float64
 	Model ErrorModel
 	TRef  float64 // reference temperature of canonical parameters, K
+	// Limits are entries of which only a bound is known; the slices above hold the
+	// measured ones alone.
+	Limits []Limit
 }
 
 // NewSample checks and completes a sample. tRef is the reciprocal of the
@@ -81,7 +84,7 @@ func NewSample(model ErrorModel, t, k, v []float64) (*Sample, error) {
 	return s, nil
 }
 
-// Len is the number of points or means.
+// Len is the number of points or means, limits not counted.
 func (s *Sample) Len() int { return len(s.T) }
 
 // DistinctT is the number of distinct temperatures, as models.SameTemperature tells

@@ -27,7 +27,7 @@ func ProfileShaped(s *Sample, r *Result, param string, confidence float64) Estim
 	if !r.Usable() {
 		return Unknown()
 	}
-	if s.Model.InK() {
+	if s.Model.InK() || len(s.Limits) > 0 {
 		return Profile(s, r, f.gradient[:], confidence)
 	}
 	e := Estimate{Value: math.NaN(), StdError: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
