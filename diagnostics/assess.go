@@ -308,6 +308,7 @@ func (a *assessor) test() {
 		a.find("temperature-means", fmt.Sprintf("the verdict uses the means at %d temperatures, not the %d single points, which share the errors of %d settings", n, points, n), nil, nil)
 	}
 	if a.second = a.opt.Designs.test(a.data.sample, a.straight, nil); a.second != nil {
+		a.second.sequential = a.opt.SequentialNull
 		a.secondRun = a.second.Run()
 	}
 	if a.data.temperatureShare > 0 && !a.model.KnownSigma() && a.straight.Sigma < a.data.temperatureShare {

@@ -49,6 +49,10 @@ type Options struct {
 	PublishStyle         string   // molar, kelvin, evaluated, electronvolt; "" decides by unit
 	Selection            []string // how rows were left out, for the record
 	Version              string   // of the program, for the record
+	// SequentialNull draws the null of the second-barrier test only until p is plainly
+	// not small; p is exact all the same, and coarser where it is large. What rests on
+	// the ends of the range is then told of findings alone. For many data sets.
+	SequentialNull bool
 	// Designs, if not nil, keeps the prepared second-barrier tests of designs, for
 	// assessments of many data sets of one design, as in simulations.
 	Designs *DesignCache

@@ -23,6 +23,10 @@ const (
 	secondBarrierPairs = 9999
 	secondBarrierDraws = 2*secondBarrierPairs + 1
 	secondBarrierLevel = 0.05
+	// Draws in sequence end once more than sequentialEnough reach the statistic, and
+	// critical values then come from sequentialPairs.
+	sequentialEnough = 50
+	sequentialPairs  = 999
 )
 
 // secondBarrierSteps are the barrier differences d·(x_max - x_min).
@@ -63,10 +67,13 @@ type secondBarrierDesign struct {
 	shapes int
 	dim    int // of the space that is left
 
-	drawn    sync.Once
-	null     []float64 // largest cosines of z and of -z, in pairs
-	sorted   sync.Once
-	critical [2]float64
+	// sequential stops drawing once p is plainly not small.
+	sequential bool
+	drawing    sync.Mutex
+	next       func() (up, down float64) // the next pair of the null
+	null       []float64                 // largest cosines of z and of -z, in pairs
+	sorted     sync.Once
+	critical   [2]float64
 }
 
 // NewSecondBarrierTest prepares the test for a sample. nuisance holds further
@@ -253,16 +260,29 @@ func (b *SecondBarrierTest) seed() (uint64, uint64) {
 	return h.Sum64(), 0x73656362
 }
 
-// draw makes the null: the largest cosines of standard normal z and of -z. Only the
-// part of z along the shapes is drawn in full, of the rest its squared length,
-// which is chi-squared: a draw costs the same for any N.
-func (b *SecondBarrierTest) draw() {
+// draws sees to it that the null holds so many pairs: the largest cosines of standard
+// normal z and of -z. Only the part of z along the shapes is drawn in full, of the rest
+// its squared length, which is chi-squared: a draw costs the same for any N.
+func (b *SecondBarrierTest) draws(pairs int) []float64 {
+	b.drawing.Lock()
+	defer b.drawing.Unlock()
+	if b.next == nil {
+		b.next = b.pairs()
+	}
+	for len(b.null) < 2*pairs {
+		up, down := b.next()
+		b.null = append(b.null, up, down)
+	}
+	return b.null
+}
+
+// pairs returns the stream of draws of the null.
+func (b *SecondBarrierTest) pairs() func() (up, down float64) {
 	rng := rand.New(rand.NewPCG(b.seed()))
 	a, along := make([]float64, len(b.span)), make([]float64, b.shapes)
 	rest := b.dim - len(b.span)
 	chi2 := distuv.ChiSquared{K: float64(rest), Src: rng}
-	b.null = make([]float64, 0, 2*secondBarrierPairs)
-	for range secondBarrierPairs {
+	return func() (up, down float64) {
 		var ss float64
 		for j := range a {
 			z := rng.NormFloat64()
@@ -279,41 +299,61 @@ func (b *SecondBarrierTest) draw() {
 		}
 		most, least := b.extremes(a, along)
 		norm := math.Sqrt(ss)
-		b.null = append(b.null, most/norm, -least/norm)
+		return most / norm, -least / norm
 	}
 }
 
 // findCritical finds the cosines above which p < 0.05: few enough draws reach them.
 // The mirror image of the data counts as one more draw where it reaches them too.
 func (b *SecondBarrierTest) findCritical() {
-	sorted := slices.Clone(b.null)
+	pairs := secondBarrierPairs
+	if b.sequential {
+		pairs = sequentialPairs
+	}
+	sorted := slices.Clone(b.draws(pairs)[:2*pairs])
 	slices.Sort(sorted)
-	allowed := int(math.Ceil(secondBarrierLevel*(secondBarrierDraws+1))) - 2
+	allowed := int(math.Ceil(secondBarrierLevel*float64(2*pairs+2))) - 2
 	b.critical = [2]float64{sorted[len(sorted)-1-allowed], sorted[len(sorted)-allowed]}
 }
 
 // pValue is exact: under one barrier the data and their mirror image are one more
 // pair like the drawn ones, and p = (1 + #{S* >= S})/(B + 1), ties against
-// rejection.
-func (b *SecondBarrierTest) pValue(up, down float64) float64 {
-	b.drawn.Do(b.draw)
+// rejection, B counting the mirror image. draws is B.
+//
+// Drawn in sequence, p is exact too: where the draws that reach S first exceed h in pair
+// m, p = h/2m, since among the 2m values of the data's pair and m - 1 drawn ones that of
+// the data is one of the h largest with a chance of no more than that (Besag & Clifford
+// 1991, Biometrika 78, 301, for draws that come one by one).
+func (b *SecondBarrierTest) pValue(up, down float64) (p float64, draws int) {
 	count := 1
 	if down >= up {
 		count++
 	}
-	for _, s := range b.null {
+	if b.sequential {
+		for m := 1; m <= secondBarrierPairs; m++ {
+			for _, s := range b.draws(m)[2*m-2 : 2*m] {
+				if s >= up {
+					count++
+				}
+			}
+			if count > sequentialEnough {
+				return sequentialEnough / float64(2*m), 2*m + 1
+			}
+		}
+		return float64(count) / (secondBarrierDraws + 1), secondBarrierDraws
+	}
+	for _, s := range b.draws(secondBarrierPairs)[:2*secondBarrierPairs] {
 		if s >= up {
 			count++
 		}
 	}
-	return float64(count) / (secondBarrierDraws + 1)
+	return float64(count) / (secondBarrierDraws + 1), secondBarrierDraws
 }
 
 // Found reports whether p < 0.05 for other values y at the same design, in ln k, or
 // in k where errors are additive in k. It allocates nothing after the first call;
 // scratch has length ScratchLen(). It may be called from several goroutines.
 func (b *SecondBarrierTest) Found(y, scratch []float64) bool {
-	b.drawn.Do(b.draw)
 	b.sorted.Do(b.findCritical)
 	up, down, _ := b.cosines(y, scratch)
 	if down >= up {
@@ -349,11 +389,16 @@ func (b *SecondBarrierTest) Run() *SecondBarrier {
 		return nil
 	}
 	nu := float64(b.dim - 1)
+	p, draws := b.pValue(up, down)
 	out := &SecondBarrier{
-		Statistic: Real(up * math.Sqrt(nu) / math.Sqrt((1-up)*(1+up))),
-		PValue:    Real(b.pValue(up, down)),
-		Draws:     secondBarrierDraws,
-		Crossover: b.crossover(y),
+		Statistic:   Real(up * math.Sqrt(nu) / math.Sqrt((1-up)*(1+up))),
+		PValue:      Real(p),
+		Draws:       draws,
+		Crossover:   b.crossover(y),
+		WithoutEnds: WithoutEnds{Real(math.NaN()), Real(math.NaN())},
+	}
+	if b.sequential && p >= secondBarrierLevel {
+		return out // nothing rests on an end where nothing was found
 	}
 	low, high := b.s.Range()
 	out.WithoutEnds = WithoutEnds{
@@ -400,6 +445,7 @@ func (b *SecondBarrierTest) without(t float64) float64 {
 	if o == nil {
 		return math.NaN()
 	}
+	o.sequential = b.sequential
 	y := s.Y
 	if s.Model.InK() {
 		y = s.K
@@ -408,7 +454,8 @@ func (b *SecondBarrierTest) without(t float64) float64 {
 	if noScatter(&s, rss) {
 		return math.NaN()
 	}
-	return o.pValue(up, down)
+	p, _ := o.pValue(up, down)
+	return p
 }
 
 // crossover brackets the crossover temperature: the crossovers of the grid whose

@@ -140,7 +140,7 @@ func TestFoundIsThePValue(t *testing.T) {
 		lineNoise(rng, s, 0.03, s.Y)
 		up, down, _ := b.cosines(s.Y, scratch)
 		b.Found(s.Y, scratch) // draws
-		p := b.pValue(up, down)
+		p, _ := b.pValue(up, down)
 		if found := b.Found(s.Y, scratch); found != (p < 0.05) {
 			t.Fatalf("p = %g, found %t", p, found)
 		}
@@ -351,7 +351,7 @@ func BenchmarkSecondBarrierDraw(b *testing.B) {
 			s := sampleOf(b, fit.Relative, span(280, 340, n), make([]float64, n), nil)
 			for b.Loop() {
 				x := NewSecondBarrierTest(s, nil, nil)
-				x.drawn.Do(x.draw)
+				x.draws(secondBarrierPairs)
 			}
 			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/secondBarrierDraws, "ns/draw")
 			x := NewSecondBarrierTest(s, nil, nil)
@@ -371,5 +371,54 @@ func BenchmarkSecondBarrierFound(b *testing.B) {
 	b.ReportAllocs()
 	for b.Loop() {
 		x.Found(y, scratch)
+	}
+}
+
+// Draws in sequence: where p is small all are drawn and it is that of the full null;
+// on straight sets of many designs P(p <= α) is α.
+func TestSecondBarrierInSequence(t *testing.T) {
+	rng := rand.New(rand.NewPCG(8, 2))
+	const designs, sets = 150, 20
+	levels := []float64{0.02, 0.05, 0.2, 0.5}
+	below := make([]float64, len(levels))
+	most := 0
+	for range designs {
+		temps := span(280, 340, 7)
+		for i := range temps {
+			temps[i] += 4 * rng.Float64()
+		}
+		s := sampleOf(t, fit.Relative, temps, make([]float64, len(temps)), nil)
+		b := NewSecondBarrierTest(s, nil, nil)
+		b.sequential = true
+		full := NewSecondBarrierTest(s, nil, nil)
+		scratch := make([]float64, b.ScratchLen())
+		for range sets {
+			lineNoise(rng, s, 0.03, s.Y)
+			up, down, _ := b.cosines(s.Y, scratch)
+			p, draws := b.pValue(up, down)
+			most = max(most, draws)
+			for i, l := range levels {
+				if p <= l {
+					below[i]++
+				}
+			}
+			if draws == secondBarrierDraws {
+				if want, _ := full.pValue(up, down); p != want {
+					t.Errorf("p = %g, of the full null %g", p, want)
+				}
+			}
+			if found := b.Found(s.Y, scratch); found != (p < 0.05) && math.Abs(p-0.05) > 0.03 {
+				t.Errorf("found %v at p = %g", found, p)
+			}
+		}
+	}
+	for i, l := range levels {
+		n := float64(designs * sets)
+		if rate, se := below[i]/n, math.Sqrt(l*(1-l)/n); !(math.Abs(rate-l) <= 4*se) {
+			t.Errorf("p <= %g in %.4f of straight sets, want %g ± %.4f", l, rate, l, 4*se)
+		}
+	}
+	if most != secondBarrierDraws {
+		t.Errorf("at most %d draws: no small p was met", most)
 	}
 }
