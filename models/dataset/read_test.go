@@ -377,6 +377,7 @@ func TestRefusals(t *testing.T) {
 		{"a and b", "T/K,k_a/s^-1,k_b/s^-1\n300,1,2\n310,2,3\n", Options{}, []string{"several-rates:1"}},
 		{"T without unit by name", "foo,k/s^-1\n300,1\n310,2\n", Options{Columns: map[string][]string{"T": {"foo"}}}, []string{"ambiguous-temperature:1"}},
 		{"log k by name", "T/K,y\n300,1\n310,2\n", Options{Columns: map[string][]string{"log k": {"y"}}}, []string{"ambiguous-rate:1"}},
+		{"an ambiguous repeat by name", "T/K,a,log k\n300,1,2\n310,2,3\n", Options{Columns: map[string][]string{"k": {"a", "log k"}}}, []string{"ambiguous-rate:1"}},
 		{"one column twice", "T/K,y\n300,1\n310,2\n", Options{Columns: map[string][]string{"k": {"y", "y"}}}, []string{"role-named-twice:1"}},
 		{"one role twice", "T/K,k,a,b\n300,1,x,y\n310,2,x,y\n", Options{Columns: map[string][]string{"source": {"a", "b"}}}, []string{"role-named-twice:1"}},
 		{"point beside --decimal comma", "T/K;k/s^-1\n300;0.5\n310;0,6\n", Options{Decimal: "comma"}, []string{"not-a-number:2"}},
