@@ -221,6 +221,11 @@ func newPlan(in Input, opt Options) (*plan, error) {
 	if err := p.opt.Scheme.Check(n, p.stratify()); err != nil {
 		return nil, err
 	}
+	if s.Spent() > 0 && p.opt.Scheme == Pairs && !p.byPoint {
+		return nil, &Refusal{"pairs-across-sources",
+			"resampling pairs would draw points across sources, whose offsets are estimated from them",
+			"use the residual or the parametric scheme"}
+	}
 	for _, f := range in.Fits {
 		if f.Usable() && f.Nu > 0 && !p.exactlyKnown() && !p.scatters(f) {
 			return nil, &Refusal{"no-scatter",
@@ -336,7 +341,7 @@ func (p *plan) newGenerator(f *fit.Result) *generator {
 			lev[i] = math.NaN()
 		}
 	}
-	return newGenerator(p.in.Sample, p.opt.Scheme, f.Fitted, f.Residuals, lev, f.Params(), f.Sigma)
+	return newGenerator(p.in.Sample, p.opt.Scheme, f.Fitted, f.Residuals, lev, f.Params()+f.Spent, f.Sigma)
 }
 
 func (p *plan) addGenerators() error {
@@ -663,7 +668,7 @@ func (p *plan) output() *Output {
 // summarise turns the resampled values of one target into intervals. It reorders
 // diff and t.
 func (p *plan) summarise(k *kernel, j int, r *TargetResult, diff, t []float64) {
-	r.Estimate = dot(k.w[j], k.fit.P)
+	r.Estimate = dot(k.fit.P, k.w[j])
 	r.StdError = k.sd[j]
 	if !p.in.Sample.Model.KnownSigma() {
 		r.StdError *= k.fit.Sigma

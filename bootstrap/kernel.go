@@ -2,6 +2,7 @@ package bootstrap
 
 import (
 	"math"
+	"slices"
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
@@ -69,11 +70,11 @@ func solveTransposed(r []float64, m int, w, s []float64) {
 type kernel struct {
 	curve   models.Basis
 	index   int // of the candidate
-	n, p    int
+	n, p    int // p: parameters, those of nuisance columns included
 	sample  *fit.Sample
 	fit     *fit.Result
 	offset  []float64
-	x       []float64   // n x p, row-major
+	x       []float64   // n x p, row-major; the nuisance columns come last
 	q       []float64   // p rows of n: orthonormal columns of V^(-1/2)J, times V^(-1/2)
 	iv      []float64   // 1/V
 	targets []int       // which of Input.Targets
@@ -94,12 +95,22 @@ func (k *kernel) newScratch() *scratch {
 }
 
 func newKernel(s *fit.Sample, index int, res *fit.Result, curve models.Basis) *kernel {
-	n, p := s.Len(), len(curve.Info().Params)
+	n, own := s.Len(), len(curve.Info().Params)
 	k := &kernel{
-		curve: curve, index: index, n: n, p: p, sample: s, fit: res,
-		offset: make([]float64, n), x: make([]float64, n*p), iv: make([]float64, n),
+		curve: curve, index: index, n: n, p: own + s.Spent(), sample: s, fit: res,
+		offset: make([]float64, n), x: make([]float64, n*own), iv: make([]float64, n),
 	}
 	curve.Columns(s.TRef, s.T, k.offset, k.x)
+	if s.Spent() > 0 {
+		wide := make([]float64, 0, n*k.p)
+		for i := range n {
+			wide = append(wide, k.x[i*own:(i+1)*own]...)
+			for _, c := range s.Nuisance {
+				wide = append(wide, c[i])
+			}
+		}
+		k.x = wide
+	}
 	for i, v := range s.V {
 		k.iv[i] = 1 / v
 	}
@@ -121,7 +132,7 @@ func (k *kernel) design(sc *scratch, counts []int, par, e []float64) bool {
 			sc.a[p*n+i] = root * e[i]
 		}
 		if k.sample.Model.InK() {
-			root *= math.Exp(k.offset[i] + dot(row, par))
+			root *= math.Exp(k.offset[i] + dot(par, row))
 		}
 		for j, x := range row {
 			sc.a[j*n+i] = root * x
@@ -149,6 +160,7 @@ func (k *kernel) addTarget(which int, w []float64) bool {
 			}
 		}
 	}
+	w = append(slices.Clone(w), make([]float64, k.p-len(w))...)
 	solveTransposed(sc.r, k.p, w, sc.s)
 	c := make([]float64, k.n)
 	for j, s := range sc.s {
@@ -237,7 +249,7 @@ func (k *kernel) inK(sc *scratch, counts []int, par []float64, rss float64, diff
 	}
 	for j, w := range k.w {
 		solveTransposed(sc.r, k.p, w, sc.s)
-		diff[j] = dot(w, par) - dot(w, k.fit.P)
+		diff[j] = dot(par, w) - dot(k.fit.P, w)
 		t[j] = diff[j] / k.stdError(j, math.Sqrt(dot(sc.s, sc.s)), rss)
 	}
 	return true

@@ -31,11 +31,16 @@ const (
 type PureError struct {
 	SS           float64 // Σ (y - mean)²/V
 	DF           int     // points - temperatures; 0 without repeats
-	Temperatures int
+	Temperatures int     // of each source
 }
 
 // NewPureError computes it from single points, in order of T, not from means.
 func NewPureError(points *fit.Sample) PureError {
+	return pureErrorOf(points, func(i, j int) bool { return models.SameTemperature(points.T[i], points.T[j]) })
+}
+
+// pureErrorOf takes neighbours that are alike for repeats.
+func pureErrorOf(points *fit.Sample, alike func(i, j int) bool) PureError {
 	y := points.Y
 	if points.Model.InK() {
 		y = points.K
@@ -44,7 +49,7 @@ func NewPureError(points *fit.Sample) PureError {
 	for i := 0; i < len(y); {
 		j := i
 		var sw, swy float64
-		for ; j < len(y) && models.SameTemperature(points.T[j], points.T[i]); j++ {
+		for ; j < len(y) && alike(j, i); j++ {
 			sw += 1 / points.V[j]
 			swy += y[j] / points.V[j]
 		}
@@ -77,7 +82,7 @@ func CheckAdequacy(s *fit.Sample, f *fit.Result, pe PureError, onMeans bool, nul
 			adequate = &ok
 		}
 	}
-	switch p := f.Params(); {
+	switch p := f.Params() + f.Spent; {
 	case pe.DF > 0 && pe.Temperatures > p:
 		lack := f.RSS
 		if !onMeans {
@@ -209,6 +214,16 @@ func tangent(s *fit.Sample, f *fit.Result) [][]float64 {
 		c := make([]float64, n)
 		for i := range c {
 			c[i] = jac[i*p+j] / math.Sqrt(s.V[i])
+			if s.Model.InK() {
+				c[i] *= math.Exp(f.Fitted[i])
+			}
+		}
+		basis, _ = extend(basis, c, 1e-10)
+	}
+	for _, column := range s.Nuisance {
+		c := slices.Clone(column)
+		for i := range c {
+			c[i] /= math.Sqrt(s.V[i])
 			if s.Model.InK() {
 				c[i] *= math.Exp(f.Fitted[i])
 			}

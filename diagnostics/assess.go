@@ -33,6 +33,7 @@ func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, er
 	a.rank()
 	a.test()
 	a.decide()
+	a.compareSources()
 	if err := a.resample(ctx); err != nil {
 		return nil, err
 	}
@@ -67,6 +68,7 @@ type assessor struct {
 	secondRun     *SecondBarrier
 	rule          Rule
 	verdict       Verdict
+	between       *BetweenSources
 	tEff          float64
 
 	resampling *Resampling
@@ -102,17 +104,6 @@ func (a *assessor) notices() {
 			f.Cure = n.Cure
 		}
 		a.findings = append(a.findings, f)
-	}
-	if names := sources(a.set.Points); len(names) > 1 {
-		const most = 5 // more are counted, not named
-		who := names
-		if len(names) > most {
-			who = append(slices.Clone(names[:most]), fmt.Sprintf("%d more", len(names)-most))
-		}
-		a.find("sources-pooled", fmt.Sprintf("%d sources are taken as one: %s", len(names), list(who)), nil, nil)
-		if a.set.SeveralFiles() {
-			a.findings[len(a.findings)-1].Cure = "assess each file, or each source, by itself and compare"
-		}
 	}
 }
 
@@ -285,7 +276,7 @@ func (a *assessor) contradicted() (p float64, yes bool) {
 func (a *assessor) rank() {
 	s := a.data.sample
 	a.ranking = Rank(s, a.fits[:a.ranked], Criterion(a.opt.Criterion))
-	pe := NewPureError(a.data.single)
+	pe := a.data.pureError()
 	var nulls RunsNulls
 	for i := range a.ranking {
 		r := &a.ranking[i]
@@ -307,7 +298,7 @@ func (a *assessor) test() {
 		n, points := a.data.sample.Len(), a.data.single.Len()
 		a.find("temperature-means", fmt.Sprintf("the verdict uses the means at %d temperatures, not the %d single points, which share the errors of %d settings", n, points, n), nil, nil)
 	}
-	if a.second = a.opt.Designs.test(a.data.sample, a.straight, nil); a.second != nil {
+	if a.second = a.opt.Designs.test(a.data.sample, a.straight, a.data.sample.Nuisance); a.second != nil {
 		a.second.sequential = a.opt.SequentialNull
 		a.secondRun = a.second.Run()
 	}
@@ -345,7 +336,9 @@ func (a *assessor) testExponent(s *fit.Sample, power *fit.Result) ExponentTest {
 	set := ExponentSettings{Confidence: a.opt.Confidence, Band: a.opt.PrefactorBand}
 	var profile *ExponentProfile
 	if s.Model.InK() && power.Status == fit.Converged && power.Nu > 0 {
-		profile = newExponentProfile(s, power, a.opt.Confidence)
+		if profile = newExponentProfile(s, power, a.opt.Confidence); s.Spent() > 0 {
+			profile.Interval = profileOfRSS(power, profile.RSS, a.opt.Confidence)
+		}
 	}
 	return TestExponent(s, power, profile, set)
 }

@@ -420,7 +420,7 @@ func TestScatterTooSmallAndSources(t *testing.T) {
 		s.Points[i].UK, s.Points[i].Level = 0.03*s.Points[i].K, dataset.LevelStandard
 		s.Points[i].Source = []string{"east", "west"}[i%2]
 	}
-	if a := mustAssess(t, s, quick()); !a.finding("scatter-too-small") || !a.finding("sources-pooled") {
+	if a := mustAssess(t, s, quick()); !a.finding("scatter-too-small") || !a.finding("sources-compared") {
 		t.Errorf("findings %v", a.Findings)
 	}
 	s = lineSet(10, 290, 350, 60e3, 0.03, 1)
@@ -428,7 +428,7 @@ func TestScatterTooSmallAndSources(t *testing.T) {
 		s.Points[i].UK, s.Points[i].Level = 0.03*s.Points[i].K, dataset.LevelStandard
 		s.Points[i].Source = "east"
 	}
-	if a := mustAssess(t, s, quick()); a.finding("scatter-too-small") || a.finding("sources-pooled") {
+	if a := mustAssess(t, s, quick()); a.finding("scatter-too-small") || a.finding("sources-compared") || a.BetweenSources != nil {
 		t.Errorf("findings %v", a.Findings)
 	}
 }

@@ -106,19 +106,21 @@ type Finding struct {
 // Assessment is the whole answer of the main job, and the document that
 // assess --json prints.
 type Assessment struct {
-	Schema      string      `json:"schema"`
-	Tool        Tool        `json:"tool"`
-	Settings    Settings    `json:"settings"`
-	Dataset     DatasetInfo `json:"dataset"`
-	Columns     []Column    `json:"columns"`
-	Data        []Datum     `json:"data"`
-	Verdict     Verdict     `json:"verdict"`
-	Curvature   Curvature   `json:"curvature"`
-	Ranking     []Ranked    `json:"ranking"` // best first
-	AtReference AtReference `json:"at_reference"`
-	Publish     Publish     `json:"publish"`
-	Bootstrap   *Resampling `json:"bootstrap"` // nil with --resamples 0
-	Findings    []Finding   `json:"findings"`
+	Schema    string      `json:"schema"`
+	Tool      Tool        `json:"tool"`
+	Settings  Settings    `json:"settings"`
+	Dataset   DatasetInfo `json:"dataset"`
+	Columns   []Column    `json:"columns"`
+	Data      []Datum     `json:"data"`
+	Verdict   Verdict     `json:"verdict"`
+	Curvature Curvature   `json:"curvature"`
+	// BetweenSources compares the sources of the data; nil where there is one.
+	BetweenSources *BetweenSources `json:"between_sources"`
+	Ranking        []Ranked        `json:"ranking"` // best first
+	AtReference    AtReference     `json:"at_reference"`
+	Publish        Publish         `json:"publish"`
+	Bootstrap      *Resampling     `json:"bootstrap"` // nil with --resamples 0
+	Findings       []Finding       `json:"findings"`
 
 	// What figures need beyond the document.
 	Sample    *fit.Sample            `json:"-"` // the points or means that the verdict used

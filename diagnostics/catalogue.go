@@ -204,10 +204,45 @@ var catalogue = []Entry{
 		Cure:        "give measured rate constants, or their uncertainties",
 	},
 
+	// Sources.
 	{
-		Code: "sources-pooled", Title: "several sources taken as one", Severity: Warning,
-		Explanation: "The points come from several laboratories or methods. An offset between them is not fitted; where sources cover different temperatures it can bend the plot or hide a bend.",
-		Cure:        "assess each source by itself with --where source=NAME, and compare",
+		Code: "sources-compared", Title: "several sources, one offset each", Severity: Info,
+		Explanation: "The points come from several laboratories or methods. The verdict allows each source a factor of its own, the same at every temperature (ln k: an offset); the degrees of freedom are those of the points less three for the curve and one for each source beyond the first. Curves are fitted beside the offsets, and give the mean over the sources; k at the reference temperature is their mean there, and its uncertainty holds the scatter between them. Nothing that matters changes when the sources are taken as one.",
+	},
+	{
+		Code: "between-source-offset", Title: "the curvature is an offset between sources", Severity: Warning,
+		Explanation: "Taken as one the sources look curved. Offsets between them are significant (F test in the power-prefactor curve, p < 0.05), and with an offset for each source the exponent of T shrinks to less than half: what looked like curvature is largely a difference between laboratories or methods. The verdict is that with offsets.",
+		Cure:        "find out why the sources differ, or measure the whole range in one laboratory",
+	},
+	{
+		Code: "offsets-leave-open", Title: "with offsets allowed these data can no longer tell", Severity: Warning,
+		Explanation: "Taken as one the sources look curved; with an offset for each source the curvature is no longer found, but neither do the data show that it was an offset. Where sources cover different temperatures, offsets hide real curvature in up to 79 % of sets.",
+		Cure:        "measure at temperatures that two sources share, or the whole range in one laboratory",
+	},
+	{
+		Code: "offsets-show-curvature", Title: "offsets between sources hid curvature", Severity: Warning,
+		Explanation: "With an offset for each source the points are curved; taken as one the sources do not show it, since the offsets between them bend the plot the other way or scatter it. The verdict is that with offsets.",
+		Cure:        "look at each source by itself with --where source=NAME",
+	},
+	{
+		Code: "sources-confounded-partly", Title: "offsets and curvature partly confounded", Severity: Warning,
+		Explanation: "With an offset for each source the variance of the exponent of T is more than twice what it is when the sources are taken as one (variance inflation factor above 2, by the design alone): the sources cover different temperatures, and much of what could show curvature goes into the offsets.",
+		Cure:        "measure at temperatures that two sources share",
+	},
+	{
+		Code: "sources-confounded", Title: "offsets and curvature cannot be told apart", Severity: Warning,
+		Explanation: "With an offset for each source no degree of freedom is left, or the temperatures of the sources do not determine the exponent of T beside the offsets. The verdict takes the sources as one: an offset between them may bend the plot or hide a bend.",
+		Cure:        "measure at temperatures that two sources share, or the whole range in one laboratory",
+	},
+	{
+		Code: "one-point-source", Title: "a source of one point", Severity: Info,
+		Explanation: "A source with one point, or with one temperature where means are used, says nothing on curvature: its offset takes it up whole. It takes no part in the verdict and the curves, only in the mean over sources.",
+		Cure:        "measure at further temperatures there, or leave the source out",
+	},
+	{
+		Code: "pairs-across-sources", Title: "pairs are not drawn across sources", Severity: Alarm,
+		Explanation: "Resampling pairs would draw points across sources, while the offsets are estimated from the points of each.",
+		Cure:        "--scheme residual or --scheme parametric",
 	},
 
 	// Adequacy.

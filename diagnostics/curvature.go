@@ -163,6 +163,9 @@ func exponentUnitError(s *fit.Sample) float64 {
 	for k := range scratch {
 		scratch[k] = make([]float64, s.Len())
 	}
+	if s.Spent() > 0 {
+		return math.Sqrt(exponentVarianceBeside(s, w))
+	}
 	return math.Sqrt(exponentVariance(s, w, nil, scratch))
 }
 

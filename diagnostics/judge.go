@@ -26,6 +26,7 @@ type judge struct {
 	weights         []float64
 	rows            [3][]float64 // scratch of exponentVariance
 	fixed           []fixedRSS   // curves whose RSS is the profile of n at one point
+	root            float64      // of their rise of RSS, over that with offsets estimated
 }
 
 // fixedRSS is a candidate that is the power-prefactor with n held.
@@ -63,6 +64,10 @@ func newJudge(a *assessor) *judge {
 		j.weights[i] = 1 / v
 	}
 	j.unscaled = exponentVariance(s, j.weights, nil, j.rows)
+	j.root = 1
+	if s.Spent() > 0 {
+		j.besideOffsets(a)
+	}
 	return j
 }
 
@@ -118,7 +123,7 @@ func (j *judge) profileInterval(n float64, r *fit.Refit) (low, high float64, ok 
 		scale = r.RSS[j.power] / j.nu
 	}
 	slope := func(f fixedRSS) float64 { // root per unit of n
-		return math.Sqrt(max(0, r.RSS[f.index]-r.RSS[j.power])/scale) / math.Abs(f.n-n)
+		return math.Sqrt(max(0, r.RSS[f.index]-r.RSS[j.power])/scale) / math.Abs(f.n-n) / j.root
 	}
 	low, high = math.NaN(), math.NaN()
 	var below, above float64

@@ -31,6 +31,9 @@ type prepared struct {
 	group  []int           // for each point the index of its mean
 	sample *fit.Sample     // single or means, whichever the verdict uses
 	basis  string
+	// sources says how several sources are taken; nil where there is one.
+	sources *sourceSplit
+	source  []int // of each point; nil where there is one
 	// temperatureShare is the largest part of a relative variance that u(T)
 	// alone makes up, as a standard deviation of ln k; 0 without u(T).
 	temperatureShare float64
@@ -45,6 +48,7 @@ func prepare(set *dataset.Set, model fit.ErrorModel, replicates string) (*prepar
 	slices.SortStableFunc(p.points, func(a, b dataset.Point) int {
 		return cmp.Or(cmp.Compare(a.T, b.T), cmp.Compare(a.Row, b.Row))
 	})
+	p.bySource(set)
 	n := len(p.points)
 	t, k, v := make([]float64, n), make([]float64, n), make([]float64, n)
 	for i, pt := range p.points {
@@ -58,14 +62,25 @@ func prepare(set *dataset.Set, model fit.ErrorModel, replicates string) (*prepar
 	if err := p.addTemperatureVariance(); err != nil {
 		return nil, err
 	}
-	if err := p.formMeans(); err != nil {
+	if err := p.choose(replicates); err != nil {
 		return nil, err
+	}
+	if err := p.splitSources(replicates); err != nil {
+		return nil, err
+	}
+	return p, nil
+}
+
+// choose forms the means and takes what the verdict uses.
+func (p *prepared) choose(replicates string) error {
+	if err := p.formMeans(); err != nil {
+		return err
 	}
 	p.sample, p.basis = p.single, BasisPoints
 	if p.means != nil && replicates != ReplicatesIndependent {
 		p.sample, p.basis = p.means, BasisMeans
 	}
-	return p, nil
+	return nil
 }
 
 // variance is that of ln k, or of k where the model is InK; up to a common
@@ -112,15 +127,15 @@ func (p *prepared) addTemperatureVariance() error {
 	return err
 }
 
-// formMeans builds the temperature means: of ln k, or of k where the model is
+// formMeans builds the temperature means, of each source by itself: of ln k, or of k where the model is
 // InK, weighted by 1/V, with variance 1/Σ(1/V).
 func (p *prepared) formMeans() error {
 	s := p.single
-	p.group = make([]int, s.Len())
+	p.group, p.means = make([]int, s.Len()), nil
 	var t, m, v []float64
 	for i := 0; i < s.Len(); {
 		j, sw, swy := i, 0.0, 0.0
-		for ; j < s.Len() && models.SameTemperature(s.T[i], s.T[j]); j++ {
+		for ; j < s.Len() && models.SameTemperature(s.T[i], s.T[j]) && p.sameSource(i, j); j++ {
 			y := s.Y[j]
 			if s.Model.InK() {
 				y = s.K[j]

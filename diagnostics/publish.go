@@ -226,20 +226,23 @@ func LocalEnergy(r *fit.Result, t, confidence float64) fit.Estimate {
 // f = exp u(ln k). g is the smallest number >= 0 for which
 // f(T) = f(T_ref) exp|g (1/T - 1/T_ref)| is nowhere in the measured range below
 // exp u(ln k(T)). Without a fit all but the temperature is unknown.
-func atReference(r *fit.Result, tRef, confidence, tMin, tMax float64) AtReference {
+//
+// Where several sources were measured, scatter holds what lies between them.
+func atReference(r *fit.Result, tRef, confidence, tMin, tMax float64, scatter *sourceScatter) AtReference {
 	extrapolated := tRef < tMin || tRef > tMax
 	if r == nil {
 		nan := Real(math.NaN())
 		return AtReference{T: Real(tRef), K: NewEstimate(fit.Unknown()), F: nan, G: nan, Extrapolated: extrapolated}
 	}
-	ln := lnKAt(r, tRef, confidence)
+	lnKAt := func(t float64) fit.Estimate { return scatter.widen(lnKAt(r, t, confidence), r, confidence) }
+	ln := lnKAt(tRef)
 	g := 0.0
 	const steps = 256
 	for i := range steps + 1 {
 		// Even steps of 1/T: ln k is closest to a line there.
 		t := 1 / (1/tMin + (1/tMax-1/tMin)*float64(i)/steps)
 		d := math.Abs(1/t - 1/tRef)
-		if rise := lnKAt(r, t, confidence).StdError - ln.StdError; d > 1e-9/tRef && !(rise/d <= g) {
+		if rise := lnKAt(t).StdError - ln.StdError; d > 1e-9/tRef && !(rise/d <= g) {
 			g = rise / d
 		}
 	}
@@ -276,6 +279,7 @@ type toPublish struct {
 	// published where the verdict is unresolved.
 	Curvature Curvature
 	Profiles  map[string]fit.Estimate // as in formEstimates
+	Scatter   *sourceScatter          // between sources; nil for one
 }
 
 // publish says what to publish, in the form of the trade. Numbers are rounded to
@@ -675,16 +679,16 @@ func (w *publisher) form(f models.Form) {
 func (w *publisher) rate() {
 	r, t, c := w.in.Fit, w.in.TRef, w.in.Confidence
 	at := fmt.Sprintf("(%s K)", kelvinText(t))
-	ref := atReference(r, t, c, w.in.TMin, w.in.TMax)
-	note := ""
+	ref := atReference(r, t, c, w.in.TMin, w.in.TMax, w.in.Scatter)
+	note := w.in.Scatter.note()
 	if ref.Extrapolated {
-		note = "extrapolated"
+		note = joinNotes("extrapolated", note)
 	}
 	w.value(w.symbol+at, w.in.Quantity.Unit, ref.K.fit(), note)
 	if w.in.Style != StyleEvaluated || w.in.Exact {
 		return
 	}
-	ln, e := lnKAt(r, t, c), scaled(LocalEnergy(r, t, c), w.energy.PerKJ)
+	ln, e := w.in.Scatter.widen(lnKAt(r, t, c), r, c), scaled(LocalEnergy(r, t, c), w.energy.PerKJ)
 	single := func(symbol, unit string, v float64, text, note string) {
 		if math.IsNaN(v) {
 			text = unknownText

@@ -266,7 +266,7 @@ func TestUncertaintyFactorCovers(t *testing.T) {
 		r := fitNamed(t, s, c.curve)
 		low, high := s.Range()
 		for _, tRef := range []float64{low, 298.15, r.TRef, high, high + 100} {
-			a := atReference(r, tRef, 0.95, low, high)
+			a := atReference(r, tRef, 0.95, low, high, nil)
 			if want := tRef > high; a.Extrapolated != want {
 				t.Errorf("%s at %g K: extrapolated is %v", c.curve, tRef, a.Extrapolated)
 			}
@@ -292,7 +292,7 @@ func TestUncertaintyFactorCovers(t *testing.T) {
 // u(k) = k u(ln k), and the interval is that of ln k.
 func TestAtReference(t *testing.T) {
 	r := byHand(models.Straight(), 300, []float64{0.05, 200}, -5, 50e3)
-	a := atReference(r, 300, 0.95, 280, 340)
+	a := atReference(r, 300, 0.95, 280, 340, nil)
 	reference.Close(t, "k", float64(a.K.Value), math.Exp(-5), 1e-14)
 	reference.Close(t, "u(k)", float64(a.K.StdError), 0.05*math.Exp(-5), 1e-12)
 	reference.Close(t, "f", float64(a.F), math.Exp(0.05), 1e-12)
@@ -508,7 +508,7 @@ func TestPublishLeavesInputsAlone(t *testing.T) {
 		}
 	}
 	formEstimates(r, models.Frame{TForm: 300}, 0.95, perSecond, nil)
-	atReference(r, 300, 0.95, in.TMin, in.TMax)
+	atReference(r, 300, 0.95, in.TMin, in.TMax, nil)
 	if !slices.Equal(p, r.P) || !slices.Equal(cov, r.Cov) {
 		t.Error("the fit was modified")
 	}

@@ -44,10 +44,11 @@ func (a *assessor) publishInto(doc *Assessment) {
 		in.Fit, in.Profiles = doc.Fits[curve], profiles[curve]
 		in.Exact = roundingOf(in.Fit, a.data.sample, a.opt.Confidence).Exact
 		atRef = in.Fit
-	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, NewPureError(a.data.single), a.data.basis == BasisMeans, new(RunsNulls)); in.PowerAdequate != nil && !*in.PowerAdequate {
+	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, a.data.pureError(), a.data.basis == BasisMeans, new(RunsNulls)); in.PowerAdequate != nil && !*in.PowerAdequate {
 		atRef = nil
 	}
-	doc.AtReference = atReference(atRef, tRef, a.opt.Confidence, low, high)
+	in.Scatter = a.data.sourceScatter()
+	doc.AtReference = atReference(atRef, tRef, a.opt.Confidence, low, high, in.Scatter)
 	doc.Publish = publish(in)
 	if !a.set.Quantity.Known && !a.set.Quantity.Diffusion {
 		a.find("eyring-withheld", "ΔS‡ and ΔG‡ are not stated: the unit of "+symbolOf(a.set.Quantity)+" was not understood", nil, nil)

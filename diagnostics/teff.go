@@ -51,5 +51,8 @@ func effectiveTemperatureOf(s *fit.Sample, straight *fit.Result) float64 {
 			w[i] *= math.Exp(2 * straight.Fitted[i])
 		}
 	}
+	if s.Spent() > 0 {
+		return effectiveWithin(s, w)
+	}
 	return EffectiveTemperature(s.T, w)
 }

@@ -20,11 +20,11 @@ func Fit(s *Sample, c models.Curve) *Result {
 	}
 	r := newResult(s, c)
 	if r.Nu < 0 {
-		r.Reason = fmt.Sprintf("needs at least %d temperatures or points, has %d", r.Params(), r.N)
+		r.Reason = fmt.Sprintf("needs at least %d temperatures or points, has %d", r.Params()+r.Spent, r.N)
 		return r
 	}
 	if s.Model.InK() {
-		return fitInK(s, c)
+		return joint(s, fitInK(s, c))
 	}
 	switch c := c.(type) {
 	case models.Basis:
@@ -33,12 +33,12 @@ func Fit(s *Sample, c models.Curve) *Result {
 		// fitShaped leaves to Fit what follows from RSS, and gives its covariance
 		// as (XᵀV⁻¹X)⁻¹, without σ².
 		f := fitShaped(s, c)
-		f.Model, f.N, f.Nu = r.Model, r.N, r.Nu
+		f.Model, f.N, f.Spent, f.Nu = r.Model, r.N, r.Spent, r.Nu
 		f.Sigma, f.LogLik = r.Sigma, r.LogLik
 		if f.Status != Failed {
 			f.settle(s, f.Cov, 1)
 		}
-		return f
+		return joint(s, f)
 	}
 	r.Reason = "the curve is neither linear in its parameters nor a line plus a shape"
 	return r
@@ -51,7 +51,7 @@ func newResult(s *Sample, c models.Curve) *Result {
 	nan := math.NaN()
 	return &Result{
 		Curve: c, Model: s.Model, TRef: s.TRef,
-		N: s.Len(), Nu: s.Len() - p,
+		N: s.Len(), Spent: s.Spent(), Nu: s.Len() - p - s.Spent(),
 		RSS: nan, Sigma: nan, LogLik: nan,
 	}
 }
@@ -98,12 +98,12 @@ func fitBasis(s *Sample, c models.Basis) *Result {
 		y[i] = s.Y[i] - y[i]
 		w[i] = 1 / s.V[i]
 	}
-	f := Linear(x, y, w)
+	f := Linear(s.widened(x, p), y, w)
 	if !finite(f.RSS) || !finite(f.P...) {
 		r.Reason = "the least-squares solution is not finite; choose a unit in which variances are closer to 1"
 		return r
 	}
-	r.P, r.RSS = f.P, f.RSS
+	r.P, r.Beside, r.RSS = f.P[:p:p], f.P[p:], f.RSS
 	r.Residuals, r.Leverage = f.Residuals, f.Leverage
 	r.Fitted = make([]float64, n)
 	for i, e := range f.Residuals {
@@ -119,6 +119,7 @@ func fitBasis(s *Sample, c models.Basis) *Result {
 		r.Reason = fmt.Sprintf("the temperatures lie too close together for %d parameters", p)
 	}
 	r.settle(s, cov, 1)
+	r.split(p)
 	return r
 }
 

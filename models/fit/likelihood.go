@@ -30,7 +30,7 @@ func logLikelihood(s *Sample, lnRSS float64) float64 {
 		}
 	}
 	const ln2Pi = 1.8378770664093454836
-	l := -n/2*ln2Pi - sumLnV/2 - sumLnK
+	l := -n/2*ln2Pi - sumLnV/2 - sumLnK - s.Shift
 	if s.Model.KnownSigma() {
 		return l - math.Exp(lnRSS)/2
 	}
@@ -55,12 +55,14 @@ func lnRounding(s *Sample) float64 {
 	return 2*math.Log(4*0x1p-52*big) - math.Log(vMin) + math.Log(sum)
 }
 
-// K is the number of parameters the criteria count: σ is one where it is estimated.
+// K is the number of parameters the criteria count: σ is one where it is estimated,
+// and so is every nuisance column.
 func (r *Result) K() int {
+	k := r.Params() + r.Spent
 	if r.Model.KnownSigma() {
-		return r.Params()
+		return k
 	}
-	return r.Params() + 1
+	return k + 1
 }
 
 // AIC is -2 ln L + 2K (Akaike 1974).

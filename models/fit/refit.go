@@ -73,6 +73,17 @@ func NewRefitter(s *Sample, curves []models.Curve, fits []*Result, o RefitOption
 		panic("fit: one fit and one penalty are needed for each curve")
 	}
 	crit := newCriterion(s, len(curves), o.Penalty)
+	r := newPlainRefitter(s, curves, fits, crit, o)
+	if s.Spent() > 0 {
+		if beside := newOffsetRefitter(r, s, curves, fits, crit); beside != nil {
+			return beside
+		}
+	}
+	return r
+}
+
+// newPlainRefitter takes no notice of nuisance columns.
+func newPlainRefitter(s *Sample, curves []models.Curve, fits []*Result, crit criterion, o RefitOptions) Refitter {
 	if d := newResampleDesign(s, curves, fits, crit, o.ShapedParams); d != nil {
 		return d.refitter()
 	}

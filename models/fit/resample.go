@@ -242,7 +242,7 @@ const (
 
 // newWarmStart returns nil where the fit is not a trustworthy start.
 func (d *resampleDesign) newWarmStart(c models.Shaped, sign float64, f *Result) *warmStart {
-	if f == nil || f.Status != Converged || d.s.Len() <= len(f.P) {
+	if f == nil || f.Status != Converged || d.s.Len() <= len(f.P)+d.s.Spent() {
 		return nil
 	}
 	_, _, q := c.ToShape(f.P)
@@ -280,7 +280,7 @@ func (d *resampleDesign) newWarmStart(c models.Shaped, sign float64, f *Result) 
 	}
 	sigma := 1.0
 	if !d.s.Model.KnownSigma() {
-		sigma = math.Sqrt(f.RSS / float64(d.s.Len()-len(f.P)))
+		sigma = math.Sqrt(f.RSS / float64(d.s.Len()-len(f.P)-d.s.Spent()))
 	}
 	// Directions of unit length in the tangent plane: h = L⁻ᵀ(cos, sin), JᵀJ = LLᵀ.
 	l00 := math.Sqrt(m00)

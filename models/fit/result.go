@@ -46,10 +46,15 @@ type Result struct {
 	// is the σ of largest likelihood times sqrt(n/Nu), n counting measured entries.
 	Sigma  float64
 	N      int // points or means, limits included; Nu does not count them
-	Nu     int // N - number of parameters
+	Spent  int // parameters of nuisance columns
+	Nu     int // N - number of parameters - Spent
 	LogLik float64
 
-	Fitted    []float64 // ln k at the sample's temperatures
+	// Beside are the coefficients of the sample's nuisance columns, and BesideCov their
+	// covariance as Cov is that of P.
+	Beside, BesideCov []float64
+
+	Fitted    []float64 // ln k at the sample's temperatures, nuisance columns included
 	Residuals []float64 // y - fitted, in ln k, or in k where InK
 	Leverage  []float64
 	Warnings  []string

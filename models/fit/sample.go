@@ -50,6 +50,13 @@ type Sample struct {
 	// Limits are entries of which only a bound is known; the slices above hold the
 	// measured ones alone.
 	Limits []Limit
+	// Nuisance holds columns in ln k, such as offsets between sources, whose
+	// coefficients are estimated together with every curve: see WithOffsets. Each of
+	// them counts as a parameter.
+	Nuisance [][]float64
+	// Shift is the sum of what was taken off ln k: the likelihood stays a density of
+	// k as measured.
+	Shift float64
 }
 
 // NewSample checks and completes a sample. tRef is the reciprocal of the

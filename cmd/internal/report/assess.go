@@ -22,6 +22,7 @@ func WriteAssessment(w io.Writer, a *diagnostics.Assessment, figures []string, t
 	p.verdict(a)
 	p.publish(a)
 	p.test(a)
+	p.sources(a)
 	p.ranking(a)
 	p.findings(a)
 	p.data(a)
@@ -301,7 +302,11 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 		legend = append(legend, "•: the 95 % set")
 	}
 	if standIn {
-		legend = append(legend, "†: AIC, AICc undefined: needs N ≥ p + 3")
+		needs := 3
+		if b := a.BetweenSources; b != nil && !b.Confounded {
+			needs += offsetsIn(b)
+		}
+		legend = append(legend, fmt.Sprintf("†: AIC, AICc undefined: needs N ≥ p + %d", needs))
 	}
 	if saturated {
 		legend = append(legend, "–: passes through every point, no likelihood")
@@ -361,6 +366,7 @@ var said = map[string]bool{
 	"aicc-undefined": true, "curve-excluded": true, "curve-not-fitted": true, "curve-not-identified": true, // ranking
 	"forms-same-curve": true, "ranking-and-test": true, // nothing follows
 	"conditional-on-choice": true, // notes of publish
+	"sources-compared":      true, // sources
 }
 
 // findings prints alarms and warnings in full, with their cures, and one message
