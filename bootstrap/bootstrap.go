@@ -182,7 +182,8 @@ func Run(ctx context.Context, in Input, opt Options) (*Output, error) {
 type plan struct {
 	in      Input
 	opt     Options
-	y       []float64    // the data: ln k, or k
+	all     *fit.Sample  // in.Sample with its limits as further entries
+	y       []float64    // the data of all: ln k, or k
 	gens    []*generator // generating curves
 	cum     []float64    // their cumulative weights
 	strata  [][]int      // Pairs: entries, or points, that are exchanged
@@ -199,16 +200,17 @@ type plan struct {
 
 func newPlan(in Input, opt Options) (*plan, error) {
 	s := in.Sample
-	n := s.Len()
-	p := &plan{in: in, opt: opt, y: s.Y}
+	all := s.All()
+	n := all.Len()
+	p := &plan{in: in, opt: opt, all: all, y: all.Y}
 	if s.Model.InK() {
-		p.y = s.K
+		p.y = all.K
 	}
 	if err := p.setOptions(); err != nil {
 		return nil, err
 	}
 	share := in.NewJudge != nil
-	p.refit = share || s.Model.InK() && len(in.Targets) > 0
+	p.refit = share || (s.Model.InK() || len(s.Limits) > 0) && len(in.Targets) > 0
 	switch {
 	case p.refit && in.Refitter == nil:
 		panic("bootstrap: a refitter is needed")
@@ -218,6 +220,9 @@ func newPlan(in Input, opt Options) (*plan, error) {
 		panic("bootstrap: a judge needs states")
 	}
 
+	if err := p.checkLimits(); err != nil {
+		return nil, err
+	}
 	if err := p.opt.Scheme.Check(n, p.stratify()); err != nil {
 		return nil, err
 	}
@@ -248,6 +253,9 @@ func (p *plan) setOptions() error {
 	o := &p.opt
 	if o.Scheme == "" {
 		o.Scheme = DefaultScheme(p.in.Sample.Model)
+		if len(p.in.Sample.Limits) > 0 {
+			o.Scheme = Parametric
+		}
 	}
 	if o.Resamples == 0 {
 		o.Resamples = 9999
@@ -289,7 +297,7 @@ func (p *plan) scatters(f *fit.Result) bool {
 	}
 	var most float64
 	for i, y := range p.y {
-		most = math.Max(most, math.Max(math.Abs(y), least)/math.Sqrt(p.in.Sample.V[i]))
+		most = math.Max(most, math.Max(math.Abs(y), least)/math.Sqrt(p.all.V[i]))
 	}
 	return math.Sqrt(f.RSS/float64(len(p.y))) >= 1e-12*most
 }
@@ -297,7 +305,7 @@ func (p *plan) scatters(f *fit.Result) bool {
 // stratify groups what Pairs exchanges: the points of each mean, or the entries of
 // each temperature, where every one has at least two; else all entries together.
 func (p *plan) stratify() (replicated bool) {
-	n := p.in.Sample.Len()
+	n := p.all.Len()
 	groups, group := n, []int(nil)
 	if pts := p.in.Points; pts != nil {
 		group = pts.Group
@@ -306,7 +314,7 @@ func (p *plan) stratify() (replicated bool) {
 		}
 		p.byPoint = true
 	} else {
-		groups, group = models.NumberTemperatures(p.in.Sample.T)
+		groups, group = models.NumberTemperatures(p.all.T)
 	}
 	p.strata = make([][]int, groups)
 	for i, g := range group {
@@ -331,6 +339,9 @@ func (p *plan) stratify() (replicated bool) {
 // newGenerator makes the errors around one fit; nil if it leaves none.
 func (p *plan) newGenerator(f *fit.Result) *generator {
 	n := p.in.Sample.Len()
+	if len(p.in.Sample.Limits) > 0 && f.Usable() {
+		return p.aboutLimits(f)
+	}
 	if !f.Usable() || len(f.Fitted) != n || len(f.Residuals) != n {
 		return nil
 	}
@@ -402,6 +413,9 @@ func (p *plan) addTargets() error {
 			p.notes[i] = fmt.Sprintf("%s leaves no degree of freedom to resample from", f.Curve.Info().Name)
 			continue
 		}
+		if len(p.in.Sample.Limits) > 0 {
+			k.errorWithLimits()
+		}
 		if byCurve[t.Curve] == nil {
 			byCurve[t.Curve] = k
 			p.kernels = append(p.kernels, k)
@@ -438,7 +452,7 @@ func apart[T int | int32 | float64](n int) []T {
 }
 
 func (p *plan) newWorker() *worker {
-	n := p.in.Sample.Len()
+	n := p.all.Len()
 	w := &worker{
 		p: p, s: newStream(),
 		y: apart[float64](n), e: apart[float64](n),
@@ -585,7 +599,7 @@ func (w *worker) state() int16 {
 // curve's own fit.
 func (w *worker) evaluate(k *kernel, sc *scratch) bool {
 	p := w.p
-	inK := p.in.Sample.Model.InK()
+	inK := p.in.Sample.Model.InK() || len(p.in.Sample.Limits) > 0 // every resample is refitted
 	if k.gen != nil {
 		k.gen.draw(w.s, p.opt.Scheme, w.e, w.ix)
 		if inK {
@@ -600,6 +614,9 @@ func (w *worker) evaluate(k *kernel, sc *scratch) bool {
 			w.one.RefitOne(k.index, w.y, w.counts, &w.out)
 		} else {
 			w.refitOnce()
+		}
+		if r, ok := w.refit.(fit.StdErrorRefitter); ok {
+			return k.limits(r, w.out.P[k.index], w.out.RSS[k.index], w.diff, w.t)
 		}
 		return k.inK(sc, w.counts, w.out.P[k.index], w.out.RSS[k.index], w.diff, w.t)
 	}

@@ -42,7 +42,7 @@ func DefaultScheme(m fit.ErrorModel) Scheme {
 
 // Refusal is an error that says why these data cannot be resampled, with a cure.
 type Refusal struct {
-	Code    string // stable: scheme-unknown, pairs-too-few, wild-too-few, pairs-across-sources, no-scatter, no-degrees-of-freedom
+	Code    string // stable: scheme-unknown, pairs-too-few, wild-too-few, limits-scheme, pairs-across-sources, no-scatter, no-degrees-of-freedom
 	Message string
 	Cure    string
 }

@@ -111,11 +111,13 @@ func mills(z float64) (lnPhi, m, zm float64) {
 type censored struct {
 	c          models.Curve
 	linear     bool // the curve has no second derivatives
+	gauss      bool // do without them: a resample needs no covariance, and a step costs a ninth
 	inK, known bool
 	tRef       float64
 	n, p       int     // measured entries of the sample, parameters
 	taken      float64 // measured entries that take part
 	spent      int     // degrees of freedom that the fit takes
+	steps      int     // of minimise
 	unit       float64 // in which k is compared
 	lnUnit     float64
 	least      float64 // bound of ln σ: what rounding of the data leaves
@@ -146,7 +148,7 @@ func newCensored(s *Sample, c models.Curve) *censored {
 	n, m, p := s.Len(), s.Len()+len(s.Limits), len(c.Info().Params)
 	e := &censored{
 		c: c, inK: s.Model.InK(), known: s.Model.KnownSigma(), tRef: s.TRef,
-		n: n, p: p, spent: p, unit: o.scale, lnUnit: o.lnScale, barriers: o.barriers,
+		n: n, p: p, spent: p, steps: 100, unit: o.scale, lnUnit: o.lnScale, barriers: o.barriers,
 		t: all.T, y: make([]float64, m), w: make([]float64, m),
 		side: make([]float64, m), count: make([]float64, m),
 		par: make([]float64, p), b: make([]float64, p*p), d: p,
@@ -315,7 +317,7 @@ func (e *censored) value(par []float64, lambda float64, derivs bool) float64 {
 		sum += 2 * e.taken * lambda
 		e.grad[d] += 2 * e.taken
 	}
-	if derivs && !e.linear {
+	if derivs && !e.linear && !e.gauss {
 		e.bend(par)
 	}
 	if math.IsNaN(sum) {
@@ -465,12 +467,11 @@ func (e *censored) scatter() {
 // minimise takes par and lambda to the minimum near them. It stops where Newton's
 // decrement, by which D still exceeds the minimum, is at most tolerance: D is in units
 // of twice the log-likelihood, in which 1 is one standard error. ok is false where that
-// is not reached in 100 steps.
+// is not reached in the steps allowed.
 func (e *censored) minimise(tolerance float64) (value float64, ok bool) {
-	const steps = 100
 	value = e.value(e.par, e.lambda, true)
 	var damping float64
-	for range steps {
+	for range e.steps {
 		if math.IsInf(value, 0) {
 			return value, false
 		}
@@ -674,6 +675,26 @@ func (e *censored) completed(s *Sample) *Sample {
 		if !e.inK {
 			out.Y[len(out.Y)-1] = y
 		}
+	}
+	return out
+}
+
+// measured are the entries taken that are not limits.
+func (e *censored) measured(s *Sample) *Sample {
+	out := &Sample{Model: s.Model, TRef: s.TRef}
+	for i, t := range e.t {
+		if e.side[i] != 0 || e.count[i] == 0 {
+			continue
+		}
+		k := e.y[i] * e.unit
+		if !e.inK {
+			k = math.Exp(e.y[i])
+		}
+		v := 1 / square(e.w[i])
+		if e.inK && e.known {
+			v *= e.unit * e.unit
+		}
+		out.add(t, k, v/e.count[i])
 	}
 	return out
 }

@@ -316,3 +316,132 @@ func BenchmarkFitLimits(b *testing.B) {
 		})
 	}
 }
+
+// A refit of the data themselves gives the fit back, and a resample gives what Fit
+// gives to a sample of it.
+func TestLimitRefitter(t *testing.T) {
+	for _, model := range ErrorModels {
+		v := equal(1)
+		if model == StatedAbsolute {
+			v = equal(9e-8)
+		} else if model.KnownSigma() {
+			v = equal(4e-4)
+		}
+		s := limitSample(t, model, v)
+		curves := models.Default()
+		var fits []*Result
+		for _, c := range curves {
+			fits = append(fits, Fit(s, c))
+		}
+		r := NewRefitter(s, curves, fits, RefitOptions{}).(StdErrorRefitter)
+		all := s.All()
+		y := append([]float64(nil), all.Y...)
+		if model.InK() {
+			y = append([]float64(nil), all.K...)
+		}
+		var out Refit
+		r.Refit(y, &out)
+		for j, f := range fits {
+			if f.Status == Converged {
+				name := string(model) + ", " + curves[j].Info().Name
+				reference.Close(t, name+": RSS of the data", out.RSS[j], f.RSS, 1e-6)
+				if p := len(out.P[j]); p > 0 {
+					w := make([]float64, p)
+					w[p-1] = 1
+					reference.Close(t, name+": standard error", r.StdError(j, w), math.Sqrt(f.Cov[p*p-1]), 1e-4)
+				}
+			}
+		}
+		// Resamples: the limits of some become measured.
+		rng := rand.New(rand.NewPCG(3, 4))
+		for range 10 {
+			sub := &Sample{Model: model, TRef: s.TRef}
+			var limits []Limit
+			for i, f := range fits[0].Fitted {
+				e := 0.05 * rng.NormFloat64()
+				y[i] = f + e
+				sub.add(s.T[i], math.Exp(y[i]), s.V[i])
+				if model.InK() {
+					y[i] = math.Exp(y[i])
+				}
+			}
+			f := make([]float64, len(s.Limits))
+			for i, l := range s.Limits {
+				curves[0].LnK(s.TRef, []float64{l.T}, fits[0].P, f[i:i+1], nil)
+				k := math.Exp(f[i] + 0.2*rng.NormFloat64())
+				if (k < l.K) == l.Below {
+					limits = append(limits, l)
+				} else {
+					sub.add(l.T, k, l.V)
+				}
+				y[s.Len()+i] = math.Log(k)
+				if model.InK() {
+					y[s.Len()+i] = k
+				}
+			}
+			sub.Limits = limits
+			r.Refit(y, &out)
+			for j, c := range curves {
+				f := Fit(sub, c)
+				if !f.Usable() {
+					continue
+				}
+				var d float64
+				if w := r.(*limitRefitter).work[j].value; math.IsInf(out.RSS[j], 0) {
+					if better := Fit(sub, curves[0]).RSS/f.RSS - 1; better > 0.1 {
+						t.Errorf("%s, %s: excluded, but better than the line by %g of RSS", model, c.Info().Name, better)
+					}
+					continue
+				} else {
+					n := float64(sub.Len())
+					d = w - f.RSS
+					if !model.KnownSigma() {
+						e := newCensored(sub, c)
+						d = w - n*(math.Log(f.RSS/square(e.unit)/n)+1)
+						if model.InK() {
+							d = w - n*(math.Log(f.RSS/n)+1-2*math.Log(r.(*limitRefitter).work[j].e.unit))
+						}
+					}
+				}
+				// Valleys are followed less far: 0.1 of -2 ln L is no difference to a ranking,
+				// nor is 1 much of one where the errors of these data are not those of the model.
+				tol := 1e-4
+				if _, basis := c.(models.Basis); !basis {
+					if tol = 0.1; model.InK() {
+						tol = 1
+					}
+				}
+				if !(d < tol) {
+					t.Errorf("%s, %s: -2 ln L of a resample %g above that of Fit", model, c.Info().Name, d)
+				}
+			}
+		}
+	}
+}
+
+func BenchmarkRefitLimits(b *testing.B) {
+	for _, model := range []ErrorModel{Relative, Absolute} {
+		b.Run(string(model), func(b *testing.B) {
+			s := limitSample(b, model, equal(1))
+			curves := models.Default()
+			var fits []*Result
+			for _, c := range curves {
+				fits = append(fits, Fit(s, c))
+			}
+			r := NewRefitter(s, curves, fits, RefitOptions{})
+			y := append([]float64(nil), s.All().Y...)
+			rng := rand.New(rand.NewPCG(3, 4))
+			var out Refit
+			b.ResetTimer()
+			for range b.N {
+				for i, v := range s.All().Y {
+					y[i] = v + 0.02*rng.NormFloat64()
+					if model.InK() {
+						y[i] = math.Exp(y[i])
+					}
+				}
+				r.Refit(y, &out)
+			}
+		})
+	}
+}

@@ -39,7 +39,8 @@ type Refit struct {
 // goroutine; Clone gives another worker its own.
 type Refitter interface {
 	// Refit fits y: new values of ln k, or of k where the error model is InK, at
-	// the temperatures and variances of the sample.
+	// the temperatures and variances of the sample. Limits have values after those of
+	// the measured entries: one on its side of the bound is that limit again.
 	Refit(y []float64, out *Refit)
 	// RefitCounts does the same where entry i is taken counts[i] times, as in
 	// resampling pairs. Entries taken zero times do not take part. A curve fails
@@ -73,6 +74,9 @@ func NewRefitter(s *Sample, curves []models.Curve, fits []*Result, o RefitOption
 		panic("fit: one fit and one penalty are needed for each curve")
 	}
 	crit := newCriterion(s, len(curves), o.Penalty)
+	if len(s.Limits) > 0 {
+		return newLimitRefitter(s, curves, fits, crit, o.ShapedParams)
+	}
 	r := newPlainRefitter(s, curves, fits, crit, o)
 	if s.Spent() > 0 {
 		if beside := newOffsetRefitter(r, s, curves, fits, crit); beside != nil {

@@ -1,0 +1,261 @@
+package fit
+
+import (
+	"math"
+
+	"onebarrier/models"
+)
+
+// StdErrorRefitter is a Refitter that knows the standard errors of what it refitted.
+type StdErrorRefitter interface {
+	OneRefitter
+	// StdError is the standard error of the linear function w of the parameters of
+	// candidate j in the last refit; NaN where there is none.
+	StdError(j int, w []float64) float64
+}
+
+// limitRefitter refits to resamples of a sample with limits. Their values follow
+// those of the measured entries: one on its side of the bound, or on it, is that limit
+// again, and any other counts as measured (censoring at fixed bounds, of type I). RSS
+// is as in Result, with the number of measured entries of the sample.
+type limitRefitter struct {
+	s      *Sample
+	curves []models.Curve
+	fits   []*Result
+	params []int // parameters given out, of each curve
+	criterion
+	work []*limitWork
+	line *limitWork // about which limits are completed, for starts of other curves
+	plan *plan      // of all entries; nil where the errors are in k
+}
+
+// limitWork is the memory of refits of one curve.
+type limitWork struct {
+	e     *censored
+	from  []float64 // estimate of the sample; nil where there is none
+	basis []float64 // its directions
+	reach float64
+	value float64 // of the last refit
+	ok    bool
+	cov   []float64
+	known int // 0: cov not asked for yet, 1: good, -1: none
+}
+
+var _ StdErrorRefitter = (*limitRefitter)(nil)
+
+func newLimitRefitter(s *Sample, curves []models.Curve, fits []*Result, c criterion, shapedParams bool) *limitRefitter {
+	r := &limitRefitter{s: s, curves: curves, fits: fits, criterion: c, params: make([]int, len(curves))}
+	for j, c := range curves {
+		_, linear := c.(models.Basis)
+		if linear || shapedParams {
+			r.params[j] = len(c.Info().Params)
+		}
+		r.work = append(r.work, newLimitWork(s, c, fits[j]))
+		// The most flexible linear curve completes limits best.
+		if w := r.work[j]; linear && w.from != nil && (r.line == nil || w.e.p > r.line.e.p) {
+			r.line = w
+		}
+	}
+	if r.line == nil {
+		r.line = newLimitWork(s, models.Straight(), Fit(s, models.Straight()))
+	}
+	if !s.Model.InK() {
+		all := s.All()
+		r.plan = newPlan(all.T, all.V)
+		r.plan.makeNodes()
+	}
+	return r
+}
+
+func newLimitWork(s *Sample, c models.Curve, f *Result) *limitWork {
+	w := &limitWork{e: newCensored(s, c), cov: make([]float64, len(c.Info().Params)*len(c.Info().Params))}
+	if f.Usable() && len(f.P) == w.e.p && limitsUnused(s, f.Measured()) == "" && w.e.start(f.P) {
+		w.from, w.basis, w.reach = f.P, append([]float64(nil), w.e.b...), w.e.reach
+	}
+	return w
+}
+
+// Clone implements Refitter.
+func (r *limitRefitter) Clone() Refitter {
+	c := *r
+	c.work, c.line = nil, nil
+	for j, curve := range r.curves {
+		c.work = append(c.work, newLimitWork(r.s, curve, r.fits[j]))
+		if r.work[j] == r.line {
+			c.line = c.work[j]
+		}
+	}
+	if c.line == nil {
+		c.line = newLimitWork(r.s, models.Straight(), Fit(r.s, models.Straight()))
+	}
+	return &c
+}
+
+// Refit implements Refitter.
+func (r *limitRefitter) Refit(y []float64, out *Refit) { r.refit(-1, y, nil, out) }
+
+// RefitCounts implements Refitter.
+func (r *limitRefitter) RefitCounts(y []float64, counts []int, out *Refit) {
+	r.refit(-1, y, counts, out)
+}
+
+// RefitOne implements OneRefitter.
+func (r *limitRefitter) RefitOne(j int, y []float64, counts []int, out *Refit) {
+	r.refit(j, y, counts, out)
+}
+
+// StdError implements StdErrorRefitter.
+func (r *limitRefitter) StdError(j int, w []float64) float64 {
+	work := r.work[j]
+	if !work.ok {
+		return math.NaN()
+	}
+	if work.known == 0 {
+		work.known = -1
+		if work.e.covariance(work.cov) {
+			work.known = 1
+		}
+	}
+	if work.known < 0 {
+		return math.NaN()
+	}
+	var v float64
+	for i, wi := range w {
+		for k, wk := range w {
+			v += wi * work.cov[i*len(w)+k] * wk
+		}
+	}
+	return math.Sqrt(v)
+}
+
+// refit fits curve only, or all where that is negative.
+func (r *limitRefitter) refit(only int, y []float64, counts []int, out *Refit) {
+	if m := r.s.Len() + len(r.s.Limits); len(y) != m || counts != nil && len(counts) != m {
+		panic("fit: a resample must have one value for each entry of the sample and each limit")
+	}
+	out.prepare(r.params)
+	out.How, out.First = HowLinear, -1
+	distinct := math.MaxInt
+	if counts != nil {
+		var taken []float64
+		for i, t := range r.s.T {
+			if counts[i] > 0 {
+				taken = append(taken, t)
+			}
+		}
+		distinct = models.CountTemperatures(taken)
+	}
+	r.line.linear(y, counts)
+	var completed *Sample
+	for j := range r.curves {
+		if only >= 0 && j != only {
+			continue
+		}
+		w := r.work[j]
+		if distinct <= w.e.p {
+			w.ok = false
+			out.fail(j)
+			continue
+		}
+		out.How = max(out.How, HowWarm)
+		if w != r.line {
+			w.linear(y, counts)
+		}
+		_, shaped := r.curves[j].(models.Shaped)
+		if !w.ok || shaped || !w.e.linear && w.from == nil {
+			if completed == nil && r.line.ok {
+				completed = r.line.e.completed(r.s)
+			}
+			r.cold(w, j, completed)
+			if r.s.Model.InK() { // where minima are many
+				r.cold(w, j, w.e.measured(r.s))
+			}
+			out.How = max(out.How, HowCold)
+		}
+		switch {
+		case w.ok && !(shaped && r.line.ok && r.worse(w)):
+			out.RSS[j] = w.e.rss(w.value)
+			copy(out.P[j], w.e.par)
+		case shaped || r.fits[j].Status == Excluded:
+			out.RSS[j] = math.Inf(1)
+			out.blank(j)
+		default:
+			out.fail(j)
+		}
+	}
+	if only < 0 {
+		r.first(out)
+	}
+}
+
+// worse reports whether a shaped curve does not beat the straight line, where that is
+// a candidate.
+func (r *limitRefitter) worse(w *limitWork) bool {
+	for j, c := range r.curves {
+		if l := r.work[j]; c.Info().Name == models.Straight().Info().Name && l.ok {
+			return !(w.value < l.value-1e-9)
+		}
+	}
+	return false
+}
+
+// linear refits from the estimate of the sample.
+func (w *limitWork) linear(y []float64, counts []int) {
+	e := w.e
+	e.take(y, counts)
+	w.ok, w.known = false, 0
+	if w.from == nil {
+		return
+	}
+	copy(e.par, w.from)
+	copy(e.b, w.basis)
+	e.d, e.reach = e.p, w.reach
+	w.descend()
+}
+
+// descend goes down from par; Newton's method takes over where that of Gauss and
+// Newton does not end soon. Where neither ends, the curve runs along a valley in which
+// every point is as good as the last.
+func (w *limitWork) descend() {
+	e := w.e
+	e.scatter()
+	e.gauss, e.steps = true, 12
+	w.value, w.ok = e.minimise(refitTolerance)
+	if e.gauss = false; !w.ok {
+		e.steps = 25
+		w.value, w.ok = e.minimise(refitTolerance)
+		w.ok = w.ok || !e.linear && finite(w.value)
+	}
+}
+
+// refitTolerance is the decrement at which a resample has converged: a thousandth of
+// a standard error before the last step, 1e-6 of one after it.
+const refitTolerance = 1e-6
+
+// cold looks for a better minimum from a fit to the resample with its limits
+// completed; it keeps what w holds where there is none.
+func (r *limitRefitter) cold(w *limitWork, j int, completed *Sample) {
+	if completed == nil {
+		return
+	}
+	c := r.curves[j]
+	var f *Result
+	shaped, is := c.(models.Shaped)
+	if _, softplus := softplusSign(c); is && softplus && r.plan != nil && completed.Len() == len(r.plan.rows) {
+		f = r.plan.fit(completed, shaped)
+	} else {
+		f = Fit(completed, c)
+	}
+	if f.P == nil {
+		return
+	}
+	e := w.e
+	before, lambda, value, ok := append([]float64(nil), e.par...), e.lambda, w.value, w.ok
+	if e.start(f.P) {
+		if w.descend(); w.ok && (!ok || w.value < value-1e-9) {
+			return
+		}
+	}
+	copy(e.par, before)
+	e.lambda, w.value, w.ok = lambda, value, ok
+}
