@@ -89,6 +89,22 @@ type Shaped interface {
 	ToShape(p []float64) (a, e float64, q []float64)
 }
 
+// Seeded is a curve that is neither: linear in its first two parameters, ln k(T_ref) and
+// an energy, once the third, q, is given. q is bounded, and at one value of it the curve
+// is a straight line in 1/T. LnK and ELoc may leave NaN beyond the bounds.
+//
+// Fitting looks at every seed, so that the best fit must lie next to the best of them.
+type Seeded interface {
+	Curve
+	// Bounds gives the range of q, ends included, for data from tMin to tMax and the
+	// reference temperature tRef, and its value for the straight line.
+	Bounds(tRef, tMin, tMax float64) (low, straight, high float64)
+	// Seeds gives values of q from the low bound to the high one, both included, in
+	// ascending order and so close together that the curves through the same data
+	// change little from one to the next.
+	Seeds(tRef, tMin, tMax float64) []float64
+}
+
 // CentredX fills x with (1/T - 1/tRef)/R in mol/J, formed without subtracting
 // two nearly equal reciprocals.
 func CentredX(tRef float64, t, x []float64) {

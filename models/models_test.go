@@ -100,20 +100,22 @@ func curveNames(cs []Curve) string {
 }
 
 func TestSelect(t *testing.T) {
-	// The five curves and their order: table of curves in the methods.
-	const five = "straight,root-prefactor,linear-prefactor,power-prefactor,parallel"
+	// The default curves and their order: table of curves in the methods, and series.
+	const six = "straight,root-prefactor,linear-prefactor,power-prefactor,parallel,series"
 	for list, want := range map[string]string{
-		"":                    five,
-		"  ":                  five,
-		"straight, parallel":  "straight,parallel",
-		"parallel,straight":   "parallel,straight",
-		"arrhenius,straight":  "straight",
-		"eyring":              "linear-prefactor",
-		"+parallel":           five,
-		"+eyring,+parallel":   five,
-		"modified-arrhenius,": "",
-		"+":                   "",
-		"straigth":            "",
+		"":                         six,
+		"  ":                       six,
+		"straight, parallel":       "straight,parallel",
+		"parallel,straight":        "parallel,straight",
+		"arrhenius,straight":       "straight",
+		"eyring":                   "linear-prefactor",
+		"+vogel":                   six + ",vogel",
+		"+reversible-inactivation": six, // a form of series
+		"+parallel":                six,
+		"+eyring,+parallel":        six,
+		"modified-arrhenius,":      "",
+		"+":                        "",
+		"straigth":                 "",
 	} {
 		got, err := Select(list)
 		switch {
@@ -133,19 +135,17 @@ func TestSelect(t *testing.T) {
 	}
 }
 
-// "+name" must add a curve that is not a default one; the catalogue has none yet,
-// so the list is given one for the test.
-func TestSelectAdds(t *testing.T) {
-	saved := catalogue
-	defer func() { catalogue = saved }()
-	catalogue = slices.Clone(saved)
-	catalogue[4].isDefault = false
-	got, err := Select("+parallel")
-	if want := "straight,root-prefactor,linear-prefactor,power-prefactor,parallel"; err != nil || curveNames(got) != want {
-		t.Errorf("Select(+parallel) = %s, %v; want %s", curveNames(got), err, want)
+// Curves beyond the default are fitted only when named.
+func TestDefault(t *testing.T) {
+	var more []string
+	def := curveNames(Default())
+	for _, c := range All() {
+		if n := c.Info().Name; !strings.Contains(def, n) {
+			more = append(more, n)
+		}
 	}
-	if got := curveNames(Default()); strings.Contains(got, "parallel") {
-		t.Errorf("Default() = %s holds a curve that is not a default one", got)
+	if got := strings.Join(more, ","); got != "drifting-heat-capacity,tunnelling-wigner,tunnelling-bell,vogel,deformed" {
+		t.Errorf("fitted only when named: %s", got)
 	}
 }
 
@@ -224,13 +224,16 @@ func TestPerMoleAndPerMolecule(t *testing.T) {
 	for _, c := range All() {
 		np := len(c.Info().Params)
 		for _, par := range c.Info().Params {
-			if par.Unit != "k" && par.Unit != "J/mol" && par.Unit != "1" {
+			if par.Unit != "k" && par.Unit != "J/mol" && par.Unit != "1" && par.Unit != "K" {
 				t.Errorf("%s: unit %q of %s is not known to this test", c.Info().Name, par.Unit, par.Symbol)
 			}
 		}
 		p := []float64{-30, 12e3, -28, 40e3}[:np]
-		if c.Info().Name == "power-prefactor" {
-			p[2] = 1.5
+		if u := c.Info().Params[np-1].Unit; np > 2 && c.Info().Params[2].Unit != "k" {
+			p[2], p[np-1] = 1.5, 1.5
+			if u == "K" {
+				p[2] = 120
+			}
 		}
 		q := slices.Clone(p)
 		for j, par := range c.Info().Params {

@@ -18,6 +18,12 @@ var catalogue = []struct {
 	{LinearPrefactor(), true},
 	{PowerPrefactor{}, true},
 	{Parallel{}, true},
+	{Series{}, true},
+	{DriftingHeatCapacity{}, false},
+	{TunnellingWigner(), false},
+	{TunnellingBell(), false},
+	{Vogel{}, false},
+	{Deformed{}, false},
 }
 
 // All returns every registered curve.

@@ -22,7 +22,9 @@ type objective struct {
 	lnScale float64 // its ln
 	y, root []float64
 
-	barriers []int // parameters that are bounded
+	barriers []int   // energies that are bounded by maxBarrier
+	seeded   bool    // the third parameter is bounded too
+	low, up  float64 // by these
 }
 
 func newObjective(s *Sample, c models.Curve) *objective {
@@ -38,6 +40,11 @@ func newObjective(s *Sample, c models.Curve) *objective {
 				o.barriers = append(o.barriers, j)
 			}
 		}
+	}
+	if c, ok := c.(models.Seeded); ok {
+		low, high := s.Range()
+		o.seeded = true
+		o.low, _, o.up = c.Bounds(s.TRef, low, high)
 	}
 	if !o.inK {
 		return o
@@ -59,9 +66,13 @@ func newObjective(s *Sample, c models.Curve) *objective {
 	return o
 }
 
-// beyond reports whether a barrier of a shaped curve exceeds maxBarrier: such steps
-// are refused, since two paths could follow any single point with them.
+// beyond reports whether a barrier of a shaped curve exceeds maxBarrier, or the shape of
+// a seeded one its bounds: such steps are refused, since two paths could follow any
+// single point with them.
 func (o *objective) beyond(p []float64) bool {
+	if o.seeded && !(p[2] >= o.low && p[2] <= o.up) {
+		return true
+	}
 	for _, j := range o.barriers {
 		if !(math.Abs(p[j]) <= maxBarrier) {
 			return true
@@ -107,14 +118,20 @@ func fitInK(s *Sample, c models.Curve) *Result {
 	}
 	exclude := func() *Result {
 		r.Status, r.RSS = Excluded, line.RSS
-		r.Reason = "the data bend the other way, or not at all"
+		r.Reason = bendsTheOtherWay
 		r.settle(s, nil, 1)
 		return r
 	}
 	o := newObjective(s, c)
 	pr, engine := o.problem(), newSolver(s.Len(), p)
 	var best *Solution
-	if two, found, ok := twoPaths(s, c, starts); ok {
+	if w := newBentInK(o); w != nil && line.Usable() && s.DistinctT() >= p {
+		at, found := w.fit(line.P, line.RSS/square(o.unit), starts)
+		if !found {
+			return exclude()
+		}
+		starts = [][]float64{at}
+	} else if two, found, ok := twoPaths(s, c, starts); ok {
 		if !found {
 			return exclude()
 		}
@@ -246,8 +263,12 @@ func (o *objective) bestStart(pr Problem, engine *solver, starts [][]float64) (p
 	return p, reason
 }
 
-// atBound reports whether a barrier of a shaped curve lies at maxBarrier.
+// atBound reports whether a barrier of a shaped curve lies at maxBarrier, or the shape of
+// a seeded one at its bounds.
 func (o *objective) atBound(p []float64) bool {
+	if reach := boundReach * (o.up - o.low); o.seeded && !(p[2] > o.low+reach && p[2] < o.up-reach) {
+		return true
+	}
 	for _, j := range o.barriers {
 		if !(math.Abs(p[j]) < 0.99*maxBarrier) {
 			return true

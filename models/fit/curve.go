@@ -10,8 +10,9 @@ import (
 // Fit fits one curve to one sample. Bad data never panic: they give a Result
 // whose Status is not Converged and whose Reason says why.
 //
-// With errors in ln k a models.Basis is solved in closed form and a models.Shaped
-// by a global search; with errors in k every curve goes through LeastSquares.
+// With errors in ln k a models.Basis is solved in closed form and a models.Shaped or
+// models.Seeded by a global search; with errors in k every curve goes through
+// LeastSquares.
 //
 // Limits enter as probabilities: see Limit.
 func Fit(s *Sample, c models.Curve) *Result {
@@ -24,24 +25,32 @@ func Fit(s *Sample, c models.Curve) *Result {
 		return r
 	}
 	if s.Model.InK() {
+		if seeded, ok := c.(models.Seeded); ok {
+			return joint(s, fitSeededInK(s, seeded))
+		}
 		return joint(s, fitInK(s, c))
 	}
 	switch c := c.(type) {
 	case models.Basis:
 		return fitBasis(s, c)
 	case models.Shaped:
-		// fitShaped leaves to Fit what follows from RSS, and gives its covariance
-		// as (XᵀV⁻¹X)⁻¹, without σ².
-		f := fitShaped(s, c)
-		f.Model, f.N, f.Spent, f.Nu = r.Model, r.N, r.Spent, r.Nu
-		f.Sigma, f.LogLik = r.Sigma, r.LogLik
-		if f.Status != Failed {
-			f.settle(s, f.Cov, 1)
-		}
-		return joint(s, f)
+		return joint(s, r.complete(s, fitShaped(s, c)))
+	case models.Seeded:
+		return joint(s, r.complete(s, fitSeeded(s, c)))
 	}
-	r.Reason = "the curve is neither linear in its parameters nor a line plus a shape"
+	r.Reason = "the curve is neither linear in its parameters, nor a line plus a shape, nor seeded"
 	return r
+}
+
+// complete fills what fitShaped and fitSeeded leave to Fit: what follows from RSS, and
+// σ² in the covariance, which they give as (XᵀV⁻¹X)⁻¹.
+func (r *Result) complete(s *Sample, f *Result) *Result {
+	f.Model, f.N, f.Spent, f.Nu = r.Model, r.N, r.Spent, r.Nu
+	f.Sigma, f.LogLik = r.Sigma, r.LogLik
+	if f.Status != Failed {
+		f.settle(s, f.Cov, 1)
+	}
+	return f
 }
 
 // newResult returns a failed result with all that is known before fitting; what is

@@ -37,6 +37,9 @@ type fastRefitter struct {
 	leads       []lead // scratch
 	cur, trial  normal
 	q           [2]float64
+	seededWork  []*seededWork
+	counted     []float64 // weights times counts
+	y           []float64 // data, 0 where not taken
 }
 
 // workspace is a kernel on the design of a resample and what the linear curves need
@@ -64,6 +67,10 @@ func (d *resampleDesign) refitter() *fastRefitter {
 		w.product = make([]float64, 4*len(d.columns)/n)
 		w.d1, w.d2 = make([]float64, m), make([]float64, m)
 	}
+	for _, sc := range d.seeded {
+		r.seededWork = append(r.seededWork, sc.design.work())
+	}
+	r.counted, r.y = make([]float64, n), make([]float64, n)
 	r.full.directions, r.full.gram = d.directions, d.gram
 	r.full.n1, r.full.n2, r.full.mean = d.n1, d.n2, d.mean
 	r.taken.rows = make([]basisRow, n)
@@ -121,7 +128,36 @@ func (r *fastRefitter) Refit(y []float64, out *Refit) {
 		r.give(w, sc, rss, how, out)
 		best = math.Min(best, r.of(sc.index, rss))
 	}
+	if len(r.seeded) > 0 {
+		r.fitSeeded(y, r.weight, w.zz, r.distinct+1, out)
+	}
 	r.first(out)
+}
+
+// seededTol stops the steps of a seeded curve: what they would still save, of RSS.
+const seededTol = 1e-10
+
+// fitSeeded fits the seeded candidates to y. straight is the RSS of the line, and
+// distinct the number of temperatures, of which there must be more than parameters.
+func (r *fastRefitter) fitSeeded(y, weight []float64, straight float64, distinct int, out *Refit) {
+	for j := range r.seeded {
+		i, w := r.seeded[j].index, r.seededWork[j]
+		if distinct <= r.needs[i] {
+			out.fail(i)
+			continue
+		}
+		w.minimise(y, weight, seededTol)
+		out.How = max(out.How, HowCold)
+		if !(w.best.rss < straight*(1-improvement)) {
+			out.RSS[i] = math.Inf(1)
+			out.blank(i)
+			continue
+		}
+		out.RSS[i] = w.best.rss
+		if p := out.P[i]; len(p) > 0 {
+			p[0], p[1], p[2] = w.best.a, w.best.e, w.best.q
+		}
+	}
 }
 
 // give records the outcome of a shaped curve.
@@ -409,6 +445,15 @@ func (r *fastRefitter) RefitCounts(y []float64, counts []int, out *Refit) {
 		rss, how := r.fitTaken(w, sc, best)
 		r.give(w, sc, rss, how, out)
 		best = math.Min(best, r.of(sc.index, rss))
+	}
+	if len(r.seeded) > 0 {
+		for i, m := range counts {
+			r.counted[i], r.y[i] = 0, 0
+			if m > 0 {
+				r.counted[i], r.y[i] = float64(m)*r.weight[i], y[i]
+			}
+		}
+		r.fitSeeded(r.y, r.counted, w.zz, distinct, out)
 	}
 	r.first(out)
 }

@@ -19,12 +19,15 @@ var _ OneRefitter = (*kRefitter)(nil)
 
 // kWork is the memory of refits on one design.
 type kWork struct {
-	curves []*varpro // of each candidate, nil where it is left to Fit; then the line
+	curves []*varpro // of each candidate, nil where it is left to bent or Fit; then the line
+	bent   []*bentInK
+	from   [][][]float64 // starts of bent
 	warm   [][][2]float64
 	line   int // the straight line, which two paths start from
 	fitted []bool
 	ok     []bool // of fitted
-	found  []bool // a second path; true for other curves
+	found  []bool // better than the line; true for curves of one exponential
+	atLine [2]float64
 }
 
 // newKWork lays out a design. fits are those of the whole sample.
@@ -36,10 +39,19 @@ func newKWork(s *Sample, curves []models.Curve, fits []*Result) *kWork {
 			w.line = j
 		}
 		var e *exponentials
+		var bent *bentInK
 		if f := fits[j]; f.Usable() || f.Status == Excluded {
-			e = newExponentials(s, c)
+			if e = newExponentials(s, c); e == nil {
+				bent = newBentInK(newObjective(s, c))
+			}
 		}
 		w.add(e, fits[j].P)
+		w.bent = append(w.bent, bent)
+		var from [][]float64
+		if fits[j].P != nil {
+			from = append(from, fits[j].P)
+		}
+		w.from = append(w.from, from)
 	}
 	if w.line < 0 || w.curves[w.line] == nil {
 		w.line = len(w.curves)
@@ -64,10 +76,11 @@ func (w *kWork) add(e *exponentials, p []float64) {
 
 // taken is the memory of one refit to entries taken counts times, of curve only or,
 // where that is negative, of all.
-func (w *kWork) taken(counts []int, only int) *kWork {
+func (w *kWork) taken(sub *Sample, counts []int, only int) *kWork {
 	n := len(w.curves)
 	out := &kWork{
 		curves: make([]*varpro, n), warm: w.warm, line: w.line,
+		bent: make([]*bentInK, len(w.bent)), from: w.from,
 		fitted: make([]bool, n), ok: make([]bool, n), found: make([]bool, n),
 	}
 	for j, v := range w.curves {
@@ -75,13 +88,23 @@ func (w *kWork) taken(counts []int, only int) *kWork {
 			out.curves[j] = newVarpro(v.e.taken(counts))
 		}
 	}
+	for j, b := range w.bent {
+		if b != nil && (only < 0 || j == only) {
+			out.bent[j] = newBentInK(newObjective(sub, b.o.c))
+		}
+	}
 	return out
 }
 
-// fit fits curve j to k, once; reset forgets. ok is false where it is left to Fit.
-func (w *kWork) fit(j int, k []float64) (ok bool) {
+// fit fits curve j to k, once; reset forgets. ok is false where it is left to Fit. Of a
+// curve served by bent only an RSS below limit is of interest.
+func (w *kWork) fit(j int, k []float64, limit float64) (ok bool) {
 	v := w.curves[j]
-	if v == nil || w.fitted[j] {
+	if w.fitted[j] {
+		return w.ok[j]
+	}
+	if v == nil {
+		w.fitted[j], w.ok[j] = true, w.fitBent(j, k, limit)
 		return w.ok[j]
 	}
 	v.setData(k)
@@ -89,12 +112,31 @@ func (w *kWork) fit(j int, k []float64) (ok bool) {
 	switch {
 	case v.e.paths == 1:
 		w.ok[j] = v.fitSingle(w.warm[j]...)
-	case w.fit(w.line, k):
+	case w.fit(w.line, k, limit):
 		w.found[j], w.ok[j] = v.addPath(&w.curves[w.line].best, w.warm[j]...)
 	default:
 		w.ok[j] = false
 	}
 	return w.ok[j]
+}
+
+// fitBent is fit by w.bent. Only an RSS below limit is of interest.
+func (w *kWork) fitBent(j int, k []float64, limit float64) (ok bool) {
+	if j >= len(w.bent) || w.bent[j] == nil || !w.fit(w.line, k, limit) {
+		return false
+	}
+	b, line := w.bent[j], w.curves[w.line]
+	b.short, b.long, b.limit = 50, 200, math.Inf(1)
+	if limit < math.Inf(1) {
+		b.short, b.long, b.limit = 12, 60, limit/square(b.o.unit)
+	}
+	for i, ki := range k {
+		b.o.y[i] = ki / b.o.scale
+	}
+	line.e.params(&line.best, w.atLine[:])
+	rss := line.best.value() * square(line.e.o.unit/b.o.unit)
+	_, w.found[j] = b.fit(w.atLine[:], rss, w.from[j])
+	return true
 }
 
 func (w *kWork) reset() { clear(w.fitted) }
@@ -127,10 +169,11 @@ func (r *kRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 	if counts != nil {
 		sub = r.resample(y, counts)
 		distinct, k = sub.DistinctT(), sub.K
-		work = work.taken(counts, only)
+		work = work.taken(sub, counts, only)
 	}
 	work.reset()
 	out.How, out.First = HowLinear, -1
+	best := math.Inf(1)
 	for j, c := range r.curves {
 		if only >= 0 && j != only {
 			continue
@@ -139,21 +182,34 @@ func (r *kRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 			out.fail(j)
 			continue
 		}
-		if !work.fit(j, k) {
+		limit := math.Inf(1)
+		if r.screens && only < 0 && r.params[j] == 0 {
+			limit = r.limit(j, best)
+		}
+		if !work.fit(j, k, limit) {
 			if sub == nil {
 				sub = r.resample(y, nil)
 			}
 			r.cold(sub, j, out)
+			best = math.Min(best, r.of(j, out.RSS[j]))
 			continue
 		}
-		v := work.curves[j]
 		out.How = max(out.How, HowWarm)
 		if !work.found[j] {
 			out.RSS[j] = math.Inf(1)
 			out.blank(j)
 			continue
 		}
+		v := work.curves[j]
+		if v == nil {
+			b := work.bent[j]
+			out.RSS[j] = b.rss * square(b.o.unit)
+			copy(out.P[j], b.p)
+			best = math.Min(best, r.of(j, out.RSS[j]))
+			continue
+		}
 		out.RSS[j] = v.best.value() * square(v.e.o.unit)
+		best = math.Min(best, r.of(j, out.RSS[j]))
 		if len(out.P[j]) > 0 {
 			v.e.params(&v.best, out.P[j])
 		}

@@ -210,7 +210,7 @@ func (s *solver) trustRegion(pr Problem, p0 []float64, opt Options) (iterations 
 				return iter, true, ""
 			}
 			if iter >= opt.MaxIterations {
-				return iter, false, fmt.Sprintf("no convergence within %d steps", iter)
+				return iter, false, "no convergence within the allowed number of steps"
 			}
 			// No step can be told from rounding any more.
 			if !accepted && (delta <= 0x1p-52*xnorm || predicted <= 0x1p-52 && math.Abs(actual) <= 0x1p-52) {

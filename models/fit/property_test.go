@@ -22,7 +22,7 @@ func TestExactDataGiveExactParameters(t *testing.T) {
 			v[i] = rapid.Float64Range(0.5, 2).Draw(rt, "variance")
 		}
 		tRef := 1 / ((1/low + 1/high) / 2)
-		for _, c := range models.Default() {
+		for _, c := range models.All() {
 			e := 1000 * rapid.Float64Range(20, 200).Draw(rt, "E")
 			p := []float64{rapid.Float64Range(-10, 5).Draw(rt, "ln k"), e}
 			tolerance := 1e-9
@@ -35,6 +35,22 @@ func TestExactDataGiveExactParameters(t *testing.T) {
 				x := (high - low) / (models.GasConstant * high * low)
 				d := math.Min(rapid.Float64Range(10, 40).Draw(rt, "d")/x, 0.6*maxBarrier)
 				p = append(p, p[0]+rapid.Float64Range(-1, 1).Draw(rt, "ln ratio"), e+d)
+				tolerance = 1e-6
+			case models.Series:
+				x := (high - low) / (models.GasConstant * high * low)
+				d := math.Min(rapid.Float64Range(10, 40).Draw(rt, "d")/x, 0.6*maxBarrier)
+				p = append(p, p[0]+rapid.Float64Range(-1, 1).Draw(rt, "ln ratio"), e+d)
+				tolerance = 1e-6
+			case models.DriftingHeatCapacity:
+				p = append(p, rapid.Float64Range(-30, 30).Draw(rt, "n"), rapid.Float64Range(-30, 30).Draw(rt, "drift"))
+				tolerance = 1e-7
+			case models.Seeded:
+				least, straight, most := c.(models.Seeded).Bounds(tRef, low, high)
+				q := least + (most-least)*rapid.Float64Range(0.1, 0.9).Draw(rt, "place between the bounds")
+				if math.Abs(q-straight) < 0.1*(most-least) {
+					q = straight + 0.1*(most-least)
+				}
+				p = append(p, q)
 				tolerance = 1e-6
 			}
 			k := make([]float64, n)

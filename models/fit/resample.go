@@ -32,7 +32,9 @@ type resampleDesign struct {
 	gram       []float64 // directions·directions
 	linear     []linearCandidate
 	shaped     []shapedCandidate
-	columns    []quad // directions and warm-start columns
+	seeded     []seededCandidate
+	weight     []float64 // 1/V, for these
+	columns    []quad    // directions and warm-start columns
 
 	// covers are made when first needed: most identified sets never ask for them.
 	covers func() (coarse, fine *cover)
@@ -59,6 +61,13 @@ type shapedCandidate struct {
 	warm  *warmStart // nil where the estimate cannot be trusted as a start
 }
 
+// seededCandidate is a curve that is searched over its seeds, with its own line: the
+// complement of {1, u} does not serve it.
+type seededCandidate struct {
+	index  int
+	design *seededDesign
+}
+
 // newResampleDesign returns nil where some candidate is not served.
 func newResampleDesign(s *Sample, curves []models.Curve, fits []*Result, crit criterion, shapedParams bool) *resampleDesign {
 	if s.Model.InK() {
@@ -83,12 +92,16 @@ func newResampleDesign(s *Sample, curves []models.Curve, fits []*Result, crit cr
 			d.linear = append(d.linear, lc)
 			continue
 		}
+		if !shapedParams {
+			d.params[j] = 0
+		}
+		if c, ok := c.(models.Seeded); ok {
+			d.seeded = append(d.seeded, seededCandidate{j, newSeededDesign(c, s.TRef, s.T)})
+			continue
+		}
 		sign, ok := softplusSign(c)
 		if !ok {
 			return nil
-		}
-		if !shapedParams {
-			d.params[j] = 0
 		}
 		shaped := c.(models.Shaped)
 		d.shaped = append(d.shaped, shapedCandidate{
@@ -96,6 +109,7 @@ func newResampleDesign(s *Sample, curves []models.Curve, fits []*Result, crit cr
 		})
 	}
 	d.interleave()
+	d.weight = reciprocals(s.V)
 	if len(d.shaped) > 0 {
 		d.makeNodes()
 	}

@@ -61,14 +61,14 @@ func (p *plan) fit(s *Sample, c models.Shaped) *Result {
 	if exact || !better {
 		res.Status = Excluded
 		res.RSS = straight
-		res.Reason = "the data bend the other way, or not at all"
+		res.Reason = bendsTheOtherWay
 		return res
 	}
 	var trial normal
 	k.polish(best, &trial)
 	res.P = make([]float64, np)
 	p.canonical(s, c, sign, best.c, best.d, res.P)
-	p.finish(s, c, res)
+	finish(s, c, res)
 	switch {
 	case math.Abs(best.d) >= p.maxD || math.Abs(res.P[1]) > maxBarrier || math.Abs(res.P[3]) > maxBarrier:
 		res.Status = NotIdentified
@@ -109,7 +109,7 @@ func (p *plan) shift(tRef float64) float64 {
 
 // finish fills fitted values, residuals, RSS, covariance and leverage from res.P.
 // Cov stays nil where the Jacobian is too ill-conditioned.
-func (p *plan) finish(s *Sample, c models.Curve, res *Result) {
+func finish(s *Sample, c models.Curve, res *Result) {
 	n, np := s.Len(), len(res.P)
 	res.Fitted, res.Residuals = make([]float64, n), make([]float64, n)
 	res.Leverage = make([]float64, n)
@@ -118,7 +118,7 @@ func (p *plan) finish(s *Sample, c models.Curve, res *Result) {
 	res.RSS = 0
 	for i, f := range res.Fitted {
 		res.Residuals[i] = s.Y[i] - f
-		w := p.rows[i].w
+		w := 1 / math.Sqrt(s.V[i])
 		res.RSS += square(w * res.Residuals[i])
 		for j := range np {
 			jac[i*np+j] *= w

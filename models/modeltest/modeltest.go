@@ -31,6 +31,7 @@ type Kind int
 const (
 	Linear Kind = iota + 1 // models.Basis
 	Shaped                 // models.Shaped
+	Seeded                 // models.Seeded
 )
 
 // Case is what the suite must know of a curve from outside the curve's own code.
@@ -43,7 +44,8 @@ type Case struct {
 	// P holds ordinary canonical parameters, Extreme those at which nothing but
 	// finite results is asked for, from 10 K to 100,000 K.
 	P, Extreme [][]float64
-	// Limit gives m and lnA of ln k → lnA + m ln(T/T_ref) as T → ∞.
+	// Limit gives m and lnA of ln k → lnA + m ln(T/T_ref) as T → ∞; both NaN where ln k
+	// goes faster than any power of T.
 	Limit func(tRef float64, p []float64) (lnA, m float64)
 	// Ascending lists pairs of canonical parameters that stay in order.
 	Ascending [][2]int
@@ -81,6 +83,8 @@ var checks = []struct {
 	{"basis", (*suite).basis},
 	{"shape", (*suite).shape},
 	{"order", (*suite).order},
+	{"bounds", (*suite).bounds},
+	{"seeds", (*suite).seeds},
 	{"form calls", (*suite).formCalls},
 	{"form round trip", (*suite).formRoundTrip},
 	{"form Jacobian", (*suite).formJacobian},
@@ -238,6 +242,7 @@ func (s *suite) caseComplete() {
 	}
 	_, isBasis := s.c.(models.Basis)
 	_, isShaped := s.c.(models.Shaped)
+	_, isSeeded := s.c.(models.Seeded)
 	switch cs.Kind {
 	case Linear:
 		if !isBasis {
@@ -246,6 +251,10 @@ func (s *suite) caseComplete() {
 	case Shaped:
 		if !isShaped {
 			s.errorf("the curve does not implement models.Shaped")
+		}
+	case Seeded:
+		if !isSeeded {
+			s.errorf("the curve does not implement models.Seeded")
 		}
 	default:
 		s.errorf("does not state the kind of the curve")
@@ -449,11 +458,22 @@ func (s *suite) localEnergy() {
 
 func (s *suite) limit() {
 	const hot = 1e12
+	some := false
 	for _, p := range s.cs.P {
 		lnA, m := s.cs.Limit(s.cs.TRef, p)
+		if math.IsNaN(m) {
+			if e := s.eLoc(p, hot)[0] / (models.GasConstant * hot); !(math.Abs(e) > 1e6) {
+				s.errorf("E_loc/RT of %v is %g, but a limit is said not to exist", p, e)
+			}
+			continue
+		}
+		some = true
 		got := s.lnK(p, hot)[0] - m*math.Log(hot/s.cs.TRef)
 		s.near(fmt.Sprintf("ln A of %v", p), got, lnA, 1e-7*math.Max(1, math.Abs(lnA)))
 		s.near(fmt.Sprintf("E_loc/RT of %v", p), s.eLoc(p, hot)[0]/(models.GasConstant*hot), m, 1e-6)
+	}
+	if !some {
+		s.errorf("no parameters of the case have a limit")
 	}
 }
 
@@ -461,6 +481,9 @@ func (s *suite) limit() {
 // curves of which it says that nothing is left.
 func (s *suite) trend() {
 	low, high := slices.Min(s.cs.T)/2, slices.Max(s.cs.T)*2
+	if s.cs.Kind == Seeded { // beyond the data its bounds do not hold
+		low, high = slices.Min(s.cs.T), slices.Max(s.cs.T)
+	}
 	_, fixed := s.cs.Limit(s.cs.TRef, s.cs.P[0])
 	var up, down bool
 	for _, p := range s.cs.P {
@@ -634,6 +657,138 @@ func (s *suite) order() {
 			}
 		}
 	}
+}
+
+// ends are the temperatures between which bounds and seeds are asked for.
+func (s *suite) ends() (low, high float64) { return slices.Min(s.cs.T), slices.Max(s.cs.T) }
+
+// bounds checks that the range of q holds the case's parameters and the straight line,
+// that the curve is good throughout it and that its first two parameters are linear.
+func (s *suite) bounds() {
+	sd, ok := s.c.(models.Seeded)
+	if !ok {
+		return
+	}
+	if s.np != 3 {
+		s.errorf("a seeded curve has three parameters, not %d", s.np)
+		return
+	}
+	tMin, tMax := s.ends()
+	low, straight, high := sd.Bounds(s.cs.TRef, tMin, tMax)
+	if !(low < high && low <= straight && straight <= high) {
+		s.errorf("%g, %g, %g are no bounds with a straight line between", low, straight, high)
+		return
+	}
+	for _, p := range s.cs.P {
+		if !(p[2] >= low && p[2] <= high) {
+			s.errorf("%v lies outside %g to %g", p, low, high)
+		}
+	}
+	n := len(s.cs.T)
+	x := nans(n)
+	models.CentredX(s.cs.TRef, s.cs.T, x)
+	for i := range 33 {
+		q := low + (high-low)*float64(i)/32
+		for name, eval := range s.evaluations() {
+			f, jac := nans(n), nans(3*n)
+			eval(s.cs.TRef, s.cs.T, []float64{1, 5e4, q}, f, jac)
+			for _, v := range slices.Concat(f, jac) {
+				if math.IsNaN(v) || math.IsInf(v, 0) {
+					s.errorf("%s: %g at %s = %g, within the bounds", name, v, s.info.Params[2].Symbol, q)
+					break
+				}
+			}
+		}
+		zero, one := s.lnK([]float64{0, 0, q}, s.cs.T...), s.lnK([]float64{0, 1e4, q}, s.cs.T...)
+		for j, got := range s.lnK([]float64{2, 5e4, q}, s.cs.T...) {
+			s.near("ln k by its first two parameters", got, zero[j]+2+5*(one[j]-zero[j]), 1e-11*math.Max(1, math.Abs(got)))
+		}
+	}
+	for j, got := range s.lnK([]float64{2, 5e4, straight}, s.cs.T...) {
+		s.near(fmt.Sprintf("ln k of the straight line at %g K", s.cs.T[j]), got, 2-5e4*x[j], 1e-11*math.Max(1, math.Abs(got)))
+	}
+	// What lies past the bounds must not pass for a better fit: no curve, or one that is
+	// still as it should be.
+	for _, q := range []float64{low - (high-low)/8, high + (high-low)/8} {
+		for _, v := range s.lnK([]float64{1, 5e4, q}, s.cs.T...) {
+			if math.IsInf(v, 0) {
+				s.errorf("ln k is %g at %s = %g, past the bounds; NaN is refused, infinity is not", v, s.info.Params[2].Symbol, q)
+			}
+		}
+	}
+}
+
+// seeds checks that they cover the bounds and that data on any curve of the case, and
+// on curves midway between seeds, are fitted best by a seed next to them.
+func (s *suite) seeds() {
+	sd, ok := s.c.(models.Seeded)
+	if !ok || s.np != 3 {
+		return
+	}
+	tMin, tMax := s.ends()
+	low, straight, high := sd.Bounds(s.cs.TRef, tMin, tMax)
+	seeds := sd.Seeds(s.cs.TRef, tMin, tMax)
+	if len(seeds) < 5 || seeds[0] != low || seeds[len(seeds)-1] != high || !slices.IsSorted(seeds) {
+		s.errorf("%v do not go from %g to %g in order, in four steps or more", seeds, low, high)
+		return
+	}
+	if len(slices.Compact(slices.Clone(seeds))) != len(seeds) {
+		s.errorf("a value occurs twice in %v", seeds)
+	}
+	truths := slices.Clone(s.cs.P)
+	for j := 1; j < len(seeds); j++ {
+		truths = append(truths, []float64{-2, 6e4, (seeds[j-1] + seeds[j]) / 2})
+	}
+	for _, p := range truths {
+		if p[2] == straight {
+			continue
+		}
+		y := s.lnK(p, s.cs.T...)
+		best, least := -1, math.Inf(1)
+		minima := 0
+		rss := make([]float64, len(seeds))
+		for j, q := range seeds {
+			rss[j] = s.lineRSS(q, y)
+			if rss[j] < least {
+				best, least = j, rss[j]
+			}
+		}
+		for j, v := range rss {
+			if !(j > 0 && rss[j-1] <= v) && !(j+1 < len(rss) && rss[j+1] < v) {
+				minima++
+			}
+		}
+		from, to := seeds[max(best-1, 0)], seeds[min(best+1, len(seeds)-1)]
+		if best < 0 || !(from <= p[2] && p[2] <= to) {
+			s.errorf("data on the curve of %v are fitted best by the seeds between %g and %g", p, from, to)
+		}
+		if minima != 1 {
+			s.errorf("data on the curve of %v have %d minima among the seeds", p, minima)
+		}
+	}
+}
+
+// lineRSS is the least Σ(y - ln k)² over the first two parameters, the third being q.
+func (s *suite) lineRSS(q float64, y []float64) float64 {
+	zero, one := s.lnK([]float64{0, 0, q}, s.cs.T...), s.lnK([]float64{0, 1e4, q}, s.cs.T...)
+	n := float64(len(y))
+	var mx, my float64
+	for i := range y {
+		mx += (one[i] - zero[i]) / n
+		my += (y[i] - zero[i]) / n
+	}
+	var xx, xy float64
+	for i := range y {
+		x := one[i] - zero[i] - mx
+		xx += x * x
+		xy += x * (y[i] - zero[i] - my)
+	}
+	var rss float64
+	for i := range y {
+		r := y[i] - zero[i] - my - xy/xx*(one[i]-zero[i]-mx)
+		rss += r * r
+	}
+	return rss
 }
 
 // eachForm calls f for every form, frame and set of ordinary parameters.

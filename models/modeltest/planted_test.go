@@ -93,6 +93,45 @@ func (b bentShape) ELoc(tRef float64, t, p, f, jac []float64) {
 	}
 }
 
+// bentSeeded is a seeded curve with one function replaced.
+type bentSeeded struct {
+	models.Seeded
+	info   func(models.Info) models.Info
+	bounds func(low, straight, high float64) (float64, float64, float64)
+	seeds  func(seeds []float64) []float64
+	lnK    func(t, p, f []float64)
+}
+
+func (b bentSeeded) Info() models.Info {
+	if b.info != nil {
+		return b.info(b.Seeded.Info())
+	}
+	return b.Seeded.Info()
+}
+
+func (b bentSeeded) Bounds(tRef, tMin, tMax float64) (low, straight, high float64) {
+	low, straight, high = b.Seeded.Bounds(tRef, tMin, tMax)
+	if b.bounds != nil {
+		return b.bounds(low, straight, high)
+	}
+	return low, straight, high
+}
+
+func (b bentSeeded) Seeds(tRef, tMin, tMax float64) []float64 {
+	s := b.Seeded.Seeds(tRef, tMin, tMax)
+	if b.seeds != nil {
+		return b.seeds(s)
+	}
+	return s
+}
+
+func (b bentSeeded) LnK(tRef float64, t, p, f, jac []float64) {
+	b.Seeded.LnK(tRef, t, p, f, jac)
+	if b.lnK != nil && f != nil {
+		b.lnK(t, p, f)
+	}
+}
+
 // bare is a curve without its optional interface.
 type bare struct{ models.Curve }
 
@@ -114,6 +153,15 @@ func fromCurve(after func(fr models.Frame, p, q, jac []float64)) func(*models.Fo
 			after(fr, p, q, jac)
 		}
 	}
+}
+
+// bent4 is two steps in series with the trend of two paths.
+type bent4 struct{ models.Series }
+
+func (b bent4) Info() models.Info {
+	in := b.Series.Info()
+	in.Trend = models.TrendRises
+	return in
 }
 
 func TestPlantedFaultsFail(t *testing.T) {
@@ -246,6 +294,48 @@ func TestPlantedFaultsFail(t *testing.T) {
 			}
 		}}, "E_loc = -R dlnk/d(1/T)"},
 	}
+	vogel, bell, deformed := models.Vogel{}, models.TunnellingBell(), models.Deformed{}
+	plants = append(plants, []struct {
+		fault string
+		curve models.Curve
+		check string
+	}{
+		{"no Seeded", bare{vogel}, "case"},
+		{"bounds that leave out a curve", bentSeeded{Seeded: vogel, bounds: func(l, s, h float64) (float64, float64, float64) { return l, s, h / 2 }}, "bounds"},
+		{"bounds turned round", bentSeeded{Seeded: deformed, bounds: func(l, s, h float64) (float64, float64, float64) { return h, s, l }}, "bounds"},
+		{"bounds past the pole", bentSeeded{Seeded: bell, bounds: func(l, s, h float64) (float64, float64, float64) { return l, s, 1.1 * h }}, "bounds"},
+		{"a straight line that is not one", bentSeeded{Seeded: deformed, bounds: func(l, s, h float64) (float64, float64, float64) { return l, 1, h }}, "bounds"},
+		{"a straight line outside", bentSeeded{Seeded: vogel, bounds: func(l, s, h float64) (float64, float64, float64) { return l + 1, s, h }}, "bounds"},
+		{"infinite past the bounds", bentSeeded{Seeded: vogel, lnK: func(t, p, f []float64) {
+			for i, v := range f {
+				if math.IsNaN(v) {
+					f[i] = math.Inf(-1)
+				}
+			}
+		}}, "bounds"},
+		{"not linear in E", bentSeeded{Seeded: vogel, lnK: func(t, p, f []float64) {
+			for i := range f {
+				f[i] += 1e-16 * p[1] * p[1]
+			}
+		}}, "bounds"},
+		{"too few seeds", bentSeeded{Seeded: vogel, seeds: func(s []float64) []float64 { return []float64{s[0], s[len(s)-1]} }}, "seeds"},
+		{"seeds that stop short", bentSeeded{Seeded: bell, seeds: func(s []float64) []float64 { return s[:len(s)-1] }}, "seeds"},
+		{"seeds out of order", bentSeeded{Seeded: bell, seeds: func(s []float64) []float64 { s[2], s[3] = s[3], s[2]; return s }}, "seeds"},
+		{"a seed twice", bentSeeded{Seeded: bell, seeds: func(s []float64) []float64 { s[2] = s[3]; return s }}, "seeds"},
+		{"seeds that another curve needs", bentSeeded{Seeded: deformed, lnK: func(t, p, f []float64) {
+			for i := range f { // periodic in the third parameter
+				f[i] += 0.3 * math.Sin(p[2]/40) * math.Sin(t[i])
+			}
+		}}, "seeds"},
+		{"Vogel said only to fall", bentSeeded{Seeded: vogel, info: func(in models.Info) models.Info { in.Trend = models.TrendFalls; return in }}, "trend"},
+		{"Bell said to fall", bentSeeded{Seeded: bell, info: func(in models.Info) models.Info { in.Trend = models.TrendFalls; return in }}, "trend"},
+		{"steps in series said to rise", bent4{models.Series{}}, "trend"},
+		{"a limit that does not exist", bent{Basis: models.DriftingHeatCapacity{}, eLoc: func(tRef float64, t, p, f, _ []float64) {
+			for i := range f {
+				f[i] -= p[3] * models.GasConstant * (t[i] - tRef) * (t[i] - tRef) / (2 * tRef)
+			}
+		}}, "limit T → ∞"},
+	}...)
 	cases := modeltest.Registered()
 	for _, pl := range plants {
 		t.Run(pl.fault, func(t *testing.T) {

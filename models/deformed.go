@@ -1,0 +1,141 @@
+package models
+
+import "math"
+
+// Deformed is k = A (1 - dE/RT)^(1/d), which is one Arrhenius barrier at d = 0.
+// Canonical parameters: a = ln k(T_ref), E_ref = E_loc(T_ref) = E/(1 - dE/RT_ref) and
+// δ = d E_ref in J/mol, in which, with x = (1/T - 1/T_ref)/R,
+//
+//	ln k = a + E_ref ln(1 - δx)/δ,  E_loc = E_ref/(1 - δx):
+//
+// 1/E_loc is a straight line in 1/T. There is no value where δx >= 1.
+type Deformed struct{}
+
+var _ Seeded = Deformed{}
+
+// Info implements Curve.
+func (Deformed) Info() Info {
+	return Info{
+		Name: "deformed", Family: "deformed",
+		Formula: "ln k = a + (1/d) ln(1 - dE/(RT))",
+		Summary: "the reciprocal of the local activation energy is linear in 1/T; d < 0 as tunnelling bends a plot, d > 0 as inactivation or a freezing liquid does",
+		Source:  "V. Aquilanti, K. C. Mundim, M. Elango, S. Kleijn, T. Kasai, Chem. Phys. Lett. 498 (2010) 209",
+		Trend:   TrendEither,
+		Params: []Param{
+			{"ln_k_ref", "ln k at the reference temperature", "k"},
+			{"E_ref", "local activation energy at the reference temperature", "J/mol"},
+			{"dE_ref", "deformation times the local activation energy at the reference temperature", "J/mol"},
+		},
+	}
+}
+
+// Bounds implements Seeded: 1 - dE/RT stays positive from T_min up to any T, by a
+// hundredth of what it has at T_ref.
+func (Deformed) Bounds(tRef, tMin, _ float64) (low, straight, high float64) {
+	rt := 0.99 * GasConstant * tRef
+	return -rt, 0, rt * tMin / math.Max(tRef-tMin, tMin/100)
+}
+
+// Seeds implements Seeded: the curve changes by equal steps with the logarithm of
+// 1 - δx at T_min, and on the other side at T → ∞ and T_max.
+func (c Deformed) Seeds(tRef, tMin, tMax float64) []float64 {
+	low, _, high := c.Bounds(tRef, tMin, tMax)
+	const side = 12
+	seeds := make([]float64, 2*side+1)
+	for i := range side {
+		// 1 - 0.01^(j/side) runs from 0 to 0.99.
+		f := -math.Expm1(float64(side-i) / side * math.Log(0.01))
+		seeds[i], seeds[2*side-i] = low*f/0.99, high*f/0.99
+	}
+	seeds[0], seeds[2*side] = low, high
+	return seeds
+}
+
+// logShare returns ln(1+v)/v and its derivative, accurate near v = 0; NaN where
+// v <= -1.
+func logShare(v float64) (l, dl float64) {
+	if math.Abs(v) < 0.1 {
+		// Σ (-v)^k/(k+1)
+		const terms = 18
+		for k := terms; k >= 1; k-- {
+			dl = float64(k)/float64(k+1) - v*dl // -dl of the terms from k on, over (-v)^(k-1)
+			l = 1/float64(k+1) - v*l
+		}
+		return 1 - v*l, -dl
+	}
+	if !(v > -1) {
+		return math.NaN(), math.NaN()
+	}
+	ln := math.Log1p(v)
+	return ln / v, (v/(1+v) - ln) / (v * v)
+}
+
+// LnK implements Curve.
+func (Deformed) LnK(tRef float64, t, p, f, jac []float64) {
+	check(3, t, p, f, jac)
+	for i, ti := range t {
+		u := (ti - tRef) / (GasConstant * ti * tRef) // -x
+		l, dl := logShare(p[2] * u)
+		if f != nil {
+			f[i] = p[0] + p[1]*u*l
+		}
+		if jac != nil {
+			jac[3*i], jac[3*i+1], jac[3*i+2] = 1, u*l, p[1]*u*u*dl
+		}
+	}
+}
+
+// ELoc implements Curve.
+func (Deformed) ELoc(tRef float64, t, p, f, jac []float64) {
+	check(3, t, p, f, jac)
+	for i, ti := range t {
+		u := (ti - tRef) / (GasConstant * ti * tRef)
+		r := 1 / (1 + p[2]*u)
+		if !(r > 0) {
+			r = math.NaN()
+		}
+		if f != nil {
+			f[i] = p[1] * r
+		}
+		if jac != nil {
+			jac[3*i], jac[3*i+1], jac[3*i+2] = 0, r, -p[1]*u*r*r
+		}
+	}
+}
+
+// Forms implements Curve.
+func (Deformed) Forms() []Form { return []Form{deformedArrhenius} }
+
+var deformedArrhenius = Form{
+	Name: "deformed-arrhenius", Formula: "k = A (1 - d E/RT)^(1/d)",
+	Source: "V. Aquilanti, K. C. Mundim, M. Elango, S. Kleijn, T. Kasai, Chem. Phys. Lett. 498 (2010) 209",
+	Params: []Param{
+		{"ln_A", "ln of the pre-exponential factor", "k"},
+		{"E", "activation energy as T goes to infinity", "kJ mol^-1"},
+		{"d", "deformation; 0 is one constant barrier", "1"},
+	},
+	// Where E_ref = 0 there is no d: it and its derivatives are NaN.
+	FromCurve: func(fr Frame, p, q, jac []float64) {
+		checkForm(3, 3, p, q)
+		u := 1 / (GasConstant * fr.TRef)
+		l, dl := logShare(p[2] * u)
+		c := 1 + p[2]*u
+		q[0], q[1], q[2] = p[0]+p[1]*u*l, p[1]/c/kilo, p[2]/p[1]
+		if p[1] == 0 {
+			q[2] = math.NaN()
+		}
+		fill(jac,
+			1, u*l, p[1]*u*u*dl,
+			0, 1/c/kilo, -p[1]*u/(c*c)/kilo,
+			0*q[2], -q[2]/p[1], 1/p[1]+0*q[2])
+	},
+	ToCurve: func(fr Frame, q, p []float64) {
+		checkForm(3, 3, p, q)
+		u := 1 / (GasConstant * fr.TRef)
+		e := q[1] * kilo
+		p[1] = e / (1 - q[2]*e*u)
+		p[2] = q[2] * p[1]
+		l, _ := logShare(p[2] * u)
+		p[0] = q[0] - p[1]*u*l
+	},
+}

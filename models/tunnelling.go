@@ -1,0 +1,202 @@
+package models
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/unit/constant"
+)
+
+// Tunnelling is k = A e^(-E/RT) κ(u), u = hcν‡/(k_B T), κ a correction for tunnelling
+// that depends on u² alone. Canonical parameters: a = ln k(T_ref),
+// E_ref = E_loc(T_ref) in J/mol and s = u(T_ref)². With L(s) = ln κ, L' = dL/ds,
+// z = T_ref/T - 1 and v = s(1+z)²,
+//
+//	ln k = a - E_ref z/(R T_ref) + L(v) - L(s) - 2 s L'(s) z,
+//	E_loc = E_ref + 2 R T_ref (s L'(s) - s(1+z) L'(v)).
+//
+// s = 0 is the straight line.
+type Tunnelling struct {
+	most float64 // largest u at the coldest temperature
+	// correction gives ln κ and its first two derivatives in u²; NaN where there is
+	// no value.
+	correction func(u2 float64) (l, d1, d2 float64)
+	info       Info
+	form       Form
+}
+
+var _ Seeded = Tunnelling{}
+
+// TunnellingWigner returns the curve with κ = 1 + u²/24. With w = u²/24 its
+// dE_loc/dT = 2R w (1 - w)/(1 + w)², which is largest, R/4, at w = 1/3: no wavenumber
+// bends a plot more than a prefactor T^(1/4) does. The curve is held to u² <= 8, where
+// κ = 4/3. Beyond it the same bend has a second wavenumber, E_loc in the end falls with T,
+// and the first term of a series no longer serves.
+func TunnellingWigner() Tunnelling {
+	return newTunnelling(Info{
+		Name: "tunnelling-wigner", Family: "tunnelling-wigner",
+		Formula: "ln k = a - b/T + ln(1 + u^2/24), u = h c nu/(k_B T)",
+		Summary: "one barrier and Wigner's correction for tunnelling through its top, for corrections up to a factor of 4/3, beyond which the formula does not serve; the local activation energy can only rise with T, no more than with a prefactor T^(1/4)",
+		Source:  "E. Wigner, Z. Phys. Chem. B 19 (1932) 203",
+	}, "wigner", "k = A exp(-E/RT) (1 + u^2/24), u = h c nu/(k_B T)", math.Sqrt(8), wigner)
+}
+
+// TunnellingBell returns the curve with κ = (u/2)/sin(u/2), u < 2π.
+func TunnellingBell() Tunnelling {
+	return newTunnelling(Info{
+		Name: "tunnelling-bell", Family: "tunnelling-bell",
+		Formula: "ln k = a - b/T + ln((u/2)/sin(u/2)), u = h c nu/(k_B T)",
+		Summary: "one barrier and Bell's correction for tunnelling through a parabola, u < 2π; the local activation energy can only rise with T",
+		Source:  "R. P. Bell, The Tunnel Effect in Chemistry (1980)",
+	}, "bell", "k = A exp(-E/RT) (u/2)/sin(u/2), u = h c nu/(k_B T)", 0.99*2*math.Pi, bell)
+}
+
+func newTunnelling(info Info, form, formula string, most float64, correction func(float64) (l, d1, d2 float64)) Tunnelling {
+	info.Trend = TrendRises
+	info.Params = []Param{
+		{"ln_k_ref", "ln k at the reference temperature", "k"},
+		{"E_ref", "local activation energy at the reference temperature", "J/mol"},
+		{"u2_ref", "square of u = h c nu/(k_B T) at the reference temperature", "1"},
+	}
+	c := Tunnelling{most: most, correction: correction, info: info}
+	c.form = Form{
+		Name: form, Formula: formula, Source: info.Source,
+		Params: []Param{
+			{"ln_A", "ln of the pre-exponential factor", "k"},
+			{"E", "height of the barrier", "kJ mol^-1"},
+			{"nu", "magnitude of the imaginary wavenumber at the top of the barrier", "cm^-1"},
+		},
+		FromCurve: c.fromCurve, ToCurve: c.toCurve,
+	}
+	return c
+}
+
+// wigner is ln(1 + v/24).
+func wigner(v float64) (l, d1, d2 float64) {
+	d1 = 1 / (24 + v)
+	return math.Log1p(v / 24), d1, -d1 * d1
+}
+
+// cotSeries holds the coefficients of 1 - w cot w = Σ c_k w^(2k), k from 1 on
+// (Abramowitz & Stegun 4.3.70).
+var cotSeries = [...]float64{
+	1. / 3, 1. / 45, 2. / 945, 1. / 4725, 2. / 93555, 1382. / 638512875, 4. / 18243225,
+	3617. / 162820783125, 87734. / 38979295480125, 349222. / 1531329465290625,
+}
+
+// bell is -ln(sin(w)/w), w = √v/2; v may be slightly negative.
+func bell(v float64) (l, d1, d2 float64) {
+	y := v / 4
+	if math.Abs(y) < 0.25 {
+		// d1 = (1 - w cot w)/(8 w²), l its integral.
+		for k := len(cotSeries) - 1; k >= 0; k-- {
+			l = l*y + cotSeries[k]/float64(k+1)
+			d1 = d1*y + cotSeries[k]
+			if k > 0 {
+				d2 = d2*y + cotSeries[k]*float64(k)
+			}
+		}
+		return l * y / 2, d1 / 8, d2 / 32
+	}
+	w := math.Sqrt(y) // NaN where v is negative
+	if !(w < math.Pi) {
+		nan := math.NaN()
+		return nan, nan, nan
+	}
+	sin, cos := math.Sincos(w)
+	wcot := w * cos / sin
+	return math.Log(w / sin), (1 - wcot) / (8 * y), (y/(sin*sin) + wcot - 2) / (64 * y * y)
+}
+
+// Info implements Curve.
+func (c Tunnelling) Info() Info { return c.info }
+
+// Bounds implements Seeded.
+func (c Tunnelling) Bounds(tRef, tMin, _ float64) (low, straight, high float64) {
+	u := c.most * tMin / tRef
+	return 0, 0, u * u
+}
+
+// Seeds implements Seeded: u² at equal steps, closer together where κ grows without
+// bound.
+func (c Tunnelling) Seeds(tRef, tMin, tMax float64) []float64 {
+	_, _, high := c.Bounds(tRef, tMin, tMax)
+	const steps = 12
+	seeds := make([]float64, steps+1)
+	for i := range seeds {
+		f := 1 - float64(i)/steps
+		seeds[i] = high * (1 - f*f)
+	}
+	return seeds
+}
+
+// LnK implements Curve.
+func (c Tunnelling) LnK(tRef float64, t, p, f, jac []float64) {
+	check(3, t, p, f, jac)
+	s := p[2]
+	l0, d0, dd0 := c.correction(s)
+	for i, ti := range t {
+		z := (tRef - ti) / ti
+		r := tRef / ti
+		u := -z / (GasConstant * tRef)
+		l, d, _ := c.correction(s * r * r)
+		if f != nil {
+			f[i] = p[0] + p[1]*u + (l - l0 - 2*s*d0*z)
+		}
+		if jac != nil {
+			jac[3*i], jac[3*i+1] = 1, u
+			jac[3*i+2] = r*r*d - d0 - 2*z*(d0+s*dd0)
+		}
+	}
+}
+
+// ELoc implements Curve.
+func (c Tunnelling) ELoc(tRef float64, t, p, f, jac []float64) {
+	check(3, t, p, f, jac)
+	s := p[2]
+	_, d0, dd0 := c.correction(s)
+	for i, ti := range t {
+		r := tRef / ti
+		_, d, dd := c.correction(s * r * r)
+		if f != nil {
+			f[i] = p[1] + 2*GasConstant*tRef*s*(d0-r*d)
+		}
+		if jac != nil {
+			jac[3*i], jac[3*i+1] = 0, 1
+			jac[3*i+2] = 2 * GasConstant * tRef * (d0 + s*dd0 - r*(d+s*r*r*dd))
+		}
+	}
+}
+
+// Forms implements Curve.
+func (c Tunnelling) Forms() []Form { return []Form{c.form} }
+
+// perKelvin is k_B/(hc) in 1/(cm K).
+const perKelvin = Boltzmann / (Planck * float64(constant.LightSpeedInVacuum) * 100)
+
+// fromCurve: ln A = a + E/RT_ref - L(s), E = E_ref + 2RT_ref s L'(s). At s = 0 there is
+// no tunnelling, and a wavenumber that has no standard error: it and its derivatives
+// are NaN.
+func (c Tunnelling) fromCurve(fr Frame, p, q, jac []float64) {
+	checkForm(3, 3, p, q)
+	s, rt := p[2], GasConstant*fr.TRef
+	l, d, dd := c.correction(s)
+	e := p[1] + 2*rt*s*d
+	q[0], q[1] = p[0]+e/rt-l, e/kilo
+	q[2] = math.NaN()
+	if s > 0 {
+		q[2] = math.Sqrt(s) * perKelvin * fr.TRef
+	}
+	fill(jac,
+		1, 1/rt, d+2*s*dd,
+		0, 1./kilo, 2*rt*(d+s*dd)/kilo,
+		0*q[2], 0*q[2], q[2]/(2*s))
+}
+
+func (c Tunnelling) toCurve(fr Frame, q, p []float64) {
+	checkForm(3, 3, p, q)
+	u := q[2] / (perKelvin * fr.TRef)
+	s, rt := u*u, GasConstant*fr.TRef
+	l, d, _ := c.correction(s)
+	e := q[1] * kilo
+	p[0], p[1], p[2] = q[0]-e/rt+l, e-2*rt*s*d, s
+}
