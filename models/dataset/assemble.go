@@ -200,6 +200,7 @@ func (m *maker) chooseFirst(p *plan, first int) {
 				}
 			}
 			p.temperature = kept
+			m.refuseGap(p, gap)
 			p.notices = append(p.notices, notice(noteGap, fmt.Sprintf("column %q is %q + 273 in every row: %q is used", gap[0].Text, gap[1].Text, p.temperature[0].Text)))
 		} else {
 			p.severalNotice(p.temperature)
@@ -226,6 +227,20 @@ func (m *maker) chooseFirst(p *plan, first int) {
 		c.Unit, c.UnitText = unit.rateUnit(), unit.UnitText // ln k beside k/s^-1
 		if !slices.Contains(p.runs[i].cols, unit) {
 			p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as that of %q", c.Text, unit.Text)))
+		}
+	}
+}
+
+// refuseGap refuses a rate constant that was divided by T where two columns of
+// temperature differ by a constant: it may have been divided by either.
+func (m *maker) refuseGap(p *plan, gap []*column) {
+	for _, r := range p.runs {
+		for _, c := range r.cols {
+			if c.Divisor != DivisorNone {
+				m.refuseCure(codeDisagree, 0, c.Text, fmt.Sprintf("k was divided by T, and %q is %q + 273 in every row: which of them is T is not known", gap[0].Text, gap[1].Text),
+					fmt.Sprintf("choose one: --column 'T=%s' or --column 'T=%s'", gap[0].Text, gap[1].Text))
+				return
+			}
 		}
 	}
 }

@@ -76,7 +76,7 @@ const (
 	noteBrackets       = "brackets-standard"
 	noteFewRepeats     = "mean-of-few-repeats"
 	noteMissing        = "rows-without-value"
-	noteLimits         = "limits-left-out"
+	noteLimits         = "limits-read"
 	noteAfter          = "rows-after-table"
 	noteSelected       = "rows-selected-out"
 	noteDuplicate      = "duplicate-rows"
@@ -177,7 +177,7 @@ var noticeTexts = []Explanation{
 	{noteBrackets, "Brackets hold standard uncertainties", "12.3(4) means u = 0.4 (GUM 7.2.2).", ""},
 	{noteFewRepeats, "Uncertainties come from few repeats", "A standard deviation from 30 repeats or fewer is not a known uncertainty; k is taken as a mean.", ""},
 	{noteMissing, "Rows without a value were left out", "The temperature or the rate constant is empty, n.d., NA, a dash or a spreadsheet error.", ""},
-	{noteLimits, "Limits were left out", "Rows that state only a bound are read and listed; they do not take part in the fit.", ""},
+	{noteLimits, "Limits", "Rows that state only a bound are no measured k; an assessment takes them as the probability of their side of the bound.", ""},
 	{noteAfter, "Rows below the table were not read", "Rows after the first blank row below the data, or labelled mean, SD, slope and the like, are no measurements.", "delete the blank row if measurements follow it"},
 	{noteSelected, "Rows were left out on request", "--where, --leave-out, --t-min or --t-max left them out.", ""},
 	{noteDuplicate, "Rows are the same", "The same temperature and rate constant occur more than once: repeats that agree to all digits, or a row copied twice.", "--leave-out the copies if they are no separate measurements"},

@@ -738,6 +738,9 @@ func (m *maker) chooseUncertainty(p *plan, forced []*column, line int) {
 			if base.Form == FormLn || base.Form == FormLg {
 				c.Form = base.Form
 			}
+			if c.Unit == nil || c.Unit.Dim.Temperature != 0 { // s^-1 beside k/T: of k itself
+				c.Divisor = base.Divisor
+			}
 		case c.Symbol != "" && plainSymbol(c.Symbol) != symbol && c.Symbol != "k":
 			continue
 		case c.Form == FormReciprocal || c.Form == FormHalfLife:
@@ -768,6 +771,9 @@ func (m *maker) chooseUncertainty(p *plan, forced []*column, line int) {
 			c.says = "another uncertainty is used"
 			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, r.uncertainty.Text)))
 			continue
+		}
+		if c.Divisor == DivisorT && c.Unit != nil && c.Unit.Dim.Temperature != 0 {
+			c.perKelvin()
 		}
 		// Units: an absolute uncertainty is in that of its quantity.
 		if !c.Relative && c.Kind != KindFactor && c.Form != FormLn && c.Form != FormLg {

@@ -58,14 +58,16 @@ func (c *column) conversion(p *plan) string {
 			add("T = 1/(k_B x)")
 		}
 	case RoleRate:
-		switch c.Form {
-		case FormLn:
+		switch {
+		case c.Divisor != DivisorNone:
+			add("%s", c.Divisor.conversion(c.Form))
+		case c.Form == FormLn:
 			add("k = e^x")
-		case FormLg:
+		case c.Form == FormLg:
 			add("k = 10^x")
-		case FormReciprocal:
+		case c.Form == FormReciprocal:
 			add("k = 1/tau")
-		case FormHalfLife:
+		case c.Form == FormHalfLife:
 			add("k = ln 2/t_1/2")
 		}
 	case RoleUncertainty, RoleTemperatureUncertainty:
@@ -94,6 +96,8 @@ func (c *column) conversion(p *plan) string {
 			add("u(k) = k ln 10 u(lg k)")
 		case timeLike:
 			add("u(k)/k = u(t)/t")
+		case c.Divisor != DivisorNone:
+			add("u(k) = %s u", c.Divisor)
 		}
 	}
 	if h, ok := c.inCells(p); ok {

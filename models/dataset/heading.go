@@ -72,9 +72,10 @@ type Heading struct {
 	Role     Role
 	Symbol   string // of a rate: k, k_obs, kcat/Km, D
 	Form     Form
-	Unit     *Unit  // nil if there is none, or it was not understood
-	UnitText string // as written, "" if none
-	Shift    int    // the value is cell·10^Shift in the unit
+	Unit     *Unit   // nil if there is none, or it was not understood
+	UnitText string  // as written, "" if none
+	Shift    int     // the value is cell·10^Shift in the unit
+	Divisor  Divisor // of a rate: what k was divided by; Unit is that of k
 
 	// Of an uncertainty: the role of what it belongs to ("" if not said: the
 	// nearest quantity to the left is meant), and how it was stated.

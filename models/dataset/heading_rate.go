@@ -139,8 +139,16 @@ func (u Unit) isRateOrTime(f Form) bool {
 	return u.isRate()
 }
 
+// rate reads the heading of a rate constant, or of one that was divided by T.
 func (p headingParser) rate(s string) (Heading, bool) {
-	h := Heading{Role: RoleRate}
+	s, d, ofK := cutDivisor(s)
+	return p.dividedRate(s, d, ofK)
+}
+
+// dividedRate reads a heading out of which a divisor was taken. ofK says that the
+// unit in it is that of k.
+func (p headingParser) dividedRate(s string, d Divisor, ofK bool) (Heading, bool) {
+	h := Heading{Role: RoleRate, Divisor: d}
 	rest := s
 	log := ""
 	if m := reLog.FindString(rest); m != "" {
@@ -213,6 +221,9 @@ func (p headingParser) rate(s string) (Heading, bool) {
 	}
 	if h.Unit == nil {
 		h.setUnit(unit)
+		if d == DivisorT && !ofK {
+			h.perKelvin()
+		}
 	}
 	if h.Unit == nil && unit != "" && (how == ' ' || !plausibleUnit(unit)) {
 		return h, false // more words: not the quantity alone
@@ -229,7 +240,7 @@ func (p headingParser) rate(s string) (Heading, bool) {
 		if h.Unit == nil && h.UnitText != "" {
 			return h, false
 		}
-		if log != "" {
+		if log != "" || d != DivisorNone {
 			return h, false
 		}
 	case m.diff:
@@ -296,6 +307,9 @@ func bareFactor(unit string) bool {
 func plausibleUnit(unit string) bool {
 	if len(unit) > 40 || strings.Count(unit, " ") > 4 {
 		return false
+	}
+	if _, err := ParseUnit(unit); err != nil && reLoneSymbol.MatchString(unit) {
+		return false // a quotient of two quantities, such as k/V
 	}
 	m := reK.FindString(unit) // kH/kD is a ratio
 	return m == "" || m != unit && isLetter(unit[len(m)])

@@ -23,6 +23,9 @@ func (h Heading) brief() string {
 	} else if h.UnitText != "" {
 		s += " {" + h.UnitText + "}"
 	}
+	if h.Divisor != "" {
+		s += " over " + string(h.Divisor)
+	}
 	if h.Shift != 0 {
 		s += " e" + itoa(h.Shift)
 	}
@@ -99,6 +102,35 @@ func TestHeadings(t *testing.T) {
 		{"Type", "kept"},
 		{"T_g", "kept"},
 		{"Tmin_K", "kept"},
+		// k divided by T, by k_B T/h; never a unit "T"
+		{"ln(k/T)", "rate k ln over T"},
+		{"ln k/T", "rate k ln over T"},
+		{"ln (k / T)", "rate k ln over T"},
+		{"ln(k_obs/T)", "rate k_obs ln over T"},
+		{"lg(k/T)", "rate k lg over T"},
+		{"log(k/T)", "rate k over T ?log"},
+		{"k/T", "rate k over T"},
+		{"k/T (s-1 K-1)", "rate k [s^-1] over T"},
+		{"10^5 k/T (s^-1 K^-1)", "rate k [s^-1] over T e-5"},
+		{"ln(k/T) (M^-1 s^-1 K^-1)", "rate k ln [M^-1 s^-1] over T"},
+		{"ln(k/T / (s^-1 K^-1))", "rate k ln [s^-1] over T"},
+		{"ln[(k/T)/(s^-1 K^-1)]", "rate k ln [s^-1] over T"},
+		{"ln((k/s^-1)/(T/K))", "rate k ln [s^-1] over T"},
+		{"(k/s^-1)/(T/K)", "rate k [s^-1] over T"},
+		{"k/T (s^-1)", "rate k {s^-1} over T"}, // no unit of k/T
+		{"D/T (cm^2 s^-1 K^-1)", "rate D [cm^2 s^-1] over T"},
+		{"ln(k h/k_B T)", "rate k ln over k_B T/h"},
+		{"ln(kh/kBT)", "rate k ln over k_B T/h"},
+		{"ln(k h/(k_B T))", "rate k ln over k_B T/h"},
+		{"ln(hk/k_BT)", "rate k ln over k_B T/h"},
+		{"lg[h k_obs/(k_B T)]", "rate k_obs lg over k_B T/h"},
+		{"u(ln(k/T))", "uncertainty of k ln over T standard"},
+		{"tau/T", "kept"},
+		{"k/T^2", "kept"},
+		{"k/RT", "kept"},
+		{"k/V", "kept"},
+		{"k/[A]", "kept"},
+		{"k_B/T", "kept"},
 		// reciprocal temperatures
 		{"10^3 K/T", "temperature reciprocal [K^-1] e-3"},
 		{"10³ K/T", "temperature reciprocal [K^-1] e-3"},

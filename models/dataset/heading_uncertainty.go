@@ -262,7 +262,7 @@ func (h *Heading) setTarget(t string) bool {
 	if !ok || r.Form == FormUnknown {
 		return false
 	}
-	h.Of, h.Symbol, h.Form = RoleRate, r.Symbol, r.Form
+	h.Of, h.Symbol, h.Form, h.Divisor = RoleRate, r.Symbol, r.Form, r.Divisor
 	if r.Unit != nil && (r.Form == FormDirect) && h.Unit == nil {
 		h.Unit, h.UnitText, h.Shift = r.Unit, r.UnitText, h.Shift+r.Shift
 	}

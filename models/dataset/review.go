@@ -56,7 +56,7 @@ func (s *Set) review() {
 	s.sayOf(noteMissing, noT, "no temperature, left out")
 	s.sayOf(noteMissing, noK, "no rate constant, left out")
 	s.sayOf(noteFewRepeats, few, "the uncertainty comes from 30 repeats or fewer")
-	s.sayOf(noteLimits, limits, "only a limit is known, left out")
+	s.sayOf(noteLimits, limits, "only a limit is known")
 	s.sayOf(noteSelected, selected, "left out on request")
 	s.sayOf(noteDuplicate, duplicates, "same temperature and rate constant as an earlier one")
 	s.sayOf(noteLargeU, large, "u(k)/k is above 0.3")

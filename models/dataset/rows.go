@@ -16,7 +16,8 @@ type rowReader struct {
 	p     *plan
 	row   Row
 	cells []string
-	quiet bool // the row is left out already: its faults do not matter
+	quiet bool    // the row is left out already: its faults do not matter
+	halfT float64 // half a unit of the last digit of T, K
 
 	// Rows with an uncertainty written beside a number: of k, and of T.
 	brackets, spaced, plusMinus    []int
@@ -378,6 +379,7 @@ func (rr *rowReader) temperature(pt *Point) {
 		}
 		if j == 0 {
 			pt.T, half = t, h
+			rr.halfT = h
 			switch {
 			case x.Attached == AttachedNone:
 			case p.ofT == nil:
@@ -413,7 +415,7 @@ func (rr *rowReader) attachedT(pt *Point, c *column, x Cell) {
 // levelOf says how an uncertainty is to be understood that was written beside the
 // number in a cell, and notes its row; ok is false where that is not known.
 func (rr *rowReader) levelOf(pt *Point, c *column, x Cell, brackets, spaced, plusMinus *[]int) (h Heading, ok bool) {
-	h = Heading{Kind: KindStandard, Relative: x.URel, Form: c.Form}
+	h = Heading{Kind: KindStandard, Relative: x.URel, Form: c.Form, Divisor: c.Divisor}
 	if x.Attached == AttachedBracket {
 		c.brackets = true
 		note(brackets, pt.Row)
@@ -478,6 +480,13 @@ func (rr *rowReader) rate(pt *Point, run *rateRun) {
 		}
 		k, h := c.rateValue(x)
 		k *= run.factors[j]
+		if c.Divisor != DivisorNone {
+			if math.IsNaN(pt.T) {
+				return // the row is left out or refused already
+			}
+			k *= c.Divisor.of(pt.T)
+			h += rr.halfT / pt.T
+		}
 		if math.IsInf(k, 0) || math.IsNaN(k) || k == 0 && (c.Form != FormDirect || x.Value != 0) {
 			rr.refuse(codeNotFinite, c, "%q gives a rate constant beyond the range of double precision", short(rr.cells[c.index]))
 			return
@@ -612,7 +621,7 @@ func (rr *rowReader) state(pt *Point, h *Heading, c *column, u, cell, factor flo
 	case h.Form == FormReciprocal || h.Form == FormHalfLife:
 		u = k * (u * factor / math.Abs(cell))
 	default:
-		u *= factor
+		u *= factor * h.Divisor.of(pt.T)
 	}
 	pt.UK = u / d
 	if math.IsInf(pt.UK, 0) || math.IsNaN(pt.UK) {

@@ -161,8 +161,8 @@ func (c *column) describe(p *plan) Column {
 		}
 	case RoleRate, RoleTemperature:
 		levels := c.cellLevels(p)
-		if c.Form != FormDirect {
-			levels = append([]string{string(c.Form)}, levels...)
+		if form := c.form(); form != "" {
+			levels = append([]string{form}, levels...)
 		}
 		d.Level = strings.Join(levels, "; ")
 	}
