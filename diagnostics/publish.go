@@ -402,8 +402,11 @@ func (w *publisher) fitted() {
 		w.eAt(w.in.TMin)
 		w.eAt(w.in.TMax)
 	}
-	if w.in.Style == StyleKelvin || w.in.Style == StyleEvaluated {
+	if w.in.Style == StyleKelvin || w.in.Style == StyleEvaluated || w.in.Scatter != nil {
 		w.rate()
+	}
+	if w.in.Scatter != nil {
+		w.note("A and what follows from it are of the mean over the sources; only k has their scatter in its uncertainty")
 	}
 	w.unresolved()
 	w.recovery()

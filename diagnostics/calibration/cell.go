@@ -13,6 +13,7 @@ import (
 	"hash/fnv"
 	"math"
 	"math/rand/v2"
+	"strings"
 
 	"onebarrier/diagnostics"
 	"onebarrier/models"
@@ -140,6 +141,9 @@ type Cell struct {
 	Stated float64
 	// Model is the error model asked for; "" leaves it to the data.
 	Model fit.ErrorModel
+	// Laboratories says who measures what; Offsets multiplies the offsets between them.
+	Laboratories Laboratories
+	Offsets      float64
 	// Lean leaves all candidates but straight and power-prefactor out, where the
 	// verdict does not depend on them: all but stated uncertainties.
 	Lean bool
@@ -153,7 +157,13 @@ type Cell struct {
 }
 
 // name identifies the condition in its random streams.
-func (c Cell) name() string { return fmt.Sprintf("%+v", c) }
+func (c Cell) name() string {
+	name := fmt.Sprintf("%+v", c)
+	if c.Laboratories == One { // conditions of one laboratory keep their streams
+		name = strings.Replace(name, fmt.Sprintf(" Laboratories:%d Offsets:%g", c.Laboratories, c.Offsets), "", 1)
+	}
+	return name
+}
 
 // stream is the random stream of one data set.
 func (c Cell) stream(seed uint64, index int) *rand.Rand {
@@ -168,6 +178,9 @@ func (c Cell) stream(seed uint64, index int) *rand.Rand {
 
 // draw draws one data set.
 func (c Cell) draw(rng *rand.Rand) *dataset.Set {
+	if c.Laboratories != One {
+		return c.Laboratories.measured(c, rng)
+	}
 	set := &dataset.Set{
 		Name:     "simulated",
 		Quantity: dataset.Quantity{Symbol: "k", Unit: "s^-1", Known: true},

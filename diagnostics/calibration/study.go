@@ -68,6 +68,7 @@ func New() *Study {
 	s.falseAlarms()
 	s.limits()
 	s.repeats()
+	s.sources()
 	s.beyond()
 	s.criteria()
 	s.errorModels()

@@ -166,6 +166,7 @@ type offsetRows struct {
 	index  int
 	base   []float64   // what the fit gives: ln k, or k
 	p      []float64   // parameters there
+	beside []float64   // coefficients of the nuisance columns there
 	rows   [][]float64 // of the parameters
 	offset [][]float64 // of the coefficients of the nuisance columns
 	q      [][]float64 // orthonormal: what curve and columns span, whitened
@@ -210,7 +211,7 @@ func newOffsetRows(s *Sample, f *Result, index int) *offsetRows {
 	c.Columns(s.TRef, s.T, off, x)
 	x = s.widened(x, p)
 	m := p + s.Spent()
-	o := &offsetRows{index: index, p: f.P, base: f.Fitted, root: make([]float64, n)}
+	o := &offsetRows{index: index, p: f.P, beside: f.Beside, base: f.Fitted, root: make([]float64, n)}
 	if s.Model.InK() {
 		o.base = make([]float64, n)
 	}
@@ -272,7 +273,7 @@ func (r *offsetRefitter) adjust(y []float64) {
 	copy(r.y, y)
 	inK := r.s.Model.InK()
 	for j, row := range r.power.offset {
-		o := dot(row, r.e)
+		o := r.power.beside[j] + dot(row, r.e)
 		for i, c := range r.s.Nuisance[j] {
 			if inK {
 				r.y[i] *= math.Exp(-o * c)
