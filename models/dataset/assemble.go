@@ -45,6 +45,7 @@ func (t *Table) Sets(opt Options) ([]*Set, error) {
 	if !ok {
 		return nil, m.problems
 	}
+	m.line = line
 	p := m.columns(headings, line)
 	p.notices = append(notices, p.notices...)
 	if t.Encoding == "Windows-1252" {

@@ -23,6 +23,7 @@ const (
 	codeNotNumber            = "not-a-number"
 	codeNotFinite            = "not-finite"
 	codeTNotPositive         = "temperature-not-positive"
+	codeTFactor              = "temperature-factor"
 	codeKNotPositive         = "rate-not-positive"
 	codeNegativeU            = "negative-uncertainty"
 	codeBadFactor            = "bad-uncertainty-factor"
@@ -127,6 +128,7 @@ var problemTexts = []Explanation{
 	{codeNotNumber, "A cell is not a number", "A cell of a column that is used holds other text.", "write a number, or leave the cell empty to leave the row out"},
 	{codeNotFinite, "A cell holds NaN, an infinity, or a number beyond the range of double precision", "Such a value is no measurement.", "write a finite number, or leave the cell empty to leave the row out"},
 	{codeTNotPositive, "A temperature is not above 0 K", "No rate constant was measured at or below absolute zero: the unit, or the cell, is wrong.", "check the cell and the unit in the heading"},
+	{codeTFactor, "A power of ten of the temperatures is wrong", "No column of temperatures lies below 1 K, or above 100 000 K where reciprocals are given: the power of ten in the heading is not that of the cells. Temperatures below 1 K are read where the heading says mK.", "correct the power of ten in the heading: 10^3 K/T where the cells are 1000 K/T"},
 	{codeKNotPositive, "A rate constant is not positive", "ln k does not exist for k <= 0. Error models additive in k take such points as data.", "leave the row out, write it as a limit (<1e-15), or use --error-model absolute"},
 	{codeNegativeU, "An uncertainty is negative", "Uncertainties are positive.", "write it without the sign"},
 	{codeBadFactor, "An uncertainty factor is below 1", "f(k) means that k may be f times larger or smaller, so that f is at least 1.", "write 1.2 for 20 %"},
@@ -160,7 +162,7 @@ var noticeTexts = []Explanation{
 	{noteTitle, "Lines above the headings were skipped", "A line with one cell only, above the headings, is a title.", ""},
 	{noteJoined, "Two heading rows were joined", "The row below the headings holds units or words and no number.", ""},
 	{noteCommentHeading, "The headings were read from a comment", "The first row holds numbers only, and the comment above it reads as headings.", "write the headings without #"},
-	{noteLost, "A number was read as a power of ten", "An export lost a superscript: 103 or 10-12 in a heading is 10^3 or 10^-12.", "write 10^3"},
+	{noteLost, "A number was read as a power of ten", "An export lost a superscript: 103 or 10-12 in a heading is 10^3 or 10^-12.", "write the power with its sign: 10^3 or 10^-12"},
 	{noteKept, "Columns were kept but not used", "Their headings are none that take part in the analysis.", "name a column with --column role=HEADING if it should take part"},
 	{noteUnit, "The unit of the rate constants is not understood", "Everything that does not depend on the unit is computed; conversions, ΔS‡ and ΔG‡ are withheld.", "write the unit as in k/s^-1 or k/(L mol^-1 s^-1)"},
 	{noteUnitWithheld, "The unit has no standard concentration in mol/L", "Rate constants per pressure, mass or surface cannot be turned into per second and mol/L without more knowledge; ΔS‡ and ΔG‡ are withheld.", ""},

@@ -62,6 +62,7 @@ type maker struct {
 	t        *Table
 	opt      Options
 	problems Problems
+	line     int     // of the headings
 	tidied   *tidied // nil unless Tidy wrote the table
 }
 
@@ -385,7 +386,12 @@ func (p *plan) noteUse(c *column) {
 		p.assume(a)
 	}
 	if c.Lost {
-		p.notices = append(p.notices, notice(noteLost, fmt.Sprintf("column %q: a number in the heading was read as a power of ten whose superscript was lost", c.Text)))
+		n := notice(noteLost, fmt.Sprintf("column %q: a number in the heading was read as a power of ten whose superscript was lost", c.Text))
+		if lost, power := lostPower(normalize(c.Text)); lost != "" {
+			n.Message = fmt.Sprintf("column %q: %s in the heading was read as %s, whose superscript was lost", c.Text, lost, power)
+			n.Cure = "write " + power
+		}
+		p.notices = append(p.notices, n)
 	}
 	if r := p.runOfColumn(c); r != nil && c == r.cols[0] {
 		switch c.Form {
@@ -395,6 +401,20 @@ func (p *plan) noteUse(c *column) {
 			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a half-life: k = ln 2/t½", c.Text)))
 		}
 	}
+}
+
+// lostPower finds the number in a heading that was read as a power of ten without its
+// superscript, and writes that power out.
+func lostPower(s string) (lost, power string) {
+	for i := range s {
+		if i > 0 && (isDigit(s[i-1]) || s[i-1] == '.') {
+			continue
+		}
+		if e, l, rest, ok := powerOfTen(s[i:]); ok && l {
+			return s[i : len(s)-len(rest)], fmt.Sprintf("10^%d", e)
+		}
+	}
+	return "", ""
 }
 
 // find returns the column with a heading, as written or in the unified spelling.

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"maps"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -22,7 +23,8 @@ type rowReader struct {
 	// Rows with an uncertainty written beside a number: of k, and of T.
 	brackets, spaced, plusMinus    []int
 	bracketsT, spacedT, plusMinusT []int
-	spare                          []int // not used: a column states it too
+	wrong                          []*column // refused for their power of ten
+	spare                          []int     // not used: a column states it too
 	examples                       [][]string
 }
 
@@ -377,6 +379,13 @@ func (rr *rowReader) temperature(pt *Point) {
 			rr.refuse(codeTNotPositive, c, "%q is %s K, not above absolute zero", short(rr.cells[c.index]), strconv.FormatFloat(t, 'g', 6, 64))
 			continue
 		}
+		if what := c.wrongFactor(x, t); what != "" && rr.m.tidied == nil {
+			if !rr.quiet && !slices.Contains(rr.wrong, c) { // once a column
+				rr.wrong = append(rr.wrong, c)
+				rr.m.refuseCure(codeTFactor, rr.m.line, c.Text, fmt.Sprintf("%q in line %d is %s K: the power of ten in the heading is not that of the cells", short(rr.cells[c.index]), rr.row.Line, strconv.FormatFloat(t, 'g', 4, 64)), what)
+			}
+			continue
+		}
 		if j == 0 {
 			pt.T, half = t, h
 			rr.halfT = h
@@ -393,6 +402,26 @@ func (rr *rowReader) temperature(pt *Point) {
 			rr.disagree("T", c, p.temperature[0], "%q is %s K, and column %q gives %s K", short(rr.cells[c.index]), strconv.FormatFloat(t, 'f', 3, 64), p.temperature[0].Text, strconv.FormatFloat(pt.T, 'f', 3, 64))
 		}
 	}
+}
+
+// wrongFactor is the cure of a temperature, in K, that no power of ten but a wrong one
+// gives: below 1 K, or above 100 000 K from a reciprocal; "" where there is nothing to
+// cure. A heading in mK means it.
+func (c *column) wrongFactor(x Cell, t float64) string {
+	reciprocal := c.Form == FormReciprocal
+	if !(t < 1 && c.Unit.Text != "mK") && !(t > 1e5 && reciprocal) {
+		return ""
+	}
+	cell := x.Value / scaled(1, c.Shift) // as written
+	if reciprocal && c.Unit.Text == "K^-1" {
+		for _, e := range []int{3, 4, 0} {
+			if right := math.Pow10(e) / cell; right >= 100 && right < 5000 {
+				heading := map[int]string{3: "10^3 K/T", 4: "10^4 K/T", 0: "1/T (1/K)"}[e]
+				return fmt.Sprintf("if T is %.4g K there, write the heading as %s", right, heading)
+			}
+		}
+	}
+	return "correct the power of ten, or the unit, in the heading: T/K, or 10^3 K/T where the cells are 1000 K/T"
 }
 
 // attachedT takes over an uncertainty written in the cell of T.
