@@ -30,6 +30,7 @@ func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, er
 	if err := a.fit(); err != nil {
 		return nil, err
 	}
+	a.limitFindings()
 	a.rank()
 	a.test()
 	a.decide()
@@ -99,6 +100,9 @@ func (a *assessor) find(code, message string, rows []int, values map[string]Real
 // notices takes over what reading the file found.
 func (a *assessor) notices() {
 	for _, n := range a.set.Notices {
+		if n.Code == "limits-read" {
+			continue // limitFindings says what became of them
+		}
 		f := newFinding(n.Code, n.Message, n.Rows, nil)
 		if n.Cure != "" {
 			f.Cure = n.Cure
@@ -153,7 +157,7 @@ func (a *assessor) fit() error {
 					return err
 				}
 			}
-		} else if low := 1 - chi2Tail(a.straight.RSS, a.straight.Nu); a.straight.Nu > 0 && low < 0.01 {
+		} else if low := 1 - chi2Tail(a.straight.Measured().RSS, a.straight.Nu); a.straight.Nu > 0 && low < 0.01 {
 			a.find("scatter-too-small", fmt.Sprintf("the points scatter less about the straight line than their stated uncertainties allow (lower tail of χ² %.2g)", low), nil, map[string]Real{"p_value": Real(low)})
 		} else if p < 0.2 {
 			a.find("chi2-low", fmt.Sprintf("χ² p = %.2g: the stated uncertainties may leave out run-to-run scatter", p), nil, map[string]Real{"p_value": Real(p)})
@@ -261,13 +265,13 @@ func (a *assessor) contradicted() (p float64, yes bool) {
 		if f.Curve.Info().Trend == models.TrendNone || !f.Usable() || f.Nu < 1 {
 			continue
 		}
-		p = math.Max(p, chi2Tail(f.RSS, f.Nu))
+		p = math.Max(p, chi2Tail(f.Measured().RSS, f.Nu))
 	}
 	if p < 0 { // none is flexible: the line itself must do
 		if a.straight.Nu < 1 {
 			return 1, false
 		}
-		p = chi2Tail(a.straight.RSS, a.straight.Nu)
+		p = chi2Tail(a.straight.Measured().RSS, a.straight.Nu)
 	}
 	return p, p < 0.05
 }
@@ -280,7 +284,7 @@ func (a *assessor) rank() {
 	var nulls RunsNulls
 	for i := range a.ranking {
 		r := &a.ranking[i]
-		if f := a.fitOf(r.Curve); f.Usable() {
+		if f := a.fitOf(r.Curve).Measured(); f.Usable() {
 			r.Adequacy, r.Adequate = CheckAdequacy(s, f, pe, a.data.basis == BasisMeans, &nulls)
 		}
 	}
@@ -298,7 +302,7 @@ func (a *assessor) test() {
 		n, points := a.data.sample.Len(), a.data.single.Len()
 		a.find("temperature-means", fmt.Sprintf("the verdict uses the means at %d temperatures, not the %d single points, which share the errors of %d settings", n, points, n), nil, nil)
 	}
-	if a.second = a.opt.Designs.test(a.data.sample, a.straight, a.data.sample.Nuisance); a.second != nil {
+	if a.second = a.opt.Designs.test(a.data.sample, a.straight.Measured(), a.data.sample.Nuisance); a.second != nil {
 		a.second.sequential = a.opt.SequentialNull
 		a.secondRun = a.second.Run()
 	}
@@ -335,7 +339,7 @@ func (a *assessor) testExponents() {
 func (a *assessor) testExponent(s *fit.Sample, power *fit.Result) ExponentTest {
 	set := ExponentSettings{Confidence: a.opt.Confidence, Band: a.opt.PrefactorBand}
 	var profile *ExponentProfile
-	if s.Model.InK() && power.Status == fit.Converged && power.Nu > 0 {
+	if (s.Model.InK() || len(s.Limits) > 0) && power.Status == fit.Converged && power.Nu > 0 {
 		if profile = newExponentProfile(s, power, a.opt.Confidence); s.Spent() > 0 {
 			profile.Interval = profileOfRSS(power, profile.RSS, a.opt.Confidence)
 		}
@@ -367,6 +371,7 @@ func (a *assessor) resample(ctx context.Context) error {
 		a.findings = append(a.findings, f)
 		return nil
 	}
+	a.fewerWithLimits()
 	if a.limitResamples(); a.opt.Resamples == 0 {
 		return nil
 	}

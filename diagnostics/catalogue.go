@@ -274,6 +274,26 @@ var catalogue = []Entry{
 		Cure:        "--resamples 9999 for all of them, however long it takes, or average neighbouring temperatures",
 	},
 	{
+		Code: "limits-approximate", Title: "limits make the error rates approximate", Severity: Info,
+		Explanation: "A row that states only a bound of k enters the likelihood of every curve as the probability of its side of the bound, with the errors of the error model; it has no residual, is not averaged with other rows and is an entry of its own in N of AICc and BIC. The exponent, the change of E and their intervals are those of the profile likelihood, whose signed root is referred to Student's t with as many degrees of freedom as the measured points alone leave; σ̂ is that of largest likelihood times sqrt(n/ν), n counting measured points. Without limits all this is exact, with them approximate. A curve needs as many measured temperatures as without limits: a limit bounds k from one side only. Adequacy, the χ² test of stated uncertainties and the second-barrier test go by the measured points alone. Where uncertainties are stated, a limit without one takes that of the measured point nearest in temperature.",
+		Cure:        "measure where the limits are, or leave them out with --leave-out and compare", Reference: "Tobin 1958, Econometrica 26, 24",
+	},
+	{
+		Code: "limits-left-out", Title: "limits are not used", Severity: Warning,
+		Explanation: "A limit takes no part where it bounds nothing (k above zero, with errors in ln k), where several sources have offsets, which a limit would need too, and for a curve that the measured points leave without a degree of freedom.",
+		Cure:        "assess one source at a time, or measure at more temperatures",
+	},
+	{
+		Code: "limit-contradicted", Title: "a limit contradicts the measured points", Severity: Warning,
+		Explanation: "By the power-prefactor fit of the measured points alone (the straight line where there are too few), a new measurement at the temperature of the limit would fall on its side with a probability below 1 %. Among many limits one such may be chance. A wrong sign (< for >), another unit, a detection limit that was not reached for another reason, or a curve that bends there all look like this.",
+		Cure:        "check the sign, the unit and the temperature of the row; --leave-out shows what the limit does",
+	},
+	{
+		Code: "limits-scheme", Title: "this bootstrap cannot take limits", Severity: Alarm,
+		Explanation: "A limit has no residual to draw or to turn. The parametric scheme draws every entry anew about the fitted curve, limits too; one that falls on its side of the bound is that limit again, any other counts as measured. Pairs exchange entries as they are, limits among them, where no means are formed.",
+		Cure:        "--scheme parametric",
+	},
+	{
 		Code: "too-many-temperatures", Title: "too many temperatures", Severity: Alarm,
 		Explanation: "A data set may have 50,000 temperatures, or as many points where points at one temperature count as independent; the number of repeats is not limited. More would take gigabytes of memory, and tell no more than their means over narrow intervals of temperature: over 1 K the bend of ln k against 1/T is far below any scatter.",
 		Cure:        "average neighbouring temperatures, or select rows with --t-min, --t-max or --where",

@@ -21,11 +21,11 @@ func (a *assessor) assessment() *Assessment {
 		Settings: a.settings(),
 		Dataset: DatasetInfo{
 			Name: a.set.Name, Files: a.set.Files, SHA256: a.set.SHA256,
-			Points: len(a.set.Points), Used: a.data.used(), Temperatures: s.DistinctT(),
+			Points: len(a.set.Points), Used: a.data.used() + len(a.data.limits), Temperatures: s.DistinctT(),
 			TMin: Real(low), TMax: Real(high), TEff: Real(a.tEff),
 			Quantity: Quantity{a.set.Quantity.Symbol, a.set.Quantity.Unit, a.set.Quantity.Known},
 			Sources:  sources(a.set.Points),
-			Limits:   countLimits(a.set.Points),
+			Limits:   len(a.data.limits),
 		},
 		Columns:        []Column{},
 		Data:           a.rows(),
@@ -124,6 +124,9 @@ func (a *assessor) rows() []Datum {
 		if p.UK > 0 {
 			d.UK = Real(p.UK)
 		}
+		if a.data.entersAsLimit(p) {
+			d.Used, d.WhyNot = true, ""
+		}
 		at := place{p.File, p.Row}
 		if r := residual[at]; p.Used && len(r) > 0 {
 			d.Residual, residual[at] = Real(r[0]), r[1:]
@@ -163,13 +166,4 @@ func sources(points []dataset.Point) []string {
 		}
 	}
 	return out
-}
-
-func countLimits(points []dataset.Point) (n int) {
-	for _, p := range points {
-		if p.Limit != "" {
-			n++
-		}
-	}
-	return n
 }

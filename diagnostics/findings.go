@@ -62,7 +62,7 @@ func RankingFindings(ranking []Ranked, s *fit.Sample, by Criterion) []Finding {
 	if slices.Contains(fitted, "power-prefactor") {
 		add("forms-same-curve", "modified-arrhenius and eyring-heat-capacity are one curve: no data can choose between them")
 	}
-	if n := s.Len(); by == ByAICc && ranked > 1 {
+	if n := s.Len() + len(s.Limits); by == ByAICc && ranked > 1 {
 		way := "more reluctant to prefer a curve than the 5 % test (N is below 11)"
 		if n >= 11 {
 			way = "more eager to prefer a curve than the 5 % test (N is 11 or more)"

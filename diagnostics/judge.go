@@ -85,7 +85,7 @@ func (j *judge) state(y []float64, counts []int, r *fit.Refit) int {
 	// The second-barrier test is asked only where it can change the answer. On
 	// resampled pairs its null would differ from resample to resample, and it is
 	// left out.
-	if st == StraightWithin && j.second != nil && counts == nil && j.second.Found(y, j.scratch) {
+	if st == StraightWithin && j.second != nil && counts == nil && j.second.Found(y[:j.s.Len()], j.scratch) {
 		st = rule.Judge(low, high, true)
 	}
 	return slices.Index(States, st)
@@ -94,7 +94,7 @@ func (j *judge) state(y []float64, counts []int, r *fit.Refit) int {
 // interval is that of n in one resample.
 func (j *judge) interval(counts []int, r *fit.Refit) (low, high float64, ok bool) {
 	n := r.P[j.power][2]
-	if j.s.Model.InK() {
+	if j.s.Model.InK() || len(j.s.Limits) > 0 {
 		return j.profileInterval(n, r)
 	}
 	unscaled := j.unscaled

@@ -31,6 +31,7 @@ type prepared struct {
 	group  []int           // for each point the index of its mean
 	sample *fit.Sample     // single or means, whichever the verdict uses
 	basis  string
+	limits []dataset.Point // those that enter as limits, in the order of the samples'
 	// sources says how several sources are taken; nil where there is one.
 	sources *sourceSplit
 	source  []int // of each point; nil where there is one
@@ -66,6 +67,9 @@ func prepare(set *dataset.Set, model fit.ErrorModel, replicates string) (*prepar
 		return nil, err
 	}
 	if err := p.splitSources(replicates); err != nil {
+		return nil, err
+	}
+	if err := p.addLimits(set); err != nil {
 		return nil, err
 	}
 	return p, nil

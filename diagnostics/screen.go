@@ -63,7 +63,7 @@ func (s *Screening) State() State {
 // where it cannot be run. It runs when first asked.
 func (s *Screening) SecondBarrierFound() bool {
 	if s.found == nil {
-		b := s.a.opt.Designs.test(s.Sample, s.Straight, s.Sample.Nuisance)
+		b := s.a.opt.Designs.test(s.Sample, s.Straight.Measured(), s.Sample.Nuisance)
 		found := b != nil && b.found()
 		s.found = &found
 	}

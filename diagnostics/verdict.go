@@ -144,7 +144,11 @@ func Material(change fit.Estimate, toleranceKJ float64) *bool {
 func Testable(s *fit.Sample, power *fit.Result) (ok bool, more int, why string) {
 	d := s.DistinctT()
 	if d < minTemperatures {
-		return false, minTemperatures - d, fmt.Sprintf("the data have %s", count(d, "distinct temperature"))
+		why := fmt.Sprintf("the data have %s", count(d, "distinct temperature"))
+		if len(s.Limits) > 0 {
+			why += " with a measured k"
+		}
+		return false, minTemperatures - d, why
 	}
 	if power == nil {
 		return true, 0, ""

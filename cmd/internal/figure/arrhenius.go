@@ -266,13 +266,13 @@ func (d *Arrhenius) ranges() (xLow, xHigh, yLow, yHigh float64) {
 	return math.Max(0, xLow), xHigh, yLow, yHigh
 }
 
-// residualRange holds the residuals that were used and every curve; what was left
-// out may lie outside.
+// residualRange holds the residuals that were used and every curve; limits and what
+// was left out may lie outside.
 func (d *Arrhenius) residualRange() (low, high float64) {
 	core := emptySpan()
 	core.add(0)
 	for _, p := range d.Points {
-		if p.Used {
+		if p.measured() {
 			core.add(p.Residual)
 		}
 	}
@@ -281,7 +281,7 @@ func (d *Arrhenius) residualRange() (low, high float64) {
 	}
 	rs := core
 	for _, p := range d.Points {
-		if p.Used {
+		if p.measured() {
 			rs.addWithin(core, core.width(), p.ResidualLow, p.ResidualTop)
 		}
 	}

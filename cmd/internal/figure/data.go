@@ -36,8 +36,11 @@ type Point struct {
 	ResidualTop float64
 	Source      int    // index in Sources
 	Used        bool   // false: left out, drawn hollow
-	Limit       string // "<", ">" or ""
+	Limit       string // "<", ">" or "": drawn hollow, with an arrow into what it allows
 }
+
+// measured reports whether the point took part with a measured k.
+func (p Point) measured() bool { return p.Used && p.Limit == "" }
 
 // Mean is one temperature mean where the verdict rests on means.
 type Mean struct{ X, Y, Residual float64 }
@@ -119,10 +122,10 @@ func NewArrhenius(a *diagnostics.Assessment, opt Options) (*Arrhenius, error) {
 	return d, nil
 }
 
-// used counts the points that took part.
+// used counts the points that took part with a measured k.
 func (d *Arrhenius) used() (n int) {
 	for _, p := range d.Points {
-		if p.Used {
+		if p.measured() {
 			n++
 		}
 	}

@@ -386,6 +386,34 @@ func TestMeansAndSources(t *testing.T) {
 	}
 }
 
+// A limit that took part is hollow, is no mean and has no bar; its residual does not
+// stretch the panel. Without limits the panel is the same.
+func TestLimitsDrawn(t *testing.T) {
+	a := cases()["leftout"].assess(t)
+	before, err := NewArrhenius(a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	low, high := before.residualRange()
+	a.Data[0].Used, a.Data[11].Used = true, true
+	a.Data[0].K *= 50
+	d, err := NewArrhenius(a, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if p := d.Points[0]; p.Limit != "<" || p.measured() || !math.IsNaN(p.Low) || len(d.Means) != 0 {
+		t.Errorf("a limit that took part: %+v, %d means", p, len(d.Means))
+	}
+	if l, h := d.residualRange(); l != low || h != high {
+		t.Errorf("the residuals range from %g to %g, without limits %g to %g", l, h, low, high)
+	}
+	var leg legend
+	pointEntries(&leg, d)
+	if !slices.ContainsFunc(leg, func(e legendEntry) bool { return e.words == "limit" }) {
+		t.Error("the legend does not name limits")
+	}
+}
+
 // The legend shows a source by the marker that stands in the panel: a hollow one
 // where all its points are left out.
 func TestLegendOfASourceLeftOut(t *testing.T) {

@@ -45,7 +45,7 @@ func (d dots) Plot(c draw.Canvas, p *plot.Plot) {
 			continue
 		}
 		pt := vg.Point{X: trX(q.X), Y: trY(v)}
-		sty := glyph(q.Source, q.Used, d.radius)
+		sty := glyph(q.Source, q.measured(), d.radius)
 		if !c.Contains(pt) {
 			up := pt.Y > c.Max.Y
 			pt.Y = within(pt.Y)
@@ -152,8 +152,9 @@ func pointEntries(leg *legend, d *Arrhenius) {
 	}
 	if limits {
 		leg.entry("limit", thumb(func(c *draw.Canvas, pt vg.Point) {
-			pt.Y += 4
-			arrow(c, pt, false, 8)
+			pt.Y += 2.5
+			arrow(c, pt, false, 9)
+			c.DrawGlyph(glyph(0, false, min(r, 2.5)), pt)
 		}))
 	}
 	if len(d.Means) > 0 {
@@ -169,7 +170,7 @@ func pointEntries(leg *legend, d *Arrhenius) {
 // stands nowhere but hollow.
 func (d *Arrhenius) sourceUsed(source int) bool {
 	for _, p := range d.Points {
-		if p.Source == source && p.Used {
+		if p.Source == source && p.measured() {
 			return true
 		}
 	}

@@ -1,0 +1,190 @@
+package diagnostics
+
+import (
+	"cmp"
+	"fmt"
+	"math"
+	"slices"
+
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+)
+
+// limitedResamples is the most resamples that a set with limits gets unasked: each
+// takes some tenths of a millisecond, a thousand times what others take.
+const limitedResamples = 999
+
+// limitLevel is the probability of a limit below which it contradicts the points.
+const limitLevel = 0.01
+
+// addLimits takes the limits of a set into the samples, each as an entry of its own:
+// they are not averaged with what was measured at the same temperature. Where several
+// sources have offsets they stay out, since a limit would need its source's. A limit
+// without an uncertainty, where uncertainties are stated, takes that of the measured
+// point nearest in temperature: relative where errors are in ln k.
+func (p *prepared) addLimits(set *dataset.Set) error {
+	var points []dataset.Point
+	for _, pt := range set.LimitPoints() {
+		if pt.K > 0 || p.single.Model.InK() {
+			points = append(points, pt)
+		}
+	}
+	if len(points) == 0 || p.sample.Spent() > 0 {
+		return nil
+	}
+	slices.SortStableFunc(points, func(a, b dataset.Point) int {
+		return cmp.Or(cmp.Compare(a.T, b.T), cmp.Compare(a.Row, b.Row))
+	})
+	limits := make([]fit.Limit, len(points))
+	for i, pt := range points {
+		limits[i] = fit.Limit{T: pt.T, K: pt.K, Below: pt.Limit == "<", V: p.limitVariance(pt)}
+	}
+	var err error
+	with := func(s *fit.Sample) *fit.Sample {
+		if s != nil && err == nil {
+			s, err = s.WithLimits(limits)
+		}
+		return s
+	}
+	onMeans := p.sample == p.means
+	p.single, p.means = with(p.single), with(p.means)
+	if err != nil {
+		return err
+	}
+	if p.sample = p.single; onMeans {
+		p.sample = p.means
+	}
+	p.limits = points
+	return nil
+}
+
+// limitVariance is the variance of what would have been measured in place of a limit.
+func (p *prepared) limitVariance(pt dataset.Point) float64 {
+	model := p.single.Model
+	if model == fit.Relative || model == fit.Absolute {
+		return 1
+	}
+	nearest := 0
+	for i, q := range p.points {
+		if math.Abs(q.T-pt.T) < math.Abs(p.points[nearest].T-pt.T) {
+			nearest = i
+		}
+	}
+	v := p.single.V[nearest] // what u(T) adds there included
+	if pt.UK > 0 {
+		v = variance(pt, model)
+	}
+	if !(v > 0) || math.IsInf(v, 0) {
+		v = p.single.V[nearest]
+	}
+	return v
+}
+
+// entersAsLimit reports whether the point is one of the limits of the samples.
+func (p *prepared) entersAsLimit(pt dataset.Point) bool {
+	return slices.ContainsFunc(p.limits, func(l dataset.Point) bool {
+		return l.File == pt.File && l.Row == pt.Row && l.Column == pt.Column
+	})
+}
+
+// places are the indices in the set of the limits, and of those that do not enter.
+func (a *assessor) limitPlaces() (in, out []int) {
+	for i, p := range a.set.Points {
+		switch {
+		case a.data.entersAsLimit(p):
+			in = append(in, i)
+		case p.IsLimit():
+			out = append(out, i)
+		}
+	}
+	return in, out
+}
+
+// limitFindings says how limits were taken.
+func (a *assessor) limitFindings() {
+	in, out := a.limitPlaces()
+	rows := func(at []int) (rows []int) {
+		for _, i := range at {
+			rows = append(rows, a.set.Points[i].Row)
+		}
+		return rows
+	}
+	if len(out) > 0 {
+		why := "a limit of k that is not positive says nothing of ln k"
+		if a.data.sample.Spent() > 0 {
+			why = "with offsets between sources limits take no part"
+		}
+		a.find("limits-left-out", fmt.Sprintf("%s: %s left out; %s", a.set.Places(out), count(len(out), "limit"), why), rows(out), nil)
+	}
+	if len(in) == 0 {
+		return
+	}
+	a.find("limits-approximate", fmt.Sprintf("%s: %s as the probability of its side; the 5 %% of the verdict, and every interval, is then approximate", a.set.Places(in), enter(len(in))), rows(in),
+		map[string]Real{"limits": Real(len(in))})
+	if len(a.power.Warnings) > 0 && a.power.Nu < 1 {
+		a.find("limits-left-out", "the exponent is determined by measured points alone: limits do not stand in for temperatures", rows(in), nil)
+	}
+	for i, pt := range a.data.limits {
+		p, ok := a.limitProbability(a.data.sample.Limits[i])
+		if !ok || !(p < limitLevel) {
+			continue
+		}
+		at := slices.IndexFunc(a.set.Points, func(q dataset.Point) bool { return q.File == pt.File && q.Row == pt.Row && q.Column == pt.Column })
+		a.find("limit-contradicted", fmt.Sprintf("%s: k %s %.4g at %.6g K has a probability of %.1g by the measured points", a.set.Places([]int{at}), pt.Limit, pt.K, pt.T, p), []int{pt.Row},
+			map[string]Real{"t_k": Real(pt.T), "limit": Real(pt.K), "probability": Real(p)})
+	}
+}
+
+// enter: 1 limit enters, 2 limits enter.
+func enter(n int) string {
+	if n == 1 {
+		return "1 limit enters"
+	}
+	return fmt.Sprintf("%d limits enter, each", n)
+}
+
+// limitProbability is that of a new measurement on the side of a limit, by Student's t
+// (normal where σ is known) about the power-prefactor fit of the measured points, or
+// the straight one where that has no degree of freedom: the joint fit would already
+// lean to the limit. ok is false where neither has.
+func (a *assessor) limitProbability(l fit.Limit) (p float64, ok bool) {
+	for _, r := range []*fit.Result{a.power.Measured(), a.straight.Measured()} {
+		known := r.Model.KnownSigma()
+		if r.Status != fit.Converged || r.Cov == nil || !known && r.Nu < 1 || !(r.Sigma > 0) {
+			continue
+		}
+		jac, f := make([]float64, r.Params()), []float64{0}
+		r.Curve.LnK(r.TRef, []float64{l.T}, r.P, f, jac)
+		e := r.Interval(jac, f[0], 0.95)
+		se, d := e.StdError, math.Log(l.K)-f[0]
+		if r.Model.InK() {
+			k := math.Exp(f[0])
+			se, d = se*k, l.K-k
+		}
+		if !l.Below {
+			d = -d
+		}
+		z := d / math.Sqrt(se*se+r.Sigma*r.Sigma*l.V)
+		tail := pNormal(z) / 2
+		if !known {
+			tail = pStudent(z, float64(r.Nu)) / 2
+		}
+		if z > 0 {
+			tail = 1 - tail
+		}
+		return tail, true
+	}
+	return math.NaN(), false
+}
+
+// fewerWithLimits lowers the number of resamples of a set with limits, unless it was
+// asked for.
+func (a *assessor) fewerWithLimits() {
+	if len(a.data.limits) == 0 || a.opt.KeepResamples || a.opt.Resamples <= limitedResamples {
+		return
+	}
+	asked := a.opt.Resamples
+	a.opt.Resamples = limitedResamples
+	a.find("fewer-resamples", fmt.Sprintf("limits make each resample slow: only %d resamples, not %d", limitedResamples, asked), nil,
+		map[string]Real{"resamples": Real(limitedResamples), "default": Real(asked)})
+}
