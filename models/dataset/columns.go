@@ -129,7 +129,7 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 				if j >= len(headings) || c == "" {
 					continue
 				}
-				if _, err := ParseUnit(strings.Trim(c, "()[]")); err == nil && !strings.ContainsAny(headings[j], "([") && !strings.Contains(headings[j], "/") {
+				if isUnitCell(normalize(c)) && !strings.ContainsAny(headings[j], "([") && !strings.Contains(headings[j], "/") {
 					c = "(" + strings.Trim(c, "()[]") + ")"
 				}
 				headings[j] = strings.TrimSpace(headings[j] + " " + c)
@@ -191,8 +191,7 @@ func headingRow(cells []string) (units, words bool) {
 			continue
 		}
 		n++
-		u, err := ParseUnit(strings.Trim(s, "()[] "))
-		isUnit := err == nil && u.Text != "1"
+		isUnit := isUnitCell(s)
 		units = units && isUnit
 		if !isUnit && !allNumbers([]string{c}) {
 			continue
@@ -202,6 +201,13 @@ func headingRow(cells []string) (units, words bool) {
 		}
 	}
 	return units && n > 0, words && n > 1
+}
+
+// isUnitCell reports whether a cell below a heading is its unit, in brackets or not.
+func isUnitCell(s string) bool {
+	first, _ := factorFirst(strings.Trim(s, "()[] "))
+	u, err := ParseUnit(first)
+	return err == nil && u.Text != "1"
 }
 
 func filled(cells []string) int {
@@ -776,6 +782,10 @@ func (m *maker) chooseUncertainty(p *plan, forced []*column, line int) {
 		}
 		if c.Ambiguity != nil && c.Kind == KindExpanded && p.coverage != nil {
 			c.Ambiguity = nil
+		}
+		if c.Ambiguity != nil && c.Ambiguity.Key == "factor" {
+			m.refuseCure(codeAmbiguousRate, line, c.Text, "the power of ten may be meant in several ways", "write the power before the quantity or before its unit, or say which: "+c.Ambiguity.meanings())
+			continue
 		}
 		if c.Ambiguity != nil {
 			c.says = "its level is not stated"

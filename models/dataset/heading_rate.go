@@ -219,6 +219,9 @@ func (p headingParser) dividedRate(s string, d Divisor, ofK bool) (Heading, bool
 			}
 		}
 	}
+	if !times {
+		unit, times = factorFirst(unit) // k (s^-1 × 10^5)
+	}
 	if h.Unit == nil {
 		h.setUnit(unit)
 		if d == DivisorT && !ofK {
@@ -276,17 +279,42 @@ func (p headingParser) dividedRate(s string, d Divisor, ofK bool) (Heading, bool
 	default:
 		h.Form = FormLg
 	}
-	if times && h.Ambiguity == nil {
-		h.Ambiguity = &Ambiguity{"factor", factorMeanings}
-		switch p.assume["factor"] {
-		case "times":
-			h.settle("times")
-			h.Shift = -h.Shift + 2*prefix
-		case "unit":
-			h.settle("unit")
-		}
+	if times {
+		p.settleFactor(&h, prefix)
 	}
 	return h, true
+}
+
+// settleFactor marks a power of ten that stands behind a quantity or its unit as
+// ambiguous, or settles it by what the user said. prefix is the part of Shift that
+// stands before the quantity, and is none of it.
+func (p headingParser) settleFactor(h *Heading, prefix int) {
+	if h.Ambiguity != nil {
+		return
+	}
+	h.Ambiguity = &Ambiguity{"factor", factorMeanings}
+	switch p.assume["factor"] {
+	case "times":
+		h.settle("times")
+		h.Shift = -h.Shift + 2*prefix
+	case "unit":
+		h.settle("unit")
+	}
+}
+
+var reFactorBehind = regexp.MustCompile(`^(.*[^ ]) ?[×*·x] ?(10.*)$`)
+
+// factorFirst writes a unit with a power of ten behind it, such as s^-1 × 10^5, with
+// the power first. ok is false where there is none.
+func factorFirst(unit string) (first string, ok bool) {
+	m := reFactorBehind.FindStringSubmatch(unit)
+	if m == nil || !bareFactor(m[2]) {
+		return unit, false
+	}
+	if _, err := ParseUnit(m[1]); err != nil {
+		return unit, false
+	}
+	return m[2] + " " + m[1], true
 }
 
 // skipPower leaves out a power of ten at the start.

@@ -102,6 +102,12 @@ func TestHeadings(t *testing.T) {
 		{"Type", "kept"},
 		{"T_g", "kept"},
 		{"Tmin_K", "kept"},
+		// a power of ten behind the unit
+		{"k (s⁻¹ × 10⁵)", "rate k [s^-1] e5 ?factor"},
+		{"k/s^-1 × 10^5", "rate k [s^-1] e5 ?factor"},
+		{"k (s^-1 x 105)", "rate k [s^-1] e5 ?factor lost"},
+		{"k (m^2 s^-1 · 10^-9)", "rate k [m^2 s^-1] e-9 ?factor"},
+		{"SE (s^-1 × 10^5)", "uncertainty [s^-1] e5 standard, of mean ?factor"},
 		// k divided by T, by k_B T/h; never a unit "T"
 		{"ln(k/T)", "rate k ln over T"},
 		{"ln k/T", "rate k ln over T"},

@@ -204,11 +204,17 @@ func (p headingParser) uncertainty(s string) (Heading, bool) {
 		h.Unit, h.UnitText = u, u.Text
 		return p.settleError(h), true
 	}
+	prefix := h.Shift
+	unit, times := factorFirst(unit)
 	h.setUnit(unit)
 	if unit != "" && h.Unit == nil && how == ' ' {
 		return h, false
 	}
-	return p.settleError(h), true
+	h = p.settleError(h)
+	if times {
+		p.settleFactor(&h, prefix)
+	}
+	return h, true
 }
 
 // settleError settles an ambiguous level by what the user said: error=1, error=2,

@@ -4,6 +4,8 @@ import (
 	"errors"
 	"strings"
 	"testing"
+
+	"onebarrier/models/reference"
 )
 
 // problemsOf reads a table that is refused.
@@ -58,4 +60,29 @@ func TestWrongPowerOfTemperature(t *testing.T) {
 	read(t, "T/mK,k/s^-1\n280,1\n290,2\n", Options{})
 	read(t, "T/K,k/s^-1\n1.0,1\n2,2\n", Options{})
 	read(t, "10^5 K/T,k/s^-1\n1.0,1\n2,2\n", Options{}) // 100 000 K
+}
+
+// A power of ten behind the unit, in the heading or in a row of units: the cell is k
+// times the power, 3.1 = 10^5 k, or k counted in it, k = 3.1·10^5.
+func TestPowerBehindTheUnit(t *testing.T) {
+	for _, text := range []string{
+		"T/K,k (s⁻¹ × 10⁵),SE (s⁻¹ × 10⁵)\n280,3.1,0.2\n290,4,0.2\n",
+		"T,k,SE\n(K),(s⁻¹ × 10⁵),(s⁻¹ × 10⁵)\n280,3.1,0.2\n290,4,0.2\n",
+		"T,k,SE\nK,s-1 x 10^5,s-1 x 10^5\n280,3.1,0.2\n290,4,0.2\n",
+	} {
+		ps := problemsOf(t, text, Options{})
+		if ps[0].Code != codeAmbiguousRate || !strings.Contains(ps[0].Cure, "--assume factor=times") || !strings.Contains(ps[0].Cure, "--assume factor=unit") {
+			t.Errorf("%q: %v", text, ps)
+		}
+		for value, want := range map[string][2]float64{"times": {3.1e-5, 0.2e-5}, "unit": {3.1e5, 0.2e5}} {
+			p := read(t, text, Options{Assume: map[string]string{"factor": value}}).Points[0]
+			if !reference.Agrees(p.K, want[0], 1e-14) || !reference.Agrees(p.UK, want[1], 1e-14) {
+				t.Errorf("%q, factor=%s: k %v, u %v, want %v", text, value, p.K, p.UK, want)
+			}
+		}
+	}
+	ps := problemsOf(t, "T/K,k/s^-1,SE (s^-1 × 10^5)\n280,3.1,0.2\n290,4,0.2\n", Options{})
+	if ps[0].Column != "SE (s^-1 × 10^5)" || !strings.Contains(ps[0].Cure, "--assume factor=times") {
+		t.Error(ps)
+	}
 }
