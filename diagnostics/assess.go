@@ -99,6 +99,9 @@ func (a *assessor) find(code, message string, rows []int, values map[string]Real
 
 // notices takes over what reading the file found.
 func (a *assessor) notices() {
+	if f, many := manyCandidates(a.opt.Models); many {
+		a.findings = append(a.findings, f)
+	}
 	for _, n := range a.set.Notices {
 		if n.Code == "limits-read" {
 			continue // limitFindings says what became of them
@@ -262,7 +265,8 @@ func (a *assessor) fitOf(curve string) *fit.Result {
 func (a *assessor) contradicted() (p float64, yes bool) {
 	p = -1
 	for _, f := range a.fits {
-		if f.Curve.Info().Trend == models.TrendNone || !f.Usable() || f.Nu < 1 {
+		// Curves beyond the default are no reason to choose another error model.
+		if f.Curve.Info().Trend == models.TrendNone || !models.IsDefault(f.Curve) || !f.Usable() || f.Nu < 1 {
 			continue
 		}
 		p = math.Max(p, chi2Tail(f.Measured().RSS, f.Nu))

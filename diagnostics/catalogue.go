@@ -118,7 +118,12 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "curve-excluded", Title: "the data bend the other way", Severity: Info,
-		Explanation: "Two parallel paths make E rise with T, always. Where the data do not bend that way the best such curve is the straight line itself, and it is excluded instead of being fitted to nonsense.",
+		Explanation: "Two parallel paths make E rise with T, always, and so does tunnelling; steps in series make it fall. Where the data do not bend that way the best such curve is the straight line itself, and it is excluded instead of being fitted to nonsense.",
+	},
+	{
+		Code: "many-candidates", Title: "many candidates", Severity: Warning,
+		Explanation: "Every further candidate is one more chance to follow the noise: the curve that ranks first among many is a curved one more often than among the default candidates, also where one barrier made the data. The verdict does not depend on the candidates. The calibration study shows by how much the first places do.",
+		Cure:        "name the curves for which there is a physical reason: --models +vogel",
 	},
 	{
 		Code: "curve-not-fitted", Title: "a curve could not be fitted", Severity: Info,

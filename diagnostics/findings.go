@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strings"
 
+	"onebarrier/models"
 	"onebarrier/models/fit"
 )
 
@@ -148,6 +149,20 @@ func notAPrefactor(n float64, change string) Finding {
 	return newFinding("exponent-not-a-prefactor",
 		fmt.Sprintf("n = %s is no prefactor: read ΔE = %s or ΔC_p‡", number(n, 1), change),
 		nil, map[string]Real{"n": Real(n)})
+}
+
+// manyCandidates counts the candidates that are not fitted unless they are named.
+func manyCandidates(curves []models.Curve) (f Finding, raised bool) {
+	const many = 3
+	more := 0
+	for _, c := range curves {
+		if !models.IsDefault(c) {
+			more++
+		}
+	}
+	return newFinding("many-candidates",
+		fmt.Sprintf("%d candidates, %d of them beyond the default ones: a long list finds curvature in noise", len(curves), more),
+		nil, map[string]Real{"candidates": Real(len(curves)), "beyond_default": Real(more)}), more >= many
 }
 
 func bandNarrow(band [2]float64) Finding {

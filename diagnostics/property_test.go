@@ -441,6 +441,10 @@ func TestLocalEnergyIsTheDerivative(t *testing.T) {
 				p[j] = rapid.Float64Range(-10, 10).Draw(rt, q.Symbol)
 			}
 		}
+		if c, ok := c.(models.Seeded); ok {
+			low, _, high := c.Bounds(tRef, 190, 1000)
+			p[2] = low + (high-low)*rapid.Float64Range(0, 0.9).Draw(rt, "place between the bounds")
+		}
 		at := func(inverse float64) float64 {
 			f := make([]float64, 1)
 			c.LnK(tRef, []float64{1 / inverse}, p, f, nil)

@@ -112,7 +112,7 @@ func formEstimates(r *fit.Result, fr models.Frame, confidence float64, q dataset
 			if p, ok := profiles[par.Symbol]; ok && withheld(f, q) == "" {
 				e = p
 			}
-			if par.Symbol == crossover {
+			if par.Symbol == crossover || par.Symbol == half {
 				if e = reciprocal(e); openBarrier(profiles) {
 					e = fit.Unknown()
 				}
@@ -138,8 +138,9 @@ func formEstimates(r *fit.Result, fr models.Frame, confidence float64, q dataset
 	return out
 }
 
-// crossover is the symbol of the temperature at which two paths are equally fast.
-const crossover = "T_x"
+// crossover is the symbol of the temperature at which two paths are equally fast, half
+// that of the same temperature of a catalyst half of which is inactive there.
+const crossover, half = "T_x", "T_half"
 
 // openBarrier reports whether the data leave a barrier without a bound. Where the
 // paths cross is then not bounded either, whatever the covariance says.
@@ -797,6 +798,8 @@ func (w *publisher) recovery() {
 		text = power(r.P[2], r.P[1]-r.P[2]*models.GasConstant*r.TRef)
 	case models.Parallel:
 		text = "[" + path(r.P[0]+r.P[1]*u, 0, r.P[1]/models.GasConstant) + " + " + path(r.P[2]+r.P[3]*u, 0, r.P[3]/models.GasConstant) + "]"
+	case models.Series:
+		text = "1/[1/(" + path(r.P[0]+r.P[1]*u, 0, r.P[1]/models.GasConstant) + ") + 1/(" + path(r.P[2]+r.P[3]*u, 0, r.P[3]/models.GasConstant) + ")]"
 	default:
 		w.note("to compute k(T), take the parameters of %s from the JSON", r.Curve.Info().Name)
 		return

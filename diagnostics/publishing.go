@@ -92,11 +92,16 @@ func (a *assessor) eyring() *fit.Result {
 	return fit.Fit(a.data.sample, c)
 }
 
-// profiles are the profile intervals of the barriers and prefactors of parallel,
+// profiles are the profile intervals of the barriers and prefactors of parallel and series,
 // whose estimates are far from normal, by form symbol and in the form's units; nil
 // for other curves.
 func (a *assessor) profiles(f *fit.Result) map[string]fit.Estimate {
-	if _, ok := f.Curve.(models.Parallel); !ok || f.Nu < 1 {
+	switch f.Curve.(type) {
+	case models.Parallel, models.Series:
+	default:
+		return nil
+	}
+	if f.Nu < 1 {
 		return nil
 	}
 	u := 1 / (models.GasConstant * f.TRef)
@@ -110,12 +115,15 @@ func (a *assessor) profiles(f *fit.Result) map[string]fit.Estimate {
 		{"ln_A2", []float64{0, 0, 1, u}, 1}, {"E2", []float64{0, 0, 0, 1}, 1. / 1000},
 	} {
 		var e fit.Estimate
-		if a.model.InK() {
+		if a.model.InK() || a.data.sample.Spent() > 0 {
 			e = fit.Profile(a.data.sample, f, p.c, a.opt.Confidence)
 		} else {
 			e = fit.ProfileShaped(a.data.sample, f, p.symbol, a.opt.Confidence)
 		}
 		out[p.symbol] = scaled(e, p.unit)
+	}
+	if _, ok := f.Curve.(models.Series); ok { // the active catalyst of reversible-inactivation
+		out["ln_A"], out["E"] = out["ln_A2"], out["E2"]
 	}
 	return out
 }

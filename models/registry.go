@@ -32,6 +32,16 @@ func All() []Curve { return filter(func(bool) bool { return true }) }
 // Default returns the curves that are fitted unless others are named.
 func Default() []Curve { return filter(func(d bool) bool { return d }) }
 
+// IsDefault reports whether a curve is fitted unless others are named.
+func IsDefault(c Curve) bool {
+	for _, e := range catalogue {
+		if e.curve.Info().Name == c.Info().Name {
+			return e.isDefault
+		}
+	}
+	return false
+}
+
 func filter(keep func(isDefault bool) bool) []Curve {
 	var cs []Curve
 	for _, e := range catalogue {

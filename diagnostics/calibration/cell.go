@@ -125,6 +125,34 @@ func (r Repeats) at(i int) int {
 	return 1
 }
 
+// Limits says what becomes of points below the detection limit.
+type Limits int
+
+// The ways of taking them.
+const (
+	Detected    Limits = iota // there is no limit: all are measured
+	AsLimits                  // as limits
+	LeftOut                   // not at all
+	HalfTaken                 // half of the limit is taken as measured
+	LimitsTaken               // the limit is taken as measured
+)
+
+// apply turns a point below the limit into what the analyst makes of it.
+func (l Limits) apply(p *dataset.Point, limit float64) {
+	if l == Detected || p.K >= limit {
+		return
+	}
+	p.K = limit
+	switch l {
+	case AsLimits:
+		p.Used, p.Limit = false, "<"
+	case LeftOut:
+		p.Used = false
+	case HalfTaken:
+		p.K /= 2
+	}
+}
+
 // Cell is one condition of the study.
 type Cell struct {
 	Range Range
@@ -141,12 +169,17 @@ type Cell struct {
 	Stated float64
 	// Model is the error model asked for; "" leaves it to the data.
 	Model fit.ErrorModel
+	// Limits is what becomes of points below a detection limit, which a fifth of the
+	// range at its cold end has its k below.
+	Limits Limits
 	// Laboratories says who measures what; Offsets multiplies the offsets between them.
 	Laboratories Laboratories
 	Offsets      float64
 	// Lean leaves all candidates but straight and power-prefactor out, where the
 	// verdict does not depend on them: all but stated uncertainties.
 	Lean bool
+	// Every takes every curve of the catalogue as a candidate.
+	Every bool
 	// Compare asks only which error model has the lower AICc on the line, relative
 	// or absolute.
 	Compare bool
@@ -159,7 +192,11 @@ type Cell struct {
 // name identifies the condition in its random streams.
 func (c Cell) name() string {
 	name := fmt.Sprintf("%+v", c)
-	if c.Laboratories == One { // conditions of one laboratory keep their streams
+	name = strings.Replace(name, " Every:false", "", 1)
+	if c.Limits == Detected { // conditions without limits keep their streams
+		name = strings.Replace(name, fmt.Sprintf(" Limits:%d", c.Limits), "", 1)
+	}
+	if c.Laboratories == One { // so do those of one laboratory
 		name = strings.Replace(name, fmt.Sprintf(" Laboratories:%d Offsets:%g", c.Laboratories, c.Offsets), "", 1)
 	}
 	return name
@@ -187,6 +224,7 @@ func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 		Points:   make([]dataset.Point, 0, c.N*c.Repeats.at(2)),
 	}
 	middle, _ := c.Truth.at(c.Range, (c.Range.Low+c.Range.High)/2)
+	detection, _ := c.Truth.at(c.Range, c.Range.Low+0.2*(c.Range.High-c.Range.Low))
 	uneven := [...]float64{1, 1.5, 0.7}
 	for i := range c.N {
 		t := c.Range.Low + (c.Range.High-c.Range.Low)*float64(i)/float64(c.N-1)
@@ -209,6 +247,7 @@ func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 			if c.Stated > 0 {
 				p.UK, p.Level = c.Stated*sd*p.K, dataset.LevelStandard
 			}
+			c.Limits.apply(&p, math.Exp(detection))
 			set.Points = append(set.Points, p)
 		}
 	}
@@ -221,6 +260,9 @@ func (c Cell) options(designs *diagnostics.DesignCache) diagnostics.Options {
 	o.ErrorModel = c.Model
 	o.Resamples = 0
 	o.Designs = designs
+	if c.Every {
+		o.Models = models.All()
+	}
 	if c.Lean {
 		o.Models = []models.Curve{models.Straight(), models.PowerPrefactor{}}
 	}

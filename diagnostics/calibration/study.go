@@ -67,6 +67,7 @@ func New() *Study {
 	s := &Study{byName: map[string]*job{}}
 	s.falseAlarms()
 	s.limits()
+	s.detection()
 	s.repeats()
 	s.sources()
 	s.beyond()
@@ -175,6 +176,21 @@ func (s *Study) limits() {
 	}
 }
 
+func (s *Study) detection() {
+	s.section("Points below a detection limit",
+		"One barrier, error model relative; k is not detected in the coldest fifth of the range, and N counts all points. Share of curved verdicts among data sets that can be tested, in per cent, by what is done about it.")
+	for _, r := range ranges {
+		for _, v := range []struct {
+			name  string
+			taken Limits
+		}{{"as limits", AsLimits}, {"left out", LeftOut}, {"half of the limit taken as measured", HalfTaken}, {"the limit taken as measured", LimitsTaken}} {
+			c := relative(r)
+			c.Limits, c.Lean = v.taken, true
+			s.row(v.name+", "+r.String(), c, someForPower, Curved, nil)
+		}
+	}
+}
+
 func (s *Study) repeats() {
 	s.section("Repeats at one temperature",
 		"One barrier, error model relative, three repeats of each temperature; share of curved verdicts in per cent. A shared thermostat error is as large as the scatter of the repeats.")
@@ -221,6 +237,10 @@ func (s *Study) criteria() {
 		s.row("AIC, "+r.String(), relative(r), all, BestAIC, nil)
 		s.row("AICc, "+r.String(), relative(r), all, BestAICc, nil)
 		s.row("BIC, "+r.String(), relative(r), all, BestBIC, nil)
+		every := relative(r)
+		every.Every = true
+		s.row("AIC among every curve of the catalogue, "+r.String(), every, all, BestAIC, nil)
+		s.row("AICc among every curve of the catalogue, "+r.String(), every, all, BestAICc, nil)
 	}
 }
 

@@ -113,45 +113,11 @@ func TestParallelAtAnyPrecision(t *testing.T) {
 	}
 }
 
-// series is barriers in series, 1/k = 1/k1 + 1/k2, for the kernel's other sign.
-type series struct{ models.Parallel }
-
-func (series) Info() models.Info {
-	info := models.Parallel{}.Info()
-	info.Name, info.Family, info.Trend = "series", "series", models.TrendFalls
-	return info
-}
-
-func (series) LnK(tRef float64, t, p, f, jac []float64) {
-	// ln k = -ln(exp(-l1) + exp(-l2)) is the sum of paths with every sign turned.
-	q := []float64{-p[0], -p[1], -p[2], -p[3]}
-	models.Parallel{}.LnK(tRef, t, q, f, jac)
-	for i := range f {
-		f[i] = -f[i]
-	}
-}
-
-func (series) Shape(x, q, g, dg, d2g []float64) {
-	models.Parallel{}.Shape(x, q, g, dg, d2g)
-	for _, v := range [][]float64{g, dg, d2g} {
-		for i := range v {
-			v[i] = -v[i]
-		}
-	}
-}
-
-func (series) FromShape(a, e float64, q, p []float64) {
-	p[0], p[1], p[2], p[3] = a, e, a-q[0], e-q[1]
-	if p[3] < p[1] {
-		p[0], p[1], p[2], p[3] = p[2], p[3], p[0], p[1]
-	}
-}
-
 // TestSeriesGolden checks the kernel's other sign against golden_fits_mp.csv.
 func TestSeriesGolden(t *testing.T) {
 	for _, set := range []string{"s4_series", "s7_vft"} {
 		g := reference.Golden(t, "golden_fits_mp.csv").Fit(set, "ser2")
-		res := Fit(synthetic(t, set, Relative), series{})
+		res := Fit(synthetic(t, set, Relative), models.Series{})
 		if res.Status != Converged {
 			t.Errorf("%s: %v: %s", set, res.Status, res.Reason)
 			continue
@@ -178,7 +144,7 @@ func TestParallelExcluded(t *testing.T) {
 			t.Errorf("%s: parallel is %v: %s", set, res.Status, res.Reason)
 		}
 	}
-	if res := Fit(synthetic(t, "s3_parallel", Relative), series{}); res.Status != Excluded {
+	if res := Fit(synthetic(t, "s3_parallel", Relative), models.Series{}); res.Status != Excluded {
 		t.Errorf("s3_parallel: series is %v: %s", res.Status, res.Reason)
 	}
 	// An exact line, and one whose ln k are rounded to 13 digits: the curvature of
@@ -260,8 +226,8 @@ func TestParallelProfileAgainstR(t *testing.T) {
 		{"s2_tn_curved", "par2", models.Parallel{}},
 		{"s3_parallel", "par2", models.Parallel{}},
 		{"s6_replicates", "par2", models.Parallel{}},
-		{"s4_series", "ser2", series{}},
-		{"s7_vft", "ser2", series{}},
+		{"s4_series", "ser2", models.Series{}},
+		{"s7_vft", "ser2", models.Series{}},
 	} {
 		s := synthetic(t, c.set, Relative)
 		r := Fit(s, c.curve)

@@ -124,6 +124,14 @@ func symbol(s string) string {
 		return "ΔS‡"
 	case "dCp":
 		return "ΔC_p‡"
+	case "dCp_dT":
+		return "dΔC_p‡/dT"
+	case "dH_d":
+		return "ΔH_d"
+	case "T0":
+		return "T_0"
+	case "nu":
+		return "ν‡"
 	}
 	return s
 }
@@ -138,6 +146,8 @@ func unit(s string) string {
 		return "kJ/mol"
 	case "J mol^-1 K^-1":
 		return "J/(mol K)"
+	case "J mol^-1 K^-2":
+		return "J/(mol K²)"
 	}
 	return s
 }
