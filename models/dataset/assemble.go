@@ -96,56 +96,69 @@ func (m *maker) cells(r Row, n int) ([]string, bool) {
 // decideDecimal finds the decimal mark of the columns with numbers; false where it
 // has to be asked for.
 func (m *maker) decideDecimal(p *plan, first int) bool {
+	var found marks
+	if m.opt.Decimal == "" && m.t.mayHoldComma {
+		for i := first; i < len(m.t.Rows); i++ {
+			if i > first && m.t.Blank[i] {
+				break
+			}
+			found.look(p, m.t.Rows[i])
+		}
+	}
+	return m.decideBy(p, &found)
+}
+
+// marks is what the cells of a table show of its decimal mark.
+type marks struct {
+	point, comma *markAt // the first of each
+	sure         bool    // some comma cannot group thousands
+}
+
+type markAt struct {
+	row        int
+	text, head string
+}
+
+// look adds the numbers of one row.
+func (f *marks) look(p *plan, r Row) {
+	for j := range min(len(p.cols), len(r.Cells)) {
+		c := &p.cols[j]
+		if !c.used || c.Role.isText() || c.Role == RoleLimit {
+			continue
+		}
+		cell := r.Cells[j]
+		if f.point != nil && strings.IndexByte(cell, ',') < 0 || !strings.ContainsAny(cell, ".,") || len(cell) > longestCell {
+			continue
+		}
+		mark, sure := decimalMark(cell)
+		switch mark {
+		case '.':
+			if f.point == nil {
+				f.point = &markAt{r.Line, strings.Clone(cell), c.Text}
+			}
+		case ',':
+			if f.comma == nil {
+				f.comma = &markAt{r.Line, strings.Clone(cell), c.Text}
+			}
+			f.sure = f.sure || sure
+		}
+	}
+}
+
+// decideBy decides by what was found.
+func (m *maker) decideBy(p *plan, found *marks) bool {
 	p.decimal = '.'
+	point, comma := found.point, found.comma
 	switch {
 	case m.opt.Decimal == "comma":
 		p.decimal = ','
-		return true
-	case m.opt.Decimal == "point" || !m.t.mayHoldComma:
-		return true
-	}
-	type evidence struct {
-		row        int
-		text, head string
-	}
-	var point, comma *evidence
-	onlyThousands := true
-	for i := first; i < len(m.t.Rows); i++ {
-		r := m.t.Rows[i]
-		if i > first && m.t.Blank[i] {
-			break
-		}
-		for j := range min(len(p.cols), len(r.Cells)) {
-			c := &p.cols[j]
-			if !c.used || c.Role.isText() || c.Role == RoleLimit {
-				continue
-			}
-			cell := r.Cells[j]
-			if !strings.ContainsAny(cell, ".,") || len(cell) > longestCell {
-				continue
-			}
-			mark, sure := decimalMark(cell)
-			switch mark {
-			case '.':
-				if point == nil {
-					point = &evidence{r.Line, cell, c.Text}
-				}
-			case ',':
-				if comma == nil {
-					comma = &evidence{r.Line, cell, c.Text}
-				}
-				onlyThousands = onlyThousands && !sure
-			}
-		}
-	}
-	switch {
-	case comma == nil:
+	case m.opt.Decimal == "point" || comma == nil:
 	case point != nil:
 		m.refuseCure(codeMixedMarks, comma.row, comma.head,
 			fmt.Sprintf("%q has a decimal comma, and %q in line %d, column %q, a decimal point", short(comma.text), short(point.text), point.row, point.head),
 			"write one mark throughout, or say which is the decimal one: --decimal point or --decimal comma; the other then groups thousands")
 		return false
-	case onlyThousands && m.t.Delimiter != ';':
+	case !found.sure && m.t.Delimiter != ';':
 		m.refuseCure(codeAmbiguousMark, comma.row, comma.head,
 			fmt.Sprintf("the comma in %q may be the decimal mark or group thousands", short(comma.text)), "say which: --decimal comma or --decimal point")
 		return false

@@ -64,6 +64,7 @@ type maker struct {
 	problems Problems
 	line     int     // of the headings
 	tidied   *tidied // nil unless Tidy wrote the table
+	onlyRate string  // group of the rate columns that are meant, of several; "" for all
 }
 
 func (m *maker) refuse(code string, row int, column, format string, args ...any) {
@@ -139,7 +140,7 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 		}
 	}
 	// Empty columns at the right end come from spreadsheets.
-	width := 0
+	width := t.width
 	for _, r := range t.Rows[first:] {
 		for n := len(r.Cells); n > width; n-- {
 			if strings.TrimSpace(r.Cells[n-1]) != "" {
@@ -264,7 +265,7 @@ func (m *maker) columns(headings []string, line int) *plan {
 	for i, text := range headings {
 		text = strings.TrimSpace(text)
 		c := &p.cols[i]
-		*c = column{Heading: ParseHeading(text, m.opt.Assume), index: i}
+		*c = column{Heading: m.opt.heading(text), index: i}
 		if text == "" {
 			c.Text = fmt.Sprintf("column %d", i+1)
 			continue
@@ -328,6 +329,7 @@ func (m *maker) columns(headings []string, line int) *plan {
 			continue
 		}
 		p.kept = append(p.kept, c)
+		p.warnUnused(c)
 		if c.says == "" && strings.TrimSpace(headings[i]) != "" {
 			unused = append(unused, c.Text)
 		}
@@ -605,6 +607,8 @@ func (m *maker) chooseRate(p *plan, forced []*column, line int) {
 		case c.Role != RoleRate:
 		case len(forced) > 0 && !slices.Contains(forced, c):
 			c.says = "another column was chosen"
+		case m.onlyRate != "" && c.group() != m.onlyRate:
+			c.says = "it holds another rate constant"
 		case c.Ambiguity != nil:
 			open = append(open, c)
 		case c.halfLife() != "" && len(forced) == 0:
@@ -626,6 +630,9 @@ func (m *maker) chooseRate(p *plan, forced []*column, line int) {
 		if none && len(means) == 0 || c.Run != "" && !marks[c.Run] {
 			certain = append(certain, c)
 		}
+	}
+	if len(forced) == 0 {
+		certain = p.withoutBounds(certain)
 	}
 	ambiguous := len(open) > 0 && (len(forced) > 0 || len(certain)+len(means) == 0)
 	switch {

@@ -172,6 +172,9 @@ type Options struct {
 	// DatasetBy is the heading of a column whose values name the data sets,
 	// where there is no column dataset (--dataset-by).
 	DatasetBy string
+	// Headings gives headings, by their normal form (NormalHeading), the text that
+	// says what they mean, such as "T/K" for "temp".
+	Headings map[string]string
 	// AllowNonPositiveK accepts k <= 0, which error models additive in k take
 	// as data.
 	AllowNonPositiveK bool

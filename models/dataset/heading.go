@@ -2,6 +2,7 @@ package dataset
 
 import (
 	"fmt"
+	"strconv"
 	"strings"
 )
 
@@ -187,6 +188,11 @@ func parseAs(role, text string, assume map[string]string) (Heading, error) {
 		}
 	}
 	switch as.Role {
+	case RoleUncertainty:
+		if m := reLevel.FindStringSubmatch(s); m != nil && as.Kind == KindFactor && as.Coverage == 0 { // f (95 %)
+			c, _ := strconv.ParseFloat(m[1], 64)
+			as.Confidence = c / 100
+		}
 	case RoleRate:
 		as.Symbol = symbol
 	case RoleTemperature:

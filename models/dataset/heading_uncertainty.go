@@ -28,6 +28,10 @@ var levelWords = map[string]levelWord{
 	"rel. error": {kind: KindAmbiguous, relative: true}, "relative error": {kind: KindAmbiguous, relative: true}, "relative uncertainty": {kind: KindAmbiguous, relative: true},
 	"% error": {kind: KindAmbiguous, relative: true}, "expanded uncertainty": {kind: KindExpanded},
 	"ci": {kind: KindExpanded}, "confidence interval": {kind: KindExpanded}, "confidence limit": {kind: KindExpanded}, "confidence limits": {kind: KindExpanded},
+	"conf. int.": {kind: KindExpanded}, "conf. int": {kind: KindExpanded}, "conf int": {kind: KindExpanded}, "c.i.": {kind: KindExpanded},
+	"esd": {kind: KindAmbiguous}, "e.s.d.": {kind: KindAmbiguous}, // standard in crystallography (common practice), elsewhere of repeats
+	"rel. unc.": {kind: KindAmbiguous, relative: true}, "rel. unc": {kind: KindAmbiguous, relative: true}, "rel unc": {kind: KindAmbiguous, relative: true},
+	"rel. uncertainty": {kind: KindAmbiguous, relative: true}, "rel. err.": {kind: KindAmbiguous, relative: true}, "rel. err": {kind: KindAmbiguous, relative: true},
 	"interval": {kind: KindExpanded, bare: true}, "confidence": {kind: KindExpanded, bare: true}, "coverage interval": {kind: KindExpanded},
 	"ci90": {kind: KindExpanded, confidence: 0.9}, "ci95": {kind: KindExpanded, confidence: 0.95}, "ci99": {kind: KindExpanded, confidence: 0.99},
 }
@@ -42,11 +46,12 @@ var functions = map[string]levelWord{
 
 var (
 	reCoverage = regexp.MustCompile(`[\[(]?\b[kK] ?= ?([0-9]+(?:\.[0-9]+)?)[\])]?`)
-	reSigmas   = regexp.MustCompile(`(?i)[\[(]?\b([0-9](?:\.[0-9]+)?) ?[-·]?(?:σ|sigma|s\.?d\.?\b)[\])]?`)
+	reSigmas   = regexp.MustCompile(`(?i)[\[(]?\b([0-9](?:\.[0-9]+)?) ?[-·]?(?:σ|sigma|s\.d\.|s\.?d\.?\b)[\])]?`)
 	reLevel    = regexp.MustCompile(`(?i)[\[(]?\b(68|68\.3|90|95|95\.4|95\.5|98|99|99\.7|99\.9) ?%[\])]?`)
 	reFunction = regexp.MustCompile(`^([A-Za-zσδΔ_.]{1,24}[0-9]{0,2}) ?\(`)
 	reUnder    = regexp.MustCompile(`^(u|U|s|f|u_r|U_95|U95|δ|Δ|delta)_(.+)$`)
-	rePrefixed = regexp.MustCompile(`^(δ|Δ|±) ?([kTD].*)$`)
+	rePrefixed = regexp.MustCompile(`^(δ|Δ|±|(?i:delta )) ?([kTD].*)$`)
+	reBareU    = regexp.MustCompile(`^(U_?(?:90|95|99)|U)(?:$|[ /(\[,%])`)
 )
 
 func (p headingParser) uncertainty(s string) (Heading, bool) {
@@ -135,6 +140,12 @@ func (p headingParser) uncertainty(s string) (Heading, bool) {
 			if t, a, ok := leadingQuantity(m[2]); ok {
 				lw, found, hasTarget, target, after = functions[m[1]], true, true, t, a
 			}
+		}
+	}
+	if m := reBareU.FindStringSubmatch(rest); m != nil && !found {
+		// U95 (%), U (95 %): U alone is an uncertainty only where its level is stated.
+		if lw = functions[m[1]]; lw.confidence > 0 || confidence > 0 || coverage > 0 {
+			found, after = true, rest[len(m[1]):]
 		}
 	}
 	if !found {

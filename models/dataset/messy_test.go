@@ -2,6 +2,8 @@ package dataset
 
 import (
 	"errors"
+	"math"
+	"slices"
 	"strings"
 	"testing"
 
@@ -84,5 +86,60 @@ func TestPowerBehindTheUnit(t *testing.T) {
 	ps := problemsOf(t, "T/K,k/s^-1,SE (s^-1 × 10^5)\n280,3.1,0.2\n290,4,0.2\n", Options{})
 	if ps[0].Column != "SE (s^-1 × 10^5)" || !strings.Contains(ps[0].Cure, "--assume factor=times") {
 		t.Error(ps)
+	}
+}
+
+// A column that may be an uncertainty of k is never left unused without a word, and the
+// flag that is named works as it stands.
+func TestMaybeUncertain(t *testing.T) {
+	for _, c := range []struct{ heading, flag string }{
+		{"f", "f(k)=f"}, {"f (95%)", "f(k)=f (95%)"}, {"f(298 K)", "f(k)=f(298 K)"}, {"uncertainty factor", "f(k)=uncertainty factor"},
+		{"Δlog k", "u(lg k)=Δlog k"}, {"dk", "u(k)=dk"},
+	} {
+		text := "T/K,k/s^-1," + c.heading + "\n280,1,1.1\n290,2,1.1\n"
+		n := noticed(t, read(t, text, Options{}), noteLevel)
+		if !strings.Contains(n.Cure, "--column '"+c.flag+"'") {
+			t.Errorf("%s: %+v", c.heading, n)
+		}
+		role, _, _ := strings.Cut(c.flag, "=")
+		if p := read(t, text, Options{Columns: map[string][]string{role: {c.heading}}}).Points[0]; !(p.UK > 0) {
+			t.Errorf("%s: not used when named: %+v", c.flag, p)
+		}
+	}
+	for _, heading := range []string{"rel. unc. (%)", "esd", "conf. int.", "delta k"} {
+		n := noticed(t, read(t, "T/K,k/s^-1,"+heading+"\n280,1,0.1\n290,2,0.1\n", Options{}), noteLevel)
+		if !strings.Contains(n.Cure, "--assume error=1") {
+			t.Errorf("%s: %+v", heading, n)
+		}
+	}
+	for _, heading := range []string{"pH", "flow", "frequency", "max", "min"} {
+		s := read(t, "T/K,k/s^-1,"+heading+"\n280,1,0.1\n290,2,0.1\n", Options{})
+		if slices.Contains(codes(s), noteLevel) {
+			t.Errorf("%s is taken for an uncertainty: %v", heading, s.Notices)
+		}
+	}
+}
+
+// Bounds of k beside k are neither its repeats nor its rivals.
+func TestBoundsBesideK(t *testing.T) {
+	for _, headings := range []string{"k_lower/s^-1,k_upper/s^-1", "k_min,k_max", "k_low (s-1),k_high (s-1)", "k lower,k upper", "95% CI lower,95% CI upper"} {
+		for _, assume := range []map[string]string{nil, {"k": "repeats"}} {
+			s := read(t, "T/K,k/s^-1,"+headings+"\n280,1,0.9,1.1\n290,2,1.9,2.1\n", Options{Assume: assume})
+			n := noticed(t, s, noteLevel)
+			if len(s.Points) != 2 || s.Points[0].K != 1 || !strings.Contains(n.Cure, "U(k) (95 %)") {
+				t.Errorf("%s: %+v, %+v", headings, s.Points, n)
+			}
+		}
+	}
+	if s := read(t, "T/K,k_max/s^-1\n280,1\n290,2\n", Options{}); s.Quantity.Symbol != "k_max" {
+		t.Errorf("alone: %+v", s.Quantity)
+	}
+}
+
+// f (95 %) is divided by 1.96: u(ln k) = ln 1.5/1.96.
+func TestFactorAtALevel(t *testing.T) {
+	p := read(t, "T/K,k/s^-1,f (95%)\n280,1,1.5\n290,2,1.5\n", Options{Columns: map[string][]string{"f(k)": {"f (95%)"}}}).Points[0]
+	if want := math.Log(1.5) / 1.96; !reference.Agrees(p.UK, want, 1e-12) {
+		t.Errorf("u %v, want %v", p.UK, want)
 	}
 }

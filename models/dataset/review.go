@@ -70,7 +70,7 @@ func (s *Set) review() {
 	seen := map[string]bool{} // files that are pooled share headings
 	for _, c := range s.Columns {
 		// A column that has a role, and is spare, is no condition of the measurement.
-		if c.Role == string(RoleKept) && !seen[c.Heading] && ParseHeading(c.Heading, nil).Role == RoleKept {
+		if c.Role == string(RoleKept) && c.Level == "" && !seen[c.Heading] && ParseHeading(c.Heading, nil).Role == RoleKept {
 			seen[c.Heading] = true
 			s.reviewKept(c.Heading, setting)
 		}

@@ -3,6 +3,7 @@ package dataset
 import (
 	"crypto/sha256"
 	"encoding/hex"
+	"math"
 	"path/filepath"
 	"regexp"
 	"strings"
@@ -37,6 +38,7 @@ type Table struct {
 	Encoding        string
 	mayHoldComma    bool     // some cell may hold a comma
 	first           []string // first lines of a table split at spaces, as they stand
+	width           int      // columns that are known to be filled, below what Rows holds
 }
 
 // MostColumns is the most columns that a table may have: what spreadsheets allow.
@@ -54,18 +56,25 @@ func ParseTable(name string, data []byte) (*Table, error) {
 		return nil, Problems{problem(codeNotText, name, 0, "", err)}
 	}
 	t.Encoding = encoding
-	lines := splitter{s: text, line: 1}
-	if rest, ok := strings.CutPrefix(text, "sep="); ok && len(rest) > 1 && (rest[1] == '\n' || rest[1] == '\r') {
-		t.Delimiter = rest[0]
-		lines.next(0)
-	} else {
-		t.Delimiter = delimiter(text)
-	}
+	lines := newRecords(name, text)
+	t.Delimiter = lines.delimiter
 	t.mayHoldComma = strings.IndexByte(text, ',') >= 0 && (t.Delimiter != ',' || strings.IndexByte(text, '"') >= 0)
-	if ps := t.split(&lines); len(ps) > 0 {
+	if ps := t.split(lines); len(ps) > 0 {
 		return nil, ps
 	}
 	return t, nil
+}
+
+// newRecords decides how a text is split, by its beginning.
+func newRecords(name, text string) *records {
+	r := &records{splitter: splitter{s: text, line: 1}, name: name}
+	if rest, ok := strings.CutPrefix(text, "sep="); ok && len(rest) > 1 && (rest[1] == '\n' || rest[1] == '\r') {
+		r.delimiter = rest[0]
+		r.next(0)
+	} else {
+		r.delimiter = delimiter(text)
+	}
+	return r
 }
 
 // decode turns bytes into text: UTF-8, UTF-16 with a byte order mark, else
@@ -335,32 +344,53 @@ func isComment(line string) bool {
 	return true
 }
 
-// split fills Rows.
-func (t *Table) split(p *splitter) Problems {
-	var all []string // one backing array for many rows
-	blank := false
+// records walks over the rows of a text; comments and blank lines are no rows.
+type records struct {
+	splitter
+	name      string
+	delimiter byte
+	// more adds text behind what is left of it; false at the end. nil: all is there.
+	more func(*splitter) bool
+
+	rows        int
+	comment     string // the last before the first row, without its #
+	commentLine int
+	rest        string // the text from the beginning of the row
+}
+
+// row reads the next row: its cells (valid until the next call), its line, and
+// whether a blank line came before it.
+func (r *records) row() (cells []string, line int, blank, ok bool, ps Problems) {
 	for {
-		l := strings.TrimLeft(p.s[:min(len(p.s), 64)], " \t\"")
-		if isComment(l) {
-			line := p.line
+		if r.s == "" && (r.more == nil || !r.more(&r.splitter)) {
+			return nil, 0, false, false, nil
+		}
+		if l := strings.TrimLeft(r.s[:min(len(r.s), 64)], " \t\""); isComment(l) {
 			var c string
-			c, p.s = cutLine(p.s)
-			p.line++
-			if len(t.Rows) == 0 {
-				t.LastComment, t.LastCommentLine = strings.Trim(c, " \t#\""), line
+			at := r.line
+			c, r.s = cutLine(r.s)
+			r.line++
+			if r.rows == 0 {
+				r.comment, r.commentLine = strings.Trim(c, " \t#\""), at
 			}
 			continue
 		}
-		before := p.s
-		cells, line, unclosed, ok := p.next(t.Delimiter)
+		r.rest = r.s
+		from := r.line
+		cells, line, unclosed, ok := r.next(r.delimiter)
+		if unclosed && r.more != nil {
+			if r.s, r.line = r.rest, from; r.more(&r.splitter) {
+				continue
+			}
+		}
 		if !ok {
-			return nil
+			return nil, 0, false, false, nil
 		}
 		if unclosed {
-			return Problems{problem(codeUnclosedQuote, t.Name, line, "", "a quotation mark is never closed")}
+			return nil, 0, false, false, Problems{problem(codeUnclosedQuote, r.name, line, "", "a quotation mark is never closed")}
 		}
 		if len(cells) > MostColumns {
-			return Problems{problem(codeTooManyColumns, t.Name, line, "", "the row has more than 16384 cells")}
+			return nil, 0, false, false, Problems{problem(codeTooManyColumns, r.name, line, "", "the row has more than 16384 cells")}
 		}
 		empty := true
 		for _, c := range cells {
@@ -373,6 +403,23 @@ func (t *Table) split(p *splitter) Problems {
 			blank = true
 			continue
 		}
+		r.rows++
+		return cells, line, blank, true, nil
+	}
+}
+
+// split fills Rows.
+func (t *Table) split(r *records) Problems { return t.splitFirst(r, math.MaxInt) }
+
+// splitFirst fills Rows with the first rows.
+func (t *Table) splitFirst(r *records, most int) Problems {
+	var all []string // one backing array for many rows
+	for len(t.Rows) < most {
+		cells, line, blank, ok, ps := r.row()
+		if !ok {
+			t.LastComment, t.LastCommentLine = r.comment, r.commentLine
+			return ps
+		}
 		if len(all)+len(cells) > cap(all) {
 			all = make([]string, 0, max(4096, len(cells)))
 		}
@@ -381,11 +428,12 @@ func (t *Table) split(p *splitter) Problems {
 		t.Rows = append(t.Rows, Row{line, all[from:len(all):len(all)]})
 		t.Blank = append(t.Blank, blank)
 		if t.Delimiter == ' ' && len(t.first) < 3 {
-			l, _ := cutLine(before)
+			l, _ := cutLine(r.rest)
 			t.first = append(t.first, l)
 		}
-		blank = false
 	}
+	t.LastComment, t.LastCommentLine = r.comment, r.commentLine
+	return nil
 }
 
 // Append adds a row of another kind of table than text. blank says whether a blank
