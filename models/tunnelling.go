@@ -34,7 +34,7 @@ var _ Seeded = Tunnelling{}
 func TunnellingWigner() Tunnelling {
 	return newTunnelling(Info{
 		Name: "tunnelling-wigner", Family: "tunnelling-wigner",
-		Formula: "ln k = a - b/T + ln(1 + u^2/24), u = h c nu/(k_B T)",
+		Formula: "ln k = a - b/T + ln(1 + c/T^2)",
 		Summary: "one barrier and Wigner's correction for tunnelling through its top, for corrections up to a factor of 4/3, beyond which the formula does not serve; the local activation energy can only rise with T, no more than with a prefactor T^(1/4)",
 		Source:  "E. Wigner, Z. Phys. Chem. B 19 (1932) 203",
 	}, "wigner", "k = A exp(-E/RT) (1 + u^2/24), u = h c nu/(k_B T)", math.Sqrt(8), wigner)
@@ -44,7 +44,7 @@ func TunnellingWigner() Tunnelling {
 func TunnellingBell() Tunnelling {
 	return newTunnelling(Info{
 		Name: "tunnelling-bell", Family: "tunnelling-bell",
-		Formula: "ln k = a - b/T + ln((u/2)/sin(u/2)), u = h c nu/(k_B T)",
+		Formula: "ln k = a - b/T + ln((c/T)/sin(c/T))",
 		Summary: "one barrier and Bell's correction for tunnelling through a parabola, u < 2π; the local activation energy can only rise with T",
 		Source:  "R. P. Bell, The Tunnel Effect in Chemistry (1980)",
 	}, "bell", "k = A exp(-E/RT) (u/2)/sin(u/2), u = h c nu/(k_B T)", 0.99*2*math.Pi, bell)

@@ -68,7 +68,7 @@ func WriteModels(w io.Writer, doc Models, details bool, t Text) error {
 		lines = append(lines, Wrap(c.Summary, p.body())...)
 		if !details {
 			for _, f := range c.Forms {
-				lines = append(lines, hang("· "+f.Model, 24, f.Formula, p.body())...)
+				lines = append(lines, hang("· "+f.Model, max(24, len(f.Model)+3), f.Formula, p.body())...)
 			}
 			p.section("curve", lines...)
 			continue
