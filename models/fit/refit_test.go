@@ -178,7 +178,7 @@ func weak(t testing.TB, seed uint64, n int) *resampling {
 // TestRefitFirstPlaces: on straight and on weakly identified sets, where most refits
 // are screened or decided, no more than 0.1 % of first places are wrong.
 func TestRefitFirstPlaces(t *testing.T) {
-	for _, kind := range []string{"straight", "straight pairs", "weak", "weak pairs"} {
+	for _, kind := range []string{"straight", "straight pairs", "weak", "weak pairs", "straight with series", "straight with series pairs"} {
 		pairs := strings.HasSuffix(kind, "pairs")
 		how := map[How]int{}
 		total, wrong := 0, 0
@@ -192,6 +192,11 @@ func TestRefitFirstPlaces(t *testing.T) {
 				r = weak(t, uint64(set), n)
 			} else {
 				r = scattered(t, uint64(100+set), n, true, []float64{0.03, 1e-5}[set%2])
+			}
+			if strings.Contains(kind, "series") {
+				f := Fit(r.s, models.Series{})
+				r.curves, r.fits = append(r.curves, models.Series{}), append(r.fits, f)
+				r.penalty = append(r.penalty, r.penalty[len(r.penalty)-1]) // that of parallel
 			}
 			ref := NewRefitter(r.s, r.curves, r.fits, RefitOptions{Penalty: r.penalty})
 			full := NewRefitter(r.s, r.curves, r.fits, RefitOptions{})
