@@ -36,10 +36,16 @@ func isLabel(cell string) bool {
 // Problems.
 func (t *Table) Sets(opt Options) ([]*Set, error) {
 	m := &maker{t: t, opt: opt}
-	switch opt.Decimal {
+	return m.all()
+}
+
+// all reads the whole table.
+func (m *maker) all() ([]*Set, error) {
+	t := m.t
+	switch m.opt.Decimal {
 	case "", "comma", "point":
 	default:
-		m.refuse(codeDecimalOption, 0, "", "--decimal %s", opt.Decimal)
+		m.refuse(codeDecimalOption, 0, "", "--decimal %s", m.opt.Decimal)
 	}
 	headings, line, first, notices, ok := m.header()
 	if !ok {
@@ -127,7 +133,7 @@ func (f *marks) look(p *plan, r Row) {
 			continue
 		}
 		cell := r.Cells[j]
-		if f.point != nil && strings.IndexByte(cell, ',') < 0 || !strings.ContainsAny(cell, ".,") || len(cell) > longestCell {
+		if !strings.ContainsAny(cell, ".,") || len(cell) > longestCell {
 			continue
 		}
 		mark, sure := decimalMark(cell)

@@ -41,6 +41,9 @@ const (
 	codePoolQuantity         = "pooled-quantities"
 	codePoolUnit             = "pooled-units"
 	codeTidyCell             = "tidy-cell"
+	codeDatasetScattered     = "dataset-scattered"
+	codeBelowBlank           = "rows-below-blank"
+	codeTooLong              = "too-long"
 
 	// Of workbooks; cmd/internal/workbook raises them.
 	codeWorkbookDamaged   = "workbook-damaged"
@@ -146,6 +149,9 @@ var problemTexts = []Explanation{
 	{codePoolQuantity, "Files of different rate constants cannot be pooled", "Pooled rows are taken as measurements of one quantity, and its symbol says which.", "assess them apart; or write the same symbol into the headings if the quantity is the same"},
 	{codePoolUnit, "The units of pooled files cannot be converted into each other", "Pooled rows are brought to the unit of the first file. Units of different dimensions have no ratio, nor has a unit that was not understood.", "write the rate constants in one unit"},
 	{codeTidyCell, "A cell of a tidy table is not understood", "A table with the headings row and left_out was written by inspect --tidy: row holds the line of the original file, level says standard or repeats.", "write it as --tidy does, or rename the two headings"},
+	{codeDatasetScattered, "The rows of a data set do not follow one another", "A long table is read data set by data set, so that memory does not grow with it; a name that comes again after other data sets would give two halves.", "sort the table by its column dataset, or cut it into tables of less than 32 MB"},
+	{codeBelowBlank, "Rows below a blank row were not read", "A table ends at the first blank row below its data. In a table of many data sets, what follows may be some of them.", "delete the blank row if measurements follow it"},
+	{codeTooLong, "Too many rows for one data set", "A table is read as a whole where no column dataset divides it, or where it is not UTF-8; a data set of a million rows is none that could be assessed.", "add a column dataset and save the table as UTF-8, or name its column with --dataset-by"},
 	{codeWorkbookDamaged, "The workbook is damaged", "A part of the file is missing, ends early or fails its checksum. What is left is not read, lest rows be lost unseen.", "open it in a spreadsheet program and save it again as .xlsx, or save the sheet as CSV"},
 	{codeWorkbookTooLarge, "The workbook unfolds to too much", "A workbook may unfold to 200 times its size, 64 MB at least and 2 GB at most; beyond that it is taken for one made to fill memory.", "save the sheet as CSV"},
 	{codeWorkbookEncrypted, "The workbook is protected by a password", "Its cells are encrypted.", "save it without a password, or save the sheet as CSV"},

@@ -49,6 +49,7 @@ type plan struct {
 	decimal byte
 	assumed []string
 	notices []Notice
+	stream  planOfStream
 }
 
 func (p *plan) assume(what string) {
