@@ -3,6 +3,7 @@ package diagnostics
 import (
 	"fmt"
 	"slices"
+	"sync"
 )
 
 // Entry explains one code: a verdict, a finding, or a notice or refusal of the
@@ -16,12 +17,19 @@ type Entry struct {
 	Reference   string   `json:"reference"` // "" where the text stands on its own
 }
 
+// byCode is the catalogue by code: findings look their entry up for every data set.
+var byCode = sync.OnceValue(func() map[string]Entry {
+	m := map[string]Entry{}
+	for _, e := range Catalogue() {
+		m[e.Code] = e
+	}
+	return m
+})
+
 // Explain tells the whole story of a code.
 func Explain(code string) (Entry, error) {
-	for _, e := range Catalogue() {
-		if e.Code == code {
-			return e, nil
-		}
+	if e, ok := byCode()[code]; ok {
+		return e, nil
 	}
 	return Entry{}, fmt.Errorf("diagnostics: no verdict or finding has the code %q; explain without a code lists them", code)
 }
