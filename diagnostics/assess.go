@@ -34,6 +34,8 @@ func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, er
 	a.rank()
 	a.test()
 	a.decide()
+	a.predict()
+	a.checkResiduals()
 	a.compareSources()
 	if err := a.resample(ctx); err != nil {
 		return nil, err
@@ -71,6 +73,9 @@ type assessor struct {
 	verdict       Verdict
 	between       *BetweenSources
 	tEff          float64
+
+	prediction *Prediction
+	residuals  *ResidualChecks
 
 	resampling *Resampling
 	changes    []float64

@@ -4,6 +4,7 @@ import (
 	"encoding/json"
 	"math"
 
+	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 )
 
@@ -122,10 +123,17 @@ type Assessment struct {
 	Bootstrap      *Resampling     `json:"bootstrap"` // nil with --resamples 0
 	Findings       []Finding       `json:"findings"`
 
+	// LocalEnergies lie between neighbouring temperatures, coldest first.
+	LocalEnergies []EnergyBetween `json:"local_energies"`
+	// Prediction and ResidualChecks are nil where there are too few temperatures.
+	Prediction     *Prediction     `json:"prediction"`
+	ResidualChecks *ResidualChecks `json:"residual_checks"`
+
 	// What figures need beyond the document.
 	Sample    *fit.Sample            `json:"-"` // the points or means that the verdict used
 	Fits      map[string]*fit.Result `json:"-"` // by curve name
 	ChangeOfE []float64              `json:"-"` // bootstrap values of ΔE about power-prefactor, kJ/mol, sorted
+	Rate      dataset.Quantity       `json:"-"` // how the rate constant was read
 }
 
 // Tool names the program that made the document.

@@ -270,6 +270,31 @@ var catalogue = []Entry{
 		Cure:        "repeat some temperatures, or state u(k)",
 	},
 
+	// Residuals and prediction.
+	{
+		Code: "scatter-not-even", Title: "the scatter changes with temperature", Severity: Warning,
+		Explanation: "The error model takes errors of ln k (or of k) to be as large at the cold end as at the hot one, or as stated. The residuals are larger at one end than that allows (score test of Breusch and Pagan for a variance that changes with 1/T; p is exact for normal errors). At 1 % it sees a standard deviation that is threefold from one end of the range to the other in 3 % of sets of 8, 7 % of 12, 17 % of 20 and 47 % of 40: silence means little for few points. Weights that are wrong by so much cost precision, and the verdict raises more or fewer false alarms than it claims.",
+		Cure:        "state u(k) for every point; where k is read to a fixed absolute error, --error-model absolute",
+		Reference:   "T. S. Breusch, A. R. Pagan, Econometrica 47 (1979) 1287; J. P. Imhof, Biometrika 48 (1961) 419",
+	},
+	{
+		Code: "residuals-not-normal", Title: "the residuals are not normal", Severity: Info,
+		Explanation: "The ordered residuals follow normal scores less closely than in 99 % of sets with normal errors (test of Shapiro and Francia, its null that of residuals). A few large errors among small ones do that. At 1 % it sees errors of Student's t with three degrees of freedom in 2 % of sets of 8, 7 % of 12, 18 % of 20 and 43 % of 40. The 5 % of the verdict depends little on it; single points may matter much.",
+		Cure:        "look for the row with the largest residual, and repeat it",
+		Reference:   "S. S. Shapiro, R. S. Francia, J. Am. Stat. Assoc. 67 (1972) 215",
+	},
+	{
+		Code: "absolute-fits-better", Title: "errors in k describe the scatter better", Severity: Warning,
+		Explanation: "Under error model relative the scatter of ln k is the same at all temperatures; here it shrinks as k grows, and one common error of k itself describes it better: the AIC of one curve is lower by more than 4 under error model absolute, both being densities of k. A detection limit, a baseline or a fixed reading error does that. Relative errors then give the small rate constants far too much weight.",
+		Cure:        "compare with --error-model absolute",
+	},
+	{
+		Code: "first-extrapolates-worst", Title: "the first of the ranking extrapolates worst", Severity: Warning,
+		Explanation: "Each candidate is fitted without the hottest third of the temperatures, and without the coldest, and predicts them. The curve that ranks first, with half of the weight or more, does so worst of all candidates, and with more than twice the error of the straight line: what it gains inside the range it owes to the ends themselves. Its parameters rest on few points, and outside the range it misleads.",
+		Cure:        "do not extrapolate with it; measure beyond the ends of the range",
+		Reference:   "D. M. Allen, Technometrics 16 (1974) 125",
+	},
+
 	// Data and results.
 	{
 		Code: "stated-incomplete", Title: "some points have no standard uncertainty", Severity: Info,

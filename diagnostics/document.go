@@ -44,6 +44,8 @@ func (a *assessor) assessment() *Assessment {
 	for _, f := range a.fits {
 		doc.Fits[f.Curve.Info().Name] = f
 	}
+	doc.Rate = a.set.Quantity
+	doc.LocalEnergies, doc.Prediction, doc.ResidualChecks = a.energiesBetween(), a.prediction, a.residuals
 	a.publishInto(doc)
 	doc.Findings = a.findings
 	if doc.Findings == nil {

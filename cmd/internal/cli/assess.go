@@ -28,6 +28,7 @@ type assessOptions struct {
 	expect     []string
 	figures    string
 	figure     figure.Options
+	local      bool // a table of E between neighbouring temperatures
 }
 
 func newAssess(a *app) *cobra.Command {
@@ -89,6 +90,7 @@ and temperatures are chosen in each file before they are joined.`,
 	f.Var(temperature{&d.ReferenceTemperature}, "reference-temperature", "at which k is published (default 298.15K where measured, else near the middle of the data)")
 	oneOf(&d.EnergyUnit, "energy-unit", "of what is to be published", diagnostics.EnergyUnits...)
 	oneOf(&d.PublishStyle, "publish", "form of what is to be published; by default the unit of k decides", diagnostics.PublishStyles...)
+	f.BoolVar(&o.local, "local-energies", false, "print E between neighbouring temperatures too")
 	f.StringVar(&o.figures, "figures", "", "write the pictures into this `folder`")
 	oneOf(&o.figure.Format, "figure-format", "of the pictures (default svg)", "svg", "png", "pdf")
 	oneOf(&o.figure.Y, "y", "logarithm on the y axis (default ln)", "ln", "lg")
@@ -97,7 +99,7 @@ and temperatures are chosen in each file before they are joined.`,
 	a.addJSON(cmd)
 	group(f, "how the data are judged", "error-model", "replicates", "prefactor-band", "tolerance", "confidence", "criterion", "models")
 	group(f, "bootstrap", "resamples", "scheme", "intervals", "seed", "workers")
-	group(f, "what is published", "reference-temperature", "energy-unit", "publish")
+	group(f, "what is published", "reference-temperature", "energy-unit", "publish", "local-energies")
 	group(f, "pictures", "figures", "figure-format", "y", "x")
 	group(f, "for scripts", "json", "expect")
 	completeWith(cmd, "models", models.Names()...)
@@ -144,7 +146,9 @@ func (a *app) runAssess(ctx context.Context, files []string, o *assessOptions) e
 		}
 		err = report.JSON(a.out, result)
 	} else {
-		err = report.WriteAssessment(a.out, result, pictures, a.text())
+		t := a.text()
+		t.LocalEnergies = o.local
+		err = report.WriteAssessment(a.out, result, pictures, t)
 	}
 	if err != nil {
 		return err

@@ -314,6 +314,9 @@ type Energy struct {
 	// TEff is the temperature whose E_loc the straight line estimates without
 	// bias, and E the straight line's E; NaN where unknown.
 	TEff, E float64
+	// Between holds E between neighbouring temperatures with bars of one standard
+	// uncertainty.
+	Between []Point
 	// Wedge is the region of an E_loc that is linear in T, passes through
 	// (TEff, E) and changes by no more than Tolerance over the measured
 	// range: its half-height at T is Tolerance |T - TEff|/(T_max - T_min). It is
@@ -356,6 +359,7 @@ func NewEnergy(a *diagnostics.Assessment) *Energy {
 	if len(d.Lines) == 0 {
 		return nil
 	}
+	d.Between = between(a, sc)
 	low, high := a.Sample.Range()
 	if a.Verdict.State == diagnostics.StraightWithin && d.Tolerance > 0 && d.TEff >= low && d.TEff <= high && !math.IsNaN(d.E) {
 		for _, t := range []float64{low, d.TEff, high} {

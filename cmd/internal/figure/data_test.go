@@ -326,8 +326,8 @@ func TestMissingParts(t *testing.T) {
 	if NewEnergy(a) != nil || NewChange(a) != nil {
 		t.Error("figures without data")
 	}
-	if ps, err := Write(t.TempDir(), a, Options{}); err != nil || len(ps) != 1 {
-		t.Errorf("Write: %v, %v; want the Arrhenius plot alone", ps, err)
+	if ps, err := Write(t.TempDir(), a, Options{}); err != nil || len(ps) != 3 {
+		t.Errorf("Write: %v, %v; want three figures of points alone", ps, err)
 	}
 	for i := range a.Data {
 		a.Data[i].K = -1

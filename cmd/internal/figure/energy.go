@@ -33,6 +33,7 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 		ys.addWithin(core, reach, l.Lower...)
 		ys.addWithin(core, reach, l.Upper...)
 	}
+	ys = d.withBetween(ys, core)
 	xLow, xHigh := xs.padded(0.04, 1e-6*math.Abs(xs.low))
 	yLow, yHigh := ys.padded(0.06, 1e-6)
 	xLow = math.Max(0, xLow)
@@ -58,6 +59,7 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 	for _, l := range d.Lines {
 		obstacles = append(obstacles, l.obstacles()...)
 	}
+	obstacles = append(obstacles, addBetween(p, &leg, d.Between)...)
 	if d.TEff >= xLow && d.TEff <= xHigh {
 		// A drop line from the point to the axis, or a line across without one.
 		mark := rule{x: d.TEff, y: math.NaN(), style: draw.LineStyle{Color: grey, Width: vg.Points(0.8), Dashes: []vg.Length{2, 2}}}

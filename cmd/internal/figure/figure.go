@@ -93,8 +93,8 @@ type picture struct {
 }
 
 // Write draws every figure that the assessment has data for into dir, which is
-// made if it does not exist, and returns the paths of the files: arrhenius,
-// activation-energy and, after a bootstrap, change-of-e. Files are replaced whole
+// made if it does not exist, and returns the paths of the files: arrhenius, eyring,
+// rate-constant, ratio, activation-energy and, after a bootstrap, change-of-e. Files are replaced whole
 // or not at all, and the same assessment gives the same bytes.
 func Write(dir string, a *diagnostics.Assessment, opt Options) ([]string, error) {
 	encode, err := encoder(opt.Format)
@@ -134,6 +134,11 @@ func pictures(a *diagnostics.Assessment, opt Options) ([]picture, error) {
 		return nil, err
 	}
 	ps := []picture{p}
+	more, err := panels(a, opt)
+	if err != nil {
+		return nil, err
+	}
+	ps = append(ps, more...)
 	if d := NewEnergy(a); d != nil {
 		if p, err = drawEnergy(a, d); err != nil {
 			return nil, err

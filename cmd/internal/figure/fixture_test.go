@@ -8,6 +8,7 @@ import (
 
 	"onebarrier/diagnostics"
 	"onebarrier/models"
+	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 )
 
@@ -50,6 +51,7 @@ func (in invented) assess(t testing.TB) *diagnostics.Assessment {
 		Dataset:   diagnostics.DatasetInfo{Name: in.name, Quantity: diagnostics.Quantity{Symbol: "k", Unit: in.unit}},
 		Verdict:   diagnostics.Verdict{State: in.state, RecommendedCurve: in.curve},
 		Curvature: diagnostics.Curvature{Basis: "points"},
+		Rate:      dataset.Quantity{Symbol: "k", Unit: in.unit, Known: in.unit == "s^-1"},
 		Fits:      map[string]*fit.Result{},
 	}
 	var ks, ts, vs []float64

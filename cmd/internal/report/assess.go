@@ -24,6 +24,9 @@ func WriteAssessment(w io.Writer, a *diagnostics.Assessment, figures []string, t
 	p.test(a)
 	p.sources(a)
 	p.ranking(a)
+	if t.LocalEnergies {
+		p.localEnergies(a)
+	}
 	p.findings(a)
 	p.data(a)
 	p.section("figures", figures...)

@@ -13,6 +13,8 @@ import (
 type Text struct {
 	Width  int  // columns; 0 means 80
 	Colour bool // emphasis by colour and weight; no meaning rests on it
+	// LocalEnergies asks for the table of E between neighbouring temperatures.
+	LocalEnergies bool
 }
 
 const (

@@ -1,0 +1,184 @@
+package diagnostics
+
+import (
+	"math"
+	"math/rand/v2"
+	"slices"
+	"testing"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+	"onebarrier/models/reference"
+)
+
+// R 4.2.2, on files of testdata/published/synthetic, fits of y = log(k) to
+// y ~ I(1000/T_K) (straight) and y ~ I(1000/T_K) + log(T_K) (power-prefactor) by lm
+// without each temperature, without the hottest third and without the coldest, and
+// sqrt(mean((y - predict(m, left_out))^2)).
+func TestPredictionAgainstR(t *testing.T) {
+	for _, c := range []struct {
+		set, curve                 string
+		leftOut, hot, cold, either float64
+		end                        int
+	}{
+		{"s1_straight", "straight", 0.0216925004301, 0.0278539448226, 0.0444174212924, 0.0370725609882, 4},
+		{"s1_straight", "power-prefactor", 0.0200127699725, 0.0165347962135, 0.0252107962077, 0.0213188148269, 4},
+		{"s2_tn_curved", "straight", 0.482494428593, 1.17847458249, 1.09647612484, 1.13821400315, 5},
+		{"s2_tn_curved", "power-prefactor", 0.0224559843341, 0.0436577776009, 0.0340009169699, 0.0391284033654, 5},
+		{"s7_vft", "straight", 0.573586737961, 1.16535973333, 1.60539067355, 1.40273706067, 5},
+		{"s7_vft", "power-prefactor", 0.182877174432, 0.587391428543, 0.683034222991, 0.637010376722, 5},
+	} {
+		d := reference.Synthetic(t, c.set)
+		a := mustAssess(t, setOf(d.T, d.K, nil), quick())
+		p := a.Prediction.of(c.curve)
+		reference.Close(t, c.set+" left out", float64(p.LeftOut), c.leftOut, 1e-9)
+		reference.Close(t, c.set+" hot end", float64(p.HotEnd), c.hot, 1e-8)
+		reference.Close(t, c.set+" cold end", float64(p.ColdEnd), c.cold, 1e-8)
+		reference.Close(t, c.set+" ends", float64(p.Ends), c.either, 1e-8)
+		if a.Prediction.EndTemperatures != c.end || p.Linearised {
+			t.Errorf("%s: ends of %d temperatures; %+v", c.set, a.Prediction.EndTemperatures, p)
+		}
+	}
+	// Repeats are left out together.
+	d := reference.Synthetic(t, "s6_replicates")
+	o := quick()
+	o.Replicates = ReplicatesIndependent
+	a := mustAssess(t, setOf(d.T, d.K, nil), o)
+	reference.Close(t, "repeats, straight", float64(a.Prediction.of("straight").LeftOut), 0.0827248627529, 1e-9)
+	reference.Close(t, "repeats, power-prefactor", float64(a.Prediction.of("power-prefactor").LeftOut), 0.0547896674776, 1e-9)
+}
+
+func (p *Prediction) of(curve string) CurvePrediction {
+	if i := slices.IndexFunc(p.Curves, func(c CurvePrediction) bool { return c.Curve == curve }); i >= 0 {
+		return p.Curves[i]
+	}
+	nan := Real(math.NaN())
+	return CurvePrediction{LeftOut: nan, HotEnd: nan, ColdEnd: nan, Ends: nan}
+}
+
+// The closed form is that of fits without each temperature, with unequal variances and
+// several entries at one temperature too.
+func TestLeftOutInClosedForm(t *testing.T) {
+	rng := rand.New(rand.NewPCG(4, 4))
+	temps := []float64{280, 290, 290, 300, 310, 310, 310, 330, 350}
+	k, v := make([]float64, len(temps)), make([]float64, len(temps))
+	for i, ti := range temps {
+		k[i], v[i] = math.Exp(20-50e3/(models.GasConstant*ti)+0.1*rng.NormFloat64()), 0.5+rng.Float64()
+	}
+	s, err := fit.NewSample(fit.Relative, temps, k, v)
+	if err != nil {
+		t.Fatal(err)
+	}
+	groups := temperatureGroups(s)
+	for _, c := range []models.Curve{models.Straight(), models.PowerPrefactor{}} {
+		reference.Close(t, c.Info().Name, leftOut(s, fit.Fit(s, c), groups), leftOutAnew(s, c, groups), 1e-10)
+	}
+}
+
+// The two-path curve is fitted anew without each temperature where it counts. Data of
+// two paths with little noise: the curve that made them predicts them best, ends
+// included, and nothing is reported.
+func TestPredictionOfTwoPaths(t *testing.T) {
+	rng := rand.New(rand.NewPCG(8, 8))
+	var ts, ks []float64
+	for i := range 16 {
+		ti := 280 + 8*float64(i)
+		f := math.Exp(10-30e3/(models.GasConstant*ti)) + math.Exp(32-90e3/(models.GasConstant*ti))
+		ts, ks = append(ts, ti), append(ks, f*math.Exp(0.01*rng.NormFloat64()))
+	}
+	a := mustAssess(t, setOf(ts, ks, nil), quick())
+	two := a.Prediction.of("parallel")
+	if two.Linearised || !(two.LeftOut < a.Prediction.of("power-prefactor").LeftOut) || !two.Ends.Known() {
+		t.Errorf("parallel: %+v", two)
+	}
+	groups := temperatureGroups(a.Sample)
+	var sum float64
+	for k := range groups {
+		e := newEndOut(a.Sample, groups, k, k+1)
+		r := fit.Fit(e.rest, models.Parallel{})
+		f := []float64{0}
+		r.Curve.LnK(r.TRef, []float64{a.Sample.T[k]}, r.P, f, nil)
+		sum += (a.Sample.Y[k] - f[0]) * (a.Sample.Y[k] - f[0])
+	}
+	reference.Close(t, "left out", float64(two.LeftOut), math.Sqrt(sum/16), 1e-9)
+}
+
+// A line whose two hottest points rise from it: a curve that follows them ranks first,
+// and without the ends it often predicts worst.
+func TestFirstThatExtrapolatesWorst(t *testing.T) {
+	o := quick()
+	o.Designs = new(DesignCache)
+	raised := 0
+	for seed := range uint64(40) {
+		rng := rand.New(rand.NewPCG(seed, 5))
+		var ts, ks []float64
+		for i := range 12 {
+			ti := 280 + 6*float64(i)
+			e := 0.02*rng.NormFloat64() + 0.2*math.Max(0, float64(i-9))
+			ts, ks = append(ts, ti), append(ks, math.Exp(20-50e3/(models.GasConstant*ti)+e))
+		}
+		if a := mustAssess(t, setOf(ts, ks, nil), o); a.finding("first-extrapolates-worst") {
+			raised++
+			first, line := a.Prediction.of(a.Ranking[0].Curve), a.Prediction.of("straight")
+			if a.Ranking[0].Curve == "straight" || !(first.Ends > 2*line.Ends) || a.Ranking[0].FamWeight < 0.5 {
+				t.Errorf("raised for %s: %+v, %+v", a.Ranking[0].Curve, first, line)
+			}
+		}
+	}
+	t.Logf("raised in %d of 40", raised)
+	if raised < 5 {
+		t.Errorf("raised in %d of 40", raised)
+	}
+}
+
+// On straight data it is rare, and where it is raised a curve ranks first.
+func TestFirstExtrapolatesWorstOnStraightData(t *testing.T) {
+	o := quick()
+	o.Designs = new(DesignCache)
+	raised := 0
+	for seed := range uint64(300) {
+		if mustAssess(t, lineSet(12, 280, 340, 60e3, 0.03, seed), o).finding("first-extrapolates-worst") {
+			raised++
+		}
+	}
+	t.Logf("raised in %d of 300 straight sets of 12", raised)
+	if raised > 9 {
+		t.Errorf("raised in %d of 300 straight sets", raised)
+	}
+}
+
+func TestPredictionWithFewTemperatures(t *testing.T) {
+	a := mustAssess(t, lineSet(5, 290, 350, 60e3, 0.03, 1), quick())
+	if p := a.Prediction; p == nil || p.EndTemperatures != 0 || p.of("straight").Ends.Known() || !p.of("straight").LeftOut.Known() {
+		t.Errorf("five temperatures: %+v", a.Prediction)
+	}
+	if a = mustAssess(t, lineSet(3, 290, 350, 60e3, 0.03, 1), quick()); a.Prediction != nil {
+		t.Errorf("three temperatures: %+v", a.Prediction)
+	}
+}
+
+func BenchmarkChecks(b *testing.B) {
+	set := lineSet(10, 290, 350, 60e3, 0.03, 2)
+	a, err := newAssessor(set, quick())
+	if err != nil {
+		b.Fatal(err)
+	}
+	if err := a.fit(); err != nil {
+		b.Fatal(err)
+	}
+	a.rank()
+	a.test()
+	a.decide()
+	for name, f := range map[string]func(){
+		"energies":   func() { a.energiesBetween() },
+		"prediction": a.predict,
+		"residuals":  a.checkResiduals,
+	} {
+		b.Run(name, func(b *testing.B) {
+			for b.Loop() {
+				f()
+				a.findings = nil
+			}
+		})
+	}
+}

@@ -1,0 +1,292 @@
+package diagnostics
+
+import (
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"slices"
+	"sync"
+
+	"onebarrier/models/fit"
+
+	"gonum.org/v1/gonum/floats"
+	"gonum.org/v1/gonum/stat/distuv"
+)
+
+const (
+	// residualLevel is the level of the checks of residuals: there are two beside
+	// the verdict, and one experiment in fifty should hear of them for nothing.
+	residualLevel = 0.01
+	// absoluteGain is the difference of AIC from which errors in k are proposed.
+	absoluteGain = 4
+	// absoluteHint is the p-value of the spread test above which errors in k are not
+	// tried: they make the scatter of ln k shrink as k grows.
+	absoluteHint = 0.2
+)
+
+// ResidualChecks says whether the residuals are what the error model assumes: as
+// large at every temperature, and normal. Both tests are on the sample of the verdict,
+// about power-prefactor, or the recommended curve where that bends more freely.
+type ResidualChecks struct {
+	Curve  string        `json:"curve"`
+	Spread ResidualCheck `json:"spread"`
+	// Trend of the scatter with T as found, significant or not: grows or shrinks.
+	Trend     string        `json:"spread_trend"`
+	Normality ResidualCheck `json:"normality"`
+	// AbsoluteGain is AIC of relative less AIC of absolute errors, the same curve
+	// fitted: both are densities of k. Unknown where they were not compared.
+	AbsoluteGain Real `json:"absolute_aic_gain"`
+}
+
+// ResidualCheck is one test with the power that it has at so many entries.
+type ResidualCheck struct {
+	Test      string `json:"test"`
+	Statistic Real   `json:"statistic"`
+	PValue    Real   `json:"p_value"`
+	// Power at the 1 % level for the alternative Against; unknown beyond the table.
+	Power   Real   `json:"power"`
+	Against string `json:"power_against"`
+}
+
+// What the power of the checks is stated for.
+const (
+	againstThreefold = "standard deviation threefold from one end of the range to the other"
+	againstHeavy     = "errors of Student's t with 3 degrees of freedom"
+)
+
+// checkPower is the power of both checks at 1 % by number of entries N evenly spaced
+// in 1/T, about power-prefactor: of the spread test when the standard deviation is
+// threefold from one end to the other (log variance linear in 1/T), of the
+// normality test for errors of Student's t with 3 degrees of freedom.
+//
+//	go test ./diagnostics -run TestPowerOfResidualChecks -v -power-draws 100000
+var checkPower = []struct {
+	n             int
+	spread, heavy float64
+}{
+	{6, 0.014, 0.009},
+	{8, 0.028, 0.019},
+	{10, 0.045, 0.049},
+	{12, 0.066, 0.072},
+	{15, 0.102, 0.129},
+	{20, 0.168, 0.182},
+	{30, 0.322, 0.299},
+	{40, 0.474, 0.426},
+	{60, 0.712, 0.599},
+	{100, 0.942, 0.811},
+}
+
+// powerAt interpolates the table, linearly in N; NaN outside.
+func powerAt(n int, of func(i int) float64) float64 {
+	for i := range checkPower {
+		switch b := checkPower[i]; {
+		case n == b.n:
+			return of(i)
+		case n < b.n && i > 0:
+			a := checkPower[i-1]
+			f := float64(n-a.n) / float64(b.n-a.n)
+			return (1-f)*of(i-1) + f*of(i)
+		case n < b.n:
+			return math.NaN()
+		}
+	}
+	return math.NaN()
+}
+
+// CheckResiduals runs both checks on a fit of s; nil where fewer than two degrees of
+// freedom or no scatter are left.
+func CheckResiduals(s *fit.Sample, r *fit.Result) *ResidualChecks {
+	if !r.Usable() || r.Nu < 2 || len(r.Residuals) != s.Len() || noScatter(s, r.RSS) {
+		return nil
+	}
+	c := &ResidualChecks{Curve: r.Curve.Info().Name, Trend: "shrinks", AbsoluteGain: Real(math.NaN())}
+	lm, p, grows := spreadTest(s, r)
+	if grows {
+		c.Trend = "grows"
+	}
+	n := s.Len()
+	c.Spread = ResidualCheck{"Breusch-Pagan score", Real(lm), Real(p), Real(powerAt(n, func(i int) float64 { return checkPower[i].spread })), againstThreefold}
+	w, p := normalityTest(s, r)
+	c.Normality = ResidualCheck{"Shapiro-Francia", Real(w), Real(p), Real(powerAt(n, func(i int) float64 { return checkPower[i].heavy })), againstHeavy}
+	return c
+}
+
+// checkResiduals puts the checks and what they find into the assessment.
+func (a *assessor) checkResiduals() {
+	s, r := a.data.sample, a.scatterFit()
+	if a.untestable != "" {
+		return
+	}
+	if r.Exact != nil {
+		r = r.Exact
+	}
+	c := CheckResiduals(s, r)
+	if a.residuals = c; c == nil {
+		return
+	}
+	n := s.Len()
+	if c.Spread.PValue < residualLevel {
+		a.find("scatter-not-even", fmt.Sprintf("the scatter about %s %s with T (p = %s); at N = %d this check sees a threefold change over the range in %s of sets",
+			c.Curve, c.Trend, pText(float64(c.Spread.PValue)), n, share(c.Spread.Power)), nil,
+			map[string]Real{"p_value": c.Spread.PValue, "power": c.Spread.Power})
+	}
+	if c.Normality.PValue < residualLevel {
+		a.find("residuals-not-normal", fmt.Sprintf("the residuals about %s are not normal (p = %s): a few are far larger than the rest",
+			c.Curve, pText(float64(c.Normality.PValue))), nil,
+			map[string]Real{"p_value": c.Normality.PValue, "power": c.Normality.Power})
+	}
+	a.compareAbsolute(r, c)
+}
+
+// share writes a probability in per cent.
+func share(p Real) string {
+	if !p.Known() {
+		return "most"
+	}
+	return fmt.Sprintf("%.0f %%", 100*float64(p))
+}
+
+// compareAbsolute compares errors in ln k with errors in k of one size, by the
+// likelihoods that one curve reaches under both. A fit in k is dear: it is made
+// where the scatter of ln k shrinks with rising k, however weakly.
+func (a *assessor) compareAbsolute(r *fit.Result, c *ResidualChecks) {
+	s := a.data.sample
+	lowT, highT := s.Range()
+	rises := lnKAt(r, highT, a.opt.Confidence).Value > lnKAt(r, lowT, a.opt.Confidence).Value
+	if s.Model != fit.Relative || len(s.Limits) > 0 || s.Len() > FullyResampled ||
+		!(c.Spread.PValue < absoluteHint) || rises == (c.Trend == "grows") {
+		return
+	}
+	inK, err := fit.NewSample(fit.Absolute, s.T, s.K, s.V)
+	if err != nil {
+		return
+	}
+	f := fit.Fit(inK, r.Curve)
+	if f.Status != fit.Converged {
+		return
+	}
+	gain := r.AIC() - f.AIC()
+	if c.AbsoluteGain = Real(gain); gain > absoluteGain {
+		a.find("absolute-fits-better", fmt.Sprintf("errors of one size in k describe the scatter better than errors in per cent: AIC of %s lower by %.1f", c.Curve, gain),
+			nil, map[string]Real{"aic_gain": Real(gain)})
+	}
+}
+
+// normalityDraws of the null of the normality test; normalityDrawn is the largest N
+// for which it is drawn.
+const (
+	normalityDraws = 4999
+	normalityDrawn = 30
+)
+
+// normalityTest is the squared correlation W' of the ordered residuals, each divided
+// by √(V(1-h)), with normal scores (Shapiro & Francia, J. Am. Stat. Assoc. 67 (1972)
+// 215; scores of Blom). What a fit leaves is more normal than the errors, the more so
+// the fewer the points, so that the null is that of residuals: drawn for N entries
+// evenly spaced in 1/T about power-prefactor, and remembered by N. Beyond it the
+// normalisation of Royston, Statistician 42 (1993) 37, serves.
+func normalityTest(s *fit.Sample, r *fit.Result) (w, p float64) {
+	n := s.Len()
+	e := make([]float64, 0, n)
+	for i, h := range r.Leverage {
+		if 1-h > 1e-9 { // the others are 0 whatever their error
+			e = append(e, r.Residuals[i]/math.Sqrt(s.V[i]*(1-h)))
+		}
+	}
+	if n = len(e); n < 5 {
+		return math.NaN(), math.NaN()
+	}
+	w = shapiroFrancia(e, normalScores(n))
+	return w, normalityOf(w, n)
+}
+
+// normalityOf is the p-value of a W' of n entries.
+func normalityOf(w float64, n int) float64 {
+	if n > normalityDrawn {
+		u := math.Log(float64(n))
+		v := math.Log(u)
+		mean, sd := -1.2725+1.0521*(v-u), 1.0308-0.26758*(v+2/u)
+		return distuv.UnitNormal.Survival((math.Log1p(-w) - mean) / sd)
+	}
+	null := normalityNull(n)
+	at, _ := slices.BinarySearch(null, math.Nextafter(w, 2))
+	return float64(at+1) / float64(len(null)+1)
+}
+
+// normalScores are Φ⁻¹((i - 3/8)/(n + 1/4)), scaled to length 1.
+func normalScores(n int) []float64 {
+	m := make([]float64, n)
+	for i := range m {
+		m[i] = distuv.UnitNormal.Quantile((float64(i+1) - 0.375) / (float64(n) + 0.25))
+	}
+	floats.Scale(1/floats.Norm(m, 2), m)
+	return m
+}
+
+// shapiroFrancia sorts e.
+func shapiroFrancia(e, scores []float64) float64 {
+	slices.Sort(e)
+	mean := floats.Sum(e) / float64(len(e))
+	var ss float64
+	for _, v := range e {
+		ss += (v - mean) * (v - mean)
+	}
+	d := floats.Dot(e, scores)
+	return d * d / ss
+}
+
+// normalityNulls holds the sorted nulls by N.
+var normalityNulls sync.Map
+
+func normalityNull(n int) []float64 {
+	if v, ok := normalityNulls.Load(n); ok {
+		return v.([]float64)
+	}
+	basis, left := evenDesign(n)
+	scores := normalScores(n)
+	rng := rand.New(rand.NewPCG(0x6e6f726d, uint64(n)))
+	null, z := make([]float64, normalityDraws), make([]float64, n)
+	for k := range null {
+		for i := range z {
+			z[i] = rng.NormFloat64()
+		}
+		studentise(z, basis, left)
+		null[k] = shapiroFrancia(z, scores)
+	}
+	slices.Sort(null)
+	normalityNulls.Store(n, null)
+	return null
+}
+
+// studentise leaves of z its residuals about a design, each in units of its own
+// standard deviation.
+func studentise(z []float64, basis [][]float64, left []float64) {
+	for _, q := range basis {
+		floats.AddScaled(z, -floats.Dot(q, z), q)
+	}
+	for i, l := range left {
+		z[i] *= l
+	}
+}
+
+// evenDesign is an orthonormal basis of what power-prefactor follows at n temperatures
+// evenly spaced in 1/T, over a range so narrow that ln T bends like a parabola, and
+// 1/√(1-h) of each.
+func evenDesign(n int) (basis [][]float64, left []float64) {
+	for power := range 3 {
+		c := make([]float64, n)
+		for i := range c {
+			c[i] = math.Pow(2*float64(i)/float64(n-1)-1, float64(power))
+		}
+		basis, _ = extend(basis, c, 1e-10)
+	}
+	left = make([]float64, n)
+	for i := range left {
+		h := 0.0
+		for _, q := range basis {
+			h += q[i] * q[i]
+		}
+		left[i] = 1 / math.Sqrt(1-h)
+	}
+	return basis, left
+}
