@@ -78,10 +78,11 @@ func (m *maker) all() ([]*Set, error) {
 func (m *maker) shapes(first, n int) {
 	for i := first; i < len(m.t.Rows); i++ {
 		if i > first && m.t.Blank[i] {
-			return
+			break
 		}
 		m.cells(m.t.Rows[i], n)
 	}
+	m.refuseRagged(n)
 }
 
 // cells checks the number of cells of a row; empty ones at the end are dropped.
@@ -91,10 +92,11 @@ func (m *maker) cells(r Row, n int) ([]string, bool) {
 		cells = cells[:len(cells)-1]
 	}
 	if len(cells) == n {
+		m.even++
 		return cells, true
 	}
 	if !isLabel(cells[0]) {
-		m.refuse(codeRagged, r.Line, "", "the row has %s, the headings %d", countOf(len(cells), "cell"), n)
+		m.ragged = append(m.ragged, newRagged(r.Line, cells))
 	}
 	return nil, false
 }

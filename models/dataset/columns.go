@@ -63,9 +63,11 @@ type maker struct {
 	t        *Table
 	opt      Options
 	problems Problems
-	line     int     // of the headings
-	tidied   *tidied // nil unless Tidy wrote the table
-	onlyRate string  // group of the rate columns that are meant, of several; "" for all
+	line     int      // of the headings
+	ragged   []ragged // rows with more or fewer cells than the headings
+	even     int      // rows with as many
+	tidied   *tidied  // nil unless Tidy wrote the table
+	onlyRate string   // group of the rate columns that are meant, of several; "" for all
 }
 
 func (m *maker) refuse(code string, row int, column, format string, args ...any) {
@@ -341,7 +343,9 @@ func (m *maker) columns(headings []string, line int) *plan {
 		if len(unused) > most {
 			s += fmt.Sprintf(" and %d more", len(unused)-most)
 		}
-		p.notices = append(p.notices, notice(noteKept, "kept, not used: "+s))
+		n := notice(noteKept, "kept, not used: "+s)
+		n.Cure = fmt.Sprintf("if one should take part, name its role, such as k, u(k), n or source: --column 'source=%s'", unused[0])
+		p.notices = append(p.notices, n)
 	}
 	return p
 }
@@ -545,7 +549,7 @@ func (m *maker) chooseTemperature(p *plan, forced []*column, line int) {
 				"write the unit into the heading, as in T/K, or say which: "+c.Ambiguity.meanings())
 		}
 		if len(open) == 0 {
-			m.refuse(codeNoTemperature, line, "", "no heading was understood as a temperature among %s", quoteAll(p.texts()))
+			m.refuseNone(p, codeNoTemperature, "T", line, "no heading was understood as a temperature among "+quoteAll(p.texts()), "write the heading as T/K or t/°C")
 		}
 	}
 	for _, c := range p.temperature {
@@ -600,6 +604,7 @@ func plainSymbol(s string) string {
 }
 
 func (m *maker) chooseRate(p *plan, forced []*column, line int) {
+	m.assumeRuns(p)
 	var certain, means, open, times []*column
 	marks := map[string]bool{}
 	for i := range p.cols {
@@ -659,7 +664,75 @@ func (m *maker) refuseNoRate(p *plan, line int) {
 			return
 		}
 	}
-	m.refuse(codeNoRate, line, "", "no heading was understood as a rate constant among %s", quoteAll(p.texts()))
+	what := "no heading was understood as a rate constant among " + quoteAll(p.texts())
+	if runs := m.onlyRuns(p); len(runs) > 1 {
+		var names []string
+		for _, c := range runs {
+			names = append(names, c.Text)
+		}
+		m.refuseCure(codeNoRate, line, "", what, "if these are repeats of one rate constant, say so: --assume k=repeats, or name each: "+columnFlags("k", names, " "))
+		return
+	}
+	m.refuseNone(p, codeNoRate, "k", line, what, "write the heading as k/s^-1")
+}
+
+// refuseNone refuses a table without a column for a role, and offers those with
+// numbers that have none.
+func (m *maker) refuseNone(p *plan, code, role string, line int, what, cure string) {
+	var names []string
+	for i := range p.cols {
+		if c := &p.cols[i]; c.Role == RoleKept && m.isNumeric(c) {
+			names = append(names, c.Text)
+		}
+	}
+	if len(names) > 0 {
+		cure += ", or name the column: " + columnFlags(role, names, " or ")
+	}
+	m.refuseCure(code, line, "", what, cure)
+}
+
+// columnFlags writes the flag --column for each of several headings.
+func columnFlags(role string, headings []string, between string) string {
+	const most = 8
+	var flags []string
+	for _, h := range headings[:min(most, len(headings))] {
+		flags = append(flags, fmt.Sprintf("--column '%s=%s'", role, h))
+	}
+	return strings.Join(flags, between)
+}
+
+// isNumeric reports whether the first cell of a column below its heading that is not
+// empty holds a number.
+func (m *maker) isNumeric(c *column) bool {
+	for _, r := range m.t.Rows {
+		if r.Line > m.line && c.index < len(r.Cells) && !isMissing(normalize(r.Cells[c.index])) && !isUnitCell(normalize(r.Cells[c.index])) {
+			return allNumbers(r.Cells[c.index : c.index+1])
+		}
+	}
+	return false
+}
+
+// onlyRuns are the columns whose headings say which repeat they hold, and not of what:
+// run 1, run 2.
+func (m *maker) onlyRuns(p *plan) []*column {
+	var runs []*column
+	for i := range p.cols {
+		if c := &p.cols[i]; c.Role == RoleKept && reOnlyRepeat.MatchString(normalize(c.Text)) && m.isNumeric(c) {
+			runs = append(runs, c)
+		}
+	}
+	return runs
+}
+
+// assumeRuns takes run 1, run 2 for repeats of k where the user says that they are and
+// nothing else is a rate constant.
+func (m *maker) assumeRuns(p *plan) {
+	if m.opt.Assume["k"] != assumeRepeats || slices.ContainsFunc(p.cols, func(c column) bool { return c.Role == RoleRate }) {
+		return
+	}
+	for _, c := range m.onlyRuns(p) {
+		c.Heading = Heading{Text: c.Text, Role: RoleRate, Symbol: "k", Run: normalize(c.Text)}
+	}
 }
 
 func (c *column) halfLife() Form {

@@ -112,7 +112,10 @@ func (c *column) conversion(p *plan) string {
 // is none, or its level is not known.
 func (c *column) inCells(p *plan) (h Heading, ok bool) {
 	h = Heading{Kind: p.level, Coverage: p.levelK}
-	known := p.level != KindNone && (p.level != KindRepeats || p.repeats != nil || p.repeatsN > 0)
+	if c.Beside != nil && c.plusMinus {
+		h = *c.Beside
+	}
+	known := h.Kind != KindNone && (h.Kind != KindRepeats || p.repeats != nil || p.repeatsN > 0)
 	return h, known && (c.plusMinus || c.spaced)
 }
 

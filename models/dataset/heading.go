@@ -87,6 +87,10 @@ type Heading struct {
 	Coverage   float64 // 0 if not stated
 	Confidence float64 // of an interval, 0.95; 0 if not stated
 
+	// Beside is how a ± in the cells of a rate constant was stated, as in
+	// k (s-1) ± SD; nil if the heading does not say so.
+	Beside *Heading
+
 	// Of a rate constant or its uncertainty: which repeat it is, as in "run 1", or
 	// that it is the mean of them; "" and false if the heading does not say so.
 	Run     string
@@ -134,7 +138,7 @@ func ParseHeading(text string, assume map[string]string) Heading {
 		h.Role = r
 		return h
 	}
-	for _, try := range []func(string) (Heading, bool){p.marked, p.uncertainty, p.temperature, p.rate} {
+	for _, try := range []func(string) (Heading, bool){p.withLevel, p.marked, p.uncertainty, p.temperature, p.rate} {
 		if got, ok := try(s); ok {
 			got.Text = h.Text
 			return got

@@ -139,6 +139,27 @@ func (u Unit) isRateOrTime(f Form) bool {
 	return u.isRate()
 }
 
+var rePlusMinus = regexp.MustCompile(`^(.*[^ ]) ?(?:±|\+/-|\+-) ?([^ ].*)$`)
+
+// withLevel reads the heading of cells such as 3.1 ± 0.2 that says what stands behind
+// the ±: k (s-1) ± SD, k ± 2σ / s^-1.
+func (p headingParser) withLevel(s string) (Heading, bool) {
+	m := rePlusMinus.FindStringSubmatch(s)
+	if m == nil {
+		return Heading{}, false
+	}
+	h, ok := p.rate(m[1])
+	u, level := headingParser{}.uncertainty(m[2])
+	if !ok || !level || u.Ambiguity != nil || u.Of != "" {
+		return h, false
+	}
+	if h.Unit == nil && h.UnitText == "" && !u.Percent {
+		h.Unit, h.UnitText, h.Shift = u.Unit, u.UnitText, h.Shift+u.Shift
+	}
+	h.Beside = &u
+	return h, true
+}
+
 // rate reads the heading of a rate constant, or of one that was divided by T.
 func (p headingParser) rate(s string) (Heading, bool) {
 	s, d, ofK := cutDivisor(s)

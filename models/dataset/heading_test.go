@@ -23,6 +23,9 @@ func (h Heading) brief() string {
 	} else if h.UnitText != "" {
 		s += " {" + h.UnitText + "}"
 	}
+	if b := h.Beside; b != nil {
+		s += " ±" + strings.TrimPrefix(Heading{Kind: b.Kind, Coverage: b.Coverage, Confidence: b.Confidence}.brief(), string(b.Role))
+	}
 	if h.Divisor != "" {
 		s += " over " + string(h.Divisor)
 	}
@@ -115,6 +118,12 @@ func TestHeadings(t *testing.T) {
 		{"conf. int.", "uncertainty expanded ?error"},
 		{"delta k", "uncertainty of k ambiguous ?error"},
 		{"uncertainty factor", "kept"},
+		// how a ± in the cells is meant
+		{"k (s-1) ± SD", "rate k [s^-1] ± s.d. of repeats"},
+		{"k/s^-1 +/- SE", "rate k [s^-1] ± standard, of mean"},
+		{"k ± 2σ (s-1)", "rate k [s^-1] ± expanded k2"},
+		{"k_obs (s-1) ± 95 % CI", "rate k_obs [s^-1] ± expanded 95"},
+		{"k (s-1) ± error", "kept"},
 		// a power of ten behind the unit
 		{"k (s⁻¹ × 10⁵)", "rate k [s^-1] e5 ?factor"},
 		{"k/s^-1 × 10^5", "rate k [s^-1] e5 ?factor"},

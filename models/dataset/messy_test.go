@@ -143,3 +143,62 @@ func TestFactorAtALevel(t *testing.T) {
 		t.Errorf("u %v, want %v", p.UK, want)
 	}
 }
+
+// Ragged rows are told once, and blamed on what is wrong.
+func TestRaggedRows(t *testing.T) {
+	for _, c := range []struct {
+		text string
+		row  int
+		says string
+	}{
+		{"T/K,k/s^-1\n280,15,0,0012\n290,15,0,0034\n", 2, "commas are both the delimiter and the decimal mark"},
+		{"T/K,k/s^-1\n280,0,0012\n290,0,0034\n", 2, "save the table with semicolons"},
+		{"T/K,k/s^-1,note\n280,0.1\n290,0.2\n", 1, "the row of headings has one cell more"},
+		{"T/K,k/s^-1\n280,0.1,a\n290,0.2,b\n", 1, "the row of headings has one cell less"},
+		{"T/K,k/s^-1\n280,0.1\n290,0.2,b\n300,1,c\n310,2,d\n", 3, "the row has 3 cells, the headings 2; so have 2 other rows"},
+		{"T/K,k/s^-1\n280,0.1\n290,0.2,b\n", 3, "the row has 3 cells, the headings 2; give"},
+	} {
+		ps := problemsOf(t, c.text, Options{})
+		if len(ps) != 1 || ps[0].Row != c.row || !strings.Contains(ps.Error(), c.says) {
+			t.Errorf("%q: %v", c.text, ps)
+		}
+	}
+}
+
+// ± in the cells at the level that the heading states: 0.3/sqrt 3 for n = 3, 0.3/2.
+func TestLevelBesideTheRate(t *testing.T) {
+	for _, c := range []struct {
+		text string
+		u    float64
+	}{
+		{"T/K,k (s-1) ± SD,n\n280,1 ± 0.3,3\n290,2 ± 0.3,3\n", 0.3 / math.Sqrt(3)},
+		{"T/K,k (s-1) ± 2σ\n280,1 ± 0.3\n290,2 ± 0.3\n", 0.15},
+		{"T/K,k (s-1) ± SE\n280,1 ± 0.3\n290,2 ± 0.3\n", 0.3},
+	} {
+		if p := read(t, c.text, Options{}).Points[0]; p.K != 1 || !reference.Agrees(p.UK, c.u, 1e-14) {
+			t.Errorf("%q: %+v", c.text, p)
+		}
+	}
+	s := read(t, "T/K,k (s-1) ± SD\n280,1 ± 0.3\n290,2 ± 0.3\n", Options{})
+	if n := noticed(t, s, noteRepeats); !strings.Contains(n.Cure, "--assume n=3") || s.Points[0].UK != 0 {
+		t.Errorf("%+v, %+v", n, s.Points[0])
+	}
+}
+
+// Cures name the headings of the file, ready to be typed.
+func TestCuresNameHeadings(t *testing.T) {
+	ps := problemsOf(t, "bath,slope 1,flask\n280,1,a\n290,2,b\n", Options{})
+	if got := ps.Error(); !strings.Contains(got, "--column 'T=bath' or --column 'T=slope 1'") || !strings.Contains(got, "--column 'k=slope 1'") || strings.Contains(got, "HEADING") || strings.Contains(got, "=flask") {
+		t.Error(got)
+	}
+	const runs = "T/K,run 1,run 2,run 3\n280,1,1.1,1.2\n290,2,2.1,2.2\n"
+	ps = problemsOf(t, runs, Options{})
+	if !strings.Contains(ps[0].Cure, "--column 'k=run 1' --column 'k=run 2' --column 'k=run 3'") || !strings.Contains(ps[0].Cure, "--assume k=repeats") {
+		t.Error(ps)
+	}
+	for _, opt := range []Options{{Assume: map[string]string{"k": "repeats"}}, {Columns: map[string][]string{"k": {"run 1", "run 2", "run 3"}}}} {
+		if s := read(t, runs, opt); len(s.Points) != 6 || s.Points[2].K != 1.2 {
+			t.Errorf("%+v", s.Points)
+		}
+	}
+}

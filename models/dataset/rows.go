@@ -23,6 +23,7 @@ type rowReader struct {
 	// Rows with an uncertainty written beside a number: of k, and of T.
 	brackets, spaced, plusMinus    []int
 	bracketsT, spacedT, plusMinusT []int
+	noRepeats                      []int     // s.d. behind a ± whose number of repeats is not given
 	wrong                          []*column // refused for their power of ten
 	spare                          []int     // not used: a column states it too
 	examples                       [][]string
@@ -133,6 +134,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 			pt.Used = pt.WhyNot == ""
 		}
 	}
+	m.refuseRagged(n)
 	for _, l := range m.opt.LeaveOut {
 		if leaveOut[l] {
 			m.refuse(codeLeaveOut, l, "", "--leave-out names a line that holds no row of data")
@@ -153,6 +155,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	say(noteBrackets, rr.bracketsT, ofT+"a bracket after the number was read as its standard uncertainty")
 	say(noteLevel, rr.spaced, "a bracket after a space is ambiguous and was not used")
 	say(noteLevel, rr.spacedT, ofT+"a bracket after a space is ambiguous and was not used")
+	say(noteRepeats, rr.noRepeats, "± states a standard deviation of repeats, and their number is not given")
 	say(noteLevel, rr.plusMinus, "the level of ± is not stated, and it was not used")
 	say(noteLevel, rr.plusMinusT, ofT+"the level of ± is not stated, or it is relative, and it was not used")
 	say(noteOtherU, rr.spare, "an uncertainty in the cell is not used: a column states it")
@@ -456,6 +459,14 @@ func (rr *rowReader) levelOf(pt *Point, c *column, x Cell, brackets, spaced, plu
 		list = spaced
 	} else {
 		c.plusMinus = true
+	}
+	if b := c.Beside; b != nil && x.Attached == AttachedPlusMinus {
+		h.Kind, h.Coverage, h.Confidence = b.Kind, b.Coverage, b.Confidence
+		if h.Kind == KindRepeats && rr.repeatsFor(pt) == 0 {
+			note(&rr.noRepeats, pt.Row)
+			return h, false
+		}
+		return h, true
 	}
 	h.Kind, h.Coverage = rr.p.level, rr.p.levelK
 	if h.Kind == KindNone || h.Kind == KindRepeats && rr.repeatsFor(pt) == 0 {

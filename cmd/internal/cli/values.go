@@ -12,6 +12,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"onebarrier/diagnostics"
+	"onebarrier/models/dataset"
 )
 
 // choice is the value of a flag that takes one of a few words.
@@ -172,7 +173,7 @@ func (c column) Type() string { return "role=heading" }
 func (c column) Set(s string) error {
 	role, heading, ok := strings.Cut(s, "=")
 	if !ok || strings.TrimSpace(role) == "" || strings.TrimSpace(heading) == "" {
-		return fmt.Errorf("%q is not of the form role=HEADING", s)
+		return fmt.Errorf("%q is not of the form role=HEADING, such as 'k=k_obs/s^-1'; %s", s, dataset.Explanations()["role-unknown"].Cure)
 	}
 	if *c.m == nil {
 		*c.m = map[string][]string{}
