@@ -74,6 +74,7 @@ func joint(s *Sample, f *Result) *Result {
 	if s.Spent() == 0 || !f.Usable() || f.P == nil {
 		return f
 	}
+	f.Beside = make([]float64, s.Spent()) // held, unless a better answer is found
 	o := newObjective(s, f.Curve)
 	p, m := o.n, o.n+s.Spent()
 	pr := Problem{M: s.Len(), N: m, Eval: o.withNuisance()}

@@ -96,6 +96,45 @@ func TestRefitsBesideOffsets(t *testing.T) {
 	}
 }
 
+// The profile beside offsets is that of a straight line where the curve is linear, and
+// for others the fit with the value held rises to the criterion at its ends: with the
+// offsets held it would be shorter.
+func TestProfileBesideOffsets(t *testing.T) {
+	s := twoSources(t, Relative, 0.1, 22)
+	f := Fit(s, models.Parallel{})
+	c := []float64{0, 1, 0, 0}
+	e := Profile(s, f, c, 0.95)
+	if e.Open != OpenNone || !(e.Lower < f.P[1] && f.P[1] < e.Upper) {
+		t.Fatalf("%+v", e)
+	}
+	q := StudentQuantile(0.975, s.Len()-5)
+	for _, g := range []float64{e.Lower, e.Upper} {
+		// E1 held: minimised over the offset by golden section, over the rest by
+		// the profile of the sample without it.
+		held := func(o float64) float64 {
+			off := make([]float64, s.Len())
+			for i, x := range s.Nuisance[0] {
+				off[i] = o * x
+			}
+			plain := s.WithOffsets(off, nil)
+			p := newProfiler(plain, Fit(plain, models.Parallel{}), c)
+			rss, _ := p.at(g, f.P)
+			return rss
+		}
+		low, high := 0.05, 0.15
+		for range 60 {
+			a, b := low+0.382*(high-low), low+0.618*(high-low)
+			if held(a) < held(b) {
+				high = b
+			} else {
+				low = a
+			}
+		}
+		rise := (held(low) - f.RSS) / (f.RSS / float64(s.Len()-5))
+		reference.Close(t, "rise", rise, q*q, 1e-4)
+	}
+}
+
 // Without nuisance columns nothing is taken off and nothing counted.
 func TestNoNuisance(t *testing.T) {
 	s := twoSources(t, Relative, 0, 22)

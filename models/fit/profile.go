@@ -2,6 +2,7 @@ package fit
 
 import (
 	"math"
+	"slices"
 
 	"onebarrier/models"
 
@@ -82,7 +83,8 @@ func ProfileExponent(s *Sample, r *Result, confidence float64) Estimate {
 // An end that is not reached within 2^20 half-widths is open and infinite. With errors
 // in ln k and a models.Basis it is the interval of Interval, which is then exact. With
 // errors in k and a function of one path of parallel it is held to E1 <= E2, and an end
-// is open where ProfileShaped has it so.
+// is open where ProfileShaped has it so. Beside nuisance columns every curve goes this road
+// but a models.Basis with errors in ln k, and a path is not held to its place.
 func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	if len(c) != r.Params() {
 		panic("fit: the length of c does not match the parameters")
@@ -108,7 +110,11 @@ func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	}
 	var end func(step, smin, criterion float64) (float64, bool)
 	var smin float64
-	if h := onePath(s, r, c); h != nil {
+	if s.Spent() > 0 {
+		f := newProfiler(s, r, append(slices.Clone(c), make([]float64, s.Spent())...))
+		smin = f.start(append(slices.Clone(r.P), r.Beside...))
+		end = func(step, smin, criterion float64) (float64, bool) { return f.end(value, step, smin, criterion) }
+	} else if h := onePath(s, r, c); h != nil {
 		smin = math.Min(h.at(value), r.RSS/square(h.w.e.o.unit))
 		end = func(step, smin, criterion float64) (float64, bool) { return h.end(value, step, smin, criterion) }
 	} else {
@@ -163,15 +169,20 @@ type profiler struct {
 }
 
 func newProfiler(s *Sample, r *Result, c []float64) *profiler {
-	f := &profiler{c: c, inner: newObjective(s, r.Curve).problem()}
+	o := newObjective(s, r.Curve)
+	f := &profiler{c: c, inner: o.problem()}
+	own := f.inner.N
+	if s.Spent() > 0 {
+		f.inner = Problem{M: s.Len(), N: own + s.Spent(), Eval: o.withNuisance()}
+	}
 	n := f.inner.N
 	// Eliminate the parameter on which the value hangs most, in units of its
 	// standard error, or of itself where there is none.
 	most := 0.0
-	for j := range n {
+	for j := range own { // c is 0 on nuisance columns
 		w := math.Abs(c[j] * r.P[j])
 		if r.Cov != nil {
-			w = math.Abs(c[j]) * math.Sqrt(r.Cov[j*n+j])
+			w = math.Abs(c[j]) * math.Sqrt(r.Cov[j*own+j])
 		}
 		if w > most || (most == 0 && c[j] != 0) {
 			f.pivot, most = j, w
