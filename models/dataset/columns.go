@@ -315,6 +315,11 @@ func (m *maker) columns(headings []string, line int) *plan {
 			c.used = true
 		} else {
 			m.refuse(codeColumnUnknown, line, "", "--dataset-by %s: there is no such heading; the file has %s", by, quoteAll(headings))
+			for _, h := range headings {
+				if strings.EqualFold(normalize(h), normalize(by)) {
+					m.problems[len(m.problems)-1].Cure = fmt.Sprintf("did you mean --dataset-by '%s'?", strings.TrimSpace(h))
+				}
+			}
 		}
 	}
 	if len(p.runs) > 0 {

@@ -202,3 +202,14 @@ func TestCuresNameHeadings(t *testing.T) {
 		}
 	}
 }
+
+func TestNamesOfSets(t *testing.T) {
+	const text = "T/K,k/s^-1,pH\n280,1,5.0\n290,2,5.0\n280,3,7.0\n290,4,7.0\n"
+	ps := problemsOf(t, text, Options{DatasetBy: "ph", Dataset: "5"})
+	if len(ps) != 1 || ps[0].Cure != "did you mean --dataset-by 'pH'?" {
+		t.Error(ps)
+	}
+	if s := read(t, text, Options{DatasetBy: "pH", Dataset: "5"}); s.Name != "5.0" || len(s.Points) != 2 {
+		t.Errorf("%s, %+v", s.Name, s.Points)
+	}
+}

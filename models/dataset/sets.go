@@ -34,11 +34,14 @@ func (m *maker) sets(p *plan, points []Point) []*Set {
 			s.Points = append(s.Points, pt)
 		}
 	}
-	if want := m.opt.Dataset; want != "" {
+	// Where --dataset-by named no column, that is what is wrong.
+	if want := m.opt.Dataset; want != "" && (m.opt.DatasetBy == "" || p.dataset != nil) {
 		var only []*Set
-		for _, s := range sets {
-			if s.Name == want {
-				only = append(only, s)
+		for _, same := range []func(a, b string) bool{func(a, b string) bool { return a == b }, sameNumber} {
+			for _, s := range sets {
+				if len(only) == 0 && same(s.Name, want) {
+					only = append(only, s)
+				}
 			}
 		}
 		if len(only) == 0 {
@@ -55,6 +58,13 @@ func (m *maker) sets(p *plan, points []Point) []*Set {
 		s.review()
 	}
 	return sets
+}
+
+// sameNumber reports whether two names are one number, as 5 and 5.0 are.
+func sameNumber(a, b string) bool {
+	x, err1 := strconv.ParseFloat(a, 64)
+	y, err2 := strconv.ParseFloat(b, 64)
+	return err1 == nil && err2 == nil && x == y
 }
 
 // shareNotices leaves each set the notices that name its own rows, and those that

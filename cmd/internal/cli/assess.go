@@ -201,6 +201,9 @@ func words[S ~string](named []S) []string {
 // writable makes a folder and sees that files can be written there, before the
 // long work starts.
 func writable(dir string) error {
+	if at, err := os.Stat(dir); err == nil && !at.IsDir() {
+		return fmt.Errorf("the folder for pictures cannot be made: %s is a file; name a folder, which is made where there is none", dir)
+	}
 	if err := os.MkdirAll(dir, 0o777); err != nil {
 		return fmt.Errorf("the folder for pictures cannot be made: %w", err)
 	}

@@ -129,6 +129,47 @@ func problemsOf(err error) []report.Problem {
 	return []report.Problem{{Code: "failed", Message: err.Error()}}
 }
 
+// wrapError lays an error out for a terminal: what is wrong, wrapped, and the cure
+// below it.
+func wrapError(err error, width int) []string {
+	type part struct{ message, cure string }
+	var parts []part
+	var data dataset.Problems
+	var usage *usageError
+	switch {
+	case errors.As(err, &data):
+		const most = 20
+		for i, p := range data {
+			if i == most {
+				parts = append(parts, part{message: fmt.Sprintf("and %d more", len(data)-most)})
+				break
+			}
+			cure := p.Cure
+			p.Cure = ""
+			parts = append(parts, part{p.String(), cure})
+		}
+	case errors.As(err, &usage):
+		parts = []part{{usage.message, usage.cure}}
+	default:
+		for _, l := range strings.Split(err.Error(), "\n") {
+			parts = append(parts, part{message: l})
+		}
+	}
+	var lines []string
+	for _, p := range parts {
+		for i, l := range report.Wrap("onebarrier: "+p.message, width-2) {
+			if i > 0 {
+				l = "  " + l
+			}
+			lines = append(lines, l)
+		}
+		for i, l := range report.Wrap(p.cure, width-4) {
+			lines = append(lines, map[bool]string{true: "  → ", false: "    "}[i == 0]+l)
+		}
+	}
+	return lines
+}
+
 func join(message, cure string) string {
 	if cure == "" {
 		return message

@@ -3,6 +3,7 @@ package cli
 import (
 	"errors"
 	"os"
+	"path/filepath"
 
 	"github.com/spf13/cobra"
 
@@ -159,6 +160,9 @@ func writeTidy(name string, sets []*dataset.Set) (err error) {
 	f, err := os.OpenFile(name, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o666)
 	if errors.Is(err, os.ErrExist) {
 		return usagef("name a new file", "--tidy: %s exists and is not overwritten", name)
+	}
+	if errors.Is(err, os.ErrNotExist) {
+		return usagef("make the folder, or name a file in one that is there", "--tidy: there is no folder %s", filepath.Dir(name))
 	}
 	if err != nil {
 		return err

@@ -97,7 +97,14 @@ func (a *app) finish(err error, asJSON bool) int {
 }
 
 // complain prints an error on stderr, each of its lines under the program's name.
+// On a terminal they are wrapped, with the cure on a line of its own.
 func (a *app) complain(err error) {
+	if isTerminal(a.err) {
+		for _, line := range wrapError(err, 80) {
+			fmt.Fprintln(a.err, line)
+		}
+		return
+	}
 	for _, line := range strings.Split(err.Error(), "\n") {
 		fmt.Fprintf(a.err, "onebarrier: %s\n", line)
 	}

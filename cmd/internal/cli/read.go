@@ -129,7 +129,15 @@ func (a *app) readOne(ctx context.Context, files []string, o reading) (*dataset.
 	if len(problems) > 0 {
 		return nil, problems
 	}
-	return dataset.Pool(sets)
+	set, err := dataset.Pool(sets)
+	if err == nil && !a.json { // with --json every warning of the result goes to stderr
+		for _, n := range set.Notices {
+			if n.Code == "column-varies" { // the rows may not belong together: before the answer
+				a.warn("warning: %s: %s", n.Code, join(n.Message, n.Cure))
+			}
+		}
+	}
+	return set, err
 }
 
 // readAll reads a file as a whole. Reading from a pipe or a terminal can wait for

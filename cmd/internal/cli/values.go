@@ -68,6 +68,8 @@ func parseTemperature(s string) (float64, error) {
 		{"degF", func(x float64) float64 { return (x + 459.67) * 5 / 9 }},
 		{"°F", func(x float64) float64 { return (x + 459.67) * 5 / 9 }},
 		{"K", func(x float64) float64 { return x }},
+		{"C", func(x float64) float64 { return x + 273.15 }},
+		{"F", func(x float64) float64 { return (x + 459.67) * 5 / 9 }},
 	} {
 		number, ok := strings.CutSuffix(s, u.name)
 		if !ok {
