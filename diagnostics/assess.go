@@ -349,9 +349,7 @@ func (a *assessor) testExponent(s *fit.Sample, power *fit.Result) ExponentTest {
 	set := ExponentSettings{Confidence: a.opt.Confidence, Band: a.opt.PrefactorBand}
 	var profile *ExponentProfile
 	if (s.Model.InK() || len(s.Limits) > 0) && power.Status == fit.Converged && power.Nu > 0 {
-		if profile = newExponentProfile(s, power, a.opt.Confidence); s.Spent() > 0 {
-			profile.Interval = profileOfRSS(power, profile.RSS, a.opt.Confidence)
-		}
+		profile = newExponentProfile(s, power, a.opt.Confidence)
 	}
 	return TestExponent(s, power, profile, set)
 }

@@ -405,63 +405,6 @@ func (j *judge) besideOffsets(a *assessor) {
 	j.root = math.Sqrt(j.unscaled / held)
 }
 
-// profileOfRSS is the profile interval of n from S(n), minimised over all else:
-// {n: (S(n) - S_min)/(S_min/ν) <= F(1, ν)}, or S(n) - S_min <= χ²(1) with σ known.
-func profileOfRSS(power *fit.Result, rss func(n float64) float64, confidence float64) fit.Estimate {
-	known := power.Model.KnownSigma()
-	quantile := criticalValue(confidence, power.Nu, known)
-	scale := 1.0
-	if !known {
-		scale = power.RSS / float64(power.Nu)
-	}
-	n, se := power.P[2], math.Sqrt(power.Cov[8])
-	e := fit.Estimate{Value: n, StdError: se}
-	// The signed root is nearly a line in n: it is followed by secants inside a
-	// bracket.
-	root := func(n float64) float64 { return math.Sqrt(math.Max(0, rss(n)-power.RSS) / scale) }
-	end := func(way float64) (float64, bool) {
-		step := quantile * se
-		in, rIn, out, rOut := 0.0, 0.0, step, root(n+way*step)
-		for k := 0; rOut < quantile; k++ {
-			if k == 20 {
-				return math.Inf(int(way)), false
-			}
-			in, rIn, out = out, rOut, 2*out
-			rOut = root(n + way*out)
-		}
-		for range 60 {
-			if math.IsInf(rOut, 0) || math.IsNaN(rOut) || out-in < 1e-10*out {
-				break
-			}
-			at := in + (out-in)*(quantile-rIn)/(rOut-rIn)
-			at = math.Min(math.Max(at, in+0.02*(out-in)), out-0.02*(out-in))
-			r := root(n + way*at)
-			if math.Abs(r-quantile) < 1e-10*quantile {
-				in, out = at, at
-				break
-			}
-			if r < quantile {
-				in, rIn = at, r
-			} else {
-				out, rOut = at, r
-			}
-		}
-		return n + way*(in+out)/2, true
-	}
-	var below, above bool
-	e.Lower, below = end(-1)
-	e.Upper, above = end(1)
-	switch {
-	case !below && !above:
-		e.Open = fit.OpenBoth
-	case !below:
-		e.Open = fit.OpenLower
-	case !above:
-		e.Open = fit.OpenUpper
-	}
-	return e
-}
-
 // sourceScatter is what lies between the sources: the variance of their offsets, of
 // which there are so many.
 type sourceScatter struct {

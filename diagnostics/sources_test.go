@@ -301,6 +301,7 @@ func TestWhatOffsetsChange(t *testing.T) {
 	}{
 		{"an offset that bends the plot", laboratories(overlap, []float64{1, 0.8, 1}, 6, 0, 0.02, 2), "between-source-offset", "Taken as one, the 3 sources look curved: that is an offset between them.", false},
 		{"curvature that offsets can take up", laboratories(apart, []float64{1, 1, 1}, 4, 24, 0.02, 3), "offsets-leave-open", "with offsets allowed these data can no longer tell.", true},
+		{"n falls below half, the offsets are not significant", laboratories(apart, []float64{1, 1, 1}, 4, 16, 0.02, 15), "offsets-leave-open", "with offsets allowed these data can no longer tell.", true},
 		{"neither", laboratories(overlap, []float64{1, 1, 1}, 6, 0, 0.01, 5), "sources-compared", "", false},
 	} {
 		a := mustAssess(t, c.set, quick())
@@ -408,6 +409,42 @@ func TestJudgeAllowsForOffsets(t *testing.T) {
 			if n := testing.AllocsPerRun(20, func() { r.Refit(y, &out); j.state(y, nil, &out) }); n != 0 {
 				t.Errorf("%g allocations a resample", n)
 			}
+		}
+	}
+}
+
+// Screen and Assess test for a second barrier beside the offsets: a factor on one
+// source is no bend.
+func TestSecondBarrierBesideOffsets(t *testing.T) {
+	s := laboratories([][2]float64{{280, 310}, {305, 340}}, []float64{1, 3}, 8, 0, 0.02, 2)
+	a := mustAssess(t, s, quick())
+	sc, err := Screen(s, quick())
+	if err != nil {
+		t.Fatal(err)
+	}
+	direct := NewSecondBarrierTest(a.Sample, nil, a.Sample.Nuisance).Run()
+	reference.Close(t, "p of the test beside the column", float64(a.Curvature.SecondBarrier.PValue), float64(direct.PValue), 0)
+	if found := a.Curvature.SecondBarrier.PValue < 0.05; found || sc.SecondBarrierFound() {
+		t.Errorf("p = %g, Screen finds it: %v", a.Curvature.SecondBarrier.PValue, sc.SecondBarrierFound())
+	}
+	for i := range s.Points {
+		if s.Points[i].Source == "b" {
+			s.Points[i].K /= 3
+		}
+	}
+	b := mustAssess(t, s, quick())
+	reference.Close(t, "p", float64(a.Curvature.SecondBarrier.PValue), float64(b.Curvature.SecondBarrier.PValue), 1e-9)
+}
+
+// Bootstrap-t, which estimates the offsets anew in every resample, agrees with t.
+func TestBootstrapBesideOffsets(t *testing.T) {
+	o := DefaultOptions()
+	o.Resamples, o.Scheme = 4999, "parametric"
+	a := mustAssess(t, fourSources(), o)
+	for _, iv := range a.Bootstrap.Intervals {
+		if iv.Parameter == "n" {
+			reference.Close(t, "lower end", float64(iv.Lower), float64(a.Curvature.Exponent.Lower), 0.1)
+			reference.Close(t, "upper end", float64(iv.Upper), float64(a.Curvature.Exponent.Upper), 0.05)
 		}
 	}
 }
