@@ -90,3 +90,15 @@ func TestEnergiesBetweenPassOver(t *testing.T) {
 		t.Errorf("%+v", got)
 	}
 }
+
+// With errors in k u(ln k) is u(k)/k at the fitted k: two points on their line, k = 1
+// and 2, u(k) = 0.1 and 0.1.
+func TestEnergiesBetweenInK(t *testing.T) {
+	s, err := fit.NewSample(fit.StatedAbsolute, []float64{300, 310}, []float64{1, 2}, []float64{0.01, 0.01})
+	if err != nil {
+		t.Fatal(err)
+	}
+	got := EnergiesBetween(s, fit.Fit(s, models.Straight()), 0.95)[0].E
+	want := models.GasConstant * 300 * 310 / 10 * math.Hypot(0.1, 0.05) / 1000
+	reference.Close(t, "u", float64(got.StdError), want, 1e-7)
+}

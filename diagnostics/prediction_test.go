@@ -182,3 +182,36 @@ func BenchmarkChecks(b *testing.B) {
 		})
 	}
 }
+
+// The rule by itself: first of the ranking with half of the weight, worst of all whose
+// error is known, more than twice the straight line's.
+func TestRuleOfFirstExtrapolatesWorst(t *testing.T) {
+	nan := math.NaN()
+	for _, c := range []struct {
+		what                     string
+		first                    string
+		weight                   Real
+		power, parallel, another Real // errors at the ends; that of the straight line is 1
+		want                     bool
+	}{
+		{"worst by far", "parallel", 0.9, 1, 2.1, 0.8, true},
+		{"half of the weight is enough", "parallel", 0.5, 1, 2.1, 0.8, true},
+		{"less than half of the weight", "parallel", 0.49, 1, 2.1, 0.8, false},
+		{"twice the straight line's is not more", "parallel", 0.9, 1, 2, 0.8, false},
+		{"another is worse", "parallel", 0.9, 5, 2.1, 0.8, false},
+		{"not known of the first", "parallel", 0.9, 1, Real(nan), 0.8, false},
+		{"not known of another", "parallel", 0.9, Real(nan), 2.1, 0.8, true},
+		{"the straight line itself", "straight", 0.9, 0.1, 0.1, 0.1, false},
+	} {
+		a := &assessor{
+			ranking: []Ranked{{Curve: c.first, Status: StatusRanked, FamWeight: c.weight}},
+			prediction: &Prediction{Unit: "ln k", Curves: []CurvePrediction{
+				{Curve: "power-prefactor", Ends: c.power}, {Curve: "parallel", Ends: c.parallel},
+				{Curve: "straight", Ends: 1}, {Curve: "root-prefactor", Ends: c.another}}},
+		}
+		a.firstExtrapolates()
+		if got := len(a.findings) == 1; got != c.want {
+			t.Errorf("%s: reported %t", c.what, got)
+		}
+	}
+}
