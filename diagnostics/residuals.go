@@ -20,8 +20,9 @@ const (
 	// absoluteGain is the difference of AIC from which errors in k are proposed.
 	absoluteGain = 4
 	// absoluteHint is the p-value of the spread test above which errors in k are not
-	// tried: they make the scatter of ln k shrink as k grows.
-	absoluteHint = 0.2
+	// tried: they make the scatter of ln k shrink as k grows. Without it, AIC alone
+	// prefers them by more than 4 in 9 % of sets of six whose errors are relative.
+	absoluteHint = 0.05
 )
 
 // ResidualChecks says whether the residuals are what the error model assumes: as
@@ -148,7 +149,7 @@ func share(p Real) string {
 
 // compareAbsolute compares errors in ln k with errors in k of one size, by the
 // likelihoods that one curve reaches under both. A fit in k is dear: it is made
-// where the scatter of ln k shrinks with rising k, however weakly.
+// where the spread test sees the scatter of ln k shrink with rising k.
 func (a *assessor) compareAbsolute(r *fit.Result, c *ResidualChecks) {
 	s := a.data.sample
 	lowT, highT := s.Range()
