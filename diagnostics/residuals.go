@@ -20,8 +20,8 @@ const (
 	// absoluteGain is the difference of AIC from which errors in k are proposed.
 	absoluteGain = 4
 	// absoluteHint is the p-value of the spread test above which errors in k are not
-	// tried: they make the scatter of ln k shrink as k grows. Without it, AIC alone
-	// prefers them by more than 4 in 9 % of sets of six whose errors are relative.
+	// tried: they make the scatter of ln k shrink as k grows. Of 1000 sets of six with
+	// relative errors 3 % then hear of errors in k (9 % at 0.2), of ten 1.6 %.
 	absoluteHint = 0.05
 )
 
