@@ -70,43 +70,53 @@ and temperatures are chosen in each file before they are joined.`,
 	}
 	f := cmd.Flags()
 	addSelection(cmd, &o.read)
-	oneOf := func(value *string, name, usage string, words ...string) {
-		f.Var(&choice{value, words}, name, usage)
-		completeWith(cmd, name, words...)
-	}
+	addPool(cmd, &o.read)
+	addJudging(cmd, o)
+	f.BoolVar(&o.local, "local-energies", false, "print E between neighbouring temperatures too")
+	f.StringVar(&o.figures, "figures", "", "write the pictures into this `folder`")
+	oneOf(cmd, &o.figure.Format, "figure-format", "of the pictures (default svg)", "svg", "png", "pdf")
+	oneOf(cmd, &o.figure.Y, "y", "logarithm on the y axis (default ln)", "ln", "lg")
+	oneOf(cmd, &o.figure.X, "x", "x axis (default 1000/T)", "1000/T", "10000/T", "1/kT")
+	f.StringSliceVar(&o.expect, "expect", nil, "exit with code 5 unless the verdict is one of these `codes`")
+	a.addJSON(cmd)
+	group(f, "what is published", "local-energies")
+	group(f, "pictures", "figures", "figure-format", "y", "x")
+	group(f, "for scripts", "json", "expect")
+	completeWith(cmd, "expect", stateNames()...)
+	return cmd
+}
+
+// oneOf gives a command a flag that takes one of a few words.
+func oneOf(cmd *cobra.Command, value *string, name, usage string, words ...string) {
+	cmd.Flags().Var(&choice{value, words}, name, usage)
+	completeWith(cmd, name, words...)
+}
+
+// addJudging gives a command the flags that say how data sets are judged.
+func addJudging(cmd *cobra.Command, o *assessOptions) {
+	f := cmd.Flags()
 	d := &o.assess
-	oneOf(&o.errorModel, "error-model", "what is assumed about the errors; by default the stated uncertainties decide", words(fit.ErrorModels)...)
-	oneOf(&d.Replicates, "replicates", "how points at one temperature count", diagnostics.ReplicatesWays...)
+	oneOf(cmd, &o.errorModel, "error-model", "what is assumed about the errors; by default the stated uncertainties decide", words(fit.ErrorModels)...)
+	oneOf(cmd, &d.Replicates, "replicates", "how points at one temperature count", diagnostics.ReplicatesWays...)
 	f.Var(band{&d.PrefactorBand}, "prefactor-band", "exponents of T that a usual prefactor gives")
 	f.StringVar(&d.Tolerance, "tolerance", d.Tolerance, "`change` of E too small to matter, such as 0.5kJ/mol or 5% (default 5%, at least 0.5kJ/mol)")
 	f.Float64Var(&d.Confidence, "confidence", d.Confidence, "of every interval")
-	oneOf(&d.Criterion, "criterion", "ranks the candidates", diagnostics.Criteria...)
+	oneOf(cmd, &d.Criterion, "criterion", "ranks the candidates", diagnostics.Criteria...)
 	f.StringVar(&o.models, "models", "", "candidates: `names` of curves or forms separated by commas; +NAME adds to the defaults")
 	f.IntVar(&d.Resamples, "resamples", d.Resamples, "of the bootstrap, 0 for none")
-	oneOf(&d.Scheme, "scheme", "of the bootstrap; by default the error model decides", words(bootstrap.Schemes)...)
+	oneOf(cmd, &d.Scheme, "scheme", "of the bootstrap; by default the error model decides", words(bootstrap.Schemes)...)
 	f.StringSliceVar(&d.Intervals, "intervals", d.Intervals, "bootstrap `methods`: bootstrap-t, percentile, bca")
 	f.Uint64Var(&d.Seed, "seed", d.Seed, "of every random number")
 	f.IntVar(&d.Workers, "workers", d.Workers, "processors to use, 0 for all; does not change the result")
 	f.Var(temperature{&d.ReferenceTemperature}, "reference-temperature", "at which k is published (default 298.15K where measured, else near the middle of the data)")
-	oneOf(&d.EnergyUnit, "energy-unit", "of what is to be published", diagnostics.EnergyUnits...)
-	oneOf(&d.PublishStyle, "publish", "form of what is to be published; by default the unit of k decides", diagnostics.PublishStyles...)
-	f.BoolVar(&o.local, "local-energies", false, "print E between neighbouring temperatures too")
-	f.StringVar(&o.figures, "figures", "", "write the pictures into this `folder`")
-	oneOf(&o.figure.Format, "figure-format", "of the pictures (default svg)", "svg", "png", "pdf")
-	oneOf(&o.figure.Y, "y", "logarithm on the y axis (default ln)", "ln", "lg")
-	oneOf(&o.figure.X, "x", "x axis (default 1000/T)", "1000/T", "10000/T", "1/kT")
-	f.StringSliceVar(&o.expect, "expect", nil, "exit with code 5 unless the verdict is one of these `codes`")
-	a.addJSON(cmd)
+	oneOf(cmd, &d.EnergyUnit, "energy-unit", "of what is to be published", diagnostics.EnergyUnits...)
+	oneOf(cmd, &d.PublishStyle, "publish", "form of what is to be published; by default the unit of k decides", diagnostics.PublishStyles...)
 	group(f, "how the data are judged", "error-model", "replicates", "prefactor-band", "tolerance", "confidence", "criterion", "models")
 	group(f, "bootstrap", "resamples", "scheme", "intervals", "seed", "workers")
-	group(f, "what is published", "reference-temperature", "energy-unit", "publish", "local-energies")
-	group(f, "pictures", "figures", "figure-format", "y", "x")
-	group(f, "for scripts", "json", "expect")
+	group(f, "what is published", "reference-temperature", "energy-unit", "publish")
 	completeWith(cmd, "models", models.Names()...)
 	completeWith(cmd, "intervals", words(bootstrap.Methods)...)
-	completeWith(cmd, "expect", stateNames()...)
 	completeWith(cmd, "tolerance", "0.5kJ/mol", "1kJ/mol", "5%")
-	return cmd
 }
 
 func (a *app) runAssess(ctx context.Context, files []string, o *assessOptions) error {

@@ -43,6 +43,7 @@ and the flags on record.`,
 		ValidArgsFunction: completeFiles(-1),
 	}
 	addSelection(cmd, &o.read)
+	addPool(cmd, &o.read)
 	cmd.Flags().StringVar(&o.tidy, "tidy", "", "write the rows as understood to this `file`, under canonical headings")
 	a.addJSON(cmd)
 	return cmd

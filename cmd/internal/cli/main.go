@@ -170,7 +170,7 @@ publish and with what uncertainty.`,
 	root.PersistentFlags().BoolVar(&a.quiet, "quiet", false, "no progress and no warnings on stderr")
 	root.PersistentFlags().Var(&choice{&a.colour, []string{"auto", "always", "never"}}, "color", "colour in text")
 	completeWith(root, "color", "auto", "always", "never")
-	root.AddCommand(newAssess(a), newInspect(a), newModels(a), newExplain(a), newSchema(a), newCompletion(a), newVersion(a))
+	root.AddCommand(newAssess(a), newInspect(a), newModels(a), newExplain(a), newSurvey(a), newSchema(a), newCompletion(a), newVersion(a))
 	root.SetHelpCommand(newHelp())
 	return root
 }

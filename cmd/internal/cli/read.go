@@ -46,12 +46,17 @@ func addSelection(cmd *cobra.Command, o *reading) {
 	f.Var(places{&o.leaveOut}, "leave-out", "leave out these `lines`; FILE:LINE where several files are named")
 	f.Var(temperature{&o.TMin}, "t-min", "leave out rows below this temperature, such as 195K or 25degC")
 	f.Var(temperature{&o.TMax}, "t-max", "leave out rows above this temperature")
-	f.BoolVar(&o.pool, "pool", false, "join the files into one data set; a row without a source has the name of its file")
 	group(f, "how the file is read", "sheet", "column", "assume", "decimal")
-	group(f, "which rows are used", selectionFlags...)
+	group(f, "which rows are used", "dataset", "dataset-by", "where", "leave-out", "t-min", "t-max")
 	completeWith(cmd, "decimal", "comma", "point")
 	completeWith(cmd, "column", "temperature=", "k=", "source=", "dataset=", "order=")
 	completeWith(cmd, "assume", "T=K", "T=degC", "T=degF", "log=lg", "log=ln", "k=rate", "error=1", "error=2", "error=sd,n=3")
+}
+
+// addPool gives a command the flag that joins files.
+func addPool(cmd *cobra.Command, o *reading) {
+	cmd.Flags().BoolVar(&o.pool, "pool", false, "join the files into one data set; a row without a source has the name of its file")
+	group(cmd.Flags(), "which rows are used", "pool")
 }
 
 // selectionFlags are those that leave rows out.

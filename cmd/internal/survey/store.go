@@ -87,12 +87,15 @@ type Store struct {
 
 	mu   sync.Mutex
 	done map[Key]Content // loaded by Done; nil before
+	bad  map[Key]string  // error codes of those that failed, likewise
 	pack *flate.Writer
 	buf  bytes.Buffer
 }
 
 // ErrNoStore is the error of a file that is no store.
 var ErrNoStore = errors.New("not a store of a survey")
+
+var errKeyLength = errors.New("a key has a wrong length: the file is damaged")
 
 // SettingsError refuses a store that was made with other settings.
 type SettingsError struct {
@@ -199,9 +202,8 @@ func isReadOnly(err error) bool {
 	return errors.As(err, &e) && (e.Code()&0xff == sqlite3.SQLITE_READONLY || e.Code()&0xff == sqlite3.SQLITE_CANTOPEN)
 }
 
-// open connects to the file and checks that it is a store, or empty.
-func open(path, mode string) (*Store, error) {
-	s := &Store{path: path}
+// address is how SQLite is told to open a file: mode is ro, rw or rwc.
+func address(path, mode string) (*url.URL, error) {
 	abs, err := filepath.Abs(path)
 	if err != nil {
 		return nil, fmt.Errorf("survey: %w", err)
@@ -213,9 +215,18 @@ func open(path, mode string) (*Store, error) {
 	if !strings.HasPrefix(abs, "/") {
 		abs = "/" + abs // C:/…
 	}
-	u := url.URL{Scheme: "file", Path: abs}
+	return &url.URL{Scheme: "file", Path: abs, RawQuery: "mode=" + mode}, nil
+}
+
+// open connects to the file and checks that it is a store, or empty.
+func open(path, mode string) (*Store, error) {
+	s := &Store{path: path}
+	u, err := address(path, mode)
+	if err != nil {
+		return nil, err
+	}
 	// Two surveys may write to one store: each waits for the other's transaction.
-	u.RawQuery = "mode=" + mode + "&_txlock=immediate&_pragma=busy_timeout(60000)&_pragma=synchronous(NORMAL)&_pragma=foreign_keys(0)"
+	u.RawQuery += "&_txlock=immediate&_pragma=busy_timeout(60000)&_pragma=synchronous(NORMAL)&_pragma=foreign_keys(0)"
 	if s.db, err = sql.Open("sqlite", u.String()); err != nil {
 		return nil, fmt.Errorf("survey: %w", err)
 	}
@@ -360,26 +371,37 @@ func (s *Store) loadDone() error {
 		return s.explain(err)
 	}
 	done := make(map[Key]Content, n)
-	rows, err := s.db.Query("SELECT key, content FROM sets WHERE settings = ?", s.id)
+	bad := map[Key]string{}
+	rows, err := s.db.Query("SELECT key, content, error_code FROM sets WHERE settings = ?", s.id)
 	if err != nil {
 		return s.explain(err)
 	}
 	defer rows.Close()
-	var key, content sql.RawBytes
+	var key, content, code sql.RawBytes
 	for rows.Next() {
-		if err := rows.Scan(&key, &content); err != nil {
+		if err := rows.Scan(&key, &content, &code); err != nil {
 			return s.explain(err)
 		}
 		if len(key) != len(Key{}) || len(content) != len(Content{}) {
-			return s.explain(errors.New("a key has a wrong length: the file is damaged"))
+			return s.explain(errKeyLength)
 		}
 		done[Key(key)] = Content(content)
+		if len(code) > 0 {
+			bad[Key(key)] = string(code)
+		}
 	}
 	if err := rows.Err(); err != nil {
 		return s.explain(err)
 	}
-	s.done = done
+	s.done, s.bad = done, bad
 	return nil
+}
+
+// failed is the error code that the store has for a data set, "" if none.
+func (s *Store) failed(key Key) string {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return s.bad[key]
 }
 
 // put is the statement that writes a row. One that is there is replaced and keeps its
@@ -443,7 +465,11 @@ func (s *Store) Put(entries []Entry) error {
 	}
 	if s.done != nil {
 		for i := range entries {
-			s.done[entries[i].Key] = entries[i].Content
+			e := &entries[i]
+			s.done[e.Key] = e.Content
+			if delete(s.bad, e.Key); e.Row.ErrorCode != "" {
+				s.bad[e.Key] = e.Row.ErrorCode
+			}
 		}
 	}
 	return nil
@@ -533,7 +559,7 @@ func (s *Store) query(ctx context.Context, documents bool, rest string, fn func(
 			return s.explain(err)
 		}
 		if len(key) != len(Key{}) || len(content) != len(Content{}) {
-			return s.explain(errors.New("a key has a wrong length: the file is damaged"))
+			return s.explain(errKeyLength)
 		}
 		e.Key, e.Content = Key(key), Content(content)
 		if packed != nil {
@@ -703,4 +729,40 @@ func (o orUnknown[T]) Scan(src any) error {
 		return fmt.Errorf("%v is not a number", src)
 	}
 	return nil
+}
+
+// without lists the data sets of some files that are not among those seen.
+func (s *Store) without(seen map[Key]bool, files map[string]bool) ([]Key, error) {
+	s.mu.Lock()
+	err := s.loadDone()
+	var odd map[Key]bool
+	for k := range s.done {
+		if !seen[k] {
+			if odd == nil {
+				odd = map[Key]bool{}
+			}
+			odd[k] = true
+		}
+	}
+	s.mu.Unlock()
+	if err != nil || odd == nil {
+		return nil, err
+	}
+	rows, err := s.db.Query("SELECT key, source_file FROM sets WHERE settings = ?", s.id)
+	if err != nil {
+		return nil, s.explain(err)
+	}
+	defer rows.Close()
+	var stale []Key
+	for rows.Next() {
+		var key []byte
+		var file string
+		if err := rows.Scan(&key, &file); err != nil {
+			return nil, s.explain(err)
+		}
+		if len(key) == len(Key{}) && odd[Key(key)] && files[file] {
+			stale = append(stale, Key(key))
+		}
+	}
+	return stale, s.explain(rows.Err())
 }

@@ -1,0 +1,100 @@
+package cli
+
+import (
+	"bytes"
+	"encoding/json"
+	"fmt"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"onebarrier/cmd/internal/report"
+	"onebarrier/cmd/internal/survey"
+	"onebarrier/diagnostics"
+	"onebarrier/models/dataset"
+)
+
+func newSurveyShow(a *app) *cobra.Command {
+	o := &storeFlags{}
+	file := ""
+	cmd := &cobra.Command{
+		Use:   "show NAME",
+		Short: "Print the assessment of one data set of a survey",
+		Long: `show prints what assess prints for one data set, from the store. NAME is the name of
+the data set or its set_id in the table; --file tells sets of one name apart.`,
+		Example: `  onebarrier survey show 'reaction 7' --store results.sqlite
+  onebarrier survey show rates --store results.sqlite --json`,
+		Args: exactly(1, "NAME"),
+		RunE: func(cmd *cobra.Command, args []string) error {
+			return a.showSet(cmd, o, args[0], file)
+		},
+	}
+	addStore(cmd, o, true)
+	cmd.Flags().StringVar(&file, "file", "", "the data set of this source `file`")
+	a.addJSON(cmd)
+	return cmd
+}
+
+func (a *app) showSet(cmd *cobra.Command, o *storeFlags, name, file string) error {
+	s, err := o.open(cmd)
+	if err != nil {
+		return err
+	}
+	defer s.Close()
+	found, err := s.Find(cmd.Context(), name)
+	if err != nil {
+		return err
+	}
+	var rows []survey.Row
+	for _, r := range found {
+		if file == "" || r.SourceFile == file {
+			rows = append(rows, r)
+		}
+	}
+	problem := dataset.Problem{Code: "dataset-unknown", File: o.path}
+	switch {
+	case len(rows) == 0:
+		problem.Message, problem.Cure = fmt.Sprintf("there is no data set %q", name), "survey table lists them"
+		return dataset.Problems{problem}
+	case len(rows) > 1:
+		var all []string
+		for i, r := range rows {
+			if i == 5 {
+				all = append(all, fmt.Sprintf("and %d more", len(rows)-5))
+				break
+			}
+			place := r.SourceFile
+			if r.Sheet != "" {
+				place += "[" + r.Sheet + "]"
+			}
+			all = append(all, fmt.Sprintf("%s in %s", r.SetID, place))
+		}
+		problem.Code, problem.Message, problem.Cure = "several-datasets", fmt.Sprintf("%d data sets have this name: %s", len(rows), strings.Join(all, ", ")), "give the id of one, or --file"
+		return dataset.Problems{problem}
+	}
+	row := rows[0]
+	if row.ErrorCode != "" {
+		p := dataset.Problem{Code: row.ErrorCode, File: row.SourceFile, Sheet: row.Sheet, Message: row.Error}
+		if row.ErrorRow > 0 {
+			p.Row = row.ErrorRow
+		}
+		return dataset.Problems{p}
+	}
+	document, err := s.Assessment(row.SetID)
+	if err != nil {
+		return err
+	}
+	if a.json {
+		var b bytes.Buffer
+		if err := json.Indent(&b, document, "", "  "); err != nil {
+			return err
+		}
+		_, err := a.out.Write(b.Bytes())
+		return err
+	}
+	var result diagnostics.Assessment
+	if err := json.Unmarshal(document, &result); err != nil {
+		return err
+	}
+	return report.WriteAssessment(a.out, &result, nil, a.text())
+}
