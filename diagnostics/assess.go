@@ -37,6 +37,10 @@ func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, er
 	a.predict()
 	a.checkResiduals()
 	a.compareSources()
+	a.influences()
+	a.temperatureErrors()
+	a.runOrder()
+	a.rateMaximum()
 	if err := a.resample(ctx); err != nil {
 		return nil, err
 	}
@@ -72,6 +76,9 @@ type assessor struct {
 	rule          Rule
 	verdict       Verdict
 	between       *BetweenSources
+	influence     []Influence
+	temperature   []TemperatureError
+	order         *RunOrder
 	tEff          float64
 
 	prediction *Prediction

@@ -117,11 +117,15 @@ type Assessment struct {
 	Curvature Curvature   `json:"curvature"`
 	// BetweenSources compares the sources of the data; nil where there is one.
 	BetweenSources *BetweenSources `json:"between_sources"`
-	Ranking        []Ranked        `json:"ranking"` // best first
-	AtReference    AtReference     `json:"at_reference"`
-	Publish        Publish         `json:"publish"`
-	Bootstrap      *Resampling     `json:"bootstrap"` // nil with --resamples 0
-	Findings       []Finding       `json:"findings"`
+	// Influence is what the verdict would be without each temperature and point.
+	Influence        []Influence        `json:"influence"`
+	TemperatureError []TemperatureError `json:"temperature_error"`
+	RunOrder         *RunOrder          `json:"run_order"` // nil without an order of runs
+	Ranking          []Ranked           `json:"ranking"`   // best first
+	AtReference      AtReference        `json:"at_reference"`
+	Publish          Publish            `json:"publish"`
+	Bootstrap        *Resampling        `json:"bootstrap"` // nil with --resamples 0
+	Findings         []Finding          `json:"findings"`
 
 	// LocalEnergies lie between neighbouring temperatures, coldest first.
 	LocalEnergies []EnergyBetween `json:"local_energies"`
@@ -155,6 +159,7 @@ type Settings struct {
 	PrefactorBand        [2]float64     `json:"prefactor_band"`
 	ToleranceKJ          Real           `json:"tolerance_kj_per_mol"` // as applied
 	Tolerance            string         `json:"tolerance"`            // as asked for
+	ThermometerError     string         `json:"thermometer_error"`    // as asked for
 	Models               []string       `json:"models"`
 	ReferenceTemperature float64        `json:"reference_temperature_k"`
 	EnergyUnit           string         `json:"energy_unit"`

@@ -163,8 +163,42 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "borderline", Title: "borderline", Severity: Info,
-		Explanation: "The p-value of the exponent test lies between 0.01 and 0.1: leaving out almost any point can change the verdict, and a repeat of the experiment gives the other verdict about as often.",
+		Explanation: "The p-value of the exponent test lies between 0.01 and 0.1, and the verdict changes when one temperature is left out, which one hardly matters. That is what chance does near p = 0.05: a repeat of the experiment gives the other verdict about as often. A point that the verdict truly hangs on is named as deciding.",
 		Cure:        "repeat the measurement, or add temperatures at both ends of the range",
+	},
+	{
+		Code: "deciding-point", Title: "the verdict hangs on one temperature or point", Severity: Warning,
+		Explanation: "The verdict is curved, is not without this temperature or point, and without it the exponent n shrinks to less than half or turns its sign. Flips that leave n much as it was are noise and are not named. In straight data that came out curved by chance such a point is found in 2 to 23 % of sets; where a bad point at the hot end, off by eight standard deviations, bends straight data, in 73 to 96 % of sets of twelve temperatures or more, in 37 to 80 % of eight, and seldom in six or fewer, which leave too little to tell (simulated). The second-barrier test is not repeated.",
+		Cure:        "measure there again; a verdict that one point makes is no finding about the reaction",
+		Reference:   "R. D. Cook, S. Weisberg, Residuals and Influence in Regression (1982)",
+	},
+	{
+		Code: "outlier", Title: "a point far from the curve through the others", Severity: Warning,
+		Explanation: "The studentised residual from the power-prefactor curve, with the scatter of the other points, is larger than chance makes the largest of so many (p < 0.05 after Bonferroni). Every straight line with a usual prefactor is such a curve, so that smooth curvature makes no outlier. With errors in k the test is approximate.",
+		Cure:        "look the measurement up; leave it out with --leave-out only for a reason other than this number",
+		Reference:   "R. D. Cook, S. Weisberg, Residuals and Influence in Regression (1982), section 2.2",
+	},
+	{
+		Code: "temperature-error-explains", Title: "a working thermometer could fake this", Severity: Warning,
+		Explanation: "An error of the recorded temperatures smaller than what a working thermometer may be wrong by would take the verdict away. Three shapes are tried: an offset (the same everywhere), a gain (0 at the lowest, largest at the highest temperature) and a bow (0 at both ends, largest in the middle). Granted are 0.5 K, 0.5 K and 0.1 K, or the largest u(T) where every point has one. A bow is what most resembles curvature: over a narrow range a few tenths of a kelvin explain nearly every curve, an offset none.",
+		Cure:        "calibrate the thermometer in the middle and at both ends of the range, and say what it may be wrong by: --thermometer-error bow=0.02K",
+	},
+	{
+		Code: "order-follows-temperature", Title: "the order of the runs follows T", Severity: Warning,
+		Explanation: "The temperatures were measured nearly in their order, up or down (rank correlation of 0.9 or more). Whatever drifts in an experiment, such as a catalyst, a lamp or a solution that ages, then drifts with T: it changes E, or bends the plot, and the residuals cannot show it.",
+		Cure:        "measure in random order, or come back to the first temperature at the end",
+	},
+	{
+		Code: "drift-with-order", Title: "residuals drift with the order of the runs", Severity: Warning,
+		Explanation: "The residuals from the power-prefactor curve rise or fall with the order in which the points were measured (Spearman's rank correlation, p < 0.05, exact up to nine points without ties; residuals of few points are not quite free of each other, which the p-value leaves out). Something changed in the course of the experiment.",
+		Cure:        "look for what ages or warms up; measure in random order, so that a drift becomes scatter",
+		Reference:   "C. Spearman, Am. J. Psychol. 15 (1904) 72",
+	},
+	{
+		Code: "rate-maximum", Title: "k falls again above an optimum", Severity: Warning,
+		Explanation: "The rate constant rises to a temperature inside the range and falls above it, both by more than the scatter (1 % each, allowing for the choice of the place). No barrier and no sum of barriers does that, nor a prefactor: something is lost or reversed at the hot end, such as an enzyme that unfolds, a catalyst that sinters, or an equilibrium before the slow step. One E for the whole range has no meaning.",
+		Cure:        "assess the rising part with --t-max, or add a curve with a maximum: --models +reversible-inactivation",
+		Reference:   "P. J. H. Sharpe, D. W. DeMichele, J. Theor. Biol. 64 (1977) 649",
 	},
 	{
 		Code: "exponent-not-a-prefactor", Title: "n is no prefactor", Severity: Warning,

@@ -113,7 +113,7 @@ func TestDecideFindings(t *testing.T) {
 	in.Test.PValue = 0.03
 	in.Test.Exponent.Value = 4
 	got = codes()
-	if got["band-narrow-for-gas-phase"] || got["exponent-not-a-prefactor"] || !got["borderline"] {
+	if got["band-narrow-for-gas-phase"] || got["exponent-not-a-prefactor"] {
 		t.Errorf("%v", got)
 	}
 }

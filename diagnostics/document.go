@@ -32,11 +32,12 @@ func (a *assessor) assessment() *Assessment {
 		Verdict:        a.verdict,
 		Curvature:      a.curvature(),
 		BetweenSources: a.between,
-		Ranking:        a.ranking,
-		Bootstrap:      a.resampling,
-		Sample:         s,
-		Fits:           map[string]*fit.Result{},
-		ChangeOfE:      a.changes,
+		Influence:      append([]Influence{}, a.influence...), TemperatureError: append([]TemperatureError{}, a.temperature...), RunOrder: a.order,
+		Ranking:   a.ranking,
+		Bootstrap: a.resampling,
+		Sample:    s,
+		Fits:      map[string]*fit.Result{},
+		ChangeOfE: a.changes,
 	}
 	for _, c := range a.set.Columns {
 		doc.Columns = append(doc.Columns, Column{c.File, c.Heading, c.Role, c.Unit, Real(c.Factor), c.Level})
@@ -77,6 +78,7 @@ func (a *assessor) settings() Settings {
 		Confidence: a.opt.Confidence, ErrorModel: a.model, ErrorModelWhy: a.modelWhy,
 		Replicates: a.opt.Replicates, Criterion: a.opt.Criterion, PrefactorBand: a.opt.PrefactorBand,
 		ToleranceKJ: Real(a.rule.ToleranceKJ), Tolerance: cmp.Or(a.opt.Tolerance, defaultTolerance), Models: names,
+		ThermometerError:     cmp.Or(a.opt.ThermometerError, defaultThermometerError),
 		ReferenceTemperature: a.referenceTemperature(),
 		EnergyUnit:           a.opt.EnergyUnit, PublishStyle: a.publishStyle(),
 		Assumed: orEmpty(a.set.Assumed), Selection: orEmpty(a.opt.Selection),

@@ -140,11 +140,6 @@ func pText(p float64) string {
 	return fmt.Sprintf("%.2g", p)
 }
 
-func borderline(p float64) Finding {
-	return newFinding("borderline",
-		fmt.Sprintf("p = %s is near 0.05: leaving out almost any point can change the verdict", pText(p)), nil, map[string]Real{"p_value": Real(p)})
-}
-
 func notAPrefactor(n float64, change string) Finding {
 	return newFinding("exponent-not-a-prefactor",
 		fmt.Sprintf("n = %s is no prefactor: read ΔE = %s or ΔC_p‡", number(n, 1), change),

@@ -22,6 +22,10 @@ type Options struct {
 	// Tolerance is the |ΔE| too small to matter: "5%" of the straight fit's |E|,
 	// or "0.5kJ/mol"; default "" is 5 %, at least 0.5 kJ/mol.
 	Tolerance string
+	// ThermometerError is what the thermometer may be wrong by, of each shape, such as
+	// "offset=0.5K,gain=0.5K,bow=0.1K"; "" takes the largest u(T) where every used
+	// point has one, else that default.
+	ThermometerError string
 	// Confidence of every interval; default 0.95.
 	Confidence float64
 	// Criterion that ranks: aicc (default), aic or bic.
@@ -107,6 +111,9 @@ func (o *Options) Check() error {
 		}
 	}
 	if _, err := ParseTolerance(o.Tolerance); err != nil {
+		return err
+	}
+	if _, err := ParseThermometerError(o.ThermometerError); err != nil {
 		return err
 	}
 	for _, err := range []error{

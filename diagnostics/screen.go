@@ -1,6 +1,8 @@
 package diagnostics
 
 import (
+	"slices"
+
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 )
@@ -68,4 +70,9 @@ func (s *Screening) SecondBarrierFound() bool {
 		s.found = &found
 	}
 	return *s.found
+}
+
+// Deciding reports whether the verdict hangs on a single temperature or point.
+func (s *Screening) Deciding() bool {
+	return slices.ContainsFunc(s.a.leaveOneOut(s.Judged, false), func(f Influence) bool { return f.Deciding })
 }

@@ -223,7 +223,6 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	}
 	t := in.Test
 	add(v.State.Curved() && in.restsOnStated(), func() Finding { return restsOnStated(t.PValue, t.PScaleFree) })
-	add(!in.Untestable && t.PValue >= 0.01 && t.PValue <= 0.1, func() Finding { return borderline(t.PValue) })
 	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding { return notAPrefactor(t.Exponent.Value, in.signedEnergy(t.Change.Value)) })
 	add(in.PerMolecule && !in.Untestable && in.Rule.Band[1] < 3, func() Finding { return bandNarrow(in.Rule.Band) })
 	if b := in.SecondBarrier; b.found() {

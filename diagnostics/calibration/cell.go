@@ -31,6 +31,9 @@ const (
 	middleLnK     = -7
 )
 
+// badHot is how far a bad point is off, in standard deviations.
+const badHot = 8
+
 // Range is a range of temperatures in K.
 type Range struct{ Low, High float64 }
 
@@ -84,6 +87,7 @@ const (
 	Gaussian Shape = iota
 	Student3       // Student's t with 3 degrees of freedom
 	Outliers       // Gaussian; one point in twenty is off by a log-normal factor of 5 σ more
+	BadHot         // Gaussian; the hottest point reads 8 σ too high, whatever its own error
 )
 
 // deviate draws one error of unit standard deviation.
@@ -238,6 +242,9 @@ func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 			shared = sd * rng.NormFloat64()
 		}
 		for range c.Repeats.at(i) {
+			if c.Shape == BadHot && i == c.N-1 {
+				shared = badHot * sd
+			}
 			p := dataset.Point{Row: len(set.Points) + 2, T: t, Order: math.NaN(), Used: true}
 			if c.Absolute {
 				p.K = math.Exp(lnK) + absoluteNoise*math.Exp(middle)*c.Shape.deviate(rng)

@@ -30,6 +30,8 @@ const (
 	SecondBarrier              // the second-barrier test has p < 0.05
 	Either                     // a curved verdict or the second-barrier finding
 	Pointwise                  // p < 0.05 on single points, where the verdict uses means
+	DecidingNear               // a deciding point is named, where the verdict is curved and p from 0.01
+	Deciding                   // the same where a bad hot point alone made the verdict curved
 	WaldCurved                 // n = 0 outside the Wald interval, where the profile is used
 
 	BestAIC  // a curved family has the lowest AIC
@@ -70,6 +72,8 @@ var eventNames = [events]string{
 	SecondBarrier:    "second-barrier finding",
 	Either:           "curved or second-barrier finding",
 	Pointwise:        "curved on single points",
+	DecidingNear:     "deciding point, of borderline curved verdicts",
+	Deciding:         "deciding point, of those bent by one",
 	WaldCurved:       "curved by the Wald interval",
 	BestAIC:          "curved by AIC",
 	BestAICc:         "curved by AICc",
@@ -243,6 +247,20 @@ func (c Cell) one(ctx context.Context, seed uint64, i int, designs *diagnostics.
 	n.record(Curved, curved)
 	n.record(Beyond, s.Judged == diagnostics.BeyondPrefactor)
 	n.record(Rescaled, s.ErrorModel == fit.Scaled)
+	if p := s.Exponent.PValue; curved && s.Power.Nu > 1 { // else nothing can be left out
+		if p >= 0.01 && p <= 0.1 {
+			n.measure(DecidingNear, s.Deciding)
+		}
+		if c.Shape == BadHot && n.wants(Deciding) {
+			bent, err := c.bentByBadPoint(set, opt)
+			if err != nil {
+				return err
+			}
+			if bent {
+				n.measure(Deciding, s.Deciding)
+			}
+		}
+	}
 	if s.Pointwise != nil {
 		n.record(Pointwise, s.Pointwise.PValue < 0.05)
 	}
@@ -257,6 +275,16 @@ func (c Cell) one(ctx context.Context, seed uint64, i int, designs *diagnostics.
 		return c.resample(ctx, s, uint64(i), n)
 	}
 	return nil
+}
+
+// bentByBadPoint reports whether a curved data set is not curved without the error of
+// its bad hot point.
+func (c Cell) bentByBadPoint(set *dataset.Set, opt diagnostics.Options) (bool, error) {
+	good := *set
+	good.Points = slices.Clone(set.Points)
+	good.Points[len(good.Points)-1].K *= math.Exp(-badHot * relativeNoise)
+	s, err := diagnostics.Screen(&good, opt)
+	return err == nil && !s.Judged.Curved(), err
 }
 
 // first counts what criteria alone would have preferred.

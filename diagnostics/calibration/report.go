@@ -12,9 +12,17 @@ import (
 // those that can are no fair sample.
 const fewest = 0.2
 
-// unknown reports whether a figure cannot be stated.
-func (f Figure) unknown(sets int) bool {
-	return math.IsNaN(f.Value) || float64(f.Trials) < fewest*float64(sets)
+// leastTrials is the least number of data sets behind a figure that is a share of few by
+// its nature.
+const leastTrials = 30
+
+// unknown reports whether figure i of a row cannot be stated.
+func (r *Row) unknown(i int) bool {
+	f, least := r.Figures[i], fewest*float64(r.jobs[i].counts.Sets)
+	if r.part {
+		least = leastTrials
+	}
+	return math.IsNaN(f.Value) || float64(f.Trials) < least
 }
 
 // percent prints a figure in per cent with its standard error.
@@ -52,7 +60,7 @@ func (r *Row) outcome() (word, detail string) {
 	var high, se, beyond float64
 	low := math.Inf(1)
 	for i, f := range r.Figures {
-		if f.unknown(r.jobs[i].counts.Sets) {
+		if r.unknown(i) {
 			continue
 		}
 		low, high, se = math.Min(low, 100*f.Value), math.Max(high, 100*f.Value), math.Max(se, 100*f.SE)
@@ -85,7 +93,7 @@ func (s *Study) Write(w io.Writer) (ok bool, err error) {
 		for _, r := range sec.Rows {
 			fmt.Fprintf(b, "| %s |", r.Label)
 			for i, f := range r.Figures {
-				if f.unknown(r.jobs[i].counts.Sets) {
+				if r.unknown(i) {
 					fmt.Fprint(b, " – |")
 					continue
 				}

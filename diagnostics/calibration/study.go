@@ -21,12 +21,17 @@ var (
 	targetStated  = &Target{0, 5.5}
 	targetInK     = &Target{0, 6}
 	targetBeyond  = &Target{0, 5}
+	fewNamed      = &Target{0, 25}
+	mostNamed     = &Target{60, 100}
 	resampleCount = 999
 )
 
 func (t Target) String() string {
-	if t.Low == 0 {
+	switch {
+	case t.Low == 0:
 		return fmt.Sprintf("≤ %g", t.High)
+	case t.High == 100:
+		return fmt.Sprintf("≥ %g", t.Low)
 	}
 	return fmt.Sprintf("%g ± %g", (t.Low+t.High)/2, (t.High-t.Low)/2)
 }
@@ -39,6 +44,7 @@ type Row struct {
 
 	jobs  []*job
 	value func(*Counts) Figure
+	part  bool // a share of few data sets by its nature
 }
 
 // Section is one table of the study.
@@ -68,6 +74,7 @@ func New() *Study {
 	s.falseAlarms()
 	s.limits()
 	s.detection()
+	s.deciding()
 	s.repeats()
 	s.sources()
 	s.beyond()
@@ -116,6 +123,12 @@ func (s *Study) custom(label string, c Cell, share int, target *Target, e Event,
 	}
 	last := s.Sections[len(s.Sections)-1]
 	last.Rows = append(last.Rows, r)
+}
+
+// last is the row added last.
+func (s *Study) last() *Row {
+	rows := s.Sections[len(s.Sections)-1].Rows
+	return rows[len(rows)-1]
 }
 
 // Sets of the dearer cells, as divisors of those of the study.
@@ -188,6 +201,35 @@ func (s *Study) detection() {
 			c.Limits, c.Lean = v.taken, true
 			s.row(v.name+", "+r.String(), c, someForPower, Curved, nil)
 		}
+	}
+}
+
+func (s *Study) deciding() {
+	s.section("Deciding points",
+		"Error model relative; share of data sets for which a deciding point is named, in per cent: of those with one barrier that came out curved by chance with p from 0.01, and of those that are curved because the hottest point reads eight standard deviations too high. With few temperatures, and over a wide range, such a point seldom bends the plot, and where it does too little is left without it to tell.")
+	for _, r := range ranges {
+		s.row("one barrier, curved by chance, "+r.String(), relative(r), all, DecidingNear, fewNamed)
+		s.last().part = true
+		bad := relative(r)
+		bad.Shape, bad.Lean = BadHot, true
+		enough := 8
+		if r == Wide {
+			enough = 12
+		}
+		for _, v := range []struct {
+			name   string
+			few    bool
+			target *Target
+		}{{"N ≥", false, mostNamed}, {"N <", true, nil}} {
+			s.custom(fmt.Sprintf("bent by one bad hot point, %s %d, %s", v.name, enough, r), bad, all, v.target, Deciding, func(n *Counts) Figure {
+				if v.few != (n.N < enough) {
+					return rate(0, 0)
+				}
+				return n.Rate(Deciding)
+			})
+			s.last().part = true
+		}
+		s.row("— curved verdicts with that point, "+r.String(), bad, all, Curved, nil)
 	}
 }
 

@@ -100,6 +100,7 @@ func addJudging(cmd *cobra.Command, o *assessOptions) {
 	oneOf(cmd, &d.Replicates, "replicates", "how points at one temperature count", diagnostics.ReplicatesWays...)
 	f.Var(band{&d.PrefactorBand}, "prefactor-band", "exponents of T that a usual prefactor gives")
 	f.StringVar(&d.Tolerance, "tolerance", d.Tolerance, "`change` of E too small to matter, such as 0.5kJ/mol or 5% (default 5%, at least 0.5kJ/mol)")
+	f.StringVar(&d.ThermometerError, "thermometer-error", d.ThermometerError, "what the thermometer may be wrong by, by `shape` (default u(T), or offset=0.5K,gain=0.5K,bow=0.1K)")
 	f.Float64Var(&d.Confidence, "confidence", d.Confidence, "of every interval")
 	oneOf(cmd, &d.Criterion, "criterion", "ranks the candidates", diagnostics.Criteria...)
 	f.StringVar(&o.models, "models", "", "candidates: `names` of curves or forms separated by commas; +NAME adds to the defaults")
@@ -111,11 +112,12 @@ func addJudging(cmd *cobra.Command, o *assessOptions) {
 	f.Var(temperature{&d.ReferenceTemperature}, "reference-temperature", "at which k is published (default 298.15K where measured, else near the middle of the data)")
 	oneOf(cmd, &d.EnergyUnit, "energy-unit", "of what is to be published", diagnostics.EnergyUnits...)
 	oneOf(cmd, &d.PublishStyle, "publish", "form of what is to be published; by default the unit of k decides", diagnostics.PublishStyles...)
-	group(f, "how the data are judged", "error-model", "replicates", "prefactor-band", "tolerance", "confidence", "criterion", "models")
+	group(f, "how the data are judged", "error-model", "replicates", "prefactor-band", "tolerance", "thermometer-error", "confidence", "criterion", "models")
 	group(f, "bootstrap", "resamples", "scheme", "intervals", "seed", "workers")
 	group(f, "what is published", "reference-temperature", "energy-unit", "publish")
 	completeWith(cmd, "models", models.Names()...)
 	completeWith(cmd, "intervals", words(bootstrap.Methods)...)
+	completeWith(cmd, "thermometer-error", "offset=0.1K,gain=0.1K,bow=0.02K")
 	completeWith(cmd, "tolerance", "0.5kJ/mol", "1kJ/mol", "5%")
 }
 

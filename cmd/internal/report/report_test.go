@@ -46,7 +46,11 @@ func fixture() *diagnostics.Assessment {
 		Dataset: diagnostics.DatasetInfo{Name: "made up", Files: []string{"made up.csv"}, SHA256: strings.Repeat("0a", 32), Points: 9, Used: 8,
 			Temperatures: 7, TMin: 283.15, TMax: 338.15, TEff: 308.7, Quantity: diagnostics.Quantity{Symbol: "k_obs", Unit: "s^-1", DimensionKnown: true},
 			Sources: []string{"Lab1"}, Limits: 1},
-		Columns: []diagnostics.Column{{Heading: "t/°C", Role: "temperature", Unit: "°C", Factor: 1}},
+		Influence: []diagnostics.Influence{{LeftOut: "temperature", Rows: []int{2}, T: 283.15, Leverage: 0.4, Cook: 0.1, Studentised: nan, OutlierP: nan,
+			Exponent: 3, StdError: 2, PValue: 0.2, State: diagnostics.Unresolved, Deciding: true}},
+		TemperatureError: []diagnostics.TemperatureError{{Shape: "bow", Slope: 12, ToBand: nan, Lost: 0.05, Working: 0.1, Explains: true}},
+		RunOrder:         &diagnostics.RunOrder{Points: 8, Temperature: 0.1, Residual: nan, PValue: nan},
+		Columns:          []diagnostics.Column{{Heading: "t/°C", Role: "temperature", Unit: "°C", Factor: 1}},
 		Data: []diagnostics.Datum{
 			{Row: 2, T: 283.15, K: 1e-5, UK: nan, Source: "Lab1", Used: true, Residual: 0.01},
 			{Row: 3, T: 293.15, K: nan, UK: nan, Limit: "<", WhyNot: "a bound: not fitted yet", Residual: nan},

@@ -1,0 +1,696 @@
+package diagnostics
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strings"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+
+	"gonum.org/v1/gonum/floats"
+)
+
+// Levels of leaving one out (METHODS §5).
+const (
+	decidingShrinks = 0.5  // |n| without the entry over |n| with it
+	outlierLevel    = 0.05 // of the largest studentised residual, after Bonferroni
+	// mostRefits is the most entries that are left out where each needs a fit of its
+	// own: with errors in k, with limits, and temperatures that sources share.
+	mostRefits = 100
+	// mostListed is the most entries that the document lists; of more, those alone
+	// that decide or are outliers.
+	mostListed = 1000
+)
+
+// What is left out.
+const (
+	leftTemperature = "temperature" // all that was measured at one temperature
+	leftMean        = "mean"        // the points of one source at a temperature of several
+	leftPoint       = "point"
+)
+
+// Influence says how much one temperature or point bears on the verdict. Leverage,
+// Cook's distance and the studentised residual are those in power-prefactor, the
+// curve of the exponent test, which holds every straight line with a usual prefactor;
+// they are unknown for what is no entry of that fit by itself.
+type Influence struct {
+	LeftOut     string `json:"left_out"` // temperature, mean or point
+	Rows        []int  `json:"rows"`
+	T           Real   `json:"t_k"`
+	Leverage    Real   `json:"leverage"`
+	Cook        Real   `json:"cook"`
+	Studentised Real   `json:"studentised"`
+	OutlierP    Real   `json:"outlier_p"` // of the studentised residual, times the number of entries
+	Exponent    Real   `json:"exponent_without"`
+	StdError    Real   `json:"exponent_without_std_error"`
+	PValue      Real   `json:"p_without"` // of n = 0
+	// State is the verdict of the exponent test alone; the second-barrier test is not
+	// repeated, and stands as it is for all the data.
+	State    State `json:"state_without"`
+	Deciding bool  `json:"deciding"`
+
+	points   []int   // of the prepared data
+	residual float64 // from the curve
+}
+
+// omission is the exponent test without something.
+type omission struct {
+	n, se, p float64
+	state    State
+	testable bool
+}
+
+// exponentRow is how n̂ of power-prefactor is made of the entries of a sample, beside
+// its nuisance columns: n̂ = Σ c_i y_i, each entry counting with its own residual.
+// With errors in k it is that of the fit linearised about its estimates.
+type exponentRow struct {
+	s        *fit.Sample
+	root     []float64 // square roots of the weights of ln k
+	c        []float64
+	leverage []float64
+	unscaled float64     // variance of n̂ in units of σ²
+	columns  [][]float64 // orthonormal: what the curve and the nuisance columns span
+
+	offset, x []float64
+	store     [][]float64
+}
+
+// newExponentRow gives the row of n̂ for the weights root_i² of ln k, nil where the
+// sample does not determine n̂.
+func newExponentRow(s *fit.Sample, root []float64) *exponentRow {
+	n := s.Len()
+	e := &exponentRow{s: s, root: root, c: make([]float64, n), leverage: make([]float64, n),
+		offset: make([]float64, n), x: make([]float64, 3*n)}
+	for range 3 + len(s.Nuisance) {
+		e.store = append(e.store, make([]float64, n))
+	}
+	if !e.at(s.T) {
+		return nil
+	}
+	return e
+}
+
+// at makes it the row of n̂ for other temperatures t of the same entries, in K. It
+// reports whether they determine n̂.
+func (e *exponentRow) at(t []float64) bool {
+	models.PowerPrefactor{}.Columns(e.s.TRef, t, e.offset, e.x)
+	e.columns = e.columns[:0]
+	add := func(at func(i int) float64, tol float64) (added bool) {
+		v := e.store[len(e.columns)]
+		for i := range v {
+			v[i] = e.root[i] * at(i)
+		}
+		e.columns, added = extend(e.columns, v, tol)
+		return added
+	}
+	ok := add(func(int) float64 { return 1 }, 0) && add(func(i int) float64 { return e.x[3*i+1] }, 1e-10)
+	for _, z := range e.s.Nuisance {
+		ok = ok && add(func(i int) float64 { return z[i] }, 1e-10)
+	}
+	if !ok {
+		return false
+	}
+	bend := e.store[len(e.columns)]
+	for i := range bend {
+		bend[i] = e.root[i] * e.x[3*i+2]
+	}
+	before := floats.Norm(bend, 2)
+	project(e.columns, bend, nil)
+	length := floats.Norm(bend, 2)
+	if !(length > 1e-10*before) {
+		return false
+	}
+	floats.Scale(1/length, bend)
+	e.columns = append(e.columns, bend)
+	e.unscaled = 1 / (length * length)
+	for i, v := range bend {
+		e.c[i], e.leverage[i] = e.root[i]*v/length, 0
+	}
+	for _, q := range e.columns {
+		for i, v := range q {
+			e.leverage[i] += v * v
+		}
+	}
+	return true
+}
+
+// estimate gives n̂ and the weighted RSS of y in ln k. scratch has the length of y.
+func (e *exponentRow) estimate(y, scratch []float64) (n, rss float64) {
+	// From the mean on, so that a large ln k does not take digits.
+	var mean float64
+	for _, v := range y {
+		mean += v / float64(len(y))
+	}
+	for i, v := range y {
+		scratch[i] = e.root[i] * (v - mean)
+		n += e.c[i] * (v - mean)
+	}
+	project(e.columns, scratch, nil)
+	return n, floats.Dot(scratch, scratch)
+}
+
+// roots are the square roots of the weights of ln k: 1/V, or k²/V with the fitted k
+// where errors are in k.
+func roots(s *fit.Sample, fitted []float64) []float64 {
+	out := make([]float64, s.Len())
+	for i, v := range s.V {
+		if out[i] = 1 / math.Sqrt(v); s.Model.InK() {
+			out[i] *= math.Exp(fitted[i])
+		}
+	}
+	return out
+}
+
+// exponentError is the standard error of n̂ from RSS, ν and its unscaled variance; no
+// smaller than rounding error makes it.
+func exponentError(s *fit.Sample, rss, unscaled float64, nu int) float64 {
+	if s.Model.KnownSigma() {
+		return math.Sqrt(unscaled)
+	}
+	if noScatter(s, rss) {
+		rss = math.Max(rss, rssFloor(s)*float64(nu)/float64(s.Len()))
+	}
+	return math.Sqrt(unscaled * rss / float64(nu))
+}
+
+// leaving is what is left out: entries of the sample, or single points of one.
+type leaving struct {
+	kind    string
+	entries []int // the sample's
+	point   int   // of the data; -1 unless it is one of several behind an entry
+}
+
+// leavings goes through what can be left out: each entry, each temperature of several
+// entries, and each of several points behind one entry. What it yields is good until
+// the next: of a million repeats no list is made.
+func (p *prepared) leavings(yield func(leaving) bool) {
+	s := p.sample
+	_, at := models.NumberTemperatures(s.T)
+	entries := make([]int, s.Len())
+	for i := range entries {
+		entries[i] = i
+	}
+	for i := 0; i < s.Len(); {
+		j := i + 1
+		for j < s.Len() && at[j] == at[i] {
+			j++
+		}
+		kind := leftTemperature
+		if j-i > 1 {
+			if kind = leftMean; p.basis == BasisPoints {
+				kind = leftPoint
+			}
+		}
+		for e := i; e < j; e++ {
+			if !yield(leaving{kind, entries[e : e+1], -1}) {
+				return
+			}
+		}
+		if j-i > 1 && !yield(leaving{leftTemperature, entries[i:j], -1}) {
+			return
+		}
+		i = j
+	}
+	if p.basis != BasisMeans {
+		return
+	}
+	for j, g := range p.group {
+		alone := (j == 0 || p.group[j-1] != g) && (j == len(p.group)-1 || p.group[j+1] != g)
+		if !alone && !yield(leaving{leftPoint, entries[g : g+1], j}) {
+			return
+		}
+	}
+}
+
+// pointsOf are the points that leaving l out takes away. Those behind one entry lie
+// side by side.
+func (p *prepared) pointsOf(l leaving) []int {
+	switch {
+	case l.point >= 0:
+		return []int{l.point}
+	case p.basis == BasisPoints:
+		return l.entries
+	}
+	var out []int
+	for _, e := range l.entries {
+		for j, _ := slices.BinarySearch(p.group, e); j < len(p.group) && p.group[j] == e; j++ {
+			out = append(out, j)
+		}
+	}
+	return out
+}
+
+// omitter repeats the exponent test without one temperature or point. In ln k it is a
+// matter of closed forms: a row x of weight w and residual r that is taken from
+// A = XᵀWX leaves
+//
+//	n - c r/(1-h),  (A⁻¹)_nn + c²/(w(1-h)),  RSS - w r²/(1-h)
+//
+// with c and h the row's part in n̂ and its leverage (J. Sherman, W. J. Morrison, Ann.
+// Math. Stat. 21 (1950) 124; R. D. Cook, S. Weisberg, Residuals and Influence in
+// Regression (1982), section 2.2).
+type omitter struct {
+	a      *assessor
+	s      *fit.Sample
+	row    *exponentRow
+	line   lineRow
+	whole  State // the verdict on all
+	second bool  // the second-barrier test finds something: it is not repeated
+	closed bool  // entries are left out in closed form
+	refits bool  // or by fits of their own, where they are not too many
+
+	temps               int
+	low, high           float64 // range of T, K
+	aboveLow, belowHigh float64 // the same without its ends
+}
+
+// lineRow is how E of the straight line is made of the entries.
+type lineRow struct{ c, leverage []float64 }
+
+// newOmitter prepares leaving out; nil where there is no exponent test.
+func newOmitter(a *assessor, state State, second bool) *omitter {
+	s := a.data.sample
+	if a.untestable != "" || a.power.Status != fit.Converged {
+		return nil
+	}
+	o := &omitter{a: a, s: s, second: second, whole: state}
+	measured := a.power.Measured()
+	root := roots(s, measured.Fitted)
+	if o.row = newExponentRow(s, root); o.row == nil {
+		return nil
+	}
+	o.closed = !s.Model.InK() && len(s.Limits) == 0
+	if o.closed {
+		o.line = newLineRow(s, root)
+	}
+	o.measureRange()
+	return o
+}
+
+// measureRange finds the range of T and what it becomes without its ends.
+func (o *omitter) measureRange() {
+	t := slices.Sorted(slices.Values(o.s.T))
+	_, at := models.NumberTemperatures(t)
+	o.low, o.high = t[0], t[len(t)-1]
+	o.temps = at[len(t)-1] + 1
+	first := slices.IndexFunc(at, func(g int) bool { return g > 0 })
+	last := slices.Index(at, o.temps-1) - 1
+	if first > 0 && last >= 0 {
+		o.aboveLow, o.belowHigh = t[first], t[last]
+	}
+}
+
+// newLineRow is newExponentRow for E of the straight line, in J/mol.
+func newLineRow(s *fit.Sample, root []float64) lineRow {
+	n := s.Len()
+	line := lineRow{make([]float64, n), make([]float64, n)}
+	var basis [][]float64
+	one := slices.Clone(root)
+	basis, _ = extend(basis, one, 0)
+	for _, z := range s.Nuisance {
+		v := slices.Clone(root)
+		floats.Mul(v, z)
+		basis, _ = extend(basis, v, 1e-10)
+	}
+	x := make([]float64, n)
+	for i, t := range s.T {
+		x[i] = root[i] * (t - s.TRef) / (models.GasConstant * t * s.TRef)
+	}
+	project(basis, x, nil)
+	length := floats.Norm(x, 2)
+	for i := range x {
+		line.c[i] = root[i] * x[i] / (length * length)
+	}
+	floats.Scale(1/length, x)
+	for _, q := range append(basis, x) {
+		for i, v := range q {
+			line.leverage[i] += v * v
+		}
+	}
+	return line
+}
+
+// without repeats the exponent test without l. n is unknown where l determines its
+// own fitted value or would need a fit of its own and refits is not set.
+func (o *omitter) without(l leaving) omission {
+	if o.closed && (len(l.entries) == 1 || len(o.s.Nuisance) == 0) {
+		return o.downdate(l)
+	}
+	if o.refits {
+		return o.refit(l)
+	}
+	return unknownOmission()
+}
+
+func unknownOmission() omission {
+	nan := math.NaN()
+	return omission{n: nan, se: nan, p: nan, state: Untestable}
+}
+
+// downdate is without in closed form. Entries of l lie at one temperature, and so
+// count as one of their summed weight and mean residual.
+func (o *omitter) downdate(l leaving) omission {
+	s, power, line := o.s, o.a.power, o.a.straight
+	first := l.entries[0]
+	var w, r, rl float64 // summed weight, mean residual from both curves
+	for _, i := range l.entries {
+		wi := 1 / s.V[i]
+		w += wi
+		r += wi * power.Residuals[i]
+		rl += wi * line.Residuals[i]
+	}
+	r, rl = r/w, rl/w
+	var apart float64 // RSS that goes with l besides: its own scatter
+	for _, i := range l.entries {
+		d := power.Residuals[i] - r
+		apart -= d * d / s.V[i]
+	}
+	gone := len(l.entries)
+	if l.point >= 0 {
+		// One of the points behind a mean m of weight W: as a row it is like the mean,
+		// and the scatter within the mean shrinks by w(y-m)²W/(W-w).
+		p := o.a.data.single
+		whole := w
+		w = 1 / p.V[l.point]
+		d := p.Y[l.point] - s.Y[first]
+		r, rl = power.Residuals[first]+d, line.Residuals[first]+d
+		apart = w * d * d * whole / (whole - w)
+		gone = 0
+	}
+	per := o.row.c[first] * s.V[first] // c of a row of weight 1
+	keep := 1 - o.row.leverage[first]*s.V[first]*w
+	out := unknownOmission()
+	if !(keep > 1e-10) {
+		return out
+	}
+	out.n = power.P[2] - per*w*r/keep
+	nu := power.Nu - gone
+	temps, low, high := o.temps, o.low, o.high
+	if l.kind == leftTemperature {
+		temps--
+		if models.SameTemperature(s.T[first], low) {
+			low = o.aboveLow
+		} else if models.SameTemperature(s.T[first], high) {
+			high = o.belowHigh
+		}
+	}
+	if nu < 1 || temps < minTemperatures {
+		return out
+	}
+	rss := math.Max(0, power.RSS-w*r*r/keep+apart)
+	out.se = exponentError(s, rss, o.row.unscaled+per*per*w/keep, nu)
+	known := s.Model.KnownSigma()
+	if t := out.n / out.se; known {
+		out.p = pNormal(t)
+	} else {
+		out.p = pStudent(t, float64(nu))
+	}
+	half := criticalValue(o.a.opt.Confidence, nu, known) * out.se
+	rule := o.a.rule
+	rule.ChangePerUnit = changePerUnit(low, high)
+	perLine, keepLine := o.line.c[first]*s.V[first], 1-o.line.leverage[first]*s.V[first]*w
+	rule.ToleranceKJ = o.a.tolerance.Apply((line.P[1] - perLine*w*rl/keepLine) / 1000)
+	out.judge(rule, out.n-half, out.n+half, o.second)
+	return out
+}
+
+// judge fills in the state.
+func (out *omission) judge(rule Rule, low, high float64, second bool) {
+	out.testable = true
+	out.state = rule.Judge(low, high, second)
+}
+
+// refit is without by a fit of the rest.
+func (o *omitter) refit(l leaving) omission {
+	out := unknownOmission()
+	s, err := o.rest(l)
+	if err != nil {
+		return out
+	}
+	power, line := fit.Fit(s, models.PowerPrefactor{}), fit.Fit(s, models.Straight())
+	if !power.Usable() || !line.Usable() {
+		return out
+	}
+	if power.Status == fit.Converged {
+		out.n = power.P[2]
+	}
+	if ok, _, _ := Testable(s, power); !ok {
+		return out
+	}
+	t := o.a.testExponent(s, power)
+	out.n, out.se, out.p = t.Exponent.Value, t.Exponent.StdError, t.PValue
+	rule := o.a.rule
+	low, high := s.Range()
+	rule.ChangePerUnit = changePerUnit(low, high)
+	rule.ToleranceKJ = o.a.tolerance.Apply(line.P[1] / 1000)
+	low, high = ends(t.Exponent)
+	out.judge(rule, low, high, o.second)
+	return out
+}
+
+// rest is the sample without l.
+func (o *omitter) rest(l leaving) (*fit.Sample, error) {
+	s := o.s
+	if l.point >= 0 {
+		return o.thinner(l)
+	}
+	var t, k, v []float64
+	nuisance := make([][]float64, len(s.Nuisance))
+	for i := range s.T {
+		if slices.Contains(l.entries, i) {
+			continue
+		}
+		t, k, v = append(t, s.T[i]), append(k, s.K[i]), append(v, s.V[i])
+		for j, z := range s.Nuisance {
+			nuisance[j] = append(nuisance[j], z[i])
+		}
+	}
+	return o.complete(t, k, v, nuisance)
+}
+
+// thinner is the sample with one point taken from a mean.
+func (o *omitter) thinner(l leaving) (*fit.Sample, error) {
+	s, p, g := o.s, o.a.data.single, l.entries[0]
+	k, v := slices.Clone(s.K), slices.Clone(s.V)
+	whole, w := 1/s.V[g], 1/p.V[l.point]
+	v[g] = 1 / (whole - w)
+	if s.Model.InK() {
+		k[g] = (whole*s.K[g] - w*p.K[l.point]) * v[g]
+	} else {
+		k[g] = math.Exp((whole*s.Y[g] - w*p.Y[l.point]) * v[g])
+	}
+	return o.complete(s.T, k, v, s.Nuisance)
+}
+
+func (o *omitter) complete(t, k, v []float64, nuisance [][]float64) (*fit.Sample, error) {
+	s, err := fit.NewSample(o.s.Model, t, k, v)
+	if err != nil {
+		return nil, err
+	}
+	s.Nuisance = nuisance
+	if len(o.s.Limits) > 0 {
+		return s.WithLimits(o.s.Limits)
+	}
+	return s, nil
+}
+
+// decides reports whether x, the test without something, makes that deciding: the
+// verdict is curved, is not without it, and n shrinks to less than half or turns its
+// sign. A mere flip near p = 0.05 is noise. Where too little is left to test nothing
+// decides.
+func (o *omitter) decides(x omission) bool {
+	n := o.a.power.P[2]
+	return o.whole.Curved() && x.testable && !x.state.Curved() &&
+		(math.Abs(x.n) < decidingShrinks*math.Abs(n) || x.n*n < 0)
+}
+
+// leaveOneOut repeats the exponent test without each temperature and point; nil where
+// there is no test to repeat.
+func (a *assessor) leaveOneOut(state State, second bool) []Influence {
+	o := newOmitter(a, state, second)
+	if o == nil {
+		return nil
+	}
+	s := a.data.sample
+	many := 0
+	for range a.data.leavings {
+		many++
+	}
+	o.refits = many <= mostRefits
+	measured := a.power.Measured()
+	entries := fit.Influence(measured, s.Measured())
+	nan := math.NaN()
+	var out []Influence
+	for l := range a.data.leavings {
+		x := o.without(l)
+		f := Influence{
+			LeftOut: l.kind, T: Real(s.T[l.entries[0]]), Leverage: Real(nan), Cook: Real(nan), Studentised: Real(nan), OutlierP: Real(nan),
+			Exponent: Real(x.n), StdError: Real(x.se), PValue: Real(x.p), State: x.state, Deciding: o.decides(x),
+		}
+		if l.point < 0 && len(l.entries) == 1 && entries != nil {
+			e := entries[l.entries[0]]
+			f.Leverage, f.Cook, f.Studentised = Real(e.Leverage), Real(e.Cook), Real(e.Studentised)
+			f.OutlierP = Real(outlierP(e.Studentised, s.Len(), measured.Nu, s.Model.KnownSigma()))
+		}
+		if many > mostListed && !f.Deciding && !(f.OutlierP < outlierLevel) {
+			continue
+		}
+		f.points = a.data.pointsOf(l)
+		for _, j := range f.points {
+			f.Rows = append(f.Rows, a.data.points[j].Row)
+		}
+		slices.Sort(f.Rows)
+		f.Rows = slices.Compact(f.Rows)
+		if len(l.entries) == 1 {
+			f.residual = measured.Residuals[l.entries[0]]
+		}
+		out = append(out, f)
+	}
+	return out
+}
+
+// outlierP is the p-value of a studentised residual, with σ̂ from the others, after
+// Bonferroni for so many entries.
+func outlierP(z float64, entries, nu int, known bool) float64 {
+	p := math.NaN()
+	switch {
+	case known:
+		p = pNormal(z)
+	case nu > 1:
+		p = pStudent(z, float64(nu-1))
+	}
+	return math.Min(1, float64(entries)*p)
+}
+
+// influences finds deciding points, outliers and borderline verdicts.
+func (a *assessor) influences() {
+	a.influence = a.leaveOneOut(a.verdict.State, a.secondRun.found())
+	a.findDeciding()
+	a.findOutliers()
+	a.findBorderline()
+}
+
+// place names what is left out: its rows and temperature.
+func (a *assessor) place(f Influence) string {
+	where := fmt.Sprintf("at %s K", kelvinText(float64(f.T)))
+	if len(f.points) > 3 {
+		return fmt.Sprintf("%s %s", count(len(f.points), "point"), where)
+	}
+	if a.set.SeveralFiles() {
+		var in []string
+		for _, j := range f.points {
+			p := a.data.points[j]
+			in = append(in, fmt.Sprintf("%s:%d", p.File, p.Row))
+		}
+		return fmt.Sprintf("%s %s", strings.Join(in, ", "), where)
+	}
+	var rows []string
+	for _, r := range f.Rows {
+		rows = append(rows, fmt.Sprint(r))
+	}
+	noun := "row "
+	if len(rows) > 1 {
+		noun = "rows "
+	}
+	return noun + list(rows) + " " + where
+}
+
+// findDeciding names what the verdict hangs on, what moves n most first.
+func (a *assessor) findDeciding() {
+	var found []Influence
+	for _, f := range a.influence {
+		if f.Deciding {
+			found = append(found, f)
+		}
+	}
+	if len(found) == 0 {
+		return
+	}
+	n := Real(a.power.P[2])
+	slices.SortStableFunc(found, func(x, y Influence) int {
+		return -cmpReal(Real(math.Abs(float64(x.Exponent-n))), Real(math.Abs(float64(y.Exponent-n))))
+	})
+	digits := max(1, decimals(2*float64(a.exponent.Exponent.StdError)))
+	const most = 3
+	var parts []string
+	var rows []int
+	for i, f := range found {
+		rows = append(rows, f.Rows...)
+		if i >= most {
+			continue
+		}
+		instead := ""
+		if i == 0 {
+			instead = fmt.Sprintf(" instead of %s", number(float64(n), digits))
+		}
+		parts = append(parts, fmt.Sprintf("without %s n is %s%s (p = %s) and the verdict %s",
+			a.place(f), number(float64(f.Exponent), digits), instead, pText(float64(f.PValue)), f.State))
+	}
+	message := "the verdict hangs on little: " + strings.Join(parts, "; ")
+	if more := len(found) - most; more > 0 {
+		message += fmt.Sprintf("; and so without each of %d more", more)
+	}
+	slices.Sort(rows)
+	first := found[0]
+	a.find("deciding-point", message, slices.Compact(rows), map[string]Real{
+		"n": n, "n_without": first.Exponent, "p_without": first.PValue, "t_k": first.T, "deciding": Real(len(found)),
+	})
+}
+
+func cmpReal(x, y Real) int {
+	switch {
+	case x < y:
+		return -1
+	case x > y:
+		return 1
+	}
+	return 0
+}
+
+// findOutliers names entries that lie too far from the curve through the others.
+func (a *assessor) findOutliers() {
+	if !a.data.sample.Model.KnownSigma() && noScatter(a.data.sample, a.power.RSS) {
+		return
+	}
+	for _, f := range a.influence {
+		if !(f.OutlierP < outlierLevel) {
+			continue
+		}
+		way := "above"
+		if f.residual < 0 {
+			way = "below"
+		}
+		a.find("outlier", fmt.Sprintf("%s lies %s standard deviations %s the power-prefactor curve, p = %s after Bonferroni for %d entries",
+			a.place(f), number(math.Abs(float64(f.Studentised)), 1), way, pText(float64(f.OutlierP)), a.data.sample.Len()), f.Rows,
+			map[string]Real{"studentised": f.Studentised, "p_value": f.OutlierP, "t_k": f.T})
+	}
+}
+
+// findBorderline says once that the verdict hangs on chance, where p is near 0.05 and
+// leaving out single temperatures turns it.
+func (a *assessor) findBorderline() {
+	p := a.exponent.PValue
+	if a.untestable != "" || !(p >= 0.01 && p <= 0.1) {
+		return
+	}
+	tested, flips := 0, 0
+	for _, f := range a.influence {
+		if f.LeftOut != leftTemperature || f.State == Untestable {
+			continue
+		}
+		tested++
+		if f.State.Curved() != a.verdict.State.Curved() {
+			flips++
+		}
+	}
+	values := map[string]Real{"p_value": Real(p), "tested": Real(tested), "flips": Real(flips)}
+	near := fmt.Sprintf("p = %s is near 0.05: ", pText(p))
+	switch {
+	case tested == 0: // too few temperatures to leave one out
+		a.find("borderline", near+"a point more or less can change the verdict", nil, values)
+	case flips > 0:
+		a.find("borderline", fmt.Sprintf("%sleaving out one temperature changes the verdict for %d of the %d", near, flips, tested), nil, values)
+	}
+}

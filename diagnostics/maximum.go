@@ -1,0 +1,112 @@
+package diagnostics
+
+import (
+	"fmt"
+	"math"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+)
+
+// maximumLevel is the level at which k must rise before its largest value and fall
+// after it, each after Bonferroni for the place of the maximum.
+const maximumLevel = 0.01
+
+// rateMaximum looks for an optimum: k that rises to some temperature and falls again
+// above it. The largest mean is compared with the mean over all hotter and with that
+// over all colder temperatures, by Student's t with σ̂ of power-prefactor, or, since
+// that is too large where the curve cannot follow a steep fall, with σ̂ of the same
+// curve through the temperatures up to the maximum. The more significant of the two
+// counts: a false alarm needs a rise and a fall that are both significant, and is rarer
+// than the level all the same (TestRateMaximumFalseAlarms).
+func (a *assessor) rateMaximum() {
+	s := a.data.sample
+	t, y, w := byTemperature(s)
+	top := 0
+	for i := range y {
+		if y[i] > y[top] {
+			top = i
+		}
+	}
+	if top == 0 || top == len(y)-1 || a.power.Nu < 1 || !a.power.Usable() {
+		return
+	}
+	fits := []*fit.Result{a.power.Measured()}
+	if !s.Model.KnownSigma() {
+		if f := upTo(s, t[top]); f != nil && f.Usable() && f.Nu > 0 && !noScatter(s, f.RSS) {
+			fits = append(fits, f)
+		}
+	}
+	after, before := apart(y[top], w[top], y[top+1:], w[top+1:]), apart(y[top], w[top], y[:top], w[:top])
+	p := 1.0
+	for _, f := range fits {
+		tail := func(z float64) float64 { // one-sided, for the most significant of so many places
+			q := pNormal(z / f.Sigma)
+			if !s.Model.KnownSigma() {
+				q = pStudent(z/f.Sigma, float64(f.Nu))
+			}
+			return math.Min(1, q/2*float64(len(y)-2))
+		}
+		if after > 0 && before > 0 {
+			p = math.Min(p, math.Max(tail(after), tail(before)))
+		}
+	}
+	if !(p < maximumLevel) {
+		return
+	}
+	last, where := len(y)-1, kelvinText(t[top])
+	ratio := math.Exp(y[last] - y[top])
+	if s.Model.InK() {
+		ratio = y[last] / y[top]
+	}
+	f := newFinding("rate-maximum", fmt.Sprintf("k rises up to %s K and falls above it: at %s K it is %s times what it is at %s K (p = %s)",
+		where, kelvinText(t[last]), significant(ratio, 2, ""), where, pText(p)), nil,
+		map[string]Real{"t_k": Real(t[top]), "ratio": Real(ratio), "p_value": Real(p)})
+	f.Cure = fmt.Sprintf("assess the rising part with --t-max %sK, or add a curve with a maximum: --models +reversible-inactivation", where)
+	a.findings = append(a.findings, f)
+}
+
+// byTemperature joins entries at one temperature: ln k, or k where errors are in k, and
+// their weights.
+func byTemperature(s *fit.Sample) (t, y, w []float64) {
+	values := s.Y
+	if s.Model.InK() {
+		values = s.K
+	}
+	for i := range s.T {
+		wi, last := 1/s.V[i], len(t)-1
+		if last >= 0 && models.SameTemperature(t[last], s.T[i]) {
+			y[last] = (w[last]*y[last] + wi*values[i]) / (w[last] + wi)
+			w[last] += wi
+			continue
+		}
+		t, y, w = append(t, s.T[i]), append(y, values[i]), append(w, wi)
+	}
+	return t, y, w
+}
+
+// apart is y0 less the weighted mean of y, in standard deviations at σ = 1.
+func apart(y0, w0 float64, y, w []float64) float64 {
+	var sw, swy float64
+	for i := range y {
+		sw, swy = sw+w[i], swy+w[i]*y[i]
+	}
+	return (y0 - swy/sw) / math.Sqrt(1/w0+1/sw)
+}
+
+// upTo fits power-prefactor to the entries up to a temperature; nil where they are too
+// few.
+func upTo(s *fit.Sample, t float64) *fit.Result {
+	n := 0
+	for n < s.Len() && (s.T[n] <= t || models.SameTemperature(s.T[n], t)) {
+		n++
+	}
+	if models.CountTemperatures(s.T[:n]) < minTemperatures+1 {
+		return nil
+	}
+	part, err := fit.NewSample(s.Model, s.T[:n], s.K[:n], s.V[:n])
+	if err != nil {
+		return nil
+	}
+	return fit.Fit(part, models.PowerPrefactor{})
+}

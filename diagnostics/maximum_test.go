@@ -1,0 +1,78 @@
+package diagnostics
+
+import (
+	"math"
+	"math/rand/v2"
+	"slices"
+	"strings"
+	"testing"
+
+	"onebarrier/models"
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+)
+
+// optimum is an invented enzyme: E = 50 kJ/mol, half of it lost at half K.
+func optimum(n int, half, sd float64, rng *rand.Rand) *dataset.Set {
+	var t, k []float64
+	for i := range n {
+		ti := 285 + 45*float64(i)/float64(n-1)
+		ln := 25 - 50000/(models.GasConstant*ti) - math.Log1p(math.Exp(-300000/models.GasConstant*(1/ti-1/half)))
+		t, k = append(t, ti), append(k, math.Exp(ln+sd*rng.NormFloat64()))
+	}
+	return setOf(t, k, nil)
+}
+
+func TestRateMaximum(t *testing.T) {
+	for _, n := range []int{7, 10, 16} {
+		for _, half := range []float64{318, 323, 326} {
+			hits := 0
+			const sets = 40
+			for i := range sets {
+				hits += len(screened(t, optimum(n, half, 0.03, rand.New(rand.NewPCG(uint64(i), 7))), lean(), (*assessor).rateMaximum))
+			}
+			t.Logf("N = %d, half lost at %g K: %d of %d", n, half, hits, sets)
+			if n == 10 && half == 318 && hits < 36 {
+				t.Errorf("found in %d of %d", hits, sets)
+			}
+		}
+	}
+}
+
+// The finding says where, and how to go on.
+func TestRateMaximumSays(t *testing.T) {
+	a := mustAssess(t, optimum(10, 318, 0.03, rand.New(rand.NewPCG(1, 7))), quick())
+	i := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "rate-maximum" })
+	if i < 0 {
+		t.Fatal("no maximum found")
+	}
+	if f := a.Findings[i]; !strings.Contains(f.Cure, "--t-max 315K") || !strings.Contains(f.Message, "up to 315 K") || f.Values["t_k"] != 315 {
+		t.Errorf("%+v", f)
+	}
+}
+
+// Straight data of any slope, E = 0 included, hardly ever look like a maximum: fewer
+// than 0.5 % of 2000 sets each.
+func TestRateMaximumFalseAlarms(t *testing.T) {
+	o := lean()
+	for _, n := range []int{5, 8, 12, 20} {
+		for _, e := range []float64{0, 500, 2000, -2000, 60000} {
+			for _, model := range []fit.ErrorModel{fit.Relative, fit.Absolute} {
+				hits, sets := 0, 2000
+				if model == fit.Absolute {
+					sets = 200
+				}
+				for i := range sets {
+					s := lineSet(n, 280, 340, e, 0.03, uint64(i))
+					o.ErrorModel = model
+					if len(screened(t, s, o, (*assessor).rateMaximum)) > 0 {
+						hits++
+					}
+				}
+				if float64(hits) > 0.005*float64(sets) {
+					t.Errorf("N = %d, E = %g J/mol, %s: %d of %d", n, e, model, hits, sets)
+				}
+			}
+		}
+	}
+}

@@ -1,0 +1,306 @@
+package diagnostics
+
+import (
+	"fmt"
+	"math"
+	"strconv"
+	"strings"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+)
+
+// farthestError is the largest error of temperature that is looked at, in K.
+const farthestError = 50
+
+// Shapes of an error of temperature.
+const (
+	shapeOffset = "offset" // the same at every temperature
+	shapeGain   = "gain"   // 0 at T_min, largest at T_max
+	shapeBow    = "bow"    // a parabola: largest in the middle, 0 at both ends
+)
+
+// ThermometerError is what a working thermometer may be wrong by, in K, by the shape
+// of the error over the measured range.
+type ThermometerError struct{ Offset, Gain, Bow float64 }
+
+// DefaultThermometerError is what common practice grants an uncalibrated thermometer.
+var DefaultThermometerError = ThermometerError{Offset: 0.5, Gain: 0.5, Bow: 0.1}
+
+// defaultThermometerError is how the default is written down.
+const defaultThermometerError = "u(T), or offset=0.5K,gain=0.5K,bow=0.1K"
+
+// ParseThermometerError reads "offset=0.5K,gain=0.5K,bow=0.1K"; what is not named
+// keeps its default.
+func ParseThermometerError(s string) (ThermometerError, error) {
+	e := DefaultThermometerError
+	if strings.TrimSpace(s) == "" {
+		return e, nil
+	}
+	seen := map[string]bool{}
+	for _, part := range strings.Split(s, ",") {
+		name, value, ok := strings.Cut(strings.ReplaceAll(part, " ", ""), "=")
+		x, err := strconv.ParseFloat(strings.TrimSuffix(value, "K"), 64)
+		to := map[string]*float64{shapeOffset: &e.Offset, shapeGain: &e.Gain, shapeBow: &e.Bow}[name]
+		if !ok || to == nil || seen[name] || err != nil || !strings.HasSuffix(value, "K") || !(x >= 0) || math.IsInf(x, 0) {
+			return e, fmt.Errorf("diagnostics: thermometer error %q is not of the kind offset=0.5K,gain=0.5K,bow=0.1K", s)
+		}
+		*to, seen[name] = x, true
+	}
+	return e, nil
+}
+
+// TemperatureError says what an error of the recorded temperatures of one shape would
+// do: recorded T = true T + δ s(T). Numbers are unknown where no δ within 50 K does it.
+type TemperatureError struct {
+	Shape string `json:"shape"` // offset, gain or bow
+	// Slope is the exponent that an error of 1 K makes, Σ c_i (-E_loc(T_i) s_i/(R T_i²))
+	// with n̂ = Σ c_i ln k_i.
+	Slope Real `json:"dn_per_k"`
+	// ToBand is the δ that takes n̂ to the nearest edge of the prefactor band; unknown
+	// too where it lies inside.
+	ToBand Real `json:"delta_to_band_k"`
+	// Lost is the δ at which the interval of n reaches the boundary of the verdict: the
+	// edge of the band for beyond-prefactor, 0 for the other curved ones.
+	Lost     Real `json:"delta_verdict_lost_k"`
+	Working  Real `json:"working_error_k"` // what a working thermometer may be wrong by
+	Explains bool `json:"explains"`        // it would make the verdict
+}
+
+// shapeOf gives s(T) of a shape over a range.
+func shapeOf(shape string, low, high, t float64) float64 {
+	u := (t - low) / (high - low)
+	switch shape {
+	case shapeGain:
+		return u
+	case shapeBow:
+		return 4 * u * (1 - u)
+	}
+	return 1
+}
+
+// shifted repeats the exponent test with temperatures other than those recorded.
+type shifted struct {
+	a          *assessor
+	s          *fit.Sample
+	row        *exponentRow // of the temperatures tried last
+	quantile   float64
+	closed     bool
+	t, scratch []float64
+}
+
+// test gives n and its interval with T - δ s(T) in place of T; NaN where that is no
+// temperature or leaves n undetermined.
+func (f *shifted) test(s []float64, delta float64) (n, low, high float64) {
+	nan := math.NaN()
+	for i, t := range f.s.T {
+		if f.t[i] = t - delta*s[i]; !(f.t[i] > 0) {
+			return nan, nan, nan
+		}
+	}
+	if !f.closed {
+		return f.refit()
+	}
+	if !f.row.at(f.t) {
+		return nan, nan, nan
+	}
+	n, rss := f.row.estimate(f.s.Y, f.scratch)
+	half := f.quantile * exponentError(f.s, rss, f.row.unscaled, f.a.power.Nu)
+	return n, n - half, n + half
+}
+
+// refit is test by a fit of its own.
+func (f *shifted) refit() (n, low, high float64) {
+	nan := math.NaN()
+	s, err := fit.NewSample(f.s.Model, append([]float64(nil), f.t...), f.s.K, f.s.V)
+	if err != nil {
+		return nan, nan, nan
+	}
+	s.Nuisance, s.Limits = f.s.Nuisance, f.s.Limits
+	power := fit.Fit(s, models.PowerPrefactor{})
+	if power.Status != fit.Converged || power.Nu < 1 {
+		return nan, nan, nan
+	}
+	t := f.a.testExponent(s, power)
+	low, high = ends(t.Exponent)
+	return t.Exponent.Value, low, high
+}
+
+// temperatureErrors says what errors of the recorded temperatures would do to n and to
+// the verdict.
+func (a *assessor) temperatureErrors() {
+	s := a.data.sample
+	if a.untestable != "" || a.power.Status != fit.Converged {
+		return
+	}
+	measured := a.power.Measured()
+	root := roots(s, measured.Fitted)
+	row, tried := newExponentRow(s, root), newExponentRow(s, root)
+	if row == nil {
+		return
+	}
+	working := a.workingErrors()
+	f := &shifted{a: a, s: s, row: tried, t: make([]float64, s.Len()), scratch: make([]float64, s.Len()),
+		quantile: criticalValue(a.opt.Confidence, a.power.Nu, s.Model.KnownSigma()),
+		closed:   !s.Model.InK() && len(s.Limits) == 0}
+	low, high := s.Range()
+	slope, n := make([]float64, s.Len()), a.power.P[2]
+	measured.Curve.ELoc(measured.TRef, s.T, measured.P, slope, nil)
+	for i, t := range s.T {
+		slope[i] /= models.GasConstant * t * t
+	}
+	shape := make([]float64, s.Len())
+	for _, name := range []string{shapeOffset, shapeGain, shapeBow} {
+		e := TemperatureError{Shape: name, ToBand: Real(math.NaN()), Lost: Real(math.NaN()), Working: Real(working[name])}
+		var dn float64
+		for i, t := range s.T {
+			shape[i] = shapeOf(name, low, high, t)
+			dn -= row.c[i] * slope[i] * shape[i]
+		}
+		e.Slope = Real(dn)
+		if band := a.rule.Band; n > band[1] || n < band[0] {
+			edge := band[1]
+			if n < band[0] {
+				edge = band[0]
+			}
+			e.ToBand = Real(rootNear((n-edge)/dn, n-edge, func(delta float64) float64 {
+				at, _, _ := f.test(shape, delta)
+				return at - edge
+			}))
+		}
+		if a.verdict.State.Curved() {
+			e.Lost = Real(f.lost(shape, dn))
+		}
+		e.Explains = e.Lost.Known() && math.Abs(float64(e.Lost)) < working[name]
+		a.temperature = append(a.temperature, e)
+	}
+	a.findTemperatureErrors()
+}
+
+// lost is the δ of one shape at which the curved verdict is lost. dn is what 1 K of it
+// does to n.
+func (f *shifted) lost(shape []float64, dn float64) float64 {
+	rule := f.a.rule
+	low, high := ends(f.a.exponent.Exponent)
+	edge := 0.0
+	rises := low > 0
+	if f.a.verdict.State == BeyondPrefactor {
+		if edge = rule.Band[0]; rises {
+			edge = rule.Band[1]
+		}
+	}
+	distance := func(low, high float64) float64 {
+		if rises {
+			return low - edge
+		}
+		return edge - high
+	}
+	way := 1.0
+	if !rises {
+		way = -1
+	}
+	return rootNear(way*distance(low, high)/dn, distance(low, high), func(delta float64) float64 {
+		_, low, high := f.test(shape, delta)
+		return distance(low, high)
+	})
+}
+
+// rootNear finds a root of f within farthestError of 0, where f is f0, looking first
+// towards guess, the root of its tangent; NaN where f keeps its sign.
+func rootNear(guess, f0 float64, f func(float64) float64) float64 {
+	if f0 == 0 {
+		return 0
+	}
+	if math.IsNaN(guess) || math.IsNaN(f0) {
+		return math.NaN()
+	}
+	way := math.Copysign(1, guess)
+	a, fa := 0.0, f0
+	for _, step := range []float64{1.05 * math.Abs(guess), 1.5 * math.Abs(guess), 3 * math.Abs(guess), farthestError} {
+		b := way * math.Min(math.Max(step, 1e-12), farthestError)
+		if math.Abs(b) <= math.Abs(a) {
+			continue
+		}
+		fb := f(b)
+		if math.IsNaN(fb) {
+			return math.NaN()
+		}
+		if fb == 0 || fb > 0 != (f0 > 0) {
+			return illinois(a, fa, b, fb, 1e-9*math.Abs(f0), f)
+		}
+		a, fa = b, fb
+	}
+	return math.NaN()
+}
+
+// illinois finds the root between a and b, where f has unlike signs, by false position
+// with the weight of a lasting end halved (M. Dowell, P. Jarratt, BIT 11 (1971) 168),
+// until |f| <= tol.
+func illinois(a, fa, b, fb, tol float64, f func(float64) float64) float64 {
+	side := 0
+	for range 100 {
+		c := (a*fb - b*fa) / (fb - fa)
+		fc := f(c)
+		if math.IsNaN(fc) {
+			return math.NaN()
+		}
+		if math.Abs(fc) <= tol {
+			return c
+		}
+		if fc > 0 == (fb > 0) {
+			b, fb = c, fc
+			if side == -1 {
+				fa /= 2
+			}
+			side = -1
+		} else {
+			a, fa = c, fc
+			if side == 1 {
+				fb /= 2
+			}
+			side = 1
+		}
+	}
+	return (a + b) / 2
+}
+
+// workingErrors are what the thermometer may be wrong by: as asked for, else the
+// largest u(T) where every used point has one, else the default.
+func (a *assessor) workingErrors() map[string]float64 {
+	e, _ := ParseThermometerError(a.opt.ThermometerError) // checked with the options
+	if a.opt.ThermometerError == "" {
+		least, most := math.Inf(1), 0.0
+		for _, p := range a.data.points {
+			least, most = math.Min(least, p.UT), math.Max(most, p.UT)
+		}
+		if least > 0 {
+			e = ThermometerError{most, most, most}
+		}
+	}
+	return map[string]float64{shapeOffset: e.Offset, shapeGain: e.Gain, shapeBow: e.Bow}
+}
+
+// findTemperatureErrors says which shapes explain the verdict, in its sentence too.
+func (a *assessor) findTemperatureErrors() {
+	where := map[string]string{
+		shapeOffset: "the same at every temperature",
+		shapeGain:   "growing from 0 at the cold end to this at the hot end",
+		shapeBow:    "largest in the middle of the range and 0 at both ends",
+	}
+	kelvins := func(x Real) string { return significant(math.Abs(float64(x)), 2, "") + " K" }
+	var parts []string
+	values := map[string]Real{}
+	for _, e := range a.temperature {
+		if !e.Explains {
+			continue
+		}
+		parts = append(parts, fmt.Sprintf("%s (%s), %s; a working thermometer may be wrong by %s", kelvins(e.Lost), e.Shape, where[e.Shape], kelvins(e.Working)))
+		values["delta_"+e.Shape+"_k"] = e.Lost
+		if len(parts) == 1 {
+			a.verdict.Sentence += fmt.Sprintf(" An error of the thermometer of %s, %s, would make this.", kelvins(e.Lost), where[e.Shape])
+		}
+	}
+	if len(parts) > 0 {
+		a.find("temperature-error-explains", "an error of the recorded temperatures would give this verdict: "+strings.Join(parts, ". Or of "), nil, values)
+	}
+}

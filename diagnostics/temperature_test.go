@@ -1,0 +1,166 @@
+package diagnostics
+
+import (
+	"math"
+	"slices"
+	"strings"
+	"testing"
+
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+	"onebarrier/models/reference"
+)
+
+// Slopes, and roots found by R's uniroot over lm at shifted temperatures.
+func TestTemperatureErrorAgainstR(t *testing.T) {
+	g := reference.Golden(t, "golden_leaveout.csv")
+	roots := 0
+	for _, name := range []string{"s2_tn_curved", "s3_parallel", "s4_series", "s7_vft"} {
+		a := mustAssess(t, publishedSet(t, name, false), quick())
+		if a.Verdict.State != BeyondPrefactor || len(a.TemperatureError) != 3 {
+			t.Fatalf("%s: %s, %d shapes", name, a.Verdict.State, len(a.TemperatureError))
+		}
+		for _, e := range a.TemperatureError {
+			reference.Close(t, name+" "+e.Shape+" dn", float64(e.Slope), g.Of(t, name, "relative", e.Shape+":dn"), 1e-6)
+			for what, got := range map[string]Real{"band": e.ToBand, "lost": e.Lost} {
+				want := g.Of(t, name, "relative", e.Shape+":"+what)
+				if math.IsNaN(want) {
+					if got.Known() {
+						t.Errorf("%s %s %s: %g, and R finds no root", name, e.Shape, what, float64(got))
+					}
+					continue
+				}
+				roots++
+				reference.Close(t, name+" "+e.Shape+" "+what, float64(got), want, 1e-7)
+			}
+		}
+	}
+	if roots < 4 {
+		t.Errorf("%d roots compared", roots)
+	}
+}
+
+// bowed is one barrier read with a thermometer that is delta too high in the middle.
+func bowed(delta, sd float64) *dataset.Set {
+	s := lineSet(11, 290, 320, 90000, sd, 4)
+	for i := range s.Points {
+		s.Points[i].T += delta * shapeOf(shapeBow, 290, 320, s.Points[i].T)
+	}
+	return s
+}
+
+// The error that was put in takes n back to the band: on exact data, to 0 but for the
+// change of the shape by the error itself.
+func TestTemperatureErrorIsFound(t *testing.T) {
+	for _, delta := range []float64{0.2, -0.3} {
+		a := mustAssess(t, bowed(delta, 0), quick())
+		e := a.TemperatureError[2]
+		edge := 0.0 // nearest edge of the band, from which n is 0 away, or 1
+		if a.Curvature.Exponent.Value > 0 {
+			edge = 1
+		}
+		reference.Within(t, "delta", float64(e.ToBand)+edge/float64(e.Slope), delta, 0.01*math.Abs(delta))
+	}
+}
+
+// Every error model, offsets and repeats: at δ the verdict is lost, short of it not.
+func TestVerdictIsLostThere(t *testing.T) {
+	set := bowed(0.2, 0.001)
+	for i := range set.Points {
+		set.Points[i].UK, set.Points[i].Level = 0.001*set.Points[i].K, dataset.LevelStandard
+	}
+	three := bowed(0.2, 0.001)
+	for i := range three.Points {
+		three.Points[i].Source = string(rune('A' + i%2))
+	}
+	for _, c := range []struct {
+		set   *dataset.Set
+		model fit.ErrorModel
+	}{{set, fit.Relative}, {set, fit.Stated}, {set, fit.Scaled}, {set, fit.Absolute}, {set, fit.StatedAbsolute}, {three, fit.Relative}} {
+		o := quick()
+		o.ErrorModel = c.model
+		a := mustAssess(t, c.set, o)
+		e := a.TemperatureError[2]
+		if !a.Verdict.State.Curved() || !e.Lost.Known() {
+			t.Fatalf("%s: %s, lost at %g K", c.model, a.Verdict.State, float64(e.Lost))
+		}
+		for _, f := range []struct {
+			share float64
+			want  bool
+		}{{0.999, true}, {1.001, false}} {
+			moved := *c.set
+			moved.Points = slices.Clone(c.set.Points)
+			for i, p := range moved.Points {
+				moved.Points[i].T -= f.share * float64(e.Lost) * shapeOf(shapeBow, 290, 320, p.T)
+			}
+			if s, err := Screen(&moved, o); err != nil || (s.Judged == a.Verdict.State) != f.want {
+				t.Errorf("%s, %g of the error: %v %v", c.model, f.share, s.Judged, err)
+			}
+		}
+	}
+}
+
+func TestTemperatureErrorExplains(t *testing.T) {
+	set := bowed(0.09, 0.001)
+	a := mustAssess(t, set, quick())
+	if !a.finding("temperature-error-explains") || !a.TemperatureError[2].Explains || a.TemperatureError[0].Explains ||
+		!strings.Contains(a.Verdict.Sentence, "An error of the thermometer of 0.0") {
+		t.Errorf("%+v\n%s", a.TemperatureError, a.Verdict.Sentence)
+	}
+	o := quick()
+	o.ThermometerError = "bow=0.01K"
+	if b := mustAssess(t, set, o); b.finding("temperature-error-explains") || strings.Contains(b.Verdict.Sentence, "An error of the thermometer") {
+		t.Error("explained by more than the thermometer may be wrong by")
+	}
+	// u(T) of the data stands in for the default, where every point has one.
+	for i := range set.Points {
+		set.Points[i].UT = 0.01
+	}
+	if c := mustAssess(t, set, quick()); c.TemperatureError[0].Working != 0.01 || c.TemperatureError[2].Working != 0.01 || c.finding("temperature-error-explains") {
+		t.Errorf("%+v", c.TemperatureError)
+	}
+	set.Points[3].UT = 0
+	if c := mustAssess(t, set, quick()); c.TemperatureError[2].Working != 0.1 {
+		t.Errorf("%+v", c.TemperatureError)
+	}
+}
+
+func TestParseThermometerError(t *testing.T) {
+	for s, want := range map[string]ThermometerError{
+		"":                         DefaultThermometerError,
+		"bow=0.02K":                {0.5, 0.5, 0.02},
+		"gain = 1 K, offset=0K":    {0, 1, 0.1},
+		"offset=2K,gain=3K,bow=4K": {2, 3, 4},
+	} {
+		if got, err := ParseThermometerError(s); err != nil || got != want {
+			t.Errorf("%q: %v %v", s, got, err)
+		}
+	}
+	for _, s := range []string{"0.5K", "bow", "bow=0.1", "bow=-1K", "tilt=1K", "bow=1K,bow=2K", "bow=NaNK", "bow=InfK", "bow=0.1K,", "bow=0.1mK"} {
+		if _, err := ParseThermometerError(s); err == nil {
+			t.Errorf("%q was read", s)
+		}
+	}
+}
+
+func TestRootNear(t *testing.T) {
+	for _, c := range []struct{ guess, root float64 }{{2, 2}, {2.5, 2}, {0.5, 2}, {-1, -2}, {60, 49}, {math.Inf(1), 30}} {
+		calls := 0
+		f := func(x float64) float64 { calls++; return (x - c.root) * (1 + 0.01*x*x) }
+		reference.Close(t, "root", rootNear(c.guess, f(0), f), c.root, 1e-8)
+		if calls > 40 {
+			t.Errorf("%d calls", calls)
+		}
+	}
+	for _, guess := range []float64{3, -3, math.NaN(), math.Inf(-1)} {
+		if x := rootNear(guess, 1, func(x float64) float64 { return 1 + x*x }); !math.IsNaN(x) {
+			t.Errorf("a root at %g of what has none", x)
+		}
+	}
+	if x := rootNear(3, 1, func(float64) float64 { return math.NaN() }); !math.IsNaN(x) {
+		t.Errorf("%g", x)
+	}
+	if x := rootNear(3, 0, nil); x != 0 {
+		t.Errorf("%g", x)
+	}
+}
