@@ -66,7 +66,7 @@ func TestParseTemperature(t *testing.T) {
 	// Definitions of the Celsius and Fahrenheit scales: 0 °C = 273.15 K exactly,
 	// T/K = (t/°F + 459.67)·5/9 (NIST SP 811, appendix B).
 	for in, want := range map[string]float64{
-		"195K": 195, "195 K": 195, "25degC": 298.15, "25°C": 298.15, " 25 °C": 298.15, "25℃": 298.15,
+		"195K": 195, "195 K": 195, "25degC": 298.15, "25C": 298.15, "77F": 298.15, "25°C": 298.15, " 25 °C": 298.15, "25℃": 298.15,
 		"77degF": 298.15, "77°F": 298.15, "-10degC": 263.15, "−10°C": 263.15, "1e3K": 1000,
 	} {
 		got, err := parseTemperature(in)
@@ -74,7 +74,7 @@ func TestParseTemperature(t *testing.T) {
 			t.Errorf("parseTemperature(%q) = %v, %v; want %v", in, got, err, want)
 		}
 	}
-	for _, in := range []string{"", "25", "25C", "K", "-300degC", "0K", "NaNK", "InfK", "25 degR", "1,5K", "25k"} {
+	for _, in := range []string{"", "25", "K", "-300degC", "0K", "NaNK", "InfK", "25 degR", "1,5K", "25k"} {
 		if got, err := parseTemperature(in); err == nil {
 			t.Errorf("parseTemperature(%q) = %v, want an error", in, got)
 		}
