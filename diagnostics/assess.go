@@ -34,6 +34,15 @@ func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, er
 	a.rank()
 	a.test()
 	a.decide()
+	a.beyondTheVerdict()
+	if err := a.resample(ctx); err != nil {
+		return nil, err
+	}
+	return a.assessment(), nil
+}
+
+// beyondTheVerdict asks what else could have made it, and how far it carries.
+func (a *assessor) beyondTheVerdict() {
 	a.predict()
 	a.checkResiduals()
 	a.compareSources()
@@ -41,10 +50,6 @@ func Assess(ctx context.Context, set *dataset.Set, opt Options) (*Assessment, er
 	a.temperatureErrors()
 	a.runOrder()
 	a.rateMaximum()
-	if err := a.resample(ctx); err != nil {
-		return nil, err
-	}
-	return a.assessment(), nil
 }
 
 // assessor carries one assessment from step to step.
