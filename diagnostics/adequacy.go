@@ -15,6 +15,8 @@ const (
 	adequacyLevel = 0.01
 	// runsDraws of the null of the runs test.
 	runsDraws = 1999
+	// runsDrawsFew is enough for many data sets, of which each is looked at less.
+	runsDrawsFew = 499
 	// runsExact is the largest N whose runs are drawn. Beyond it what the fit does
 	// to the signs is negligible, and the normal null of Wald & Wolfowitz serves.
 	runsExact = 400
@@ -106,6 +108,7 @@ func CheckAdequacy(s *fit.Sample, f *fit.Result, pe PureError, onMeans bool, nul
 // RunsNulls keeps the nulls of the runs test of one sample: curves that can follow the
 // same directions, as those of fixed exponent do, share one. The zero value is empty.
 type RunsNulls struct {
+	few    bool // runsDrawsFew draws: p is as exact, and coarser
 	bases  [][][]float64
 	atMost [][]float64 // share of draws with so many runs or fewer, by number of runs
 }
@@ -140,9 +143,12 @@ func (nulls *RunsNulls) of(basis [][]float64, n int) []float64 {
 			return nulls.atMost[i]
 		}
 	}
-	draws := runsNormals(n)
+	draws, count := runsNormals(n), runsDraws
+	if nulls.few {
+		count = runsDrawsFew
+	}
 	atMost, z := make([]float64, n+1), make([]float64, n)
-	for k := range runsDraws {
+	for k := range count {
 		copy(z, draws[k*n:])
 		for _, q := range basis {
 			var d float64
@@ -158,7 +164,7 @@ func (nulls *RunsNulls) of(basis [][]float64, n int) []float64 {
 	few := 1.0
 	for i, c := range atMost {
 		few += c
-		atMost[i] = few / (runsDraws + 1)
+		atMost[i] = few / float64(count+1)
 	}
 	nulls.bases, nulls.atMost = append(nulls.bases, basis), append(nulls.atMost, atMost)
 	return atMost

@@ -302,7 +302,7 @@ func (a *assessor) rank() {
 	s := a.data.sample
 	a.ranking = Rank(s, a.fits[:a.ranked], Criterion(a.opt.Criterion))
 	pe := a.data.pureError()
-	var nulls RunsNulls
+	nulls := RunsNulls{few: a.opt.SequentialNull}
 	for i := range a.ranking {
 		r := &a.ranking[i]
 		if f := a.fitOf(r.Curve).Measured(); f.Usable() {

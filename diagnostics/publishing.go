@@ -44,7 +44,7 @@ func (a *assessor) publishInto(doc *Assessment) {
 		in.Fit, in.Profiles = doc.Fits[curve], profiles[curve]
 		in.Exact = roundingOf(in.Fit, a.data.sample, a.opt.Confidence).Exact
 		atRef = in.Fit
-	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, a.data.pureError(), a.data.basis == BasisMeans, new(RunsNulls)); in.PowerAdequate != nil && !*in.PowerAdequate {
+	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, a.data.pureError(), a.data.basis == BasisMeans, &RunsNulls{few: a.opt.SequentialNull}); in.PowerAdequate != nil && !*in.PowerAdequate {
 		atRef = nil
 	}
 	in.Scatter = a.data.sourceScatter()

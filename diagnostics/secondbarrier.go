@@ -27,6 +27,9 @@ const (
 	// critical values then come from sequentialPairs.
 	sequentialEnough = 50
 	sequentialPairs  = 999
+	// Without an end of the range p is compared with 0.20 alone: in sequence so many
+	// pairs tell it well enough.
+	sequentialEndPairs = 499
 )
 
 // secondBarrierSteps are the barrier differences d·(x_max - x_min).
@@ -324,13 +327,15 @@ func (b *SecondBarrierTest) findCritical() {
 // m, p = h/2m, since among the 2m values of the data's pair and m - 1 drawn ones that of
 // the data is one of the h largest with a chance of no more than that (Besag & Clifford
 // 1991, Biometrika 78, 301, for draws that come one by one).
-func (b *SecondBarrierTest) pValue(up, down float64) (p float64, draws int) {
+//
+// most is the largest number of pairs.
+func (b *SecondBarrierTest) pValue(up, down float64, most int) (p float64, draws int) {
 	count := 1
 	if down >= up {
 		count++
 	}
 	if b.sequential {
-		for m := 1; m <= secondBarrierPairs; m++ {
+		for m := 1; m <= most; m++ {
 			for _, s := range b.draws(m)[2*m-2 : 2*m] {
 				if s >= up {
 					count++
@@ -340,14 +345,14 @@ func (b *SecondBarrierTest) pValue(up, down float64) (p float64, draws int) {
 				return sequentialEnough / float64(2*m), 2*m + 1
 			}
 		}
-		return float64(count) / (secondBarrierDraws + 1), secondBarrierDraws
+		return float64(count) / float64(2*most+2), 2*most + 1
 	}
-	for _, s := range b.draws(secondBarrierPairs)[:2*secondBarrierPairs] {
+	for _, s := range b.draws(most)[:2*most] {
 		if s >= up {
 			count++
 		}
 	}
-	return float64(count) / (secondBarrierDraws + 1), secondBarrierDraws
+	return float64(count) / float64(2*most+2), 2*most + 1
 }
 
 // Found reports whether p < 0.05 for other values y at the same design, in ln k, or
@@ -389,7 +394,7 @@ func (b *SecondBarrierTest) Run() *SecondBarrier {
 		return nil
 	}
 	nu := float64(b.dim - 1)
-	p, draws := b.pValue(up, down)
+	p, draws := b.pValue(up, down, secondBarrierPairs)
 	out := &SecondBarrier{
 		Statistic:   Real(up * math.Sqrt(nu) / math.Sqrt((1-up)*(1+up))),
 		PValue:      Real(p),
@@ -454,7 +459,11 @@ func (b *SecondBarrierTest) without(t float64) float64 {
 	if noScatter(&s, rss) {
 		return math.NaN()
 	}
-	p, _ := o.pValue(up, down)
+	most := secondBarrierPairs
+	if o.sequential {
+		most = sequentialEndPairs
+	}
+	p, _ := o.pValue(up, down, most)
 	return p
 }
 

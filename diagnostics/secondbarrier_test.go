@@ -140,7 +140,7 @@ func TestFoundIsThePValue(t *testing.T) {
 		lineNoise(rng, s, 0.03, s.Y)
 		up, down, _ := b.cosines(s.Y, scratch)
 		b.Found(s.Y, scratch) // draws
-		p, _ := b.pValue(up, down)
+		p, _ := b.pValue(up, down, secondBarrierPairs)
 		if found := b.Found(s.Y, scratch); found != (p < 0.05) {
 			t.Fatalf("p = %g, found %t", p, found)
 		}
@@ -395,7 +395,7 @@ func TestSecondBarrierInSequence(t *testing.T) {
 		for range sets {
 			lineNoise(rng, s, 0.03, s.Y)
 			up, down, _ := b.cosines(s.Y, scratch)
-			p, draws := b.pValue(up, down)
+			p, draws := b.pValue(up, down, secondBarrierPairs)
 			most = max(most, draws)
 			for i, l := range levels {
 				if p <= l {
@@ -403,7 +403,7 @@ func TestSecondBarrierInSequence(t *testing.T) {
 				}
 			}
 			if draws == secondBarrierDraws {
-				if want, _ := full.pValue(up, down); p != want {
+				if want, _ := full.pValue(up, down, secondBarrierPairs); p != want {
 					t.Errorf("p = %g, of the full null %g", p, want)
 				}
 			}
