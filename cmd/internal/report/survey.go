@@ -29,6 +29,9 @@ func Count(n int, thing string) string { return count(n, thing) }
 // Signed writes x with so many decimals and its sign, a dash where it is unknown.
 func Signed(x float64, decimals int) string { return signed(diagnostics.Real(x), decimals) }
 
+// Fixed writes x with so many decimals.
+func Fixed(x float64, decimals int) string { return plain(diagnostics.Real(x), decimals) }
+
 // OneDigit writes x with its sign as one digit and a power of ten.
 func OneDigit(x float64) string {
 	s := strconv.FormatFloat(x, 'e', 0, 64)

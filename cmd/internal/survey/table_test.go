@@ -427,9 +427,10 @@ archive.csv             –  file-unreadable: permission denied
 
 8 data sets. 5 can be tested; q is the false discovery share (Benjamini and
 Hochberg 1995) over these, whatever is shown, for the test that E does not
-change; 3 have q ≤ 0.05. 2 could not be used: survey status counts the reasons.
-ΔE is the change of E over the measured range in kJ/mol. onebarrier survey show
-NAME prints one assessment; --format csv has every column.
+change. q is at most 0.05 for 3 of them. 2 could not be used: survey status
+counts the reasons. ΔE is the change of E over the measured range in kJ/mol.
+onebarrier survey show NAME prints one assessment; --format csv has every
+column.
 `},
 		{TableOptions{MaxQ: 0.05, MinPoints: 8}, `data set                N  verdict                ΔE     95 % interval         q
 =1+cmd                 12  beyond-prefactor    +12.3     +8.1 to +16.6     0.033
@@ -437,14 +438,15 @@ e                      20  within-prefactor     +2.4      +0.2 to +4.6     0.033
 
 2 of 8 data sets shown. 5 can be tested; q is the false discovery share
 (Benjamini and Hochberg 1995) over these, whatever is shown, for the test that E
-does not change; 3 have q ≤ 0.05. 2 could not be used: survey status counts the
-reasons. ΔE is the change of E over the measured range in kJ/mol. onebarrier
-survey show NAME prints one assessment; --format csv has every column.
+does not change. q is at most 0.05 for 3 of them. 2 could not be used: survey
+status counts the reasons. ΔE is the change of E over the measured range in
+kJ/mol. onebarrier survey show NAME prints one assessment; --format csv has
+every column.
 `},
 		{TableOptions{MinPoints: 100}, `None of the 8 data sets passes the filters. 5 can be tested; q is the false
 discovery share (Benjamini and Hochberg 1995) over these, whatever is shown, for
-the test that E does not change; 3 have q ≤ 0.05. 2 could not be used: survey
-status counts the reasons.
+the test that E does not change. q is at most 0.05 for 3 of them. 2 could not be
+used: survey status counts the reasons.
 `},
 	} {
 		if got := written(t, s, "text", c.o); got != c.want {

@@ -133,8 +133,8 @@ func (t *textTable) end(n Tally) error {
 		note("%s.", report.Count(n.Sets, "data set"))
 	}
 	if n.Sets > 0 {
-		note("%d can be tested; q is the false discovery share (Benjamini and Hochberg 1995) over these, whatever is shown, for the test that E does not change; %d have q ≤ %g.",
-			n.Testable, n.Found, usualQ)
+		note("%d can be tested; q is the false discovery share (Benjamini and Hochberg 1995) over these, whatever is shown, for the test that E does not change. q is at most %g for %d of them.",
+			n.Testable, usualQ, n.Found)
 	}
 	if n.Failed > 0 {
 		note("%d could not be used: survey status counts the reasons.", n.Failed)
