@@ -5,8 +5,8 @@ import (
 	"errors"
 	"fmt"
 	"maps"
+	"os"
 	"slices"
-	"strconv"
 	"strings"
 	"time"
 
@@ -15,7 +15,6 @@ import (
 
 	"onebarrier/cmd/internal/report"
 	"onebarrier/cmd/internal/survey"
-	"onebarrier/diagnostics"
 )
 
 // surveyResamples is the default of a survey: shares to a few per cent, for many sets.
@@ -31,8 +30,7 @@ type surveyOptions struct {
 }
 
 func newSurveyRun(a *app) *cobra.Command {
-	o := &surveyOptions{assess: assessOptions{assess: diagnostics.DefaultOptions()}}
-	o.assess.assess.Resamples = surveyResamples
+	o := newSurveyOptions()
 	cmd := &cobra.Command{
 		Use:   "run PATH...",
 		Short: "Assess every data set of files and folders",
@@ -53,21 +51,32 @@ tells why.`,
   onebarrier survey run archive --store part3.sqlite --shard 3/64`,
 		Args: atLeast(1, "PATH"),
 		RunE: func(cmd *cobra.Command, args []string) error {
-			return a.runSurvey(cmd, args, o)
+			return a.runSurvey(cmd, args, &o)
 		},
 		ValidArgsFunction: completeFiles(-1),
 	}
 	f := cmd.Flags()
 	addStore(cmd, &o.store, false)
+	addSurveyInput(cmd, &o)
+	f.BoolVar(&o.dryRun, "dry-run", false, "only read, and count data sets and errors; no store is needed")
+	f.StringVar(&o.shard, "shard", "", "take `part` K of N, such as 3/64, into a store of its own; by default that of a task of a Slurm array")
+	group(f, surveyFiles, "store", "dry-run", "shard")
+	return cmd
+}
+
+// surveyFiles heads flags in the help.
+const surveyFiles = "what is read, and where the results are kept"
+
+// addSurveyInput gives a command the flags that say what a survey reads and how it
+// judges.
+func addSurveyInput(cmd *cobra.Command, o *surveyOptions) {
+	f := cmd.Flags()
 	f.StringArrayVar(&o.include, "include", nil, "of folders, read only files that match this `pattern`, such as '*.csv' (repeat for more)")
 	f.StringArrayVar(&o.exclude, "exclude", nil, "of folders, pass over what matches this `pattern`, such as 'old/*' (repeat for more)")
-	f.BoolVar(&o.dryRun, "dry-run", false, "only read, and count data sets and errors; no store is needed")
 	f.BoolVar(&o.again, "again", false, "keep results of other settings in the store beside the new ones")
-	f.StringVar(&o.shard, "shard", "", "take `part` K of N, such as 3/64, into a store of its own")
-	group(f, "what is read, and where the results are kept", "store", "include", "exclude", "dry-run", "again", "shard")
+	group(f, surveyFiles, "include", "exclude", "again")
 	addSelection(cmd, &o.assess.read)
 	addJudging(cmd, &o.assess)
-	return cmd
 }
 
 // unsettling are flags that do not decide a result.
@@ -91,30 +100,9 @@ func surveySettings(cmd *cobra.Command) survey.Settings {
 	return s
 }
 
-// parseShard reads K/N.
-func parseShard(s string) (k, n int, err error) {
-	if s == "" {
-		return 1, 1, nil
-	}
-	a, b, ok := strings.Cut(s, "/")
-	if ok {
-		k, err = strconv.Atoi(a)
-		if err == nil {
-			n, err = strconv.Atoi(b)
-		}
-	}
-	if !ok || err != nil || n < 1 || k < 1 || k > n {
-		return 0, 0, usagef("write K/N with K from 1 to N, such as 3/64", "--shard: %q is no part of a whole", s)
-	}
-	return k, n, nil
-}
-
-func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) error {
+// check refuses what can be refused before anything is read.
+func (o *surveyOptions) check(paths []string) error {
 	if err := o.assess.complete(); err != nil {
-		return err
-	}
-	k, n, err := parseShard(o.shard)
-	if err != nil {
 		return err
 	}
 	for _, p := range o.assess.read.leaveOut {
@@ -124,6 +112,17 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 	}
 	if slices.Contains(paths, "-") {
 		return usagef("write it to a file first", "a survey does not read standard input")
+	}
+	return nil
+}
+
+func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) error {
+	if err := o.check(paths); err != nil {
+		return err
+	}
+	k, n, err := a.shardOf(o.shard, os.Getenv)
+	if err != nil {
+		return err
 	}
 	judge := o.assess.assess
 	judge.KeepResamples = cmd.Flags().Changed("resamples")
