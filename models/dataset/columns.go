@@ -12,11 +12,10 @@ import (
 // column is one column of a table with what it was taken for.
 type column struct {
 	Heading
-	index int      // from 0
-	nth   int      // which of the columns that the user named for its role
-	used  bool     // takes part, or checks a column that does
-	says  string   // why a column with a role is not used
-	shown []string // its first cells
+	index int    // from 0
+	nth   int    // which of the columns that the user named for its role
+	used  bool   // takes part, or checks a column that does
+	says  string // why a column with a role is not used
 
 	// How uncertainties were written beside the numbers in its cells.
 	brackets, spaced, plusMinus bool
@@ -50,6 +49,8 @@ type plan struct {
 	assumed []string
 	notices []Notice
 	stream  planOfStream
+
+	shown map[string][][]string // first cells of each column, by data set
 }
 
 func (p *plan) assume(what string) {
@@ -313,6 +314,9 @@ func (m *maker) columns(headings []string, line int) *plan {
 		if c := p.find(by); c != nil {
 			p.dataset = c
 			c.used = true
+			if c.Role == RoleKept {
+				c.Role = RoleDataset
+			}
 		} else {
 			m.refuse(codeColumnUnknown, line, "", "--dataset-by %s: there is no such heading; the file has %s", by, quoteAll(headings))
 			for _, h := range headings {

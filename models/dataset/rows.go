@@ -23,10 +23,10 @@ type rowReader struct {
 	// Rows with an uncertainty written beside a number: of k, and of T.
 	brackets, spaced, plusMinus    []int
 	bracketsT, spacedT, plusMinusT []int
-	noRepeats                      []int     // s.d. behind a ± whose number of repeats is not given
-	wrong                          []*column // refused for their power of ten
-	spare                          []int     // not used: a column states it too
-	examples                       [][]string
+	noRepeats                      []int      // s.d. behind a ± whose number of repeats is not given
+	wrong                          []*column  // refused for their power of ten
+	spare                          []int      // not used: a column states it too
+	shown                          [][]string // first cells of the columns in the data set of the row
 }
 
 // Why a row is left out; review counts rows by these words.
@@ -39,7 +39,8 @@ const (
 
 // points reads the rows of data below the headings, n cells each.
 func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
-	rr := &rowReader{m: m, p: p, examples: make([][]string, len(p.cols))}
+	rr := &rowReader{m: m, p: p}
+	p.shown = map[string][][]string{}
 	if !m.convert(p) {
 		return nil
 	}
@@ -93,6 +94,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 			return s
 		}
 		pt.Source, pt.Dataset = text(p.source), text(p.dataset)
+		rr.show(pt.Dataset)
 		if p.note != nil {
 			pt.Note = strings.TrimSpace(cells[p.note.index])
 		}
@@ -159,23 +161,26 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	say(noteLevel, rr.plusMinus, "the level of ± is not stated, and it was not used")
 	say(noteLevel, rr.plusMinusT, ofT+"the level of ± is not stated, or it is relative, and it was not used")
 	say(noteOtherU, rr.spare, "an uncertainty in the cell is not used: a column states it")
-	for i := range p.cols {
-		if c := &p.cols[i]; c.used && !c.Role.isText() && c.Role != RoleLimit && c.Role != RoleRow {
-			continue // shown as its numbers are read
-		}
-		for j := first; j < min(first+3, len(m.t.Rows)) && (j == first || !m.t.Blank[j]); j++ {
-			if r := m.t.Rows[j]; i < len(r.Cells) {
-				rr.examples[i] = append(rr.examples[i], short(strings.TrimSpace(r.Cells[i])))
-			}
-		}
-	}
-	p.examples(rr.examples)
 	return points
 }
 
-func (p *plan) examples(e [][]string) {
+// mostShown is how many cells of a column are shown.
+const mostShown = 3
+
+// show adds the cells of a row to those shown of its data set: of columns without
+// numbers here, of the others as their numbers are read.
+func (rr *rowReader) show(set string) {
+	p := rr.p
+	rr.shown = p.shown[set]
+	if rr.shown == nil {
+		rr.shown = make([][]string, len(p.cols))
+		p.shown[set] = rr.shown
+	}
 	for i := range p.cols {
-		p.cols[i].shown = e[i]
+		c := &p.cols[i]
+		if numeric := c.used && !c.Role.isText() && c.Role != RoleLimit && c.Role != RoleRow; !numeric && len(rr.shown[i]) < mostShown {
+			rr.shown[i] = append(rr.shown[i], short(strings.TrimSpace(rr.cells[i])))
+		}
 	}
 }
 
@@ -292,8 +297,8 @@ func (rr *rowReader) disagree(role string, c, first *column, format string, args
 func (rr *rowReader) number(c *column) (x Cell, ok, missing bool) {
 	s := rr.cells[c.index]
 	x = ParseCell(s, rr.p.decimal, c.cellShift())
-	if len(rr.examples[c.index]) < 3 {
-		rr.examples[c.index] = append(rr.examples[c.index], short(s))
+	if len(rr.shown[c.index]) < mostShown {
+		rr.shown[c.index] = append(rr.shown[c.index], short(s))
 	}
 	switch x.Kind {
 	case CellNumber:

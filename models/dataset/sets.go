@@ -14,7 +14,7 @@ func (m *maker) sets(p *plan, points []Point) []*Set {
 	byName := map[string]*Set{}
 	var names []string
 	if p.dataset == nil {
-		s := m.newSet(p, m.t.baseName())
+		s := m.newSet(p, m.t.baseName(), "")
 		s.Points = points
 		sets = append(sets, s)
 		names = append(names, s.Name)
@@ -26,7 +26,7 @@ func (m *maker) sets(p *plan, points []Point) []*Set {
 			}
 			s := byName[name]
 			if s == nil {
-				s = m.newSet(p, name)
+				s = m.newSet(p, name, pt.Dataset)
 				byName[name] = s
 				sets = append(sets, s)
 				names = append(names, name)
@@ -103,7 +103,8 @@ func (p *plan) shareNotices(byName map[string]*Set) {
 	}
 }
 
-func (m *maker) newSet(p *plan, name string) *Set {
+// newSet makes a set without points; key is what its rows have in the column dataset.
+func (m *maker) newSet(p *plan, name, key string) *Set {
 	s := &Set{Name: name, Files: []string{m.t.Name}, SHA256: m.t.SHA256, Quantity: p.quantity}
 	s.Assumed = append(s.Assumed, p.assumed...)
 	s.Notices = append(s.Notices, p.notices...)
@@ -123,6 +124,9 @@ func (m *maker) newSet(p *plan, name string) *Set {
 	for i := range p.cols {
 		c := p.cols[i].describe(p)
 		c.File = m.t.Name
+		if shown := p.shown[key]; shown != nil {
+			c.Examples = shown[i]
+		}
 		s.Columns = append(s.Columns, c)
 	}
 	return s
@@ -134,7 +138,7 @@ func assumedOnRequest(assumed []string) string {
 
 // describe says what a column was taken for.
 func (c *column) describe(p *plan) Column {
-	d := Column{Index: c.index + 1, Heading: c.Text, Role: string(c.Role), Factor: 1, Confidence: "certain", Examples: c.shown}
+	d := Column{Index: c.index + 1, Heading: c.Text, Role: string(c.Role), Factor: 1, Confidence: "certain"}
 	if !c.used {
 		d.Role = string(RoleKept)
 		if c.says != "" {
@@ -149,6 +153,9 @@ func (c *column) describe(p *plan) Column {
 	switch c.Role {
 	case RoleRate, RoleTemperature, RoleUncertainty, RoleTemperatureUncertainty:
 		d.Factor = scaled(1, c.Shift)
+		if c.Percent { // the unit says it
+			d.Factor = scaled(1, c.Shift+2)
+		}
 	}
 	d.Conversion = c.conversion(p)
 	if len(c.Assumed) > 0 || c.Role == RoleRate && len(p.runs) > 1 && c.Run == "" && c.nth == 0 {

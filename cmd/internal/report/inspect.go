@@ -6,6 +6,7 @@ import (
 	"io"
 	"math"
 	"regexp"
+	"strconv"
 	"strings"
 	"unicode/utf8"
 
@@ -464,8 +465,10 @@ func ShellWord(s string) string {
 
 // factor writes what a cell is multiplied by; a power of ten as one.
 func factor(x float64) string {
-	if e := math.Log10(x); e == math.Trunc(e) {
-		return "10" + superscript(int(e))
+	// Digits tell: log10 of 0.0001 is not -4 to the last bit.
+	if e, ok := strings.CutPrefix(strconv.FormatFloat(x, 'e', -1, 64), "1e"); ok {
+		n, _ := strconv.Atoi(e)
+		return "10" + superscript(n)
 	}
 	return significant(diagnostics.Real(x), 4) + " ×"
 }
