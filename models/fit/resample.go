@@ -1,10 +1,7 @@
 package fit
 
 import (
-	"cmp"
 	"math"
-	"slices"
-	"sort"
 	"sync"
 
 	"onebarrier/models"
@@ -345,7 +342,7 @@ type cover struct {
 	near      float64    // least cosine at which a shape of the grid counts as covered
 	last      int        // shape last used
 	nodes     []int      // shape nearest to each node of the cold search
-	members   [][]member // shapes of the grid near each one, the shortest first
+	members   [][]member // of fine: shapes of the grid near each one
 }
 
 const (
@@ -366,7 +363,10 @@ func (d *resampleDesign) newCovers() (coarse, fine *cover) {
 	coarse, fine = newCover(coarseSlack), newCover(fineSlack)
 	n := len(d.rows)
 	v, slope := make([]float64, n), make([]float64, n)
-	for _, nd := range d.grid() {
+	grid := d.grid()
+	all := make([]member, 0, len(grid)) // of fine: the starts of coarse are not asked for
+	of := make([]int32, 0, len(grid))   // their shapes
+	for _, nd := range grid {
 		d.tab.shape(nd.c, nd.d, d.rows, v, slope)
 		whole := math.Sqrt(dot(v, v))
 		projectOut(d.rows, v)
@@ -376,14 +376,14 @@ func (d *resampleDesign) newCovers() (coarse, fine *cover) {
 		}
 		x := -nd.c / nd.d
 		faint := nd.d == gridStart || x < d.low-4/nd.d || x > d.high+4/nd.d
-		coarse.include(v, member{nd.c, nd.d, length}, faint)
-		fine.include(v, member{nd.c, nd.d, length}, faint)
+		coarse.include(v, length, faint)
+		all, of = append(all, member{nd.c, nd.d, length}), append(of, int32(fine.include(v, length, faint)))
 	}
+	fine.share(all, of)
 	for _, c := range []*cover{coarse, fine} {
 		for j := range c.low {
 			c.low[j] /= gridLength
 			c.high[j] *= gridLength
-			slices.SortStableFunc(c.members[j], func(a, b member) int { return cmp.Compare(a.length, b.length) })
 		}
 		c.quads = quads(c.shapes, n)
 	}
@@ -410,24 +410,39 @@ func newCover(slack float64) *cover {
 type member struct{ c, d, length float64 }
 
 // include sees to it that the shape v is covered, and with faint that it is with any
-// smaller length too.
-func (c *cover) include(v []float64, m member, faint bool) {
-	length := m.length
+// smaller length too. It returns the shape near it.
+func (c *cover) include(v []float64, length float64, faint bool) int {
 	j := c.find(v, c.near*length)
 	if j == len(c.shapes) {
 		unit := make([]float64, len(v))
 		for i := range v {
 			unit[i] = v[i] / length
 		}
-		c.shapes, c.members = append(c.shapes, unit), append(c.members, nil)
+		c.shapes = append(c.shapes, unit)
 		c.low, c.high = append(c.low, length), append(c.high, length)
 	}
 	c.last = j
-	c.members[j] = append(c.members[j], m)
 	if faint {
 		c.low[j] = 0
 	}
 	c.low[j], c.high[j] = math.Min(c.low[j], length), math.Max(c.high[j], length)
+	return j
+}
+
+// share gives each shape the members that are near it, in their order.
+func (c *cover) share(all []member, of []int32) {
+	count := make([]int, len(c.shapes))
+	for _, j := range of {
+		count[j]++
+	}
+	c.members = make([][]member, len(c.shapes))
+	room := make([]member, len(all))
+	for j, n := range count {
+		c.members[j], room = room[:0:n], room[n:]
+	}
+	for i, j := range of {
+		c.members[j] = append(c.members[j], all[i])
+	}
 }
 
 // find returns a shape whose product with v is at least least, looked for outward
@@ -572,13 +587,23 @@ func (c *cover) next(leads []lead) (best lead, rest []lead) {
 
 // start returns the (c, d) of the shape near a lead whose length is nearest to its.
 func (c *cover) start(l lead) (float64, float64) {
-	m, length := c.members[l.shape], l.length
-	i := sort.Search(len(m), func(i int) bool { return m[i].length >= length })
-	if i == len(m) || i > 0 && length-m[i-1].length < m[i].length-length {
-		i--
+	length := l.length
+	var below, above *member // nearest in length
+	for i := range c.members[l.shape] {
+		switch m := &c.members[l.shape][i]; {
+		case m.length >= length:
+			if above == nil || m.length < above.length {
+				above = m
+			}
+		case below == nil || m.length >= below.length:
+			below = m
+		}
 	}
-	at := m[i]
-	if i == 0 && length < at.length && c.low[l.shape] == 0 {
+	at := above
+	if above == nil || below != nil && length-below.length < above.length-length {
+		at = below
+	}
+	if below == nil && length < at.length && c.low[l.shape] == 0 {
 		return shorten(at.c, at.d, length/at.length, at.d == gridStart)
 	}
 	return at.c, at.d
