@@ -146,29 +146,34 @@ func Run(ctx context.Context, in Input, opt Options) (*Output, error) {
 		wg    sync.WaitGroup
 		total = p.opt.Resamples
 	)
-	for range min(p.opt.Workers, (total+chunk-1)/chunk) {
-		wg.Go(func() {
-			// Made here, what a refitter and a judge write to comes from the pool of the
-			// worker's own processor.
-			w := p.newWorker()
-			for ctx.Err() == nil {
-				hi := int(next.Add(chunk))
-				lo := hi - chunk
-				hi = min(hi, total)
-				if lo >= hi {
-					return
-				}
-				for b := lo; b < hi; b++ {
-					w.resample(b)
-				}
-				mu.Lock()
-				done += hi - lo
-				if p.opt.Progress != nil {
-					p.opt.Progress(done, total)
-				}
-				mu.Unlock()
+	work := func() {
+		// Made here, what a refitter and a judge write to comes from the pool of the
+		// worker's own processor.
+		w := p.newWorker()
+		for ctx.Err() == nil {
+			hi := int(next.Add(chunk))
+			lo := hi - chunk
+			hi = min(hi, total)
+			if lo >= hi {
+				return
 			}
-		})
+			for b := lo; b < hi; b++ {
+				w.resample(b)
+			}
+			mu.Lock()
+			done += hi - lo
+			if p.opt.Progress != nil {
+				p.opt.Progress(done, total)
+			}
+			mu.Unlock()
+		}
+	}
+	if n := min(p.opt.Workers, (total+chunk-1)/chunk); n == 1 {
+		work() // here, so that a caller of many sets can catch what is wrong with one
+	} else {
+		for range n {
+			wg.Go(work)
+		}
 	}
 	wg.Wait()
 	if done < total {

@@ -111,7 +111,9 @@ func headingFor(heading, role, unit, level string) (string, error) {
 	case "k", "rate constant", "rate":
 		means = "k" + per
 		if h := dataset.ParseHeading(heading, nil); h.Role == dataset.RoleRate && h.Symbol != "" && h.Form != dataset.FormLn && h.Form != dataset.FormLg {
-			means = h.Symbol + per
+			if named := dataset.ParseHeading(h.Symbol+per, nil); named.Role == dataset.RoleRate && named.Ambiguity == nil {
+				means = h.Symbol + per // the symbol is kept
+			}
 		}
 		want[dataset.RoleRate] = true
 	case "ln k", "lg k":
