@@ -164,7 +164,7 @@ func (a *app) slurmScript(cmd *cobra.Command, o *slurmOptions, paths []string) e
 	if err := o.run.check(paths); err != nil {
 		return err
 	}
-	s := survey.Slurm{Program: o.program, Store: o.run.store.path, Tasks: o.tasks, CPUs: o.cpus, Flags: o.run.given(cmd), Paths: paths}
+	s := survey.Slurm{Program: o.program, Store: o.run.store.path, Tasks: o.tasks, CPUs: o.cpus, Flags: taskFlags(cmd), Paths: paths}
 	var err error
 	if s.Folder, err = os.Getwd(); err != nil {
 		return fmt.Errorf("the present folder is not known: %w; change into one", err)
@@ -183,8 +183,8 @@ func (a *app) slurmScript(cmd *cobra.Command, o *slurmOptions, paths []string) e
 // ofTask are flags that the script gives to each task itself.
 var ofTask = []string{"store", "tasks", "cpus", "program", "workers"}
 
-// given lists the flags for survey run as words that give them again.
-func (o *surveyOptions) given(cmd *cobra.Command) []string {
+// taskFlags lists the flags for survey run as words that give them again.
+func taskFlags(cmd *cobra.Command) []string {
 	var names []string
 	cmd.LocalNonPersistentFlags().VisitAll(func(f *pflag.Flag) {
 		if !slices.Contains(ofTask, f.Name) {
@@ -192,8 +192,8 @@ func (o *surveyOptions) given(cmd *cobra.Command) []string {
 		}
 	})
 	words := flagsGiven(cmd, names)
-	for _, p := range o.assess.read.leaveOut {
-		words = append(words, "--leave-out", p.String())
+	for _, p := range valuesOf(cmd.Flags().Lookup("leave-out")) {
+		words = append(words, "--leave-out", p)
 	}
 	return words
 }
