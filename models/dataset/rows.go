@@ -72,7 +72,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 			}
 			continue
 		}
-		if isLabel(cells[p.temperature[0].index]) || isLabel(cells[0]) && !rr.isText(0) {
+		if isLabel(cells[p.temperature[0].index]) || !rr.isText(0) && isLabel(cells[0]) {
 			after = append(after, r.Line)
 			continue
 		}
