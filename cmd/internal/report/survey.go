@@ -23,6 +23,16 @@ func (t Text) Bold(s string) string { return t.bold(s) }
 func Pad(s string, n int) string     { return pad(s, n) }
 func PadLeft(s string, n int) string { return padLeft(s, n) }
 
+// Shorten cuts a name in its middle: names of one archive differ at both ends.
+func Shorten(s string, most int) string {
+	r := []rune(s)
+	if len(r) <= most {
+		return s
+	}
+	head := most / 2
+	return string(r[:head]) + "…" + string(r[len(r)-(most-head-1):])
+}
+
 // Count writes "1 point", "2 points".
 func Count(n int, thing string) string { return count(n, thing) }
 

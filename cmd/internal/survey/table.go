@@ -150,7 +150,7 @@ func (s *Store) WriteTable(ctx context.Context, w io.Writer, format string, o Ta
 	var t tableWriter
 	switch format {
 	case "", "text":
-		t = newTextTable(w, layout, s.confidence())
+		t = newTextTable(w, layout, s.Confidence())
 	case "csv":
 		t = newCSVTable(w)
 	case "parquet":
@@ -173,8 +173,8 @@ func (s *Store) WriteTable(ctx context.Context, w io.Writer, format string, o Ta
 	return t.end(n)
 }
 
-// confidence is the level of the intervals of the store, as the flag spells it.
-func (s *Store) confidence() string {
+// Confidence is the level of the intervals of the store, as the flag spells it.
+func (s *Store) Confidence() string {
 	if c := s.settings["confidence"]; c != "" {
 		return c
 	}

@@ -60,9 +60,9 @@ func (t *textTable) row(r *Row) error {
 		head := t.line("data set", "N", "verdict", "ΔE", t.level+" interval", "q")
 		fmt.Fprintln(t.w, t.layout.Dim(strings.ReplaceAll(head, "\u00a0", " ")))
 	}
-	name := shorten(printable(r.Dataset), t.name)
+	name := report.Shorten(printable(r.Dataset), t.name)
 	if r.Dataset == "" {
-		name = shorten(printable(r.SourceFile), t.name)
+		name = report.Shorten(printable(r.SourceFile), t.name)
 	}
 	points := report.Unknown
 	if r.Points != UnknownCount {
@@ -160,16 +160,6 @@ func printable(s string) string {
 		}
 		return r
 	}, s)
-}
-
-// shorten cuts a name in its middle: names of one archive differ at both ends.
-func shorten(s string, width int) string {
-	r := []rune(s)
-	if len(r) <= width {
-		return s
-	}
-	head := width / 2
-	return string(r[:head]) + "…" + string(r[len(r)-(width-head-1):])
 }
 
 // cut ends a text that is too long.

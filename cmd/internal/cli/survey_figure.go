@@ -1,0 +1,82 @@
+package cli
+
+import (
+	"fmt"
+	"path/filepath"
+	"strconv"
+
+	"github.com/spf13/cobra"
+
+	"onebarrier/cmd/internal/figure"
+	"onebarrier/cmd/internal/report"
+	"onebarrier/cmd/internal/survey"
+)
+
+// surveyFigureOptions are the flags of survey figure.
+type surveyFigureOptions struct {
+	store  storeFlags
+	folder string
+	figure figure.Options
+}
+
+func newSurveyFigure(a *app) *cobra.Command {
+	o := &surveyFigureOptions{}
+	cmd := &cobra.Command{
+		Use:   "figure",
+		Short: "Draw an overview of a survey",
+		Long: `figure draws one picture of a store: the change of E of every data set with its
+interval, in order; a histogram of the p-values; how many data sets have each
+verdict, and how many could not be used and why. Of more than 240 data sets
+several share a bar.`,
+		Example: `  onebarrier survey figure --store results.sqlite
+  onebarrier survey figure --store results.sqlite --figures figures --figure-format pdf`,
+		Args: atMost(0, ""),
+		RunE: func(cmd *cobra.Command, _ []string) error { return a.surveyFigure(cmd, o) },
+	}
+	addStore(cmd, &o.store, true)
+	cmd.Flags().StringVar(&o.folder, "figures", ".", "write the picture into this `folder`")
+	formats := []string{"svg", "png", "pdf"}
+	cmd.Flags().Var(&choice{&o.figure.Format, formats}, "figure-format", "of the picture (default svg)")
+	completeWith(cmd, "figure-format", formats...)
+	return cmd
+}
+
+func (a *app) surveyFigure(cmd *cobra.Command, o *surveyFigureOptions) error {
+	s, err := o.store.open(cmd)
+	if err != nil {
+		return err
+	}
+	defer s.Close()
+	if err := writable(o.folder); err != nil {
+		return err
+	}
+	var sets []figure.SurveySet
+	err = s.Rows(cmd.Context(), func(r survey.Row) error {
+		name := r.Dataset
+		if name == "" {
+			name = r.SourceFile
+		}
+		sets = append(sets, figure.SurveySet{
+			Name: report.Shorten(name, figure.SurveyName), State: r.State, ErrorCode: r.ErrorCode,
+			Change: r.EChange, Lower: r.EChangeLower, Upper: r.EChangeUpper, P: r.PValue,
+		})
+		return nil
+	})
+	if err != nil {
+		return err
+	}
+	confidence, err := strconv.ParseFloat(s.Confidence(), 64)
+	if err != nil {
+		return fmt.Errorf("the store %s has the confidence %q, which is no number", o.store.path, s.Confidence())
+	}
+	d, err := figure.NewSurvey(sets, confidence)
+	if err != nil {
+		return err
+	}
+	path, err := figure.WriteSurvey(o.folder, filepath.Base(o.store.path), d, o.figure)
+	if err != nil {
+		return err
+	}
+	_, err = fmt.Fprintln(a.out, path)
+	return err
+}
