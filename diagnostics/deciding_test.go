@@ -116,11 +116,27 @@ func TestInfluenceAgainstR(t *testing.T) {
 
 // The state without a temperature is that of the data without its row.
 func TestStateWithoutIsThatOfTheRest(t *testing.T) {
-	for _, name := range []string{"s1_straight", "s2_tn_curved", "s4_series", "s6_replicates", "s8_tiny6"} {
-		set := publishedSet(t, name, false)
-		for _, tolerance := range []string{"", "3kJ/mol"} {
-			o := quick()
+	designs := &DesignCache{}
+	for _, name := range []string{"s1_straight", "s2_tn_curved", "s4_series", "s6_replicates", "s8_tiny6", "noisy"} {
+		var set *dataset.Set
+		if name == "noisy" { // E of the line, and with it the tolerance, moves by parts of ten
+			set = lineSet(8, 290, 345, 60000, 0.2, 1)
+		} else {
+			set = publishedSet(t, name, false)
+		}
+		tolerances := []string{""}
+		for kj := 0.5; kj < 12; kj *= 1.06 {
+			tolerances = append(tolerances, fmt.Sprintf("%gkJ/mol", kj))
+		}
+		for share := 5.; share < 500 && name == "noisy"; share *= 1.02 { // of E, that of the rest
+			tolerances = append(tolerances, fmt.Sprintf("%g%%", share))
+		}
+		for i, tolerance := range tolerances {
+			o := lean()
 			o.Tolerance = tolerance
+			if o.Designs = designs; i == 0 && name == "s6_replicates" { // fits of their own
+				o.ErrorModel = fit.Absolute
+			}
 			a := mustAssess(t, set, o)
 			second := a.Curvature.SecondBarrier != nil && a.Curvature.SecondBarrier.PValue < secondBarrierLevel
 			for _, f := range a.Influence {
@@ -138,6 +154,10 @@ func TestStateWithoutIsThatOfTheRest(t *testing.T) {
 				want := s.Judged
 				if want == StraightWithin && second { // held, not repeated
 					want = Unresolved
+				}
+				if s.Judged != Untestable {
+					reference.Close(t, "n", float64(f.Exponent), s.Exponent.Exponent.Value, 1e-7)
+					reference.Close(t, "p", float64(f.PValue), s.Exponent.PValue, 1e-6)
 				}
 				if f.State != want {
 					t.Errorf("%s, tolerance %q, without rows %v: %s, want %s", name, tolerance, f.Rows, f.State, want)

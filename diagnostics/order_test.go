@@ -80,6 +80,21 @@ func TestRunOrder(t *testing.T) {
 			t.Errorf("%+v", a.RunOrder)
 		}
 	}
+	// Of repeats each counts by itself, though the verdict uses their means.
+	three := orderedSet(mixed, 0, 5)
+	for i, p := range three.Points[:10] {
+		for j := range 2 {
+			p.Order += 10
+			p.Row = 12 + 2*i + j
+			three.Points = append(three.Points, p)
+		}
+	}
+	for i := range three.Points {
+		three.Points[i].K *= math.Exp(0.01 * three.Points[i].Order)
+	}
+	if a := mustAssess(t, three, quick()); a.RunOrder.Points != 30 || a.RunOrder.Residual < 0.9 {
+		t.Errorf("repeats: %+v", a.RunOrder)
+	}
 	if a := mustAssess(t, lineSet(8, 290, 345, 60000, 0.01, 1), quick()); a.RunOrder != nil {
 		t.Error("an order where none was given")
 	}
