@@ -197,7 +197,7 @@ var catalogue = []Entry{
 	{
 		Code: "rate-maximum", Title: "k falls again above an optimum", Severity: Warning,
 		Explanation: "The rate constant rises to a temperature inside the range and falls above it, both by more than the scatter (1 % each, allowing for the choice of the place). No barrier and no sum of barriers does that, nor a prefactor: something is lost or reversed at the hot end, such as an enzyme that unfolds, a catalyst that sinters, or an equilibrium before the slow step. One E for the whole range has no meaning.",
-		Cure:        "assess the rising part with --t-max, or add a curve with a maximum: --models +reversible-inactivation",
+		Cure:        "assess the rising part with --t-max, or read the series curve in its form reversible-inactivation, which has a maximum",
 		Reference:   "P. J. H. Sharpe, D. W. DeMichele, J. Theor. Biol. 64 (1977) 649",
 	},
 	{

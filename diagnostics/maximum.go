@@ -62,7 +62,7 @@ func (a *assessor) rateMaximum() {
 	f := newFinding("rate-maximum", fmt.Sprintf("k rises up to %s K and falls above it: at %s K it is %s times what it is at %s K (p = %s)",
 		where, kelvinText(t[last]), significant(ratio, 2, ""), where, pText(p)), nil,
 		map[string]Real{"t_k": Real(t[top]), "ratio": Real(ratio), "p_value": Real(p)})
-	f.Cure = fmt.Sprintf("assess the rising part with --t-max %sK, or add a curve with a maximum: --models +reversible-inactivation", where)
+	f.Cure = fmt.Sprintf("assess the rising part with --t-max %sK, or read the series curve in its form reversible-inactivation, which has a maximum", where)
 	a.findings = append(a.findings, f)
 }
 
