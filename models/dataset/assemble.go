@@ -60,7 +60,7 @@ func (m *maker) all() ([]*Set, error) {
 	conds := m.conditions(p)
 	known := m.decideDecimal(p, first)
 	if !known || len(p.temperature) == 0 || len(p.runs) == 0 {
-		m.shapes(first, len(headings))
+		m.shapes(p, first, len(headings))
 		return nil, m.problems
 	}
 	m.chooseFirst(p, first)
@@ -73,16 +73,62 @@ func (m *maker) all() ([]*Set, error) {
 	return sets, nil
 }
 
-// shapes looks for ragged rows in a table whose headings were refused, so that
-// all problems are told at once.
-func (m *maker) shapes(first, n int) {
+// shapes looks for ragged rows, and for cells that are no numbers whatever the
+// headings mean, in a table whose headings were refused, so that all problems are told
+// at once.
+func (m *maker) shapes(p *plan, first, n int) {
+	open := m.openColumns(p)
 	for i := first; i < len(m.t.Rows); i++ {
 		if i > first && m.t.Blank[i] {
 			break
 		}
-		m.cells(m.t.Rows[i], n)
+		r := m.t.Rows[i]
+		if cells, ok := m.cells(r, n); ok && !slices.Contains(m.opt.LeaveOut, r.Line) {
+			m.noNumbers(p, open, r, cells)
+		}
 	}
 	m.refuseRagged(n)
+}
+
+// openColumns are the columns of T and k that are read however the user settles the
+// headings: none where it is open which of several they are, or which rows are read.
+func (m *maker) openColumns(p *plan) []*column {
+	o := &m.opt
+	if m.tidied != nil || o.TMin > 0 || o.TMax > 0 || o.Dataset != "" || len(o.Where) > 0 {
+		return nil
+	}
+	var cols []*column
+	for _, r := range []Role{RoleTemperature, RoleRate} {
+		var of []*column
+		for i := range p.cols {
+			if c := &p.cols[i]; c.Role == r && c.says == "" {
+				of = append(of, c)
+			}
+		}
+		if len(of) == 1 {
+			cols = append(cols, of[0])
+		}
+	}
+	return cols
+}
+
+// noNumbers refuses cells of a row that are no numbers with either decimal mark. A row
+// that lacks T or k, or is labelled, is not read.
+func (m *maker) noNumbers(p *plan, open []*column, r Row, cells []string) {
+	if isLabel(cells[0]) {
+		return
+	}
+	for _, c := range open {
+		if s := normalize(cells[c.index]); isMissing(s) || isLabel(s) {
+			return
+		}
+	}
+	rr := &rowReader{m: m, p: p, row: r, cells: cells}
+	for _, c := range open {
+		if s := cells[c.index]; !allNumbers([]string{s}) {
+			rr.refuseText(c, s)
+		}
+	}
 }
 
 // cells checks the number of cells of a row; empty ones at the end are dropped.
@@ -223,7 +269,7 @@ func (m *maker) chooseFirst(p *plan, first int) {
 			}
 			p.temperature = kept
 			m.refuseGap(p, gap)
-			p.notices = append(p.notices, notice(noteGap, fmt.Sprintf("column %q is %q + 273 in every row: %q is used", gap[0].Text, gap[1].Text, p.temperature[0].Text)))
+			p.notices = append(p.notices, notice(noteGap, fmt.Sprintf("column %q is %q + 273 in every row: %q is used", short(gap[0].Text), short(gap[1].Text), short(p.temperature[0].Text))))
 		} else {
 			p.severalNotice(p.temperature)
 		}
@@ -248,7 +294,7 @@ func (m *maker) chooseFirst(p *plan, first int) {
 		}
 		c.Unit, c.UnitText = unit.rateUnit(), unit.UnitText // ln k beside k/s^-1
 		if !slices.Contains(p.runs[i].cols, unit) {
-			p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as that of %q", c.Text, unit.Text)))
+			p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as that of %q", short(c.Text), short(unit.Text))))
 		}
 	}
 }
@@ -259,8 +305,8 @@ func (m *maker) refuseGap(p *plan, gap []*column) {
 	for _, r := range p.runs {
 		for _, c := range r.cols {
 			if c.Divisor != DivisorNone {
-				m.refuseCure(codeDisagree, 0, c.Text, fmt.Sprintf("k was divided by T, and %q is %q + 273 in every row: which of them is T is not known", gap[0].Text, gap[1].Text),
-					fmt.Sprintf("choose one: --column 'T=%s' or --column 'T=%s'", gap[0].Text, gap[1].Text))
+				m.refuseCure(codeDisagree, 0, c.Text, fmt.Sprintf("k was divided by T, and %q is %q + 273 in every row: which of them is T is not known", short(gap[0].Text), short(gap[1].Text)),
+					"choose one: "+columnFlags("T", []string{gap[0].Text, gap[1].Text}, " or "))
 				return
 			}
 		}
@@ -272,7 +318,7 @@ func (p *plan) severalNotice(cs []*column) {
 	for _, c := range cs[1:] {
 		names = append(names, c.Text)
 	}
-	p.notices = append(p.notices, notice(noteSeveral, fmt.Sprintf("column %q is used; %s must agree with it", cs[0].Text, quoteAll(names))))
+	p.notices = append(p.notices, notice(noteSeveral, fmt.Sprintf("column %q is used; %s must agree with it", short(cs[0].Text), quoteAll(names))))
 }
 
 // leastRounded orders columns by their summed rounding error over the rows in

@@ -2,6 +2,7 @@ package dataset
 
 import (
 	"math"
+	"regexp"
 	"strconv"
 	"strings"
 )
@@ -140,6 +141,27 @@ func ParseCell(text string, decimal byte, shift int) Cell {
 		}
 	}
 	return c
+}
+
+// reFootnote is a number with a letter or a sign behind it that may be the mark of a
+// footnote: 3e-4 a, 3e-4*, 3e-4 (b).
+var reFootnote = regexp.MustCompile(`^(.*[0-9.)]) ?(\^?[a-zA-Z]|[(\[][a-zA-Z*][)\]]|[*†‡§¶#^]+)$`)
+
+// footnote takes apart a number and what may be the mark of a footnote behind it. A
+// letter that is a unit of more than years is none.
+func footnote(text string, decimal byte) (number, mark string, ok bool) {
+	m := reFootnote.FindStringSubmatch(normalize(text))
+	if m == nil || ParseCell(m[1], decimal, 0).Kind != CellNumber {
+		return "", "", false
+	}
+	mark = strings.Trim(m[2], "^()[]")
+	if mark == "" {
+		mark = m[2]
+	}
+	if u, err := ParseUnit(mark); err == nil && u.Text != "yr" {
+		return "", "", false
+	}
+	return m[1], mark, true
 }
 
 // notANumber tells NaN and Inf from other text.

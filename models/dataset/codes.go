@@ -8,6 +8,7 @@ const (
 	codeTooManyColumns       = "too-many-columns"
 	codeNoData               = "no-data"
 	codeNoHeading            = "no-heading"
+	codeOnItsSide            = "table-on-its-side"
 	codeDuplicateHeading     = "duplicate-heading"
 	codeRagged               = "ragged-row"
 	codeNoTemperature        = "no-temperature"
@@ -116,6 +117,7 @@ var problemTexts = []Explanation{
 	{codeTooManyColumns, "The table is too wide", "A row has more cells than spreadsheets allow; the file is probably not split at the right mark.", "save only the columns that belong to the data"},
 	{codeNoData, "There is no data", "The file holds no table with a heading and rows below it.", "write one row of headings such as T/K,k/s^-1 and one row for each measurement"},
 	{codeNoHeading, "There are no headings", "Quantities and units are read from the headings; numbers alone never decide a meaning.", "put a row of headings such as T/K,k/s^-1 above the numbers"},
+	{codeOnItsSide, "The table lies on its side", "The headings stand in the first column, and each measurement is a column. Rows of measurements under one row of headings are read.", "transpose the table, so that T/K and k/s^-1 stand side by side in its first row (in a spreadsheet: copy, then paste special, transposed), and save it again"},
 	{codeDuplicateHeading, "Two columns have the same heading", "It cannot be told which of the two is meant.", "give each column its own heading"},
 	{codeRagged, "A row has more or fewer cells than the headings", "A missing or an extra delimiter moves values into other columns.", "give every row as many cells as there are headings, empty ones included"},
 	{codeNoTemperature, "There is no temperature column", "No heading was understood as a temperature or a reciprocal temperature.", "write the heading as T/K or t/°C, or name the column with --column"},

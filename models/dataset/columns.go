@@ -109,6 +109,10 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 		m.refuse(codeNoHeading, head.Line, "", "the first row holds numbers only")
 		return nil, 0, 0, nil, false
 	}
+	if m.onItsSide(i) {
+		m.refuse(codeOnItsSide, head.Line, "", "the table lies on its side: its headings %s stand in the first column", quoteAll(firstCells(t.Rows[i:])))
+		return nil, 0, 0, nil, false
+	}
 	if len(titles) > 0 {
 		notices = append(notices, notice(noteTitle, fmt.Sprintf("%s above the headings skipped", lines(titles)), titles...))
 	}
@@ -156,6 +160,33 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 		headings = headings[:n-1]
 	}
 	return headings, head.Line, first, notices, true
+}
+
+// onItsSide reports whether the rows from one on hold headings in their first column,
+// a temperature and a rate constant among them, and the first of these rows nothing but
+// numbers beside its heading. A user who names columns has found headings.
+func (m *maker) onItsSide(from int) bool {
+	rows := m.t.Rows[from:]
+	if len(m.opt.Columns) > 0 || len(rows[0].Cells) < 3 || filled(rows[0].Cells[1:]) < 2 || !allNumbers(rows[0].Cells[1:]) {
+		return false
+	}
+	roles := map[Role]bool{}
+	for _, c := range firstCells(rows) {
+		roles[m.opt.heading(c).Role] = true
+	}
+	return roles[RoleTemperature] && roles[RoleRate]
+}
+
+// firstCells are the first cells of rows, as far as there may be headings among them.
+func firstCells(rows []Row) []string {
+	const most = 20
+	var s []string
+	for _, r := range rows[:min(most, len(rows))] {
+		if len(r.Cells) > 0 {
+			s = append(s, r.Cells[0])
+		}
+	}
+	return s
 }
 
 // joinRepeats joins a row of marks (run 1, run 2) to the headings. A heading that
@@ -298,8 +329,8 @@ func (m *maker) columns(headings []string, line int) *plan {
 			case chosen == nil:
 				chosen = c
 			case c != chosen:
-				c.says = fmt.Sprintf("%q is the %s", chosen.Text, r)
-				p.notices = append(p.notices, Notice{Code: noteKept, Message: fmt.Sprintf("column %q is kept, not used: %s", c.Text, c.says), Cure: fmt.Sprintf("choose another with --column '%s=%s'", roleFlags[r], c.Text)})
+				c.says = fmt.Sprintf("%q is the %s", short(chosen.Text), r)
+				p.notices = append(p.notices, Notice{Code: noteKept, Message: fmt.Sprintf("column %q is kept, not used: %s", short(c.Text), c.says), Cure: "choose another with " + columnFlag(roleFlags[r], c.Text)})
 			}
 		}
 		if chosen != nil {
@@ -321,7 +352,7 @@ func (m *maker) columns(headings []string, line int) *plan {
 			m.refuse(codeColumnUnknown, line, "", "--dataset-by %s: there is no such heading; the file has %s", by, quoteAll(headings))
 			for _, h := range headings {
 				if strings.EqualFold(normalize(h), normalize(by)) {
-					m.problems[len(m.problems)-1].Cure = fmt.Sprintf("did you mean --dataset-by '%s'?", strings.TrimSpace(h))
+					m.problems[len(m.problems)-1].Cure = "did you mean " + flag("dataset-by", strings.TrimSpace(h)) + "?"
 				}
 			}
 		}
@@ -353,7 +384,7 @@ func (m *maker) columns(headings []string, line int) *plan {
 			s += fmt.Sprintf(" and %d more", len(unused)-most)
 		}
 		n := notice(noteKept, "kept, not used: "+s)
-		n.Cure = fmt.Sprintf("if one should take part, name its role, such as k, u(k), n or source: --column 'source=%s'", unused[0])
+		n.Cure = "if one should take part, name its role, such as k, u(k), n or source: " + columnFlag("source", unused[0])
 		p.notices = append(p.notices, n)
 	}
 	return p
@@ -408,9 +439,9 @@ func (p *plan) noteUse(c *column) {
 		p.assume(a)
 	}
 	if c.Lost {
-		n := notice(noteLost, fmt.Sprintf("column %q: a number in the heading was read as a power of ten whose superscript was lost", c.Text))
+		n := notice(noteLost, fmt.Sprintf("column %q: a number in the heading was read as a power of ten whose superscript was lost", short(c.Text)))
 		if lost, power := lostPower(normalize(c.Text)); lost != "" {
-			n.Message = fmt.Sprintf("column %q: %s in the heading was read as %s, whose superscript was lost", c.Text, lost, power)
+			n.Message = fmt.Sprintf("column %q: %s in the heading was read as %s, whose superscript was lost", short(c.Text), lost, power)
 			n.Cure = "write " + power
 		}
 		p.notices = append(p.notices, n)
@@ -418,9 +449,9 @@ func (p *plan) noteUse(c *column) {
 	if r := p.runOfColumn(c); r != nil && c == r.cols[0] {
 		switch c.Form {
 		case FormReciprocal:
-			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a mean lifetime: k = 1/τ", c.Text)))
+			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a mean lifetime: k = 1/τ", short(c.Text))))
 		case FormHalfLife:
-			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a half-life: k = ln 2/t½", c.Text)))
+			p.notices = append(p.notices, notice(noteTimeLike, fmt.Sprintf("column %q was read as a half-life: k = ln 2/t½", short(c.Text))))
 		}
 	}
 }
@@ -653,6 +684,10 @@ func (m *maker) chooseRate(p *plan, forced []*column, line int) {
 	switch {
 	case ambiguous:
 		for _, c := range open {
+			if what := c.Ambiguity; what.Key == "k" {
+				m.refuseCure(codeAmbiguousRate, line, c.Text, "the heading does not say that it is of a rate constant", "is it a rate constant? say so: --assume k="+what.Meanings[0].Value)
+				continue
+			}
 			m.refuseCure(codeAmbiguousRate, line, c.Text, "the heading may be meant in several ways", "write it out, or say which: "+c.Ambiguity.meanings())
 		}
 	case len(certain)+len(means) == 0:
@@ -698,16 +733,6 @@ func (m *maker) refuseNone(p *plan, code, role string, line int, what, cure stri
 		cure += ", or name the column: " + columnFlags(role, names, " or ")
 	}
 	m.refuseCure(code, line, "", what, cure)
-}
-
-// columnFlags writes the flag --column for each of several headings.
-func columnFlags(role string, headings []string, between string) string {
-	const most = 8
-	var flags []string
-	for _, h := range headings[:min(most, len(headings))] {
-		flags = append(flags, fmt.Sprintf("--column '%s=%s'", role, h))
-	}
-	return strings.Join(flags, between)
 }
 
 // isNumeric reports whether the first cell of a column below its heading that is not
@@ -775,9 +800,9 @@ func (p *plan) settleQuantity() {
 	switch {
 	case p.unit == nil:
 		q.Unit = normalize(c.UnitText)
-		msg := fmt.Sprintf("column %q: no unit", c.Text)
+		msg := fmt.Sprintf("column %q: no unit", short(c.Text))
 		if c.UnitText != "" {
-			msg = fmt.Sprintf("column %q: the unit %q is not understood", c.Text, c.UnitText)
+			msg = fmt.Sprintf("column %q: the unit %q is not understood", short(c.Text), c.UnitText)
 		}
 		p.notices = append(p.notices, notice(noteUnit, msg+"; numbers are kept as they stand"))
 	default:
@@ -787,9 +812,9 @@ func (p *plan) settleQuantity() {
 		q.Diffusion = q.Diffusion || r.diffusion
 		switch {
 		case !ok:
-			p.notices = append(p.notices, notice(noteUnit, fmt.Sprintf("column %q: %s is not the unit of a rate constant", c.Text, p.unit.Text)))
+			p.notices = append(p.notices, notice(noteUnit, fmt.Sprintf("column %q: %s is not the unit of a rate constant", short(c.Text), p.unit.Text)))
 		case !r.known:
-			p.notices = append(p.notices, notice(noteUnitWithheld, fmt.Sprintf("column %q: %s", c.Text, p.unit.Text)))
+			p.notices = append(p.notices, notice(noteUnitWithheld, fmt.Sprintf("column %q: %s", short(c.Text), p.unit.Text)))
 		}
 	}
 	p.quantity = q
@@ -841,7 +866,7 @@ func (m *maker) chooseUncertainty(p *plan, forced []*column, line int) {
 				continue
 			default:
 				c.says = "it does not say which repeat it belongs to"
-				p.notices = append(p.notices, notice(noteWhichRepeat, fmt.Sprintf("column %q is not used: %s", c.Text, c.says)))
+				p.notices = append(p.notices, notice(noteWhichRepeat, fmt.Sprintf("column %q is not used: %s", short(c.Text), c.says)))
 				continue
 			}
 		}
@@ -879,17 +904,17 @@ func (m *maker) chooseUncertainty(p *plan, forced []*column, line int) {
 		}
 		if c.Ambiguity != nil {
 			c.says = "its level is not stated"
-			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: the level of the uncertainty is not stated", c.Text)))
+			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: the level of the uncertainty is not stated", short(c.Text))))
 			continue
 		}
 		if c.Kind == KindRepeats && p.repeats == nil && p.repeatsN == 0 {
 			c.says = "the number of repeats is not given"
-			p.notices = append(p.notices, notice(noteRepeats, fmt.Sprintf("column %q: a standard deviation of repeats, and their number is not given", c.Text)))
+			p.notices = append(p.notices, notice(noteRepeats, fmt.Sprintf("column %q: a standard deviation of repeats, and their number is not given", short(c.Text))))
 			continue
 		}
 		if r.uncertainty != nil {
 			c.says = "another uncertainty is used"
-			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, r.uncertainty.Text)))
+			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", short(c.Text), short(r.uncertainty.Text))))
 			continue
 		}
 		if c.Divisor == DivisorT && c.Unit != nil && c.Unit.Dim.Temperature != 0 {
@@ -903,16 +928,16 @@ func (m *maker) chooseUncertainty(p *plan, forced []*column, line int) {
 					c.Shift = base.Shift
 				}
 				if base.Unit != nil || base.Shift != 0 {
-					p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as that of %q", c.Text, base.Text)))
+					p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as that of %q", short(c.Text), short(base.Text))))
 				}
 			}
 			switch {
 			case c.Unit == nil && base.Unit == nil && (c.UnitText == "" || normalize(c.UnitText) == normalize(base.UnitText)):
 			case c.Unit == nil || base.Unit == nil:
-				m.refuseCure(codeUnitConflict, line, c.Text, fmt.Sprintf("its unit %q cannot be compared with that of %q", c.UnitText, base.Text), "write both in one unit")
+				m.refuseCure(codeUnitConflict, line, c.Text, fmt.Sprintf("its unit %q cannot be compared with that of %q", c.UnitText, short(base.Text)), "write both in one unit")
 			default:
 				if _, err := c.Unit.convertTo(*base.Unit); err != nil {
-					m.refuseCure(codeUnitConflict, line, c.Text, "its unit "+err.Error()+", the unit of "+strconv.Quote(base.Text), "write both in one unit")
+					m.refuseCure(codeUnitConflict, line, c.Text, "its unit "+err.Error()+", the unit of "+strconv.Quote(short(base.Text)), "write both in one unit")
 				}
 			}
 		}
@@ -944,17 +969,17 @@ func (m *maker) chooseUT(p *plan, forced []*column, line int) {
 		}
 		if c.Ambiguity != nil || c.Kind == KindRepeats && p.repeats == nil && p.repeatsN == 0 {
 			c.says = "its level is not stated"
-			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: the level of the uncertainty is not stated", c.Text)))
+			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: the level of the uncertainty is not stated", short(c.Text))))
 			continue
 		}
 		if c.Relative || c.Kind == KindFactor || c.Percent {
 			c.says = "an uncertainty of T is stated in K"
-			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: a relative uncertainty of a temperature", c.Text)))
+			p.notices = append(p.notices, notice(noteLevel, fmt.Sprintf("column %q: a relative uncertainty of a temperature", short(c.Text))))
 			continue
 		}
 		if p.ofT != nil {
 			c.says = "another uncertainty is used"
-			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, p.ofT.Text)))
+			p.notices = append(p.notices, notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", short(c.Text), short(p.ofT.Text))))
 			continue
 		}
 		if c.Unit == nil {
@@ -966,7 +991,7 @@ func (m *maker) chooseUT(p *plan, forced []*column, line int) {
 					break
 				}
 			}
-			p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as %s", c.Text, c.Unit.Text)))
+			p.notices = append(p.notices, notice(noteAssumedUnit, fmt.Sprintf("column %q has no unit: it is taken as %s", short(c.Text), c.Unit.Text)))
 		}
 		if c.Unit.Dim != dimTemp {
 			m.refuseCure(codeUnitConflict, line, c.Text, "its unit is not that of a temperature", "write u(T)/K")

@@ -35,9 +35,9 @@ func (h *Heading) divided(p *plan) string {
 	}
 	switch {
 	case h.Kind == KindExpanded && p.coverage != nil && t != "":
-		return fmt.Sprintf("column %q, or %s", p.coverage.Text, t)
+		return fmt.Sprintf("column %q, or %s", short(p.coverage.Text), t)
 	case h.Kind == KindExpanded && p.coverage != nil:
-		return fmt.Sprintf("column %q", p.coverage.Text)
+		return fmt.Sprintf("column %q", short(p.coverage.Text))
 	}
 	return t
 }

@@ -7,7 +7,10 @@
 // another kind of table is one more reader.
 package dataset
 
-import "fmt"
+import (
+	"fmt"
+	"strings"
+)
 
 // Level says what a stated uncertainty was before it became a standard one.
 type Level string
@@ -131,11 +134,11 @@ func (p Problem) String() string {
 		s += fmt.Sprintf(":%d", p.Row)
 	}
 	if p.Column != "" {
-		s += fmt.Sprintf(": column %q", p.Column)
+		s += fmt.Sprintf(": column %q", short(p.Column))
 	}
 	s += ": " + p.Message
-	if p.Cure != "" {
-		s += "; " + p.Cure
+	if p.Cure != "" { // which goes on with the sentence
+		s = strings.TrimSuffix(s, ".") + "; " + p.Cure
 	}
 	return s
 }

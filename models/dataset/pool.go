@@ -8,6 +8,7 @@ import (
 	"math"
 	"path/filepath"
 	"slices"
+	"strconv"
 	"strings"
 )
 
@@ -176,8 +177,9 @@ func conversionTo(first, s *Set) (conversion, *Problem) {
 		down, _ := to.convertTo(from)
 		c = conversion{down, true}
 	}
-	// Quotients of units such as L and cm³ are whole numbers but for rounding.
-	if r := math.Round(c.by); math.Abs(c.by-r) <= 1e-14*r {
+	// Quotients of units such as L and cm³, and N_A times one of them, are short
+	// decimals but for rounding.
+	if r, err := strconv.ParseFloat(fmt.Sprintf("%.10g", c.by), 64); err == nil && math.Abs(c.by-r) <= 1e-14*r {
 		c.by = r
 	}
 	return c, nil

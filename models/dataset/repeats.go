@@ -46,7 +46,7 @@ func (c *column) group() string { return plainSymbol(c.Symbol) + string(c.halfLi
 // rate constant, and lists what would tell.
 func (m *maker) refuseSeveral(cols []*column, line int, what string) {
 	const most = 6
-	flag := func(c *column) string { return fmt.Sprintf("--column 'k=%s'", c.Text) }
+	flag := func(c *column) string { return columnFlag("k", c.Text) }
 	at := map[string]int{}
 	var groups [][]*column
 	var names []string
@@ -196,7 +196,7 @@ func (m *maker) settleRuns(p *plan, certain, means []*column, forced bool, line 
 // beside them.
 func (p *plan) spare(c *column, why string) {
 	c.says, c.used = why, false
-	p.notices = append(p.notices, notice(noteSpareMean, fmt.Sprintf("column %q is not used: %s", c.Text, why)))
+	p.notices = append(p.notices, notice(noteSpareMean, fmt.Sprintf("column %q is not used: %s", short(c.Text), why)))
 }
 
 // runOf finds the run that an uncertainty belongs to, of several. of is false where

@@ -107,9 +107,9 @@ func (s *Set) reviewTemperature(p *plan) {
 	switch t := c.Unit.Text; {
 	case low > high:
 	case t == "°C" && low-zeroC >= 270 && high-zeroC <= 380:
-		s.say(noteCLikeK, fmt.Sprintf("column %q: %.4g to %.4g °C", c.Text, low-zeroC, high-zeroC))
+		s.say(noteCLikeK, fmt.Sprintf("column %q: %.4g to %.4g °C", short(c.Text), low-zeroC, high-zeroC))
 	case t == "K" && high < 120:
-		s.say(noteKLikeC, fmt.Sprintf("column %q: %.4g to %.4g K", c.Text, low, high))
+		s.say(noteKLikeC, fmt.Sprintf("column %q: %.4g to %.4g K", short(c.Text), low, high))
 	}
 }
 
@@ -209,7 +209,7 @@ func (s *Set) reviewKept(name string, setting []int) {
 			s.Notices = append(s.Notices, Notice{
 				Code:    noteVaries,
 				Message: message,
-				Cure:    fmt.Sprintf("choose with --where '%s=%s', or split with --dataset-by '%s'", name, cell, name),
+				Cure:    "choose with " + flag("where", name+"="+cell) + ", or split with " + flag("dataset-by", name),
 				Rows:    []int{pt.Row},
 			})
 			return

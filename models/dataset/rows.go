@@ -51,7 +51,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	named := maps.Clone(leaveOut) // leaveOut shrinks to those that are not found
 	points := make([]Point, 0, (len(m.t.Rows)-first)*len(p.runs))
 	intern := map[string]string{}
-	var after []int
+	var after, labelled []int
 	for i := first; i < len(m.t.Rows); i++ {
 		r := m.t.Rows[i]
 		if i > first && m.t.Blank[i] {
@@ -68,12 +68,12 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		cells, ok := m.cells(r, n)
 		if !ok {
 			if isLabel(r.Cells[0]) {
-				after = append(after, r.Line)
+				labelled = append(labelled, r.Line)
 			}
 			continue
 		}
 		if isLabel(cells[p.temperature[0].index]) || !rr.isText(0) && isLabel(cells[0]) {
-			after = append(after, r.Line)
+			labelled = append(labelled, r.Line)
 			continue
 		}
 		rr.row, rr.cells, rr.quiet = r, cells, false
@@ -152,6 +152,10 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		}
 	}
 	say(noteAfter, after, "below the table, not read")
+	say(noteAfter, labelled, "labelled as no measurement, such as a mean or a slope, and not read")
+	if len(labelled) > 0 {
+		p.notices[len(p.notices)-1].Cure = "write its temperature in place of the label if it is a measurement"
+	}
 	const ofT = "in the temperature: "
 	say(noteBrackets, rr.brackets, "a bracket after the number was read as its standard uncertainty")
 	say(noteBrackets, rr.bracketsT, ofT+"a bracket after the number was read as its standard uncertainty")
@@ -222,11 +226,11 @@ func (m *maker) convert(p *plan) bool {
 // units of different kinds.
 func (m *maker) refuseUnits(p *plan, c *column, what string) {
 	first := p.runs[0].cols[0]
-	cure := fmt.Sprintf("choose one: --column 'k=%s' or --column 'k=%s'", first.Text, c.Text)
+	cure := "choose one: " + columnFlags("k", []string{first.Text, c.Text}, " or ")
 	if len(p.runs) > 1 {
-		cure = fmt.Sprintf("name the repeats of one unit, and no others: --column 'k=%s' and so on", first.Text)
+		cure = "name the repeats of one unit, and no others: " + columnFlag("k", first.Text) + " and so on"
 	}
-	m.refuseCure(codeUnitConflict, 0, c.Text, what+", the unit of "+strconv.Quote(first.Text), cure)
+	m.refuseCure(codeUnitConflict, 0, c.Text, what+", the unit of "+strconv.Quote(short(first.Text)), cure)
 }
 
 // isText reports whether a column holds text that may be anything.
@@ -269,6 +273,13 @@ func (rr *rowReader) refuse(code string, c *column, format string, args ...any) 
 // refuseText refuses a cell that holds no number. Where it would be one with the
 // other decimal mark, that is what is wrong.
 func (rr *rowReader) refuseText(c *column, s string) {
+	if number, mark, ok := footnote(s, rr.p.decimal); ok {
+		if !rr.quiet {
+			rr.m.refuseCure(codeNotNumber, rr.row.Line, c.Text, fmt.Sprintf("%q is a number with %q behind it", short(s), mark),
+				fmt.Sprintf("a footnote mark? write %s alone, and what the mark says in a column headed note", number))
+		}
+		return
+	}
 	mark, other, name := ",", byte('.'), "comma"
 	if rr.p.decimal == '.' {
 		mark, other, name = ".", ',', "point"
@@ -288,7 +299,7 @@ func (rr *rowReader) refuseText(c *column, s string) {
 func (rr *rowReader) disagree(role string, c, first *column, format string, args ...any) {
 	if !rr.quiet {
 		rr.m.refuseCure(codeDisagree, rr.row.Line, c.Text, fmt.Sprintf(format, args...),
-			fmt.Sprintf("correct the row, or choose a column: --column '%s=%s' or --column '%[1]s=%[3]s'", role, first.Text, c.Text))
+			"correct the row, or choose a column: "+columnFlags(role, []string{first.Text, c.Text}, " or "))
 	}
 }
 
@@ -318,6 +329,10 @@ func (rr *rowReader) number(c *column) (x Cell, ok, missing bool) {
 	if x.Unit != "" {
 		u, err := ParseUnit(x.Unit)
 		if err != nil || c.Unit == nil || u.Text != c.Unit.Text || u.Exp10 != 0 {
+			if _, _, ok := footnote(s, rr.p.decimal); ok { // a is a year, too
+				rr.refuseText(c, s)
+				return x, false, false
+			}
 			have := "none"
 			if c.Unit != nil {
 				have = c.Unit.Text
@@ -407,7 +422,7 @@ func (rr *rowReader) temperature(pt *Point) {
 			continue
 		}
 		if !math.IsNaN(pt.T) && !(math.Abs(t-pt.T) <= half+h+1e-9*pt.T) {
-			rr.disagree("T", c, p.temperature[0], "%q is %s K, and column %q gives %s K", short(rr.cells[c.index]), strconv.FormatFloat(t, 'f', 3, 64), p.temperature[0].Text, strconv.FormatFloat(pt.T, 'f', 3, 64))
+			rr.disagree("T", c, p.temperature[0], "%q is %s K, and column %q gives %s K", short(rr.cells[c.index]), strconv.FormatFloat(t, 'f', 3, 64), short(p.temperature[0].Text), strconv.FormatFloat(pt.T, 'f', 3, 64))
 		}
 	}
 }
@@ -538,7 +553,7 @@ func (rr *rowReader) rate(pt *Point, run *rateRun) {
 		}
 		if j > 0 {
 			if d := math.Abs(math.Log(k / pt.K)); !(d <= half+h+1e-9) {
-				rr.disagree("k", c, run.cols[0], "%q gives k = %.6g, and column %q gives %.6g", short(rr.cells[c.index]), k, run.cols[0].Text, pt.K)
+				rr.disagree("k", c, run.cols[0], "%q gives k = %.6g, and column %q gives %.6g", short(rr.cells[c.index]), k, short(run.cols[0].Text), pt.K)
 			}
 			continue
 		}

@@ -171,7 +171,7 @@ func (c *column) describe(p *plan) Column {
 		case c.Confidence > 0:
 			d.Level += fmt.Sprintf(", %.4g %%", 100*c.Confidence)
 		case c.Kind == KindExpanded && p.coverage != nil:
-			d.Level += ", k from column " + strconv.Quote(p.coverage.Text)
+			d.Level += ", k from column " + strconv.Quote(short(p.coverage.Text))
 		}
 		if c.Relative {
 			d.Level += ", relative"

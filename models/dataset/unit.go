@@ -538,8 +538,31 @@ func (u Unit) perPressure() bool {
 	return m != 0 && u.Dim.Length == -m && u.Dim.Time == -2*m-1 && u.Dim.Amount == 0 && u.Dim.Temperature == 0
 }
 
+// counted is a unit in molecules instead of mol: its scale, and its dimension without
+// either. N_A is exact (SI Brochure 2019).
+func (u Unit) counted() (scale float64, d Dimension) {
+	d = u.Dim.physical()
+	d.Amount = 0
+	return u.Scale * math.Pow(avogadro, u.Dim.Amount), d
+}
+
+// byNumber reports whether two units are those of one rate constant, per mol/L or its
+// like and per molecule in a volume.
+func byNumber(u, v Unit) bool {
+	a, _ := u.rate()
+	b, _ := v.rate()
+	_, du := u.counted()
+	_, dv := v.counted()
+	return a.known && b.known && a.perMolecule != b.perMolecule && du == dv
+}
+
 // convertTo returns the factor that turns numbers in u into numbers in v.
 func (u Unit) convertTo(v Unit) (float64, error) {
+	if byNumber(u, v) {
+		a, _ := u.counted()
+		b, _ := v.counted()
+		return a / b, nil
+	}
 	if u.Dim.physical() != v.Dim.physical() {
 		return 0, fmt.Errorf("%s is not of the kind of %s", u.Text, v.Text)
 	}

@@ -37,16 +37,16 @@ func isBound(text string) bool {
 func (p *plan) maybeUncertainty(c *column) string {
 	s := normalize(c.Text)
 	near := p.nearest(c)
-	flag := func(role string) string { return fmt.Sprintf("--column '%s=%s'", role, c.Text) }
+	as := func(role string) string { return columnFlag(role, c.Text) }
 	switch {
 	case near == nil || near.Role != RoleRate && !reMaybeLog.MatchString(s) && !isBound(s):
 		return ""
 	case reMaybeFactor.MatchString(s):
-		return "if it is an uncertainty factor, say so: " + flag("f(k)")
+		return "if it is an uncertainty factor, say so: " + as("f(k)")
 	case reMaybeLog.MatchString(s):
-		return "if it is a standard uncertainty, say so: " + flag("u(lg k)") + " or " + flag("u(ln k)")
+		return "if it is a standard uncertainty, say so: " + as("u(lg k)") + " or " + as("u(ln k)")
 	case reMaybeU.MatchString(s):
-		return "if it is a standard uncertainty, say so: " + flag("u(k)")
+		return "if it is a standard uncertainty, say so: " + as("u(k)")
 	case isBound(s):
 		return cureOfBounds
 	}
@@ -63,10 +63,10 @@ func (p *plan) warnUnused(c *column) {
 	if isBound(c.Text) {
 		c.says = "it may be a bound of k"
 	}
-	n := Notice{Code: noteLevel, Message: fmt.Sprintf("column %q is not used: %s", c.Text, c.says), Cure: cure}
+	n := Notice{Code: noteLevel, Message: fmt.Sprintf("column %q is not used: %s", short(c.Text), c.says), Cure: cure}
 	for i := range p.runs {
 		if u := p.runs[i].uncertainty; u != nil {
-			n = notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", c.Text, u.Text))
+			n = notice(noteOtherU, fmt.Sprintf("column %q is not used: %q is", short(c.Text), short(u.Text)))
 		}
 	}
 	p.notices = append(p.notices, n)
@@ -88,8 +88,8 @@ func (p *plan) withoutBounds(cols []*column) []*column {
 	}
 	for _, c := range bounds {
 		c.says = "it may be a bound of k"
-		p.notices = append(p.notices, Notice{Code: noteLevel, Message: fmt.Sprintf("column %q is not used: %s", c.Text, c.says),
-			Cure: fmt.Sprintf("%s; if it is another rate constant, choose it: --column 'k=%s'", cureOfBounds, c.Text)})
+		p.notices = append(p.notices, Notice{Code: noteLevel, Message: fmt.Sprintf("column %q is not used: %s", short(c.Text), c.says),
+			Cure: cureOfBounds + "; if it is another rate constant, choose it: " + columnFlag("k", c.Text)})
 	}
 	return rest
 }

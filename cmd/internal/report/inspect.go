@@ -255,7 +255,7 @@ func (p *page) columns(f InspectedFile, s InspectedSet) []string {
 				continue
 			}
 			if c.Role == string(dataset.RoleKept) && c.Level == "" {
-				kept = append(kept, c.Heading)
+				kept = append(kept, shortHeading(c.Heading))
 				continue
 			}
 			role, u, detail := c.Role, c.Unit, c.Level
@@ -271,7 +271,7 @@ func (p *page) columns(f InspectedFile, s InspectedSet) []string {
 			if c.Factor.Known() && c.Factor != 1 && c.Factor != 0 {
 				u = strings.TrimSpace(factor(float64(c.Factor)) + " " + u)
 			}
-			rows = append(rows, []string{or(c.Heading, unknown), role, or(u, unknown), or(c.Confidence, unknown), cells(c.Examples)})
+			rows = append(rows, []string{or(shortHeading(c.Heading), unknown), role, or(u, unknown), or(c.Confidence, unknown), cells(c.Examples)})
 		}
 		if len(f.Files) > 1 {
 			lines = append(lines, p.bold(file))
@@ -294,6 +294,15 @@ func (p *page) columns(f InspectedFile, s InspectedSet) []string {
 		}
 	}
 	return lines
+}
+
+// shortHeading cuts a heading that is a whole sentence; the document keeps it whole.
+func shortHeading(s string) string {
+	const most = 60
+	if r := []rune(s); len(r) > most {
+		return string(r[:most-1]) + "…"
+	}
+	return s
 }
 
 // cells shows the first cells of a column, each cut to a few characters.
@@ -393,7 +402,7 @@ func (p *page) note(styled, label, message, cure string, rows []int) []string {
 		text += " (" + lineList(rows) + ")"
 	}
 	if cure != "" {
-		text += " →\u00a0" + cure
+		text = strings.TrimSuffix(text, ".") + " →\u00a0" + cure
 	}
 	lines := Wrap(strings.ReplaceAll(text, " = ", "\u00a0=\u00a0"), p.body()-2)
 	for i := range lines {

@@ -1,6 +1,7 @@
 package report
 
 import (
+	"strings"
 	"testing"
 )
 
@@ -12,5 +13,20 @@ func TestPowersOfTenRead(t *testing.T) {
 		if got := factor(x); got != want {
 			t.Errorf("%g: %q, want %q", x, got, want)
 		}
+	}
+}
+
+// The page cuts a heading that is a whole sentence, and keeps one of 60 characters.
+func TestLongHeadingOnThePage(t *testing.T) {
+	fits := strings.Repeat("k ä", 20)
+	long := fits + "x"
+	set := InspectedSet{Columns: []InspectedColumn{{File: "a.csv", Heading: long, Role: "rate", Factor: 1}, {File: "a.csv", Heading: fits, Role: "kept"}, {File: "a.csv", Heading: long, Role: "kept"}}}
+	lines := strings.Join((Text{Width: 400}).newPage().columns(InspectedFile{Files: []string{"a.csv"}}, set), "\n")
+	lines = strings.Join(strings.Fields(lines), " ")
+	if strings.Contains(lines, long) || strings.Count(lines, "…") != 2 || !strings.Contains(lines, fits) {
+		t.Error(lines)
+	}
+	if set.Columns[0].Heading != long {
+		t.Error("the document has lost a heading")
 	}
 }
