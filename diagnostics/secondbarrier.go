@@ -27,6 +27,8 @@ const (
 	// critical values then come from sequentialPairs.
 	sequentialEnough = 50
 	sequentialPairs  = 999
+	// They end at so many pairs in any case: 9,999 draws with the data's mirror image.
+	sequentialMost = 4999
 	// Without an end of the range p is compared with 0.20 alone: in sequence so many
 	// pairs tell it well enough.
 	sequentialEndPairs = 499
@@ -394,7 +396,11 @@ func (b *SecondBarrierTest) Run() *SecondBarrier {
 		return nil
 	}
 	nu := float64(b.dim - 1)
-	p, draws := b.pValue(up, down, secondBarrierPairs)
+	most := secondBarrierPairs
+	if b.sequential {
+		most = sequentialMost
+	}
+	p, draws := b.pValue(up, down, most)
 	out := &SecondBarrier{
 		Statistic:   Real(up * math.Sqrt(nu) / math.Sqrt((1-up)*(1+up))),
 		PValue:      Real(p),

@@ -8,9 +8,13 @@ import (
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"runtime"
+	"sync"
 	"testing"
+	"time"
 
 	"onebarrier/diagnostics"
+	"onebarrier/models/dataset"
 )
 
 // longArchive invents a long table: sets reactions at ten temperatures each, every third
@@ -69,3 +73,74 @@ func benchmarkSurvey(b *testing.B, workers int) {
 // The whole of a survey at 10 temperatures and 999 resamples, store included.
 func BenchmarkSurvey(b *testing.B)           { benchmarkSurvey(b, 1) }
 func BenchmarkSurveyTwoWorkers(b *testing.B) { benchmarkSurvey(b, 2) }
+
+// judgeOnce assesses the first data set alone, and gives what it found for all: for
+// what a survey costs beside the assessments.
+func judgeOnce() func(context.Context, *dataset.Set, diagnostics.Options) (*diagnostics.Assessment, error) {
+	var once sync.Once
+	var a *diagnostics.Assessment
+	var err error
+	return func(ctx context.Context, s *dataset.Set, o diagnostics.Options) (*diagnostics.Assessment, error) {
+		once.Do(func() { a, err = diagnostics.Assess(ctx, s, o) })
+		return a, err
+	}
+}
+
+// Going on with a survey of 100,000 data sets, 1,000,000 rows, that is done.
+func BenchmarkResume(b *testing.B) {
+	const sets = 100_000
+	dir := b.TempDir()
+	table := filepath.Join(dir, "long.csv")
+	if err := os.WriteFile(table, longArchive(sets), 0o666); err != nil {
+		b.Fatal(err)
+	}
+	o := surveyOptions(table)
+	o.judge = judgeOnce()
+	path := filepath.Join(dir, "s.sqlite")
+	run := func(known int) {
+		s, err := Create(path, testSettings)
+		if err != nil {
+			b.Fatal(err)
+		}
+		defer s.Close()
+		if sum, err := Run(context.Background(), s, o); err != nil || sum.Known != known || sum.Sets != sets {
+			b.Fatal(sum, err)
+		}
+	}
+	begun := time.Now()
+	run(0)
+	b.ReportMetric(sets/time.Since(begun).Seconds(), "stored/s")
+	b.ResetTimer()
+	n := 0
+	for b.Loop() {
+		n++
+		run(sets)
+	}
+	b.ReportMetric(b.Elapsed().Seconds()/float64(n), "s")
+}
+
+// What a survey holds in memory does not grow with its number of data sets.
+func TestMemory(t *testing.T) {
+	if testing.Short() {
+		t.Skip("writes 50,000 data sets")
+	}
+	use := func(sets int) float64 {
+		dir := t.TempDir()
+		writeFiles(t, dir, map[string]string{"long.csv": string(longArchive(sets))})
+		o := surveyOptions(filepath.Join(dir, "long.csv"))
+		o.judge = judgeOnce()
+		var most uint64
+		o.Progress = func(Progress) {
+			var m runtime.MemStats
+			runtime.ReadMemStats(&m)
+			most = max(most, m.HeapInuse+m.StackInuse)
+		}
+		runtime.GC()
+		runIn(t, filepath.Join(dir, "s.sqlite"), o)
+		return float64(most)
+	}
+	few := use(1000)
+	if many := use(50_000); many > few+24<<20 {
+		t.Errorf("%.0f MB for 50,000 data sets, %.0f MB for 1,000", many/(1<<20), few/(1<<20))
+	}
+}

@@ -41,6 +41,8 @@ type Options struct {
 	K, N int
 	// Progress, if not nil, is called now and then.
 	Progress func(Progress)
+
+	judge func(context.Context, *dataset.Set, diagnostics.Options) (*diagnostics.Assessment, error) // diagnostics.Assess if nil
 }
 
 // Progress is how far a survey is.
@@ -107,6 +109,9 @@ func Run(ctx context.Context, store *Store, opt Options) (*Summary, error) {
 		opt.Workers = runtime.GOMAXPROCS(0)
 	}
 	opt.Assess.Workers, opt.Assess.SequentialNull = 1, true
+	if opt.judge == nil {
+		opt.judge = diagnostics.Assess
+	}
 	r := &runner{opt: opt, store: store, inputs: sha256.New(), seen: map[Key]bool{},
 		jobs: make(chan job, 2*opt.Workers), entries: make(chan Entry, 2*batch),
 		summary: Summary{Skipped: map[string]int{}, Errors: map[string]int{}}}
@@ -401,7 +406,7 @@ func (r *runner) assess(j *job, buf *bytes.Buffer) {
 	opt := r.opt.Assess
 	opt.Seed = j.seed
 	// A set in hand is finished whatever becomes of the run.
-	a, err := diagnostics.Assess(context.Background(), j.set, opt)
+	a, err := r.opt.judge(context.Background(), j.set, opt)
 	var ps dataset.Problems
 	switch {
 	case errors.As(err, &ps):
