@@ -135,6 +135,9 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 	if places := o.assess.read.leaveOut; len(places) > 0 {
 		opt.LeaveOut = func(file string, all []string) []int { return linesOf(places, file, all) }
 	}
+	if err := opt.Check(); err != nil {
+		return usagef("", "%v", err)
+	}
 	var store *survey.Store
 	if !o.dryRun {
 		if err := o.store.check(cmd); err != nil {

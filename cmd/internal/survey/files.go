@@ -49,10 +49,8 @@ type finder struct {
 // be looked into is a source with a problem.
 func (f *finder) find(paths []string) error {
 	f.seen, f.skipped = map[string]bool{}, map[string]int{}
-	for _, pattern := range slices.Concat(f.include, f.exclude) {
-		if _, err := path.Match(pattern, ""); err != nil {
-			return &PatternError{pattern}
-		}
+	if err := checkPatterns(f.include, f.exclude); err != nil {
+		return err
 	}
 	for _, p := range paths {
 		all := []string{p}
@@ -77,6 +75,15 @@ func (f *finder) find(paths []string) error {
 				f.settle(filepath.Dir(p), filepath.Base(p), settled)
 				f.add(p, info, settled)
 			}
+		}
+	}
+	return nil
+}
+
+func checkPatterns(lists ...[]string) error {
+	for _, pattern := range slices.Concat(lists...) {
+		if _, err := path.Match(pattern, ""); err != nil {
+			return &PatternError{pattern}
 		}
 	}
 	return nil

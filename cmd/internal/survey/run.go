@@ -45,6 +45,9 @@ type Options struct {
 	judge func(context.Context, *dataset.Set, diagnostics.Options) (*diagnostics.Assessment, error) // diagnostics.Assess if nil
 }
 
+// Check refuses what means nothing, before a store is made.
+func (o *Options) Check() error { return checkPatterns(o.Include, o.Exclude) }
+
 // Progress is how far a survey is.
 type Progress struct {
 	Sets     int     // found so far
