@@ -137,6 +137,18 @@ func TestSurveyMerge(t *testing.T) {
 	do(exitUsage, "merge", "--store", "b.sqlite")
 }
 
+func TestNumbersOfMissingParts(t *testing.T) {
+	for want, k := range map[string][]int{"": nil, "7": {7}, "1-3": {1, 2, 3}, "1,3": {1, 3}, "1-2,4,6-9": {1, 2, 4, 6, 7, 8, 9}} {
+		var missing []survey.Missing
+		for _, k := range k {
+			missing = append(missing, survey.Missing{K: k, N: 10})
+		}
+		if got := numbers(missing); got != want {
+			t.Errorf("%v: %q, want %q", k, got, want)
+		}
+	}
+}
+
 // A task of a Slurm array takes its part and says so; --shard wins.
 func TestSurveyShardOfTask(t *testing.T) {
 	t.Chdir(t.TempDir())

@@ -154,6 +154,11 @@ func TestMergeMissing(t *testing.T) {
 	if fmt.Sprint(got) != fmt.Sprint(want) {
 		t.Errorf("missing\n%s\nwant\n%s", strings.Join(got, "\n"), strings.Join(want, "\n"))
 	}
+	// What an unfinished part has more is merged too.
+	putPart(t, files[2], testSettings, all, "", 3, 4, 9)
+	if more := merge(t, path, files[2]); more.Sets != m.Sets+4 || len(more.Missing) != 2 {
+		t.Errorf("%+v, want %d data sets", more, m.Sets+4)
+	}
 	putPart(t, files[2], testSettings, all, "inputs", 3, 4, -1)
 	if m := merge(t, path, files[2]); len(m.Missing) != 1 || m.Missing[0].K != 2 {
 		t.Errorf("missing %v, want part 2 alone", m.Missing)
