@@ -257,8 +257,8 @@ var catalogue = []Entry{
 		Explanation: "The points come from several laboratories or methods. The verdict allows each source a factor of its own, the same at every temperature (ln k: an offset); the degrees of freedom are those of the points less three for the curve and one for each source beyond the first. Curves are fitted beside the offsets, and give the mean over the sources; k at the reference temperature is their mean there, and its uncertainty holds the scatter between them. Nothing that matters changes when the sources are taken as one.",
 	},
 	{
-		Code: "between-source-offset", Title: "the curvature is an offset between sources", Severity: Warning,
-		Explanation: "Taken as one the sources look curved. Offsets between them are significant (F test in the power-prefactor curve, p < 0.05), and with an offset for each source the exponent of T shrinks to less than half: what looked like curvature is largely a difference between laboratories or methods. The verdict is that with offsets.",
+		Code: "between-source-offset", Title: "there is an offset between sources", Severity: Warning,
+		Explanation: "Offsets between the sources are significant (F test in the power-prefactor curve, p < 0.05), and with an offset for each source the exponent of T shrinks to less than half: what looked like curvature, or widened the scatter, when the sources were taken as one is largely a difference between laboratories or methods. The verdict is that with offsets.",
 		Cure:        "find out why the sources differ, or measure the whole range in one laboratory",
 	},
 	{

@@ -579,9 +579,12 @@ func (a *assessor) whatOffsetsChange(b *BetweenSources, many string) string {
 	shrinks := math.Abs(float64(offset.Exponent.Value)) < offsetShrinks*math.Abs(float64(pooled.Exponent.Value))
 	code, says := "sources-compared", ""
 	switch {
-	case pooled.State.Curved() && b.FTest.PValue < offsetLevel && shrinks:
+	case b.FTest.PValue < offsetLevel && shrinks:
 		code, says = "between-source-offset", "look curved: that is an offset between them."
-		if offset.State.Curved() {
+		switch {
+		case !pooled.State.Curved():
+			says = "scatter more: there is an offset between them."
+		case offset.State.Curved():
 			says = "look more curved: the rest is an offset between them."
 		}
 	case pooled.State.Curved() && !offset.State.Curved():
