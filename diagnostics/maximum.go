@@ -12,12 +12,17 @@ import (
 // after it, each after Bonferroni for the place of the maximum.
 const maximumLevel = 0.01
 
+// fallNeeded is the least number of temperatures above the maximum: a single low one
+// may be an outlier.
+const fallNeeded = 2
+
 // rateMaximum looks for an optimum: k that rises to some temperature and falls again
 // above it. The largest mean is compared with the mean over all hotter and with that
 // over all colder temperatures, by Student's t with σ̂ of power-prefactor, or, since
 // that is too large where the curve cannot follow a steep fall, with σ̂ of the same
 // curve through the temperatures up to the maximum. The more significant of the two
-// counts: a false alarm needs a rise and a fall that are both significant, and is rarer
+// counts. Of many points the largest has the largest error too, and may lie well above a
+// hotter one: the fall must be that of a curve as well. A false alarm needs a rise and a fall that are both significant, and is rarer
 // than the level all the same (TestRateMaximumFalseAlarms).
 func (a *assessor) rateMaximum() {
 	s := a.data.sample
@@ -28,7 +33,7 @@ func (a *assessor) rateMaximum() {
 			top = i
 		}
 	}
-	if top == 0 || top == len(y)-1 || a.power.Nu < 1 || !a.power.Usable() {
+	if top == 0 || top > len(y)-1-fallNeeded || a.power.Nu < 1 || !a.power.Usable() || !a.fallsAt(t[len(t)-1]) {
 		return
 	}
 	fits := []*fit.Result{a.power.Measured()}
@@ -64,6 +69,17 @@ func (a *assessor) rateMaximum() {
 		map[string]Real{"t_k": Real(t[top]), "ratio": Real(ratio), "p_value": Real(p)})
 	f.Cure = fmt.Sprintf("assess the rising part with --t-max %sK, or read the series curve in its form reversible-inactivation, which has a maximum", where)
 	a.findings = append(a.findings, f)
+}
+
+// fallsAt reports whether k falls with T at t, in K, by the curve power-prefactor or
+// the recommended one: E_loc < 0.
+func (a *assessor) fallsAt(t float64) bool {
+	for _, f := range []*fit.Result{a.power, a.fitOf(a.verdict.RecommendedCurve)} {
+		if f != nil && LocalEnergy(f, t, a.opt.Confidence).Value < 0 {
+			return true
+		}
+	}
+	return false
 }
 
 // byTemperature joins entries at one temperature: ln k, or k where errors are in k, and

@@ -76,3 +76,21 @@ func TestRateMaximumFalseAlarms(t *testing.T) {
 		}
 	}
 }
+
+// Errors in k leave ln k little scatter at the hot end, where neighbours of a fine
+// series overtake each other: no maximum.
+func TestRateMaximumOfManyNoisyPoints(t *testing.T) {
+	o := lean()
+	o.ErrorModel = fit.Absolute
+	for seed := range uint64(10) {
+		rng := rand.New(rand.NewPCG(seed, 21))
+		var ts, ks []float64
+		for i := range 2000 {
+			ti := 280 + 0.05*float64(i)
+			ts, ks = append(ts, ti), append(ks, math.Exp(20-6000/ti)*(1+0.02*rng.NormFloat64()))
+		}
+		if len(screened(t, setOf(ts, ks, nil), o, (*assessor).rateMaximum)) > 0 {
+			t.Errorf("seed %d: a maximum of straight data", seed)
+		}
+	}
+}
