@@ -1,7 +1,6 @@
 package cli
 
 import (
-	"context"
 	"errors"
 	"fmt"
 	"maps"
@@ -163,7 +162,7 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 		err = errors.Join(err, store.Close())
 	}
 	if err != nil {
-		if sum != nil && store != nil && errors.Is(context.Cause(cmd.Context()), err) {
+		if sum != nil && store != nil && cmd.Context().Err() != nil {
 			a.warn("%d of the data sets found so far are in %s; the same command goes on with the others", sum.Known+sum.Stored, o.store.path)
 		}
 		return err

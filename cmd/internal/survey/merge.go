@@ -343,7 +343,7 @@ var copyRows, copyDocuments = func() (string, string) {
 	return "INSERT INTO main.sets (settings, key, content, position, " + names + ") SELECT ?1, key, content, position, " + names +
 			" FROM part.sets AS p WHERE" + between +
 			" ON CONFLICT (settings, key) DO UPDATE SET content = excluded.content, position = excluded.position" + set.String(),
-		"INSERT OR REPLACE INTO main.assessments (id, deflated_json) SELECT s.id, a.deflated_json" +
+		"INSERT OR REPLACE INTO main.assessments (id, document) SELECT s.id, a.document" +
 			" FROM part.sets AS p JOIN main.sets AS s ON s.settings = ?1 AND s.key = p.key JOIN part.assessments AS a ON a.id = p.id WHERE" + between
 }()
 

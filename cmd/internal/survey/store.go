@@ -1,15 +1,12 @@
 package survey
 
 import (
-	"bytes"
-	"compress/flate"
 	"context"
 	"database/sql"
 	"encoding/hex"
 	"encoding/json"
 	"errors"
 	"fmt"
-	"io"
 	"io/fs"
 	"math"
 	"net/url"
@@ -88,8 +85,6 @@ type Store struct {
 	mu   sync.Mutex
 	done map[Key]Content // loaded by Done; nil before
 	bad  map[Key]string  // error codes of those that failed, likewise
-	pack *flate.Writer
-	buf  bytes.Buffer
 }
 
 // ErrNoStore is the error of a file that is no store.
@@ -130,7 +125,7 @@ CREATE TABLE shards (
 );
 CREATE TABLE assessments (
 	id INTEGER PRIMARY KEY,
-	deflated_json BLOB NOT NULL
+	document BLOB NOT NULL
 );
 CREATE TABLE sets (
 	id INTEGER PRIMARY KEY,
@@ -430,12 +425,13 @@ func (s *Store) Put(entries []Entry) error {
 			return err
 		}
 		defer row.Close()
-		document, err := tx.Prepare("INSERT OR REPLACE INTO assessments (id, deflated_json) VALUES (?, ?)")
+		document, err := tx.Prepare("INSERT OR REPLACE INTO assessments (id, document) VALUES (?, ?)")
 		if err != nil {
 			return err
 		}
 		defer document.Close()
 		var values []any
+		var packed []byte
 		for i := range entries {
 			e := &entries[i]
 			values = append(values[:0], s.id, e.Key[:], e.Content[:], e.Position)
@@ -450,10 +446,7 @@ func (s *Store) Put(entries []Entry) error {
 				}
 				continue
 			}
-			packed, err := s.deflate(e.Assessment)
-			if err != nil {
-				return err
-			}
+			packed = pack(e.Assessment, packed[:0])
 			if _, err := document.Exec(id, packed); err != nil {
 				return err
 			}
@@ -499,26 +492,6 @@ func (s *Store) Remove(keys []Key) error {
 	return nil
 }
 
-// deflate packs a document (RFC 1951). The result is valid until the next call.
-func (s *Store) deflate(document []byte) ([]byte, error) {
-	s.buf.Reset()
-	if s.pack == nil {
-		var err error
-		if s.pack, err = flate.NewWriter(&s.buf, flate.BestSpeed); err != nil {
-			return nil, err
-		}
-	} else {
-		s.pack.Reset(&s.buf)
-	}
-	if _, err := s.pack.Write(document); err != nil {
-		return nil, err
-	}
-	if err := s.pack.Close(); err != nil {
-		return nil, err
-	}
-	return s.buf.Bytes(), nil
-}
-
 // Rows calls fn with every row in the order of the table: source file, sheet,
 // place in it. It stops at the first error of fn and returns it. fn may use the store.
 func (s *Store) Rows(ctx context.Context, fn func(Row) error) error {
@@ -543,7 +516,7 @@ func (s *Store) Entries(ctx context.Context, fn func(Entry) error) error {
 func (s *Store) query(ctx context.Context, documents bool, rest string, fn func(Entry) error, args ...any) error {
 	from, document := "sets", "NULL"
 	if documents {
-		from, document = "sets LEFT JOIN assessments USING (id)", "deflated_json"
+		from, document = "sets LEFT JOIN assessments USING (id)", "document"
 	}
 	rows, err := s.db.QueryContext(ctx, "SELECT key, content, position, "+document+", "+strings.Join(columns, ", ")+
 		" FROM "+from+" WHERE settings = ?1 "+rest, append([]any{s.id}, args...)...)
@@ -563,7 +536,7 @@ func (s *Store) query(ctx context.Context, documents bool, rest string, fn func(
 		}
 		e.Key, e.Content = Key(key), Content(content)
 		if packed != nil {
-			if e.Assessment, err = inflate(packed); err != nil {
+			if e.Assessment, err = unpack(packed); err != nil {
 				return s.explain(err)
 			}
 		}
@@ -581,7 +554,7 @@ func (s *Store) Assessment(setID string) ([]byte, error) {
 		return nil, fmt.Errorf("survey: %q is not a set id; survey table lists them", setID)
 	}
 	var packed []byte
-	err := s.db.QueryRow("SELECT deflated_json FROM sets LEFT JOIN assessments USING (id) WHERE settings = ? AND key = ?", s.id, key[:]).Scan(&packed)
+	err := s.db.QueryRow("SELECT document FROM sets LEFT JOIN assessments USING (id) WHERE settings = ? AND key = ?", s.id, key[:]).Scan(&packed)
 	if errors.Is(err, sql.ErrNoRows) {
 		return nil, fmt.Errorf("survey: %s holds no data set %s; survey table lists them", s.path, setID)
 	}
@@ -591,16 +564,8 @@ func (s *Store) Assessment(setID string) ([]byte, error) {
 	if packed == nil {
 		return nil, nil
 	}
-	document, err := inflate(packed)
+	document, err := unpack(packed)
 	return document, s.explain(err)
-}
-
-func inflate(packed []byte) ([]byte, error) {
-	document, err := io.ReadAll(flate.NewReader(bytes.NewReader(packed)))
-	if err != nil {
-		return nil, fmt.Errorf("an assessment is damaged: %w", err)
-	}
-	return document, nil
 }
 
 // SetShard records which part of a survey this is, and how far it is.
