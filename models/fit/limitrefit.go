@@ -172,11 +172,12 @@ func (r *limitRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 			}
 			out.How = max(out.How, HowCold)
 		}
+		nests := nestsLine(r.curves[j])
 		switch {
-		case w.ok && !(shaped && r.line.ok && r.worse(w)):
+		case w.ok && !(nests && r.line.ok && r.worse(w)):
 			out.RSS[j] = w.e.rss(w.value)
 			copy(out.P[j], w.e.par)
-		case shaped || r.fits[j].Status == Excluded:
+		case nests || r.fits[j].Status == Excluded:
 			out.RSS[j] = math.Inf(1)
 			out.blank(j)
 		default:
@@ -188,8 +189,8 @@ func (r *limitRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 	}
 }
 
-// worse reports whether a shaped curve does not beat the straight line, where that is
-// a candidate.
+// worse reports whether a curve that nests the straight line does not beat it, where
+// that is a candidate.
 func (r *limitRefitter) worse(w *limitWork) bool {
 	for j, c := range r.curves {
 		if l := r.work[j]; c.Info().Name == models.Straight().Info().Name && l.ok {

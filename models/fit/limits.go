@@ -745,18 +745,27 @@ func fitLimits(s *Sample, c models.Curve) *Result {
 			least, par, lambda, converged = value, append(par[:0], e.par...), e.lambda, ok
 		}
 	}
-	_, shaped := c.(models.Shaped)
-	if par == nil && !shaped {
+	if par == nil && !nestsLine(c) {
 		r.Reason = "no fit with the limits was found" + because(exact.Reason)
 		return r
 	}
 	if par == nil || line != nil && !(e.rss(least) < line.RSS*(1-1e-12)) {
 		r.Status, r.RSS, r.LogLik = Excluded, line.RSS, line.LogLik
-		r.Reason = "the data bend the other way, or not at all"
+		r.Reason = bendsTheOtherWay
 		return r
 	}
 	r.finishLimits(s, e, par, lambda, least, converged)
 	return r
+}
+
+// nestsLine reports whether a curve is the straight line at the end of what it can be,
+// and so is excluded where the data bend the other way.
+func nestsLine(c models.Curve) bool {
+	switch c.(type) {
+	case models.Shaped, models.Seeded:
+		return true
+	}
+	return false
 }
 
 func because(reason string) string {
@@ -781,9 +790,9 @@ func limitsUnused(s *Sample, exact *Result) string {
 
 // limitStarts are fits of the curve to the sample with its limits completed about the
 // straight line and about power-prefactor, and where these come from. line is the
-// fit of the straight line, which a shaped curve has to beat; nil for other curves.
+// fit of the straight line, where the curve has to beat it; nil for other curves.
 func limitStarts(s *Sample, c models.Curve, e *censored) (starts [][]float64, line *Result) {
-	if _, shaped := c.(models.Shaped); shaped {
+	if nestsLine(c) {
 		line = fitLimits(s, models.Straight())
 	}
 	for _, about := range []models.Curve{models.Straight(), models.PowerPrefactor{}} {

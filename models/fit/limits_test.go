@@ -419,6 +419,67 @@ func TestLimitRefitter(t *testing.T) {
 	}
 }
 
+// A curve that data bending the other way exclude is excluded with limits as without,
+// in the fit and in every resample: it has not failed. Tunnelling bends upwards only,
+// Vogel downwards only; the bend of the data is put in by hand.
+func TestSeededExcludedWithLimits(t *testing.T) {
+	for _, model := range ErrorModels {
+		for _, c := range []struct {
+			curve models.Curve
+			bend  float64 // of ln k, at 35 K from the middle
+		}{{models.TunnellingBell(), -0.5}, {models.TunnellingWigner(), -0.5}, {models.Vogel{}, 0.5}} {
+			name := string(model) + ", " + c.curve.Info().Name
+			at := func(temp float64) float64 {
+				return math.Exp(-6.8 - 10000*(1/temp-1/310.) + c.bend*square((temp-310)/35))
+			}
+			var temps, k, v []float64
+			for temp := 280.0; temp <= 340; temp += 10 {
+				temps, k = append(temps, temp), append(k, at(temp))
+				switch {
+				case model.InK() && model.KnownSigma():
+					v = append(v, square(0.02*at(temp)))
+				case model.KnownSigma():
+					v = append(v, 4e-4)
+				default:
+					v = append(v, 1)
+				}
+			}
+			s, err := NewSample(model, temps, k, v)
+			if err != nil {
+				t.Fatal(err)
+			}
+			s = limited(t, s, Limit{275, 1.3 * at(275), true, v[0]})
+			curves := []models.Curve{models.Straight(), models.PowerPrefactor{}, c.curve}
+			var fits []*Result
+			for _, c := range curves {
+				fits = append(fits, Fit(s, c))
+			}
+			if f := fits[2]; f.Status != Excluded || f.RSS != fits[0].RSS {
+				t.Errorf("%s: the fit is %s (%s), RSS %g; want excluded with that of the line, %g", name, f.Status, f.Reason, f.RSS, fits[0].RSS)
+			}
+			r := NewRefitter(s, curves, fits, RefitOptions{})
+			rng := rand.New(rand.NewPCG(5, 6))
+			var out Refit
+			for range 20 {
+				var y []float64
+				for _, temp := range s.All().T {
+					e := 0.01 * rng.NormFloat64()
+					if model.InK() {
+						y = append(y, at(temp)*(1+e))
+					} else {
+						y = append(y, math.Log(at(temp))+e)
+					}
+				}
+				r.Refit(y, &out)
+				if out.How == HowFailed || !math.IsInf(out.RSS[2], 1) {
+					t.Errorf("%s: RSS %g of a resample, road %d; want +Inf: excluded", name, out.RSS[2], out.How)
+					break
+				}
+			}
+		}
+	}
+}
+
 func BenchmarkRefitLimits(b *testing.B) {
 	for _, model := range []ErrorModel{Relative, Absolute} {
 		b.Run(string(model), func(b *testing.B) {
