@@ -48,8 +48,12 @@ func (a *app) mergeSurvey(cmd *cobra.Command, o *storeFlags, parts []string) err
 	if !m.Complete() {
 		whole = "missing: " + numbers(m.Missing)
 	}
-	_, err = fmt.Fprintf(a.out, "%s: %s, %d of them could not be used\n%d of %s, %s\nnext: onebarrier survey table --store %s\n",
-		o.path, manyOf(m.Sets, "data set"), m.Failed, m.Shards-len(m.Missing), manyOf(m.Shards, "part"), whole, report.ShellWord(o.path))
+	failed := ""
+	if m.Failed > 0 {
+		failed = fmt.Sprintf(", %d of them could not be used", m.Failed)
+	}
+	_, err = fmt.Fprintf(a.out, "%s: %s%s\n%d of %s, %s\nnext: onebarrier survey table --store %s\n",
+		o.path, manyOf(m.Sets, "data set"), failed, m.Shards-len(m.Missing), manyOf(m.Shards, "part"), whole, report.ShellWord(o.path))
 	if err != nil {
 		return err
 	}
