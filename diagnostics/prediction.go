@@ -17,6 +17,8 @@ const (
 	// of the straight line to be reported.
 	firstWeight = 0.5
 	worseThan   = 2
+	// absurd is how many times that error a miss may be before its size says nothing.
+	absurd = 1000
 	// refitted is the largest number of entries for which curves that are not linear
 	// are fitted anew without each temperature.
 	refitted = 30
@@ -118,9 +120,13 @@ func (a *assessor) firstExtrapolates() {
 	if first.Curve == line || !known || !compared || !(own >= worst) || !(own > worseThan*straight) {
 		return
 	}
+	misses := "by " + significant(float64(own), 2, "")
+	if own > absurd*straight {
+		misses = fmt.Sprintf("by more than %d times as much as the straight line", absurd)
+	}
 	a.find("first-extrapolates-worst",
-		fmt.Sprintf("%s ranks first, but of all candidates it predicts the hottest and the coldest third of the temperatures worst from the rest: it misses by %s on average, the straight line by %s (%s)",
-			first.Curve, significant(float64(own), 2, ""), significant(float64(straight), 2, ""), a.prediction.Unit),
+		fmt.Sprintf("%s ranks first, but of all candidates it predicts the hottest and the coldest third of the temperatures worst from the rest: it misses %s on average, the straight line by %s (%s)",
+			first.Curve, misses, significant(float64(straight), 2, ""), a.prediction.Unit),
 		nil, map[string]Real{"ends": own, "ends_straight": straight})
 }
 

@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"slices"
+	"strings"
 	"testing"
 
 	"onebarrier/models"
@@ -212,6 +213,30 @@ func TestRuleOfFirstExtrapolatesWorst(t *testing.T) {
 		a.firstExtrapolates()
 		if got := len(a.findings) == 1; got != c.want {
 			t.Errorf("%s: reported %t", c.what, got)
+		}
+	}
+}
+
+// A miss beyond all measure is not printed in figures.
+func TestAbsurdMiss(t *testing.T) {
+	for _, c := range []struct {
+		ends Real
+		says string
+	}{
+		{20, "misses by 20 on average"},
+		{999, "misses by 1.0×10^3 on average"},
+		{1001, "misses by more than 1000 times as much as the straight line on average"},
+		{3e143, "misses by more than 1000 times as much as the straight line on average"},
+		{Real(math.Inf(1)), "misses by more than 1000 times as much as the straight line on average"},
+	} {
+		a := &assessor{
+			ranking: []Ranked{{Curve: "parallel", Status: StatusRanked, FamWeight: 1}},
+			prediction: &Prediction{Unit: "ln k", Curves: []CurvePrediction{
+				{Curve: "parallel", Ends: c.ends}, {Curve: "straight", Ends: 1}}},
+		}
+		a.firstExtrapolates()
+		if len(a.findings) != 1 || !strings.Contains(a.findings[0].Message, c.says) {
+			t.Errorf("%g: %+v, want %q", float64(c.ends), a.findings, c.says)
 		}
 	}
 }
