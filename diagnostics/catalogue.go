@@ -323,6 +323,11 @@ var catalogue = []Entry{
 		Cure:        "compare with --error-model absolute",
 	},
 	{
+		Code: "relative-fits-better", Title: "errors in per cent describe the scatter better", Severity: Warning,
+		Explanation: "Under error model absolute every k is uncertain by the same amount; here an error that is the same share of every k describes the scatter better: the AIC of one curve is lower by more than 4 under error model relative, both being densities of k. Errors of one size then give the large rate constants nearly all of the weight: a verdict on a few hot points, which may take their scatter for curvature, and outliers that are none.",
+		Cure:        "compare with --error-model relative",
+	},
+	{
 		Code: "first-extrapolates-worst", Title: "the first of the ranking extrapolates worst", Severity: Warning,
 		Explanation: "Each candidate is fitted without the hottest third of the temperatures, and without the coldest, and predicts them. The curve that ranks first, with half of the weight or more, does so worst of all candidates, and with more than twice the error of the straight line: what it gains inside the range it owes to the ends themselves. Its parameters rest on few points, and outside the range it misleads.",
 		Cure:        "do not extrapolate with it; measure beyond the ends of the range",
@@ -407,7 +412,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "resamples-failed", Title: "some resamples could not be fitted", Severity: Warning,
-		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares.",
-		Cure:        "--scheme parametric, or fewer candidates with --models; a few failures in a thousand do no harm",
+		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares. Which of them fail is not left to chance: where more than 5 % do, no repeat shares are given. Resamples of --scheme parametric fail less often than those of other schemes.",
+		Cure:        "fewer candidates with --models; a few failures in a thousand do no harm",
 	},
 }

@@ -17,7 +17,8 @@ const (
 	// residualLevel is the level of the checks of residuals: there are two beside
 	// the verdict, and one experiment in fifty should hear of them for nothing.
 	residualLevel = 0.01
-	// absoluteGain is the difference of AIC from which errors in k are proposed.
+	// absoluteGain is the difference of AIC from which the other error model, in k or
+	// in per cent, is proposed.
 	absoluteGain = 4
 	// absoluteHint is the p-value of the spread test above which errors in k are not
 	// tried: they make the scatter of ln k shrink as k grows. Of 1000 sets of six with
@@ -127,9 +128,13 @@ func (a *assessor) checkResiduals() {
 	}
 	n := s.Len()
 	if c.Spread.PValue < residualLevel {
-		a.find("scatter-not-even", fmt.Sprintf("the scatter about %s %s with T (p = %s); at N = %d this check sees a threefold change over the range in %s of sets",
+		f := newFinding("scatter-not-even", fmt.Sprintf("the scatter about %s %s with T (p = %s); at N = %d this check sees a threefold change over the range in %s of sets",
 			c.Curve, c.Trend, pText(float64(c.Spread.PValue)), n, share(c.Spread.Power)), nil,
 			map[string]Real{"p_value": c.Spread.PValue, "power": c.Spread.Power})
+		if s.Model.InK() {
+			f.Cure = "state u(k) for every point; where the error is a share of k, --error-model relative"
+		}
+		a.findings = append(a.findings, f)
 	}
 	if c.Normality.PValue < residualLevel {
 		a.find("residuals-not-normal", fmt.Sprintf("the residuals about %s are not normal (p = %s): a few are far larger than the rest",
@@ -137,6 +142,7 @@ func (a *assessor) checkResiduals() {
 			map[string]Real{"p_value": c.Normality.PValue, "power": c.Normality.Power})
 	}
 	a.compareAbsolute(r, c)
+	a.compareRelative(r, c)
 }
 
 // share writes a probability in per cent.
@@ -169,6 +175,32 @@ func (a *assessor) compareAbsolute(r *fit.Result, c *ResidualChecks) {
 	gain := r.AIC() - f.AIC()
 	if c.AbsoluteGain = Real(gain); gain > absoluteGain {
 		a.find("absolute-fits-better", fmt.Sprintf("errors of one size in k describe the scatter better than errors in per cent: AIC of %s lower by %.1f", c.Curve, gain),
+			nil, map[string]Real{"aic_gain": Real(gain)})
+	}
+}
+
+// compareRelative is the reverse of compareAbsolute: under errors in k of one size, the
+// same curve is fitted to ln k. Where ln k excludes it, for it bends only the other way
+// there, power-prefactor is compared, which is always defined.
+func (a *assessor) compareRelative(r *fit.Result, c *ResidualChecks) {
+	s := a.data.sample
+	if s.Model != fit.Absolute || len(s.Nuisance) > 0 || s.Len() > FullyResampled || floats.Min(s.K) <= 0 {
+		return
+	}
+	inLnK, err := fit.NewSample(fit.Relative, s.T, s.K, s.V)
+	if err != nil {
+		return
+	}
+	f := fit.Fit(inLnK, r.Curve)
+	if f.Status != fit.Converged {
+		r, f = a.power, fit.Fit(inLnK, a.power.Curve)
+	}
+	if r.Status != fit.Converged || f.Status != fit.Converged {
+		return
+	}
+	gain := r.AIC() - f.AIC()
+	if c.AbsoluteGain = Real(-gain); gain > absoluteGain {
+		a.find("relative-fits-better", fmt.Sprintf("errors in per cent describe the scatter better than errors of one size in k: AIC of %s lower by %.1f", f.Curve.Info().Name, gain),
 			nil, map[string]Real{"aic_gain": Real(gain)})
 	}
 }

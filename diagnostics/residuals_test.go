@@ -4,6 +4,8 @@ import (
 	"flag"
 	"math"
 	"math/rand/v2"
+	"slices"
+	"strings"
 	"testing"
 
 	"onebarrier/models"
@@ -262,5 +264,57 @@ func TestResidualsThatCannotBeChecked(t *testing.T) {
 	}
 	if p := powerAt(9, func(i int) float64 { return checkPower[i].spread }); math.Abs(p-0.0365) > 1e-12 {
 		t.Errorf("power at 9 is %g, between 0.028 at 8 and 0.045 at 10", p)
+	}
+}
+
+// Under errors in k, errors in per cent are proposed where the data have them, by the
+// difference of two assessments' criteria, and not where the errors are in k indeed.
+func TestRelativeErrorsAreProposed(t *testing.T) {
+	o := quick()
+	o.ErrorModel = fit.Absolute
+	o.Models = []models.Curve{models.Straight(), models.PowerPrefactor{}}
+	s := lineSet(12, 283, 353, 71e3, 0.015, 11)
+	a := mustAssess(t, s, o)
+	if !a.finding("relative-fits-better") {
+		t.Fatalf("errors in per cent are not found: %+v", a.ResidualChecks)
+	}
+	for _, f := range a.Findings {
+		if strings.Contains(f.Cure, "absolute") {
+			t.Errorf("under errors in k the cure of %s is %q", f.Code, f.Cure)
+		}
+	}
+	r := o
+	r.ErrorModel = fit.Relative
+	reference.Close(t, "gain", float64(a.ResidualChecks.AbsoluteGain),
+		float64(mustAssess(t, s, r).row(t, "power-prefactor").AIC-a.row(t, "power-prefactor").AIC), 1e-9)
+
+	// One error of k, 4 % of the middle of the range.
+	hits, compared := 0, 0
+	const sets = 400
+	for i := range sets {
+		rng := rand.New(rand.NewPCG(uint64(i), 31))
+		var ts, ks []float64
+		for j := range 10 {
+			ti := 280 + 7*float64(j)
+			ts, ks = append(ts, ti), append(ks, math.Exp(-60e3/models.GasConstant*(1/ti-1/310.0))+0.04*rng.NormFloat64())
+		}
+		if slices.Min(ks) <= 0 {
+			continue
+		}
+		compared++
+		for _, code := range screened(t, setOf(ts, ks, nil), o, (*assessor).checkResiduals) {
+			if code == "relative-fits-better" {
+				hits++
+			}
+		}
+	}
+	t.Logf("errors in k: %d of %d sets of ten hear of errors in per cent", hits, compared)
+	if compared < sets/2 || float64(hits) > 0.02*float64(compared) {
+		t.Errorf("errors in k: %d of %d sets of ten hear of errors in per cent", hits, compared)
+	}
+	// No rate constant that is 0 or less has a logarithm.
+	temps, k := []float64{290, 300, 310, 320, 330, 340}, []float64{-0.01, 0.02, 0.05, 0.11, 0.2, 0.41}
+	if b := mustAssess(t, setOf(temps, k, nil), o); b.finding("relative-fits-better") || b.ResidualChecks != nil && b.ResidualChecks.AbsoluteGain.Known() {
+		t.Errorf("compared where k is negative: %+v", b.ResidualChecks)
 	}
 }
