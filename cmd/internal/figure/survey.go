@@ -333,9 +333,6 @@ func lookOf(state string) marker {
 	return stateLooks["untestable"]
 }
 
-// colorOf is the colour of a verdict.
-func colorOf(state string) color.Color { return lookOf(state).edge.Color }
-
 // faint is a colour with little opacity.
 func faint(c color.Color) color.Color {
 	n := color.NRGBAModel.Convert(c).(color.NRGBA)

@@ -104,9 +104,9 @@ func TestSurveyOfMany(t *testing.T) {
 		if i == 500 {
 			half = 1e6
 		}
-		state := "unresolved"
+		state := "curved-open"
 		if i%5 == 0 {
-			state = "curved-open"
+			state = "unresolved"
 		}
 		sets = append(sets, SurveySet{State: state, Change: float64(i), Lower: float64(i) - half, Upper: float64(i) + half, P: 0.5})
 	}
@@ -123,7 +123,7 @@ func TestSurveyOfMany(t *testing.T) {
 		if i == 99 {
 			least, most = 500-1e6, 500+1e6
 		}
-		want := SurveyBar{State: "unresolved", Change: first + 2, Lower: first - 8, Upper: first + 12, Least: least, Most: most}
+		want := SurveyBar{State: "curved-open", Change: first + 2, Lower: first - 8, Upper: first + 12, Least: least, Most: most}
 		if i == 99 { // 496 … 500: the lower ends are −999500, 486, 487, 488, 489
 			want.Lower = 487
 		}
