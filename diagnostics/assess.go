@@ -433,11 +433,17 @@ func (a *assessor) resample(ctx context.Context) error {
 	return nil
 }
 
+// mostFailed is the percentage of failed resamples above which no repeat shares are
+// given. Which resamples fail is not left to chance, so that shares of the others may
+// be wrong by about as much.
+const mostFailed = 5
+
 // take turns the bootstrap's output into its place in the assessment.
 func (a *assessor) take(out *bootstrap.Output) {
 	r := &Resampling{Scheme: string(out.Scheme), Resamples: out.Resamples, Failed: out.Failed,
 		RepeatShare: map[State]Real{}, Intervals: []ResampledInterval{}}
-	if good := out.Resamples - out.Failed; good > 0 {
+	shares := 100*out.Failed <= mostFailed*out.Resamples
+	if good := out.Resamples - out.Failed; shares && good > 0 {
 		for i, n := range out.States {
 			r.RepeatShare[States[i]] = Real(float64(n) / float64(good))
 		}
@@ -460,8 +466,16 @@ func (a *assessor) take(out *bootstrap.Output) {
 		}
 	}
 	if 100*out.Failed > out.Resamples {
-		a.find("resamples-failed", fmt.Sprintf("%d of %d resamples could not be fitted and are not in the shares", out.Failed, out.Resamples), nil,
-			map[string]Real{"failed": Real(out.Failed), "resamples": Real(out.Resamples)})
+		message := fmt.Sprintf("%d of %d resamples could not be fitted and are not in the shares", out.Failed, out.Resamples)
+		if !shares {
+			message = fmt.Sprintf("%d of %d resamples could not be fitted: no repeat shares are given, because those of the rest need not hold where more than %d %% fail",
+				out.Failed, out.Resamples, mostFailed)
+		}
+		f := newFinding("resamples-failed", message, nil, map[string]Real{"failed": Real(out.Failed), "resamples": Real(out.Resamples)})
+		if out.Scheme != bootstrap.Parametric {
+			f.Cure = "--scheme parametric, or " + f.Cure
+		}
+		a.findings = append(a.findings, f)
 	}
 	a.resampling = r
 }
