@@ -300,7 +300,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "adequacy-unchecked", Title: "adequacy cannot be checked", Severity: Info,
-		Explanation: "Without repeats and without stated uncertainties nothing tells how large the scatter about the true curve should be. The runs test is shown; it does not decide, since it cannot reach 5 % for N ≤ 6.",
+		Explanation: "Without repeats and without stated uncertainties nothing tells how large the scatter about the true curve should be. Under error model scaled the factor common to all stated uncertainties is taken from the scatter, which they then cannot check: only repeats could. The runs test is shown; it does not decide, since it cannot reach 5 % for N ≤ 6.",
 		Cure:        "repeat some temperatures, or state u(k)",
 	},
 

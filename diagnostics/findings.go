@@ -74,7 +74,12 @@ func RankingFindings(ranking []Ranked, s *fit.Sample, by Criterion) []Finding {
 	case exact:
 		add("perfect-data", "the residuals are rounding error: these numbers were computed, not measured")
 	case len(fitted) > 0 && unchecked == len(fitted):
-		add("adequacy-unchecked", "without repeats or stated uncertainties the fit of a curve cannot be checked")
+		f := newFinding("adequacy-unchecked", "without repeats or stated uncertainties the fit of a curve cannot be checked", nil, nil)
+		if s.Model == fit.Scaled {
+			f.Message = "the stated uncertainties are used up by the factor common to all, taken from the scatter: only repeats could check the fit of a curve"
+			f.Cure = "repeat some temperatures"
+		}
+		fs = append(fs, f)
 	case len(fitted) > 0 && inadequate == len(fitted):
 		message := "none of the candidates fits: every one fails its adequacy test at 1 %"
 		if slices.ContainsFunc(ranking[0].Adequacy, func(t Adequacy) bool { return t.Test == TestPureError }) {
@@ -101,8 +106,9 @@ func rankingDiffers(curve, why string) Finding {
 	return newFinding("ranking-differs", fmt.Sprintf("recommended is %s: %s", curve, why), nil, nil)
 }
 
-// secondBarrierFound reports a second-barrier test with p < 0.05.
-func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
+// secondBarrierFound reports a second-barrier test with p < 0.05. The ranking tells
+// whether power-prefactor describes the data better than two paths.
+func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Finding {
 	low, high := s.Range()
 	where := ""
 	if b.Crossover[0].Known() && b.Crossover[1].Known() {
@@ -112,13 +118,17 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
 	if s.Model.InK() {
 		approximate = " (approximate: linearised about the straight line)"
 	}
+	still := ""
+	if ranksAbove(ranking, models.PowerPrefactor{}, models.Parallel{}) {
+		still = " (the power-prefactor curve describes them better still)"
+	}
 	rate := "7 to 8 %"
 	if s.DistinctT() <= minTemperatures {
 		rate = "9 %"
 	}
 	fs := []Finding{newFinding("second-barrier",
-		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier, p = %s%s; verdict or this finding raises a false alarm in %s of straight sets",
-			where, pText(float64(b.PValue)), approximate, rate),
+		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier%s, p = %s%s; verdict or this finding raises a false alarm in %s of straight sets",
+			where, still, pText(float64(b.PValue)), approximate, rate),
 		nil, map[string]Real{"p_value": b.PValue, "crossover_low_k": b.Crossover[0], "crossover_high_k": b.Crossover[1]})}
 	end := func(p Real, t float64) {
 		if p > 0.20 {
@@ -130,6 +140,17 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample) []Finding {
 	end(b.WithoutEnds.PWithoutTMax, high)
 	end(b.WithoutEnds.PWithoutTMin, low)
 	return fs
+}
+
+// ranksAbove reports whether both curves are ranked, and a before b.
+func ranksAbove(ranking []Ranked, a, b models.Curve) bool {
+	at := func(c models.Curve) int {
+		return slices.IndexFunc(ranking, func(r Ranked) bool {
+			return r.Curve == c.Info().Name && r.Status == StatusRanked
+		})
+	}
+	first, second := at(a), at(b)
+	return first >= 0 && second > first
 }
 
 // pText prints a p-value with two figures.

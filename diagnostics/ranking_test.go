@@ -147,6 +147,21 @@ func TestAICcUndefined(t *testing.T) {
 	}
 }
 
+// Stated uncertainties that are scaled to the scatter check nothing: stating them is
+// no cure.
+func TestAdequacyUncheckedUnderScaled(t *testing.T) {
+	s := synthetic(t, "s5_hetero", fit.Scaled)
+	for _, f := range RankingFindings(rankNamed(t, s, ByAICc, "power-prefactor", "straight"), s, ByAICc) {
+		if f.Code == "adequacy-unchecked" {
+			if !strings.Contains(f.Message, "used up by the factor common to all") || f.Cure != "repeat some temperatures" {
+				t.Errorf("%+v", f)
+			}
+			return
+		}
+	}
+	t.Error("no finding adequacy-unchecked")
+}
+
 // Excluded curves come last and say why: where E falls two parallel paths cannot
 // describe the data.
 func TestExcludedLast(t *testing.T) {

@@ -191,7 +191,23 @@ func TestSecondBarrierRestsOnAnEnd(t *testing.T) {
 	if !(r.PValue < 0.05 && r.WithoutEnds.PWithoutTMax > 0.20) {
 		t.Fatalf("p = %g, without T_max %g", r.PValue, r.WithoutEnds.PWithoutTMax)
 	}
-	fs := secondBarrierFound(r, s)
+	// Better still is only a curve that ranks above.
+	const still = "(the power-prefactor curve describes them better still)"
+	power, parallel := Ranked{Curve: "power-prefactor", Status: StatusRanked}, Ranked{Curve: "parallel", Status: StatusRanked}
+	for _, c := range []struct {
+		ranking []Ranked
+		want    bool
+	}{
+		{[]Ranked{power, parallel}, true},
+		{[]Ranked{parallel, power}, false},
+		{[]Ranked{power, {Curve: "parallel", Status: StatusExcluded}}, false},
+		{[]Ranked{parallel}, false},
+	} {
+		if got := strings.Contains(secondBarrierFound(r, s, c.ranking)[0].Message, still); got != c.want {
+			t.Errorf("%+v: better still is %t", c.ranking, got)
+		}
+	}
+	fs := secondBarrierFound(r, s, nil)
 	if len(fs) != 2 || fs[1].Code != "second-barrier-rests-on-end" || !strings.Contains(fs[1].Message, "340 K") {
 		t.Errorf("%+v", fs)
 	}

@@ -226,7 +226,7 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding { return notAPrefactor(t.Exponent.Value, in.signedEnergy(t.Change.Value)) })
 	add(in.PerMolecule && !in.Untestable && in.Rule.Band[1] < 3, func() Finding { return bandNarrow(in.Rule.Band) })
 	if b := in.SecondBarrier; b.found() {
-		fs = append(fs, secondBarrierFound(b, in.Sample)...)
+		fs = append(fs, secondBarrierFound(b, in.Sample, in.Ranking)...)
 	}
 	add(why != "", func() Finding { return rankingDiffers(v.RecommendedCurve, why) })
 	add(v.State.Curved() && v.RecommendedCurve != "", func() Finding {

@@ -415,8 +415,8 @@ func (p *page) note(styled, label, message, cure string, rows []int) []string {
 	return lines
 }
 
-// namesPlace finds file:line in a message.
-var namesPlace = regexp.MustCompile(`\S:\d+\b`)
+// namesPlace finds file:line in a message, or "row 7", which is the line.
+var namesPlace = regexp.MustCompile(`\S:\d+\b|\brows? \d`)
 
 // lineList names the first few lines of a file.
 func lineList(rows []int) string {

@@ -226,6 +226,16 @@ func TestFindingsAreShort(t *testing.T) {
 	if strings.Contains(out, "repeat some temperatures") || strings.Contains(out, "conditional-on-choice") {
 		t.Errorf("not short:\n%s", out)
 	}
+	// A row is a line: one number is enough.
+	b := fixture()
+	for i := range b.Findings {
+		if b.Findings[i].Code == "deciding-point" {
+			b.Findings[i].Message = "the verdict rests on row 9 at 353 K"
+		}
+	}
+	if out := text(t, b, report.Text{}); strings.Contains(out, "(line 9)") || !strings.Contains(out, "row 9") {
+		t.Errorf("the row is named twice, or not:\n%s", out)
+	}
 	for i := range a.Findings {
 		a.Findings[i].Severity = diagnostics.Warning
 	}
