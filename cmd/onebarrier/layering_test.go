@@ -37,7 +37,7 @@ var forTests = []string{"models/modeltest", "models/reference"}
 // notInLibrary are the modules on which no library package may depend, however
 // far down: a chemist's own program imports the library without them.
 var notInLibrary = []string{
-	"github.com/spf13/cobra", "gonum.org/v1/plot", "github.com/xuri/excelize", "database/sql", "modernc.org/sqlite", "testing",
+	"github.com/spf13/cobra", "gonum.org/v1/plot", "github.com/xuri/excelize", "github.com/parquet-go", "database/sql", "modernc.org/sqlite", "testing",
 }
 
 // pkg is a package with its own imports and everything it depends on.
