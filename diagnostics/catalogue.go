@@ -412,7 +412,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "resamples-failed", Title: "some resamples could not be fitted", Severity: Warning,
-		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares. Which of them fail is not left to chance: where more than 5 % do, no repeat shares are given. Resamples of --scheme parametric fail less often than those of other schemes.",
+		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares. Which of them fail is not left to chance: where more than 5 % do, no repeat shares are given. Resampling pairs may leave out temperatures that a curve needs; --scheme parametric keeps them all.",
 		Cure:        "fewer candidates with --models; a few failures in a thousand do no harm",
 	},
 }
