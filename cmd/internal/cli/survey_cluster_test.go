@@ -29,7 +29,7 @@ func writeArchive(t *testing.T, dir string, n int) {
 	for i := range n {
 		for j := range 8 {
 			T := 280 + 10*j
-			// E falls from 80 to 50 kJ/mol over the sets; the last digits scatter.
+			// Invented: k rises with T, and its digits scatter.
 			fmt.Fprintf(&b, "set %d,%d,%.3ge%d\n", i, T, 1+float64((7*i+3*j)%10)/10+float64(j), j/2-5)
 		}
 	}
