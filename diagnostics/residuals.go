@@ -184,7 +184,7 @@ func (a *assessor) compareAbsolute(r *fit.Result, c *ResidualChecks) {
 // there, power-prefactor is compared, which is always defined.
 func (a *assessor) compareRelative(r *fit.Result, c *ResidualChecks) {
 	s := a.data.sample
-	if s.Model != fit.Absolute || len(s.Nuisance) > 0 || s.Len() > FullyResampled || floats.Min(s.K) <= 0 {
+	if s.Model != fit.Absolute || len(s.Nuisance) > 0 || floats.Min(s.K) <= 0 {
 		return
 	}
 	inLnK, err := fit.NewSample(fit.Relative, s.T, s.K, s.V)
