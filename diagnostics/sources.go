@@ -216,7 +216,7 @@ func (p *prepared) splitSources(replicates string) error {
 	onMeans := p.basis == BasisMeans
 	p.single = p.single.WithOffsets(offset(p.source), contrasts(p.source))
 	if p.means != nil {
-		means := p.source // of each mean
+		var means []int // source of each mean
 		if onMeans {
 			means = entry
 		} else {

@@ -443,7 +443,6 @@ func TestMessages(t *testing.T) {
 	if got := strings.Split(err.Error(), "\n"); len(got) != 21 || got[20] != "and 10 more" {
 		t.Errorf("thirty problems print as %d lines, the last %q", len(got), got[len(got)-1])
 	}
-	_, err = Read("rates.csv", strings.NewReader("T,k/s^-1\n300,1\n"), Options{})
 	for _, c := range []struct {
 		text string
 		opt  Options

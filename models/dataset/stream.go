@@ -663,7 +663,6 @@ type streamed struct {
 	err  error
 
 	problems     Problems
-	begun        bool
 	invalid, nul bool
 	bytes        []byte
 }

@@ -141,7 +141,7 @@ func TestNoNuisance(t *testing.T) {
 	plain := *s
 	plain.Nuisance = nil
 	f, g := Fit(&plain, models.PowerPrefactor{}), Fit(s, models.PowerPrefactor{})
-	if f.Spent != 0 || f.Beside != nil && len(f.Beside) > 0 || f.Nu != g.Nu+1 || f.K() != g.K()-1 {
+	if f.Spent != 0 || len(f.Beside) > 0 || f.Nu != g.Nu+1 || f.K() != g.K()-1 {
 		t.Errorf("%+v", f)
 	}
 }

@@ -26,7 +26,7 @@ func TestExactDataGiveExactParameters(t *testing.T) {
 			e := 1000 * rapid.Float64Range(20, 200).Draw(rt, "E")
 			p := []float64{rapid.Float64Range(-10, 5).Draw(rt, "ln k"), e}
 			tolerance := 1e-9
-			switch c.(type) {
+			switch c := c.(type) {
 			case models.PowerPrefactor:
 				p = append(p, rapid.Float64Range(-30, 30).Draw(rt, "n"))
 			case models.Parallel:
@@ -45,7 +45,7 @@ func TestExactDataGiveExactParameters(t *testing.T) {
 				p = append(p, rapid.Float64Range(-30, 30).Draw(rt, "n"), rapid.Float64Range(-30, 30).Draw(rt, "drift"))
 				tolerance = 1e-7
 			case models.Seeded:
-				least, straight, most := c.(models.Seeded).Bounds(tRef, low, high)
+				least, straight, most := c.Bounds(tRef, low, high)
 				q := least + (most-least)*rapid.Float64Range(0.1, 0.9).Draw(rt, "place between the bounds")
 				if math.Abs(q-straight) < 0.1*(most-least) {
 					q = straight + 0.1*(most-least)
