@@ -92,6 +92,49 @@ func numbers(missing []survey.Missing) string {
 	return strings.Join(list, ",")
 }
 
+// partLines says of the parts in a store how far they are, one by one where they are
+// few.
+func partLines(shards []survey.Shard) (lines []string) {
+	const few = 4
+	for len(shards) > 0 {
+		n := shards[0].N
+		same := slices.IndexFunc(shards, func(h survey.Shard) bool { return h.N != n })
+		if same < 0 {
+			same = len(shards)
+		}
+		done := map[int]bool{}
+		for _, h := range shards[:same] {
+			done[h.K] = h.Done
+			what := "all data sets"
+			if n > 1 {
+				what = fmt.Sprintf("part %d of %d", h.K, n)
+			}
+			switch {
+			case same > few:
+			case h.Done:
+				lines = append(lines, fmt.Sprintf("%s: complete, %s", what, manyOf(h.Sets, "data set")))
+			default:
+				lines = append(lines, what+": not complete; the same survey run goes on")
+			}
+		}
+		if same > few {
+			var missing []survey.Missing
+			for k := 1; k <= n; k++ {
+				if !done[k] {
+					missing = append(missing, survey.Missing{K: k, N: n})
+				}
+			}
+			line := fmt.Sprintf("%d of %d parts: complete", n-len(missing), n)
+			if len(missing) > 0 {
+				line += "; not there, or not complete: " + numbers(missing)
+			}
+			lines = append(lines, line)
+		}
+		shards = shards[same:]
+	}
+	return lines
+}
+
 // shardOf is the part that --shard names, or that of a task of a Slurm array; else all.
 func (a *app) shardOf(flag string, getenv func(string) string) (k, n int, err error) {
 	if flag != "" {

@@ -149,6 +149,28 @@ func TestNumbersOfMissingParts(t *testing.T) {
 	}
 }
 
+// Parts are told one by one where they are few.
+func TestPartLines(t *testing.T) {
+	h := func(k, n int, done bool) survey.Shard { return survey.Shard{K: k, N: n, Sets: 10 * k, Done: done} }
+	var many []survey.Shard
+	for k := 2; k <= 9; k++ {
+		many = append(many, h(k, 10, k != 5))
+	}
+	for _, c := range []struct {
+		shards []survey.Shard
+		want   string
+	}{
+		{nil, ""},
+		{[]survey.Shard{h(1, 1, true)}, "all data sets: complete, 10 data sets"},
+		{[]survey.Shard{h(2, 4, false), h(3, 4, true)}, "part 2 of 4: not complete; the same survey run goes on|part 3 of 4: complete, 30 data sets"},
+		{append([]survey.Shard{h(1, 1, true)}, many...), "all data sets: complete, 10 data sets|7 of 10 parts: complete; not there, or not complete: 1,5,10"},
+	} {
+		if got := strings.Join(partLines(c.shards), "|"); got != c.want {
+			t.Errorf("%v:\n%s\nwant\n%s", c.shards, got, c.want)
+		}
+	}
+}
+
 // A task of a Slurm array takes its part and says so; --shard wins.
 func TestSurveyShardOfTask(t *testing.T) {
 	t.Chdir(t.TempDir())

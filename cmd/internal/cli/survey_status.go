@@ -78,16 +78,8 @@ func (a *app) surveyStatus(cmd *cobra.Command, o *storeFlags) error {
 	for _, l := range report.Wrap("settings: "+strings.Join(settings, "; "), 80) {
 		fmt.Fprintln(&b, l)
 	}
-	for _, h := range shards {
-		what := "all data sets"
-		if h.N > 1 {
-			what = fmt.Sprintf("part %d of %d", h.K, h.N)
-		}
-		if h.Done {
-			fmt.Fprintf(&b, "%s: complete, %s\n", what, manyOf(h.Sets, "data set"))
-		} else {
-			fmt.Fprintf(&b, "%s: not complete; the same survey run goes on\n", what)
-		}
+	for _, l := range partLines(shards) {
+		fmt.Fprintln(&b, l)
 	}
 	if len(states) > 0 {
 		b.WriteString("\nverdicts\n")
