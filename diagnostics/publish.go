@@ -361,6 +361,20 @@ func (w *publisher) measuredRange() {
 		Text: fmt.Sprintf("%s to %s K", kelvinText(w.in.TMin), kelvinText(w.in.TMax))})
 }
 
+// readable is the form in which the parameters of a fit mean something: series with a
+// negative barrier is a catalyst that is inactivated, and no step has that barrier.
+func readable(r *fit.Result) models.Form {
+	forms := r.Curve.Forms()
+	if _, ok := r.Curve.(models.Series); ok && r.P[1] < 0 && r.P[3] > 0 {
+		for _, f := range forms {
+			if f.Name == "reversible-inactivation" {
+				return f
+			}
+		}
+	}
+	return forms[0]
+}
+
 // fitted writes everything about the recommended curve.
 func (w *publisher) fitted() {
 	r := w.in.Fit
@@ -399,7 +413,10 @@ func (w *publisher) fitted() {
 			w.transitionState(r)
 		}
 	default:
-		w.form(r.Curve.Forms()[0])
+		f := readable(r)
+		if w.form(f); f.Name != r.Curve.Forms()[0].Name {
+			w.note("%s is read as %s, %s: E is that of the active catalyst, half of which is active at T_half", r.Curve.Info().Name, f.Name, f.Formula)
+		}
 		w.eAt(w.in.TMin)
 		w.eAt(w.in.TMax)
 	}
@@ -668,7 +685,11 @@ func (w *publisher) form(f models.Form) {
 			case isLog:
 				w.prefactor(a, e, "")
 			case p.Unit == "kJ mol^-1":
-				w.energyLine(p.Symbol, e)
+				symbol := p.Symbol
+				if symbol == "dH_d" {
+					symbol = "ΔH_d"
+				}
+				w.energyLine(symbol, e)
 			case p.Symbol == crossover && openBarrier(w.in.Profiles):
 				w.value(p.Symbol, p.Unit, e, "not bounded: an end of "+fe.OpenBarriers()+" is open")
 			default:

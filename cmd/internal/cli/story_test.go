@@ -28,6 +28,7 @@ type story struct {
 	never       []string            // findings that must not
 	trend       string              // of E; "" for any
 	says        string              // words of the verdict sentence
+	publish     map[string]float64  // what is published holds these within three standard uncertainties
 }
 
 const gasConstant = 8.31446261815324
@@ -108,7 +109,8 @@ var stories = []story{
 		seed:  15, make: simple(func(t float64) float64 {
 			return arrhenius(12, 298.15, 52)(t) - math.Log1p(math.Exp(-260e3/gasConstant*(1/t-1/325.)))
 		}, 0.03, steps(10, 62, 14)),
-		states: []diagnostics.State{diagnostics.BeyondPrefactor}, trend: "falls", codes: []string{"rate-maximum"},
+		states: []diagnostics.State{diagnostics.BeyondPrefactor}, recommended: []string{"series"}, trend: "falls", codes: []string{"rate-maximum"},
+		publish: map[string]float64{"E": 52, "ΔH_d": 260, "T_half": 325},
 	},
 	{
 		name:  "story-hot-point.csv",
@@ -267,6 +269,20 @@ func TestStories(t *testing.T) {
 			}
 			if !strings.Contains(v.Sentence, s.says) {
 				t.Errorf("the sentence does not say %q: %s", s.says, v.Sentence)
+			}
+			for symbol, truth := range s.publish {
+				found := false
+				for _, l := range a.Publish.Lines {
+					if l.Symbol == symbol {
+						found = true
+						if !(math.Abs(float64(l.Value)-truth) <= 3*float64(l.StdError)) {
+							t.Errorf("%s = %g ± %g is published, the truth is %g", symbol, l.Value, l.StdError, truth)
+						}
+					}
+				}
+				if !found {
+					t.Errorf("%s is not published", symbol)
+				}
 			}
 			var got []string
 			for _, f := range a.Findings {
