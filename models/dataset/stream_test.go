@@ -7,6 +7,7 @@ import (
 	"io"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 )
@@ -199,6 +200,31 @@ func TestStreamLikeRead(t *testing.T) {
 	}
 }
 
+// What is said of one data set is not said of another.
+func TestStreamNotices(t *testing.T) {
+	text := "dataset,T/K,k/s^-1,u(k),err\na,300,1(1),,1\na,310,2,,1\nb,300,3,,1\nb,310,4,0.1,1\n"
+	for i, all := range [][]Found{short1(t, text, Options{}), long(t, text, Options{})} {
+		want, err := Read("x.csv", strings.NewReader(text), Options{})
+		if err != nil || len(all) != 2 {
+			t.Fatal(err, all)
+		}
+		for j, f := range all {
+			var got, said []string
+			for _, n := range f.Set.Notices {
+				got = append(got, n.Code)
+			}
+			for _, n := range want[j].Notices {
+				said = append(said, n.Code)
+			}
+			slices.Sort(got)
+			slices.Sort(said)
+			if !slices.Equal(got, said) {
+				t.Errorf("%d: %s: %v, want %v", i, f.Name, got, said)
+			}
+		}
+	}
+}
+
 // Pieces of any size give the same rows.
 func TestStreamPieces(t *testing.T) {
 	var b strings.Builder
@@ -207,7 +233,8 @@ func TestStreamPieces(t *testing.T) {
 		fmt.Fprintf(&b, "s%d,%d,%d,\"é\r\n%s\"\r\n", i/8, 300+i%8, i+1, strings.Repeat("x", i%40))
 	}
 	text := b.String()
-	all := long(t, text, Options{})
+	stream, err := newLong("x.csv", strings.NewReader(text), mostSorted+1, Options{}) // not as a whole
+	all := collect(t, stream, err)
 	if len(all) != 5000 {
 		t.Fatalf("%d sets", len(all))
 	}

@@ -200,8 +200,26 @@ func TestRunSameRows(t *testing.T) {
 			t.Fatal(err)
 		}
 	}
+	if rows != 30 {
+		t.Errorf("the parts hold %d rows, want 30", rows)
+	}
 	if got := everything(t, joined); got != want {
 		t.Errorf("the parts give other rows\n%s\nwant\n%s", got, want)
+	}
+}
+
+// What names a set apart from others is in its key.
+func TestKeys(t *testing.T) {
+	seen := map[Key]bool{}
+	for _, k := range []Key{keyOf("a", "b", "c", 0), keyOf("a", "", "bc", 0), keyOf("ab", "", "c", 0), keyOf("a", "bc", "", 0),
+		keyOf("a", "b", "", 0), keyOf("a", "", "", 0), keyOf("a", "", "", 1), keyOf("", "a", "", 0)} {
+		if seen[k] {
+			t.Errorf("%s names two sets", k)
+		}
+		seen[k] = true
+	}
+	if k, ok := ParseKey(keyOf("a", "b", "c", 0).String()); !ok || k != keyOf("a", "b", "c", 0) {
+		t.Errorf("a key reads as %v, %t", k, ok)
 	}
 }
 
