@@ -46,6 +46,10 @@ const (
 	codeBelowBlank           = "rows-below-blank"
 	codeTooLong              = "too-long"
 
+	// Of surveys; cmd/internal/survey raises them.
+	codeColumnsFile   = "columns-file"
+	codeInternalError = "internal-error"
+
 	// Of workbooks; cmd/internal/workbook raises them.
 	codeWorkbookDamaged   = "workbook-damaged"
 	codeWorkbookTooLarge  = "workbook-too-large"
@@ -154,6 +158,8 @@ var problemTexts = []Explanation{
 	{codeDatasetScattered, "The rows of a data set do not follow one another", "A long table is read data set by data set, so that memory does not grow with it; a name that comes again after other data sets would give two halves.", "sort the table by its column dataset, or cut it into tables of less than 32 MB"},
 	{codeBelowBlank, "Rows below a blank row were not read", "A table ends at the first blank row below its data. In a table of many data sets, what follows may be some of them.", "delete the blank row if measurements follow it"},
 	{codeTooLong, "Too many rows for one data set", "A table is read as a whole where no column dataset divides it, or where it is not UTF-8; a data set of a million rows is none that could be assessed.", "add a column dataset and save the table as UTF-8, or name its column with --dataset-by"},
+	{codeColumnsFile, "The file that settles headings is not understood", "onebarrier-columns.csv has the headings files,heading,role,unit,level, and below them a line for each heading that it settles. The files of its folder are read without it.", "correct the line, or delete the file"},
+	{codeInternalError, "A fault of the program", "The program failed on this data set; the others are not touched.", "report it with the data set"},
 	{codeWorkbookDamaged, "The workbook is damaged", "A part of the file is missing, ends early or fails its checksum. What is left is not read, lest rows be lost unseen.", "open it in a spreadsheet program and save it again as .xlsx, or save the sheet as CSV"},
 	{codeWorkbookTooLarge, "The workbook unfolds to too much", "A workbook may unfold to 200 times its size, 64 MB at least and 2 GB at most; beyond that it is taken for one made to fill memory.", "save the sheet as CSV"},
 	{codeWorkbookEncrypted, "The workbook is protected by a password", "Its cells are encrypted.", "save it without a password, or save the sheet as CSV"},
