@@ -58,24 +58,9 @@ func Each(name string, data []byte, choice string, opt dataset.Options, fn func(
 
 // each reads the data sets of one sheet.
 func (b *book) each(info sheetInfo, opt dataset.Options) ([]dataset.Found, error) {
-	s, err := b.readSheet(info)
+	stream, notices, dates, err := meaning(b, info, opt, (*dataset.Table).Stream)
 	if err != nil {
 		return nil, err
-	}
-	t, notices, err := b.table(s, opt.Decimal == "comma")
-	if err != nil {
-		return nil, err
-	}
-	dates := s.dates()
-	s.rows = nil // the table holds them
-	stream, err := t.Stream(opt)
-	var ps dataset.Problems
-	errors.As(err, &ps)
-	if lacking := s.formulas.problem(b, s.name); lacking != nil && holdsTable(ps) {
-		return nil, lacking
-	}
-	if err != nil {
-		return nil, b.tellDates(ps, dates)
 	}
 	var found []dataset.Found
 	for {

@@ -123,26 +123,36 @@ func (b *book) choose(choice string) (int, error) {
 	return 0, dataset.Problems{b.problem(codeUnknown, "", 0, "there is no sheet %q; the workbook has %s", choice, list(names))}
 }
 
-// sets reads one sheet.
-func (b *book) sets(info sheetInfo, opt dataset.Options) ([]*dataset.Set, error) {
+// meaning gives the cells of one sheet their meaning by way of give, with what is to be
+// said of the sheet and its dates.
+func meaning[T any](b *book, info sheetInfo, opt dataset.Options, give func(*dataset.Table, dataset.Options) (T, error)) (v T, notices []dataset.Notice, dates map[int][]string, err error) {
 	s, err := b.readSheet(info)
 	if err != nil {
-		return nil, err
+		return v, nil, nil, err
 	}
 	t, notices, err := b.table(s, opt.Decimal == "comma")
 	if err != nil {
-		return nil, err
+		return v, nil, nil, err
 	}
-	dates := s.dates()
+	dates = s.dates()
 	s.rows = nil // the table holds them
-	sets, err := t.Sets(opt)
+	v, err = give(t, opt)
 	var ps dataset.Problems
 	errors.As(err, &ps)
 	if lacking := s.formulas.problem(b, s.name); lacking != nil && holdsTable(ps) {
-		return nil, lacking
+		return v, nil, nil, lacking
 	}
 	if len(ps) > 0 {
-		return nil, b.tellDates(ps, dates)
+		err = b.tellDates(ps, dates)
+	}
+	return v, notices, dates, err
+}
+
+// sets reads one sheet.
+func (b *book) sets(info sheetInfo, opt dataset.Options) ([]*dataset.Set, error) {
+	sets, notices, _, err := meaning(b, info, opt, (*dataset.Table).Sets)
+	if err != nil {
+		return nil, err
 	}
 	for _, set := range sets {
 		for _, n := range notices {
@@ -150,7 +160,7 @@ func (b *book) sets(info sheetInfo, opt dataset.Options) ([]*dataset.Set, error)
 			set.Notices = append(set.Notices, n)
 		}
 	}
-	return sets, err
+	return sets, nil
 }
 
 // dates lists the dates of a sheet by their rows.
