@@ -439,6 +439,36 @@ func TestMessages(t *testing.T) {
 	if err == nil || err.Error() != want {
 		t.Errorf("got  %v\nwant %s", err, want)
 	}
+	// An empty cell of these columns keeps the row: what the cure promises, it must do.
+	for _, c := range []struct{ heading, cell, want string }{
+		{"order", "second", `"second" is not a number`},
+		{"n", "three", `"three" is not a number`},
+		{"n", "5 %", `"5 %" is a percentage`},
+		{"u(T)/K", "inf", `"inf" is not a finite number`},
+		{"u(k)/s^-1", "small", `"small" is not a number`},
+	} {
+		table := func(cell string) *strings.Reader {
+			return strings.NewReader("T/K,k/s^-1," + c.heading + "\n300,1,\n310,2," + cell + "\n")
+		}
+		_, err := Read("rates.csv", table(c.cell), Options{})
+		want := `rates.csv:3: column "` + c.heading + `": ` + c.want + `; write a number, or leave the cell empty: the row is used all the same; or take the column for a note: --column 'note=` + c.heading + `'`
+		if err == nil || err.Error() != want {
+			t.Errorf("got  %v\nwant %s", err, want)
+		}
+		for _, cured := range []struct {
+			cell string
+			opt  Options
+		}{{"", Options{}}, {c.cell, Options{Columns: map[string][]string{"note": {c.heading}}}}} {
+			sets, err := Read("rates.csv", table(cured.cell), cured.opt)
+			if err != nil || len(sets) != 1 || len(sets[0].UsedPoints()) != 2 {
+				t.Errorf("%s: the cure does not work: %v", c.heading, err)
+			}
+		}
+	}
+	_, err = Read("rates.csv", strings.NewReader("T/K,k/s^-1,run\n300,1,1\n310,2,x\n"), Options{Columns: map[string][]string{"order": {"run"}}})
+	if err == nil || !strings.HasSuffix(err.Error(), "the row is used all the same; or name another column") {
+		t.Errorf("a column that was named: %v", err)
+	}
 	_, err = Read("rates.csv", strings.NewReader("T/K,k/s^-1\n"+strings.Repeat("x,1\n", 30)), Options{})
 	if got := strings.Split(err.Error(), "\n"); len(got) != 21 || got[20] != "and 10 more" {
 		t.Errorf("thirty problems print as %d lines, the last %q", len(got), got[len(got)-1])

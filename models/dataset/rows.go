@@ -270,6 +270,25 @@ func (rr *rowReader) refuse(code string, c *column, format string, args ...any) 
 	}
 }
 
+// refuseCell refuses a cell that holds no number it can use. Only an empty T or k leaves
+// its row out; any other empty cell does not, and the column can be a note.
+func (rr *rowReader) refuseCell(code string, c *column, format string, args ...any) {
+	if c.Role == RoleTemperature || c.Role == RoleRate {
+		rr.refuse(code, c, format, args...)
+		return
+	}
+	if rr.quiet {
+		return
+	}
+	cure := "write a number, or leave the cell empty: the row is used all the same; or "
+	if c.nth > 0 {
+		cure += "name another column"
+	} else {
+		cure += "take the column for a note: " + columnFlag(roleFlags[RoleNote], c.Text)
+	}
+	rr.m.refuseCure(code, rr.row.Line, c.Text, fmt.Sprintf(format, args...), cure)
+}
+
 // refuseText refuses a cell that holds no number. Where it would be one with the
 // other decimal mark, that is what is wrong.
 func (rr *rowReader) refuseText(c *column, s string) {
@@ -285,7 +304,7 @@ func (rr *rowReader) refuseText(c *column, s string) {
 		mark, other, name = ".", ',', "point"
 	}
 	if ParseCell(s, other, 0).Kind != CellNumber {
-		rr.refuse(codeNotNumber, c, "%q is not a number", short(s))
+		rr.refuseCell(codeNotNumber, c, "%q is not a number", short(s))
 		return
 	}
 	if !rr.quiet {
@@ -316,14 +335,14 @@ func (rr *rowReader) number(c *column) (x Cell, ok, missing bool) {
 	case CellMissing, CellLimitOnly:
 		return x, false, true
 	case CellNotFinite:
-		rr.refuse(codeNotFinite, c, "%q is not a finite number", short(s))
+		rr.refuseCell(codeNotFinite, c, "%q is not a finite number", short(s))
 		return x, false, false
 	default:
 		rr.refuseText(c, s)
 		return x, false, false
 	}
 	if x.Percent && c.Role != RoleUncertainty {
-		rr.refuse(codeNotNumber, c, "%q is a percentage", short(s))
+		rr.refuseCell(codeNotNumber, c, "%q is a percentage", short(s))
 		return x, false, false
 	}
 	if x.Unit != "" {
