@@ -52,6 +52,7 @@ func (m *maker) all() ([]*Set, error) {
 		return nil, m.problems
 	}
 	m.line = line
+	m.cutFootnotes(first, len(headings))
 	p := m.columns(headings, line)
 	p.notices = append(notices, p.notices...)
 	if t.Encoding == "Windows-1252" {

@@ -194,7 +194,7 @@ var noticeTexts = []Explanation{
 	{noteFewRepeats, "Uncertainties come from few repeats", "A standard deviation from 30 repeats or fewer is not a known uncertainty; k is taken as a mean.", ""},
 	{noteMissing, "Rows without a value were left out", "The temperature or the rate constant is empty, n.d., NA, a dash or a spreadsheet error.", ""},
 	{noteLimits, "Limits", "Rows that state only a bound are no measured k; an assessment takes them as the probability of their side of the bound.", ""},
-	{noteAfter, "Rows below the table were not read", "Rows after the first blank row below the data, or labelled mean, SD, slope and the like, are no measurements.", "delete the blank row if measurements follow it"},
+	{noteAfter, "Rows below the table were not read", "Rows after the first blank row below the data, or labelled mean, SD, slope and the like, are no measurements, nor are the lines of words that end a table, such as * mean of two titrations.", "delete the blank row if measurements follow it"},
 	{noteSelected, "Rows were left out on request", "--where, --leave-out, --t-min or --t-max left them out.", ""},
 	{noteDuplicate, "Rows are the same", "The same temperature and rate constant occur more than once: repeats that agree to all digits, or a row copied twice.", "--leave-out the copies if they are no separate measurements"},
 	{noteCLikeK, "Temperatures in °C look like kelvin", "All lie where room-temperature work in kelvin lies. They are read as °C, as the heading says.", "correct the heading if they are kelvin"},

@@ -67,8 +67,10 @@ type maker struct {
 	line     int      // of the headings
 	ragged   []ragged // rows with more or fewer cells than the headings
 	even     int      // rows with as many
-	tidied   *tidied  // nil unless Tidy wrote the table
-	onlyRate string   // group of the rate columns that are meant, of several; "" for all
+	// footnotes are lines directly below the table, cut off it.
+	footnotes []int
+	tidied    *tidied // nil unless Tidy wrote the table
+	onlyRate  string  // group of the rate columns that are meant, of several; "" for all
 }
 
 func (m *maker) refuse(code string, row int, column, format string, args ...any) {
@@ -721,7 +723,8 @@ func (m *maker) refuseNoRate(p *plan, line int) {
 }
 
 // refuseNone refuses a table without a column for a role, and offers those with
-// numbers that have none.
+// numbers that have none. Where T and k are both missing, each is offered columns that
+// the other is not: one column cannot be both, and which is which nobody knows.
 func (m *maker) refuseNone(p *plan, code, role string, line int, what, cure string) {
 	var names []string
 	for i := range p.cols {
@@ -729,8 +732,17 @@ func (m *maker) refuseNone(p *plan, code, role string, line int, what, cure stri
 			names = append(names, c.Text)
 		}
 	}
-	if len(names) > 0 {
+	both := !slices.ContainsFunc(p.cols, func(c column) bool { return c.Role == map[string]Role{"T": RoleRate, "k": RoleTemperature}[role] })
+	switch {
+	case len(names) == 0:
+	case !both:
 		cure += ", or name the column: " + columnFlags(role, names, " or ")
+	case len(names) == 1:
+		cure += fmt.Sprintf("; the numbers of one column, %s, cannot be both T and k", quoteAll(names))
+	case role == "T":
+		cure += ", or name the column, such as " + columnFlag(role, names[0])
+	default:
+		cure += ", or name the column, such as " + columnFlags(role, names[1:], " or ")
 	}
 	m.refuseCure(code, line, "", what, cure)
 }

@@ -188,7 +188,15 @@ func TestLevelBesideTheRate(t *testing.T) {
 // Cures name the headings of the file, ready to be typed.
 func TestCuresNameHeadings(t *testing.T) {
 	ps := problemsOf(t, "bath,slope 1,flask\n280,1,a\n290,2,b\n", Options{})
-	if got := ps.Error(); !strings.Contains(got, "--column 'T=bath' or --column 'T=slope 1'") || !strings.Contains(got, "--column 'k=slope 1'") || strings.Contains(got, "HEADING") || strings.Contains(got, "=flask") {
+	if got := ps.Error(); !strings.Contains(got, "--column 'T=bath'") || strings.Contains(got, "'T=slope 1'") || strings.Contains(got, "'k=bath'") || !strings.Contains(got, "--column 'k=slope 1'") || strings.Contains(got, "HEADING") || strings.Contains(got, "=flask") {
+		t.Error(got)
+	}
+	ps = problemsOf(t, "bath,flask\n280,a\n290,b\n", Options{})
+	if got := ps.Error(); strings.Contains(got, "--column") || !strings.Contains(got, "cannot be both") {
+		t.Error(got)
+	}
+	ps = problemsOf(t, "T/K,slope 1,slope 2\n280,1,2\n290,2,3\n", Options{})
+	if got := ps.Error(); !strings.Contains(got, "--column 'k=slope 1' or --column 'k=slope 2'") {
 		t.Error(got)
 	}
 	const runs = "T/K,run 1,run 2,run 3\n280,1,1.1,1.2\n290,2,2.1,2.2\n"

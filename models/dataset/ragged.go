@@ -9,12 +9,13 @@ import (
 // ragged is a row that has more or fewer cells than the headings.
 type ragged struct {
 	line, cells int
+	words       bool // it holds one cell, of text
 	point       bool // a cell has a decimal point
 	decimals    bool // a cell is what only stands before or behind a decimal mark: 0, 0012
 }
 
 func newRagged(line int, cells []string) ragged {
-	r := ragged{line: line, cells: len(cells)}
+	r := ragged{line: line, cells: len(cells), words: filled(cells) == 1 && !allNumbers(cells)}
 	for i, c := range cells {
 		digits := strings.TrimLeft(c, "+-")
 		r.point = r.point || strings.Contains(c, ".")
@@ -60,6 +61,10 @@ func (m *maker) refuseRagged(n int) {
 			more = "; so have " + countOf(k-1, "other row")
 		}
 		m.refuse(codeRagged, lines[w][0], "", "the row has %s, the headings %d%s", countOf(w, "cell"), n, more)
+		if slices.ContainsFunc(m.ragged, func(r ragged) bool { return r.cells == w && r.words }) {
+			p := &m.problems[len(m.problems)-1]
+			p.Cure = "if the line is a remark, begin it with # or move it below a blank line; else " + p.Cure
+		}
 	}
 }
 

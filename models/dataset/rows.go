@@ -138,7 +138,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	}
 	m.refuseRagged(n)
 	for _, l := range m.opt.LeaveOut {
-		if leaveOut[l] {
+		if leaveOut[l] && !slices.Contains(m.footnotes, l) {
 			m.refuse(codeLeaveOut, l, "", "--leave-out names a line that holds no row of data")
 			delete(leaveOut, l)
 		}
@@ -155,6 +155,9 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	say(noteAfter, labelled, "labelled as no measurement, such as a mean or a slope, and not read")
 	if len(labelled) > 0 {
 		p.notices[len(p.notices)-1].Cure = "write its temperature in place of the label if it is a measurement"
+	}
+	if say(noteAfter, m.footnotes, "taken for a footnote of the table, not read"); len(m.footnotes) > 0 {
+		p.notices[len(p.notices)-1].Cure = ""
 	}
 	const ofT = "in the temperature: "
 	say(noteBrackets, rr.brackets, "a bracket after the number was read as its standard uncertainty")

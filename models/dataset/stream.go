@@ -469,6 +469,7 @@ func (s *Stream) means(f *Found, p *plan, t *Table, n int) {
 	m := s.maker(t, p.stream.group)
 	m.line = p.stream.line
 	m.opt.Dataset = ""
+	m.cutFootnotes(0, n)
 	if len(s.opt.LeaveOut) > 0 {
 		m.opt.LeaveOut = nil
 		for _, r := range t.Rows {

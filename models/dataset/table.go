@@ -72,7 +72,7 @@ func newRecords(name, text string) *records {
 		r.delimiter = rest[0]
 		r.next(0)
 	} else {
-		r.delimiter = delimiter(text)
+		r.delimiter = delimiter(name, text)
 	}
 	return r
 }
@@ -246,18 +246,29 @@ func quoted(s string) (text string, n, lines int, closed bool) {
 
 // delimiter decides how a text is split, by its first lines: the first of tab,
 // semicolon, comma that splits all of them into the same number (two or more) of
-// cells, then spaces, then the first that splits the heading at all.
-func delimiter(text string) byte {
+// cells, then spaces, then the first that splits the heading at all. Where tabs split
+// the lines that hold one into the same number of cells, lines without one are a
+// caption above or a remark below, whatever their spaces: no one types a tab into a
+// remark. A name in .tsv says that it is tabs.
+func delimiter(name, text string) byte {
 	if isTidy(text) {
 		return ','
 	}
 	const most = 6
 	var sample []string
+	var tabbed []string // those of sample that hold a tab
+	ends := true        // they follow one another
 	for rest := text; rest != "" && len(sample) < most; {
 		var l string
 		l, rest = cutLine(rest)
-		if l = strings.TrimSpace(l); l != "" && !isComment(l) {
-			sample = append(sample, l[:min(len(l), 1<<16)])
+		// A tab at the end belongs to an empty cell.
+		if strings.TrimSpace(l) != "" && !isComment(strings.TrimSpace(l)) {
+			l = l[:min(len(l), 1<<16)]
+			sample = append(sample, l)
+			if strings.Contains(l, "\t") {
+				ends = ends && (len(tabbed) == 0 || strings.Contains(sample[len(sample)-2], "\t"))
+				tabbed = append(tabbed, l)
+			}
 		}
 	}
 	if len(sample) == 0 {
@@ -276,7 +287,7 @@ func delimiter(text string) byte {
 	// regular: all lines, but for spare (a title above the heading, a note, a
 	// heading with spaces), have as many cells as a line with letters near the top,
 	// whose last cells may be empty.
-	regular := func(d byte, spare int) bool {
+	regular := func(sample []string, d byte, spare int) bool {
 		counts := map[int]int{}
 		best := 0
 		filled, all := make([]int, len(sample)), make([]int, len(sample))
@@ -302,9 +313,15 @@ func delimiter(text string) byte {
 		}
 		return best >= 2 && fitting >= len(sample)-spare
 	}
+	if ends && len(tabbed) > 1 && regular(tabbed, '\t', 0) {
+		return '\t'
+	}
+	if strings.EqualFold(filepath.Ext(name), ".tsv") && strings.Contains(text, "\t") && !regular(sample, ' ', 0) {
+		return '\t'
+	}
 	for spare := range 2 {
 		for _, d := range []byte{'\t', ';', ',', ' '} {
-			if regular(d, spare) {
+			if regular(sample, d, spare) {
 				return d
 			}
 		}

@@ -340,6 +340,9 @@ func (p *unitParser) item(depth int) ([]unitTerm, float64, error) {
 			p.i += n
 		}
 		base, ok := lookUpUnit(p.s[start:p.i])
+		if rest := p.s[p.i:]; len(rest) > 1 && rest[0] == '.' && (rest[1] == '^' || rest[1] == '-') {
+			p.i++ // sec.^-1: the point of an abbreviation
+		}
 		if !ok {
 			return nil, 0, errUnit
 		}
