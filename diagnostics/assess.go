@@ -327,10 +327,7 @@ func (a *assessor) test() {
 		a.second.sequential = a.opt.SequentialNull
 		a.secondRun = a.second.Run()
 	}
-	if a.data.temperatureShare > 0 && !a.model.KnownSigma() && a.straight.Sigma < a.data.temperatureShare {
-		a.find("scatter-below-thermometer", fmt.Sprintf("u(T) alone makes ln k uncertain by %.2g, more than the points scatter (%.2g)", a.data.temperatureShare, a.straight.Sigma), nil,
-			map[string]Real{"from_temperature": Real(a.data.temperatureShare), "scatter": Real(a.straight.Sigma)})
-	}
+	a.scatterBelowThermometer()
 }
 
 // testExponents runs the exponent test, on means and on single points where there

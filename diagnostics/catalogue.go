@@ -190,7 +190,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "drift-with-order", Title: "residuals drift with the order of the runs", Severity: Warning,
-		Explanation: "The residuals from the power-prefactor curve rise or fall with the order in which the points were measured (Spearman's rank correlation, p < 0.05, exact up to nine points without ties; residuals of few points are not quite free of each other, which the p-value leaves out). Something changed in the course of the experiment.",
+		Explanation: "The residuals from the power-prefactor curve rise or fall with the order in which the points were measured (Spearman's rank correlation, p < 0.05, exact up to nine points without ties if the order was random). Where the order follows T no drift is seen: what it does to ln k is taken for a slope or a bend. Something changed in the course of the experiment.",
 		Cure:        "look for what ages or warms up; measure in random order, so that a drift becomes scatter",
 		Reference:   "C. Spearman, Am. J. Psychol. 15 (1904) 72",
 	},
@@ -237,7 +237,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "scatter-below-thermometer", Title: "scatter smaller than u(T) allows", Severity: Warning,
-		Explanation: "The scatter of ln k about the curve is smaller than the stated random uncertainty of T alone would cause.",
+		Explanation: "Under error model relative the scatter of ln k holds what random errors of T do. About the straight line it is smaller than the stated uncertainties of T alone would cause, by more than chance allows: χ² of the line with those variances lies in the lowest hundredth of its distribution. Asked where every point has u(T).",
 		Cure:        "check whether u(T) holds a systematic part, which does not scatter",
 	},
 	{
@@ -307,13 +307,13 @@ var catalogue = []Entry{
 	// Residuals and prediction.
 	{
 		Code: "scatter-not-even", Title: "the scatter changes with temperature", Severity: Warning,
-		Explanation: "The error model takes errors of ln k (or of k) to be as large at the cold end as at the hot one, or as stated. The residuals are larger at one end than that allows (score test of Breusch and Pagan for a variance that changes with 1/T; p is exact for normal errors). At 1 % it sees a standard deviation that is threefold from one end of the range to the other in 3 % of sets of 8, 7 % of 12, 17 % of 20 and 47 % of 40: silence means little for few points. Weights that are wrong by so much cost precision, and the verdict raises more or fewer false alarms than it claims.",
+		Explanation: "The error model takes errors of ln k (or of k) to be as large at the cold end as at the hot one, or as stated. The residuals are larger at one end than that allows (score test of Breusch and Pagan for a variance that changes with 1/T; p is exact for normal errors). At 1 %, with temperatures evenly spaced in 1/T, it sees a standard deviation that is threefold from one end of the range to the other in 1 % of sets of 5, 3 % of 8, 7 % of 12, 17 % of 20 and 47 % of 40: silence means little for few points. Weights that are wrong by so much cost precision, and the verdict raises more or fewer false alarms than it claims.",
 		Cure:        "state u(k) for every point; where k is read to a fixed absolute error, --error-model absolute",
 		Reference:   "T. S. Breusch, A. R. Pagan, Econometrica 47 (1979) 1287; J. P. Imhof, Biometrika 48 (1961) 419",
 	},
 	{
 		Code: "residuals-not-normal", Title: "the residuals are not normal", Severity: Info,
-		Explanation: "The ordered residuals follow normal scores less closely than in 99 % of sets with normal errors (test of Shapiro and Francia, its null that of residuals). A few large errors among small ones do that. At 1 % it sees errors of Student's t with three degrees of freedom in 2 % of sets of 8, 7 % of 12, 18 % of 20 and 43 % of 40. The 5 % of the verdict depends little on it; single points may matter much.",
+		Explanation: "The ordered residuals follow normal scores less closely than in 99 % of sets with normal errors (test of Shapiro and Francia, its null that of residuals at these temperatures). A few large errors among small ones do that. At 1 % it sees errors of Student's t with three degrees of freedom in 1 % of sets of 5, 2 % of 8, 8 % of 12, 19 % of 20 and 43 % of 40. The 5 % of the verdict depends little on it; single points may matter much.",
 		Cure:        "look for the row with the largest residual, and repeat it",
 		Reference:   "S. S. Shapiro, R. S. Francia, J. Am. Stat. Assoc. 67 (1972) 215",
 	},

@@ -280,6 +280,46 @@ func (a *assessor) workingErrors() map[string]float64 {
 	return map[string]float64{shapeOffset: e.Offset, shapeGain: e.Gain, shapeBow: e.Bow}
 }
 
+// thermometerLevel is that of scatter-below-thermometer.
+const thermometerLevel = 0.01
+
+// scatterBelowThermometer warns where the points scatter less about the line than u(T)
+// alone makes them. Whatever else scatters, and any curve, only adds to χ² with the
+// variances of u(T): its lower tail is that of the rarest false alarm. The variance of
+// a mean is taken as if its points had independent errors of T, the least that it is.
+func (a *assessor) scatterBelowThermometer() {
+	s := a.data.sample
+	if a.model != fit.Relative || a.data.temperatureShare == 0 { // under the others σ̂ is no scatter of ln k
+		return
+	}
+	v := make([]float64, s.Len())
+	for j, p := range a.data.points {
+		if !(p.UT > 0) {
+			return
+		}
+		g := j
+		if a.data.basis == BasisMeans {
+			g = a.data.group[j]
+		}
+		share := a.straight.P[1] * p.UT / (models.GasConstant * p.T * p.T) * s.V[g]
+		v[g] += share * share
+	}
+	alone, err := fit.NewSample(fit.Stated, s.T, s.K, v)
+	if err != nil {
+		return
+	}
+	alone.Nuisance = s.Nuisance
+	line := fit.Fit(alone, models.Straight())
+	if !line.Usable() || line.Nu < 1 {
+		return
+	}
+	if low := 1 - chi2Tail(line.RSS, line.Nu); low < thermometerLevel {
+		a.find("scatter-below-thermometer", fmt.Sprintf("u(T) alone makes ln k uncertain by up to %.2g, more than the points scatter (%.2g; lower tail of χ² %.2g)",
+			a.data.temperatureShare, a.straight.Sigma, low), nil,
+			map[string]Real{"from_temperature": Real(a.data.temperatureShare), "scatter": Real(a.straight.Sigma), "p_value": Real(low)})
+	}
+}
+
 // findTemperatureErrors says which shapes explain the verdict, in its sentence too.
 func (a *assessor) findTemperatureErrors() {
 	where := map[string]string{

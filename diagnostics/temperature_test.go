@@ -2,10 +2,12 @@ package diagnostics
 
 import (
 	"math"
+	"math/rand/v2"
 	"slices"
 	"strings"
 	"testing"
 
+	"onebarrier/models"
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 	"onebarrier/models/reference"
@@ -162,5 +164,47 @@ func TestRootNear(t *testing.T) {
 	}
 	if x := rootNear(3, 0, nil); x != 0 {
 		t.Errorf("%g", x)
+	}
+}
+
+// Where all scatter is that of T, and u(T) is right, at most one set in a hundred hears
+// that u(T) is too large, also where the line is much more uncertain at one end; where
+// u(T) is stated four times too large nearly every set of twelve does. With errors in k
+// σ̂ is no scatter of ln k, and there is nothing to compare.
+func TestScatterBelowThermometer(t *testing.T) {
+	const sets = 2000
+	count := func(n int, high, stated float64, repeats int, model fit.ErrorModel, sets int) (hits int) {
+		o := lean()
+		o.ErrorModel = model
+		for i := range sets {
+			rng := rand.New(rand.NewPCG(uint64(i), 17))
+			var ts, ks []float64
+			for j := range n * repeats {
+				ti := 250 + (high-250)*float64(j/repeats)/float64(n-1)
+				at := ti + 0.2*rng.NormFloat64()
+				ts, ks = append(ts, ti), append(ks, 1e-3*math.Exp(-60e3/models.GasConstant*(1/at-1/300.0)))
+			}
+			set := setOf(ts, ks, nil)
+			for j := range set.Points {
+				set.Points[j].UT = 0.2 * stated
+			}
+			hits += len(screened(t, set, o, (*assessor).scatterBelowThermometer))
+		}
+		return hits
+	}
+	limit := sets*thermometerLevel + 4*math.Sqrt(sets*thermometerLevel)
+	for _, c := range []struct {
+		n, repeats int
+		high       float64
+	}{{4, 1, 310}, {6, 1, 1000}, {12, 1, 1000}, {5, 3, 310}} {
+		if hits := count(c.n, c.high, 1, c.repeats, fit.Relative, sets); float64(hits) > limit {
+			t.Errorf("N = %d up to %g K, %d repeats: %d of %d sets hear of a u(T) that is right", c.n, c.high, c.repeats, hits, sets)
+		}
+	}
+	if hits := count(12, 310, 4, 1, fit.Relative, 100); hits < 90 {
+		t.Errorf("four times too large: found in %d of 100", hits)
+	}
+	if hits := count(8, 310, 4, 1, fit.Absolute, 10); hits > 0 {
+		t.Errorf("errors in k: found in %d of 10", hits)
 	}
 }

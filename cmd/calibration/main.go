@@ -16,6 +16,7 @@ import (
 	"os"
 	"os/signal"
 	"runtime/debug"
+	"strings"
 
 	"onebarrier/diagnostics/calibration"
 )
@@ -25,15 +26,17 @@ func main() {
 	flag.IntVar(&set.Sets, "sets", 20000, "data sets of each condition; dear ones get a part of them")
 	flag.Uint64Var(&set.Seed, "seed", 1, "seed of the random streams")
 	flag.IntVar(&set.Workers, "workers", 0, "goroutines, 0 for one a processor")
+	only := flag.String("only", "", "only the tables whose title holds this text, such as findings")
 	flag.Parse()
-	if flag.NArg() > 0 || set.Sets < 100 {
-		fmt.Fprintln(os.Stderr, "usage: calibration [-sets N] [-seed S] [-workers W], with at least 100 sets")
+	study := calibration.New()
+	study.Only(strings.ToLower(*only))
+	if flag.NArg() > 0 || set.Sets < 100 || len(study.Sections) == 0 {
+		fmt.Fprintln(os.Stderr, "usage: calibration [-sets N] [-seed S] [-workers W] [-only TEXT], with at least 100 sets; TEXT of a title")
 		os.Exit(2)
 	}
 	debug.SetGCPercent(400) // small, short-lived data; memory stays below 300 MB
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
 	defer stop()
-	study := calibration.New()
 	err := study.Run(ctx, set, func(done, total int) {
 		fmt.Fprintf(os.Stderr, "\r%d of %d conditions", done, total)
 	})

@@ -191,6 +191,8 @@ type Cell struct {
 	Resamples int
 	// Shares asks for the whole of Assess, for its repeat shares.
 	Shares bool
+	// Found is for the findings.
+	Found Found
 }
 
 // name identifies the condition in its random streams.
@@ -202,6 +204,9 @@ func (c Cell) name() string {
 	}
 	if c.Laboratories == One { // so do those of one laboratory
 		name = strings.Replace(name, fmt.Sprintf(" Laboratories:%d Offsets:%g", c.Laboratories, c.Offsets), "", 1)
+	}
+	if c.Found == (Found{}) { // and those without findings
+		name = strings.Replace(name, fmt.Sprintf(" Found:%+v", c.Found), "", 1)
 	}
 	return name
 }
@@ -230,10 +235,12 @@ func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 	middle, _ := c.Truth.at(c.Range, (c.Range.Low+c.Range.High)/2)
 	detection, _ := c.Truth.at(c.Range, c.Range.Low+0.2*(c.Range.High-c.Range.Low))
 	uneven := [...]float64{1, 1.5, 0.7}
+	order := c.Found.Runs.of(c.N, rng)
 	for i := range c.N {
 		t := c.Range.Low + (c.Range.High-c.Range.Low)*float64(i)/float64(c.N-1)
-		lnK, _ := c.Truth.at(c.Range, t)
-		sd := relativeNoise
+		lnK, _ := c.Truth.at(c.Range, t+c.Found.thermometer(rng))
+		lnK = c.Found.bend(c, lnK, i, order[i])
+		sd := relativeNoise * c.Found.spread(c.Range, t)
 		if c.Uneven {
 			sd *= uneven[i%len(uneven)]
 		}
@@ -245,9 +252,9 @@ func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 			if c.Shape == BadHot && i == c.N-1 {
 				shared = badHot * sd
 			}
-			p := dataset.Point{Row: len(set.Points) + 2, T: t, Order: math.NaN(), Used: true}
+			p := dataset.Point{Row: len(set.Points) + 2, T: t, UT: c.Found.UT, Order: order[i], Used: true}
 			if c.Absolute {
-				p.K = math.Exp(lnK) + absoluteNoise*math.Exp(middle)*c.Shape.deviate(rng)
+				p.K = math.Exp(lnK) + c.noiseInK(middle)*c.Shape.deviate(rng)
 			} else {
 				p.K = math.Exp(lnK + shared + sd*c.Shape.deviate(rng))
 			}

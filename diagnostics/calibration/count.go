@@ -61,6 +61,33 @@ const (
 	PercentileChange
 	BCaChange
 
+	// Findings of assess, by code.
+	FoundOutlier
+	FoundSpread
+	FoundNotNormal
+	FoundAbsolute
+	FoundRelative
+	FoundDrift
+	FoundOrder
+	FoundMaximum
+	FoundExtrapolates
+	FoundDeciding
+	FoundBorderline
+	FoundTemperature
+	FoundSecondBarrier
+	FoundRestsOnEnd
+	FoundContradicted
+	FoundChi2Low
+	FoundScatterSmall
+	FoundRestsOnStated
+	FoundInadequate
+	FoundOffset
+	FoundOffsetsOpen
+	FoundOffsetsShow
+	FoundLimit
+	FoundBelowThermometer
+	FoundAny // a curved verdict, or one of the findings that only false alarms raise
+
 	events
 )
 
@@ -100,7 +127,12 @@ var eventNames = [events]string{
 }
 
 // String names the event.
-func (e Event) String() string { return eventNames[e] }
+func (e Event) String() string {
+	if f, ok := finding(e); ok {
+		return f.code
+	}
+	return eventNames[e]
+}
 
 // Counts is what the data sets of one cell showed.
 type Counts struct {
@@ -227,6 +259,8 @@ func (c Cell) one(ctx context.Context, seed uint64, i int, designs *diagnostics.
 		return c.shares(ctx, set, opt, i, n)
 	case c.Compare:
 		return c.compare(set, opt, n)
+	case c.Found.Asked:
+		return c.findings(ctx, set, opt, n)
 	}
 	n.Ratio[i] = math.NaN()
 	s, err := diagnostics.Screen(set, opt)

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"onebarrier/models/fit"
 )
@@ -43,6 +44,7 @@ type Row struct {
 	Figures []Figure
 
 	jobs  []*job
+	needs []*job // of other rows' conditions, that value reads
 	value func(*Counts) Figure
 	part  bool // a share of few data sets by its nature
 }
@@ -86,7 +88,24 @@ func New() *Study {
 	s.coverage()
 	s.published()
 	s.shares()
+	s.findings()
 	return s
+}
+
+// Only keeps the sections whose title holds a text, in lower case.
+func (s *Study) Only(text string) {
+	s.Sections = slices.DeleteFunc(s.Sections, func(sec *Section) bool {
+		return !strings.Contains(strings.ToLower(sec.Title), text)
+	})
+	asked := map[*job]bool{}
+	for _, sec := range s.Sections {
+		for _, r := range sec.Rows {
+			for _, j := range slices.Concat(r.jobs, r.needs) {
+				asked[j] = true
+			}
+		}
+	}
+	s.jobs = slices.DeleteFunc(s.jobs, func(j *job) bool { return !asked[j] })
 }
 
 // section starts a table.
@@ -367,6 +386,9 @@ func (s *Study) likelihoodRatio(label string, c Cell) {
 		}
 		return rate(hits, len(n.Ratio))
 	})
+	for _, n := range Temperatures {
+		s.last().needs = append(s.last().needs, null[n])
+	}
 }
 
 func (s *Study) falling() {
