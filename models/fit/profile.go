@@ -83,8 +83,8 @@ func ProfileExponent(s *Sample, r *Result, confidence float64) Estimate {
 // An end that is not reached within 2^20 half-widths is open and infinite. With errors
 // in ln k and a models.Basis it is the interval of Interval, which is then exact. With
 // errors in k and a function of one path of parallel it is held to E1 <= E2, and an end
-// is open where ProfileShaped has it so. Beside nuisance columns every curve goes this road
-// but a models.Basis with errors in ln k, and a path is not held to its place.
+// is open where ProfileShaped has it so. For a models.Seeded it is that of Region. Beside
+// nuisance columns a path is not held to its place.
 func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	if len(c) != r.Params() {
 		panic("fit: the length of c does not match the parameters")
@@ -94,6 +94,9 @@ func Profile(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	}
 	if len(s.Limits) > 0 {
 		return profileLimits(s, r, c, confidence)
+	}
+	if _, seeded := r.Curve.(models.Seeded); seeded {
+		return NewRegion(s, r, confidence).Interval(linearFunction(c))
 	}
 	value := floats.Dot(c, r.P)
 	wald := r.Interval(c, value, confidence)
@@ -161,6 +164,8 @@ type profiler struct {
 	c      []float64
 	pivot  int
 	g      float64
+	low    float64 // g is not looked for beyond these
+	high   float64
 	best   []float64 // full parameters of the unconstrained minimum
 	full   []float64
 	jac    []float64
@@ -170,7 +175,7 @@ type profiler struct {
 
 func newProfiler(s *Sample, r *Result, c []float64) *profiler {
 	o := newObjective(s, r.Curve)
-	f := &profiler{c: c, inner: o.problem()}
+	f := &profiler{c: c, inner: o.problem(), low: math.Inf(-1), high: math.Inf(1)}
 	own := f.inner.N
 	if s.Spent() > 0 {
 		f.inner = Problem{M: s.Len(), N: own + s.Spent(), Eval: o.withNuisance()}
@@ -274,7 +279,7 @@ func (f *profiler) end(value, step, smin, criterion float64) (limit float64, ok 
 	}
 	dInside := distance(smin)
 	for range doublings {
-		g := inside + step
+		g := math.Max(f.low, math.Min(f.high, inside+step))
 		s, q := f.at(g, p)
 		if math.IsNaN(s) {
 			step /= 4
@@ -286,6 +291,9 @@ func (f *profiler) end(value, step, smin, criterion float64) (limit float64, ok 
 				s, _ := f.at(g, p)
 				return distance(s)
 			}, inside, dInside, g, d), true
+		}
+		if g == f.low || g == f.high {
+			break
 		}
 		inside, dInside, p = g, d, q
 		step *= 2
