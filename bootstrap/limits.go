@@ -37,6 +37,16 @@ func (p *plan) aboutLimits(f *fit.Result) *generator {
 	}
 	fitted := make([]float64, p.all.Len())
 	f.Curve.LnK(f.TRef, p.all.T, f.P, fitted, nil)
+	s, n := p.in.Sample, p.in.Sample.Len()
+	for j, b := range f.Beside {
+		for i := range fitted {
+			if i < n {
+				fitted[i] += b * s.Nuisance[j][i]
+			} else {
+				fitted[i] += b * s.Limits[i-n].Beside[j]
+			}
+		}
+	}
 	return newGenerator(p.all, Parametric, fitted, nil, nil, f.Params(), f.Sigma)
 }
 

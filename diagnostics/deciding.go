@@ -457,17 +457,14 @@ func (o *omitter) rest(l leaving) (*fit.Sample, error) {
 		return o.thinner(l)
 	}
 	var t, k, v []float64
-	nuisance := make([][]float64, len(s.Nuisance))
 	for i := range s.T {
 		if slices.Contains(l.entries, i) {
 			continue
 		}
 		t, k, v = append(t, s.T[i]), append(k, s.K[i]), append(v, s.V[i])
-		for j, z := range s.Nuisance {
-			nuisance[j] = append(nuisance[j], z[i])
-		}
 	}
-	return o.complete(t, k, v, nuisance)
+	nuisance, limits := o.a.data.besideRest(l.entries)
+	return o.complete(t, k, v, nuisance, limits)
 }
 
 // thinner is the sample with one point taken from a mean.
@@ -481,17 +478,17 @@ func (o *omitter) thinner(l leaving) (*fit.Sample, error) {
 	} else {
 		k[g] = math.Exp((whole*s.Y[g] - w*p.Y[l.point]) * v[g])
 	}
-	return o.complete(s.T, k, v, s.Nuisance)
+	return o.complete(s.T, k, v, s.Nuisance, s.Limits)
 }
 
-func (o *omitter) complete(t, k, v []float64, nuisance [][]float64) (*fit.Sample, error) {
+func (o *omitter) complete(t, k, v []float64, nuisance [][]float64, limits []fit.Limit) (*fit.Sample, error) {
 	s, err := fit.NewSample(o.s.Model, t, k, v)
 	if err != nil {
 		return nil, err
 	}
 	s.Nuisance = nuisance
-	if len(o.s.Limits) > 0 {
-		return s.WithLimits(o.s.Limits)
+	if len(limits) > 0 {
+		return s.WithLimits(limits)
 	}
 	return s, nil
 }

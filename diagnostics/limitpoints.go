@@ -8,6 +8,8 @@ import (
 
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
+
+	"gonum.org/v1/gonum/floats"
 )
 
 // limitedResamples is the most resamples that a set with limits gets unasked: each
@@ -17,48 +19,68 @@ const limitedResamples = 999
 // limitLevel is the probability of a limit below which it contradicts the points.
 const limitLevel = 0.01
 
-// addLimits takes the limits of a set into the samples, each as an entry of its own:
-// they are not averaged with what was measured at the same temperature. Where several
-// sources have offsets they stay out, since a limit would need its source's. A limit
-// without an uncertainty, where uncertainties are stated, takes that of the measured
-// point nearest in temperature: relative where errors are in ln k.
-func (p *prepared) addLimits(set *dataset.Set) error {
-	var points []dataset.Point
+// readLimits finds the limits of a set that enter.
+func (p *prepared) readLimits(set *dataset.Set) {
 	for _, pt := range set.LimitPoints() {
-		if pt.K > 0 || p.single.Model.InK() {
-			points = append(points, pt)
+		if p.whyNoLimit(set, pt) == "" {
+			p.limits = append(p.limits, pt)
 		}
 	}
-	if len(points) == 0 || p.sample.Spent() > 0 {
-		return nil
-	}
-	slices.SortStableFunc(points, func(a, b dataset.Point) int {
+	slices.SortStableFunc(p.limits, func(a, b dataset.Point) int {
 		return cmp.Or(cmp.Compare(a.T, b.T), cmp.Compare(a.Row, b.Row))
 	})
-	limits := make([]fit.Limit, len(points))
-	for i, pt := range points {
-		limits[i] = fit.Limit{T: pt.T, K: pt.K, Below: pt.Limit == "<", V: p.limitVariance(pt)}
-	}
-	var err error
-	with := func(s *fit.Sample) *fit.Sample {
-		if s != nil && err == nil {
-			s, err = s.WithLimits(limits)
+	for _, pt := range p.limits {
+		p.bounds = append(p.bounds, fit.Limit{T: pt.T, K: pt.K, Below: pt.Limit == "<", V: p.limitVariance(pt)})
+		if p.sources != nil {
+			p.bounded = append(p.bounded, slices.Index(p.sources.names, pt.Source))
 		}
-		return s
 	}
-	onMeans := p.sample == p.means
-	p.single, p.means = with(p.single), with(p.means)
-	if err != nil {
-		return err
-	}
-	if p.sample = p.single; onMeans {
-		p.sample = p.means
-	}
-	p.limits = points
-	return nil
 }
 
-// limitVariance is the variance of what would have been measured in place of a limit.
+// whyNoLimit says why a limit of the set cannot enter, "" where it does. Where sources
+// are told apart, a limit of one that measured nothing cannot: an offset of that source
+// would be bounded from one side only, and the likelihood is largest where it makes the
+// limit say nothing.
+func (p *prepared) whyNoLimit(set *dataset.Set, pt dataset.Point) string {
+	if !(pt.K > 0) && !p.single.Model.InK() {
+		return "a limit of k that is not positive says nothing of ln k"
+	}
+	names := map[string]bool{}
+	measured := false
+	for _, q := range set.Points {
+		if !q.Used && !q.IsLimit() {
+			continue
+		}
+		if q.Source != "" {
+			names[q.Source] = true
+		}
+		measured = measured || q.Used && q.Source == pt.Source
+	}
+	switch {
+	case measured || len(names) < 2:
+		return ""
+	case pt.Source == "":
+		return "it names no source, and so has no offset from the others that the data determine"
+	}
+	return fmt.Sprintf("%s has no measured k, so that its offset from the other sources is bounded from one side only", pt.Source)
+}
+
+// addLimits takes the limits into the samples, each as an entry of its own: they are
+// not averaged with what was measured at the same temperature.
+func (p *prepared) addLimits() error {
+	if len(p.bounds) == 0 {
+		return nil
+	}
+	var err error
+	if p.single, err = p.single.WithLimits(p.bounds); err == nil && p.means != nil {
+		p.means, err = p.means.WithLimits(p.bounds)
+	}
+	return err
+}
+
+// limitVariance is the variance of what would have been measured in place of a limit. A
+// limit without an uncertainty, where uncertainties are stated, takes that of the
+// measured point nearest in temperature: relative where errors are in ln k.
 func (p *prepared) limitVariance(pt dataset.Point) float64 {
 	model := p.single.Model
 	if model == fit.Relative || model == fit.Absolute {
@@ -109,12 +131,18 @@ func (a *assessor) limitFindings() {
 		}
 		return rows
 	}
-	if len(out) > 0 {
-		why := "a limit of k that is not positive says nothing of ln k"
-		if a.data.sample.Spent() > 0 {
-			why = "with offsets between sources limits take no part"
+	for len(out) > 0 { // one finding for each reason
+		why := a.data.whyNoLimit(a.set, a.set.Points[out[0]])
+		var these, others []int
+		for _, i := range out {
+			if a.data.whyNoLimit(a.set, a.set.Points[i]) == why {
+				these = append(these, i)
+			} else {
+				others = append(others, i)
+			}
 		}
-		a.find("limits-left-out", fmt.Sprintf("%s: %s left out; %s", a.set.Places(out), count(len(out), "limit"), why), rows(out), nil)
+		a.find("limits-left-out", fmt.Sprintf("%s: %s left out; %s", a.set.Places(these), count(len(these), "limit"), why), rows(these), nil)
+		out = others
 	}
 	if len(in) == 0 {
 		return
@@ -146,7 +174,8 @@ func enter(n int) string {
 // limitProbability is that of a new measurement on the side of a limit, by Student's t
 // (normal where σ is known) about the power-prefactor fit of the measured points, or
 // the straight one where that has no degree of freedom: the joint fit would already
-// lean to the limit. ok is false where neither has.
+// lean to the limit. Beside offsets both are of the source of the limit. ok is false
+// where neither has.
 func (a *assessor) limitProbability(l fit.Limit) (p float64, ok bool) {
 	for _, r := range []*fit.Result{a.power.Measured(), a.straight.Measured()} {
 		known := r.Model.KnownSigma()
@@ -155,8 +184,21 @@ func (a *assessor) limitProbability(l fit.Limit) (p float64, ok bool) {
 		}
 		jac, f := make([]float64, r.Params()), []float64{0}
 		r.Curve.LnK(r.TRef, []float64{l.T}, r.P, f, jac)
-		e := r.Interval(jac, f[0], 0.95)
-		se, d := e.StdError, math.Log(l.K)-f[0]
+		cov := r.Cov
+		if r.Spent > 0 {
+			if cov = r.JointCov; cov == nil {
+				continue
+			}
+			jac = append(jac, l.Beside...)
+			f[0] += floats.Dot(l.Beside, r.Beside)
+		}
+		var variance float64
+		for i, x := range jac {
+			for j, y := range jac {
+				variance += x * cov[i*len(jac)+j] * y
+			}
+		}
+		se, d := math.Sqrt(math.Max(0, variance)), math.Log(l.K)-f[0]
 		if r.Model.InK() {
 			k := math.Exp(f[0])
 			se, d = se*k, l.K-k

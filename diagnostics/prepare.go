@@ -32,9 +32,11 @@ type prepared struct {
 	sample *fit.Sample     // single or means, whichever the verdict uses
 	basis  string
 	limits []dataset.Point // those that enter as limits, in the order of the samples'
+	bounds []fit.Limit     // of limits, before offsets
 	// sources says how several sources are taken; nil where there is one.
 	sources *sourceSplit
 	source  []int // of each point; nil where there is one
+	bounded []int // sources of limits
 	// temperatureShare is the largest part of a relative variance that u(T)
 	// alone makes up, as a standard deviation of ln k; 0 without u(T).
 	temperatureShare float64
@@ -63,13 +65,11 @@ func prepare(set *dataset.Set, model fit.ErrorModel, replicates string) (*prepar
 	if err := p.addTemperatureVariance(); err != nil {
 		return nil, err
 	}
+	p.readLimits(set)
 	if err := p.choose(replicates); err != nil {
 		return nil, err
 	}
 	if err := p.splitSources(replicates); err != nil {
-		return nil, err
-	}
-	if err := p.addLimits(set); err != nil {
 		return nil, err
 	}
 	return p, nil
@@ -78,6 +78,9 @@ func prepare(set *dataset.Set, model fit.ErrorModel, replicates string) (*prepar
 // choose forms the means and takes what the verdict uses.
 func (p *prepared) choose(replicates string) error {
 	if err := p.formMeans(); err != nil {
+		return err
+	}
+	if err := p.addLimits(); err != nil {
 		return err
 	}
 	p.sample, p.basis = p.single, BasisPoints

@@ -25,9 +25,11 @@ type BetweenSources struct {
 	Sources []SourceOffset  `json:"sources"`
 	Pooled  ExponentSources `json:"pooled"`
 	Offset  ExponentSources `json:"with_offsets"`
-	FTest   FTest           `json:"f_test"` // of the offsets, in power-prefactor
+	// FTest is that of the offsets, in power-prefactor. Where limits take part it is the
+	// likelihood-ratio test: see offsetTest.
+	FTest FTest `json:"f_test"`
 	// VIF is the variance of n with offsets over that of n pooled, by the design
-	// alone.
+	// alone; with limits, over that of n with the offsets held.
 	VIF        Real   `json:"vif"`
 	Confounded bool   `json:"confounded"` // the verdict is the pooled one
 	Why        string `json:"why_confounded"`
@@ -42,7 +44,7 @@ type SourceOffset struct {
 	Points       int      `json:"points"`
 	Temperatures int      `json:"temperatures"`
 	Offset       Estimate `json:"offset_ln_k"`
-	InCurvature  bool     `json:"in_curvature"` // false for a source of one point
+	InCurvature  bool     `json:"in_curvature"` // false for a source of one point without limits
 }
 
 // ExponentSources is the exponent test one way. The change of E is that over the
@@ -71,7 +73,8 @@ type sourceSplit struct {
 	points       []int    // of each source
 	temperatures []int
 	entries      []int // of the sample that the verdict uses
-	onePoint     []int // sources of one entry
+	limits       []int
+	onePoint     []int // sources of one entry and no limit
 	aside        []dataset.Point
 
 	pooled      *fit.Sample // all entries, taken as one
@@ -176,25 +179,27 @@ func contrasts(source []int) [][]float64 {
 // splitSources fits power-prefactor with the sources taken as one and with an offset
 // for each. If offsets and curvature can be told apart, sources of one entry are set
 // aside, the offsets taken off the others, and what remains of them fitted beside
-// every curve.
+// every curve. Limits count as entries of their source: of one that has a single measured
+// point, they bound the curve from there.
 func (p *prepared) splitSources(replicates string) error {
 	split := p.sources
 	if split == nil {
 		return nil
 	}
 	s, entry := p.sample, p.entrySources()
-	split.count(p.points, p.source, s, entry)
+	split.count(p.points, p.source, entry, p.bounded)
 	split.pooled = s
 	split.pooledPower = fit.Fit(s, models.PowerPrefactor{})
-	split.beside = fit.Fit(s.WithOffsets(make([]float64, s.Len()), contrasts(entry)), models.PowerPrefactor{})
+	all := p.withBounded(entry)
+	split.beside = fit.Fit(s.WithOffsets(make([]float64, len(all)), contrasts(all)), models.PowerPrefactor{})
 	split.estimateOffsets()
-	if split.confounded = split.cannot(s, entry); split.confounded != "" {
+	if split.confounded = split.cannot(s, entry, all); split.confounded != "" {
 		return nil
 	}
 
 	var keep []int
 	for i, src := range p.source {
-		if split.entries[src] > 1 {
+		if split.takesPart(src) {
 			keep = append(keep, i)
 		} else {
 			split.aside = append(split.aside, p.points[i])
@@ -205,16 +210,10 @@ func (p *prepared) splitSources(replicates string) error {
 			return err
 		}
 	}
-	offset := func(source []int) []float64 {
-		out := make([]float64, len(source))
-		for i, src := range source {
-			out[i] = split.offsets[src].Value
-		}
-		return out
-	}
 	entry = p.entrySources()
 	onMeans := p.basis == BasisMeans
-	p.single = p.single.WithOffsets(offset(p.source), contrasts(p.source))
+	all = p.withBounded(p.source)
+	p.single = p.single.WithOffsets(split.offsetsOf(all), contrasts(all))
 	if p.means != nil {
 		var means []int // source of each mean
 		if onMeans {
@@ -225,7 +224,8 @@ func (p *prepared) splitSources(replicates string) error {
 				means[g] = p.source[i]
 			}
 		}
-		p.means = p.means.WithOffsets(offset(means), contrasts(means))
+		all = p.withBounded(means)
+		p.means = p.means.WithOffsets(split.offsetsOf(all), contrasts(all))
 	}
 	if p.sample = p.single; onMeans {
 		p.sample = p.means
@@ -233,10 +233,75 @@ func (p *prepared) splitSources(replicates string) error {
 	return nil
 }
 
+// withBounded are the sources of entries and, after them, of the limits.
+func (p *prepared) withBounded(source []int) []int {
+	return slices.Concat(source, p.bounded)
+}
+
+// takesPart reports whether a source bears on the curvature: a single point leaves
+// nothing once its offset is fitted, unless limits go with it.
+func (split *sourceSplit) takesPart(src int) bool {
+	return split.entries[src] > 1 || split.limits[src] > 0
+}
+
+// offsetsOf are the offsets of entries of these sources, in ln k.
+func (split *sourceSplit) offsetsOf(source []int) []float64 {
+	out := make([]float64, len(source))
+	for i, src := range source {
+		out[i] = split.offsets[src].Value
+	}
+	return out
+}
+
+// besideRest are the nuisance columns and the limits that the sample has without some of
+// its entries. Of a source that has no measured entry left, the limits go too.
+func (p *prepared) besideRest(without []int) (columns [][]float64, limits []fit.Limit) {
+	s := p.sample
+	gone := func(i int) bool { return slices.Contains(without, i) }
+	if len(s.Limits) > 0 && s.Spent() > 0 {
+		var source []int
+		for i, src := range p.entrySources() {
+			if !gone(i) {
+				source = append(source, src)
+			}
+		}
+		n := len(source)
+		for i, src := range p.bounded {
+			if slices.Contains(source[:n], src) {
+				source, limits = append(source, src), append(limits, s.Limits[i])
+			}
+		}
+		columns = contrasts(source)
+		for i := range limits {
+			limits[i].Beside = nil
+			for _, c := range columns {
+				limits[i].Beside = append(limits[i].Beside, c[n+i])
+			}
+		}
+		for j := range columns {
+			columns[j] = columns[j][:n:n]
+		}
+		return columns, limits
+	}
+	for _, z := range s.Nuisance {
+		var column []float64
+		for i, v := range z {
+			if !gone(i) {
+				column = append(column, v)
+			}
+		}
+		columns = append(columns, column)
+	}
+	return columns, s.Limits
+}
+
 // count fills in what each source holds.
-func (split *sourceSplit) count(points []dataset.Point, source []int, s *fit.Sample, entry []int) {
+func (split *sourceSplit) count(points []dataset.Point, source, entry, bounded []int) {
 	n := len(split.names)
-	split.points, split.temperatures, split.entries = make([]int, n), make([]int, n), make([]int, n)
+	split.points, split.temperatures, split.entries, split.limits = make([]int, n), make([]int, n), make([]int, n), make([]int, n)
+	for _, src := range bounded {
+		split.limits[src]++
+	}
 	at := make([][]float64, n)
 	for i, src := range source {
 		split.points[src]++
@@ -247,7 +312,7 @@ func (split *sourceSplit) count(points []dataset.Point, source []int, s *fit.Sam
 	}
 	for src := range n {
 		split.temperatures[src] = models.CountTemperatures(at[src])
-		if split.entries[src] == 1 {
+		if split.entries[src] == 1 && !split.takesPart(src) {
 			split.onePoint = append(split.onePoint, src)
 		}
 	}
@@ -275,8 +340,9 @@ func (p *prepared) keep(keep []int, replicates string) error {
 	return p.choose(replicates)
 }
 
-// cannot says why curvature and offsets cannot be told apart, "" where they can.
-func (split *sourceSplit) cannot(s *fit.Sample, entry []int) string {
+// cannot says why curvature and offsets cannot be told apart, "" where they can. entry
+// are the sources of the entries, all those of the limits too.
+func (split *sourceSplit) cannot(s *fit.Sample, entry, all []int) string {
 	split.vif = math.NaN()
 	f := split.beside
 	switch {
@@ -294,6 +360,16 @@ func (split *sourceSplit) cannot(s *fit.Sample, entry []int) string {
 	if d := models.CountTemperatures(t); d < minTemperatures && s.DistinctT() >= minTemperatures {
 		return fmt.Sprintf("sources of more than one point have %s", count(d, "distinct temperature"))
 	}
+	if len(s.Limits) > 0 {
+		// What limits tell of n hangs on where they lie: offsets free and held are compared
+		// at the same curve and σ.
+		held := fit.Fit(s.WithOffsets(split.offsetsOf(all), nil), models.PowerPrefactor{})
+		if held.Status == fit.Converged && held.Cov != nil {
+			ratio := held.Sigma / f.Sigma // their degrees of freedom differ
+			split.vif = f.Cov[8] / held.Cov[8] * ratio * ratio
+		}
+		return ""
+	}
 	w, fitted := make([]float64, s.Len()), split.beside.Fitted
 	weigh := func(fitted []float64) []float64 {
 		for i, v := range s.V {
@@ -303,7 +379,7 @@ func (split *sourceSplit) cannot(s *fit.Sample, entry []int) string {
 		}
 		return w
 	}
-	with := exponentVarianceBeside(s.WithOffsets(make([]float64, s.Len()), contrasts(entry)), weigh(fitted))
+	with := exponentVarianceBeside(s.WithOffsets(make([]float64, len(all)), contrasts(all)), weigh(fitted))
 	if math.IsNaN(with) {
 		return "the temperatures of the sources do not determine the exponent of T beside the offsets"
 	}
@@ -393,6 +469,9 @@ func effectiveWithin(s *fit.Sample, w []float64) float64 {
 // besideOffsets makes the judge allow for offsets that are estimated anew in every
 // resample.
 func (j *judge) besideOffsets(a *assessor) {
+	if len(j.s.Limits) > 0 {
+		return // every refit has offsets of its own, and its RSS tells all
+	}
 	w := slices.Clone(j.weights)
 	if j.s.Model.InK() {
 		for i, l := range a.power.Fitted {
@@ -480,7 +559,7 @@ func (a *assessor) compareSources() {
 		}
 		o.Lower, o.Upper = o.Value-crit*o.StdError, o.Value+crit*o.StdError
 		b.Sources = append(b.Sources, SourceOffset{name, split.points[i], split.temperatures[i], NewEstimate(o),
-			b.Confounded || split.entries[i] > 1})
+			b.Confounded || split.takesPart(i)})
 	}
 	b.FTest = FTest{Real(math.NaN()), len(split.names) - 1, Real(math.NaN()), Real(math.NaN())}
 	many := count(len(split.names), "source")
@@ -540,7 +619,10 @@ func (a *assessor) pooledSources() ExponentSources {
 	return a.sourceTest(t, state)
 }
 
-// offsetTest is the F test of the offsets in the power-prefactor curve.
+// offsetTest is the F test of the offsets in the power-prefactor curve. With limits RSS
+// is what stands for the likelihood, so that the statistic is that of the likelihood
+// ratio W, ν (e^{W/n} - 1)/(S - 1) with n measured entries, or W/(S - 1) where σ is
+// known: exactly F without limits, approximately with them.
 func (a *assessor) offsetTest() FTest {
 	split := a.data.sources
 	without, with := split.pooledPower, split.beside
@@ -573,7 +655,11 @@ func (a *assessor) whatOffsetsChange(b *BetweenSources, many string) string {
 	}
 	facts := fmt.Sprintf("taken as one: %s, n = %s; with an offset for each: %s, n = %s", pooled.State, n(pooled), offset.State, n(offset))
 	if p := float64(b.FTest.PValue); !math.IsNaN(p) {
-		facts += fmt.Sprintf("; F test of the offsets p = %s", pText(p))
+		test := "F test"
+		if len(a.data.sample.Limits) > 0 {
+			test = "likelihood-ratio test"
+		}
+		facts += fmt.Sprintf("; %s of the offsets p = %s", test, pText(p))
 	}
 	values := map[string]Real{"n_pooled": pooled.Exponent.Value, "n_offsets": offset.Exponent.Value, "f_p_value": b.FTest.PValue}
 	shrinks := math.Abs(float64(offset.Exponent.Value)) < offsetShrinks*math.Abs(float64(pooled.Exponent.Value))

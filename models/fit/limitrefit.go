@@ -17,16 +17,18 @@ type StdErrorRefitter interface {
 // limitRefitter refits to resamples of a sample with limits. Their values follow
 // those of the measured entries: one on its side of the bound, or on it, is that limit
 // again, and any other counts as measured (censoring at fixed bounds, of type I). RSS
-// is as in Result, with the number of measured entries of the sample.
+// is as in Result, with the number of measured entries of the sample. Nuisance columns
+// are fitted together with every curve, to every resample anew.
 type limitRefitter struct {
 	s      *Sample
 	curves []models.Curve
 	fits   []*Result
 	params []int // parameters given out, of each curve
 	criterion
-	work []*limitWork
-	line *limitWork // about which limits are completed, for starts of other curves
-	plan *plan      // of all entries; nil where the errors are in k
+	work     []*limitWork
+	straight *limitWork // nil where the straight line is no candidate
+	line     *limitWork // about which limits are completed, for starts of other curves
+	plan     *plan      // of all entries; nil where the errors are in k
 }
 
 // limitWork is the memory of refits of one curve.
@@ -51,6 +53,9 @@ func newLimitRefitter(s *Sample, curves []models.Curve, fits []*Result, c criter
 			r.params[j] = len(c.Info().Params)
 		}
 		r.work = append(r.work, newLimitWork(s, c, fits[j]))
+		if isStraight(c) {
+			r.straight = r.work[j]
+		}
 		// The most flexible linear curve completes limits best.
 		if w := r.work[j]; linear && w.from != nil && (r.line == nil || w.e.p > r.line.e.p) {
 			r.line = w
@@ -67,10 +72,14 @@ func newLimitRefitter(s *Sample, curves []models.Curve, fits []*Result, c criter
 	return r
 }
 
+func isStraight(c models.Curve) bool { return c.Info().Name == models.Straight().Info().Name }
+
 func newLimitWork(s *Sample, c models.Curve, f *Result) *limitWork {
-	w := &limitWork{e: newCensored(s, c), cov: make([]float64, len(c.Info().Params)*len(c.Info().Params))}
-	if f.Usable() && len(f.P) == w.e.p && limitsUnused(s, f.Measured()) == "" && w.e.start(f.P) {
-		w.from, w.basis, w.reach = f.P, append([]float64(nil), w.e.b...), w.e.reach
+	e := newCensored(s, c)
+	w := &limitWork{e: e, cov: make([]float64, e.p*e.p)}
+	from := append(append([]float64(nil), f.P...), f.Beside...)
+	if f.Usable() && len(from) == e.p && limitsUnused(s, f.Measured()) == "" && e.start(from) {
+		w.from, w.basis, w.reach = from, append([]float64(nil), e.b...), e.reach
 	}
 	return w
 }
@@ -78,11 +87,14 @@ func newLimitWork(s *Sample, c models.Curve, f *Result) *limitWork {
 // Clone implements Refitter.
 func (r *limitRefitter) Clone() Refitter {
 	c := *r
-	c.work, c.line = nil, nil
+	c.work, c.straight, c.line = nil, nil, nil
 	for j, curve := range r.curves {
 		c.work = append(c.work, newLimitWork(r.s, curve, r.fits[j]))
 		if r.work[j] == r.line {
 			c.line = c.work[j]
+		}
+		if r.work[j] == r.straight {
+			c.straight = c.work[j]
 		}
 	}
 	if c.line == nil {
@@ -122,7 +134,7 @@ func (r *limitRefitter) StdError(j int, w []float64) float64 {
 	var v float64
 	for i, wi := range w {
 		for k, wk := range w {
-			v += wi * work.cov[i*len(w)+k] * wk
+			v += wi * work.cov[i*work.e.p+k] * wk
 		}
 	}
 	return math.Sqrt(v)
@@ -136,7 +148,9 @@ func (r *limitRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 	out.prepare(r.params)
 	out.How, out.First = HowLinear, -1
 	distinct := math.MaxInt
-	if counts != nil {
+	if counts != nil && r.s.Spent() > 0 {
+		distinct = 0 // as in offsetRefitter.RefitCounts
+	} else if counts != nil {
 		var taken []float64
 		for i, t := range r.s.T {
 			if counts[i] > 0 {
@@ -146,19 +160,22 @@ func (r *limitRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 		distinct = models.CountTemperatures(taken)
 	}
 	r.line.linear(y, counts)
+	if r.straight != nil && r.straight != r.line { // the others are compared with it
+		r.straight.linear(y, counts)
+	}
 	var completed *Sample
 	for j := range r.curves {
 		if only >= 0 && j != only {
 			continue
 		}
 		w := r.work[j]
-		if distinct <= w.e.p {
+		if distinct <= w.e.own {
 			w.ok = false
 			out.fail(j)
 			continue
 		}
 		out.How = max(out.How, HowWarm)
-		if w != r.line {
+		if w != r.line && w != r.straight {
 			w.linear(y, counts)
 		}
 		_, shaped := r.curves[j].(models.Shaped)
@@ -168,7 +185,7 @@ func (r *limitRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 			}
 			r.cold(w, j, completed)
 			if r.s.Model.InK() { // where minima are many
-				r.cold(w, j, w.e.measured(r.s))
+				r.cold(w, j, r.line.e.measured(r.s))
 			}
 			out.How = max(out.How, HowCold)
 		}
@@ -192,12 +209,8 @@ func (r *limitRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 // worse reports whether a curve that nests the straight line does not beat it, where
 // that is a candidate.
 func (r *limitRefitter) worse(w *limitWork) bool {
-	for j, c := range r.curves {
-		if l := r.work[j]; c.Info().Name == models.Straight().Info().Name && l.ok {
-			return !(w.value < l.value-1e-9)
-		}
-	}
-	return false
+	l := r.straight
+	return l != nil && l.ok && !(w.value < l.value-1e-9)
 }
 
 // linear refits from the estimate of the sample.
@@ -210,7 +223,7 @@ func (w *limitWork) linear(y []float64, counts []int) {
 	}
 	copy(e.par, w.from)
 	copy(e.b, w.basis)
-	e.d, e.reach = e.p, w.reach
+	e.d, e.edge, e.reach = e.p, 0, w.reach
 	w.descend()
 }
 
@@ -234,7 +247,8 @@ func (w *limitWork) descend() {
 const refitTolerance = 1e-6
 
 // cold looks for a better minimum from a fit to the resample with its limits
-// completed; it keeps what w holds where there is none.
+// completed and the offsets of r.line taken off; it keeps what w holds where there is
+// none.
 func (r *limitRefitter) cold(w *limitWork, j int, completed *Sample) {
 	if completed == nil {
 		return
@@ -252,11 +266,12 @@ func (r *limitRefitter) cold(w *limitWork, j int, completed *Sample) {
 	}
 	e := w.e
 	before, lambda, value, ok := append([]float64(nil), e.par...), e.lambda, w.value, w.ok
-	if e.start(f.P) {
+	if e.start(r.line.e.withOffsets(f.P)) {
 		if w.descend(); w.ok && (!ok || w.value < value-1e-9) {
 			return
 		}
 	}
+	e.release()
 	copy(e.par, before)
 	e.lambda, w.value, w.ok = lambda, value, ok
 }

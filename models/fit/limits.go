@@ -16,6 +16,9 @@ type Limit struct {
 	K     float64 // the bound, in the data's unit
 	Below bool    // k lies below the bound, else above it
 	V     float64 // variance of what would have been measured, as in Sample.V
+	// Beside are the values of the sample's nuisance columns for this entry; nil where
+	// it has none.
+	Beside []float64
 }
 
 // WithLimits returns the sample with limits, which its entries do not hold: T, Y, K
@@ -29,6 +32,8 @@ func (s *Sample) WithLimits(limits []Limit) (*Sample, error) {
 			return nil, fmt.Errorf("fit: limit %d: variance %g is not positive", i+1, l.V)
 		case math.IsNaN(l.K) || math.IsInf(l.K, 0) || !(l.K > 0) && !s.Model.InK():
 			return nil, fmt.Errorf("fit: limit %d: a limit of k = %g cannot be used under %q", i+1, l.K, s.Model)
+		case len(l.Beside) != s.Spent():
+			return nil, fmt.Errorf("fit: limit %d: it needs a value for each of %d nuisance columns, and has %d", i+1, s.Spent(), len(l.Beside))
 		}
 	}
 	out := *s
@@ -104,17 +109,19 @@ func mills(z float64) (lnPhi, m, zm float64) {
 //	D = Σ r²/(σ²V) + 2n ln σ - 2 Σ ln Φ(z),  z = ±(L - f)/(σ√V)
 //
 // the first sum over the n measured entries, the second over the limits, + for "<";
-// f is ln k, or k where the model is InK, and without ln σ where σ is known. It is
-// minimised over the parameters and ln σ by Newton's method. For a curve that is
-// linear in ln k the minimum is the only one (R. J. Olsen, Econometrica 46 (1978)
-// 1211). It is a workspace for one goroutine.
+// f is ln k, or k where the model is InK, and without ln σ where σ is known; nuisance
+// columns are part of ln k. It is minimised over the parameters, the coefficients of
+// the columns and ln σ by Newton's method, the third parameter of a seeded curve within
+// its bounds. For a curve that is linear in ln k the minimum is the only one (R. J.
+// Olsen, Econometrica 46 (1978) 1211). It is a workspace for one goroutine.
 type censored struct {
 	c          models.Curve
 	linear     bool // the curve has no second derivatives
 	gauss      bool // do without them: a resample needs no covariance, and a step costs a ninth
 	inK, known bool
 	tRef       float64
-	n, p       int     // measured entries of the sample, parameters
+	n, p       int     // measured entries of the sample; parameters, those of nuisance columns included
+	own        int     // parameters of the curve
 	taken      float64 // measured entries that take part
 	spent      int     // degrees of freedom that the fit takes
 	steps      int     // of minimise
@@ -129,32 +136,41 @@ type censored struct {
 	below   []bool
 
 	barriers []int
+	seeded   *seededDesign // nil for other curves
 
-	par    []float64 // canonical parameters
+	par    []float64 // canonical parameters and, after them, coefficients of nuisance columns
 	lambda float64   // ln σ
 	d      int       // directions in which par may move
 	b      []float64 // p x d: those directions, orthonormal for the measured entries
+	edge   int       // -1 or 1 where a seeded parameter is held at its lower or upper bound
+	all    []float64 // b and d without that
+	allD   int
 
 	x, off              []float64 // of a linear curve: design and offset
+	beside              []float64 // nuisance columns, row-major
+	inner               []float64 // Jacobian without them
 	f, jac, ju, slope   []float64
 	pull                []float64 // ∂D/∂f
 	grad, hess, low     []float64 // of D; Cholesky factor
 	step, best, shifted []float64
+	sums                []float64
 	reach               float64 // length of a step of difference quotients
 }
 
 func newCensored(s *Sample, c models.Curve) *censored {
 	all, o := s.All(), newObjective(s.Measured(), c)
-	n, m, p := s.Len(), s.Len()+len(s.Limits), len(c.Info().Params)
+	n, m, own := s.Len(), s.Len()+len(s.Limits), len(c.Info().Params)
+	p := own + s.Spent()
 	e := &censored{
 		c: c, inK: s.Model.InK(), known: s.Model.KnownSigma(), tRef: s.TRef,
-		n: n, p: p, spent: p, steps: 100, unit: o.scale, lnUnit: o.lnScale, barriers: o.barriers,
+		n: n, p: p, own: own, spent: p, steps: 100, unit: o.scale, lnUnit: o.lnScale, barriers: o.barriers,
 		t: all.T, y: make([]float64, m), w: make([]float64, m),
 		side: make([]float64, m), count: make([]float64, m),
-		par: make([]float64, p), b: make([]float64, p*p), d: p,
+		par: make([]float64, p), b: make([]float64, p*p), all: make([]float64, p*p), d: p,
 		f: make([]float64, m), jac: make([]float64, m*p), ju: make([]float64, m*p), slope: make([]float64, m),
 		pull: make([]float64, m), grad: make([]float64, p+1), hess: make([]float64, (p+1)*(p+1)),
 		low: make([]float64, (p+1)*(p+1)), step: make([]float64, p+1), best: make([]float64, p), shifted: make([]float64, p),
+		sums: make([]float64, p),
 	}
 	for i, v := range all.V {
 		e.y[i], e.w[i] = all.Y[i], 1/math.Sqrt(v)
@@ -172,10 +188,27 @@ func newCensored(s *Sample, c models.Curve) *censored {
 	if e.inK && !e.known {
 		e.least -= e.lnUnit
 	}
-	if basis, ok := c.(models.Basis); ok {
+	for i := range e.t {
+		for j, c := range s.Nuisance {
+			if i < n {
+				e.beside = append(e.beside, c[i])
+			} else {
+				e.beside = append(e.beside, s.Limits[i-n].Beside[j])
+			}
+		}
+	}
+	e.inner = e.jac
+	if p > own {
+		e.inner = make([]float64, m*own)
+	}
+	switch c := c.(type) {
+	case models.Basis:
 		e.linear = true
 		e.x, e.off = make([]float64, m*p), make([]float64, m)
-		basis.Columns(e.tRef, e.t, e.off, e.x)
+		c.Columns(e.tRef, e.t, e.off, e.inner)
+		e.widen(e.x)
+	case models.Seeded:
+		e.seeded = newSeededDesign(c, e.tRef, e.t)
 	}
 	e.take(nil, nil)
 	return e
@@ -213,10 +246,40 @@ func (e *censored) take(y []float64, counts []int) {
 	}
 }
 
+// widen fills jac with the rows of inner, each followed by those of the nuisance
+// columns.
+func (e *censored) widen(jac []float64) {
+	q := e.p - e.own
+	for i := range e.t {
+		row := jac[i*e.p : (i+1)*e.p]
+		copy(row, e.inner[i*e.own:(i+1)*e.own])
+		copy(row[e.own:], e.beside[i*q:(i+1)*q])
+	}
+}
+
+// offset is what the nuisance columns add to ln k of entry i at par.
+func (e *censored) offset(i int, par []float64) float64 {
+	q := e.p - e.own
+	return dot(e.beside[i*q:(i+1)*q], par[e.own:])
+}
+
 // curve fills f, and jac where it is asked for, at par.
 func (e *censored) curve(par []float64, jac []float64) {
 	if !e.linear {
-		e.c.LnK(e.tRef, e.t, par, e.f, jac)
+		var inner []float64
+		if jac != nil {
+			inner = e.inner
+		}
+		e.c.LnK(e.tRef, e.t, par[:e.own], e.f, inner)
+		if e.p == e.own { // inner is jac
+			return
+		}
+		for i := range e.f {
+			e.f[i] += e.offset(i, par)
+		}
+		if jac != nil {
+			e.widen(jac)
+		}
 		return
 	}
 	for i := range e.f {
@@ -330,12 +393,20 @@ func (e *censored) value(par []float64, lambda float64, derivs bool) float64 {
 // quotients of its Jacobian along each direction.
 func (e *censored) bend(par []float64) {
 	d, q := e.d, e.d+1
+	s := e.sums[:d]
 	for k := range d {
-		var sums [8]float64
-		s := sums[:d]
+		clear(s)
+		reach, width := e.reach, 0.0
+		if e.seeded != nil { // small beside the bounds too
+			reach = math.Min(reach, 1e-3*(e.seeded.high-e.seeded.low)/math.Abs(e.b[2*d+k]))
+		}
 		for _, sign := range []float64{1, -1} {
 			for j := range par {
-				e.shifted[j] = par[j] + sign*e.reach*e.b[j*d+k]
+				e.shifted[j] = par[j] + sign*reach*e.b[j*d+k]
+			}
+			if width += reach; e.beyond(e.shifted) != 0 {
+				width -= reach // a quotient of one side
+				copy(e.shifted, par)
 			}
 			e.curve(e.shifted, e.jac)
 			for i, g := range e.pull {
@@ -352,17 +423,75 @@ func (e *censored) bend(par []float64) {
 			}
 		}
 		for l, v := range s[:k+1] {
-			e.hess[k*q+l] += v / (2 * e.reach)
+			e.hess[k*q+l] += v / width
 		}
 	}
 }
 
-// start puts the search at canonical parameters and chooses directions that are
-// orthonormal for the measured entries there. It reports false where the curve is
-// not finite.
+// beyond is -1 or 1 where the third parameter of a seeded curve lies below or above its
+// bounds, 0 elsewhere.
+func (e *censored) beyond(par []float64) int {
+	switch {
+	case e.seeded == nil:
+	case par[2] < e.seeded.low:
+		return -1
+	case par[2] > e.seeded.high:
+		return 1
+	}
+	return 0
+}
+
+// edgeValue is the value of the third parameter of a seeded curve at one of its bounds.
+func (e *censored) edgeValue(edge int) float64 {
+	if edge < 0 {
+		return e.seeded.low
+	}
+	return e.seeded.high
+}
+
+// hug holds the third parameter of a seeded curve at a bound that it has reached.
+func (e *censored) hug(edge int) {
+	copy(e.all, e.b)
+	e.allD, e.edge = e.d, edge
+	c := make([]float64, e.p)
+	c[2] = 1
+	e.hold(c, 0)
+	e.par[2] = e.edgeValue(edge)
+}
+
+// release undoes hug.
+func (e *censored) release() {
+	if e.edge != 0 {
+		copy(e.b, e.all)
+		e.d, e.edge = e.allD, 0
+	}
+}
+
+// pullsInward reports whether D falls from the bound that is hugged into the interior,
+// at the minimum along it: the slope of the least D is then that at fixed other
+// parameters. Directions and derivatives are afterwards those without the bound.
+func (e *censored) pullsInward() bool {
+	edge := e.edge
+	e.release()
+	e.value(e.par, e.lambda, true)
+	var slope float64
+	for k := range e.d {
+		slope += e.grad[k] * e.b[2*e.d+k]
+	}
+	return float64(edge)*slope > 0
+}
+
+// start puts the search at canonical parameters, followed by coefficients of the
+// nuisance columns or, where these lack, zeros, and chooses directions that are
+// orthonormal for the measured entries there. A seeded parameter out of its bounds is
+// put on them. It reports false where the curve is not finite.
 func (e *censored) start(p []float64) bool {
+	clear(e.par)
 	copy(e.par, p)
-	e.d = e.p
+	if edge := e.beyond(e.par); edge != 0 {
+		e.par[2] = e.edgeValue(edge)
+	}
+	e.d, e.edge = e.p, 0
 	e.curve(e.par, e.jac)
 	var most float64
 	for i := range e.n {
@@ -404,18 +533,18 @@ func (e *censored) start(p []float64) bool {
 // hold keeps c·par at what start gave plus shift: par moves there along the shortest
 // way, and the directions left are those in which c·par does not change.
 func (e *censored) hold(c []float64, shift float64) {
-	p := e.p
-	v, along := make([]float64, p), make([]float64, p)
+	p, d := e.p, e.d
+	v, along := make([]float64, d), make([]float64, p)
 	var length float64
-	for k := range p {
+	for k := range d {
 		for j := range p {
-			v[k] += c[j] * e.b[j*p+k]
+			v[k] += c[j] * e.b[j*d+k]
 		}
 		length += v[k] * v[k]
 	}
 	for j := range p {
-		for k := range p {
-			along[j] += e.b[j*p+k] * v[k] / length
+		for k := range d {
+			along[j] += e.b[j*d+k] * v[k] / length
 		}
 		e.par[j] += shift * along[j]
 	}
@@ -430,18 +559,18 @@ func (e *censored) hold(c []float64, shift float64) {
 	for _, x := range v {
 		vv += x * x
 	}
-	out := make([]float64, p*(p-1))
+	out := make([]float64, p*(d-1))
 	for j := range p {
 		var bv float64
-		for k := range p {
-			bv += e.b[j*p+k] * v[k]
+		for k := range d {
+			bv += e.b[j*d+k] * v[k]
 		}
-		for k := 1; k < p; k++ {
-			out[j*(p-1)+k-1] = e.b[j*p+k] - 2*bv*v[k]/vv
+		for k := 1; k < d; k++ {
+			out[j*(d-1)+k-1] = e.b[j*d+k] - 2*bv*v[k]/vv
 		}
 	}
 	copy(e.b, out)
-	e.d = p - 1
+	e.d = d - 1
 }
 
 // scatter sets ln σ to that of the residuals of the measured entries about par.
@@ -467,10 +596,13 @@ func (e *censored) scatter() {
 // minimise takes par and lambda to the minimum near them. It stops where Newton's
 // decrement, by which D still exceeds the minimum, is at most tolerance: D is in units
 // of twice the log-likelihood, in which 1 is one standard error. ok is false where that
-// is not reached in the steps allowed.
+// is not reached in the steps allowed. A step that would leave the bounds of a seeded
+// curve ends on them; the search goes on along the bound, and leaves it where D falls
+// inwards.
 func (e *censored) minimise(tolerance float64) (value float64, ok bool) {
 	value = e.value(e.par, e.lambda, true)
 	var damping float64
+	returns := 2 // from a bound
 	for range e.steps {
 		if math.IsInf(value, 0) {
 			return value, false
@@ -490,18 +622,28 @@ func (e *censored) minimise(tolerance float64) (value float64, ok bool) {
 		for k := range dim {
 			decrement -= e.grad[k] * e.step[k]
 		}
-		if damping == 0 && decrement <= tolerance {
+		lambda, edge := e.move(dim)
+		if damping == 0 && decrement <= tolerance && edge == 0 {
 			// The last step: no longer worth a look at what it gains.
-			lambda := e.move(dim)
 			copy(e.par, e.best)
 			e.lambda = lambda
-			return value - decrement/2, true
+			value -= decrement / 2
+			if at := e.edge; at != 0 && returns > 0 {
+				if returns--; e.pullsInward() {
+					value = e.value(e.par, e.lambda, true)
+					continue
+				}
+				e.hug(at)
+			}
+			return value, true
 		}
-		lambda := e.move(dim)
 		next := e.value(e.best, lambda, false)
 		if next <= value+1e-13*(math.Abs(value)+e.taken) {
 			copy(e.par, e.best)
 			e.lambda = lambda
+			if edge != 0 {
+				e.hug(edge)
+			}
 			value = e.value(e.par, e.lambda, true)
 			damping /= 10
 			if damping < 1e-4 {
@@ -517,18 +659,32 @@ func (e *censored) minimise(tolerance float64) (value float64, ok bool) {
 	return value, false
 }
 
-// move puts par after the step into best and returns ln σ after it.
-func (e *censored) move(dim int) float64 {
+// move puts par after the step into best and returns ln σ after it. A step that would
+// leave the bounds of a seeded curve is cut short there; edge is then -1 or 1.
+func (e *censored) move(dim int) (lambda float64, edge int) {
 	copy(e.best, e.par)
 	for j := range e.p {
 		for k := range e.d {
 			e.best[j] += e.b[j*e.d+k] * e.step[k]
 		}
 	}
-	if dim == e.d {
-		return e.lambda
+	lambda = e.lambda
+	if dim > e.d {
+		lambda = math.Max(e.lambda+math.Max(-2, math.Min(2, e.step[e.d])), e.least)
 	}
-	return math.Max(e.lambda+math.Max(-2, math.Min(2, e.step[e.d])), e.least)
+	if e.edge != 0 {
+		e.best[2] = e.par[2] // but for rounding it is
+		return lambda, 0
+	}
+	if edge = e.beyond(e.best); edge != 0 {
+		part := (e.edgeValue(edge) - e.par[2]) / (e.best[2] - e.par[2])
+		for j, p := range e.par {
+			e.best[j] = p + part*(e.best[j]-p)
+		}
+		e.best[2] = e.edgeValue(edge)
+		lambda = e.lambda + part*(lambda-e.lambda)
+	}
+	return lambda, edge
 }
 
 // newton puts the damped Newton step of the first dim variables into step; false
@@ -645,7 +801,8 @@ func (e *censored) rss(value float64) float64 {
 
 // completed puts in place of each limit what is expected of it about the curve at
 // par with scatter lambda: the first half of a step of the EM algorithm (J. Schmee,
-// G. J. Hahn, Technometrics 21 (1979) 417). Entries not taken are left out.
+// G. J. Hahn, Technometrics 21 (1979) 417). Entries not taken are left out, and what
+// nuisance columns add at par is taken off.
 func (e *censored) completed(s *Sample) *Sample {
 	out := &Sample{Model: s.Model, TRef: s.TRef}
 	e.curve(e.par, nil)
@@ -663,40 +820,48 @@ func (e *censored) completed(s *Sample) *Sample {
 			_, m, _ := mills(side * (y - eta) / width)
 			y = eta - side*width*m
 		}
-		k := y * e.unit
-		if !e.inK {
-			k = math.Exp(y)
-		}
-		v := 1 / square(e.w[i])
-		if e.inK && e.known {
-			v *= e.unit * e.unit
-		}
-		out.add(t, k, v/e.count[i])
-		if !e.inK {
-			out.Y[len(out.Y)-1] = y
-		}
+		e.put(out, i, t, y)
 	}
 	return out
 }
 
-// measured are the entries taken that are not limits.
+// put appends entry i with the value y to a sample, what nuisance columns add at par
+// taken off.
+func (e *censored) put(out *Sample, i int, t, y float64) {
+	var o float64
+	if e.p > e.own {
+		o = e.offset(i, e.par)
+	}
+	v := 1 / square(e.w[i])
+	if !e.inK {
+		y -= o
+		out.add(t, math.Exp(y), v/e.count[i])
+		out.Y[len(out.Y)-1] = y
+		return
+	}
+	shrink := math.Exp(-o)
+	if e.known {
+		v *= e.unit * e.unit
+	}
+	out.add(t, y*e.unit*shrink, v*shrink*shrink/e.count[i])
+}
+
+// measured are the entries taken that are not limits, what nuisance columns add at par
+// taken off.
 func (e *censored) measured(s *Sample) *Sample {
 	out := &Sample{Model: s.Model, TRef: s.TRef}
 	for i, t := range e.t {
 		if e.side[i] != 0 || e.count[i] == 0 {
 			continue
 		}
-		k := e.y[i] * e.unit
-		if !e.inK {
-			k = math.Exp(e.y[i])
-		}
-		v := 1 / square(e.w[i])
-		if e.inK && e.known {
-			v *= e.unit * e.unit
-		}
-		out.add(t, k, v/e.count[i])
+		e.put(out, i, t, e.y[i])
 	}
 	return out
+}
+
+// withOffsets joins parameters of the curve with the coefficients of nuisance columns at par.
+func (e *censored) withOffsets(p []float64) []float64 {
+	return append(append(make([]float64, 0, e.p), p...), e.par[e.own:]...)
 }
 
 // limitTolerance is the decrement at which a fit with limits has converged; Newton's
@@ -723,7 +888,10 @@ func fitLimits(s *Sample, c models.Curve) *Result {
 	r.N += len(s.Limits)
 	e := newCensored(s, c)
 	e.spent = s.Len() - r.Nu
-	starts := [][]float64{exact.P}
+	starts := [][]float64{nil}
+	if exact.P != nil {
+		starts[0] = append(append([]float64(nil), exact.P...), exact.Beside...)
+	}
 	_, linear := c.(models.Basis)
 	var line *Result
 	if !linear || e.inK {
@@ -784,6 +952,8 @@ func limitsUnused(s *Sample, exact *Result) string {
 		return fmt.Sprintf("k is measured at %d temperatures, and the curve needs %d", d, p)
 	case exact.Nu < 1 && !s.Model.KnownSigma():
 		return "the measured points leave no degree of freedom"
+	case s.Spent() > 0 && !s.determinesOffsets(exact.Curve):
+		return "the measured points do not determine the curve beside the offsets"
 	}
 	return ""
 }
@@ -806,7 +976,7 @@ func limitStarts(s *Sample, c models.Curve, e *censored) (starts [][]float64, li
 			continue
 		}
 		if p := Fit(a.completed(s), c).P; p != nil {
-			starts = append(starts, p)
+			starts = append(starts, a.withOffsets(p))
 		}
 	}
 	return starts, line
@@ -815,7 +985,12 @@ func limitStarts(s *Sample, c models.Curve, e *censored) (starts [][]float64, li
 // finishLimits fills a result at the minimum of -2 ln L.
 func (r *Result) finishLimits(s *Sample, e *censored, par []float64, lambda, value float64, converged bool) {
 	n, p := s.Len(), r.Params()
-	r.P, r.RSS = par, e.rss(value)
+	p += r.Spent
+	own := r.Params()
+	r.P, r.RSS = par[:own:own], e.rss(value)
+	if r.Spent > 0 {
+		r.Beside = par[own:]
+	}
 	r.Sigma = 1
 	if !e.known {
 		r.Sigma = math.Exp(lambda) * e.stretch()
@@ -825,12 +1000,19 @@ func (r *Result) finishLimits(s *Sample, e *censored, par []float64, lambda, val
 	}
 	r.LogLik = LogLikelihood(s.Measured(), r.RSS)
 	r.Fitted, r.Residuals, r.Leverage = make([]float64, n), make([]float64, n), make([]float64, n)
-	jac := make([]float64, n*p)
-	r.Curve.LnK(s.TRef, s.T, par, r.Fitted, jac)
+	jac := make([]float64, n*own)
+	r.Curve.LnK(s.TRef, s.T, r.P, r.Fitted, jac)
+	jac = s.widened(jac, own)
+	for i := range r.Fitted {
+		for j, c := range s.Nuisance {
+			r.Fitted[i] += r.Beside[j] * c[i]
+		}
+	}
 	r.LimitMass = make([]float64, len(s.Limits))
 	at := make([]float64, 1)
 	for i, l := range s.Limits {
-		r.Curve.LnK(s.TRef, []float64{l.T}, par, at, nil)
+		r.Curve.LnK(s.TRef, []float64{l.T}, r.P, at, nil)
+		at[0] += dot(l.Beside, r.Beside)
 		d := math.Log(l.K) - at[0]
 		if e.inK {
 			d = l.K - math.Exp(at[0])
@@ -848,6 +1030,8 @@ func (r *Result) finishLimits(s *Sample, e *censored, par []float64, lambda, val
 		good = e.covariance(cov)
 	}
 	switch {
+	case e.seeded != nil && e.seeded.edge(par[2]) != "":
+		r.Status, r.Reason = NotIdentified, e.seeded.edge(par[2])
 	case !converged || !good:
 		r.Status, r.Reason = NotIdentified, "the data do not determine the parameters one by one"
 	case e.farBarrier(par):
@@ -879,6 +1063,7 @@ func (r *Result) finishLimits(s *Sample, e *censored, par []float64, lambda, val
 			r.Leverage[i] = math.Min(1, h*square(slope/r.Sigma)/s.V[i])
 		}
 	}
+	r.split(own)
 }
 
 // farBarrier reports whether a barrier lies at maxBarrier.
@@ -902,13 +1087,15 @@ func (e *censored) farBarrier(p []float64) bool {
 func profileLimits(s *Sample, r *Result, c []float64, confidence float64) Estimate {
 	value := dot(c, r.P)
 	wald := r.Interval(c, value, confidence)
+	c = append(append([]float64(nil), c...), make([]float64, r.Spent)...)
+	best := append(append([]float64(nil), r.P...), r.Beside...)
 	out := Estimate{Value: value, StdError: wald.StdError, Lower: math.NaN(), Upper: math.NaN()}
 	if r.Status != Converged {
 		out.Value, out.StdError = math.NaN(), math.NaN()
 	}
 	t := r.quantile(confidence)
 	e := newCensored(s, r.Curve)
-	if math.IsNaN(t) || !e.start(r.P) {
+	if math.IsNaN(t) || r.LimitMass == nil || !e.start(best) {
 		return out
 	}
 	e.scatter()
@@ -920,12 +1107,14 @@ func profileLimits(s *Sample, r *Result, c []float64, confidence float64) Estima
 	if !(step > 0) || math.IsInf(step, 0) {
 		step = math.Max(0.1*math.Abs(value), 1e-3)
 	}
-	best := append([]float64(nil), r.P...)
 	root := func(g float64, from []float64) (float64, []float64) {
 		if !e.start(from) {
 			return math.NaN(), nil
 		}
 		e.hold(c, g-dot(c, from))
+		if e.beyond(e.par) != 0 {
+			return math.NaN(), nil
+		}
 		e.scatter()
 		d, ok := e.minimise(limitTolerance)
 		if !ok {

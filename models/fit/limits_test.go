@@ -40,7 +40,7 @@ func limitSample(t testing.TB, model ErrorModel, v []float64) *Sample {
 	if err != nil {
 		t.Fatal(err)
 	}
-	return limited(t, s, Limit{270, 3.2e-5, true, v[7]}, Limit{275, 7e-5, true, v[8]}, Limit{345, 5.5e-2, false, v[9]})
+	return limited(t, s, Limit{T: 270, K: 3.2e-5, Below: true, V: v[7]}, Limit{T: 275, K: 7e-5, Below: true, V: v[8]}, Limit{T: 345, K: 5.5e-2, Below: false, V: v[9]})
 }
 
 func limited(t testing.TB, s *Sample, limits ...Limit) *Sample {
@@ -154,9 +154,9 @@ func TestUselessLimits(t *testing.T) {
 		}
 		with := limitSample(t, model, v)
 		s := with.Measured()
-		far := limited(t, s, Limit{280, 10, true, v[7]}, Limit{340, 1e-9, false, v[8]})
+		far := limited(t, s, Limit{T: 280, K: 10, Below: true, V: v[7]}, Limit{T: 340, K: 1e-9, Below: false, V: v[8]})
 		if model.InK() {
-			far = limited(t, s, Limit{280, 10, true, v[7]}, Limit{340, -10, false, v[8]})
+			far = limited(t, s, Limit{T: 280, K: 10, Below: true, V: v[7]}, Limit{T: 340, K: -10, Below: false, V: v[8]})
 		}
 		for _, c := range models.Default() {
 			a, b := Fit(s, c), Fit(far, c)
@@ -195,7 +195,7 @@ func TestUselessLimits(t *testing.T) {
 // Limits without a use, and samples that cannot use them.
 func TestLimitsWithoutUse(t *testing.T) {
 	s, _ := NewSample(Relative, []float64{300, 310, 320}, []float64{1, 2.1, 3.9}, []float64{1, 1, 1})
-	s = limited(t, s, Limit{290, 0.4, true, 1}, Limit{280, 0.4, true, 1})
+	s = limited(t, s, Limit{T: 290, K: 0.4, Below: true, V: 1}, Limit{T: 280, K: 0.4, Below: true, V: 1})
 	if r := Fit(s, models.Straight()); r.Status != Converged || r.Nu != 1 || r.N != 5 {
 		t.Errorf("straight: %s, ν = %d, N = %d", r.Status, r.Nu, r.N)
 	}
@@ -213,7 +213,7 @@ func TestLimitsWithoutUse(t *testing.T) {
 		k = append(k, math.Exp(20-60000/(models.GasConstant*x)))
 	}
 	s, _ = NewSample(Relative, tt, k, []float64{1, 1, 1, 1, 1, 1})
-	for _, l := range []Limit{{270, 1, true, 1}, {270, 1e-5, true, 1}} { // the second contradicts them
+	for _, l := range []Limit{{T: 270, K: 1, Below: true, V: 1}, {T: 270, K: 1e-5, Below: true, V: 1}} { // the second contradicts them
 		for _, c := range models.Default() {
 			r := Fit(limited(t, s, l), c)
 			if r.Usable() && !finite(append([]float64{r.RSS, r.Sigma, r.LogLik}, r.P...)...) {
@@ -228,13 +228,13 @@ func TestLimitsWithoutUse(t *testing.T) {
 
 func TestWithLimitsRefuses(t *testing.T) {
 	s, _ := NewSample(Relative, []float64{300, 310}, []float64{1, 2}, []float64{1, 1})
-	for _, l := range []Limit{{0, 1, true, 1}, {math.NaN(), 1, true, 1}, {300, 0, true, 1}, {300, math.NaN(), true, 1}, {300, 1, true, 0}, {300, 1, true, math.Inf(1)}} {
+	for _, l := range []Limit{{T: 0, K: 1, Below: true, V: 1}, {T: math.NaN(), K: 1, Below: true, V: 1}, {T: 300, K: 0, Below: true, V: 1}, {T: 300, K: math.NaN(), Below: true, V: 1}, {T: 300, K: 1, Below: true, V: 0}, {T: 300, K: 1, Below: true, V: math.Inf(1)}} {
 		if _, err := s.WithLimits([]Limit{l}); err == nil {
 			t.Errorf("%+v is taken", l)
 		}
 	}
 	k, _ := NewSample(Absolute, []float64{300, 310}, []float64{1, 2}, []float64{1, 1})
-	if _, err := k.WithLimits([]Limit{{300, 0, true, 1}}); err != nil {
+	if _, err := k.WithLimits([]Limit{{T: 300, K: 0, Below: true, V: 1}}); err != nil {
 		t.Error(err)
 	}
 }
@@ -279,7 +279,7 @@ func TestBiasWithLimits(t *testing.T) {
 			x := 280 + 60*float64(i)/11
 			y := -e0/models.GasConstant*(1/x-1/310.0) + sigma*rng.NormFloat64()
 			if y < math.Log(bound) {
-				limits = append(limits, Limit{x, bound, true, 1})
+				limits = append(limits, Limit{T: x, K: bound, Below: true, V: 1})
 				full.add(x, bound, 1)
 				continue
 			}
@@ -448,7 +448,7 @@ func TestSeededExcludedWithLimits(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			s = limited(t, s, Limit{275, 1.3 * at(275), true, v[0]})
+			s = limited(t, s, Limit{T: 275, K: 1.3 * at(275), Below: true, V: v[0]})
 			curves := []models.Curve{models.Straight(), models.PowerPrefactor{}, c.curve}
 			var fits []*Result
 			for _, c := range curves {

@@ -8,28 +8,60 @@ import (
 	"gonum.org/v1/gonum/floats"
 )
 
-// WithOffsets returns the sample with offset_i taken off every ln k_i and columns
-// (each of length Len) as nuisance columns: every curve is then fitted together with
-// a coefficient for each of them, which is near 0 where offset was estimated well.
-// With errors in k a factor e^offset divides k_i and its standard deviation, so that
-// residuals are those of the data as measured but for their unit. s is not modified.
+// WithOffsets returns the sample with offset_i taken off every ln k_i and columns as
+// nuisance columns: every curve is then fitted together with a coefficient for each of
+// them, which is near 0 where offset was estimated well. offset and each of columns have
+// the length of the sample; where it has limits, values for these follow. With errors
+// in k a factor e^offset divides k_i and its standard deviation, so that residuals are
+// those of the data as measured but for their unit. s is not modified.
 func (s *Sample) WithOffsets(offset []float64, columns [][]float64) *Sample {
 	n := s.Len()
 	out := &Sample{
 		T: s.T, Y: make([]float64, n), K: make([]float64, n), V: s.V,
-		Model: s.Model, TRef: s.TRef, Nuisance: columns, Shift: s.Shift,
+		Model: s.Model, TRef: s.TRef, Shift: s.Shift,
 	}
 	if s.Model.InK() {
 		out.V = make([]float64, n)
 	}
-	for i, o := range offset {
+	for i, o := range offset[:n] {
 		out.Y[i], out.K[i] = s.Y[i]-o, s.K[i]*math.Exp(-o)
 		if s.Model.InK() {
 			out.V[i] = s.V[i] * math.Exp(-2*o)
 		}
 		out.Shift += o
 	}
+	for _, c := range columns {
+		out.Nuisance = append(out.Nuisance, c[:n:n])
+	}
+	for i, l := range s.Limits {
+		o := offset[n+i]
+		if l.K *= math.Exp(-o); s.Model.InK() {
+			l.V *= math.Exp(-2 * o)
+		}
+		l.Beside = nil
+		for _, c := range columns {
+			l.Beside = append(l.Beside, c[n+i])
+		}
+		out.Limits = append(out.Limits, l)
+	}
 	return out
+}
+
+// determinesOffsets reports whether the measured entries determine the coefficients of
+// the nuisance columns beside a curve, or beside the straight line where it is not
+// linear in its parameters.
+func (s *Sample) determinesOffsets(c models.Curve) bool {
+	basis, ok := c.(models.Basis)
+	if !ok {
+		basis = models.Straight()
+	}
+	n, p := s.Len(), len(basis.Info().Params)
+	if n < p+s.Spent() {
+		return false
+	}
+	off, x := make([]float64, n), make([]float64, n*p)
+	basis.Columns(s.TRef, s.T, off, x)
+	return Linear(s.widened(x, p), off, reciprocals(s.V)).Cov != nil
 }
 
 // Spent is the number of parameters that nuisance columns take.
@@ -56,6 +88,7 @@ func (r *Result) split(p int) {
 		return
 	}
 	m := p + r.Spent
+	r.JointCov = r.Cov
 	var own, beside []float64
 	for i := range m {
 		row := r.Cov[i*m : (i+1)*m]

@@ -53,6 +53,8 @@ type Result struct {
 	// Beside are the coefficients of the sample's nuisance columns, and BesideCov their
 	// covariance as Cov is that of P.
 	Beside, BesideCov []float64
+	// JointCov is the covariance of P and, after it, Beside; nil without nuisance columns.
+	JointCov []float64
 
 	Fitted    []float64 // ln k at the sample's temperatures, nuisance columns included
 	Residuals []float64 // y - fitted, in ln k, or in k where InK
