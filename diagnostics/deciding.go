@@ -569,7 +569,7 @@ func (a *assessor) influences() {
 	a.findBorderline()
 }
 
-// place names what is left out: its rows and temperature.
+// place names what is left out: its lines in the file and temperature.
 func (a *assessor) place(f Influence) string {
 	where := fmt.Sprintf("at %s K", kelvinText(float64(f.T)))
 	if len(f.points) > 3 {
@@ -587,9 +587,9 @@ func (a *assessor) place(f Influence) string {
 	for _, r := range f.Rows {
 		rows = append(rows, fmt.Sprint(r))
 	}
-	noun := "row "
+	noun := "line "
 	if len(rows) > 1 {
-		noun = "rows "
+		noun = "lines "
 	}
 	return noun + list(rows) + " " + where
 }

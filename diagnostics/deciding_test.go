@@ -185,7 +185,7 @@ func TestDecidingPoint(t *testing.T) {
 			found = append(found, f)
 		}
 	}
-	if len(found) != 1 || !slices.Contains(found[0].Rows, 11) || !strings.Contains(found[0].Message, "row 11 at 345 K") {
+	if len(found) != 1 || !slices.Contains(found[0].Rows, 11) || !strings.Contains(found[0].Message, "line 11 at 345 K") {
 		t.Errorf("%+v", found)
 	}
 	for _, f := range a.Influence {
@@ -227,7 +227,7 @@ func TestOutlier(t *testing.T) {
 	if i < 0 {
 		t.Fatal("no outlier")
 	}
-	if f := a.Findings[i]; !slices.Equal(f.Rows, []int{7}) || !strings.Contains(f.Message, "row 7 at 315 K lies") || !strings.Contains(f.Message, "below") {
+	if f := a.Findings[i]; !slices.Equal(f.Rows, []int{7}) || !strings.Contains(f.Message, "line 7 at 315 K lies") || !strings.Contains(f.Message, "below") {
 		t.Errorf("%+v", f)
 	}
 	quiet := mustAssess(t, lineSet(12, 290, 345, 60000, 0.004, 3), quick())

@@ -12,7 +12,7 @@ var onlyToKnow = []string{
 	"title-rows", "heading-rows-joined", "heading-in-comment", "superscript-lost", "column-not-used",
 	"time-like", "several-columns", "uncertainty-spare", "brackets-standard", "mean-of-few-repeats",
 	"rows-without-value", "rows-after-table", "rows-selected-out", "assumption-not-needed", "assumption-made",
-	"unit-converted", "repeats-side-by-side", "mean-beside-repeats",
+	"unit-converted", "duplicate-rows", "uncertainty-unit-assumed", "repeats-side-by-side", "mean-beside-repeats",
 	"sheet-chosen", "percent-cells", "merged-cells",
 }
 

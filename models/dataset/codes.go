@@ -89,6 +89,7 @@ const (
 	noteAfter          = "rows-after-table"
 	noteSelected       = "rows-selected-out"
 	noteDuplicate      = "duplicate-rows"
+	noteClose          = "settings-close"
 	noteCLikeK         = "celsius-like-kelvin"
 	noteKLikeC         = "kelvin-like-celsius"
 	noteFew            = "few-temperatures"
@@ -147,7 +148,7 @@ var problemTexts = []Explanation{
 	{codeUnitConflict, "Units contradict each other", "A unit in a cell, or of an uncertainty, is not that of its heading.", "write one unit, in the heading"},
 	{codeDisagree, "Two columns of one quantity disagree", "Several columns give the same quantity, and in this row they differ by more than their rounding.", "correct the row, or choose a column with --column"},
 	{codeDatasetUnknown, "There is no such data set", "--dataset names a set that the file does not hold.", "use one of the names listed"},
-	{codeWhere, "A condition is not understood", "--where takes a heading, one of = != < <= > >=, and a value.", "write --where 'pH=7.0' or --where 'source!=Lab3'"},
+	{codeWhere, "A condition is not understood", "--where takes a heading, one of = != < <= > >=, and a value. A value is compared as a number where both are numbers, else letter by letter, so that d is not D; a condition that no row meets would leave nothing.", "write --where 'pH=7.0' or --where 'source!=Lab3'"},
 	{codeLeaveOut, "A line to be left out is not in the table", "--leave-out takes line numbers of the file, counted from 1, headings and comments included.", "look up the line with inspect"},
 	{codeDecimalOption, "The decimal mark is not understood", "--decimal takes comma or point.", "write --decimal comma or --decimal point"},
 	{codeAssume, "An assumption is not understood", "--assume takes key=value.", "use T=K|degC|degF, log=lg|ln, k=rate|repeats, factor=times|unit, error=1 (standard), error=2 (expanded, k = 2), error=sd, n=NUMBER"},
@@ -193,10 +194,11 @@ var noticeTexts = []Explanation{
 	{noteBrackets, "Brackets hold standard uncertainties", "12.3(4) means u = 0.4 (GUM 7.2.2).", ""},
 	{noteFewRepeats, "Uncertainties come from few repeats", "A standard deviation from 30 repeats or fewer is not a known uncertainty; k is taken as a mean.", ""},
 	{noteMissing, "Rows without a value were left out", "The temperature or the rate constant is empty, n.d., NA, a dash or a spreadsheet error.", ""},
-	{noteLimits, "Limits", "Rows that state only a bound are no measured k; an assessment takes them as the probability of their side of the bound.", ""},
+	{noteLimits, "Limits", "Rows that state only a bound are no measured k; an assessment takes them as the probability of their side of the bound. Where one cannot enter, such as one of a source that measured nothing else, assess says so (limits-left-out).", ""},
 	{noteAfter, "Rows below the table were not read", "Rows after the first blank row below the data, or labelled mean, SD, slope and the like, are no measurements, nor are the lines of words that end a table, such as * mean of two titrations.", "delete the blank row if measurements follow it"},
 	{noteSelected, "Rows were left out on request", "--where, --leave-out, --t-min or --t-max left them out.", ""},
 	{noteDuplicate, "Rows are the same", "The same temperature and rate constant occur more than once: repeats that agree to all digits, or a row copied twice.", "--leave-out the copies if they are no separate measurements"},
+	{noteClose, "Two temperatures lie far closer than the others", "Temperatures count as one setting where they are equal. Two that differ by less than 0.2 K, and by less than a tenth of what lies between settings otherwise (the median gap), are more likely one setting of which a cell was rounded otherwise, converted from another unit or converted with 273 in place of 273.15. Taken as two they count as two temperatures, are no repeats of each other, and give an E between them that says nothing. Temperatures that were measured anew for each run, and so differ everywhere, are not meant.", "if they are one setting, write one temperature for both; if not, nothing is to be done"},
 	{noteCLikeK, "Temperatures in °C look like kelvin", "All lie where room-temperature work in kelvin lies. They are read as °C, as the heading says.", "correct the heading if they are kelvin"},
 	{noteKLikeC, "Temperatures in K look like °C", "All lie between 0 and 120. They are read as kelvin, as the heading says.", "correct the heading if they are degrees Celsius"},
 	{noteFew, "Fewer than five temperatures", "With four temperatures one degree of freedom is left to judge curvature by, with three none.", "measure at more temperatures"},

@@ -170,6 +170,7 @@ type Options struct {
 	Assume     map[string]string   // T=degC, log=lg, k=rate, error=1, n=3 (--assume)
 	Decimal    string              // comma or point; "" decides by the file
 	Where      []string            // conditions 'source!=Lab3', 'pH=7.0' (--where)
+	WhereMet   bool                // refuse a condition that no row meets; leave it off where other tables may
 	LeaveOut   []int               // lines of the file
 	TMin, TMax float64             // K; 0 if none
 	// DatasetBy is the heading of a column whose values name the data sets,

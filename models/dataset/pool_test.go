@@ -86,7 +86,7 @@ func TestPool(t *testing.T) {
 		`unit-converted: two/c.csv: k in h^-1 was converted to s^-1, the unit of one/a.csv: divided by 3600`,
 		`column-not-used: one/b.csv: kept, not used: "pH"`,
 		"rows-without-value: one/b.csv:3: no rate constant, left out [3]",
-		"limits-read: one/b.csv:4: only a limit is known [4]",
+		"limits-read: one/b.csv:4: only a limit is known, and enters as a limit [4]",
 		"mean-of-few-repeats: one/b.csv:2: the uncertainty comes from 30 repeats or fewer [2]",
 		// 25 °C, 298.15 K and 77 °F are one temperature.
 		"few-temperatures: 2 distinct temperatures",

@@ -1,6 +1,7 @@
 package dataset
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 	"slices"
@@ -56,9 +57,10 @@ func (s *Set) review() {
 	s.sayOf(noteMissing, noT, "no temperature, left out")
 	s.sayOf(noteMissing, noK, "no rate constant, left out")
 	s.sayOf(noteFewRepeats, few, "the uncertainty comes from 30 repeats or fewer")
-	s.sayOf(noteLimits, limits, "only a limit is known")
+	s.sayOf(noteLimits, limits, "only a limit is known, and enters as a limit")
 	s.sayOf(noteSelected, selected, "left out on request")
 	s.sayOf(noteDuplicate, duplicates, "same temperature and rate constant as an earlier one")
+	s.reviewClose()
 	s.sayOf(noteLargeU, large, "u(k)/k is above 0.3")
 	if n := len(distinct); n < 5 {
 		s.say(noteFew, countOf(n, "distinct temperature"))
@@ -80,7 +82,54 @@ func (s *Set) review() {
 // reviewCodes are those that review raises.
 var reviewCodes = map[string]bool{
 	noteMissing: true, noteFewRepeats: true, noteLimits: true, noteSelected: true, noteDuplicate: true,
-	noteLargeU: true, noteFew: true, noteNarrow: true, noteVaries: true,
+	noteClose: true, noteLargeU: true, noteFew: true, noteNarrow: true, noteVaries: true,
+}
+
+// Settings closer than this are one that a thermometer read twice, or that was
+// converted in two ways (K, resolution of a common thermometer and the 0.15 of 273.15):
+// a choice.
+const closeK = 0.2
+
+// reviewClose warns of temperatures that lie within closeK and ten times closer than the
+// settings of the set otherwise do.
+func (s *Set) reviewClose() {
+	var at []int
+	for i := range s.Points {
+		if s.Points[i].Used {
+			at = append(at, i)
+		}
+	}
+	slices.SortStableFunc(at, func(i, j int) int { return cmp.Compare(s.Points[i].T, s.Points[j].T) })
+	var gaps []float64
+	var pairs [][2]int // indices in at, of the last point of a setting and the first of the next
+	for j := 1; j < len(at); j++ {
+		low, high := s.Points[at[j-1]].T, s.Points[at[j]].T
+		if models.SameTemperature(low, high) {
+			continue
+		}
+		gaps = append(gaps, high-low)
+		if high-low < closeK {
+			pairs = append(pairs, [2]int{j - 1, j})
+		}
+	}
+	if len(gaps) < 3 || len(pairs) == 0 {
+		return
+	}
+	slices.Sort(gaps)
+	median := gaps[len(gaps)/2]
+	for _, pair := range pairs {
+		t := [2]float64{s.Points[at[pair[0]]].T, s.Points[at[pair[1]]].T}
+		if t[1]-t[0] > median/10*(1+1e-9) {
+			continue
+		}
+		var rows []int // indices of all points of the two settings
+		for _, i := range at {
+			if models.SameTemperature(s.Points[i].T, t[0]) || models.SameTemperature(s.Points[i].T, t[1]) {
+				rows = append(rows, i)
+			}
+		}
+		s.sayOf(noteClose, rows, fmt.Sprintf("%.6g and %.6g K count as two temperatures, %.2g K apart; the median gap is %.2g K", t[0], t[1], t[1]-t[0], median))
+	}
 }
 
 // below20 writes a span below 20 K so that it does not read as 20.

@@ -114,7 +114,7 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 			pt.WhyNot = leftOut
 		}
 		for j := range conds {
-			if pt.WhyNot == "" && !conds[j].holds(cells[conds[j].col.index], p.decimal) {
+			if holds := conds[j].look(cells[conds[j].col.index], p.decimal); pt.WhyNot == "" && !holds {
 				pt.WhyNot = fmt.Sprintf("does not meet --where %q", conds[j].text)
 			}
 		}
@@ -137,6 +137,9 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 		}
 	}
 	m.refuseRagged(n)
+	if m.opt.WhereMet {
+		m.refuseUnmet(conds)
+	}
 	for _, l := range m.opt.LeaveOut {
 		if leaveOut[l] && !slices.Contains(m.footnotes, l) {
 			m.refuse(codeLeaveOut, l, "", "--leave-out names a line that holds no row of data")

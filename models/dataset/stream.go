@@ -468,7 +468,7 @@ func (s *Stream) block() error {
 func (s *Stream) means(f *Found, p *plan, t *Table, n int) {
 	m := s.maker(t, p.stream.group)
 	m.line = p.stream.line
-	m.opt.Dataset = ""
+	m.opt.Dataset, m.opt.WhereMet = "", false // other data sets may meet it
 	m.cutFootnotes(0, n)
 	if len(s.opt.LeaveOut) > 0 {
 		m.opt.LeaveOut = nil

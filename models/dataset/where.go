@@ -1,6 +1,8 @@
 package dataset
 
 import (
+	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 )
@@ -13,6 +15,8 @@ type condition struct {
 	value string
 	num   float64
 	isNum bool
+	met   bool     // by some row
+	seen  []string // different cells of the column, in order, as far as they are told
 }
 
 // conditions reads --where. The column is named by its heading, by the quantity
@@ -64,6 +68,44 @@ func (m *maker) conditions(p *plan) []condition {
 		all = append(all, c)
 	}
 	return all
+}
+
+// look notes whether a row meets the condition, and which cells there are.
+func (c *condition) look(cell string, decimal byte) bool {
+	holds := c.holds(cell, decimal)
+	c.met = c.met || holds
+	if s := strings.TrimSpace(cell); !c.met && len(c.seen) <= mostTold && !slices.Contains(c.seen, s) {
+		c.seen = append(c.seen, s)
+	}
+	return holds
+}
+
+// mostTold is how many values of a column a message lists.
+const mostTold = 12
+
+// refuseUnmet refuses conditions that no row of the table meets: a value that was
+// mistyped would leave out all rows, and no word would say why.
+func (m *maker) refuseUnmet(conds []condition) {
+	for _, c := range conds {
+		if c.met || len(c.seen) == 0 {
+			continue
+		}
+		what := "holds"
+		if len(c.seen) > mostTold {
+			what = "holds among others"
+		}
+		values := c.seen[:min(mostTold, len(c.seen))]
+		cure := fmt.Sprintf("column %q %s %s", short(c.col.Text), what, quoteAll(values))
+		if slices.Contains(values, "") {
+			cure += " and empty cells"
+		}
+		for _, v := range values {
+			if strings.EqualFold(v, c.value) && v != c.value {
+				cure = "upper and lower case differ: did you mean " + flag("where", strings.TrimSuffix(c.text, c.value)+v) + "?"
+			}
+		}
+		m.refuseCure(codeWhere, 0, c.col.Text, fmt.Sprintf("--where %q: no row meets it", c.text), cure)
+	}
 }
 
 // holds compares as numbers where both are, else as text; < and > need numbers.

@@ -29,6 +29,7 @@ type reading struct {
 // of is what was said about one of several files.
 func (o reading) of(file string, files []string) reading {
 	o.LeaveOut = linesOf(o.leaveOut, file, files)
+	o.WhereMet = len(files) == 1
 	return o
 }
 
@@ -96,6 +97,7 @@ func (a *app) readTables(ctx context.Context, name string, o reading) ([]workboo
 		return nil, nil, err
 	}
 	if workbook.Is(content) {
+		o.WhereMet = o.WhereMet && o.sheet != "" // another sheet may meet it
 		tables, err := interruptible(ctx, func() ([]workbook.Result, error) {
 			return workbook.ReadAll(name, content, o.sheet, o.Options)
 		})

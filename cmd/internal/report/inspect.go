@@ -77,6 +77,8 @@ type InspectedRow struct {
 	Source string           `json:"source"`
 	Used   bool             `json:"used"`
 	WhyNot string           `json:"why_not"`
+	// AsLimit says that a row that is not used as a measured k enters as a limit.
+	AsLimit bool `json:"as_limit"`
 }
 
 // InspectedNotice is something to know about the data.
@@ -118,7 +120,7 @@ func newInspectedSet(s *dataset.Set) InspectedSet {
 	var used []float64
 	for _, p := range s.Points {
 		out.Data = append(out.Data, InspectedRow{p.File, p.Row, diagnostics.Real(p.T), stated(p.UT), diagnostics.Real(p.K), stated(p.UK),
-			p.Limit, p.Source, p.Used, p.WhyNot})
+			p.Limit, p.Source, p.Used, p.WhyNot, p.IsLimit()})
 		if !p.Used {
 			continue
 		}
@@ -173,7 +175,16 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 			lines = append(lines, p.bold(l))
 		}
 	}
-	facts := count(s.Points, "row") + fmt.Sprintf(", %d used", s.Used)
+	limits := 0
+	for _, d := range s.Data {
+		if d.AsLimit {
+			limits++
+		}
+	}
+	facts := count(s.Points, "row") + fmt.Sprintf(", %d used", s.Used+limits)
+	if limits > 0 {
+		facts += fmt.Sprintf(", %d of them as %s", limits, map[bool]string{true: "a limit", false: "limits"}[limits == 1])
+	}
 	if s.Used > 0 {
 		facts += ", at " + count(s.Temperatures, "temperature")
 		if s.Temperatures > 1 {
@@ -195,19 +206,60 @@ func (p *page) inspectedSet(f InspectedFile, s InspectedSet) {
 	p.section("columns", p.columns(f, s)...)
 	p.section("assumed", wrapAll(s.Assumed, p.body())...)
 
-	var left [][2]string
+	var bounds [][2]string
+	var left []leftRow
 	for _, d := range s.Data {
-		if !d.Used {
-			left = append(left, [2]string{rowPlace(d.File, d.Row, f.Files), or(d.WhyNot, "no reason given")})
+		switch place := rowPlace(d.File, d.Row, f.Files); {
+		case d.AsLimit:
+			bounds = append(bounds, [2]string{place, fmt.Sprintf("enters as a limit: k\u00a0%s\u00a0%.4g", d.Limit, float64(d.K))})
+		case !d.Used:
+			left = append(left, leftRow{d.File, d.Row, or(d.WhyNot, "no reason given")})
 		}
 	}
-	p.section("left out", labelled(left, p.body())...)
+	p.section("limits", labelled(bounds, p.body())...)
+	p.section("left out", labelled(leftOut(left, f.Files), p.body())...)
 
 	var notices []string
 	for _, n := range s.Notices {
 		notices = append(notices, p.note(p.bold(n.Code), n.Code, n.Message, n.Cure, n.Rows)...)
 	}
 	p.section("notices", notices...)
+}
+
+// leftRow is a row that is left out, and why.
+type leftRow struct {
+	file string
+	row  int
+	why  string
+}
+
+// leftOut sets the places of rows beside the reason, once for each reason and file.
+func leftOut(rows []leftRow, files []string) [][2]string {
+	const most = 4 // places in a line
+	var out [][2]string
+	for len(rows) > 0 {
+		first := rows[0]
+		var same, others []leftRow
+		for _, r := range rows {
+			if r.why == first.why && r.file == first.file {
+				same = append(same, r)
+			} else {
+				others = append(others, r)
+			}
+		}
+		label := rowPlace(first.file, first.row, files)
+		if rest, ok := strings.CutPrefix(label, "line "); ok && len(same) > 1 {
+			label = "lines " + rest
+		}
+		for _, r := range same[1:min(most, len(same))] {
+			label += fmt.Sprintf(", %d", r.row)
+		}
+		if len(same) > most {
+			label += fmt.Sprintf(" and %d more", len(same)-most)
+		}
+		out, rows = append(out, [2]string{label, first.why}), others
+	}
+	return out
 }
 
 // rowPlace names a row: line 7, or b.csv:7 where the file does not go without saying.

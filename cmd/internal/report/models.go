@@ -5,6 +5,7 @@ import (
 	"io"
 	"slices"
 	"strings"
+	"unicode/utf8"
 
 	"onebarrier/models"
 )
@@ -68,7 +69,11 @@ func WriteModels(w io.Writer, doc Models, details bool, t Text) error {
 		lines = append(lines, Wrap(c.Summary, p.body())...)
 		if !details {
 			for _, f := range c.Forms {
-				lines = append(lines, hang("· "+f.Model, max(24, len(f.Model)+3), f.Formula, p.body())...)
+				label := "· " + f.Model
+				if utf8.RuneCountInString(label) > 22 { // the formula stays beneath formulas
+					lines, label = append(lines, label), ""
+				}
+				lines = append(lines, hang(label, 24, f.Formula, p.body())...)
 			}
 			p.section("curve", lines...)
 			continue
