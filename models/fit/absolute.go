@@ -223,7 +223,8 @@ func twoPaths(s *Sample, c models.Curve, starts [][]float64) (p []float64, found
 		warm = append(warm, two.thetaOf(start))
 	}
 	warm = append(warm, w.pairs()...)
-	found, ok = w.addPath(&line.best, warm...)
+	line.frame()
+	found, ok = w.addPath(line, warm...)
 	p = make([]float64, 4)
 	if found {
 		two.params(&w.best, p)

@@ -121,7 +121,7 @@ func (w *bentInK) fit(line []float64, rss float64, warm [][]float64) (p []float6
 	for i := range best {
 		best[i].rss = math.Inf(1)
 	}
-	bends := false
+	bends, quick := false, w.limit < math.Inf(1)
 	for j := range w.nodes {
 		nd := &w.nodes[j]
 		a, e, promise := w.line(nd)
@@ -141,7 +141,7 @@ func (w *bentInK) fit(line []float64, rss float64, warm [][]float64) (p []float6
 		return nil, false
 	}
 	n, most := 0, bentStarts
-	if !math.IsInf(w.limit, 1) {
+	if quick {
 		most = 2
 	}
 	for i := range most { // the best first
@@ -165,12 +165,16 @@ func (w *bentInK) fit(line []float64, rss float64, warm [][]float64) (p []float6
 		n++
 	}
 	least := math.Inf(1)
-	for _, start := range w.starts[:n] {
+	for i := range n {
+		start := w.starts[n-1-i]
 		// Short first steps stay in the valley in which a start lies.
 		_, _, _ = w.engine.trustRegion(w.pr, start, Options{Factor: 0.01, Tolerance: 1e-6, MaxIterations: w.short})
 		if rss := floats.Dot(w.engine.r, w.engine.r); rss < least {
 			least = rss
 			copy(w.from, w.engine.p)
+			if least < w.limit && quick {
+				break
+			}
 		}
 	}
 	// Half of what was gained, on top, is more than further steps gain.

@@ -21,6 +21,8 @@ var _ OneRefitter = (*kRefitter)(nil)
 type kWork struct {
 	curves []*varpro // of each candidate, nil where it is left to bent or Fit; then the line
 	bent   []*bentInK
+	steps  []*steps      // of a bent curve, where only first places are asked for
+	rss    []float64     // of a bent curve
 	from   [][][]float64 // starts of bent
 	warm   [][][2]float64
 	line   int // the straight line, which two paths start from
@@ -28,6 +30,7 @@ type kWork struct {
 	ok     []bool // of fitted
 	found  []bool // better than the line; true for curves of one exponential
 	atLine [2]float64
+	framed bool
 }
 
 // newKWork lays out a design. fits are those of the whole sample.
@@ -45,7 +48,7 @@ func newKWork(s *Sample, curves []models.Curve, fits []*Result) *kWork {
 				bent = newBentInK(newObjective(s, c))
 			}
 		}
-		w.add(e, fits[j].P)
+		w.add(e, s, fits[j])
 		w.bent = append(w.bent, bent)
 		var from [][]float64
 		if fits[j].P != nil {
@@ -55,20 +58,45 @@ func newKWork(s *Sample, curves []models.Curve, fits []*Result) *kWork {
 	}
 	if w.line < 0 || w.curves[w.line] == nil {
 		w.line = len(w.curves)
-		w.add(newExponentials(s, straight), nil)
+		w.add(newExponentials(s, straight), s, nil)
 	}
 	n := len(w.curves)
 	w.fitted, w.ok, w.found = make([]bool, n), make([]bool, n), make([]bool, n)
+	w.rss, w.steps = make([]float64, n), make([]*steps, n)
+	if v := w.curves[w.line]; v != nil {
+		var d *stepsDesign
+		for j, b := range w.bent {
+			if b == nil || !isSeries(b.o.c) {
+				continue
+			}
+			if d == nil {
+				v.setData(s.K)
+				if !v.fitSingle(w.warm[w.line]...) {
+					break
+				}
+				v.frame()
+				d = newStepsDesign(v)
+			}
+			w.steps[j] = newSteps(d, v.e, fits[j])
+		}
+	}
 	return w
 }
 
-func (w *kWork) add(e *exponentials, p []float64) {
+// add lays out a curve of exponentials; e is nil for another. f is its fit to the
+// sample, nil for none.
+func (w *kWork) add(e *exponentials, s *Sample, f *Result) {
 	var v *varpro
 	var warm [][2]float64
 	if e != nil {
 		v = newVarpro(e)
-		if p != nil {
-			warm = append(warm, e.thetaOf(p))
+		v.dim = max(e.d, e.paths)
+		if f != nil && f.P != nil {
+			warm = append(warm, e.thetaOf(f.P))
+			if f.Status == Converged {
+				v.setData(s.K)
+				v.setLead(warm[0])
+			}
 		}
 	}
 	w.curves, w.warm = append(w.curves, v), append(w.warm, warm)
@@ -80,7 +108,7 @@ func (w *kWork) taken(sub *Sample, counts []int, only int) *kWork {
 	n := len(w.curves)
 	out := &kWork{
 		curves: make([]*varpro, n), warm: w.warm, line: w.line,
-		bent: make([]*bentInK, len(w.bent)), from: w.from,
+		bent: make([]*bentInK, len(w.bent)), steps: make([]*steps, n), from: w.from, rss: make([]float64, n),
 		fitted: make([]bool, n), ok: make([]bool, n), found: make([]bool, n),
 	}
 	for j, v := range w.curves {
@@ -109,11 +137,18 @@ func (w *kWork) fit(j int, k []float64, limit float64) (ok bool) {
 	}
 	v.setData(k)
 	w.fitted[j], w.found[j] = true, true
+	warm := w.warm[j]
+	if len(warm) == 1 {
+		v.ahead[0] = v.led(warm[0])
+		warm = v.ahead[:]
+	}
 	switch {
 	case v.e.paths == 1:
-		w.ok[j] = v.fitSingle(w.warm[j]...)
+		w.ok[j] = v.fitSingle(warm...)
 	case w.fit(w.line, k, limit):
-		w.found[j], w.ok[j] = v.addPath(&w.curves[w.line].best, w.warm[j]...)
+		w.frame()
+		v.limit = limit / square(v.e.o.unit)
+		w.found[j], w.ok[j] = v.addPath(w.curves[w.line], warm...)
 	default:
 		w.ok[j] = false
 	}
@@ -126,6 +161,13 @@ func (w *kWork) fitBent(j int, k []float64, limit float64) (ok bool) {
 		return false
 	}
 	b, line := w.bent[j], w.curves[w.line]
+	unit := square(line.e.o.unit)
+	if s := w.steps[j]; s != nil && limit < math.Inf(1) {
+		w.frame()
+		w.rss[j], w.found[j] = s.fit(line, limit/unit)
+		w.rss[j] *= unit
+		return true
+	}
 	b.short, b.long, b.limit = 50, 200, math.Inf(1)
 	if limit < math.Inf(1) {
 		b.short, b.long, b.limit = 12, 60, limit/square(b.o.unit)
@@ -134,17 +176,52 @@ func (w *kWork) fitBent(j int, k []float64, limit float64) (ok bool) {
 		b.o.y[i] = ki / b.o.scale
 	}
 	line.e.params(&line.best, w.atLine[:])
-	rss := line.best.value() * square(line.e.o.unit/b.o.unit)
-	_, w.found[j] = b.fit(w.atLine[:], rss, w.from[j])
+	_, w.found[j] = b.fit(w.atLine[:], line.best.value()*unit/square(b.o.unit), w.from[j])
+	w.rss[j] = b.rss * square(b.o.unit)
 	return true
 }
 
-func (w *kWork) reset() { clear(w.fitted) }
+// clone is other memory on the same design.
+func (w *kWork) clone() *kWork {
+	n := len(w.curves)
+	out := *w
+	out.curves, out.bent, out.steps = make([]*varpro, n), make([]*bentInK, len(w.bent)), make([]*steps, n)
+	out.rss = make([]float64, n)
+	out.fitted, out.ok, out.found = make([]bool, n), make([]bool, n), make([]bool, n)
+	for j, v := range w.curves {
+		if v != nil {
+			out.curves[j] = newVarpro(v.e)
+			out.curves[j].dim, out.curves[j].lead = v.dim, v.lead
+		}
+	}
+	for j, b := range w.bent {
+		if b != nil {
+			out.bent[j] = newBentInK(newObjective(b.o.s, b.o.c))
+			if s := w.steps[j]; s != nil {
+				out.steps[j] = s.clone()
+			}
+		}
+	}
+	return &out
+}
+
+func (w *kWork) reset() {
+	clear(w.fitted)
+	w.framed = false
+}
+
+// frame makes the frame of the line that was fitted, once.
+func (w *kWork) frame() {
+	if !w.framed {
+		w.framed = true
+		w.curves[w.line].frame()
+	}
+}
 
 // Clone implements Refitter.
 func (r *kRefitter) Clone() Refitter {
 	c := *r
-	c.work = newKWork(r.s, r.curves, r.fits)
+	c.work = r.work.clone()
 	return &c
 }
 
@@ -196,15 +273,17 @@ func (r *kRefitter) refit(only int, y []float64, counts []int, out *Refit) {
 		}
 		out.How = max(out.How, HowWarm)
 		if !work.found[j] {
+			if limit < math.Inf(1) {
+				out.How = max(out.How, HowScreened)
+			}
 			out.RSS[j] = math.Inf(1)
 			out.blank(j)
 			continue
 		}
 		v := work.curves[j]
 		if v == nil {
-			b := work.bent[j]
-			out.RSS[j] = b.rss * square(b.o.unit)
-			copy(out.P[j], b.p)
+			out.RSS[j] = work.rss[j]
+			copy(out.P[j], work.bent[j].p)
 			best = math.Min(best, r.of(j, out.RSS[j]))
 			continue
 		}
