@@ -180,6 +180,7 @@ func drawArrhenius(a *diagnostics.Assessment, d *Arrhenius, opt Options) (pictur
 		addPoints(upper, lower, d, factor)
 	}
 	pointEntries(&leg, d)
+	leg.beyondEntry(beyond(d.Points, rLow, rHigh, func(q Point) float64 { return q.Residual }))
 	var obstacles []obstacle
 	for _, l := range d.Lines {
 		obstacles = append(obstacles, l.obstacles()...)

@@ -34,6 +34,18 @@ func between(a *diagnostics.Assessment, sc scale) []Point {
 	return ps
 }
 
+// ofMeans reports whether some temperature was measured more than once, be it by several
+// sources: its rate constants are averaged first.
+func ofMeans(a *diagnostics.Assessment) bool {
+	measured := 0
+	for _, row := range a.Data {
+		if row.Used && row.Limit == "" {
+			measured++
+		}
+	}
+	return measured > a.Dataset.Temperatures
+}
+
 // withBetween widens a range by the local energies and their bars, but not so far that
 // the curves are flattened.
 func (d *Energy) withBetween(ys, core span) span {
@@ -80,12 +92,18 @@ func (betweenDots) Thumbnail(c *draw.Canvas) {
 }
 
 // addBetween draws the local energies, and says what a legend must not cover.
-func addBetween(p *plot.Plot, leg *legend, ps []Point) (obstacles []obstacle) {
+func (d *Energy) addBetween(p *plot.Plot, leg *legend) (obstacles []obstacle) {
+	ps := d.Between
 	if len(ps) == 0 {
 		return nil
 	}
 	addFixed(p, betweenDots(ps))
-	leg.entry("between neighbours, ±*u*", betweenDots(nil))
+	words := "between neighbours, ±*u*"
+	if d.OfMeans {
+		words = "between neighbouring means, ±*u*"
+	}
+	leg.entry(words, betweenDots(nil))
+	leg.beyondEntry(beyond(ps, p.Y.Min, p.Y.Max, func(q Point) float64 { return q.Y }))
 	for _, q := range ps {
 		o := obstacle{q.X, math.Min(q.Y, p.Y.Max), math.Max(q.Y, p.Y.Min)} // outside: on the edge
 		if q.Low < q.High {

@@ -12,6 +12,7 @@ import (
 
 	"onebarrier/diagnostics"
 	"onebarrier/models"
+	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 )
 
@@ -65,6 +66,9 @@ type Arrhenius struct {
 	// Differences holds the same curves as ln k minus the straight line, whatever
 	// the logarithm of Lines. It is empty where there is no straight line.
 	Differences []Line
+	// Offsets says that the sources have an offset each, and that the curves are their
+	// mean; OfRepeats that every row is itself the mean of n repeats.
+	Offsets, OfRepeats bool
 	// NotShown counts the rows that have no positive T and k.
 	NotShown   int
 	Confidence float64
@@ -80,7 +84,7 @@ func NewArrhenius(a *diagnostics.Assessment, opt Options) (*Arrhenius, error) {
 	if a == nil {
 		return nil, fmt.Errorf("figure: there is no assessment to draw")
 	}
-	d := &Arrhenius{Confidence: confidence(a)}
+	d := &Arrhenius{Confidence: confidence(a), Offsets: offsets(a), OfRepeats: ofRepeats(a)}
 	straight := usable(a, "straight")
 	for _, row := range a.Data {
 		if !(row.T > 0) || !(row.K > 0) || !row.T.Known() || !row.K.Known() {
@@ -120,6 +124,16 @@ func NewArrhenius(a *diagnostics.Assessment, opt Options) (*Arrhenius, error) {
 		}
 	}
 	return d, nil
+}
+
+// offsets reports whether the curves stand beside an offset for each source.
+func offsets(a *diagnostics.Assessment) bool {
+	return a.BetweenSources != nil && !a.BetweenSources.Confounded
+}
+
+// ofRepeats reports whether a number of repeats stands beside each rate constant.
+func ofRepeats(a *diagnostics.Assessment) bool {
+	return slices.ContainsFunc(a.Columns, func(c diagnostics.Column) bool { return c.Role == string(dataset.RoleRepeats) })
 }
 
 // used counts the points that took part with a measured k.
@@ -317,6 +331,9 @@ type Energy struct {
 	// Between holds E between neighbouring temperatures with bars of one standard
 	// uncertainty.
 	Between []Point
+	// OfMeans says that those are between means of several points, Offsets that they
+	// and the curves stand beside an offset for each source.
+	OfMeans, Offsets bool
 	// Wedge is the region of an E_loc that is linear in T, passes through
 	// (TEff, E) and changes by no more than Tolerance over the measured
 	// range: its half-height at T is Tolerance |T - TEff|/(T_max - T_min). It is
@@ -359,7 +376,7 @@ func NewEnergy(a *diagnostics.Assessment) *Energy {
 	if len(d.Lines) == 0 {
 		return nil
 	}
-	d.Between = between(a, sc)
+	d.Between, d.OfMeans, d.Offsets = between(a, sc), ofMeans(a), offsets(a)
 	low, high := a.Sample.Range()
 	if a.Verdict.State == diagnostics.StraightWithin && d.Tolerance > 0 && d.TEff >= low && d.TEff <= high && !math.IsNaN(d.E) {
 		for _, t := range []float64{low, d.TEff, high} {

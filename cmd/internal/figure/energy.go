@@ -59,7 +59,7 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 	for _, l := range d.Lines {
 		obstacles = append(obstacles, l.obstacles()...)
 	}
-	obstacles = append(obstacles, addBetween(p, &leg, d.Between)...)
+	obstacles = append(obstacles, d.addBetween(p, &leg)...)
 	if d.TEff >= xLow && d.TEff <= xHigh {
 		// A drop line from the point to the axis, or a line across without one.
 		mark := rule{x: d.TEff, y: math.NaN(), style: draw.LineStyle{Color: grey, Width: vg.Points(0.8), Dashes: []vg.Length{2, 2}}}
@@ -75,6 +75,9 @@ func drawEnergy(a *diagnostics.Assessment, d *Energy) (picture, error) {
 	}
 	if len(d.Wedge) > 0 {
 		leg.entry(fmt.Sprintf("Δ*E* within ±%s %s", number(d.Tolerance, decimalsFor(d.Tolerance)), d.scale.unit), swatch{wedgeColor})
+	}
+	if d.Offsets {
+		leg.entry("offsets between sources removed")
 	}
 	leg.bandEntry(d.Lines, d.Confidence)
 

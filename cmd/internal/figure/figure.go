@@ -89,6 +89,7 @@ type picture struct {
 	name          string
 	width, height vg.Length
 	title         string
+	legend        legend
 	draw          func(draw.Canvas)
 }
 

@@ -165,7 +165,7 @@ func newLinear(a *diagnostics.Assessment) (*Panel, error) {
 	if a == nil {
 		return nil, fmt.Errorf("figure: there is no assessment to draw")
 	}
-	d := &Panel{Arrhenius: Arrhenius{Confidence: confidence(a)}, Factor: 1, level: math.NaN()}
+	d := &Panel{Arrhenius: Arrhenius{Confidence: confidence(a), Offsets: offsets(a), OfRepeats: ofRepeats(a)}, Factor: 1, level: math.NaN()}
 	for _, row := range a.Data {
 		if !(row.T > 0) || !row.T.Known() || !row.K.Known() {
 			d.NotShown++
@@ -271,7 +271,11 @@ func (d *Panel) yRange() (low, high float64) {
 		ys.addWithin(core, reach, l.Lower...)
 		ys.addWithin(core, reach, l.Upper...)
 	}
-	return ys.padded(0.06, 1e-9*math.Max(math.Abs(ys.low), math.Abs(ys.high)))
+	margin := 0.06
+	if slices.ContainsFunc(d.Points, func(p Point) bool { return p.Limit != "" }) {
+		margin = 0.1 // room for its arrow
+	}
+	return ys.padded(margin, 1e-9*math.Max(math.Abs(ys.low), math.Abs(ys.high)))
 }
 
 // drawPanel lays out a figure of one panel.
@@ -314,6 +318,7 @@ func drawPanel(a *diagnostics.Assessment, d *Panel) (picture, error) {
 		addFixed(p, dashes{d.Means, func(m Mean) float64 { return m.Y * d.Factor }})
 	}
 	pointEntries(&leg, &d.Arrhenius)
+	leg.beyondEntry(beyond(d.Points, yLow, yHigh, func(q Point) float64 { return q.Y }))
 	var obstacles []obstacle
 	for _, l := range lines {
 		obstacles = append(obstacles, l.obstacles()...)

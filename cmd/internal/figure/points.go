@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"image/color"
 	"math"
+	"slices"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/vg"
@@ -59,16 +60,19 @@ func (d dots) Plot(c draw.Canvas, p *plot.Plot) {
 	}
 }
 
-// arrow points from a limit into the region that it allows.
+// arrow points from a limit into the region that it allows, and does not leave the
+// canvas.
 func arrow(c *draw.Canvas, pt vg.Point, up bool, length vg.Length) {
-	dir := vg.Length(-1)
+	dir, room := vg.Length(-1), pt.Y-c.Min.Y
 	if up {
-		dir = 1
+		dir, room = 1, c.Max.Y-pt.Y
 	}
+	length = min(length, room)
+	head := min(4, 0.45*length)
 	line := draw.LineStyle{Color: ink, Width: vg.Points(0.8)}
 	tip := vg.Point{X: pt.X, Y: pt.Y + dir*length}
-	c.StrokeLine2(line, pt.X, pt.Y, tip.X, tip.Y-dir*2)
-	c.FillPolygon(ink, []vg.Point{tip, {X: tip.X - 2, Y: tip.Y - dir*4}, {X: tip.X + 2, Y: tip.Y - dir*4}})
+	c.StrokeLine2(line, pt.X, pt.Y, tip.X, tip.Y-dir*head/2)
+	c.FillPolygon(ink, []vg.Point{tip, {X: tip.X - head/2, Y: tip.Y - dir*head}, {X: tip.X + head/2, Y: tip.Y - dir*head}})
 }
 
 // outside marks a point beyond the panel by a small open triangle on its edge.
@@ -151,19 +155,48 @@ func pointEntries(leg *legend, d *Arrhenius) {
 		leg.entry("left out", spot{glyph(0, false, r)})
 	}
 	if limits {
-		leg.entry("limit", thumb(func(c *draw.Canvas, pt vg.Point) {
-			pt.Y += 2.5
-			arrow(c, pt, false, 9)
-			c.DrawGlyph(glyph(0, false, min(r, 2.5)), pt)
-		}))
+		leg.entry("limit", thumb(limitThumb))
 	}
 	if len(d.Means) > 0 {
-		leg.entry("mean at one temperature", thumb(stroke))
+		words := "mean at one temperature"
+		if d.Offsets {
+			words = "mean of a source at one *T*"
+		}
+		leg.entry(words, thumb(stroke))
+	}
+	if d.OfRepeats {
+		leg.entry("points are means of *n* repeats")
+	}
+	if d.Offsets {
+		leg.entry("curves: mean over the sources")
 	}
 	leg.bandEntry(d.Lines, d.Confidence)
 	if d.NotShown > 0 {
 		leg.entry(fmt.Sprintf("not shown, without ln *k*: %d", d.NotShown))
 	}
+}
+
+// limitThumb is a limit in a row of a legend: with what parts the rows it takes up, it
+// does not reach the next.
+func limitThumb(c *draw.Canvas, pt vg.Point) {
+	const more, small = legendPadding / 3, 1.7
+	row := *c
+	row.Min.Y, row.Max.Y = c.Min.Y-more, c.Max.Y+more
+	pt.Y = row.Max.Y - small
+	arrow(&row, pt, false, row.Max.Y-row.Min.Y)
+	row.DrawGlyphNoClip(glyph(0, false, small), pt)
+}
+
+// beyondEntry says what the small triangles on the edge mean, where there are any.
+func (l *legend) beyondEntry(some bool) {
+	if some {
+		l.entry("beyond the axis", thumb(func(c *draw.Canvas, pt vg.Point) { outside(c, vg.Point{X: pt.X, Y: pt.Y + 2.5}, true) }))
+	}
+}
+
+// beyond reports whether a point that is drawn lies outside a range.
+func beyond(points []Point, low, high float64, at func(Point) float64) bool {
+	return slices.ContainsFunc(points, func(p Point) bool { return at(p) < low || at(p) > high })
 }
 
 // sourceUsed reports whether a source has a point that took part: else its marker

@@ -23,7 +23,9 @@ const (
 	labelSize  = 8.5
 	tickSize   = 8
 	legendSize = 7.5
-	tickLength = 3.5
+	// legendPadding parts the rows of a legend.
+	legendPadding = 2.5
+	tickLength    = 3.5
 )
 
 // The palette of Okabe and Ito.
@@ -276,7 +278,7 @@ func (l legend) column() *plot.Legend {
 	c.TextStyle = style(legendSize)
 	c.Left, c.Top = true, true
 	c.ThumbnailWidth = 20
-	c.Padding = 2.5
+	c.Padding = legendPadding
 	for _, e := range l {
 		c.Add(" "+e.words, e.thumbs...)
 	}
@@ -348,6 +350,7 @@ func (l legend) place(p *plot.Plot, area func() draw.Canvas, obstacles []obstacl
 // columns under it, on a page made longer.
 func (l legend) complete(p picture, r vg.Rectangle, found bool) picture {
 	picture := p.draw
+	p.legend = l
 	if found {
 		p.draw = func(c draw.Canvas) {
 			picture(c)
