@@ -180,12 +180,19 @@ func (p *page) test(a *diagnostics.Assessment) {
 		for _, iv := range b.Intervals {
 			if iv.Parameter == "change_of_E" {
 				r := diagnostics.Estimate{Lower: iv.Lower, Upper: iv.Upper}.Times(e.PerKJ)
-				rows = append(rows, []string{"change of E by " + iv.Method, interval(r, d) + energy})
+				text := unknown
+				if r.Lower.Known() || r.Upper.Known() {
+					text = interval(r, d) + energy
+				}
+				if iv.Note != "" {
+					text += " (" + iv.Note + ")"
+				}
+				rows = append(rows, []string{"change of E by " + iv.Method, text})
 			}
 		}
 	}
 	// Where every candidate is rejected, resamples come from curves known to be wrong.
-	if b := a.Bootstrap; b != nil && len(b.RepeatShare) > 0 && a.Verdict.RecommendedCurve != "" {
+	if b := a.Bootstrap; b != nil && a.Verdict.RecommendedCurve != "" {
 		var shares []string
 		states := slices.Clone(diagnostics.States)
 		slices.SortStableFunc(states, func(x, y diagnostics.State) int { return cmp.Compare(b.RepeatShare[y], b.RepeatShare[x]) })
@@ -194,7 +201,7 @@ func (p *page) test(a *diagnostics.Assessment) {
 				shares = append(shares, string(s)+"\u00a0"+strings.ReplaceAll(percent(share), " ", "\u00a0"))
 			}
 		}
-		text := strings.Join(shares, ", ")
+		text := or(strings.Join(shares, ", "), unknown)
 		if b.Failed > 0 {
 			text += fmt.Sprintf(" (%d of %d resamples failed)", b.Failed, b.Resamples)
 		}
@@ -398,8 +405,12 @@ func (p *page) data(a *diagnostics.Assessment) {
 	if d.Used != d.Points {
 		used = fmt.Sprintf("%d used", d.Used)
 	}
-	facts := fmt.Sprintf("%s: %s, %s, at %s from %s to %s\u00a0K; %s", strings.Join(d.Files, ", "),
-		count(d.Points, "point"), used, count(d.Temperatures, "temperature"), kelvin(d.TMin), kelvin(d.TMax), d.Quantity.Symbol)
+	at := "at"
+	if d.Limits > 0 {
+		at = fmt.Sprintf("%d of them as limits, the others at", d.Limits)
+	}
+	facts := fmt.Sprintf("%s: %s, %s, %s %s from %s to %s\u00a0K; %s", strings.Join(d.Files, ", "),
+		count(d.Points, "point"), used, at, count(d.Temperatures, "temperature"), kelvin(d.TMin), kelvin(d.TMax), d.Quantity.Symbol)
 	if d.Quantity.Unit != "" {
 		facts += " in " + d.Quantity.Unit
 	}

@@ -450,7 +450,7 @@ func breakWords(text string, width int) []string {
 // note prints a finding: its code, what was found and on which lines, its cure.
 func (p *page) note(styled, label, message, cure string, rows []int) []string {
 	text := label + ":\u00a0" + message
-	if len(rows) > 0 && !strings.Contains(message, "line") && !namesPlace.MatchString(message) {
+	if len(rows) > 0 && !namesPlace.MatchString(message) {
 		text += " (" + lineList(rows) + ")"
 	}
 	if cure != "" {
@@ -467,8 +467,9 @@ func (p *page) note(styled, label, message, cure string, rows []int) []string {
 	return lines
 }
 
-// namesPlace finds file:line in a message, or "row 7", which is the line.
-var namesPlace = regexp.MustCompile(`\S:\d+\b|\brows? \d`)
+// namesPlace finds file:line in a message, "line 7", or "row 7", which is the line.
+// The word alone, as in "the straight line", is no place.
+var namesPlace = regexp.MustCompile(`\S:\d+\b|\b(?:rows?|lines?) \d`)
 
 // lineList names the first few lines of a file.
 func lineList(rows []int) string {

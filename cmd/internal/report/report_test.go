@@ -217,6 +217,19 @@ func TestTestBlock(t *testing.T) {
 	}
 }
 
+// What the bootstrap withholds is a dash with its reason, and what was found wanting of
+// an interval is said beside it.
+func TestWithheldResamples(t *testing.T) {
+	a := fixture()
+	a.Bootstrap = &diagnostics.Resampling{Scheme: "pairs", Resamples: 1000, Failed: 570, RepeatShare: map[diagnostics.State]diagnostics.Real{},
+		Intervals: []diagnostics.ResampledInterval{
+			{Parameter: "change_of_E", Method: "bootstrap-t", Lower: nan, Upper: nan, Note: "withheld: 570 of 1000 resamples could not be fitted"},
+			{Parameter: "change_of_E", Method: "percentile", Lower: 12, Upper: 24, Note: "too short below N = 20"}}}
+	holds(t, text(t, a, report.Text{}), "change of E by bootstrap-t – (withheld: 570 of 1000 resamples could not be fitted)",
+		"change of E by percentile +12.0 to +24.0 kJ/mol (too short below N = 20)",
+		"a repeat would say – (570 of 1000 resamples failed)")
+}
+
 // Alarms are printed with their cure, what is informative without, and what stands
 // elsewhere not again.
 func TestFindingsAreShort(t *testing.T) {
@@ -225,6 +238,17 @@ func TestFindingsAreShort(t *testing.T) {
 	holds(t, out, "ALARM deciding-point: the verdict rests on one point (line 9) → measure there again", "adequacy-unchecked: the fit cannot be checked")
 	if strings.Contains(out, "repeat some temperatures") || strings.Contains(out, "conditional-on-choice") {
 		t.Errorf("not short:\n%s", out)
+	}
+	// The word line is no place: its number is still printed, and only once.
+	for message, want := range map[string]string{
+		"the point lies far from the straight line":       "from the straight line (line 9) →",
+		"outlines, deadlines 9 and line-ups name no line": "name no line (line 9) →",
+		"line 9 was joined to the headings":               "line 9 was joined to the headings →",
+		"limits in lines 9, 12":                           "limits in lines 9, 12 →",
+	} {
+		b := fixture()
+		b.Findings[2].Message = message
+		holds(t, text(t, b, report.Text{}), want)
 	}
 	// A row is a line: one number is enough.
 	b := fixture()
