@@ -322,6 +322,7 @@ type FormEstimate struct {
 	Withheld   string              `json:"withheld"` // why parameters are not stated; "" when they are
 	Parameters []ParameterEstimate `json:"parameters"`
 	Covariance [][]Real            `json:"covariance"`
+	Note       string              `json:"note"` // on the intervals, "" where there is none
 }
 
 // ParameterEstimate is one parameter of a form with its uncertainty.

@@ -5,6 +5,7 @@ import (
 	"math"
 	"strings"
 
+	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/unit/constant"
 
 	"onebarrier/models"
@@ -218,9 +219,28 @@ func LocalEnergy(r *fit.Result, t, confidence float64) fit.Estimate {
 	if r.Status != fit.Converged {
 		return fit.Unknown()
 	}
-	f, jac := make([]float64, 1), make([]float64, r.Params())
-	r.Curve.ELoc(r.TRef, []float64{t}, r.P, f, jac)
-	return scaled(r.Interval(jac, f[0], confidence), 1./1000)
+	jac := make([]float64, r.Params())
+	e := localEnergy(r, t)(r.P, jac)
+	return scaled(r.Interval(jac, e, confidence), 1./1000)
+}
+
+// localEnergy is E_loc at t in J/mol.
+func localEnergy(r *fit.Result, t float64) fit.Function {
+	return func(p, grad []float64) float64 {
+		f := []float64{0}
+		r.Curve.ELoc(r.TRef, []float64{t}, p, f, grad)
+		return f[0]
+	}
+}
+
+// energyChange is E_loc at high less that at low, in J/mol.
+func energyChange(r *fit.Result, low, high float64) fit.Function {
+	return func(p, grad []float64) float64 {
+		less := make([]float64, len(grad))
+		change := localEnergy(r, high)(p, grad) - localEnergy(r, low)(p, less)
+		floats.Sub(grad, less)
+		return change
+	}
 }
 
 // atReference states k at the reference temperature. Its interval is that of ln k;
@@ -280,6 +300,7 @@ type toPublish struct {
 	// published where the verdict is unresolved.
 	Curvature Curvature
 	Profiles  map[string]fit.Estimate // as in formEstimates
+	Profile   *profiler               // of other quantities of the curve; nil for those of Student's t
 	Scatter   *sourceScatter          // between sources; nil for one
 }
 
@@ -418,7 +439,16 @@ func (w *publisher) fitted() {
 			w.note("%s is read as %s, %s: E is that of the active catalyst, half of which is active at T_half", r.Curve.Info().Name, f.Name, f.Formula)
 		}
 		w.eAt(w.in.TMin)
-		w.eAt(w.in.TMax)
+		if p := w.in.Profile; p != nil {
+			if t := w.in.TRef; t > w.in.TMin && t < w.in.TMax {
+				w.eAt(t)
+			}
+			w.eAt(w.in.TMax)
+			w.energyLine("ΔE", scaled(p.interval(energyChange(r, w.in.TMin, w.in.TMax)), 1./1000), "change of E_a over the measured range")
+			w.notes = append(w.notes, p.notes...)
+		} else {
+			w.eAt(w.in.TMax)
+		}
 	}
 	if w.in.Style == StyleKelvin || w.in.Style == StyleEvaluated || w.in.Scatter != nil {
 		w.rate()
@@ -501,7 +531,11 @@ func (w *publisher) entropyLine(symbol string, e fit.Estimate, notes ...string) 
 
 // eAt adds the local activation energy at a temperature.
 func (w *publisher) eAt(t float64) {
-	w.energyLine("E_a", LocalEnergy(w.in.Fit, t, w.in.Confidence), fmt.Sprintf("at %s K", fixed(t, 0, 0)))
+	e := LocalEnergy(w.in.Fit, t, w.in.Confidence)
+	if w.in.Profile != nil {
+		e = scaled(w.in.Profile.interval(localEnergy(w.in.Fit, t)), 1./1000)
+	}
+	w.energyLine("E_a", e, fmt.Sprintf("at %s K", fixed(t, 0, 0)))
 }
 
 // prefactor adds A, which is log-normal: its uncertainty is a factor, and brackets

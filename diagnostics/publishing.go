@@ -2,6 +2,9 @@ package diagnostics
 
 import (
 	"fmt"
+	"strings"
+
+	"gonum.org/v1/gonum/floats"
 
 	"onebarrier/models"
 	"onebarrier/models/dataset"
@@ -22,15 +25,21 @@ func (a *assessor) publishStyle() string {
 func (a *assessor) publishInto(doc *Assessment) {
 	tRef := doc.Settings.ReferenceTemperature
 	fr := models.Frame{TForm: tRef}
-	profiles := map[string]map[string]fit.Estimate{}
+	profiles, profilers := map[string]map[string]fit.Estimate{}, map[string]*profiler{}
 	for i := range doc.Ranking {
 		r := &doc.Ranking[i]
 		f := doc.Fits[r.Curve]
 		if !f.Usable() {
 			continue
 		}
-		profiles[r.Curve] = a.profiles(f)
+		p := a.profiler(f)
+		profilers[r.Curve], profiles[r.Curve] = p, a.profiles(f, fr, p)
 		r.Forms = formEstimates(f, fr, a.opt.Confidence, a.set.Quantity, profiles[r.Curve])
+		if p != nil {
+			for j := range r.Forms {
+				r.Forms[j].Note = strings.Join(p.notes, "; ")
+			}
+		}
 	}
 	low, high := a.data.sample.Range()
 	in := toPublish{
@@ -41,7 +50,7 @@ func (a *assessor) publishInto(doc *Assessment) {
 	}
 	atRef := a.power
 	if curve := a.verdict.RecommendedCurve; curve != "" {
-		in.Fit, in.Profiles = doc.Fits[curve], profiles[curve]
+		in.Fit, in.Profiles, in.Profile = doc.Fits[curve], profiles[curve], profilers[curve]
 		in.Exact = roundingOf(in.Fit, a.data.sample, a.opt.Confidence).Exact
 		atRef = in.Fit
 	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, a.data.pureError(), a.data.basis == BasisMeans, &RunsNulls{few: a.opt.SequentialNull}); in.PowerAdequate != nil && !*in.PowerAdequate {
@@ -92,20 +101,70 @@ func (a *assessor) eyring() *fit.Result {
 	return fit.Fit(a.data.sample, c)
 }
 
-// profiles are the profile intervals of the barriers and prefactors of parallel and series,
-// whose estimates are far from normal, by form symbol and in the form's units; nil
-// for other curves.
-func (a *assessor) profiles(f *fit.Result) map[string]fit.Estimate {
+// profiler gives the profile interval of any quantity of a fit.
+type profiler struct {
+	interval func(fit.Function) fit.Estimate
+	notes    []string // on its intervals
+}
+
+// profiler returns nil for curves whose intervals are those of Student's t, and for those
+// of two barriers, which profiles serves.
+func (a *assessor) profiler(f *fit.Result) *profiler {
+	s := a.data.sample
+	switch c := f.Curve.(type) {
+	case models.Seeded:
+		region := fit.NewRegion(s, f, a.opt.Confidence)
+		p := &profiler{interval: region.Interval}
+		shape := c.Forms()[0].Params[2].Symbol
+		if region.HoldsLine() {
+			p.notes = append(p.notes, fmt.Sprintf("the interval of %s reaches the straight line: these data do not tell %s from one barrier", shape, c.Info().Name))
+		}
+		if region.MeetsBound() {
+			p.notes = append(p.notes, fmt.Sprintf("an end is open where %s meets the bound of %s before the interval ends", shape, c.Info().Name))
+		}
+		return p
+	case models.DriftingHeatCapacity:
+		if !a.model.InK() {
+			return nil // exact by Student's t
+		}
+		return &profiler{interval: func(h fit.Function) fit.Estimate {
+			if f.P == nil {
+				return fit.Unknown()
+			}
+			// Linear in the parameters but for a constant.
+			grad := make([]float64, f.Params())
+			constant := h(f.P, grad) - floats.Dot(grad, f.P)
+			e := fit.Profile(s, f, grad, a.opt.Confidence)
+			e.Value, e.Lower, e.Upper = e.Value+constant, e.Lower+constant, e.Upper+constant
+			return e
+		}}
+	}
+	return nil
+}
+
+// profiles are the profile intervals of the parameters of forms whose estimates are far
+// from normal, by form symbol and in the form's units: all that p gives, and the barriers
+// and prefactors of parallel and series; nil for other curves.
+func (a *assessor) profiles(f *fit.Result, fr models.Frame, p *profiler) map[string]fit.Estimate {
+	if f.Nu < 1 {
+		return nil
+	}
+	out := map[string]fit.Estimate{}
+	if p != nil {
+		fr.TRef, fr.LnPerSecond = f.TRef, a.set.Quantity.LnPerSecond
+		for _, form := range f.Curve.Forms() {
+			for i, par := range form.Params {
+				out[par.Symbol] = p.interval(formParameter(form, fr, i))
+			}
+		}
+		return out
+	}
 	switch f.Curve.(type) {
 	case models.Parallel, models.Series:
 	default:
 		return nil
 	}
-	if f.Nu < 1 {
-		return nil
-	}
 	u := 1 / (models.GasConstant * f.TRef)
-	out := map[string]fit.Estimate{}
 	for _, p := range []struct {
 		symbol string
 		c      []float64 // of the canonical parameters
@@ -126,4 +185,14 @@ func (a *assessor) profiles(f *fit.Result) map[string]fit.Estimate {
 		out["ln_A"], out["E"] = out["ln_A2"], out["E2"]
 	}
 	return out
+}
+
+// formParameter is parameter i of a form.
+func formParameter(form models.Form, fr models.Frame, i int) fit.Function {
+	return func(p, grad []float64) float64 {
+		q, jac := make([]float64, len(form.Params)), make([]float64, len(form.Params)*len(p))
+		form.FromCurve(fr, p, q, jac)
+		copy(grad, jac[i*len(p):])
+		return q[i]
+	}
 }

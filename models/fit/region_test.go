@@ -7,6 +7,8 @@ import (
 
 	"onebarrier/models"
 	"onebarrier/models/reference"
+
+	"gonum.org/v1/gonum/stat/distuv"
 )
 
 // quantities of a seeded curve by name: the parameters of its form; E_loc at the
@@ -224,6 +226,26 @@ func TestRegionSays(t *testing.T) {
 			t.Errorf("%s, %s: holds the straight line %t, meets a bound %t", c.set, c.curve, g.HoldsLine(), g.MeetsBound())
 		}
 	}
+}
+
+// An end just inside a bound is found: the confidence is chosen so that T_0 of vogel ends at
+// 0.1 mK, S by a straight line against 1/(T - T_0).
+func TestRegionEndsBesideBound(t *testing.T) {
+	const end = 1e-4
+	s := synthetic(t, "s1_straight", Relative)
+	r := Fit(s, models.Vogel{})
+	n := s.Len()
+	x, w := make([]float64, 2*n), make([]float64, n)
+	for i, ti := range s.T {
+		x[2*i], x[2*i+1], w[i] = 1, 1/(ti-end), 1
+	}
+	rise := Linear(x, s.Y, w).RSS/r.RSS - 1
+	confidence := 2*distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(r.Nu)}.CDF(math.Sqrt(rise*float64(r.Nu))) - 1
+	e := Profile(s, r, []float64{0, 0, 1}, confidence)
+	if e.Open != OpenNone {
+		t.Fatalf("confidence %g: %+v", confidence, e)
+	}
+	reference.Within(t, "T_0", e.Lower, end, 1e-7)
 }
 
 // TestRegionCoverage: where estimates are far from normal the profile holds the truth in

@@ -1,0 +1,110 @@
+package diagnostics
+
+import (
+	"math"
+	"strings"
+	"testing"
+
+	"onebarrier/models"
+	"onebarrier/models/fit"
+	"onebarrier/models/reference"
+)
+
+// withCurves assesses a synthetic set with these candidates, 298.15 K its reference.
+func withCurves(t *testing.T, set string, model fit.ErrorModel, curves ...models.Curve) *Assessment {
+	t.Helper()
+	s := synthetic(t, set, fit.Relative)
+	o := quick()
+	o.Models, o.ErrorModel = curves, model
+	return mustAssess(t, setOf(s.T, s.K, nil), o)
+}
+
+// What is published of vogel has the profile intervals of golden_shape_profiles.csv (R),
+// in the forms and in the lines to publish.
+func TestPublishedProfilesAgainstR(t *testing.T) {
+	a := withCurves(t, "s7_vft", fit.Relative, models.Straight(), models.PowerPrefactor{}, models.Vogel{})
+	if a.Publish.Curve != "vogel" {
+		t.Fatalf("recommended: %q", a.Publish.Curve)
+	}
+	found := 0
+	for _, row := range reference.Records(t, "golden_shape_profiles.csv") {
+		if row["dataset"] != "s7_vft" || row["curve"] != "vogel" || row["model"] != "relative" {
+			continue
+		}
+		lower, upper := reference.Number(t, row["lower"]), reference.Number(t, row["upper"])
+		check := func(what string, e Estimate) {
+			found++
+			reference.Close(t, what+" lower", float64(e.Lower), lower, 1e-7)
+			reference.Close(t, what+" upper", float64(e.Upper), upper, 1e-7)
+		}
+		switch q := row["quantity"]; q {
+		case "E_min", "dE":
+			symbol := map[string]string{"E_min": "E_a", "dE": "ΔE"}[q]
+			for _, l := range a.Publish.Lines {
+				if l.Symbol == symbol && !strings.HasPrefix(l.Note, "at 298") && !strings.HasPrefix(l.Note, "at 400") {
+					check(q, l.Estimate)
+				}
+			}
+		case "T0", "B", "ln_A":
+			for _, r := range a.Ranking {
+				if r.Curve == "vogel" {
+					check(q, parameter(t, r.Forms, "vogel-fulcher-tammann", q))
+				}
+			}
+			for _, l := range a.Publish.Lines {
+				if l.Symbol == q {
+					check(q+" to publish", l.Estimate)
+				}
+			}
+		}
+	}
+	if found != 7 { // T0 and B twice
+		t.Errorf("compared %d estimates", found)
+	}
+}
+
+// Where the straight line does as well the interval is one-sided, and says why.
+func TestOneSidedProfileSaysSo(t *testing.T) {
+	a := withCurves(t, "s1_straight", fit.Relative, models.Straight(), models.Vogel{})
+	for _, r := range a.Ranking {
+		for _, f := range r.Forms {
+			switch r.Curve {
+			case "straight":
+				if f.Note != "" {
+					t.Errorf("straight: %q", f.Note)
+				}
+			case "vogel":
+				e := parameter(t, r.Forms, f.Model, "T0")
+				if e.Open == nil || *e.Open != "lower" || math.Abs(float64(e.Upper)-21.1136990535) > 1e-6 { // R, as above
+					t.Errorf("T0: %+v", e)
+				}
+				if !strings.Contains(f.Note, "the interval of T0 reaches the straight line") {
+					t.Errorf("note: %q", f.Note)
+				}
+			}
+		}
+	}
+}
+
+// drifting-heat-capacity is linear: with errors in k its quantities have the profile of
+// fit.Profile, with errors in ln k those of Student's t.
+func TestDriftingProfiles(t *testing.T) {
+	for _, model := range []fit.ErrorModel{fit.Relative, fit.Absolute} {
+		a := withCurves(t, "s2_tn_curved", model, models.Straight(), models.DriftingHeatCapacity{})
+		f := a.Fits["drifting-heat-capacity"]
+		for _, r := range a.Ranking {
+			if r.Curve != "drifting-heat-capacity" {
+				continue
+			}
+			e := parameter(t, r.Forms, "eyring-drifting-heat-capacity", "dCp_dT")
+			unit := models.GasConstant / f.TRef // of m, the fourth canonical parameter
+			want := fit.Profile(a.Sample, f, []float64{0, 0, 0, 1}, 0.95)
+			reference.Close(t, "lower", float64(e.Lower), unit*want.Lower, 1e-9)
+			reference.Close(t, "upper", float64(e.Upper), unit*want.Upper, 1e-9)
+			even := math.Abs(float64(e.Upper+e.Lower-2*e.Value)) < 1e-6*float64(e.Upper-e.Lower)
+			if even != (model == fit.Relative) {
+				t.Errorf("%s: %+v", model, e)
+			}
+		}
+	}
+}
