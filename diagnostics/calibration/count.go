@@ -149,7 +149,8 @@ type Counts struct {
 	Shares []Shares
 }
 
-// Shares are repeat shares of one data set.
+// Shares are repeat shares of one data set; NaN where there is none: no bootstrap, too
+// many failed resamples, or a curve that is not ranked.
 type Shares struct{ Curved, Power, Parallel float64 }
 
 // wants reports whether an event is to be counted.
@@ -458,6 +459,8 @@ const shareResamples = 999
 
 // shares runs the whole of Assess and keeps its repeat shares.
 func (c Cell) shares(ctx context.Context, set *dataset.Set, opt diagnostics.Options, i int, n *Counts) error {
+	absent := math.NaN()
+	n.Shares[i] = Shares{absent, absent, absent}
 	opt.Resamples, opt.Seed, opt.Workers = shareResamples, uint64(i), 1
 	a, err := diagnostics.Assess(ctx, set, opt)
 	if err != nil {
@@ -467,10 +470,20 @@ func (c Cell) shares(ctx context.Context, set *dataset.Set, opt diagnostics.Opti
 	if a.Bootstrap == nil {
 		return nil
 	}
-	var sh Shares
-	for _, state := range diagnostics.States { // not in the order of a map: the last bit would change
-		if state.Curved() {
-			sh.Curved += float64(a.Bootstrap.RepeatShare[state])
+	n.record(Curved, a.Verdict.State.Curved())
+	n.Shares[i] = sharesOf(a)
+	return nil
+}
+
+// sharesOf takes the repeat shares out of an assessment.
+func sharesOf(a *diagnostics.Assessment) Shares {
+	sh := Shares{math.NaN(), math.NaN(), math.NaN()}
+	if len(a.Bootstrap.RepeatShare) > 0 {
+		sh.Curved = 0
+		for _, state := range diagnostics.States { // not in the order of a map: the last bit would change
+			if state.Curved() {
+				sh.Curved += float64(a.Bootstrap.RepeatShare[state])
+			}
 		}
 	}
 	for _, r := range a.Ranking {
@@ -483,7 +496,5 @@ func (c Cell) shares(ctx context.Context, set *dataset.Set, opt diagnostics.Opti
 			}
 		}
 	}
-	n.record(Curved, a.Verdict.State.Curved())
-	n.Shares[i] = sh
-	return nil
+	return sh
 }

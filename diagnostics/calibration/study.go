@@ -8,6 +8,8 @@ import (
 	"strings"
 
 	"onebarrier/models/fit"
+
+	"gonum.org/v1/gonum/stat"
 )
 
 // Temperatures are the numbers of temperatures of the study.
@@ -482,18 +484,16 @@ func (s *Study) shares() {
 	}
 }
 
-// mean is the mean of a share over data sets with its standard error.
+// mean is the mean of a share over the data sets that have one, with its standard error.
 func mean(shares []Shares, of func(Shares) float64) Figure {
-	var sum, ss float64
+	var known []float64
 	for _, sh := range shares {
-		sum += of(sh)
+		if v := of(sh); !math.IsNaN(v) {
+			known = append(known, v)
+		}
 	}
-	n := float64(len(shares))
-	m := sum / n
-	for _, sh := range shares {
-		ss += (of(sh) - m) * (of(sh) - m)
-	}
-	return Figure{m, math.Sqrt(ss / (n - 1) / n), len(shares)}
+	m, sd := stat.MeanStdDev(known, nil)
+	return Figure{m, sd / math.Sqrt(float64(len(known))), len(known)}
 }
 
 // Run simulates every cell and fills the figures in. progress, if not nil, is told
