@@ -1,6 +1,7 @@
 package diagnostics
 
 import (
+	"fmt"
 	"math"
 	"math/rand/v2"
 	"slices"
@@ -104,6 +105,61 @@ func CheckAdequacy(s *fit.Sample, f *fit.Result, pe PureError, onMeans bool, nul
 	}
 	return tests, adequate
 }
+
+// trendLevel is the p-value of the runs test below which residuals show a trend.
+const trendLevel = 0.05
+
+// blameRepeats replaces the alarm that no curve fits where the verdict rests on means
+// and the means show no trend about some curve: repeats at one temperature share the
+// error of its setting, and their scatter is then too small to judge a curve by. Under
+// replicates independent the alarm stays: that is what was claimed.
+func (a *assessor) blameRepeats(found []Finding, pe PureError) {
+	i := slices.IndexFunc(found, func(f Finding) bool { return f.Code == "none-adequate" })
+	if i < 0 || a.data.basis != BasisMeans || pe.DF == 0 {
+		return
+	}
+	s := a.data.sample
+	for _, r := range a.ranking {
+		f := a.fitOf(r.Curve).Measured()
+		runs := slices.IndexFunc(r.Adequacy, func(t Adequacy) bool { return t.Test == TestRuns })
+		if runs < 0 || !(r.Adequacy[runs].PValue >= trendLevel) ||
+			!slices.ContainsFunc(r.Adequacy, func(t Adequacy) bool { return t.Test == TestPureError }) {
+			continue
+		}
+		repeats := math.Sqrt(pe.SS / float64(pe.DF))
+		sizes := "their means lie further about " + r.Curve + " than their scatter allows"
+		if s.Model == fit.Relative { // else they are in units of k, or of what is stated
+			var ss, left float64
+			for i, e := range f.Residuals {
+				ss += e * e
+				left += s.V[i] / float64(s.Len())
+			}
+			sizes = fmt.Sprintf("they scatter by %s, which leaves %s in their means, but these lie %s about %s",
+				percentText(repeats), percentText(repeats*math.Sqrt(left)), percentText(math.Sqrt(ss/float64(f.Nu))), r.Curve)
+		}
+		found[i] = newFinding("repeats-share-error", "repeats at one temperature share the error of its setting, such as the thermostat's: "+
+			sizes+", without a trend; such repeats cannot check a curve, and by them every candidate fails", nil,
+			map[string]Real{"scatter_of_repeats": Real(repeats), "degrees_of_freedom": Real(pe.DF)})
+		return
+	}
+}
+
+// quietRepeats makes the finding no louder than the verdict: where no curvature is found
+// nothing rests on the repeats.
+func (a *assessor) quietRepeats() {
+	verdict, err := Explain(string(a.verdict.State))
+	if err != nil || verdict.Severity != Info {
+		return
+	}
+	for i := range a.findings {
+		if a.findings[i].Code == "repeats-share-error" {
+			a.findings[i].Severity = Info
+		}
+	}
+}
+
+// percentText prints a standard deviation of ln k in per cent, with two figures.
+func percentText(sd float64) string { return significant(100*sd, 2, "") + " %" }
 
 // RunsNulls keeps the nulls of the runs test of one sample: curves that can follow the
 // same directions, as those of fixed exponent do, share one. The zero value is empty.

@@ -1,10 +1,15 @@
 package diagnostics
 
 import (
+	"fmt"
 	"math"
 	"math/rand/v2"
+	"slices"
+	"strings"
 	"testing"
 
+	"onebarrier/models"
+	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 	"onebarrier/models/reference"
 )
@@ -166,4 +171,66 @@ func TestRunsOfManyPoints(t *testing.T) {
 	mu := 1 + 2*above*below/total
 	variance := 2 * above * below * (2*above*below - total) / (total * total * (total - 1))
 	reference.Close(t, "p", p, math.Erfc(-(runs-mu+0.5)/math.Sqrt(2*variance))/2, 1e-10)
+}
+
+// Repeats that share the error of their setting are blamed, no louder than the verdict is;
+// a trend in the means, or repeats that are said to be independent, leave the alarm.
+func TestRepeatsThatShareAnError(t *testing.T) {
+	draw := func(n int, f func(x float64) float64, shared float64) *dataset.Set {
+		rng := rand.New(rand.NewPCG(1, 8))
+		var ts, ks []float64
+		for i := range n {
+			ti := 285 + 60*float64(i)/float64(n)
+			e := shared * rng.NormFloat64()
+			for range 3 {
+				ts, ks = append(ts, ti), append(ks, math.Exp(20-60e3/(models.GasConstant*ti)+f(float64(i)/float64(n))+e+0.01*rng.NormFloat64()))
+			}
+		}
+		return setOf(ts, ks, nil)
+	}
+	straight := func(float64) float64 { return 0 }
+	bent := func(x float64) float64 { return 2 * (x - 0.5) * (x - 0.5) }
+	wave := func(x float64) float64 { return 0.1 * math.Sin(9*x) }
+	severity := func(a *Assessment, code string) Severity {
+		for _, f := range a.Findings {
+			if f.Code == code {
+				return f.Severity
+			}
+		}
+		return ""
+	}
+	for _, c := range []struct {
+		name          string
+		set           *dataset.Set
+		replicates    string
+		shares, alarm Severity
+	}{
+		{"a thermostat", draw(12, straight, 0.03), ReplicatesMeans, Info, ""},
+		{"a thermostat, a bent plot", draw(12, bent, 0.03), ReplicatesMeans, Warning, ""},
+		{"repeats said to be independent", draw(12, straight, 0.03), ReplicatesIndependent, "", Alarm},
+		{"a wave", draw(24, wave, 0), ReplicatesMeans, "", Alarm},
+		{"nothing shared", draw(12, straight, 0), ReplicatesMeans, "", ""},
+	} {
+		o := quick()
+		o.Replicates = c.replicates
+		a := mustAssess(t, c.set, o)
+		if got := severity(a, "repeats-share-error"); got != c.shares {
+			t.Errorf("%s: repeats-share-error is %q, want %q (verdict %s)", c.name, got, c.shares, a.Verdict.State)
+		}
+		if got := severity(a, "none-adequate"); got != c.alarm {
+			t.Errorf("%s: none-adequate is %q, want %q", c.name, got, c.alarm)
+		}
+	}
+	// The sizes are those of the generator: 1 % of a repeat, 0.58 % of a mean of three, and
+	// 3 % of a setting, give or take what twelve settings tell.
+	a := mustAssess(t, draw(12, straight, 0.03), quick())
+	i := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "repeats-share-error" })
+	var repeats, left, means float64
+	text := a.Findings[i].Message
+	if _, err := fmt.Sscanf(text[strings.Index(text, "they scatter"):], "they scatter by %f %%, which leaves %f %% in their means, but these lie %f %%", &repeats, &left, &means); err != nil {
+		t.Fatal(err, text)
+	}
+	if math.Abs(repeats-1) > 0.3 || math.Abs(left-repeats/math.Sqrt(3)) > 0.01 || math.Abs(means-3) > 1.5 {
+		t.Errorf("scatter %g %%, %g %% left, means %g %%", repeats, left, means)
+	}
 }

@@ -168,14 +168,15 @@ func (a *assessor) fit() error {
 		if p, contradicted := a.contradicted(); contradicted {
 			values := map[string]Real{"p_value": Real(p)}
 			if a.opt.ErrorModel == fit.Stated {
-				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %.2g for the curve that fits best); they were kept because you asked for it", p), nil, values)
+				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %s for the curve that fits best); they were kept because you asked for it", pText(p)), nil, values)
 			} else {
 				a.model = fit.Scaled
 				a.modelWhy = "chosen because the data scatter more than their stated uncertainties allow"
-				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %.2g for the curve that fits best); one common factor is estimated instead", p), nil, values)
 				if err := a.fitUnder(fit.Scaled); err != nil {
 					return err
 				}
+				values["factor"] = Real(a.power.Sigma)
+				a.find("stated-contradicted", fmt.Sprintf("the scatter is larger than the stated uncertainties allow (χ² p = %s for the curve that fits best); one common factor is estimated instead%s", pText(p), factorText(a.power)), nil, values)
 			}
 		} else if low := 1 - chi2Tail(a.straight.Measured().RSS, a.straight.Nu); a.straight.Nu > 0 && low < 0.01 {
 			a.find("scatter-too-small", fmt.Sprintf("the points scatter less about the straight line than their stated uncertainties allow (lower tail of χ² %.2g)", low), nil, map[string]Real{"p_value": Real(low)})
@@ -184,6 +185,14 @@ func (a *assessor) fit() error {
 		}
 	}
 	return nil
+}
+
+// factorText prints the factor of scaled uncertainties, where there is one.
+func factorText(f *fit.Result) string {
+	if !f.Usable() || f.Nu < 1 {
+		return ""
+	}
+	return fmt.Sprintf(": %s about %s", significant(f.Sigma, 2, ""), f.Curve.Info().Name)
 }
 
 // chooseErrorModel applies METHODS §3: the stated uncertainties decide where every
@@ -309,7 +318,9 @@ func (a *assessor) rank() {
 			r.Adequacy, r.Adequate = CheckAdequacy(s, f, pe, a.data.basis == BasisMeans, &nulls)
 		}
 	}
-	a.findings = append(a.findings, RankingFindings(a.ranking, s, Criterion(a.opt.Criterion))...)
+	found := RankingFindings(a.ranking, s, Criterion(a.opt.Criterion))
+	a.blameRepeats(found, pe)
+	a.findings = append(a.findings, found...)
 }
 
 // test runs the exponent test and the second-barrier test.
@@ -371,9 +382,20 @@ func (a *assessor) decide() {
 		Rule: a.rule, Ranking: a.ranking,
 		Untestable: a.untestable != "", More: a.more, Why: a.untestable,
 		EnergyUnit: a.opt.EnergyUnit, PerKJ: UnitOfEnergy(a.opt.EnergyUnit).PerKJ,
-		PerMolecule: a.set.Quantity.PerMolecule,
+		PerMolecule: a.set.Quantity.PerMolecule, Ends: a.endsBy,
 	})
 	a.findings = append(a.findings, found...)
+	a.quietRepeats()
+}
+
+// endsBy gives E_loc at both ends of the range by a curve, in kJ/mol.
+func (a *assessor) endsBy(curve string) (low, high float64) {
+	f := a.fitOf(curve)
+	if f == nil {
+		return math.NaN(), math.NaN()
+	}
+	cold, hot := a.data.sample.Range()
+	return LocalEnergy(f, cold, a.opt.Confidence).Value, LocalEnergy(f, hot, a.opt.Confidence).Value
 }
 
 // resample runs the bootstrap.
@@ -430,9 +452,9 @@ func (a *assessor) resample(ctx context.Context) error {
 	return nil
 }
 
-// mostFailed is the percentage of failed resamples above which no repeat shares are
-// given. Which resamples fail is not left to chance, so that shares of the others may
-// be wrong by about as much.
+// mostFailed is the percentage of failed resamples above which neither repeat shares nor
+// intervals are given. Which resamples fail is not left to chance, so that shares of the
+// others may be wrong by about as much, and quantiles of theirs with them.
 const mostFailed = 5
 
 // take turns the bootstrap's output into its place in the assessment.
@@ -440,6 +462,7 @@ func (a *assessor) take(out *bootstrap.Output) {
 	r := &Resampling{Scheme: string(out.Scheme), Resamples: out.Resamples, Failed: out.Failed,
 		RepeatShare: map[State]Real{}, Intervals: []ResampledInterval{}}
 	shares := 100*out.Failed <= mostFailed*out.Resamples
+	why := fmt.Sprintf("withheld: %d of %d resamples could not be fitted", out.Failed, out.Resamples)
 	if good := out.Resamples - out.Failed; shares && good > 0 {
 		for i, n := range out.States {
 			r.RepeatShare[States[i]] = Real(float64(n) / float64(good))
@@ -452,10 +475,13 @@ func (a *assessor) take(out *bootstrap.Output) {
 	}
 	for _, t := range out.Targets {
 		curve := a.fits[t.Curve].Curve.Info().Name
-		if t.Keep {
+		if t.Keep && shares {
 			a.changes = t.Values
 		}
 		for _, iv := range t.Intervals {
+			if !shares {
+				iv.Lower, iv.Upper, iv.Note = math.NaN(), math.NaN(), why
+			}
 			r.Intervals = append(r.Intervals, ResampledInterval{
 				Curve: curve, Parameter: t.Name, Unit: t.Unit, Method: string(iv.Method),
 				Lower: Real(iv.Lower), Upper: Real(iv.Upper), Note: iv.Note,
@@ -465,7 +491,7 @@ func (a *assessor) take(out *bootstrap.Output) {
 	if 100*out.Failed > out.Resamples {
 		message := fmt.Sprintf("%d of %d resamples could not be fitted and are not in the shares", out.Failed, out.Resamples)
 		if !shares {
-			message = fmt.Sprintf("%d of %d resamples could not be fitted: no repeat shares are given, because those of the rest need not hold where more than %d %% fail",
+			message = fmt.Sprintf("%d of %d resamples could not be fitted: neither repeat shares nor bootstrap intervals are given, because those of the rest need not hold where more than %d %% fail",
 				out.Failed, out.Resamples, mostFailed)
 		}
 		f := newFinding("resamples-failed", message, nil, map[string]Real{"failed": Real(out.Failed), "resamples": Real(out.Resamples)})

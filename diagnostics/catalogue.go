@@ -197,7 +197,7 @@ var catalogue = []Entry{
 	{
 		Code: "rate-maximum", Title: "k falls again above an optimum", Severity: Warning,
 		Explanation: "The rate constant rises to a temperature inside the range and falls above it, both by more than the scatter (1 % each, allowing for the choice of the place). No barrier and no sum of barriers does that, nor a prefactor: something is lost or reversed at the hot end, such as an enzyme that unfolds, a catalyst that sinters, or an equilibrium before the slow step. One E for the whole range has no meaning.",
-		Cure:        "assess the rising part with --t-max, or read the series curve in its form reversible-inactivation, which has a maximum",
+		Cure:        "assess the part that rises, below the maximum, with --t-max; or take the series curve, --models +reversible-inactivation, which has a maximum",
 		Reference:   "P. J. H. Sharpe, D. W. DeMichele, J. Theor. Biol. 64 (1977) 649",
 	},
 	{
@@ -299,6 +299,11 @@ var catalogue = []Entry{
 		Cure:        "look at the residuals: a trend asks for another curve, none for larger uncertainties",
 	},
 	{
+		Code: "repeats-share-error", Title: "repeats share an error that means do not", Severity: Warning,
+		Explanation: "Repeats at one setting of a thermostat share its error: they agree with each other better than settings do. Measured by such repeats every curve fails its adequacy test at 1 %, the true one too. That is what the data show: the temperature means lie about a candidate without a trend (runs test, p ≥ 0.05, which up to six temperatures cannot be below), only further than the scatter of the repeats allows. The verdict takes the means, each temperature once, and the scatter among them, for this very reason; it does not rest on the repeats. Where it is beyond-prefactor no curve is recommended, since none passes the test.",
+		Cure:        "set the temperature anew for every repeat, or state u(T); --replicates independent only where the settings were independent",
+	},
+	{
 		Code: "adequacy-unchecked", Title: "adequacy cannot be checked", Severity: Info,
 		Explanation: "Without repeats and without stated uncertainties nothing tells how large the scatter about the true curve should be. Under error model scaled the factor common to all stated uncertainties is taken from the scatter, which they then cannot check: only repeats could. The runs test is shown; it does not decide, since it cannot reach 5 % for N ≤ 6.",
 		Cure:        "repeat some temperatures, or state u(k)",
@@ -308,7 +313,7 @@ var catalogue = []Entry{
 	{
 		Code: "scatter-not-even", Title: "the scatter changes with temperature", Severity: Warning,
 		Explanation: "The error model takes errors of ln k (or of k) to be as large at the cold end as at the hot one, or as stated. The residuals are larger at one end than that allows (score test of Breusch and Pagan for a variance that changes with 1/T; p is exact for normal errors). At 1 %, with temperatures evenly spaced in 1/T, it sees a standard deviation that is threefold from one end of the range to the other in 1 % of sets of 5, 3 % of 8, 7 % of 12, 17 % of 20 and 47 % of 40: silence means little for few points. Weights that are wrong by so much cost precision, and the verdict raises more or fewer false alarms than it claims.",
-		Cure:        "state u(k) for every point; where k is read to a fixed absolute error, --error-model absolute",
+		Cure:        "state u(k) for every point, with all that belongs to it; where the errors are of one size in k, --error-model absolute, where they are a share of k, --error-model relative",
 		Reference:   "T. S. Breusch, A. R. Pagan, Econometrica 47 (1979) 1287; J. P. Imhof, Biometrika 48 (1961) 419",
 	},
 	{
@@ -412,7 +417,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "resamples-failed", Title: "some resamples could not be fitted", Severity: Warning,
-		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares. Which of them fail is not left to chance: where more than 5 % do, no repeat shares are given. Resampling pairs may leave out temperatures that a curve needs; --scheme parametric keeps them all.",
+		Explanation: "Some resamples of the bootstrap could not be fitted. They are counted and left out of its intervals and shares. Which of them fail is not left to chance: where more than 5 % do, neither repeat shares nor intervals of the bootstrap are given. The reported intervals do not depend on them. Resampling pairs may leave out temperatures that a curve needs; --scheme parametric keeps them all.",
 		Cure:        "fewer candidates with --models; a few failures in a thousand do no harm",
 	},
 }

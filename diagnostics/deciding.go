@@ -631,6 +631,7 @@ func (a *assessor) findDeciding() {
 	}
 	slices.Sort(rows)
 	first := found[0]
+	a.verdict.Sentence += fmt.Sprintf(" The verdict hangs on %s: without that it is %s.", a.place(first), first.State)
 	a.find("deciding-point", message, slices.Compact(rows), map[string]Real{
 		"n": n, "n_without": first.Exponent, "p_without": first.PValue, "t_k": first.T, "deciding": Real(len(found)),
 	})

@@ -130,8 +130,12 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Fin
 		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier%s, p = %s%s; verdict or this finding raises a false alarm in %s of straight sets",
 			where, still, pText(float64(b.PValue)), approximate, rate),
 		nil, map[string]Real{"p_value": b.PValue, "crossover_low_k": b.Crossover[0], "crossover_high_k": b.Crossover[1]})}
+	if still != "" {
+		fs[0].Cure = "a smooth bend passes for two paths in this test: only temperatures around the crossover tell them apart"
+	}
 	end := func(p Real, t float64) {
 		if p > 0.20 {
+			fs[0].Cure = "settle the end of the range first: see second-barrier-rests-on-end"
 			fs = append(fs, newFinding("second-barrier-rests-on-end",
 				fmt.Sprintf("without the point at %.6g K the second-barrier test has p = %s: the finding rests on the point at %.6g K", t, pText(float64(p)), t),
 				nil, map[string]Real{"t_k": Real(t), "p_value": p}))
@@ -161,10 +165,19 @@ func pText(p float64) string {
 	return fmt.Sprintf("%.2g", p)
 }
 
-func notAPrefactor(n float64, change string) Finding {
-	return newFinding("exponent-not-a-prefactor",
-		fmt.Sprintf("n = %s is no prefactor: read ΔE = %s or ΔC_p‡", number(n, 1), change),
-		nil, map[string]Real{"n": Real(n)})
+// notAPrefactor names what to read instead of n: the change of E, and what the
+// recommended curve has.
+func notAPrefactor(n float64, change, recommended string) Finding {
+	f := newFinding("exponent-not-a-prefactor", fmt.Sprintf("n = %s is no prefactor", number(n, 1)), nil, map[string]Real{"n": Real(n)})
+	switch recommended {
+	case "":
+		f.Cure = "read ΔE = " + change
+	case models.PowerPrefactor{}.Info().Name:
+		f.Cure = "read ΔE = " + change + ", or ΔC_p‡ = (n − 1)R"
+	default: // by it the change of E is another
+		f.Cure = "read the parameters of " + recommended + ", which is recommended, and its E at both ends"
+	}
+	return f
 }
 
 // manyCandidates counts the candidates that are not fitted unless they are named.

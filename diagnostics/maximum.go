@@ -3,6 +3,8 @@ package diagnostics
 import (
 	"fmt"
 	"math"
+	"strconv"
+	"strings"
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
@@ -67,8 +69,43 @@ func (a *assessor) rateMaximum() {
 	f := newFinding("rate-maximum", fmt.Sprintf("k rises up to %s K and falls above it: at %s K it is %s times what it is at %s K (p = %s)",
 		where, kelvinText(t[last]), significant(ratio, 2, ""), where, pText(p)), nil,
 		map[string]Real{"t_k": Real(t[top]), "ratio": Real(ratio), "p_value": Real(p)})
-	f.Cure = fmt.Sprintf("assess the rising part with --t-max %sK, or read the series curve in its form reversible-inactivation, which has a maximum", where)
+	f.Cure = a.cureOfMaximum(t, top)
 	a.findings = append(a.findings, f)
+}
+
+// cureOfMaximum says how to go on, with flags that can be typed as they stand. The
+// temperature of the largest k, t[top], is no part of what rises by a barrier: E_loc is
+// nearly 0 there.
+func (a *assessor) cureOfMaximum(t []float64, top int) string {
+	var cures []string
+	form, curve := "reversible-inactivation", models.Series{}.Info().Name
+	r := a.fitOf(curve)
+	switch {
+	case a.verdict.RecommendedCurve == curve:
+		cures = append(cures, "keep to the recommended curve: series, read as "+form+", has such a maximum")
+	case r == nil:
+		cures = append(cures, "fit a curve that has a maximum: --models +"+form)
+	case r.Usable() && r.Cov != nil:
+		cures = append(cures, "read the series curve in its form "+form+", which has a maximum (--json)")
+	}
+	if top >= minTemperatures {
+		cures = append(cures, fmt.Sprintf("assess the part that rises: --t-max %sK", numberBetween(t[top-1], t[top])))
+	}
+	if len(cures) == 0 {
+		return "measure more temperatures on both sides of the maximum"
+	}
+	return strings.Join(cures, ", or ")
+}
+
+// numberBetween is a number between two others with as few decimals as can be: rounded to two
+// decimals a temperature may lie on the wrong side of itself.
+func numberBetween(low, high float64) string {
+	for d := 0; ; d++ {
+		s := strconv.FormatFloat((low+high)/2, 'f', d, 64)
+		if x, err := strconv.ParseFloat(s, 64); err != nil || low < x && x < high || d > 15 {
+			return s
+		}
+	}
 }
 
 // fallsAt reports whether k falls with T at t, in K, by the curve power-prefactor or

@@ -46,8 +46,20 @@ func TestRateMaximumSays(t *testing.T) {
 	if i < 0 {
 		t.Fatal("no maximum found")
 	}
-	if f := a.Findings[i]; !strings.Contains(f.Cure, "--t-max 315K") || !strings.Contains(f.Message, "up to 315 K") || f.Values["t_k"] != 315 {
+	if f := a.Findings[i]; !strings.Contains(f.Cure, "--t-max 312K") || !strings.Contains(f.Message, "up to 315 K") || f.Values["t_k"] != 315 {
 		t.Errorf("%+v", f)
+	}
+}
+
+// The number keeps to its side of both temperatures, in the fewest decimals.
+func TestNumberBetween(t *testing.T) {
+	for _, c := range []struct {
+		low, high float64
+		want      string
+	}{{310, 315, "312"}, {315.15, 319.15, "317"}, {300.1, 300.9, "300.5"}, {300.15000000000003, 300.17, "300.16"}, {299.996, 300.004, "300"}} {
+		if got := numberBetween(c.low, c.high); got != c.want {
+			t.Errorf("between %g and %g: %s, want %s", c.low, c.high, got, c.want)
+		}
 	}
 }
 

@@ -6,9 +6,11 @@ import (
 	"testing"
 
 	"onebarrier/bootstrap"
+	"onebarrier/models"
+	"onebarrier/models/fit"
 )
 
-// Shares of what is left hold only while few resamples have failed: those that fail are
+// Shares and intervals of what is left hold only while few resamples have failed: those that fail are
 // no random choice. The cure names no scheme that is in use already.
 func TestResamplesFailed(t *testing.T) {
 	for _, c := range []struct {
@@ -31,6 +33,9 @@ func TestResamplesFailed(t *testing.T) {
 		out := &bootstrap.Output{Scheme: c.scheme, Resamples: 1000, Failed: c.failed,
 			States: make([]int, len(States)), FirstFamily: map[string]int{"straight": good}}
 		out.States[0] = good
+		a.fits = []*fit.Result{{Curve: models.Straight()}}
+		out.Targets = []bootstrap.TargetResult{{Target: bootstrap.Target{Name: "E", Keep: true}, Values: make([]float64, 1000),
+			Intervals: []bootstrap.Interval{{Method: bootstrap.BootstrapT, Lower: 1, Upper: 2}}}}
 		a.take(out)
 		share, shown := a.resampling.RepeatShare[States[0]]
 		if shown != c.shares || a.ranking[0].RepeatShare.Known() != c.shares || shown && share != 1 {
@@ -39,6 +44,10 @@ func TestResamplesFailed(t *testing.T) {
 		if a.resampling.RepeatShare == nil {
 			t.Errorf("%d of 1000 failed: the shares are null in the document", c.failed)
 		}
+		iv := a.resampling.Intervals[0]
+		if given := iv.Lower == 1 && iv.Upper == 2; given != c.shares || !c.shares && (iv.Lower.Known() || iv.Upper.Known() || !strings.HasPrefix(iv.Note, "withheld: ")) || (a.changes != nil) != c.shares {
+			t.Errorf("%d of 1000 failed: interval %+v, %d changes of E kept", c.failed, iv, len(a.changes))
+		}
 		if found := len(a.findings) == 1; found != c.found {
 			t.Errorf("%d of 1000 failed: findings %v", c.failed, a.findings)
 		} else if found {
@@ -46,7 +55,7 @@ func TestResamplesFailed(t *testing.T) {
 			if names := strings.Contains(f.Cure, "--scheme parametric"); f.Code != "resamples-failed" || f.Cure == "" || names == (c.scheme == bootstrap.Parametric) {
 				t.Errorf("scheme %s: cure %q", c.scheme, f.Cure)
 			}
-			if says := strings.Contains(f.Message, "no repeat shares"); says == c.shares {
+			if says := strings.Contains(f.Message, "neither repeat shares nor bootstrap intervals"); says == c.shares {
 				t.Errorf("%d of 1000 failed: %q", c.failed, f.Message)
 			}
 		}

@@ -128,9 +128,7 @@ func (a *assessor) checkResiduals() {
 		f := newFinding("scatter-not-even", fmt.Sprintf("the scatter about %s %s with T (p = %s); at N = %d, evenly spaced in 1/T, this check sees a threefold change over the range in %s of sets",
 			c.Curve, c.Trend, pText(float64(c.Spread.PValue)), n, share(c.Spread.Power)), nil,
 			map[string]Real{"p_value": c.Spread.PValue, "power": c.Spread.Power})
-		if s.Model.InK() {
-			f.Cure = "state u(k) for every point; where the error is a share of k, --error-model relative"
-		}
+		f.Cure = a.evenCure(r, c.Trend == "grows")
 		a.findings = append(a.findings, f)
 	}
 	if c.Normality.PValue < residualLevel {
@@ -140,6 +138,35 @@ func (a *assessor) checkResiduals() {
 	}
 	a.compareAbsolute(r, c)
 	a.compareRelative(r, c)
+}
+
+// evenCure says what helps where the scatter grows or shrinks with T. The other error
+// model does only where it changes the scatter that way: errors of one size in k are
+// the smaller in ln k the larger k is.
+func (a *assessor) evenCure(r *fit.Result, grows bool) string {
+	model := a.data.sample.Model
+	switch model {
+	case fit.Stated, fit.Scaled, fit.StatedAbsolute:
+		end := "cold"
+		if grows {
+			end = "hot"
+		}
+		return "look for what the stated u(k) leave out at the " + end + " end, and state it too"
+	}
+	cure, withK := "state u(k) for every point", grows == a.rises(r)
+	switch {
+	case model == fit.Relative && !withK:
+		cure += "; where k is read to a fixed absolute error, --error-model absolute"
+	case model == fit.Absolute && withK:
+		cure += "; where the error is a share of k, --error-model relative"
+	}
+	return cure
+}
+
+// rises reports whether the fitted k is larger at the hot end than at the cold one.
+func (a *assessor) rises(r *fit.Result) bool {
+	low, high := a.data.sample.Range()
+	return lnKAt(r, high, a.opt.Confidence).Value > lnKAt(r, low, a.opt.Confidence).Value
 }
 
 // share writes a probability in per cent.
@@ -155,10 +182,8 @@ func share(p Real) string {
 // where the spread test sees the scatter of ln k shrink with rising k.
 func (a *assessor) compareAbsolute(r *fit.Result, c *ResidualChecks) {
 	s := a.data.sample
-	lowT, highT := s.Range()
-	rises := lnKAt(r, highT, a.opt.Confidence).Value > lnKAt(r, lowT, a.opt.Confidence).Value
 	if s.Model != fit.Relative || len(s.Limits) > 0 || s.Len() > FullyResampled ||
-		!(c.Spread.PValue < absoluteHint) || rises == (c.Trend == "grows") {
+		!(c.Spread.PValue < absoluteHint) || a.rises(r) == (c.Trend == "grows") {
 		return
 	}
 	inK, err := fit.NewSample(fit.Absolute, s.T, s.K, s.V)

@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"onebarrier/models"
+	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 	"onebarrier/models/reference"
 
@@ -255,6 +256,54 @@ func TestChecksOfTheResidualsAreFindings(t *testing.T) {
 	b := mustAssess(t, setOf(ts, ks, nil), o)
 	reference.Close(t, "gain", float64(a.ResidualChecks.AbsoluteGain),
 		float64(a.row(t, "power-prefactor").AIC-b.row(t, "power-prefactor").AIC), 1e-9)
+}
+
+// The cure of scatter that is not even neither names the error model in use, nor one that
+// makes the scatter less even still, nor asks for uncertainties that are stated.
+func TestCureOfUnevenScatter(t *testing.T) {
+	const n = 80
+	draw := func(sd func(share, k float64) float64, stated bool) *dataset.Set {
+		rng := rand.New(rand.NewPCG(3, 4))
+		var ts, ks, us []float64
+		for i := range n {
+			ti := 280 + float64(i)
+			k := math.Exp(-20e3 / models.GasConstant * (1/ti - 1/320.0))
+			ts, ks = append(ts, ti), append(ks, k*(1+sd(float64(i)/(n-1), k)*rng.NormFloat64()))
+			if stated {
+				us = append(us, 0.05*k)
+			}
+		}
+		return setOf(ts, ks, us)
+	}
+	growing := func(share, _ float64) float64 { return 0.01 * math.Exp(2.3*share) }
+	shrinking := func(share, _ float64) float64 { return 0.1 * math.Exp(-2.3*share) }
+	for _, c := range []struct {
+		name   string
+		model  fit.ErrorModel
+		sd     func(share, k float64) float64
+		stated bool
+		want   string
+	}{
+		{"relative, more at the hot end", fit.Relative, growing, false, "state u(k) for every point"},
+		{"relative, more at the cold end", fit.Relative, shrinking, false, "state u(k) for every point; where k is read to a fixed absolute error, --error-model absolute"},
+		{"absolute, more at the hot end", fit.Absolute, growing, false, "state u(k) for every point; where the error is a share of k, --error-model relative"},
+		{"absolute, more at the cold end", fit.Absolute, func(share, k float64) float64 { return shrinking(share, k) / k }, false, "state u(k) for every point"},
+		{"stated, hot", fit.Stated, growing, true, "look for what the stated u(k) leave out at the hot end, and state it too"},
+		{"scaled, cold", fit.Scaled, shrinking, true, "look for what the stated u(k) leave out at the cold end, and state it too"},
+		{"stated-absolute, hot", fit.StatedAbsolute, growing, true, "look for what the stated u(k) leave out at the hot end, and state it too"},
+	} {
+		o := quick()
+		o.ErrorModel = c.model
+		a := mustAssess(t, draw(c.sd, c.stated), o)
+		i := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "scatter-not-even" })
+		if i < 0 {
+			t.Errorf("%s: not found: %+v", c.name, a.ResidualChecks)
+			continue
+		}
+		if got := a.Findings[i].Cure; got != c.want {
+			t.Errorf("%s: cure %q, want %q", c.name, got, c.want)
+		}
+	}
 }
 
 func TestResidualsThatCannotBeChecked(t *testing.T) {

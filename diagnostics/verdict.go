@@ -3,6 +3,7 @@ package diagnostics
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -195,6 +196,9 @@ type VerdictInput struct {
 	PerMolecule   bool    // k is per molecule: a reaction in the gas phase
 	EnergyUnit    string  // to print energies in; "" is kJ/mol
 	PerKJ         float64 // that unit in one kJ/mol; 0 is 1
+	// Ends gives E_loc in kJ/mol by a curve at both ends of the range; nil where the
+	// sentence need not say.
+	Ends func(curve string) (low, high float64)
 }
 
 // Decide gives the verdict and the findings that belong to it.
@@ -211,9 +215,9 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 			v.ETrend = models.TrendFalls.String()
 		}
 	}
-	v.Sentence = in.sentence(v.State)
 	var why string
 	v.RecommendedCurve, why = Recommend(v.State, in.Ranking)
+	v.Sentence = in.sentence(v.State, v.RecommendedCurve)
 
 	var fs []Finding
 	add := func(ok bool, f func() Finding) {
@@ -223,7 +227,9 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	}
 	t := in.Test
 	add(v.State.Curved() && in.restsOnStated(), func() Finding { return restsOnStated(t.PValue, t.PScaleFree) })
-	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding { return notAPrefactor(t.Exponent.Value, in.signedEnergy(t.Change.Value)) })
+	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding {
+		return notAPrefactor(t.Exponent.Value, in.signedEnergy(t.Change.Value), v.RecommendedCurve)
+	})
 	add(in.PerMolecule && !in.Untestable && in.Rule.Band[1] < 3, func() Finding { return bandNarrow(in.Rule.Band) })
 	if b := in.SecondBarrier; b.found() {
 		fs = append(fs, secondBarrierFound(b, in.Sample, in.Ranking)...)
@@ -245,7 +251,7 @@ func (in *VerdictInput) restsOnStated() bool {
 }
 
 // sentence says what was found, in words that a chemist reads.
-func (in *VerdictInput) sentence(state State) string {
+func (in *VerdictInput) sentence(state State, recommended string) string {
 	low, high := in.Sample.Range()
 	between := fmt.Sprintf("between %s and %s K", kelvinText(low), kelvinText(high))
 	n, change := in.Test.Exponent, in.Test.Change
@@ -255,8 +261,8 @@ func (in *VerdictInput) sentence(state State) string {
 		fmt.Fprintf(&s, "Too few temperatures to test: %s, and the test needs at least %s. Whether E changes with T cannot be told from these data.",
 			in.Why, count(in.More, "more temperature"))
 	case BeyondPrefactor:
-		fmt.Fprintf(&s, "Curved: more than one constant barrier with a usual prefactor gives. %s %s. "+
-			"This does not by itself prove a second barrier: %s", in.changed(), between, causes(n.Value > 0))
+		fmt.Fprintf(&s, "Curved: more than one constant barrier with a usual prefactor gives. %s %s%s. "+
+			"This does not by itself prove a second barrier: %s", in.changed(), between, in.byCurve(recommended), causes(n.Value > 0))
 	case WithinPrefactor:
 		fmt.Fprintf(&s, "Curved: a T-dependent prefactor explains it. %s %s; the exponent n = %s lies inside the prefactor band %g to %g, so that one barrier is enough.",
 			in.changed(), between, interval(n, ""), in.Rule.Band[0], in.Rule.Band[1])
@@ -280,6 +286,22 @@ func (in *VerdictInput) sentence(state State) string {
 		s.WriteString(" This rests on the stated uncertainties.")
 	}
 	return s.String()
+}
+
+// byCurve says, behind the change of E, that it is the test's, and what it is by the
+// recommended curve: where E changes near one end alone the two differ much.
+func (in *VerdictInput) byCurve(curve string) string {
+	test := models.PowerPrefactor{}.Info().Name
+	if in.Ends == nil || curve == "" || curve == test {
+		return ""
+	}
+	low, high := in.Ends(curve)
+	if math.IsNaN(low) || math.IsNaN(high) {
+		return ""
+	}
+	low, high = in.inUnit(fit.Estimate{Value: low}).Value, in.inUnit(fit.Estimate{Value: high}).Value
+	d := decimals(math.Abs(high - low))
+	return fmt.Sprintf(" by %s, from %s to %s %s by %s", test, number(low, d), number(high, d), in.unit(), curve)
 }
 
 // causes says what can and what cannot give E the sign that was found.
@@ -450,6 +472,9 @@ func Recommend(state State, ranking []Ranked) (curve, why string) {
 	if first == "" || first == curve {
 		return curve, ""
 	}
+	if d := deltaOfRelative(ranking, curve); d < 2 { // the convention of family-not-told-apart
+		return curve, fmt.Sprintf("%s ranks first by Δ = %s, too little to tell the two apart: they differ in a fixed exponent of T, which theory chooses", first, number(d, 2))
+	}
 	switch state {
 	case Untestable:
 		why = fmt.Sprintf("%s ranks first, but these data cannot test for curvature; the simplest curve is recommended", first)
@@ -471,6 +496,16 @@ func Recommend(state State, ranking []Ranked) (curve, why string) {
 		}
 	}
 	return curve, why
+}
+
+// deltaOfRelative is the Δ of a curve of fixed exponent behind a first one of its own
+// family; infinite where the two are no such relatives.
+func deltaOfRelative(ranking []Ranked, curve string) float64 {
+	i := slices.IndexFunc(ranking, func(r Ranked) bool { return r.Curve == curve && r.Status == StatusRanked })
+	if i < 0 || ranking[i].Params > 2 || ranking[i].Family != ranking[0].Family {
+		return math.Inf(1)
+	}
+	return float64(ranking[i].Delta - ranking[0].Delta)
 }
 
 func firstCurve(ranking []Ranked, ok func(Ranked) bool) string {
