@@ -185,12 +185,12 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "order-follows-temperature", Title: "the order of the runs follows T", Severity: Warning,
-		Explanation: "The temperatures were measured nearly in their order, up or down (rank correlation of 0.9 or more). Whatever drifts in an experiment, such as a catalyst, a lamp or a solution that ages, then drifts with T: it changes E, or bends the plot, and the residuals cannot show it.",
+		Explanation: "The temperatures were measured nearly in their order, up or down (rank correlation of 0.9 or more). Whatever drifts in an experiment, such as a catalyst, a lamp or a solution that ages, then drifts with T: it changes E, or bends the plot, and the residuals cannot show it. The order is that of a column headed order: 1, 2, 3 and so on, as the runs were made.",
 		Cure:        "measure in random order, or come back to the first temperature at the end",
 	},
 	{
 		Code: "drift-with-order", Title: "residuals drift with the order of the runs", Severity: Warning,
-		Explanation: "The residuals from the power-prefactor curve rise or fall with the order in which the points were measured (Spearman's rank correlation, p < 0.05, exact up to nine points without ties if the order was random). Where the order follows T no drift is seen: what it does to ln k is taken for a slope or a bend. Something changed in the course of the experiment.",
+		Explanation: "The residuals from the power-prefactor curve rise or fall with the order in which the points were measured (Spearman's rank correlation, p < 0.05, exact up to nine points without ties if the order was random). Where the order follows T no drift is seen: what it does to ln k is taken for a slope or a bend. Something changed in the course of the experiment. The order is that of a column headed order: 1, 2, 3 and so on, as the runs were made.",
 		Cure:        "look for what ages or warms up; measure in random order, so that a drift becomes scatter",
 		Reference:   "C. Spearman, Am. J. Psychol. 15 (1904) 72",
 	},

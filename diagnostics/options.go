@@ -49,10 +49,13 @@ type Options struct {
 	// range, else T_eff to the nearest kelvin, so that nothing is extrapolated
 	// unasked.
 	ReferenceTemperature float64
-	EnergyUnit           string   // kJ/mol (default), kcal/mol, eV, K or cm^-1
-	PublishStyle         string   // molar, kelvin, evaluated, electronvolt; "" decides by unit
-	Selection            []string // how rows were left out, for the record
-	Version              string   // of the program, for the record
+	EnergyUnit           string // kJ/mol (default), kcal/mol, eV, K or cm^-1
+	// KeepEnergyUnit publishes in EnergyUnit where the style that the unit of k asks for
+	// has another: the molar style then stands in for it.
+	KeepEnergyUnit bool
+	PublishStyle   string   // molar, kelvin, evaluated, electronvolt; "" decides by unit
+	Selection      []string // how rows were left out, for the record
+	Version        string   // of the program, for the record
 	// SequentialNull draws the null of the second-barrier test only until p is plainly
 	// not small; p is exact all the same, and coarser where it is large. What rests on
 	// the ends of the range is then told of findings alone. For many data sets.

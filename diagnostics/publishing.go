@@ -16,7 +16,12 @@ func (a *assessor) publishStyle() string {
 	if a.opt.PublishStyle != "" {
 		return a.opt.PublishStyle
 	}
-	return styleOf(a.set.Quantity)
+	style := styleOf(a.set.Quantity)
+	own := map[string]string{StyleKelvin: "K", StyleEvaluated: "K", StyleElectronvolt: "eV"}[style]
+	if a.opt.KeepEnergyUnit && own != "" && a.opt.EnergyUnit != own {
+		return StyleMolar // the others have their unit by definition
+	}
+	return style
 }
 
 // publishInto states every curve in its forms, k at the reference temperature, and

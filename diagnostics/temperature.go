@@ -40,10 +40,29 @@ func ParseThermometerError(s string) (ThermometerError, error) {
 	seen := map[string]bool{}
 	for _, part := range strings.Split(s, ",") {
 		name, value, ok := strings.Cut(strings.ReplaceAll(part, " ", ""), "=")
-		x, err := strconv.ParseFloat(strings.TrimSuffix(value, "K"), 64)
+		number, kelvin := strings.CutSuffix(value, "K")
+		x, err := strconv.ParseFloat(number, 64)
 		to := map[string]*float64{shapeOffset: &e.Offset, shapeGain: &e.Gain, shapeBow: &e.Bow}[name]
-		if !ok || to == nil || seen[name] || err != nil || !strings.HasSuffix(value, "K") || !(x >= 0) || math.IsInf(x, 0) {
-			return e, fmt.Errorf("diagnostics: thermometer error %q is not of the kind offset=0.5K,gain=0.5K,bow=0.1K", s)
+		_, notUnit := strconv.ParseFloat(value, 64)
+		wrong := ""
+		switch {
+		case to == nil:
+			wrong = fmt.Sprintf("%q is no shape of an error; the shapes are offset, gain and bow", name)
+		case !ok || value == "":
+			wrong = fmt.Sprintf("%s has no value; write %s=0.1K", name, name)
+		case seen[name]:
+			wrong = name + " is given twice; give it once"
+		case !kelvin && notUnit == nil:
+			wrong = fmt.Sprintf("%q has no unit; write %s=%sK", value, name, value)
+		case !kelvin:
+			wrong = fmt.Sprintf("%q is not in K; an error is a difference of temperatures: write %s=0.1K", value, name)
+		case err != nil || math.IsInf(x, 0) || math.IsNaN(x):
+			wrong = fmt.Sprintf("%q is no number of kelvins; write %s=0.1K", value, name)
+		case x < 0:
+			wrong = fmt.Sprintf("%q is negative; the error may have either sign: write %s=%gK", value, name, -x)
+		}
+		if wrong != "" {
+			return e, fmt.Errorf("diagnostics: thermometer error: %s", wrong)
 		}
 		*to, seen[name] = x, true
 	}

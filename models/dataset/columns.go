@@ -515,6 +515,9 @@ func short(s string) string {
 	return s
 }
 
+// AssumptionKeys are the keys of Options.Assume.
+var AssumptionKeys = []string{"T", "log", "k", "factor", "error", "n"}
+
 // checkAssumptions reads the values of --assume that belong to no heading.
 func (m *maker) checkAssumptions(p *plan) {
 	for _, key := range slices.Sorted(maps.Keys(m.opt.Assume)) {

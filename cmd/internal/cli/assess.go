@@ -42,7 +42,11 @@ the candidates and every finding with its cure. FILE is a table with one column
 of temperatures and one of rate constants, as text or in a sheet of a workbook
 (.xlsx); - reads standard input. Several files are assessed as one with --pool:
 they must hold the same rate quantity, in units of one dimension; data set, rows
-and temperatures are chosen in each file before they are joined.`,
+and temperatures are chosen in each file before they are joined.
+
+Further columns serve, where there are: u(k) and u(T) weigh the points, source
+tells laboratories apart, dataset divides the file, and order, the order of the
+runs, shows whether k drifted while it was measured.`,
 		Example: `  onebarrier assess rates.csv
   onebarrier assess rates.csv --figures figures --figure-format pdf
   onebarrier assess rates.csv --t-max 330K --resamples 999 --seed 7
@@ -53,13 +57,12 @@ and temperatures are chosen in each file before they are joined.`,
 		Args: atLeast(1, "FILE"),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.assess.Selection = selection(cmd)
-			o.assess.KeepResamples = cmd.Flags().Changed("resamples")
+			o.asked(cmd)
 			for _, name := range []string{"figure-format", "y", "x"} {
 				if cmd.Flags().Changed(name) && o.figures == "" {
 					return usagef("give --figures FOLDER too", "--%s is for pictures, and none are asked for", name)
 				}
 			}
-			o.assess.KeepResamples = cmd.Flags().Changed("resamples")
 			if len(args) > 1 && !o.read.pool {
 				return usagef("--pool joins them into one; inspect shows each; or give one at a time",
 					"assess takes one data set, and %d files are named", len(args))
@@ -82,8 +85,14 @@ and temperatures are chosen in each file before they are joined.`,
 	group(f, "what is published", "local-energies")
 	group(f, "pictures", "figures", "figure-format", "y", "x")
 	group(f, "for scripts", "json", "expect")
-	completeWith(cmd, "expect", stateNames()...)
+	completeList(cmd, "expect", stateNames()...)
 	return cmd
+}
+
+// asked notes which settings the user gave, whatever their value.
+func (o *assessOptions) asked(cmd *cobra.Command) {
+	o.assess.KeepResamples = cmd.Flags().Changed("resamples")
+	o.assess.KeepEnergyUnit = cmd.Flags().Changed("energy-unit")
 }
 
 // oneOf gives a command a flag that takes one of a few words.
@@ -103,21 +112,26 @@ func addJudging(cmd *cobra.Command, o *assessOptions) {
 	f.StringVar(&d.ThermometerError, "thermometer-error", d.ThermometerError, "what the thermometer may be wrong by, by `shape` (default u(T), or offset=0.5K,gain=0.5K,bow=0.1K)")
 	f.Float64Var(&d.Confidence, "confidence", d.Confidence, "of every interval")
 	oneOf(cmd, &d.Criterion, "criterion", "ranks the candidates", diagnostics.Criteria...)
-	f.StringVar(&o.models, "models", "", "candidates: `names` of curves or forms separated by commas; +NAME adds to the defaults")
+	f.StringVar(&o.models, "models", "", "candidates: `names` of curves or forms separated by commas; +NAME adds to the defaults, all takes every curve of the catalogue")
 	f.IntVar(&d.Resamples, "resamples", d.Resamples, "of the bootstrap, 0 for none")
 	oneOf(cmd, &d.Scheme, "scheme", "of the bootstrap; by default the error model decides", words(bootstrap.Schemes)...)
 	f.StringSliceVar(&d.Intervals, "intervals", d.Intervals, "bootstrap `methods`: bootstrap-t, percentile, bca")
 	f.Uint64Var(&d.Seed, "seed", d.Seed, "of every random number")
 	f.IntVar(&d.Workers, "workers", d.Workers, "processors to use, 0 for all; does not change the result")
 	f.Var(temperature{&d.ReferenceTemperature}, "reference-temperature", "at which k is published (default 298.15K where measured, else near the middle of the data)")
-	oneOf(cmd, &d.EnergyUnit, "energy-unit", "of what is to be published", diagnostics.EnergyUnits...)
+	oneOf(cmd, &d.EnergyUnit, "energy-unit", "of all energies; given, it decides the form of what is published too, unless --publish does", diagnostics.EnergyUnits...)
 	oneOf(cmd, &d.PublishStyle, "publish", "form of what is to be published; by default the unit of k decides", diagnostics.PublishStyles...)
 	group(f, "how the data are judged", "error-model", "replicates", "prefactor-band", "tolerance", "thermometer-error", "confidence", "criterion", "models")
 	group(f, "bootstrap", "resamples", "scheme", "intervals", "seed", "workers")
 	group(f, "what is published", "reference-temperature", "energy-unit", "publish")
-	completeWith(cmd, "models", models.Names()...)
-	completeWith(cmd, "intervals", words(bootstrap.Methods)...)
-	completeWith(cmd, "thermometer-error", "offset=0.1K,gain=0.1K,bow=0.02K")
+	names := models.Names()
+	offers := append(slices.Clone(names), "all")
+	for _, n := range names {
+		offers = append(offers, "+"+n)
+	}
+	completeList(cmd, "models", offers...)
+	completeList(cmd, "intervals", words(bootstrap.Methods)...)
+	completeWith(cmd, "thermometer-error", "offset=0.5K,gain=0.5K,bow=0.1K", "bow=0.02K")
 	completeWith(cmd, "tolerance", "0.5kJ/mol", "1kJ/mol", "5%")
 }
 

@@ -100,7 +100,7 @@ func (a *app) finish(err error, asJSON bool) int {
 // On a terminal they are wrapped, with the cure on a line of its own.
 func (a *app) complain(err error) {
 	if isTerminal(a.err) {
-		for _, line := range wrapError(err, 80) {
+		for _, line := range wrapError(err, widthOf(a.err)) {
 			fmt.Fprintln(a.err, line)
 		}
 		return
@@ -162,6 +162,7 @@ publish and with what uncertainty.`,
 			}
 			return unknownName("command", args[0], commandNames(cmd), "onebarrier --help lists the commands")
 		},
+		PersistentPreRunE: func(cmd *cobra.Command, _ []string) error { return takenForValue(cmd) },
 		CompletionOptions: cobra.CompletionOptions{DisableDefaultCmd: true},
 	}
 	root.SetVersionTemplate("onebarrier {{.Version}}\n")
@@ -194,17 +195,24 @@ func (a *app) addJSON(cmd *cobra.Command) {
 func flagError(cmd *cobra.Command, err error) error {
 	var unknown *pflag.NotExistError
 	var invalid *pflag.InvalidValueError
+	var noValue *pflag.ValueRequiredError
 	see := fmt.Sprintf("%s --help lists the flags", cmd.CommandPath())
 	switch {
-	case errors.As(err, &unknown) && unknown.GetSpecifiedShortnames() == "":
+	case errors.As(err, &unknown):
+		name, dash := unknown.GetSpecifiedName(), "--"
+		if short := unknown.GetSpecifiedShortnames(); short != "" { // -json
+			name, dash = short, "-"
+		}
 		var names []string
 		add := func(f *pflag.Flag) { names = append(names, f.Name) }
 		cmd.Flags().VisitAll(add)
 		cmd.InheritedFlags().VisitAll(add)
-		if s := closest(unknown.GetSpecifiedName(), names); s != "" {
+		if s := closest(name, names); s != "" {
 			see = fmt.Sprintf("did you mean --%s?", s)
 		}
-		return usagef(see, "%s has no flag --%s", cmd.Name(), unknown.GetSpecifiedName())
+		return usagef(see, "%s has no flag %s%s", cmd.Name(), dash, name)
+	case errors.As(err, &noValue):
+		return needsValue(noValue.GetFlag())
 	case errors.As(err, &invalid):
 		f := invalid.GetFlag()
 		cause := errors.Unwrap(invalid)
@@ -215,6 +223,26 @@ func flagError(cmd *cobra.Command, err error) error {
 		return usagef("", "--%s: %v", f.Name, cause)
 	}
 	return usagef(see, "%v", err)
+}
+
+// needsValue says that a flag stands without its value.
+func needsValue(f *pflag.Flag) error {
+	value, _ := pflag.UnquoteUsage(f)
+	return usagef(fmt.Sprintf("write --%s %s", f.Name, strings.ToUpper(value)), "--%s needs a value", f.Name)
+}
+
+// takenForValue refuses a flag that was taken for the value of the one before it: in
+// --figures --json the folder was forgotten.
+func takenForValue(cmd *cobra.Command) error {
+	var err error
+	cmd.Flags().Visit(func(f *pflag.Flag) {
+		name, isFlag := strings.CutPrefix(f.Value.String(), "--")
+		name, _, _ = strings.Cut(name, "=")
+		if isFlag && err == nil && cmd.Flags().Lookup(name) != nil {
+			err = needsValue(f)
+		}
+	})
+	return err
 }
 
 // text says how to lay out text on stdout.
@@ -242,11 +270,27 @@ func isTerminal(w io.Writer) bool {
 	return ok && term.IsTerminal(int(f.Fd()))
 }
 
-// warn prints a line on stderr unless the user wants quiet.
+// warn prints a message on stderr, wrapped, unless the user wants quiet.
 func (a *app) warn(format string, args ...any) {
-	if !a.quiet {
-		fmt.Fprintf(a.err, "onebarrier: "+format+"\n", args...)
+	if a.quiet {
+		return
 	}
+	for i, l := range report.Wrap("onebarrier: "+fmt.Sprintf(format, args...), widthOf(a.err)-2) {
+		if i > 0 {
+			l = "  " + l
+		}
+		fmt.Fprintln(a.err, l)
+	}
+}
+
+// widthOf is the width of a terminal, 80 for anything else.
+func widthOf(w io.Writer) int {
+	if f, ok := w.(*os.File); ok {
+		if n, _, err := term.GetSize(int(f.Fd())); err == nil && n >= 40 {
+			return n
+		}
+	}
+	return 80
 }
 
 // tool names this program in documents.

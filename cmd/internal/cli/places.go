@@ -3,6 +3,7 @@ package cli
 import (
 	"fmt"
 	"path/filepath"
+	"regexp"
 	"slices"
 	"strconv"
 	"strings"
@@ -21,7 +22,8 @@ func (p place) String() string {
 	return p.file + ":" + strconv.Itoa(p.line)
 }
 
-// places is the value of --leave-out: LINE or FILE:LINE, separated by commas.
+// places is the value of --leave-out: LINE, FIRST..LAST or FILE: and one of them,
+// separated by commas.
 type places struct{ all *[]place }
 
 func (v places) String() string { return strings.Join(v.GetSlice(), ",") }
@@ -52,27 +54,47 @@ func (v places) Set(s string) error {
 		if text += part; text == "" {
 			continue
 		}
-		p, ok := parsePlace(text)
+		ps, ok := parsePlaces(text)
 		if !ok {
 			text += "," // the name of a file may hold commas
 			continue
 		}
-		*v.all = append(*v.all, p)
+		*v.all = append(*v.all, ps...)
 		text = ""
 	}
+	if text = strings.TrimSuffix(text, ","); reHyphens.MatchString(text) {
+		return fmt.Errorf("%q is no line; write a range of lines as %s", text, strings.NewReplacer("-", "..", "–", "..").Replace(text))
+	}
 	if text = strings.TrimSuffix(text, ","); text != "" {
-		return fmt.Errorf("%q is no line; write its number, or FILE:LINE where several files are named", text)
+		return fmt.Errorf("%q is no line; write its number, a range such as 20..22, or FILE:LINE where several files are named", text)
 	}
 	return nil
 }
 
-func parsePlace(s string) (place, bool) {
-	file, line := "", s
+// reHyphens finds a range of lines written with a hyphen.
+var reHyphens = regexp.MustCompile(`^(?:.*:)?\s*\d+\s*[-–]\s*\d+$`)
+
+// parsePlaces reads a line, or a range of them.
+func parsePlaces(s string) ([]place, bool) {
+	const most = 10_000 // lines that a range may hold
+	file, lines := "", s
 	if i := strings.LastIndexByte(s, ':'); i > 0 {
-		file, line = s[:i], s[i+1:]
+		file, lines = s[:i], s[i+1:]
 	}
-	n, err := strconv.Atoi(strings.TrimSpace(line))
-	return place{file, n}, err == nil && n >= 1
+	from, to, isRange := strings.Cut(lines, "..")
+	if !isRange {
+		to = from
+	}
+	first, err1 := strconv.Atoi(strings.TrimSpace(from))
+	last, err2 := strconv.Atoi(strings.TrimSpace(to))
+	if err1 != nil || err2 != nil || first < 1 || last < first || last-first >= most {
+		return nil, false
+	}
+	var ps []place
+	for n := first; n <= last; n++ {
+		ps = append(ps, place{file, n})
+	}
+	return ps, true
 }
 
 // linesOf gives the lines to leave out of one of several files. A file is named

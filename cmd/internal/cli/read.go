@@ -44,14 +44,14 @@ func addSelection(cmd *cobra.Command, o *reading) {
 	f.Var(pairs{&o.Assume}, "assume", "settle what is ambiguous, such as T=degC or error=2")
 	f.Var(&choice{&o.Decimal, []string{"comma", "point"}}, "decimal", "decimal mark of the file")
 	f.StringArrayVar(&o.Where, "where", nil, "keep rows that meet a `condition`, such as 'source!=Lab3' (repeat for more)")
-	f.Var(places{&o.leaveOut}, "leave-out", "leave out these `lines`; FILE:LINE where several files are named")
+	f.Var(places{&o.leaveOut}, "leave-out", "leave out these `lines`, such as 7,20..22; FILE:LINE where several files are named")
 	f.Var(temperature{&o.TMin}, "t-min", "leave out rows below this temperature, such as 195K or 25degC")
 	f.Var(temperature{&o.TMax}, "t-max", "leave out rows above this temperature")
 	group(f, "how the file is read", "sheet", "column", "assume", "decimal")
 	group(f, "which rows are used", "dataset", "dataset-by", "where", "leave-out", "t-min", "t-max")
 	completeWith(cmd, "decimal", "comma", "point")
 	completeWith(cmd, "column", "temperature=", "k=", "source=", "dataset=", "order=")
-	completeWith(cmd, "assume", "T=K", "T=degC", "T=degF", "log=lg", "log=ln", "k=rate", "error=1", "error=2", "error=sd,n=3")
+	completeWith(cmd, "assume", "T=K", "T=degC", "T=degF", "log=lg", "log=ln", "k=rate", "k=repeats", "factor=times", "factor=unit", "error=1", "error=2", "error=sd,n=3", "n=3")
 }
 
 // addPool gives a command the flag that joins files.

@@ -2,6 +2,8 @@ package cli
 
 import (
 	"fmt"
+	"io"
+	"strings"
 
 	"github.com/spf13/cobra"
 )
@@ -13,7 +15,8 @@ func newCompletion(a *app) *cobra.Command {
 		Use:   "completion SHELL",
 		Short: "Print the script that lets a shell complete commands, flags and their values",
 		Long: `completion prints a script for bash, zsh, fish or powershell. Load it once to try
-it, or from the shell's start-up file to keep it.`,
+it, or from the shell's start-up file to keep it; bash does so with
+source <(onebarrier completion bash), and needs no other package.`,
 		Example: `  onebarrier completion bash > onebarrier.bash
   onebarrier completion fish > onebarrier.fish`,
 		Args: exactly(1, "SHELL"),
@@ -21,7 +24,7 @@ it, or from the shell's start-up file to keep it.`,
 			root := cmd.Root()
 			switch args[0] {
 			case "bash":
-				return root.GenBashCompletionV2(a.out, true)
+				return bashCompletion(root, a.out)
 			case "zsh":
 				return root.GenZshCompletion(a.out)
 			case "fish":
@@ -34,6 +37,46 @@ it, or from the shell's start-up file to keep it.`,
 		ValidArgsFunction: completeWords(func() []string { return shells }),
 	}
 }
+
+// bashCompletion writes the script for bash. As it is generated it asks the package
+// bash-completion for the words of the line, and without it complains at every key: here
+// it finds them itself.
+func bashCompletion(root *cobra.Command, w io.Writer) error {
+	const borrowed = `_get_comp_words_by_ref "$@" cur prev words cword`
+	var b strings.Builder
+	if err := root.GenBashCompletionV2(&b, true); err != nil {
+		return err
+	}
+	script := strings.Replace(b.String(), borrowed, "__onebarrier_words", 1)
+	if script == b.String() {
+		return fmt.Errorf("the script for bash is not as expected")
+	}
+	_, err := io.WriteString(w, script+bashWords)
+	return err
+}
+
+// bashWords sets words, cword, cur and prev from what bash has split at = and : too.
+const bashWords = `
+# The words of the line, split at blanks alone: bash splits at = and : too.
+__onebarrier_words() {
+    local i w rest=$COMP_LINE
+    words=() cword=0
+    for ((i = 0; i < ${#COMP_WORDS[@]}; i++)); do
+        w=${COMP_WORDS[i]}
+        if ((i > 0)) && [[ $rest != [[:blank:]]* ]] && [[ $w == [=:]* || ${COMP_WORDS[i-1]} == *[=:] ]]; then
+            words[${#words[@]}-1]+=$w
+        else
+            words+=("$w")
+        fi
+        rest=${rest#"${rest%%[![:blank:]]*}"}
+        rest=${rest#"$w"}
+        ((i == COMP_CWORD)) && cword=$((${#words[@]}-1))
+    done
+    cur=${words[cword]} prev=
+    ((cword > 0)) && prev=${words[cword-1]}
+    return 0
+}
+`
 
 func newHelp() *cobra.Command {
 	return &cobra.Command{

@@ -27,7 +27,7 @@ that are missing or not finished are named, and the exit code is 4 until every
 part is there. Parts of other settings, and parts that did not read the same data,
 are refused. It may be interrupted and given again, with the same parts or others.`,
 		Example: `  onebarrier survey merge --store results.sqlite part1.sqlite part2.sqlite
-  onebarrier survey merge --store results.sqlite results.sqlite.parts/*-of-64.sqlite`,
+  onebarrier survey merge --store all.sqlite all.sqlite.parts/*-of-64.sqlite`,
 		Args:              atLeast(1, "PART"),
 		RunE:              func(cmd *cobra.Command, args []string) error { return a.mergeSurvey(cmd, o, args) },
 		ValidArgsFunction: completeFiles(-1),

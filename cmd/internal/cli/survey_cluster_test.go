@@ -179,7 +179,7 @@ func TestSurveyShardOfTask(t *testing.T) {
 	t.Setenv("SLURM_ARRAY_TASK_MIN", "0")
 	t.Setenv("SLURM_ARRAY_TASK_COUNT", "2")
 	_, out, errOut := run(t, "", "survey", "run", "data", "--dry-run")
-	if !strings.Contains(out, "part 2 of 2 (of 6)") || !strings.Contains(errOut, "--shard 1/1 takes all") {
+	if !strings.Contains(out, "part 2 of 2 (of 6)") || !strings.Contains(errOut, "--shard 1/1 takes") {
 		t.Errorf("stdout:\n%s\nstderr:\n%s", out, errOut)
 	}
 	_, out, errOut = run(t, "", "survey", "run", "data", "--dry-run", "--shard", "1/1")

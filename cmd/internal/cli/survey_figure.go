@@ -29,7 +29,7 @@ interval, in order; a histogram of the p-values; how many data sets have each
 verdict, and how many could not be used and why. Of more than 240 data sets
 several share a bar.`,
 		Example: `  onebarrier survey figure --store results.sqlite
-  onebarrier survey figure --store results.sqlite --figures figures --figure-format pdf`,
+  onebarrier survey figure --store results.sqlite --figure-format pdf`,
 		Args: atMost(0, ""),
 		RunE: func(cmd *cobra.Command, _ []string) error { return a.surveyFigure(cmd, o) },
 	}

@@ -41,7 +41,7 @@ therefore made at the harmonic mean temperature, where the errors of E and of ln
 are not correlated (Krug, Hunter and Grieger, J. Phys. Chem. 80 (1976) 2335, 2341).`,
 		Example: `  onebarrier survey table --store results.sqlite
   onebarrier survey table --store results.sqlite --max-q 0.05 --sort points
-  onebarrier survey table --store results.sqlite --format csv --output results.csv
+  onebarrier survey table --store results.sqlite --format csv --output out.csv
   onebarrier survey table --store results.sqlite --compensation`,
 		Args: atMost(0, ""),
 		RunE: func(cmd *cobra.Command, _ []string) error { return a.surveyTable(cmd, o) },

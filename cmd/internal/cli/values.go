@@ -101,8 +101,7 @@ func (b band) Set(s string) error {
 	return nil
 }
 
-// pairs is the value of a flag that takes key=value, repeated or separated by
-// commas.
+// pairs is the value of --assume: key=value, repeated or separated by commas.
 type pairs struct{ m *map[string]string }
 
 func (p pairs) String() string { return strings.Join(p.GetSlice(), ",") }
@@ -135,7 +134,13 @@ func (p pairs) Set(s string) error {
 		key, value, ok := strings.Cut(part, "=")
 		key, value = strings.TrimSpace(key), strings.TrimSpace(value)
 		if !ok || key == "" || value == "" {
-			return fmt.Errorf("%q is not of the form key=value", part)
+			return fmt.Errorf("%q is not of the form key=value, such as T=degC", part)
+		}
+		if !slices.Contains(dataset.AssumptionKeys, key) {
+			if near := closest(key, dataset.AssumptionKeys); near != "" && len(key) > 1 {
+				return fmt.Errorf("%q is nothing to assume; did you mean %s=%s?", key, near, value)
+			}
+			return fmt.Errorf("%q is nothing to assume; %s", key, dataset.Explanations()["assumption-not-understood"].Cure)
 		}
 		(*p.m)[key] = value
 	}
@@ -189,6 +194,22 @@ func (c column) Set(s string) error {
 func completeWith(cmd *cobra.Command, flag string, words ...string) {
 	err := cmd.RegisterFlagCompletionFunc(flag, func(*cobra.Command, []string, string) ([]string, cobra.ShellCompDirective) {
 		return words, cobra.ShellCompDirectiveNoFileComp
+	})
+	if err != nil {
+		panic(err) // the flag does not exist: a bug of the caller
+	}
+}
+
+// completeList offers words for a flag that takes several, separated by commas: what
+// stands before the last comma is kept.
+func completeList(cmd *cobra.Command, flag string, words ...string) {
+	err := cmd.RegisterFlagCompletionFunc(flag, func(_ *cobra.Command, _ []string, typed string) ([]string, cobra.ShellCompDirective) {
+		before := typed[:strings.LastIndexByte(typed, ',')+1]
+		var offers []string
+		for _, w := range words {
+			offers = append(offers, before+w)
+		}
+		return offers, cobra.ShellCompDirectiveNoFileComp
 	})
 	if err != nil {
 		panic(err) // the flag does not exist: a bug of the caller

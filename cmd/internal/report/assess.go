@@ -280,6 +280,9 @@ func (p *page) ranking(a *diagnostics.Assessment) {
 			percent(r.FamWeight), percent(r.Weight), percent(r.RepeatShare), fits})
 	}
 	set := table(rows, 1, 2, 3, 4, 5, 6)
+	if utf8.RuneCountInString(set[0]) > p.body() { // beside a long name
+		set = spaced(1, rows, 1, 2, 3, 4, 5, 6)
+	}
 	lines := []string{p.dim(set[0])}
 	i := 0
 	for _, r := range a.Ranking {
@@ -422,13 +425,17 @@ func (p *page) data(a *diagnostics.Assessment) {
 	for _, s := range a.Settings.Selection {
 		lines = append(lines, Wrap("selection: "+s, p.body())...)
 	}
-	var left [][2]string
+	var left []leftRow
 	for _, r := range a.Data {
 		if !r.Used {
-			left = append(left, [2]string{rowPlace(r.File, r.Row, d.Files) + " left out:", or(r.WhyNot, "no reason given")})
+			left = append(left, leftRow{r.File, r.Row, or(r.WhyNot, "no reason given")})
 		}
 	}
-	lines = append(lines, labelled(left, p.body())...)
+	places := leftOut(left, d.Files)
+	for i := range places {
+		places[i][0] += " left out:"
+	}
+	lines = append(lines, labelled(places, p.body())...)
 	p.section("data", lines...)
 }
 

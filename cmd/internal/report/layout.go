@@ -141,7 +141,10 @@ func count(n int, thing string) string {
 
 // table aligns cells in columns two spaces apart: the columns named in right are
 // set flush right, the last column is not padded.
-func table(rows [][]string, right ...int) []string {
+func table(rows [][]string, right ...int) []string { return spaced(2, rows, right...) }
+
+// spaced is table with columns so many spaces apart.
+func spaced(gap int, rows [][]string, right ...int) []string {
 	var widths []int
 	for _, r := range rows {
 		for j, c := range r {
@@ -160,7 +163,7 @@ func table(rows [][]string, right ...int) []string {
 		var b strings.Builder
 		for j, c := range r {
 			if j > 0 {
-				b.WriteString("  ")
+				b.WriteString(strings.Repeat(" ", gap))
 			}
 			if flush[j] {
 				b.WriteString(padLeft(c, widths[j]))
