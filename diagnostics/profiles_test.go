@@ -101,6 +101,12 @@ func TestDriftingProfiles(t *testing.T) {
 			want := fit.Profile(a.Sample, f, []float64{0, 0, 0, 1}, 0.95)
 			reference.Close(t, "lower", float64(e.Lower), unit*want.Lower, 1e-9)
 			reference.Close(t, "upper", float64(e.Upper), unit*want.Upper, 1e-9)
+			// dH = E_loc - RT at the reference temperature.
+			t0, c := a.Settings.ReferenceTemperature, make([]float64, 4)
+			f.Curve.ELoc(f.TRef, []float64{t0}, f.P, nil, c)
+			h, local := parameter(t, r.Forms, "eyring-drifting-heat-capacity", "dH"), fit.Profile(a.Sample, f, c, 0.95)
+			reference.Close(t, "dH, lower", float64(h.Lower), (local.Lower-models.GasConstant*t0)/1000, 1e-9)
+			reference.Close(t, "dH, upper", float64(h.Upper), (local.Upper-models.GasConstant*t0)/1000, 1e-9)
 			even := math.Abs(float64(e.Upper+e.Lower-2*e.Value)) < 1e-6*float64(e.Upper-e.Lower)
 			if even != (model == fit.Relative) {
 				t.Errorf("%s: %+v", model, e)
