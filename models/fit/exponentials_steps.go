@@ -307,13 +307,12 @@ func (s *steps) at(line *varpro, p [4]float64, out *stepsPoint) {
 	lnW, x, z := line.e.lnW, line.e.col[0], line.z
 	lnW, x = lnW[:len(z)], x[:len(z)]
 	var rss float64
-	var g, m, q [3]float64    // Σ r f x^k {1, s}; here g is that of the line, m of the bend
-	var b0, b1, b2 [3]float64 // Σ (f² - r f) x^k times 1, s, s²
-	var n0, n1, n2 [3]float64 // Σ f² x^k times 1, s, s²
+	var n0, n1, n2 [3]float64 // Σ f² x^k times 1, s, s²; s is the share of step 2 in the time 1/k
+	var b0, b1, b2 [3]float64 // Σ z f x^k likewise
 	for i, zi := range z {
 		xi := x[i]
 		l, t := lnW[i]+p[0]+p[1]*xi, p[2]+p[3]*xi
-		var f, share float64 // share of step 2 in the time 1/k
+		var f, share float64
 		if t > 0 {
 			u := math.Exp(-t)
 			share = 1 / (1 + u)
@@ -323,30 +322,20 @@ func (s *steps) at(line *varpro, p [4]float64, out *stepsPoint) {
 			f = math.Exp(l) / (1 + u)
 			share = u / (1 + u)
 		}
-		r := zi - f
-		rss += r * r
-		rf, ff := r*f, f*f
-		w := ff - rf
-		bend := rf * share * (1 - share)
+		rss += square(zi - f)
 		xx := xi * xi
-		g[0] += rf
-		g[1] += rf * xi
-		m[0] += rf * share
-		m[1] += rf * share * xi
-		q[0] += bend
-		q[1] += bend * xi
-		q[2] += bend * xx
-		w1, f1 := w*share, ff*share
-		w2, f2 := w1*share, f1*share
-		b0[0] += w
-		b0[1] += w * xi
-		b0[2] += w * xx
-		b1[0] += w1
-		b1[1] += w1 * xi
-		b1[2] += w1 * xx
-		b2[0] += w2
-		b2[1] += w2 * xi
-		b2[2] += w2 * xx
+		zf, ff := zi*f, f*f
+		z1, f1 := zf*share, ff*share
+		z2, f2 := z1*share, f1*share
+		b0[0] += zf
+		b0[1] += zf * xi
+		b0[2] += zf * xx
+		b1[0] += z1
+		b1[1] += z1 * xi
+		b1[2] += z1 * xx
+		b2[0] += z2
+		b2[1] += z2 * xi
+		b2[2] += z2 * xx
 		n0[0] += ff
 		n0[1] += ff * xi
 		n0[2] += ff * xx
@@ -357,13 +346,27 @@ func (s *steps) at(line *varpro, p [4]float64, out *stepsPoint) {
 		n2[1] += f2 * xi
 		n2[2] += f2 * xx
 	}
-	if !finite(rss, n0[0]) {
+	// The amplitude that suits the rest, without which a step along the bend ends far off.
+	scale := b0[0] / n0[0]
+	if math.Abs(scale-1) < 0.1 {
+		rss -= square(b0[0]-n0[0]) / n0[0]
+	} else { // where that would be a difference of large numbers
+		rss = line.zz - square(b0[0])/n0[0]
+	}
+	if !(scale > 0) || !finite(rss, n0[0]) {
 		return
 	}
-	// The gradient of ln f is (1, x, -s, -s x); of its second derivatives those of the
-	// bend are -s(1 - s) {1, x, x²}.
 	out.rss = rss
-	out.g = [4]float64{-g[0], -g[1], m[0], m[1]}
+	out.p[0] += math.Log(scale)
+	// The gradient of ln f is (1, x, -s, -s x); of its second derivatives those of the
+	// bend are -s(1 - s) {1, x, x²}. What is summed: r f, and f² - r f.
+	for _, v := range [][2]*[3]float64{{&n0, &b0}, {&n1, &b1}, {&n2, &b2}} {
+		for k := range 3 {
+			ff, zf := square(scale)*v[0][k], scale*v[1][k]
+			v[0][k], v[1][k] = ff, zf-ff
+		}
+	}
+	out.g = [4]float64{-b0[0], -b0[1], b1[0], b1[1]}
 	lower := func(a, b, c *[3]float64) [4][4]float64 {
 		return [4][4]float64{
 			{a[0]},
@@ -373,8 +376,9 @@ func (s *steps) at(line *varpro, p [4]float64, out *stepsPoint) {
 		}
 	}
 	out.gn = lower(&n0, &n1, &n2)
-	for k := range b2 {
-		b2[k] += q[k]
+	for k := range 3 {
+		bend := b1[k] - b2[k]
+		b0[k], b1[k], b2[k] = n0[k]-b0[k], n1[k]-b1[k], n2[k]-b2[k]+bend
 	}
 	out.h = lower(&b0, &b1, &b2)
 }
@@ -401,7 +405,7 @@ func (s *steps) descend(line *varpro, p [4]float64, limit float64) (rss float64,
 			}
 		}
 		if !definite || damping > 0 {
-			damping = max(damping, 1e-3)
+			damping = max(damping, 1e-6)
 			if step, _, definite = solve4(&cur.gn, &cur.gn, &cur.g, damping); !definite {
 				break
 			}
@@ -426,10 +430,10 @@ func (s *steps) descend(line *varpro, p [4]float64, limit float64) (rss float64,
 		}
 		if gain > 0 {
 			*cur = s.trial
-			if damping /= 10; damping < 1e-4 {
+			if damping /= 10; damping < 1e-5 {
 				damping = 0
 			}
-		} else if damping = max(1e-2, damping*10); damping > 1e8 {
+		} else if damping = max(1e-4, damping*30); damping > 1e6 {
 			break
 		}
 	}
