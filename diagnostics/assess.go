@@ -181,7 +181,7 @@ func (a *assessor) fit() error {
 		} else if low := 1 - chi2Tail(a.straight.Measured().RSS, a.straight.Nu); a.straight.Nu > 0 && low < 0.01 {
 			a.find("scatter-too-small", fmt.Sprintf("the points scatter less about the straight line than their stated uncertainties allow (lower tail of χ² %.2g)", low), nil, map[string]Real{"p_value": Real(low)})
 		} else if p < 0.2 {
-			a.find("chi2-low", fmt.Sprintf("χ² p = %.2g: the stated uncertainties may leave out run-to-run scatter", p), nil, map[string]Real{"p_value": Real(p)})
+			a.find("chi2-low", fmt.Sprintf("the points scatter rather more than the stated uncertainties say (χ² p = %.2g), as one right data set in five does; u(k) may leave out scatter from run to run", p), nil, map[string]Real{"p_value": Real(p)})
 		}
 	}
 	return nil

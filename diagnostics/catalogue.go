@@ -196,19 +196,19 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "rate-maximum", Title: "k falls again above an optimum", Severity: Warning,
-		Explanation: "The rate constant rises to a temperature inside the range and falls above it, both by more than the scatter (1 % each, allowing for the choice of the place). No barrier and no sum of barriers does that, nor a prefactor: something is lost or reversed at the hot end, such as an enzyme that unfolds, a catalyst that sinters, or an equilibrium before the slow step. One E for the whole range has no meaning.",
-		Cure:        "assess the part that rises, below the maximum, with --t-max; or take the series curve, --models +reversible-inactivation, which has a maximum",
+		Explanation: "The rate constant rises to a temperature inside the range and falls above it, both by more than the scatter (1 % each, allowing for the choice of the place). No barrier and no sum of barriers does that, nor does a usual prefactor (only a strongly falling one, T^n with n far below 0, has a maximum at all): something is lost or reversed at the hot end, such as an enzyme that unfolds, a catalyst that sinters, or an equilibrium before the slow step. One E for the whole range has no meaning.",
+		Cure:        "take a curve that has a maximum, series read as reversible-inactivation (--models +reversible-inactivation where it is no candidate); or assess the part that rises, well below the maximum, with --t-max",
 		Reference:   "P. J. H. Sharpe, D. W. DeMichele, J. Theor. Biol. 64 (1977) 649",
 	},
 	{
 		Code: "exponent-not-a-prefactor", Title: "n is no prefactor", Severity: Warning,
 		Explanation: "For |n| above about 5 the exponent of T is no property of a prefactor but a measure of curvature.",
-		Cure:        "read ΔE or ΔC_p‡ = (n - 1)R",
+		Cure:        "read it as the change of E, or as ΔC_p‡ = (n − 1)R",
 	},
 	{
 		Code: "band-narrow-for-gas-phase", Title: "prefactor band narrow for the gas phase", Severity: Warning,
-		Explanation: "The unit is that of a gas-phase reaction. Elementary reactions in the gas phase often need an exponent of T between 0 and 3, beyond the default band of 0 to 1.",
-		Cure:        "--prefactor-band 0..3 where theory or precedent allows it",
+		Explanation: "The unit is that of a gas-phase reaction. Elementary reactions in the gas phase often need an exponent of T between 0 and 3, beyond the default band of 0 to 1. The band says what counts as a usual prefactor, and belongs to the question: choose it before looking at n. A band that is widened until n fits makes the verdict worthless.",
+		Cure:        "decide by theory or precedent which band the reaction asks for, before looking at n; where it is 0 to 3: --prefactor-band 0..3",
 	},
 	{
 		Code: "rests-on-stated", Title: "rests on the stated uncertainties", Severity: Warning,
@@ -221,8 +221,8 @@ var catalogue = []Entry{
 		Cure:        "look for scatter that the stated uncertainties leave out, such as that from run to run",
 	},
 	{
-		Code: "chi2-low", Title: "stated uncertainties may be too small", Severity: Warning,
-		Explanation: "The best chi-squared p of a flexible curve is below 0.2: u(k) may leave out scatter from run to run. If it does, the verdict raises more false alarms than it claims.",
+		Code: "chi2-low", Title: "the scatter is near the upper end of what the stated uncertainties allow", Severity: Info,
+		Explanation: "The p-value of chi-squared is below 0.2, but not below 0.05, for the flexible curve that fits best: the points scatter rather more than u(k) says. One in five data sets with right uncertainties does so too. If u(k) does leave out scatter from run to run, the verdict raises more false alarms than it claims.",
 		Cure:        "compare with --error-model scaled",
 	},
 	{

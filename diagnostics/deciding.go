@@ -622,8 +622,8 @@ func (a *assessor) findDeciding() {
 		if i == 0 {
 			instead = fmt.Sprintf(" instead of %s", number(float64(n), digits))
 		}
-		parts = append(parts, fmt.Sprintf("without %s n is %s%s (p = %s) and the verdict %s",
-			a.place(f), number(float64(f.Exponent), digits), instead, pText(float64(f.PValue)), f.State))
+		parts = append(parts, fmt.Sprintf("without %s n is %s%s (%s) and the verdict %s",
+			a.place(f), number(float64(f.Exponent), digits), instead, pIs(float64(f.PValue)), f.State))
 	}
 	message := "the verdict hangs on little: " + strings.Join(parts, "; ")
 	if more := len(found) - most; more > 0 {

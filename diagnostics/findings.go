@@ -111,8 +111,8 @@ func rankingDiffers(curve, why string) Finding {
 func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Finding {
 	low, high := s.Range()
 	where := ""
-	if b.Crossover[0].Known() && b.Crossover[1].Known() {
-		where = fmt.Sprintf(" between %.5g and %.5g K", float64(b.Crossover[0]), float64(b.Crossover[1]))
+	if text := b.CrossoverText(low, high); text != "" {
+		where = " " + text
 	}
 	approximate := ""
 	if s.Model.InK() {
@@ -127,8 +127,8 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Fin
 		rate = "9 %"
 	}
 	fs := []Finding{newFinding("second-barrier",
-		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier%s, p = %s%s; verdict or this finding raises a false alarm in %s of straight sets",
-			where, still, pText(float64(b.PValue)), approximate, rate),
+		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier%s, %s%s; verdict or this finding raises a false alarm in %s of straight sets",
+			where, still, b.PText(), approximate, rate),
 		nil, map[string]Real{"p_value": b.PValue, "crossover_low_k": b.Crossover[0], "crossover_high_k": b.Crossover[1]})}
 	if still != "" {
 		fs[0].Cure = "a smooth bend passes for two paths in this test: only temperatures around the crossover tell them apart"
@@ -137,7 +137,7 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Fin
 		if p > 0.20 {
 			fs[0].Cure = "settle the end of the range first: see second-barrier-rests-on-end"
 			fs = append(fs, newFinding("second-barrier-rests-on-end",
-				fmt.Sprintf("without the point at %.6g K the second-barrier test has p = %s: the finding rests on the point at %.6g K", t, pText(float64(p)), t),
+				fmt.Sprintf("without the point at %.6g K the second-barrier test has %s: the finding rests on the point at %.6g K", t, pIs(float64(p)), t),
 				nil, map[string]Real{"t_k": Real(t), "p_value": p}))
 		}
 	}
@@ -155,6 +155,61 @@ func ranksAbove(ranking []Ranked, a, b models.Curve) bool {
 	}
 	first, second := at(a), at(b)
 	return first >= 0 && second > first
+}
+
+// leastP is the smallest p-value that is printed as it is: near the end of the range
+// of doubles nothing is left of its digits.
+const leastP = 1e-300
+
+// pIs prints "p = " and a p-value with two figures, or what it lies below.
+func pIs(p float64) string {
+	if p < leastP {
+		return "p < 10^-300"
+	}
+	return "p = " + pText(p)
+}
+
+// PText prints the p-value of the test; where no draw of the null reached the
+// statistic, as the bound that it is.
+func (b *SecondBarrier) PText() string {
+	if b.AtFloor() {
+		return "p ≤ " + pText(float64(b.PValue))
+	}
+	return pIs(float64(b.PValue))
+}
+
+// AtFloor reports whether no draw of the null reached the statistic: p can be no
+// smaller with so many draws.
+func (b *SecondBarrier) AtFloor() bool { return float64(b.PValue)*float64(b.Draws+1) < 1.5 }
+
+// AtFloor reports whether p is the smallest that the draws of the test's null can give.
+func (t Adequacy) AtFloor() bool {
+	return t.Test == TestRuns && (t.PValue == 1./(runsDraws+1) || t.PValue == 1./(runsDrawsFew+1))
+}
+
+// CrossoverText says where a second path takes over, in measured temperatures from low
+// to high, K: "between 354 and 600 K". An end of the bracket at an end of the range
+// is that of the data, and is not given. "" where nothing is known.
+func (b *SecondBarrier) CrossoverText(low, high float64) string {
+	from, to := float64(b.Crossover[0]), float64(b.Crossover[1])
+	if !b.Crossover[0].Known() || !b.Crossover[1].Known() {
+		return ""
+	}
+	digits := 0
+	if to-from < 10 {
+		digits = 1
+	}
+	const slack = 1e-6 // the bracket is computed from reciprocals
+	atLow, atHigh := from <= low*(1+slack), to >= high*(1-slack)
+	switch {
+	case atLow && atHigh:
+		return "somewhere in the measured range"
+	case atHigh:
+		return "above " + number(from, digits) + " K"
+	case atLow:
+		return "below " + number(to, digits) + " K"
+	}
+	return "between " + number(from, digits) + " and " + number(to, digits) + " K"
 }
 
 // pText prints a p-value with two figures.
@@ -196,11 +251,11 @@ func manyCandidates(curves []models.Curve) (f Finding, raised bool) {
 
 func bandNarrow(band [2]float64) Finding {
 	return newFinding("band-narrow-for-gas-phase",
-		fmt.Sprintf("gas-phase elementary reactions often need an exponent of T from 0 to 3; the prefactor band is %g to %g", band[0], band[1]), nil, nil)
+		fmt.Sprintf("gas-phase elementary reactions often need an exponent of T from 0 to 3; the prefactor band is %g to %g, and is to be chosen before looking at n", band[0], band[1]), nil, nil)
 }
 
 func restsOnStated(p, scaleFree float64) Finding {
 	return newFinding("rests-on-stated",
-		fmt.Sprintf("p = %s with the stated uncertainties, %s by the scatter of the points alone", pText(p), pText(scaleFree)),
+		fmt.Sprintf("%s with the stated uncertainties, %s by the scatter of the points alone", pIs(p), pText(scaleFree)),
 		nil, map[string]Real{"p_value": Real(p), "p_scale_free": Real(scaleFree)})
 }

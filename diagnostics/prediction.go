@@ -120,13 +120,14 @@ func (a *assessor) firstExtrapolates() {
 	if first.Curve == line || !known || !compared || !(own >= worst) || !(own > worseThan*straight) {
 		return
 	}
-	misses := "by " + significant(float64(own), 2, "")
+	misses := fmt.Sprintf("by %s on average, the straight line by %s (%s)",
+		significant(float64(own), 2, ""), significant(float64(straight), 2, ""), a.prediction.Unit)
 	if own > absurd*straight {
-		misses = fmt.Sprintf("by more than %d times as much as the straight line", absurd)
+		misses = fmt.Sprintf("more than %d times as far as the straight line does", absurd)
 	}
 	a.find("first-extrapolates-worst",
-		fmt.Sprintf("%s ranks first, but of all candidates it predicts the hottest and the coldest third of the temperatures worst from the rest: it misses %s on average, the straight line by %s (%s)",
-			first.Curve, misses, significant(float64(straight), 2, ""), a.prediction.Unit),
+		fmt.Sprintf("%s ranks first, but is the worst of all candidates at extrapolating: fitted without the hottest or without the coldest third of the temperatures, it misses them %s",
+			first.Curve, misses),
 		nil, map[string]Real{"ends": own, "ends_straight": straight})
 }
 

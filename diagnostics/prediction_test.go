@@ -223,11 +223,11 @@ func TestAbsurdMiss(t *testing.T) {
 		ends Real
 		says string
 	}{
-		{20, "misses by 20 on average"},
-		{999, "misses by 1.0×10^3 on average"},
-		{1001, "misses by more than 1000 times as much as the straight line on average"},
-		{3e143, "misses by more than 1000 times as much as the straight line on average"},
-		{Real(math.Inf(1)), "misses by more than 1000 times as much as the straight line on average"},
+		{20, "misses them by 20 on average"},
+		{999, "misses them by 1.0×10^3 on average"},
+		{1001, "misses them more than 1000 times as far as the straight line does"},
+		{3e143, "misses them more than 1000 times as far as the straight line does"},
+		{Real(math.Inf(1)), "misses them more than 1000 times as far as the straight line does"},
 	} {
 		a := &assessor{
 			ranking: []Ranked{{Curve: "parallel", Status: StatusRanked, FamWeight: 1}},

@@ -454,7 +454,11 @@ func (w *publisher) fitted() {
 		w.rate()
 	}
 	if w.in.Scatter != nil {
-		w.note("A and what follows from it are of the mean over the sources; only k has their scatter in its uncertainty")
+		with := "only " + w.symbol + " has"
+		if w.in.Style == StyleEvaluated {
+			with = "only " + w.symbol + ", f, g and Δlg " + w.symbol + " have"
+		}
+		w.note("A and what follows from it are of the mean over the sources; %s their scatter in the uncertainty", with)
 	}
 	w.unresolved()
 	w.recovery()
@@ -756,11 +760,17 @@ func (w *publisher) rate() {
 		w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: Estimate{Real(v), nan, nan, nan, nil}, Text: text + withUnit(unit), Note: note})
 	}
 	_, exp := split(float64(ref.F)-1, 2)
-	single("f"+at, "1", float64(ref.F), fixed(float64(ref.F), 0, min(max(1, 1-exp), mostDigits)), "f = exp u(ln k)")
+	fNote, lg, lgNote := "f = exp u(ln k)", 2*ln.StdError/math.Ln10, "2u"
+	if w.in.Scatter != nil {
+		// u rests on so few sources that 2u is less than 95 %: Δlg k is that of k above.
+		half := (ln.Upper - ln.Lower) / 2
+		lg, lgNote = half/math.Ln10, fmt.Sprintf("the %g %% interval of k", 100*c)
+		fNote += ", " + scatterIncluded + fmt.Sprintf("; that interval is k f^±%s, since u rests on few sources", fixed(half/ln.StdError, 0, 1))
+	}
+	single("f"+at, "1", float64(ref.F), fixed(float64(ref.F), 0, min(max(1, 1-exp), mostDigits)), fNote)
 	single("g", "K", float64(ref.G), twoDigits(float64(ref.G)),
 		fmt.Sprintf("f(T) = f%s exp|g (1/T − 1/%s K)| covers u(ln k) in the measured range", at, kelvinText(t)))
-	lg := 2 * ln.StdError / math.Ln10
-	single("Δlg "+w.symbol+at, "1", lg, "±"+twoDigits(lg), "2u")
+	single("Δlg "+w.symbol+at, "1", lg, "±"+twoDigits(lg), lgNote)
 	de := 2 * e.StdError
 	single("Δ(E/R)", "K", de, "±"+twoDigits(de), fmt.Sprintf("2u, at %s K", kelvinText(t)))
 }

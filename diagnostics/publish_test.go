@@ -513,3 +513,27 @@ func TestPublishLeavesInputsAlone(t *testing.T) {
 		t.Error("the fit was modified")
 	}
 }
+
+// With several sources Δlg k is the interval of k beside it, which holds the scatter
+// between them; without, it is 2u.
+func TestEvaluatedAgreesWithK(t *testing.T) {
+	s := synthetic(t, "s1_straight", fit.Relative)
+	in := publishing(s, fitNamed(t, s, "straight"))
+	in.Style = StyleEvaluated
+	alone := publish(in)
+	f := float64(line(t, alone, "f(298.15 K)", "").Value)
+	reference.Close(t, "one source", float64(line(t, alone, "Δlg k(298.15 K)", "").Value), 2*math.Log10(f), 1e-12)
+
+	in.Scatter = &sourceScatter{variance: 0.01, sources: 3}
+	p := publish(in)
+	k, lg := line(t, p, "k(298.15 K)", ""), line(t, p, "Δlg k(298.15 K)", "")
+	reference.Close(t, "three sources", float64(lg.Value), math.Log10(float64(k.Upper/k.Lower))/2, 1e-12)
+	for _, symbol := range []string{"k(298.15 K)", "f(298.15 K)"} {
+		if l := line(t, p, symbol, ""); !strings.Contains(l.Note, "their scatter included") {
+			t.Errorf("%s: note %q", symbol, l.Note)
+		}
+	}
+	if notes := strings.Join(p.Notes, " · "); !strings.Contains(notes, "only k, f, g and Δlg k have their scatter") {
+		t.Errorf("notes %q", notes)
+	}
+}

@@ -528,12 +528,15 @@ func (sc *sourceScatter) widen(ln fit.Estimate, r *fit.Result, confidence float6
 	return ln
 }
 
+// scatterIncluded is said of uncertainties that hold what lies between the sources.
+const scatterIncluded = "their scatter included"
+
 // note is said beside k at the reference temperature.
 func (sc *sourceScatter) note() string {
 	if sc == nil {
 		return ""
 	}
-	return fmt.Sprintf("mean over %d sources, their scatter included", sc.sources)
+	return fmt.Sprintf("mean over %d sources, %s", sc.sources, scatterIncluded)
 }
 
 // compareSources says what offsets between the sources change.
@@ -659,7 +662,7 @@ func (a *assessor) whatOffsetsChange(b *BetweenSources, many string) string {
 		if len(a.data.sample.Limits) > 0 {
 			test = "likelihood-ratio test"
 		}
-		facts += fmt.Sprintf("; %s of the offsets p = %s", test, pText(p))
+		facts += fmt.Sprintf("; %s of the offsets %s", test, pIs(p))
 	}
 	values := map[string]Real{"n_pooled": pooled.Exponent.Value, "n_offsets": offset.Exponent.Value, "f_p_value": b.FTest.PValue}
 	shrinks := math.Abs(float64(offset.Exponent.Value)) < offsetShrinks*math.Abs(float64(pooled.Exponent.Value))

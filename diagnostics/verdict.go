@@ -271,7 +271,7 @@ func (in *VerdictInput) sentence(state State, recommended string) string {
 		if n.Value < 0 {
 			far, edge, way = n.Lower, in.Rule.Band[0], "down to"
 		}
-		fmt.Fprintf(&s, "Curved: cause open. %s %s. n %s %s is not excluded, so that it may be a prefactor (band %g to %g) or more.",
+		fmt.Fprintf(&s, "Curved: cause open. %s %s. n %s %s is not excluded: a usual prefactor (n from %g to %g) may be the whole cause, or there may be more.",
 			in.changed(), between, way, beyondEdge(far, edge), in.Rule.Band[0], in.Rule.Band[1])
 	case StraightWithin:
 		fmt.Fprintf(&s, "Straight within ± %s: E changes by %s %s. Smooth curvature that would matter is excluded inside this range.",

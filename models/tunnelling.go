@@ -55,7 +55,7 @@ func newTunnelling(info Info, form, formula string, most float64, correction fun
 	info.Params = []Param{
 		{"ln_k_ref", "ln k at the reference temperature", "k"},
 		{"E_ref", "local activation energy at the reference temperature", "J/mol"},
-		{"u2_ref", "square of u = h c nu/(k_B T) at the reference temperature", "1"},
+		{"u2_ref", "u^2, with u = h c nu/(k_B T) at the reference temperature", "1"},
 	}
 	c := Tunnelling{most: most, correction: correction, info: info}
 	c.form = Form{

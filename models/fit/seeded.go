@@ -221,7 +221,7 @@ func (d *seededDesign) edge(q float64) string {
 	if p.Unit != "1" {
 		unit = " " + p.Unit
 	}
-	return fmt.Sprintf("the best fit lies at the bound %.4g%s of its %s", q, unit, p.Name)
+	return fmt.Sprintf("the best fit lies at a limit of this curve: %.4g%s for %s", q, unit, p.Name)
 }
 
 // boxed is the problem of a seeded curve in (a, E, φ), q = middle + half·sin φ, so that

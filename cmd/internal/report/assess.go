@@ -150,7 +150,7 @@ func (p *page) test(a *diagnostics.Assessment) {
 			[]string{"exponent n of T", fmt.Sprintf("%s %s: %s)", signed(c.Exponent.Value, nd), sure, interval(c.Exponent, nd))},
 			[]string{fmt.Sprintf("p for n = 0; for n in %g..%g", band[0], band[1]), probability(c.PValue) + "; " + probability(c.PBand)})
 		if c.PScaleFree.Known() {
-			rows = append(rows, []string{"p without u(k) as stated", probability(c.PScaleFree)})
+			rows = append(rows, []string{"p by the scatter alone", probability(c.PScaleFree)})
 		}
 	}
 	if text := detected(detectable); text != "" {
@@ -158,20 +158,16 @@ func (p *page) test(a *diagnostics.Assessment) {
 	}
 	if pw := c.Pointwise; pw != nil {
 		change := pw.EChange.Times(e.PerKJ)
-		rows = append(rows, []string{"the same on single points", fmt.Sprintf("n = %s, p = %s; change of E %s%s %s: %s)",
-			signed(pw.Exponent.Value, nd), probability(pw.PValue), signed(change.Value, d), energy, sure, interval(change, d))})
+		rows = append(rows, []string{"the same on single points", fmt.Sprintf("n = %s, %s; change of E %s%s %s: %s)",
+			signed(pw.Exponent.Value, nd), pIs(pw.PValue, false), signed(change.Value, d), energy, sure, interval(change, d))})
 	}
 	if c.EChange.Value.Known() {
 		rows = append(rows, runs(a)...)
 	}
 	if s := c.SecondBarrier; s != nil {
-		text := fmt.Sprintf("p = %s", probability(s.PValue))
-		if s.PValue < 0.05 && s.Crossover[0].Known() {
-			digits := 0
-			if s.Crossover[1]-s.Crossover[0] < 10 {
-				digits = 2
-			}
-			text += fmt.Sprintf(", crossover %s to %s\u00a0K", plain(s.Crossover[0], digits), plain(s.Crossover[1], digits))
+		text := pIs(s.PValue, s.AtFloor())
+		if where := s.CrossoverText(float64(a.Dataset.TMin), float64(a.Dataset.TMax)); s.PValue < 0.05 && where != "" {
+			text += ", crossover " + strings.ReplaceAll(where, " K", "\u00a0K")
 		}
 		rows = append(rows, []string{"second barrier, E rising", text},
 			[]string{"false alarm, straight data", falseAlarms(a.Dataset.Temperatures)})
@@ -239,7 +235,7 @@ func runs(a *diagnostics.Assessment) [][]string {
 	for _, r := range a.Ranking {
 		for _, t := range r.Adequacy {
 			if r.Curve == a.Verdict.RecommendedCurve && t.Test == diagnostics.TestRuns {
-				return [][]string{{"runs of residuals", fmt.Sprintf("%s of %d, p = %s (%s)", plain(t.Statistic, 0), r.Points, probability(t.PValue), r.Curve)}}
+				return [][]string{{"runs of residuals", fmt.Sprintf("%s of %d, %s (%s)", plain(t.Statistic, 0), r.Points, pIs(t.PValue, t.AtFloor()), r.Curve)}}
 			}
 		}
 	}

@@ -79,7 +79,22 @@ func probability(p diagnostics.Real) string {
 	if p.Known() && p >= 0.995 {
 		return "1"
 	}
+	if p < 1e-300 { // near the end of the range of doubles
+		return "< 10" + superscript(-300)
+	}
 	return significant(p, 2)
+}
+
+// pIs writes "p = " and a p-value, or the bound that it is.
+func pIs(p diagnostics.Real, floor bool) string {
+	s := probability(p)
+	switch {
+	case floor:
+		return "p ≤ " + s
+	case strings.HasPrefix(s, "<"):
+		return "p " + s
+	}
+	return "p = " + s
 }
 
 // percent writes a share; a share that rounds to nothing is not called 0.

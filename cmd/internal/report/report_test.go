@@ -206,6 +206,9 @@ func TestTestBlock(t *testing.T) {
 	if strings.Contains(out, "• power-prefactor") {
 		t.Errorf("a curve outside the 95 %% set is marked:\n%s", out)
 	}
+	a.Curvature.SecondBarrier.PValue = 1. / 20000
+	a.Curvature.SecondBarrier.Crossover[1] = a.Dataset.TMax
+	holds(t, text(t, a, report.Text{}), "second barrier, E rising p ≤ 5.0×10⁻⁵, crossover above 301 K")
 	a.Dataset.Temperatures = 4
 	a.Curvature.Detectable = est(math.NaN(), math.NaN(), 6.2, 15.4) // ν <= 2: σ is too badly known
 	holds(t, text(t, a, report.Text{}), "seen with 80 % power 6.2 to 15.4 kJ/mol", "false alarm, straight data 9 %")
