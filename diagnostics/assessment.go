@@ -238,6 +238,11 @@ type Verdict struct {
 	Material         *bool  `json:"material"`
 	Sentence         string `json:"sentence"`
 	RecommendedCurve string `json:"recommended_curve"` // "" when none of the candidates fits
+	// EChange is the change of E over the range that the sentence states, by EChangeCurve:
+	// that of the test, or the recommended curve where that describes the data and
+	// power-prefactor does not. Unknown and "" where there is no test.
+	EChange      Estimate `json:"e_change_kj_per_mol"`
+	EChangeCurve string   `json:"e_change_curve"`
 }
 
 // Curvature is the test behind the verdict.

@@ -174,9 +174,14 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "outlier", Title: "a point far from the curve through the others", Severity: Warning,
-		Explanation: "The studentised residual from the power-prefactor curve, with the scatter of the other points, is larger than chance makes the largest of so many (p < 0.05 after Bonferroni). Every straight line with a usual prefactor is such a curve, so that smooth curvature makes no outlier. With errors in k the test is approximate.",
+		Explanation: "The studentised residual is larger than chance makes the largest of so many (p < 0.05 after Bonferroni). It is that from the power-prefactor curve, of which every straight line with a usual prefactor is one, or from the recommended curve where that bends more freely, with the scatter of the other points, or where u(k) is stated with that. Where a curve fails its adequacy test its outliers are named only if it passes without them: a curve that does not fit makes outliers of good points. For curves that are not linear in their parameters and with errors in k the test is approximate.",
 		Cure:        "look the measurement up; leave it out with --leave-out only for a reason other than this number",
 		Reference:   "R. D. Cook, S. Weisberg, Residuals and Influence in Regression (1982), section 2.2",
+	},
+	{
+		Code: "outliers-not-told", Title: "outliers cannot be told from a curve that does not fit", Severity: Info,
+		Explanation: "Some points lie far from the curve, but no candidate describes the data: each fails its adequacy test at 1 %, with any one of those points or without it. Points far from a curve that does not fit say something about the curve, not about the points.",
+		Cure:        "find a curve that fits, or see what the uncertainties leave out; then look for outliers",
 	},
 	{
 		Code: "temperature-error-explains", Title: "a working thermometer could fake this", Severity: Warning,

@@ -32,11 +32,12 @@ const (
 )
 
 // Influence says how much one temperature or point bears on the verdict. Leverage,
-// Cook's distance and the studentised residual are those in power-prefactor, the
-// curve of the exponent test, which holds every straight line with a usual prefactor;
-// they are unknown for what is no entry of that fit by itself.
+// Cook's distance and the studentised residual are those in Curve: power-prefactor,
+// which holds every straight line with a usual prefactor, or the recommended curve where
+// that bends more freely. They are unknown for what is no entry of that fit by itself.
 type Influence struct {
 	LeftOut     string `json:"left_out"` // temperature, mean or point
+	Curve       string `json:"curve"`
 	Rows        []int  `json:"rows"`
 	T           Real   `json:"t_k"`
 	Leverage    Real   `json:"leverage"`
@@ -53,6 +54,7 @@ type Influence struct {
 
 	points   []int   // of the prepared data
 	residual float64 // from the curve
+	fits     bool    // the curve passes its adequacy test, with this entry or without
 }
 
 // omission is the exponent test without something.
@@ -516,20 +518,27 @@ func (a *assessor) leaveOneOut(state State, second bool) []Influence {
 		many++
 	}
 	o.refits = many <= mostRefits
-	measured := a.power.Measured()
+	about := a.scatterFit()
+	measured, curve := about.Measured(), about.Curve.Info().Name
 	entries := fit.Influence(measured, s.Measured())
 	nan := math.NaN()
+	adequate := !fails(a.ranking, about)
+	var pe PureError
+	if !adequate {
+		pe = a.data.pureError()
+	}
 	var out []Influence
 	for l := range a.data.leavings {
 		x := o.without(l)
 		f := Influence{
-			LeftOut: l.kind, T: Real(s.T[l.entries[0]]), Leverage: Real(nan), Cook: Real(nan), Studentised: Real(nan), OutlierP: Real(nan),
+			LeftOut: l.kind, Curve: curve, fits: adequate, T: Real(s.T[l.entries[0]]), Leverage: Real(nan), Cook: Real(nan), Studentised: Real(nan), OutlierP: Real(nan),
 			Exponent: Real(x.n), StdError: Real(x.se), PValue: Real(x.p), State: x.state, Deciding: o.decides(x),
 		}
 		if l.point < 0 && len(l.entries) == 1 && entries != nil {
 			e := entries[l.entries[0]]
 			f.Leverage, f.Cook, f.Studentised = Real(e.Leverage), Real(e.Cook), Real(e.Studentised)
 			f.OutlierP = Real(outlierP(e.Studentised, s.Len(), measured.Nu, s.Model.KnownSigma()))
+			f.fits = adequate || a.fitsWithout(measured, e, pe)
 		}
 		if many > mostListed && !f.Deciding && !(f.OutlierP < outlierLevel) {
 			continue
@@ -546,6 +555,20 @@ func (a *assessor) leaveOneOut(state State, second bool) []Influence {
 		out = append(out, f)
 	}
 	return out
+}
+
+// fitsWithout reports whether a curve that fails its adequacy test passes it without
+// one entry: RSS then falls by the square of the standardised residual, in units of σ̂².
+func (a *assessor) fitsWithout(r *fit.Result, e fit.PointInfluence, pe PureError) bool {
+	left := r.RSS - e.Standardised*e.Standardised*r.Sigma*r.Sigma
+	df, p := pe.Temperatures-1-r.Params()-r.Spent, math.NaN()
+	switch {
+	case pe.DF > 0 && a.data.basis == BasisMeans && df > 0:
+		p = pF(math.Max(0, left)/float64(df)/(pe.SS/float64(pe.DF)), float64(df), float64(pe.DF))
+	case pe.DF == 0 && r.Model.KnownSigma() && r.Nu > 1:
+		p = chi2Tail(math.Max(0, left), r.Nu-1)
+	}
+	return p >= adequacyLevel
 }
 
 // outlierP is the p-value of a studentised residual, with σ̂ from the others, after
@@ -647,23 +670,41 @@ func cmpReal(x, y Real) int {
 	return 0
 }
 
-// findOutliers names entries that lie too far from the curve through the others.
+// findOutliers names entries that lie too far from the curve through the others. Where
+// no curve describes the data, an entry is an outlier only if without it one does.
 func (a *assessor) findOutliers() {
 	if !a.data.sample.Model.KnownSigma() && noScatter(a.data.sample, a.power.RSS) {
 		return
 	}
+	far := 0
 	for _, f := range a.influence {
 		if !(f.OutlierP < outlierLevel) {
+			continue
+		}
+		if !f.fits {
+			far++
 			continue
 		}
 		way := "above"
 		if f.residual < 0 {
 			way = "below"
 		}
-		a.find("outlier", fmt.Sprintf("%s lies %s standard deviations %s the power-prefactor curve, p = %s after Bonferroni for %d entries",
-			a.place(f), number(math.Abs(float64(f.Studentised)), 1), way, pText(float64(f.OutlierP)), a.data.sample.Len()), f.Rows,
+		a.find("outlier", fmt.Sprintf("%s lies %s standard deviations %s the %s curve, %s after Bonferroni for %d entries",
+			a.place(f), number(math.Abs(float64(f.Studentised)), 1), way, f.Curve, pIs(float64(f.OutlierP)), a.data.sample.Len()), f.Rows,
 			map[string]Real{"studentised": f.Studentised, "p_value": f.OutlierP, "t_k": f.T})
 	}
+	if far > 0 {
+		a.find("outliers-not-told", fmt.Sprintf("%s far from the %s curve, but so they would from any curve that does not describe the data, and none does: no outlier is named",
+			lies(far), a.influence[0].Curve), nil, map[string]Real{"entries": Real(far)})
+	}
+}
+
+// lies is "1 entry lies", or "3 entries lie".
+func lies(n int) string {
+	if n == 1 {
+		return "1 entry lies"
+	}
+	return fmt.Sprintf("%d entries lie", n)
 }
 
 // findBorderline says once that the verdict hangs on chance, where p is near 0.05 and

@@ -112,7 +112,9 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Fin
 	low, high := s.Range()
 	where := ""
 	if text := b.CrossoverText(low, high); text != "" {
-		where = " " + text
+		if where = " " + text; text[0] >= '0' && text[0] <= '9' {
+			where = " at" + where
+		}
 	}
 	approximate := ""
 	if s.Model.InK() {
@@ -188,7 +190,7 @@ func (t Adequacy) AtFloor() bool {
 }
 
 // CrossoverText says where a second path takes over, in measured temperatures from low
-// to high, K: "between 354 and 600 K". An end of the bracket at an end of the range
+// to high, K: "354 to 600 K". An end of the bracket at an end of the range
 // is that of the data, and is not given. "" where nothing is known.
 func (b *SecondBarrier) CrossoverText(low, high float64) string {
 	from, to := float64(b.Crossover[0]), float64(b.Crossover[1])
@@ -209,7 +211,7 @@ func (b *SecondBarrier) CrossoverText(low, high float64) string {
 	case atLow:
 		return "below " + number(to, digits) + " K"
 	}
-	return "between " + number(from, digits) + " and " + number(to, digits) + " K"
+	return number(from, digits) + " to " + number(to, digits) + " K"
 }
 
 // pText prints a p-value with two figures.
@@ -221,14 +223,19 @@ func pText(p float64) string {
 }
 
 // notAPrefactor names what to read instead of n: the change of E, and what the
-// recommended curve has.
-func notAPrefactor(n float64, change, recommended string) Finding {
+// recommended curve has. ΔC_p‡ is that of power-prefactor, and means nothing where the
+// data do not follow it.
+func (in *VerdictInput) notAPrefactor(recommended string) Finding {
+	n, change := in.Test.Exponent.Value, "read ΔE = "+in.signedEnergy(in.told.Value)
 	f := newFinding("exponent-not-a-prefactor", fmt.Sprintf("n = %s is no prefactor", number(n, 1)), nil, map[string]Real{"n": Real(n)})
-	switch recommended {
-	case "":
-		f.Cure = "read ΔE = " + change
-	case models.PowerPrefactor{}.Info().Name:
-		f.Cure = "read ΔE = " + change + ", or ΔC_p‡ = (n − 1)R"
+	switch test := (models.PowerPrefactor{}).Info().Name; {
+	case in.toldBy != test:
+		f.Message += ", and the data do not follow " + test + ", whose exponent it is"
+		f.Cure = change + ", which is that of " + in.toldBy
+	case recommended == "":
+		f.Cure = change
+	case recommended == test:
+		f.Cure = change + ", or ΔC_p‡ = (n − 1)R"
 	default: // by it the change of E is another
 		f.Cure = "read the parameters of " + recommended + ", which is recommended, and its E at both ends"
 	}

@@ -41,8 +41,8 @@ func TestCrossoverText(t *testing.T) {
 		from, to float64
 		want     string
 	}{
-		{353.57, 900, "above 354 K"}, {353.57, 900.0000001, "above 354 K"}, {220, 610, "below 610 K"}, {353.57, 600, "between 354 and 600 K"},
-		{353.57, 361.2, "between 353.6 and 361.2 K"}, {220, 900, "somewhere in the measured range"}, {nan, nan, ""},
+		{353.57, 900, "above 354 K"}, {353.57, 899.9999999, "above 354 K"}, {220, 610, "below 610 K"}, {353.57, 600, "354 to 600 K"},
+		{353.57, 361.2, "353.6 to 361.2 K"}, {220, 900, "somewhere in the measured range"}, {nan, nan, ""},
 	} {
 		b := &SecondBarrier{Crossover: [2]Real{Real(c.from), Real(c.to)}}
 		if got := b.CrossoverText(220, 900); got != c.want {
@@ -85,7 +85,7 @@ func TestTextsAreTrue(t *testing.T) {
 	}
 	in := VerdictInput{Sample: sampleOf(t, fit.Relative, []float64{300, 400}, []float64{0, 0}, nil), Rule: Rule{Band: [2]float64{0, 1}}}
 	in.Test.Exponent = fit.Estimate{Value: 2.4, Lower: 0.4, Upper: 4.4}
-	if s := in.sentence(CurvedOpen); !strings.Contains(s, "n up to 4.4 is not excluded: a usual prefactor (n from 0 to 1) may be the whole cause") {
+	if s := in.sentence(CurvedOpen, ""); !strings.Contains(s, "n up to 4.4 is not excluded: a usual prefactor (n from 0 to 1) may be the whole cause") {
 		t.Errorf("%q", s)
 	}
 }

@@ -199,6 +199,16 @@ type VerdictInput struct {
 	// Ends gives E_loc in kJ/mol by a curve at both ends of the range; nil where the
 	// sentence need not say.
 	Ends func(curve string) (low, high float64)
+
+	// FitOf gives the fit of a curve to Sample, nil where there is none; nil states the
+	// change of E of the test whatever fits better.
+	FitOf      func(curve string) *fit.Result
+	Criterion  Criterion // of the ranking
+	Confidence float64   // of the intervals of those fits
+
+	told   fit.Estimate // the change of E that is stated
+	toldBy string       // the curve that it is of
+	rough  bool         // which fails its adequacy test
 }
 
 // Decide gives the verdict and the findings that belong to it.
@@ -207,16 +217,19 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	if !in.Untestable {
 		low, high := ends(in.Test.Exponent)
 		v.State = in.Rule.Judge(low, high, in.SecondBarrier.found())
-		v.Material = Material(in.Test.Change, in.Rule.ToleranceKJ)
-	}
-	if v.State.Curved() {
-		v.ETrend = models.TrendRises.String()
-		if in.Test.Exponent.Value < 0 {
-			v.ETrend = models.TrendFalls.String()
-		}
 	}
 	var why string
 	v.RecommendedCurve, why = Recommend(v.State, in.Ranking)
+	in.tellChange(&v)
+	if !in.Untestable {
+		v.Material = Material(in.told, in.Rule.ToleranceKJ)
+	}
+	if v.State.Curved() {
+		v.ETrend = models.TrendRises.String()
+		if in.told.Value < 0 {
+			v.ETrend = models.TrendFalls.String()
+		}
+	}
 	v.Sentence = in.sentence(v.State, v.RecommendedCurve)
 
 	var fs []Finding
@@ -228,7 +241,7 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	t := in.Test
 	add(v.State.Curved() && in.restsOnStated(), func() Finding { return restsOnStated(t.PValue, t.PScaleFree) })
 	add(v.State.Curved() && math.Abs(t.Exponent.Value) > 5, func() Finding {
-		return notAPrefactor(t.Exponent.Value, in.signedEnergy(t.Change.Value), v.RecommendedCurve)
+		return in.notAPrefactor(v.RecommendedCurve)
 	})
 	add(in.PerMolecule && !in.Untestable && in.Rule.Band[1] < 3, func() Finding { return bandNarrow(in.Rule.Band) })
 	if b := in.SecondBarrier; b.found() {
@@ -261,18 +274,18 @@ func (in *VerdictInput) sentence(state State, recommended string) string {
 		fmt.Fprintf(&s, "Too few temperatures to test: %s, and the test needs at least %s. Whether E changes with T cannot be told from these data.",
 			in.Why, count(in.More, "more temperature"))
 	case BeyondPrefactor:
-		fmt.Fprintf(&s, "Curved: more than one constant barrier with a usual prefactor gives. %s %s%s. "+
-			"This does not by itself prove a second barrier: %s", in.changed(), between, in.byCurve(recommended), causes(n.Value > 0))
+		fmt.Fprintf(&s, "Curved: more than one constant barrier with a usual prefactor gives. %s. "+
+			"This does not by itself prove a second barrier: %s", in.changed(recommended), causes(in.told.Value > 0))
 	case WithinPrefactor:
-		fmt.Fprintf(&s, "Curved: a T-dependent prefactor explains it. %s %s; the exponent n = %s lies inside the prefactor band %g to %g, so that one barrier is enough.",
-			in.changed(), between, interval(n, ""), in.Rule.Band[0], in.Rule.Band[1])
+		fmt.Fprintf(&s, "Curved: a T-dependent prefactor explains it. %s; the exponent n = %s lies inside the prefactor band %g to %g, so that one barrier is enough.",
+			in.changed(recommended), interval(n, ""), in.Rule.Band[0], in.Rule.Band[1])
 	case CurvedOpen:
 		far, edge, way := n.Upper, in.Rule.Band[1], "up to"
 		if n.Value < 0 {
 			far, edge, way = n.Lower, in.Rule.Band[0], "down to"
 		}
-		fmt.Fprintf(&s, "Curved: cause open. %s %s. n %s %s is not excluded: a usual prefactor (n from %g to %g) may be the whole cause, or there may be more.",
-			in.changed(), between, way, beyondEdge(far, edge), in.Rule.Band[0], in.Rule.Band[1])
+		fmt.Fprintf(&s, "Curved: cause open. %s. n %s %s is not excluded: a usual prefactor (n from %g to %g) may be the whole cause, or there may be more.",
+			in.changed(recommended), way, beyondEdge(far, edge), in.Rule.Band[0], in.Rule.Band[1])
 	case StraightWithin:
 		fmt.Fprintf(&s, "Straight within ± %s: E changes by %s %s. Smooth curvature that would matter is excluded inside this range.",
 			in.energy(in.Rule.ToleranceKJ), in.changeRange(change), between)
@@ -310,23 +323,6 @@ func causes(rises bool) string {
 		return "a parallel path, tunnelling, a positive heat capacity of activation or an error of temperature can make E rise with T; steps in series, inactivation or a diffusion limit cannot."
 	}
 	return "steps in series, inactivation, a diffusion limit, a negative heat capacity of activation or an error of temperature can make E fall with T; a parallel path or tunnelling cannot."
-}
-
-// changed says by how much E rises or falls.
-func (in *VerdictInput) changed() string {
-	c := in.Test.Change
-	way := "rises"
-	if c.Value < 0 {
-		way = "falls"
-		c.Value, c.Lower, c.Upper = -c.Value, -c.Upper, -c.Lower
-		switch c.Open {
-		case fit.OpenLower:
-			c.Open = fit.OpenUpper
-		case fit.OpenUpper:
-			c.Open = fit.OpenLower
-		}
-	}
-	return fmt.Sprintf("E %s with T, by %s", way, interval(in.inUnit(c), " "+in.unit()))
 }
 
 // wouldShow says what change these data would have shown.

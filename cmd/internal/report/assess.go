@@ -132,6 +132,9 @@ func (p *page) fit(rows [][]string) []string {
 	return lines
 }
 
+// testCurve is the curve of the exponent test.
+const testCurve = "power-prefactor"
+
 func (p *page) test(a *diagnostics.Assessment) {
 	c := a.Curvature
 	e := diagnostics.UnitOfEnergy(a.Settings.EnergyUnit)
@@ -142,10 +145,19 @@ func (p *page) test(a *diagnostics.Assessment) {
 	sure := fmt.Sprintf("(%s", percent(diagnostics.Real(a.Settings.Confidence)))
 	band := a.Settings.PrefactorBand
 	var rows [][]string
+	byTest := "" // names the curve of the test where another tells the change of E
 	if c.EChange.Value.Known() {
+		size := func(e diagnostics.Estimate) string {
+			d := decimalsOf(e)
+			return fmt.Sprintf("%s%s %s: %s)", signed(e.Value, d), energy, sure, interval(e, d))
+		}
+		told, label := a.Verdict.EChangeCurve, "change of E over the range"
+		if told != "" && told != testCurve {
+			rows = append(rows, []string{"change of E by " + told, size(a.Verdict.EChange.Times(e.PerKJ))})
+			label, byTest = "by the curve of the test", " ("+testCurve+")"
+		}
 		rows = append(rows,
-			[]string{"change of E over the range",
-				fmt.Sprintf("%s%s %s: %s)", signed(change.Value, d), energy, sure, interval(change, d))},
+			[]string{label, size(change)},
 			[]string{"too small to matter below", significant(c.ToleranceKJ*diagnostics.Real(e.PerKJ), 2) + energy},
 			[]string{"exponent n of T", fmt.Sprintf("%s %s: %s)", signed(c.Exponent.Value, nd), sure, interval(c.Exponent, nd))},
 			[]string{fmt.Sprintf("p for n = 0; for n in %g..%g", band[0], band[1]), probability(c.PValue) + "; " + probability(c.PBand)})
@@ -180,6 +192,7 @@ func (p *page) test(a *diagnostics.Assessment) {
 				if r.Lower.Known() || r.Upper.Known() {
 					text = interval(r, d) + energy
 				}
+				text += byTest
 				if iv.Note != "" {
 					text += " (" + iv.Note + ")"
 				}

@@ -206,6 +206,13 @@ func TestTestBlock(t *testing.T) {
 	if strings.Contains(out, "• power-prefactor") {
 		t.Errorf("a curve outside the 95 %% set is marked:\n%s", out)
 	}
+	if strings.Contains(out, "by the curve of the test") {
+		t.Errorf("the change of E is told twice:\n%s", out)
+	}
+	a.Bootstrap.Intervals = append(a.Bootstrap.Intervals, diagnostics.ResampledInterval{Parameter: "change_of_E", Method: "bootstrap-t", Lower: 13, Upper: 21})
+	a.Verdict.EChange, a.Verdict.EChangeCurve = est(22.5, 1.0, 20.5, 24.5), "parallel"
+	holds(t, text(t, a, report.Text{}), "change of E by parallel +22.5 kJ/mol (95 %: +20.5 to +24.5) by the curve of the test +",
+		"kJ/mol (power-prefactor)")
 	a.Curvature.SecondBarrier.PValue = 1. / 20000
 	a.Curvature.SecondBarrier.Crossover[1] = a.Dataset.TMax
 	holds(t, text(t, a, report.Text{}), "second barrier, E rising p ≤ 5.0×10⁻⁵, crossover above 301 K")

@@ -1,0 +1,191 @@
+package diagnostics
+
+import (
+	"math"
+	"slices"
+	"strings"
+	"testing"
+
+	"onebarrier/models"
+	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
+	"onebarrier/models/reference"
+)
+
+// enzyme is an invented enzyme with an optimum: E 52 kJ/mol, unfolding of 320 kJ/mol
+// half done at 327 K, errors of some per cent.
+func enzyme() (t, k []float64) {
+	t = []float64{10, 15, 20, 25, 30, 35, 40, 45, 48, 50, 52.5, 55, 60}
+	for i := range t {
+		t[i] += 273.15
+	}
+	return t, []float64{3.92, 5.76, 8.16, 12.4, 17.5, 24, 31, 43.9, 45.9, 47.5, 44.1, 33, 11.2}
+}
+
+// The reversible inactivation of enzyme in R 4.2.2:
+//
+//	f <- nls(log(k) ~ a - e/R*1e3*(1/t-1/300) - log1p(exp(-h*1e3/R*(1/t-1/th))), ...)
+//
+// with E_loc = e - h/(1 + exp(h/R (1/t - 1/th))) at the ends by coef(f) and vcov(f),
+// interval by qt(0.975, 9).
+func TestChangeIsThatOfTheCurveThatFits(t *testing.T) {
+	temps, k := enzyme()
+	a := mustAssess(t, setOf(temps, k, nil), quick())
+	v := a.Verdict
+	if v.State != BeyondPrefactor || v.RecommendedCurve != "series" || v.EChangeCurve != "series" {
+		t.Fatalf("%+v", v)
+	}
+	for _, c := range []struct {
+		what string
+		got  Real
+		want float64
+	}{
+		{"change", v.EChange.Value, -285.70031483469}, {"its standard error", v.EChange.StdError, 8.32736290472},
+		{"lower", v.EChange.Lower, -304.53811847683}, {"upper", v.EChange.Upper, -266.86251119255},
+	} {
+		reference.Close(t, c.what, float64(c.got), c.want, 2e-6)
+	}
+	for _, says := range []string{"by 286 kJ/mol (267 to 305) between 283.15 and 333.15 K by the curve series", "does not describe the data"} {
+		if !strings.Contains(v.Sentence, says) {
+			t.Errorf("%q does not say %q", v.Sentence, says)
+		}
+	}
+	// What is published at the ends is the same change.
+	var ends []float64
+	for _, l := range a.Publish.Lines {
+		if l.Symbol == "E_a" {
+			ends = append(ends, float64(l.Value))
+		}
+	}
+	if len(ends) != 2 {
+		t.Fatalf("E_a is published %d times", len(ends))
+	}
+	reference.Close(t, "published", ends[1]-ends[0], float64(v.EChange.Value), 1e-9)
+	// The statistic of the test stays as it is.
+	if c := a.Curvature.EChange.Value; !(c > -200 && c < -100) {
+		t.Errorf("the test's change of E is %g kJ/mol", float64(c))
+	}
+	for _, f := range a.Findings {
+		if f.Code == "exponent-not-a-prefactor" && (!strings.Contains(f.Cure, "−286 kJ/mol") || strings.Contains(f.Cure, "ΔC_p")) {
+			t.Errorf("%q, cure %q", f.Message, f.Cure)
+		}
+	}
+}
+
+// The curve of the test tells the change wherever it describes the data about as well,
+// where the other fails, and where the recommended one is a line with a prefactor.
+func TestOutdone(t *testing.T) {
+	temps, k := enzyme()
+	s := sampleOf(t, fit.Relative, temps, logs(k), nil)
+	power, series, line := fitNamed(t, s, "power-prefactor"), fitNamed(t, s, "series"), fitNamed(t, s, "root-prefactor")
+	no, yes := false, true
+	rows := func(p, q *bool) []Ranked {
+		return []Ranked{{Curve: "power-prefactor", Adequate: p}, {Curve: "series", Adequate: q}}
+	}
+	near := *power
+	near.LogLik += (criterionValue(s, power, ByAICc) - criterionValue(s, series, ByAICc) - farBehind + 0.1) / 2
+	for _, c := range []struct {
+		what    string
+		power   *fit.Result
+		other   *fit.Result
+		ranking []Ranked
+		want    bool
+	}{
+		{"far behind", power, series, rows(nil, nil), true},
+		{"nearly as good", &near, series, rows(nil, nil), false},
+		{"nearly as good, but rejected", &near, series, rows(&no, &yes), true},
+		{"both rejected", power, series, rows(&no, &no), false},
+		{"a line with a prefactor", power, line, rows(nil, nil), false},
+		{"nothing recommended", power, nil, rows(nil, nil), false},
+	} {
+		if got := outdone(s, c.power, c.other, c.ranking, ByAICc); got != c.want {
+			t.Errorf("%s: outdone is %t", c.what, got)
+		}
+	}
+}
+
+func logs(k []float64) []float64 {
+	out := make([]float64, len(k))
+	for i, v := range k {
+		out[i] = math.Log(v)
+	}
+	return out
+}
+
+// codesOf are the codes of the findings of an assessment.
+func codesOf(a *Assessment) []string {
+	var codes []string
+	for _, f := range a.Findings {
+		codes = append(codes, f.Code)
+	}
+	return codes
+}
+
+// Points that lie on the curve that fits are no outliers, however far they lie from
+// that of the test. Studentised residuals in R: z <- resid(f)/(sigma sqrt(1 - h)),
+// z sqrt(8/(9 - z²)) with h of the gradient of the nls fit above.
+func TestOutliersAreThoseOfTheCurveThatFits(t *testing.T) {
+	temps, k := enzyme()
+	u := make([]float64, len(k))
+	for i := range u {
+		u[i] = 0.025 * k[i]
+	}
+	stated := quick()
+	stated.ErrorModel = fit.Stated
+	for what, a := range map[string]*Assessment{
+		"relative": mustAssess(t, setOf(temps, k, nil), quick()),
+		"stated":   mustAssess(t, setOf(temps, k, u), stated),
+	} {
+		if slices.Contains(codesOf(a), "outlier") {
+			t.Errorf("%s: outliers among points of the curve", what)
+		}
+		for _, f := range a.Influence {
+			if f.Curve != "series" {
+				t.Fatalf("%s: residuals are those from %q", what, f.Curve)
+			}
+		}
+	}
+	want := []float64{-0.50030805, -0.28026801, -0.95564144, 1.31098863, 1.36262353, 0.75377251, -1.56383556,
+		1.03579684, -1.47358797, -0.61927181, 0.50849817, 0.50313327, -0.97571605}
+	for i, f := range mustAssess(t, setOf(temps, k, nil), quick()).Influence {
+		reference.Close(t, "studentised", float64(f.Studentised), want[i], 1e-4)
+	}
+	// One that does lie far away is still found.
+	k[4] *= 1.4
+	if a := mustAssess(t, setOf(temps, k, nil), quick()); !slices.ContainsFunc(a.Findings, func(f Finding) bool {
+		return f.Code == "outlier" && slices.Equal(f.Rows, []int{6}) && strings.Contains(f.Message, "the series curve")
+	}) {
+		t.Errorf("no outlier in row 6: %v", codesOf(a))
+	}
+}
+
+// Where nothing fits no outlier is named, unless it is the one point that nothing fits.
+func TestOutliersWhereNothingFits(t *testing.T) {
+	temps, k := enzyme()
+	u := make([]float64, len(k))
+	for i := range u {
+		u[i] = 0.025 * k[i]
+	}
+	o := quick()
+	o.ErrorModel = fit.Stated
+	o.Models = []models.Curve{models.Straight(), models.PowerPrefactor{}}
+	a := mustAssess(t, setOf(temps, k, u), o)
+	if codes := codesOf(a); slices.Contains(codes, "outlier") || !slices.Contains(codes, "outliers-not-told") {
+		t.Errorf("a curve that does not fit: %v", codes)
+	}
+	if !strings.Contains(a.Verdict.Sentence, "the size is rough") {
+		t.Errorf("%q", a.Verdict.Sentence)
+	}
+	line := lineSet(12, 290, 340, 60e3, 0.02, 3)
+	for i := range line.Points {
+		p := &line.Points[i]
+		if i == 5 {
+			p.K *= 1.3
+		}
+		p.UK, p.Level = 0.025*p.K, dataset.LevelStandard
+	}
+	a = mustAssess(t, line, o)
+	if codes := codesOf(a); !slices.Contains(codes, "none-adequate") || !slices.Contains(codes, "outlier") || slices.Contains(codes, "outliers-not-told") {
+		t.Errorf("one bad point: %v", codes)
+	}
+}
