@@ -48,6 +48,7 @@ func (a *assessor) beyondTheVerdict() {
 	a.compareSources()
 	a.influences()
 	a.temperatureErrors()
+	a.scatterBelowThermometer()
 	a.runOrder()
 	a.rateMaximum()
 }
@@ -338,7 +339,6 @@ func (a *assessor) test() {
 		a.second.sequential = a.opt.SequentialNull
 		a.secondRun = a.second.Run()
 	}
-	a.scatterBelowThermometer()
 }
 
 // testExponents runs the exponent test, on means and on single points where there

@@ -13,9 +13,9 @@ import (
 // outside the 95 % set of the two.
 var farBehind = 2 * math.Log(19)
 
-// energyChange is E_loc(high) - E_loc(low) of a fit in kJ/mol with its interval by the
+// changeByDelta is E_loc(high) - E_loc(low) of a fit in kJ/mol with its interval by the
 // delta method; low and high in K.
-func energyChange(r *fit.Result, low, high, confidence float64) fit.Estimate {
+func changeByDelta(r *fit.Result, low, high, confidence float64) fit.Estimate {
 	if r.Status != fit.Converged {
 		return fit.Unknown()
 	}
@@ -64,7 +64,7 @@ func (in *VerdictInput) tellChange(v *Verdict) {
 		power, best := in.FitOf(in.toldBy), in.FitOf(v.RecommendedCurve)
 		if outdone(in.Sample, power, best, in.Ranking, in.Criterion) {
 			low, high := in.Sample.Range()
-			in.told, in.toldBy = energyChange(best, low, high, in.Confidence), v.RecommendedCurve
+			in.told, in.toldBy = changeByDelta(best, low, high, in.Confidence), v.RecommendedCurve
 		} else if power != nil && fails(in.Ranking, power) {
 			in.rough = true
 		}

@@ -189,3 +189,20 @@ func TestOutliersWhereNothingFits(t *testing.T) {
 		t.Errorf("one bad point: %v", codes)
 	}
 }
+
+// Points that follow a curve are not compared with a line: u(T) of 2 K makes ln k far
+// more uncertain than the 3 % by which they scatter about the curve, but no more than
+// the bend does about a line.
+func TestScatterAboutTheCurveThatFits(t *testing.T) {
+	temps, k := enzyme()
+	set := setOf(temps, k, nil)
+	for i := range set.Points {
+		set.Points[i].UT = 2
+	}
+	a := mustAssess(t, set, quick())
+	if !slices.ContainsFunc(a.Findings, func(f Finding) bool {
+		return f.Code == "scatter-below-thermometer" && strings.Contains(f.Message, "about series")
+	}) {
+		t.Errorf("not found: %v", codesOf(a))
+	}
+}

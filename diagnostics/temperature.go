@@ -302,10 +302,11 @@ func (a *assessor) workingErrors() map[string]float64 {
 // thermometerLevel is that of scatter-below-thermometer.
 const thermometerLevel = 0.01
 
-// scatterBelowThermometer warns where the points scatter less about the line than u(T)
-// alone makes them. Whatever else scatters, and any curve, only adds to χ² with the
-// variances of u(T): its lower tail is that of the rarest false alarm. The variance of
-// a mean is taken as if its points had independent errors of T, the least that it is.
+// scatterBelowThermometer warns where the points scatter less about the line, or where
+// the verdict is curved about the curve that describes them, than u(T) alone makes them.
+// Whatever else scatters only adds to χ² with the variances of u(T): its lower tail is
+// that of the rarest false alarm. The variance of a mean is taken as if its points had
+// independent errors of T, the least that it is.
 func (a *assessor) scatterBelowThermometer() {
 	s := a.data.sample
 	if a.model != fit.Relative || a.data.temperatureShare == 0 { // under the others σ̂ is no scatter of ln k
@@ -328,38 +329,101 @@ func (a *assessor) scatterBelowThermometer() {
 		return
 	}
 	alone.Nuisance = s.Nuisance
-	line := fit.Fit(alone, models.Straight())
-	if !line.Usable() || line.Nu < 1 {
+	about := a.straight
+	if a.verdict.State.Curved() {
+		about = a.scatterFit()
+	}
+	curve := fit.Fit(alone, about.Curve)
+	if !curve.Usable() || curve.Nu < 1 {
 		return
 	}
-	if low := 1 - chi2Tail(line.RSS, line.Nu); low < thermometerLevel {
-		a.find("scatter-below-thermometer", fmt.Sprintf("u(T) alone makes ln k uncertain by up to %.2g, more than the points scatter (%.2g; lower tail of χ² %.2g)",
-			a.data.temperatureShare, a.straight.Sigma, low), nil,
-			map[string]Real{"from_temperature": Real(a.data.temperatureShare), "scatter": Real(a.straight.Sigma), "p_value": Real(low)})
+	if low := 1 - chi2Tail(curve.RSS, curve.Nu); low < thermometerLevel {
+		a.find("scatter-below-thermometer", fmt.Sprintf("u(T) alone makes ln k uncertain by up to %.2g, more than the points scatter about %s (%.2g; lower tail of χ² %.2g)",
+			a.data.temperatureShare, about.Curve.Info().Name, about.Sigma, low), nil,
+			map[string]Real{"from_temperature": Real(a.data.temperatureShare), "scatter": Real(about.Sigma), "p_value": Real(low)})
 	}
+}
+
+// kelvins prints the size of an error of temperature.
+func kelvins(x Real) string { return significant(math.Abs(float64(x)), 2, "") + " K" }
+
+// reading says what a thermometer with an error δ of the shape reads: recorded T less
+// true T is δ s(T).
+func (e TemperatureError) reading(delta Real) string {
+	way := "high"
+	if delta < 0 {
+		way = "low"
+	}
+	where := map[string]string{
+		shapeOffset: "at every temperature",
+		shapeGain:   "at the hot end and right at the cold one",
+		shapeBow:    "in mid-range and right at both ends",
+	}
+	return kelvins(delta) + " " + way + " " + where[e.Shape]
+}
+
+// ThermometerText says by how much the recorded temperatures would have to be wrong to
+// take the significance from a curved verdict, in the shape that needs the least, and
+// how much of it brings n itself to the band; "" where nothing was looked for.
+func ThermometerText(errors []TemperatureError) string {
+	if len(errors) == 0 {
+		return ""
+	}
+	least := -1
+	for i, e := range errors {
+		if e.Lost.Known() && (least < 0 || math.Abs(float64(e.Lost)) < math.Abs(float64(errors[least].Lost))) {
+			least = i
+		}
+	}
+	if least < 0 {
+		return fmt.Sprintf("significant with any error up to %d K", farthestError)
+	}
+	e := errors[least]
+	where, _, _ := strings.Cut(e.reading(e.Lost), " and ")
+	text := where + " (" + e.Shape + "): no longer significant"
+	if e.ToBand.Known() {
+		text += "; " + kelvins(e.ToBand) + ": n in the band"
+	}
+	return text
+}
+
+// GrantedText says what the thermometer may be wrong by, and who says so; "" where that
+// is the default.
+func GrantedText(errors []TemperatureError, asked string) string {
+	if len(errors) == 0 {
+		return ""
+	}
+	usual := map[string]float64{shapeOffset: DefaultThermometerError.Offset, shapeGain: DefaultThermometerError.Gain, shapeBow: DefaultThermometerError.Bow}
+	var parts []string
+	differs := false
+	for _, e := range errors {
+		parts = append(parts, e.Shape+" "+kelvins(e.Working))
+		differs = differs || float64(e.Working) != usual[e.Shape]
+	}
+	who := "asked for"
+	if asked == defaultThermometerError {
+		if who = "the largest u(T)"; !differs {
+			return ""
+		}
+	}
+	return "granted error of the thermometer: " + strings.Join(parts, ", ") + " (" + who + ")"
 }
 
 // findTemperatureErrors says which shapes explain the verdict, in its sentence too.
 func (a *assessor) findTemperatureErrors() {
-	where := map[string]string{
-		shapeOffset: "the same at every temperature",
-		shapeGain:   "growing from 0 at the cold end to this at the hot end",
-		shapeBow:    "largest in the middle of the range and 0 at both ends",
-	}
-	kelvins := func(x Real) string { return significant(math.Abs(float64(x)), 2, "") + " K" }
 	var parts []string
 	values := map[string]Real{}
 	for _, e := range a.temperature {
 		if !e.Explains {
 			continue
 		}
-		parts = append(parts, fmt.Sprintf("%s (%s), %s; a working thermometer may be wrong by %s", kelvins(e.Lost), e.Shape, where[e.Shape], kelvins(e.Working)))
+		parts = append(parts, fmt.Sprintf("one that reads %s (%s), where a working thermometer may be wrong by %s", e.reading(e.Lost), e.Shape, kelvins(e.Working)))
 		values["delta_"+e.Shape+"_k"] = e.Lost
 		if len(parts) == 1 {
-			a.verdict.Sentence += fmt.Sprintf(" An error of the thermometer of %s, %s, would make this.", kelvins(e.Lost), where[e.Shape])
+			a.verdict.Sentence += fmt.Sprintf(" A thermometer that reads %s would make this.", e.reading(e.Lost))
 		}
 	}
 	if len(parts) > 0 {
-		a.find("temperature-error-explains", "an error of the recorded temperatures would give this verdict: "+strings.Join(parts, ". Or of "), nil, values)
+		a.find("temperature-error-explains", "a wrong thermometer would give this verdict: "+strings.Join(parts, "; or "), nil, values)
 	}
 }

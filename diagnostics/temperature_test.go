@@ -106,12 +106,12 @@ func TestTemperatureErrorExplains(t *testing.T) {
 	set := bowed(0.09, 0.001)
 	a := mustAssess(t, set, quick())
 	if !a.finding("temperature-error-explains") || !a.TemperatureError[2].Explains || a.TemperatureError[0].Explains ||
-		!strings.Contains(a.Verdict.Sentence, "An error of the thermometer of 0.0") {
+		!strings.Contains(a.Verdict.Sentence, "A thermometer that reads 0.0") {
 		t.Errorf("%+v\n%s", a.TemperatureError, a.Verdict.Sentence)
 	}
 	o := quick()
 	o.ThermometerError = "bow=0.01K"
-	if b := mustAssess(t, set, o); b.finding("temperature-error-explains") || strings.Contains(b.Verdict.Sentence, "An error of the thermometer") {
+	if b := mustAssess(t, set, o); b.finding("temperature-error-explains") || strings.Contains(b.Verdict.Sentence, "A thermometer that reads") {
 		t.Error("explained by more than the thermometer may be wrong by")
 	}
 	// u(T) of the data stands in for the default, where every point has one.
@@ -206,5 +206,45 @@ func TestScatterBelowThermometer(t *testing.T) {
 	}
 	if hits := count(8, 310, 4, 1, fit.Absolute, 10); hits > 0 {
 		t.Errorf("errors in k: found in %d of 10", hits)
+	}
+}
+
+// The line says the shape that needs the least, its sign, and both errors; what is
+// granted is told where it is not the default.
+func TestThermometerText(t *testing.T) {
+	nan := Real(math.NaN())
+	offset := TemperatureError{Shape: shapeOffset, Lost: nan, ToBand: nan, Working: 0.5}
+	gain := TemperatureError{Shape: shapeGain, Lost: 3, ToBand: 5, Working: 0.5}
+	bow := TemperatureError{Shape: shapeBow, Lost: -0.41, ToBand: -0.62, Working: 0.1}
+	inBand := TemperatureError{Shape: shapeGain, Lost: 3, ToBand: nan}
+	for _, c := range []struct {
+		errors []TemperatureError
+		want   string
+	}{
+		{[]TemperatureError{offset, gain, bow}, "0.41 K low in mid-range (bow): no longer significant; 0.62 K: n in the band"},
+		{[]TemperatureError{offset, gain}, "3.0 K high at the hot end (gain): no longer significant; 5.0 K: n in the band"},
+		{[]TemperatureError{inBand}, "3.0 K high at the hot end (gain): no longer significant"},
+		{[]TemperatureError{offset}, "significant with any error up to 50 K"},
+		{nil, ""},
+	} {
+		if got := ThermometerText(c.errors); got != c.want {
+			t.Errorf("%q, want %q", got, c.want)
+		}
+	}
+	// A thermometer that reads 0.3 K high in mid-range.
+	if s := ThermometerText(mustAssess(t, bowed(0.3, 0.001), quick()).TemperatureError); !strings.Contains(s, "K high in mid-range (bow)") {
+		t.Errorf("%q", s)
+	}
+	gain.Working, offset.Working = 0.5, 0.5
+	usual := []TemperatureError{offset, gain, bow}
+	if got := GrantedText(usual, defaultThermometerError); got != "" {
+		t.Errorf("the default is told: %q", got)
+	}
+	if got, want := GrantedText(usual, "bow=0.1K"), "granted error of the thermometer: offset 0.50 K, gain 0.50 K, bow 0.10 K (asked for)"; got != want {
+		t.Errorf("%q, want %q", got, want)
+	}
+	usual[2].Working = 0.5
+	if got, want := GrantedText(usual, defaultThermometerError), "granted error of the thermometer: offset 0.50 K, gain 0.50 K, bow 0.50 K (the largest u(T))"; got != want {
+		t.Errorf("%q, want %q", got, want)
 	}
 }

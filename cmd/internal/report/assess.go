@@ -176,6 +176,9 @@ func (p *page) test(a *diagnostics.Assessment) {
 	if c.EChange.Value.Known() {
 		rows = append(rows, runs(a)...)
 	}
+	if text := diagnostics.ThermometerText(a.TemperatureError); text != "" && a.Verdict.State.Curved() {
+		rows = append(rows, []string{"if the thermometer reads", strings.ReplaceAll(text, " K", "\u00a0K")})
+	}
 	if s := c.SecondBarrier; s != nil {
 		text := pIs(s.PValue, s.AtFloor())
 		if where := s.CrossoverText(float64(a.Dataset.TMin), float64(a.Dataset.TMax)); s.PValue < 0.05 && where != "" {
@@ -428,6 +431,9 @@ func (p *page) data(a *diagnostics.Assessment) {
 	}
 	lines := Wrap(facts, p.body())
 	lines = append(lines, Wrap(fmt.Sprintf("error model %s: %s", a.Settings.ErrorModel, a.Settings.ErrorModelWhy), p.body())...)
+	if text := diagnostics.GrantedText(a.TemperatureError, a.Settings.ThermometerError); text != "" {
+		lines = append(lines, Wrap(text, p.body())...)
+	}
 	for _, s := range a.Settings.Assumed {
 		lines = append(lines, Wrap("assumed: "+s, p.body())...)
 	}
