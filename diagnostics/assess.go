@@ -383,7 +383,7 @@ func (a *assessor) decide() {
 		Untestable: a.untestable != "", More: a.more, Why: a.untestable,
 		EnergyUnit: a.opt.EnergyUnit, PerKJ: UnitOfEnergy(a.opt.EnergyUnit).PerKJ,
 		PerMolecule: a.set.Quantity.PerMolecule, Ends: a.endsBy,
-		FitOf:       a.fitOf, Criterion: Criterion(a.opt.Criterion), Confidence: a.opt.Confidence,
+		FitOf: a.fitOf, ChangeOf: a.changeOf, Criterion: Criterion(a.opt.Criterion),
 	})
 	a.findings = append(a.findings, found...)
 	a.quietRepeats()

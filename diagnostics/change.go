@@ -13,28 +13,30 @@ import (
 // outside the 95 % set of the two.
 var farBehind = 2 * math.Log(19)
 
-// changeByDelta is E_loc(high) - E_loc(low) of a fit in kJ/mol with its interval by the
-// delta method; low and high in K.
-func changeByDelta(r *fit.Result, low, high, confidence float64) fit.Estimate {
+// changeOf is E_loc(T_max) - E_loc(T_min) of a fit in kJ/mol, with the interval that is
+// published beside it.
+func (a *assessor) changeOf(r *fit.Result) fit.Estimate {
 	if r.Status != fit.Converged {
 		return fit.Unknown()
 	}
-	p := r.Params()
-	e, jac := make([]float64, 2), make([]float64, 2*p)
-	r.Curve.ELoc(r.TRef, []float64{low, high}, r.P, e, jac)
-	for i := range p {
-		jac[i] = jac[p+i] - jac[i]
+	low, high := a.data.sample.Range()
+	change := energyChange(r, low, high)
+	if p := a.profiler(r); p != nil {
+		return scaled(p.interval(change), 1./1000)
 	}
-	return scaled(r.Interval(jac[:p], e[1]-e[0], confidence), 1./1000)
+	jac := make([]float64, r.Params())
+	value := change(r.P, jac)
+	return scaled(r.Interval(jac, value, a.opt.Confidence), 1./1000)
 }
 
-// outdone reports whether the recommended curve bends otherwise than power-prefactor,
-// the curve of the test, and plainly describes the data better: power-prefactor fails
+// outdone reports whether the recommended curve is none of power-prefactor, the curve of
+// the test, with or without n held, and plainly describes the data better: power-prefactor fails
 // its adequacy test and the recommended curve does not, or its criterion is far behind.
 // The test is exact all the same for n = 0; its size of the change is then that of a
 // curve which the data do not follow.
 func outdone(s *fit.Sample, power, recommended *fit.Result, ranking []Ranked, by Criterion) bool {
-	if power == nil || recommended == nil || recommended.Status != fit.Converged || recommended.Params() <= power.Params() {
+	if power == nil || recommended == nil || recommended.Status != fit.Converged ||
+		recommended.Params() < power.Params() || recommended.Curve.Info().Name == power.Curve.Info().Name {
 		return false
 	}
 	if fails(ranking, power) {
@@ -63,8 +65,7 @@ func (in *VerdictInput) tellChange(v *Verdict) {
 	if in.FitOf != nil && v.State.Curved() {
 		power, best := in.FitOf(in.toldBy), in.FitOf(v.RecommendedCurve)
 		if outdone(in.Sample, power, best, in.Ranking, in.Criterion) {
-			low, high := in.Sample.Range()
-			in.told, in.toldBy = changeByDelta(best, low, high, in.Confidence), v.RecommendedCurve
+			in.told, in.toldBy = in.ChangeOf(best), v.RecommendedCurve
 		} else if power != nil && fails(in.Ranking, power) {
 			in.rough = true
 		}

@@ -90,10 +90,12 @@ func (a *assessor) energiesBetween() []EnergyBetween {
 }
 
 // scatterFit is the fit whose residuals are taken for errors: power-prefactor, the
-// curve of the test, or the recommended curve where that bends more freely.
+// curve of the test, or the recommended curve where that bends more freely or describes
+// the data plainly better.
 func (a *assessor) scatterFit() *fit.Result {
 	r := a.power
-	if f := a.fitOf(a.verdict.RecommendedCurve); f != nil && f.Status == fit.Converged && f.Params() > r.Params() && f.Nu >= 2 {
+	if f := a.fitOf(a.verdict.RecommendedCurve); f != nil && f.Status == fit.Converged && f.Nu >= 2 &&
+		(f.Params() > r.Params() || outdone(a.data.sample, r, f, a.ranking, Criterion(a.opt.Criterion))) {
 		r = f
 	}
 	return r

@@ -202,9 +202,9 @@ type VerdictInput struct {
 
 	// FitOf gives the fit of a curve to Sample, nil where there is none; nil states the
 	// change of E of the test whatever fits better.
-	FitOf      func(curve string) *fit.Result
-	Criterion  Criterion // of the ranking
-	Confidence float64   // of the intervals of those fits
+	FitOf     func(curve string) *fit.Result
+	ChangeOf  func(*fit.Result) fit.Estimate // the change of E over the range, kJ/mol
+	Criterion Criterion                      // of the ranking
 
 	told   fit.Estimate // the change of E that is stated
 	toldBy string       // the curve that it is of
