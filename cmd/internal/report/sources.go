@@ -46,7 +46,7 @@ func (p *page) sources(a *diagnostics.Assessment) {
 		{"as one", way(b.Pooled)},
 		{"an offset each", way(b.Offset)},
 		{"offsets in k", strings.Join(offsets, ", ")},
-		{"F test of them", fmt.Sprintf("%s; they make the variance of n %s times as large", pIs(b.FTest.PValue, false), significant(b.VIF, 2))},
+		{"F test of them", fmt.Sprintf("p = %s; they make the variance of n %s times as large", probability(b.FTest.PValue), significant(b.VIF, 2))},
 	}
 	p.section("sources", p.fit(rows)...)
 }
