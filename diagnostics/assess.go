@@ -247,7 +247,7 @@ func (a *assessor) chooseErrorModel(points []dataset.Point) error {
 
 // fitUnder prepares the data under one error model and fits every curve.
 func (a *assessor) fitUnder(model fit.ErrorModel) error {
-	data, err := prepare(a.set, model, a.opt.Replicates)
+	data, err := prepare(a.sourcesTaken(), model, a.opt.Replicates)
 	if err != nil {
 		return a.problem("not-fittable", err.Error(), "correct the row, or leave it out with --leave-out")
 	}

@@ -168,6 +168,7 @@ type Settings struct {
 	ErrorModel           fit.ErrorModel `json:"error_model"`
 	ErrorModelWhy        string         `json:"error_model_why"` // "asked for", or the rule that chose it
 	Replicates           string         `json:"replicates"`      // "means" or "independent"
+	Sources              string         `json:"sources"`         // "offsets" or "as-one"
 	Criterion            string         `json:"criterion"`
 	PrefactorBand        [2]float64     `json:"prefactor_band"`
 	ToleranceKJ          Real           `json:"tolerance_kj_per_mol"` // as applied

@@ -292,6 +292,11 @@ var catalogue = []Entry{
 		Cure:        "measure at further temperatures there, or leave the source out",
 	},
 	{
+		Code: "sources-as-one", Title: "several sources taken as one", Severity: Info,
+		Explanation: "With --sources as-one no offset is fitted between the sources, and points of all of them at one temperature are repeats. That is right where the sources share flask, thermometer and method, and are names alone. An offset that is there all the same makes curvature, or hides it: on simulated data of three laboratories with one barrier and offsets, taken as one, up to 79 % come out curved, where the verdict beside offsets keeps its 5 %.",
+		Cure:        "compare with the verdict of --sources offsets, the default",
+	},
+	{
 		Code: "pairs-across-sources", Title: "pairs are not drawn across sources", Severity: Alarm,
 		Explanation: "Resampling pairs would draw points across sources, while the offsets are estimated from the points of each.",
 		Cure:        "--scheme residual or --scheme parametric",

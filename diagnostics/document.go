@@ -76,7 +76,7 @@ func (a *assessor) settings() Settings {
 	return Settings{
 		Seed: a.opt.Seed, Resamples: a.opt.Resamples, Scheme: scheme,
 		Confidence: a.opt.Confidence, ErrorModel: a.model, ErrorModelWhy: a.modelWhy,
-		Replicates: a.opt.Replicates, Criterion: a.opt.Criterion, PrefactorBand: a.opt.PrefactorBand,
+		Replicates: a.opt.Replicates, Sources: cmp.Or(a.opt.Sources, SourcesOffsets), Criterion: a.opt.Criterion, PrefactorBand: a.opt.PrefactorBand,
 		ToleranceKJ: Real(a.rule.ToleranceKJ), Tolerance: cmp.Or(a.opt.Tolerance, defaultTolerance), Models: names,
 		ThermometerError:     cmp.Or(a.opt.ThermometerError, defaultThermometerError),
 		ReferenceTemperature: a.referenceTemperature(),

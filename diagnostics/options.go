@@ -16,6 +16,9 @@ type Options struct {
 	ErrorModel fit.ErrorModel
 	// Replicates is ReplicatesMeans (default) or ReplicatesIndependent.
 	Replicates string
+	// Sources is SourcesOffsets (default: each source has an offset of its own in ln k)
+	// or SourcesAsOne.
+	Sources string
 	// PrefactorBand holds the exponents that a usual prefactor gives; default
 	// [0, 1]. It must hold 0.
 	PrefactorBand [2]float64
@@ -71,6 +74,7 @@ type Options struct {
 func DefaultOptions() Options {
 	return Options{
 		Replicates:    ReplicatesMeans,
+		Sources:       SourcesOffsets,
 		PrefactorBand: [2]float64{0, 1},
 		Confidence:    0.95,
 		Criterion:     "aicc",
@@ -87,6 +91,7 @@ var (
 	EnergyUnits    = []string{"kJ/mol", "kcal/mol", "eV", "K", "cm^-1"}
 	PublishStyles  = []string{"molar", "kelvin", "evaluated", "electronvolt"}
 	ReplicatesWays = []string{ReplicatesMeans, ReplicatesIndependent}
+	SourcesWays    = []string{SourcesOffsets, SourcesAsOne}
 )
 
 // Check refuses settings that mean nothing, before any data are read.
@@ -123,6 +128,7 @@ func (o *Options) Check() error {
 		oneOf("scheme", o.Scheme, schemes),
 		oneOf("error model", string(o.ErrorModel), names),
 		oneOf("replicates", o.Replicates, ReplicatesWays),
+		oneOf("sources", o.Sources, SourcesWays),
 		oneOf("criterion", o.Criterion, Criteria),
 		oneOf("energy unit", o.EnergyUnit, EnergyUnits),
 		oneOf("publish style", o.PublishStyle, PublishStyles),

@@ -19,6 +19,34 @@ const (
 	partlyVIF     = 2
 )
 
+// The ways to take several sources.
+const (
+	SourcesOffsets = "offsets" // a constant offset in ln k for each
+	SourcesAsOne   = "as-one"  // no difference between them, on the user's word
+)
+
+// sourcesTaken is the set as it is fitted: without its sources where they are to be
+// taken as one.
+func (a *assessor) sourcesTaken() *dataset.Set {
+	if a.opt.Sources != SourcesAsOne {
+		return a.set
+	}
+	set := *a.set
+	set.Points = slices.Clone(set.Points)
+	for i := range set.Points {
+		set.Points[i].Source = ""
+	}
+	return &set
+}
+
+// findAsOne records that several sources were taken as one on request.
+func (a *assessor) findAsOne() {
+	if names := sources(a.set.Points); a.opt.Sources == SourcesAsOne && len(names) > 1 {
+		a.find("sources-as-one", fmt.Sprintf("%d sources are taken as one on request: what lies between them counts as scatter, or as curvature", len(names)), nil,
+			map[string]Real{"sources": Real(len(names))})
+	}
+}
+
 // BetweenSources compares the sources of a data set, each with a constant offset in
 // ln k of its own, with the same data taken as one.
 type BetweenSources struct {
@@ -543,6 +571,7 @@ func (sc *sourceScatter) note() string {
 func (a *assessor) compareSources() {
 	split := a.data.sources
 	if split == nil {
+		a.findAsOne()
 		return
 	}
 	b := &BetweenSources{Confounded: split.confounded != "", Why: split.confounded,

@@ -129,6 +129,32 @@ func TestOnePointSourceAgainstR(t *testing.T) {
 	}
 }
 
+// Taken as one on request, the sources are what R's lm without offsets takes them for
+// (TestOnePointSourceAgainstR), and the result says so.
+func TestSourcesAsOne(t *testing.T) {
+	set := fourSources()
+	o := quick()
+	o.Sources, o.Replicates = SourcesAsOne, ReplicatesIndependent // R: every point by itself
+	a := mustAssess(t, set, o)
+	reference.Close(t, "n pooled", float64(a.Curvature.Exponent.Value), 7.19939209560241, 1e-9)
+	reference.Close(t, "u(n) pooled", float64(a.Curvature.Exponent.StdError), 11.425305042925, 1e-9)
+	if a.BetweenSources != nil || !a.finding("sources-as-one") || a.Settings.Sources != SourcesAsOne {
+		t.Errorf("%+v, %+v", a.BetweenSources, a.Settings)
+	}
+	if len(a.Dataset.Sources) != 4 || a.Data[0].Source == "" || set.Points[0].Source == "" {
+		t.Error("the names of the sources are lost")
+	}
+	if a := mustAssess(t, set, quick()); a.finding("sources-as-one") || a.BetweenSources == nil || a.Settings.Sources != SourcesOffsets {
+		t.Error("sources are taken as one unasked")
+	}
+	for i := range set.Points {
+		set.Points[i].Source = "A"
+	}
+	if a := mustAssess(t, set, o); a.finding("sources-as-one") {
+		t.Error("one source is taken as one")
+	}
+}
+
 // The same with known uncertainties u = 0.03 k (1, 1.5, 0.7, 1, …), weights (k/u)²:
 // deviance(p) - deviance(o) and its pchisq, se/sigma of log(T).
 func TestSourcesStatedAgainstR(t *testing.T) {

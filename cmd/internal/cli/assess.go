@@ -107,6 +107,7 @@ func addJudging(cmd *cobra.Command, o *assessOptions) {
 	d := &o.assess
 	oneOf(cmd, &o.errorModel, "error-model", "what is assumed about the errors; by default the stated uncertainties decide", words(fit.ErrorModels)...)
 	oneOf(cmd, &d.Replicates, "replicates", "how points at one temperature count", diagnostics.ReplicatesWays...)
+	oneOf(cmd, &d.Sources, "sources", "each source with an offset of its own in ln k, or all as one", diagnostics.SourcesWays...)
 	f.Var(band{&d.PrefactorBand}, "prefactor-band", "exponents of T that a usual prefactor gives")
 	f.StringVar(&d.Tolerance, "tolerance", d.Tolerance, "`change` of E too small to matter, such as 0.5kJ/mol or 5% (default 5%, at least 0.5kJ/mol)")
 	f.StringVar(&d.ThermometerError, "thermometer-error", d.ThermometerError, "what the thermometer may be wrong by, by `shape` (default u(T), or offset=0.5K,gain=0.5K,bow=0.1K)")
@@ -121,7 +122,7 @@ func addJudging(cmd *cobra.Command, o *assessOptions) {
 	f.Var(temperature{&d.ReferenceTemperature}, "reference-temperature", "at which k is published (default 298.15K where measured, else near the middle of the data)")
 	oneOf(cmd, &d.EnergyUnit, "energy-unit", "of all energies; given, it decides the form of what is published too, unless --publish does", diagnostics.EnergyUnits...)
 	oneOf(cmd, &d.PublishStyle, "publish", "form of what is to be published; by default the unit of k decides", diagnostics.PublishStyles...)
-	group(f, "how the data are judged", "error-model", "replicates", "prefactor-band", "tolerance", "thermometer-error", "confidence", "criterion", "models")
+	group(f, "how the data are judged", "error-model", "replicates", "sources", "prefactor-band", "tolerance", "thermometer-error", "confidence", "criterion", "models")
 	group(f, "bootstrap", "resamples", "scheme", "intervals", "seed", "workers")
 	group(f, "what is published", "reference-temperature", "energy-unit", "publish")
 	names := models.Names()

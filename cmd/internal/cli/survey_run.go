@@ -123,8 +123,8 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 	if err != nil {
 		return err
 	}
+	o.assess.asked(cmd)
 	judge := o.assess.assess
-	judge.KeepResamples = cmd.Flags().Changed("resamples")
 	judge.Selection, judge.Version = selection(cmd), version()
 	o.assess.read.AllowNonPositiveK = judge.ErrorModel.InK()
 	opt := survey.Options{
