@@ -347,3 +347,26 @@ func TestNumber(t *testing.T) {
 		}
 	}
 }
+
+// Why the ranking's first is not recommended: relatives of one family within Δ < 2 are not
+// told apart; nothing else is excused by a small Δ.
+func TestWhyNotTheFirst(t *testing.T) {
+	straight := Ranked{Curve: "straight", Family: "fixed-exponent", Status: StatusRanked, Params: 2}
+	linear := Ranked{Curve: "linear-prefactor", Family: "fixed-exponent", Status: StatusRanked, Params: 2}
+	power := Ranked{Curve: "power-prefactor", Family: "power", Status: StatusRanked, Params: 3}
+	for _, c := range []struct {
+		first Ranked
+		delta Real
+		want  string
+	}{
+		{linear, 0.5, "linear-prefactor ranks first by Δ = 0.50, too little to tell the two apart"},
+		{linear, 2.5, "no test finds curvature"},
+		{power, 0.5, "no test finds curvature"},
+	} {
+		second := straight
+		second.Delta = c.delta
+		if curve, why := Recommend(Unresolved, []Ranked{c.first, second}); curve != "straight" || !strings.Contains(why, c.want) {
+			t.Errorf("%s first, Δ = %g: %s is recommended, %s", c.first.Curve, c.delta, curve, why)
+		}
+	}
+}
