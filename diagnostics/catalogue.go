@@ -201,8 +201,8 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "rate-maximum", Title: "k falls again above an optimum", Severity: Warning,
-		Explanation: "The rate constant rises to a temperature inside the range and falls above it, both by more than the scatter (1 % each, allowing for the choice of the place). No barrier and no sum of barriers does that, nor does a usual prefactor (only a strongly falling one, T^n with n far below 0, has a maximum at all): something is lost or reversed at the hot end, such as an enzyme that unfolds, a catalyst that sinters, or an equilibrium before the slow step. One E for the whole range has no meaning.",
-		Cure:        "take a curve that has a maximum, series read as reversible-inactivation (--models +reversible-inactivation where it is no candidate); or assess the part that rises, well below the maximum, with --t-max",
+		Explanation: "The rate constant rises to a temperature inside the range and falls above it, both by more than the scatter (1 % each, allowing for the choice of the place). No barrier and no sum of barriers does that, nor does a usual prefactor (only a strongly falling one, T^n with n far below 0, has a maximum at all): something is lost or reversed at the hot end, such as an enzyme that unfolds, a catalyst that sinters, or an equilibrium before the slow step. One E for the whole range has no meaning. That of the cold part has, where k is below half of its largest value: closer to the maximum the loss has begun, and E_loc falls towards 0.",
+		Cure:        "take a curve that has a maximum, series read as reversible-inactivation (--models +reversible-inactivation where it is no candidate); or assess the part that rises, up to half of the largest k, with --t-max",
 		Reference:   "P. J. H. Sharpe, D. W. DeMichele, J. Theor. Biol. 64 (1977) 649",
 	},
 	{

@@ -69,14 +69,16 @@ func (a *assessor) rateMaximum() {
 	f := newFinding("rate-maximum", fmt.Sprintf("k rises up to %s K and falls above it: at %s K it is %s times what it is at %s K (p = %s)",
 		where, kelvinText(t[last]), significant(ratio, 2, ""), where, pText(p)), nil,
 		map[string]Real{"t_k": Real(t[top]), "ratio": Real(ratio), "p_value": Real(p)})
-	f.Cure = a.cureOfMaximum(t, top)
+	f.Cure = a.cureOfMaximum(t, y, top)
 	a.findings = append(a.findings, f)
 }
 
-// cureOfMaximum says how to go on, with flags that can be typed as they stand. The
-// temperature of the largest k, t[top], is no part of what rises by a barrier: E_loc is
-// nearly 0 there.
-func (a *assessor) cureOfMaximum(t []float64, top int) string {
+// cureOfMaximum says how to go on, with flags that can be typed as they stand: first the
+// curve that has a maximum, then the part that rises. Near the largest k, at t[top],
+// E_loc is on its way to 0. Where k is below half of it, little is lost: of a reversible
+// inactivation with ΔH_d = 3 E less than 2 % is inactive there, with 6 E 0.1 %, so that
+// E_loc is E to within a few per cent.
+func (a *assessor) cureOfMaximum(t, y []float64, top int) string {
 	var cures []string
 	form, curve := "reversible-inactivation", models.Series{}.Info().Name
 	r := a.fitOf(curve)
@@ -88,8 +90,16 @@ func (a *assessor) cureOfMaximum(t []float64, top int) string {
 	case r.Usable() && r.Cov != nil:
 		cures = append(cures, "read the series curve in its form "+form+", which has a maximum (--json)")
 	}
-	if top >= minTemperatures {
-		cures = append(cures, fmt.Sprintf("assess the part that rises: --t-max %sK", numberBetween(t[top-1], t[top])))
+	half := y[top] - math.Ln2
+	if a.data.sample.Model.InK() {
+		half = y[top] / 2
+	}
+	cut := 0 // temperatures that are kept
+	for cut < top && y[cut] <= half {
+		cut++
+	}
+	if cut >= minTemperatures {
+		cures = append(cures, fmt.Sprintf("assess the part that rises freely, up to half of the largest k: --t-max %sK", numberBetween(t[cut-1], t[cut])))
 	}
 	if len(cures) == 0 {
 		return "measure more temperatures on both sides of the maximum"

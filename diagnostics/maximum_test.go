@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"slices"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -46,8 +47,48 @@ func TestRateMaximumSays(t *testing.T) {
 	if i < 0 {
 		t.Fatal("no maximum found")
 	}
-	if f := a.Findings[i]; !strings.Contains(f.Cure, "--t-max 312K") || !strings.Contains(f.Message, "up to 315 K") || f.Values["t_k"] != 315 {
+	if f := a.Findings[i]; strings.Contains(f.Cure, "--t-max") || !strings.Contains(f.Message, "up to 315 K") || f.Values["t_k"] != 315 {
 		t.Errorf("%+v", f)
+	}
+}
+
+// What is left at half of the largest k or less has the barrier of the active enzyme, no
+// maximum, and no curvature but by chance; up to the maximum itself it is curved.
+func TestCutBelowTheMaximum(t *testing.T) {
+	const sets = 20
+	curved, off := 0, 0
+	for i := range sets {
+		set := optimum(20, 326, 0.01, rand.New(rand.NewPCG(uint64(i), 7)))
+		a := mustAssess(t, set, quick())
+		at := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "rate-maximum" })
+		if at < 0 {
+			continue
+		}
+		cure := a.Findings[at].Cure
+		first, flag, ok := strings.Cut(cure, "--t-max ")
+		if !ok || !strings.Contains(first, "reversible-inactivation") {
+			t.Fatalf("set %d: cure %q", i, cure)
+		}
+		high, err := strconv.ParseFloat(strings.TrimSuffix(flag, "K"), 64)
+		if err != nil {
+			t.Fatal(err)
+		}
+		cut := *set
+		cut.Points = slices.DeleteFunc(slices.Clone(set.Points), func(p dataset.Point) bool { return p.T > high })
+		b := mustAssess(t, &cut, quick())
+		if slices.Contains(codesOf(b), "rate-maximum") {
+			t.Errorf("set %d: a maximum below %g K", i, high)
+		}
+		if b.Verdict.State.Curved() {
+			curved++
+		}
+		line := b.Fits["straight"]
+		if math.Abs(line.P[1]-50e3) > 2.5*math.Sqrt(line.Cov[3]) {
+			off++
+		}
+	}
+	if curved > 3 || off > 2 { // of 20 at 5 %, and at 1 to 5 % by Student's t
+		t.Errorf("%d of %d sets are curved, in %d E is not that of the active enzyme", curved, sets, off)
 	}
 }
 
