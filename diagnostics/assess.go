@@ -410,7 +410,6 @@ func (a *assessor) resample(ctx context.Context) error {
 		a.findings = append(a.findings, f)
 		return nil
 	}
-	a.fewerWithLimits()
 	if a.limitResamples(); a.opt.Resamples == 0 {
 		return nil
 	}

@@ -362,7 +362,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "fewer-resamples", Title: "fewer resamples than usual", Severity: Info,
-		Explanation: "A resample costs time in proportion to the number of temperatures. Above 1000 temperatures only 999 resamples are drawn unless --resamples says otherwise, above 10,000 none. The verdict and the reported intervals do not depend on them; the repeat shares are coarser or missing.",
+		Explanation: "What a resample costs goes with the number of temperatures, and is far more with limits, with errors in k and with curves of a bounded shape. Where the usual number would take more than about 3 s of one core, by a formula of these counts, so many are drawn as take no longer unless --resamples says otherwise; above 10,000 temperatures none. The verdict and the reported intervals do not depend on them; the repeat shares are coarser or missing.",
 		Cure:        "--resamples 9999 for all of them, however long it takes, or average neighbouring temperatures",
 	},
 	{

@@ -12,10 +12,6 @@ import (
 	"gonum.org/v1/gonum/floats"
 )
 
-// limitedResamples is the most resamples that a set with limits gets unasked: each
-// takes some tenths of a millisecond, a thousand times what others take.
-const limitedResamples = 999
-
 // limitLevel is the probability of a limit below which it contradicts the points.
 const limitLevel = 0.01
 
@@ -217,16 +213,4 @@ func (a *assessor) limitProbability(l fit.Limit) (p float64, ok bool) {
 		return tail, true
 	}
 	return math.NaN(), false
-}
-
-// fewerWithLimits lowers the number of resamples of a set with limits, unless it was
-// asked for.
-func (a *assessor) fewerWithLimits() {
-	if len(a.data.limits) == 0 || a.opt.KeepResamples || a.opt.Resamples <= limitedResamples {
-		return
-	}
-	asked := a.opt.Resamples
-	a.opt.Resamples = limitedResamples
-	a.find("fewer-resamples", fmt.Sprintf("limits make each resample slow: only %d resamples, not %d", limitedResamples, asked), nil,
-		map[string]Real{"resamples": Real(limitedResamples), "default": Real(asked)})
 }

@@ -9,31 +9,53 @@ import (
 	"testing"
 	"unsafe"
 
+	"onebarrier/bootstrap"
 	"onebarrier/models"
 	"onebarrier/models/dataset"
+	"onebarrier/models/fit"
 )
 
-// Many temperatures get fewer resamples, or none, and a finding says so; what was
-// asked for is kept.
-func TestManyTemperaturesAreResampledLess(t *testing.T) {
+// What takes long gets fewer resamples, or none, and a finding says so; what was asked
+// for is kept. The costs are those of resampleCost, the budget 3 s of one core.
+func TestDearResamplesAreFewer(t *testing.T) {
 	for _, c := range []struct {
-		n, asked, want int
-		keep, found    bool
+		n, limits   int
+		model       fit.ErrorModel
+		scheme      bootstrap.Scheme
+		asked, want int
+		keep, found bool
 	}{
-		{FullyResampled, 9999, 9999, false, false},
-		{FullyResampled + 1, 9999, PartResamples, false, true},
-		{FullyResampled + 1, 199, 199, false, false},
-		{FullyResampled + 1, 9999, 9999, true, false},
-		{PartlyResampled + 1, 9999, 0, false, true},
-		{PartlyResampled + 1, 0, 0, false, false},
+		{n: 241, asked: 9999, want: 9999}, // 0.30 ms
+		{n: 300, asked: 9999, want: 4999, found: true},
+		{n: 300, asked: 999, want: 999},
+		{n: 300, asked: 9999, want: 9999, keep: true},
+		{n: 1001, asked: 9999, want: 1999, found: true}, // 1.2 ms
+		{n: 1001, asked: 199, want: 199},
+		{n: PartlyResampled, asked: 9999, want: 199, found: true}, // 12 ms
+		{n: PartlyResampled + 1, asked: 9999, want: 0, found: true},
+		{n: PartlyResampled + 1, asked: 0, want: 0},
+		{n: 12, model: fit.Absolute, asked: 9999, want: 9999},               // 0.05 ms
+		{n: 300, model: fit.Absolute, asked: 9999, want: 1999, found: true}, // 0.7 ms
+		{n: 300, model: fit.Absolute, scheme: bootstrap.Pairs, asked: 9999, want: 999, found: true},
+		{n: 8, limits: 4, asked: 9999, want: 4999, found: true},                       // 0.6 ms
+		{n: 8, limits: 4, model: fit.Absolute, asked: 9999, want: 399, found: true},   // 4.1 ms
+		{n: 170, limits: 30, model: fit.Absolute, asked: 9999, want: 99, found: true}, // 28 ms
+		{n: 970, limits: 30, model: fit.Absolute, asked: 9999, want: 0, found: true},
 	} {
+		if c.model == "" {
+			c.model = fit.Relative
+		}
 		o := DefaultOptions()
-		o.Resamples, o.KeepResamples = c.asked, c.keep
-		a, err := newAssessor(lineSet(c.n, 280, 340, 60000, 0.03, 1), o)
+		o.Resamples, o.KeepResamples, o.Scheme = c.asked, c.keep, string(c.scheme)
+		set := lineSet(c.n+c.limits, 280, 340, 60000, 0.03, 1)
+		for i := range c.limits {
+			set.Points[i].Limit, set.Points[i].Used = "<", false
+		}
+		a, err := newAssessor(set, o)
 		if err != nil {
 			t.Fatal(err)
 		}
-		if a.data, err = prepare(a.set, "relative", ReplicatesMeans); err != nil {
+		if a.data, err = prepare(a.set, c.model, ReplicatesMeans); err != nil {
 			t.Fatal(err)
 		}
 		a.limitResamples()
@@ -41,6 +63,18 @@ func TestManyTemperaturesAreResampledLess(t *testing.T) {
 		if a.opt.Resamples != c.want || found != c.found {
 			t.Errorf("%+v: %d resamples, found %v", c, a.opt.Resamples, found)
 		}
+	}
+}
+
+// Curves that are searched over a bounded shape make resamples dearer.
+func TestSeededCurvesCostResamples(t *testing.T) {
+	o := DefaultOptions()
+	o.Models = append(models.Default(), models.Vogel{})
+	o.ErrorModel = fit.Absolute
+	o.Resamples = 9999
+	a := mustAssess(t, lineSet(40, 280, 340, 60000, 0.03, 1), o)
+	if !a.finding("fewer-resamples") || a.Settings.Resamples != 4999 { // 0.51 ms
+		t.Errorf("%d resamples", a.Settings.Resamples)
 	}
 }
 

@@ -35,8 +35,8 @@ type Options struct {
 	Criterion string
 	// Models are the candidates; nil takes models.Default().
 	Models []models.Curve
-	// Resamples of the bootstrap, 0 for none; default 9999. Where there are more
-	// temperatures than FullyResampled it is lowered unless KeepResamples is set.
+	// Resamples of the bootstrap, 0 for none; default 9999. Where they would take long
+	// (more than 3 s of one core, as estimated) it is lowered unless KeepResamples is set.
 	Resamples     int
 	KeepResamples bool
 	// Scheme of the bootstrap; "" chooses by error model.
