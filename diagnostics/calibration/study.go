@@ -470,7 +470,7 @@ func (s *Study) published() {
 
 func (s *Study) shares() {
 	s.section("Repeat shares on straight data",
-		fmt.Sprintf("One barrier, error model relative, the whole of Assess with %d resamples; mean over data sets, in per cent, with its standard error.", shareResamples))
+		fmt.Sprintf("One barrier, error model relative, the whole of Assess with %d resamples; mean over the data sets that have the share, in per cent, with its standard error.", shareResamples))
 	c := Cell{Range: Narrow, Shares: true}
 	for _, v := range []struct {
 		name string
