@@ -68,6 +68,9 @@ func TestTabsBeforeBlanks(t *testing.T) {
 		{"a", "a caption here\nT/K\tk/s^-1\tnote\n280\t1\tx\n290\t2\ty\n", '\t'},
 		{"a", "T/K\tk/s^-1\tnote\n280\t1\tx\n290\t2\ty\n* a note\n", '\t'},
 		{"a.tsv", "T/K\tk/s^-1\tnote\n280 1\n290\t2\ty\n", '\t'},
+		// Six lines of captions, and what splits the table is seen below them.
+		{"a.tsv", "Table 3\nrates in\nwater and in\nacid\nby A. Nobody\nof Nowhere at all\nT/K\tk/s^-1\n280\t1\n", '\t'},
+		{"a", "Table 3\nrates in\nwater and in\nacid\nby A. Nobody\nof Nowhere at all\nT/K\tk/s^-1\n280\t1\n", ' '},
 		{"a.tsv", "T/K k/s^-1\n280 1\n290 2\n", ' '},
 		{"a.tsv", "T/K\tk/s^-1\n280 \t 1\n290\t\t2\n300  3\n", ' '},
 		{"a", "T/K\t  k/s^-1\n280 \t 1\n290\t\t2\n300  3\n", ' '},
