@@ -83,9 +83,14 @@ type assessor struct {
 	verdict       Verdict
 	between       *BetweenSources
 	influence     []Influence
-	temperature   []TemperatureError
-	order         *RunOrder
-	tEff          float64
+	// influenceRange is nil where there is no test to repeat.
+	influenceRange *InfluenceRange
+	refits         int // fits of their own that leaving out took
+	checks         int // fits of curves that are no candidates, for contradicted
+	dearFits       int // fits under the other error model
+	temperature    []TemperatureError
+	order          *RunOrder
+	tEff           float64
 
 	prediction *Prediction
 	residuals  *ResidualChecks
@@ -181,7 +186,7 @@ func (a *assessor) fit() error {
 			}
 		} else if low := 1 - chi2Tail(a.straight.Measured().RSS, a.straight.Nu); a.straight.Nu > 0 && low < 0.01 {
 			a.find("scatter-too-small", fmt.Sprintf("the points scatter less about the straight line than their stated uncertainties allow (lower tail of χ² %.2g)", low), nil, map[string]Real{"p_value": Real(low)})
-		} else if p < 0.2 {
+		} else if p < doubtful {
 			a.find("chi2-low", fmt.Sprintf("the points scatter rather more than the stated uncertainties say (χ² p = %.2g), as one right data set in five does; u(k) may leave out scatter from run to run", p), nil, map[string]Real{"p_value": Real(p)})
 		}
 	}
@@ -286,17 +291,40 @@ func (a *assessor) fitOf(curve string) *fit.Result {
 	return nil
 }
 
-// contradicted reports whether every flexible curve that could be fitted has a
-// χ² p below 0.05. The largest p counts, so that real curvature is not taken for
-// noise.
+// doubtful is the χ² p below which the stated uncertainties may leave something out, and
+// contradictedLevel that below which they do.
+const (
+	doubtful          = 0.2
+	contradictedLevel = 0.05
+)
+
+// contradicted reports whether every flexible curve of the default candidates that could
+// be fitted has a χ² p below 0.05. The largest p counts, so that real curvature is not
+// taken for noise. The answer does not hang on which candidates were asked for: where
+// those that were leave doubt, the others are fitted for it alone.
 func (a *assessor) contradicted() (p float64, yes bool) {
 	p = -1
-	for _, f := range a.fits {
-		// Curves beyond the default are no reason to choose another error model.
-		if f.Curve.Info().Trend == models.TrendNone || !models.IsDefault(f.Curve) || !f.Usable() || f.Nu < 1 {
+	take := func(f *fit.Result) {
+		if f.Usable() && f.Nu >= 1 {
+			p = math.Max(p, chi2Tail(f.Measured().RSS, f.Nu))
+		}
+	}
+	var missing []models.Curve
+	for _, c := range models.Default() {
+		if c.Info().Trend == models.TrendNone {
 			continue
 		}
-		p = math.Max(p, chi2Tail(f.Measured().RSS, f.Nu))
+		if f := a.fitOf(c.Info().Name); f != nil {
+			take(f)
+		} else {
+			missing = append(missing, c)
+		}
+	}
+	for _, c := range missing {
+		if p < doubtful {
+			a.checks++
+			take(fit.Fit(a.data.sample, c))
+		}
 	}
 	if p < 0 { // none is flexible: the line itself must do
 		if a.straight.Nu < 1 {
@@ -304,7 +332,7 @@ func (a *assessor) contradicted() (p float64, yes bool) {
 		}
 		p = chi2Tail(a.straight.Measured().RSS, a.straight.Nu)
 	}
-	return p, p < 0.05
+	return p, p < contradictedLevel
 }
 
 // rank orders the candidates and checks whether each describes the data.

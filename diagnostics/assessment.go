@@ -132,6 +132,7 @@ type Assessment struct {
 	BetweenSources *BetweenSources `json:"between_sources"`
 	// Influence is what the verdict would be without each temperature and point.
 	Influence        []Influence        `json:"influence"`
+	InfluenceRange   *InfluenceRange    `json:"influence_range"` // nil where nothing is left out
 	TemperatureError []TemperatureError `json:"temperature_error"`
 	RunOrder         *RunOrder          `json:"run_order"` // nil without an order of runs
 	Ranking          []Ranked           `json:"ranking"`   // best first

@@ -173,6 +173,11 @@ var catalogue = []Entry{
 		Reference:   "R. D. Cook, S. Weisberg, Residuals and Influence in Regression (1982)",
 	},
 	{
+		Code: "influence-not-examined", Title: "not every point was left out", Severity: Info,
+		Explanation: "With errors in k, and with limits, the exponent test without a point takes a fit of its own. Where the data have more than 100 temperatures and points, those are left out one at a time that move n most in the fit linearised about its estimates: a deciding point is one of them, since it takes away half of n. Of the others leverage, Cook's distance and the studentised residual are known, and n without them is not.",
+		Cure:        "use --leave-out to see the verdict without one of the others",
+	},
+	{
 		Code: "outlier", Title: "a point far from the curve through the others", Severity: Warning,
 		Explanation: "The studentised residual is larger than chance makes the largest of so many (p < 0.05 after Bonferroni). It is that from the power-prefactor curve, of which every straight line with a usual prefactor is one, or from the recommended curve where that bends more freely, with the scatter of the other points, or where u(k) is stated with that. Where a curve fails its adequacy test its outliers are named only if it passes without them: a curve that does not fit makes outliers of good points. For curves that are not linear in their parameters and with errors in k the test is approximate.",
 		Cure:        "look the measurement up; leave it out with --leave-out only for a reason other than this number",

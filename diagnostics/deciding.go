@@ -1,6 +1,7 @@
 package diagnostics
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 	"slices"
@@ -16,8 +17,8 @@ import (
 const (
 	decidingShrinks = 0.5  // |n| without the entry over |n| with it
 	outlierLevel    = 0.05 // of the largest studentised residual, after Bonferroni
-	// mostRefits is the most entries that are left out where each needs a fit of its
-	// own: with errors in k, with limits, and temperatures that sources share.
+	// mostRefits is the most fits of their own, which leaving out takes with errors in k
+	// and with limits. Of more entries, those are left out that move n most.
 	mostRefits = 100
 	// mostListed is the most entries that the document lists; of more, those alone
 	// that decide or are outliers.
@@ -51,18 +52,41 @@ type Influence struct {
 	// repeated, and stands as it is for all the data.
 	State    State `json:"state_without"`
 	Deciding bool  `json:"deciding"`
+	// PredictionError is what was measured less what the curve predicts without it, in
+	// ln k, or in k where errors are in k; of single entries.
+	PredictionError Real   `json:"prediction_error"`
+	Why             string `json:"why_not"` // why n without it is unknown, "" where it is known
 
 	points   []int   // of the prepared data
 	residual float64 // from the curve
 	fits     bool    // the curve passes its adequacy test, with this entry or without
 }
 
+// InfluenceRange is what n and its p-value become, at least and at most, without one
+// temperature or point; unknown where nothing can be left out.
+type InfluenceRange struct {
+	Examined     int  `json:"examined"`     // temperatures and points left out, one at a time
+	NotExamined  int  `json:"not_examined"` // of which n is not known without them
+	ExponentLow  Real `json:"exponent_low"`
+	ExponentHigh Real `json:"exponent_high"`
+	PLow         Real `json:"p_low"`
+	PHigh        Real `json:"p_high"`
+}
+
 // omission is the exponent test without something.
 type omission struct {
-	n, se, p float64
-	state    State
-	testable bool
+	n, se, p  float64
+	predicted float64 // prediction error of the entry left out
+	state     State
+	testable  bool
+	why       string
 }
+
+// Why n is not known without something.
+const (
+	whyNotExamined  = "not examined: others move n more"
+	whyUndetermined = "the rest do not determine n"
+)
 
 // exponentRow is how n̂ of power-prefactor is made of the entries of a sample, beside
 // its nuisance columns: n̂ = Σ c_i y_i, each entry counting with its own residual.
@@ -244,32 +268,33 @@ func (p *prepared) pointsOf(l leaving) []int {
 	return out
 }
 
-// omitter repeats the exponent test without one temperature or point. In ln k it is a
-// matter of closed forms: a row x of weight w and residual r that is taken from
-// A = XᵀWX leaves
-//
-//	n - c r/(1-h),  (A⁻¹)_nn + c²/(w(1-h)),  RSS - w r²/(1-h)
-//
-// with c and h the row's part in n̂ and its leverage (J. Sherman, W. J. Morrison, Ann.
-// Math. Stat. 21 (1950) 124; R. D. Cook, S. Weisberg, Residuals and Influence in
-// Regression (1982), section 2.2).
+// omitter repeats the exponent test without one temperature or point: in ln k in
+// closed form, see remove; with errors in k and with limits by a fit of the rest.
 type omitter struct {
-	a      *assessor
-	s      *fit.Sample
-	row    *exponentRow
-	line   lineRow
-	whole  State // the verdict on all
-	second bool  // the second-barrier test finds something: it is not repeated
-	closed bool  // entries are left out in closed form
-	refits bool  // or by fits of their own, where they are not too many
+	a        *assessor
+	s        *fit.Sample
+	measured *fit.Result // power-prefactor on the measured entries
+	row      *exponentRow
+	line     lineRow
+	near     *nearPower // with errors in k and no limits
+	whole    State      // the verdict on all
+	second   bool       // the second-barrier test finds something: it is not repeated
+	closed   bool       // all is left out in closed form
 
 	temps               int
 	low, high           float64 // range of T, K
 	aboveLow, belowHigh float64 // the same without its ends
+
+	gram, z []float64 // scratch of remove
+	fits    int       // of their own, that leaving out took
 }
 
-// lineRow is how E of the straight line is made of the entries.
-type lineRow struct{ c, leverage []float64 }
+// lineRow is how E of the straight line is made of the entries: orthonormal columns, the
+// last of them what is left of -1/(RT), of this length before.
+type lineRow struct {
+	columns [][]float64
+	length  float64
+}
 
 // newOmitter prepares leaving out; nil where there is no exponent test.
 func newOmitter(a *assessor, state State, second bool) *omitter {
@@ -277,15 +302,19 @@ func newOmitter(a *assessor, state State, second bool) *omitter {
 	if a.untestable != "" || a.power.Status != fit.Converged {
 		return nil
 	}
-	o := &omitter{a: a, s: s, second: second, whole: state}
-	measured := a.power.Measured()
-	root := roots(s, measured.Fitted)
+	o := &omitter{a: a, s: s, second: second, whole: state, measured: a.power.Measured()}
+	root := roots(s, o.measured.Fitted)
 	if o.row = newExponentRow(s, root); o.row == nil {
 		return nil
 	}
+	p := len(o.row.columns)
+	o.gram, o.z = make([]float64, p*p), make([]float64, p)
 	o.closed = !s.Model.InK() && len(s.Limits) == 0
-	if o.closed {
+	switch {
+	case o.closed:
 		o.line = newLineRow(s, root)
+	case len(s.Limits) == 0:
+		o.near = newNearPower(s, a.power.TRef, a.power.P, a.power.Beside)
 	}
 	o.measureRange()
 	return o
@@ -306,103 +335,191 @@ func (o *omitter) measureRange() {
 
 // newLineRow is newExponentRow for E of the straight line, in J/mol.
 func newLineRow(s *fit.Sample, root []float64) lineRow {
-	n := s.Len()
-	line := lineRow{make([]float64, n), make([]float64, n)}
-	var basis [][]float64
-	one := slices.Clone(root)
-	basis, _ = extend(basis, one, 0)
+	basis, _ := extend(nil, slices.Clone(root), 0)
 	for _, z := range s.Nuisance {
 		v := slices.Clone(root)
 		floats.Mul(v, z)
 		basis, _ = extend(basis, v, 1e-10)
 	}
-	x := make([]float64, n)
+	x := make([]float64, s.Len())
 	for i, t := range s.T {
 		x[i] = root[i] * (t - s.TRef) / (models.GasConstant * t * s.TRef)
 	}
 	project(basis, x, nil)
 	length := floats.Norm(x, 2)
-	for i := range x {
-		line.c[i] = root[i] * x[i] / (length * length)
-	}
 	floats.Scale(1/length, x)
-	for _, q := range append(basis, x) {
-		for i, v := range q {
-			line.leverage[i] += v * v
+	return lineRow{append(basis, x), length}
+}
+
+// removal is what leaving entries out does to a linear fit.
+type removal struct {
+	shift  float64 // what the coefficient along the last column loses
+	growth float64 // of its variance, but for σ²
+	saved  float64 // what RSS loses
+}
+
+// remove leaves l out of a fit r that is linear in its parameters, or linearised, with
+// weighted orthonormal columns q. With the rows Q of what goes, weighted residuals e,
+// G = 1 - QᵀQ = LLᵀ and z = L⁻¹Qᵀe,
+//
+//	shift = z_p/L_pp,  growth = 1/L_pp²,  saved = e·e + z·z
+//
+// (J. Sherman, W. J. Morrison, Ann. Math. Stat. 21 (1950) 124, for several rows at once;
+// R. D. Cook, S. Weisberg, Residuals and Influence in Regression (1982), section 2.2).
+// One of the points behind a mean is a row like the mean, of its own weight and residual.
+// ok is false where the rest do not determine the coefficients.
+func (o *omitter) remove(l leaving, q [][]float64, r *fit.Result) (out removal, ok bool) {
+	p := len(q)
+	gram, z := o.gram[:p*p], o.z[:p]
+	clear(gram)
+	clear(z)
+	for _, i := range l.entries {
+		size, e := 1.0, r.Residuals[i]/math.Sqrt(o.s.V[i])
+		if l.point >= 0 {
+			v := o.a.data.single.V[l.point]
+			size, e = math.Sqrt(o.s.V[i]/v), (r.Residuals[i]+o.fromMean(l))/math.Sqrt(v)
+		}
+		out.saved += e * e
+		for j, qj := range q {
+			x := size * qj[i]
+			z[j] += x * e
+			for k := range j + 1 {
+				gram[j*p+k] -= x * size * q[k][i]
+			}
 		}
 	}
-	return line
+	for j := range p { // Cholesky, and L⁻¹ along with it
+		for k := range j {
+			v := gram[j*p+k]
+			for m := range k {
+				v -= gram[j*p+m] * gram[k*p+m]
+			}
+			v /= gram[k*p+k]
+			gram[j*p+k] = v
+			z[j] -= v * z[k]
+		}
+		d := 1 + gram[j*p+j]
+		for k := range j {
+			d -= gram[j*p+k] * gram[j*p+k]
+		}
+		if !(d > 1e-10) {
+			return removal{}, false
+		}
+		gram[j*p+j] = math.Sqrt(d)
+		z[j] /= gram[j*p+j]
+	}
+	last := gram[p*p-1]
+	out.shift, out.growth = z[p-1]/last, 1/(last*last)
+	out.saved += floats.Dot(z, z)
+	return out, true
 }
 
-// without repeats the exponent test without l. n is unknown where l determines its
-// own fitted value or would need a fit of its own and refits is not set.
+// fromMean is the deviation of the single point of l from its mean, in ln k, or in k where
+// the model is InK.
+func (o *omitter) fromMean(l leaving) float64 {
+	p, g := o.a.data.single, l.entries[0]
+	if o.s.Model.InK() {
+		return p.K[l.point] - o.s.K[g]
+	}
+	return p.Y[l.point] - o.s.Y[g]
+}
+
+// move is by how much n changes without l, in the fit linearised about its estimates, in
+// units that all l share; infinite where that fit does not determine n without l.
+func (o *omitter) move(l leaving) float64 {
+	x, ok := o.remove(l, o.row.columns, o.measured)
+	if !ok {
+		return math.Inf(1)
+	}
+	return math.Abs(x.shift)
+}
+
+// examines chooses, where each needs a fit of its own and there are more than most, what
+// is left out: what moves n most. The function that it returns tells by the number of a
+// leaving.
+func (o *omitter) examines(many, most int) func(i int) bool {
+	if o.closed || many <= most {
+		return func(int) bool { return true }
+	}
+	moves := make([]float64, 0, many)
+	for l := range o.a.data.leavings {
+		moves = append(moves, o.move(l))
+	}
+	order := make([]int, many)
+	for i := range order {
+		order[i] = i
+	}
+	slices.SortStableFunc(order, func(i, j int) int { return cmp.Compare(moves[j], moves[i]) })
+	chosen := make([]bool, many)
+	for _, i := range order[:most] {
+		chosen[i] = true
+	}
+	return func(i int) bool { return chosen[i] }
+}
+
+// without repeats the exponent test without l.
 func (o *omitter) without(l leaving) omission {
-	if o.closed && (len(l.entries) == 1 || len(o.s.Nuisance) == 0) {
+	if o.closed {
 		return o.downdate(l)
 	}
-	if o.refits {
-		return o.refit(l)
+	if o.near != nil {
+		// A search from nearby can miss the lowest minimum: what would be reported is
+		// searched for anew.
+		if out, ok := o.refitNear(l); ok && !o.decides(out) {
+			return out
+		}
 	}
-	return unknownOmission()
+	return o.refit(l)
 }
 
-func unknownOmission() omission {
+func unknownOmission(why string) omission {
 	nan := math.NaN()
-	return omission{n: nan, se: nan, p: nan, state: Untestable}
+	return omission{n: nan, se: nan, p: nan, predicted: nan, state: Untestable, why: why}
 }
 
-// downdate is without in closed form. Entries of l lie at one temperature, and so
-// count as one of their summed weight and mean residual.
-func (o *omitter) downdate(l leaving) omission {
-	s, power, line := o.s, o.a.power, o.a.straight
-	first := l.entries[0]
-	var w, r, rl float64 // summed weight, mean residual from both curves
-	for _, i := range l.entries {
-		wi := 1 / s.V[i]
-		w += wi
-		r += wi * power.Residuals[i]
-		rl += wi * line.Residuals[i]
+// left is what l leaves: degrees of freedom, and whether they and the temperatures are
+// enough to test. rule is changed to the range of the rest.
+func (o *omitter) left(l leaving, rule *Rule) (nu int, enough bool) {
+	nu = o.a.power.Nu
+	if l.point < 0 {
+		nu -= len(l.entries)
 	}
-	r, rl = r/w, rl/w
-	var apart float64 // RSS that goes with l besides: its own scatter
-	for _, i := range l.entries {
-		d := power.Residuals[i] - r
-		apart -= d * d / s.V[i]
-	}
-	gone := len(l.entries)
-	if l.point >= 0 {
-		// One of the points behind a mean m of weight W: as a row it is like the mean,
-		// and the scatter within the mean shrinks by w(y-m)²W/(W-w).
-		p := o.a.data.single
-		whole := w
-		w = 1 / p.V[l.point]
-		d := p.Y[l.point] - s.Y[first]
-		r, rl = power.Residuals[first]+d, line.Residuals[first]+d
-		apart = w * d * d * whole / (whole - w)
-		gone = 0
-	}
-	per := o.row.c[first] * s.V[first] // c of a row of weight 1
-	keep := 1 - o.row.leverage[first]*s.V[first]*w
-	out := unknownOmission()
-	if !(keep > 1e-10) {
-		return out
-	}
-	out.n = power.P[2] - per*w*r/keep
-	nu := power.Nu - gone
 	temps, low, high := o.temps, o.low, o.high
-	if l.kind == leftTemperature {
+	if t := o.s.T[l.entries[0]]; l.kind == leftTemperature {
 		temps--
-		if models.SameTemperature(s.T[first], low) {
+		if models.SameTemperature(t, low) {
 			low = o.aboveLow
-		} else if models.SameTemperature(s.T[first], high) {
+		} else if models.SameTemperature(t, high) {
 			high = o.belowHigh
 		}
 	}
-	if nu < 1 || temps < minTemperatures {
+	rule.ChangePerUnit = changePerUnit(low, high)
+	return nu, nu >= 1 && temps >= minTemperatures
+}
+
+// downdate is without in closed form.
+func (o *omitter) downdate(l leaving) omission {
+	s, power := o.s, o.a.power
+	gone, ok := o.remove(l, o.row.columns, power)
+	if !ok {
+		return unknownOmission(whyUndetermined)
+	}
+	out := unknownOmission("")
+	out.n = power.P[2] - gone.shift*math.Sqrt(o.row.unscaled)
+	if first := l.entries[0]; l.point < 0 && len(l.entries) == 1 {
+		out.predicted = power.Residuals[first] / (1 - o.row.leverage[first])
+	}
+	rule := o.a.rule
+	nu, enough := o.left(l, &rule)
+	if !enough {
 		return out
 	}
-	rss := math.Max(0, power.RSS-w*r*r/keep+apart)
-	out.se = exponentError(s, rss, o.row.unscaled+per*per*w/keep, nu)
+	rss := power.RSS - gone.saved
+	if l.point >= 0 { // the scatter within the mean shrinks by w(y-m)²W/(W-w)
+		d := o.fromMean(l)
+		rss += d * d / (o.a.data.single.V[l.point] - s.V[l.entries[0]])
+	}
+	out.se = exponentError(s, math.Max(0, rss), o.row.unscaled*gone.growth, nu)
 	known := s.Model.KnownSigma()
 	if t := out.n / out.se; known {
 		out.p = pNormal(t)
@@ -410,10 +527,11 @@ func (o *omitter) downdate(l leaving) omission {
 		out.p = pStudent(t, float64(nu))
 	}
 	half := criticalValue(o.a.opt.Confidence, nu, known) * out.se
-	rule := o.a.rule
-	rule.ChangePerUnit = changePerUnit(low, high)
-	perLine, keepLine := o.line.c[first]*s.V[first], 1-o.line.leverage[first]*s.V[first]*w
-	rule.ToleranceKJ = o.a.tolerance.Apply((line.P[1] - perLine*w*rl/keepLine) / 1000)
+	line, ok := o.remove(l, o.line.columns, o.a.straight)
+	if !ok {
+		return out
+	}
+	rule.ToleranceKJ = o.a.tolerance.Apply((o.a.straight.P[1] - line.shift/o.line.length) / 1000)
 	out.judge(rule, out.n-half, out.n+half, o.second)
 	return out
 }
@@ -426,17 +544,19 @@ func (out *omission) judge(rule Rule, low, high float64, second bool) {
 
 // refit is without by a fit of the rest.
 func (o *omitter) refit(l leaving) omission {
-	out := unknownOmission()
+	out := unknownOmission(whyUndetermined)
 	s, err := o.rest(l)
 	if err != nil {
 		return out
 	}
+	o.fits++
 	power, line := fit.Fit(s, models.PowerPrefactor{}), fit.Fit(s, models.Straight())
 	if !power.Usable() || !line.Usable() {
 		return out
 	}
 	if power.Status == fit.Converged {
-		out.n = power.P[2]
+		out.n, out.why = power.P[2], ""
+		out.predicted = o.missOf(l, power)
 	}
 	if ok, _, _ := Testable(s, power); !ok {
 		return out
@@ -450,6 +570,24 @@ func (o *omitter) refit(l leaving) omission {
 	low, high = ends(t.Exponent)
 	out.judge(rule, low, high, o.second)
 	return out
+}
+
+// missOf is the prediction error of the entry l by the fit r of the rest; unknown of
+// anything else.
+func (o *omitter) missOf(l leaving, r *fit.Result) float64 {
+	s, i := o.s, l.entries[0]
+	if l.point >= 0 || len(l.entries) > 1 || len(r.Beside) != len(s.Nuisance) {
+		return math.NaN()
+	}
+	f := []float64{0}
+	r.Curve.LnK(r.TRef, s.T[i:i+1], r.P, f, nil)
+	for j, z := range s.Nuisance {
+		f[0] += r.Beside[j] * z[i]
+	}
+	if s.Model.InK() {
+		return s.K[i] - math.Exp(f[0])
+	}
+	return s.Y[i] - f[0]
 }
 
 // rest is the sample without l.
@@ -517,22 +655,30 @@ func (a *assessor) leaveOneOut(state State, second bool) []Influence {
 	for range a.data.leavings {
 		many++
 	}
-	o.refits = many <= mostRefits
 	about := a.scatterFit()
 	measured, curve := about.Measured(), about.Curve.Info().Name
 	entries := fit.Influence(measured, s.Measured())
-	nan := math.NaN()
+	examined := o.examines(many, mostRefits)
+	a.influenceRange = newInfluenceRange()
+	nan := Real(math.NaN())
 	adequate := !fails(a.ranking, about)
 	var pe PureError
 	if !adequate {
 		pe = a.data.pureError()
 	}
 	var out []Influence
+	at := 0
 	for l := range a.data.leavings {
-		x := o.without(l)
+		x := unknownOmission(whyNotExamined)
+		if examined(at) {
+			x = o.without(l)
+		}
+		at++
+		a.influenceRange.add(x)
 		f := Influence{
-			LeftOut: l.kind, Curve: curve, fits: adequate, T: Real(s.T[l.entries[0]]), Leverage: Real(nan), Cook: Real(nan), Studentised: Real(nan), OutlierP: Real(nan),
+			LeftOut: l.kind, Curve: curve, fits: adequate, T: Real(s.T[l.entries[0]]), Leverage: nan, Cook: nan, Studentised: nan, OutlierP: nan,
 			Exponent: Real(x.n), StdError: Real(x.se), PValue: Real(x.p), State: x.state, Deciding: o.decides(x),
+			PredictionError: Real(x.predicted), Why: x.why,
 		}
 		if l.point < 0 && len(l.entries) == 1 && entries != nil {
 			e := entries[l.entries[0]]
@@ -554,6 +700,7 @@ func (a *assessor) leaveOneOut(state State, second bool) []Influence {
 		}
 		out = append(out, f)
 	}
+	a.refits += o.fits
 	return out
 }
 
@@ -569,6 +716,31 @@ func (a *assessor) fitsWithout(r *fit.Result, e fit.PointInfluence, pe PureError
 		p = chi2Tail(math.Max(0, left), r.Nu-1)
 	}
 	return p >= adequacyLevel
+}
+
+func newInfluenceRange() *InfluenceRange {
+	nan := Real(math.NaN())
+	return &InfluenceRange{ExponentLow: nan, ExponentHigh: nan, PLow: nan, PHigh: nan}
+}
+
+// add widens the range by the test without something.
+func (r *InfluenceRange) add(x omission) {
+	if r.Examined++; x.why == whyNotExamined {
+		r.Examined--
+		r.NotExamined++
+	}
+	widen := func(low, high *Real, x float64) {
+		if v := Real(x); v.Known() {
+			if !(*low <= v) {
+				*low = v
+			}
+			if !(*high >= v) {
+				*high = v
+			}
+		}
+	}
+	widen(&r.ExponentLow, &r.ExponentHigh, x.n)
+	widen(&r.PLow, &r.PHigh, x.p)
 }
 
 // outlierP is the p-value of a studentised residual, with σ̂ from the others, after
@@ -587,6 +759,10 @@ func outlierP(z float64, entries, nu int, known bool) float64 {
 // influences finds deciding points, outliers and borderline verdicts.
 func (a *assessor) influences() {
 	a.influence = a.leaveOneOut(a.verdict.State, a.secondRun.found())
+	if r := a.influenceRange; r != nil && r.NotExamined > 0 {
+		a.find("influence-not-examined", fmt.Sprintf("to leave something out takes a fit of its own here: of %d temperatures and points it was done for the %d that move n most, by the fit linearised about its estimates; n without each of the other %d is not known",
+			r.Examined+r.NotExamined, r.Examined, r.NotExamined), nil, map[string]Real{"examined": Real(r.Examined), "not_examined": Real(r.NotExamined)})
+	}
 	a.findDeciding()
 	a.findOutliers()
 	a.findBorderline()
@@ -654,7 +830,7 @@ func (a *assessor) findDeciding() {
 	}
 	slices.Sort(rows)
 	first := found[0]
-	a.verdict.Sentence += fmt.Sprintf(" The verdict hangs on %s: without that it is %s.", a.place(first), first.State)
+	a.verdict.Sentence += fmt.Sprintf(" The verdict hangs on %s: without that it is %s (p = %s).", a.place(first), first.State, pText(float64(first.PValue)))
 	a.find("deciding-point", message, slices.Compact(rows), map[string]Real{
 		"n": n, "n_without": first.Exponent, "p_without": first.PValue, "t_k": first.T, "deciding": Real(len(found)),
 	})

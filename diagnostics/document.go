@@ -32,7 +32,7 @@ func (a *assessor) assessment() *Assessment {
 		Verdict:        a.verdict,
 		Curvature:      a.curvature(),
 		BetweenSources: a.between,
-		Influence:      append([]Influence{}, a.influence...), TemperatureError: append([]TemperatureError{}, a.temperature...), RunOrder: a.order,
+		Influence:      append([]Influence{}, a.influence...), InfluenceRange: a.influenceRange, TemperatureError: append([]TemperatureError{}, a.temperature...), RunOrder: a.order,
 		Ranking:   a.ranking,
 		Bootstrap: a.resampling,
 		Sample:    s,

@@ -3,6 +3,7 @@ package diagnostics
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"onebarrier/models"
 	"onebarrier/models/fit"
@@ -19,8 +20,8 @@ const (
 	worseThan   = 2
 	// absurd is how many times that error a miss may be before its size says nothing.
 	absurd = 1000
-	// refitted is the largest number of entries for which curves that are not linear
-	// are fitted anew without each temperature.
+	// refitted is the largest number of entries for which curves are fitted anew without
+	// each temperature: those that are not linear, and with limits all.
 	refitted = 30
 )
 
@@ -37,6 +38,8 @@ type CurvePrediction struct {
 	Curve string `json:"curve"`
 	// LeftOut: each temperature from all others.
 	LeftOut Real `json:"left_out"`
+	// Why says why LeftOut is unknown; "" where it is known.
+	Why string `json:"why_not"`
 	// Linearised says that LeftOut comes from the fit linearised about its estimates.
 	Linearised bool `json:"linearised"`
 	// HotEnd and ColdEnd: the hottest and the coldest third of the temperatures from
@@ -48,7 +51,8 @@ type CurvePrediction struct {
 
 // predict compares the candidates by prediction. Curves that are not linear in their
 // parameters are fitted anew only where the ranking takes them seriously, in the 95 %
-// set: such a fit is dear. Offsets of sources are held at what all data say.
+// set: such a fit is dear. Limits stay in every fit; what is predicted is what was
+// measured. Offsets of sources are held at what all data say where a curve is fitted anew.
 func (a *assessor) predict() {
 	s := a.data.sample
 	temperatures := temperatureGroups(s)
@@ -70,20 +74,23 @@ func (a *assessor) predict() {
 		if !r.Usable() {
 			continue
 		}
-		if r.Exact != nil {
-			if r = r.Exact; !r.Usable() {
-				continue
-			}
-		}
+		_, linear := r.Curve.(models.Basis)
 		nan := Real(math.NaN())
 		p := CurvePrediction{Curve: row.Curve, LeftOut: nan, HotEnd: nan, ColdEnd: nan, Ends: nan}
-		_, linear := r.Curve.(models.Basis)
-		again := !linear && !s.Model.InK() && row.InSet && s.Len() <= refitted
-		p.Linearised = !again && (!linear || s.Model.InK())
-		if again {
+		limited := len(s.Limits) > 0
+		again := s.Len() <= refitted && (row.InSet && !linear && !s.Model.InK() || limited && (linear || row.InSet))
+		switch {
+		case again:
 			p.LeftOut = Real(leftOutAnew(s, r.Curve, temperatures))
-		} else {
-			p.LeftOut = Real(leftOut(s, r, temperatures))
+		case limited && s.Len() > refitted:
+			p.Why = fmt.Sprintf("with limits it takes a fit for each temperature, which is not made for more than %d", refitted)
+		case limited:
+			p.Why = "with limits it takes a fit for each temperature, which is not made for a curve outside the 95 % set"
+		default:
+			p.LeftOut, p.Linearised = Real(leftOut(s, r, temperatures)), !linear || s.Model.InK()
+		}
+		if p.Why == "" && !p.LeftOut.Known() {
+			p.Why = "without some temperature the rest do not determine the curve"
 		}
 		if hot != nil && (linear || row.InSet) {
 			h, c := hot.errors(r.Curve), cold.errors(r.Curve)
@@ -256,7 +263,7 @@ type endOut struct {
 	out  []int
 }
 
-// newEndOut leaves out the temperatures from low up to, not including, high.
+// newEndOut leaves out the temperatures from low up to, not including, high; limits stay.
 func newEndOut(s *fit.Sample, temperatures [][]int, low, high int) *endOut {
 	e := &endOut{s: s}
 	var t, k, v []float64
@@ -269,7 +276,15 @@ func newEndOut(s *fit.Sample, temperatures [][]int, low, high int) *endOut {
 			t, k, v = append(t, s.T[i]), append(k, s.K[i]), append(v, s.V[i])
 		}
 	}
-	if rest, err := fit.NewSample(s.Model, t, k, v); err == nil {
+	rest, err := fit.NewSample(s.Model, t, k, v)
+	if err == nil && len(s.Limits) > 0 {
+		limits := slices.Clone(s.Limits)
+		for i := range limits {
+			limits[i].Beside = nil // offsets are held
+		}
+		rest, err = rest.WithLimits(limits)
+	}
+	if err == nil {
 		e.rest = rest
 	}
 	return e

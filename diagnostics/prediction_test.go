@@ -8,6 +8,7 @@ import (
 	"testing"
 
 	"onebarrier/models"
+	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 	"onebarrier/models/reference"
 )
@@ -237,6 +238,54 @@ func TestAbsurdMiss(t *testing.T) {
 		a.firstExtrapolates()
 		if len(a.findings) != 1 || !strings.Contains(a.findings[0].Message, c.says) {
 			t.Errorf("%g: %+v, want %q", float64(c.ends), a.findings, c.says)
+		}
+	}
+}
+
+// bitten is a straight set of which limits at the cold end ask for less than the line.
+func bitten() *dataset.Set {
+	s := lineSet(8, 290, 340, 60e3, 0.03, 3)
+	for i := range 4 {
+		at := 270 + 5*float64(i)
+		s.Points = append(s.Points, dataset.Point{File: s.Points[0].File, Row: 10 + i, T: at, Limit: "<",
+			K: 0.85 * s.Points[0].K * math.Exp(-60e3/models.GasConstant*(1/at-1/290.)), Order: math.NaN()})
+	}
+	return s
+}
+
+// Limits stay in the fits without a temperature. R 4.2.2, -2 ln L of the line, and of the
+// line with ln T, by optim and Newton's method on its gradient, without each measured
+// temperature, without the two hottest and without the two coldest; the errors of what is
+// left out.
+func TestPredictionKeepsLimits(t *testing.T) {
+	a := mustAssess(t, bitten(), quick())
+	for _, c := range []struct {
+		curve                      string
+		leftOut, hot, cold, either float64
+	}{
+		{"straight", 0.0823027309691, 0.0971908388141, 0.1415912552115, 0.1214375203587},
+		{"power-prefactor", 0.0623464430326, 0.2015268227663, 0.1187678445571, 0.1654068638162},
+	} {
+		p := a.Prediction.of(c.curve)
+		reference.Close(t, c.curve+" left out", float64(p.LeftOut), c.leftOut, 1e-9)
+		reference.Close(t, c.curve+" hot end", float64(p.HotEnd), c.hot, 1e-9)
+		reference.Close(t, c.curve+" cold end", float64(p.ColdEnd), c.cold, 1e-9)
+		reference.Close(t, c.curve+" ends", float64(p.Ends), c.either, 1e-9)
+		if p.Linearised || p.Why != "" {
+			t.Errorf("%+v", p)
+		}
+	}
+	// Of more temperatures, and of curves that are no rivals, it is unknown with a reason.
+	long := lineSet(refitted+1, 290, 340, 60e3, 0.03, 3)
+	long.Points = append(long.Points, bitten().Points[8])
+	for _, p := range mustAssess(t, long, quick()).Prediction.Curves {
+		if p.LeftOut.Known() || !strings.Contains(p.Why, "not made for more than 30") {
+			t.Errorf("%+v", p)
+		}
+	}
+	for _, p := range a.Prediction.Curves {
+		if p.LeftOut.Known() != (p.Why == "") {
+			t.Errorf("%+v", p)
 		}
 	}
 }

@@ -5,8 +5,6 @@ import (
 	"math"
 
 	"onebarrier/models/fit"
-
-	"gonum.org/v1/gonum/floats"
 )
 
 const (
@@ -31,9 +29,11 @@ type ResidualChecks struct {
 	// Trend of the scatter with T as found, significant or not: grows or shrinks.
 	Trend     string        `json:"spread_trend"`
 	Normality ResidualCheck `json:"normality"`
-	// AbsoluteGain is AIC of relative less AIC of absolute errors, the same curve
-	// fitted: both are densities of k. Unknown where they were not compared.
-	AbsoluteGain Real `json:"absolute_aic_gain"`
+	// AbsoluteGain is AIC with errors of ln k less AIC with errors of k, relative and
+	// absolute or stated and stated-absolute, the same curve fitted: both are densities of
+	// k. Unknown where they cannot be compared, and AbsoluteWhy says why.
+	AbsoluteGain Real   `json:"absolute_aic_gain"`
+	AbsoluteWhy  string `json:"absolute_why_not"`
 }
 
 // ResidualCheck is one test with the power that it has at so many entries.
@@ -136,8 +136,7 @@ func (a *assessor) checkResiduals() {
 			c.Curve, pText(float64(c.Normality.PValue))), nil,
 			map[string]Real{"p_value": c.Normality.PValue, "power": c.Normality.Power})
 	}
-	a.compareAbsolute(r, c)
-	a.compareRelative(r, c)
+	a.compareModels(c)
 }
 
 // evenCure says what helps where the scatter grows or shrinks with T. The other error
@@ -177,52 +176,21 @@ func share(p Real) string {
 	return fmt.Sprintf("%.0f %%", 100*float64(p))
 }
 
-// compareAbsolute compares errors in ln k with errors in k of one size, by the
-// likelihoods that one curve reaches under both. A fit in k is dear: it is made
-// where the spread test sees the scatter of ln k shrink with rising k.
-func (a *assessor) compareAbsolute(r *fit.Result, c *ResidualChecks) {
-	s := a.data.sample
-	if s.Model != fit.Relative || len(s.Limits) > 0 || s.Len() > FullyResampled ||
-		!(c.Spread.PValue < absoluteHint) || a.rises(r) == (c.Trend == "grows") {
-		return
-	}
-	inK, err := fit.NewSample(fit.Absolute, s.T, s.K, s.V)
-	if err != nil {
-		return
-	}
-	f := fit.Fit(inK, r.Curve)
-	if f.Status != fit.Converged {
-		return
-	}
-	gain := r.AIC() - f.AIC()
-	if c.AbsoluteGain = Real(gain); gain > absoluteGain {
-		a.find("absolute-fits-better", fmt.Sprintf("errors of one size in k describe the scatter better than errors in per cent: AIC of %s lower by %.1f", c.Curve, gain),
+// compareModels compares errors of ln k with errors of k. The other model is proposed
+// where sigma is estimated under both: errors of one size in k where the spread test sees
+// the scatter of ln k shrink with rising k, and no limits make the likelihoods
+// approximate; errors in per cent wherever one source is described better by them.
+func (a *assessor) compareModels(c *ResidualChecks) {
+	s, r := a.data.sample, a.scatterFit()
+	hint := s.Model == fit.Relative && len(s.Limits) == 0 && c.Spread.PValue < absoluteHint && a.rises(r) != (c.Trend == "grows")
+	gain, curve, why := a.errorModels(r, hint && s.Spent() == 0) // beside offsets such a fit is dearer still
+	c.AbsoluteGain, c.AbsoluteWhy = Real(gain), why
+	switch {
+	case hint && gain > absoluteGain && curve == c.Curve:
+		a.find("absolute-fits-better", fmt.Sprintf("errors of one size in k describe the scatter better than errors in per cent: AIC of %s lower by %.1f", curve, gain),
 			nil, map[string]Real{"aic_gain": Real(gain)})
-	}
-}
-
-// compareRelative is the reverse of compareAbsolute: under errors in k of one size, the
-// same curve is fitted to ln k. Where ln k excludes it, for it bends only the other way
-// there, power-prefactor is compared, which is always defined.
-func (a *assessor) compareRelative(r *fit.Result, c *ResidualChecks) {
-	s := a.data.sample
-	if s.Model != fit.Absolute || len(s.Nuisance) > 0 || floats.Min(s.K) <= 0 {
-		return
-	}
-	inLnK, err := fit.NewSample(fit.Relative, s.T, s.K, s.V)
-	if err != nil {
-		return
-	}
-	f := fit.Fit(inLnK, r.Curve)
-	if f.Status != fit.Converged {
-		r, f = a.power, fit.Fit(inLnK, a.power.Curve)
-	}
-	if r.Status != fit.Converged || f.Status != fit.Converged {
-		return
-	}
-	gain := r.AIC() - f.AIC()
-	if c.AbsoluteGain = Real(-gain); gain > absoluteGain {
-		a.find("relative-fits-better", fmt.Sprintf("errors in per cent describe the scatter better than errors of one size in k: AIC of %s lower by %.1f", f.Curve.Info().Name, gain),
-			nil, map[string]Real{"aic_gain": Real(gain)})
+	case s.Model == fit.Absolute && -gain > absoluteGain && s.Spent() == 0:
+		a.find("relative-fits-better", fmt.Sprintf("errors in per cent describe the scatter better than errors of one size in k: AIC of %s lower by %.1f", curve, -gain),
+			nil, map[string]Real{"aic_gain": Real(-gain)})
 	}
 }

@@ -29,6 +29,7 @@ type assessOptions struct {
 	figures    string
 	figure     figure.Options
 	local      bool // a table of E between neighbouring temperatures
+	influence  bool // tables of what points and errors of T do to the verdict
 }
 
 func newAssess(a *app) *cobra.Command {
@@ -76,13 +77,14 @@ runs, shows whether k drifted while it was measured.`,
 	addPool(cmd, &o.read)
 	addJudging(cmd, o)
 	f.BoolVar(&o.local, "local-energies", false, "print E between neighbouring temperatures too")
+	f.BoolVar(&o.influence, "influence", false, "print the test without each temperature and point too, and what errors of T do")
 	f.StringVar(&o.figures, "figures", "", "write the pictures into this `folder`")
 	oneOf(cmd, &o.figure.Format, "figure-format", "of the pictures (default svg)", "svg", "png", "pdf")
 	oneOf(cmd, &o.figure.Y, "y", "logarithm on the y axis (default ln)", "ln", "lg")
 	oneOf(cmd, &o.figure.X, "x", "x axis (default 1000/T)", "1000/T", "10000/T", "1/kT")
 	f.StringSliceVar(&o.expect, "expect", nil, "exit with code 5 unless the verdict is one of these `codes`")
 	a.addJSON(cmd)
-	group(f, "what is published", "local-energies")
+	group(f, "what is published", "local-energies", "influence")
 	group(f, "pictures", "figures", "figure-format", "y", "x")
 	group(f, "for scripts", "json", "expect")
 	completeList(cmd, "expect", stateNames()...)
@@ -174,7 +176,7 @@ func (a *app) runAssess(ctx context.Context, files []string, o *assessOptions) e
 		err = report.JSON(a.out, result)
 	} else {
 		t := a.text()
-		t.LocalEnergies = o.local
+		t.LocalEnergies, t.Influence = o.local, o.influence
 		err = report.WriteAssessment(a.out, result, pictures, t)
 	}
 	if err != nil {

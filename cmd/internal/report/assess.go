@@ -27,6 +27,10 @@ func WriteAssessment(w io.Writer, a *diagnostics.Assessment, figures []string, t
 	if t.LocalEnergies {
 		p.localEnergies(a)
 	}
+	if t.Influence {
+		p.influence(a)
+		p.temperatureErrors(a)
+	}
 	p.findings(a)
 	p.data(a)
 	p.section("figures", figures...)
@@ -164,6 +168,7 @@ func (p *page) test(a *diagnostics.Assessment) {
 		if c.PScaleFree.Known() {
 			rows = append(rows, []string{"p by the scatter alone", probability(c.PScaleFree)})
 		}
+		rows = append(rows, leavingOut(a)...)
 	}
 	if text := detected(detectable); text != "" {
 		rows = append(rows, []string{"seen with 80 % power", text + energy})

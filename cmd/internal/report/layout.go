@@ -15,6 +15,9 @@ type Text struct {
 	Colour bool // emphasis by colour and weight; no meaning rests on it
 	// LocalEnergies asks for the table of E between neighbouring temperatures.
 	LocalEnergies bool
+	// Influence asks for the tables of what each temperature and point, and errors of T, do
+	// to the verdict.
+	Influence bool
 }
 
 const (
