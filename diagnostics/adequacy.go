@@ -8,6 +8,7 @@ import (
 	"sync"
 
 	"onebarrier/models"
+	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
 )
 
@@ -67,6 +68,37 @@ func pureErrorOf(points *fit.Sample, alike func(i, j int) bool) PureError {
 	return pe
 }
 
+// repeats is the pure error of the data: that of repeats, or where every entry is a mean
+// with the standard deviation of its repeats, as many of each, that of those. ofMeans
+// says that the entries are means, so that their scatter holds no pure error.
+func (p *prepared) repeats() (pe PureError, ofMeans bool) {
+	pe = p.pureError()
+	if pe.DF > 0 || p.sample.Model != fit.Relative {
+		return pe, p.basis == BasisMeans
+	}
+	stated := PureError{Temperatures: p.sample.Len()}
+	for _, pt := range p.points {
+		if n := pt.Repeats; pt.Level != dataset.LevelRepeats || !(pt.UK > 0) || n < 2 || n != p.points[0].Repeats {
+			return pe, p.basis == BasisMeans
+		}
+		// u(ln k) of a mean is s/(k √n): in units of the variance of means, as RSS is.
+		u, df := pt.UK/pt.K, pt.Repeats-1
+		stated.SS += float64(df) * u * u
+		stated.DF += df
+	}
+	return stated, true
+}
+
+// whyUnchecked tells those who gave standard deviations why they check nothing.
+func (a *assessor) whyUnchecked(found []Finding) {
+	i := slices.IndexFunc(found, func(f Finding) bool { return f.Code == "adequacy-unchecked" })
+	if i < 0 || a.model == fit.Scaled || !slices.ContainsFunc(a.data.points, func(p dataset.Point) bool { return p.Level == dataset.LevelRepeats }) {
+		return
+	}
+	found[i].Message = "standard deviations of repeats check the fit of a curve only under error model relative, where every point has one, of as many repeats each"
+	found[i].Cure = "give the single repeats, a row each"
+}
+
 // CheckAdequacy tests whether a fit of s describes the data: the pure-error F test
 // where there are repeats, else chi-squared where uncertainties are stated. That
 // one test decides, at 1 %; adequate is nil where neither can be made. The runs
@@ -113,9 +145,9 @@ const trendLevel = 0.05
 // and the means show no trend about some curve: repeats at one temperature share the
 // error of its setting, and their scatter is then too small to judge a curve by. Under
 // replicates independent the alarm stays: that is what was claimed.
-func (a *assessor) blameRepeats(found []Finding, pe PureError) {
+func (a *assessor) blameRepeats(found []Finding, pe PureError, ofMeans bool) {
 	i := slices.IndexFunc(found, func(f Finding) bool { return f.Code == "none-adequate" })
-	if i < 0 || a.data.basis != BasisMeans || pe.DF == 0 {
+	if i < 0 || !ofMeans || pe.DF == 0 {
 		return
 	}
 	s := a.data.sample
@@ -136,6 +168,10 @@ func (a *assessor) blameRepeats(found []Finding, pe PureError) {
 			}
 			sizes = fmt.Sprintf("they scatter by %s, which leaves %s in their means, but these lie %s about %s",
 				percentText(repeats), percentText(repeats*math.Sqrt(left)), percentText(math.Sqrt(ss/float64(f.Nu))), r.Curve)
+			if a.data.basis != BasisMeans { // pe is that of the standard deviations
+				sizes = fmt.Sprintf("their standard deviations leave %s in their means, but these lie %s about %s",
+					percentText(repeats), percentText(math.Sqrt(ss/float64(f.Nu))), r.Curve)
+			}
 		}
 		found[i] = newFinding("repeats-share-error", "repeats at one temperature share the error of its setting, such as the thermostat's: "+
 			sizes+", without a trend; such repeats cannot check a curve, and by them every candidate fails", nil,

@@ -339,16 +339,17 @@ func (a *assessor) contradicted() (p float64, yes bool) {
 func (a *assessor) rank() {
 	s := a.data.sample
 	a.ranking = Rank(s, a.fits[:a.ranked], Criterion(a.opt.Criterion))
-	pe := a.data.pureError()
+	pe, ofMeans := a.data.repeats()
 	nulls := RunsNulls{few: a.opt.SequentialNull}
 	for i := range a.ranking {
 		r := &a.ranking[i]
 		if f := a.fitOf(r.Curve).Measured(); f.Usable() {
-			r.Adequacy, r.Adequate = CheckAdequacy(s, f, pe, a.data.basis == BasisMeans, &nulls)
+			r.Adequacy, r.Adequate = CheckAdequacy(s, f, pe, ofMeans, &nulls)
 		}
 	}
 	found := RankingFindings(a.ranking, s, Criterion(a.opt.Criterion))
-	a.blameRepeats(found, pe)
+	a.blameRepeats(found, pe, ofMeans)
+	a.whyUnchecked(found)
 	a.findings = append(a.findings, found...)
 }
 
@@ -529,6 +530,30 @@ func (a *assessor) take(out *bootstrap.Output) {
 		a.findings = append(a.findings, f)
 	}
 	a.resampling = r
+	a.sharesFollow()
+}
+
+// sharesFollow tells where more than half of the resamples give another verdict than the
+// data, and more than half were drawn about a curve that is not the recommended one: the
+// shares then say what a repeat would show if that curve were true.
+func (a *assessor) sharesFollow() {
+	given := a.resampling.RepeatShare
+	i := slices.IndexFunc(States, func(s State) bool { return given[s] > 0.5 })
+	if i < 0 || States[i] == a.verdict.State {
+		return
+	}
+	for j, w := range a.weights() {
+		f := a.fits[j]
+		if name := f.Curve.Info().Name; w > 0.5 && name != a.verdict.RecommendedCurve {
+			what := ""
+			if f.Status == fit.NotIdentified {
+				what = ", whose parameters these data do not determine"
+			}
+			a.find("shares-of-another-curve", fmt.Sprintf("%.0f %% of repeats would say %s, not %s, since %.0f %% of the resamples are drawn about %s%s: the shares are those of that curve, and no evidence against the verdict",
+				100*float64(given[States[i]]), States[i], a.verdict.State, 100*w, name, what), nil,
+				map[string]Real{"share": given[States[i]], "weight": Real(w)})
+		}
+	}
 }
 
 // weights draw the generating curves of resamples: plain AIC by family. Curves

@@ -320,7 +320,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "adequacy-unchecked", Title: "adequacy cannot be checked", Severity: Info,
-		Explanation: "Without repeats and without stated uncertainties nothing tells how large the scatter about the true curve should be. Under error model scaled the factor common to all stated uncertainties is taken from the scatter, which they then cannot check: only repeats could. The runs test is shown; it does not decide, since it cannot reach 5 % for N ≤ 6.",
+		Explanation: "Without repeats and without stated uncertainties nothing tells how large the scatter about the true curve should be. Standard deviations of n repeats do, where every point has one and n is the same for all: their pooled square over n is the pure error of the means, with n - 1 degrees of freedom a point. Under error model scaled the factor common to all stated uncertainties is taken from the scatter, which they then cannot check: only repeats could. The runs test is shown; it does not decide, since it cannot reach 5 % for N ≤ 6.",
 		Cure:        "repeat some temperatures, or state u(k)",
 	},
 
@@ -429,6 +429,11 @@ var catalogue = []Entry{
 		Code: "several-datasets", Title: "several data sets in one file", Severity: Alarm,
 		Explanation: "A verdict is about one data set: one rate constant of one reaction under one set of conditions. The file holds several.",
 		Cure:        "choose one with --dataset NAME",
+	},
+	{
+		Code: "shares-of-another-curve", Title: "repeat shares follow a curve that is not recommended", Severity: Info,
+		Explanation: "Each resample is drawn about a candidate, each candidate as often as its weight by plain AIC says. Where nearly all of the weight lies on a curve other than the recommended one, the shares tell what a repeat would say if that curve were true, its bend included, and may name another verdict than the one given, which rests on the exponent test of these data and needs no such curve. A curve of four parameters that follows single points, above all one that the data do not determine, does that.",
+		Cure:        "compare with the shares under the recommended family: --models straight,power-prefactor",
 	},
 	{
 		Code: "resamples-failed", Title: "some resamples could not be fitted", Severity: Warning,

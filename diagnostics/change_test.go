@@ -206,3 +206,62 @@ func TestScatterAboutTheCurveThatFits(t *testing.T) {
 		t.Errorf("not found: %v", codesOf(a))
 	}
 }
+
+// Standard deviations of as many repeats at every temperature are the pure error of the
+// means. R, with sd those below and f the nls fit above, g <- lm(log(k) ~ log(t) + I(1/t)):
+//
+//	F <- (deviance(f)/9)/mean((sd/k)^2/3); pf(F, 9, 26, lower.tail = FALSE)
+func TestStandardDeviationsCheckTheFit(t *testing.T) {
+	temps, k := enzyme()
+	sd := []float64{0.177, 0.212, 0.309, 0.549, 0.743, 1, 1.51, 1.97, 1.03, 1.68, 1.74, 1.11, 0.493}
+	set := setOf(temps, k, nil)
+	for i := range set.Points {
+		p := &set.Points[i]
+		p.SD, p.Repeats, p.UK, p.Level = sd[i], 3, sd[i]/math.Sqrt(3), dataset.LevelRepeats
+	}
+	a := mustAssess(t, set, quick())
+	for curve, want := range map[string][2]float64{"series": {1.763599998890, 0.124490880114}, "power-prefactor": {2.41934994275e+02, 5.07647501166e-23}} {
+		i := slices.IndexFunc(a.Ranking, func(r Ranked) bool { return r.Curve == curve })
+		r := a.Ranking[i]
+		if len(r.Adequacy) == 0 || r.Adequacy[0].Test != TestPureError {
+			t.Fatalf("%s: %+v", curve, r.Adequacy)
+		}
+		reference.Close(t, curve+": F", float64(r.Adequacy[0].Statistic), want[0], 1e-6)
+		reference.Close(t, curve+": p", float64(r.Adequacy[0].PValue), want[1], 1e-5)
+	}
+	if slices.Contains(codesOf(a), "adequacy-unchecked") {
+		t.Errorf("unchecked: %v", codesOf(a))
+	}
+	set.Points[3].Repeats = 4
+	a = mustAssess(t, set, quick())
+	i := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "adequacy-unchecked" })
+	if i < 0 || !strings.Contains(a.Findings[i].Message, "of as many repeats each") || strings.Contains(a.Findings[i].Cure, "state u(k)") {
+		t.Errorf("unequal numbers of repeats: %v", a.Findings)
+	}
+}
+
+// Shares of another curve's repeats are told as such, and only those.
+func TestSharesOfAnotherCurve(t *testing.T) {
+	temps, k := enzyme()
+	s := sampleOf(t, fit.Relative, temps, logs(k), nil)
+	for _, c := range []struct {
+		what        string
+		verdict     State
+		recommended string
+		share       Real
+		want        bool
+	}{
+		{"another curve, another verdict", Unresolved, "straight", 0.7, true},
+		{"the same verdict", BeyondPrefactor, "straight", 0.7, false},
+		{"the recommended curve", Unresolved, "series", 0.7, false},
+		{"less than half", Unresolved, "straight", 0.4, false},
+	} {
+		a := &assessor{opt: quick(), data: &prepared{sample: s}, fits: []*fit.Result{fitNamed(t, s, "series"), fitNamed(t, s, "straight")}, ranked: 2}
+		a.verdict = Verdict{State: c.verdict, RecommendedCurve: c.recommended}
+		a.resampling = &Resampling{RepeatShare: map[State]Real{BeyondPrefactor: c.share, Unresolved: 1 - c.share - 0.2}}
+		a.sharesFollow()
+		if got := len(a.findings) == 1; got != c.want {
+			t.Errorf("%s: told is %t", c.what, got)
+		}
+	}
+}

@@ -663,8 +663,9 @@ func (a *assessor) leaveOneOut(state State, second bool) []Influence {
 	nan := Real(math.NaN())
 	adequate := !fails(a.ranking, about)
 	var pe PureError
+	ofMeans := false
 	if !adequate {
-		pe = a.data.pureError()
+		pe, ofMeans = a.data.repeats()
 	}
 	var out []Influence
 	at := 0
@@ -684,7 +685,7 @@ func (a *assessor) leaveOneOut(state State, second bool) []Influence {
 			e := entries[l.entries[0]]
 			f.Leverage, f.Cook, f.Studentised = Real(e.Leverage), Real(e.Cook), Real(e.Studentised)
 			f.OutlierP = Real(outlierP(e.Studentised, s.Len(), measured.Nu, s.Model.KnownSigma()))
-			f.fits = adequate || a.fitsWithout(measured, e, pe)
+			f.fits = adequate || a.fitsWithout(measured, e, pe, ofMeans)
 		}
 		if many > mostListed && !f.Deciding && !(f.OutlierP < outlierLevel) {
 			continue
@@ -706,11 +707,11 @@ func (a *assessor) leaveOneOut(state State, second bool) []Influence {
 
 // fitsWithout reports whether a curve that fails its adequacy test passes it without
 // one entry: RSS then falls by the square of the standardised residual, in units of σ̂².
-func (a *assessor) fitsWithout(r *fit.Result, e fit.PointInfluence, pe PureError) bool {
+func (a *assessor) fitsWithout(r *fit.Result, e fit.PointInfluence, pe PureError, ofMeans bool) bool {
 	left := r.RSS - e.Standardised*e.Standardised*r.Sigma*r.Sigma
 	df, p := pe.Temperatures-1-r.Params()-r.Spent, math.NaN()
 	switch {
-	case pe.DF > 0 && a.data.basis == BasisMeans && df > 0:
+	case pe.DF > 0 && ofMeans && df > 0:
 		p = pF(math.Max(0, left)/float64(df)/(pe.SS/float64(pe.DF)), float64(df), float64(pe.DF))
 	case pe.DF == 0 && r.Model.KnownSigma() && r.Nu > 1:
 		p = chi2Tail(math.Max(0, left), r.Nu-1)

@@ -58,8 +58,12 @@ func (a *assessor) publishInto(doc *Assessment) {
 		in.Fit, in.Profiles, in.Profile = doc.Fits[curve], profiles[curve], profilers[curve]
 		in.Exact = roundingOf(in.Fit, a.data.sample, a.opt.Confidence).Exact
 		atRef = in.Fit
-	} else if _, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, a.data.pureError(), a.data.basis == BasisMeans, &RunsNulls{few: a.opt.SequentialNull}); in.PowerAdequate != nil && !*in.PowerAdequate {
-		atRef = nil
+	} else {
+		pe, ofMeans := a.data.repeats()
+		_, in.PowerAdequate = CheckAdequacy(a.data.sample, a.power, pe, ofMeans, &RunsNulls{few: a.opt.SequentialNull})
+		if in.PowerAdequate != nil && !*in.PowerAdequate {
+			atRef = nil
+		}
 	}
 	in.Scatter = a.data.sourceScatter()
 	doc.AtReference = atReference(atRef, tRef, a.opt.Confidence, low, high, in.Scatter)
