@@ -117,3 +117,44 @@ func TestFarLimitsResampled(t *testing.T) {
 		reference.Within(t, a.Name+": upper end", a.Intervals[0].Upper, w.Intervals[0].Upper, 0.25*w.StdError)
 	}
 }
+
+// Resamples are drawn about the curve with the offsets of the sources, of limits too:
+// the intervals of E are then those of the fit, whichever source lies higher.
+func TestLimitsBesideOffsetsResampled(t *testing.T) {
+	for _, half := range []float64{-0.7, 0.7} { // offset of the first source, ln k
+		var tt, k, v, column []float64
+		var limits []fit.Limit
+		rng := rand.New(rand.NewPCG(7, 8))
+		for i := range 16 {
+			x, c := 280+60*float64(i)/15, float64(1-2*(i%2))
+			y := -60000/8.314*(1/x-1/310.0) + half*c + 0.05*rng.NormFloat64()
+			if i < 2 {
+				limits = append(limits, fit.Limit{T: x, K: math.Exp(y + 0.03), Below: true, V: 1})
+				continue
+			}
+			tt, k, v, column = append(tt, x), append(k, math.Exp(y)), append(v, 1), append(column, c)
+		}
+		s, err := fit.NewSample(fit.Relative, tt, k, v)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if s, err = s.WithLimits(limits); err != nil {
+			t.Fatal(err)
+		}
+		s = s.WithOffsets(make([]float64, 16), [][]float64{append(column, 1, -1)})
+		in := inputOf(s)
+		out, err := Run(context.Background(), in, Options{Resamples: 999, Seed: 1})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, r := range out.Targets {
+			e := in.Fits[r.Curve].Interval(r.W, r.Estimate, 0.95)
+			iv := r.Intervals[0]
+			reference.Within(t, r.Name+": lower end", iv.Lower, e.Lower, 0.6*e.StdError)
+			reference.Within(t, r.Name+": upper end", iv.Upper, e.Upper, 0.6*e.StdError)
+			if r.Failed > 5 {
+				t.Errorf("%s: %d failed", r.Name, r.Failed)
+			}
+		}
+	}
+}

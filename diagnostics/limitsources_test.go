@@ -275,3 +275,24 @@ func TestLimitsBesideSourcesUnderEveryErrorModel(t *testing.T) {
 		}
 	}
 }
+
+// The probability of each limit by the measured points, its source's offset and the
+// uncertainty of that included. R 4.2.2: f <- lm(log(k) ~ I(1/T_K) + log(T_K) + source) on
+// the measured rows; p <- predict(f, limits, se.fit = TRUE); pt(z, 8), z = ±(log(k) -
+// p$fit)/sqrt(p$se.fit^2 + p$residual.scale^2), + for "<".
+func TestLimitProbabilityAgainstR(t *testing.T) {
+	a, err := newAssessor(limitedSources(t), quick())
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := a.fit(); err != nil {
+		t.Fatal(err)
+	}
+	for i, want := range []float64{0.690108819523, 0.76267733581, 0.816183021245, 0.385057065235} {
+		p, ok := a.limitProbability(a.data.sample.Limits[i])
+		if !ok {
+			t.Errorf("limit %d: no probability", i)
+		}
+		reference.Close(t, "probability of limit at "+kelvinText(a.data.limits[i].T)+" K", p, want, 1e-8)
+	}
+}

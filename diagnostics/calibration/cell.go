@@ -222,6 +222,12 @@ func (c Cell) stream(seed uint64, index int) *rand.Rand {
 	return rand.New(rand.NewChaCha8(key))
 }
 
+// detection is ln k below which nothing is detected where there is a limit.
+func (c Cell) detection() float64 {
+	lnK, _ := c.Truth.at(c.Range, c.Range.Low+0.2*(c.Range.High-c.Range.Low))
+	return lnK
+}
+
 // draw draws one data set.
 func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 	if c.Laboratories != One {
@@ -233,7 +239,7 @@ func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 		Points:   make([]dataset.Point, 0, c.N*c.Repeats.at(2)),
 	}
 	middle, _ := c.Truth.at(c.Range, (c.Range.Low+c.Range.High)/2)
-	detection, _ := c.Truth.at(c.Range, c.Range.Low+0.2*(c.Range.High-c.Range.Low))
+	detection := math.Exp(c.detection())
 	uneven := [...]float64{1, 1.5, 0.7}
 	order := c.Found.Runs.of(c.N, rng)
 	for i := range c.N {
@@ -261,7 +267,7 @@ func (c Cell) draw(rng *rand.Rand) *dataset.Set {
 			if c.Stated > 0 {
 				p.UK, p.Level = c.Stated*sd*p.K, dataset.LevelStandard
 			}
-			c.Limits.apply(&p, math.Exp(detection))
+			c.Limits.apply(&p, detection)
 			set.Points = append(set.Points, p)
 		}
 	}

@@ -37,6 +37,7 @@ func (l Laboratories) measured(c Cell, rng *rand.Rand) *dataset.Set {
 		Name:     "simulated",
 		Quantity: dataset.Quantity{Symbol: "k", Unit: "s^-1", Known: true},
 	}
+	detection := math.Exp(c.detection())
 	for j := range 3 {
 		offset := c.Offsets * laboratoryFactor * rng.NormFloat64()
 		low, high := l.part(j)
@@ -49,6 +50,7 @@ func (l Laboratories) measured(c Cell, rng *rand.Rand) *dataset.Set {
 			if l&PooledLabs == 0 {
 				p.Source = fmt.Sprint("laboratory ", j+1)
 			}
+			c.Limits.apply(&p, detection)
 			set.Points = append(set.Points, p)
 		}
 	}
@@ -57,7 +59,7 @@ func (l Laboratories) measured(c Cell, rng *rand.Rand) *dataset.Set {
 
 func (s *Study) sources() {
 	s.section("Three laboratories",
-		"Error model relative; three laboratories measure N temperatures each, half of the range with overlap or a third each; offsets between them, where there are any, have a standard deviation of 10 %. Share of curved verdicts in per cent, with an offset for each fitted and with all taken as one.")
+		"Error model relative; three laboratories measure N temperatures each, half of the range with overlap or a third each; offsets between them, where there are any, have a standard deviation of 10 %. Share of curved verdicts in per cent, with an offset for each fitted and with all taken as one; and, of sets that can be tested, with k not detected in the coldest fifth of the range and these points as limits.")
 	for _, r := range ranges {
 		for _, v := range []struct {
 			name string
@@ -68,6 +70,8 @@ func (s *Study) sources() {
 			pooled.Laboratories |= PooledLabs
 			s.row(fmt.Sprintf("one barrier, offsets, %s, %s: offsets fitted", v.name, r), c, someForPower, Curved, exact)
 			s.row(fmt.Sprintf("one barrier, offsets, %s, %s: as one", v.name, r), pooled, someForPower, Curved, nil)
+			c.Limits = AsLimits
+			s.row(fmt.Sprintf("one barrier, offsets, limits in the coldest fifth, %s, %s: offsets fitted", v.name, r), c, someForPower, Curved, nil)
 		}
 		c := Cell{Range: r, Lean: true, Laboratories: Apart, Truth: Truth{Exponent: sourcesExponent[r]}}
 		pooled := c

@@ -410,7 +410,7 @@ func TestSeededBoundsWithLimits(t *testing.T) {
 				edge := f.P[2]-low < 1e-6*(high-low) || high-f.P[2] < 1e-6*(high-low)
 				if edge {
 					reached[seeded.Info().Name] = true
-					if f.Status != NotIdentified || f.Cov != nil || !strings.Contains(f.Reason, "bound") {
+					if f.Status != NotIdentified || f.Cov != nil || !strings.Contains(f.Reason, "the best fit lies at") {
 						t.Errorf("%s: at a bound, %s, %q", name, f.Status, f.Reason)
 					}
 				}
@@ -490,5 +490,57 @@ func TestRefitOneComparesWithItsOwnLine(t *testing.T) {
 		if excluded == 0 || excluded == 20 {
 			t.Errorf("parallel is excluded in %d of 20 resamples: nothing is tested", excluded)
 		}
+	}
+}
+
+// A search that comes upon a bound on its way leaves it again: it ends on a bound only
+// where the likelihood, with the parameter held a little inside, is smaller.
+func TestSearchLeavesBounds(t *testing.T) {
+	inside := 0
+	for _, seeded := range []models.Seeded{models.Vogel{}, models.TunnellingBell(), models.TunnellingWigner(), models.Deformed{}} {
+		for _, bend := range []float64{-0.3, -0.05, 0.05, 0.3} { // of ln k at 35 K from the middle
+			var temps, k, v []float64
+			rng := rand.New(rand.NewPCG(13, 14))
+			at := func(temp float64) float64 { return -6.8 - 10000*(1/temp-1/310.) + bend*square((temp-310)/35) }
+			for temp := 280.0; temp <= 340; temp += 6 {
+				temps, k, v = append(temps, temp), append(k, math.Exp(at(temp)+0.02*rng.NormFloat64())), append(v, 1)
+			}
+			s, err := NewSample(Relative, temps, k, v)
+			if err != nil {
+				t.Fatal(err)
+			}
+			s = limited(t, s, Limit{T: 274, K: math.Exp(at(274) + 0.02), Below: true, V: 1})
+			e := newCensored(s, seeded)
+			low, high := e.seeded.low, e.seeded.high
+			held := func(q float64) *Result { return Fit(s, heldSeed{c: seeded, q: q}) }
+			for i := range 21 {
+				q := low + (high-low)*float64(i)/20
+				from := held(q)
+				if !from.Usable() || !e.start(append(slices.Clone(from.P), q)) {
+					continue
+				}
+				e.scatter()
+				value, ok := e.minimise(limitTolerance)
+				if !ok {
+					continue
+				}
+				rss, step := e.rss(value), 1e-4*(high-low)
+				switch {
+				case e.par[2] == low:
+					step = low + step
+				case e.par[2] == high:
+					step = high - step
+				default:
+					inside++
+					continue
+				}
+				if r := held(step).RSS; r < rss*(1-1e-7) {
+					t.Errorf("%s, bend %g, from %g: RSS %g on the bound %g, but %g inside", seeded.Info().Name, bend, q, rss, e.par[2], r)
+				}
+			}
+		}
+	}
+	if inside == 0 {
+		t.Error("no search ends inside the bounds")
 	}
 }

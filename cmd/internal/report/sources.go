@@ -42,11 +42,15 @@ func (p *page) sources(a *diagnostics.Assessment) {
 	if len(offsets) > most {
 		offsets = []string{offset(b.Sources[low]), "…", offset(b.Sources[high])}
 	}
+	test := "F test of them"
+	if a.Dataset.Limits > 0 {
+		test = "test of them" // by the likelihood ratio
+	}
 	rows := [][]string{
 		{"as one", way(b.Pooled)},
 		{"an offset each", way(b.Offset)},
 		{"offsets in k", strings.Join(offsets, ", ")},
-		{"F test of them", fmt.Sprintf("p = %s; they make the variance of n %s times as large", probability(b.FTest.PValue), significant(b.VIF, 2))},
+		{test, fmt.Sprintf("p = %s; they make the variance of n %s times as large", probability(b.FTest.PValue), significant(b.VIF, 2))},
 	}
 	p.section("sources", p.fit(rows)...)
 }
