@@ -478,6 +478,7 @@ func (a *assessor) resample(ctx context.Context) error {
 		return err
 	}
 	a.take(out)
+	a.sharesFollow()
 	return nil
 }
 
@@ -530,7 +531,6 @@ func (a *assessor) take(out *bootstrap.Output) {
 		a.findings = append(a.findings, f)
 	}
 	a.resampling = r
-	a.sharesFollow()
 }
 
 // sharesFollow tells where more than half of the resamples give another verdict than the
