@@ -3,6 +3,7 @@ package diagnostics
 import (
 	"math"
 	"math/rand/v2"
+	"slices"
 	"strings"
 	"testing"
 
@@ -188,4 +189,59 @@ func TestInfluenceRange(t *testing.T) {
 	if r := mustAssess(t, lineSet(mostListed+5, 290, 340, 60e3, 0.03, 1), quick()).InfluenceRange; r.Examined != mostListed+5 || !r.PLow.Known() {
 		t.Errorf("many: %+v", r)
 	}
+}
+
+// With limits an error of the thermometer moves their temperatures too: the verdict on data
+// whose every temperature is put right by the δ that is printed is at its boundary, and dn/dδ
+// is that of such data.
+func TestTemperatureErrorsMoveLimits(t *testing.T) {
+	set := limitedBow()
+	a := mustAssess(t, set, quick())
+	if a.Verdict.State != BeyondPrefactor || len(a.Sample.Limits) != 4 {
+		t.Fatalf("%s", a.Verdict.Sentence)
+	}
+	low, high := a.Sample.Range()
+	righted := func(shape string, delta float64) ExponentTest {
+		s := *set
+		s.Points = slices.Clone(set.Points)
+		for i := range s.Points {
+			s.Points[i].T -= delta * shapeOf(shape, low, high, s.Points[i].T)
+		}
+		return assessorOf(t, &s, quick()).exponent
+	}
+	known := 0
+	for _, e := range a.TemperatureError {
+		const h = 0.02
+		reference.Close(t, e.Shape+": dn/dδ", float64(e.Slope), (righted(e.Shape, -h).Exponent.Value-righted(e.Shape, h).Exponent.Value)/(2*h), 1e-3)
+		if e.Lost.Known() {
+			known++
+			if _, up := ends(righted(e.Shape, float64(e.Lost)).Exponent); !(math.Abs(up) < 1e-5) {
+				t.Errorf("%s: with %g K put right the interval of n ends at %g, not at 0", e.Shape, float64(e.Lost), up)
+			}
+		}
+		if e.ToBand.Known() {
+			if n := righted(e.Shape, float64(e.ToBand)).Exponent.Value; !(math.Abs(n) < 1e-5) {
+				t.Errorf("%s: with %g K put right n = %g, not 0", e.Shape, float64(e.ToBand), n)
+			}
+		}
+	}
+	if known != 3 {
+		t.Errorf("%d of 3 shapes lose the verdict", known)
+	}
+}
+
+// limitedBow is a line of which the thermometer bows, with limits that bite at the cold end.
+func limitedBow() *dataset.Set {
+	rng := rand.New(rand.NewPCG(4, 4))
+	line := func(at float64) float64 { return 1e-3 * math.Exp(-60e3/models.GasConstant*(1/at-1/320.)) }
+	s := lineSet(9, 290, 340, 60e3, 0, 1)
+	for i := range s.Points {
+		x := (s.Points[i].T - 315) / 25
+		s.Points[i].K = line(s.Points[i].T+0.08*(1-x*x)) * math.Exp(0.002*rng.NormFloat64())
+	}
+	for i := range 4 {
+		at := 270 + 5*float64(i)
+		s.Points = append(s.Points, dataset.Point{File: s.Points[0].File, Row: 12 + i, T: at, K: line(at), Limit: "<", Order: math.NaN()})
+	}
+	return s
 }

@@ -3,6 +3,7 @@ package diagnostics
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -12,6 +13,10 @@ import (
 
 // farthestError is the largest error of temperature that is looked at, in K.
 const farthestError = 50
+
+// slopeStep, in K, is that of the difference quotient that gives dn/dδ with limits: the
+// curvature of n(δ) and the rounding of n enter by less than a part in a thousand.
+const slopeStep = 0.01
 
 // Shapes of an error of temperature.
 const (
@@ -74,7 +79,7 @@ func ParseThermometerError(s string) (ThermometerError, error) {
 type TemperatureError struct {
 	Shape string `json:"shape"` // offset, gain or bow
 	// Slope is the exponent that an error of 1 K makes, Σ c_i (-E_loc(T_i) s_i/(R T_i²))
-	// with n̂ = Σ c_i ln k_i.
+	// with n̂ = Σ c_i ln k_i; with limits that of their likelihood.
 	Slope Real `json:"dn_per_k"`
 	// ToBand is the δ that takes n̂ to the nearest edge of the prefactor band; unknown
 	// too where it lies inside.
@@ -106,10 +111,12 @@ type shifted struct {
 	quantile   float64
 	closed     bool
 	t, scratch []float64
+	limits     []float64 // s(T) of the limits
+	edge       float64   // with which the interval is to be compared; NaN for none
 }
 
-// test gives n and its interval with T - δ s(T) in place of T; NaN where that is no
-// temperature or leaves n undetermined.
+// test gives n and its interval with T - δ s(T) in place of T, of limits too; NaN where
+// that is no temperature or leaves n undetermined.
 func (f *shifted) test(s []float64, delta float64) (n, low, high float64) {
 	nan := math.NaN()
 	for i, t := range f.s.T {
@@ -118,7 +125,7 @@ func (f *shifted) test(s []float64, delta float64) (n, low, high float64) {
 		}
 	}
 	if !f.closed {
-		return f.refit()
+		return f.refit(delta)
 	}
 	if !f.row.at(f.t) {
 		return nan, nan, nan
@@ -129,20 +136,70 @@ func (f *shifted) test(s []float64, delta float64) (n, low, high float64) {
 }
 
 // refit is test by a fit of its own.
-func (f *shifted) refit() (n, low, high float64) {
+func (f *shifted) refit(delta float64) (n, low, high float64) {
 	nan := math.NaN()
-	s, err := fit.NewSample(f.s.Model, append([]float64(nil), f.t...), f.s.K, f.s.V)
+	t := slices.Clone(f.t)
+	if len(f.s.Limits) == 0 {
+		if n, low, high, ok := f.nearby(t); ok {
+			return n, low, high
+		}
+	}
+	s, err := fit.NewSample(f.s.Model, t, f.s.K, f.s.V)
 	if err != nil {
 		return nan, nan, nan
 	}
-	s.Nuisance, s.Limits = f.s.Nuisance, f.s.Limits
+	s.Nuisance = f.s.Nuisance
+	if limits := slices.Clone(f.s.Limits); len(limits) > 0 {
+		for i := range limits {
+			limits[i].T -= delta * f.limits[i]
+		}
+		if s, err = s.WithLimits(limits); err != nil {
+			return nan, nan, nan
+		}
+	}
 	power := fit.Fit(s, models.PowerPrefactor{})
 	if power.Status != fit.Converged || power.Nu < 1 {
 		return nan, nan, nan
 	}
-	t := f.a.testExponent(s, power)
-	low, high = ends(t.Exponent)
-	return t.Exponent.Value, low, high
+	if math.IsNaN(f.edge) {
+		return power.P[2], nan, nan
+	}
+	x := f.a.testExponent(s, power)
+	low, high = ends(x.Exponent)
+	return x.Exponent.Value, low, high
+}
+
+// nearby is refit with errors in k from the fit at the recorded temperatures. The interval
+// is that which reaches the edge where the profile does: n is as many standard errors from
+// the edge as the signed root of the profile says.
+func (f *shifted) nearby(t []float64) (n, low, high float64, ok bool) {
+	s, power := *f.s, f.a.power
+	s.T = t
+	near := newNearPower(&s, power.TRef, power.P, power.Beside)
+	if near == nil {
+		return 0, 0, 0, false
+	}
+	free := make([]float64, near.p)
+	rss, ok := near.search(free, false)
+	if !ok {
+		return 0, 0, 0, false
+	}
+	n = near.exponent(free)
+	if math.IsNaN(f.edge) {
+		return n, math.NaN(), math.NaN(), true
+	}
+	scale := 1.0
+	if !s.Model.KnownSigma() {
+		scale = rss / float64(power.Nu)
+	}
+	half := f.quantile * math.Sqrt(scale) * near.exponentError(free)
+	held := slices.Clone(free)
+	held[near.p-1] = near.coordinate(f.edge)
+	at, ok := near.search(held, true)
+	if root := math.Sqrt(math.Max(0, at-rss) / scale); root > 1e-3 {
+		half = f.quantile * math.Abs(n-f.edge) / root
+	}
+	return n, n - half, n + half, ok
 }
 
 // temperatureErrors says what errors of the recorded temperatures would do to n and to
@@ -161,7 +218,7 @@ func (a *assessor) temperatureErrors() {
 	working := a.workingErrors()
 	f := &shifted{a: a, s: s, row: tried, t: make([]float64, s.Len()), scratch: make([]float64, s.Len()),
 		quantile: criticalValue(a.opt.Confidence, a.power.Nu, s.Model.KnownSigma()),
-		closed:   !s.Model.InK() && len(s.Limits) == 0}
+		closed:   !s.Model.InK() && len(s.Limits) == 0, limits: make([]float64, len(s.Limits)), edge: math.NaN()}
 	low, high := s.Range()
 	slope, n := make([]float64, s.Len()), a.power.P[2]
 	measured.Curve.ELoc(measured.TRef, s.T, measured.P, slope, nil)
@@ -175,6 +232,14 @@ func (a *assessor) temperatureErrors() {
 		for i, t := range s.T {
 			shape[i] = shapeOf(name, low, high, t)
 			dn -= row.c[i] * slope[i] * shape[i]
+		}
+		for i, l := range s.Limits {
+			f.limits[i] = shapeOf(name, low, high, l.T)
+		}
+		if len(s.Limits) > 0 { // of the likelihood that limits belong to
+			above, _, _ := f.test(shape, slopeStep)
+			below, _, _ := f.test(shape, -slopeStep)
+			dn = (below - above) / (2 * slopeStep) // what is put right is taken off T
 		}
 		e.Slope = Real(dn)
 		if band := a.rule.Band; n > band[1] || n < band[0] {
@@ -208,6 +273,8 @@ func (f *shifted) lost(shape []float64, dn float64) float64 {
 			edge = rule.Band[1]
 		}
 	}
+	f.edge = edge
+	defer func() { f.edge = math.NaN() }()
 	distance := func(low, high float64) float64 {
 		if rises {
 			return low - edge
