@@ -39,6 +39,7 @@ func TestDearResamplesAreFewer(t *testing.T) {
 		{n: 300, model: fit.Absolute, scheme: bootstrap.Pairs, asked: 9999, want: 999, found: true},
 		{n: 8, limits: 4, asked: 9999, want: 4999, found: true},                       // 0.6 ms
 		{n: 8, limits: 4, model: fit.Absolute, asked: 9999, want: 399, found: true},   // 4.1 ms
+		{n: 9, limits: 30, asked: 9999, want: 1999, found: true},                      // 1.3 ms
 		{n: 170, limits: 30, model: fit.Absolute, asked: 9999, want: 99, found: true}, // 28 ms
 		{n: 970, limits: 30, model: fit.Absolute, asked: 9999, want: 0, found: true},
 	} {

@@ -3,6 +3,7 @@ package fit
 import (
 	"math"
 	"math/rand/v2"
+	"sync"
 	"testing"
 
 	"onebarrier/models"
@@ -230,6 +231,35 @@ func TestKRefitForgets(t *testing.T) {
 			}
 		}
 	}
+}
+
+// TestKRefitScreensForget: the same where first places alone are asked for, by clones at
+// work side by side.
+func TestKRefitScreensForget(t *testing.T) {
+	r := newKResampling(curvedInK(t, StatedAbsolute, models.Series{}, []float64{0.5, 40e3, 0.2, 140e3}, 100, 0.02))
+	quick := NewRefitter(r.s, r.curves, r.fits, RefitOptions{Penalty: byAICc(r.s, r.curves)})
+	const count = 400
+	ks := make([][]float64, count)
+	want := make([]Refit, count)
+	for i := range ks {
+		ks[i] = r.draw()
+		quick.Refit(ks[i], &want[i])
+	}
+	var wg sync.WaitGroup
+	for w := range 4 {
+		clone := quick.Clone()
+		wg.Go(func() {
+			for i := count - 1 - w; i >= 0; i-- {
+				var out Refit
+				clone.Refit(ks[i], &out)
+				if out.First != want[i].First || !sameBits(out.RSS, want[i].RSS) {
+					t.Errorf("resample %d: first %d of %v, and %d of %v", i, out.First, out.RSS, want[i].First, want[i].RSS)
+					return
+				}
+			}
+		})
+	}
+	wg.Wait()
 }
 
 func sameBits(a, b []float64) bool {
