@@ -339,7 +339,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "absolute-fits-better", Title: "errors in k describe the scatter better", Severity: Warning,
-		Explanation: "Under error model relative the scatter of ln k is the same at all temperatures; here it shrinks as k grows, and one common error of k itself describes it better: the AIC of one curve is lower by more than 4 under error model absolute, both being densities of k. A detection limit, a baseline or a fixed reading error does that. Relative errors then give the small rate constants far too much weight.",
+		Explanation: "Under error model relative the scatter of ln k is the same at all temperatures; here it shrinks as k grows, and one common error of k itself describes it better: the AIC of one curve is lower by more than 4 under error model absolute, both being densities of k. Of sets of five to eight points whose errors are a share of k about 2 % hear of it, of larger ones fewer than 1 % (simulated). A detection limit, a baseline or a fixed reading error does that. Relative errors then give the small rate constants far too much weight.",
 		Cure:        "compare with --error-model absolute",
 	},
 	{

@@ -81,6 +81,7 @@ const (
 	FoundScatterSmall
 	FoundRestsOnStated
 	FoundInadequate
+	FoundRepeatsShare
 	FoundOffset
 	FoundOffsetsOpen
 	FoundOffsetsShow

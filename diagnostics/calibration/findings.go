@@ -141,6 +141,7 @@ var foundEvents = []foundEvent{
 	{FoundScatterSmall, "scatter-too-small", true, nil},
 	{FoundRestsOnStated, "rests-on-stated", false, nil},
 	{FoundInadequate, "none-adequate", true, nil},
+	{FoundRepeatsShare, "repeats-share-error", true, nil},
 	{FoundOffset, "between-source-offset", true, nil},
 	{FoundOffsetsOpen, "offsets-leave-open", false, nil},
 	{FoundOffsetsShow, "offsets-show-curvature", false, nil},
@@ -252,7 +253,7 @@ func (s *Study) findings() {
 			if shared {
 				name, target = "three repeats, shared thermostat error", nil
 			}
-			rows(name, r, found(Cell{Range: r, Repeats: Triplets, Thermostat: shared, Lean: true}, Found{}), cheapFound, map[Event]*Target{FoundInadequate: target})
+			rows(name, r, found(Cell{Range: r, Repeats: Triplets, Thermostat: shared, Lean: true}, Found{}), cheapFound, map[Event]*Target{FoundInadequate: target, FoundRepeatsShare: target})
 		}
 		for _, v := range []struct {
 			name string

@@ -30,7 +30,7 @@ func TestFindings(t *testing.T) {
 			FoundOutlier: {.03, .05}, FoundSpread: {.01, .01}, FoundNotNormal: {.005, .01}, FoundDrift: {0, .01}, FoundOrder: {1, 1}}},
 		{"stated N=6", found(stated(Narrow).at(6), Found{}), 500, map[Event][2]float64{
 			FoundContradicted: {.02, .05}, FoundScatterSmall: {.01, .01}, FoundChi2Low: {.08, .2}, FoundInadequate: {0, .01}, FoundOutlier: {0, .05}}},
-		{"repeats N=5", found(Cell{Range: Narrow, N: 5, Repeats: Triplets, Lean: true}, Found{}), 1000, map[Event][2]float64{FoundInadequate: {0, .01}}},
+		{"repeats N=5", found(Cell{Range: Narrow, N: 5, Repeats: Triplets, Lean: true}, Found{}), 1000, map[Event][2]float64{FoundInadequate: {0, .01}, FoundRepeatsShare: {.005, .01}}},
 		{"laboratories N=4", found(Cell{Range: Narrow, N: 4, Laboratories: Overlap, Lean: true}, Found{}), 500, map[Event][2]float64{
 			FoundOffset: {0, .05}, FoundOutlier: {.03, .05}}},
 		{"u(T) N=5", found(Cell{Range: Wide, N: 5, Lean: true}, Found{UT: 0.2}), 1000, map[Event][2]float64{FoundBelowThermometer: {0, .01}}},
