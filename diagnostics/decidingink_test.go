@@ -59,6 +59,13 @@ func TestNearIsWhatAFitFromNothingGives(t *testing.T) {
 			if o == nil || o.near == nil {
 				t.Fatal("nothing to compare")
 			}
+			// With n held at 0 the curve is the straight line, and so is its E.
+			u := make([]float64, o.near.p)
+			u[o.near.p-1] = o.near.coordinate(0)
+			if _, ok := o.near.search(u, true); !ok {
+				t.Fatal("no line")
+			}
+			reference.Close(t, "E of the line", o.near.energy(u), a.straight.P[1], 1e-7)
 			for l := range a.data.leavings {
 				near, ok := o.refitNear(l)
 				if !ok {
