@@ -168,7 +168,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "deciding-point", Title: "the verdict hangs on one temperature or point", Severity: Warning,
-		Explanation: "The verdict is curved, is not without this temperature or point, and without it the exponent n shrinks to less than half or turns its sign. Flips that leave n much as it was are noise and are not named. In straight data that came out curved by chance such a point is found in 2 to 23 % of sets; where a bad point at the hot end, off by eight standard deviations, bends straight data, in 73 to 96 % of sets of twelve temperatures or more, in 37 to 80 % of eight, and seldom in six or fewer, which leave too little to tell (simulated). The second-barrier test is not repeated.",
+		Explanation: "The verdict is curved, is not without this temperature or point, and without it the exponent n shrinks to less than half or turns its sign. Flips that leave n much as it was are noise and are not named. In straight data that came out curved by chance such a point is found in 1 to 26 % of sets; where a bad point at the hot end, off by eight standard deviations, bends straight data, in 74 to 95 % of sets of twelve temperatures or more, in 78 % of eight over a narrow range and 41 % over a wide one, and more seldom in fewer, which leave too little to tell (simulated). The second-barrier test is not repeated.",
 		Cure:        "measure there again; a verdict that one point makes is no finding about the reaction",
 		Reference:   "R. D. Cook, S. Weisberg, Residuals and Influence in Regression (1982)",
 	},
@@ -252,7 +252,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "temperature-means", Title: "repeats share the thermostat's error", Severity: Info,
-		Explanation: "Repeats at one temperature share the error of its setting. Taken as independent they raise false alarms in 13 to 23 % of straight sets where scatter between temperatures equals that within. The verdict uses temperature means; the pointwise result stands beside it.",
+		Explanation: "Repeats at one temperature share the error of its setting. Taken as independent they raise false alarms in 18 to 24 % of straight sets with three repeats, where scatter between temperatures equals that within (simulated). The verdict uses temperature means; the pointwise result stands beside it.",
 		Cure:        "--replicates independent where every point had a temperature setting of its own",
 	},
 	{
@@ -267,13 +267,13 @@ var catalogue = []Entry{
 		Explanation: "The points come from several laboratories or methods. The verdict allows each source a factor of its own, the same at every temperature (ln k: an offset); the degrees of freedom are those of the points less three for the curve and one for each source beyond the first. Curves are fitted beside the offsets, and give the mean over the sources; k at the reference temperature is their mean there, and its uncertainty holds the scatter between them. Nothing that matters changes when the sources are taken as one.",
 	},
 	{
-		Code: "between-source-offset", Title: "there is an offset between sources", Severity: Warning,
-		Explanation: "Offsets between the sources are significant (F test in the power-prefactor curve, p < 0.05), and with an offset for each source the exponent of T shrinks to less than half: what looked like curvature, or widened the scatter, when the sources were taken as one is largely a difference between laboratories or methods. The verdict is that with offsets.",
+		Code: "between-source-offset", Title: "there may be an offset between sources", Severity: Warning,
+		Explanation: "Offsets between the sources are significant (F test in the power-prefactor curve, χ² test where the uncertainties are known, p < 0.05), and with an offset for each source the exponent of T shrinks to less than half: what looked like curvature, or widened the scatter, when the sources were taken as one may largely be a difference between laboratories or methods. A curve of another shape can make offsets significant as well, above all where the sources cover different temperatures; with a variance inflation above 2 none is named as the cause of a bend, and offsets of single points, which fit any curve, are not tested. The verdict is that with offsets.",
 		Cure:        "find out why the sources differ, or measure the whole range in one laboratory",
 	},
 	{
 		Code: "offsets-leave-open", Title: "with offsets allowed these data can no longer tell", Severity: Warning,
-		Explanation: "Taken as one the sources look curved; with an offset for each source the curvature is no longer found, but neither do the data show that it was an offset. Where sources cover different temperatures, offsets hide real curvature in up to 79 % of sets.",
+		Explanation: "Taken as one the sources look curved; with an offset for each source the curvature is no longer found, but neither do the data show that it was an offset: the offsets are not significant, or belong to single points, or cannot be told well from curvature (variance inflation above 2). Where sources cover different temperatures, offsets hide much of the curvature that is there: where three laboratories measured four temperatures each, in a third of the range each, it was found in 47 instead of 71 % of sets over a narrow range and in 64 instead of 98 % over a wide one (simulated).",
 		Cure:        "measure at temperatures that two sources share, or the whole range in one laboratory",
 	},
 	{

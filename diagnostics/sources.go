@@ -53,7 +53,8 @@ type BetweenSources struct {
 	Sources []SourceOffset  `json:"sources"`
 	Pooled  ExponentSources `json:"pooled"`
 	Offset  ExponentSources `json:"with_offsets"`
-	// FTest is that of the offsets, in power-prefactor. Where limits take part it is the
+	// FTest is that of the offsets of the sources that take part in the curvature, in
+	// power-prefactor; unknown where that is only one. Where limits take part it is the
 	// likelihood-ratio test: see offsetTest.
 	FTest FTest `json:"f_test"`
 	// VIF is the variance of n with offsets over that of n pooled, by the design
@@ -108,6 +109,7 @@ type sourceSplit struct {
 	pooled      *fit.Sample // all entries, taken as one
 	pooledPower *fit.Result
 	beside      *fit.Result // power-prefactor beside an offset for each source
+	shared      *fit.Result // the same with one offset for all sources of more than one point
 	offsets     []fit.Estimate
 	vif         float64
 	confounded  string // why there are no offsets, or ""
@@ -220,6 +222,11 @@ func (p *prepared) splitSources(replicates string) error {
 	split.pooledPower = fit.Fit(s, models.PowerPrefactor{})
 	all := p.withBounded(entry)
 	split.beside = fit.Fit(s.WithOffsets(make([]float64, len(all)), contrasts(all)), models.PowerPrefactor{})
+	split.shared = split.pooledPower
+	if len(split.onePoint) > 0 {
+		one := split.together(all)
+		split.shared = fit.Fit(s.WithOffsets(make([]float64, len(one)), contrasts(one)), models.PowerPrefactor{})
+	}
 	split.estimateOffsets()
 	if split.confounded = split.cannot(s, entry, all); split.confounded != "" {
 		return nil
@@ -270,6 +277,19 @@ func (p *prepared) withBounded(source []int) []int {
 // nothing once its offset is fitted, unless limits go with it.
 func (split *sourceSplit) takesPart(src int) bool {
 	return split.entries[src] > 1 || split.limits[src] > 0
+}
+
+// together are the sources of entries, with all that take part in the curvature as one. What
+// is left is what offsets are tested against: that of a one-point source fits its point
+// whatever the curve, so that it cannot be told from curvature.
+func (split *sourceSplit) together(source []int) []int {
+	out := slices.Clone(source)
+	for i, src := range out {
+		if split.takesPart(src) {
+			out[i] = len(split.names)
+		}
+	}
+	return out
 }
 
 // offsetsOf are the offsets of entries of these sources, in ln k.
@@ -593,7 +613,7 @@ func (a *assessor) compareSources() {
 		b.Sources = append(b.Sources, SourceOffset{name, split.points[i], split.temperatures[i], NewEstimate(o),
 			b.Confounded || split.takesPart(i)})
 	}
-	b.FTest = FTest{Real(math.NaN()), len(split.names) - 1, Real(math.NaN()), Real(math.NaN())}
+	b.FTest = split.untested()
 	many := count(len(split.names), "source")
 	if b.Confounded {
 		nan := math.NaN()
@@ -651,15 +671,33 @@ func (a *assessor) pooledSources() ExponentSources {
 	return a.sourceTest(t, state)
 }
 
+// TestName names the test of the offsets; limits tells whether limits take part.
+func (b *BetweenSources) TestName(limits bool) string {
+	switch {
+	case limits:
+		return "likelihood-ratio test"
+	case !b.FTest.DF2.Known():
+		return "χ² test" // σ is known
+	}
+	return "F test"
+}
+
+// untested is the F test of the offsets before it is made. Offsets of one-point sources
+// take no part: see together.
+func (split *sourceSplit) untested() FTest {
+	nan := Real(math.NaN())
+	return FTest{nan, max(0, len(split.names)-len(split.onePoint)-1), nan, nan}
+}
+
 // offsetTest is the F test of the offsets in the power-prefactor curve. With limits RSS
 // is what stands for the likelihood, so that the statistic is that of the likelihood
 // ratio W, ν (e^{W/n} - 1)/(S - 1) with n measured entries, or W/(S - 1) where σ is
 // known: exactly F without limits, approximately with them.
 func (a *assessor) offsetTest() FTest {
 	split := a.data.sources
-	without, with := split.pooledPower, split.beside
-	f := FTest{Real(math.NaN()), len(split.names) - 1, Real(math.NaN()), Real(math.NaN())}
-	if !without.Usable() {
+	without, with := split.shared, split.beside
+	f := split.untested()
+	if f.DF1 < 1 || !without.Usable() {
 		return f
 	}
 	d1, d2 := float64(f.DF1), float64(with.Nu)
@@ -677,33 +715,32 @@ func (a *assessor) offsetTest() FTest {
 	return f
 }
 
+// shrinks reports whether the exponent n with offsets is less than half of that without
+// those that are tested.
+func (split *sourceSplit) shrinks(n float64) bool {
+	return split.shared.P != nil && math.Abs(n) < offsetShrinks*math.Abs(split.shared.P[2])
+}
+
 // whatOffsetsChange raises the finding that compares both ways, adds to the verdict's
 // sentence what changed, and returns the finding's code.
 func (a *assessor) whatOffsetsChange(b *BetweenSources, many string) string {
 	pooled, offset := b.Pooled, b.Offset
-	n := func(x ExponentSources) string {
-		v := float64(x.Exponent.Value)
-		return number(v, max(1, decimals(float64(x.Exponent.Upper-x.Exponent.Lower))))
-	}
-	facts := fmt.Sprintf("taken as one: %s, n = %s; with an offset for each: %s, n = %s", pooled.State, n(pooled), offset.State, n(offset))
+	facts := fmt.Sprintf("%s as one, %s with an offset for each", pooled.State, offset.State)
 	if p := float64(b.FTest.PValue); !math.IsNaN(p) {
-		test := "F test"
-		if len(a.data.sample.Limits) > 0 {
-			test = "likelihood-ratio test"
-		}
-		facts += fmt.Sprintf("; %s of the offsets %s", test, pIs(p))
+		facts += fmt.Sprintf("; %s of the offsets %s", b.TestName(len(a.data.sample.Limits) > 0), pIs(p))
 	}
 	values := map[string]Real{"n_pooled": pooled.Exponent.Value, "n_offsets": offset.Exponent.Value, "f_p_value": b.FTest.PValue}
-	shrinks := math.Abs(float64(offset.Exponent.Value)) < offsetShrinks*math.Abs(float64(pooled.Exponent.Value))
+	shrinks := a.data.sources.shrinks(float64(offset.Exponent.Value))
 	code, says := "sources-compared", ""
 	switch {
-	case b.FTest.PValue < offsetLevel && shrinks:
-		code, says = "between-source-offset", "look curved: that is an offset between them."
+	// Partly confounded, offsets may stand for curvature of another shape than that of n.
+	case b.FTest.PValue < offsetLevel && shrinks && !(pooled.State.Curved() && b.VIF > partlyVIF):
+		code, says = "between-source-offset", "look curved: that may be an offset between them."
 		switch {
 		case !pooled.State.Curved():
-			says = "scatter more: there is an offset between them."
+			says = "scatter more: there may be an offset between them."
 		case offset.State.Curved():
-			says = "look more curved: the rest is an offset between them."
+			says = "look more curved: the rest may be an offset between them."
 		}
 	case pooled.State.Curved() && !offset.State.Curved():
 		code, says = "offsets-leave-open", "look curved; with offsets allowed these data can no longer tell."
@@ -712,7 +749,7 @@ func (a *assessor) whatOffsetsChange(b *BetweenSources, many string) string {
 	case offset.State != pooled.State && pooled.State != Untestable:
 		says = fmt.Sprintf("give the verdict %s.", pooled.State)
 	}
-	a.find(code, many+", "+facts, nil, values)
+	a.find(code, many+": "+facts, nil, values)
 	if says != "" {
 		a.verdict.Sentence += fmt.Sprintf(" Taken as one, the %s %s", many, says)
 	}

@@ -42,15 +42,18 @@ func (p *page) sources(a *diagnostics.Assessment) {
 	if len(offsets) > most {
 		offsets = []string{offset(b.Sources[low]), "…", offset(b.Sources[high])}
 	}
-	test := "F test of them"
-	if a.Dataset.Limits > 0 {
-		test = "test of them" // by the likelihood ratio
+	test, found := b.TestName(a.Dataset.Limits > 0), "p = "+probability(b.FTest.PValue)
+	switch {
+	case b.FTest.DF1 < 1:
+		test, found = "test", "none: an offset of one point fits it to any curve"
+	case a.Dataset.Limits > 0:
+		test = "test" // by the likelihood ratio
 	}
 	rows := [][]string{
 		{"as one", way(b.Pooled)},
 		{"an offset each", way(b.Offset)},
 		{"offsets in k", strings.Join(offsets, ", ")},
-		{test, fmt.Sprintf("p = %s; they make the variance of n %s times as large", probability(b.FTest.PValue), significant(b.VIF, 2))},
+		{test + " of them", fmt.Sprintf("%s; they make the variance of n %s times as large", found, significant(b.VIF, 2))},
 	}
 	p.section("sources", p.fit(rows)...)
 }
