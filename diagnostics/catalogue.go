@@ -377,8 +377,8 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "limits-left-out", Title: "limits are not used", Severity: Warning,
-		Explanation: "A limit takes no part where it bounds nothing (k above zero, with errors in ln k), and for a curve that the measured points leave without a degree of freedom. Where several sources are told apart, each with an offset of its own, limits share the offset of their source; a source of which nothing was measured has limits alone, and these bound its offset from one side only: the likelihood is largest where the offset makes them say nothing.",
-		Cure:        "measure where the limits are, or at more temperatures; name the source of a limit as that of the points that share its factor",
+		Explanation: "A limit takes no part where it bounds nothing (k above zero, with errors in ln k), and for a curve that the measured points leave without a degree of freedom, the exponent test too. Where several sources are told apart, each with an offset of its own, limits share the offset of their source; a source of which nothing was measured has limits alone, and these bound its offset from one side only: the likelihood is largest where the offset makes them say nothing.",
+		Cure:        "measure where the limits are, or at more temperatures",
 	},
 	{
 		Code: "limit-contradicted", Title: "a limit contradicts the measured points", Severity: Warning,

@@ -862,12 +862,15 @@ func (a *assessor) findOutliers() {
 			far++
 			continue
 		}
-		way := "above"
+		way, verb := "above", "lies"
+		if len(f.points) > 1 {
+			verb = "lie"
+		}
 		if f.residual < 0 {
 			way = "below"
 		}
-		a.find("outlier", fmt.Sprintf("%s lies %s standard deviations %s the %s curve, %s after Bonferroni for %d entries",
-			a.place(f), number(math.Abs(float64(f.Studentised)), 1), way, f.Curve, pIs(float64(f.OutlierP)), a.data.sample.Len()), f.Rows,
+		a.find("outlier", fmt.Sprintf("%s %s %s standard deviations %s the %s curve, %s after Bonferroni for %d entries",
+			a.place(f), verb, number(math.Abs(float64(f.Studentised)), 1), way, f.Curve, pIs(float64(f.OutlierP)), a.data.sample.Len()), f.Rows,
 			map[string]Real{"studentised": f.Studentised, "p_value": f.OutlierP, "t_k": f.T})
 	}
 	if far > 0 {

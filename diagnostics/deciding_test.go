@@ -230,6 +230,15 @@ func TestOutlier(t *testing.T) {
 	if f := a.Findings[i]; !slices.Equal(f.Rows, []int{7}) || !strings.Contains(f.Message, "line 7 at 315 K lies") || !strings.Contains(f.Message, "below") {
 		t.Errorf("%+v", f)
 	}
+	for row, f := range map[int]float64{20: 1.001, 21: 0.999} { // a mean of three rows
+		p := s.Points[5]
+		p.Row, p.K = row, p.K*f
+		s.Points = append(s.Points, p)
+	}
+	a = mustAssess(t, s, quick())
+	if i = slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "outlier" }); i < 0 || !strings.Contains(a.Findings[i].Message, "21 at 315 K lie ") {
+		t.Errorf("three rows: %+v", a.Findings)
+	}
 	quiet := mustAssess(t, lineSet(12, 290, 345, 60000, 0.004, 3), quick())
 	for _, code := range []string{"outlier", "deciding-point"} {
 		if quiet.finding(code) {

@@ -137,17 +137,25 @@ func (a *assessor) limitFindings() {
 				others = append(others, i)
 			}
 		}
-		a.find("limits-left-out", fmt.Sprintf("%s: %s left out; %s", a.set.Places(these), count(len(these), "limit"), why), rows(these), nil)
+		f := newFinding("limits-left-out", fmt.Sprintf("%s: %s left out; %s", a.set.Places(these), count(len(these), "limit"), why), rows(these), nil)
+		if p := a.set.Points[out[0]]; p.K > 0 {
+			f.Cure = "name the source of a limit as that of the points that share its factor"
+			if p.Source != "" {
+				f.Cure = "measure k there as well, or name the source as that of the points that share its factor"
+			}
+		}
+		a.findings = append(a.findings, f)
 		out = others
 	}
 	if len(in) == 0 {
 		return
 	}
-	a.find("limits-approximate", fmt.Sprintf("%s: %s as the probability of its side; the 5 %% of the verdict, and every interval, is then approximate", a.set.Places(in), enter(len(in))), rows(in),
-		map[string]Real{"limits": Real(len(in))})
+	approximate := "the 5 % of the verdict, and every interval, is then approximate"
 	if len(a.power.Warnings) > 0 && a.power.Nu < 1 {
-		a.find("limits-left-out", "the exponent is determined by measured points alone: limits do not stand in for temperatures", rows(in), nil)
+		approximate = "every interval is then approximate. The exponent test takes none of them: limits do not stand in for measured temperatures"
 	}
+	a.find("limits-approximate", fmt.Sprintf("%s: %s as the probability of its side; %s", a.set.Places(in), enter(len(in)), approximate), rows(in),
+		map[string]Real{"limits": Real(len(in))})
 	for i, pt := range a.data.limits {
 		p, ok := a.limitProbability(a.data.sample.Limits[i])
 		if !ok || !(p < limitLevel) {

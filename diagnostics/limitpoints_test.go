@@ -184,6 +184,17 @@ func TestLeftOutLimits(t *testing.T) {
 	if !bytes.Equal(x, y) {
 		t.Error("limits that were left out change the answer")
 	}
+	// The exponent test takes none where the measured points leave it no degree of freedom;
+	// the curves of fewer parameters take them all. No cure speaks of sources: there is one.
+	s = setOf([]float64{280, 290, 300, 310, 320, 330}, []float64{1e-4, 1e-4, 2e-4, 4e-4, 1e-3, 2e-3}, nil)
+	for i := range 3 {
+		s.Points[i].Used, s.Points[i].Limit = false, "<"
+	}
+	few := mustAssess(t, s, quick())
+	i := slices.IndexFunc(few.Findings, func(f Finding) bool { return f.Code == "limits-approximate" })
+	if i < 0 || few.finding("limits-left-out") || !strings.Contains(few.Findings[i].Message, "The exponent test takes none") {
+		t.Errorf("%v", few.Findings)
+	}
 	// A limit that bounds nothing is said to be left out.
 	s = limitedSet()
 	s.Points[0].K = 0

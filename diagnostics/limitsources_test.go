@@ -96,7 +96,9 @@ func TestLimitsBesideSourcesStatedAgainstR(t *testing.T) {
 // A limit of a source that measured nothing is left out with its reason, and the rest is
 // as if it were not there; so is one without a source among sources.
 func TestSourceOfLimitsOnly(t *testing.T) {
-	for _, c := range []struct{ name, why string }{{"E", "E has no measured k"}, {"", "names no source"}} {
+	for _, c := range []struct{ name, why, cure string }{
+		{"E", "E has no measured k", "measure k there as well"}, {"", "names no source", "name the source"},
+	} {
 		s := limitedSources(t)
 		p := s.Points[0]
 		p.Row, p.T, p.K, p.Source = 40, 320, 1e-3, c.name
@@ -105,7 +107,7 @@ func TestSourceOfLimitsOnly(t *testing.T) {
 		if got := rows(a, "limits-left-out"); !slices.Equal(got, []int{40}) || a.Dataset.Limits != 4 || a.Data[18].Used {
 			t.Errorf("%q: rows %v left out, %d limits", c.name, got, a.Dataset.Limits)
 		}
-		if i := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "limits-left-out" }); i < 0 || !strings.Contains(a.Findings[i].Message, c.why) {
+		if i := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "limits-left-out" }); i < 0 || !strings.Contains(a.Findings[i].Message, c.why) || !strings.HasPrefix(a.Findings[i].Cure, c.cure) {
 			t.Errorf("%q: findings %v", c.name, a.Findings)
 		}
 		if a.Curvature.Exponent != without.Curvature.Exponent || a.BetweenSources.VIF != without.BetweenSources.VIF {

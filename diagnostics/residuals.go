@@ -126,7 +126,7 @@ func (a *assessor) checkResiduals() {
 	}
 	n := s.Len()
 	if c.Spread.PValue < residualLevel {
-		f := newFinding("scatter-not-even", fmt.Sprintf("the scatter about %s %s with T (p = %s); at N = %d, evenly spaced in 1/T, this check sees a threefold change over the range in %s of sets",
+		f := newFinding("scatter-not-even", fmt.Sprintf("the scatter about %s %s with T (p = %s); at N = %d, evenly spaced in 1/T, this check sees a threefold change over the range in %s sets",
 			c.Curve, c.Trend, pText(float64(c.Spread.PValue)), n, share(c.Spread.Power)), nil,
 			map[string]Real{"p_value": c.Spread.PValue, "power": c.Spread.Power})
 		f.Cure = a.evenCure(r, c.Trend == "grows")
@@ -169,12 +169,12 @@ func (a *assessor) rises(r *fit.Result) bool {
 	return lnKAt(r, high, a.opt.Confidence).Value > lnKAt(r, low, a.opt.Confidence).Value
 }
 
-// share writes a probability in per cent.
+// share writes a probability as a share of what follows.
 func share(p Real) string {
 	if !p.Known() {
 		return "most"
 	}
-	return fmt.Sprintf("%.0f %%", 100*float64(p))
+	return fmt.Sprintf("%.0f %% of", 100*float64(p))
 }
 
 // compareModels compares errors of ln k with errors of k. The other model is proposed
