@@ -107,6 +107,9 @@ func TestNumberBetween(t *testing.T) {
 // Straight data of any slope, E = 0 included, hardly ever look like a maximum: fewer
 // than 0.5 % of 2000 sets each.
 func TestRateMaximumFalseAlarms(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a simulation of one goroutine")
+	}
 	o := lean()
 	for _, n := range []int{5, 8, 12, 20} {
 		for _, e := range []float64{0, 500, 2000, -2000, 60000} {
@@ -133,6 +136,9 @@ func TestRateMaximumFalseAlarms(t *testing.T) {
 // Errors in k leave ln k little scatter at the hot end, where neighbours of a fine
 // series overtake each other: no maximum.
 func TestRateMaximumOfManyNoisyPoints(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a simulation of one goroutine")
+	}
 	o := lean()
 	o.ErrorModel = fit.Absolute
 	for seed := range uint64(10) {

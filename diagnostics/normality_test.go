@@ -61,6 +61,9 @@ func TestNormalityStopsEarly(t *testing.T) {
 // normal errors leave: the test keeps its 1 % there. Against the null of evenly spaced
 // temperatures 4 % to half of such sets were not normal.
 func TestNormalityOfFewUnevenPoints(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a simulation of one goroutine")
+	}
 	for name, c := range map[string]struct {
 		model fit.ErrorModel
 		temps []float64

@@ -135,6 +135,9 @@ func TestFirstThatExtrapolatesWorst(t *testing.T) {
 
 // On straight data it is rare, and where it is raised a curve ranks first.
 func TestFirstExtrapolatesWorstOnStraightData(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a simulation of one goroutine")
+	}
 	o := quick()
 	o.Designs = new(DesignCache)
 	raised := 0

@@ -184,6 +184,9 @@ func TestMomentsOfTheSpreadNull(t *testing.T) {
 // On straight data each check is silent in 99 % of sets, on designs other than that
 // of the null too.
 func TestSizeOfResidualChecks(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a simulation of one goroutine")
+	}
 	draws := 4000
 	for name, temps := range map[string][]float64{
 		"six":      {280, 290, 300, 310, 320, 340},

@@ -251,6 +251,9 @@ func TestRegionEndsBesideBound(t *testing.T) {
 // TestRegionCoverage: where estimates are far from normal the profile holds the truth in
 // 95 % of sets, and Student's t may not. 10 points between 250 and 400 K, seeds fixed.
 func TestRegionCoverage(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a simulation of one goroutine")
+	}
 	const sets = 600
 	for _, study := range []struct {
 		curve    string
