@@ -11,7 +11,11 @@ import "math"
 // 1/E_loc is a straight line in 1/T. There is no value where δx >= 1.
 type Deformed struct{}
 
-var _ Seeded = Deformed{}
+var (
+	_ Seeded  = Deformed{}
+	_ Written = Deformed{}
+	_ Claimed = Deformed{}
+)
 
 // Info implements Curve.
 func (Deformed) Info() Info {
@@ -138,4 +142,42 @@ var deformedArrhenius = Form{
 		l, _ := logShare(p[2] * u)
 		p[0] = q[0] - p[1]*u*l
 	},
+}
+
+// Write implements Written: exp(ln A + (1/d) ln(1 - c/T)), c = dE/R. Where 1/d is so large
+// that the logarithm would lose its digits, 1e-7 of ln k, the bend is no larger, and the straight
+// line is written.
+func (Deformed) Write(w Writer, tRef float64, p []float64) string {
+	power := p[1] / p[2]
+	if !(math.Abs(power) < 1e9) || power == 0 {
+		return w.path(tRef, p[0], p[1])
+	}
+	c := p[2] / (1 + p[2]/(GasConstant*tRef)) / GasConstant
+	gap := w.TMin - c
+	l := math.Log1p(-c / w.TMin)
+	return "exp(" + w.Number(p[0]-power*math.Log1p(-c/tRef), 1) +
+		signed(w.Number(power, math.Abs(l))) + " ln(1" + signed(w.Number(-c, math.Abs(power)/gap+1/gap)) + " K/T))"
+}
+
+// Claims implements Claimed.
+func (Deformed) Claims() Claims {
+	return Claims{
+		P:       [][]float64{{-3, 60e3, 6000}, {-30, 12e3, -600}, {20, 90e3, 1e-3}, {1, -15e3, 2000}, {2, 30e3, -2400}},
+		Extreme: [][]float64{{-700, 1e6, 50}, {700, -1e6, -2000}, {0, 0, 0}, {0, 0, 9}, {3, 5e4, 0}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			return p[0] + p[1]/p[2]*math.Log1p(p[2]/(GasConstant*tRef)), 0
+		},
+		Physical: map[string]func(Frame, []float64, float64) float64{
+			"deformed-arrhenius": func(fr Frame, q []float64, t float64) float64 {
+				return q[0] + math.Log1p(-q[2]*kilo*q[1]/(GasConstant*t))/q[2]
+			},
+		},
+		Undefined: []string{"d"},
+		Relations: []Relation{
+			{"1/E_loc = 1/E - d/RT", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				const t = 321.
+				return 1 / eLoc(t), 1/(kilo*form("deformed-arrhenius", "E")) - form("deformed-arrhenius", "d")/(GasConstant*t), 1e-2
+			}},
+		},
+	}
 }

@@ -15,7 +15,12 @@ import "math"
 // the curve power-prefactor and one column more.
 type DriftingHeatCapacity struct{}
 
-var _ Basis = DriftingHeatCapacity{}
+var (
+	_ Basis    = DriftingHeatCapacity{}
+	_ Written  = DriftingHeatCapacity{}
+	_ Profiled = DriftingHeatCapacity{}
+	_ Claimed  = DriftingHeatCapacity{}
+)
 
 // Info implements Curve.
 func (DriftingHeatCapacity) Info() Info {
@@ -142,4 +147,51 @@ var eyringDrifting = Form{
 		u := (fr.TForm - fr.TRef) / (GasConstant * fr.TForm * fr.TRef)
 		p[0] = lnk - p[1]*u - p[2]*bend(fr.TRef, fr.TForm) - p[3]*sinhLess(fr.TRef, fr.TForm)
 	},
+}
+
+// Write implements Written: e^-r = T_ref/T and sinh r = (T/T_ref - T_ref/T)/2.
+func (DriftingHeatCapacity) Write(w Writer, tRef float64, p []float64) string {
+	n := p[2] - p[3]
+	lnA := p[0] + p[1]/(GasConstant*tRef) - p[2] - n*math.Log(tRef/w.T0)
+	b := p[1]/GasConstant - (p[2]-p[3]/2)*tRef
+	number := w.Number
+	w.Number = func(x, slope float64) string { return number(x, 4./3*slope) } // four share what is allowed
+	return "exp(" + w.Number(lnA, 1) + w.power(n, false) + w.overT(b) + signed(w.Number(p[3]/(2*tRef), w.TMax)) + " T/K)"
+}
+
+// Profiled implements Profiled.
+func (DriftingHeatCapacity) Profiled() map[string]string { return nil }
+
+// Claims implements Claimed.
+func (DriftingHeatCapacity) Claims() Claims {
+	return Claims{
+		P:       [][]float64{{-3, 60e3, 2.3, 0}, {-3, 60e3, 2.3, 1.5}, {-30, 15e3, -7, -4}, {5, 100e3, 40, 0.3}, {1, 55e3, -26, 80}},
+		Extreme: [][]float64{{-700, 1e6, 300, 900}, {700, -1e6, -300, -900}, {0, 0, 0, 0}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			if p[3] != 0 {
+				return math.NaN(), math.NaN()
+			}
+			return p[0] + p[1]/(GasConstant*tRef) - p[2], p[2]
+		},
+		Physical: map[string]func(Frame, []float64, float64) float64{
+			"eyring-drifting-heat-capacity": func(fr Frame, q []float64, t float64) float64 {
+				// ΔC_p‡ = α + βT: ΔH‡ = ΔH‡(T_0) + α(T - T_0) + β(T² - T_0²)/2, and
+				// ΔS‡ = ΔS‡(T_0) + α ln(T/T_0) + β(T - T_0).
+				t0, beta := fr.TForm, q[3]
+				alpha := q[2] - beta*t0
+				dH := kilo*q[0] + alpha*(t-t0) + beta*(t*t-t0*t0)/2
+				dS := q[1] + alpha*math.Log(t/t0) + beta*(t-t0)
+				return lnUniversal(t) + dS/GasConstant - dH/(GasConstant*t) - fr.LnPerSecond
+			},
+		},
+		Relations: []Relation{
+			{"E_loc(T_ref) = ΔH‡(T_ref) + RT_ref", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				return eLoc(fr.TForm), kilo*form("eyring-drifting-heat-capacity", "dH") + GasConstant*fr.TForm, 1e6
+			}},
+			{"dE_loc/dT = ΔC_p‡ + R at T_ref", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				// E_loc is a parabola in T: the central difference is exact.
+				return (eLoc(fr.TForm+50) - eLoc(fr.TForm-50)) / 100, form("eyring-drifting-heat-capacity", "dCp") + GasConstant, 1e5
+			}},
+		},
+	}
 }

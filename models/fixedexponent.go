@@ -1,14 +1,23 @@
 package models
 
+import "math"
+
 // FixedExponent is ln k = a + m ln(T/T_ref) - E x, x = (1/T - 1/T_ref)/R, with a
 // fixed exponent m. Canonical parameters: a = ln k(T_ref), E in J/mol.
 type FixedExponent struct {
 	M    float64
 	info Info
 	form Form
+	// physical is ln k from the parameters of the form, for Claims.
+	physical func(fr Frame, q []float64, t float64) float64
 }
 
-var _ Basis = FixedExponent{}
+var (
+	_ Basis    = FixedExponent{}
+	_ PowerLaw = FixedExponent{}
+	_ Written  = FixedExponent{}
+	_ Claimed  = FixedExponent{}
+)
 
 func fixedParams(symbol, name string) []Param {
 	return []Param{
@@ -25,7 +34,9 @@ func Straight() FixedExponent {
 		Summary: "one constant barrier and a prefactor that does not depend on T",
 		Source:  "S. Arrhenius, Z. Phys. Chem. 4 (1889) 226",
 		Params:  fixedParams("E", "activation energy"),
-	}, arrhenius}
+	}, arrhenius, func(_ Frame, q []float64, t float64) float64 {
+		return q[0] - kilo*q[1]/(GasConstant*t)
+	}}
 }
 
 // RootPrefactor returns ln k = a + 1/2 ln T - b/T (collision theory).
@@ -36,7 +47,9 @@ func RootPrefactor() FixedExponent {
 		Summary: "one barrier with the T^1/2 prefactor of collision theory",
 		Source:  "M. Trautz, Z. Anorg. Allg. Chem. 96 (1916) 1; W. C. McC. Lewis, J. Chem. Soc. 113 (1918) 471",
 		Params:  fixedParams("E0", "threshold energy"),
-	}, collision}
+	}, collision, func(fr Frame, q []float64, t float64) float64 {
+		return q[0] + 0.5*math.Log(t/fr.TForm) - kilo*q[1]/(GasConstant*t)
+	}}
 }
 
 // LinearPrefactor returns ln k = a + ln T - b/T (transition-state theory).
@@ -47,7 +60,9 @@ func LinearPrefactor() FixedExponent {
 		Summary: "one barrier with the k_B T/h prefactor of transition-state theory",
 		Source:  "H. Eyring, J. Chem. Phys. 3 (1935) 107",
 		Params:  fixedParams("dH", "enthalpy of activation"),
-	}, eyring}
+	}, eyring, func(fr Frame, q []float64, t float64) float64 {
+		return lnUniversal(t) + q[1]/GasConstant - kilo*q[0]/(GasConstant*t) - fr.LnPerSecond
+	}}
 }
 
 // Info implements Curve.
@@ -105,5 +120,25 @@ func check(np int, t, p, f, jac []float64) {
 	}
 	if jac != nil {
 		mustLen("Jacobian", len(jac), np*len(t))
+	}
+}
+
+// Exponent implements PowerLaw.
+func (c FixedExponent) Exponent([]float64) (n float64, fitted bool) { return c.M, false }
+
+// Write implements Written.
+func (c FixedExponent) Write(w Writer, tRef float64, p []float64) string {
+	return w.powerLaw(tRef, p[0], c.M, p[1], true)
+}
+
+// Claims implements Claimed.
+func (c FixedExponent) Claims() Claims {
+	return Claims{
+		P:       [][]float64{{-3, 60e3}, {-28.5, 12e3}, {20, 250e3}, {1, -5e3}, {2, 0}},
+		Extreme: [][]float64{{-700, 1e6}, {700, -1e6}, {0, 0}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			return p[0] + p[1]/(GasConstant*tRef), c.M
+		},
+		Physical: map[string]func(Frame, []float64, float64) float64{c.form.Name: c.physical},
 	}
 }

@@ -137,15 +137,73 @@ func TestSelect(t *testing.T) {
 
 // Curves beyond the default are fitted only when named.
 func TestDefault(t *testing.T) {
-	var more []string
-	def := curveNames(Default())
 	for _, c := range All() {
-		if n := c.Info().Name; !strings.Contains(def, n) {
-			more = append(more, n)
+		name := c.Info().Name
+		isDefault := slices.ContainsFunc(Default(), func(d Curve) bool { return d.Info().Name == name })
+		if IsDefault(c) != isDefault {
+			t.Errorf("IsDefault says %v of %s", IsDefault(c), name)
+		}
+		want := curveNames(Default())
+		if !isDefault {
+			want += "," + name
+		}
+		for _, n := range append([]string{name}, formNames(c)...) {
+			if got, err := Select("+" + n); err != nil || curveNames(got) != want {
+				t.Errorf("Select(+%s) = %s, %v; want %s", n, curveNames(got), err, want)
+			}
 		}
 	}
-	if got := strings.Join(more, ","); got != "drifting-heat-capacity,tunnelling-wigner,tunnelling-bell,vogel,deformed" {
-		t.Errorf("fitted only when named: %s", got)
+	if IsDefault(planted{}) {
+		t.Error("a curve that is not registered is no default")
+	}
+}
+
+func formNames(c Curve) []string {
+	var ns []string
+	for _, f := range c.Forms() {
+		ns = append(ns, f.Name)
+	}
+	return ns
+}
+
+// planted is a curve that is not in the catalogue.
+type planted struct{ Vogel }
+
+func (planted) Info() Info {
+	in := Vogel{}.Info()
+	in.Name = "planted"
+	return in
+}
+
+func (planted) Forms() []Form {
+	fs := slices.Clone(Vogel{}.Forms())
+	fs[0].Name = "planted-form"
+	return fs
+}
+
+// One line more in the catalogue is found, listed and selected, by its own name and that
+// of its form, and fitted only when named.
+func TestOneLineRegisters(t *testing.T) {
+	r := append(slices.Clone(catalogue), registry{{planted{}, false}}...)
+	for _, n := range []string{"planted", "planted-form"} {
+		if c, err := r.lookup(n); err != nil || c.Info().Name != "planted" {
+			t.Errorf("lookup(%s): %v", n, err)
+		}
+		if got, err := r.selected("+" + n); err != nil || curveNames(got) != curveNames(Default())+",planted" {
+			t.Errorf("+%s gives %s, %v", n, curveNames(got), err)
+		}
+		if !slices.Contains(r.names(), n) {
+			t.Errorf("%s is not listed", n)
+		}
+		if _, err := Lookup(n); err == nil {
+			t.Errorf("the catalogue itself has %s", n)
+		}
+	}
+	if got := curveNames(r.all()); got != curveNames(All())+",planted" {
+		t.Errorf("all: %s", got)
+	}
+	if got := curveNames(r.defaults()); got != curveNames(Default()) {
+		t.Errorf("defaults: %s", got)
 	}
 }
 
@@ -221,20 +279,14 @@ func TestZeroBarrier(t *testing.T) {
 // ln k stays, and ln k moves by ln N_A. E/k_B in K per molecule is E/R in K.
 func TestPerMoleAndPerMolecule(t *testing.T) {
 	lnNA := math.Log(6.02214076e23)
+	temps := temps[1:] // claims hold from 250 K
 	for _, c := range All() {
-		np := len(c.Info().Params)
-		for _, par := range c.Info().Params {
-			if par.Unit != "k" && par.Unit != "J/mol" && par.Unit != "1" && par.Unit != "K" {
-				t.Errorf("%s: unit %q of %s is not known to this test", c.Info().Name, par.Unit, par.Symbol)
-			}
+		claimed, ok := c.(Claimed)
+		if !ok {
+			t.Errorf("%s states no claims", c.Info().Name)
+			continue
 		}
-		p := []float64{-30, 12e3, -28, 40e3}[:np]
-		if u := c.Info().Params[np-1].Unit; np > 2 && c.Info().Params[2].Unit != "k" {
-			p[2], p[np-1] = 1.5, 1.5
-			if u == "K" {
-				p[2] = 120
-			}
-		}
+		p := claimed.Claims().P[0]
 		q := slices.Clone(p)
 		for j, par := range c.Info().Params {
 			if par.Unit == "k" {

@@ -7,7 +7,12 @@ import "math"
 // parameters: a1, E1, a2, E2 with a_i = ln k_i(T_ref), E_i in J/mol, E1 < E2.
 type Parallel struct{}
 
-var _ Shaped = Parallel{}
+var (
+	_ Shaped   = Parallel{}
+	_ Written  = Parallel{}
+	_ Profiled = Parallel{}
+	_ Claimed  = Parallel{}
+)
 
 // Info implements Curve.
 func (Parallel) Info() Info {
@@ -125,3 +130,45 @@ func (Parallel) ToShape(p []float64) (a, e float64, q []float64) {
 
 // Forms implements Curve.
 func (Parallel) Forms() []Form { return []Form{parallelBarriers} }
+
+// Write implements Written.
+func (Parallel) Write(w Writer, tRef float64, p []float64) string {
+	return "[" + w.path(tRef, p[0], p[1]) + " + " + w.path(tRef, p[2], p[3]) + "]"
+}
+
+// Profiled implements Profiled: both paths.
+func (Parallel) Profiled() map[string]string {
+	return map[string]string{"ln_A1": "ln_A1", "E1": "E1", "ln_A2": "ln_A2", "E2": "E2"}
+}
+
+// Claims implements Claimed.
+func (Parallel) Claims() Claims {
+	return Claims{
+		P:       [][]float64{{-3, 30e3, -4, 80e3}, {-30, 10e3, -27, 55e3}, {-30, -3.5e3, -29, 11e3}, {5, 50e3, -6, 200e3}},
+		Extreme: [][]float64{{700, -1e6, -700, 1e6}, {-700, -1e6, 700, 1e6}, {0, 5e4, 0, 5e4}, {1, 5e4, 0, 5e4}, {0, 4e4, -40, 5e4}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			a1, a2 := p[0]+p[1]/(GasConstant*tRef), p[2]+p[3]/(GasConstant*tRef)
+			high, low := math.Max(a1, a2), math.Min(a1, a2)
+			return high + math.Log(1+math.Exp(low-high)), 0
+		},
+		Ascending: [][2]int{{1, 3}},
+		Physical: map[string]func(Frame, []float64, float64) float64{
+			"parallel-barriers": func(fr Frame, q []float64, t float64) float64 {
+				return math.Log(math.Exp(q[0]-kilo*q[1]/(GasConstant*t)) + math.Exp(q[2]-kilo*q[3]/(GasConstant*t)))
+			},
+		},
+		Undefined: []string{"T_x"},
+		Relations: []Relation{
+			{"k1(T_x) = k2(T_x)", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				path := func(lnA, e string) float64 {
+					return form("parallel-barriers", lnA) - kilo*form("parallel-barriers", e)/(GasConstant*form("parallel-barriers", "T_x"))
+				}
+				return path("ln_A1", "E1"), path("ln_A2", "E2"), 1e3
+			}},
+			{"E_loc(T_x) = (E1 + E2)/2", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				mean := 500 * (form("parallel-barriers", "E1") + form("parallel-barriers", "E2"))
+				return eLoc(form("parallel-barriers", "T_x")), mean, 1e7
+			}},
+		},
+	}
+}

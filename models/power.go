@@ -11,7 +11,12 @@ import "math"
 // other two; a + n ln T - b/T in its own terms loses ten digits on a range of 10 K.
 type PowerPrefactor struct{}
 
-var _ Basis = PowerPrefactor{}
+var (
+	_ Basis    = PowerPrefactor{}
+	_ PowerLaw = PowerPrefactor{}
+	_ Written  = PowerPrefactor{}
+	_ Claimed  = PowerPrefactor{}
+)
 
 // Info implements Curve.
 func (PowerPrefactor) Info() Info {
@@ -88,3 +93,48 @@ func (PowerPrefactor) ELoc(tRef float64, t, p, f, jac []float64) {
 
 // Forms implements Curve.
 func (PowerPrefactor) Forms() []Form { return []Form{modifiedArrhenius, eyringHeatCapacity} }
+
+// Exponent implements PowerLaw.
+func (PowerPrefactor) Exponent(p []float64) (n float64, fitted bool) { return p[2], true }
+
+// Write implements Written.
+func (PowerPrefactor) Write(w Writer, tRef float64, p []float64) string {
+	return w.powerLaw(tRef, p[0], p[2], p[1]-p[2]*GasConstant*tRef, false)
+}
+
+// Claims implements Claimed.
+func (PowerPrefactor) Claims() Claims {
+	return Claims{
+		P:       [][]float64{{-3, 60e3, 0}, {-3, 60e3, 2.3}, {-30, 15e3, -7}, {5, 100e3, 40}},
+		Extreme: [][]float64{{-700, 1e6, 300}, {700, -1e6, -300}, {0, 0, 0}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			// E_ref = E + nRT_ref
+			return p[0] + p[1]/(GasConstant*tRef) - p[2], p[2]
+		},
+		Physical: map[string]func(Frame, []float64, float64) float64{
+			"modified-arrhenius": func(fr Frame, q []float64, t float64) float64 {
+				return q[0] + q[1]*math.Log(t/fr.TForm) - kilo*q[2]/(GasConstant*t)
+			},
+			"eyring-heat-capacity": func(fr Frame, q []float64, t float64) float64 {
+				dH := kilo*q[0] + q[2]*(t-fr.TForm)
+				dS := q[1] + q[2]*math.Log(t/fr.TForm)
+				return lnUniversal(t) + dS/GasConstant - dH/(GasConstant*t) - fr.LnPerSecond
+			},
+		},
+		Relations: []Relation{
+			{"n = 1 + ΔC_p‡/R", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				n := form("modified-arrhenius", "n")
+				return n, 1 + form("eyring-heat-capacity", "dCp")/GasConstant, 1 + math.Abs(n)
+			}},
+			{"E_loc(T) = ΔH‡(T) + RT", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				const t = 321.
+				dH := kilo*form("eyring-heat-capacity", "dH") + form("eyring-heat-capacity", "dCp")*(t-fr.TForm)
+				return eLoc(t), dH + GasConstant*t, 1e6
+			}},
+			{"E_loc(T) = E + nRT", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				const t = 321.
+				return eLoc(t), kilo*form("modified-arrhenius", "E") + form("modified-arrhenius", "n")*GasConstant*t, 1e6
+			}},
+		},
+	}
+}

@@ -6,13 +6,16 @@ import (
 	"strings"
 )
 
+// registry lists curves, some of which are fitted when none are named.
+type registry []struct {
+	curve     Curve
+	isDefault bool
+}
+
 // catalogue holds every curve in the order in which it is listed. A new curve is
 // one file and one line here; Default marks the candidates that are fitted when
 // none are named, since a long list finds curvature in noise.
-var catalogue = []struct {
-	curve     Curve
-	isDefault bool
-}{
+var catalogue = registry{
 	{Straight(), true},
 	{RootPrefactor(), true},
 	{LinearPrefactor(), true},
@@ -27,10 +30,10 @@ var catalogue = []struct {
 }
 
 // All returns every registered curve.
-func All() []Curve { return filter(func(bool) bool { return true }) }
+func All() []Curve { return catalogue.all() }
 
 // Default returns the curves that are fitted unless others are named.
-func Default() []Curve { return filter(func(d bool) bool { return d }) }
+func Default() []Curve { return catalogue.defaults() }
 
 // IsDefault reports whether a curve is fitted unless others are named.
 func IsDefault(c Curve) bool {
@@ -42,9 +45,13 @@ func IsDefault(c Curve) bool {
 	return false
 }
 
-func filter(keep func(isDefault bool) bool) []Curve {
+func (r registry) all() []Curve { return r.filter(func(bool) bool { return true }) }
+
+func (r registry) defaults() []Curve { return r.filter(func(d bool) bool { return d }) }
+
+func (r registry) filter(keep func(isDefault bool) bool) []Curve {
 	var cs []Curve
-	for _, e := range catalogue {
+	for _, e := range r {
 		if keep(e.isDefault) {
 			cs = append(cs, e.curve)
 		}
@@ -53,8 +60,10 @@ func filter(keep func(isDefault bool) bool) []Curve {
 }
 
 // Lookup finds a curve by its own name or by the name of one of its forms.
-func Lookup(name string) (Curve, error) {
-	for _, e := range catalogue {
+func Lookup(name string) (Curve, error) { return catalogue.lookup(name) }
+
+func (r registry) lookup(name string) (Curve, error) {
+	for _, e := range r {
 		if e.curve.Info().Name == name {
 			return e.curve, nil
 		}
@@ -64,13 +73,15 @@ func Lookup(name string) (Curve, error) {
 			}
 		}
 	}
-	return nil, fmt.Errorf("models: no curve or form is named %q; known are %s", name, strings.Join(Names(), ", "))
+	return nil, fmt.Errorf("models: no curve or form is named %q; known are %s", name, strings.Join(r.names(), ", "))
 }
 
 // Names lists every curve and form name, sorted.
-func Names() []string {
+func Names() []string { return catalogue.names() }
+
+func (r registry) names() []string {
 	var names []string
-	for _, e := range catalogue {
+	for _, e := range r {
 		names = append(names, e.curve.Info().Name)
 		for _, f := range e.curve.Forms() {
 			names = append(names, f.Name)
@@ -83,20 +94,22 @@ func Names() []string {
 // Select reads a list of candidates: "straight,parallel" replaces the defaults,
 // "+vogel" adds to them, "all" takes the whole catalogue. A curve named twice,
 // by two of its forms perhaps, is taken once. An empty list gives the defaults.
-func Select(list string) ([]Curve, error) {
+func Select(list string) ([]Curve, error) { return catalogue.selected(list) }
+
+func (r registry) selected(list string) ([]Curve, error) {
 	list = strings.TrimSpace(list)
 	switch list {
 	case "":
-		return Default(), nil
+		return r.defaults(), nil
 	case "all":
-		return All(), nil
+		return r.all(), nil
 	}
 	var cs []Curve
 	if strings.HasPrefix(list, "+") {
-		cs = Default()
+		cs = r.defaults()
 	}
 	for _, name := range strings.Split(list, ",") {
-		c, err := Lookup(strings.TrimPrefix(strings.TrimSpace(name), "+"))
+		c, err := r.lookup(strings.TrimPrefix(strings.TrimSpace(name), "+"))
 		if err != nil {
 			return nil, err
 		}

@@ -1,5 +1,7 @@
 package models
 
+import "math"
+
 // Series is ln k = -ln(1/k1 + 1/k2) with ln k_i = a_i - E_i x, x = (1/T - 1/T_ref)/R:
 // two steps one after the other, each with its own constant barrier. Canonical
 // parameters: a1, E1, a2, E2 with a_i = ln k_i(T_ref), E_i in J/mol, E1 < E2.
@@ -10,7 +12,13 @@ package models
 // rival.
 type Series struct{}
 
-var _ Shaped = Series{}
+var (
+	_ Shaped   = Series{}
+	_ Written  = Series{}
+	_ Profiled = Series{}
+	_ ReadAs   = Series{}
+	_ Claimed  = Series{}
+)
 
 // Info implements Curve.
 func (Series) Info() Info {
@@ -145,4 +153,67 @@ var reversibleInactivation = Form{
 		p[0] = p[2] + dh*(q[3]-fr.TRef)/(GasConstant*q[3]*fr.TRef)
 		lowerFirst(p)
 	},
+}
+
+// Write implements Written.
+func (Series) Write(w Writer, tRef float64, p []float64) string {
+	return "1/[1/(" + w.path(tRef, p[0], p[1]) + ") + 1/(" + w.path(tRef, p[2], p[3]) + ")]"
+}
+
+// Profiled implements Profiled: both steps, of which that with the higher barrier is the
+// active catalyst of reversible-inactivation.
+func (Series) Profiled() map[string]string {
+	return map[string]string{"ln_A1": "ln_A1", "E1": "E1", "ln_A2": "ln_A2", "E2": "E2", "ln_A": "ln_A2", "E": "E2"}
+}
+
+// ReadAs implements ReadAs: with a negative barrier it is a catalyst that is inactivated,
+// and no step has that barrier.
+func (c Series) ReadAs(p []float64) (form int, meaning string) {
+	if p[1] < 0 && p[3] > 0 {
+		return 1, "E is that of the active catalyst, half of which is active at T_half"
+	}
+	return 0, ""
+}
+
+// Claims implements Claimed.
+func (Series) Claims() Claims {
+	return Claims{
+		P:       [][]float64{{-3, 30e3, -2, 80e3}, {-30, 10e3, -33, 55e3}, {-30, -200e3, -29, 51e3}, {5, 50e3, 6, 200e3}},
+		Extreme: [][]float64{{700, -1e6, -700, 1e6}, {-700, -1e6, 700, 1e6}, {0, 5e4, 0, 5e4}, {1, 5e4, 0, 5e4}, {0, 4e4, 40, 5e4}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			a1, a2 := p[0]+p[1]/(GasConstant*tRef), p[2]+p[3]/(GasConstant*tRef)
+			high, low := math.Max(a1, a2), math.Min(a1, a2)
+			return low - math.Log(1+math.Exp(low-high)), 0
+		},
+		Ascending: [][2]int{{1, 3}},
+		Physical: map[string]func(Frame, []float64, float64) float64{
+			"series-barriers": func(fr Frame, q []float64, t float64) float64 {
+				l1, l2 := q[0]-kilo*q[1]/(GasConstant*t), q[2]-kilo*q[3]/(GasConstant*t)
+				return -math.Log(math.Exp(-l1) + math.Exp(-l2))
+			},
+			"reversible-inactivation": func(fr Frame, q []float64, t float64) float64 {
+				return q[0] - kilo*q[1]/(GasConstant*t) - math.Log(1+math.Exp(-kilo*q[2]/GasConstant*(1/t-1/q[3])))
+			},
+		},
+		Undefined: []string{"T_x", "T_half"},
+		Relations: []Relation{
+			{"k1(T_x) = k2(T_x)", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				step := func(lnA, e string) float64 {
+					return form("series-barriers", lnA) - kilo*form("series-barriers", e)/(GasConstant*form("series-barriers", "T_x"))
+				}
+				return step("ln_A1", "E1"), step("ln_A2", "E2"), 1e3
+			}},
+			{"E_loc(T_x) = (E1 + E2)/2", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				mean := 500 * (form("series-barriers", "E1") + form("series-barriers", "E2"))
+				return eLoc(form("series-barriers", "T_x")), mean, 1e7
+			}},
+			{"T_half = T_x", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				return form("reversible-inactivation", "T_half"), form("series-barriers", "T_x"), 1e3
+			}},
+			{"E_loc(T_half) = E - ΔH_d/2", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				e, dh := form("reversible-inactivation", "E"), form("reversible-inactivation", "dH_d")
+				return eLoc(form("reversible-inactivation", "T_half")), kilo*e - 500*dh, 1e7
+			}},
+		},
+	}
 }

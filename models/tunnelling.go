@@ -20,11 +20,21 @@ type Tunnelling struct {
 	// correction gives ln κ and its first two derivatives in u²; NaN where there is
 	// no value.
 	correction func(u2 float64) (l, d1, d2 float64)
-	info       Info
-	form       Form
+	// kappa writes κ with u = c/T, c in K.
+	kappa func(w Writer, c float64) string
+	// physical gives ln κ and u dln κ/du by the textbook formula, and largest a u(300 K)²
+	// near the bound, for Claims.
+	physical func(u float64) (l, slope float64)
+	largest  float64
+	info     Info
+	form     Form
 }
 
-var _ Seeded = Tunnelling{}
+var (
+	_ Seeded  = Tunnelling{}
+	_ Written = Tunnelling{}
+	_ Claimed = Tunnelling{}
+)
 
 // TunnellingWigner returns the curve with κ = 1 + u²/24. With w = u²/24 its
 // dE_loc/dT = 2R w (1 - w)/(1 + w)², which is largest, R/4, at w = 1/3: no wavenumber
@@ -32,32 +42,42 @@ var _ Seeded = Tunnelling{}
 // κ = 4/3. Beyond it the same bend has a second wavenumber, E_loc in the end falls with T,
 // and the first term of a series no longer serves.
 func TunnellingWigner() Tunnelling {
-	return newTunnelling(Info{
+	return Tunnelling{
+		most: math.Sqrt(8), correction: wigner, kappa: writeWigner, largest: 5.5,
+		physical: func(u float64) (l, slope float64) {
+			return math.Log(1 + u*u/24), u * u / 12 / (1 + u*u/24)
+		},
+	}.named(Info{
 		Name: "tunnelling-wigner", Family: "tunnelling-wigner",
 		Formula: "ln k = a - b/T + ln(1 + c/T^2)",
 		Summary: "one barrier and Wigner's correction for tunnelling through its top, for corrections up to a factor of 4/3, beyond which the formula does not serve; the local activation energy can only rise with T, no more than with a prefactor T^(1/4)",
 		Source:  "E. Wigner, Z. Phys. Chem. B 19 (1932) 203",
-	}, "wigner", "k = A exp(-E/RT) (1 + u^2/24), u = h c nu/(k_B T)", math.Sqrt(8), wigner)
+	}, "wigner", "k = A exp(-E/RT) (1 + u^2/24), u = h c nu/(k_B T)")
 }
 
 // TunnellingBell returns the curve with κ = (u/2)/sin(u/2), u < 2π.
 func TunnellingBell() Tunnelling {
-	return newTunnelling(Info{
+	return Tunnelling{
+		most: 0.99 * 2 * math.Pi, correction: bell, kappa: writeBell, largest: 16,
+		physical: func(u float64) (l, slope float64) {
+			return math.Log(u / 2 / math.Sin(u/2)), 1 - u/2/math.Tan(u/2)
+		},
+	}.named(Info{
 		Name: "tunnelling-bell", Family: "tunnelling-bell",
 		Formula: "ln k = a - b/T + ln((c/T)/sin(c/T))",
 		Summary: "one barrier and Bell's correction for tunnelling through a parabola, u < 2π; the local activation energy can only rise with T",
 		Source:  "R. P. Bell, The Tunnel Effect in Chemistry (1980)",
-	}, "bell", "k = A exp(-E/RT) (u/2)/sin(u/2), u = h c nu/(k_B T)", 0.99*2*math.Pi, bell)
+	}, "bell", "k = A exp(-E/RT) (u/2)/sin(u/2), u = h c nu/(k_B T)")
 }
 
-func newTunnelling(info Info, form, formula string, most float64, correction func(float64) (l, d1, d2 float64)) Tunnelling {
+func (c Tunnelling) named(info Info, form, formula string) Tunnelling {
 	info.Trend = TrendRises
 	info.Params = []Param{
 		{"ln_k_ref", "ln k at the reference temperature", "k"},
 		{"E_ref", "local activation energy at the reference temperature", "J/mol"},
 		{"u2_ref", "u^2, with u = h c nu/(k_B T) at the reference temperature", "1"},
 	}
-	c := Tunnelling{most: most, correction: correction, info: info}
+	c.info = info
 	c.form = Form{
 		Name: form, Formula: formula, Source: info.Source,
 		Params: []Param{
@@ -199,4 +219,66 @@ func (c Tunnelling) toCurve(fr Frame, q, p []float64) {
 	l, d, _ := c.correction(s)
 	e := q[1] * kilo
 	p[0], p[1], p[2] = q[0]-e/rt+l, e-2*rt*s*d, s
+}
+
+// Write implements Written.
+func (c Tunnelling) Write(w Writer, tRef float64, p []float64) string {
+	s := p[2]
+	l, d, _ := c.correction(s)
+	a, e := p[0]-l, p[1]+2*GasConstant*tRef*s*d
+	return w.path(tRef, a, e) + c.kappa(w, math.Sqrt(s)*tRef)
+}
+
+// The slopes of ln κ are largest at T_min; the term 1/T_min² stands for the curvature,
+// where c is smaller than its last digit.
+
+func writeWigner(w Writer, c float64) string {
+	t2 := w.TMin * w.TMin
+	text := w.Number(c, c/(12*t2)/(1+c*c/(24*t2))+1/t2)
+	if vanishes(text) {
+		return ""
+	}
+	return " [1 + (" + text + " K/T)^2/24]"
+}
+
+func writeBell(w Writer, c float64) string {
+	half := c / 2 / w.TMin
+	slope := half / 3 // of ln(w/sin w) near w = 0
+	if half > 1e-3 {
+		slope = 1/half - 1/math.Tan(half)
+	}
+	text := w.Number(c/2, slope/w.TMin+1/(w.TMin*w.TMin))
+	if vanishes(text) {
+		return ""
+	}
+	return " (" + text + " K/T)/sin(" + text + " K/T)"
+}
+
+// Claims implements Claimed.
+func (c Tunnelling) Claims() Claims {
+	const second = 100 * 299792458 * 6.62607015e-34 / 1.380649e-23 // h c/k_B in cm K, SI 2019
+	form := c.form.Name
+	return Claims{
+		P:       [][]float64{{-3, 60e3, 0.5}, {-30, 12e3, 4}, {20, 90e3, c.largest}, {1, -5e3, 0.1}},
+		Extreme: [][]float64{{-700, 1e6, 0.01}, {700, -1e6, 1e-12}, {0, 0, 1e-3}, {0, 0, 0}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			// E = E_loc + RT u dln κ/du
+			l, slope := c.physical(math.Sqrt(p[2]))
+			return p[0] + p[1]/(GasConstant*tRef) + slope - l, 0
+		},
+		Physical: map[string]func(Frame, []float64, float64) float64{
+			form: func(fr Frame, q []float64, t float64) float64 {
+				l, _ := c.physical(second * q[2] / t)
+				return q[0] - kilo*q[1]/(GasConstant*t) + l
+			},
+		},
+		Undefined: []string{"nu"},
+		Relations: []Relation{
+			{"E_loc = E - RT u dln κ/du", func(fr Frame, f func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				const t = 321.
+				_, slope := c.physical(second * f(form, "nu") / t)
+				return eLoc(t), kilo*f(form, "E") - GasConstant*t*slope, 1e8
+			}},
+		},
+	}
 }

@@ -10,7 +10,11 @@ import "math"
 // T_0 = 0 is the straight line; at T <= T_0 there is no value.
 type Vogel struct{}
 
-var _ Seeded = Vogel{}
+var (
+	_ Seeded  = Vogel{}
+	_ Written = Vogel{}
+	_ Claimed = Vogel{}
+)
 
 // Info implements Curve.
 func (Vogel) Info() Info {
@@ -112,4 +116,41 @@ var vogelFulcherTammann = Form{
 		p[1] = q[1] * GasConstant * fr.TRef * fr.TRef / (d * d)
 		p[2] = q[2]
 	},
+}
+
+// Write implements Written.
+func (Vogel) Write(w Writer, tRef float64, p []float64) string {
+	t0 := p[2]
+	if t0 == 0 {
+		return w.path(tRef, p[0], p[1])
+	}
+	d, gap := tRef-t0, w.TMin-t0
+	b := p[1] / GasConstant * (d / tRef) * (d / tRef)
+	// T_0 has digits enough for the gap too, of which a small b makes little.
+	t0Text := w.Number(-t0, math.Abs(b)/(gap*gap)+1/gap)
+	return "exp(" + w.Number(p[0]+b/d, 1) + signed(w.Number(-b, 1/gap)) + " K/(T" + signed(t0Text) + " K))"
+}
+
+// Claims implements Claimed.
+func (Vogel) Claims() Claims {
+	return Claims{
+		P:       [][]float64{{-3, 60e3, 60}, {-30, 12e3, 0}, {20, 90e3, 200}, {1, -15e3, 145}, {2, 30e3, 235}},
+		Extreme: [][]float64{{-700, 1e6, 5}, {700, -1e6, 9}, {0, 0, 0}, {0, 0, 9}},
+		Limit: func(tRef float64, p []float64) (lnA, exponent float64) {
+			b := p[1] / GasConstant * math.Pow(1-p[2]/tRef, 2)
+			return p[0] + b/(tRef-p[2]), 0
+		},
+		Physical: map[string]func(Frame, []float64, float64) float64{
+			"vogel-fulcher-tammann": func(fr Frame, q []float64, t float64) float64 {
+				return q[0] - q[1]/(t-q[2])
+			},
+		},
+		Relations: []Relation{
+			{"E_loc = RB T²/(T - T_0)²", func(fr Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64) {
+				const t = 321.
+				share := t / (t - form("vogel-fulcher-tammann", "T0"))
+				return eLoc(t), GasConstant * form("vogel-fulcher-tammann", "B") * share * share, 1e6
+			}},
+		},
+	}
 }

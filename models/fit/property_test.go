@@ -27,23 +27,20 @@ func TestExactDataGiveExactParameters(t *testing.T) {
 			p := []float64{rapid.Float64Range(-10, 5).Draw(rt, "ln k"), e}
 			tolerance := 1e-9
 			switch c := c.(type) {
-			case models.PowerPrefactor:
-				p = append(p, rapid.Float64Range(-30, 30).Draw(rt, "n"))
-			case models.Parallel:
-				// Two paths that cross near the middle, with barriers apart by 10
+			case models.Shaped:
+				// Two paths or steps that cross near the middle, with barriers apart by 10
 				// to 40 over the range of 1/RT, so that both are seen.
 				x := (high - low) / (models.GasConstant * high * low)
 				d := math.Min(rapid.Float64Range(10, 40).Draw(rt, "d")/x, 0.6*maxBarrier)
 				p = append(p, p[0]+rapid.Float64Range(-1, 1).Draw(rt, "ln ratio"), e+d)
 				tolerance = 1e-6
-			case models.Series:
-				x := (high - low) / (models.GasConstant * high * low)
-				d := math.Min(rapid.Float64Range(10, 40).Draw(rt, "d")/x, 0.6*maxBarrier)
-				p = append(p, p[0]+rapid.Float64Range(-1, 1).Draw(rt, "ln ratio"), e+d)
-				tolerance = 1e-6
-			case models.DriftingHeatCapacity:
-				p = append(p, rapid.Float64Range(-30, 30).Draw(rt, "n"), rapid.Float64Range(-30, 30).Draw(rt, "drift"))
-				tolerance = 1e-7
+			case models.Basis:
+				for len(p) < len(c.Info().Params) {
+					p = append(p, rapid.Float64Range(-30, 30).Draw(rt, "exponent, drift"))
+				}
+				if len(p) > 3 {
+					tolerance = 1e-7
+				}
 			case models.Seeded:
 				least, straight, most := c.Bounds(tRef, low, high)
 				q := least + (most-least)*rapid.Float64Range(0.1, 0.9).Draw(rt, "place between the bounds")

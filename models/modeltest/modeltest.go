@@ -1,8 +1,8 @@
 // Package modeltest holds the one conformance suite that every registered curve
 // passes and that a planted bad curve fails.
 //
-// The suite knows a curve in two ways: by its code, and by a Case, which repeats
-// in physical terms what the curve claims to be. No check is left out because a
+// The suite knows a curve in two ways: by its code, and by its claims, which repeat
+// in physical terms what the curve is meant to be. No check is left out because a
 // curve lacks an interface or a case lacks an entry: either is itself a failure.
 package modeltest
 
@@ -11,6 +11,8 @@ import (
 	"math"
 	"regexp"
 	"slices"
+	"strconv"
+	"strings"
 
 	"gonum.org/v1/gonum/diff/fd"
 
@@ -22,48 +24,6 @@ import (
 type Reporter interface {
 	Helper()
 	Errorf(format string, args ...any)
-}
-
-// Kind says which of the optional interfaces a curve must have.
-type Kind int
-
-// The kinds. Every curve is basis times coefficients plus a shape.
-const (
-	Linear Kind = iota + 1 // models.Basis
-	Shaped                 // models.Shaped
-	Seeded                 // models.Seeded
-)
-
-// Case is what the suite must know of a curve from outside the curve's own code.
-type Case struct {
-	Kind Kind
-	// TRef is the reference temperature of the canonical parameters and T the
-	// temperatures of the checks, in K.
-	TRef float64
-	T    []float64
-	// P holds ordinary canonical parameters, Extreme those at which nothing but
-	// finite results is asked for, from 10 K to 100,000 K.
-	P, Extreme [][]float64
-	// Limit gives m and lnA of ln k → lnA + m ln(T/T_ref) as T → ∞; both NaN where ln k
-	// goes faster than any power of T.
-	Limit func(tRef float64, p []float64) (lnA, m float64)
-	// Ascending lists pairs of canonical parameters that stay in order.
-	Ascending [][2]int
-	// Physical gives ln k at T from the parameters of each form, written from
-	// the form's textbook formula.
-	Physical map[string]func(fr models.Frame, q []float64, t float64) float64
-	// Undefined lists the symbols of form parameters that do not exist for every
-	// curve and are NaN then, with their derivatives.
-	Undefined []string
-	Relations []Relation
-}
-
-// Relation is an equation between the parameters of different forms, or between
-// them and the local activation energy. Both sides are of the order of scale or
-// smaller.
-type Relation struct {
-	Name  string
-	Sides func(fr models.Frame, form func(name, symbol string) float64, eLoc func(t float64) float64) (left, right, scale float64)
 }
 
 // The checks of the suite, by the names that failures begin with.
@@ -90,6 +50,9 @@ var checks = []struct {
 	{"form Jacobian", (*suite).formJacobian},
 	{"form formula", (*suite).formFormula},
 	{"form relations", (*suite).formRelations},
+	{"written", (*suite).written},
+	{"profiled", (*suite).profiled},
+	{"read as", (*suite).readAs},
 	{"extreme", (*suite).extreme},
 }
 
@@ -240,24 +203,17 @@ func (s *suite) caseComplete() {
 	if cs.Limit == nil {
 		s.errorf("does not state the limit T → ∞")
 	}
+	kinds := 0
 	_, isBasis := s.c.(models.Basis)
 	_, isShaped := s.c.(models.Shaped)
 	_, isSeeded := s.c.(models.Seeded)
-	switch cs.Kind {
-	case Linear:
-		if !isBasis {
-			s.errorf("the curve does not implement models.Basis")
+	for _, is := range []bool{isBasis, isShaped, isSeeded} {
+		if is {
+			kinds++
 		}
-	case Shaped:
-		if !isShaped {
-			s.errorf("the curve does not implement models.Shaped")
-		}
-	case Seeded:
-		if !isSeeded {
-			s.errorf("the curve does not implement models.Seeded")
-		}
-	default:
-		s.errorf("does not state the kind of the curve")
+	}
+	if kinds != 1 {
+		s.errorf("the curve implements %d of models.Basis, Shaped and Seeded; fitting needs one", kinds)
 	}
 	var forms []string
 	for _, f := range s.c.Forms() {
@@ -481,7 +437,7 @@ func (s *suite) limit() {
 // curves of which it says that nothing is left.
 func (s *suite) trend() {
 	low, high := slices.Min(s.cs.T)/2, slices.Max(s.cs.T)*2
-	if s.cs.Kind == Seeded { // beyond the data its bounds do not hold
+	if _, ok := s.c.(models.Seeded); ok { // beyond the data its bounds do not hold
 		low, high = slices.Min(s.cs.T), slices.Max(s.cs.T)
 	}
 	_, fixed := s.cs.Limit(s.cs.TRef, s.cs.P[0])
@@ -902,6 +858,151 @@ func (s *suite) formRelations() {
 				s.near(fmt.Sprintf("%s: left side for %v", rel.Name, p), left, right, 1e-12*scale)
 			}
 		}
+	}
+}
+
+// written computes k from what is printed of the curve, and looks whether it is as good
+// as the digits were chosen for: with each number at the edge of what rounding may do to
+// it, in all directions, and with many digits.
+func (s *suite) written() {
+	c, ok := s.c.(models.Written)
+	if !ok {
+		s.errorf("the curve does not implement models.Written: k could not be computed from what is published")
+		return
+	}
+	for _, tolerance := range []float64{1e-3, 1e-5} {
+		for _, p := range slices.Concat(s.cs.P, s.flat()) {
+			want := s.lnK(p, s.cs.T...)
+			// Rounding of float64 enters most where 1 less a small number has a logarithm.
+			const slack = 2e-7
+			for seed := range uint64(8) {
+				w := models.Writer{TMin: slices.Min(s.cs.T), TMax: slices.Max(s.cs.T), T0: 298.15}
+				w.Kelvin = func(t float64) string { return fmt.Sprint(t) }
+				number := uint64(0)
+				w.Number = func(x, slope float64) string {
+					if !(slope >= 0) || math.IsInf(slope, 0) || math.IsNaN(x) || math.IsInf(x, 0) {
+						s.errorf("asks for the digits of %g with a slope of %g, for %v", x, slope, p)
+					}
+					if seed > 0 { // as far off as it may be
+						off := math.Min(tolerance/(3*slope), 0.5)
+						if number++; seed>>(number%3)&1 == 0 {
+							off = -off
+						}
+						x += off
+					}
+					return strings.Replace(strconv.FormatFloat(x, 'f', 17, 64), "-", "−", 1)
+				}
+				text := c.Write(w, s.cs.TRef, p)
+				for i, ti := range s.cs.T {
+					k, err := Evaluate(text, ti)
+					if err != nil {
+						s.errorf("%v", err)
+						break
+					}
+					allowed := slack
+					if seed > 0 {
+						allowed += 1.05 * tolerance // slopes are of first order
+					}
+					s.near(fmt.Sprintf("ln k at %g K by %s for %v", ti, text, p), math.Log(k), want[i], allowed)
+				}
+			}
+		}
+	}
+}
+
+// flat are parameters of a Seeded on its straight line and next to it.
+func (s *suite) flat() [][]float64 {
+	sd, ok := s.c.(models.Seeded)
+	if !ok || s.np != 3 {
+		return nil
+	}
+	low, straight, high := sd.Bounds(s.cs.TRef, slices.Min(s.cs.T), slices.Max(s.cs.T))
+	ps := [][]float64{{-2, 5e4, straight}}
+	for _, f := range []float64{1e-15, 1e-9, 1e-6, 1e-3} {
+		if q := straight + f*(high-straight); q > straight {
+			ps = append(ps, []float64{-2, 5e4, q})
+		}
+		if q := straight - f*(straight-low); q < straight {
+			ps = append(ps, []float64{-2, 5e4, q})
+		}
+	}
+	return ps
+}
+
+// profiled checks that every quantity to profile has the same gradient as what it is said
+// to be in the first form, wherever it is taken.
+func (s *suite) profiled() {
+	c, ok := s.c.(models.Profiled)
+	if !ok {
+		return
+	}
+	if _, ok := s.c.(models.Seeded); ok {
+		s.errorf("a seeded curve is always profiled")
+	}
+	if _, ok := s.c.(models.Basis); ok != (c.Profiled() == nil) {
+		s.errorf("a curve is profiled as a whole if it is a Basis, else by its parameters")
+	}
+	row := func(f models.Form, symbol string, p []float64) []float64 {
+		_, jac := fromCurve(f, s.frames()[0], p)
+		for i, par := range f.Params {
+			if par.Symbol == symbol {
+				return jac[i*s.np : (i+1)*s.np]
+			}
+		}
+		return nil
+	}
+	for symbol, name := range c.Profiled() {
+		if !slices.Contains([]string{"ln_A1", "E1", "ln_A2", "E2"}, name) {
+			s.errorf("%s is to be profiled as %s; package fit knows the parameters of two paths", symbol, name)
+		}
+		found := false
+		var first []float64
+		for _, p := range s.cs.P {
+			want := row(s.c.Forms()[0], name, p)
+			if first == nil {
+				first = want
+			}
+			if want == nil || !same(want, first) {
+				s.errorf("the first form has no %s that is linear in the canonical parameters", name)
+				return
+			}
+			for _, f := range s.c.Forms() {
+				if got := row(f, symbol, p); got != nil {
+					found = true
+					if !same(got, want) {
+						s.errorf("%s of %s is not %s", symbol, f.Name, name)
+					}
+				}
+			}
+		}
+		if !found {
+			s.errorf("no form has a %s", symbol)
+		}
+	}
+}
+
+// readAs checks that every form is one in which the curve is read for some parameters, and
+// that all but the first say what it means.
+func (s *suite) readAs() {
+	c, ok := s.c.(models.ReadAs)
+	if !ok {
+		return
+	}
+	n := len(s.c.Forms())
+	seen := make([]bool, n)
+	for _, p := range s.cs.P {
+		i, meaning := c.ReadAs(p)
+		if i < 0 || i >= n {
+			s.errorf("is read in form %d of %d", i, n)
+			return
+		}
+		seen[i] = true
+		if (meaning == "") != (i == 0) {
+			s.errorf("form %d of %v means %q", i, p, meaning)
+		}
+	}
+	if slices.Contains(seen, false) {
+		s.errorf("no parameters of the case are read in one of the forms")
 	}
 }
 

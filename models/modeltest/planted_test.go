@@ -164,6 +164,43 @@ func (b bent4) Info() models.Info {
 	return in
 }
 
+// bentSeries is two steps in series with one of the functions replaced that say how it is
+// published.
+type bentSeries struct {
+	models.Series
+	write    func(w models.Writer, tRef float64, p []float64) string
+	profiled map[string]string
+	readAs   func(p []float64) (int, string)
+}
+
+func (b bentSeries) Write(w models.Writer, tRef float64, p []float64) string {
+	if b.write != nil {
+		return b.write(w, tRef, p)
+	}
+	return b.Series.Write(w, tRef, p)
+}
+
+func (b bentSeries) Profiled() map[string]string {
+	if b.profiled != nil {
+		return b.profiled
+	}
+	return b.Series.Profiled()
+}
+
+func (b bentSeries) ReadAs(p []float64) (int, string) {
+	if b.readAs != nil {
+		return b.readAs(p)
+	}
+	return b.Series.ReadAs(p)
+}
+
+// fewer asks for fewer digits than it needs.
+func fewer(w models.Writer, by float64) models.Writer {
+	number := w.Number
+	w.Number = func(x, slope float64) string { return number(x, slope/by) }
+	return w
+}
+
 func TestPlantedFaultsFail(t *testing.T) {
 	power := models.PowerPrefactor{}
 	plants := []struct {
@@ -330,18 +367,34 @@ func TestPlantedFaultsFail(t *testing.T) {
 		{"Vogel said only to fall", bentSeeded{Seeded: vogel, info: func(in models.Info) models.Info { in.Trend = models.TrendFalls; return in }}, "trend"},
 		{"Bell said to fall", bentSeeded{Seeded: bell, info: func(in models.Info) models.Info { in.Trend = models.TrendFalls; return in }}, "trend"},
 		{"steps in series said to rise", bent4{models.Series{}}, "trend"},
+		{"not written out", bare{vogel}, "written"},
+		{"written at another temperature", bentSeries{write: func(w models.Writer, tRef float64, p []float64) string {
+			return models.Series{}.Write(w, tRef+0.01, p)
+		}}, "written"},
+		{"written with too few digits", bentSeries{write: func(w models.Writer, tRef float64, p []float64) string {
+			return models.Series{}.Write(fewer(w, 2), tRef, p)
+		}}, "written"},
+		{"written as what is no formula", bentSeries{write: func(models.Writer, float64, []float64) string { return "see the JSON" }}, "written"},
+		{"the wrong barrier profiled", bentSeries{profiled: map[string]string{"E": "E1"}}, "profiled"},
+		{"a crossover profiled", bentSeries{profiled: map[string]string{"T_x": "T_x"}}, "profiled"},
+		{"a parameter profiled that no form has", bentSeries{profiled: map[string]string{"E3": "E2"}}, "profiled"},
+		{"a form that is never read", bentSeries{readAs: func([]float64) (int, string) { return 0, "" }}, "read as"},
+		{"a form without a meaning", bentSeries{readAs: func(p []float64) (int, string) { i, _ := models.Series{}.ReadAs(p); return i, "" }}, "read as"},
 		{"a limit that does not exist", bent{Basis: models.DriftingHeatCapacity{}, eLoc: func(tRef float64, t, p, f, _ []float64) {
 			for i := range f {
 				f[i] -= p[3] * models.GasConstant * (t[i] - tRef) * (t[i] - tRef) / (2 * tRef)
 			}
 		}}, "limit T → ∞"},
 	}...)
-	cases := modeltest.Registered()
 	for _, pl := range plants {
 		t.Run(pl.fault, func(t *testing.T) {
 			name := pl.curve.Info().Name
 			var rec recorder
-			modeltest.Run(&rec, pl.curve, cases[name])
+			sound, err := models.Lookup(name)
+			if err != nil {
+				t.Fatal(err)
+			}
+			modeltest.Run(&rec, pl.curve, modeltest.CaseOf(sound))
 			prefix := name + ": " + pl.check + ": "
 			for _, f := range rec.failures {
 				if strings.HasPrefix(f, prefix) {
@@ -355,9 +408,12 @@ func TestPlantedFaultsFail(t *testing.T) {
 
 // A case that lacks an entry must fail too, or the check would be left out.
 func TestPoorCasesFail(t *testing.T) {
-	full := modeltest.Registered()["parallel"]
+	var silent recorder
+	if modeltest.Run(&silent, bare{models.Parallel{}}, modeltest.CaseOf(bare{models.Parallel{}})); len(silent.failures) == 0 {
+		t.Error("a curve that claims nothing passes")
+	}
+	full := modeltest.CaseOf(models.Parallel{})
 	for what, strip := range map[string]func(*modeltest.Case){
-		"kind":       func(c *modeltest.Case) { c.Kind = 0 },
 		"limit":      func(c *modeltest.Case) { c.Limit = nil },
 		"formula":    func(c *modeltest.Case) { c.Physical = nil },
 		"parameters": func(c *modeltest.Case) { c.P = nil },
