@@ -114,3 +114,57 @@ func TestDriftingProfiles(t *testing.T) {
 		}
 	}
 }
+
+// The barriers and prefactors of two paths have the intervals of fit.ProfileShaped, of
+// fit.Profile where errors are additive in k, in the units of the forms; the active
+// catalyst is the step with the higher barrier.
+func TestProfilesOfTwoPaths(t *testing.T) {
+	second := map[string]string{"ln_A": "ln_A2", "E": "E2"}
+	for _, c := range []struct {
+		set   string
+		curve models.Curve
+		found int
+	}{
+		{"s3_parallel", models.Parallel{}, 4},
+		{"s4_series", models.Series{}, 6},
+	} {
+		for _, model := range []fit.ErrorModel{fit.Relative, fit.Absolute} {
+			a := withCurves(t, c.set, model, models.Straight(), c.curve)
+			f := a.Fits[c.curve.Info().Name]
+			if !f.Usable() {
+				t.Fatalf("%s, %s: %s", c.set, model, f.Reason)
+			}
+			u := 1 / (models.GasConstant * f.TRef)
+			gradients := map[string][]float64{"ln_A1": {1, u, 0, 0}, "E1": {0, 1, 0, 0}, "ln_A2": {0, 0, 1, u}, "E2": {0, 0, 0, 1}}
+			found := 0
+			for _, r := range a.Ranking {
+				for _, form := range r.Forms {
+					for _, p := range form.Parameters {
+						name := p.Symbol
+						if second[name] != "" {
+							name = second[name]
+						}
+						if r.Curve != c.curve.Info().Name || gradients[name] == nil {
+							continue
+						}
+						found++
+						unit := map[bool]float64{true: 1, false: 1000}[name[0] == 'l']
+						want := fit.Profile(a.Sample, f, gradients[name], 0.95)
+						if model == fit.Relative {
+							want = fit.ProfileShaped(a.Sample, f, name, 0.95)
+						}
+						what := c.set + ", " + string(model) + ": " + form.Model + " " + p.Symbol
+						if math.IsInf(want.Lower, 0) || math.IsInf(want.Upper, 0) {
+							t.Errorf("%s: open, compares nothing", what)
+						}
+						reference.Close(t, what+" lower", float64(p.Lower), want.Lower/unit, 1e-12)
+						reference.Close(t, what+" upper", float64(p.Upper), want.Upper/unit, 1e-12)
+					}
+				}
+			}
+			if found != c.found {
+				t.Errorf("%s, %s: compared %d estimates", c.set, model, found)
+			}
+		}
+	}
+}

@@ -364,13 +364,13 @@ func (w *publisher) none() {
 	if r != nil && r.Status == fit.Converged {
 		w.rounding = roundingOf(r, nil, w.in.Confidence)
 		for _, t := range []float64{w.in.TMin, w.in.TMax} {
-			w.energyLine("E_a", LocalEnergy(r, t, w.in.Confidence), fmt.Sprintf("at %s K by power-prefactor", fixed(t, 0, 0)))
+			w.energyLine("E_a", LocalEnergy(r, t, w.in.Confidence), fmt.Sprintf("at %s K by %s", fixed(t, 0, 0), r.Curve.Info().Name))
 		}
 		w.note(bracketsNote)
 		if w.in.PowerAdequate != nil && !*w.in.PowerAdequate {
-			w.note("power-prefactor fails its adequacy test as well: its E_a tell the trend, and their uncertainties are too small; k at the reference temperature is not stated")
+			w.note("%s fails its adequacy test as well: its E_a tell the trend, and their uncertainties are too small; k at the reference temperature is not stated", r.Curve.Info().Name)
 		} else {
-			w.note("k at the reference temperature, in the JSON, is by power-prefactor, which is not recommended")
+			w.note("k at the reference temperature, in the JSON, is by %s, which is not recommended", r.Curve.Info().Name)
 		}
 	}
 	w.measuredRange()
@@ -382,18 +382,15 @@ func (w *publisher) measuredRange() {
 		Text: fmt.Sprintf("%s to %s K", kelvinText(w.in.TMin), kelvinText(w.in.TMax))})
 }
 
-// readable is the form in which the parameters of a fit mean something: series with a
-// negative barrier is a catalyst that is inactivated, and no step has that barrier.
-func readable(r *fit.Result) models.Form {
+// readable is the form in which the parameters of a fit mean something and, where it is
+// not the first, what they are.
+func readable(r *fit.Result) (models.Form, string) {
 	forms := r.Curve.Forms()
-	if _, ok := r.Curve.(models.Series); ok && r.P[1] < 0 && r.P[3] > 0 {
-		for _, f := range forms {
-			if f.Name == "reversible-inactivation" {
-				return f
-			}
-		}
+	if c, ok := r.Curve.(models.ReadAs); ok {
+		i, meaning := c.ReadAs(r.P)
+		return forms[i], meaning
 	}
-	return forms[0]
+	return forms[0], ""
 }
 
 // fitted writes everything about the recommended curve.
@@ -411,32 +408,13 @@ func (w *publisher) fitted() {
 	default:
 		w.note(bracketsNote)
 	}
-	switch c := r.Curve.(type) {
-	case models.FixedExponent:
-		if c.M == 1 && w.in.Style == StyleMolar {
-			w.eAt(w.in.TEff)
-			w.transitionState(r)
-			break
-		}
-		w.powerLaw(c.M)
-		if c.M == 0 && w.in.Style == StyleMolar && w.in.Eyring != nil {
-			w.transitionState(w.in.Eyring)
-		}
-	case models.PowerPrefactor:
-		if n := r.P[2]; math.Abs(n) > 5 {
-			w.note("A, n and E are not published: n = %s is no prefactor; read the change of E, or ΔC_p‡", fixed(n, 0, 0))
-		} else {
-			w.powerLaw(math.NaN())
-		}
-		w.eAt(w.in.TMin)
-		w.eAt(w.in.TMax)
-		if w.in.Style == StyleMolar {
-			w.transitionState(r)
-		}
-	default:
-		f := readable(r)
-		if w.form(f); f.Name != r.Curve.Forms()[0].Name {
-			w.note("%s is read as %s, %s: E is that of the active catalyst, half of which is active at T_half", r.Curve.Info().Name, f.Name, f.Formula)
+	if c, ok := r.Curve.(models.PowerLaw); ok {
+		w.powerLawLines(c)
+	} else {
+		f, meaning := readable(r)
+		w.form(f)
+		if meaning != "" {
+			w.note("%s is read as %s, %s: %s", r.Curve.Info().Name, f.Name, f.Formula, meaning)
 		}
 		w.eAt(w.in.TMin)
 		if p := w.in.Profile; p != nil {
@@ -466,8 +444,38 @@ func (w *publisher) fitted() {
 	if w.intervals {
 		w.note("(a to b): %g %% interval, where it is far from symmetric", 100*w.in.Confidence)
 	}
-	if r.Curve.Info().Name != "straight" {
+	if r.Curve.Info().Name != models.Straight().Info().Name {
 		w.note("intervals take the curve %s as given, although these data chose it", r.Curve.Info().Name)
+	}
+}
+
+// powerLawLines adds A, n, E and what else is published of a power of T beside a barrier:
+// ΔH‡ and ΔS‡ in their place where n is the 1 of transition-state theory, beside them
+// where it is 0 or fitted.
+func (w *publisher) powerLawLines(c models.PowerLaw) {
+	r := w.in.Fit
+	molar := w.in.Style == StyleMolar
+	n, fitted := c.Exponent(r.P)
+	switch {
+	case !fitted && n == 1 && molar:
+		w.eAt(w.in.TEff)
+		w.transitionState(r)
+	case !fitted:
+		w.powerLaw(n)
+		if n == 0 && molar && w.in.Eyring != nil {
+			w.transitionState(w.in.Eyring)
+		}
+	default:
+		if math.Abs(n) > 5 {
+			w.note("A, n and E are not published: n = %s is no prefactor; read the change of E, or ΔC_p‡", fixed(n, 0, 0))
+		} else {
+			w.powerLaw(math.NaN())
+		}
+		w.eAt(w.in.TMin)
+		w.eAt(w.in.TMax)
+		if molar {
+			w.transitionState(r)
+		}
 	}
 }
 
@@ -804,7 +812,7 @@ func (w *publisher) unresolved() {
 	}{{w.in.TMin, c.ELocTMin}, {w.in.TMax, c.ELocTMax}} {
 		if end.e.Value.Known() {
 			w.energyLine("E_a", end.e.fit(),
-				fmt.Sprintf("at %s K by power-prefactor", fixed(end.t, 0, 0)))
+				fmt.Sprintf("at %s K by %s", fixed(end.t, 0, 0), models.PowerPrefactor{}.Info().Name))
 		}
 	}
 }
@@ -825,50 +833,18 @@ func (w *publisher) recovery() {
 			}
 		}
 	}
-	// Each exponential has at most three rounded terms.
-	term := func(x, basis float64) string {
-		return fixed(x, 0, max(0, int(math.Ceil(math.Log10(1.5*basis/tol)))))
-	}
-	plus := func(s string) string {
-		if t, negative := strings.CutPrefix(s, "−"); negative {
-			return " − " + t
-		}
-		return " + " + s
-	}
-	_, fixedN := r.Curve.(models.FixedExponent)
-	path := func(lnA, n, b float64) string {
-		s := term(lnA, 1)
-		if n != 0 {
-			far := math.Max(math.Abs(math.Log(w.in.TMin/w.in.TRef)), math.Abs(math.Log(w.in.TMax/w.in.TRef)))
-			exponent := term(n, far) + " "
-			if fixedN {
-				exponent = strings.ReplaceAll(fmt.Sprint(n), "-", "−") + " "
-				if math.Abs(n) == 1 {
-					exponent = strings.TrimSuffix(exponent, "1 ") // 1 ln x is ln x
-				}
-			}
-			s += plus(exponent + "ln(T/" + kelvinText(w.in.TRef) + " K)")
-		}
-		return "exp(" + s + plus(term(-b, 1/w.in.TMin)) + " K/T)"
-	}
-	u := 1 / (models.GasConstant * r.TRef)
-	power := func(n, e float64) string { // e is E_loc(T_ref) - nRT_ref
-		return path(r.P[0]+e*u-n*math.Log(r.TRef/w.in.TRef), n, e/models.GasConstant)
-	}
-	var text string
-	switch c := r.Curve.(type) {
-	case models.FixedExponent:
-		text = power(c.M, r.P[1])
-	case models.PowerPrefactor:
-		text = power(r.P[2], r.P[1]-r.P[2]*models.GasConstant*r.TRef)
-	case models.Parallel:
-		text = "[" + path(r.P[0]+r.P[1]*u, 0, r.P[1]/models.GasConstant) + " + " + path(r.P[2]+r.P[3]*u, 0, r.P[3]/models.GasConstant) + "]"
-	case models.Series:
-		text = "1/[1/(" + path(r.P[0]+r.P[1]*u, 0, r.P[1]/models.GasConstant) + ") + 1/(" + path(r.P[2]+r.P[3]*u, 0, r.P[3]/models.GasConstant) + ")]"
-	default:
+	c, ok := r.Curve.(models.Written)
+	if !ok {
 		w.note("to compute k(T), take the parameters of %s from the JSON", r.Curve.Info().Name)
 		return
 	}
+	text := c.Write(models.Writer{
+		TMin: w.in.TMin, TMax: w.in.TMax, T0: math.Round(100*w.in.TRef) / 100, // as kelvinText writes it
+		Number: func(x, slope float64) string {
+			return fixed(x, 0, max(0, int(math.Ceil(math.Log10(1.5*slope/tol)))))
+		},
+		Kelvin: kelvinText,
+	}, r.TRef, r.P)
 	w.add(PublishLine{Symbol: w.symbol + "(T)", Unit: w.in.Quantity.Unit, Estimate: NewEstimate(fit.Unknown()), Text: text + withUnit(w.in.Quantity.Unit)})
 	w.note("%s(T) has the digits that computing needs", w.symbol)
 }

@@ -3,15 +3,14 @@ package diagnostics
 import (
 	"fmt"
 	"math"
-	"regexp"
 	"slices"
-	"strconv"
 	"strings"
 	"testing"
 
 	"onebarrier/models"
 	"onebarrier/models/dataset"
 	"onebarrier/models/fit"
+	"onebarrier/models/modeltest"
 	"onebarrier/models/reference"
 )
 
@@ -158,46 +157,84 @@ func TestPublishN2O5(t *testing.T) {
 	reference.Close(t, "ΔG‡", float64(line(t, p, "ΔG‡", "298.15").Value), float64(dh.Value)-0.29815*float64(line(t, p, "ΔS‡", "").Value), 1e-10)
 }
 
+// recovers computes k from the line k(T) of what is published of r and compares it with
+// the fit, in units of what the digits are chosen for: a hundredth of the least u(ln k),
+// 0.0005 at most.
+func recovers(t *testing.T, what string, in toPublish) {
+	t.Helper()
+	text := line(t, publish(in), "k(T)", "").Text
+	formula, ok := strings.CutSuffix(text, " s^-1")
+	if !ok {
+		t.Errorf("%s: %q has no unit", what, text)
+	}
+	const steps = 64
+	temps, tol := make([]float64, steps+1), 5e-4
+	for i := range temps {
+		temps[i] = in.TMin + (in.TMax-in.TMin)*float64(i)/steps
+		tol = math.Min(tol, lnKAt(in.Fit, temps[i], 0.95).StdError/100)
+	}
+	if in.Exact {
+		tol = 5e-6
+	}
+	for _, ti := range temps {
+		k, err := modeltest.Evaluate(formula, ti)
+		if err != nil {
+			t.Fatalf("%s: %q: %v", what, text, err)
+		}
+		if d := math.Abs(math.Log(k) - lnKAt(in.Fit, ti, 0.95).Value); !(d <= 1.001*tol) {
+			t.Errorf("%s: %q gives ln k at %g K wrong by %.2g, and may by %.2g", what, text, ti, d, tol)
+			return
+		}
+	}
+}
+
 // The line k(T) must give the fitted curve back.
 func TestPublishedCurveRecoversRates(t *testing.T) {
-	path := regexp.MustCompile(`exp\(([−\d.]+)(?: ([+−]) ([\d.]+ )?ln\(T/([\d.]+) K\))? ([+−]) ([\d.]+) K/T\)`)
-	num := func(s string) float64 {
-		x, err := strconv.ParseFloat(strings.ReplaceAll(s, "−", "-"), 64)
-		if err != nil {
-			t.Fatal(err)
-		}
-		return x
-	}
 	for _, c := range []struct{ set, curve string }{
 		{"s1_straight", "straight"}, {"s1_straight", "root-prefactor"}, {"s1_straight", "linear-prefactor"},
 		{"s2_tn_curved", "power-prefactor"}, {"s3_parallel", "parallel"}, {"s8_tiny6", "straight"},
 	} {
 		s := synthetic(t, c.set, fit.Relative)
-		r := fitNamed(t, s, c.curve)
-		in := publishing(s, r)
-		text := line(t, publish(in), "k(T)", "").Text
-		paths := path.FindAllStringSubmatch(text, -1)
-		if len(paths) != strings.Count(text, "exp(") || !strings.HasSuffix(text, " s^-1") {
-			t.Errorf("%s: cannot read %q", c.curve, text)
+		recovers(t, c.curve+" of "+c.set, publishing(s, fitNamed(t, s, c.curve)))
+	}
+}
+
+// So must it for every registered curve, in each form in which it is read, well or badly
+// known, in every style and with any reference temperature.
+func TestEveryCurveIsWrittenOut(t *testing.T) {
+	for _, c := range models.All() {
+		claimed, ok := c.(models.Claimed)
+		if !ok {
+			t.Errorf("%s states no claims", c.Info().Name)
 			continue
 		}
-		for i, ti := range s.T {
-			var k float64
-			for _, m := range paths {
-				ln := num(m[1]) + num(m[5]+m[6])/ti
-				if m[4] != "" {
-					n := strings.TrimSpace(m[3])
-					if n == "" { // + ln(T/T_0)
-						n = "1"
+		read := map[string]bool{}
+		for i, p := range claimed.Claims().P {
+			for _, u := range []float64{1e-4, 0.02, 0.3} {
+				r := byHand(c, 300, nil, p...)
+				for j := range p { // all of ln k is uncertain by u, and nothing else
+					for l := range p {
+						if ps := c.Info().Params; ps[j].Unit == "k" && ps[l].Unit == "k" {
+							r.Cov[j*len(p)+l] = u * u
+						}
 					}
-					ln += num(m[2]+n) * math.Log(ti/num(m[4]))
 				}
-				k += math.Exp(ln)
+				in := toPublish{
+					Fit: r, Quantity: perSecond,
+					TMin: 250, TMax: 340, TEff: 300, TRef: 298.15, Confidence: 0.95,
+				}
+				form, _ := readable(in.Fit)
+				read[form.Name] = true
+				what := fmt.Sprintf("%s of parameters %d, u = %g", c.Info().Name, i, u)
+				recovers(t, what, in)
+				in.Exact = true
+				recovers(t, what+", exact", in)
+				in.Exact, in.TRef, in.Style = false, 320.12345, PublishStyles[i%len(PublishStyles)]
+				recovers(t, what+", at 320.12345 K", in)
 			}
-			u := lnKAt(r, ti, 0.95).StdError
-			if d := math.Abs(math.Log(k) - r.Fitted[i]); !(d <= u/100) {
-				t.Errorf("%s of %s: %q gives ln k at %g K wrong by %.2g, u(ln k) is %.2g", c.curve, c.set, text, ti, d, u)
-			}
+		}
+		if _, ok := c.(models.ReadAs); ok && len(read) != len(c.Forms()) {
+			t.Errorf("%s was read as %v only", c.Info().Name, read)
 		}
 	}
 }

@@ -84,7 +84,7 @@ func (a *assessor) checkCrossover(ranking []Ranked, low, high float64) {
 			continue
 		}
 		for _, p := range r.Forms[0].Parameters {
-			if p.Symbol == "T_x" && (float64(p.Value) < low || float64(p.Value) > high) {
+			if p.Symbol == crossover && (float64(p.Value) < low || float64(p.Value) > high) {
 				a.find("crossover-outside", fmt.Sprintf("the crossover at %s K lies outside the measured range, %s to %s K", fixed(float64(p.Value), 0, 0), kelvinText(low), kelvinText(high)), nil, map[string]Real{"t_x_k": p.Value})
 			}
 		}
@@ -132,9 +132,9 @@ func (a *assessor) profiler(f *fit.Result) *profiler {
 			p.notes = append(p.notes, fmt.Sprintf("an end is open where %s meets the bound of %s before the interval ends", shape, c.Info().Name))
 		}
 		return p
-	case models.DriftingHeatCapacity:
-		if !a.model.InK() {
-			return nil // exact by Student's t
+	case models.Basis:
+		if _, ok := f.Curve.(models.Profiled); !ok || !a.model.InK() {
+			return nil // in ln k exact by Student's t
 		}
 		return &profiler{interval: func(h fit.Function) fit.Estimate {
 			if f.P == nil {
@@ -152,8 +152,8 @@ func (a *assessor) profiler(f *fit.Result) *profiler {
 }
 
 // profiles are the profile intervals of the parameters of forms whose estimates are far
-// from normal, by form symbol and in the form's units: all that p gives, and the barriers
-// and prefactors of parallel and series; nil for other curves.
+// from normal, by form symbol and in the form's units: all that p gives, and what a curve
+// asks for, such as the barriers and prefactors of two paths; nil for other curves.
 func (a *assessor) profiles(f *fit.Result, fr models.Frame, p *profiler) map[string]fit.Estimate {
 	if f.Nu < 1 {
 		return nil
@@ -168,30 +168,39 @@ func (a *assessor) profiles(f *fit.Result, fr models.Frame, p *profiler) map[str
 		}
 		return out
 	}
-	switch f.Curve.(type) {
-	case models.Parallel, models.Series:
-	default:
+	c, ok := f.Curve.(models.Profiled)
+	if !ok {
 		return nil
 	}
-	u := 1 / (models.GasConstant * f.TRef)
-	for _, p := range []struct {
-		symbol string
-		c      []float64 // of the canonical parameters
-		unit   float64
-	}{
-		{"ln_A1", []float64{1, u, 0, 0}, 1}, {"E1", []float64{0, 1, 0, 0}, 1. / 1000},
-		{"ln_A2", []float64{0, 0, 1, u}, 1}, {"E2", []float64{0, 0, 0, 1}, 1. / 1000},
-	} {
+	same := c.Profiled()
+	if len(same) == 0 {
+		return nil
+	}
+	// Each quantity once, by its symbol in the first form.
+	first := f.Curve.Forms()[0]
+	fr.TRef, fr.LnPerSecond = f.TRef, a.set.Quantity.LnPerSecond
+	once := map[string]fit.Estimate{}
+	for i, par := range first.Params {
+		if same[par.Symbol] != par.Symbol {
+			continue
+		}
+		unit := 1.
+		if par.Unit == "kJ mol^-1" {
+			unit = 1000
+		}
 		var e fit.Estimate
 		if a.model.InK() || a.data.sample.Spent() > 0 {
-			e = fit.Profile(a.data.sample, f, p.c, a.opt.Confidence)
+			grad := make([]float64, f.Params())
+			formParameter(first, fr, i)(f.P, grad)
+			floats.Scale(unit, grad) // in J/mol, as the canonical parameters
+			e = fit.Profile(a.data.sample, f, grad, a.opt.Confidence)
 		} else {
-			e = fit.ProfileShaped(a.data.sample, f, p.symbol, a.opt.Confidence)
+			e = fit.ProfileShaped(a.data.sample, f, par.Symbol, a.opt.Confidence)
 		}
-		out[p.symbol] = scaled(e, p.unit)
+		once[par.Symbol] = scaled(e, 1/unit)
 	}
-	if _, ok := f.Curve.(models.Series); ok { // the active catalyst of reversible-inactivation
-		out["ln_A"], out["E"] = out["ln_A2"], out["E2"]
+	for symbol, name := range same {
+		out[symbol] = once[name]
 	}
 	return out
 }

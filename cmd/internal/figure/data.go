@@ -85,7 +85,7 @@ func NewArrhenius(a *diagnostics.Assessment, opt Options) (*Arrhenius, error) {
 		return nil, fmt.Errorf("figure: there is no assessment to draw")
 	}
 	d := &Arrhenius{Confidence: confidence(a), Offsets: offsets(a), OfRepeats: ofRepeats(a)}
-	straight := usable(a, "straight")
+	straight := usable(a, straightLine)
 	for _, row := range a.Data {
 		if !(row.T > 0) || !(row.K > 0) || !row.T.Known() || !row.K.Known() {
 			d.NotShown++
@@ -208,6 +208,12 @@ func usable(a *diagnostics.Assessment, curve string) *fit.Result {
 	return r
 }
 
+// The two curves of the exponent test, of which figures show more than of others.
+var (
+	straightLine = models.Straight().Info().Name
+	powerOfT     = models.PowerPrefactor{}.Info().Name
+)
+
 // chosen names the curves to draw: the recommended one first, then the straight
 // line from which residuals are taken, then the best of each further family in
 // order of rank. Members of one family lie on top of each other.
@@ -220,7 +226,7 @@ func chosen(a *diagnostics.Assessment, most int) []string {
 		}
 	}
 	take(a.Verdict.RecommendedCurve)
-	take("straight")
+	take(straightLine)
 	for _, r := range a.Ranking {
 		if !slices.Contains(families, r.Family) {
 			take(r.Curve)
@@ -354,13 +360,13 @@ func NewEnergy(a *diagnostics.Assessment) *Energy {
 		return nil
 	}
 	second := a.Verdict.RecommendedCurve
-	if second == "" || second == "straight" {
-		second = "power-prefactor"
+	if second == "" || second == straightLine {
+		second = powerOfT
 	}
 	sc := scaleOf(a)
 	d := &Energy{scale: sc, TEff: float64(a.Dataset.TEff), E: math.NaN(), Tolerance: sc.perKJ * float64(a.Curvature.ToleranceKJ), Confidence: confidence(a)}
 	t := grid(a.Sample)
-	for _, name := range []string{"straight", second} {
+	for _, name := range []string{straightLine, second} {
 		r := usable(a, name)
 		if r == nil {
 			continue
@@ -369,7 +375,7 @@ func NewEnergy(a *diagnostics.Assessment) *Energy {
 		l.Recommended = name == a.Verdict.RecommendedCurve
 		copy(l.X, t)
 		d.Lines = append(d.Lines, l)
-		if name == "straight" {
+		if name == straightLine {
 			d.E = l.Y[0]
 		}
 	}
@@ -429,7 +435,7 @@ func NewChange(a *diagnostics.Assessment) *Change {
 	e := a.Curvature.EChange.Times(sc.perKJ)
 	d := &Change{
 		scale:     sc,
-		Resamples: len(a.ChangeOfE), Generator: models.PowerPrefactor{}.Info().Name, Scheme: a.Settings.Scheme,
+		Resamples: len(a.ChangeOfE), Generator: powerOfT, Scheme: a.Settings.Scheme,
 		Estimate: float64(e.Value), Lower: float64(e.Lower), Upper: float64(e.Upper),
 		Tolerance: sc.perKJ * float64(a.Curvature.ToleranceKJ), Confidence: confidence(a),
 	}
