@@ -46,6 +46,21 @@ func TestTunnellingCorrections(t *testing.T) {
 	}
 }
 
+// κ where it is known without a computer: Bell's at angles u/2 whose sine is, π/6, π/4, π/3,
+// π/2 and 5π/6; Wigner's at whole u, 1 + u²/24.
+func TestTunnellingInClosedForm(t *testing.T) {
+	for _, c := range []struct{ half, sine float64 }{
+		{math.Pi / 6, 0.5}, {math.Pi / 4, math.Sqrt2 / 2}, {math.Pi / 3, math.Sqrt(3) / 2}, {math.Pi / 2, 1}, {5 * math.Pi / 6, 0.5},
+	} {
+		l, _, _ := bell(4 * c.half * c.half)
+		reference.Close(t, "κ of Bell", math.Exp(l), c.half/c.sine, 1e-14)
+	}
+	for u, kappa := range map[float64]float64{2: 7. / 6, 6: 2.5, 12: 7} {
+		l, _, _ := wigner(u * u)
+		reference.Close(t, "κ of Wigner", math.Exp(l), kappa, 1e-15)
+	}
+}
+
 // ln k and E_loc for ln A = 25, E = 60 kJ/mol, ν = 900 cm^-1 in 50-digit arithmetic,
 // mpmath 1.2.1: E_loc = R*T*T*diff(lnk, T), u = h c ν/(k_B T) with the constants of the SI.
 func TestTunnellingAgainstMpmath(t *testing.T) {

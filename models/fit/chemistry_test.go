@@ -120,7 +120,7 @@ func TestWater(t *testing.T) {
 		reference.Close(t, c.set+" u(E_loc)", u, ref["Ea_local_se(298.15)"], 1e-7)
 		switch c.set {
 		case "ice_psub_iapws":
-			// Handbook value at the triple point: 51.06 kJ/mol. The heat capacity of
+			// Handbook value at the triple point: 51.06 kJ/mol (the same notes). The heat capacity of
 			// ice rises from 28 to 38 J/(mol K) between 180 and 270 K, which a
 			// constant ΔC_p = 2.5 J/(mol K) leaves out: the slope of the last two
 			// pressures alone, at 267 K, is 51.11 kJ/mol.
@@ -128,10 +128,11 @@ func TestWater(t *testing.T) {
 			reference.Within(t, "sublimation of ice", e, 51220, 5)
 			reference.Within(t, "sublimation of ice", e, 51060, 200)
 		case "water_psat_if97", "water_psat_0_60C":
-			// 44.05 kJ/mol: 43.99 of the vaporisation over ΔZ = 0.9985.
+			// 44.05 kJ/mol: 43.99 of the vaporisation over ΔZ = 0.9985 (the same notes).
 			reference.Within(t, c.set, e, 44050, 20)
 		case "water_kw_0_50C":
-			// ΔC_p of ionisation by calorimetry: -215 to -224 J/(mol K). k = 1.
+			// ΔC_p of ionisation by calorimetry: -215 to -224 J/(mol K), as the notes on
+			// opendata/ in testdata/published/README.md have it. k = 1.
 			dCp, u := r.P[2]*models.GasConstant, math.Sqrt(r.Cov[8])*models.GasConstant
 			reference.Within(t, "ΔC_p of ionisation", dCp, -220, 0.5)
 			if !(dCp-u >= -224 && dCp+u <= -215) {

@@ -116,6 +116,12 @@ func TestLimitsAgainstHighPrecision(t *testing.T) {
 // their time. R 4.2.2, survival 3.5: survreg(Surv(time, status) ~ I(1/(temp +
 // 273.15)), dist = "lognormal", control = survreg.control(rel.tolerance = 1e-15)).
 func TestMotorettesAgainstSurvreg(t *testing.T) {
+	checkMotorettes(t, []float64{-13.857503513965746, 9924.8585589566937, 0.59678748532558545, -148.53730620678567, 1010513.571698243147694})
+}
+
+// checkMotorettes compares the fit with ln A, -E/R, σ, ln L and var(E/R) of survreg.
+func checkMotorettes(t *testing.T, want []float64) {
+	t.Helper()
 	var tt, k, v []float64
 	var limits []Limit
 	for _, row := range reference.Records(t, "opendata/imotor_survival.csv") {
@@ -135,11 +141,11 @@ func TestMotorettesAgainstSurvreg(t *testing.T) {
 		t.Fatalf("%d limits, %s, N = %d, ν = %d", len(limits), r.Status, r.N, r.Nu)
 	}
 	stretch := math.Sqrt(17.0 / 15)
-	reference.Close(t, "ln A", r.P[0]+r.P[1]/(models.GasConstant*r.TRef), -13.857503513965746, 1e-9)
-	reference.Close(t, "-E/R", -r.P[1]/models.GasConstant, 9924.8585589566937, 1e-9)
-	reference.Close(t, "sigma", r.Sigma/stretch, 0.59678748532558545, 1e-8)
-	reference.Close(t, "logLik", r.LogLik, -148.53730620678567, 1e-12)
-	reference.Close(t, "var(E/R)", r.Cov[3]/square(stretch*models.GasConstant), 1010513.571698243147694, 1e-7)
+	reference.Close(t, "ln A", r.P[0]+r.P[1]/(models.GasConstant*r.TRef), want[0], 1e-9)
+	reference.Close(t, "-E/R", -r.P[1]/models.GasConstant, want[1], 1e-9)
+	reference.Close(t, "sigma", r.Sigma/stretch, want[2], 1e-8)
+	reference.Close(t, "logLik", r.LogLik, want[3], 1e-12)
+	reference.Close(t, "var(E/R)", r.Cov[3]/square(stretch*models.GasConstant), want[4], 1e-7)
 }
 
 // A limit far on its side changes nothing, in the limit to the last digits, and

@@ -104,8 +104,7 @@ func TestVogelViscosityOfWater(t *testing.T) {
 
 // The ionic product of water (IAPWS, 0 to 100 °C) against R 4.2.2, lm on the columns
 // u = (T - T0)/(R T T0), e^-r - 1 + r and sinh(r) - r, r = ln(T/T0), T0 = 298.15 K.
-// E_loc is ΔH° of the equilibrium: 55.8 kJ/mol, with ΔC_p° = -224 J/(mol K) at 25 °C
-// (calorimetry, from memory); nR = ΔC_p°.
+// E_loc is ΔH° of the equilibrium at 25 °C, nR its ΔC_p°.
 func TestDriftingHeatCapacityOfWater(t *testing.T) {
 	s := openSample(t, "opendata/water_kw_iapws.csv", "Kw")
 	s.TRef = 298.15
@@ -116,8 +115,12 @@ func TestDriftingHeatCapacityOfWater(t *testing.T) {
 	for i, want := range []float64{0.0003919560574312388, 10.9806615121988961903, 0.1450129678492073360, 1.8181214163521020044} {
 		reference.Close(t, "se", math.Sqrt(r.Cov[5*i]), want, 1e-8)
 	}
-	reference.Close(t, "ΔH° of water", r.P[1], 55800, 0.02)
-	reference.Close(t, "ΔC_p° of water", r.P[2]*models.GasConstant, -224, 0.06)
+	// Calorimetry: 55.815 kJ/mol by the key values of CODATA (1989; ΔfH° of OH⁻ and water,
+	// from memory); ΔC_p° -215 to -224 J/(mol K), as in TestWater. The formulation itself has
+	// an E_loc 1.2 % higher: R finds 56.48 and 56.49 kJ/mol by power-prefactor, for 0 to 100
+	// and 0 to 50 °C (golden_opendata.csv), so that no fit can come closer.
+	reference.Close(t, "ΔH° of water", r.P[1], 55815, 0.0125)
+	reference.Within(t, "ΔC_p° of water", r.P[2]*models.GasConstant, -219.5, 4.5)
 }
 
 // A catalyst that is inactivated: 11 invented points with fixed noise against R 4.2.2,
