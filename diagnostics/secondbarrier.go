@@ -57,6 +57,8 @@ type SecondBarrierTest struct {
 	nuisance [][]float64
 	fitted   []float64 // k of the straight line, where errors are additive in k; else nil
 	cache    *DesignCache
+	// sequential stops drawing once p is plainly not small.
+	sequential bool
 	*secondBarrierDesign
 }
 
@@ -72,13 +74,13 @@ type secondBarrierDesign struct {
 	shapes int
 	dim    int // of the space that is left
 
-	// sequential stops drawing once p is plainly not small.
-	sequential bool
-	drawing    sync.Mutex
-	next       func() (up, down float64) // the next pair of the null
-	null       []float64                 // largest cosines of z and of -z, in pairs
-	sorted     sync.Once
-	critical   [2]float64
+	drawing  sync.Mutex
+	next     func() (up, down float64) // the next pair of the null
+	null     []float64                 // largest cosines of z and of -z, in pairs
+	critical [2]struct {               // from all pairs, and from those of a sequence
+		found sync.Once
+		at    [2]float64
+	}
 }
 
 // NewSecondBarrierTest prepares the test for a sample. nuisance holds further
@@ -265,7 +267,7 @@ func (b *SecondBarrierTest) seed() (uint64, uint64) {
 	return h.Sum64(), 0x73656362
 }
 
-// draws sees to it that the null holds so many pairs: the largest cosines of standard
+// draws sees to it that the null holds so many pairs, or more: the largest cosines of standard
 // normal z and of -z. Only the part of z along the shapes is drawn in full, of the rest
 // its squared length, which is chi-squared: a draw costs the same for any N.
 func (b *SecondBarrierTest) draws(pairs int) []float64 {
@@ -308,17 +310,22 @@ func (b *SecondBarrierTest) pairs() func() (up, down float64) {
 	}
 }
 
-// findCritical finds the cosines above which p < 0.05: few enough draws reach them.
-// The mirror image of the data counts as one more draw where it reaches them too.
-func (b *SecondBarrierTest) findCritical() {
-	pairs := secondBarrierPairs
+// criticals are the cosines above which p < 0.05: few enough draws reach them. The
+// mirror image of the data counts as one more draw where it reaches them too.
+func (b *SecondBarrierTest) criticals() *[2]float64 {
+	c, pairs := &b.critical[0], secondBarrierPairs
 	if b.sequential {
-		pairs = sequentialPairs
+		c, pairs = &b.critical[1], sequentialPairs
 	}
+	c.found.Do(func() { c.at = b.findCritical(pairs) })
+	return &c.at
+}
+
+func (b *SecondBarrierTest) findCritical(pairs int) [2]float64 {
 	sorted := slices.Clone(b.draws(pairs)[:2*pairs])
 	slices.Sort(sorted)
 	allowed := int(math.Ceil(secondBarrierLevel*float64(2*pairs+2))) - 2
-	b.critical = [2]float64{sorted[len(sorted)-1-allowed], sorted[len(sorted)-allowed]}
+	return [2]float64{sorted[len(sorted)-1-allowed], sorted[len(sorted)-allowed]}
 }
 
 // pValue is exact: under one barrier the data and their mirror image are one more
@@ -337,8 +344,12 @@ func (b *SecondBarrierTest) pValue(up, down float64, most int) (p float64, draws
 		count++
 	}
 	if b.sequential {
+		var null []float64
 		for m := 1; m <= most; m++ {
-			for _, s := range b.draws(m)[2*m-2 : 2*m] {
+			if len(null) < 2*m {
+				null = b.draws(min(most, m+15)) // not one at a time
+			}
+			for _, s := range null[2*m-2 : 2*m] {
 				if s >= up {
 					count++
 				}
@@ -361,12 +372,12 @@ func (b *SecondBarrierTest) pValue(up, down float64, most int) (p float64, draws
 // in k where errors are additive in k. It allocates nothing after the first call;
 // scratch has length ScratchLen(). It may be called from several goroutines.
 func (b *SecondBarrierTest) Found(y, scratch []float64) bool {
-	b.sorted.Do(b.findCritical)
+	critical := b.criticals()
 	up, down, _ := b.cosines(y, scratch)
 	if down >= up {
-		return up > b.critical[1]
+		return up > critical[1]
 	}
-	return up > b.critical[0]
+	return up > critical[0]
 }
 
 // found reports whether the sample itself has p < 0.05; false where there is no

@@ -3,6 +3,7 @@ package fit
 import (
 	"math"
 	"slices"
+	"sync"
 
 	"onebarrier/models"
 )
@@ -13,7 +14,8 @@ const maxBarrier = 1e6
 
 // plan holds what fits of ln k = a + e·U + s(c + d·u) share on one design (T, V):
 // the scaled abscissa, the projector onto the complement of {1, u} and the nodes of
-// the cold search. It is read-only once made, so that workers can share it.
+// the cold search. Workers share it: it is read-only, but for parts that are made when
+// first asked for.
 //
 // u = U/width with U = (T - T_c)/(R T T_c), T_c the weighted harmonic mean of T and
 // width the range of U, so that u has range 1 and weighted mean 0.
@@ -29,6 +31,11 @@ type plan struct {
 	distinct  int     // temperatures
 	nodes     []node
 	shapes    []quad // projected whitened shapes of the nodes, N rows for each four
+
+	noded, covered sync.Once // what is made when first asked for
+	coarse, fine   *cover
+	holding        sync.Mutex
+	held           map[heldLine]*plan // with another projector, for profiles
 }
 
 // node is a starting point of the cold search.
@@ -154,10 +161,10 @@ func projectOutTwice(rows []basisRow, z []float64) {
 
 // makeNodes makes the nodes of the cold search and their shapes, once.
 func (p *plan) makeNodes() {
-	if p.nodes == nil {
+	p.noded.Do(func() {
 		p.layNodes()
 		p.projectShapes()
-	}
+	})
 }
 
 // layNodes lays out the cold search: levels d = 1/2, 1, 2 ... 256 (range of u = 1)

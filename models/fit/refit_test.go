@@ -545,7 +545,7 @@ func BenchmarkParallel(b *testing.B) {
 		})
 		b.Run(fmt.Sprintf("fit/N=%d", n), func(b *testing.B) {
 			for range b.N {
-				fitShaped(r.s, models.Parallel{})
+				newPlan(r.s.T, r.s.V).fit(r.s, models.Parallel{})
 			}
 			report(b, n)
 		})

@@ -2,7 +2,6 @@ package fit
 
 import (
 	"math"
-	"sync"
 
 	"onebarrier/models"
 )
@@ -32,9 +31,6 @@ type resampleDesign struct {
 	seeded     []seededCandidate
 	weight     []float64 // 1/V, for these
 	columns    []quad    // directions and warm-start columns
-
-	// covers are made when first needed: most identified sets never ask for them.
-	covers func() (coarse, fine *cover)
 }
 
 // term is a whitened column of a linear curve: scale·direction + w·(a + b u).
@@ -70,7 +66,7 @@ func newResampleDesign(s *Sample, curves []models.Curve, fits []*Result, crit cr
 	if s.Model.InK() {
 		return nil
 	}
-	d := &resampleDesign{plan: newPlan(s.T, s.V), s: s, criterion: crit}
+	d := &resampleDesign{plan: planOf(s.T, s.V), s: s, criterion: crit}
 	if d.width == 0 {
 		return nil
 	}
@@ -110,7 +106,6 @@ func newResampleDesign(s *Sample, curves []models.Curve, fits []*Result, crit cr
 	if len(d.shaped) > 0 {
 		d.makeNodes()
 	}
-	d.covers = sync.OnceValues(d.newCovers)
 	return d
 }
 
@@ -356,26 +351,33 @@ const (
 	gridLength = 1.5
 )
 
+// covers are made when first needed: most identified sets never ask for them.
+func (p *plan) covers() (coarse, fine *cover) {
+	p.makeNodes()
+	p.covered.Do(func() { p.coarse, p.fine = p.newCovers() })
+	return p.coarse, p.fine
+}
+
 // newCovers covers a fine grid of shapes, coarsely and finely: d in steps of √2,
 // crossovers every 0.35/d, at least twelve to a gap of the design, from 8/d below to
 // 8/d above it, where what is left of the shape is an exponential of any length.
-func (d *resampleDesign) newCovers() (coarse, fine *cover) {
+func (p *plan) newCovers() (coarse, fine *cover) {
 	coarse, fine = newCover(coarseSlack), newCover(fineSlack)
-	n := len(d.rows)
+	n := len(p.rows)
 	v, slope := make([]float64, n), make([]float64, n)
-	grid := d.grid()
+	grid := p.grid()
 	all := make([]member, 0, len(grid)) // of fine: the starts of coarse are not asked for
 	of := make([]int32, 0, len(grid))   // their shapes
 	for _, nd := range grid {
-		d.tab.shape(nd.c, nd.d, d.rows, v, slope)
+		p.tab.shape(nd.c, nd.d, p.rows, v, slope)
 		whole := math.Sqrt(dot(v, v))
-		projectOut(d.rows, v)
+		projectOut(p.rows, v)
 		length := math.Sqrt(dot(v, v))
 		if !(length > 1e-10*whole) {
 			continue
 		}
 		x := -nd.c / nd.d
-		faint := nd.d == gridStart || x < d.low-4/nd.d || x > d.high+4/nd.d
+		faint := nd.d == gridStart || x < p.low-4/nd.d || x > p.high+4/nd.d
 		coarse.include(v, length, faint)
 		all, of = append(all, member{nd.c, nd.d, length}), append(of, int32(fine.include(v, length, faint)))
 	}
@@ -387,15 +389,15 @@ func (d *resampleDesign) newCovers() (coarse, fine *cover) {
 		}
 		c.quads = quads(c.shapes, n)
 	}
-	fine.nodes = make([]int, len(d.nodes))
-	for j := range d.nodes {
+	fine.nodes = make([]int, len(p.nodes))
+	for j := range p.nodes {
 		for i := range v {
-			v[i] = d.plan.shapes[j/4*n+i][j%4]
+			v[i] = p.shapes[j/4*n+i][j%4]
 		}
 		most := math.Inf(-1)
 		for k, s := range fine.shapes {
-			if p := dot(s, v); p > most {
-				most, fine.nodes[j] = p, k
+			if x := dot(s, v); x > most {
+				most, fine.nodes[j] = x, k
 			}
 		}
 	}
@@ -461,16 +463,16 @@ func (c *cover) find(v []float64, least float64) int {
 }
 
 // grid is the fine grid of shapes of newCovers.
-func (d *resampleDesign) grid() []node {
+func (p *plan) grid() []node {
 	var g []node
-	gap := d.gaps()
+	gap := p.gaps()
 	for v := gridStart; ; v *= math.Sqrt2 {
-		dd := math.Min(v, d.maxD)
-		for x := d.low - 8/dd; x <= d.high+8/dd; {
+		dd := math.Min(v, p.maxD)
+		for x := p.low - 8/dd; x <= p.high+8/dd; {
 			g = append(g, node{c: -dd * x, d: dd})
 			x += math.Max(0.35/dd, gap(x)/12)
 		}
-		if v >= d.maxD || v > 512 {
+		if v >= p.maxD || v > 512 {
 			return g
 		}
 	}

@@ -37,7 +37,7 @@ func softplusSign(c models.Curve) (sign float64, ok bool) {
 // the problem with {1, 1/T} projected out. N, Nu, Sigma and LogLik are left to Fit, and
 // Cov is (JᵀV⁻¹J)⁻¹, without σ².
 func fitShaped(s *Sample, c models.Shaped) *Result {
-	p := newPlan(s.T, s.V)
+	p := planOf(s.T, s.V)
 	return p.fit(s, c)
 }
 

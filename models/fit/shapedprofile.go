@@ -2,6 +2,7 @@ package fit
 
 import (
 	"math"
+	"slices"
 
 	"onebarrier/models"
 )
@@ -86,7 +87,7 @@ func newShapedProfile(s *Sample, r *Result, param string) *shapedProfile {
 		panic("fit: " + r.Curve.Info().Name + " has no softplus shape")
 	}
 	f := &shapedProfile{sign: sign}
-	full := newPlan(s.T, s.V)
+	full := planOf(s.T, s.V)
 	f.plan = full
 	far := 1 / (models.GasConstant * s.TRef)
 	switch param {
@@ -127,6 +128,55 @@ func newShapedProfile(s *Sample, r *Result, param string) *shapedProfile {
 	return f
 }
 
+// heldLine is what one path's line is held to: its slope, or its value at pivot. side is
+// the sign of d.
+type heldLine struct {
+	energy      bool
+	pivot, side float64
+}
+
+// mostHeld is how many a plan keeps: those of E, ln A and ln k(T_ref), on either side.
+const mostHeld = 6
+
+// hold is the plan with the other projector.
+func (p *plan) hold(h heldLine) *plan {
+	p.holding.Lock()
+	defer p.holding.Unlock()
+	if q := p.held[h]; q != nil {
+		return q
+	}
+	p.makeNodes()
+	q := &plan{
+		tab: p.tab, tc: p.tc, width: p.width, low: p.low, high: p.high,
+		maxD: p.maxD, distinct: p.distinct, rows: make([]basisRow, len(p.rows)),
+		nodes: slices.Clone(p.nodes),
+	}
+	q.noded.Do(func() {})
+	var length float64
+	for i, b := range p.rows {
+		phi := b.w
+		if !h.energy {
+			phi *= b.u - h.pivot
+		}
+		q.rows[i] = basisRow{u: b.u, w: b.w, p1: phi}
+		length += phi * phi
+	}
+	length = math.Sqrt(length)
+	for i := range q.rows {
+		q.rows[i].p1 /= length
+	}
+	for j := range q.nodes {
+		nd := &q.nodes[j]
+		nd.c, nd.d = h.side*nd.c, h.side*nd.d
+	}
+	q.projectShapes()
+	if p.held == nil || len(p.held) == mostHeld {
+		p.held = map[heldLine]*plan{}
+	}
+	p.held[h] = q
+	return q
+}
+
 // prepare turns the plan into the one with the other projector.
 func (f *shapedProfile) prepare(s *Sample, r *Result) {
 	full := f.plan
@@ -136,35 +186,16 @@ func (f *shapedProfile) prepare(s *Sample, r *Result) {
 	f.d = f.sign * (other[1] - this[1]) * full.width
 	f.c = f.sign*(other[0]-this[0]) - f.d*full.shift(s.TRef)
 
-	full.layNodes()
-	p := &plan{
-		tab: full.tab, tc: full.tc, width: full.width, low: full.low, high: full.high,
-		maxD: full.maxD, distinct: full.distinct, rows: make([]basisRow, n),
-		nodes: full.nodes,
-	}
-	var length float64
-	for i, b := range full.rows {
-		phi := b.w
-		if !f.energy {
-			phi *= b.u - f.pivot
-		}
-		p.rows[i] = basisRow{u: b.u, w: b.w, p1: phi}
-		length += phi * phi
-	}
-	length = math.Sqrt(length)
-	for i := range p.rows {
-		p.rows[i].p1 /= length
-	}
 	// E1 <= E2 makes d non-negative seen from the first of two paths side by side.
 	side := f.sign
 	if f.path == 1 {
 		side = -side
 	}
-	for j := range p.nodes {
-		nd := &p.nodes[j]
-		nd.c, nd.d = side*nd.c, side*nd.d
+	line := heldLine{energy: f.energy, side: side}
+	if !f.energy {
+		line.pivot = f.pivot
 	}
-	p.projectShapes()
+	p := full.hold(line)
 	f.plan = p
 	f.k = p.kernel()
 	// Room for the other path where this one's barrier comes near its own bound.

@@ -112,6 +112,9 @@ func Run(ctx context.Context, store *Store, opt Options) (*Summary, error) {
 		opt.Workers = runtime.GOMAXPROCS(0)
 	}
 	opt.Assess.Workers, opt.Assess.SequentialNull = 1, true
+	if opt.Assess.Designs == nil { // archives repeat their temperatures
+		opt.Assess.Designs = &diagnostics.DesignCache{Most: 64}
+	}
 	if opt.judge == nil {
 		opt.judge = diagnostics.Assess
 	}
