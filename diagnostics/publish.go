@@ -345,7 +345,9 @@ type publisher struct {
 	energy    EnergyUnit
 	symbol    string // of the rate constant
 	rounding  Rounding
-	intervals bool // some estimate was printed with its interval
+	intervals bool    // some estimate was printed with its interval
+	known     bool    // σ is known
+	factor    float64 // coverage factor of U
 	lines     []PublishLine
 	notes     []string
 }
@@ -354,7 +356,31 @@ func (w *publisher) note(format string, args ...any) {
 	w.notes = append(w.notes, fmt.Sprintf(format, args...))
 }
 
-const bracketsNote = "brackets hold the standard uncertainty of the last digits; U = 2u"
+// brackets is the note on the uncertainties of lines, whose coverage factor is that of r
+// unless a line says otherwise.
+func (w *publisher) brackets(r *fit.Result) {
+	w.known = r.Model.KnownSigma()
+	w.factor = 2
+	if !w.known {
+		w.factor = criticalValue(w.in.Confidence, r.Nu, false)
+	}
+	said := "U = 2u"
+	if !w.known {
+		said = fmt.Sprintf("U = %s u, half of the %g %% interval", significant(w.factor, 3, ""), 100*w.in.Confidence)
+	}
+	w.note("brackets hold the standard uncertainty of the last digits; %s", said)
+}
+
+// expanded is the expanded uncertainty U: 2u where σ is known; where it was estimated half of the
+// interval, whose coverage factor is the quantile of Student's t (JCGM 100:2008, 6.3.3 and
+// G.3.2), as is that of what lies between few sources.
+func (w *publisher) expanded(e fit.Estimate) float64 {
+	half, twice := (e.Upper-e.Lower)/2, 2*e.StdError
+	if math.IsNaN(half) || math.IsInf(half, 0) || w.known && half < twice {
+		return twice
+	}
+	return half
+}
 
 // none says what can be published where no curve is recommended: how E changes by
 // power-prefactor, which is fitted always, and no parameters of a rejected curve.
@@ -366,7 +392,9 @@ func (w *publisher) none() {
 		for _, t := range []float64{w.in.TMin, w.in.TMax} {
 			w.energyLine("E_a", LocalEnergy(r, t, w.in.Confidence), fmt.Sprintf("at %s K by %s", fixed(t, 0, 0), r.Curve.Info().Name))
 		}
-		w.note(bracketsNote)
+		if r.Cov != nil {
+			w.brackets(r)
+		}
 		if w.in.PowerAdequate != nil && !*w.in.PowerAdequate {
 			w.note("%s fails its adequacy test as well: its E_a tell the trend, and their uncertainties are too small; k at the reference temperature is not stated", r.Curve.Info().Name)
 		} else {
@@ -406,7 +434,7 @@ func (w *publisher) fitted() {
 	case r.Cov == nil:
 		w.note("uncertainties are unknown: the fit leaves no degrees of freedom")
 	default:
-		w.note(bracketsNote)
+		w.brackets(r)
 	}
 	if c, ok := r.Curve.(models.PowerLaw); ok {
 		w.powerLawLines(c)
@@ -414,7 +442,7 @@ func (w *publisher) fitted() {
 		f, meaning := readable(r)
 		w.form(f)
 		if meaning != "" {
-			w.note("%s is read as %s, %s: %s", r.Curve.Info().Name, f.Name, f.Formula, meaning)
+			w.note("%s is read as %s, %s: %s", r.Curve.Info().Name, f.Name, strings.ReplaceAll(f.Formula, "dH_d", "ΔH_d"), meaning)
 		}
 		w.eAt(w.in.TMin)
 		if p := w.in.Profile; p != nil {
@@ -495,8 +523,12 @@ func (w *publisher) value(symbol, unit string, e fit.Estimate, notes ...string) 
 	est := NewEstimate(e)
 	if w.rounding.lopsided(est) && !w.in.Exact {
 		w.intervals = true
-	} else if u := 2 * e.StdError; u > 0 && !w.in.Exact {
-		notes = append(notes, "U = "+twoDigits(u)+withUnit(unit))
+	} else if u := w.expanded(e); u > 0 && !w.in.Exact {
+		said := "U = " + twoDigits(u) + withUnit(unit)
+		if k := u / e.StdError; math.Abs(k/w.factor-1) > 0.01 {
+			said += fmt.Sprintf(" (%s u)", significant(k, 3, ""))
+		}
+		notes = append(notes, said)
 	}
 	w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: est, Text: w.rounding.Text(est, unit), Note: joinNotes(notes...)})
 }
@@ -768,19 +800,24 @@ func (w *publisher) rate() {
 		w.add(PublishLine{Symbol: symbol, Unit: unit, Estimate: Estimate{Real(v), nan, nan, nan, nil}, Text: text + withUnit(unit), Note: note})
 	}
 	_, exp := split(float64(ref.F)-1, 2)
-	fNote, lg, lgNote := "f = exp u(ln k)", 2*ln.StdError/math.Ln10, "2u"
+	half, fNote := w.expanded(ln), "f = exp u(ln k)"
+	lg, lgNote, eNote := half/math.Ln10, "2u", "2u"
+	if !w.known {
+		eNote = fmt.Sprintf("%g %% interval", 100*c)
+	}
+	if !w.known || w.in.Scatter != nil {
+		lgNote = fmt.Sprintf("the %g %% interval of k, k f^±%s", 100*c, significant(half/ln.StdError, 3, ""))
+	}
 	if w.in.Scatter != nil {
-		// u rests on so few sources that 2u is less than 95 %: Δlg k is that of k above.
-		half := (ln.Upper - ln.Lower) / 2
-		lg, lgNote = half/math.Ln10, fmt.Sprintf("the %g %% interval of k", 100*c)
-		fNote += ", " + scatterIncluded + fmt.Sprintf("; that interval is k f^±%s, since u rests on few sources", fixed(half/ln.StdError, 0, 1))
+		fNote += ", " + scatterIncluded
+		lgNote += ", since u rests on few sources"
 	}
 	single("f"+at, "1", float64(ref.F), fixed(float64(ref.F), 0, min(max(1, 1-exp), mostDigits)), fNote)
 	single("g", "K", float64(ref.G), twoDigits(float64(ref.G)),
 		fmt.Sprintf("f(T) = f%s exp|g (1/T − 1/%s K)| covers u(ln k) in the measured range", at, kelvinText(t)))
 	single("Δlg "+w.symbol+at, "1", lg, "±"+twoDigits(lg), lgNote)
-	de := 2 * e.StdError
-	single("Δ(E/R)", "K", de, "±"+twoDigits(de), fmt.Sprintf("2u, at %s K", kelvinText(t)))
+	de := w.expanded(e)
+	single("Δ(E/R)", "K", de, "±"+twoDigits(de), fmt.Sprintf("%s, at %s K", eNote, kelvinText(t)))
 }
 
 // unresolved adds by how much E may still change.

@@ -125,8 +125,9 @@ func TestPublishN2O5(t *testing.T) {
 	e := line(t, p, "E_a", "")
 	reference.Close(t, "E", 1000*float64(e.Value), g["E_J_mol"], 1e-9)
 	reference.Close(t, "u(E)", 1000*float64(e.StdError), g["E_se"], 1e-9)
-	// 102897.86 with 471.33 J/mol, rounded by hand.
-	if e.Text != "102.90(47) kJ/mol" || !strings.HasPrefix(e.Note, "at 30") || !strings.HasSuffix(e.Note, "U = 0.94 kJ/mol") {
+	// 102897.86 with 471.33 J/mol, rounded by hand; U = 2.776445 · 0.47133 = 1.3086, where
+	// 2.776445 is R's qt(.975, 4).
+	if e.Text != "102.90(47) kJ/mol" || !strings.HasPrefix(e.Note, "at 30") || !strings.HasSuffix(e.Note, "U = 1.3 kJ/mol") {
 		t.Errorf("E_a = %q, %q", e.Text, e.Note)
 	}
 	a := line(t, p, "A", "")
@@ -551,15 +552,43 @@ func TestPublishLeavesInputsAlone(t *testing.T) {
 	}
 }
 
+// An uncertainty that one degree of freedom gives needs k = tan(0.475 π) = 12.7062 for 95 %
+// (Student's t with ν = 1 in closed form; JCGM 100:2008, table G.2: 12.71). One that is known
+// has k = 2.
+func TestExpandedUncertainty(t *testing.T) {
+	temp, k := []float64{293.15, 313.15, 333.15}, []float64{1, 3.9, 13}
+	for _, c := range []struct {
+		model  fit.ErrorModel
+		factor float64
+		note   string
+	}{{fit.Relative, math.Tan(0.475 * math.Pi), "U = 12.7 u, half of the 95 % interval"}, {fit.Stated, 2, "U = 2u"}} {
+		s, err := fit.NewSample(c.model, temp, k, []float64{1e-4, 1e-4, 1e-4})
+		if err != nil {
+			t.Fatal(err)
+		}
+		in := publishing(s, fitNamed(t, s, "straight"))
+		in.Style = StyleEvaluated
+		p := publish(in)
+		e := line(t, p, "E/R", "")
+		if want := "U = " + twoDigits(c.factor*float64(e.StdError)) + " K"; !strings.HasSuffix(e.Note, want) {
+			t.Errorf("%s: note %q, want %q", c.model, e.Note, want)
+		}
+		reference.Close(t, "Δ(E/R)", float64(line(t, p, "Δ(E/R)", "").Value), c.factor*float64(e.StdError), 1e-9)
+		if notes := strings.Join(p.Notes, " · "); !strings.Contains(notes, c.note) {
+			t.Errorf("%s: notes %q", c.model, notes)
+		}
+	}
+}
+
 // With several sources Δlg k is the interval of k beside it, which holds the scatter
-// between them; without, it is 2u.
+// between them; without, it is U = t u, with R's qt(.975, 10).
 func TestEvaluatedAgreesWithK(t *testing.T) {
 	s := synthetic(t, "s1_straight", fit.Relative)
 	in := publishing(s, fitNamed(t, s, "straight"))
 	in.Style = StyleEvaluated
 	alone := publish(in)
 	f := float64(line(t, alone, "f(298.15 K)", "").Value)
-	reference.Close(t, "one source", float64(line(t, alone, "Δlg k(298.15 K)", "").Value), 2*math.Log10(f), 1e-12)
+	reference.Close(t, "one source", float64(line(t, alone, "Δlg k(298.15 K)", "").Value), 2.22813885198627*math.Log10(f), 1e-12)
 
 	in.Scatter = &sourceScatter{variance: 0.01, sources: 3}
 	p := publish(in)
