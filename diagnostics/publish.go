@@ -366,12 +366,12 @@ func (w *publisher) brackets(r *fit.Result) {
 	}
 	said := "U = 2u"
 	if !w.known {
-		said = fmt.Sprintf("U = %s u, half of the %g %% interval", significant(w.factor, 3, ""), 100*w.in.Confidence)
+		said = fmt.Sprintf("U = %s u (%g %%)", significant(w.factor, 3, ""), 100*w.in.Confidence)
 	}
 	w.note("brackets hold the standard uncertainty of the last digits; %s", said)
 }
 
-// expanded is the expanded uncertainty U: 2u where σ is known; where it was estimated half of the
+// expanded is the expanded uncertainty U: 2u where σ is known; where it was estimated, half of the
 // interval, whose coverage factor is the quantile of Student's t (JCGM 100:2008, 6.3.3 and
 // G.3.2), as is that of what lies between few sources.
 func (w *publisher) expanded(e fit.Estimate) float64 {

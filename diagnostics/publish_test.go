@@ -561,7 +561,7 @@ func TestExpandedUncertainty(t *testing.T) {
 		model  fit.ErrorModel
 		factor float64
 		note   string
-	}{{fit.Relative, math.Tan(0.475 * math.Pi), "U = 12.7 u, half of the 95 % interval"}, {fit.Stated, 2, "U = 2u"}} {
+	}{{fit.Relative, math.Tan(0.475 * math.Pi), "U = 12.7 u (95 %)"}, {fit.Stated, 2, "U = 2u"}} {
 		s, err := fit.NewSample(c.model, temp, k, []float64{1e-4, 1e-4, 1e-4})
 		if err != nil {
 			t.Fatal(err)
