@@ -61,7 +61,11 @@ func (p *page) sources(a *diagnostics.Assessment) {
 // offset prints the offset of a source from the mean over the sources.
 func offset(s diagnostics.SourceOffset) string {
 	percent := diagnostics.Real(100 * math.Expm1(float64(s.Offset.Value)))
-	return fmt.Sprintf("%s\u00a0%s\u00a0%%", or(s.Name, "(no name)"), signed(percent, 1))
+	text := fmt.Sprintf("%s\u00a0%s\u00a0%%", or(s.Name, "(no name)"), signed(percent, 1))
+	if !s.InCurvature {
+		text += " (one\u00a0temperature)"
+	}
+	return text
 }
 
 // offsetsIn is the number of offsets that are fitted beside every curve.
