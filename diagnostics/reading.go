@@ -11,7 +11,7 @@ import (
 var onlyToKnow = []string{
 	"title-rows", "heading-rows-joined", "heading-in-comment", "superscript-lost", "column-not-used",
 	"time-like", "several-columns", "uncertainty-spare", "brackets-standard", "mean-of-few-repeats",
-	"rows-without-value", "rows-after-table", "rows-selected-out", "assumption-not-needed", "assumption-made",
+	"rows-without-value", "rows-after-table", "blank-rows", "rows-selected-out", "assumption-not-needed", "assumption-made",
 	"unit-converted", "duplicate-rows", "uncertainty-unit-assumed", "repeats-side-by-side", "mean-beside-repeats",
 	"sheet-chosen", "percent-cells", "merged-cells",
 }

@@ -55,6 +55,7 @@ func (m *maker) all() ([]*Set, error) {
 	m.cutFootnotes(first, len(headings))
 	p := m.columns(headings, line)
 	p.notices = append(notices, p.notices...)
+	m.closeGaps(p, first, len(headings))
 	if t.Encoding == "Windows-1252" {
 		p.notices = append(p.notices, notice(noteEncoding, "the file is not UTF-8 and was read as Windows-1252"))
 	}

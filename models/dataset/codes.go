@@ -87,6 +87,8 @@ const (
 	noteMissing        = "rows-without-value"
 	noteLimits         = "limits-read"
 	noteAfter          = "rows-after-table"
+	noteGoesOn         = "blank-rows"
+	noteNotRead        = "rows-not-read"
 	noteSelected       = "rows-selected-out"
 	noteDuplicate      = "duplicate-rows"
 	noteClose          = "settings-close"
@@ -157,7 +159,7 @@ var problemTexts = []Explanation{
 	{codePoolUnit, "The units of pooled files cannot be converted into each other", "Pooled rows are brought to the unit of the first file. Units of different dimensions have no ratio, nor has a unit that was not understood.", "write the rate constants in one unit"},
 	{codeTidyCell, "A cell of a tidy table is not understood", "A table with the headings row and left_out was written by inspect --tidy: row holds the line of the original file, level says standard or repeats.", "write it as --tidy does, or rename the two headings"},
 	{codeDatasetScattered, "The rows of a data set do not follow one another", "A long table is read data set by data set, so that memory does not grow with it; a name that comes again after other data sets would give two halves.", "sort the table by its column dataset, or cut it into tables of less than 32 MB"},
-	{codeBelowBlank, "Rows below a blank row were not read", "A table ends at the first blank row below its data. In a table of many data sets, what follows may be some of them.", "delete the blank row if measurements follow it"},
+	{codeBelowBlank, "Rows below a blank row were not read", "A table ends where something else than its rows follows a blank row. In a table of many data sets, what stands below may be some of them.", "if measurements follow, delete what stands between them and the table"},
 	{codeTooLong, "Too many rows for one data set", "A table is read as a whole where no column dataset divides it, or where it is not UTF-8; a data set of a million rows is none that could be assessed.", "add a column dataset and save the table as UTF-8, or name its column with --dataset-by"},
 	{codeColumnsFile, "The file that settles headings is not understood", "onebarrier-columns.csv has the headings files,heading,role,unit,level, and below them a line for each heading that it settles. The files of its folder are read without it.", "correct the line, or delete the file"},
 	{codeInternalError, "A fault of the program", "The program failed on this data set; the others are not touched.", "report it with the data set"},
@@ -195,7 +197,9 @@ var noticeTexts = []Explanation{
 	{noteFewRepeats, "Uncertainties come from few repeats", "A standard deviation from 30 repeats or fewer is not a known uncertainty; k is taken as a mean.", ""},
 	{noteMissing, "Rows without a value were left out", "The temperature or the rate constant is empty, n.d., NA, a dash or a spreadsheet error.", ""},
 	{noteLimits, "Limits", "Rows that state only a bound are no measured k; an assessment takes them as the probability of their side of the bound. Where one cannot enter, such as one of a source that measured nothing else, assess says so (limits-left-out).", ""},
-	{noteAfter, "Rows below the table were not read", "Rows after the first blank row below the data, or labelled mean, SD, slope and the like, are no measurements, nor are the lines of words that end a table, such as * mean of two titrations.", "delete the blank row if measurements follow it"},
+	{noteAfter, "Rows below the table were not read", "Rows of words below a blank row, or labelled mean, SD, slope and the like, are no measurements, nor are the lines of words that end a table, such as * mean of two titrations.", "delete the blank row if measurements follow it"},
+	{noteGoesOn, "The table goes on below a blank row", "Rows below a blank one belong to the table where they read as its rows do: a temperature, and a rate constant or none, under the same headings. Measurements of another rate constant belong in a file of their own.", ""},
+	{noteNotRead, "Numbers below the table were not read", "A table ends where something else than its rows follows a blank row: headings of another table, words, numbers that are no temperatures. Rows of numbers from there on are counted as left out.", "if they belong to the table, delete what stands between them and it; if they are another table, save it as a file of its own"},
 	{noteSelected, "Rows were left out on request", "--where, --leave-out, --t-min or --t-max left them out.", ""},
 	{noteDuplicate, "Rows are the same", "The same temperature and rate constant occur more than once: repeats that agree to all digits, or a row copied twice.", "--leave-out the copies if they are no separate measurements"},
 	{noteClose, "Two temperatures lie far closer than the others", "Temperatures count as one setting where they are equal. Two that differ by less than 0.2 K, and by less than a tenth of what lies between settings otherwise (the median gap), are more likely one setting of which a cell was rounded otherwise, converted from another unit or converted with 273 in place of 273.15. Taken as two they count as two temperatures, are no repeats of each other, and give an E between them that says nothing. Temperatures that were measured anew for each run, and so differ everywhere, are not meant.", "if they are one setting, write one temperature for both; if not, nothing is to be done"},

@@ -16,24 +16,28 @@ func (m *maker) cutFootnotes(first, n int) {
 	if m.tidied != nil || n < 2 {
 		return
 	}
-	end := first
-	for end < len(m.t.Rows) && (end == first || !m.t.Blank[end]) {
-		end++
-	}
-	from := end
-	for from > first && m.isFootnote(m.t.Rows[from-1].Cells, n) {
-		from--
-	}
+	end := nextBlank(m.t.Blank, first+1)
+	from := first + m.beforeFootnotes(m.t.Rows[first:end], n)
 	if from == end {
 		return
-	}
-	for _, r := range m.t.Rows[from:end] {
-		m.footnotes = append(m.footnotes, r.Line)
 	}
 	t := *m.t // whose rows are the caller's
 	t.Rows = slices.Concat(t.Rows[:from], t.Rows[end:])
 	t.Blank = slices.Concat(t.Blank[:from], t.Blank[end:])
 	m.t = &t
+}
+
+// beforeFootnotes is how many rows stand above the footnotes that end them, whose
+// lines it notes.
+func (m *maker) beforeFootnotes(rows []Row, n int) int {
+	from := len(rows)
+	for m.tidied == nil && n > 1 && from > 0 && m.isFootnote(rows[from-1].Cells, n) {
+		from--
+	}
+	for _, r := range rows[from:] {
+		m.footnotes = append(m.footnotes, r.Line)
+	}
+	return from
 }
 
 // isFootnote reports whether cells under n headings are a line of text: words alone in

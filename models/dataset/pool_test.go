@@ -263,13 +263,13 @@ func TestTidyKeepsEverything(t *testing.T) {
 func TestTidyCells(t *testing.T) {
 	const head = "T/K,k/s^-1,u(k)/s^-1,level,file,row,left_out\n"
 	for text, want := range map[string]string{
-		head + "300,1,0.1,standard,a.csv,x,\n":                                            `x:2: column "row": "x" is not the number of a line`,
-		head + "300,1,0.1,often,a.csv,8,\n300,1,0.1,,a.csv,7,\n":                          `x:2: column "level": "often" is not a level`,
-		head + "300,1,0.1,,a.csv,7,\n310,2,0.1,,a.csv,8,\n":                               "",
-		head + "300,1,0.1,,a.csv,7,\n310,2,0.1,,b.csv,9,\n":                               "",
-		head + "300,1,0.1,,a.csv,7,\n310,2,0.1,,b.csv,7,\n":                               "x: --leave-out 7: several files have such a line",
-		head + "300,1,0.1,,a.csv,8,\n310,2,0.1,,b.csv,9,\n":                               "x:7: --leave-out names a line that holds no row of data",
-		"T/K,k/s^-1,row,left_over\n300,1,a,\n310,2,b,\n310,2,b,\n310,2,b,\n,,,\n320,,,\n": "x:7: --leave-out names a line",
+		head + "300,1,0.1,standard,a.csv,x,\n":                                                `x:2: column "row": "x" is not the number of a line`,
+		head + "300,1,0.1,often,a.csv,8,\n300,1,0.1,,a.csv,7,\n":                              `x:2: column "level": "often" is not a level`,
+		head + "300,1,0.1,,a.csv,7,\n310,2,0.1,,a.csv,8,\n":                                   "",
+		head + "300,1,0.1,,a.csv,7,\n310,2,0.1,,b.csv,9,\n":                                   "",
+		head + "300,1,0.1,,a.csv,7,\n310,2,0.1,,b.csv,7,\n":                                   "x: --leave-out 7: several files have such a line",
+		head + "300,1,0.1,,a.csv,8,\n310,2,0.1,,b.csv,9,\n":                                   "x:7: --leave-out names a line that holds no row of data",
+		"T/K,k/s^-1,row,left_over\n300,1,a,\n310,2,b,\n310,2,b,\n310,2,b,\n,,,\nend,of,it,\n": "x:7: --leave-out names a line",
 	} {
 		_, err := Read("x", strings.NewReader(text), Options{LeaveOut: []int{7}})
 		if (err == nil) != (want == "") || err != nil && !strings.HasPrefix(err.Error(), want) {

@@ -498,8 +498,8 @@ func TestMessages(t *testing.T) {
 }
 
 func TestRowsLeftOut(t *testing.T) {
-	s := read(t, "T/K,k/s^-1,source\n300,1,a\n301,n.d.,a\nNA,1,a\n302,<0.5,a\n303,<LOD,b\n304,,b\n305,2,b\nmean,1.5,\n\n400,9,x\nand,anything,else,here\n", Options{})
-	want := map[int]string{2: "", 3: "no rate constant", 4: "no temperature", 5: "only a limit", 6: "no rate constant", 7: "no rate constant", 8: ""}
+	s := read(t, "T/K,k/s^-1,source\n300,1,a\n301,n.d.,a\nNA,1,a\n302,<0.5,a\n303,<LOD,b\n304,,b\n305,2,b\nmean,1.5,\n\n310,9,x\n\nE,76,x\nand,anything,else,here\n", Options{})
+	want := map[int]string{2: "", 3: "no rate constant", 4: "no temperature", 5: "only a limit", 6: "no rate constant", 7: "no rate constant", 8: "", 11: ""}
 	if len(s.Points) != len(want) {
 		t.Fatalf("%d points", len(s.Points))
 	}
@@ -521,7 +521,7 @@ func TestRowsLeftOut(t *testing.T) {
 			below = append(below, n.Rows)
 		}
 	}
-	if len(below) != 2 || !slices.Equal(below[0], []int{11, 12}) || !slices.Equal(below[1], []int{9}) {
+	if len(below) != 2 || !slices.Equal(below[0], []int{13, 14}) || !slices.Equal(below[1], []int{9}) {
 		t.Errorf("rows below the table: %v", below)
 	}
 	p := read(t, "T/K,k/s^-1,limit\n300,1,>\n310,1,\n", Options{}).Points[0]

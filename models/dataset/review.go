@@ -15,7 +15,7 @@ import (
 // alone, whatever they were read from, so that a pooled set and a tidy table are
 // judged as one file would be.
 func (s *Set) review() {
-	var noT, noK, few, limits, selected, duplicates, large []int // indices of points
+	var noT, noK, below, few, limits, selected, duplicates, large []int // indices of points
 	type key struct {
 		t int
 		k float64
@@ -31,6 +31,8 @@ func (s *Set) review() {
 		}
 		switch why := pt.WhyNot; {
 		case pt.Used:
+		case why == notRead:
+			below = append(below, i)
 		case why == noTemperature:
 			noT = append(noT, i)
 		case strings.HasPrefix(why, noRateConstant):
@@ -56,6 +58,7 @@ func (s *Set) review() {
 	}
 	s.sayOf(noteMissing, noT, "no temperature, left out")
 	s.sayOf(noteMissing, noK, "no rate constant, left out")
+	s.sayOf(noteNotRead, below, "numbers below the table, not read")
 	s.sayOf(noteFewRepeats, few, "the uncertainty comes from 30 repeats or fewer")
 	s.sayOf(noteLimits, limits, "only a limit is known, and enters as a limit")
 	s.sayOf(noteSelected, selected, "left out on request")
@@ -81,7 +84,7 @@ func (s *Set) review() {
 
 // reviewCodes are those that review raises.
 var reviewCodes = map[string]bool{
-	noteMissing: true, noteFewRepeats: true, noteLimits: true, noteSelected: true, noteDuplicate: true,
+	noteMissing: true, noteNotRead: true, noteFewRepeats: true, noteLimits: true, noteSelected: true, noteDuplicate: true,
 	noteClose: true, noteLargeU: true, noteFew: true, noteNarrow: true, noteVaries: true,
 }
 

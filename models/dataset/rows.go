@@ -55,8 +55,10 @@ func (m *maker) points(p *plan, conds []condition, first, n int) []Point {
 	for i := first; i < len(m.t.Rows); i++ {
 		r := m.t.Rows[i]
 		if i > first && m.t.Blank[i] {
-			for ; i < len(m.t.Rows); i++ {
-				after = append(after, m.t.Rows[i].Line)
+			at := len(points)
+			points, after = m.below(p, points, m.t.Rows[i:], n)
+			for _, pt := range points[at:] {
+				delete(leaveOut, pt.Row)
 			}
 			break
 		}

@@ -133,7 +133,7 @@ func (t *Table) Stream(opt Options) (*Stream, error) {
 	found := make([]marks, len(s.plans))
 	rows := t.Rows
 	for i := first; i < len(rows); i++ {
-		if i > first && t.Blank[i] {
+		if i > first && t.Blank[i] && !s.readsOn(rows[i].Cells) {
 			for _, r := range rows[i:] {
 				s.after = append(s.after, r.Line)
 			}
@@ -200,6 +200,11 @@ func (s *Stream) plan() (first int, err error) {
 		s.plans = append(s.plans, p)
 	}
 	return first, nil
+}
+
+// readsOn reports whether a row below a blank one goes on with the table.
+func (s *Stream) readsOn(cells []string) bool {
+	return slices.ContainsFunc(s.plans, func(p *plan) bool { return p.readsOn(cells, len(p.cols)) })
 }
 
 // planOfStream is what a plan needs besides to read data set by data set.
@@ -580,7 +585,7 @@ func newLong(name string, r io.ReadSeeker, size int64, opt Options) (*Stream, er
 		}
 	}
 	for i := first; i < len(head.Rows); i++ {
-		if i > first && head.Blank[i] {
+		if i > first && head.Blank[i] && !s.readsOn(head.Rows[i].Cells) {
 			return nil, errWhole // a short table above something else
 		}
 		look(head.Rows[i])
@@ -593,7 +598,7 @@ func newLong(name string, r io.ReadSeeker, size int64, opt Options) (*Stream, er
 		if !ok {
 			break
 		}
-		if blank || len(s.after) > 0 {
+		if len(s.after) > 0 || blank && !s.readsOn(cells) {
 			s.after = append(s.after, at)
 			continue
 		}
@@ -624,7 +629,7 @@ func newLong(name string, r io.ReadSeeker, size int64, opt Options) (*Stream, er
 	var all []string
 	s.rows = func() (r Row, blank, ok bool) {
 		for {
-			cells, at, blank, ok, ps := records.row()
+			cells, at, _, ok, ps := records.row()
 			if !ok {
 				in.problems = ps
 				if in.err != nil {
@@ -640,7 +645,7 @@ func newLong(name string, r io.ReadSeeker, size int64, opt Options) (*Stream, er
 			}
 			from := len(all)
 			all = append(all, cells...)
-			return Row{at, all[from:len(all):len(all)]}, blank && at > line, true
+			return Row{at, all[from:len(all):len(all)]}, len(s.after) > 0 && at >= s.after[0], true
 		}
 	}
 	s.begin()

@@ -15,7 +15,7 @@ var readingFindings = []string{
 	"encoding-windows-1252", "title-rows", "heading-rows-joined", "heading-in-comment", "superscript-lost",
 	"column-not-used", "unit-not-understood", "unit-without-standard-state", "time-like", "several-columns",
 	"kelvin-gap", "repeats-side-by-side", "mean-beside-repeats", "uncertainty-of-which-repeat", "uncertainty-unit-assumed", "uncertainty-not-used", "repeats-missing", "uncertainty-spare",
-	"brackets-standard", "rows-after-table", "celsius-like-kelvin", "kelvin-like-celsius", "assumption-not-needed",
+	"brackets-standard", "rows-after-table", "blank-rows", "celsius-like-kelvin", "kelvin-like-celsius", "assumption-not-needed",
 	"sheet-chosen", "hidden-cells", "percent-cells", "merged-cells", "unit-converted",
 }
 
