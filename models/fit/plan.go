@@ -300,6 +300,12 @@ func (s *search) keep(c *cover, leads []lead) {
 // cold is the global fit of the data in k.z: the best minimum found, converged to a
 // decrement of tol·RSS. ok is false where nothing improves on the straight line.
 func (p *plan) cold(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
+	p.atNodes(k, s, straight)
+	return p.descend(k, s, straight, tol)
+}
+
+// atNodes fills the residual sums of squares at the nodes.
+func (p *plan) atNodes(k *kernel, s *search, straight float64) {
 	n := len(p.rows)
 	for j := 0; j < len(p.nodes); j += 4 {
 		product := dot4(k.z[:n], p.shapes[j/4*n:])
@@ -307,7 +313,6 @@ func (p *plan) cold(k *kernel, s *search, straight, tol float64) (best *normal, 
 			s.rss[j+i] = straight - 2*product[i] + nd.norm2
 		}
 	}
-	return p.descend(k, s, straight, tol)
 }
 
 // pick lists the lowest level-wise minima among the nodes, lowest first.
@@ -396,14 +401,19 @@ func shorten(c, d, factor float64, small bool) (float64, float64) {
 	}
 }
 
-// descend is cold once the residual sums of squares at the nodes are known.
-func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
+// starts puts where a global search goes from into s.start, and returns their number.
+func (p *plan) starts(k *kernel, s *search, straight float64) int {
 	var pick [coldStarts]int
 	picked := p.pick(s, &pick)
 	for i, j := range pick[:picked] {
 		k.at(p.nodes[j].c, p.nodes[j].d, &s.start[i])
 	}
-	picked = p.faint(k, s, straight, picked)
+	return p.faint(k, s, straight, picked)
+}
+
+// descend is cold once the residual sums of squares at the nodes are known.
+func (p *plan) descend(k *kernel, s *search, straight, tol float64) (best *normal, ok bool) {
+	picked := p.starts(k, s, straight)
 	for i := range picked {
 		k.converge(&s.start[i], &s.trial, tol, coldSteps)
 	}

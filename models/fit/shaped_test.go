@@ -317,3 +317,44 @@ func TestParallelProfileWithoutScatter(t *testing.T) {
 		}
 	}
 }
+
+// TestProfileWhereAPathMayBeLost: a path too slow to matter beside another, or a step too
+// fast to matter before another, leaves a straight line. Where that lies within the 95 %
+// set, no value of the lost barrier, far enough, and no prefactor that loses it is outside.
+func TestProfileWhereAPathMayBeLost(t *testing.T) {
+	rng := rand.New(rand.NewPCG(4, 9))
+	within, outside := 0, 0
+	for range 60 {
+		s := made(t, 10, 280, 340, []float64{-5, 60e3}, models.Straight(), func(int) float64 { return 0.03 * rng.NormFloat64() })
+		line := Fit(s, models.Straight()).RSS
+		for _, c := range []models.Shaped{models.Parallel{}, models.Series{}} {
+			r := Fit(s, c)
+			if !r.Usable() {
+				continue
+			}
+			quantile := r.quantile(0.95)
+			if line >= r.RSS*(1+square(quantile)/float64(r.Nu)) {
+				outside++
+				continue
+			}
+			within++
+			losing := 1.0 // the sign of ln A that loses a step
+			if c == (models.Parallel{}) {
+				losing = -1
+			}
+			for param, dir := range map[string]float64{"E1": -1, "E2": 1, "ln_A1": losing, "ln_A2": losing} {
+				e := ProfileShaped(s, r, param, 0.95)
+				end := e.Upper
+				if dir < 0 {
+					end = e.Lower
+				}
+				if !math.IsInf(end, int(dir)) {
+					t.Errorf("%s: %s from %g to %g, but the line has RSS %g and the curve %g", c.Info().Name, param, e.Lower, e.Upper, line, r.RSS)
+				}
+			}
+		}
+	}
+	if within < 20 || outside < 1 {
+		t.Errorf("%d fits with the line within the set, %d without", within, outside)
+	}
+}

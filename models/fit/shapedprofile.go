@@ -39,7 +39,7 @@ func ProfileShaped(s *Sample, r *Result, param string, confidence float64) Estim
 		return e
 	}
 	f.prepare(s, r)
-	smin := math.Min(f.at(f.estimate, f.c, f.d), r.RSS)
+	smin := math.Min(f.least(), r.RSS)
 	rise := t * t
 	if !s.Model.KnownSigma() {
 		rise *= smin / float64(r.Nu)
@@ -76,8 +76,10 @@ type shapedProfile struct {
 	data     []float64  // projected data with θ at its estimate
 	unit     []float64  // projected change of them per unit of θ
 	c, d     float64    // the other path against this one, at the estimate
-	cur      normal
-	trial    normal
+	// line is a + b u without this path, which leaves straight.
+	lineA, lineB, straight float64
+	cur                    normal
+	trial                  normal
 }
 
 // newShapedProfile reads param.
@@ -196,6 +198,7 @@ func (f *shapedProfile) prepare(s *Sample, r *Result) {
 		line.pivot = f.pivot
 	}
 	p := full.hold(line)
+	f.withoutThis(s)
 	f.plan = p
 	f.k = p.kernel()
 	// Room for the other path where this one's barrier comes near its own bound.
@@ -225,71 +228,258 @@ func (f *shapedProfile) prepare(s *Sample, r *Result) {
 	projectOutTwice(p.rows, f.unit)
 }
 
-// load holds the parameter at theta and returns the sum of squares with no other path.
-func (f *shapedProfile) load(theta float64) (alone float64) {
+// withoutThis fits the line of the other path alone.
+func (f *shapedProfile) withoutThis(s *Sample) {
+	rows := f.plan.rows
+	z := make([]float64, len(rows))
+	var a1, a2 float64
+	for i, r := range rows {
+		z[i] = r.w * s.Y[i]
+		a1 += r.p1 * z[i]
+		a2 += r.p2 * z[i]
+	}
+	f.lineA, f.lineB = f.plan.lineAt(a1, a2)
+	projectOutTwice(rows, z)
+	f.straight = dot(z, z)
+}
+
+// loses reports whether this path can be of no account with the parameter held at theta,
+// so that S is no more than what the line of the other path leaves: whether some (c, d)
+// within the bounds is that line and past the end of the softplus for all points. The
+// theta of which that is true have no gaps.
+func (f *shapedProfile) loses(theta float64) bool {
+	if f.energy { // c is free, and d what the barriers differ by
+		d := f.sign * (f.lineB - theta*f.plan.width)
+		return d >= f.k.low && d <= f.k.up
+	}
+	most := math.Inf(-1) // of the least c + d u
+	above := f.sign * (f.lineA + f.lineB*f.pivot - theta)
+	for _, d := range []float64{f.k.low, 0, f.k.up} {
+		most = math.Max(most, above+math.Min(d*(f.plan.low-f.pivot), d*(f.plan.high-f.pivot)))
+	}
+	return most >= softplusEnd
+}
+
+// load holds the parameter at theta. It returns the sum of squares with no other path,
+// and that with no path of this one's.
+func (f *shapedProfile) load(theta float64) (alone, lost float64) {
 	shift := theta - f.estimate
 	for i := range f.k.z {
 		v := f.data[i] - shift*f.unit[i]
 		f.k.z[i] = v
 		alone += v * v
 	}
-	return alone
+	lost = math.Inf(1)
+	if f.loses(theta) {
+		lost = f.straight
+	}
+	return alone, lost
+}
+
+// least is S at the estimate.
+func (f *shapedProfile) least() float64 {
+	alone, lost := f.load(f.estimate)
+	f.k.at(f.c, f.d, &f.cur)
+	f.k.converge(&f.cur, &f.trial, profileTol, 60)
+	return min(f.cur.rss, alone, lost)
 }
 
 const (
 	// profileTol is the relative accuracy of the profiled sum of squares.
 	profileTol = 1e-13
+	// profileStep is the decrement, of RSS, at which a profile's steps stop: less the
+	// decrement RSS is then good to profileTol, and its slope to √profileStep.
+	profileStep = 1e-11
+	// profileNear is how near to an end, of its distance from the estimate, the last
+	// step goes without another look.
+	profileNear = 1e-6
 	// profileStarts is the number of starts of the search that confirms an end.
 	profileStarts = 5
 )
 
-// at returns S(θ) from a start, and leaves the point in f.cur.
-func (f *shapedProfile) at(theta, c, d float64) float64 {
-	alone := f.load(theta)
-	f.k.at(c, d, &f.cur)
-	f.k.converge(&f.cur, &f.trial, profileTol, 60)
-	return math.Min(f.cur.rss, alone)
+// heldAt is the fit with the parameter held at a distance x from the estimate: y is
+// √(S - S_min) less what it is at an end, which is nearly linear in x, and the other
+// path goes from (c, d) along (dc, dd) as x grows.
+type heldAt struct{ x, y, slope, c, d, dc, dd float64 }
+
+// at holds the parameter at x from the estimate in the direction dir and fits the rest,
+// from where the fit q leads. The slope is that of S at fixed (c, d), since the fit is
+// stationary in them; (dc, dd) keep it so.
+func (f *shapedProfile) at(x, dir float64, q *heldAt, smin, top float64) heldAt {
+	alone, lost := f.load(f.estimate + dir*x)
+	k, cur := f.k, &f.cur
+	dc, dd := q.dc*(x-q.x), q.dd*(x-q.x)
+	k.at(q.c+dc, math.Max(k.low, math.Min(k.up, q.d+dd)), cur)
+	stale := false                       // k.ws and k.slope are of another point
+	if math.Abs(dc)+math.Abs(dd) > 0.3 { // a way that may bend
+		if k.at(q.c, q.d, &f.trial); cur.rss <= f.trial.rss {
+			stale = true
+		} else {
+			*cur, f.trial = f.trial, *cur
+		}
+	}
+	s := cur.rss
+	for range 60 {
+		k.solve(cur)
+		if s = cur.rss; s <= k.floor {
+			break
+		}
+		if cur.newton && cur.decrement <= profileStep*s {
+			s -= cur.decrement
+			break
+		}
+		if stale = !k.step(cur, &f.trial); stale {
+			break
+		}
+	}
+	if stale {
+		k.tab.shape(cur.c, cur.d, k.rows, k.ws, k.slope)
+	}
+	out := heldAt{x: x, c: cur.c, d: cur.d}
+	var slope, t0, t1 float64
+	for i := range k.rows {
+		r := &k.rows[i]
+		res := k.z[i]
+		if s < alone {
+			res -= k.ws[i]
+		}
+		slope -= res * f.unit[i]
+		j := r.w * k.slope[i] * f.unit[i]
+		t0 += j
+		t1 += j * r.u
+	}
+	if s = math.Min(s, alone); s > smin && s < lost {
+		out.slope = dir * slope / math.Sqrt(s-smin)
+	}
+	s = math.Min(s, lost)
+	out.y = distance(s, smin, top)
+	h00, h01, h11 := cur.m00-cur.k00, cur.m01-cur.k01, cur.m11-cur.k11
+	if det := h00*h11 - h01*h01; cur.newton && !cur.bound && cur.decrement <= 1e-3*cur.rss {
+		out.c, out.d = cur.c+cur.step0, cur.d+cur.step1
+		out.dc, out.dd = -dir*(h11*t0-h01*t1)/det, -dir*(h00*t1-h01*t0)/det
+	}
+	return out
+}
+
+// distance is nearly linear in how far the parameter is held from its estimate.
+func distance(s, smin, top float64) float64 { return math.Sqrt(math.Max(0, s-smin)) - top }
+
+// towards returns where y is 0 by the cubic in y through two fits and their slopes,
+// by the newer one's tangent where there is no such cubic, and NaN without a slope.
+func (q *heldAt) towards(before *heldAt) float64 {
+	if !(q.slope > 0) {
+		return math.NaN()
+	}
+	h := q.y - before.y
+	if !(before.slope > 0) || !(h*(q.x-before.x) > 0) {
+		return q.x - q.y/q.slope
+	}
+	u := -before.y / h
+	v := 1 - u
+	return q.x - (1+2*u)*v*v*(q.x-before.x) + h*u*v*(v/before.slope-u/q.slope)
+}
+
+// end finds where S has risen by rise, from a first step that doubles for as long as
+// that is not reached, and confirms by a global search that no other minimum lies lower
+// there. ok is false where S never rises that far.
+func (f *shapedProfile) end(step, smin, rise float64) (limit float64, ok bool) {
+	top, dir, step := math.Sqrt(rise), math.Copysign(1, step), math.Abs(step)
+	far := math.Min(f.reach, dir*(math.Max(f.lo, math.Min(f.hi, math.Copysign(math.Inf(1), dir)))-f.estimate))
+	// Where the line alone is within, S stays so for as long as this path can be lost.
+	within := f.straight < smin+rise*(1-2*profileNear) && f.loses(f.estimate+dir*far)
+	if within && f.loses(f.estimate) {
+		return math.Copysign(math.Inf(1), dir), false
+	}
+	inside := f.at(0, dir, &heldAt{c: f.c, d: f.d}, smin, top)
+	inside.slope = 0 // √ has none here
+	last, outside := inside, math.Inf(1)
+	next := step
+	for round := 1; round < 400 && inside.x < far; round++ {
+		// From inside: what was found farther out may lie in another valley.
+		from := &inside
+		if math.Abs(last.y) < top/10 {
+			from = &last
+		}
+		q := f.at(math.Min(next, far), dir, from, smin, top)
+		guess := q.towards(&last)
+		found := math.Abs(q.y) <= profileNear*top && math.Abs(guess-q.x) <= profileNear*q.x
+		last = q
+		switch {
+		case q.y < 0:
+			if inside = q; within && f.loses(f.estimate+dir*q.x) {
+				return math.Copysign(math.Inf(1), dir), false
+			}
+		case q.y >= 0:
+			outside = q.x
+		default: // no number
+			return math.Copysign(math.Inf(1), dir), false
+		}
+		if open := math.IsInf(outside, 1); !found && open {
+			step *= 2
+			next = q.x + step
+			if guess > q.x && guess < next {
+				next = guess
+			}
+			continue
+		}
+		root := q.x
+		if found {
+			root = guess
+		} else if outside-inside.x > 1e-13*step+0x1p-52*math.Abs(f.estimate+dir*q.x) {
+			next = guess
+			if round%4 == 0 || !(guess > inside.x && guess < outside) {
+				next = inside.x + (outside-inside.x)/2
+			}
+			continue
+		}
+		theta := f.estimate + dir*root
+		if !f.undercut(theta, smin+rise*(1-2*profileNear)) {
+			return theta, true
+		}
+		lower := distance(f.global(theta), smin, top)
+		if !(lower < -profileNear*top) {
+			return theta, true
+		}
+		inside = heldAt{x: root, y: lower, c: f.cur.c, d: f.cur.d}
+		last, outside, next = inside, math.Inf(1), root+step
+	}
+	return math.Copysign(math.Inf(1), dir), false
+}
+
+// undercut reports whether a global search with the parameter held at theta may come
+// to less than s: unless from every start the quadratic model shows that it will not.
+func (f *shapedProfile) undercut(theta, s float64) bool {
+	alone, lost := f.load(theta)
+	if alone < s || lost < s {
+		return true
+	}
+	f.plan.atNodes(f.k, f.search, alone)
+	for i := range f.plan.starts(f.k, f.search, alone) {
+		if cur := &f.search.start[i]; f.comesBelow(cur, s) {
+			return true
+		}
+	}
+	return false
+}
+
+// comesBelow takes steps from cur until it is plain whether they lead below s.
+func (f *shapedProfile) comesBelow(cur *normal, s float64) bool {
+	for range 2 * coldSteps {
+		f.k.solve(cur)
+		if cur.rss < s {
+			return true
+		}
+		if cur.newton && !cur.bound && decideHope*cur.decrement < cur.rss-s || !f.k.step(cur, &f.trial) {
+			return false
+		}
+	}
+	return true
 }
 
 // global returns S(θ) from a global search, and leaves the point in f.cur.
 func (f *shapedProfile) global(theta float64) float64 {
-	alone := f.load(theta)
+	alone, lost := f.load(theta)
 	best, _ := f.plan.cold(f.k, f.search, alone, profileTol)
 	f.cur = *best
-	return math.Min(best.rss, alone)
-}
-
-// end walks from the estimate in steps that double until S has risen by rise, finds
-// where, and confirms by a global search that no other minimum lies lower there. ok
-// is false where S never rises that far.
-func (f *shapedProfile) end(step, smin, rise float64) (limit float64, ok bool) {
-	// The square root is nearly linear in θ.
-	distance := func(rss float64) float64 {
-		return math.Sqrt(math.Max(0, rss-smin)) - math.Sqrt(rise)
-	}
-	limit = math.Max(f.lo, math.Min(f.hi, f.estimate+math.Copysign(f.reach, step)))
-	c, d := f.c, f.d
-	inside, dInside := f.estimate, -math.Sqrt(rise)
-	for range 200 { // steps double: what is not found by then lies at the limit
-		if (limit-inside)*step <= 0 {
-			break
-		}
-		theta := inside + step
-		if (theta-limit)*step > 0 {
-			theta = limit
-		}
-		out := distance(f.at(theta, c, d))
-		if out < 0 {
-			inside, dInside, c, d = theta, out, f.cur.c, f.cur.d
-			step *= 2
-			continue
-		}
-		root := findRoot(func(x float64) float64 { return distance(f.at(x, c, d)) }, inside, dInside, theta, out)
-		lower := distance(f.global(root))
-		if !(lower < -1e-6*math.Sqrt(rise)) {
-			return root, true
-		}
-		inside, dInside, c, d = root, lower, f.cur.c, f.cur.d
-	}
-	return math.Copysign(math.Inf(1), step), false
+	return min(best.rss, alone, lost)
 }
