@@ -30,6 +30,7 @@ type SurveySet struct {
 	Lower     float64 // its interval; one end alone known: the other is open
 	Upper     float64
 	P         float64 // of the test that E does not change
+	Q, QBand  float64 // false discovery rates of: E changes; by more than a prefactor explains
 }
 
 // Bounds on what can be told apart on a page.
@@ -37,7 +38,7 @@ const (
 	mostNames    = 40  // data sets with their names
 	mostBars     = 240 // bars in a panel; of more data sets each bar stands for several
 	surveyBins   = 20  // of the p-values
-	mostReasons  = 6   // error codes with a bar of their own
+	mostReasons  = 24  // error codes with a bar of their own
 	surveyPanel  = 230 // height in points of a panel of unnamed bars
 	nameLine     = 11  // height of a named bar
 	countLine    = 11.5
@@ -83,7 +84,11 @@ type Survey struct {
 	// P counts the p-values in bins of 0.05; Testable is their sum.
 	P        [surveyBins]int
 	Testable int
-	Counts   []SurveyCount // verdicts in their order, then reasons, the most frequent first
+	// Found and FoundBand count the data sets with Q and QBand of 0.05 or less.
+	Found, FoundBand int
+	// Incomplete: not all that was to be surveyed is there.
+	Incomplete bool
+	Counts     []SurveyCount // verdicts in their order, then reasons, the most frequent first
 	// Confidence of the intervals, such as 0.95.
 	Confidence float64
 }
@@ -106,6 +111,12 @@ func NewSurvey(sets []SurveySet, confidence float64) (*Survey, error) {
 		if s.P >= 0 && s.P <= 1 {
 			d.P[min(int(s.P*surveyBins), surveyBins-1)]++
 			d.Testable++
+		}
+		if s.Q <= 0.05 {
+			d.Found++
+		}
+		if s.QBand <= 0.05 {
+			d.FoundBand++
 		}
 		if !math.IsNaN(s.Change) && !math.IsInf(s.Change, 0) {
 			shown = append(shown, opened(s))
@@ -159,7 +170,7 @@ func (d *Survey) count(states, reasons map[string]int) {
 		d.Counts = append(d.Counts, SurveyCount{code, reasons[code], true})
 	}
 	if rest.Sets > 0 {
-		rest.What = fmt.Sprintf("%d other reasons", len(codes)-mostReasons)
+		rest.What = fmt.Sprintf("%d more: survey status", len(codes)-mostReasons)
 		d.Counts = append(d.Counts, rest)
 	}
 }
@@ -509,6 +520,9 @@ func drawSurvey(d *Survey, name string) picture {
 	if failed > 0 {
 		parts = append(parts, fmt.Sprintf("%d could not be used", failed))
 	}
+	if d.Incomplete {
+		parts = append(parts, "NOT COMPLETE")
+	}
 	head := newHeader("Survey", strings.Join(parts, "; "))
 	notes := d.notes()
 	small := aligned(style(legendSize), draw.XLeft, draw.YTop)
@@ -518,13 +532,15 @@ func drawSurvey(d *Survey, name string) picture {
 	countsHeight := vg.Length(len(d.Counts)) * countLine
 	histNote := fmt.Sprintf("%d data sets can be tested; dashed: as many in each bin as if none were curved.", d.Testable)
 
+	foundNote := fmt.Sprintf("At a false discovery rate of 5 %% *E* changes in %d, by more than a prefactor explains in %d.", d.Found, d.FoundBand)
+
 	top := margin + head.height() + headGap
 	if d.Drawn == 0 {
 		changeHeight = 0
 	}
 	height := top + changeHeight + vg.Length(len(notes))*noteHeight + 4
 	if d.Testable > 0 {
-		height += histogramTop + noteHeight + 8
+		height += histogramTop + 2*noteHeight + 8
 	}
 	height += countsHeight + margin
 	return picture{
@@ -549,6 +565,8 @@ func drawSurvey(d *Survey, name string) picture {
 				part(8)
 				hist.Draw(part(histogramTop))
 				c.FillText(small, vg.Point{X: c.Min.X + margin, Y: y}, histNote)
+				part(noteHeight)
+				c.FillText(small, vg.Point{X: c.Min.X + margin, Y: y}, foundNote)
 				part(noteHeight)
 			}
 			part(4)

@@ -149,8 +149,8 @@ func TestSurveyOfNothing(t *testing.T) {
 // More reasons than have room are summed up, and none is lost.
 func TestSurveyReasons(t *testing.T) {
 	var sets []SurveySet
-	for i := range 10 {
-		for range 10 - i {
+	for i := range 28 {
+		for range 28 - i {
 			sets = append(sets, SurveySet{ErrorCode: fmt.Sprintf("code-%d", i)})
 		}
 	}
@@ -159,8 +159,20 @@ func TestSurveyReasons(t *testing.T) {
 		t.Fatal(err)
 	}
 	last := d.Counts[len(d.Counts)-1]
-	if len(d.Counts) != 7 || last.Sets != 4+3+2+1 || last.What != "4 other reasons" {
+	if len(d.Counts) != 25 || last.Sets != 4+3+2+1 || last.What != "4 more: survey status" {
 		t.Errorf("%+v", d.Counts)
+	}
+}
+
+// Of the false discovery rates those up to 0.05 count; unknown ones do not.
+func TestSurveyFound(t *testing.T) {
+	nan := math.NaN()
+	d, err := NewSurvey([]SurveySet{
+		{State: "unresolved", Q: 0.05, QBand: 0.051}, {State: "unresolved", Q: 0.2, QBand: 0.01},
+		{State: "untestable", Q: nan, QBand: nan}, {State: "curved-open", Q: 0.01, QBand: 1}, {ErrorCode: "no-data"},
+	}, 0.95)
+	if err != nil || d.Found != 2 || d.FoundBand != 1 {
+		t.Errorf("%+v, %v", d, err)
 	}
 }
 
