@@ -2,10 +2,12 @@ package cli
 
 import (
 	"fmt"
+	"slices"
 
 	"github.com/spf13/cobra"
 
 	"onebarrier/cmd/internal/report"
+	"onebarrier/cmd/internal/survey"
 	"onebarrier/diagnostics"
 	"onebarrier/models"
 )
@@ -47,6 +49,8 @@ func newExplain(a *app) *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "explain [CODE]",
 		Short: "Explain a verdict, a finding or a refusal in full, or list them all",
+		Long: "explain tells the whole story of a verdict, a finding, a refusal or notice of\n" +
+			"reading, or of the columns p_value, p_band, q_value and q_band of a survey.",
 		Example: `  onebarrier explain
   onebarrier explain beyond-prefactor
   onebarrier explain unresolved --json`,
@@ -54,7 +58,7 @@ func newExplain(a *app) *cobra.Command {
 		RunE: func(cmd *cobra.Command, args []string) error {
 			return a.runExplain(args)
 		},
-		ValidArgsFunction: completeWords(diagnostics.Codes),
+		ValidArgsFunction: completeWords(explained),
 	}
 	a.addJSON(cmd)
 	return cmd
@@ -64,8 +68,11 @@ func (a *app) runExplain(args []string) error {
 	entries := diagnostics.Catalogue()
 	if len(args) > 0 {
 		e, err := diagnostics.Explain(args[0])
+		if i := slices.IndexFunc(survey.Explained, func(e diagnostics.Entry) bool { return e.Code == args[0] }); i >= 0 {
+			e, err = survey.Explained[i], nil
+		}
 		if err != nil {
-			return unknownName("verdict or finding", args[0], diagnostics.Codes(), "onebarrier explain lists them")
+			return unknownName("verdict or finding", args[0], explained(), "onebarrier explain lists them")
 		}
 		entries = []diagnostics.Entry{e}
 	}
@@ -74,6 +81,15 @@ func (a *app) runExplain(args []string) error {
 		return report.JSON(a.out, doc)
 	}
 	return report.WriteFindings(a.out, doc, len(args) > 0, a.text())
+}
+
+// explained lists what explain knows.
+func explained() []string {
+	codes := diagnostics.Codes()
+	for _, e := range survey.Explained {
+		codes = append(codes, e.Code)
+	}
+	return codes
 }
 
 func newSchema(a *app) *cobra.Command {

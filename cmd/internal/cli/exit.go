@@ -115,14 +115,7 @@ func problemsOf(err error) []report.Problem {
 	var usage *usageError
 	switch {
 	case errors.As(err, &data):
-		ps := make([]report.Problem, len(data))
-		for i, p := range data {
-			ps[i] = report.Problem{Code: p.Code, File: p.File, Sheet: p.Sheet, Column: p.Column, Message: p.Message, Cure: p.Cure}
-			if p.Row > 0 {
-				ps[i].Row = &data[i].Row
-			}
-		}
-		return ps
+		return report.DataProblems(data)
 	case errors.As(err, &usage):
 		return []report.Problem{{Code: "usage", Message: usage.message, Cure: usage.cure}}
 	}

@@ -197,6 +197,10 @@ func flagError(cmd *cobra.Command, err error) error {
 	var invalid *pflag.InvalidValueError
 	var noValue *pflag.ValueRequiredError
 	see := fmt.Sprintf("%s --help lists the flags", cmd.CommandPath())
+	// In "survey tabel --store s" the command is mistyped, not the flag.
+	if words := cmd.Flags().Args(); cmd.HasSubCommands() && len(words) > 0 {
+		return cmd.RunE(cmd, words)
+	}
 	switch {
 	case errors.As(err, &unknown):
 		name, dash := unknown.GetSpecifiedName(), "--"

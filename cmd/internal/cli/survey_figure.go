@@ -26,7 +26,8 @@ func newSurveyFigure(a *app) *cobra.Command {
 		Short: "Draw an overview of a survey",
 		Long: `figure draws one picture of a store: the change of E of every data set with its
 interval, in order; a histogram of the p-values; how many data sets have each
-verdict, and how many could not be used and why. Of more than 240 data sets
+verdict, how many are curved at a false discovery rate of 5 %, and how many could
+not be used and why. Of more than 240 data sets
 several share a bar.`,
 		Example: `  onebarrier survey figure --store results.sqlite
   onebarrier survey figure --store results.sqlite --figure-format pdf`,
@@ -51,14 +52,14 @@ func (a *app) surveyFigure(cmd *cobra.Command, o *surveyFigureOptions) error {
 		return err
 	}
 	var sets []figure.SurveySet
-	err = s.Rows(cmd.Context(), func(r survey.Row) error {
+	_, err = s.Table(cmd.Context(), survey.TableOptions{}, func(r *survey.Row) error {
 		name := r.Dataset
 		if name == "" {
 			name = r.SourceFile
 		}
 		sets = append(sets, figure.SurveySet{
 			Name: report.Shorten(name, figure.SurveyName), State: r.State, ErrorCode: r.ErrorCode,
-			Change: r.EChange, Lower: r.EChangeLower, Upper: r.EChangeUpper, P: r.PValue,
+			Change: r.EChange, Lower: r.EChangeLower, Upper: r.EChangeUpper, P: r.PValue, Q: r.QValue, QBand: r.QBand,
 		})
 		return nil
 	})
@@ -72,6 +73,14 @@ func (a *app) surveyFigure(cmd *cobra.Command, o *surveyFigureOptions) error {
 	d, err := figure.NewSurvey(sets, confidence)
 	if err != nil {
 		return err
+	}
+	standing, err := s.Standing(cmd.Context())
+	if err != nil {
+		return err
+	}
+	d.Incomplete = !standing.Complete()
+	for _, sentence := range standing.Sentences() {
+		a.warn("%s", sentence)
 	}
 	path, err := figure.WriteSurvey(o.folder, filepath.Base(o.store.path), d, o.figure)
 	if err != nil {

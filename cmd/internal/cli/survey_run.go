@@ -158,7 +158,11 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 	if errors.As(err, &pattern) {
 		return usagef("", "%v", err)
 	}
+	var standing survey.Standing
 	if store != nil {
+		if err == nil {
+			standing, err = store.Standing(cmd.Context())
+		}
 		err = errors.Join(err, store.Close())
 	}
 	if err != nil {
@@ -167,7 +171,7 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 		}
 		return err
 	}
-	if err := a.writeSurvey(sum, o, k, n); err != nil {
+	if err := a.writeSurvey(sum, o, k, n, standing); err != nil {
 		return err
 	}
 	if sum.Failed > 0 {
@@ -177,7 +181,7 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 }
 
 // writeSurvey says what a run did.
-func (a *app) writeSurvey(sum *survey.Summary, o *surveyOptions, k, n int) error {
+func (a *app) writeSurvey(sum *survey.Summary, o *surveyOptions, k, n int, standing survey.Standing) error {
 	var b strings.Builder
 	fmt.Fprintf(&b, "%s in %s", manyOf(sum.Mine, "data set"), manyOf(sum.Files, "file"))
 	if n > 1 {
@@ -203,12 +207,20 @@ func (a *app) writeSurvey(sum *survey.Summary, o *surveyOptions, k, n int) error
 			fmt.Fprintf(&b, "  %5d  %s\n", sum.Errors[code], code)
 		}
 	}
-	next := "onebarrier survey table --store " + report.ShellWord(o.store.path)
-	if o.dryRun {
-		next = ""
+	if standing.Copies > 0 {
+		standing.Missing = "" // of other parts: not known here
+		for _, s := range standing.Sentences() {
+			for _, l := range report.Wrap(s, 80) {
+				fmt.Fprintln(&b, l)
+			}
+		}
 	}
-	if next != "" {
-		fmt.Fprintf(&b, "next: %s\n", next)
+	if !o.dryRun {
+		store := report.ShellWord(o.store.path)
+		fmt.Fprintf(&b, "next: onebarrier survey table --store %s\n", store)
+		if sum.Failed > 0 {
+			fmt.Fprintf(&b, "      onebarrier survey status --store %s   tells what failed and why\n", store)
+		}
 	}
 	_, err := fmt.Fprint(a.out, b.String())
 	return err

@@ -3,10 +3,12 @@ package cli
 import (
 	"bytes"
 	"encoding/json"
+	"errors"
 	"fmt"
 	"strings"
 
 	"github.com/spf13/cobra"
+	"github.com/spf13/pflag"
 
 	"onebarrier/cmd/internal/report"
 	"onebarrier/cmd/internal/survey"
@@ -21,7 +23,9 @@ func newSurveyShow(a *app) *cobra.Command {
 		Use:   "show NAME",
 		Short: "Print the assessment of one data set of a survey",
 		Long: `show prints what assess prints for one data set, from the store. NAME is the name of
-the data set or its set_id in the table; --file tells sets of one name apart.`,
+the data set, its set_id in the table, or its file; --file tells sets of one name
+apart. Of a data set or file that could not be used it prints every problem. Before
+a NAME that begins with a dash write --.`,
 		Example: `  onebarrier survey show 'reaction 7' --store results.sqlite
   onebarrier survey show rates --store results.sqlite --json`,
 		Args: exactly(1, "NAME"),
@@ -31,6 +35,13 @@ the data set or its set_id in the table; --file tells sets of one name apart.`,
 	}
 	addStore(cmd, o, true)
 	cmd.Flags().StringVar(&file, "file", "", "the data set of this source `file`")
+	cmd.SetFlagErrorFunc(func(cmd *cobra.Command, err error) error {
+		var unknown *pflag.NotExistError
+		if errors.As(err, &unknown) && unknown.GetSpecifiedShortnames() != "" {
+			return usagef("before a name that begins with a dash write --: onebarrier survey show --store FILE -- NAME", "show has no flag -%s", unknown.GetSpecifiedShortnames())
+		}
+		return flagError(cmd, err)
+	})
 	a.addJSON(cmd)
 	return cmd
 }
@@ -47,14 +58,14 @@ func (a *app) showSet(cmd *cobra.Command, o *storeFlags, name, file string) erro
 	}
 	var rows []survey.Row
 	for _, r := range found {
-		if file == "" || r.SourceFile == file {
+		if file == "" || survey.SameFile(r.SourceFile, file) {
 			rows = append(rows, r)
 		}
 	}
 	problem := dataset.Problem{Code: "dataset-unknown", File: o.path}
 	switch {
 	case len(rows) == 0:
-		problem.Message, problem.Cure = fmt.Sprintf("there is no data set %q", name), "survey table lists them"
+		problem.Message, problem.Cure = fmt.Sprintf("there is no data set or file %q", name), "survey table lists them"
 		return dataset.Problems{problem}
 	case len(rows) > 1:
 		var all []string
@@ -74,6 +85,14 @@ func (a *app) showSet(cmd *cobra.Command, o *storeFlags, name, file string) erro
 	}
 	row := rows[0]
 	if row.ErrorCode != "" {
+		document, err := s.Assessment(row.SetID)
+		if err != nil {
+			return err
+		}
+		if ps := survey.ProblemsOf(document); len(ps) > 0 {
+			return ps
+		}
+		// A store of before: the first problem is in the row.
 		p := dataset.Problem{Code: row.ErrorCode, File: row.SourceFile, Sheet: row.Sheet, Message: row.Error}
 		if row.ErrorRow > 0 {
 			p.Row = row.ErrorRow

@@ -19,7 +19,9 @@ func newSurveyStatus(a *app) *cobra.Command {
 		Use:   "status",
 		Short: "Print what of a survey is done, and what failed why",
 		Long: `status prints the settings of a store, how many data sets are in it, their verdicts,
-and the errors with the first files and lines that have them.`,
+how many are curved at a false discovery rate of 5 %, and the errors with the first
+files and lines that have them. It says where a survey is not complete, and how
+many data sets have the same data as another.`,
 		Example: `  onebarrier survey status --store results.sqlite`,
 		Args:    atMost(0, ""),
 		RunE: func(cmd *cobra.Command, _ []string) error {
@@ -48,7 +50,7 @@ func (a *app) surveyStatus(cmd *cobra.Command, o *storeFlags) error {
 	states, errors := map[string]int{}, map[string]int{}
 	examples := map[string][]survey.Row{}
 	n, files, last := 0, 0, ""
-	err = s.Rows(cmd.Context(), func(r survey.Row) error {
+	tally, err := s.Table(cmd.Context(), survey.TableOptions{}, func(r *survey.Row) error {
 		n++
 		if r.SourceFile != last {
 			files, last = files+1, r.SourceFile
@@ -59,10 +61,14 @@ func (a *app) surveyStatus(cmd *cobra.Command, o *storeFlags) error {
 		}
 		errors[r.ErrorCode]++
 		if e := examples[r.ErrorCode]; len(e) < shown {
-			examples[r.ErrorCode] = append(e, r)
+			examples[r.ErrorCode] = append(e, *r)
 		}
 		return nil
 	})
+	if err != nil {
+		return err
+	}
+	standing, err := s.Standing(cmd.Context())
 	if err != nil {
 		return err
 	}
@@ -81,13 +87,24 @@ func (a *app) surveyStatus(cmd *cobra.Command, o *storeFlags) error {
 	for _, l := range partLines(shards) {
 		fmt.Fprintln(&b, l)
 	}
+	for _, sentence := range standing.Sentences() {
+		for _, l := range report.Wrap(sentence, 80) {
+			fmt.Fprintln(&b, l)
+		}
+	}
 	if len(states) > 0 {
-		b.WriteString("\nverdicts\n")
+		b.WriteString("\nverdicts, at 5 % for each data set by itself\n")
 		for _, state := range diagnostics.States {
 			if c := states[string(state)]; c > 0 {
 				fmt.Fprintf(&b, "  %7d  %s\n", c, state)
 			}
 		}
+	}
+	if tally.Testable > 0 {
+		b.WriteString("\nat a false discovery rate of 5 %, over ")
+		fmt.Fprintf(&b, "%s that can be tested\n", manyOf(tally.Testable, "data set"))
+		fmt.Fprintf(&b, "  %7d  E changes: survey table --max-q 0.05\n", tally.Found)
+		fmt.Fprintf(&b, "  %7d  by more than a prefactor explains: survey table --max-q-band 0.05\n", tally.FoundBand)
 	}
 	if len(errors) > 0 {
 		b.WriteString("\ncould not be used\n")
@@ -104,7 +121,13 @@ func (a *app) surveyStatus(cmd *cobra.Command, o *storeFlags) error {
 					fmt.Fprintf(&b, "           %s\n", l)
 				}
 			}
+			if more := errors[code] - len(examples[code]); more > 0 {
+				fmt.Fprintf(&b, "           and %d more\n", more)
+			}
 		}
+		store := report.ShellWord(o.path)
+		fmt.Fprintf(&b, "next: onebarrier survey table --store %s --state failed   prints all of them\n", store)
+		fmt.Fprintf(&b, "      onebarrier survey show FILE --store %s   every problem of one\n", store)
 	}
 	_, err = fmt.Fprint(a.out, b.String())
 	return err

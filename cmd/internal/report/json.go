@@ -4,6 +4,8 @@ import (
 	"bytes"
 	"encoding/json"
 	"io"
+
+	"onebarrier/models/dataset"
 )
 
 // ProblemsSchema names the layout of the document that stands for an answer
@@ -26,6 +28,18 @@ type Problem struct {
 type Problems struct {
 	Schema   string    `json:"schema"`
 	Problems []Problem `json:"problems"`
+}
+
+// DataProblems are the entries of a document for what is wrong with data.
+func DataProblems(data dataset.Problems) []Problem {
+	ps := make([]Problem, len(data))
+	for i, p := range data {
+		ps[i] = Problem{Code: p.Code, File: p.File, Sheet: p.Sheet, Column: p.Column, Message: p.Message, Cure: p.Cure}
+		if p.Row > 0 {
+			ps[i].Row = &data[i].Row
+		}
+	}
+	return ps
 }
 
 // JSON writes one document, indented, followed by a newline. Nothing is written

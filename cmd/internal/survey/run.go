@@ -358,6 +358,7 @@ func (r *runner) fail(e *Entry, ps dataset.Problems) {
 	r.mu.Lock()
 	defer r.mu.Unlock()
 	e.Row.failed(ps)
+	e.Assessment = problemsDocument(ps)
 	r.summary.Failed++
 	r.summary.Errors[e.Row.ErrorCode]++
 }

@@ -498,13 +498,28 @@ func (s *Store) Rows(ctx context.Context, fn func(Row) error) error {
 	return s.query(ctx, false, "ORDER BY "+order, func(e Entry) error { return fn(e.Row) })
 }
 
-// Find returns the rows whose data set has this name, or whose set id it is, in the
-// order of the table.
+// Find returns the rows whose data set has this name, or whose set id it is; else
+// those of the file of this name, or whose path ends with it. They are in the order
+// of the table.
 func (s *Store) Find(ctx context.Context, name string) ([]Row, error) {
 	var found []Row
-	err := s.query(ctx, false, "AND (dataset = ?2 OR set_id = ?2) ORDER BY "+order,
-		func(e Entry) error { found = append(found, e.Row); return nil }, name)
+	keep := func(e Entry) error { found = append(found, e.Row); return nil }
+	err := s.query(ctx, false, "AND (dataset = ?2 OR set_id = ?2) ORDER BY "+order, keep, name)
+	if err != nil || len(found) > 0 {
+		return found, err
+	}
+	err = s.query(ctx, false, "AND (source_file = ?2 OR substr(source_file, -length(?3)) = ?3) ORDER BY "+order,
+		keep, slashed(name), "/"+slashed(name))
 	return found, err
+}
+
+// slashed is a path as rows have it.
+func slashed(path string) string { return filepath.ToSlash(filepath.Clean(path)) }
+
+// SameFile reports whether the source file of a row is the one that a path names, or
+// ends with it.
+func SameFile(source, path string) bool {
+	return source == path || source == slashed(path) || strings.HasSuffix(source, "/"+slashed(path))
 }
 
 // Entries calls fn with every entry, in no order that can be relied on. Its documents

@@ -1,6 +1,7 @@
 package survey
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"io"
@@ -20,9 +21,12 @@ const Failed = "failed"
 type TableOptions struct {
 	States    []string // any of these, Failed among them; all if empty
 	MaxQ      float64  // largest q_value; 0 takes all, those without one too
+	MaxQBand  float64  // largest q_band, likewise
 	MinPoints int
-	// Sort is the name of a column; unknown values come last either way, and rows
-	// that are equal in it keep the order of the store.
+	// Without are codes of warnings: data sets that have one of them are left out.
+	Without []string
+	// Sort is the name of a column, or what the text table calls it; unknown values
+	// come last either way, and rows that are equal in it keep the order of the store.
 	Sort       string
 	Descending bool
 }
@@ -34,12 +38,15 @@ func (o TableOptions) Check() error {
 			return fmt.Errorf("survey: %q is not a verdict; use %s", s, strings.Join(TableStates(), ", "))
 		}
 	}
+	for _, q := range []float64{o.MaxQ, o.MaxQBand} {
+		if !(q >= 0 && q <= 1) {
+			return fmt.Errorf("survey: the largest q is %g; give a number above 0, up to 1", q)
+		}
+	}
 	switch {
-	case !(o.MaxQ >= 0 && o.MaxQ <= 1):
-		return fmt.Errorf("survey: the largest q is %g; give a number above 0, up to 1", o.MaxQ)
 	case o.MinPoints < 0:
 		return fmt.Errorf("survey: the least number of points is %d; give 0 or more", o.MinPoints)
-	case o.Sort != "" && !slices.Contains(columns, o.Sort):
+	case o.Sort != "" && !slices.Contains(columns, SortColumn(o.Sort)):
 		return fmt.Errorf("survey: %q is not a column; use one of %s", o.Sort, strings.Join(columns, ", "))
 	}
 	return nil
@@ -54,15 +61,37 @@ func TableStates() []string {
 	return append(names, Failed)
 }
 
+// headings are what the text table calls columns.
+var headings = map[string]string{
+	"data set": "dataset", "n": "points", "verdict": "state", "δe": "e_change_kj_per_mol",
+	"de": "e_change_kj_per_mol", "interval": "e_change_lower", "q": "q_value", "q band": "q_band", "p": "p_value",
+}
+
+// SortColumn is the column that a heading of the text table stands over; any other
+// name is given back.
+func SortColumn(name string) string {
+	heading := strings.ToLower(name)
+	if strings.HasSuffix(heading, " interval") { // 95 % interval
+		heading = "interval"
+	}
+	if c := headings[heading]; c != "" {
+		return c
+	}
+	return name
+}
+
+// ofBand reports whether q_band, not q_value, is what a table is about.
+func (o TableOptions) ofBand() bool { return o.MaxQBand > 0 || SortColumn(o.Sort) == "q_band" }
+
 // order is the ORDER BY of the rows.
 func (o TableOptions) order() string {
 	if o.Sort == "" {
 		return "ORDER BY " + order
 	}
 	// q never falls where p rises, so the stored p sorts what is not stored.
-	column := map[string]string{"q_value": "p_value", "q_band": "p_band"}[o.Sort]
-	if column == "" {
-		column = o.Sort
+	column := SortColumn(o.Sort)
+	if p := map[string]string{"q_value": "p_value", "q_band": "p_band"}[column]; p != "" {
+		column = p
 	}
 	direction := ""
 	if o.Descending {
@@ -85,20 +114,37 @@ func (o TableOptions) chooses(r *Row) bool {
 	if o.MaxQ > 0 && !(r.QValue <= o.MaxQ) {
 		return false
 	}
+	if o.MaxQBand > 0 && !(r.QBand <= o.MaxQBand) {
+		return false
+	}
+	if len(o.Without) > 0 && r.hasWarning(o.Without) != "" {
+		return false
+	}
 	return o.MinPoints == 0 || r.Points >= o.MinPoints
+}
+
+// hasWarning is the first of some codes that is among the warnings, "" if none is.
+func (r *Row) hasWarning(codes []string) string {
+	for w := range strings.FieldsSeq(r.Warnings) {
+		if slices.Contains(codes, w) {
+			return w
+		}
+	}
+	return ""
 }
 
 // Tally counts what a table was made from.
 type Tally struct {
-	Sets     int // rows of the store
-	Shown    int // rows that passed the filters
-	Testable int // sets that q is computed over
-	Found    int // testable sets with q ≤ 0.05, before the filters
-	Failed   int // sets that could not be used
+	Sets      int // rows of the store
+	Shown     int // rows that passed the filters
+	Testable  int // sets that q is computed over
+	Found     int // testable sets with q_value ≤ MaxQ or UsualQ, before the filters
+	FoundBand int // testable sets with q_band ≤ MaxQBand or UsualQ, likewise
+	Failed    int // sets that could not be used
 }
 
-// usualQ is the false discovery share at which a tally counts.
-const usualQ = 0.05
+// UsualQ is the false discovery share at which a tally counts where no other is asked.
+const UsualQ = 0.05
 
 // Table calls fn with the rows that the options choose, q_value and q_band filled in.
 // q is over all testable sets of the store, whatever the filters. Beside two numbers a
@@ -118,8 +164,11 @@ func (s *Store) Table(ctx context.Context, o TableOptions, fn func(*Row) error) 
 		if r.Testable() {
 			r.QValue, r.QBand = p.of(r.PValue), band.of(r.PBand)
 			n.Testable++
-			if r.QValue <= usualQ {
+			if r.QValue <= cmp.Or(o.MaxQ, UsualQ) {
 				n.Found++
+			}
+			if r.QBand <= cmp.Or(o.MaxQBand, UsualQ) {
+				n.FoundBand++
 			}
 		}
 		if r.ErrorCode != "" {
@@ -147,21 +196,30 @@ type tableWriter interface {
 // WriteTable writes the rows that the options choose in one of TableFormats; layout is
 // for text. A row is written as soon as it is read.
 func (s *Store) WriteTable(ctx context.Context, w io.Writer, format string, o TableOptions, layout report.Text) error {
+	if err := o.Check(); err != nil {
+		return err
+	}
+	standing, err := s.Standing(ctx)
+	if err != nil {
+		return err
+	}
 	var t tableWriter
 	switch format {
 	case "", "text":
-		t = newTextTable(w, layout, s.Confidence())
+		text := newTextTable(w, layout, s.Confidence())
+		text.asked, text.standing = o, standing
+		if text.shared, err = s.sharedNames(ctx); err != nil {
+			return err
+		}
+		t = text
 	case "csv":
 		t = newCSVTable(w)
 	case "parquet":
-		t = newParquetTable(w)
+		t = newParquetTable(w, standing.Complete())
 	case "jsonl":
-		t = newJSONLines(w)
+		t = newJSONLines(w, standing.Complete())
 	default:
 		return fmt.Errorf("survey: %q is not a form of a table; use %s", format, strings.Join(TableFormats, ", "))
-	}
-	if err := o.Check(); err != nil {
-		return err
 	}
 	if err := t.begin(); err != nil {
 		return err

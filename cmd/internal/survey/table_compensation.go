@@ -15,6 +15,7 @@ import (
 	"gonum.org/v1/gonum/stat/distuv"
 
 	"onebarrier/cmd/internal/report"
+	"onebarrier/diagnostics"
 	"onebarrier/models"
 	"onebarrier/models/dataset"
 )
@@ -34,7 +35,12 @@ const kiloR = models.GasConstant / 1000
 type line struct {
 	e, u, lnA, x float64
 	tMin, tMax   float64 // K
+	row          *Row    // names the data set; nil in computations alone
 }
+
+// doubtful are the warnings that make T or k itself doubtful: one data set read in a
+// wrong unit can turn a correlation over hundreds.
+var doubtful = []string{"celsius-like-kelvin", "kelvin-like-celsius", "kelvin-gap", "superscript-lost"}
 
 // Compensation says, for the data sets of one rate unit, whether ln A goes with E, and
 // how much of it is arithmetic. Unknown numbers are NaN.
@@ -50,8 +56,18 @@ type Compensation struct {
 	Sets int
 	T    float64 // T_hm over all sets in K: 1/T is the mean of theirs
 	// Outside counts the sets whose measured range does not hold T: k(T) is
-	// extrapolated there.
-	Outside int
+	// extrapolated there. OutsideSets are the first of them, those furthest from T.
+	Outside     int
+	OutsideSets []*Row
+	Curved      int // sets with a verdict of curvature: their line is a mean
+	// Doubtful counts the sets that were left out since warnings make T or k doubtful,
+	// Doubts are these warnings.
+	Doubtful int
+	Doubts   []string
+	// Decisive is the set without which P changes most, PWithout what it is then; nil
+	// where leastSets would not be left.
+	Decisive *Row
+	PWithout float64
 
 	LnA Correlation // of ln A with E: mostly arithmetic
 	LnK Correlation // of ln k(T_hm) with E
@@ -125,10 +141,62 @@ func compensation(unit string, lines []line) Compensation {
 	return c
 }
 
+// mostNamed data sets are named, mostTried are left out by turns.
+const (
+	mostNamed = 3
+	mostTried = 8
+)
+
+// judge is compensation, with what single data sets do to it.
+func judge(unit string, lines []line) Compensation {
+	c := compensation(unit, lines)
+	for _, l := range lines {
+		switch diagnostics.State(l.row.State) {
+		case diagnostics.BeyondPrefactor, diagnostics.WithinPrefactor, diagnostics.CurvedOpen:
+			c.Curved++
+		}
+	}
+	// Distance in 1/T: how far k is extrapolated.
+	beyond := func(l line) float64 { return math.Max(1/c.T-1/l.tMin, 1/l.tMax-1/c.T) }
+	far := slices.Clone(lines)
+	slices.SortStableFunc(far, func(a, b line) int { return cmp.Compare(beyond(b), beyond(a)) })
+	for _, l := range far[:min(len(far), mostNamed, c.Outside)] {
+		c.OutsideSets = append(c.OutsideSets, l.row)
+	}
+	c.PWithout = math.NaN()
+	if len(lines) <= leastSets || math.IsNaN(c.P) {
+		return c
+	}
+	// Those whose product of deviations is largest move the sums most.
+	var meanE, meanLnK float64
+	lnK := func(l line) float64 { return l.lnA - l.e/(kiloR*c.T) }
+	for _, l := range lines {
+		meanE, meanLnK = meanE+l.e/float64(len(lines)), meanLnK+lnK(l)/float64(len(lines))
+	}
+	product := func(i int) float64 { return math.Abs((lines[i].e - meanE) * (lnK(lines[i]) - meanLnK)) }
+	order := make([]int, len(lines))
+	for i := range order {
+		order[i] = i
+	}
+	slices.SortStableFunc(order, func(i, j int) int { return cmp.Compare(product(j), product(i)) })
+	most := -1.0
+	for _, i := range order[:min(len(order), mostTried)] {
+		others := compensation(unit, slices.Delete(slices.Clone(lines), i, i+1))
+		// By the factor of p; a p of 0 is as far as numbers go.
+		change := math.Abs(math.Log(math.Max(others.P, 1e-300)) - math.Log(math.Max(c.P, 1e-300)))
+		if change > most {
+			most, c.Decisive, c.PWithout = change, lines[i].row, others.P
+		}
+	}
+	return c
+}
+
 // Lines left out of a check of compensation, by reason.
 type leftOut struct {
 	noLine int // data sets without a line whose covariance is known
 	few    int // data sets of rate units with fewer than leastSets
+	// doubtful counts the data sets left out for their warnings.
+	doubtful int
 }
 
 // compensations reads the lines of the chosen data sets and judges each rate unit,
@@ -137,20 +205,23 @@ func (s *Store) compensations(ctx context.Context, o TableOptions) (all []Compen
 	if err := o.Check(); err != nil {
 		return nil, out, err
 	}
-	p, _, err := s.falseDiscoveries(ctx)
+	p, band, err := s.falseDiscoveries(ctx)
 	if err != nil {
 		return nil, out, err
 	}
 	type group struct {
 		units map[string]int // spellings, and the data sets that have each
 		lines []line
+
+		doubtful int
+		doubts   map[string]bool
 	}
 	groups := map[any]*group{}
 	// Unordered: the sorter of SQLite would have to move the documents about.
 	err = s.query(ctx, true, "", func(e Entry) error {
 		r := &e.Row
 		if r.Testable() {
-			r.QValue = p.of(r.PValue)
+			r.QValue, r.QBand = p.of(r.PValue), band.of(r.PBand)
 		}
 		if r.ErrorCode != "" || !o.chooses(r) {
 			return nil
@@ -160,7 +231,7 @@ func (s *Store) compensations(ctx context.Context, o TableOptions) (all []Compen
 			out.noLine++
 			return nil
 		}
-		l.tMin, l.tMax = r.TMin, r.TMax
+		l.tMin, l.tMax, l.row = r.TMin, r.TMax, r
 		var key any = r.RateUnit
 		if u, err := dataset.ParseUnit(r.RateUnit); err == nil {
 			key = u.Dim
@@ -168,8 +239,13 @@ func (s *Store) compensations(ctx context.Context, o TableOptions) (all []Compen
 		}
 		g := groups[key]
 		if g == nil {
-			g = &group{units: map[string]int{}}
+			g = &group{units: map[string]int{}, doubts: map[string]bool{}}
 			groups[key] = g
+		}
+		if why := r.hasWarning(doubtful); why != "" {
+			g.doubtful++
+			g.doubts[why] = true
+			return nil
 		}
 		g.units[r.RateUnit]++
 		g.lines = append(g.lines, l)
@@ -179,18 +255,21 @@ func (s *Store) compensations(ctx context.Context, o TableOptions) (all []Compen
 		return nil, out, err
 	}
 	for _, g := range groups {
+		out.doubtful += g.doubtful
 		if len(g.lines) < leastSets {
 			out.few += len(g.lines)
 			continue
 		}
 		// The order of the store must not reach the last digit of a sum.
 		slices.SortFunc(g.lines, func(a, b line) int {
-			return cmp.Or(cmp.Compare(a.e, b.e), cmp.Compare(a.lnA, b.lnA), cmp.Compare(a.x, b.x), cmp.Compare(a.u, b.u))
+			return cmp.Or(cmp.Compare(a.e, b.e), cmp.Compare(a.lnA, b.lnA), cmp.Compare(a.x, b.x), cmp.Compare(a.u, b.u), cmp.Compare(a.row.SetID, b.row.SetID))
 		})
 		units := slices.SortedFunc(maps.Keys(g.units), func(a, b string) int {
 			return cmp.Or(cmp.Compare(g.units[b], g.units[a]), cmp.Compare(a, b))
 		})
-		all = append(all, compensation(units[0], g.lines))
+		c := judge(units[0], g.lines)
+		c.Doubtful, c.Doubts = g.doubtful, slices.Sorted(maps.Keys(g.doubts))
+		all = append(all, c)
 	}
 	slices.SortFunc(all, func(a, b Compensation) int {
 		return cmp.Or(cmp.Compare(b.Sets, a.Sets), cmp.Compare(a.Unit, b.Unit))
@@ -238,12 +317,16 @@ func (s *Store) WriteCompensation(ctx context.Context, w io.Writer, format strin
 	if err != nil {
 		return err
 	}
+	standing, err := s.Standing(ctx)
+	if err != nil {
+		return err
+	}
 	b := bufio.NewWriter(w)
 	if format == "jsonl" {
 		encode := json.NewEncoder(b)
 		encode.SetEscapeHTML(false)
 		for i := range all {
-			if err := encode.Encode(all[i].document()); err != nil {
+			if err := encode.Encode(all[i].document(standing.Complete())); err != nil {
 				return err
 			}
 		}
@@ -257,7 +340,16 @@ func (s *Store) WriteCompensation(ctx context.Context, w io.Writer, format strin
 	for i := range all {
 		all[i].writeText(b, layout)
 	}
-	var notes []string
+	notes := standing.Sentences()
+	for _, c := range all {
+		if c.Curved > 0 && len(o.States) == 0 {
+			notes = append(notes, "Without a filter curved data sets are used too, with a straight line through each: --state straight-within,unresolved leaves them out.")
+			break
+		}
+	}
+	if out.doubtful > 0 {
+		notes = append(notes, fmt.Sprintf("Not used: %s with a warning that makes T or k doubtful (%s); correct the headings and survey again to use them.", report.Count(out.doubtful, "data set"), strings.Join(doubtful, ", ")))
+	}
 	if len(all) == 0 {
 		notes = append(notes, fmt.Sprintf("Nothing can be said: no rate unit has %d data sets with a straight line and its covariance.", leastSets))
 	}
@@ -322,13 +414,32 @@ func (c *Compensation) sentences() []string {
 		say("The temperature ranges differ: errors alone give r = %s at T_hm, and the test allows for it.", report.Signed(c.Expected, 2))
 	}
 	if c.Outside > 0 {
-		say("T_hm lies outside the measured range of %s, where k is extrapolated: compare data sets of like ranges.", report.Count(c.Outside, "data set"))
+		say("T_hm lies outside the measured range of %s, where k is extrapolated, furthest for %s: compare data sets of like ranges.", report.Count(c.Outside, "data set"), places(c.OutsideSets))
+	}
+	if c.Curved > 0 {
+		say("%d of the data sets are curved by their verdict.", c.Curved)
+	}
+	if c.Decisive != nil {
+		if turns := c.found() != (c.PWithout < 0.05); turns {
+			say("ONE DATA SET DECIDES: without %s p is %s. Check it before anything is concluded.", c.Decisive.place(), share(c.PWithout))
+		} else {
+			say("No single data set that was tried decides: without that of most influence, %s, p is %s.", c.Decisive.place(), share(c.PWithout))
+		}
 	}
 	return out
 }
 
+// places names data sets.
+func places(rows []*Row) string {
+	var out []string
+	for _, r := range rows {
+		out = append(out, r.place())
+	}
+	return strings.Join(out, ", ")
+}
+
 // document is the JSON form; unknown numbers are null.
-func (c *Compensation) document() any {
+func (c *Compensation) document(complete bool) any {
 	null := func(x float64) *float64 {
 		if !known(x) {
 			return nil
@@ -338,6 +449,19 @@ func (c *Compensation) document() any {
 	type correlation struct {
 		R     *float64 `json:"r"`
 		Slope *float64 `json:"slope_mol_per_kj"`
+	}
+	type set struct {
+		ID      string `json:"set_id"`
+		Dataset string `json:"dataset"`
+		File    string `json:"source_file"`
+	}
+	outside := []set{}
+	for _, r := range c.OutsideSets {
+		outside = append(outside, set{r.SetID, r.Dataset, r.SourceFile})
+	}
+	var decisive *set
+	if r := c.Decisive; r != nil {
+		decisive = &set{r.SetID, r.Dataset, r.SourceFile}
 	}
 	of := func(r Correlation) correlation { return correlation{null(r.R), null(r.Slope)} }
 	return struct {
@@ -354,5 +478,13 @@ func (c *Compensation) document() any {
 		ErrorShare   *float64    `json:"error_share"`
 		HomogeneityP *float64    `json:"homogeneity_p"`
 		Found        bool        `json:"beyond_arithmetic"`
-	}{CompensationSchema, c.Unit, c.Sets, null(c.T), c.Outside, of(c.LnA), of(c.LnK), null(c.TIso), null(c.Expected), null(c.P), null(c.ErrorShare), null(c.HomogeneityP), c.found()}
+		OutsideSets  []set       `json:"outside_sets"`
+		Curved       int         `json:"curved"`
+		Doubtful     int         `json:"doubtful_left_out"`
+		Doubts       []string    `json:"doubts"`
+		Decisive     *set        `json:"most_influential"`
+		PWithout     *float64    `json:"p_value_without"`
+		Complete     bool        `json:"complete"`
+	}{CompensationSchema, c.Unit, c.Sets, null(c.T), c.Outside, of(c.LnA), of(c.LnK), null(c.TIso), null(c.Expected), null(c.P), null(c.ErrorShare), null(c.HomogeneityP), c.found(),
+		outside, c.Curved, c.Doubtful, append([]string{}, c.Doubts...), decisive, null(c.PWithout), complete}
 }

@@ -3,6 +3,7 @@ package survey
 import (
 	"io"
 	"reflect"
+	"strconv"
 	"strings"
 
 	"github.com/parquet-go/parquet-go"
@@ -35,17 +36,18 @@ var parquetSchema = func() *parquet.Schema {
 	return parquet.SchemaOf(reflect.New(reflect.StructOf(fields)).Interface())
 }()
 
-// parquetTable writes Apache Parquet, compressed with Snappy.
+// parquetTable writes Apache Parquet, compressed with Snappy. Its metadata say under
+// "complete" whether the survey was.
 type parquetTable struct {
 	w      *parquet.GenericWriter[any]
 	values []any
 	row1   []parquet.Row
 }
 
-func newParquetTable(w io.Writer) tableWriter {
+func newParquetTable(w io.Writer, complete bool) tableWriter {
 	return &parquetTable{
 		w: parquet.NewGenericWriter[any](w, parquetSchema, parquet.Compression(&parquet.Snappy),
-			parquet.MaxRowsPerRowGroup(rowGroup), parquet.CreatedBy("onebarrier", "", "")),
+			parquet.MaxRowsPerRowGroup(rowGroup), parquet.KeyValueMetadata("complete", strconv.FormatBool(complete)), parquet.CreatedBy("onebarrier", "", "")),
 		row1: []parquet.Row{nil},
 	}
 }

@@ -84,6 +84,7 @@ func tableStore(t testing.TB, rows []Row) *Store {
 	for i := range rows {
 		e := entry(i)
 		id := e.Row.SetID
+		e.Content = Content{byte(i)}
 		e.Row = rows[i]
 		e.Row.SetID = id
 		all = append(all, e)
@@ -122,6 +123,12 @@ func TestTableBeforeFilters(t *testing.T) {
 		{TableOptions{States: []string{Failed}}, "broken,"},
 		{TableOptions{MinPoints: 10}, "=1+cmd,an archive with a long name, series 17,e"},
 		{TableOptions{MinPoints: 8, MaxQ: 0.05, States: []string{"beyond-prefactor", "curved-open"}}, "=1+cmd"},
+		{TableOptions{MaxQBand: 0.1}, "=1+cmd"},
+		{TableOptions{MaxQBand: 1, MaxQ: 0.05}, "=1+cmd,d,e"},
+		{TableOptions{Without: []string{"outlier", "narrow-range"}, MaxQ: 0.05}, "d,e"},
+		{TableOptions{Sort: "N", MinPoints: 8}, "b,an archive with a long name, series 17,=1+cmd,e"},
+		{TableOptions{Sort: "ΔE", MinPoints: 8}, "b,an archive with a long name, series 17,e,=1+cmd"},
+		{TableOptions{Sort: "q", MaxQ: 1}, "=1+cmd,d,e,b,an archive with a long name, series 17"},
 		{TableOptions{Sort: "points"}, "few,d,b,an archive with a long name, series 17,=1+cmd,e,broken,"},
 		{TableOptions{Sort: "points", Descending: true}, "e,=1+cmd,an archive with a long name, series 17,b,d,few,broken,"},
 		{TableOptions{Sort: "q_value", MaxQ: 1}, "=1+cmd,d,e,b,an archive with a long name, series 17"},
@@ -146,7 +153,12 @@ func TestTableBeforeFilters(t *testing.T) {
 		if got := strings.Join(names, ","); err != nil || got != c.want {
 			t.Errorf("%+v: %s, %v, want %s", c.o, got, err, c.want)
 		}
-		if want := (Tally{Sets: 8, Shown: len(names), Testable: 5, Found: 3, Failed: 2}); n != want {
+		found := 3 // q of 1/30, also at 0.05
+		if c.o.MaxQ == 1 {
+			found = 5
+		}
+		band := map[float64]int{0.1: 1, 1: 5}[c.o.MaxQBand]
+		if want := (Tally{Sets: 8, Shown: len(names), Testable: 5, Found: found, FoundBand: band, Failed: 2}); n != want {
 			t.Errorf("%+v: tally %+v, want %+v", c.o, n, want)
 		}
 	}
@@ -161,6 +173,7 @@ func TestTableRefuses(t *testing.T) {
 		{TableOptions{States: []string{"bent"}}, `"bent" is not a verdict; use untestable, `},
 		{TableOptions{MaxQ: 1.1}, "largest q is 1.1"},
 		{TableOptions{MaxQ: math.NaN()}, "largest q is NaN"},
+		{TableOptions{MaxQBand: 2}, "largest q is 2"},
 		{TableOptions{MinPoints: -1}, "is -1"},
 		{TableOptions{Sort: "p_value; DROP TABLE sets"}, "is not a column; use one of set_id, "},
 	} {
@@ -415,38 +428,52 @@ func TestTextTable(t *testing.T) {
 		o    TableOptions
 		want string
 	}{
-		{TableOptions{}, `data set                N  verdict                ΔE     95 % interval         q
-=1+cmd                 12  beyond-prefactor    +12.3     +8.1 to +16.6     0.033
-b                       8  unresolved             −2          −9 to +4      0.38
-an archiv…series 17    10  straight-within     +0.12    −0.31 to +0.55      0.60
-d                       5  curved-open         −1234     −2345 to −123     0.033
-e                      20  within-prefactor     +2.4      +0.2 to +4.6     0.033
-few                     3  untestable              –                 –         –
-broken                  –  cell-not-a-number, line 7: "12,3,4" is not a number;…
-archive.csv             –  file-unreadable: permission denied
+		{TableOptions{}, `data set              N  verdict                  ΔE     95 % interval         q
+=1+cmd               12  beyond-prefactor !    +12.3     +8.1 to +16.6     0.033
+b                     8  unresolved               −2          −9 to +4      0.38
+an archi…eries 17    10  straight-within       +0.12    −0.31 to +0.55      0.60
+d                     5  curved-open           −1234     −2345 to −123     0.033
+e                    20  within-prefactor       +2.4      +0.2 to +4.6     0.033
+few                   3  untestable                –                 –         –
+broken                –  cell-not-a-number, line 7: "12,3,4" is not a number; w…
+archive.csv           –  file-unreadable: permission denied
 
 8 data sets. 5 can be tested; q is the false discovery share (Benjamini and
-Hochberg 1995) over these, whatever is shown, for the test that E does not
-change. q is at most 0.05 for 3 of them. 2 could not be used: survey status
-counts the reasons. ΔE is the change of E over the measured range in kJ/mol.
-onebarrier survey show NAME prints one assessment; --format csv has every
-column.
+Hochberg 1995) over these, whatever is shown: q_value for the test that E does
+not change, at most 0.05 for 3; q_band for the test that it changes by no more
+than a usual prefactor explains, at most 0.05 for 0. Verdicts are at 5 % for
+each data set by itself. 2 could not be used: survey status counts the reasons,
+--state failed prints them. ! marks warnings: survey show tells them. ΔE is the
+change of E over the measured range in kJ/mol. onebarrier survey show NAME
+prints one assessment; --format csv has every column.
 `},
-		{TableOptions{MaxQ: 0.05, MinPoints: 8}, `data set                N  verdict                ΔE     95 % interval         q
-=1+cmd                 12  beyond-prefactor    +12.3     +8.1 to +16.6     0.033
-e                      20  within-prefactor     +2.4      +0.2 to +4.6     0.033
+		// The numbers of the footer are those asked for, and q is that of the question.
+		{TableOptions{MaxQBand: 0.1, MinPoints: 8}, `data set              N  verdict                  ΔE     95 % interval    q_band
+=1+cmd               12  beyond-prefactor !    +12.3     +8.1 to +16.6      0.10
 
-2 of 8 data sets shown. 5 can be tested; q is the false discovery share
-(Benjamini and Hochberg 1995) over these, whatever is shown, for the test that E
-does not change. q is at most 0.05 for 3 of them. 2 could not be used: survey
-status counts the reasons. ΔE is the change of E over the measured range in
-kJ/mol. onebarrier survey show NAME prints one assessment; --format csv has
-every column.
+1 of 8 data sets shown. 5 can be tested; q is the false discovery share
+(Benjamini and Hochberg 1995) over these, whatever is shown: q_value for the
+test that E does not change, at most 0.05 for 3; q_band for the test that it
+changes by no more than a usual prefactor explains, at most 0.1 for 1. Verdicts
+are at 5 % for each data set by itself. 2 could not be used: survey status
+counts the reasons, --state failed prints them. ! marks warnings: survey show
+tells them. ΔE is the change of E over the measured range in kJ/mol. onebarrier
+survey show NAME prints one assessment; --format csv has every column.
+`},
+		{TableOptions{States: []string{Failed}}, `"broken" in archive.csv, line 7
+    cell-not-a-number: "12,3,4" is not a number; write 12.34, or n.d. where
+    there is none
+archive.csv
+    file-unreadable: permission denied
+
+2 of 8 data sets shown. onebarrier survey show FILE prints every problem of one.
 `},
 		{TableOptions{MinPoints: 100}, `None of the 8 data sets passes the filters. 5 can be tested; q is the false
-discovery share (Benjamini and Hochberg 1995) over these, whatever is shown, for
-the test that E does not change. q is at most 0.05 for 3 of them. 2 could not be
-used: survey status counts the reasons.
+discovery share (Benjamini and Hochberg 1995) over these, whatever is shown:
+q_value for the test that E does not change, at most 0.05 for 3; q_band for the
+test that it changes by no more than a usual prefactor explains, at most 0.05
+for 0. Verdicts are at 5 % for each data set by itself. 2 could not be used:
+survey status counts the reasons, --state failed prints them.
 `},
 	} {
 		if got := written(t, s, "text", c.o); got != c.want {

@@ -2,6 +2,7 @@ package survey
 
 import (
 	"bufio"
+	"cmp"
 	"fmt"
 	"io"
 	"math"
@@ -16,7 +17,7 @@ import (
 // Widths of the columns of text; the name takes what is left of the page.
 const (
 	pointsWidth   = 4
-	stateWidth    = 16 // beyond-prefactor
+	stateWidth    = 18 // beyond-prefactor and the mark of warnings
 	changeWidth   = 7
 	intervalWidth = 16
 	qWidth        = 8
@@ -30,9 +31,14 @@ type textTable struct {
 	name    int // its width
 	level   string
 	started bool
+
+	asked    TableOptions
+	standing Standing
+	shared   map[string]bool // names that several data sets have
+	warned   bool            // a row has the mark
 }
 
-func newTextTable(w io.Writer, layout report.Text, confidence string) tableWriter {
+func newTextTable(w io.Writer, layout report.Text, confidence string) *textTable {
 	level := confidence
 	if c, err := strconv.ParseFloat(confidence, 64); err == nil {
 		level = fmt.Sprintf("%g\u00a0%%", math.Round(1e4*c)/100)
@@ -54,10 +60,37 @@ func (t *textTable) line(name, points, state, change, interval, q string) string
 	return strings.TrimRight(s, " ")
 }
 
+// messages reports whether the table is one of failures, whose messages are then
+// written whole.
+func (t *textTable) messages() bool { return len(t.asked.States) == 1 && t.asked.States[0] == Failed }
+
+// failure writes where a data set or file failed, and the whole message below.
+func (t *textTable) failure(r *Row) error {
+	where := r.place()
+	if r.ErrorRow != UnknownCount {
+		where += fmt.Sprintf(", line %d", r.ErrorRow)
+	}
+	for _, part := range []struct{ text, indent string }{{where, ""}, {printable(r.ErrorCode + ": " + r.Error), "    "}} {
+		for _, l := range report.Wrap(part.text, t.layout.Columns()-len(part.indent)) {
+			if _, err := fmt.Fprintln(t.w, part.indent+l); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
+}
+
 func (t *textTable) row(r *Row) error {
+	if t.messages() {
+		return t.failure(r)
+	}
 	if !t.started {
 		t.started = true
-		head := t.line("data set", "N", "verdict", "ΔE", t.level+" interval", "q")
+		q := "q"
+		if t.asked.ofBand() {
+			q = "q_band"
+		}
+		head := t.line("data set", "N", "verdict", "ΔE", t.level+" interval", q)
 		fmt.Fprintln(t.w, t.layout.Dim(strings.ReplaceAll(head, "\u00a0", " ")))
 	}
 	name := report.Shorten(printable(r.Dataset), t.name)
@@ -81,7 +114,18 @@ func (t *textTable) row(r *Row) error {
 		line += cut(printable(why), t.layout.Columns()-utf8.RuneCountInString(line))
 	} else {
 		change, interval := changeOfE(r)
-		line = t.line(name, points, r.State, change, interval, share(r.QValue))
+		state, q := r.State, r.QValue
+		if r.Warnings != "" {
+			state, t.warned = report.Pad(state, stateWidth-1)+"!", true
+		}
+		if t.asked.ofBand() {
+			q = r.QBand
+		}
+		line = t.line(name, points, state, change, interval, share(q))
+	}
+	if t.shared[r.Dataset] {
+		place := Row{SourceFile: r.SourceFile, Sheet: r.Sheet}
+		line += "\n" + t.layout.Dim("  in "+report.Shorten(place.place(), t.layout.Columns()-5))
 	}
 	_, err := fmt.Fprintln(t.w, line)
 	return err
@@ -132,16 +176,31 @@ func (t *textTable) end(n Tally) error {
 	default:
 		note("%s.", report.Count(n.Sets, "data set"))
 	}
-	if n.Sets > 0 {
-		note("%d can be tested; q is the false discovery share (Benjamini and Hochberg 1995) over these, whatever is shown, for the test that E does not change. q is at most %g for %d of them.",
-			n.Testable, usualQ, n.Found)
+	if n.Sets > 0 && !t.messages() {
+		note("%d can be tested; q is the false discovery share (Benjamini and Hochberg 1995) over these, whatever is shown: q_value for the test that E does not change, at most %g for %d; q_band for the test that it changes by no more than a usual prefactor explains, at most %g for %d. Verdicts are at 5 %% for each data set by itself.",
+			n.Testable, cmp.Or(t.asked.MaxQ, UsualQ), n.Found, cmp.Or(t.asked.MaxQBand, UsualQ), n.FoundBand)
 	}
-	if n.Failed > 0 {
-		note("%d could not be used: survey status counts the reasons.", n.Failed)
+	switch {
+	case n.Failed > 0 && t.messages():
+	case n.Failed > 0:
+		note("%d could not be used: survey status counts the reasons, --state failed prints them.", n.Failed)
+	}
+	if t.warned {
+		note("! marks warnings: survey show tells them.")
+	}
+	switch {
+	case n.Shown > 0 && t.messages():
+		note("onebarrier survey show FILE prints every problem of one.")
+	case n.Shown > 0:
+		note("ΔE is the change of E over the measured range in kJ/mol. onebarrier survey show NAME prints one assessment; --format csv has every column.")
 	}
 	if n.Shown > 0 {
-		note("ΔE is the change of E over the measured range in kJ/mol. onebarrier survey show NAME prints one assessment; --format csv has every column.")
 		fmt.Fprintln(t.w)
+	}
+	for _, s := range t.standing.Sentences() {
+		for _, line := range report.Wrap(s, t.layout.Columns()) {
+			fmt.Fprintln(t.w, line)
+		}
 	}
 	for _, line := range report.Wrap(strings.Join(notes, " "), t.layout.Columns()) {
 		fmt.Fprintln(t.w, line)
