@@ -192,7 +192,7 @@ func TestReadme(t *testing.T) {
 	}
 	lines := strings.Split(string(b), "\n")
 	var out []string
-	ran := 0
+	ran, stores := 0, t.TempDir()
 	for i := 0; i < len(lines); i++ {
 		out = append(out, lines[i])
 		if lines[i] != "```console" {
@@ -209,7 +209,7 @@ func TestReadme(t *testing.T) {
 			for i++; i < len(lines) && lines[i] != "```" && !strings.HasPrefix(lines[i], "$ "); i++ {
 				want = append(want, lines[i])
 			}
-			got, known := runReadme(t, command)
+			got, known := runReadme(t, command, stores)
 			if !known {
 				out = append(out, want...) // a command of another program
 				continue
@@ -232,8 +232,9 @@ func TestReadme(t *testing.T) {
 	}
 }
 
-// runReadme runs a command of onebarrier and returns what a reader sees of it.
-func runReadme(t *testing.T, command string) (lines []string, known bool) {
+// runReadme runs a command of onebarrier and returns what a reader sees of it. Stores
+// of surveys are kept in a folder from one command to the next.
+func runReadme(t *testing.T, command, stores string) (lines []string, known bool) {
 	rest, ok := strings.CutPrefix(command, "go run ./cmd/")
 	if !ok {
 		rest = command
@@ -250,6 +251,15 @@ func runReadme(t *testing.T, command string) (lines []string, known bool) {
 			defer func() {
 				for j := range lines {
 					lines[j] = strings.ReplaceAll(lines[j], dir, a)
+				}
+			}()
+		}
+		if i > 0 && args[i-1] == "--store" {
+			path := filepath.Join(stores, a)
+			args[i] = path
+			defer func() {
+				for j := range lines {
+					lines[j] = strings.ReplaceAll(lines[j], path, a)
 				}
 			}()
 		}

@@ -417,7 +417,7 @@ func (c *Compensation) sentences() []string {
 		say("T_hm lies outside the measured range of %s, where k is extrapolated, furthest for %s: compare data sets of like ranges.", report.Count(c.Outside, "data set"), places(c.OutsideSets))
 	}
 	if c.Curved > 0 {
-		say("%d of the data sets are curved by their verdict.", c.Curved)
+		say("Curved by their verdict: %s.", report.Count(c.Curved, "data set"))
 	}
 	if c.Decisive != nil {
 		if turns := c.found() != (c.PWithout < 0.05); turns {
