@@ -944,7 +944,9 @@ func (e *exponentials) params(p *projection, out []float64) {
 		if p.theta[1] < p.theta[0] {
 			a, b = 1, 0
 		}
-		out[1], out[3] = p.theta[a]*e.scale[0], p.theta[b]*e.scale[0]
+		// At the bound, rounding must not carry a barrier beyond it.
+		barrier := func(theta float64) float64 { return max(-maxBarrier, min(maxBarrier, theta*e.scale[0])) }
+		out[1], out[3] = barrier(p.theta[a]), barrier(p.theta[b])
 		out[0], out[2] = ln(a)-out[1]*e.centre[0], ln(b)-out[3]*e.centre[0]
 		return
 	}
