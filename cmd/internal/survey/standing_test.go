@@ -3,6 +3,7 @@ package survey
 import (
 	"bytes"
 	"fmt"
+	"math"
 	"strings"
 	"testing"
 
@@ -128,5 +129,26 @@ func TestCompensationOfWrongKelvin(t *testing.T) {
 	}
 	if got := fmt.Sprint(strings.Fields(b.String())); !strings.Contains(got, "Not used: 1 data set with a warning that makes T or k doubtful") {
 		t.Error(b.String())
+	}
+}
+
+// The set of most influence is that whose removal changes p by the largest factor, each
+// left out in turn.
+func TestDecisive(t *testing.T) {
+	var lines []line
+	for i, l := range invented {
+		l.row = &Row{Dataset: fmt.Sprint(i)}
+		lines = append(lines, l)
+	}
+	c := judge("s^-1", lines)
+	want, most := "", 0.0
+	for i := range lines {
+		others := append(append([]line{}, lines[:i]...), lines[i+1:]...)
+		if f := math.Abs(math.Log(compensation("s^-1", others).P / c.P)); f > most {
+			want, most = lines[i].row.Dataset, f
+		}
+	}
+	if c.Decisive == nil || c.Decisive.Dataset != want {
+		t.Errorf("%+v, want %s", c.Decisive, want)
 	}
 }
