@@ -173,6 +173,20 @@ type marks struct {
 type markAt struct {
 	row        int
 	text, head string
+	n          int   // cells that have the mark
+	lines      []int // of the first of them
+	only       bool  // some cell is no number where the other mark is the decimal one
+}
+
+// mostLines is how many lines are named.
+const mostLines = 6
+
+// add counts one more cell with the mark.
+func (a *markAt) add(row int, cell string, other byte) {
+	if a.n++; len(a.lines) < mostLines && !slices.Contains(a.lines, row) {
+		a.lines = append(a.lines, row)
+	}
+	a.only = a.only || ParseCell(cell, other, 0).Kind == CellText
 }
 
 // look adds the numbers of one row.
@@ -190,12 +204,14 @@ func (f *marks) look(p *plan, r Row) {
 		switch mark {
 		case '.':
 			if f.point == nil {
-				f.point = &markAt{r.Line, strings.Clone(cell), c.Text}
+				f.point = &markAt{row: r.Line, text: strings.Clone(cell), head: c.Text}
 			}
+			f.point.add(r.Line, cell, ',')
 		case ',':
 			if f.comma == nil {
-				f.comma = &markAt{r.Line, strings.Clone(cell), c.Text}
+				f.comma = &markAt{row: r.Line, text: strings.Clone(cell), head: c.Text}
 			}
+			f.comma.add(r.Line, cell, '.')
 			f.sure = f.sure || sure
 		}
 	}
@@ -212,7 +228,7 @@ func (m *maker) decideBy(p *plan, found *marks) bool {
 	case point != nil:
 		m.refuseCure(codeMixedMarks, comma.row, comma.head,
 			fmt.Sprintf("%q has a decimal comma, and %q in line %d, column %q, a decimal point", short(comma.text), short(point.text), point.row, point.head),
-			"write one mark throughout, or say which is the decimal one: --decimal point or --decimal comma; the other then groups thousands")
+			mixedCure(point, comma))
 		return false
 	case !found.sure && m.t.Delimiter != ';':
 		m.refuseCure(codeAmbiguousMark, comma.row, comma.head,
@@ -222,6 +238,30 @@ func (m *maker) decideBy(p *plan, found *marks) bool {
 		p.decimal = ','
 	}
 	return true
+}
+
+// mixedCure is the cure of a table with both decimal marks: a flag only where the cells
+// with the other mark are numbers whose thousands are grouped.
+func mixedCure(point, comma *markAt) string {
+	const groups = "; the other mark then groups thousands"
+	few, mark := comma, "comma"
+	if point.n < comma.n {
+		few, mark = point, "point"
+	}
+	where := lines(few.lines)
+	if few.n > len(few.lines) && len(few.lines) == mostLines {
+		where += " and below"
+	}
+	mend := fmt.Sprintf("write one mark throughout: mend the %s with a decimal %s (%s)", countOf(few.n, "cell"), mark, where)
+	switch {
+	case point.only && comma.only:
+		return mend
+	case comma.only:
+		return mend + ", or say that the comma is the decimal one: --decimal comma" + groups
+	case point.only:
+		return mend + ", or say that the point is the decimal one: --decimal point" + groups
+	}
+	return mend + ", or say which is the decimal one: --decimal point or --decimal comma" + groups
 }
 
 // decimalMark is the decimal mark that the numbers in a cell show: '.', ',' or 0.

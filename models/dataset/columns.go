@@ -93,6 +93,10 @@ func (m *maker) header() (headings []string, line, first int, notices []Notice, 
 		titles = append(titles, t.Rows[i].Line)
 		i++
 	}
+	if t.isProse(i) {
+		m.refuseProse(i)
+		return nil, 0, 0, nil, false
+	}
 	if i == len(t.Rows) {
 		if len(t.Rows) > 0 {
 			m.refuseCure(codeNoData, t.Rows[0].Line, "", "no row has two cells: there is no table, or its delimiter is none of comma, semicolon, tab and space",
@@ -731,7 +735,7 @@ func (m *maker) refuseNoRate(p *plan, line int) {
 func (m *maker) refuseNone(p *plan, code, role string, line int, what, cure string) {
 	var names []string
 	for i := range p.cols {
-		if c := &p.cols[i]; c.Role == RoleKept && m.isNumeric(c) {
+		if c := &p.cols[i]; c.Role == RoleKept && !isOtherQuantity(c.Text) && m.isNumeric(c) {
 			names = append(names, c.Text)
 		}
 	}

@@ -19,6 +19,9 @@ import (
 // below: a table with the headings files, heading, role, unit and level.
 const ColumnsFile = "onebarrier-columns.csv"
 
+// columnsHead is its first line.
+const columnsHead = "files,heading,role,unit,level"
+
 // columnRule says what a heading means in files that match a pattern.
 type columnRule struct {
 	files   string // pattern of names, of paths below dir where it has a slash
@@ -53,7 +56,7 @@ func readColumnsFile(dir string) ([]columnRule, *dataset.Problem) {
 	}
 	r := csv.NewReader(bytes.NewReader(bytes.TrimPrefix(data, []byte("\xef\xbb\xbf"))))
 	r.FieldsPerRecord, r.Comment, r.TrimLeadingSpace = -1, '#', true
-	const headings = "files,heading,role,unit,level"
+	const headings = columnsHead
 	head, err := r.Read()
 	if err != nil || strings.Join(head, ",") != headings {
 		return nil, problem(1, "its first line is not "+headings, "write that line, and one for each heading below it")

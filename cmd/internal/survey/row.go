@@ -1,11 +1,18 @@
 package survey
 
 import (
+	"bytes"
+	"encoding/csv"
+	"fmt"
 	"math"
+	"path/filepath"
 	"reflect"
+	"regexp"
+	"strings"
 
 	"onebarrier/diagnostics"
 	"onebarrier/models"
+	"onebarrier/models/dataset"
 )
 
 // UnknownCount is a count that is not known, as those of a file that cannot be read.
@@ -188,4 +195,79 @@ func warnings(findings []diagnostics.Finding) string {
 		b = append(b, f.Code...)
 	}
 	return string(b)
+}
+
+// reOffered finds the flags that a cure offers: --column 'T=bath', --assume T=degC.
+var reOffered = regexp.MustCompile(`--(?:column '(T|k)=((?:[^']|'\\'')*)'|assume (\w+)=(\S+))`)
+
+// cureOf is the cure of a problem of one file among many. What a flag says holds for
+// all files of a survey, so that a line of the columns file takes its place.
+func cureOf(p *dataset.Problem) string {
+	switch p.Code {
+	case "ambiguous-temperature", "ambiguous-rate", "no-temperature", "no-rate":
+	default:
+		return p.Cure
+	}
+	var lines []string
+	first := len(p.Cure)
+	for _, at := range reOffered.FindAllStringSubmatchIndex(p.Cure, -1) {
+		first = min(first, at[0])
+		group := func(i int) string {
+			if at[2*i] < 0 {
+				return ""
+			}
+			return p.Cure[at[2*i]:at[2*i+1]]
+		}
+		if line := columnsLine(p, group(1), strings.ReplaceAll(group(2), `'\''`, "'"), group(3), group(4)); line != "" {
+			lines = append(lines, line)
+		}
+	}
+	if first == len(p.Cure) {
+		return p.Cure
+	}
+	// What stands before the flags: "write the heading as T/K or t/°C".
+	before := p.Cure[:first]
+	before = before[:max(strings.LastIndex(before, ", or "), strings.LastIndex(before, "; "), 0)]
+	if len(lines) > 0 {
+		if before != "" {
+			before += ", or "
+		}
+		before += fmt.Sprintf("write one line, with the right unit, into %s in its folder, below the line %s: %s", ColumnsFile, columnsHead, strings.Join(lines, " or "))
+	}
+	if before == "" {
+		return p.Cure
+	}
+	return before
+}
+
+// columnsLine is the line of a columns file that says for one file what a flag says for
+// all: --column role=heading, or --assume key=value for the heading of the problem. ""
+// where no line says it.
+func columnsLine(p *dataset.Problem, role, heading, key, value string) string {
+	unit := ""
+	switch {
+	case role == "T":
+		unit = "K"
+	case role == "k":
+		unit = "s^-1"
+	case key == "T":
+		role, heading, unit = "T", p.Column, value
+	case key == "log":
+		role, heading = map[string]string{"lg": "lg k", "ln": "ln k"}[value], p.Column
+	case key == "k" && value == "rate":
+		role, heading = "k", p.Column
+	}
+	if role == "" || heading == "" {
+		return ""
+	}
+	if _, err := headingFor(heading, role, unit, ""); err != nil {
+		return ""
+	}
+	var b bytes.Buffer
+	w := csv.NewWriter(&b)
+	if err := w.Write([]string{filepath.Base(p.File), heading, role, unit, ""}); err != nil {
+		return ""
+	}
+	w.Flush()
+	return strings.TrimSpace(b.String())
 }

@@ -1,8 +1,13 @@
 package survey
 
 import (
+	"errors"
+	"os"
+	"path/filepath"
 	"strings"
 	"testing"
+
+	"onebarrier/models/dataset"
 )
 
 // The columns stand here as the specification of the table lists them.
@@ -31,6 +36,39 @@ func TestUnknownValues(t *testing.T) {
 	for i, want := range map[int]any{4: int64(0), 23: 0.0, 14: true, 13: "unresolved", 25: nil} {
 		if got := r.Values()[i]; got != want {
 			t.Errorf("%s is %v, want %v", columns[i], got, want)
+		}
+	}
+}
+
+// In a survey a cure is a line for the file, not a flag for all files; each line that is
+// printed is understood.
+func TestCureIsALine(t *testing.T) {
+	for _, c := range []struct{ name, text, want string }{
+		{"ambiguous T.csv", "T,k/s^-1\n288,1\n298,2\n", "ambiguous T.csv,T,T,K, or ambiguous T.csv,T,T,degC, or ambiguous T.csv,T,T,degF,"},
+		{"a.csv", "T/K,log k\n288,1\n298,2\n", "a.csv,log k,lg k,, or a.csv,log k,ln k,,"},
+		{"a.csv", "T/K,\"sl, 2\"\n288,1\n298,2\n", `a.csv,"sl, 2",k,s^-1,`},
+		{"a.csv", "T/K,p/bar\n288,1\n298,2\n", "write the heading as k/s^-1"},
+		{"a.csv", "1/kT,k/s^-1\n40,1\n41,2\n", "write the unit into the heading, as in T/K"},
+	} {
+		_, err := dataset.Read("folder/"+c.name, strings.NewReader(c.text), dataset.Options{})
+		var ps dataset.Problems
+		if !errors.As(err, &ps) {
+			t.Fatal(c.text, err)
+		}
+		r := emptyRow()
+		r.failed(ps)
+		if !strings.HasSuffix(r.Error, c.want) || strings.Contains(r.Error, "--") {
+			t.Errorf("%s: %s", c.text, r.Error)
+		}
+		_, lines, _ := strings.Cut(r.Error, columnsHead+": ")
+		for line := range strings.SplitSeq(lines, " or ") {
+			dir := t.TempDir()
+			if err := os.WriteFile(filepath.Join(dir, ColumnsFile), []byte(columnsHead+"\n"+line+"\n"), 0o600); err != nil {
+				t.Fatal(err)
+			}
+			if rules, p := readColumnsFile(dir); p != nil || lines != "" && (len(rules) != 1 || rules[0].files != c.name) {
+				t.Errorf("%s: %v %v", line, rules, p)
+			}
 		}
 	}
 }

@@ -373,8 +373,8 @@ func (r *Row) failed(ps dataset.Problems) {
 	if p.Column != "" {
 		r.Error = fmt.Sprintf("column %q: %s", p.Column, p.Message)
 	}
-	if p.Cure != "" {
-		r.Error += "; " + p.Cure
+	if cure := cureOf(&p); cure != "" {
+		r.Error += "; " + cure
 	}
 	if len(ps) > 1 {
 		r.Error += fmt.Sprintf(" (and %d more)", len(ps)-1)

@@ -202,7 +202,7 @@ var ugly = []struct {
 		opt: dataset.Options{Decimal: "comma"}, points: fivePoints},
 	{name: "points and commas in cells of text", fill: func(t testing.TB, f *excelize.File) {
 		at(t, f, "A1", usual, head(293.15, "1,25e-5", "2.5e-7"), head(303.15, "3,5e-5", "4.5e-7"))
-	}, code: "mixed-decimal-marks", cure: "--decimal"},
+	}, code: "mixed-decimal-marks", cure: "mend the 2 cells with a decimal comma"},
 	{name: "formulas with stored results", fill: func(t testing.TB, f *excelize.File) { at(t, f, "A1", usual); at(t, f, "A2", five...) },
 		patch: []string{"xl/worksheets/sheet1.xml", `<c r="A2"><v>293.15</v></c>`, `<c r="A2"><f>20+273.15</f><v>293.14999999999998</v></c>`}, points: fivePoints},
 	{name: "formula without its result", fill: func(t testing.TB, f *excelize.File) {
