@@ -56,16 +56,31 @@ func fails(ranking []Ranked, r *fit.Result) bool {
 	return false
 }
 
+// tells reports whether a curve's change of E can stand for that of the test: its
+// interval is bounded and on the same side of 0, which the test has settled, and does not
+// leave open whether the change matters where the test does not.
+func tells(change, test fit.Estimate, toleranceKJ float64) bool {
+	low, high := ends(change)
+	if !(low > 0 && test.Value > 0 || high < 0 && test.Value < 0) || math.IsInf(high-low, 0) {
+		return false
+	}
+	return Material(change, toleranceKJ) != nil || Material(test, toleranceKJ) == nil
+}
+
 // tellChange puts into the verdict the change of E that it states, and the curve that
 // it is of: that of the test, or the recommended one where that describes the data
-// and the curve of the test does not.
+// and the curve of the test does not, and determines the change.
 func (in *VerdictInput) tellChange(v *Verdict) {
 	change := in.Test.Change
 	in.told, in.toldBy = change, models.PowerPrefactor{}.Info().Name
 	if in.FitOf != nil && v.State.Curved() {
 		power, best := in.FitOf(in.toldBy), in.FitOf(v.RecommendedCurve)
 		if outdone(in.Sample, power, best, in.Ranking, in.Criterion) {
-			in.told, in.toldBy = in.ChangeOf(best), v.RecommendedCurve
+			if of := in.ChangeOf(best); tells(of, change, in.Rule.ToleranceKJ) {
+				in.told, in.toldBy = of, v.RecommendedCurve
+			} else {
+				in.rough, in.loose = true, v.RecommendedCurve
+			}
 		} else if power != nil && fails(in.Ranking, power) {
 			in.rough = true
 		}
@@ -101,6 +116,8 @@ func (in *VerdictInput) changed(recommended string) string {
 	switch {
 	case in.toldBy != test:
 		text += fmt.Sprintf(" by the curve %s; %s, the curve of the test, does not describe the data", in.toldBy, test)
+	case in.loose != "":
+		text += fmt.Sprintf(" by %s, the curve of the test; the curve %s describes the data better, but leaves the change open, so that the size is rough", test, in.loose)
 	case in.rough:
 		text += fmt.Sprintf(" by %s, the curve of the test; it does not describe the data, so that the size is rough", test)
 	default:

@@ -72,6 +72,79 @@ func TestChangeIsThatOfTheCurveThatFits(t *testing.T) {
 	}
 }
 
+// softening are invented rate constants with u of 2 %: E 59 kJ/mol, and the last point
+// alone lies below the line, so that steps in series fit with any second barrier that is large.
+func softening() *dataset.Set {
+	t := []float64{290, 300, 310, 320, 330, 340}
+	k := []float64{9.9549e-05, 2.2891e-04, 4.8378e-04, 9.8480e-04, 1.9290e-03, 2.7151e-03}
+	u := []float64{1.99e-06, 4.58e-06, 9.68e-06, 1.97e-05, 3.86e-05, 5.43e-05}
+	return setOf(t, k, u)
+}
+
+// A curve whose change of E may have either sign, which series never has, tells none: the
+// change and its interval stay those of the test, and so does whether it matters. What an
+// open barrier leaves open is not published with an interval that it has not.
+func TestChangeThatIsNotDeterminedIsNotTold(t *testing.T) {
+	o := quick()
+	o.ErrorModel = fit.Stated
+	a := mustAssess(t, softening(), o)
+	v := a.Verdict
+	if v.State != BeyondPrefactor || v.RecommendedCurve != "series" || v.EChangeCurve != "power-prefactor" || v.EChange != a.Curvature.EChange {
+		t.Fatalf("%+v", v)
+	}
+	if v.Material == nil || !*v.Material {
+		t.Error("not material, where the test's whole interval is beyond the tolerance")
+	}
+	if !strings.Contains(v.Sentence, "the curve series describes the data better, but leaves the change open") {
+		t.Errorf("%q", v.Sentence)
+	}
+	told := map[string]bool{}
+	for _, l := range a.Publish.Lines {
+		if l.Symbol == "ΔH_d" || l.Symbol == "T_half" || l.Symbol == "E_a" && strings.HasPrefix(l.Note, "at 340 K") {
+			told[l.Symbol] = true
+			if l.Value.Known() || !strings.Contains(l.Note, "not bounded: an end of a barrier is open") {
+				t.Errorf("%s: %s, note %q", l.Symbol, l.Text, l.Note)
+			}
+		}
+		if l.Symbol == "E_a" && strings.HasPrefix(l.Note, "at 290 K") && !l.Value.Known() {
+			t.Error("E_a at the cold end is not published")
+		}
+	}
+	if len(told) != 3 {
+		t.Errorf("published are only %v", told)
+	}
+	for _, f := range a.Findings {
+		if f.Code == "exponent-not-a-prefactor" && (!strings.Contains(f.Cure, "−22 kJ/mol for its sign") || strings.Contains(f.Cure, "ΔC_p")) {
+			t.Errorf("%q, cure %q", f.Message, f.Cure)
+		}
+	}
+}
+
+// What may stand for the change of E of the test.
+func TestTells(t *testing.T) {
+	of := func(value, low, high float64, open fit.Open) fit.Estimate {
+		return fit.Estimate{Value: value, StdError: 1, Lower: low, Upper: high, Open: open}
+	}
+	falls, near := of(-22, -27, -16, fit.OpenNone), of(-6, -10, -2, fit.OpenNone)
+	for _, c := range []struct {
+		what         string
+		change, test fit.Estimate
+		want         bool
+	}{
+		{"as sure", of(-60, -84, -35, fit.OpenNone), falls, true},
+		{"either sign", of(-126, -1021, 768, fit.OpenNone), falls, false},
+		{"the other sign", of(60, 35, 84, fit.OpenNone), falls, false},
+		{"an open end", of(-60, math.NaN(), -35, fit.OpenLower), falls, false},
+		{"unknown", fit.Unknown(), falls, false},
+		{"open whether it matters, which the test knows", of(-60, -118, -2, fit.OpenNone), falls, false},
+		{"open whether it matters for both", of(-60, -118, -2, fit.OpenNone), near, true},
+	} {
+		if got := tells(c.change, c.test, 3); got != c.want {
+			t.Errorf("%s: tells is %t", c.what, got)
+		}
+	}
+}
+
 // The curve of the test tells the change wherever it describes the data about as well,
 // where the other fails, and where the recommended one is a line with a prefactor.
 func TestOutdone(t *testing.T) {

@@ -112,6 +112,8 @@ func formEstimates(r *fit.Result, fr models.Frame, confidence float64, q dataset
 			}
 			if p, ok := profiles[par.Symbol]; ok && withheld(f, q) == "" {
 				e = p
+			} else if par.Symbol == unfolding && openBarrier(profiles) {
+				e = fit.Unknown() // the difference of two barriers is as little bounded
 			}
 			if par.Symbol == crossover || par.Symbol == half {
 				if e = reciprocal(e); openBarrier(profiles) {
@@ -142,6 +144,9 @@ func formEstimates(r *fit.Result, fr models.Frame, confidence float64, q dataset
 // crossover is the symbol of the temperature at which two paths are equally fast, half
 // that of the same temperature of a catalyst half of which is inactive there.
 const crossover, half = "T_x", "T_half"
+
+// unfolding is the symbol of the enthalpy of inactivation, the difference of two barriers.
+const unfolding = "dH_d"
 
 // openBarrier reports whether the data leave a barrier without a bound. Where the
 // paths cross is then not bounded either, whatever the covariance says.
@@ -579,7 +584,11 @@ func (w *publisher) eAt(t float64) {
 	if w.in.Profile != nil {
 		e = scaled(w.in.Profile.interval(localEnergy(w.in.Fit, t)), 1./1000)
 	}
-	w.energyLine("E_a", e, fmt.Sprintf("at %s K", fixed(t, 0, 0)))
+	note := ""
+	if e.Lower < 0 && e.Upper > 0 && openBarrier(w.in.Profiles) {
+		e, note = fit.Unknown(), w.notBounded()
+	}
+	w.energyLine("E_a", e, fmt.Sprintf("at %s K", fixed(t, 0, 0)), note)
 }
 
 // prefactor adds A, which is log-normal: its uncertainty is a factor, and brackets
@@ -763,18 +772,31 @@ func (w *publisher) form(f models.Form) {
 			case isLog:
 				w.prefactor(a, e, "")
 			case p.Unit == "kJ mol^-1":
-				symbol := p.Symbol
-				if symbol == "dH_d" {
+				symbol, note := p.Symbol, ""
+				if symbol == unfolding {
 					symbol = "ΔH_d"
+					if !p.Value.Known() {
+						note = w.notBounded()
+					}
 				}
-				w.energyLine(symbol, e)
+				w.energyLine(symbol, e, note)
 			case p.Symbol == crossover && openBarrier(w.in.Profiles):
 				w.value(p.Symbol, p.Unit, e, "not bounded: an end of "+fe.OpenBarriers()+" is open")
+			case p.Symbol == half && openBarrier(w.in.Profiles):
+				w.value(p.Symbol, p.Unit, e, w.notBounded())
 			default:
 				w.value(p.Symbol, p.Unit, e)
 			}
 		}
 	}
+}
+
+// notBounded says why what follows from two barriers is not published.
+func (w *publisher) notBounded() string {
+	if !openBarrier(w.in.Profiles) {
+		return ""
+	}
+	return "not bounded: an end of a barrier is open"
 }
 
 // rate adds k at the reference temperature and, for evaluated tables, what they

@@ -208,7 +208,8 @@ type VerdictInput struct {
 
 	told   fit.Estimate // the change of E that is stated
 	toldBy string       // the curve that it is of
-	rough  bool         // which fails its adequacy test
+	rough  bool         // which does not describe the data
+	loose  string       // the curve that does, where it leaves the change open; else ""
 }
 
 // Decide gives the verdict and the findings that belong to it.
