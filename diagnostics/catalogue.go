@@ -163,12 +163,12 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "borderline", Title: "borderline", Severity: Info,
-		Explanation: "The p-value of the exponent test lies between 0.01 and 0.1, and the verdict changes when one temperature is left out, which one hardly matters. That is what chance does near p = 0.05: a repeat of the experiment gives the other verdict about as often. A point that the verdict truly hangs on is named as deciding.",
+		Explanation: "The p-value of the exponent test lies between 0.01 and 0.1, and the verdict changes when one temperature is left out, which one hardly matters. That is what chance does near p = 0.05: a repeat of the experiment may then well give another verdict; how often, the shares of repeats say (a repeat would say), which are drawn about the curves that describe the data and can be near 100 % where one of them bends more than the exponent test can follow. A point that the verdict truly hangs on is named as deciding.",
 		Cure:        "repeat the measurement, or add temperatures at both ends of the range",
 	},
 	{
 		Code: "deciding-point", Title: "the verdict hangs on one temperature or point", Severity: Warning,
-		Explanation: "The verdict is curved, is not without this temperature or point, and without it the exponent n shrinks to less than half or turns its sign. Flips that leave n much as it was are noise and are not named. In straight data that came out curved by chance such a point is found in 1 to 26 % of sets; where a bad point at the hot end, off by eight standard deviations, bends straight data, in 74 to 95 % of sets of twelve temperatures or more, in 78 % of eight over a narrow range and 41 % over a wide one, and more seldom in fewer, which leave too little to tell (simulated). The second-barrier test is not repeated.",
+		Explanation: "The verdict is curved, is not without this temperature or point, and without it the exponent n shrinks to less than half or turns its sign. Flips that leave n much as it was are noise and are not named. In straight data that came out curved by chance such a point is found in 1 to 26 % of sets; where a bad point at the hot end, off by eight standard deviations, bends straight data, in 74 to 95 % of sets of twelve temperatures or more, in 78 % of eight over a narrow range and 41 % over a wide one, and more seldom in fewer, which leave too little to tell (simulated). The second-barrier test is not repeated. Where rate-maximum is raised as well, the maximum is a test of its own, on all temperatures above it, and stands by itself.",
 		Cure:        "measure there again; a verdict that one point makes is no finding about the reaction",
 		Reference:   "R. D. Cook, S. Weisberg, Residuals and Influence in Regression (1982)",
 	},
@@ -189,9 +189,9 @@ var catalogue = []Entry{
 		Cure:        "find a curve that fits, or see what the uncertainties leave out; then look for outliers",
 	},
 	{
-		Code: "temperature-error-explains", Title: "a working thermometer could fake this", Severity: Warning,
-		Explanation: "An error of the recorded temperatures smaller than what a working thermometer may be wrong by would take the verdict away. Three shapes are tried: an offset (the same everywhere), a gain (0 at the lowest, largest at the highest temperature) and a bow (0 at both ends, largest in the middle). Granted are 0.5 K, 0.5 K and 0.1 K, or the largest u(T) where every point has one. A bow is what most resembles curvature: over a narrow range a few tenths of a kelvin explain nearly every curve, an offset none.",
-		Cure:        "calibrate the thermometer in the middle and at both ends of the range, and say what it may be wrong by: --thermometer-error bow=0.02K",
+		Code: "temperature-error-explains", Title: "the error of a working thermometer could take this away", Severity: Warning,
+		Explanation: "An error of the recorded temperatures smaller than what a working thermometer may be wrong by would be enough to take the verdict away: with it put right the interval of n reaches the edge of the prefactor band (beyond-prefactor) or 0 (the other curved verdicts). To make the whole of the curvature takes a larger error, which is given too. None is looked for beyond 50 K and half of the range. Three shapes are tried: an offset (the same everywhere), a gain (0 at the lowest, largest at the highest temperature) and a bow (0 at both ends, largest in the middle). Granted are 0.5 K, 0.5 K and 0.1 K, or the largest u(T) where every point has one. A bow is what most resembles curvature: over a narrow range a few tenths of a kelvin explain nearly every curve, an offset none.",
+		Cure:        "calibrate the thermometer in the middle and at both ends of the range, and say with --thermometer-error what it may be wrong by then",
 	},
 	{
 		Code: "order-follows-temperature", Title: "the order of the runs follows T", Severity: Warning,
@@ -213,7 +213,7 @@ var catalogue = []Entry{
 	{
 		Code: "exponent-not-a-prefactor", Title: "n is no prefactor", Severity: Warning,
 		Explanation: "For |n| above about 5 the exponent of T is no property of a prefactor but a measure of curvature.",
-		Cure:        "read it as the change of E, or as ΔC_p‡ = (n − 1)R",
+		Cure:        "read it as the change of E; as ΔC_p‡ = (n − 1)R only where power-prefactor describes the data and is recommended",
 	},
 	{
 		Code: "band-narrow-for-gas-phase", Title: "prefactor band narrow for the gas phase", Severity: Warning,
@@ -247,7 +247,7 @@ var catalogue = []Entry{
 	},
 	{
 		Code: "scatter-below-thermometer", Title: "scatter smaller than u(T) allows", Severity: Warning,
-		Explanation: "Under error model relative the scatter of ln k holds what random errors of T do. About the straight line it is smaller than the stated uncertainties of T alone would cause, by more than chance allows: χ² of the line with those variances lies in the lowest hundredth of its distribution. Asked where every point has u(T).",
+		Explanation: "Under error model relative the scatter of ln k holds what random errors of T do. About the straight line, or where the verdict is curved about the curve that describes the data, it is smaller than the stated uncertainties of T alone would cause, by more than chance allows: χ² of that curve with those variances lies in the lowest hundredth of its distribution. Asked where every point has u(T).",
 		Cure:        "check whether u(T) holds a systematic part, which does not scatter",
 	},
 	{

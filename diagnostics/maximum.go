@@ -3,6 +3,7 @@ package diagnostics
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -71,6 +72,10 @@ func (a *assessor) rateMaximum() {
 		map[string]Real{"t_k": Real(t[top]), "ratio": Real(ratio), "p_value": Real(p)})
 	f.Cure = a.cureOfMaximum(t, y, top)
 	a.findings = append(a.findings, f)
+	// Of n one point may decide; the fall is tested on all temperatures above the maximum.
+	if i := slices.IndexFunc(a.findings, func(f Finding) bool { return f.Code == "deciding-point" }); i >= 0 {
+		a.findings[i].Cure = fmt.Sprintf("measure there again; that k falls above %s K is a test of its own, on the %d temperatures above it, and stands by itself: see rate-maximum", where, len(y)-1-top)
+	}
 }
 
 // cureOfMaximum says how to go on, with flags that can be typed as they stand: first the

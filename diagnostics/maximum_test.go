@@ -153,3 +153,26 @@ func TestRateMaximumOfManyNoisyPoints(t *testing.T) {
 		}
 	}
 }
+
+// Where one point decides n, the fall of k above its maximum still stands: invented data of
+// an enzyme half of which is inactive at 331 K.
+func TestMaximumStandsBesideADecidingPoint(t *testing.T) {
+	temps := []float64{285.00, 289.55, 294.09, 298.64, 303.18, 307.73, 312.27, 316.82, 321.36, 325.91, 330.45, 335.00}
+	k := []float64{4.56895e+00, 6.39740e+00, 9.21358e+00, 1.22014e+01, 1.76523e+01, 2.26042e+01, 3.16512e+01, 4.06666e+01, 5.63545e+01, 6.95225e+01, 5.53779e+01, 8.43690e+00}
+	a := mustAssess(t, setOf(temps, k, nil), quick())
+	found := 0
+	for _, f := range a.Findings {
+		switch f.Code {
+		case "rate-maximum":
+			found++
+		case "deciding-point":
+			found++
+			if !strings.Contains(f.Cure, "on the 2 temperatures above it, and stands by itself: see rate-maximum") || strings.Contains(f.Cure, "no finding") {
+				t.Errorf("cure %q", f.Cure)
+			}
+		}
+	}
+	if found != 2 {
+		t.Errorf("%v", codesOf(a))
+	}
+}

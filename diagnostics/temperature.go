@@ -11,8 +11,9 @@ import (
 	"onebarrier/models/fit"
 )
 
-// farthestError is the largest error of temperature that is looked at, in K.
-const farthestError = 50
+// farthestError is the largest error of temperature that is looked at, in K; what lies
+// beyond farthestShare of the range is none of a thermometer either.
+const farthestError, farthestShare = 50, 0.5
 
 // slopeStep, in K, is that of the difference quotient that gives dn/dδ with limits: the
 // curvature of n(δ) and the rounding of n enter by less than a part in a thousand.
@@ -75,7 +76,8 @@ func ParseThermometerError(s string) (ThermometerError, error) {
 }
 
 // TemperatureError says what an error of the recorded temperatures of one shape would
-// do: recorded T = true T + δ s(T). Numbers are unknown where no δ within 50 K does it.
+// do: recorded T = true T + δ s(T). Numbers are unknown where no δ within
+// 50 K and half of the range does it.
 type TemperatureError struct {
 	Shape string `json:"shape"` // offset, gain or bow
 	// Slope is the exponent that an error of 1 K makes, Σ c_i (-E_loc(T_i) s_i/(R T_i²))
@@ -255,6 +257,11 @@ func (a *assessor) temperatureErrors() {
 		if a.verdict.State.Curved() {
 			e.Lost = Real(f.lost(shape, dn))
 		}
+		for _, delta := range []*Real{&e.ToBand, &e.Lost} {
+			if math.Abs(float64(*delta)) > farthestShare*(high-low) {
+				*delta = Real(math.NaN())
+			}
+		}
 		e.Explains = e.Lost.Known() && math.Abs(float64(e.Lost)) < working[name]
 		a.temperature = append(a.temperature, e)
 	}
@@ -431,8 +438,9 @@ func (e TemperatureError) reading(delta Real) string {
 
 // ThermometerText says by how much the recorded temperatures would have to be wrong to
 // take the significance from a curved verdict, in the shape that needs the least, and
-// how much of it brings n itself to the band; "" where nothing was looked for.
-func ThermometerText(errors []TemperatureError) string {
+// how much of it brings n itself to the band; "" where nothing was looked for. reached is
+// what the verdict then becomes, see Lost.
+func ThermometerText(errors []TemperatureError, reached string) string {
 	if len(errors) == 0 {
 		return ""
 	}
@@ -443,15 +451,25 @@ func ThermometerText(errors []TemperatureError) string {
 		}
 	}
 	if least < 0 {
-		return fmt.Sprintf("significant with any error up to %d K", farthestError)
+		return fmt.Sprintf("holds with any error up to %d K and half of the range", farthestError)
 	}
 	e := errors[least]
 	where, _, _ := strings.Cut(e.reading(e.Lost), " and ")
-	text := where + " (" + e.Shape + "): no longer significant"
+	text := where + " (" + e.Shape + "): " + reached
 	if e.ToBand.Known() {
 		text += "; " + kelvins(e.ToBand) + ": n in the band"
 	}
 	return text
+}
+
+// Lost says what a curved verdict becomes at the error of temperature that takes it away,
+// from the exponent n and the prefactor band: the interval of n then reaches an edge of the
+// band, where the cause is open, or 0, where nothing is significant.
+func (s State) Lost(n Real, band [2]float64) string {
+	if s == BeyondPrefactor && (n > 0 && band[1] > 0 || n < 0 && band[0] < 0) {
+		return string(CurvedOpen)
+	}
+	return "no longer significant"
 }
 
 // GrantedText says what the thermometer may be wrong by, and who says so; "" where that
@@ -487,10 +505,14 @@ func (a *assessor) findTemperatureErrors() {
 		parts = append(parts, fmt.Sprintf("one that reads %s (%s), where a working thermometer may be wrong by %s", e.reading(e.Lost), e.Shape, kelvins(e.Working)))
 		values["delta_"+e.Shape+"_k"] = e.Lost
 		if len(parts) == 1 {
-			a.verdict.Sentence += fmt.Sprintf(" A thermometer that reads %s would make this.", e.reading(e.Lost))
+			text := fmt.Sprintf(" A thermometer that reads %s would be enough to take this verdict away", e.reading(e.Lost))
+			if e.ToBand.Known() {
+				text += fmt.Sprintf("; %s would bring n itself into the prefactor band", kelvins(e.ToBand))
+			}
+			a.verdict.Sentence += text + "."
 		}
 	}
 	if len(parts) > 0 {
-		a.find("temperature-error-explains", "a wrong thermometer would give this verdict: "+strings.Join(parts, "; or "), nil, values)
+		a.find("temperature-error-explains", "a wrong thermometer would be enough to take this verdict away: "+strings.Join(parts, "; or ")+"; it is then "+a.verdict.State.Lost(Real(a.power.P[2]), a.rule.Band), nil, values)
 	}
 }

@@ -209,6 +209,71 @@ func TestScatterBelowThermometer(t *testing.T) {
 	}
 }
 
+// What is told is the error that is enough to take the verdict away, and what the verdict
+// is then: the assessment of the temperatures put right by a little more.
+func TestThermometerTellsWhatIsReached(t *testing.T) {
+	for what, k := range map[string]struct {
+		delta   float64
+		reached State
+		text    string
+	}{
+		"rises": {0.4, CurvedOpen, "curved-open"},
+		"falls": {-0.4, StraightWithin, "no longer significant"},
+	} {
+		o := quick()
+		o.ThermometerError = "bow=5K"
+		a := mustAssess(t, bowed(k.delta, 0.001), o)
+		if a.Verdict.State != BeyondPrefactor {
+			t.Fatalf("%s: %s", what, a.Verdict.State)
+		}
+		n := a.Curvature.Exponent.Value
+		if got := a.Verdict.State.Lost(n, a.Settings.PrefactorBand); got != k.text {
+			t.Errorf("%s: %q", what, got)
+		}
+		bow := a.TemperatureError[2]
+		for _, says := range []string{"would be enough to take this verdict away; " + kelvins(bow.ToBand) + " would bring n itself into the prefactor band."} {
+			if !strings.Contains(a.Verdict.Sentence, says) {
+				t.Errorf("%s: %q does not say %q", what, a.Verdict.Sentence, says)
+			}
+		}
+		put := bowed(k.delta, 0.001)
+		low, high := put.Points[0].T, put.Points[len(put.Points)-1].T
+		for i := range put.Points {
+			p := &put.Points[i]
+			p.T -= 1.001 * float64(bow.Lost) * shapeOf(shapeBow, low, high, p.T)
+		}
+		if got := mustAssess(t, put, o).Verdict.State; got != k.reached {
+			t.Errorf("%s: with temperatures put right the verdict is %s", what, got)
+		}
+	}
+	if got := WithinPrefactor.Lost(1, [2]float64{0, 3}); got != "no longer significant" {
+		t.Errorf("within-prefactor: %q", got)
+	}
+}
+
+// An error beyond half of the range is none of a thermometer.
+func TestThermometerWithinHalfTheRange(t *testing.T) {
+	a := mustAssess(t, lineSet(12, 290, 294, 60e3, 0.02, 3), quick())
+	b := mustAssess(t, bowed(0.4, 0.001), quick())
+	found := 0
+	for _, s := range []*Assessment{a, b} {
+		half := float64(s.Dataset.TMax-s.Dataset.TMin) / 2
+		for _, e := range s.TemperatureError {
+			for _, delta := range []Real{e.ToBand, e.Lost} {
+				if delta.Known() {
+					found++
+				}
+				if math.Abs(float64(delta)) > half {
+					t.Errorf("%s: δ = %g K in a range of %g K", e.Shape, float64(delta), 2*half)
+				}
+			}
+		}
+	}
+	if found == 0 {
+		t.Error("no δ at all")
+	}
+}
+
 // The line says the shape that needs the least, its sign, and both errors; what is
 // granted is told where it is not the default.
 func TestThermometerText(t *testing.T) {
@@ -224,15 +289,15 @@ func TestThermometerText(t *testing.T) {
 		{[]TemperatureError{offset, gain, bow}, "0.41 K low in mid-range (bow): no longer significant; 0.62 K: n in the band"},
 		{[]TemperatureError{offset, gain}, "3.0 K high at the hot end (gain): no longer significant; 5.0 K: n in the band"},
 		{[]TemperatureError{inBand}, "3.0 K high at the hot end (gain): no longer significant"},
-		{[]TemperatureError{offset}, "significant with any error up to 50 K"},
+		{[]TemperatureError{offset}, "holds with any error up to 50 K and half of the range"},
 		{nil, ""},
 	} {
-		if got := ThermometerText(c.errors); got != c.want {
+		if got := ThermometerText(c.errors, "no longer significant"); got != c.want {
 			t.Errorf("%q, want %q", got, c.want)
 		}
 	}
 	// A thermometer that reads 0.3 K high in mid-range.
-	if s := ThermometerText(mustAssess(t, bowed(0.3, 0.001), quick()).TemperatureError); !strings.Contains(s, "K high in mid-range (bow)") {
+	if s := ThermometerText(mustAssess(t, bowed(0.3, 0.001), quick()).TemperatureError, ""); !strings.Contains(s, "K high in mid-range (bow)") {
 		t.Errorf("%q", s)
 	}
 	gain.Working, offset.Working = 0.5, 0.5

@@ -125,7 +125,11 @@ func drawChange(a *diagnostics.Assessment, d *Change) (picture, error) {
 	if !math.IsNaN(d.Lower) && !math.IsNaN(d.Upper) {
 		b := bracket{d.Lower, d.Upper, d.Estimate, barsTop * 1.09}
 		addFixed(p, b)
-		leg.entry("reported "+percent(d.Confidence)+" interval", b)
+		name := "reported " + percent(d.Confidence) + " interval"
+		if d.Told != "" {
+			name = percent(d.Confidence) + " interval of the test's curve"
+		}
+		leg.entry(name, b)
 		for i := range samples {
 			f := float64(i) / (samples - 1)
 			lo, hi := math.Max(d.Lower, xLow), math.Min(d.Upper, xHigh)

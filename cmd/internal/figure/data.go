@@ -405,6 +405,9 @@ type Change struct {
 	Resamples int
 	Scheme    string
 	Generator string // the curve that generated the resamples
+	// Told is the curve whose change the verdict states where that is another: the interval
+	// here is that of the test; else "".
+	Told string
 	// Reported is the interval of the assessment; an open end is infinite.
 	Estimate, Lower, Upper float64
 	Tolerance              float64 // NaN if none
@@ -438,6 +441,9 @@ func NewChange(a *diagnostics.Assessment) *Change {
 		Resamples: len(a.ChangeOfE), Generator: powerOfT, Scheme: a.Settings.Scheme,
 		Estimate: float64(e.Value), Lower: float64(e.Lower), Upper: float64(e.Upper),
 		Tolerance: sc.perKJ * float64(a.Curvature.ToleranceKJ), Confidence: confidence(a),
+	}
+	if told := a.Verdict.EChangeCurve; told != "" && told != powerOfT {
+		d.Told = told
 	}
 	if a.Bootstrap != nil && a.Bootstrap.Scheme != "" {
 		d.Scheme = a.Bootstrap.Scheme

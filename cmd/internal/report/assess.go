@@ -181,7 +181,7 @@ func (p *page) test(a *diagnostics.Assessment) {
 	if c.EChange.Value.Known() {
 		rows = append(rows, runs(a)...)
 	}
-	if text := diagnostics.ThermometerText(a.TemperatureError); text != "" && a.Verdict.State.Curved() {
+	if text := diagnostics.ThermometerText(a.TemperatureError, a.Verdict.State.Lost(c.Exponent.Value, a.Settings.PrefactorBand)); text != "" && a.Verdict.State.Curved() {
 		rows = append(rows, []string{"if the thermometer reads", strings.ReplaceAll(text, " K", "\u00a0K")})
 	}
 	if s := c.SecondBarrier; s != nil {

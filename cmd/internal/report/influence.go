@@ -98,7 +98,11 @@ func (p *page) temperatureErrors(a *diagnostics.Assessment) {
 	}
 	set := table(rows, 1, 2, 3, 4)
 	lines := append([]string{p.dim(set[0])}, set[1:]...)
-	legend := "recorded T = true T + δ·s(T); offset: s = 1; gain: from 0 at the cold end to 1 at the hot end; bow: 1 in the middle, 0 at both ends; to the band, verdict lost: δ in K that takes n to the nearest edge of the prefactor band, and that takes a curved verdict away; working: what a working thermometer may be wrong by; –: none within 50 K, or nothing to lose"
+	lost := ""
+	if s := a.Verdict.State; s.Curved() {
+		lost = " (then " + s.Lost(a.Curvature.Exponent.Value, a.Settings.PrefactorBand) + ")"
+	}
+	legend := "recorded T = true T + δ·s(T); offset: s = 1; gain: from 0 at the cold end to 1 at the hot end; bow: 1 in the middle, 0 at both ends; to the band, verdict lost: δ in K that takes n to the nearest edge of the prefactor band, and that is enough to take a curved verdict away" + lost + "; working: what a working thermometer may be wrong by; –: none within 50 K and half of the range, or nothing to lose"
 	if slices.ContainsFunc(a.TemperatureError, func(e diagnostics.TemperatureError) bool { return e.Explains }) {
 		legend += "; •: a working thermometer may be wrong by as much"
 	}
