@@ -319,7 +319,8 @@ type Ranked struct {
 	Adequate    *bool          `json:"adequate"` // nil: cannot be checked
 	Forms       []FormEstimate `json:"forms"`
 
-	failed bool // excluded because it could not be fitted
+	failed   bool // excluded because it could not be fitted
+	otherWay bool // excluded because the data bend the other way, or not at all
 }
 
 // FormEstimate is one reading of a fitted curve.

@@ -52,7 +52,8 @@ type Influence struct {
 	// repeated, and stands as it is for all the data.
 	State    State `json:"state_without"`
 	Deciding bool  `json:"deciding"`
-	// PredictionError is what was measured less what the curve predicts without it, in
+	// PredictionError is what was measured less what power-prefactor, the curve of the
+	// exponent test, predicts without it, in
 	// ln k, or in k where errors are in k; of single entries.
 	PredictionError Real   `json:"prediction_error"`
 	Why             string `json:"why_not"` // why n without it is unknown, "" where it is known

@@ -106,7 +106,8 @@ func rankingDiffers(curve, why string) Finding {
 	return newFinding("ranking-differs", fmt.Sprintf("recommended is %s: %s", curve, why), nil, nil)
 }
 
-// secondBarrierFound reports a second-barrier test with p < 0.05. The ranking tells
+// secondBarrierFound reports a second-barrier test with p < 0.05. Limits take no part in
+// that test: where two paths are excluded with them, no second path is claimed. The ranking tells
 // whether power-prefactor describes the data better than two paths.
 func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Finding {
 	low, high := s.Range()
@@ -128,16 +129,31 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Fin
 	if s.DistinctT() <= minTemperatures {
 		rate = "9 %"
 	}
+	what := fmt.Sprintf("a second path that takes over%s describes the data better than one barrier%s", where, still)
+	excluded := false
+	if len(s.Limits) > 0 {
+		excluded = slices.ContainsFunc(ranking, func(r Ranked) bool {
+			return r.Curve == models.Parallel{}.Info().Name && r.otherWay
+		})
+		what = fmt.Sprintf("by the measured points alone, without the limits, a second path that takes over%s describes the data better than one barrier%s", where, still)
+		if excluded {
+			what = "the measured points alone, without the limits, bend as two paths would; with the limits the data bend the other way, and parallel is excluded"
+		}
+	}
 	fs := []Finding{newFinding("second-barrier",
-		fmt.Sprintf("a second path that takes over%s describes the data better than one barrier%s, %s%s; verdict or this finding raises a false alarm in %s of straight sets",
-			where, still, b.PText(), approximate, rate),
+		fmt.Sprintf("%s, %s%s; verdict or this finding raises a false alarm in %s of straight sets", what, b.PText(), approximate, rate),
 		nil, map[string]Real{"p_value": b.PValue, "crossover_low_k": b.Crossover[0], "crossover_high_k": b.Crossover[1]})}
-	if still != "" {
+	switch {
+	case excluded:
+		fs[0].Cure = "do not read a second path from it: check the limits, or measure where they are"
+	case still != "":
 		fs[0].Cure = "a smooth bend passes for two paths in this test: only temperatures around the crossover tell them apart"
 	}
 	end := func(p Real, t float64) {
 		if p > 0.20 {
-			fs[0].Cure = "settle the end of the range first: see second-barrier-rests-on-end"
+			if !excluded {
+				fs[0].Cure = "settle the end of the range first: see second-barrier-rests-on-end"
+			}
 			fs = append(fs, newFinding("second-barrier-rests-on-end",
 				fmt.Sprintf("without the point at %.6g K the second-barrier test has %s: the finding rests on the point at %.6g K", t, pIs(float64(p)), t),
 				nil, map[string]Real{"t_k": Real(t), "p_value": p}))

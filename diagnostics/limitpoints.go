@@ -156,15 +156,28 @@ func (a *assessor) limitFindings() {
 	}
 	a.find("limits-approximate", fmt.Sprintf("%s: %s as the probability of its side; %s", a.set.Places(in), enter(len(in)), approximate), rows(in),
 		map[string]Real{"limits": Real(len(in))})
+	var against []int // places of limits that the measured points contradict
+	least, worst := math.Inf(1), dataset.Point{}
 	for i, pt := range a.data.limits {
 		p, ok := a.limitProbability(a.data.sample.Limits[i])
 		if !ok || !(p < limitLevel) {
 			continue
 		}
 		at := slices.IndexFunc(a.set.Points, func(q dataset.Point) bool { return q.File == pt.File && q.Row == pt.Row && q.Column == pt.Column })
-		a.find("limit-contradicted", fmt.Sprintf("%s: k %s %.4g at %.6g K has a probability of %.1g by the measured points", a.set.Places([]int{at}), pt.Limit, pt.K, pt.T, p), []int{pt.Row},
-			map[string]Real{"t_k": Real(pt.T), "limit": Real(pt.K), "probability": Real(p)})
+		against = append(against, at)
+		if p < least {
+			least, worst = p, pt
+		}
 	}
+	if len(against) == 0 {
+		return
+	}
+	what := fmt.Sprintf("k %s %.4g at %.6g K has", worst.Limit, worst.K, worst.T)
+	if len(against) > 1 { // one finding: it is mostly one fault
+		what = fmt.Sprintf("%d limits; the least likely, k %s %.4g at %.6g K, has", len(against), worst.Limit, worst.K, worst.T)
+	}
+	a.find("limit-contradicted", fmt.Sprintf("%s: %s a probability of %.1g by the measured points", a.set.Places(against), what, least), rows(against),
+		map[string]Real{"limits": Real(len(against)), "t_k": Real(worst.T), "limit": Real(worst.K), "probability": Real(least)})
 }
 
 // enter: 1 limit enters, 2 limits enter.

@@ -230,3 +230,31 @@ func TestMeasuredAlone(t *testing.T) {
 	}
 	reference.Close(t, "χ²", float64(chi2(a)), float64(chi2(b)), 1e-12)
 }
+
+// Eight points that bend as two paths would, by chance, and four limits that bend the
+// data the other way (invented): the finding tells of both and claims no second path; the
+// limits that contradict the points are one finding.
+func TestSecondBarrierAgainstLimits(t *testing.T) {
+	temps := []float64{290, 297.14, 304.29, 311.43, 318.57, 325.71, 332.86, 340, 270, 275, 280, 285}
+	k := []float64{9.5955e-05, 1.7415e-04, 2.9982e-04, 5.1380e-04, 8.6077e-04, 1.4747e-03, 2.3771e-03, 3.7319e-03, 1.3054e-05, 2.1222e-05, 3.3908e-05, 5.3293e-05}
+	s := setOf(temps, k, nil)
+	for i := 8; i < 12; i++ {
+		s.Points[i].Used, s.Points[i].Limit = false, "<"
+	}
+	o := quick()
+	o.Resamples = 0
+	a := mustAssess(t, s, o)
+	i := slices.IndexFunc(a.Findings, func(f Finding) bool { return f.Code == "second-barrier" })
+	if i < 0 {
+		t.Fatal("no second-barrier finding")
+	}
+	if f := a.Findings[i]; !strings.Contains(f.Message, "measured points alone, without the limits") || strings.Contains(f.Message, "describes the data better") || strings.Contains(f.Cure, "around the crossover") {
+		t.Errorf("%s → %s", f.Message, f.Cure)
+	}
+	if got := rows(a, "limit-contradicted"); len(got) != 4 {
+		t.Errorf("limits of lines %v contradict", got)
+	}
+	if n := len(slices.DeleteFunc(slices.Clone(a.Findings), func(f Finding) bool { return f.Code != "limit-contradicted" })); n != 1 {
+		t.Errorf("%d findings of limits that contradict", n)
+	}
+}

@@ -179,7 +179,7 @@ func Rank(s *fit.Sample, fits []*fit.Result, by Criterion) []Ranked {
 			Params: f.Params(), Points: f.N,
 			LogLik: nan, RSS: nan, Chi2: nan, Sigma: nan, AIC: nan, AICc: nan, BIC: nan,
 			Delta: nan, FamWeight: nan, Weight: nan, RepeatShare: nan,
-			Adequacy: []Adequacy{}, Forms: []FormEstimate{}, failed: f.Status == fit.Failed,
+			Adequacy: []Adequacy{}, Forms: []FormEstimate{}, failed: f.Status == fit.Failed, otherWay: f.Status == fit.Excluded,
 		}
 		if f.Usable() {
 			r.LogLik, r.RSS, r.Sigma = Real(f.LogLik), Real(f.RSS), Real(f.Sigma)

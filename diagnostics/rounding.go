@@ -44,6 +44,10 @@ const exactDigits = 6
 // a symmetric one before brackets would mislead.
 const lopsidedFrom = 0.2
 
+// farApart is the factor between the ends of an interval from which each is printed
+// with digits of its own.
+const farApart = 10
+
 // Text writes an estimate and its unit: with its standard uncertainty in brackets,
 // 52.34(18) kJ/mol, where the interval is close to the symmetric one that brackets
 // suggest, else with the interval, 66 kJ/mol (12 to open).
@@ -61,8 +65,19 @@ func (r Rounding) Text(e Estimate, unit string) string {
 		return GUM(value, u) + withUnit(unit)
 	}
 	exp, decimals := places(e)
-	show := func(x float64) string { return join(fixed(x, exp, decimals), exp) }
 	lower, upper := ends(e.fit())
+	// One power of ten and one number of decimals do not suit ends so far apart.
+	apart := lower > 0 && upper > farApart*lower && !math.IsInf(upper, 0)
+	show := func(x float64) string {
+		lead := exponent(x)
+		switch {
+		case apart && exp != 0:
+			return join(fixed(x, lead, 1), lead)
+		case apart && lead <= -decimals:
+			return twoDigits(x)
+		}
+		return join(fixed(x, exp, decimals), exp)
+	}
 	switch {
 	case math.IsInf(lower, 0) && math.IsInf(upper, 0):
 		return show(value) + withUnit(unit) + " (both ends open)"

@@ -276,3 +276,21 @@ func TestUnitOfLogarithm(t *testing.T) {
 		}
 	}
 }
+
+// Ends of an interval a hundred times apart have their own digits: of 2.3e-4 (1.93e-5 to
+// 2.8e-3) no end is written as 0.
+func TestEndsFarApart(t *testing.T) {
+	r := Rounding{Coverage: 2}
+	for _, c := range []struct {
+		e    Estimate
+		want string
+	}{
+		{Estimate{2.3e-4, 2e-5, 1.93e-5, 2.8e-3, nil}, "2.3×10^-4 s^-1 (1.9×10^-5 to 2.8×10^-3)"},
+		{Estimate{2.3, 0.2, 0.0193, 28, nil}, "2.3 s^-1 (0.019 to 28)"},
+		{Estimate{2.3e-4, 2e-5, 1.93e-4, 5e-4, nil}, "2.3×10^-4 s^-1 (1.9×10^-4 to 5.0×10^-4)"},
+	} {
+		if got := r.Text(c.e, "s^-1"); got != c.want {
+			t.Errorf("%s, not %s", got, c.want)
+		}
+	}
+}

@@ -54,9 +54,10 @@ type BetweenSources struct {
 	Pooled  ExponentSources `json:"pooled"`
 	Offset  ExponentSources `json:"with_offsets"`
 	// FTest is that of the offsets of the sources that take part in the curvature, in
-	// power-prefactor; unknown where that is only one. Where limits take part it is the
-	// likelihood-ratio test: see offsetTest.
-	FTest FTest `json:"f_test"`
+	// power-prefactor; nil where they are not tested, and WhyUntested says why. Where
+	// limits take part it is the likelihood-ratio test: see offsetTest.
+	FTest       *FTest `json:"f_test"`
+	WhyUntested string `json:"why_untested"`
 	// VIF is the variance of n with offsets over that of n pooled, by the design
 	// alone; with limits, over that of n with the offsets held.
 	VIF        Real   `json:"vif"`
@@ -613,7 +614,7 @@ func (a *assessor) compareSources() {
 		b.Sources = append(b.Sources, SourceOffset{name, split.points[i], split.temperatures[i], NewEstimate(o),
 			b.Confounded || split.takesPart(i)})
 	}
-	b.FTest = split.untested()
+	b.WhyUntested = split.confounded
 	many := count(len(split.names), "source")
 	if b.Confounded {
 		nan := math.NaN()
@@ -624,7 +625,7 @@ func (a *assessor) compareSources() {
 		return
 	}
 	b.Scatter = Real(math.Sqrt(a.data.sourceScatter().variance))
-	b.FTest = a.offsetTest()
+	b.FTest, b.WhyUntested = a.offsetTest()
 	b.Said = a.whatOffsetsChange(b, many)
 	if b.VIF > partlyVIF {
 		a.find("sources-confounded-partly", fmt.Sprintf("with offsets the variance of n is %.3g times what it is without", split.vif), nil,
@@ -676,43 +677,40 @@ func (b *BetweenSources) TestName(limits bool) string {
 	switch {
 	case limits:
 		return "likelihood-ratio test"
-	case !b.FTest.DF2.Known():
+	case b.FTest != nil && !b.FTest.DF2.Known():
 		return "χ² test" // σ is known
 	}
 	return "F test"
 }
 
-// untested is the F test of the offsets before it is made. Offsets of one-point sources
-// take no part: see together.
-func (split *sourceSplit) untested() FTest {
-	nan := Real(math.NaN())
-	return FTest{nan, max(0, len(split.names)-len(split.onePoint)-1), nan, nan}
-}
-
 // offsetTest is the F test of the offsets in the power-prefactor curve. With limits RSS
 // is what stands for the likelihood, so that the statistic is that of the likelihood
 // ratio W, ν (e^{W/n} - 1)/(S - 1) with n measured entries, or W/(S - 1) where σ is
-// known: exactly F without limits, approximately with them.
-func (a *assessor) offsetTest() FTest {
+// known: exactly F without limits, approximately with them. Offsets of one-point
+// sources take no part: see together. Where there is no test, why says so.
+func (a *assessor) offsetTest() (f *FTest, why string) {
 	split := a.data.sources
 	without, with := split.shared, split.beside
-	f := split.untested()
-	if f.DF1 < 1 || !without.Usable() {
-		return f
+	f = &FTest{DF1: len(split.names) - len(split.onePoint) - 1, DF2: Real(math.NaN())}
+	switch {
+	case f.DF1 < 1:
+		return nil, "an offset of one point fits it to any curve"
+	case !without.Usable():
+		return nil, "power-prefactor could not be fitted without the offsets"
 	}
 	d1, d2 := float64(f.DF1), float64(with.Nu)
 	saved := math.Max(0, without.RSS-with.RSS) / d1
 	if a.model.KnownSigma() {
 		f.Statistic, f.PValue = Real(saved), Real(chi2Tail(saved*d1, f.DF1))
-		return f
+		return f, ""
 	}
 	if noScatter(split.pooled, with.RSS) {
-		return f
+		return nil, "with the offsets no scatter is left to test them against"
 	}
 	f.DF2 = Real(d2)
 	f.Statistic = Real(saved / (with.RSS / d2))
 	f.PValue = Real(pF(float64(f.Statistic), d1, d2))
-	return f
+	return f, ""
 }
 
 // shrinks reports whether the exponent n with offsets is less than half of that without
@@ -726,15 +724,19 @@ func (split *sourceSplit) shrinks(n float64) bool {
 func (a *assessor) whatOffsetsChange(b *BetweenSources, many string) string {
 	pooled, offset := b.Pooled, b.Offset
 	facts := fmt.Sprintf("%s as one, %s with an offset for each", pooled.State, offset.State)
-	if p := float64(b.FTest.PValue); !math.IsNaN(p) {
+	p := math.NaN()
+	if b.FTest != nil {
+		p = float64(b.FTest.PValue)
+	}
+	if !math.IsNaN(p) {
 		facts += fmt.Sprintf("; %s of the offsets %s", b.TestName(len(a.data.sample.Limits) > 0), pIs(p))
 	}
-	values := map[string]Real{"n_pooled": pooled.Exponent.Value, "n_offsets": offset.Exponent.Value, "f_p_value": b.FTest.PValue}
+	values := map[string]Real{"n_pooled": pooled.Exponent.Value, "n_offsets": offset.Exponent.Value, "f_p_value": Real(p)}
 	shrinks := a.data.sources.shrinks(float64(offset.Exponent.Value))
 	code, says := "sources-compared", ""
 	switch {
 	// Partly confounded, offsets may stand for curvature of another shape than that of n.
-	case b.FTest.PValue < offsetLevel && shrinks && !(pooled.State.Curved() && b.VIF > partlyVIF):
+	case p < offsetLevel && shrinks && !(pooled.State.Curved() && b.VIF > partlyVIF):
 		code, says = "between-source-offset", "look curved: that may be an offset between them."
 		switch {
 		case !pooled.State.Curved():

@@ -366,8 +366,8 @@ func TestOnePointIsNoOffset(t *testing.T) {
 		}
 		a := mustAssess(t, set, quick())
 		b := a.BetweenSources
-		if b.FTest.DF1 != c.df || b.FTest.PValue.Known() != (c.df > 0) || b.FTest.PValue < 0.05 {
-			t.Errorf("%s: F test %+v", c.names, b.FTest)
+		if f := b.FTest; (f == nil) != (c.df == 0) || (b.WhyUntested == "") != (c.df > 0) || f != nil && (f.DF1 != c.df || !(f.PValue >= 0.05)) {
+			t.Errorf("%s: F test %+v, %q", c.names, f, b.WhyUntested)
 		}
 		if b.Said != "offsets-leave-open" || !strings.Contains(a.Verdict.Sentence, "with offsets allowed these data can no longer tell") {
 			t.Errorf("%s: said %s: %s", c.names, b.Said, a.Verdict.Sentence)
@@ -397,7 +397,7 @@ func TestConfoundedSources(t *testing.T) {
 		}
 		a := mustAssess(t, s, quick())
 		b := a.BetweenSources
-		if !b.Confounded || b.Why == "" || !a.finding("sources-confounded") || !strings.Contains(a.Verdict.Sentence, "taken as one") {
+		if !b.Confounded || b.Why == "" || b.FTest != nil || b.WhyUntested == "" || !a.finding("sources-confounded") || !strings.Contains(a.Verdict.Sentence, "taken as one") {
 			t.Errorf("%s: %+v", c.what, b)
 		}
 		if c.what != "three shared temperatures" && a.Curvature.Exponent.Value != alone.Curvature.Exponent.Value {

@@ -92,7 +92,7 @@ func story(t *testing.T, name, extra string) *diagnostics.Assessment {
 // Every figure says where what it shows is a mean, and what its small triangles are.
 func TestLegendsSayWhatIsAMean(t *testing.T) {
 	const (
-		mean, ofSource   = "mean at one temperature", "mean of a source at one *T*"
+		mean, ofSource   = "mean at one temperature", "mean, offset removed"
 		curves, removed  = "curves: mean over the sources", "offsets between sources removed"
 		of, neighbours   = "points are means of *n* repeats", "between neighbours, ±*u*"
 		neighbouringMean = "between neighbouring means, ±*u*"

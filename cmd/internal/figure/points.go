@@ -50,6 +50,10 @@ func (d dots) Plot(c draw.Canvas, p *plot.Plot) {
 		if !c.Contains(pt) {
 			up := pt.Y > c.Max.Y
 			pt.Y = within(pt.Y)
+			if q.Limit != "" && c.ContainsX(pt.X) {
+				d.limitOutside(&c, pt, sty, up, q.Limit == ">")
+				continue
+			}
 			outside(&c, pt, up)
 			continue
 		}
@@ -73,6 +77,23 @@ func arrow(c *draw.Canvas, pt vg.Point, up bool, length vg.Length) {
 	tip := vg.Point{X: pt.X, Y: pt.Y + dir*length}
 	c.StrokeLine2(line, pt.X, pt.Y, tip.X, tip.Y-dir*head/2)
 	c.FillPolygon(ink, []vg.Point{tip, {X: tip.X - head/2, Y: tip.Y - dir*head}, {X: tip.X + head/2, Y: tip.Y - dir*head}})
+}
+
+// limitOutside marks a limit beyond the panel on its edge by its own arrow, which points
+// into what the limit allows, never by the triangle of a measured point: that would read
+// as the opposite where both differ.
+func (d dots) limitOutside(c *draw.Canvas, pt vg.Point, sty draw.GlyphStyle, above, allowsUp bool) {
+	const length = 12
+	inward := vg.Length(1) // from the edge to the panel
+	if above {
+		inward = -1
+	}
+	pt.Y += inward * d.radius
+	if above == allowsUp { // the arrow needs room to point out of the panel
+		pt.Y += inward * (length - d.radius)
+	}
+	arrow(c, pt, allowsUp, length)
+	c.DrawGlyph(sty, pt)
 }
 
 // outside marks a point beyond the panel by a small open triangle on its edge.
@@ -160,7 +181,7 @@ func pointEntries(leg *legend, d *Arrhenius) {
 	if len(d.Means) > 0 {
 		words := "mean at one temperature"
 		if d.Offsets {
-			words = "mean of a source at one *T*"
+			words = "mean, offset removed"
 		}
 		leg.entry(words, thumb(stroke))
 	}
@@ -194,9 +215,10 @@ func (l *legend) beyondEntry(some bool) {
 	}
 }
 
-// beyond reports whether a point that is drawn lies outside a range.
+// beyond reports whether a measured point that is drawn lies outside a range: a limit keeps
+// its arrow there.
 func beyond(points []Point, low, high float64, at func(Point) float64) bool {
-	return slices.ContainsFunc(points, func(p Point) bool { return at(p) < low || at(p) > high })
+	return slices.ContainsFunc(points, func(p Point) bool { return p.Limit == "" && (at(p) < low || at(p) > high) })
 }
 
 // sourceUsed reports whether a source has a point that took part: else its marker

@@ -84,7 +84,8 @@ func (p *page) publish(a *diagnostics.Assessment) {
 			if of.Note != "" {
 				of.Note += "; "
 			}
-			of.Note += strings.ReplaceAll(l.Symbol+" = "+l.Text, " ", "\u00a0")
+			// The number and its unit each stay in one piece; both together may be too wide.
+			of.Note += strings.ReplaceAll(l.Symbol, " ", "\u00a0") + " =\u00a0" + strings.ReplaceAll(l.Text, " ", "\u00a0")
 			continue
 		}
 		rows = append(rows, l)
@@ -189,6 +190,9 @@ func (p *page) test(a *diagnostics.Assessment) {
 		if where := s.CrossoverText(float64(a.Dataset.TMin), float64(a.Dataset.TMax)); s.PValue < 0.05 && where != "" {
 			text += ", crossover " + strings.ReplaceAll(where, " K", "\u00a0K")
 		}
+		if a.Dataset.Limits > 0 {
+			text += " (without the limits)"
+		}
 		rows = append(rows, []string{"second barrier, E rising", text},
 			[]string{"false alarm, straight data", falseAlarms(a.Dataset.Temperatures)})
 	}
@@ -251,12 +255,13 @@ func detected(e diagnostics.Estimate) string {
 	return plain(e.Value, d)
 }
 
-// runs is the row of the runs test of the recommended curve.
+// runs is the row of the runs test of the recommended curve, beside the number of
+// residuals: limits have none.
 func runs(a *diagnostics.Assessment) [][]string {
 	for _, r := range a.Ranking {
 		for _, t := range r.Adequacy {
 			if r.Curve == a.Verdict.RecommendedCurve && t.Test == diagnostics.TestRuns {
-				return [][]string{{"runs of residuals", fmt.Sprintf("%s of %d, %s (%s)", plain(t.Statistic, 0), r.Points, pIs(t.PValue, t.AtFloor()), r.Curve)}}
+				return [][]string{{"runs of residuals", fmt.Sprintf("%s of %d, %s (%s)", plain(t.Statistic, 0), r.Points-a.Dataset.Limits, pIs(t.PValue, t.AtFloor()), r.Curve)}}
 			}
 		}
 	}

@@ -33,7 +33,7 @@ func (p *page) influence(a *diagnostics.Assessment) {
 		return
 	}
 	d := decimalsOf(a.Curvature.Exponent)
-	rows := [][]string{{"  row", "T/K", "n", "p", "lever.", "Cook", "resid.", "error"}}
+	rows := [][]string{{"  row", "T/K", "n", "p", "error", "lever.", "Cook", "resid."}}
 	deciding := false
 	var why []string
 	for _, f := range a.Influence {
@@ -44,8 +44,8 @@ func (p *page) influence(a *diagnostics.Assessment) {
 		if f.Why != "" && !slices.Contains(why, f.Why) {
 			why = append(why, f.Why)
 		}
-		rows = append(rows, []string{mark + rowsOf(f.Rows), kelvin(f.T), plain(f.Exponent, d), probability(f.PValue),
-			plain(f.Leverage, 2), significant(f.Cook, 2), plain(f.Studentised, 1), significant(f.PredictionError, 2)})
+		rows = append(rows, []string{mark + rowsOf(f.Rows), kelvin(f.T), plain(f.Exponent, d), probability(f.PValue), significant(f.PredictionError, 2),
+			plain(f.Leverage, 2), significant(f.Cook, 2), plain(f.Studentised, 1)})
 	}
 	set := table(rows, 1, 2, 3, 4, 5, 6, 7)
 	lines := append([]string{p.dim(set[0])}, set[1:]...)
@@ -53,7 +53,7 @@ func (p *page) influence(a *diagnostics.Assessment) {
 	if a.Prediction != nil {
 		unit = a.Prediction.Unit
 	}
-	legend := "n, p: of the exponent test without the row; leverage, Cook's distance and studentised residual: in " + a.Influence[0].Curve + "; error: of the prediction of the row by power-prefactor from the rest, in " + or(unit, "the unit of k")
+	legend := "n, p, error: by " + testCurve + ", the curve of the exponent test, without the row; error: of its prediction, in " + or(unit, "the unit of k") + "; leverage, Cook's distance and studentised residual: in " + a.Influence[0].Curve
 	if deciding {
 		legend += "; •: the verdict hangs on it"
 	}

@@ -42,12 +42,12 @@ func (p *page) sources(a *diagnostics.Assessment) {
 	if len(offsets) > most {
 		offsets = []string{offset(b.Sources[low]), "…", offset(b.Sources[high])}
 	}
-	test, found := b.TestName(a.Dataset.Limits > 0), "p = "+probability(b.FTest.PValue)
-	switch {
-	case b.FTest.DF1 < 1:
-		test, found = "test", "none: an offset of one point fits it to any curve"
-	case a.Dataset.Limits > 0:
-		test = "test" // by the likelihood ratio
+	test, found := "test", "none: "+b.WhyUntested
+	if b.FTest != nil {
+		found = "p = " + probability(b.FTest.PValue)
+		if a.Dataset.Limits == 0 { // else by the likelihood ratio
+			test = b.TestName(false)
+		}
 	}
 	rows := [][]string{
 		{"as one", way(b.Pooled)},
