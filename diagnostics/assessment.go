@@ -180,8 +180,9 @@ type Settings struct {
 	EnergyUnit           string         `json:"energy_unit"`
 	PublishStyle         string         `json:"publish_style"`
 	Assumed              []string       `json:"assumed"`
-	Selection            []string       `json:"selection"` // flags that chose rows and columns
-	Intervals            []string       `json:"intervals"` // methods of the bootstrap
+	Selection            []string       `json:"selection"`  // flags that chose rows and columns
+	Intervals            []string       `json:"intervals"`  // methods of the bootstrap
+	NullDraws            string         `json:"null_draws"` // "full", or "sequential" of many data sets
 }
 
 // Quantity is what was measured.

@@ -73,6 +73,10 @@ func (a *assessor) settings() Settings {
 	if a.resampling != nil {
 		scheme = a.resampling.Scheme
 	}
+	nulls := NullsFull
+	if a.opt.SequentialNull {
+		nulls = NullsSequential
+	}
 	return Settings{
 		Seed: a.opt.Seed, Resamples: a.opt.Resamples, Scheme: scheme,
 		Confidence: a.opt.Confidence, ErrorModel: a.model, ErrorModelWhy: a.modelWhy,
@@ -82,7 +86,7 @@ func (a *assessor) settings() Settings {
 		ReferenceTemperature: a.referenceTemperature(),
 		EnergyUnit:           a.opt.EnergyUnit, PublishStyle: a.publishStyle(),
 		Assumed: orEmpty(a.set.Assumed), Selection: orEmpty(a.opt.Selection),
-		Intervals: orEmpty(a.opt.Intervals),
+		Intervals: orEmpty(a.opt.Intervals), NullDraws: nulls,
 	}
 }
 

@@ -85,6 +85,13 @@ func DefaultOptions() Options {
 	}
 }
 
+// How many draws of the nulls of tests there are: a fixed number, or fewer where p is
+// plainly not small.
+const (
+	NullsFull       = "full"
+	NullsSequential = "sequential"
+)
+
 // The values that settings of words can have, in the order of their help.
 var (
 	Criteria       = []string{"aicc", "aic", "bic"}

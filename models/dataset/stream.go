@@ -89,11 +89,13 @@ func NewStream(name string, r io.ReadSeeker, opt Options) (*Stream, error) {
 	if err != nil {
 		return nil, readFailed(name, err)
 	}
+	undivided := false
 	if size > mostWhole {
 		s, err := newLong(name, r, size, opt)
 		if !errors.Is(err, errWhole) {
 			return s, err
 		}
+		undivided = errors.Is(err, errUndivided)
 		if size > mostUndivided {
 			return nil, Problems{problem(codeTooLong, name, 0, "", fmt.Sprintf("the file has %d MB, and no column tells its data sets apart, or it is not UTF-8", size>>20))}
 		}
@@ -104,6 +106,10 @@ func NewStream(name string, r io.ReadSeeker, opt Options) (*Stream, error) {
 	data, err := io.ReadAll(r)
 	if err != nil {
 		return nil, readFailed(name, err)
+	}
+	// A point takes ten times the memory of its row, and so many could not be assessed.
+	if undivided && bytes.Count(data, []byte("\n")) > mostRows {
+		return nil, Problems{problem(codeTooLong, name, 0, "", fmt.Sprintf("the file has more than %d rows, and no column tells its data sets apart", mostRows))}
 	}
 	t, err := ParseTable(name, data)
 	if err != nil {
@@ -116,8 +122,12 @@ func readFailed(name string, err error) error {
 	return Problems{problem(codeReadFailed, name, 0, "", err.Error())}
 }
 
-// errWhole says that a text cannot be streamed.
-var errWhole = errors.New("dataset: to be read as a whole")
+// errWhole says that a text cannot be streamed, errUndivided that this is since nothing
+// tells data sets apart.
+var (
+	errWhole     = errors.New("dataset: to be read as a whole")
+	errUndivided = fmt.Errorf("%w: one data set", errWhole)
+)
 
 // Stream gives the data sets of a table in memory one after the other.
 func (t *Table) Stream(opt Options) (*Stream, error) {
@@ -552,7 +562,7 @@ func newLong(name string, r io.ReadSeeker, size int64, opt Options) (*Stream, er
 	}
 	dataset := s.divided()
 	if dataset == nil {
-		return nil, errWhole
+		return nil, errUndivided
 	}
 
 	// First pass, over all of it.

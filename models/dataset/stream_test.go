@@ -137,6 +137,26 @@ func TestStreamUndivided(t *testing.T) {
 	}
 }
 
+// A million rows that nothing divides are refused before they are taken apart; rows that
+// are divided are not.
+func TestStreamTooLong(t *testing.T) {
+	rows := strings.Repeat("x,300,1\n", mostRows+1)
+	var ps Problems
+	_, err := NewStream("x.csv", strings.NewReader("note,T/K,k/s^-1\n"+rows), Options{})
+	if !errors.As(err, &ps) || ps[0].Code != codeTooLong || ps[0].Cure == "" {
+		t.Errorf("undivided: %v", err)
+	}
+	s, err := NewStream("x.csv", strings.NewReader("dataset,T/K,k/s^-1\n"+rows+"y,300,1\n"), Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	first, err1 := s.Next()
+	second, err2 := s.Next()
+	if err := errors.Join(err1, err2); err != nil || len(first.Problems) != 1 || first.Problems[0].Code != codeTooLong || second.Set == nil {
+		t.Errorf("divided: %v, %+v and %+v", err, first, second)
+	}
+}
+
 // Where every data set is sound, the stream gives what Read gives, to the last field.
 func TestStreamLikeRead(t *testing.T) {
 	var texts []string

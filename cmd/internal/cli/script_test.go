@@ -20,11 +20,20 @@ import (
 var update = flag.Bool("update", false, "write the outputs that golden cases and the README show anew")
 
 func TestMain(m *testing.M) {
+	if work, ok := children[os.Getenv("ONEBARRIER_TEST_CHILD")]; ok {
+		os.Exit(work())
+	}
 	testscript.Main(m, map[string]func(){
 		"onebarrier": func() {
 			os.Exit(Main(context.Background(), os.Args[1:], os.Stdin, os.Stdout, os.Stderr))
 		},
 	})
+}
+
+// children are what the test binary does in a process of its own, by the value of
+// ONEBARRIER_TEST_CHILD.
+var children = map[string]func() int{
+	"run": func() int { return Main(context.Background(), os.Args[1:], os.Stdin, os.Stdout, os.Stderr) },
 }
 
 const demo = "../../../testdata/demo"

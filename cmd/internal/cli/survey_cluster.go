@@ -247,7 +247,7 @@ func taskFlags(cmd *cobra.Command) []string {
 
 // newSurveyOptions are the defaults of a survey.
 func newSurveyOptions() surveyOptions {
-	o := surveyOptions{assess: assessOptions{assess: diagnostics.DefaultOptions()}}
+	o := surveyOptions{assess: assessOptions{assess: diagnostics.DefaultOptions()}, nulls: diagnostics.NullsSequential}
 	o.assess.assess.Resamples = surveyResamples
 	return o
 }

@@ -14,6 +14,7 @@ import (
 
 	"onebarrier/cmd/internal/report"
 	"onebarrier/cmd/internal/survey"
+	"onebarrier/diagnostics"
 )
 
 // surveyResamples is the default of a survey: shares to a few per cent, for many sets.
@@ -26,6 +27,7 @@ type surveyOptions struct {
 	include, exclude []string
 	dryRun, again    bool
 	shard            string
+	nulls            string // diagnostics.NullsSequential or NullsFull
 }
 
 func newSurveyRun(a *app) *cobra.Command {
@@ -57,9 +59,11 @@ tells why.`,
 	f := cmd.Flags()
 	addStore(cmd, &o.store, false)
 	addSurveyInput(cmd, &o)
+	a.addJSON(cmd)
 	f.BoolVar(&o.dryRun, "dry-run", false, "only read, and count data sets and errors; no store is needed")
 	f.StringVar(&o.shard, "shard", "", "take `part` K of N, such as 3/64, into a store of its own; by default that of a task of a Slurm array")
 	group(f, surveyFiles, "store", "dry-run", "shard")
+	group(f, "for scripts", "json")
 	return cmd
 }
 
@@ -76,6 +80,8 @@ func addSurveyInput(cmd *cobra.Command, o *surveyOptions) {
 	group(f, surveyFiles, "include", "exclude", "again")
 	addSelection(cmd, &o.assess.read)
 	addJudging(cmd, &o.assess)
+	oneOf(cmd, &o.nulls, "null-draws", "of the tests: sequential ends them once p is plainly not small, full draws as many as assess", diagnostics.NullsSequential, diagnostics.NullsFull)
+	group(f, "how the data are judged", "null-draws")
 }
 
 // unsettling are flags that do not decide a result.
@@ -129,7 +135,14 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 	o.assess.read.AllowNonPositiveK = judge.ErrorModel.InK()
 	opt := survey.Options{
 		Paths: paths, Include: o.include, Exclude: o.exclude, Sheet: o.assess.read.sheet,
-		Read: o.assess.read.Options, Assess: judge, Workers: judge.Workers, K: k, N: n,
+		Read: o.assess.read.Options, Assess: judge, FullNulls: o.nulls == diagnostics.NullsFull, Workers: judge.Workers, K: k, N: n,
+	}
+	var others []survey.Running
+	opt.Others = func(at []survey.Running) {
+		others = at
+		for _, r := range at {
+			a.warn("another survey run is at work on %s (%v); both go on and store what they finish, but what both find is assessed twice; stop one of them, or give this one other files or a store of its own", o.store.path, r)
+		}
 	}
 	if places := o.assess.read.leaveOut; len(places) > 0 {
 		opt.LeaveOut = func(file string, all []string) []int { return linesOf(places, file, all) }
@@ -171,7 +184,12 @@ func (a *app) runSurvey(cmd *cobra.Command, paths []string, o *surveyOptions) er
 		}
 		return err
 	}
-	if err := a.writeSurvey(sum, o, k, n, standing); err != nil {
+	if a.json {
+		err = report.JSON(a.out, newSurveyRunDocument(sum, o, k, n, others, standing))
+	} else {
+		err = a.writeSurvey(sum, o, k, n, standing)
+	}
+	if err != nil {
 		return err
 	}
 	if sum.Failed > 0 {

@@ -25,7 +25,10 @@ func newSurveyShow(a *app) *cobra.Command {
 		Long: `show prints what assess prints for one data set, from the store. NAME is the name of
 the data set, its set_id in the table, or its file; --file tells sets of one name
 apart. Of a data set or file that could not be used it prints every problem. Before
-a NAME that begins with a dash write --.`,
+a NAME that begins with a dash write --.
+
+null_draws among the settings of the document (--json) says whether the tests drew
+as many nulls as those of assess do.`,
 		Example: `  onebarrier survey show 'reaction 7' --store results.sqlite
   onebarrier survey show rates --store results.sqlite --json`,
 		Args: exactly(1, "NAME"),
@@ -115,5 +118,19 @@ func (a *app) showSet(cmd *cobra.Command, o *storeFlags, name, file string) erro
 	if err := json.Unmarshal(document, &result); err != nil {
 		return err
 	}
-	return report.WriteAssessment(a.out, &result, nil, a.text())
+	if err := report.WriteAssessment(a.out, &result, nil, a.text()); err != nil {
+		return err
+	}
+	return a.noteNulls(&result)
+}
+
+// noteNulls says why a p is not to the digit that of assess.
+func (a *app) noteNulls(result *diagnostics.Assessment) error {
+	if result.Settings.NullDraws != diagnostics.NullsSequential {
+		return nil
+	}
+	note := fmt.Sprintf("note: from a survey, with %d resamples and seed %d. Draws of the nulls of its tests ended once p was plainly not small (sequential): such a p is exact, but coarser, and may differ from that of assess within chance. survey run --null-draws full draws as many as assess.",
+		result.Settings.Resamples, result.Settings.Seed)
+	_, err := fmt.Fprintf(a.out, "\n%s\n", strings.Join(report.Wrap(note, a.text().Columns()), "\n"))
+	return err
 }

@@ -1,7 +1,10 @@
 package cli
 
 import (
+	"cmp"
+	"context"
 	"fmt"
+	"io"
 	"maps"
 	"slices"
 	"strings"
@@ -22,123 +25,147 @@ func newSurveyStatus(a *app) *cobra.Command {
 how many are curved at a false discovery rate of 5 %, and the errors with the first
 files and lines that have them. It says where a survey is not complete, and how
 many data sets have the same data as another.`,
-		Example: `  onebarrier survey status --store results.sqlite`,
-		Args:    atMost(0, ""),
+		Example: `  onebarrier survey status --store results.sqlite
+  onebarrier survey status --store results.sqlite --json`,
+		Args: atMost(0, ""),
 		RunE: func(cmd *cobra.Command, _ []string) error {
-			return a.surveyStatus(cmd, o)
+			s, err := o.open(cmd)
+			if err != nil {
+				return err
+			}
+			defer s.Close()
+			status, err := statusOf(cmd.Context(), s)
+			if err != nil {
+				return err
+			}
+			if a.json {
+				return report.JSON(a.out, status.document())
+			}
+			return status.write(a.out)
 		},
 	}
 	addStore(cmd, o, true)
+	a.addJSON(cmd)
 	return cmd
 }
 
-func (a *app) surveyStatus(cmd *cobra.Command, o *storeFlags) error {
-	s, err := o.open(cmd)
-	if err != nil {
-		return err
-	}
-	defer s.Close()
+// surveyStatus is what a store holds, counted.
+type surveyStatus struct {
+	path           string
+	number         int   // of the settings in use
+	kept           []int // numbers of all settings
+	settings       survey.Settings
+	shards         []survey.Shard
+	running        []survey.Running
+	sets, files    int
+	states, errors map[string]int          // by verdict, by error code
+	examples       map[string][]survey.Row // the first of each error code
+	tally          survey.Tally
+	standing       survey.Standing
+}
+
+func statusOf(ctx context.Context, s *survey.Store) (*surveyStatus, error) {
+	st := &surveyStatus{path: s.Path(), number: s.Number(), settings: s.Settings(),
+		states: map[string]int{}, errors: map[string]int{}, examples: map[string][]survey.Row{}}
 	all, err := s.AllSettings()
 	if err != nil {
-		return err
+		return nil, err
 	}
-	shards, err := s.Shards()
-	if err != nil {
-		return err
+	st.kept = slices.Sorted(maps.Keys(all))
+	if st.shards, err = s.Shards(); err != nil {
+		return nil, err
+	}
+	if st.running, err = s.Running(); err != nil {
+		return nil, err
 	}
 	const shown = 3 // examples of each error
-	states, errors := map[string]int{}, map[string]int{}
-	examples := map[string][]survey.Row{}
-	n, files, last := 0, 0, ""
-	tally, err := s.Table(cmd.Context(), survey.TableOptions{}, func(r *survey.Row) error {
-		n++
+	last := ""
+	st.tally, err = s.Table(ctx, survey.TableOptions{}, func(r *survey.Row) error {
+		st.sets++
 		if r.SourceFile != last {
-			files, last = files+1, r.SourceFile
+			st.files, last = st.files+1, r.SourceFile
 		}
 		if r.ErrorCode == "" {
-			states[r.State]++
+			st.states[r.State]++
 			return nil
 		}
-		errors[r.ErrorCode]++
-		if e := examples[r.ErrorCode]; len(e) < shown {
-			examples[r.ErrorCode] = append(e, *r)
+		st.errors[r.ErrorCode]++
+		if e := st.examples[r.ErrorCode]; len(e) < shown {
+			st.examples[r.ErrorCode] = append(e, *r)
 		}
 		return nil
 	})
 	if err != nil {
-		return err
+		return nil, err
 	}
-	standing, err := s.Standing(cmd.Context())
-	if err != nil {
-		return err
-	}
+	st.standing, err = s.Standing(ctx)
+	return st, err
+}
+
+// codes lists the error codes, the most frequent first.
+func (s *surveyStatus) codes() []string {
+	return slices.SortedFunc(maps.Keys(s.errors), func(x, y string) int {
+		return cmp.Or(s.errors[y]-s.errors[x], strings.Compare(x, y))
+	})
+}
+
+func (s *surveyStatus) write(w io.Writer) error {
 	var b strings.Builder
-	fmt.Fprintf(&b, "%s: %s of %s\n", o.path, manyOf(n, "data set"), manyOf(files, "file"))
-	if len(all) > 1 {
-		fmt.Fprintf(&b, "settings %d of %s; --settings NUMBER shows others\n", s.Number(), keptSettings(all))
+	fmt.Fprintf(&b, "%s: %s of %s\n", s.path, manyOf(s.sets, "data set"), manyOf(s.files, "file"))
+	if len(s.kept) > 1 {
+		fmt.Fprintf(&b, "settings %d of %s; --settings NUMBER shows others\n", s.number, strings.Trim(strings.ReplaceAll(fmt.Sprint(s.kept), " ", ", "), "[]"))
 	}
 	var settings []string
-	for _, name := range slices.Sorted(maps.Keys(s.Settings())) {
-		settings = append(settings, name+" "+s.Settings()[name])
+	for _, name := range slices.Sorted(maps.Keys(s.settings)) {
+		settings = append(settings, name+" "+s.settings[name])
 	}
 	for _, l := range report.Wrap("settings: "+strings.Join(settings, "; "), 80) {
 		fmt.Fprintln(&b, l)
 	}
-	for _, l := range partLines(shards) {
+	for _, l := range partLines(s.shards) {
 		fmt.Fprintln(&b, l)
 	}
-	for _, sentence := range standing.Sentences() {
+	for _, r := range s.running {
+		fmt.Fprintf(&b, "survey run is at work on it: %v\n", r)
+	}
+	for _, sentence := range s.standing.Sentences() {
 		for _, l := range report.Wrap(sentence, 80) {
 			fmt.Fprintln(&b, l)
 		}
 	}
-	if len(states) > 0 {
+	if len(s.states) > 0 {
 		b.WriteString("\nverdicts, at 5 % for each data set by itself\n")
 		for _, state := range diagnostics.States {
-			if c := states[string(state)]; c > 0 {
+			if c := s.states[string(state)]; c > 0 {
 				fmt.Fprintf(&b, "  %7d  %s\n", c, state)
 			}
 		}
 	}
-	if tally.Testable > 0 {
+	if s.tally.Testable > 0 {
 		b.WriteString("\nat a false discovery rate of 5 %, over ")
-		fmt.Fprintf(&b, "%s that can be tested\n", manyOf(tally.Testable, "data set"))
-		fmt.Fprintf(&b, "  %7d  E changes: survey table --max-q 0.05\n", tally.Found)
-		fmt.Fprintf(&b, "  %7d  by more than a prefactor explains: survey table --max-q-band 0.05\n", tally.FoundBand)
+		fmt.Fprintf(&b, "%s that can be tested\n", manyOf(s.tally.Testable, "data set"))
+		fmt.Fprintf(&b, "  %7d  E changes: survey table --max-q 0.05\n", s.tally.Found)
+		fmt.Fprintf(&b, "  %7d  by more than a prefactor explains: survey table --max-q-band 0.05\n", s.tally.FoundBand)
 	}
-	if len(errors) > 0 {
+	if len(s.errors) > 0 {
 		b.WriteString("\ncould not be used\n")
-		codes := slices.SortedFunc(maps.Keys(errors), func(x, y string) int {
-			if d := errors[y] - errors[x]; d != 0 {
-				return d
-			}
-			return strings.Compare(x, y)
-		})
-		for _, code := range codes {
-			fmt.Fprintf(&b, "  %7d  %s\n", errors[code], code)
-			for _, r := range examples[code] {
+		for _, code := range s.codes() {
+			fmt.Fprintf(&b, "  %7d  %s\n", s.errors[code], code)
+			for _, r := range s.examples[code] {
 				for _, l := range report.Wrap(placeOf(&r)+": "+oneLine(r.Error), 80-11) {
 					fmt.Fprintf(&b, "           %s\n", l)
 				}
 			}
-			if more := errors[code] - len(examples[code]); more > 0 {
+			if more := s.errors[code] - len(s.examples[code]); more > 0 {
 				fmt.Fprintf(&b, "           and %d more\n", more)
 			}
 		}
-		store := report.ShellWord(o.path)
+		store := report.ShellWord(s.path)
 		fmt.Fprintf(&b, "next: onebarrier survey table --store %s --state failed   prints all of them\n", store)
 		fmt.Fprintf(&b, "      onebarrier survey show FILE --store %s   every problem of one\n", store)
 	}
-	_, err = fmt.Fprint(a.out, b.String())
+	_, err := fmt.Fprint(w, b.String())
 	return err
-}
-
-func keptSettings(all map[int]survey.Settings) string {
-	var n []string
-	for _, i := range slices.Sorted(maps.Keys(all)) {
-		n = append(n, fmt.Sprint(i))
-	}
-	return strings.Join(n, ", ")
 }
 
 // placeOf says where a row comes from: file[sheet]:line, data set "name".

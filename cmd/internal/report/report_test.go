@@ -39,7 +39,7 @@ func fixture() *diagnostics.Assessment {
 	return &diagnostics.Assessment{
 		Schema: diagnostics.Schema,
 		Tool:   diagnostics.Tool{Name: "onebarrier", Version: "(devel)"},
-		Settings: diagnostics.Settings{Seed: 1, Resamples: 9999, Scheme: "residual", Confidence: 0.95, ErrorModel: fit.Relative,
+		Settings: diagnostics.Settings{Seed: 1, Resamples: 9999, NullDraws: diagnostics.NullsFull, Scheme: "residual", Confidence: 0.95, ErrorModel: fit.Relative,
 			ErrorModelWhy: "no uncertainties are stated", Replicates: "means", Sources: "offsets", Criterion: "aicc", PrefactorBand: [2]float64{0, 1},
 			ToleranceKJ: 3, Tolerance: "", Models: []string{"straight", "parallel"}, ReferenceTemperature: 298.15, EnergyUnit: "kJ/mol", Intervals: []string{"bootstrap-t"},
 			PublishStyle: "molar", Assumed: []string{"T=degC"}, Selection: []string{"--t-max=400K"}},

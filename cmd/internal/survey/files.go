@@ -21,7 +21,9 @@ type source struct {
 }
 
 // name of the source in the table: the same on every system.
-func (s *source) name() string { return filepath.ToSlash(filepath.Clean(s.path)) }
+func (s *source) name() string { return nameOf(s.path) }
+
+func nameOf(path string) string { return filepath.ToSlash(filepath.Clean(path)) }
 
 // tableKinds are the ends of names of files that may hold data sets.
 var tableKinds = []string{".csv", ".tsv", ".tab", ".dat", ".txt", ".xlsx", ".xlsm"}
@@ -34,6 +36,7 @@ const (
 	skippedExcluded = "excluded"
 	skippedLink     = "links to folders"
 	skippedTwice    = "named twice"
+	skippedLacking  = "without what is asked for" // by --dataset or --sheet
 )
 
 // finder collects the files of a survey.
@@ -42,13 +45,16 @@ type finder struct {
 	found            []source
 	seen             map[string]bool
 	skipped          map[string]int
+	// looked holds the names of folders that were read, and of their columns files:
+	// earlier runs may have found them unreadable.
+	looked map[string]bool
 }
 
 // find lists the files that paths name: files, folders with all that lies below them,
 // patterns. The order is that of the paths, and of names below a folder. What cannot
 // be looked into is a source with a problem.
 func (f *finder) find(paths []string) error {
-	f.seen, f.skipped = map[string]bool{}, map[string]int{}
+	f.seen, f.skipped, f.looked = map[string]bool{}, map[string]int{}, map[string]bool{}
 	if err := checkPatterns(f.include, f.exclude); err != nil {
 		return err
 	}
@@ -120,7 +126,11 @@ func (f *finder) folder(dir, below string, rules []columnRule) {
 	entries, err := os.ReadDir(dir) // in the order of names
 	if err != nil {
 		f.fail(dir, err)
+		if len(entries) == 0 {
+			return
+		}
 	}
+	f.looked[nameOf(dir)], f.looked[nameOf(filepath.Join(dir, ColumnsFile))] = true, true
 	own, problem := readColumnsFile(dir)
 	if problem != nil {
 		f.addSource(source{path: filepath.Join(dir, ColumnsFile), problem: problem})

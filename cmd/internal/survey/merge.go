@@ -401,7 +401,7 @@ func (s *Store) copyFrom(ctx context.Context, from *Store) (n int, err error) {
 // attachTo opens the store as "part" beside another one.
 func (s *Store) attachTo(ctx context.Context, conn *sql.Conn) error {
 	var err error
-	for _, mode := range []string{"rw", "ro"} {
+	for _, mode := range readModes(s.path) {
 		u, e := address(s.path, mode)
 		if e != nil {
 			return e

@@ -11,6 +11,7 @@ import (
 	"fmt"
 	"hash"
 	"io"
+	"maps"
 	"math"
 	"os"
 	"runtime"
@@ -35,12 +36,17 @@ type Options struct {
 	LeaveOut func(file string, all []string) []int
 	// Assess says how data sets are judged; Seed is the master seed.
 	Assess diagnostics.Options
+	// FullNulls draws the nulls of every test to their end, as a single assessment
+	// does. By default draws end once p is plainly not small.
+	FullNulls bool
 
 	Workers int // data sets at once; 0 for one a processor
 	// K and N take part K of N, from 1; 0 of 0 takes all.
 	K, N int
 	// Progress, if not nil, is called now and then.
 	Progress func(Progress)
+	// Others, if not nil, is told which runs are at work on the store already.
+	Others func([]Running)
 
 	judge func(context.Context, *dataset.Set, diagnostics.Options) (*diagnostics.Assessment, error) // diagnostics.Assess if nil
 }
@@ -111,7 +117,7 @@ func Run(ctx context.Context, store *Store, opt Options) (*Summary, error) {
 	if opt.Workers <= 0 {
 		opt.Workers = runtime.GOMAXPROCS(0)
 	}
-	opt.Assess.Workers, opt.Assess.SequentialNull = 1, true
+	opt.Assess.Workers, opt.Assess.SequentialNull = 1, !opt.FullNulls
 	if opt.Assess.Designs == nil { // archives repeat their temperatures
 		opt.Assess.Designs = &diagnostics.DesignCache{Most: 64}
 	}
@@ -130,6 +136,14 @@ func Run(ctx context.Context, store *Store, opt Options) (*Summary, error) {
 		r.total += f.size
 	}
 	if store != nil {
+		others, leave, err := store.enter()
+		if err != nil {
+			return nil, err
+		}
+		defer leave()
+		if len(others) > 0 && opt.Others != nil {
+			opt.Others(others)
+		}
 		if err := store.SetShard(Shard{K: opt.K, N: opt.N}); err != nil {
 			return nil, err
 		}
@@ -169,7 +183,7 @@ func Run(ctx context.Context, store *Store, opt Options) (*Summary, error) {
 	if store == nil {
 		return &r.summary, nil
 	}
-	if err := r.removeStale(files.found); err != nil {
+	if err := r.removeStale(&files); err != nil {
 		return &r.summary, err
 	}
 	return &r.summary, store.SetShard(Shard{K: opt.K, N: opt.N, Sets: r.summary.Mine, Total: r.summary.Sets,
@@ -192,15 +206,54 @@ func (r *runner) readAll(ctx context.Context, files []source) error {
 		r.before += files[i].size
 		r.mu.Unlock()
 	}
+	if r.summary.Sets == 0 && r.summary.Skipped[skippedLacking] > 0 {
+		return r.opt.nowhere()
+	}
 	return nil
+}
+
+// nowhere says that no file holds what --dataset and --sheet ask for.
+func (o *Options) nowhere() dataset.Problems {
+	code, asked := "dataset-unknown", fmt.Sprintf("data set %q", o.Read.Dataset)
+	switch {
+	case o.Read.Dataset == "":
+		code, asked = "sheet-unknown", fmt.Sprintf("sheet %q", o.Sheet)
+	case o.Sheet != "":
+		asked += fmt.Sprintf(" in a sheet %q", o.Sheet)
+	}
+	in := o.Paths[0]
+	if n := len(o.Paths) - 1; n > 0 {
+		in += fmt.Sprintf(" and %d more", n)
+	}
+	return dataset.Problems{{Code: code, File: in, Message: "no file has a " + asked,
+		Cure: "onebarrier inspect FILE lists what a file has; leave the flag out to take all"}}
+}
+
+// lacks reports whether a file, or a sheet of it, is whole and holds nothing of what
+// --dataset and --sheet ask for.
+func (o *Options) lacks(ps dataset.Problems) bool {
+	return len(ps) > 0 && !slices.ContainsFunc(ps, func(p dataset.Problem) bool {
+		return !(p.Code == "dataset-unknown" && o.Read.Dataset != "" || p.Code == "sheet-unknown" && o.Sheet != "")
+	})
 }
 
 // read reads one file. The error is one of the run, not of the file.
 func (r *runner) read(ctx context.Context, f *source, names []string) error {
 	r.summary.Files++
+	lacking, before := false, r.summary.Sets
 	hand := func(sheet string, found dataset.Found) error {
+		if r.opt.lacks(found.Problems) {
+			lacking = true
+			return nil
+		}
 		return r.found(ctx, f, sheet, found)
 	}
+	defer func() {
+		if lacking && r.summary.Sets == before {
+			r.summary.Files--
+			r.summary.Skipped[skippedLacking]++
+		}
+	}()
 	if f.problem != nil {
 		return hand("", dataset.Found{Problems: dataset.Problems{*f.problem}})
 	}
@@ -230,7 +283,8 @@ func (r *runner) tables(f *source, opt dataset.Options, hand func(string, datase
 	if err != nil && err != io.EOF && err != io.ErrUnexpectedEOF {
 		return dataset.Problems{{Code: "read-failed", File: f.path, Message: reason(err).Error(), Cure: "check the disk"}}
 	}
-	if workbook.Is(start[:n]) {
+	// What is in a zip file stands at its end.
+	if start = start[:n]; workbook.Is(start) || bytes.HasPrefix(start, []byte("PK\x03\x04")) {
 		const most = 1 << 30
 		if f.size > most {
 			return dataset.Problems{{Code: "workbook-too-large", File: f.path, Message: fmt.Sprintf("the workbook has %d MB", f.size>>20), Cure: "save the sheet as CSV"}}
@@ -239,7 +293,9 @@ func (r *runner) tables(f *source, opt dataset.Options, hand func(string, datase
 		if err != nil {
 			return dataset.Problems{{Code: "read-failed", File: f.path, Message: reason(err).Error(), Cure: "check the disk"}}
 		}
-		return workbook.Each(f.path, data, r.opt.Sheet, opt, hand)
+		if workbook.Is(data) {
+			return workbook.Each(f.path, data, r.opt.Sheet, opt, hand)
+		}
 	}
 	if r.opt.Sheet != "" {
 		return dataset.Problems{{Code: "sheet-unknown", File: f.path, Message: "--sheet " + r.opt.Sheet + ": a text table has no sheets", Cure: "leave out --sheet"}}
@@ -370,6 +426,9 @@ func (r *Row) failed(ps dataset.Problems) {
 	}
 	p := ps[0]
 	r.ErrorCode, r.Error = p.Code, p.Message
+	if p.Code == "column-unknown" { // of one file that is right; here of many
+		p.Cure += ", settle the headings of a folder in its " + ColumnsFile + ", or pass such files over with --exclude"
+	}
 	if p.Column != "" {
 		r.Error = fmt.Sprintf("column %q: %s", p.Column, p.Message)
 	}
@@ -484,10 +543,10 @@ func (r *runner) write() error {
 
 // removeStale deletes rows of earlier runs whose files were read and no longer hold
 // them.
-func (r *runner) removeStale(files []source) error {
-	visited := make(map[string]bool, len(files))
-	for i := range files {
-		visited[files[i].name()] = true
+func (r *runner) removeStale(files *finder) error {
+	visited := maps.Clone(files.looked)
+	for i := range files.found {
+		visited[files.found[i].name()] = true
 	}
 	stale, err := r.store.without(r.seen, visited)
 	if err != nil || len(stale) == 0 {

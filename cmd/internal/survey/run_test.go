@@ -5,6 +5,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"io"
 	"math/rand/v2"
 	"os"
 	"os/exec"
@@ -14,6 +15,8 @@ import (
 	"time"
 
 	"github.com/xuri/excelize/v2"
+
+	"onebarrier/cmd/internal/report"
 )
 
 // write makes files, by their paths below a folder.
@@ -354,13 +357,17 @@ func TestRunPanic(t *testing.T) {
 	}
 }
 
-// The child of TestKill runs a survey until it is killed or done.
+// The child of TestKill runs a survey until it is killed or done. It says when its store
+// is open.
 func TestMain(m *testing.M) {
 	if dir := os.Getenv("SURVEY_TEST_CHILD"); dir != "" {
 		o := quick(filepath.Join(dir, "data"))
 		s, err := Create(filepath.Join(dir, "s.sqlite"), testSettings)
 		if err == nil {
-			_, err = Run(context.Background(), s, o)
+			fmt.Println("open")
+			o.Others = func(at []Running) { err = fmt.Errorf("told of a run that was killed: %v", at) }
+			_, e := Run(context.Background(), s, o)
+			err = errors.Join(err, e, s.Close())
 		}
 		if err != nil {
 			fmt.Fprintln(os.Stderr, err)
@@ -371,36 +378,64 @@ func TestMain(m *testing.M) {
 	os.Exit(m.Run())
 }
 
-// Killed at random moments, again and again, a survey comes to the same end, and
-// nothing that was once stored is lost.
+// Killed at random moments, again and again, a survey comes to the same end, in rows,
+// assessments and every form of the table, and nothing that was once stored is lost.
 func TestKill(t *testing.T) {
-	kills := 50
+	kills := 60
 	if testing.Short() {
 		kills = 3
 	}
 	dir := t.TempDir()
-	writeFiles(t, dir, map[string]string{"data/long.csv": string(longArchive(400)), "data/bad.csv": "T/K,k/s^-1\n300,x\n"})
+	writeFiles(t, dir, map[string]string{"data/long.csv": string(longArchive(150)), "data/bad.csv": "T/K,k/s^-1\n300,x\n"})
+	all := func(s *Store) string {
+		var b bytes.Buffer
+		b.WriteString(everything(t, s))
+		for _, format := range TableFormats {
+			if err := s.WriteTable(context.Background(), &b, format, TableOptions{}, report.Text{}); err != nil {
+				t.Fatal(err)
+			}
+		}
+		return b.String()
+	}
+	begun := time.Now()
 	s, _ := runIn(t, filepath.Join(dir, "whole.sqlite"), quick(filepath.Join(dir, "data")))
-	want := everything(t, s)
+	took := time.Since(begun)
+	want := all(s)
 	rng := rand.New(rand.NewPCG(uint64(time.Now().UnixNano()), 0))
 	store := filepath.Join(dir, "s.sqlite")
-	stored, inside := 0, 0
+	const early = 10 // kills that may come before there is a store
+	stored, inside, ends, lost := 0, 0, 0, 0
 	for done := 0; done < kills; {
 		cmd := exec.Command(os.Args[0])
 		cmd.Env = append(os.Environ(), "SURVEY_TEST_CHILD="+dir)
-		var out bytes.Buffer
-		cmd.Stderr = &out
-		if err := cmd.Start(); err != nil {
+		var said bytes.Buffer
+		cmd.Stderr = &said
+		out, err := cmd.StdoutPipe()
+		if err == nil {
+			err = cmd.Start()
+		}
+		if err != nil {
 			t.Fatal(err)
 		}
-		timer := time.AfterFunc(time.Duration(rng.IntN(250))*time.Millisecond, func() { cmd.Process.Kill() })
-		err := cmd.Wait()
+		within := took
+		if done >= early {
+			// A moment of the run itself, however long the process took to start.
+			if _, err := out.Read(make([]byte, 1)); err != nil {
+				t.Fatalf("after %d kills: %v, %s", done, err, said.String())
+			}
+		} else {
+			within = 50 * time.Millisecond
+		}
+		timer := time.AfterFunc(time.Duration(rng.Int64N(int64(within))), func() { cmd.Process.Kill() })
+		_, _ = io.Copy(io.Discard, out)
+		err = cmd.Wait()
 		timer.Stop()
 		var exit *exec.ExitError
 		switch {
 		case err == nil: // done: compare, and begin anew
 			inside = 0
-			if got := everything(t, openStore(t, store)); got != want {
+			ends++
+			if all(openStore(t, store)) != want {
 				t.Fatalf("after %d kills: other rows", done)
 			}
 			for _, end := range []string{"", "-wal", "-shm"} {
@@ -409,16 +444,18 @@ func TestKill(t *testing.T) {
 			stored = 0
 			continue
 		case errors.As(err, &exit) && exit.ExitCode() == 1:
-			t.Fatalf("after %d kills: %s", done, out.String())
+			t.Fatalf("after %d kills: %s", done, said.String())
 		}
 		done++
 		inside++
 		if _, err := os.Stat(store); err != nil {
+			lost++
 			continue // killed before there was one
 		}
 		s, err := Open(store)
 		if err != nil {
-			if inside == 1 {
+			if inside <= early {
+				lost++
 				continue // before its tables were there
 			}
 			t.Fatalf("after %d kills: %v", done, err)
@@ -430,10 +467,14 @@ func TestKill(t *testing.T) {
 		}
 		stored = n
 	}
+	if kills-lost < kills-early {
+		t.Errorf("%d of %d kills came before there was a store", lost, kills)
+	}
+	t.Logf("%d kills, %d of them before there was a store; %d runs came to their end between", kills, lost, ends)
 	if _, sum := runIn(t, store, quick(filepath.Join(dir, "data"))); sum.Known < stored {
 		t.Errorf("%d rows were stored, %d are known", stored, sum.Known)
 	}
-	if got := everything(t, openStore(t, store)); got != want {
+	if all(openStore(t, store)) != want {
 		t.Error("after all kills: other rows")
 	}
 }

@@ -178,10 +178,7 @@ func OpenSettings(path string, choice int) (*Store, error) {
 	if _, err := os.Stat(path); err != nil {
 		return nil, fmt.Errorf("survey: the store %s cannot be opened: %w; survey run makes one", path, reason(err))
 	}
-	s, err := open(path, "rw")
-	if err != nil && isReadOnly(err) {
-		s, err = open(path, "ro")
-	}
+	s, err := openToRead(path)
 	if err != nil {
 		return nil, err
 	}
@@ -192,12 +189,33 @@ func OpenSettings(path string, choice int) (*Store, error) {
 	return s, nil
 }
 
+// openToRead opens a store that may lie where nothing can be written.
+func openToRead(path string) (s *Store, err error) {
+	for _, mode := range readModes(path) {
+		if s, err = open(path, mode); err == nil || !isReadOnly(err) {
+			return s, err
+		}
+	}
+	return nil, err
+}
+
+// readModes are the modes of address to try one after the other. A store in a folder
+// that cannot be written to can be read as it is where no run has left its last
+// transactions beside it, in a file that SQLite would have to work in.
+func readModes(path string) []string {
+	if left, err := os.Stat(path + "-wal"); err == nil && left.Size() > 0 {
+		return []string{"rw", "ro"}
+	}
+	return []string{"rw", "ro", "ro&immutable=1"}
+}
+
 func isReadOnly(err error) bool {
 	var e *sqlite.Error
 	return errors.As(err, &e) && (e.Code()&0xff == sqlite3.SQLITE_READONLY || e.Code()&0xff == sqlite3.SQLITE_CANTOPEN)
 }
 
-// address is how SQLite is told to open a file: mode is ro, rw or rwc.
+// address is how SQLite is told to open a file: mode is ro, rw or rwc, or one of
+// readModes.
 func address(path, mode string) (*url.URL, error) {
 	abs, err := filepath.Abs(path)
 	if err != nil {
@@ -227,6 +245,15 @@ func open(path, mode string) (*Store, error) {
 	}
 	if err := s.check(mode == "rwc"); err != nil {
 		s.db.Close()
+		if mode != "rwc" && isReadOnly(err) {
+			f, e := os.Open(path)
+			if e != nil {
+				return nil, fmt.Errorf("survey: the store %s cannot be opened: %w; check your right to read it", path, reason(e))
+			}
+			f.Close() // no connection is left whose locks this would take away
+			return nil, fmt.Errorf("survey: the store %s cannot be opened where it is: a run that was cut off has left %s-wal, or it is in use; copy both into a folder you can write to (%w)",
+				path, filepath.Base(path), err)
+		}
 		return nil, s.explain(err)
 	}
 	return s, nil
@@ -251,8 +278,8 @@ func (s *Store) check(mayMake bool) error {
 	case id == applicationID && version > storeVersion:
 		return fmt.Errorf("its layout is version %d, and this program knows %d; use the program that made it, or a newer one", version, storeVersion)
 	case id == applicationID:
-		return nil
-	case id != 0 || tables > 0 || !mayMake:
+		return s.whole()
+	case id != 0 || tables > 0 || !mayMake || s.tooShort():
 		return fmt.Errorf("%w; name a new file, or one that survey run made", ErrNoStore)
 	}
 	if _, err := s.db.Exec("PRAGMA journal_mode = WAL"); err != nil {
@@ -267,6 +294,33 @@ func (s *Store) check(mayMake bool) error {
 		return err
 	})
 }
+
+// tooShort reports whether a file that is not empty is shorter than the least page of
+// SQLite, which would write over some of these. It is not opened: closing it would
+// take away the locks of other connections.
+func (s *Store) tooShort() bool {
+	info, err := os.Stat(s.path)
+	return err == nil && info.Size() > 0 && info.Size() < 512
+}
+
+// whole refuses a file that was cut within its last page, which SQLite would fill up
+// with zeros. A page that is half written there after a crash is in the -wal file.
+func (s *Store) whole() error {
+	var page int64
+	if err := s.db.QueryRow("PRAGMA page_size").Scan(&page); err != nil {
+		return err
+	}
+	info, err := os.Stat(s.path)
+	if err != nil {
+		return reason(err)
+	}
+	if left, err := os.Stat(s.path + "-wal"); err == nil && left.Size() > 0 || info.Size()%page == 0 {
+		return nil
+	}
+	return errors.New("the file is cut short; " + cureDamaged)
+}
+
+const cureDamaged = "take a copy of it from before, or name a new store"
 
 // begin finds or adds the settings.
 func (s *Store) begin(settings Settings, again bool) error {
@@ -638,14 +692,17 @@ func (s *Store) explain(err error) error {
 	if !errors.As(err, &e) {
 		return fmt.Errorf("survey: the store %s: %w", s.path, err)
 	}
-	what := ""
-	switch e.Code() & 0xff {
+	what, code := "", e.Code()&0xff
+	if e.Code() == sqlite3.SQLITE_IOERR_SHMSIZE { // the file that connections share cannot grow
+		code = sqlite3.SQLITE_FULL
+	}
+	switch code {
 	case sqlite3.SQLITE_FULL:
 		what = "the disk is full; free space and give the same command again: what was finished is kept"
 	case sqlite3.SQLITE_NOTADB:
 		return fmt.Errorf("survey: the store %s: %w; name a new file, or one that survey run made", s.path, ErrNoStore)
 	case sqlite3.SQLITE_CORRUPT:
-		what = "the file is damaged or cut short; take a copy of it from before, or name a new store"
+		what = "the file is damaged or cut short; " + cureDamaged
 	case sqlite3.SQLITE_READONLY:
 		what = "it cannot be written to; name a store in a folder you can write to"
 	case sqlite3.SQLITE_CANTOPEN:
