@@ -322,10 +322,19 @@ func (b *SecondBarrierTest) criticals() *[2]float64 {
 }
 
 func (b *SecondBarrierTest) findCritical(pairs int) [2]float64 {
-	sorted := slices.Clone(b.draws(pairs)[:2*pairs])
-	slices.Sort(sorted)
 	allowed := int(math.Ceil(secondBarrierLevel*float64(2*pairs+2))) - 2
-	return [2]float64{sorted[len(sorted)-1-allowed], sorted[len(sorted)-allowed]}
+	top := make([]float64, 0, allowed+2) // the largest, in order: the rest need no sorting
+	for _, s := range b.draws(pairs)[:2*pairs] {
+		if len(top) > allowed {
+			if s <= top[0] {
+				continue
+			}
+			top = slices.Delete(top, 0, 1)
+		}
+		at, _ := slices.BinarySearch(top, s)
+		top = slices.Insert(top, at, s)
+	}
+	return [2]float64{top[0], top[1]}
 }
 
 // pValue is exact: under one barrier the data and their mirror image are one more

@@ -306,7 +306,7 @@ func (r *fastRefitter) screen(fine *cover, w *workspace, sc *shapedCandidate, li
 		return math.Inf(1), HowScreened, true
 	}
 	if r.params[sc.index] > 0 {
-		r.search.keep(fine, r.leads)
+		r.search.keep(r.plan, r.leads)
 		return 0, HowCold, false
 	}
 	leads := r.leads

@@ -32,10 +32,12 @@ type plan struct {
 	nodes     []node
 	shapes    []quad // projected whitened shapes of the nodes, N rows for each four
 
-	noded, covered sync.Once // what is made when first asked for
-	coarse, fine   *cover
-	holding        sync.Mutex
-	held           map[heldLine]*plan // with another projector, for profiles
+	noded, covered, compared sync.Once // what is made when first asked for
+
+	coarse, fine *cover
+	toFine       []int // shape of fine nearest to each node
+	holding      sync.Mutex
+	held         map[heldLine]*plan // with another projector, for profiles
 }
 
 // node is a starting point of the cold search.
@@ -284,15 +286,16 @@ func (p *plan) newSearch() *search {
 }
 
 // keep leaves only the nodes near a lead to the search.
-func (s *search) keep(c *cover, leads []lead) {
+func (s *search) keep(p *plan, leads []lead) {
+	nearest := p.nearest()
 	if s.skip == nil {
-		s.skip, s.pass = make([]bool, len(c.nodes)), make([]bool, len(c.shapes))
+		s.skip, s.pass = make([]bool, len(nearest)), make([]bool, len(p.fine.shapes))
 	}
 	clear(s.pass)
 	for _, l := range leads {
 		s.pass[l.shape] = true
 	}
-	for j, k := range c.nodes {
+	for j, k := range nearest {
 		s.skip[j] = !s.pass[k]
 	}
 }

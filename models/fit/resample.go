@@ -336,8 +336,29 @@ type cover struct {
 	cos, sin  float64    // of the slack
 	near      float64    // least cosine at which a shape of the grid counts as covered
 	last      int        // shape last used
-	nodes     []int      // shape nearest to each node of the cold search
 	members   [][]member // of fine: shapes of the grid near each one
+}
+
+// nearest are the shapes of the fine cover nearest to each node of the cold search.
+func (p *plan) nearest() []int {
+	p.compared.Do(func() {
+		_, fine := p.covers()
+		n := len(p.rows)
+		v := make([]float64, n)
+		p.toFine = make([]int, len(p.nodes))
+		for j := range p.nodes {
+			for i := range v {
+				v[i] = p.shapes[j/4*n+i][j%4]
+			}
+			most := math.Inf(-1)
+			for k, s := range fine.shapes {
+				if x := dot(s, v); x > most {
+					most, p.toFine[j] = x, k
+				}
+			}
+		}
+	})
+	return p.toFine
 }
 
 const (
@@ -388,18 +409,6 @@ func (p *plan) newCovers() (coarse, fine *cover) {
 			c.high[j] *= gridLength
 		}
 		c.quads = quads(c.shapes, n)
-	}
-	fine.nodes = make([]int, len(p.nodes))
-	for j := range p.nodes {
-		for i := range v {
-			v[i] = p.shapes[j/4*n+i][j%4]
-		}
-		most := math.Inf(-1)
-		for k, s := range fine.shapes {
-			if x := dot(s, v); x > most {
-				most, fine.nodes[j] = x, k
-			}
-		}
 	}
 	return coarse, fine
 }
@@ -464,7 +473,7 @@ func (c *cover) find(v []float64, least float64) int {
 
 // grid is the fine grid of shapes of newCovers.
 func (p *plan) grid() []node {
-	var g []node
+	g := make([]node, 0, 2048)
 	gap := p.gaps()
 	for v := gridStart; ; v *= math.Sqrt2 {
 		dd := math.Min(v, p.maxD)
