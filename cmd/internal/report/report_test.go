@@ -64,7 +64,7 @@ func fixture() *diagnostics.Assessment {
 			SecondBarrier: &diagnostics.SecondBarrier{Statistic: 5.1, PValue: 0.0004, Draws: 19999, Crossover: [2]diagnostics.Real{301, 322}, WithoutEnds: diagnostics.WithoutEnds{PWithoutTMax: 0.3, PWithoutTMin: nan}},
 			ELocTMin:      est(40, 2, 36, 44), ELocTMax: est(58, 2, 54, 62)},
 		Ranking: []diagnostics.Ranked{
-			{Family: "parallel", Curve: "parallel", Status: "ranked", Params: 4, Points: 7, LogLik: 80.1, RSS: 0.001, Chi2: nan, Sigma: 0.02, AIC: -150.2, AICc: -110.2, BIC: -151,
+			{Family: "parallel", Curve: "parallel", Status: "ranked", Params: 4, Points: 8, LogLik: 80.1, RSS: 0.001, Chi2: nan, Sigma: 0.02, AIC: -150.2, AICc: -110.2, BIC: -151,
 				Delta: 0, FamWeight: 0.93, Weight: 0.93, InSet: true, RepeatShare: 0.81, Adequacy: []diagnostics.Adequacy{{Test: "runs", Statistic: 4, PValue: 0.7}}, Adequate: ptr(true),
 				Forms: []diagnostics.FormEstimate{{Model: "parallel-barriers", TRef: nan, Parameters: []diagnostics.ParameterEstimate{
 					param("ln_A1", "s^-1", unknown), param("E1", "kJ mol^-1", open), param("ln_A2", "s^-1", est(24.31, 0.62, 22, 26)), param("E2", "kJ mol^-1", est(71.22, 1.1, 68, 74)), param("T_x", "K", est(311.2, 4.4, 300, 322))},

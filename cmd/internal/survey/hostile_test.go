@@ -215,7 +215,7 @@ func TestRunAskedFor(t *testing.T) {
 	o := quick(".")
 	o.Read.Dataset = "x"
 	s, sum := runIn(t, "x.sqlite", o)
-	if got, want := found(s), "a.csv:x, c.csv:x not-a-number, d.csv: no-temperature, f/p.csv:x/k_1/s^-1, f/p.csv:x/k_2/s^-1"; got != want {
+	if got, want := found(s), "a.csv:x, c.csv:x not-a-number, d.csv: no-data, f/p.csv:x/k_1/s^-1, f/p.csv:x/k_2/s^-1"; got != want {
 		t.Errorf("found %s\nwant %s", got, want)
 	}
 	if sum.Skipped[skippedLacking] != 4 || sum.Files != 4 || sum.Sets != 5 || !sum.Complete {

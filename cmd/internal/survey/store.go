@@ -266,9 +266,9 @@ func (s *Store) check(mayMake bool) error {
 		text string
 		to   *int
 	}{
+		{"SELECT count(*) FROM sqlite_schema", &tables}, // first: the marks come with the tables
 		{"PRAGMA application_id", &id},
 		{"PRAGMA user_version", &version},
-		{"SELECT count(*) FROM sqlite_schema", &tables},
 	} {
 		if err := s.db.QueryRow(q.text).Scan(q.to); err != nil {
 			return err
