@@ -6,7 +6,6 @@ import (
 	"crypto/sha256"
 	"encoding/binary"
 	"encoding/hex"
-	"encoding/json"
 	"errors"
 	"fmt"
 	"hash"
@@ -20,6 +19,7 @@ import (
 	"sync"
 	"time"
 
+	"onebarrier/cmd/internal/report"
 	"onebarrier/cmd/internal/workbook"
 	"onebarrier/diagnostics"
 	"onebarrier/models/dataset"
@@ -445,7 +445,7 @@ func (r *Row) failed(ps dataset.Problems) {
 
 // work assesses data sets until there are no more.
 func (r *runner) work() {
-	var buf bytes.Buffer
+	var buf []byte
 	for j := range r.jobs {
 		if j.set != nil {
 			r.assess(&j, &buf)
@@ -458,7 +458,7 @@ func (r *runner) work() {
 }
 
 // assess fills the entry of a data set. A fault of the program is an error of its row.
-func (r *runner) assess(j *job, buf *bytes.Buffer) {
+func (r *runner) assess(j *job, buf *[]byte) {
 	defer func() {
 		if v := recover(); v != nil {
 			what, _, _ := strings.Cut(fmt.Sprint(v), "\n")
@@ -487,13 +487,10 @@ func (r *runner) assess(j *job, buf *bytes.Buffer) {
 		return
 	}
 	row.assessed(a)
-	buf.Reset()
-	enc := json.NewEncoder(buf)
-	enc.SetEscapeHTML(false)
-	if err := enc.Encode(a); err != nil {
+	if *buf, err = report.AppendJSON((*buf)[:0], a); err != nil {
 		panic(err) // unknown numbers are null: a bug
 	}
-	j.entry.Assessment = bytes.Clone(buf.Bytes())
+	j.entry.Assessment = bytes.Clone(*buf)
 }
 
 // Entries are written in transactions of so many, or what there is after so long.
