@@ -108,8 +108,8 @@ func rankingDiffers(curve, why string) Finding {
 
 // secondBarrierFound reports a second-barrier test with p < 0.05. Limits take no part in
 // that test: where two paths are excluded with them, no second path is claimed. The ranking tells
-// whether power-prefactor describes the data better than two paths.
-func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Finding {
+// whether another curve describes the data better than two paths.
+func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked, recommended string) []Finding {
 	low, high := s.Range()
 	where := ""
 	if text := b.CrossoverText(low, high); text != "" {
@@ -122,8 +122,8 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Fin
 		approximate = " (approximate: linearised about the straight line)"
 	}
 	still := ""
-	if ranksAbove(ranking, models.PowerPrefactor{}, models.Parallel{}) {
-		still = " (the power-prefactor curve describes them better still)"
+	if better := betterThanTwoPaths(ranking, recommended); better != "" {
+		still = " (the " + better + " curve describes them better still)"
 	}
 	rate := "7 to 8 %"
 	if s.DistinctT() <= minTemperatures {
@@ -164,12 +164,21 @@ func secondBarrierFound(b *SecondBarrier, s *fit.Sample, ranking []Ranked) []Fin
 	return fs
 }
 
+// betterThanTwoPaths is the curve that bends and is ranked before parallel: the recommended
+// one, or power-prefactor; "" where there is none.
+func betterThanTwoPaths(ranking []Ranked, recommended string) string {
+	for _, curve := range []string{recommended, models.PowerPrefactor{}.Info().Name} {
+		if curve != models.Straight().Info().Name && ranksAbove(ranking, curve, models.Parallel{}.Info().Name) {
+			return curve
+		}
+	}
+	return ""
+}
+
 // ranksAbove reports whether both curves are ranked, and a before b.
-func ranksAbove(ranking []Ranked, a, b models.Curve) bool {
-	at := func(c models.Curve) int {
-		return slices.IndexFunc(ranking, func(r Ranked) bool {
-			return r.Curve == c.Info().Name && r.Status == StatusRanked
-		})
+func ranksAbove(ranking []Ranked, a, b string) bool {
+	at := func(curve string) int {
+		return slices.IndexFunc(ranking, func(r Ranked) bool { return r.Curve == curve && r.Status == StatusRanked })
 	}
 	first, second := at(a), at(b)
 	return first >= 0 && second > first

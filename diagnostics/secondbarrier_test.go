@@ -191,23 +191,27 @@ func TestSecondBarrierRestsOnAnEnd(t *testing.T) {
 	if !(r.PValue < 0.05 && r.WithoutEnds.PWithoutTMax > 0.20) {
 		t.Fatalf("p = %g, without T_max %g", r.PValue, r.WithoutEnds.PWithoutTMax)
 	}
-	// Better still is only a curve that ranks above.
-	const still = "(the power-prefactor curve describes them better still)"
+	// Better still is only a curve that bends and ranks above: the recommended one first.
 	power, parallel := Ranked{Curve: "power-prefactor", Status: StatusRanked}, Ranked{Curve: "parallel", Status: StatusRanked}
 	for _, c := range []struct {
-		ranking []Ranked
-		want    bool
+		ranking     []Ranked
+		recommended string
+		want        string
 	}{
-		{[]Ranked{power, parallel}, true},
-		{[]Ranked{parallel, power}, false},
-		{[]Ranked{power, {Curve: "parallel", Status: StatusExcluded}}, false},
-		{[]Ranked{parallel}, false},
+		{[]Ranked{power, parallel}, "power-prefactor", "power-prefactor"},
+		{[]Ranked{power, parallel}, "straight", "power-prefactor"},
+		{[]Ranked{parallel, power}, "", ""},
+		{[]Ranked{power, {Curve: "parallel", Status: StatusExcluded}}, "", ""},
+		{[]Ranked{parallel}, "parallel", ""},
+		{[]Ranked{{Curve: "vogel", Status: StatusRanked}, parallel, power}, "vogel", "vogel"},
+		{[]Ranked{{Curve: "straight", Status: StatusRanked}, parallel, power}, "straight", ""},
 	} {
-		if got := strings.Contains(secondBarrierFound(r, s, c.ranking)[0].Message, still); got != c.want {
-			t.Errorf("%+v: better still is %t", c.ranking, got)
+		message := secondBarrierFound(r, s, c.ranking, c.recommended)[0].Message
+		if strings.Contains(message, "better still") != (c.want != "") || !strings.Contains(message, c.want) {
+			t.Errorf("%+v: %q", c.ranking, message)
 		}
 	}
-	fs := secondBarrierFound(r, s, nil)
+	fs := secondBarrierFound(r, s, nil, "")
 	if len(fs) != 2 || fs[1].Code != "second-barrier-rests-on-end" || !strings.Contains(fs[1].Message, "340 K") {
 		t.Errorf("%+v", fs)
 	}

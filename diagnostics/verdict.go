@@ -246,7 +246,7 @@ func Decide(in VerdictInput) (Verdict, []Finding) {
 	})
 	add(in.PerMolecule && !in.Untestable && in.Rule.Band[1] < 3, func() Finding { return bandNarrow(in.Rule.Band) })
 	if b := in.SecondBarrier; b.found() {
-		fs = append(fs, secondBarrierFound(b, in.Sample, in.Ranking)...)
+		fs = append(fs, secondBarrierFound(b, in.Sample, in.Ranking, v.RecommendedCurve)...)
 	}
 	add(why != "", func() Finding { return rankingDiffers(v.RecommendedCurve, why) })
 	add(v.State.Curved() && v.RecommendedCurve != "", func() Finding {
