@@ -32,7 +32,7 @@ where it was when the same command is given again.`,
 			return unknownName("command of survey", args[0], names, "onebarrier survey --help lists them")
 		},
 	}
-	cmd.AddCommand(newSurveyRun(a), newSurveyShow(a), newSurveyStatus(a), newSurveyMerge(a), newSurveySlurm(a), newSurveyTable(a), newSurveyFigure(a))
+	cmd.AddCommand(newSurveyRun(a), newSurveyShow(a), newSurveyStatus(a), newSurveyMerge(a), newSurveySlurm(a), newSurveyTable(a), newSurveyFigure(a), newSurveyReport(a))
 	return cmd
 }
 

@@ -1,6 +1,7 @@
 package cli
 
 import (
+	"context"
 	"fmt"
 	"path/filepath"
 	"strconv"
@@ -51,8 +52,18 @@ func (a *app) surveyFigure(cmd *cobra.Command, o *surveyFigureOptions) error {
 	if err := writable(o.folder); err != nil {
 		return err
 	}
+	path, err := a.drawSurvey(cmd.Context(), s, o.folder, o.figure)
+	if err != nil {
+		return err
+	}
+	_, err = fmt.Fprintln(a.out, path)
+	return err
+}
+
+// drawSurvey writes the picture of a store into a folder and returns its path.
+func (a *app) drawSurvey(ctx context.Context, s *survey.Store, folder string, opt figure.Options) (path string, err error) {
 	var sets []figure.SurveySet
-	_, err = s.Table(cmd.Context(), survey.TableOptions{}, func(r *survey.Row) error {
+	_, err = s.Table(ctx, survey.TableOptions{}, func(r *survey.Row) error {
 		name := r.Dataset
 		if name == "" {
 			name = r.SourceFile
@@ -64,28 +75,23 @@ func (a *app) surveyFigure(cmd *cobra.Command, o *surveyFigureOptions) error {
 		return nil
 	})
 	if err != nil {
-		return err
+		return "", err
 	}
 	confidence, err := strconv.ParseFloat(s.Confidence(), 64)
 	if err != nil {
-		return fmt.Errorf("the store %s has the confidence %q, which is no number", o.store.path, s.Confidence())
+		return "", fmt.Errorf("the store %s has the confidence %q, which is no number", s.Path(), s.Confidence())
 	}
 	d, err := figure.NewSurvey(sets, confidence)
 	if err != nil {
-		return err
+		return "", err
 	}
-	standing, err := s.Standing(cmd.Context())
+	standing, err := s.Standing(ctx)
 	if err != nil {
-		return err
+		return "", err
 	}
 	d.Incomplete = !standing.Complete()
 	for _, sentence := range standing.Sentences() {
 		a.warn("%s", sentence)
 	}
-	path, err := figure.WriteSurvey(o.folder, filepath.Base(o.store.path), d, o.figure)
-	if err != nil {
-		return err
-	}
-	_, err = fmt.Fprintln(a.out, path)
-	return err
+	return figure.WriteSurvey(folder, filepath.Base(s.Path()), d, opt)
 }

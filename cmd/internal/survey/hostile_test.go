@@ -9,6 +9,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"maps"
 	"os"
 	"path/filepath"
 	"slices"
@@ -26,7 +27,8 @@ func book(t testing.TB, path string, parts map[string]string, fill func(io.Write
 	var b bytes.Buffer
 	z := zip.NewWriter(&b)
 	all := map[string]string{
-		"[Content_Types].xml":        `<Types xmlns="http://schemas.openxmlformats.org/package/2006/content-types"/>`,
+		"[Content_Types].xml": `<Types xmlns="http://schemas.openxmlformats.org/package/2006/content-types"/>`,
+
 		"_rels/.rels":                `<Relationships><Relationship Id="a" Type="http://x/officeDocument" Target="xl/workbook.xml"/></Relationships>`,
 		"xl/workbook.xml":            `<workbook xmlns:r="r"><sheets><sheet name="Rates" r:id="b"/></sheets></workbook>`,
 		"xl/_rels/workbook.xml.rels": `<Relationships><Relationship Id="b" Type="http://x/worksheet" Target="worksheets/sheet1.xml"/></Relationships>`,
@@ -34,7 +36,10 @@ func book(t testing.TB, path string, parts map[string]string, fill func(io.Write
 	for name, text := range parts {
 		all[name] = text
 	}
-	for name, text := range all {
+	// The list of types stands last, as many programs write it.
+	names := append(slices.Sorted(maps.Keys(all))[1:], "[Content_Types].xml")
+	for _, name := range names {
+		text := all[name]
 		w, err := z.Create(name)
 		if err != nil {
 			t.Fatal(err)
@@ -199,7 +204,7 @@ func TestRunAskedFor(t *testing.T) {
 		"a.csv":         "dataset,T/K,k/s^-1\nx,300,1\nx,310,2.1\nx,320,4.2\ny,300,?\ny,310,2\n",
 		"b.csv":         good,
 		"c.csv":         "dataset,T/K,k/s^-1\nx,300,oops\n",
-		"d.csv":         "not a table\n",
+		"d.csv":         "x,k/s^-1\n1,2\n2,3\n",
 		"e.csv":         "T/K,k_1/s^-1,k_2/s^-1\n300,1,2\n310,2,5\n",
 		"f/p.csv":       "dataset,T/K,k_1/s^-1,k_2/s^-1\nx,300,1,2\nx,310,2,5\n",
 		"f/nothing.csv": "dataset,T/K,k_1/s^-1,k_2/s^-1\nz,300,1,2\nz,310,2,5\n",
