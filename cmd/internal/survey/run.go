@@ -144,6 +144,8 @@ func Run(ctx context.Context, store *Store, opt Options) (*Summary, error) {
 		if len(others) > 0 && opt.Others != nil {
 			opt.Others(others)
 		}
+		store.forget(true)
+		defer store.forget(false)
 		if err := store.SetShard(Shard{K: opt.K, N: opt.N}); err != nil {
 			return nil, err
 		}

@@ -85,6 +85,8 @@ type Store struct {
 	mu   sync.Mutex
 	done map[Key]Content // loaded by Done; nil before
 	bad  map[Key]string  // error codes of those that failed, likewise
+
+	forgets bool // see forget
 }
 
 // ErrNoStore is the error of a file that is no store.
@@ -399,6 +401,14 @@ func (s *Store) AllSettings() (map[int]Settings, error) {
 	return all, s.explain(rows.Err())
 }
 
+// forget says whether Done need not tell of rows that are put later, as for a run, which
+// asks for each data set once: their keys are half of what a run keeps in memory.
+func (s *Store) forget(yes bool) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	s.done, s.forgets = nil, yes
+}
+
 // Done reports whether a data set of this content is in the store. The first call
 // reads all keys. Rows that are put later count too.
 func (s *Store) Done(key Key, content Content) (bool, error) {
@@ -513,6 +523,9 @@ func (s *Store) Put(entries []Entry) error {
 	if s.done != nil {
 		for i := range entries {
 			e := &entries[i]
+			if _, old := s.done[e.Key]; s.forgets && !old {
+				continue
+			}
 			s.done[e.Key] = e.Content
 			if delete(s.bad, e.Key); e.Row.ErrorCode != "" {
 				s.bad[e.Key] = e.Row.ErrorCode
