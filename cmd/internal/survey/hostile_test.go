@@ -27,8 +27,7 @@ func book(t testing.TB, path string, parts map[string]string, fill func(io.Write
 	var b bytes.Buffer
 	z := zip.NewWriter(&b)
 	all := map[string]string{
-		"[Content_Types].xml": `<Types xmlns="http://schemas.openxmlformats.org/package/2006/content-types"/>`,
-
+		"[Content_Types].xml":        `<Types xmlns="http://schemas.openxmlformats.org/package/2006/content-types"/>`,
 		"_rels/.rels":                `<Relationships><Relationship Id="a" Type="http://x/officeDocument" Target="xl/workbook.xml"/></Relationships>`,
 		"xl/workbook.xml":            `<workbook xmlns:r="r"><sheets><sheet name="Rates" r:id="b"/></sheets></workbook>`,
 		"xl/_rels/workbook.xml.rels": `<Relationships><Relationship Id="b" Type="http://x/worksheet" Target="worksheets/sheet1.xml"/></Relationships>`,
@@ -220,7 +219,7 @@ func TestRunAskedFor(t *testing.T) {
 	o := quick(".")
 	o.Read.Dataset = "x"
 	s, sum := runIn(t, "x.sqlite", o)
-	if got, want := found(s), "a.csv:x, c.csv:x not-a-number, d.csv: no-data, f/p.csv:x/k_1/s^-1, f/p.csv:x/k_2/s^-1"; got != want {
+	if got, want := found(s), "a.csv:x, c.csv:x not-a-number, d.csv: no-temperature, f/p.csv:x/k_1/s^-1, f/p.csv:x/k_2/s^-1"; got != want {
 		t.Errorf("found %s\nwant %s", got, want)
 	}
 	if sum.Skipped[skippedLacking] != 4 || sum.Files != 4 || sum.Sets != 5 || !sum.Complete {
